@@ -1,0 +1,49 @@
+"""Study: everything that planning needs, validated and in SI; made by the `study` room or by hand."""
+
+import datetime as dt
+from dataclasses import dataclass, field
+from pathlib import Path
+
+from fellspan.links.criteria import Criterion
+from fellspan.links.site import Link
+from fellspan.terrain.sources import CoverSource, ObstacleSource, RasterSource, SurveySource
+from fellspan.vocabulary import CriteriaPreset, GapPolicy
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class TerrainInputs:
+    """The files of a study, paths resolved."""
+
+    ground: tuple[RasterSource, ...] = ()
+    surface: tuple[RasterSource, ...] = ()
+    cover: tuple[CoverSource, ...] = ()
+    obstacles: tuple[ObstacleSource, ...] = ()
+    survey: tuple[SurveySource, ...] = ()
+    gaps: GapPolicy = "error"
+    sea_level_m: float = 0.0
+    step_m: float | None = None
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Study:
+    """A study: terrain, criteria, links and the stamp of the issue.
+
+    `criteria` replaces `preset` where it is not empty. `growth_years` is how far ahead trees are grown.
+    """
+
+    title: str
+    links: tuple[Link, ...]
+    terrain: TerrainInputs
+    date: dt.date
+    planner: str = ""
+    revision: str = ""
+    preset: CriteriaPreset = "p530-temperate"
+    criteria: tuple[Criterion, ...] = ()
+    median_k: float = 4.0 / 3.0
+    confidence: float = 0.9
+    growth_years: float = 0.0
+    tiles_url: str | None = None
+    tiles_credit: str = ""
+    path: Path | None = None
+    notes: tuple[str, ...] = field(default=())
+    """Warnings found while reading, such as coarse coordinates."""

@@ -1,0 +1,55 @@
+"""LinkPlan and StudyPlan: what the views show."""
+
+from dataclasses import dataclass
+
+from fellspan.errors import FellspanError
+from fellspan.links.levels import PathLevels
+from fellspan.links.result import LinkResult
+from fellspan.links.site import Link
+from fellspan.planning.inputs import Study
+from fellspan.terrain.profile import PathProfile
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class LinkPlan:
+    """One planned link: the result, and the profile and levels it was worked out from.
+
+    `profile` has the same samples as `levels`.
+    """
+
+    link: Link
+    result: LinkResult
+    profile: PathProfile
+    levels: PathLevels
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class LinkFailure:
+    """A link that could not be assessed, and why."""
+
+    link: Link
+    error: FellspanError
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class InputFile:
+    """A file that the plan rests on: for the stamp of the issue."""
+
+    role: str
+    name: str
+    modified: str
+    size: int
+    sha256: str
+    """Hex digest; starts with 'partial:' for files over 256 MB, hashed at their start, middle and end only."""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class StudyPlan:
+    """All links of a study, planned; `links` and `failures` keep the order of the study."""
+
+    study: Study
+    links: tuple[LinkPlan, ...]
+    failures: tuple[LinkFailure, ...]
+    files: tuple[InputFile, ...]
+    version: str
+    cautions: tuple[str, ...]

@@ -1,0 +1,22 @@
+"""Words with a fixed meaning, shared by the command line, the study file and the engine; imports nothing of Fellspan."""
+
+from typing import Final, Literal, get_args
+
+PathVerdict = Literal["clear", "marginal", "obstructed"]
+SignalVerdict = Literal["meets", "marginal", "below"]
+Basis = Literal["surveyed", "surface raster", "bare ground only"]
+
+CoverKind = Literal["none", "building", "tree", "other"]
+COVER_KINDS: Final[tuple[CoverKind, ...]] = get_args(CoverKind)
+"""Order is the code: `PathProfile.cover_kind` holds indices into this tuple."""
+
+HeightReference = Literal["ground", "roof", "sea"]
+"""What an antenna height is measured from: the ground at the site, the roof the mast stands on, or sea level."""
+
+RasterRole = Literal["ground", "surface", "cover"]
+"""Bare ground (m above sea level), first surface (m above sea level), or cover (m above ground)."""
+
+GapPolicy = Literal["error", "sea"]
+Polarization = Literal["horizontal", "vertical"]
+CriteriaPreset = Literal["p530-temperate", "p530-tropical", "sixty-percent"]
+LengthUnit = Literal["m", "ft", "us-ft"]
