@@ -11,6 +11,7 @@
     |   |-- SeamError                          overlapping rasters disagree beyond their errors
     |   |-- ObstacleFileError                  an obstacle file has a wrong row
     |   `-- SurveyFileError                    a survey file has a wrong row
+    |-- AntennaError             ValueError    an antenna or a pattern file cannot be used as given
     |-- LinkError                ValueError    a link cannot be assessed as given
     |-- StudyError               ValueError    a study file has a wrong key or value
     |-- UsageError               ValueError    a command lacks an argument it needs
@@ -78,6 +79,10 @@ class ObstacleFileError(TerrainError):
 
 class SurveyFileError(TerrainError):
     """A survey file has a row that cannot be used."""
+
+
+class AntennaError(FellspanError, ValueError):
+    """An antenna or a pattern file cannot be used as it is given."""
 
 
 class LinkError(FellspanError, ValueError):
