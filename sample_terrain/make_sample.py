@@ -1,0 +1,91 @@
+"""Write the sample's rasters and obstacle files anew: `python sample_terrain/make_sample.py [FOLDER]`.
+
+Everything comes from one seed, so a second run writes the same heights. The place is invented and lies in open ocean.
+The study file beside this script and its survey are written by hand.
+"""
+
+import sys
+from pathlib import Path
+
+import numpy as np
+import rasterio
+import relief
+from numpy.typing import NDArray
+from rasterio import Affine
+from rasterio.crs import CRS
+
+SEED = 2026
+GROUND_SCALE_M, COVER_SCALE_M = 0.1, 0.1
+GROUND_NODATA, COVER_NODATA = -32768, 255
+
+
+def ground_counts(seed: int = SEED) -> NDArray[np.int16]:
+    """Bare ground as stored: counts of 0.1 m above sea level."""
+    return np.round(relief.make_ground(seed) / GROUND_SCALE_M).astype(np.int16)
+
+
+def tree_counts(ground: NDArray[np.int16], seed: int = SEED) -> NDArray[np.uint8]:
+    """Tree heights as stored: counts of 0.1 m above ground, in steps of 0.5 m."""
+    trees_m = relief.make_trees(seed, ground * GROUND_SCALE_M)
+    return (np.round(trees_m / 0.5) * 5).astype(np.uint8)
+
+
+def write_raster(
+    path: Path,
+    counts: NDArray[np.int16] | NDArray[np.uint8],
+    *,
+    cell_m: float,
+    crs: CRS,
+    nodata: int,
+    scale: float,
+    what: str,
+) -> None:
+    """Write one tiled, compressed GeoTIFF whose heights are counts * scale, in metres."""
+    profile = {
+        "driver": "GTiff",
+        "height": counts.shape[0],
+        "width": counts.shape[1],
+        "count": 1,
+        "dtype": counts.dtype.name,
+        "crs": crs,
+        "transform": Affine(cell_m, 0.0, relief.EAST_M, 0.0, -cell_m, relief.NORTH_M),
+        "nodata": nodata,
+        "tiled": True,
+        "blockxsize": 256,
+        "blockysize": 256,
+        "compress": "deflate",
+        "predictor": 2,
+        "zlevel": 9,
+    }
+    with rasterio.open(path, "w", **profile) as raster:
+        raster.write(counts, 1)
+        raster.scales, raster.offsets, raster.units = (scale,), (0.0,), ("m",)
+        raster.descriptions = (what,)
+
+
+def write_rasters(folder: Path, seed: int = SEED) -> None:
+    """Write tolmera_ground.tif and tolmera_trees.tif."""
+    ground = ground_counts(seed)
+    write_raster(
+        folder / "tolmera_ground.tif",
+        ground,
+        cell_m=relief.GROUND_CELL_M,
+        crs=CRS.from_string("EPSG:32623+3855"),
+        nodata=GROUND_NODATA,
+        scale=GROUND_SCALE_M,
+        what="bare ground above sea level",
+    )
+    write_raster(
+        folder / "tolmera_trees.tif",
+        tree_counts(ground, seed),
+        cell_m=relief.COVER_CELL_M,
+        crs=CRS.from_epsg(32623),
+        nodata=COVER_NODATA,
+        scale=COVER_SCALE_M,
+        what="trees above ground",
+    )
+
+
+if __name__ == "__main__":
+    target = Path(sys.argv[1]) if len(sys.argv) > 1 else Path(__file__).resolve().parent
+    write_rasters(target)
