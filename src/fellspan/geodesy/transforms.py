@@ -5,15 +5,14 @@ Rasters and coordinate text both come through here. Knows nothing of either.
 
 from functools import lru_cache
 
-import pyproj
-import pyproj.network
 from pyproj import CRS, Transformer
 from pyproj.exceptions import CRSError, ProjError
+from pyproj.network import set_network_enabled  # type: ignore[attr-defined]  # public, but not re-exported to mypy
 
 from fellspan.errors import CoordinateError
 
 # a plan made offline must equal one made online: grids that are not installed are an error, never a download
-pyproj.network.set_network_enabled(False)
+set_network_enabled(active=False)
 
 WGS84 = "EPSG:4326"
 
@@ -32,7 +31,7 @@ def crs_of(text: str) -> CRS:
     except CRSError as error:
         shown = text if len(text) <= 60 else text[:57] + "..."
         raise CoordinateError(
-            f"'{shown}' is not a coordinate reference system that PROJ knows",
+            f"{shown!r} is not a coordinate reference system that PROJ knows",
             "name it by its code, for instance EPSG:32623 (UTM zone 23 north)",
         ) from error
 
