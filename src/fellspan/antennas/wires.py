@@ -5,8 +5,8 @@ import math
 import numpy as np
 from numpy.typing import NDArray
 
-from fellspan.antennas.pattern import Pattern
 from fellspan.antennas.parts import check, no_cross_polar, uniform_array, wavelength_m, with_gain_from_directivity
+from fellspan.antennas.pattern import Pattern
 
 
 def half_wave_field(elevation_rad: NDArray[np.float64]) -> NDArray[np.float64]:
