@@ -1,0 +1,105 @@
+"""Where points on Earth fall in the coordinates of rasters, each CRS worked out once.
+
+Along a path PROJ is asked at a few nodes only and the rest is interpolated, to a tested error. Opens no file.
+"""
+
+from typing import Protocol
+
+import numpy as np
+from numpy.typing import NDArray
+
+from fellspan.geodesy.geodesic import GeodesicPath
+from fellspan.geodesy.transforms import WGS84, transformer
+
+_AGREEMENT_CELLS = 0.02
+"""Nodes are doubled until midpoints agree so well; the midpoints then serve too, which leaves about a quarter of it."""
+_FIRST_INTERVALS = 8
+_MOST_INTERVALS = 1024
+
+Floats = NDArray[np.float64]
+
+
+class Placing(Protocol):
+    """Points that can say where they are in any CRS."""
+
+    size: int
+
+    def in_crs(self, crs_text: str, *, cell: float, period: float | None) -> tuple[Floats, Floats]:
+        """x and y, shape (size,), NaN where the CRS does not reach; `cell` is the finest cell that will be asked."""
+        ...
+
+    def part(self, members: NDArray[np.int64]) -> "Placing":
+        """Some of the points."""
+        ...
+
+
+class ScatteredPlacing:
+    """Points anywhere, each transformed exactly."""
+
+    def __init__(self, latitude_deg: Floats, longitude_deg: Floats) -> None:
+        self.latitude_deg = np.asarray(latitude_deg, dtype=np.float64)
+        self.longitude_deg = np.asarray(longitude_deg, dtype=np.float64)
+        self.size = self.latitude_deg.size
+
+    def in_crs(self, crs_text: str, *, cell: float, period: float | None) -> tuple[Floats, Floats]:
+        """As `Placing.in_crs`."""
+        return to_crs(crs_text, self.latitude_deg, self.longitude_deg)
+
+    def part(self, members: NDArray[np.int64]) -> "ScatteredPlacing":
+        """As `Placing.part`."""
+        return ScatteredPlacing(self.latitude_deg[members], self.longitude_deg[members])
+
+
+class PathPlacing:
+    """Points along one geodesic, at distances from A."""
+
+    def __init__(self, path: GeodesicPath, distance_m: Floats) -> None:
+        self.path = path
+        self.distance_m = np.asarray(distance_m, dtype=np.float64)
+        self.size = self.distance_m.size
+
+    def part(self, members: NDArray[np.int64]) -> "PathPlacing":
+        """As `Placing.part`."""
+        return PathPlacing(self.path, self.distance_m[members])
+
+    def in_crs(self, crs_text: str, *, cell: float, period: float | None) -> tuple[Floats, Floats]:
+        """As `Placing.in_crs`."""
+        if self.size <= 2 * _FIRST_INTERVALS or self.path.length_m == 0.0:
+            return to_crs(crs_text, *self.path.positions(self.distance_m))
+        count = _FIRST_INTERVALS
+        nodes = np.linspace(0.0, self.path.length_m, count + 1)
+        x, y = self._nodes(nodes, crs_text, period)
+        while True:
+            middles = (nodes[:-1] + nodes[1:]) / 2.0
+            all_nodes = np.empty(2 * count + 1)
+            all_nodes[0::2], all_nodes[1::2] = nodes, middles
+            all_x, all_y = self._nodes(all_nodes, crs_text, period)
+            with np.errstate(invalid="ignore"):
+                off = np.hypot(all_x[1::2] - (x[:-1] + x[1:]) / 2.0, all_y[1::2] - (y[:-1] + y[1:]) / 2.0)
+                settled = off <= _AGREEMENT_CELLS * cell
+            nodes, x, y, count = all_nodes, all_x, all_y, 2 * count
+            if settled.all() or count >= min(_MOST_INTERVALS, self.size):
+                break
+        at_x = np.interp(self.distance_m, nodes, x)
+        at_y = np.interp(self.distance_m, nodes, y)
+        if not settled.all():
+            # a CRS with a seam, or one that does not reach the whole path: there, every point exactly
+            interval = np.clip(np.searchsorted(nodes[0::2], self.distance_m, side="right") - 1, 0, settled.size - 1)
+            rest = np.flatnonzero(~settled[interval])
+            at_x[rest], at_y[rest] = to_crs(crs_text, *self.path.positions(self.distance_m[rest]))
+        return at_x, at_y
+
+    def _nodes(self, distance_m: Floats, crs_text: str, period: float | None) -> tuple[Floats, Floats]:
+        x, y = to_crs(crs_text, *self.path.positions(distance_m))
+        if period is not None and np.isfinite(x).all():
+            x = np.unwrap(x, period=period)
+        return x, y
+
+
+def to_crs(crs_text: str, latitude_deg: Floats, longitude_deg: Floats) -> tuple[Floats, Floats]:
+    """Exact coordinates in a CRS, NaN where it does not reach."""
+    x, y = transformer(WGS84, crs_text).transform(longitude_deg, latitude_deg)
+    x, y = np.array(x, dtype=np.float64), np.array(y, dtype=np.float64)
+    lost = ~(np.isfinite(x) & np.isfinite(y))
+    x[lost] = y[lost] = np.nan
+    return x, y
