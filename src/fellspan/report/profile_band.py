@@ -1,0 +1,169 @@
+"""Axes, the band of levels under the path profile, the names over it and the key of its signs."""
+
+import numpy as np
+
+from fellspan.links.result import EndResult
+from fellspan.report.scales import Wanted, nice_step, nice_ticks, place_labels, text_width
+from fellspan.report.section import Section, nearest_index
+from fellspan.report.svg import el, label, line
+from fellspan.report.wording import kilometres, metres, number, percent, shorten
+from fellspan.vocabulary import COVER_KINDS
+
+ROWS = (
+    ("Distance from A, km", "km"),
+    ("Ground, m", "ground"),
+    ("Level required, m", "required"),
+    ("Level available, m", "available"),
+)
+MOST_NAMES = 9
+
+
+def stations(section: Section) -> list[int]:
+    """Indices of the samples the band tells: both ends, the governing point, and round distances with room between."""
+    distances, sheet = section.plan.levels.distance_m, section.sheet
+    last = distances.size - 1
+    chosen = [0, last]
+    if all(abs(section.x.at(float(distances[section.governing])) - edge) >= 0.75 * sheet.station_gap
+           for edge in (sheet.left, sheet.right)):  # fmt: skip
+        chosen.append(section.governing)
+    step = nice_step(float(distances[last]), sheet.stations)
+    for place in np.arange(step, float(distances[last]), step).tolist():
+        index = nearest_index(distances, place)
+        x = section.x.at(float(distances[index]))
+        if all(abs(x - section.x.at(float(distances[other]))) >= sheet.station_gap for other in chosen):
+            chosen.append(index)
+    return sorted(set(chosen))
+
+
+def axes(section: Section) -> str:
+    """Level axis with its lines across the plot."""
+    sheet = section.sheet
+    drawn = []
+    for level in nice_ticks(section.y.from_value, section.y.to_value, 6 if sheet.plot_height > 180 else 4):
+        y = section.y.at(level)
+        if y < section.y.to_px + 4.0:
+            continue
+        drawn.append(line(sheet.axis_width, y, sheet.right, y, class_="grid"))
+        drawn.append(line(sheet.axis_width - 4, y, sheet.axis_width, y, class_="tick-y", data_level_m=repr(level)))
+        drawn.append(label(sheet.axis_width - 7, y + sheet.small * 0.35, number(level, 0), class_="axis", anchor="end"))
+    drawn.append(line(sheet.axis_width, section.y.from_px, sheet.axis_width, section.y.to_px, class_="axis-line"))
+    drawn.append(label(2, section.y.to_px - 4, "m above sea level" if sheet.roomy else "m asl", class_="axis"))
+    return el("g", *drawn, class_="axis-y")
+
+
+def band(section: Section, *, top: float) -> tuple[str, float]:
+    """The rows of levels aligned with the drawing above; returns the markup and where it ends."""
+    sheet, levels = section.sheet, section.plan.levels
+    row_height = sheet.line_height * 1.22
+    bottom = top + row_height * len(ROWS)
+    need = levels.need_m[section.result.governing]
+    drawn = []
+    for row in range(len(ROWS) + 1):
+        drawn.append(line(0, top + row * row_height, sheet.width, top + row * row_height, class_="band-line"))
+    for row, (long, short) in enumerate(ROWS):
+        baseline = top + row * row_height + row_height * 0.68
+        drawn.append(label(2, baseline, long if sheet.roomy else short, class_="band-label"))
+    for index in stations(section):
+        at = float(levels.distance_m[index])
+        x = section.x.at(at)
+        here = " here" if index == section.governing else ""
+        ground = float(section.profile.ground_m[index])
+        bulge = float(levels.bulge_m[section.result.governing][index])
+        drawn.append(line(x, section.y.at(ground + bulge), x, top, class_=f"ordinate{here}"))
+        drawn.append(line(x, top - 5, x, top + 1, class_="tick-x", data_at_m=repr(at)))
+        texts = (
+            kilometres(at, length_m=section.profile.length_m),
+            number(ground),
+            number(float(need[index])),
+            number(float(levels.available_m[index])),
+        )
+        for row, content in enumerate(texts):
+            baseline = top + row * row_height + row_height * 0.68
+            drawn.append(label(x, baseline, content, class_=f"band-text{here}", anchor="middle"))
+    return el("g", *drawn, class_="band"), bottom
+
+
+def heading(section: Section, end: EndResult, *, at_b: bool) -> str:
+    """Site name and antenna level over an end."""
+    sheet = section.sheet
+    x, anchor = (sheet.width - 2, "end") if at_b else (2.0, "start")
+    letter = "B" if at_b else "A"
+    name = shorten(end.site, 40 if sheet.roomy else 19)
+    level = f"antenna {metres(end.antenna_amsl_m)} above sea level" if sheet.roomy else f"{metres(end.antenna_amsl_m)} asl"
+    content = f"{name} · {letter}" if at_b else f"{letter} · {name}"
+    return label(x, sheet.font * 1.05, content, class_="site", anchor=anchor, hint=end.site) + label(
+        x, sheet.font * 1.05 + sheet.line_height, level, class_="site-more", anchor=anchor
+    )
+
+
+def obstacle_names(section: Section, *, lanes_bottom: float) -> str:
+    """Names of the obstacles of the user's file, in lanes over the drawing with leaders down to their tops."""
+    sheet, profile, criterion = section.sheet, section.profile, section.criterion
+    ray = section.plan.levels.available_m
+    ranked = sorted(
+        profile.obstacles,
+        key=lambda item: (
+            criterion.cause != item.name,
+            float(np.interp((item.from_m + item.to_m) / 2.0, profile.distance_m, ray)) - item.top_amsl_m,
+        ),
+    )[:MOST_NAMES]
+    wanted, spots = [], []
+    for item in ranked:
+        inside = (section.distance_m >= item.from_m - 1e-6) & (section.distance_m <= item.to_m + 1e-6)
+        if not inside.any():
+            continue
+        peak = np.flatnonzero(inside)[int(np.argmax(section.surface_drawn[inside]))]
+        content = shorten(item.name, 26 if sheet.roomy else 16)
+        x = section.x.at(float(section.distance_m[peak]))
+        wanted.append(Wanted(at=x, width=text_width(content, sheet.small)))
+        spots.append((item, content, section.y.at(float(section.surface_drawn[peak]))))
+    governing_x = section.x.at(criterion.worst_at_m)
+    placed = place_labels(wanted, low=0.0, high=sheet.width, lanes=sheet.lanes, through=(governing_x,))
+    drawn = []
+    for spot, (item, content, y) in zip(placed, spots, strict=True):
+        if spot is None:
+            continue
+        baseline = lanes_bottom - spot.lane * sheet.line_height - 4.0
+        drawn.append(line(spot.at, baseline - sheet.small * 0.7, spot.at, y - 2.0, class_="leader-thin"))
+        hint = f"{item.name}: {metres(item.height_m)} above ground, top at {metres(item.top_amsl_m)}"
+        drawn.append(el("text", el("title", _safe(hint)), _safe(content), x=spot.start, y=baseline, class_="obstacle-name"))
+    return el("g", *drawn, class_="obstacles")
+
+
+def _safe(content: str) -> str:
+    from fellspan.report.svg import text
+
+    return text(content)
+
+
+def key(section: Section, uid: str, *, top: float) -> tuple[str, float]:
+    """What the signs mean, only those that stand in the drawing; returns the markup and where it ends."""
+    sheet, criterion = section.sheet, section.criterion
+    entries = [
+        (line(0, -4, 24, -4, class_="sight-line"), "sight line"),
+        (el("rect", x=0, y=-9, width=24, height=10, class_="zone-whole"), "first Fresnel zone"),
+    ]
+    if criterion.required_fraction > 0.0:
+        words = f"required part ({percent(criterion.required_fraction)})"
+        entries.append((el("rect", x=0, y=-9, width=24, height=10, class_="zone-required"), words))
+    entries.append((el("rect", x=0, y=-9, width=24, height=10, fill=f"url(#{uid}-ground)", class_="swatch"),
+                    "ground" if section.profile.ground_is_bare else "ground and what stands on it"))  # fmt: skip
+    present = set(section.cover_kind[section.surface_drawn - section.ground_drawn > 0.05].tolist()) - {0}
+    names = {"building": "building", "tree": "trees", "other": "other cover"}
+    for kind in sorted(present):
+        word = COVER_KINDS[kind]
+        swatch = el("rect", x=0, y=-9, width=24, height=10, fill=f"url(#{uid}-{word})", class_=f"cover cover-{word}")
+        entries.append((swatch, names[word]))
+    if any(item.cuts_sight for item in criterion.obstructions):
+        entries.append((line(0, -4, 24, -4, class_="cut-sight"), "cuts the sight line"))
+    if any(not item.cuts_sight for item in criterion.obstructions):
+        entries.append((line(0, -4, 24, -4, class_="cut-zone"), "reaches into the required part"))
+    x, y = 2.0, top + sheet.line_height
+    drawn = []
+    for swatch, words in entries:
+        width = 30.0 + text_width(words, sheet.small) + 14.0
+        if x + width > sheet.width and x > 2.0:
+            x, y = 2.0, y + sheet.line_height * 1.1
+        drawn.append(el("g", swatch, label(30, 0, words, class_="key-text"), transform=f"translate({x:.1f} {y:.1f})"))
+        x += width
+    return el("g", *drawn, class_="key"), y + sheet.font * 0.6

@@ -1,0 +1,97 @@
+"""The path profile: a long section of one link as inline SVG, drawn from the levels that planning worked out.
+
+Levels carry the Earth bulge of the governing criterion's k, so that the sight line is straight. Computes nothing of physics.
+"""
+
+from fellspan.planning.plan import LinkPlan
+from fellspan.report import profile_band, profile_parts
+from fellspan.report.section import FULL, Section, Sheet, prepare
+from fellspan.report.svg import el, num, text
+from fellspan.report.wording import (
+    BASIS_WORD,
+    VERDICT_WORD,
+    criterion_words,
+    distance,
+    frequency,
+    governing_words,
+    headline,
+    metres,
+)
+
+__all__ = ["draw_profile", "exaggeration_words", "profile_text"]
+
+
+def _plot_top(sheet: Sheet, lanes: int) -> float:
+    return sheet.line_height * (4.5 + lanes) + 6.0
+
+
+def draw_profile(plan: LinkPlan, *, uid: str, sheet: Sheet = FULL) -> str:
+    """SVG markup of the path profile of `plan`; `uid` makes its ids unique on a page (ASCII letters, digits, hyphens)."""
+    lanes = min(sheet.lanes, len(plan.profile.obstacles))
+    section = prepare(plan, sheet, plot_top=_plot_top(sheet, lanes))
+    ends = plan.result.ends
+    callout_y = sheet.line_height * 2.25
+    bottom = section.y.from_px
+    band, band_end = profile_band.band(section, top=bottom + 8.0)
+    key, height = profile_band.key(section, uid, top=band_end + 2.0)
+    clip = el(
+        "clipPath",
+        el("rect", x=sheet.left, y=section.y.to_px, width=sheet.right - sheet.left, height=bottom - section.y.to_px),
+        id=f"{uid}-plot",
+    )
+    return el(
+        "svg",
+        el("title", text(f"Path profile of {plan.result.name}"), id=f"{uid}-title"),
+        el("desc", text(profile_text(plan)), id=f"{uid}-desc"),
+        profile_parts.patterns(uid),
+        clip,
+        profile_band.axes(section),
+        el("g", profile_parts.ground(section, uid), profile_parts.cover(section, uid), class_="land"),
+        el("g", profile_parts.zone(section), clip_path=f"url(#{uid}-plot)", class_="zone"),
+        el("g", profile_parts.obstructed(section), class_="cuts"),
+        band,
+        profile_parts.mast(section, ends.a, at_b=False),
+        profile_parts.mast(section, ends.b, at_b=True),
+        profile_band.obstacle_names(section, lanes_bottom=section.y.to_px - 4.0),
+        profile_parts.governing(section, callout_y=callout_y),
+        profile_band.heading(section, ends.a, at_b=False),
+        profile_band.heading(section, ends.b, at_b=True),
+        key,
+        class_=f"path-profile {sheet.name}",
+        viewBox=f"0 0 {num(sheet.width)} {num(height)}",
+        role="img",
+        aria_labelledby=f"{uid}-title {uid}-desc",
+        font_size=num(sheet.font),
+        data_length_m=repr(plan.profile.length_m),
+    )
+
+
+def exaggeration_words(plan: LinkPlan, *, sheet: Sheet = FULL) -> str:
+    """Vertical exaggeration of the drawing, for the title block."""
+    factor = prepare(plan, sheet, plot_top=0.0).exaggeration
+    return f"heights drawn {factor:.0f} times too tall" if factor >= 10.0 else f"heights drawn {factor:.1f} times too tall"
+
+
+def profile_text(plan: LinkPlan) -> str:
+    """The drawing in words, for people who cannot see it."""
+    result = plan.result
+    criterion = result.clearance[result.governing]
+    ends = result.ends
+    words = [
+        f"{VERDICT_WORD[result.verdict]}, {BASIS_WORD[result.basis]}. {headline(result)}",
+        f"From A, {ends.a.site}, antenna {metres(ends.a.antenna_agl_m)} above ground and "
+        f"{metres(ends.a.antenna_amsl_m)} above sea level, to B, {ends.b.site}, antenna {metres(ends.b.antenna_agl_m)} "
+        f"above ground and {metres(ends.b.antenna_amsl_m)} above sea level: {distance(result.distance_m)} "
+        f"at {frequency(result.frequency_hz)}.",
+        f"Governing criterion: {criterion_words(criterion)}. At {distance(criterion.worst_at_m)} from A "
+        f"({criterion.cause or 'ground'}): {governing_words(criterion)}.",
+    ]
+    for item in criterion.obstructions:
+        what = "cuts the sight line" if item.cuts_sight else "reaches into the required zone"
+        words.append(f"{item.cause} {what} from {distance(item.from_m)} to {distance(item.to_m)}.")
+    return " ".join(word if word.endswith(".") else f"{word}." for word in words)
+
+
+def drawn_section(plan: LinkPlan, sheet: Sheet = FULL) -> Section:
+    """The prepared data of a drawing, for tests that check decimation."""
+    return prepare(plan, sheet, plot_top=0.0)

@@ -1,0 +1,49 @@
+"""Writing SVG: elements with every attribute and every text escaped. Knows nothing of paths or links."""
+
+from html import escape
+
+from fellspan.report.wording import clean
+
+
+def num(value: float) -> str:
+    """A coordinate: at most two decimals, no trailing zeros, never `-0`."""
+    text = f"{value:.2f}".rstrip("0").rstrip(".")
+    return "0" if text in ("-0", "") else text
+
+
+def text(content: str) -> str:
+    """Text from people, safe as the content of an element."""
+    return escape(clean(content), quote=False)
+
+
+def el(name: str, *children: str, **attributes: str | float | None) -> str:
+    """An element. Children are markup already; in attribute names `_` stands for `-` and a trailing one is dropped."""
+    parts = [name]
+    for key, value in attributes.items():
+        if value is None:
+            continue
+        shown = num(value) if isinstance(value, int | float) else escape(clean(value), quote=True)
+        parts.append(f'{key.rstrip("_").replace("_", "-")}="{shown}"')
+    head = " ".join(parts)
+    return f"<{head}>{''.join(children)}</{name}>" if children else f"<{head}/>"
+
+
+def label(
+    x: float, y: float, content: str, *, class_: str = "", anchor: str = "start", hint: str | None = None, **more: str
+) -> str:
+    """A line of text; `hint` is the full text of one that was shortened."""
+    tip = () if hint is None or hint == content else (el("title", text(hint)),)
+    return el(
+        "text", *tip, text(content), x=x, y=y, class_=class_ or None,
+        text_anchor=None if anchor == "start" else anchor, **more,
+    )  # fmt: skip
+
+
+def line(x1: float, y1: float, x2: float, y2: float, *, class_: str = "", **more: str) -> str:
+    """A straight line."""
+    return el("line", x1=x1, y1=y1, x2=x2, y2=y2, class_=class_ or None, **more)
+
+
+def points(xs: list[float], ys: list[float]) -> str:
+    """Path data `M x,y L ...` through the points, rounded to a tenth of a unit."""
+    return "M" + "L".join(f"{x:.1f},{y:.1f}" for x, y in zip(xs, ys, strict=True))

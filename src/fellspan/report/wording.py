@@ -1,0 +1,132 @@
+"""Numbers and states as people read them on a page. Formats what it is given and works nothing out."""
+
+import math
+import re
+
+from fellspan.links.result import CriterionResult, LinkResult
+from fellspan.vocabulary import Basis, PathVerdict, SignalVerdict
+
+VERDICT_SYMBOL: dict[PathVerdict, str] = {"clear": "✓", "marginal": "≈", "obstructed": "✕"}
+VERDICT_WORD: dict[PathVerdict, str] = {"clear": "Clear", "marginal": "Marginal", "obstructed": "Obstructed"}
+BASIS_WORD: dict[Basis, str] = {
+    "surveyed": "surveyed on the ground",
+    "surface raster": "surface raster",
+    "bare ground only": "bare ground only: trees and buildings are not in it",
+}
+SIGNAL_WORD: dict[SignalVerdict, str] = {
+    "meets": "meets the wanted margin",
+    "marginal": "within 3 dB of the wanted margin",
+    "below": "below the wanted margin",
+}
+
+_CONTROL = re.compile("[\x00-\x08\x0b\x0c\x0e-\x1f\x7f\ud800-\udfff]")
+
+
+def clean(text: str) -> str:
+    """`text` without control characters, which neither HTML nor SVG can hold."""
+    return _CONTROL.sub("", text)
+
+
+def shorten(text: str, length: int) -> str:
+    """`text` on one line, cut to `length` characters with an ellipsis."""
+    flat = " ".join(clean(text).split())
+    return flat if len(flat) <= length else flat[: max(1, length - 1)].rstrip() + "…"
+
+
+def number(value: float | None, digits: int = 1, *, sign: bool = False) -> str:
+    """A number with a true minus sign, or a dash where there is none."""
+    if value is None or not math.isfinite(value):
+        return "–"
+    text = f"{value:+.{digits}f}" if sign else f"{value:.{digits}f}"
+    if float(text) == 0.0:
+        text = text.lstrip("+-")
+    return text.replace("-", "−")
+
+
+def metres(value: float | None, digits: int = 1, *, sign: bool = False) -> str:
+    """`12.3 m`."""
+    return "–" if value is None else f"{number(value, digits, sign=sign)} m"
+
+
+def kilometres(distance_m: float, *, length_m: float | None = None) -> str:
+    """Kilometres with as many decimals as the path (`length_m`, else the distance itself) deserves, no unit."""
+    scale = distance_m if length_m is None else length_m
+    return number(distance_m / 1000.0, 3 if scale < 2_000.0 else 2 if scale < 100_000.0 else 1)
+
+
+def distance(distance_m: float) -> str:
+    """A distance in the unit people would say it in."""
+    return f"{number(distance_m, 0)} m" if distance_m < 1000.0 else f"{kilometres(distance_m)} km"
+
+
+def percent(share: float | None, digits: int = 0) -> str:
+    """`0.6` as `60 %`; near-certainty is never rounded up to it."""
+    if share is None:
+        return "–"
+    value = share * 100.0
+    if digits == 0 and 99.5 <= value < 100.0:
+        return "> 99 %"
+    return f"{number(value, digits)} %"
+
+
+def frequency(frequency_hz: float) -> str:
+    """`5.8 GHz`, `433 MHz`."""
+    return f"{frequency_hz / 1e9:.6g} GHz" if frequency_hz >= 1e9 else f"{frequency_hz / 1e6:.6g} MHz"
+
+
+def k_factor(k: float | None) -> str:
+    """k as engineers write it."""
+    if k is None:
+        return "infinite"
+    return "4/3" if abs(k - 4.0 / 3.0) < 5e-4 else number(k, 2)
+
+
+def degrees(value: float | None, digits: int = 1, *, sign: bool = False) -> str:
+    """`123.4°`."""
+    return "–" if value is None else f"{number(value, digits, sign=sign)}°"
+
+
+def bearing(value: float | None) -> str:
+    """A bearing with three figures before the point, 360 written as 0."""
+    if value is None:
+        return "–"
+    tenths = round(value * 10.0) % 3600
+    return f"{tenths // 10:03d}.{tenths % 10}°"
+
+
+def _sexagesimal(value: float, positive: str, negative: str) -> str:
+    tenths = round(abs(value) * 36000.0)
+    whole, rest = divmod(tenths, 36000)
+    minutes, tenths = divmod(rest, 600)
+    side = negative if value < 0.0 else positive
+    return f"{whole}° {minutes:02d}′ {tenths // 10:02d}.{tenths % 10}″ {side}"
+
+
+def degrees_minutes_seconds(latitude_deg: float, longitude_deg: float) -> str:
+    """`36° 03′ 12.3″ N, 45° 12′ 00.0″ W`."""
+    return f"{_sexagesimal(latitude_deg, 'N', 'S')}, {_sexagesimal(longitude_deg, 'E', 'W')}"
+
+
+def decimal_degrees(latitude_deg: float, longitude_deg: float) -> str:
+    """`36.053417, -45.200000`, with plain hyphens so that it can be copied into other tools."""
+    return f"{latitude_deg:.6f}, {longitude_deg:.6f}"
+
+
+def governing_words(criterion: CriterionResult) -> str:
+    """What is spare or missing at the governing point of a criterion."""
+    spare = criterion.clearance_m - criterion.required_m
+    if spare >= 0.0:
+        return f"{metres(spare)} to spare"
+    return f"{metres(-spare)} short of the required clearance"
+
+
+def criterion_words(criterion: CriterionResult) -> str:
+    """`k 4/3, 60 % of the first Fresnel zone`."""
+    return f"k {k_factor(criterion.k)}, {percent(criterion.required_fraction)} of the first Fresnel zone"
+
+
+def headline(result: LinkResult) -> str:
+    """The decisive reason, or the governing criterion where none was stated."""
+    if result.reasons:
+        return result.reasons[0]
+    return f"{VERDICT_WORD[result.verdict]}: {governing_words(result.clearance[result.governing])}"
