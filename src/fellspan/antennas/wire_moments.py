@@ -71,7 +71,8 @@ def solve_wires(
             matrix[other, :, source, :] = block.T
     voltage = np.zeros((wires, modes), dtype=np.complex128)
     voltage[driven, modes // 2] = 1.0
-    current = np.linalg.solve(matrix.reshape(wires * modes, wires * modes), voltage.ravel()).reshape(wires, modes)
+    solution = np.linalg.solve(matrix.reshape(wires * modes, wires * modes), voltage.ravel())
+    current = np.asarray(solution.reshape(wires, modes), dtype=np.complex128)
     return WireCurrents(
         current=current,
         mode_length=span,
@@ -94,14 +95,12 @@ def _reaction(
     ends = _wave(z - source_span, apart) + _wave(z + source_span, apart)
     field = ends - 2.0 * math.cos(_TURN * source_span) * _wave(z, apart)
     scale = math.sin(_TURN * source_span) * math.sin(_TURN * other_span)
-    reaction: NDArray[np.complex128] = 30j * _TURN * (field @ weight) / (scale * _TURN)
-    return reaction
+    return np.asarray(30j * (field @ weight) / scale, dtype=np.complex128)
 
 
 def _wave(z: NDArray[np.float64], apart: float) -> NDArray[np.complex128]:
     reach = np.sqrt(z * z + apart * apart)
-    wave: NDArray[np.complex128] = np.exp(-1j * _TURN * reach) / reach
-    return wave
+    return np.asarray(np.exp(-1j * _TURN * reach) / reach, dtype=np.complex128)
 
 
 def far_field(
@@ -118,9 +117,10 @@ def far_field(
         span = float(currents.mode_length[wire])
         element = (np.cos(_TURN * span * up) - math.cos(_TURN * span)) / (safe * math.sin(_TURN * span))
         middle = currents.height.shape[1] // 2
-        series = np.full(azimuth.shape, currents.current[wire, middle])
+        series = np.full(azimuth.shape, currents.current[wire, middle], dtype=np.complex128)
         for mode in range(middle):
             z = float(currents.height[wire, mode])
             series = series + 2.0 * currents.current[wire, mode] * np.cos(_TURN * z * up)
         total += element * series * np.exp(1j * _TURN * float(currents.place[wire]) * ahead)
-    return np.where(flat > 1e-9, np.abs(total), 0.0)
+    magnitude: NDArray[np.float64] = np.where(flat > 1e-9, np.abs(total), 0.0)
+    return magnitude

@@ -145,7 +145,7 @@ def yagi(
             peak_gain_dbi=0.0,
             co_amplitude=field,
             cross_amplitude=no_cross_polar,
-            size_m=max(design.boom_m, max(design.length_m)),
+            size_m=max(design.boom_m, *design.length_m),
             efficiency=efficiency,
             source="moment method, piecewise-sinusoidal modes; designs of NBS Technical Note 688",
         )
