@@ -1,6 +1,19 @@
-"""Clearance criteria: lists of (k, fraction of the first Fresnel zone), with their sources."""
+"""Clearance criteria: lists of (k, fraction of the first Fresnel zone), with their sources.
+
+Knows the published rules and common practice, and how to tell an isolated obstruction from an extended one; knows nothing of
+terrain, sites or verdicts.
+"""
 
 from dataclasses import dataclass
+from typing import Final
+
+import numpy as np
+from numpy.typing import ArrayLike
+
+from fellspan.propagation.constants import K_FORMULA_LOW_M
+from fellspan.propagation.refraction import k_exceeded_99_9
+from fellspan.propagation.sources import source
+from fellspan.vocabulary import CriteriaPreset
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -15,3 +28,118 @@ class Criterion:
     fraction: float
     source: str
     note: str = ""
+
+
+P530: Final = source("p530-19-clearance").reference
+COMMON_PRACTICE: Final = source("sixty-percent").reference
+TROPICAL_FROM_M: Final = 30_000.0
+"""P.530 gives the tropical rule at k exceeded 99.9 % for longer paths only."""
+ISOLATED_BAND: Final = 0.3
+"""Samples within this fraction of F1 of the worst one count as the same obstruction (common practice, no source)."""
+ISOLATED_SHARE: Final = 0.1
+"""An isolated obstruction takes less of the path than this (common practice, no source)."""
+
+
+def worst_month_k(distance_m: float) -> float:
+    """k exceeded 99.9 % of the worst month for a path of this length, m (P.530-19, equation (4))."""
+    return float(k_exceeded_99_9(distance_m))
+
+
+def is_extended(distance_m: ArrayLike, normalised_clearance: ArrayLike) -> bool:
+    """Whether what comes nearest to the ray is extended along part of the path, rather than a single isolated obstruction.
+
+    Isolated only if the samples whose normalised clearance lies within 0.3 F1 of the worst form one contiguous stretch
+    shorter than 10 % of the path, counted to the next samples outside it; extended otherwise, so also when in doubt. The
+    Recommendation tells the two apart without a rule; this one is common practice, no source.
+
+    Parameters
+    ----------
+    distance_m
+        Shape (n,), rising, m.
+    normalised_clearance
+        (ray - surface - bulge) / F1 at the k of the rule, shape (n,); what is not finite (the two ends) is left out.
+    """
+    distance = np.asarray(distance_m, dtype=np.float64)
+    normalised = np.asarray(normalised_clearance, dtype=np.float64)
+    finite = np.isfinite(normalised)
+    if not finite.any():
+        return True
+    near = np.flatnonzero(finite & (normalised <= normalised[finite].min() + ISOLATED_BAND))
+    first, last = int(near[0]), int(near[-1])
+    if last - first + 1 != near.size:
+        return True
+    outer_from, outer_to = distance[max(first - 1, 0)], distance[min(last + 1, distance.size - 1)]
+    return bool(outer_to - outer_from >= ISOLATED_SHARE * (distance[-1] - distance[0]))
+
+
+def criteria_for(
+    preset: CriteriaPreset, *, distance_m: float, median_k: float = 4.0 / 3.0, extended: bool = True
+) -> tuple[Criterion, ...]:
+    """Criteria of a preset for one path.
+
+    Parameters
+    ----------
+    preset
+        'p530-temperate', 'p530-tropical' or 'sixty-percent'.
+    distance_m
+        Path length, m, > 0.
+    median_k
+        Median effective Earth radius factor; the 'sixty-percent' preset holds at 4/3 whatever it is.
+    extended
+        Whether the obstruction is extended along part of the path (`is_extended`); read by 'p530-temperate' only.
+    """
+    if preset == "sixty-percent":
+        return (Criterion(name="0.6 F1 at k = 4/3", k=4.0 / 3.0, fraction=0.6, source=COMMON_PRACTICE),)
+    first = Criterion(
+        name="1.0 F1 at the median k", k=median_k, fraction=1.0, source=f"{P530}, step 1", note=f"k = {median_k:.3g}"
+    )
+    if preset == "p530-tropical" and distance_m <= TROPICAL_FROM_M:
+        note = (
+            f"{first.note}; P.530 gives no tropical rule at the worst-month k for paths up to about 30 km, so only step 1 "
+            "is checked"
+        )
+        return (Criterion(name=first.name, k=first.k, fraction=first.fraction, source=first.source, note=note),)
+    k_worst = worst_month_k(distance_m)
+    about_k = f"k = {k_worst:.3g}, exceeded 99.9 % of the worst month for {distance_m / 1000.0:.3g} km (equation 4)"
+    if distance_m < K_FORMULA_LOW_M:
+        about_k += (
+            "; the published curve begins at about 18 km: on shorter paths its value there is held (our own rule)"
+        )
+    if preset == "p530-tropical":
+        fraction, about_rule = 0.6, "tropical climate, path over 30 km"
+    elif extended:
+        fraction, about_rule = 0.3, "obstruction taken as extended along part of the path"
+    else:
+        fraction, about_rule = (
+            0.0,
+            "single isolated obstruction: one stretch shorter than 10 % of the path (common practice)",
+        )
+    return (
+        first,
+        Criterion(
+            name=f"{fraction:.1f} F1 at the worst-month k",
+            k=k_worst,
+            fraction=fraction,
+            source=f"{P530}, steps 2 and 3",
+            note=f"{about_rule}; {about_k}",
+        ),
+    )
+
+
+def range_cautions(preset: CriteriaPreset, *, frequency_hz: float) -> tuple[str, ...]:
+    """What P.530 says about frequencies outside the range its clearance rules are made for."""
+    if preset == "sixty-percent":
+        return ()
+    if frequency_hz < 2e9:
+        text = (
+            f"The P.530 clearance rules are for about 2 GHz and up; at {frequency_hz / 1e9:.3g} GHz smaller fractions of "
+            "the Fresnel zone may do, and would spare height."
+        )
+        return (text,)
+    if frequency_hz > 13e9:
+        text = (
+            f"At {frequency_hz / 1e9:.3g} GHz the error of obstacle heights is as large as the Fresnel zone; P.530 advises "
+            "to add it to the clearance above about 13 GHz. Here it enters the confidence, not the clearance."
+        )
+        return (text,)
+    return ()

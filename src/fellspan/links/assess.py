@@ -1,0 +1,313 @@
+"""Assess one link: profile, levels, criteria, losses, verdict -> LinkResult. The engine's front door.
+
+Puts the pieces of this room together and holds no formula itself; knows nothing of study files, pages or the command line.
+"""
+
+import datetime as dt
+import math
+from dataclasses import dataclass
+from typing import TYPE_CHECKING, Final
+
+import numpy as np
+from numpy.typing import NDArray
+
+from fellspan.errors import LinkError, MagneticModelError, TerrainGapError
+from fellspan.geodesy import geodesic, magnetic
+from fellspan.links import clearance, verdicts
+from fellspan.links.budget import budget, tilt_deg
+from fellspan.links.cautions import cautions
+from fellspan.links.criteria import Criterion, criteria_for, is_extended, worst_month_k
+from fellspan.links.ends import EndLevel, end_level
+from fellspan.links.evaluate import criterion_result, error_m, governing_row
+from fellspan.links.levels import PathLevels
+from fellspan.links.own_building import Standing, standing, with_ground_at_end, with_nodes, with_roof_edge
+from fellspan.links.result import EndResult, Ends, LinkResult
+from fellspan.links.site import Link
+from fellspan.terrain.profile import PathProfile
+from fellspan.vocabulary import CriteriaPreset
+
+if TYPE_CHECKING:
+    from fellspan.terrain.terrain import Terrain
+
+SAME_PLACE_M: Final = 0.5
+REFINE_PARTS: Final = 16
+"""The worst minima are looked at again at this part of the finest cell."""
+REFINE_MINIMA: Final = 6
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class AssessSettings:
+    """How links are judged.
+
+    `criteria` replaces `preset` where it is not empty. `confidence` is the probability asked of every criterion, above 0 and
+    below 1. `date` is for magnetic bearings; None leaves them out.
+    """
+
+    preset: CriteriaPreset = "p530-temperate"
+    criteria: tuple[Criterion, ...] = ()
+    median_k: float = 4.0 / 3.0
+    confidence: float = 0.9
+    date: dt.date | None = None
+
+    def __post_init__(self) -> None:
+        if math.isnan(self.median_k) or self.median_k == 0.0:
+            raise LinkError(f"median k {self.median_k:g} must be a number other than 0", "4/3 if nothing is known")
+        if not 0.0 < self.confidence < 1.0:
+            raise LinkError(f"confidence {self.confidence:g} is outside 0 to 1", "0.9 asks for 90 %")
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Assessment:
+    """A result with the arrays it was worked out from; `profile` has the same samples as `levels`."""
+
+    result: LinkResult
+    profile: PathProfile
+    levels: PathLevels
+
+
+_DEFAULTS: Final = AssessSettings()
+
+
+def assess(link: Link, *, terrain: "Terrain", settings: AssessSettings = _DEFAULTS) -> LinkResult:
+    """Decide on one link over `terrain`; see `assess_in_full`."""
+    return assess_in_full(link, terrain=terrain, settings=settings).result
+
+
+def assess_in_full(link: Link, *, terrain: "Terrain", settings: AssessSettings = _DEFAULTS) -> Assessment:
+    """Decide on one link: profile at the default step, the worst minima looked at again at a sixteenth of the cell.
+
+    Raises
+    ------
+    LinkError
+        Both sites are the same place, an antenna is below ground, or a roof is unknown.
+    TerrainError
+        The terrain has no data on part of the path, or its heights have another datum than the site's.
+    """
+    distance_m = geodesic.inverse(link.a.position, link.b.position).distance_m
+    if distance_m < SAME_PLACE_M:
+        raise LinkError(
+            f"link '{link.name}': '{link.a.name}' and '{link.b.name}' are the same place ({distance_m:.2f} m apart)",
+            "give the two ends different coordinates",
+        )
+    coarse = terrain.profile(a=link.a.position, b=link.b.position, name=link.name)
+    windows = _windows(_Laid.out(link, coarse, settings))
+    fine = terrain.refine(coarse, windows, step_m=coarse.cell_m / REFINE_PARTS) if windows else coarse
+    return assess_profile(link, fine, settings)
+
+
+def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = _DEFAULTS) -> Assessment:
+    """Decide on one link over a profile as it is, without looking closer anywhere."""
+    laid = _Laid.out(link, profile, settings)
+    profile, stands, levels = laid.profile, laid.stands, laid.levels
+    results = tuple(
+        criterion_result(criterion, row, profile=profile, standing=stands, levels=levels)
+        for row, criterion in enumerate(laid.criteria)
+    )
+    governing = governing_row(results)
+    confidence = min(result.probability or 0.0 for result in results)
+    sight = verdicts.sight_line(profile, stands, levels, median_k=settings.median_k)
+    verdict = verdicts.path_verdict(results, sight, confidence=confidence, confidence_asked=settings.confidence)
+    basis = verdicts.basis_of(profile, stands, levels, row=governing)
+    a_amsl_m, b_amsl_m = laid.a.antenna_amsl_m, laid.b.antenna_amsl_m
+    loss = budget(link, profile, stands, a_amsl_m=a_amsl_m, b_amsl_m=b_amsl_m, median_k=settings.median_k)
+    sentences = verdicts.reasons(
+        verdict=verdict,
+        basis=basis,
+        results=results,
+        governing=governing,
+        sight=sight,
+        confidence=confidence,
+        confidence_asked=settings.confidence,
+        ignored=stands.ignored,
+    )
+    signal = verdicts.signal_sentence(loss.received_dbm, loss.margin_db, wanted_db=link.wanted_margin_db)
+    way = geodesic.inverse(link.a.position, link.b.position)
+    end_a, model, caution_a = _end_result(laid.a, way.bearing_ab_deg, settings.date)
+    end_b, _, caution_b = _end_result(laid.b, way.bearing_ba_deg, settings.date)
+    length_m, k = profile.length_m, settings.median_k
+    result = LinkResult(
+        name=link.name,
+        a=link.a.name,
+        b=link.b.name,
+        verdict=verdict,
+        signal_verdict=verdicts.signal_verdict(loss.margin_db, wanted_db=link.wanted_margin_db),
+        basis=basis,
+        confidence=confidence,
+        confidence_asked=settings.confidence,
+        reasons=sentences if signal is None else (*sentences, signal),
+        cautions=cautions(
+            link,
+            profile,
+            (laid.a, laid.b),
+            preset=None if settings.criteria else settings.preset,
+            median_k=k,
+            raises=any(not result.met for result in results),
+            diffraction_db=loss.losses.diffraction,
+            trees=bool(np.any((stands.cover_kind == 2) & (levels.available_m < levels.need_m[governing]))),
+            no_errors=not error_m(profile, stands).any(),
+            magnetic=(caution_a, caution_b),
+        ),
+        distance_m=length_m,
+        bearing_ab_deg=way.bearing_ab_deg,
+        bearing_ba_deg=way.bearing_ba_deg,
+        tilt_ab_deg=tilt_deg(distance_m=length_m, from_amsl_m=a_amsl_m, to_amsl_m=b_amsl_m, k=k),
+        tilt_ba_deg=tilt_deg(distance_m=length_m, from_amsl_m=b_amsl_m, to_amsl_m=a_amsl_m, k=k),
+        frequency_hz=link.radio.frequency_hz,
+        polarization=link.radio.polarization,
+        median_k=k,
+        ends=Ends(a=end_a, b=end_b),
+        clearance=results,
+        governing=governing,
+        ignored=stands.ignored,
+        losses_db=loss.losses,
+        received_dbm=loss.received_dbm,
+        margin_db=loss.margin_db,
+        wanted_margin_db=link.wanted_margin_db,
+        magnetic_model=model,
+        step_m=profile.step_m,
+        sources=profile.sources,
+        vertical_datum=profile.vertical_datum,
+    )
+    return Assessment(result=result, profile=profile, levels=levels)
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class _Laid:
+    """A link laid on a profile: ends levelled, own buildings out, roof edges in, criteria chosen, levels worked out."""
+
+    profile: PathProfile
+    stands: Standing
+    a: EndLevel
+    b: EndLevel
+    criteria: tuple[Criterion, ...]
+    levels: PathLevels
+
+    @classmethod
+    def out(cls, link: Link, profile: PathProfile, settings: AssessSettings) -> "_Laid":
+        _refuse_gaps(link, profile)
+        a, b = end_level(link.a, profile, end="A"), end_level(link.b, profile, end="B")
+        if profile.distance_m.size < 3:
+            profile = with_nodes(profile, (0.5 * profile.length_m,))
+        for level in (a, b):
+            profile = _with_end(profile, level)
+        stands = standing(profile)
+        criteria = settings.criteria or _preset_criteria(link, profile, stands, settings, a=a, b=b)
+        levels = clearance.path_levels(
+            profile.distance_m,
+            stands.surface_m,
+            a_amsl_m=a.antenna_amsl_m,
+            b_amsl_m=b.antenna_amsl_m,
+            k=[criterion.k for criterion in criteria],
+            fraction=[criterion.fraction for criterion in criteria],
+            frequency_hz=link.radio.frequency_hz,
+        )
+        return cls(profile=profile, stands=stands, a=a, b=b, criteria=criteria, levels=levels)
+
+
+def _refuse_gaps(link: Link, profile: PathProfile) -> None:
+    missing = ~np.isfinite(profile.surface_m)
+    if profile.gaps:
+        gap = profile.gaps[0]
+        from_m, to_m, raster = gap.from_m, gap.to_m, gap.raster
+    elif missing.any():
+        from_m, to_m = (float(at) for at in profile.distance_m[missing][[0, -1]])
+        raster = "the profile"
+    else:
+        return
+    raise TerrainGapError(
+        f"terrain has no data from {from_m / 1000.0:.2f} km to {to_m / 1000.0:.2f} km of '{link.name}'",
+        f"raster: {raster}",
+        'add a raster that covers the stretch, or set terrain.gaps = "sea" if it is open water',
+    )
+
+
+def _with_end(profile: PathProfile, level: EndLevel) -> PathProfile:
+    """What the user measured at one end, put into the profile: its ground level, its roof edge and parapet."""
+    site = level.site
+    if site.ground_amsl_m is not None:
+        profile = with_ground_at_end(profile, end=level.end, ground_amsl_m=site.ground_amsl_m)
+    if site.roof_edge_m is None or level.roof_m is None:
+        return profile
+    if site.roof_edge_m >= profile.length_m:
+        raise LinkError(
+            f"site '{site.name}': roof edge at {site.roof_edge_m:g} m lies beyond the other end, {profile.length_m:.1f} m away",
+            "give the distance from the antenna to the edge in the direction of the link",
+        )
+    parapet = site.parapet_m or 0.0
+    top = level.ground_m + level.roof_m + parapet
+    return with_roof_edge(profile, end=level.end, edge_m=site.roof_edge_m, top_amsl_m=top, parapet_m=parapet)
+
+
+def _preset_criteria(
+    link: Link, profile: PathProfile, stands: Standing, settings: AssessSettings, *, a: EndLevel, b: EndLevel
+) -> tuple[Criterion, ...]:
+    extended = True
+    if settings.preset == "p530-temperate":
+        levels = clearance.path_levels(
+            profile.distance_m,
+            stands.surface_m,
+            a_amsl_m=a.antenna_amsl_m,
+            b_amsl_m=b.antenna_amsl_m,
+            k=[worst_month_k(profile.length_m)],
+            fraction=[0.0],
+            frequency_hz=link.radio.frequency_hz,
+        )
+        clear = levels.available_m - levels.need_m[0]
+        extended = is_extended(profile.distance_m, clearance.normalised_clearance(clear, levels.fresnel_radius_m))
+    return criteria_for(settings.preset, distance_m=profile.length_m, median_k=settings.median_k, extended=extended)
+
+
+def _windows(laid: _Laid) -> tuple[tuple[float, float], ...]:
+    """Stretches round the least margins and normalised clearances of every criterion, sorted and merged."""
+    distance, levels = laid.profile.distance_m, laid.levels
+    margin = levels.available_m - levels.need_m
+    clear = levels.available_m - levels.surface_m - levels.bulge_m
+    wanted: set[int] = set()
+    for row in (*margin, *clearance.normalised_clearance(clear, levels.fresnel_radius_m)):
+        wanted.update(_local_minima(row))
+    merged: list[tuple[float, float]] = []
+    for index in sorted(wanted):
+        from_m, to_m = float(distance[max(index - 1, 0)]), float(distance[min(index + 1, distance.size - 1)])
+        if merged and from_m <= merged[-1][1]:
+            merged[-1] = (merged[-1][0], to_m)
+        else:
+            merged.append((from_m, to_m))
+    return tuple(merged)
+
+
+def _local_minima(values: NDArray[np.float64]) -> list[int]:
+    """The lowest interior local minima, at most `REFINE_MINIMA`."""
+    inner = values[1:-1]
+    low = 1 + np.flatnonzero((inner <= values[:-2]) & (inner <= values[2:]) & np.isfinite(inner))
+    if not low.size:
+        low = np.asarray([1 + int(np.argmin(inner))])
+    return [int(index) for index in low[np.argsort(values[low], kind="stable")][:REFINE_MINIMA]]
+
+
+def _end_result(level: EndLevel, bearing_deg: float, date: dt.date | None) -> tuple[EndResult, str | None, str | None]:
+    site = level.site
+    declination, doubt = None, None
+    if date is not None:
+        try:
+            declination = magnetic.declination(site.position, date)
+            doubt = None if declination.caution is None else f"'{site.name}' is {declination.caution}."
+        except MagneticModelError as error:
+            # A compass bearing is a convenience; the link is decided without it.
+            doubt = f"No magnetic bearings: {'; '.join((error.what, *error.details))}."
+    east = None if declination is None else declination.declination_deg
+    return (
+        EndResult(
+            site=site.name,
+            latitude_deg=site.position.latitude_deg,
+            longitude_deg=site.position.longitude_deg,
+            ground_m=level.ground_m,
+            roof_m=level.roof_m,
+            antenna_amsl_m=level.antenna_amsl_m,
+            antenna_agl_m=level.antenna_agl_m,
+            height_as_given=level.height_as_given,
+            magnetic_bearing_deg=None if east is None else (bearing_deg - east) % 360.0,
+            declination_deg=east,
+        ),
+        None if declination is None else declination.model,
+        doubt,
+    )

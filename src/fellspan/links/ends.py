@@ -1,0 +1,190 @@
+"""From a site and a profile to the level of its antenna above sea level; refuses what cannot be, doubts what is unlikely.
+
+Knows the height references of `Site` and the datum rule; knows nothing of rays, zones or verdicts.
+"""
+
+import math
+from dataclasses import dataclass
+from typing import Final
+
+from fellspan.errors import LinkError, VerticalDatumError
+from fellspan.links.own_building import EndName, own_outlines, standing
+from fellspan.links.site import Site
+from fellspan.terrain.profile import PathProfile
+from fellspan.vocabulary import COVER_KINDS
+
+ROOF_FROM_M: Final = 2.0
+"""Cover of unknown kind at a site counts as its roof from this height above ground (common practice, no source)."""
+OUTLIER_SIGMAS: Final = 3.0
+"""A measured ground level this many standard errors off the raster draws a caution (common practice, no source)."""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class EndLevel:
+    """Levels at one end: m above sea level; `roof_m` and `antenna_agl_m` above ground."""
+
+    end: EndName
+    site: Site
+    ground_m: float
+    roof_m: float | None
+    antenna_amsl_m: float
+    height_as_given: str
+    cautions: tuple[str, ...]
+
+    @property
+    def antenna_agl_m(self) -> float:
+        """Antenna height above the ground at the site, m."""
+        return self.antenna_amsl_m - self.ground_m
+
+
+def end_level(site: Site, profile: PathProfile, *, end: EndName) -> EndLevel:
+    """Level of the antenna of `site` at one end of `profile`.
+
+    Raises
+    ------
+    VerticalDatumError
+        The site names a vertical datum other than the terrain's.
+    LinkError
+        The antenna is above a roof that neither the site nor the data gives, or it is below ground.
+    """
+    _check_datum(site, profile)
+    cautions: list[str] = []
+    index = 0 if end == "A" else -1
+    raster_ground = float(profile.ground_m[index])
+    ground = raster_ground if site.ground_amsl_m is None else site.ground_amsl_m
+    if site.ground_amsl_m is not None:
+        off, sigma = site.ground_amsl_m - raster_ground, float(profile.sigma_m[index])
+        if abs(off) > max(OUTLIER_SIGMAS * sigma, 0.1) and profile.ground_is_bare:
+            cautions.append(
+                f"Ground at '{site.name}' is given as {site.ground_amsl_m:.1f} m, the raster says {raster_ground:.1f} m "
+                f"(standard error {sigma:.1f} m): check the position and the vertical datum."
+            )
+    roof: float | None = None
+    if site.height_reference == "sea":
+        antenna = site.height_m
+        given = f"{site.height_m:g} m above sea level"
+    elif site.height_reference == "ground":
+        antenna = ground + site.height_m
+        given = f"{site.height_m:g} m above ground"
+        if not profile.ground_is_bare and site.ground_amsl_m is None:
+            cautions.append(
+                f"'{site.name}' stands on a surface raster, which may hold a roof or a tree top there: "
+                f"{raster_ground:.1f} m was taken as ground."
+            )
+    else:
+        ground, roof, roof_cautions = _roof(site, profile, end=end, ground=ground)
+        cautions += roof_cautions
+        antenna = ground + roof + site.height_m
+        given = f"{site.height_m:g} m above the roof ({roof:.1f} m above ground)"
+    if site.ground_amsl_m is not None or site.height_reference == "sea":
+        cautions += _unnamed_datum(site, profile)
+    if not math.isfinite(antenna) or antenna < ground - 1e-9:
+        raise LinkError(
+            f"site '{site.name}': antenna at {antenna:.1f} m above sea level is below the ground there, {ground:.1f} m",
+            "give a higher level, measure it from the ground instead, or state the measured ground level of the site",
+        )
+    if site.height_reference != "roof":
+        cautions += _under_own_roof(site, profile, end=end, antenna=antenna)
+    return EndLevel(
+        end=end,
+        site=site,
+        ground_m=ground,
+        roof_m=roof,
+        antenna_amsl_m=antenna,
+        height_as_given=given,
+        cautions=tuple(cautions),
+    )
+
+
+def _roof(site: Site, profile: PathProfile, *, end: EndName, ground: float) -> tuple[float, float, list[str]]:
+    """Ground m above sea level, roof height above it, and cautions, for an antenna measured from a roof."""
+    index = 0 if end == "A" else -1
+    raster_ground = float(profile.ground_m[index])
+    if not profile.ground_is_bare and site.ground_amsl_m is None:
+        caution = (
+            f"The roof of '{site.name}' was read from a surface raster, {raster_ground:.1f} m above sea level: check on "
+            "site that the roof, not the yard beside it, stands there."
+        )
+        roof = site.roof_m or 0.0
+        return raster_ground - roof, roof, [caution]
+    if site.roof_m is not None:
+        return ground, site.roof_m, []
+    outlines = own_outlines(profile, end)
+    if outlines:
+        return ground, max(profile.obstacles[outline].height_m for outline in outlines), []
+    cover, kind = float(profile.cover_m[index]), COVER_KINDS[int(profile.cover_kind[index])]
+    if not profile.ground_is_bare:
+        return ground, max(raster_ground - ground, 0.0), []
+    if kind == "building" and cover > 0.0:
+        return ground, cover, []
+    if kind == "other" and cover >= ROOF_FROM_M:
+        return (
+            ground,
+            cover,
+            [f"What stands at '{site.name}', {cover:.1f} m above ground, was taken as its roof: check it."],
+        )
+    raise LinkError(
+        f"site '{site.name}': the antenna is measured from the roof, but the data hold no building at that spot",
+        "state the roof height above ground, or measure the antenna height from the ground",
+    )
+
+
+def _under_own_roof(site: Site, profile: PathProfile, *, end: EndName, antenna: float) -> list[str]:
+    tops = [profile.obstacles[outline].top_amsl_m for outline in own_outlines(profile, end)]
+    if not tops:
+        return []
+    if antenna < max(tops):
+        text = (
+            f"The antenna of '{site.name}' is {max(tops) - antenna:.1f} m below the top of the building it stands at, and that "
+            "building was left out: check on site that the wall or the roof does not stand in the way."
+        )
+        return [text]
+    return []
+
+
+def roof_edge_cautions(level: EndLevel, profile: PathProfile) -> list[str]:
+    """Doubts about the typed roof edge and parapet of one end."""
+    site, end = level.site, level.end
+    if site.roof_edge_m is None or level.roof_m is None:
+        return []
+    cautions = []
+    parapet = site.parapet_m or 0.0
+    below = parapet - site.height_m
+    if below >= 0.0:
+        cautions.append(
+            f"The antenna of '{site.name}' is {below:.1f} m below the top of its own parapet ({parapet:g} m above the roof), "
+            f"{site.roof_edge_m:g} m in front of it: raise it or move it to the edge."
+            if parapet > 0.0
+            else f"The antenna of '{site.name}' lies on its own roof, {site.roof_edge_m:g} m from the edge: raise it."
+        )
+    spans = [item for item in standing(profile).ignored if item.end == end] if own_outlines(profile, end) else []
+    for span in spans:
+        reach = span.to_m if end == "A" else profile.length_m - span.from_m
+        if abs(reach - site.roof_edge_m) > 3.0:
+            cautions.append(
+                f"The roof edge of '{site.name}' is given at {site.roof_edge_m:g} m, but the outline in the data ends at "
+                f"{reach:.1f} m: check the position or the distance."
+            )
+    return cautions
+
+
+def _plain(datum: str) -> str:
+    return "".join(character for character in datum.casefold() if character.isalnum())
+
+
+def _check_datum(site: Site, profile: PathProfile) -> None:
+    if site.vertical_datum is None or profile.vertical_datum is None:
+        return
+    if _plain(site.vertical_datum) != _plain(profile.vertical_datum):
+        raise VerticalDatumError(
+            f"site '{site.name}' gives heights above '{site.vertical_datum}', the terrain above '{profile.vertical_datum}'",
+            "heights of different vertical datums are not mixed: convert the height of the site,",
+            "or give it above ground or roof",
+        )
+
+
+def _unnamed_datum(site: Site, profile: PathProfile) -> list[str]:
+    if site.vertical_datum is not None and profile.vertical_datum is not None:
+        return []
+    whose = f"'{site.name}'" if site.vertical_datum is None else "the terrain"
+    return [f"The vertical datum of {whose} is not stated: its heights above sea level were taken to share one datum."]

@@ -1,0 +1,116 @@
+"""One criterion on one path: governing point, shortfalls by name, extra heights, probability.
+
+Reads levels that `clearance` made and turns them into a CriterionResult; computes no `need` of its own.
+"""
+
+import math
+
+import numpy as np
+from numpy.typing import NDArray
+
+from fellspan.links import clearance
+from fellspan.links.causes import cause_at
+from fellspan.links.criteria import Criterion
+from fellspan.links.levels import PathLevels
+from fellspan.links.own_building import Standing
+from fellspan.links.result import CriterionResult, ExtraHeight, Obstruction
+from fellspan.terrain.profile import MEASURED_TOP, PathProfile
+
+
+def error_m(profile: PathProfile, standing: Standing) -> NDArray[np.float64]:
+    """Standard error of the surface against the ray, m, shape (n,).
+
+    0 on bare ground at the antenna's own spot and within one cell of it: antenna and ground stand on the same raster value
+    there, whose error moves both.
+    """
+    from_end = np.minimum(profile.distance_m, profile.length_m - profile.distance_m)
+    shared = (standing.own | (from_end <= profile.cell_m)) & (standing.cover_m == 0.0)
+    return np.where(shared, 0.0, profile.sigma_m)
+
+
+def criterion_result(
+    criterion: Criterion, row: int, *, profile: PathProfile, standing: Standing, levels: PathLevels
+) -> CriterionResult:
+    """Result of the criterion that stands in row `row` of `levels`, which share the samples of `profile`."""
+    distance = levels.distance_m
+    bulge, need = levels.bulge_m[row], levels.need_m[row]
+    clear = levels.available_m - levels.surface_m - bulge
+    shortfall = need - levels.available_m
+    normalised = clearance.normalised_clearance(clear, levels.fresnel_radius_m)
+    worst = clearance.worst_index(normalised, distance)
+    short = clearance.worst_index(-shortfall, distance)
+    missing = max(float(shortfall[short]), 0.0)
+    met = missing <= clearance.TOLERANCE_M
+    extra = (_finite(float(value)) for value in clearance.extra_heights_m(shortfall, distance))
+    extra_a, extra_b, extra_both = extra
+    return CriterionResult(
+        criterion=criterion.name,
+        k=_finite(criterion.k),
+        required_fraction=criterion.fraction,
+        met=met,
+        worst_fraction=_finite(float(normalised[worst])),
+        worst_at_m=float(distance[worst]),
+        clearance_m=float(clear[worst]),
+        required_m=float(criterion.fraction * levels.fresnel_radius_m[worst]),
+        fresnel_radius_m=float(levels.fresnel_radius_m[worst]),
+        surface_m=float(levels.surface_m[worst]),
+        bulge_m=float(bulge[worst]),
+        available_m=float(levels.available_m[worst]),
+        latitude_deg=float(profile.latitude_deg[worst]),
+        longitude_deg=float(profile.longitude_deg[worst]),
+        shortfall_m=0.0 if met else missing,
+        shortfall_at_m=float(distance[short]),
+        cause=_cause(profile, standing, levels, row, worst),
+        extra_height_m=ExtraHeight(a=extra_a, b=extra_b, both=extra_both),
+        probability=_finite(float(clearance.probability_met(-shortfall, error_m(profile, standing)))),
+        obstructions=_obstructions(row, profile=profile, standing=standing, levels=levels),
+        source=criterion.source,
+        note=criterion.note,
+    )
+
+
+def _obstructions(row: int, *, profile: PathProfile, standing: Standing, levels: PathLevels) -> tuple[Obstruction, ...]:
+    shortfall = levels.need_m[row] - levels.available_m
+    cut = levels.surface_m + levels.bulge_m[row] - levels.available_m
+    found = []
+    for first, last, from_m, to_m in clearance.stretches(shortfall, levels.distance_m):
+        worst = first + int(np.argmax(shortfall[first : last + 1]))
+        found.append(
+            Obstruction(
+                from_m=from_m,
+                to_m=to_m,
+                worst_at_m=float(levels.distance_m[worst]),
+                shortfall_m=float(shortfall[worst]),
+                cause=_cause(profile, standing, levels, row, worst),
+                cuts_sight=bool(cut[first : last + 1].max() > clearance.TOLERANCE_M),
+                measured=int(profile.measured[worst]) == MEASURED_TOP,
+            )
+        )
+    return tuple(found)
+
+
+def _cause(profile: PathProfile, standing: Standing, levels: PathLevels, row: int, index: int) -> str:
+    return cause_at(
+        profile,
+        standing,
+        index,
+        available_m=float(levels.available_m[index]),
+        bulge_m=float(levels.bulge_m[row, index]),
+        need_m=float(levels.need_m[row, index]),
+    )
+
+
+def spare_m(result: CriterionResult) -> float:
+    """Height to spare at the governing point, m; negative where it is missing."""
+    return result.clearance_m - result.required_m
+
+
+def governing_row(results: tuple[CriterionResult, ...]) -> int:
+    """The criterion that the drawing shows: the greatest shortfall, else the least spare height at a governing point."""
+    if any(not result.met for result in results):
+        return max(range(len(results)), key=lambda row: results[row].shortfall_m)
+    return min(range(len(results)), key=lambda row: spare_m(results[row]))
+
+
+def _finite(value: float) -> float | None:
+    return value if math.isfinite(value) else None

@@ -1,0 +1,192 @@
+"""The building an antenna stands on does not block it; its typed roof edge and parapet do.
+
+Takes a PathProfile and says what stands along it for clearance. Ground is never left out, and what was left out is listed.
+Knows nothing of rays, zones or verdicts.
+"""
+
+from dataclasses import dataclass, replace
+from typing import Final, Literal, TypeVar
+
+import numpy as np
+from numpy.typing import NDArray
+
+from fellspan.links.result import Ignored
+from fellspan.terrain.profile import MEASURED_TOP, PathObstacle, PathProfile
+from fellspan.vocabulary import COVER_KINDS
+
+EndName = Literal["A", "B"]
+Scalar = TypeVar("Scalar", bound=np.generic)
+
+NEAR_M: Final = 10.0
+"""Without an outline, cover this near to an antenna counts as what it stands on, m (common practice, no source)."""
+_TOUCH_M: Final = 0.01
+_BUILDING, _OTHER = COVER_KINDS.index("building"), COVER_KINDS.index("other")
+ROOF_SOURCE: Final = "typed for the site"
+SAME_SPOT_M: Final = 1e-6
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Standing:
+    """What a ray must clear along a profile, the antennas' own buildings taken out; arrays of shape (n,)."""
+
+    surface_m: NDArray[np.float64]
+    cover_m: NDArray[np.float64]
+    cover_kind: NDArray[np.int8]
+    obstacle_index: NDArray[np.int32]
+    own: NDArray[np.bool_]
+    """Samples that belong to the spot an antenna stands on: the outline, else `NEAR_M`."""
+    ignored: tuple[Ignored, ...]
+
+
+def own_outlines(profile: PathProfile, end: EndName) -> tuple[int, ...]:
+    """Indices of the building outlines that hold the end of the path."""
+    return tuple(
+        index
+        for index, obstacle in enumerate(profile.obstacles)
+        if obstacle.kind == "building"
+        and obstacle.source != ROOF_SOURCE
+        and (obstacle.from_m <= _TOUCH_M if end == "A" else obstacle.to_m >= profile.length_m - _TOUCH_M)
+    )
+
+
+def standing(profile: PathProfile) -> Standing:
+    """Take the own buildings out of a profile.
+
+    Inside an outline that holds the end, that outline and building (or unknown) cover are left out; without one, any cover
+    within 10 m of the end. Trees over an outline, other obstacles of the user's file and the ground always stay.
+    """
+    cover = profile.cover_m.copy()
+    kind = profile.cover_kind.copy()
+    obstacle = profile.obstacle_index.copy()
+    own = np.zeros(cover.shape, dtype=np.bool_)
+    ignored: list[Ignored] = []
+    ends: tuple[EndName, EndName] = ("A", "B")
+    for end in ends:
+        outlines = own_outlines(profile, end)
+        from_end = profile.distance_m if end == "A" else profile.length_m - profile.distance_m
+        if outlines:
+            reach = max(_reach(profile, index, end) for index in outlines)
+            inside = from_end <= reach + SAME_SPOT_M
+            house = (obstacle == -1) & ((kind == _BUILDING) | (kind == _OTHER))
+            out = inside & (cover > 0.0) & (np.isin(obstacle, outlines) | house)
+        else:
+            inside = from_end <= NEAR_M + SAME_SPOT_M
+            out = inside & (cover > 0.0) & (obstacle == -1)
+        own |= inside
+        if out.any():
+            ignored.append(_ignored(profile, end, out, outlines))
+        cover[out], kind[out], obstacle[out] = 0.0, 0, -1
+    return Standing(
+        surface_m=profile.ground_m + cover,
+        cover_m=cover,
+        cover_kind=kind,
+        obstacle_index=obstacle,
+        own=own,
+        ignored=tuple(ignored),
+    )
+
+
+def with_roof_edge(
+    profile: PathProfile, *, end: EndName, edge_m: float, top_amsl_m: float, parapet_m: float
+) -> PathProfile:
+    """The profile with a sample at the roof edge in front of an antenna, as an obstacle up to `top_amsl_m`.
+
+    `edge_m` counts from that end. The obstacle is named 'parapet at A' or, without a parapet, 'roof edge of A'.
+    """
+    from_end = float(np.clip(edge_m, _TOUCH_M, profile.length_m - _TOUCH_M))
+    at_m = from_end if end == "A" else profile.length_m - from_end
+    profile = with_nodes(profile, (at_m,))
+    index = int(np.argmin(np.abs(profile.distance_m - at_m)))
+    ground = float(profile.ground_m[index])
+    if top_amsl_m <= ground:
+        return profile
+    edge = PathObstacle(
+        name=f"parapet at {end}" if parapet_m > 0.0 else f"roof edge of {end}",
+        kind="building",
+        from_m=at_m,
+        to_m=at_m,
+        top_amsl_m=top_amsl_m,
+        height_m=top_amsl_m - ground,
+        source=ROOF_SOURCE,
+    )
+    return replace(
+        profile,
+        obstacles=(*profile.obstacles, edge),
+        cover_m=_changed(profile.cover_m, index, edge.height_m),
+        surface_m=_changed(profile.surface_m, index, top_amsl_m),
+        cover_kind=_changed(profile.cover_kind, index, _BUILDING),
+        obstacle_index=_changed(profile.obstacle_index, index, len(profile.obstacles)),
+        measured=_changed(profile.measured, index, MEASURED_TOP),
+        sigma_m=_changed(profile.sigma_m, index, 0.0),
+    )
+
+
+def with_ground_at_end(profile: PathProfile, *, end: EndName, ground_amsl_m: float) -> PathProfile:
+    """The profile with a measured ground level at one end; what stands on the ground there moves with it."""
+    index = 0 if end == "A" else profile.distance_m.size - 1
+    surface = ground_amsl_m + float(profile.cover_m[index])
+    return replace(
+        profile,
+        ground_m=_changed(profile.ground_m, index, ground_amsl_m),
+        surface_m=_changed(profile.surface_m, index, surface),
+        measured=_changed(profile.measured, index, max(1, int(profile.measured[index]))),
+    )
+
+
+def with_nodes(profile: PathProfile, at_m: tuple[float, ...]) -> PathProfile:
+    """The profile with samples at more distances, values interpolated; distances that it has already are left alone."""
+    known = profile.distance_m
+    new = np.asarray([at for at in at_m if np.abs(known - at).min() > SAME_SPOT_M], dtype=np.float64)
+    if not new.size:
+        return profile
+    distance = np.sort(np.concatenate((known, new)))
+    right = np.clip(np.searchsorted(known, distance), 1, known.size - 1)
+    nearest = np.where(distance - known[right - 1] < known[right] - distance, right - 1, right)
+
+    def between(values: NDArray[np.float64]) -> NDArray[np.float64]:
+        return np.interp(distance, known, values)
+
+    longitude = between(np.rad2deg(np.unwrap(np.deg2rad(profile.longitude_deg))))
+    ground, cover = between(profile.ground_m), between(profile.cover_m)
+    return replace(
+        profile,
+        distance_m=distance,
+        latitude_deg=between(profile.latitude_deg),
+        longitude_deg=(longitude + 180.0) % 360.0 - 180.0,
+        ground_m=ground,
+        cover_m=cover,
+        surface_m=ground + cover,
+        cover_kind=profile.cover_kind[nearest],
+        obstacle_index=profile.obstacle_index[nearest],
+        source=profile.source[nearest],
+        measured=profile.measured[nearest],
+        sigma_m=between(profile.sigma_m),
+    )
+
+
+def _reach(profile: PathProfile, index: int, end: EndName) -> float:
+    obstacle = profile.obstacles[index]
+    return obstacle.to_m if end == "A" else profile.length_m - obstacle.from_m
+
+
+def _ignored(profile: PathProfile, end: EndName, out: NDArray[np.bool_], outlines: tuple[int, ...]) -> Ignored:
+    at = profile.distance_m[out]
+    if outlines:
+        what = " and ".join(dict.fromkeys(profile.obstacles[index].name for index in outlines))
+    else:
+        kinds = {COVER_KINDS[int(code)] for code in profile.cover_kind[out]}
+        words = {"tree": "trees", "building": "building", "other": "cover", "none": "cover"}
+        what = " and ".join(sorted({words[kind] for kind in kinds}))
+    return Ignored(
+        end=end,
+        from_m=float(at[0]),
+        to_m=float(at[-1]),
+        height_m=float(profile.cover_m[out].max()),
+        what=what,
+    )
+
+
+def _changed(array: NDArray[Scalar], index: int, value: float) -> NDArray[Scalar]:
+    copy = array.copy()
+    copy[index] = value
+    return copy

@@ -1,0 +1,207 @@
+"""From numbers to the decision: path verdict, basis, signal verdict, and the plain sentences that say why.
+
+Reads results and levels; computes no physics. Sentences are for a person on a roof: the decision first, then what to do.
+"""
+
+import math
+from dataclasses import dataclass
+from typing import Final
+
+import numpy as np
+
+from fellspan.links import clearance
+from fellspan.links.causes import cause_at
+from fellspan.links.evaluate import spare_m
+from fellspan.links.levels import PathLevels
+from fellspan.links.own_building import ROOF_SOURCE, Standing
+from fellspan.links.result import AtEnds, CriterionResult, Ignored
+from fellspan.terrain.profile import MEASURED_TOP, PathProfile
+from fellspan.vocabulary import Basis, PathVerdict, SignalVerdict
+
+UNLISTED_M: Final = 25.0
+"""What a tree or building that no data list may reach above ground, m (common practice, no source)."""
+USUAL_MAST_M: Final = 60.0
+"""More extra height than this is called beyond usual masts (common practice, no source)."""
+SIGNAL_BAND_DB: Final = 3.0
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class SightLine:
+    """The sight line at the median k: how far it is cut (negative: free by that much), where, and by what."""
+
+    cut_m: float
+    at_m: float
+    cause: str
+
+
+def sight_line(profile: PathProfile, standing: Standing, levels: PathLevels, *, median_k: float) -> SightLine:
+    """The worst point of the sight line itself, zone left aside, at the median k."""
+    bulge = clearance.bulge_m(levels.distance_m, k=median_k)
+    cut = (levels.surface_m + bulge - levels.available_m)[1:-1]
+    ends = (levels.surface_m - levels.available_m)[[0, -1]]
+    index = 1 + clearance.worst_index(-cut, levels.distance_m[1:-1])
+    if ends.max() > max(float(cut.max()), clearance.TOLERANCE_M):
+        index = 0 if ends[0] >= ends[1] else levels.distance_m.size - 1
+    available, surface = float(levels.available_m[index]), float(levels.surface_m[index])
+    return SightLine(
+        cut_m=surface + float(bulge[index]) - available,
+        at_m=float(levels.distance_m[index]),
+        cause=cause_at(
+            profile,
+            standing,
+            index,
+            available_m=available,
+            bulge_m=float(bulge[index]),
+            need_m=surface + float(bulge[index]),
+        ),
+    )
+
+
+def path_verdict(
+    results: tuple[CriterionResult, ...], sight: SightLine, *, confidence: float, confidence_asked: float
+) -> PathVerdict:
+    """'clear', 'marginal' or 'obstructed' (see docs/architecture.md, Verdicts)."""
+    if sight.cut_m > clearance.TOLERANCE_M:
+        return "obstructed"
+    if all(result.met for result in results) and confidence >= confidence_asked:
+        return "clear"
+    return "marginal"
+
+
+def basis_of(profile: PathProfile, standing: Standing, levels: PathLevels, *, row: int) -> Basis:
+    """What the verdict rests on.
+
+    'surveyed' when, wherever an unlisted tree or building of 25 m on the bare ground could reach the required zone of the
+    governing criterion, ground and top were measured, and something on the path was; the antennas' own spots are left aside.
+    """
+    typed = np.asarray([*(obstacle.source == ROOF_SOURCE for obstacle in profile.obstacles), False])
+    looked_at = ~standing.own & ~typed[standing.obstacle_index]
+    spare = levels.available_m - (levels.need_m[row] - standing.cover_m)
+    measured = profile.measured == MEASURED_TOP
+    if np.any(measured & looked_at) and np.all(measured[looked_at & (spare < UNLISTED_M)]):
+        return "surveyed"
+    return "surface raster" if profile.surface_is_known or not profile.ground_is_bare else "bare ground only"
+
+
+def signal_verdict(margin_db: AtEnds, *, wanted_db: float) -> SignalVerdict | None:
+    """'meets', 'marginal' (within 3 dB below the wanted margin) or 'below'; None where no margin is known."""
+    if margin_db.at_a is None or margin_db.at_b is None:
+        return None
+    least = min(margin_db.at_a, margin_db.at_b)
+    if least >= wanted_db:
+        return "meets"
+    return "marginal" if least >= wanted_db - SIGNAL_BAND_DB else "below"
+
+
+def reasons(
+    *,
+    verdict: PathVerdict,
+    basis: Basis,
+    results: tuple[CriterionResult, ...],
+    governing: int,
+    sight: SightLine,
+    confidence: float,
+    confidence_asked: float,
+    ignored: tuple[Ignored, ...],
+) -> tuple[str, ...]:
+    """Plain sentences, the decisive one first."""
+    rule = results[governing]
+    sentences = []
+    asked = f"{100.0 * confidence_asked:.0f} % asked"
+    if verdict == "obstructed":
+        sentences.append(
+            f"Obstructed: {sight.cause} cuts the sight line by {sight.cut_m:.1f} m at {place(sight.at_m)}."
+        )
+    elif not rule.met:
+        left = (
+            ""
+            if rule.worst_fraction is None
+            else f"{rule.worst_fraction:.2f} F1 where {rule.required_fraction:g} is required"
+        )
+        sentences.append(
+            f"Marginal: the sight line is free, but {rule.cause} at {place(rule.worst_at_m)} leaves {left} "
+            f"({rule.criterion})."
+        )
+    elif verdict == "marginal":
+        sentences.append(
+            f"Marginal: every criterion is met on the heights in the data, but with {_percent(confidence)} confidence only "
+            f"({asked})."
+        )
+    else:
+        sentences.append(
+            f"{'Clear on bare ground only' if basis == 'bare ground only' else 'Clear'}: every criterion is met with "
+            f"{_percent(confidence)} confidence ({asked})."
+        )
+    if rule.met:
+        sentences.append(
+            f"{spare_m(rule):.1f} m to spare under {rule.criterion}; nearest to the ray: {rule.cause}, {place(rule.worst_at_m)}."
+        )
+    else:
+        sentences.append(f"{rule.shortfall_m:.1f} m is missing at {place(rule.shortfall_at_m)} under {rule.criterion}.")
+        sentences.append(_raise_sentence(results))
+    sentences.append(_basis_sentence(basis))
+    sentences += [
+        f"Left out at {item.end}, as the antenna's own building or cover: {item.what}, up to {item.height_m:.1f} m high."
+        for item in ignored
+    ]
+    return tuple(sentences)
+
+
+def signal_sentence(received_dbm: AtEnds, margin_db: AtEnds, *, wanted_db: float) -> str | None:
+    """What arrives and what is not counted in it yet; None where the level is unknown."""
+    if received_dbm.at_b is None:
+        return None
+    level = f"Signal at the median k: {received_dbm.at_b:.1f} dBm at both ends"
+    if margin_db.at_b is None:
+        return f"{level}; no threshold is given, so there is no margin. Fading is not yet counted."
+    return f"{level}, margin {margin_db.at_b:.1f} dB, {wanted_db:g} dB wanted. Fading is not yet counted."
+
+
+def place(at_m: float) -> str:
+    """'4.21 km from A', or '830 m from A' on the first kilometre."""
+    return f"{at_m / 1000.0:.2f} km from A" if at_m >= 1000.0 else f"{at_m:.0f} m from A"
+
+
+def _raise_sentence(results: tuple[CriterionResult, ...]) -> str:
+    """Heights that meet every criterion on the heights in the data, rounded up to 0.1 m."""
+    extra = [result.extra_height_m for result in results]
+    options = []
+    for words, values in (
+        ("A by", [item.a for item in extra]),
+        ("B by", [item.b for item in extra]),
+        ("both by", [item.both for item in extra]),
+    ):
+        known = [value for value in values if value is not None]
+        if len(known) == len(values) and max(known) <= USUAL_MAST_M:
+            options.append(f"{words} {_up(max(known))} m")
+    if options:
+        return f"Raise {', or '.join(options)}, to meet every criterion on the heights in the data."
+    most = [item.both for item in extra if item.both is not None]
+    if most:
+        return (
+            f"Raising both ends would take {_up(max(most))} m each, more than usual masts give: "
+            "look for another site or a relay."
+        )
+    return "No height at the ends meets every criterion: look for another site or a relay."
+
+
+def _up(height_m: float) -> str:
+    return f"{math.ceil(height_m * 10.0 - 1e-6) / 10.0:.1f}"
+
+
+def _percent(probability: float) -> str:
+    """Rounded down, and never 100 % or 0 % unless it is."""
+    return f"{math.floor(1000.0 * probability + 1e-9) / 10.0:g} %"
+
+
+def _basis_sentence(basis: Basis) -> str:
+    if basis == "surveyed":
+        return (
+            "Basis: surveyed, ground and tops were measured wherever an unlisted tree or building could reach the zone."
+        )
+    if basis == "surface raster":
+        return "Basis: surface raster; what grew or was built since it was flown is not in it."
+    return (
+        "Basis: bare ground only; trees and buildings are not in the data (but for obstacles listed by name), so walk the path "
+        "before trusting this."
+    )
