@@ -100,8 +100,9 @@ def _read_group(dataset: DatasetReader, file: RasterFile, corners: list[tuple[In
         valid = _valid(raw, file)
         if file.has_mask:
             valid &= dataset.read_masks(file.band, window=window)[rows, columns] != 0
-        elif file.nodata is None and file.driver == "GTiff" and not cells.any():
-            valid &= _written(dataset, file, rows + first_row, columns + first_column)
+        elif file.nodata is None and file.driver == "GTiff" and not raw.all():
+            zero = raw == 0
+            valid[zero] &= _written(dataset, file, rows[zero] + first_row, columns[zero] + first_column)
     heights = (raw.astype(np.float64) * file.scale + file.offset) * file.unit_m
     if file.role != "cover":
         valid &= (heights > _LOWEST_M) & (heights < _HIGHEST_M)
@@ -125,9 +126,13 @@ def _valid(raw: NDArray[np.generic], file: RasterFile) -> NDArray[np.bool_]:
 
 def _written(dataset: DatasetReader, file: RasterFile, rows: Index, columns: Index) -> NDArray[np.bool_]:
     """False in blocks that a sparse GeoTIFF never stored: GDAL reads them as 0, but nobody measured that."""
-    across, down = columns // file.block_width, rows // file.block_height
-    written = np.ones(rows.shape, dtype=np.bool_)
-    for x, y in set(zip(across.ravel().tolist(), down.ravel().tolist(), strict=True)):
-        if dataset.get_tag_item(f"BLOCK_OFFSET_{x}_{y}", "TIFF", bidx=file.band) is None:
-            written &= ~((across == x) & (down == y))
-    return written
+    blocks_across = file.width // file.block_width + 1
+    blocks, which = np.unique(
+        rows // file.block_height * blocks_across + columns // file.block_width, return_inverse=True
+    )
+    stored = [
+        dataset.get_tag_item(f"BLOCK_OFFSET_{b % blocks_across}_{b // blocks_across}", "TIFF", bidx=file.band)
+        is not None
+        for b in blocks.tolist()
+    ]
+    return np.array(stored, dtype=np.bool_)[which]

@@ -5,10 +5,11 @@ Reads headers only; `blocks` reads cells. Knows nothing of paths, nor of other r
 
 import os
 from dataclasses import dataclass
-from typing import cast
+from typing import Any, cast
 
 import numpy as np
 from affine import Affine
+from numpy.typing import NDArray
 from rasterio.enums import ColorInterp, MaskFlags
 from rasterio.io import DatasetReader
 
@@ -97,9 +98,8 @@ def _header(
     unit_m, stated = _unit(source, dataset.units[band], system.vertical_unit_m, name)
     transform = dataset.transform
     width, height = dataset.width, dataset.height
-    corners = [transform @ corner for corner in ((0, 0), (width, 0), (0, height), (width, height))]
-    xs, ys = zip(*corners, strict=True)
-    x, y = transform @ (width / 2.0, height / 2.0)
+    xs, ys = on_plane(transform, np.array([0, width, 0, width]), np.array([0, 0, height, height]))
+    x, y = (float(v) for v in on_plane(transform, np.array(width / 2.0), np.array(height / 2.0)))
     cell_x, cell_y = _cell_on_ground(transform, system.horizontal, x, y)
     if not (np.isfinite(cell_x) and np.isfinite(cell_y) and min(cell_x, cell_y) > 0.0):
         raise RasterError(
@@ -122,7 +122,7 @@ def _header(
         dtype=str(dataset.dtypes[band]),
         driver=str(dataset.driver),
         transform=transform,
-        bounds=(min(xs), min(ys), max(xs), max(ys)),
+        bounds=(float(xs.min()), float(ys.min()), float(xs.max()), float(ys.max())),
         crs_name=system.name,
         crs_text=system.horizontal,
         period=system.period,
@@ -204,6 +204,12 @@ def _cell_on_ground(transform: Affine, crs_text: str, x: float, y: float) -> tup
     lon, lat = transformer(crs_text, WGS84).transform(xs, ys)
     lengths = inverse_many(lat[0::2], lon[0::2], lat[1::2], lon[1::2]).distance_m
     return float(lengths[0]), float(lengths[1])
+
+
+def on_plane(transform: Affine, column: NDArray[Any], row: NDArray[Any]) -> tuple[NDArray[Any], NDArray[Any]]:
+    """What `transform` makes of arrays of columns and rows; inverse transforms go the other way."""
+    t = transform
+    return t.a * column + t.b * row + t.c, t.d * column + t.e * row + t.f
 
 
 def base_name(path: str) -> str:

@@ -16,7 +16,7 @@ from fellspan.geodesy.geodesic import GeodesicPath
 from fellspan.terrain.blocks import bilinear
 from fellspan.terrain.handles import HandlePool, gdal
 from fellspan.terrain.placing import PathPlacing, Placing, ScatteredPlacing
-from fellspan.terrain.raster_file import RasterFile
+from fellspan.terrain.raster_file import RasterFile, on_plane
 from fellspan.terrain.seams import Seam, SeamBook, spread
 from fellspan.terrain.sources import CoverSource, RasterSource
 from fellspan.terrain.tiles import names_of, open_source
@@ -234,9 +234,7 @@ def _in_cells(file: RasterFile, x: Floats, y: Floats) -> tuple[Floats, Floats, N
     if file.period is not None:
         middle = (file.bounds[0] + file.bounds[2]) / 2.0
         x = x + file.period * np.round((middle - x) / file.period)
-    inverse = ~file.transform
-    column = inverse.a * x + inverse.b * y + inverse.c
-    row = inverse.d * x + inverse.e * y + inverse.f
+    column, row = on_plane(~file.transform, x, y)
     inside = (column >= -_EDGE_CELLS) & (column <= file.width + _EDGE_CELLS)
     inside &= (row >= -_EDGE_CELLS) & (row <= file.height + _EDGE_CELLS)
     return column, row, inside
