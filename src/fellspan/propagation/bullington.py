@@ -44,7 +44,7 @@ class _Path:
         slope_b = _highest((top - b_) / self.from_b)
         cross = (b - a + slope_b * length) / (slope_a + slope_b)
         if self.from_a.shape[-1]:
-            # The rays cross between the two horizons; at grazing, where differences cancel, rounding must not lead off the path.
+            # The rays cross between the two horizons; at grazing, where differences cancel, rounding must not lead out.
             cross = np.clip(cross, self.from_a[..., 0], self.from_a[..., -1])
         cross = np.where(slope_a + slope_b == 0.0, length / 2.0, cross)
         above = a + slope_a * cross - (a * (length - cross) + b * cross) / length
@@ -114,7 +114,8 @@ def effective_heights_m(
     Notes
     -----
     Rec. ITU-R P.526-16, section 4.5.2, equations (58) to (64): a straight line through the ground with the same area and
-    moment, lowered where terrain stands in the way and never above the ground at the ends. Source key: p526-16-delta-bullington.
+    moment, lowered where terrain stands in the way and never above the ground at the ends. Source key:
+    p526-16-delta-bullington.
     """
     d, h = as_floats(distance_m), as_floats(ground_m)
     a, b = as_floats(a_amsl_m), as_floats(b_amsl_m)

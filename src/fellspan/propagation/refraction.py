@@ -136,7 +136,7 @@ def k_exceeded_99_9(distance_m: ArrayLike) -> Result:
     -----
     Rec. ITU-R P.530-19, section 2.2.2.1, equation (4), which fits Fig. 2: 157 / (144 + 2670/d), d in km. The curve of the
     figure runs from about 18 to 200 km. Beyond 200 km the formula is used as it stands. Below 18 km it would fall steeply
-    (0.38 at 10 km) with nothing measured behind it: our own rule is to hold the 18 km value, 0.5375. Source key: p530-19-k999.
+    (0.38 at 10 km) with nothing measured behind it: our own rule is to hold the 18 km value, 0.537. Source key: p530-19-k999.
     """
     distance_km = np.maximum(not_negative(distance_m), K_FORMULA_LOW_M) / 1000.0
     return as_result(157.0 / (144.0 + 2670.0 / distance_km))  # (4)
