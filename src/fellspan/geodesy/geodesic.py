@@ -21,6 +21,8 @@ _SERIES_ERROR_M = 1e-6
 """What the degree of the series is chosen for; the tested contract is a thousand times looser (1 mm)."""
 _OVERSHOOT_M = 1e-3
 """Distances may leave the path by this much, so that sums of rounded steps still end on it."""
+_POLE_M = 1e-3
+"""Closer to a pole than this the rounding of the series would turn the longitude, so the exact one is taken."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -176,8 +178,12 @@ class GeodesicPath:
         else:
             t = distance * (2.0 / self.length_m) - 1.0 if self.length_m > 0.0 else np.zeros_like(distance)
             x, y, z = chebyshev.chebval(t, self._series)
-            latitude = np.degrees(np.arctan2(z, (1.0 - _E2) * np.hypot(x, y)))
-            turn = self._continued(np.degrees(np.arctan2(y, x)))
+            off_axis = np.hypot(x, y)
+            latitude = np.degrees(np.arctan2(z, (1.0 - _E2) * off_axis))
+            turn = np.asarray(self._continued(np.degrees(np.arctan2(y, x))))
+            polar = off_axis < _POLE_M
+            if polar.any():
+                turn[polar] = self._solve(distance[polar])[1]
         return latitude, self.a.longitude_deg + turn
 
     def _solve(self, distance: NDArray[np.float64]) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
