@@ -1,0 +1,195 @@
+"""links.csv, a row for each link, and a profile CSV for each path; shows numbers and computes none.
+
+Columns carry their unit. Text from users cannot start a formula; numbers stay numbers.
+"""
+
+from fellspan.exports.text import Cell, csv_text, rounded
+from fellspan.links.result import CriterionResult, EndResult, LinkResult
+from fellspan.planning.plan import LinkFailure, LinkPlan, StudyPlan
+from fellspan.report.naming import page_name, slug
+from fellspan.vocabulary import COVER_KINDS
+
+MEASURED_WORDS = ("no", "ground", "ground and top")
+NOT_ASSESSED = "not assessed"
+
+LINK_COLUMNS = (
+    "name",
+    "a",
+    "b",
+    "verdict",
+    "signal_verdict",
+    "basis",
+    "confidence",
+    "confidence_asked",
+    "distance_m",
+    "bearing_ab_deg",
+    "bearing_ba_deg",
+    "tilt_ab_deg",
+    "tilt_ba_deg",
+    "frequency_hz",
+    "polarization",
+    *(
+        f"{end}_{column}"
+        for end in ("a", "b")
+        for column in (
+            "latitude_deg",
+            "longitude_deg",
+            "ground_amsl_m",
+            "roof_agl_m",
+            "antenna_amsl_m",
+            "antenna_agl_m",
+            "magnetic_bearing_deg",
+        )
+    ),
+    "criterion",
+    "k",
+    "required_fraction",
+    "worst_fraction",
+    "worst_at_m",
+    "clearance_m",
+    "required_m",
+    "shortfall_m",
+    "shortfall_at_m",
+    "cause",
+    "extra_height_a_m",
+    "extra_height_b_m",
+    "extra_height_both_m",
+    "free_space_loss_db",
+    "diffraction_loss_db",
+    "received_at_a_dbm",
+    "received_at_b_dbm",
+    "margin_at_a_db",
+    "margin_at_b_db",
+    "wanted_margin_db",
+    "reason",
+    "page",
+)
+
+
+def profile_name(index: int, link_name: str) -> str:
+    """File name of the profile of a link; `index` counts from 0 in the order of the plan."""
+    tail = slug(link_name)
+    return f"profile-{index + 1:02d}-{tail}.csv" if tail else f"profile-{index + 1:02d}.csv"
+
+
+def links_csv(plan: StudyPlan) -> str:
+    """One row for each planned link, then one for each link that could not be assessed.
+
+    The columns from `criterion` to `extra_height_both_m` are those of the governing criterion.
+    """
+    rows = [_link_row(linked.result, page_name(i, linked.result.name)) for i, linked in enumerate(plan.links)]
+    rows += [_failure_row(failure) for failure in plan.failures]
+    return csv_text(LINK_COLUMNS, rows)
+
+
+def profile_csv(linked: LinkPlan) -> str:
+    """Every sample of a path: position, ground, cover, surface, the ray, and bulge and need of each criterion.
+
+    `surface_m` is what the ray must clear, with the antennas' own buildings taken out; the levels are m above sea level.
+    """
+    profile, levels = linked.profile, linked.levels
+    header = [
+        "distance_m",
+        "latitude_deg",
+        "longitude_deg",
+        "ground_m",
+        "cover_m",
+        "cover_kind",
+        "obstacle",
+        "surface_m",
+        "sigma_m",
+        "measured",
+        "source",
+        "available_m",
+        "fresnel_radius_m",
+    ]
+    for criterion in linked.result.clearance:
+        header += [f"bulge_m ({criterion.criterion})", f"need_m ({criterion.criterion})"]
+    columns: list[list[Cell]] = [
+        [rounded(value) for value in profile.distance_m.tolist()],
+        [rounded(value, 8) for value in profile.latitude_deg.tolist()],
+        [rounded(value, 8) for value in profile.longitude_deg.tolist()],
+        [rounded(value) for value in profile.ground_m.tolist()],
+        [rounded(value) for value in profile.cover_m.tolist()],
+        [COVER_KINDS[code] for code in profile.cover_kind.tolist()],
+        [profile.obstacles[code].name if code >= 0 else None for code in profile.obstacle_index.tolist()],
+        [rounded(value) for value in levels.surface_m.tolist()],
+        [rounded(value) for value in profile.sigma_m.tolist()],
+        [MEASURED_WORDS[code] for code in profile.measured.tolist()],
+        [profile.sources[code] if code >= 0 else None for code in profile.source.tolist()],
+        [rounded(value) for value in levels.available_m.tolist()],
+        [rounded(value) for value in levels.fresnel_radius_m.tolist()],
+    ]
+    for bulge, need in zip(levels.bulge_m, levels.need_m, strict=True):
+        columns += [[rounded(value) for value in bulge.tolist()], [rounded(value) for value in need.tolist()]]
+    return csv_text(header, zip(*columns, strict=True))
+
+
+def _end_cells(end: EndResult) -> list[Cell]:
+    return [
+        rounded(end.latitude_deg, 8),
+        rounded(end.longitude_deg, 8),
+        rounded(end.ground_m),
+        rounded(end.roof_m),
+        rounded(end.antenna_amsl_m),
+        rounded(end.antenna_agl_m),
+        rounded(end.magnetic_bearing_deg),
+    ]
+
+
+def _criterion_cells(criterion: CriterionResult) -> list[Cell]:
+    return [
+        criterion.criterion,
+        rounded(criterion.k, 4),
+        rounded(criterion.required_fraction, 4),
+        rounded(criterion.worst_fraction, 4),
+        rounded(criterion.worst_at_m),
+        rounded(criterion.clearance_m),
+        rounded(criterion.required_m),
+        rounded(criterion.shortfall_m),
+        rounded(criterion.shortfall_at_m),
+        criterion.cause,
+        rounded(criterion.extra_height_m.a),
+        rounded(criterion.extra_height_m.b),
+        rounded(criterion.extra_height_m.both),
+    ]
+
+
+def _link_row(result: LinkResult, page: str) -> list[Cell]:
+    return [
+        result.name,
+        result.a,
+        result.b,
+        result.verdict,
+        result.signal_verdict,
+        result.basis,
+        rounded(result.confidence, 4),
+        rounded(result.confidence_asked, 4),
+        rounded(result.distance_m),
+        rounded(result.bearing_ab_deg, 4),
+        rounded(result.bearing_ba_deg, 4),
+        rounded(result.tilt_ab_deg, 4),
+        rounded(result.tilt_ba_deg, 4),
+        result.frequency_hz,
+        result.polarization,
+        *_end_cells(result.ends.a),
+        *_end_cells(result.ends.b),
+        *_criterion_cells(result.clearance[result.governing]),
+        rounded(result.losses_db.free_space),
+        rounded(result.losses_db.diffraction),
+        rounded(result.received_dbm.at_a),
+        rounded(result.received_dbm.at_b),
+        rounded(result.margin_db.at_a),
+        rounded(result.margin_db.at_b),
+        rounded(result.wanted_margin_db),
+        result.reasons[0] if result.reasons else None,
+        page,
+    ]
+
+
+def _failure_row(failure: LinkFailure) -> list[Cell]:
+    row: dict[str, Cell] = dict.fromkeys(LINK_COLUMNS)
+    link = failure.link
+    row |= {"name": link.name, "a": link.a.name, "b": link.b.name, "verdict": NOT_ASSESSED}
+    row |= {"frequency_hz": link.radio.frequency_hz, "reason": str(failure.error)}
+    return list(row.values())
