@@ -1,0 +1,254 @@
+"""Puts the tables of a study file together into a `Study`: names looked up, positions read, paths resolved.
+
+Sees that files exist, and opens none.
+"""
+
+import re
+from collections import Counter
+from collections.abc import Mapping
+from pathlib import Path
+from typing import Literal, TypeVar
+
+from fellspan.errors import FellspanError, LinkError
+from fellspan.geodesy.coordinates import parse_position
+from fellspan.geodesy.position import Position
+from fellspan.links.criteria import Criterion
+from fellspan.links.site import Antenna, Link, Radio, Site
+from fellspan.planning.inputs import Study, TerrainInputs
+from fellspan.propagation.refraction import k_from_gradient
+from fellspan.study.messages import Problem, did_you_mean, raise_problems
+from fellspan.study.schema import (
+    AntennaTable,
+    CriteriaTable,
+    LinkTable,
+    RadioTable,
+    RasterTable,
+    SiteTable,
+    StudyFile,
+    TerrainTable,
+)
+from fellspan.terrain.sources import CoverSource, ObstacleSource, RasterSource, SurveySource
+
+_Row = TypeVar("_Row", SiteTable, RadioTable, AntennaTable, LinkTable)
+_DEFAULT_MEDIAN_K = 4.0 / 3.0
+_ELSEWHERE = re.compile(r"[a-z][a-z0-9+.-]+:|/vsi", re.IGNORECASE)
+"""A name that the raster library resolves by itself: a URL, a virtual file, a container with a part of it."""
+
+
+def assemble(study_file: StudyFile, *, path: Path) -> Study:
+    """The study that the tables of the file at `path` describe; a StudyError if they do not fit together."""
+    assembler = _Assembler(study_file, path)
+    terrain = assembler.terrain(study_file.terrain)
+    links = assembler.links()
+    if assembler.problems:
+        raise_problems(path.name, assembler.problems)
+    stamp, criteria = study_file.study, study_file.criteria
+    return Study(
+        title=stamp.title,
+        planner=stamp.planner,
+        revision=stamp.revision,
+        date=stamp.date,
+        growth_years=stamp.growth_years,
+        terrain=terrain,
+        links=links,
+        preset=criteria.preset or "p530-temperate",
+        criteria=_rules(criteria),
+        median_k=_median_k(criteria),
+        confidence=criteria.confidence,
+        tiles_url=study_file.map.tiles_url,
+        tiles_credit=study_file.map.tiles_credit,
+        path=path,
+        notes=tuple(assembler.notes),
+    )
+
+
+def _rules(criteria: CriteriaTable) -> tuple[Criterion, ...]:
+    return tuple(
+        Criterion(name=rule.name, k=rule.k, fraction=rule.fraction, source="rule of the study file")
+        for rule in criteria.rules or ()
+    )
+
+
+def _median_k(criteria: CriteriaTable) -> float:
+    if criteria.gradient is not None:
+        return float(k_from_gradient(criteria.gradient))
+    return _DEFAULT_MEDIAN_K if criteria.median_k is None else criteria.median_k
+
+
+class _Assembler:
+    """Works through the tables and gathers problems, so that one run tells how many there are."""
+
+    def __init__(self, study_file: StudyFile, path: Path) -> None:
+        self.folder = path.parent
+        self.problems: list[Problem] = []
+        self.notes: list[str] = []
+        self.tables = study_file
+        self.sites = self._by_name("site", study_file.site)
+        self.radios = self._by_name("radio", study_file.radio)
+        self.antennas = self._by_name("antenna", study_file.antenna)
+        self._by_name("link", study_file.link)
+        self.positions: dict[str, Position] = {}
+        for name, site in self.sites.items():
+            self._read_position(name, site)
+
+    def _by_name(self, table: str, rows: tuple[_Row, ...]) -> dict[str, _Row]:
+        for name, count in Counter(row.name for row in rows).items():
+            if count > 1:
+                self.problems.append(
+                    Problem(f"{table} '{name}'", f"the name stands {count} times", ("give each one a name of its own",))
+                )
+        return {row.name: row for row in rows}
+
+    def _read_position(self, name: str, site: SiteTable) -> None:
+        text, crs = site.at, site.crs
+        if site.latitude is not None:
+            text, crs = f"{site.latitude}, {site.longitude}", None
+        elif site.easting is not None:
+            text = f"{site.easting!r}, {site.northing!r}"
+        try:
+            parsed = parse_position(text or "", crs=crs)
+        except FellspanError as error:
+            self.problems.append(Problem(f"site '{name}', position", error.what, error.details))
+            return
+        self.positions[name] = parsed.position
+        if parsed.caution:
+            self.notes.append(f"site '{name}': {parsed.caution}")
+
+    def links(self) -> tuple[Link, ...]:
+        """The links whose parts are all there; what is not is added to the problems."""
+        return tuple(link for table in self.tables.link if (link := self._link(table)) is not None)
+
+    def _link(self, table: LinkTable) -> Link | None:
+        where = f"link '{table.name}'"
+        a, b = self._site(table, "a"), self._site(table, "b")
+        radio = self._named(f"{where}, radio", "radio", table.radio, self.radios)
+        antenna_a = self._antenna(where, "antenna_a", table.antenna_a or table.antenna, table.feeder_loss_a)
+        antenna_b = self._antenna(where, "antenna_b", table.antenna_b or table.antenna, table.feeder_loss_b)
+        if a is None or b is None or radio is None or antenna_a is None or antenna_b is None:
+            return None
+        return Link(
+            name=table.name,
+            a=a,
+            b=b,
+            radio=Radio(
+                name=radio.name,
+                frequency_hz=radio.frequency,
+                power_dbm=radio.power,
+                threshold_dbm=radio.threshold,
+                polarization=radio.polarization,
+            ),
+            antenna_a=antenna_a,
+            antenna_b=antenna_b,
+            wanted_margin_db=table.wanted_margin,
+        )
+
+    def _named(self, where: str, kind: str, name: str, known: Mapping[str, _Row]) -> _Row | None:
+        if name in known:
+            return known[name]
+        listed = ", ".join(known) if known else f"none; add a [[{kind}]] table"
+        self.problems.append(
+            Problem(
+                where,
+                f"there is no {kind} named '{name}'",
+                (*did_you_mean(name, known), f"{kind}s of this file: {listed}"),
+            )
+        )
+        return None
+
+    def _antenna(self, where: str, key: str, name: str | None, feeder_loss_db: float) -> Antenna | None:
+        if name is None:
+            return Antenna(feeder_loss_db=feeder_loss_db)
+        table = self._named(f"{where}, {key}", "antenna", name, self.antennas)
+        return None if table is None else Antenna(name=table.name, gain_dbi=table.gain, feeder_loss_db=feeder_loss_db)
+
+    def _site(self, link: LinkTable, end: Literal["a", "b"]) -> Site | None:
+        """The site at an end, with what the link states for itself in place of the site's own."""
+        where = f"link '{link.name}', {end}"
+        table = self._named(where, "site", link.a if end == "a" else link.b, self.sites)
+        if table is None or table.name not in self.positions:
+            return None
+        height = link.height_a if end == "a" else link.height_b
+        roof_edge = link.roof_edge_a if end == "a" else link.roof_edge_b
+        parapet = link.parapet_a if end == "a" else link.parapet_b
+        given = height or table.height
+        if given is None or given.reference is None:
+            self.problems.append(
+                Problem(
+                    f"site '{table.name}'",
+                    f"there is no antenna height, and link '{link.name}' gives none",
+                    (f'add height = "12 m above ground" to the site, or height_{end} to the link',),
+                )
+            )
+            return None
+        # A roof edge of the site is about its roof: it does not follow the antenna to a mast beside the building.
+        keeps_roof = height is None or height.reference == "roof"
+        try:
+            return Site(
+                name=table.name,
+                position=self.positions[table.name],
+                height_m=given.height_m,
+                height_reference=given.reference,
+                roof_m=table.roof,
+                ground_amsl_m=table.ground,
+                vertical_datum=table.datum,
+                roof_edge_m=roof_edge if roof_edge is not None else table.roof_edge if keeps_roof else None,
+                parapet_m=parapet if parapet is not None else table.parapet if keeps_roof else None,
+            )
+        except LinkError as error:
+            self.problems.append(Problem("", error.what, error.details))
+            return None
+
+    def terrain(self, table: TerrainTable) -> TerrainInputs:
+        """The files of [terrain], resolved; a file that is not there is a problem."""
+        if not table.ground and not table.surface:
+            self.problems.append(
+                Problem(
+                    "terrain",
+                    "there is neither ground nor surface",
+                    ('add ground = "FILE" (bare ground) or surface = "FILE" (roofs and treetops included)',),
+                )
+            )
+        return TerrainInputs(
+            ground=tuple(self._raster("ground", row) for row in table.ground),
+            surface=tuple(self._raster("surface", row) for row in table.surface),
+            cover=tuple(
+                CoverSource(
+                    path=self._path("cover", row.path),
+                    kind=row.kind,
+                    vertical_unit=row.unit,
+                    error_m=row.error,
+                    growth_m_per_year=row.growth,
+                    band=row.band,
+                )
+                for row in table.cover
+            ),
+            obstacles=tuple(ObstacleSource(path=self._path("obstacles", row.path)) for row in table.obstacles),
+            survey=tuple(SurveySource(path=self._path("survey", row.path)) for row in table.survey),
+            gaps=table.gaps,
+            sea_level_m=table.sea_level,
+            step_m=table.step,
+        )
+
+    def _raster(self, role: Literal["ground", "surface"], row: RasterTable) -> RasterSource:
+        return RasterSource(
+            path=self._path(role, row.path),
+            role=role,
+            vertical_unit=row.unit,
+            vertical_datum=row.datum,
+            error_m=row.error,
+            band=row.band,
+        )
+
+    def _path(self, key: str, text: str) -> str | Path:
+        if _ELSEWHERE.match(text):
+            return text
+        resolved = self.folder / Path(text).expanduser()
+        if not resolved.exists():
+            self.problems.append(
+                Problem(
+                    f"terrain.{key}",
+                    f"there is no file '{text}'",
+                    (f"looked for at {resolved}", "paths are relative to the study file"),
+                )
+            )
+        return resolved

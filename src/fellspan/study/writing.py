@@ -1,0 +1,264 @@
+"""Writes a `Study` as the text of a study file that `load_study` reads back to the same study.
+
+Makes text only: where it goes, and whether something stands there already, is the caller's business.
+"""
+
+import math
+import os
+import re
+from collections.abc import Iterable
+from pathlib import Path
+
+from fellspan.errors import StudyError
+from fellspan.links.criteria import Criterion
+from fellspan.links.site import Antenna, Link, Radio, Site
+from fellspan.planning.inputs import Study
+from fellspan.terrain.sources import CoverSource, RasterSource
+
+_ABOVE = {"ground": "above ground", "roof": "above roof", "sea": "above sea level"}
+_BANDS = (("GHz", 1e9), ("MHz", 1e6), ("kHz", 1e3))
+_MUST_ESCAPE = re.compile(r'["\\\x00-\x1f\x7f]')
+_SHORT_ESCAPES = {'"': '\\"', "\\": "\\\\", "\n": "\\n", "\t": "\\t", "\r": "\\r"}
+
+
+def study_text(study: Study, *, folder: Path) -> str:
+    """The text of a study file for `study` that is to stand in `folder`.
+
+    Raises
+    ------
+    StudyError
+        Two different sites, radios or antennas bear the same name, which a study file cannot say.
+    """
+    sites, radios, antennas = _sites(study.links), _radios(study.links), _antennas(study.links)
+    blocks = [
+        _table(
+            "[study]",
+            ("title", quoted(study.title)),
+            ("planner", quoted(study.planner) if study.planner else None),
+            ("revision", quoted(study.revision) if study.revision else None),
+            ("date", study.date.isoformat()),
+            ("growth_years", _number(study.growth_years) if study.growth_years else None),
+        ),
+        _terrain(study, folder),
+        *_criteria(study),
+        *(_site(site) for site in sites.values()),
+        *(_radio(radio) for radio in radios.values()),
+        *(
+            _table("[[antenna]]", ("name", quoted(name)), ("gain", None if gain is None else f'"{_number(gain)} dBi"'))
+            for name, gain in antennas.items()
+        ),
+        *(_link(link, sites) for link in study.links),
+    ]
+    if study.tiles_url is not None:
+        blocks.append(
+            _table("[map]", ("tiles_url", quoted(study.tiles_url)), ("tiles_credit", quoted(study.tiles_credit)))
+        )
+    return "\n".join(blocks)
+
+
+def quoted(text: str) -> str:
+    """A TOML basic string: quotes, backslashes and control characters escaped."""
+    return '"' + _MUST_ESCAPE.sub(lambda found: _SHORT_ESCAPES.get(found[0], f"\\u{ord(found[0]):04x}"), text) + '"'
+
+
+def _table(heading: str, *pairs: tuple[str, str | None]) -> str:
+    return "\n".join([heading, *(f"{key} = {value}" for key, value in pairs if value is not None), ""])
+
+
+def _number(value: float) -> str:
+    """The shortest text that reads back to the same float, without a needless '.0'."""
+    if math.isinf(value):
+        return "inf" if value > 0 else "-inf"
+    text = repr(float(value))
+    return text[:-2] if text.endswith(".0") else text
+
+
+def _metres(value: float | None) -> str | None:
+    return None if value is None else f'"{_number(value)} m"'
+
+
+def _frequency(frequency_hz: float) -> str:
+    for unit, scale in _BANDS:
+        text = _number(round(frequency_hz / scale, 9))
+        if frequency_hz >= scale and float(text) * scale == frequency_hz:
+            return f'"{text} {unit}"'
+    return f'"{_number(frequency_hz)} Hz"'
+
+
+def _degrees(value: float, positive: str, negative: str) -> str:
+    return f"{_number(abs(value))} {negative if value < 0 else positive}"
+
+
+def _height(site: Site) -> str:
+    return f'"{_number(site.height_m)} m {_ABOVE[site.height_reference]}"'
+
+
+def _terrain(study: Study, folder: Path) -> str:
+    terrain = study.terrain
+    return _table(
+        "[terrain]",
+        ("ground", _files(_raster(source, folder) for source in terrain.ground)),
+        ("surface", _files(_raster(source, folder) for source in terrain.surface)),
+        ("cover", _files(_cover(source, folder) for source in terrain.cover)),
+        ("obstacles", _files(_path(source.path, folder) for source in terrain.obstacles)),
+        ("survey", _files(_path(source.path, folder) for source in terrain.survey)),
+        ("gaps", quoted(terrain.gaps) if terrain.gaps != "error" else None),
+        ("sea_level", _metres(terrain.sea_level_m) if terrain.sea_level_m else None),
+        ("step", _metres(terrain.step_m)),
+    )
+
+
+def _files(items: Iterable[str]) -> str | None:
+    listed = list(items)
+    if not listed:
+        return None
+    return listed[0] if len(listed) == 1 else "[\n" + "".join(f"  {item},\n" for item in listed) + "]"
+
+
+def _path(path: str | Path, folder: Path) -> str:
+    """A path relative to the study's folder where it lies within it, else absolute; a URL as it is."""
+    if isinstance(path, str):
+        return quoted(path)
+    absolute = Path(os.path.abspath(path))
+    home = Path(os.path.abspath(folder))
+    return quoted((absolute.relative_to(home) if absolute.is_relative_to(home) else absolute).as_posix())
+
+
+def _inline(path: str, pairs: Iterable[tuple[str, str | None]]) -> str:
+    stated = [f"{key} = {value}" for key, value in pairs if value is not None]
+    return f"{{ path = {path}, {', '.join(stated)} }}" if stated else path
+
+
+def _raster(source: RasterSource, folder: Path) -> str:
+    return _inline(
+        _path(source.path, folder),
+        (
+            ("unit", quoted(source.vertical_unit) if source.vertical_unit else None),
+            ("datum", quoted(source.vertical_datum) if source.vertical_datum else None),
+            ("error", _metres(source.error_m)),
+            ("band", str(source.band) if source.band != 1 else None),
+        ),
+    )
+
+
+def _cover(source: CoverSource, folder: Path) -> str:
+    growth = source.growth_m_per_year
+    return _inline(
+        _path(source.path, folder),
+        (
+            ("kind", quoted(source.kind)),
+            ("unit", quoted(source.vertical_unit) if source.vertical_unit else None),
+            ("error", _metres(source.error_m)),
+            ("growth", f'"{_number(growth)} m per year"' if growth else None),
+            ("band", str(source.band) if source.band != 1 else None),
+        ),
+    )
+
+
+def _criteria(study: Study) -> Iterable[str]:
+    yield _table(
+        "[criteria]",
+        ("preset", None if study.criteria else quoted(study.preset)),
+        ("median_k", _number(study.median_k)),
+        ("confidence", _number(study.confidence)),
+    )
+    for rule in study.criteria:
+        yield _rule(rule)
+
+
+def _rule(rule: Criterion) -> str:
+    return _table(
+        "[[criteria.rules]]", ("name", quoted(rule.name)), ("k", _number(rule.k)), ("fraction", _number(rule.fraction))
+    )
+
+
+def _site(site: Site) -> str:
+    position = site.position
+    at = f"{_degrees(position.latitude_deg, 'N', 'S')}, {_degrees(position.longitude_deg, 'E', 'W')}"
+    return _table(
+        "[[site]]",
+        ("name", quoted(site.name)),
+        ("at", quoted(at)),
+        ("height", _height(site)),
+        ("roof", _metres(site.roof_m)),
+        ("ground", _metres(site.ground_amsl_m)),
+        ("datum", quoted(site.vertical_datum) if site.vertical_datum else None),
+    )
+
+
+def _radio(radio: Radio) -> str:
+    return _table(
+        "[[radio]]",
+        ("name", quoted(radio.name)),
+        ("frequency", _frequency(radio.frequency_hz)),
+        ("power", None if radio.power_dbm is None else f'"{_number(radio.power_dbm)} dBm"'),
+        ("threshold", None if radio.threshold_dbm is None else f'"{_number(radio.threshold_dbm)} dBm"'),
+        ("polarization", quoted(radio.polarization)),
+    )
+
+
+def _link(link: Link, sites: dict[str, Site]) -> str:
+    return _table(
+        "[[link]]",
+        ("name", quoted(link.name)),
+        ("a", quoted(link.a.name)),
+        ("b", quoted(link.b.name)),
+        ("radio", quoted(link.radio.name)),
+        ("antenna_a", _antenna_name(link.antenna_a)),
+        ("antenna_b", _antenna_name(link.antenna_b)),
+        ("feeder_loss_a", _decibels(link.antenna_a.feeder_loss_db)),
+        ("feeder_loss_b", _decibels(link.antenna_b.feeder_loss_db)),
+        ("wanted_margin", f'"{_number(link.wanted_margin_db)} dB"'),
+        ("height_a", _own_height(link.a, sites)),
+        ("height_b", _own_height(link.b, sites)),
+        ("roof_edge_a", _metres(link.a.roof_edge_m)),
+        ("roof_edge_b", _metres(link.b.roof_edge_m)),
+        ("parapet_a", _metres(link.a.parapet_m)),
+        ("parapet_b", _metres(link.b.parapet_m)),
+    )
+
+
+def _decibels(value: float) -> str | None:
+    return f'"{_number(value)} dB"' if value else None
+
+
+def _own_height(end: Site, sites: dict[str, Site]) -> str | None:
+    written = sites[end.name]
+    same = (written.height_m, written.height_reference) == (end.height_m, end.height_reference)
+    return None if same else _height(end)
+
+
+def _antenna_name(antenna: Antenna) -> str | None:
+    return quoted(antenna.name) if _is_named(antenna) else None
+
+
+def _is_named(antenna: Antenna) -> bool:
+    """Whether a user described it; an end of which nothing is known has the default name and no gain."""
+    return antenna.gain_dbi is not None or antenna.name != Antenna().name
+
+
+def _sites(links: Iterable[Link]) -> dict[str, Site]:
+    """Sites by name. Heights and roof edges may differ between links, since a link can state its own; the rest may not."""
+    found: dict[str, Site] = {}
+    for site in (end for link in links for end in (link.a, link.b)):
+        first = found.setdefault(site.name, site)
+        for name in ("position", "roof_m", "ground_amsl_m", "vertical_datum"):
+            if getattr(first, name) != getattr(site, name):
+                raise StudyError(f"two different sites are called '{site.name}'", "give each one a name of its own")
+    return found
+
+
+def _radios(links: Iterable[Link]) -> dict[str, Radio]:
+    found: dict[str, Radio] = {}
+    for link in links:
+        if found.setdefault(link.radio.name, link.radio) != link.radio:
+            raise StudyError(f"two different radios are called '{link.radio.name}'", "give each one a name of its own")
+    return found
+
+
+def _antennas(links: Iterable[Link]) -> dict[str, float | None]:
+    found: dict[str, float | None] = {}
+    for antenna in (end for link in links for end in (link.antenna_a, link.antenna_b)):
+        if _is_named(antenna) and found.setdefault(antenna.name, antenna.gain_dbi) != antenna.gain_dbi:
+            raise StudyError(f"two different antennas are called '{antenna.name}'", "give each one a name of its own")
+    return found
