@@ -83,6 +83,8 @@ class PathProfile:
     """True where a surface raster or cover raster covers the whole path (obstacle files alone do not make it so)."""
     vertical_datum: str | None
     """As the rasters or the study state it; None where nobody did."""
+    name: str | None = None
+    """The path's name, where it was given; survey rows by link and distance go by it."""
     notes: tuple[str, ...] = ()
     """Things a person must know: seams found, datum unknown, sea filled in ..."""
 

@@ -1,0 +1,55 @@
+"""Stretches without data, and the sentence that names one.
+
+Knows samples and the bounds of rasters; opens nothing.
+"""
+
+import numpy as np
+
+from fellspan.errors import TerrainGapError
+from fellspan.terrain.assemble import Samples
+from fellspan.terrain.profile import Gap, PathProfile
+from fellspan.terrain.stack import RasterStack
+
+
+def gaps_of(samples: Samples, ground: RasterStack) -> tuple[Gap, ...]:
+    """The stretches on which the ground is not known, from the first to the last sample without data."""
+    missing = ~np.isfinite(samples.ground_m)
+    if not missing.any():
+        return ()
+    change = np.diff(np.concatenate(([0], missing.astype(np.int8), [0])))
+    starts, stops = np.flatnonzero(change > 0), np.flatnonzero(change < 0) - 1
+    raster = _listed(ground.names)
+    return tuple(
+        Gap(from_m=float(samples.distance_m[i]), to_m=float(samples.distance_m[j]), raster=raster)
+        for i, j in zip(starts, stops, strict=True)
+    )
+
+
+def gap_error(ground: RasterStack, profile: PathProfile) -> TerrainGapError:
+    """The error that names the first gap, in km from A, with the raster, where it ends, and the remedy."""
+    gap = profile.gaps[0]
+    more = f", and {len(profile.gaps) - 1} more stretches" if len(profile.gaps) > 1 else ""
+    called = f"'{profile.name}'" if profile.name else "the path"
+    ends = ""
+    if gap.from_m <= 0.0 and gap.to_m >= profile.length_m:
+        middle = profile.distance_m.size // 2
+        here = _place(profile, middle)
+        ends = f", which has nothing on the whole path (middle: {here})"
+    elif gap.from_m <= 0.0 or gap.to_m >= profile.length_m:
+        finite = np.flatnonzero(np.isfinite(profile.ground_m))
+        i = int(finite[0] if gap.from_m <= 0.0 else finite[-1])
+        ends = f", which ends at {_place(profile, i)}"
+    return TerrainGapError(
+        f"terrain has no data from {gap.from_m / 1000.0:.2f} km to {gap.to_m / 1000.0:.2f} km of {called}{more}",
+        f"raster: {gap.raster}{ends}",
+        'add a raster that covers the stretch, or set terrain.gaps = "sea" if it is open water',
+    )
+
+
+def _place(profile: PathProfile, i: int) -> str:
+    latitude, longitude = profile.latitude_deg[i], (profile.longitude_deg[i] + 180.0) % 360.0 - 180.0
+    return f"{abs(latitude):.4f} {'N' if latitude >= 0 else 'S'} {abs(longitude):.4f} {'E' if longitude >= 0 else 'W'}"
+
+
+def _listed(names: tuple[str, ...]) -> str:
+    return ", ".join(names) if len(names) <= 3 else f"{names[0]} and {len(names) - 1} more"

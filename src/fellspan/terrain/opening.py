@@ -1,0 +1,178 @@
+"""Turns what a caller gives for each kind of terrain data into opened layers, with datums compared.
+
+Opens files; samples nothing.
+"""
+
+import math
+from collections.abc import Iterable, Sequence
+from dataclasses import replace
+from pathlib import Path
+from typing import TypeAlias, TypeVar, get_args
+
+from fellspan.errors import TerrainError, VerticalDatumError
+from fellspan.terrain.assemble import Layers
+from fellspan.terrain.obstacle_files import read_obstacles
+from fellspan.terrain.obstacles import Obstacle, ObstacleIndex
+from fellspan.terrain.sources import CoverSource, ObstacleSource, RasterSource, SurveySource
+from fellspan.terrain.stack import RasterStack
+from fellspan.terrain.survey import SurveyFile, read_survey
+from fellspan.terrain.survey_hits import SurveyIndex
+from fellspan.vocabulary import GapPolicy, RasterRole
+
+_Source = TypeVar("_Source", RasterSource, CoverSource, ObstacleSource, SurveySource)
+
+RasterLike: TypeAlias = str | Path | RasterSource | Sequence[str | Path | RasterSource]
+CoverLike: TypeAlias = str | Path | CoverSource | Sequence[str | Path | CoverSource]
+ObstaclesLike: TypeAlias = str | Path | ObstacleSource | Sequence[str | Path | ObstacleSource]
+SurveyLike: TypeAlias = str | Path | SurveySource | Sequence[str | Path | SurveySource]
+
+
+def open_layers(
+    *,
+    ground: RasterLike | None,
+    surface: RasterLike | None,
+    cover: CoverLike | None,
+    obstacles: ObstaclesLike | None,
+    survey: SurveyLike | None,
+    gaps: str,
+    sea_level_m: float,
+    growth_years: float,
+) -> tuple[Layers, str | None, tuple[str, ...]]:
+    """Open everything: the layers, the vertical datum that the files state, and notes."""
+    policy = _policy(gaps)
+    if not math.isfinite(sea_level_m) or not -500.0 <= sea_level_m <= 9500.0:
+        raise TerrainError(f"sea level {sea_level_m:g} m is outside -500 to 9500 m")
+    if not math.isfinite(growth_years) or not 0.0 <= growth_years <= 100.0:
+        raise TerrainError(f"growth over {growth_years:g} years is outside 0 to 100 years")
+    ground_sources = _rasters(_listed(ground, RasterSource), "ground")
+    surface_sources = _rasters(_listed(surface, RasterSource), "surface")
+    cover_sources = _listed(cover, CoverSource)
+    obstacle_sources = _listed(obstacles, ObstacleSource)
+    survey_sources = _listed(survey, SurveySource)
+    if not ground_sources and not surface_sources:
+        raise TerrainError("no terrain raster is given", "give a raster of bare ground, or of the surface, or both")
+    if not ground_sources and cover_sources:
+        raise TerrainError(
+            f"cover raster '{Path(cover_sources[0].path).name}' is given beside a surface raster only",
+            "a surface already holds what stands on the ground: leave the cover out, or add bare ground",
+        )
+    read_from = [read_obstacles(source.path) for source in obstacle_sources]
+    surveys = [read_survey(source.path) for source in survey_sources]
+    stacks: list[RasterStack] = []
+    try:
+        for sources, role in ((ground_sources, "ground"), (surface_sources, "surface")):
+            if sources:
+                stacks.append(RasterStack.open(sources, role=_role(role)))
+        for one in cover_sources:
+            stacks.append(RasterStack.open([one], role="cover"))
+        rasters = 2 if ground_sources and surface_sources else 1
+        datums = [(stack.vertical_datum, stack.names[0]) for stack in stacks[:rasters]]
+        datums += [(datum, f"survey file {file.name}") for file in surveys for datum in file.datums]
+        for source, (_, stated, _) in zip(obstacle_sources, read_from, strict=True):
+            datums += [(datum, f"obstacle file {Path(source.path).name}") for datum in stated]
+        datum = _one_datum(datums)
+    except BaseException:
+        for stack in stacks:
+            stack.close()
+        raise
+    notes: list[str] = []
+    if not ground_sources:
+        notes.append("only a surface raster is given: heights above ground are counted from roofs and tree tops there")
+    for _, _, said in read_from:
+        notes.extend(said)
+    return (
+        _layers(
+            stacks,
+            bool(ground_sources),
+            rasters,
+            cover_sources,
+            [o for f in read_from for o in f[0]],
+            surveys,
+            policy,
+            sea_level_m,
+            growth_years,
+        ),
+        datum,
+        tuple(notes),
+    )
+
+
+def _layers(
+    stacks: Sequence[RasterStack],
+    is_bare: bool,
+    rasters: int,
+    covers: Sequence[CoverSource],
+    obstacles: Sequence[Obstacle],
+    surveys: Sequence[SurveyFile],
+    gaps: GapPolicy,
+    sea_level_m: float,
+    growth_years: float,
+) -> Layers:
+    finest = min(stack.cell_m for stack in stacks)
+    return Layers(
+        ground=stacks[0],
+        is_bare=is_bare,
+        surface=stacks[1] if rasters == 2 else None,
+        cover=tuple(zip(covers, stacks[rasters:], strict=True)),
+        obstacles=ObstacleIndex(obstacles),
+        survey=SurveyIndex(surveys, radius_m=0.5 * finest),
+        sources=(*stacks[0].names, *(f"survey: {file.name}" for file in surveys), "sea level"),
+        gaps=gaps,
+        sea_level_m=sea_level_m,
+        growth_years=growth_years,
+    )
+
+
+def _listed(given: object, kind: type[_Source]) -> tuple[_Source, ...]:
+    """One path, one source or a sequence of them, as sources."""
+    if given is None:
+        return ()
+    many: Iterable[object] = (
+        [given] if isinstance(given, str | Path | kind) or not isinstance(given, Iterable) else given
+    )
+    sources: list[_Source] = []
+    for one in many:
+        if isinstance(one, str | Path):
+            sources.append(kind(path=one))
+        elif isinstance(one, kind):
+            sources.append(one)
+        else:
+            raise TerrainError(f"'{one!r}' is no path and no {kind.__name__}")
+    return tuple(sources)
+
+
+def _rasters(sources: Sequence[RasterSource], role: RasterRole) -> tuple[RasterSource, ...]:
+    return tuple(source if source.role == role else replace(source, role=role) for source in sources)
+
+
+def _role(role: str) -> RasterRole:
+    return "surface" if role == "surface" else "ground"
+
+
+def _policy(gaps: str) -> GapPolicy:
+    if gaps == "error":
+        return "error"
+    if gaps == "sea":
+        return "sea"
+    raise TerrainError(f"gaps '{gaps}' is unknown", "allowed: " + ", ".join(get_args(GapPolicy)))
+
+
+def _one_datum(datums: Sequence[tuple[str | None, str]]) -> str | None:
+    """The one vertical datum that files state, compared without regard to case and blanks."""
+    first: tuple[str, str] | None = None
+    for datum, who in datums:
+        if datum is None:
+            continue
+        if first is None:
+            first = (datum, who)
+        elif _plain(datum) != _plain(first[0]):
+            raise VerticalDatumError(
+                f"{who} is in vertical datum '{datum}', but {first[1]} is in '{first[0]}'",
+                "convert the heights of one of them; they are not mixed silently",
+            )
+    return first[0] if first else None
+
+
+def _plain(datum: str) -> str:
+    words = datum.casefold().replace("-", " ").replace("_", " ").split()
+    return "".join(word for word in words if word not in ("height", "heights", "(m)"))

@@ -1,0 +1,47 @@
+"""Sentences about one path that a person must read: sea filled in, cover unknown, what a survey said.
+
+Knows samples; computes nothing.
+"""
+
+import numpy as np
+from numpy.typing import NDArray
+
+from fellspan.terrain.alongpath import Floats
+from fellspan.terrain.assemble import PathWork, Samples
+
+_MOST_SURVEY_NOTES = 10
+
+
+def path_notes(work: PathWork, samples: Samples, *, refined: bool) -> tuple[str, ...]:
+    """Notes on one path; a refined profile keeps those it had, and gains only new facts."""
+    layers = work.layers
+    notes: list[str] = []
+    if samples.negative_cover:
+        notes.append("a cover raster holds heights below 0 on this path; they are taken as 0")
+    if refined:
+        return tuple(notes)
+    sea = samples.source == layers.sea
+    if sea.any():
+        notes.append(
+            f"no raster from {_stretches(samples.distance_m, sea)}: taken as open water at {layers.sea_level_m:g} m"
+        )
+    if layers.cover or layers.surface is not None:
+        unknown = ~samples.known & np.isfinite(samples.ground_m)
+        if unknown.any():
+            notes.append(
+                f"cover is not known from {_stretches(samples.distance_m, unknown)}: taken as none there, check on site"
+            )
+    if not layers.is_bare and work.standing:
+        notes.append(
+            "obstacle heights above ground are counted from the surface raster, which may hold the obstacle already"
+        )
+    for hit in [hit for hit in work.hits.points if hit.row.note][:_MOST_SURVEY_NOTES]:
+        notes.append(f"surveyed at {hit.at_m / 1000.0:.3f} km: {hit.row.note} ({hit.row.file})")
+    return tuple(notes)
+
+
+def _stretches(distance_m: Floats, where: NDArray[np.bool_]) -> str:
+    change = np.diff(np.concatenate(([0], where.astype(np.int8), [0])))
+    starts, stops = np.flatnonzero(change > 0), np.flatnonzero(change < 0) - 1
+    said = [f"{distance_m[i] / 1000:.2f} to {distance_m[j] / 1000:.2f} km" for i, j in zip(starts, stops, strict=True)]
+    return ", ".join(said[:3]) + (f" and {len(said) - 3} more stretches" if len(said) > 3 else "")
