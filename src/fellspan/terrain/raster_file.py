@@ -93,6 +93,7 @@ def _header(
 ) -> RasterFile:
     _check_band(dataset, source.band, name)
     _check_placement(dataset, name)
+    _check_length(dataset, path, name)
     system = reference_system(dataset.crs.to_wkt(version="WKT2_2019"), name)
     band = source.band - 1
     unit_m, stated = _unit(source, dataset.units[band], system.vertical_unit_m, name)
@@ -176,6 +177,20 @@ def _check_placement(dataset: DatasetReader, name: str) -> None:
         raise RasterError(
             f"{name} does not say where its cells lie (no geotransform)",
             "bring it with its world file or georeferenced, as a GeoTIFF for instance",
+        )
+
+
+def _check_length(dataset: DatasetReader, path: str, name: str) -> None:
+    """Find a GeoTIFF cut short by where its last block should end, before some path happens to cross the end."""
+    if dataset.driver != "GTiff" or not os.path.isfile(path):
+        return
+    rows, columns = dataset.block_shapes[0]
+    block = f"{-(-dataset.width // columns) - 1}_{-(-dataset.height // rows) - 1}"
+    at, size = (dataset.get_tag_item(f"BLOCK_{what}_{block}", "TIFF", bidx=1) for what in ("OFFSET", "SIZE"))
+    if at is not None and size is not None and int(at) + int(size) > os.path.getsize(path):
+        raise RasterError(
+            f"{name} is cut short: it has {os.path.getsize(path)} bytes and should have {int(at) + int(size)} or more",
+            "copy or download it again",
         )
 
 
