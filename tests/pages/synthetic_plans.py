@@ -71,7 +71,7 @@ def make_link(
     name, a, b, *, at, frequency_hz=5.8e9, heights_m=(12.0, 12.0), roofs_m=(None, None), names=("Harbour", "North Light"),
     trees=(), obstacles=(), criteria=((4 / 3, 0.6), (1.0, 0.3)), samples=2001, basis="surface raster",
 ):  # fmt: skip
-    """One LinkPlan; `trees` and `obstacles` are (name, from share, to share, height) and (name, share, width m, height, kind)."""
+    """One LinkPlan; `trees` are (from share, to share, height), `obstacles` (name, share, width m, height, kind)."""
     azimuth, back, length = GEOD.inv(a.longitude_deg, a.latitude_deg, b.longitude_deg, b.latitude_deg)
     distance = np.linspace(0.0, length, samples)
     lon, lat, _ = GEOD.fwd(
@@ -228,7 +228,7 @@ def make_study(raster: Path, *, at: Position, hostile: bool = False, tiles_url: 
         ),
     )
     study = Study(
-        title=HOSTILE if hostile else "Tolmera harbour network", links=tuple(item.link for item in links) + (lost,),
+        title=HOSTILE if hostile else "Tolmera harbour network", links=(*(item.link for item in links), lost),
         terrain=TerrainInputs(ground=(RasterSource(path=raster),)), date=dt.date(2026, 3, 14),
         planner=HOSTILE if hostile else "Planning desk", revision="B", tiles_url=tiles_url, tiles_credit="Map data <b>desk</b>",
         notes=("Site 'Quay': two decimals place it within 500 m only.",),

@@ -1,12 +1,17 @@
 """Axes, the band of levels under the path profile, the names over it and the key of its signs."""
 
+from dataclasses import dataclass
+
 import numpy as np
+from numpy.typing import NDArray
 
 from fellspan.links.result import EndResult
-from fellspan.report.scales import Wanted, nice_step, nice_ticks, place_labels, text_width
-from fellspan.report.section import Section, nearest_index
+from fellspan.planning.plan import LinkPlan
+from fellspan.report.scales import Placed, Scale, Wanted, nice_step, nice_ticks, place_labels, text_width
+from fellspan.report.section import Section, Sheet
 from fellspan.report.svg import el, label, line
 from fellspan.report.wording import kilometres, metres, number, percent, shorten
+from fellspan.terrain.profile import PathObstacle
 from fellspan.vocabulary import COVER_KINDS
 
 ROWS = (
@@ -18,21 +23,19 @@ ROWS = (
 MOST_NAMES = 9
 
 
-def stations(section: Section) -> list[int]:
-    """Indices of the samples the band tells: both ends, the governing point, and round distances with room between."""
-    distances, sheet = section.plan.levels.distance_m, section.sheet
-    last = distances.size - 1
-    chosen = [0, last]
-    if all(abs(section.x.at(float(distances[section.governing])) - edge) >= 0.75 * sheet.station_gap
-           for edge in (sheet.left, sheet.right)):  # fmt: skip
-        chosen.append(section.governing)
-    step = nice_step(float(distances[last]), sheet.stations)
-    for place in np.arange(step, float(distances[last]), step).tolist():
-        index = nearest_index(distances, place)
-        x = section.x.at(float(distances[index]))
-        if all(abs(x - section.x.at(float(distances[other]))) >= sheet.station_gap for other in chosen):
-            chosen.append(index)
-    return sorted(set(chosen))
+def stations(section: Section) -> list[float]:
+    """Distances the band tells, m: both ends, the governing point, and round distances with room between."""
+    sheet, length, governing = section.sheet, section.profile.length_m, section.criterion.worst_at_m
+    chosen = [0.0, length]
+
+    def room(place: float, gap: float) -> bool:
+        return all(abs(section.x.at(place) - section.x.at(other)) >= gap for other in chosen)
+
+    if room(governing, 0.75 * sheet.station_gap):
+        chosen.append(governing)
+    step = nice_step(length, sheet.stations)
+    chosen += [place for place in np.arange(step, length, step).tolist() if room(place, sheet.station_gap)]
+    return sorted(chosen)
 
 
 def axes(section: Section) -> str:
@@ -63,19 +66,22 @@ def band(section: Section, *, top: float) -> tuple[str, float]:
     for row, (long, short) in enumerate(ROWS):
         baseline = top + row * row_height + row_height * 0.68
         drawn.append(label(2, baseline, long if sheet.roomy else short, class_="band-label"))
-    for index in stations(section):
-        at = float(levels.distance_m[index])
+    bulge = levels.bulge_m[section.result.governing]
+
+    def value(at: float, heights: NDArray[np.float64]) -> float:
+        return float(np.interp(at, levels.distance_m, heights))
+
+    for at in stations(section):
         x = section.x.at(at)
-        here = " here" if index == section.governing else ""
-        ground = float(section.profile.ground_m[index])
-        bulge = float(levels.bulge_m[section.result.governing][index])
-        drawn.append(line(x, section.y.at(ground + bulge), x, top, class_=f"ordinate{here}"))
+        here = " here" if at == section.criterion.worst_at_m else ""
+        ground = value(at, section.profile.ground_m)
+        drawn.append(line(x, section.y.at(ground + value(at, bulge)), x, top, class_=f"ordinate{here}"))
         drawn.append(line(x, top - 5, x, top + 1, class_="tick-x", data_at_m=repr(at)))
         texts = (
             kilometres(at, length_m=section.profile.length_m),
             number(ground),
-            number(float(need[index])),
-            number(float(levels.available_m[index])),
+            number(value(at, need)),
+            number(value(at, levels.available_m)),
         )
         for row, content in enumerate(texts):
             baseline = top + row * row_height + row_height * 0.68
@@ -89,51 +95,64 @@ def heading(section: Section, end: EndResult, *, at_b: bool) -> str:
     x, anchor = (sheet.width - 2, "end") if at_b else (2.0, "start")
     letter = "B" if at_b else "A"
     name = shorten(end.site, 40 if sheet.roomy else 19)
-    level = f"antenna {metres(end.antenna_amsl_m)} above sea level" if sheet.roomy else f"{metres(end.antenna_amsl_m)} asl"
+    level = (
+        f"antenna {metres(end.antenna_amsl_m)} above sea level" if sheet.roomy else f"{metres(end.antenna_amsl_m)} asl"
+    )
     content = f"{name} · {letter}" if at_b else f"{letter} · {name}"
     return label(x, sheet.font * 1.05, content, class_="site", anchor=anchor, hint=end.site) + label(
         x, sheet.font * 1.05 + sheet.line_height, level, class_="site-more", anchor=anchor
     )
 
 
-def obstacle_names(section: Section, *, lanes_bottom: float) -> str:
-    """Names of the obstacles of the user's file, in lanes over the drawing with leaders down to their tops."""
-    sheet, profile, criterion = section.sheet, section.profile, section.criterion
-    ray = section.plan.levels.available_m
-    ranked = sorted(
-        profile.obstacles,
-        key=lambda item: (
-            criterion.cause != item.name,
-            float(np.interp((item.from_m + item.to_m) / 2.0, profile.distance_m, ray)) - item.top_amsl_m,
-        ),
-    )[:MOST_NAMES]
-    wanted, spots = [], []
-    for item in ranked:
-        inside = (section.distance_m >= item.from_m - 1e-6) & (section.distance_m <= item.to_m + 1e-6)
-        if not inside.any():
-            continue
-        peak = np.flatnonzero(inside)[int(np.argmax(section.surface_drawn[inside]))]
-        content = shorten(item.name, 26 if sheet.roomy else 16)
-        x = section.x.at(float(section.distance_m[peak]))
-        wanted.append(Wanted(at=x, width=text_width(content, sheet.small)))
-        spots.append((item, content, section.y.at(float(section.surface_drawn[peak]))))
-    governing_x = section.x.at(criterion.worst_at_m)
-    placed = place_labels(wanted, low=0.0, high=sheet.width, lanes=sheet.lanes, through=(governing_x,))
-    drawn = []
-    for spot, (item, content, y) in zip(placed, spots, strict=True):
-        if spot is None:
-            continue
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Named:
+    """An obstacle whose name stands over the drawing."""
+
+    obstacle: PathObstacle
+    content: str
+    spot: Placed
+
+
+def choose_names(plan: LinkPlan, sheet: Sheet) -> list[Named]:
+    """The obstacles that are named, those that come nearest to the sight line first, each in a lane of its own.
+
+    Lanes are given from right to left: a leader then never meets the name of its neighbour, which stands higher.
+    """
+    profile, criterion = plan.profile, plan.result.clearance[plan.result.governing]
+    x = Scale(from_value=0.0, to_value=profile.length_m, from_px=sheet.left, to_px=sheet.right)
+    ray = plan.levels.available_m
+
+    def room(item: PathObstacle) -> float:
+        return float(np.interp((item.from_m + item.to_m) / 2.0, profile.distance_m, ray)) - item.top_amsl_m
+
+    nearest = sorted(profile.obstacles, key=lambda item: (criterion.cause != item.name, room(item)))[:MOST_NAMES]
+    ordered = sorted(nearest, key=lambda item: -item.from_m)
+    contents = [shorten(item.name, 26 if sheet.roomy else 15) for item in ordered]
+    wanted = [
+        Wanted(at=x.at((item.from_m + item.to_m) / 2.0), width=text_width(content, sheet.small))
+        for item, content in zip(ordered, contents, strict=True)
+    ]
+    through = (x.at(criterion.worst_at_m),)
+    placed = place_labels(wanted, low=0.0, high=sheet.width, lanes=sheet.lanes, through=through)
+    return [
+        Named(obstacle=item, content=content, spot=spot)
+        for item, content, spot in zip(ordered, contents, placed, strict=True)
+        if spot is not None
+    ]
+
+
+def obstacle_names(section: Section, named: list[Named], *, lanes_bottom: float) -> str:
+    """Names of obstacles over the drawing, with leaders down to their tops."""
+    sheet, drawn = section.sheet, []
+    for item in named:
+        obstacle, spot = item.obstacle, item.spot
         baseline = lanes_bottom - spot.lane * sheet.line_height - 4.0
-        drawn.append(line(spot.at, baseline - sheet.small * 0.7, spot.at, y - 2.0, class_="leader-thin"))
-        hint = f"{item.name}: {metres(item.height_m)} above ground, top at {metres(item.top_amsl_m)}"
-        drawn.append(el("text", el("title", _safe(hint)), _safe(content), x=spot.start, y=baseline, class_="obstacle-name"))
+        bulge = float(np.interp((obstacle.from_m + obstacle.to_m) / 2.0, section.distance_m, section.bulge_m))
+        top = section.y.at(obstacle.top_amsl_m + bulge)
+        drawn.append(line(spot.at, baseline - sheet.small * 0.7, spot.at, top - 1.0, class_="leader-thin"))
+        hint = f"{obstacle.name}: {metres(obstacle.height_m)} above ground, top at {metres(obstacle.top_amsl_m)}"
+        drawn.append(label(spot.start, baseline, item.content, class_="obstacle-name", hint=hint))
     return el("g", *drawn, class_="obstacles")
-
-
-def _safe(content: str) -> str:
-    from fellspan.report.svg import text
-
-    return text(content)
 
 
 def key(section: Section, uid: str, *, top: float) -> tuple[str, float]:
@@ -148,6 +167,8 @@ def key(section: Section, uid: str, *, top: float) -> tuple[str, float]:
         entries.append((el("rect", x=0, y=-9, width=24, height=10, class_="zone-required"), words))
     entries.append((el("rect", x=0, y=-9, width=24, height=10, fill=f"url(#{uid}-ground)", class_="swatch"),
                     "ground" if section.profile.ground_is_bare else "ground and what stands on it"))  # fmt: skip
+    if section.level_arc_m is not None:
+        entries.append((line(0, -4, 24, -4, class_="level-arc"), "a level surface: the Earth's curve"))
     present = set(section.cover_kind[section.surface_drawn - section.ground_drawn > 0.05].tolist()) - {0}
     names = {"building": "building", "tree": "trees", "other": "other cover"}
     for kind in sorted(present):

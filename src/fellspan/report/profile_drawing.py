@@ -3,9 +3,10 @@
 Levels carry the Earth bulge of the governing criterion's k, so that the sight line is straight. Computes nothing of physics.
 """
 
+from fellspan.links.result import EndResult
 from fellspan.planning.plan import LinkPlan
 from fellspan.report import profile_band, profile_parts
-from fellspan.report.section import FULL, Section, Sheet, prepare
+from fellspan.report.section import FULL, Sheet, prepare
 from fellspan.report.svg import el, num, text
 from fellspan.report.wording import (
     BASIS_WORD,
@@ -27,7 +28,8 @@ def _plot_top(sheet: Sheet, lanes: int) -> float:
 
 def draw_profile(plan: LinkPlan, *, uid: str, sheet: Sheet = FULL) -> str:
     """SVG markup of the path profile of `plan`; `uid` makes its ids unique on a page (ASCII letters, digits, hyphens)."""
-    lanes = min(sheet.lanes, len(plan.profile.obstacles))
+    named = profile_band.choose_names(plan, sheet)
+    lanes = max((item.spot.lane + 1 for item in named), default=0)
     section = prepare(plan, sheet, plot_top=_plot_top(sheet, lanes))
     ends = plan.result.ends
     callout_y = sheet.line_height * 2.25
@@ -52,7 +54,7 @@ def draw_profile(plan: LinkPlan, *, uid: str, sheet: Sheet = FULL) -> str:
         band,
         profile_parts.mast(section, ends.a, at_b=False),
         profile_parts.mast(section, ends.b, at_b=True),
-        profile_band.obstacle_names(section, lanes_bottom=section.y.to_px - 4.0),
+        profile_band.obstacle_names(section, named, lanes_bottom=section.y.to_px - 4.0),
         profile_parts.governing(section, callout_y=callout_y),
         profile_band.heading(section, ends.a, at_b=False),
         profile_band.heading(section, ends.b, at_b=True),
@@ -69,7 +71,9 @@ def draw_profile(plan: LinkPlan, *, uid: str, sheet: Sheet = FULL) -> str:
 def exaggeration_words(plan: LinkPlan, *, sheet: Sheet = FULL) -> str:
     """Vertical exaggeration of the drawing, for the title block."""
     factor = prepare(plan, sheet, plot_top=0.0).exaggeration
-    return f"heights drawn {factor:.0f} times too tall" if factor >= 10.0 else f"heights drawn {factor:.1f} times too tall"
+    return (
+        f"heights drawn {factor:.0f} times too tall" if factor >= 10.0 else f"heights drawn {factor:.1f} times too tall"
+    )
 
 
 def profile_text(plan: LinkPlan) -> str:
@@ -77,14 +81,12 @@ def profile_text(plan: LinkPlan) -> str:
     result = plan.result
     criterion = result.clearance[result.governing]
     ends = result.ends
+    where = f"At {distance(criterion.worst_at_m)} from A ({criterion.cause or 'ground'})"
     words = [
         f"{VERDICT_WORD[result.verdict]}, {BASIS_WORD[result.basis]}. {headline(result)}",
-        f"From A, {ends.a.site}, antenna {metres(ends.a.antenna_agl_m)} above ground and "
-        f"{metres(ends.a.antenna_amsl_m)} above sea level, to B, {ends.b.site}, antenna {metres(ends.b.antenna_agl_m)} "
-        f"above ground and {metres(ends.b.antenna_amsl_m)} above sea level: {distance(result.distance_m)} "
-        f"at {frequency(result.frequency_hz)}.",
-        f"Governing criterion: {criterion_words(criterion)}. At {distance(criterion.worst_at_m)} from A "
-        f"({criterion.cause or 'ground'}): {governing_words(criterion)}.",
+        f"From A, {_end_words(ends.a)}, to B, {_end_words(ends.b)}: {distance(result.distance_m)}",
+        f"Frequency {frequency(result.frequency_hz)}. Governing criterion: {criterion_words(criterion)}",
+        f"{where}: {governing_words(criterion)}",
     ]
     for item in criterion.obstructions:
         what = "cuts the sight line" if item.cuts_sight else "reaches into the required zone"
@@ -92,6 +94,7 @@ def profile_text(plan: LinkPlan) -> str:
     return " ".join(word if word.endswith(".") else f"{word}." for word in words)
 
 
-def drawn_section(plan: LinkPlan, sheet: Sheet = FULL) -> Section:
-    """The prepared data of a drawing, for tests that check decimation."""
-    return prepare(plan, sheet, plot_top=0.0)
+def _end_words(end: EndResult) -> str:
+    return (
+        f"{end.site}, antenna {metres(end.antenna_agl_m)} above ground and {metres(end.antenna_amsl_m)} above sea level"
+    )

@@ -2,7 +2,7 @@
 
 import numpy as np
 
-from fellspan.links.result import EndResult
+from fellspan.links.result import CriterionResult, EndResult
 from fellspan.report.section import Section
 from fellspan.report.svg import el, label, line, num, points
 from fellspan.report.wording import distance, governing_words, metres, number, percent, shorten
@@ -36,14 +36,9 @@ def ground(section: Section, uid: str) -> str:
     bottom = section.y.from_px
     body = points([xs[0], *xs, xs[-1]], [bottom, *ys, bottom]) + "Z"
     drawn = el("path", d=body, fill=f"url(#{uid}-ground)") + el("path", d=points(xs, ys), class_="ground-line")
-    peak = float(np.max(section.bulge_m))
-    if peak * section.y.px_per_unit >= 4.0:
-        room = section.ground_drawn - section.bulge_m
-        level = 0.0 if section.y.from_value < 0.0 <= float(room.max()) else float(room.min())
-        arc = section.y.all(level + section.bulge_m)
-        if min(arc) < bottom:
-            arc = [min(y, bottom) for y in arc]
-            drawn += el("path", d=points(xs, arc), class_="level-arc")
+    if section.level_arc_m is not None:
+        arc = [min(y, bottom) for y in section.y.all(section.level_arc_m)]
+        drawn += el("path", d=points(xs, arc), class_="level-arc")
     return drawn
 
 
@@ -99,12 +94,22 @@ def obstructed(section: Section) -> str:
         inside = np.flatnonzero((section.distance_m >= item.from_m - 1e-6) & (section.distance_m <= item.to_m + 1e-6))
         if inside.size == 0:
             continue
-        xs = section.x.all(section.distance_m[inside])
-        ys = section.y.all(section.checked_drawn[inside])
+        xs, ys = _upper_edge(section.x.all(section.distance_m[inside]), section.y.all(section.checked_drawn[inside]))
         if xs[-1] - xs[0] < 5.0:
             xs, ys = [xs[0] - 2.5, *xs, xs[-1] + 2.5], [ys[0], *ys, ys[-1]]
         parts.append(el("path", d=points(xs, ys), class_="cut-sight" if item.cuts_sight else "cut-zone"))
     return "".join(parts)
+
+
+def _upper_edge(xs: list[float], ys: list[float]) -> tuple[list[float], list[float]]:
+    """The highest point in every 4 units, so that a thick line over rough tops stays a line."""
+    tops: dict[int, tuple[float, float]] = {}
+    for x, y in zip(xs, ys, strict=True):
+        column = int(x // 4.0)
+        if column not in tops or y < tops[column][1]:
+            tops[column] = (x, y)
+    edge = [(xs[0], ys[0]), *tops.values(), (xs[-1], ys[-1])]
+    return [x for x, _ in edge], [y for _, y in edge]
 
 
 def mast(section: Section, end: EndResult, *, at_b: bool) -> str:
@@ -153,6 +158,19 @@ def _dimension(x: float, low: float, high: float) -> str:
     return outside + _arrow(x, low, down=False) + _arrow(x, high, down=True)
 
 
+def _share_words(item: CriterionResult) -> str:
+    """The share of the zone that is free, where that says more than a curious number."""
+    if item.worst_fraction is None:
+        return ""
+    if item.clearance_m < 0.0:
+        return f"; it stands {metres(-item.clearance_m)} above the sight line"
+    if item.required_fraction == 0.0:
+        return "; only the sight line must be free at this k"
+    if item.worst_fraction > 1.5:
+        return "; more than the whole zone is free"
+    return f"; {percent(item.worst_fraction)} of the zone is free, {percent(item.required_fraction)} is required"
+
+
 def governing(section: Section, *, callout_y: float) -> str:
     """The governing point with its dimension, and the callout in the sky above it."""
     item, sheet = section.criterion, section.sheet
@@ -162,14 +180,14 @@ def governing(section: Section, *, callout_y: float) -> str:
     low, high = max(y, y_needed), min(y, y_needed)
     met = "met" if item.clearance_m >= item.required_m else "short"
     first = governing_words(item)
-    share = f", {percent(item.worst_fraction)} of the zone where {percent(item.required_fraction)} is required"
+    share = _share_words(item)
     where = f"{distance(item.worst_at_m)} from A: {item.cause}" if item.cause else f"{distance(item.worst_at_m)} from A"
     room = 96 if sheet.roomy else 50
-    second = where + share if item.worst_fraction is not None and len(where + share) <= room else where
+    second = where + share if len(where + share) <= room else where
     shown = shorten(second, room)
     half = max(len(first) * sheet.font * 0.62, len(shown) * sheet.small * 0.56) / 2.0
     middle = min(max(x, half + 4.0), sheet.width - half - 4.0)
-    under = callout_y + sheet.line_height * 2.0 - sheet.font * 0.4
+    under = callout_y + sheet.line_height * 2.0 - sheet.font * 0.1
     tip = high - (14.0 if low - high < 16.0 else 2.0)
     drawn = [
         line(x, under, x, max(tip, under), class_="leader"),
@@ -178,7 +196,14 @@ def governing(section: Section, *, callout_y: float) -> str:
         line(x - 9, y_needed, x + 9, y_needed, class_="extension"),
         el("circle", el("title", f"Governing point: {first}"), cx=x, cy=y, r=4, class_="governing-point"),
         label(middle, callout_y + sheet.font, first, class_=f"callout {met}", anchor="middle"),
-        label(middle, callout_y + sheet.font + sheet.line_height, shown, class_="callout-more", anchor="middle", hint=second),
+        label(
+            middle,
+            callout_y + sheet.font + sheet.line_height,
+            shown,
+            class_="callout-more",
+            anchor="middle",
+            hint=second,
+        ),
     ]
     if item.shortfall_m > 0.0 and abs(item.shortfall_at_m - item.worst_at_m) > 0.002 * section.profile.length_m:
         index = int(np.argmin(np.abs(section.distance_m - item.shortfall_at_m)))

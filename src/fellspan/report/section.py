@@ -52,15 +52,15 @@ class Sheet:
 
 
 FULL = Sheet(
-    name="full", width=920, plot_height=330, axis_width=48, dimension_width=92, right_width=92, font=13,
+    name="full", width=920, plot_height=330, axis_width=48, dimension_width=102, right_width=100, font=13,
     stations=11, station_gap=58, lanes=4, columns=640, roomy=True,
 )  # fmt: skip
 PANEL = Sheet(
-    name="panel", width=940, plot_height=170, axis_width=48, dimension_width=92, right_width=92, font=13,
-    stations=11, station_gap=58, lanes=2, columns=420, roomy=True,
+    name="panel", width=940, plot_height=170, axis_width=48, dimension_width=102, right_width=100, font=13,
+    stations=11, station_gap=58, lanes=2, columns=340, roomy=True,
 )  # fmt: skip
 NARROW = Sheet(
-    name="narrow", width=366, plot_height=200, axis_width=34, dimension_width=48, right_width=46, font=11.5,
+    name="narrow", width=366, plot_height=200, axis_width=32, dimension_width=58, right_width=58, font=11.5,
     stations=4, station_gap=52, lanes=3, columns=220, roomy=False,
 )  # fmt: skip
 
@@ -94,6 +94,15 @@ class Section:
     def profile(self) -> PathProfile:
         """Terrain, all samples."""
         return self.plan.profile
+
+    @property
+    def level_arc_m(self) -> Array | None:
+        """A level surface with the bulge, to show the curve of the Earth; None where it would look flat."""
+        if float(np.max(self.bulge_m)) * self.y.px_per_unit < 4.0:
+            return None
+        flat = self.ground_drawn - self.bulge_m
+        level = 0.0 if self.y.from_value < 0.0 <= float(flat.max()) else float(flat.min())
+        return level + self.bulge_m
 
     @property
     def exaggeration(self) -> float:

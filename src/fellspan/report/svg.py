@@ -1,6 +1,7 @@
 """Writing SVG: elements with every attribute and every text escaped. Knows nothing of paths or links."""
 
 from html import escape
+from itertools import pairwise
 
 from fellspan.report.wording import clean
 
@@ -44,6 +45,21 @@ def line(x1: float, y1: float, x2: float, y2: float, *, class_: str = "", **more
     return el("line", x1=x1, y1=y1, x2=x2, y2=y2, class_=class_ or None, **more)
 
 
+def _tenths(value: int) -> str:
+    sign, whole, tenth = "-" if value < 0 else "", *divmod(abs(value), 10)
+    return f"{sign}{whole}" if tenth == 0 else f"{sign}{whole or ''}.{tenth}"
+
+
 def points(xs: list[float], ys: list[float]) -> str:
-    """Path data `M x,y L ...` through the points, rounded to a tenth of a unit."""
-    return "M" + "L".join(f"{x:.1f},{y:.1f}" for x, y in zip(xs, ys, strict=True))
+    """Path data through the points, to a tenth of a unit; relative steps, which halve the size of a page.
+
+    The steps are differences of rounded places, so that rounding does not add up along a path.
+    """
+    places = [(round(x * 10.0), round(y * 10.0)) for x, y in zip(xs, ys, strict=True)]
+    data = [f"M{_tenths(places[0][0])},{_tenths(places[0][1])}l"]
+    steps = [
+        f"{_tenths(after[0] - before[0])},{_tenths(after[1] - before[1])}"
+        for before, after in pairwise(places)
+        if after != before
+    ]
+    return data[0] + " ".join(steps or ["0,0"])

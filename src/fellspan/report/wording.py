@@ -94,24 +94,6 @@ def bearing(value: float | None) -> str:
     return f"{tenths // 10:03d}.{tenths % 10}°"
 
 
-def _sexagesimal(value: float, positive: str, negative: str) -> str:
-    tenths = round(abs(value) * 36000.0)
-    whole, rest = divmod(tenths, 36000)
-    minutes, tenths = divmod(rest, 600)
-    side = negative if value < 0.0 else positive
-    return f"{whole}° {minutes:02d}′ {tenths // 10:02d}.{tenths % 10}″ {side}"
-
-
-def degrees_minutes_seconds(latitude_deg: float, longitude_deg: float) -> str:
-    """`36° 03′ 12.3″ N, 45° 12′ 00.0″ W`."""
-    return f"{_sexagesimal(latitude_deg, 'N', 'S')}, {_sexagesimal(longitude_deg, 'E', 'W')}"
-
-
-def decimal_degrees(latitude_deg: float, longitude_deg: float) -> str:
-    """`36.053417, -45.200000`, with plain hyphens so that it can be copied into other tools."""
-    return f"{latitude_deg:.6f}, {longitude_deg:.6f}"
-
-
 def governing_words(criterion: CriterionResult) -> str:
     """What is spare or missing at the governing point of a criterion."""
     spare = criterion.clearance_m - criterion.required_m
