@@ -18,5 +18,7 @@ RasterRole = Literal["ground", "surface", "cover"]
 
 GapPolicy = Literal["error", "sea"]
 Polarization = Literal["horizontal", "vertical"]
+MountedPolarization = Literal["horizontal", "vertical", "slant+45", "slant-45", "dual"]
+"""How an antenna is mounted; "dual" carries two at right angles, so the other end always finds its own."""
 CriteriaPreset = Literal["p530-temperate", "p530-tropical", "sixty-percent"]
 LengthUnit = Literal["m", "ft", "us-ft"]
