@@ -68,6 +68,11 @@ def test_one_place_written_many_ways(text: str) -> None:
     assert got.caution is None
 
 
+def test_decimal_commas_are_not_taken_for_separators() -> None:
+    got = parse_position("36,04217 45,19876").position
+    assert (got.latitude_deg, got.longitude_deg) == (36.04217, 45.19876)
+
+
 def test_south_and_small_negative_values() -> None:
     got = parse_position("36 02 31 S 45 11 55 W").position
     assert (got.latitude_deg, got.longitude_deg) == pytest.approx((-36.0419444, -45.1986111), abs=1e-6)

@@ -69,6 +69,19 @@ def test_path_over_the_pole_itself() -> None:
     assert longitude[[0, 1, 3]] == pytest.approx([10.0, 10.0, 190.0], abs=1e-9)
 
 
+def test_path_a_hair_west_of_the_pole_turns_west() -> None:
+    path = GeodesicPath.towards(at(46.15, -70.85), 359.999999999999, 1.99e7)
+    _, longitude = path.positions(np.linspace(0.0, path.length_m, 2001))
+    assert longitude.min() == pytest.approx(-250.85, abs=1e-6)
+    assert longitude.max() == pytest.approx(-70.85, abs=1e-6)
+
+
+def test_longitude_at_the_pole_end_is_the_exact_one() -> None:
+    path = GeodesicPath.between(at(90.0, 0.0), at(14.0, 2.0))
+    distance_m = np.linspace(0.0, path.length_m, 41)
+    assert path.positions(distance_m)[1] == pytest.approx(path.positions(distance_m, exact=True)[1], abs=1e-9)
+
+
 def test_path_from_the_pole() -> None:
     path = GeodesicPath.between(at(90.0, 0.0), at(89.9, 40.0))
     latitude, longitude = path.positions([path.length_m / 2, path.length_m])
