@@ -40,45 +40,39 @@ def profile_of(
         height[higher] = item.top_amsl_m - level[higher]
         kinds[higher] = COVER_KINDS.index(item.kind)
         index[higher] = number
-    fields = dict(
-        a=Position(latitude_deg=0.0, longitude_deg=0.0),
-        b=Position(latitude_deg=0.0, longitude_deg=length_m / METRES_PER_DEGREE),
-        distance_m=distance,
-        latitude_deg=np.zeros(distance.shape),
-        longitude_deg=distance / METRES_PER_DEGREE,
-        ground_m=level,
-        cover_m=height,
-        cover_kind=kinds,
-        obstacle_index=index,
-        surface_m=level + height,
-        source=np.zeros(distance.shape, dtype=np.int16),
-        measured=np.full(distance.shape, measured, dtype=np.int8),
-        sigma_m=np.full(distance.shape, sigma_m),
-        sources=(source,),
-        obstacles=obstacles,
-        gaps=(),
-        step_m=length_m / (n - 1),
-        cell_m=cell_m or 2.0 * length_m / (n - 1),
-        ground_is_bare=True,
-        surface_is_known=False,
-        vertical_datum=None,
-    )
+    fields = {
+        "a": Position(latitude_deg=0.0, longitude_deg=0.0),
+        "b": Position(latitude_deg=0.0, longitude_deg=length_m / METRES_PER_DEGREE),
+        "distance_m": distance,
+        "latitude_deg": np.zeros(distance.shape),
+        "longitude_deg": distance / METRES_PER_DEGREE,
+        "ground_m": level,
+        "cover_m": height,
+        "cover_kind": kinds,
+        "obstacle_index": index,
+        "surface_m": level + height,
+        "source": np.zeros(distance.shape, dtype=np.int16),
+        "measured": np.full(distance.shape, measured, dtype=np.int8),
+        "sigma_m": np.full(distance.shape, sigma_m),
+        "sources": (source,),
+        "obstacles": obstacles,
+        "gaps": (),
+        "step_m": length_m / (n - 1),
+        "cell_m": cell_m or 2.0 * length_m / (n - 1),
+        "ground_is_bare": True,
+        "surface_is_known": False,
+        "vertical_datum": None,
+    }
     return PathProfile(**(fields | changes))  # type: ignore[arg-type]
 
 
 def mirrored(profile: PathProfile) -> PathProfile:
     """The same path seen from B."""
     length = profile.length_m
-    turned = {
-        name: getattr(profile, name)[::-1].copy()
-        for name in (
-            ["latitude_deg", "longitude_deg", "ground_m", "cover_m", "cover_kind", "obstacle_index", "surface_m", "source", "measured", "sigma_m"]
-        )
-    }
-    kept = {
-        name: getattr(profile, name)
-        for name in (["sources", "gaps", "step_m", "cell_m", "ground_is_bare", "surface_is_known", "vertical_datum", "notes"])
-    }
+    arrays = "latitude_deg longitude_deg ground_m cover_m cover_kind obstacle_index surface_m source measured sigma_m"
+    plain = "sources gaps step_m cell_m ground_is_bare surface_is_known vertical_datum notes"
+    turned = {name: getattr(profile, name)[::-1].copy() for name in arrays.split()}
+    kept = {name: getattr(profile, name) for name in plain.split()}
     obstacles = tuple(
         PathObstacle(
             name=item.name,

@@ -31,7 +31,8 @@ def cause_at(
     """Name of what governs at one sample.
 
     The user's own name for an obstacle; else cover by kind and height, with the ground under it where that alone stands too
-    high; else the Earth bulge where the surface would meet the need without it; else the ground.
+    high; else the Earth bulge where the surface would meet the need without it and stands out less than it bulges; else the
+    ground.
     """
     obstacle = int(standing.obstacle_index[index])
     if obstacle >= 0:
@@ -42,7 +43,7 @@ def cause_at(
         words = cover_words(int(standing.cover_kind[index]), cover)
         return f"{_ground(profile, index)} and {words}" if missing - cover > 0.0 else words
     over_sea = _is_sea(profile, index)
-    if missing > 0.0 and missing - bulge_m <= 0.0:
+    if missing > 0.0 and missing - bulge_m <= 0.0 and _prominence_m(profile, index) <= bulge_m:
         return "Earth bulge over the sea" if over_sea else "Earth bulge"
     return "sea" if over_sea else _ground(profile, index)
 
@@ -57,6 +58,13 @@ def is_sea_level(profile: PathProfile) -> np.ndarray[tuple[int, ...], np.dtype[n
 
 def _is_sea(profile: PathProfile, index: int) -> bool:
     return bool(is_sea_level(profile)[index]) or abs(float(profile.ground_m[index])) <= SEA_WITHIN_M
+
+
+def _prominence_m(profile: PathProfile, index: int) -> float:
+    """How far the ground stands above the chord between the ground at the two ends, m."""
+    share = float(profile.distance_m[index]) / profile.length_m
+    chord = float(profile.ground_m[0]) * (1.0 - share) + float(profile.ground_m[-1]) * share
+    return float(profile.ground_m[index]) - chord
 
 
 def _ground(profile: PathProfile, index: int) -> str:

@@ -134,7 +134,7 @@ def reasons(
         )
     if rule.met:
         sentences.append(
-            f"{spare_m(rule):.1f} m to spare under {rule.criterion}; nearest to the ray: {rule.cause}, {place(rule.worst_at_m)}."
+            f"{spare_m(rule):.1f} m to spare under {rule.criterion}; nearest the ray: {rule.cause}, {place(rule.worst_at_m)}."
         )
     else:
         sentences.append(f"{rule.shortfall_m:.1f} m is missing at {place(rule.shortfall_at_m)} under {rule.criterion}.")
