@@ -162,7 +162,7 @@ def delta_bullington_loss_db(
     ground_m
         Bare ground above sea level, m, without bulge; shape (..., n).
     a_amsl_m, b_amsl_m
-        Antenna heights above sea level, m, shape (...); not below the ground at their ends.
+        Antenna heights above sea level, m, shape (...), not below the ground at their ends.
     frequency_hz
         Frequency, Hz, shape (...).
     k
@@ -179,7 +179,7 @@ def delta_bullington_loss_db(
     -------
     loss_db
         Loss relative to free space, dB, shape (...). NaN where k = 0, where a height is NaN, or where an antenna lies below
-        the ground at its end.
+        the smooth surface. An antenna below its own ground is for the caller to refuse: most such cases have a value.
 
     Notes
     -----

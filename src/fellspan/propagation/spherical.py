@@ -179,7 +179,8 @@ def spherical_earth_loss_db(
         ) / distance
         required = 0.552 * np.sqrt(d1 * d2 * wavelength / distance)  # (23)
         # An antenna on the ground makes both 0. Their ratio goes to 0: clearance falls as the height, required as its root.
-        ratio = np.where(np.minimum(h1, h2) == 0.0, 0.0, clearance / required)
+        # Below a nanometre rounding would decide it.
+        ratio = np.where(np.minimum(h1, h2) < 1e-9, 0.0, clearance / required)
         modified_radius = 0.5 * (distance / (np.sqrt(h1) + np.sqrt(h2))) ** 2  # (24)
 
         used_radius = np.where(beyond, radius, modified_radius)
