@@ -1,0 +1,258 @@
+"""The pages of a plan: an overview with the map, and one page a link. Shows the plan and computes none of it."""
+
+from collections import Counter
+from collections.abc import Callable
+from dataclasses import dataclass, fields
+from html import escape
+from typing import Any
+from urllib.parse import urlsplit
+
+from jinja2 import Environment
+from markupsafe import Markup
+
+from fellspan.geodesy.coordinates import PositionStyle, format_position
+from fellspan.geodesy.position import Position
+from fellspan.links.result import CriterionResult, LinkResult, Losses
+from fellspan.planning.plan import LinkPlan, StudyPlan
+from fellspan.report import assets, wording
+from fellspan.report import map_geometry as geometry
+from fellspan.report.map import MapMarkup, link_map
+from fellspan.report.naming import page_name, slug
+from fellspan.report.profile_drawing import draw_profile, exaggeration_words
+from fellspan.report.relief import open_rasters, shaded_relief
+from fellspan.report.section import FULL, NARROW, PANEL
+from fellspan.terrain.raster_file import RasterFile
+
+Progress = Callable[[int, int, str], None]
+"""Called with the number of pages done, the number of all, and the name of the one in hand."""
+
+OVERVIEW = "index.html"
+OVERVIEW_PIXELS, OVERVIEW_BYTES = 1200, 300_000
+LINK_PIXELS, LINK_BYTES = 720, 120_000
+
+SAFETY = (
+    "This plan is a desk study. Walk the site and verify heights, obstacles and positions before anything is ordered or built.",
+    "Work at height, masts and their foundations: follow local codes and let qualified and, where required, licensed people "
+    "design and do the work.",
+    "Keep clear of power lines, above and below ground; ask their operator for the distance to keep.",
+    "Earthing and lightning protection: as local codes and a licensed electrician say.",
+    "Radio-frequency exposure: keep people out of the near field of an antenna that transmits, and check the limits that apply.",
+    "Structures near airfields or flight routes may need notice, a permit, marking or lights; ask the aviation authority.",
+    "Frequency, power and antenna must be allowed where they are used: check the rules of the regulator.",
+)
+_LOSS_WORDS = {"free_space": "Free-space loss", "diffraction": "Diffraction loss"}
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class LinkView:
+    """What templates show of one link."""
+
+    plan: LinkPlan
+    result: LinkResult
+    governing: CriterionResult
+    page: str
+    anchor: str
+    profile_csv: str
+    panel: Markup = Markup()
+    narrow: Markup = Markup()
+    full: Markup = Markup()
+    scale: str = ""
+
+
+def render_pages(plan: StudyPlan, *, progress: Progress | None = None) -> dict[str, str]:
+    """File names and HTML texts: `index.html`, then one page a link in the order of the study."""
+    templates = _environment()
+    rasters = open_rasters(plan.study.terrain.ground or plan.study.terrain.surface)
+    total = len(plan.links) + 1
+
+    def tell(done: int, name: str) -> None:
+        if progress is not None:
+            progress(done, total, name)
+
+    tell(0, OVERVIEW)
+    pages = {OVERVIEW: _overview(plan, templates, rasters)}
+    for index, link in enumerate(plan.links):
+        name = page_name(index, link.result.name)
+        tell(index + 1, name)
+        pages[name] = _link_page(plan, index, link, templates, rasters)
+    tell(total, "")
+    return pages
+
+
+def _overview(plan: StudyPlan, templates: Environment, rasters: list[RasterFile]) -> str:
+    views = [
+        _view(
+            index,
+            link,
+            panel=Markup(draw_profile(link, uid=f"p{index}w", sheet=PANEL)),
+            narrow=Markup(draw_profile(link, uid=f"p{index}n", sheet=NARROW)),
+        )
+        for index, link in enumerate(plan.links)
+    ]
+    chart = None
+    if plan.links:
+        chart = _map(
+            plan.links, rasters, name="overview", pixels=OVERVIEW_PIXELS, most_bytes=OVERVIEW_BYTES, overview=True
+        )
+    return templates.get_template("index.html.j2").render(
+        **_shared(plan, chart),
+        links=views,
+        totals=Counter(link.result.verdict for link in plan.links),
+        notes=(*plan.study.notes, *plan.cautions),
+        quiet=False,
+    )
+
+
+def _link_page(plan: StudyPlan, index: int, link: LinkPlan, templates: Environment, rasters: list[RasterFile]) -> str:
+    result = link.result
+    chart = _map([link], rasters, name="plan", pixels=LINK_PIXELS, most_bytes=LINK_BYTES, first=index)
+    view = _view(
+        index,
+        link,
+        full=Markup(draw_profile(link, uid="profile", sheet=FULL)),
+        narrow=Markup(draw_profile(link, uid="narrow", sheet=NARROW)),
+        scale=exaggeration_words(link),
+    )
+    return templates.get_template("link.html.j2").render(
+        **_shared(plan, chart),
+        link=view,
+        obstructions=[(item.criterion, cut) for item in result.clearance for cut in item.obstructions],
+        ends=[
+            ("A", result.ends.a, result.bearing_ab_deg, result.tilt_ab_deg),
+            ("B", result.ends.b, result.bearing_ba_deg, result.tilt_ba_deg),
+        ],
+        losses=_losses(result.losses_db),
+        cautions=(*result.cautions, *link.profile.notes, *plan.cautions),
+        safety=SAFETY,
+        quiet=True,
+    )
+
+
+def _view(index: int, link: LinkPlan, **drawings: Any) -> LinkView:
+    result = link.result
+    tail = slug(result.name)
+    return LinkView(
+        plan=link,
+        result=result,
+        governing=result.clearance[result.governing],
+        page=page_name(index, result.name),
+        anchor=f"link-{index + 1:02d}",
+        profile_csv=f"profile-{index + 1:02d}-{tail}.csv" if tail else f"profile-{index + 1:02d}.csv",
+        **drawings,
+    )
+
+
+def _map(
+    links: tuple[LinkPlan, ...] | list[LinkPlan],
+    rasters: list[RasterFile],
+    *,
+    name: str,
+    pixels: int,
+    most_bytes: int,
+    first: int = 0,
+    overview: bool = False,
+) -> MapMarkup:
+    reference = links[0].result.ends.a.longitude_deg
+    places = [place for link in links for place in geometry.path(link, reference)]
+    window = geometry.window_of(places, margin=0.25 if overview else 0.4)
+    relief = shaded_relief(rasters, window, pixels=pixels, most_bytes=most_bytes)
+    return link_map(links, name=name, relief=relief, first=first, overview=overview)
+
+
+def _shared(plan: StudyPlan, chart: MapMarkup | None) -> dict[str, Any]:
+    study = plan.study
+    tiles = None
+    origin = ""
+    if study.tiles_url:
+        # Leaflet takes the credit as HTML; it is the user's text and stays text.
+        tiles = {"url": study.tiles_url, "credit": escape(wording.clean(study.tiles_credit))}
+        origin = f" {urlsplit(study.tiles_url).scheme or 'https'}:"
+    return {
+        "plan": plan,
+        "map": chart and _safe_map(chart),
+        "tiles": tiles,
+        "tile_origin": origin if origin in (" https:", " http:") else "",
+        "css": {
+            "leaflet": assets.leaflet_css(),
+            "drawing": assets.asset("drawing.css"),
+            "page": assets.asset("page.css"),
+            "map": assets.asset("map.css"),
+        },
+        "js": {
+            "leaflet": assets.leaflet_js(),
+            "map": assets.asset("map.js"),
+            "overview": assets.asset("overview.js"),
+            "link": assets.asset("link.js"),
+        },
+    }
+
+
+def _safe_map(chart: MapMarkup) -> dict[str, Any]:
+    return {
+        "name": Markup(chart.name),
+        "html": Markup(chart.html.strip()),
+        "script": Markup(chart.script),
+        "bounds": chart.bounds,
+    }
+
+
+def _losses(losses: Losses) -> list[tuple[str, float | None]]:
+    """Every loss that was computed, new kinds included, under a name for people."""
+    named = []
+    for field in fields(losses):
+        value = getattr(losses, field.name)
+        if value is not None:
+            word = _LOSS_WORDS.get(field.name, field.name.replace("_", " ").capitalize() + " loss")
+            named.append((word, value))
+    return named
+
+
+def _place(latitude_deg: float, longitude_deg: float, style: PositionStyle = "decimal") -> str:
+    return format_position(Position(latitude_deg=latitude_deg, longitude_deg=longitude_deg), style)
+
+
+def _unit(value: float | None, unit: str, *, sign: bool = False) -> str:
+    return "–" if value is None else f"{wording.number(value, sign=sign)} {unit}"
+
+
+def _raise(value: float | None) -> str:
+    return "–" if value is None else wording.metres(value, sign=value > 0.0)
+
+
+def _bytes(size: int) -> str:
+    return f"{size} B" if size < 1000 else f"{size / 1e3:.0f} kB" if size < 1e6 else f"{size / 1e6:.1f} MB"
+
+
+def _digest(sha256: str) -> str:
+    head, colon, tail = sha256.rpartition(":")
+    return f"{head}{colon} {tail[:12]}…" if head else f"{tail[:12]}…"
+
+
+def _environment() -> Environment:
+    made = assets.environment()
+    made.filters.update(
+        bearing=wording.bearing,
+        bytes=_bytes,
+        criterion_words=wording.criterion_words,
+        degrees=wording.degrees,
+        digest=_digest,
+        distance=wording.distance,
+        frequency=wording.frequency,
+        governing_words=wording.governing_words,
+        headline=wording.headline,
+        k_factor=wording.k_factor,
+        km=lambda value, length: wording.kilometres(value, length_m=length),
+        metres=wording.metres,
+        number=wording.number,
+        percent=wording.percent,
+        unit=_unit,
+    )
+    made.filters["raise"] = _raise
+    made.globals.update(
+        symbol=wording.VERDICT_SYMBOL,
+        word=wording.VERDICT_WORD,
+        basis=wording.BASIS_WORD,
+        signal=wording.SIGNAL_WORD,
+        place=_place,
+    )
+    return made

@@ -1,0 +1,51 @@
+// Sets a map up: view, names that do not overlap, online tiles only when the reader asks for them.
+function setUpMap(map, options) {
+  "use strict";
+  var box = map.getContainer(), frame = box.parentElement, wanted = options.bounds, touched = false, tiles = null;
+  map.attributionControl.setPrefix(false);
+  function fit(bounds) {
+    wanted = bounds;
+    touched = false;
+    map.invalidateSize({animate: false});
+    map.fitBounds(bounds, {padding: [38, 34], maxZoom: 17, animate: false});
+  }
+  function overlap(one, other) {
+    return one.left < other.right + 2 && other.left < one.right + 2 && one.top < other.bottom && other.top < one.bottom;
+  }
+  function declutter() {
+    var names = Array.from(box.querySelectorAll(".site-name")), kept = [];
+    names.sort(function (a, b) {
+      return Number(b.parentElement.classList.contains("chosen")) - Number(a.parentElement.classList.contains("chosen"));
+    });
+    names.forEach(function (name) {
+      name.classList.remove("crowded");
+      var here = name.getBoundingClientRect();
+      if (kept.some(function (there) { return overlap(here, there); })) name.classList.add("crowded");
+      else kept.push(here);
+    });
+  }
+  if (options.quiet) {
+    map.scrollWheelZoom.disable();
+    if (L.Browser.mobile) map.dragging.disable();
+  }
+  map.on("dragstart zoomstart", function () { touched = true; });
+  map.on("zoomend moveend", declutter);
+  new ResizeObserver(function () {
+    if (touched) map.invalidateSize({animate: false}); else fit(wanted);
+    declutter();
+  }).observe(box);
+  var button = frame.querySelector("[data-map=tiles]");
+  if (button && options.tiles) button.addEventListener("click", function () {
+    if (tiles) {
+      tiles.remove();
+      tiles = null;
+      button.textContent = "Show online map tiles";
+      return;
+    }
+    tiles = L.tileLayer(options.tiles.url, {attribution: options.tiles.credit, maxZoom: 19, opacity: 0.75}).addTo(map);
+    button.textContent = "Hide online map tiles";
+  });
+  fit(wanted);
+  declutter();
+  return {map: map, fit: fit, declutter: declutter, all: options.bounds};
+}
