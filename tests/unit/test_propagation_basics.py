@@ -6,7 +6,7 @@ import sys
 
 import numpy as np
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from fellspan.propagation import (
@@ -25,6 +25,8 @@ from fellspan.propagation import (
     wavelength_m,
 )
 from fellspan.propagation.constants import SPEED_OF_LIGHT_M_S
+
+seeded = settings(derandomize=True, deadline=None)
 
 distances = st.floats(1.0, 5e5)
 frequencies = st.floats(1e8, 1e11)
@@ -65,6 +67,7 @@ def test_inputs_are_left_alone() -> None:
     np.testing.assert_array_equal(distance, kept)
 
 
+@seeded
 @given(distances, frequencies)
 def test_frequency_counts_only_through_the_wavelength(distance_m: float, frequency_hz: float) -> None:
     # Scaling the frequency by c / 3e8 is the same as taking c = 3e8 m/s.
@@ -98,6 +101,7 @@ def test_undefined_is_nan() -> None:
     assert [value for value in undefined if not math.isnan(value)] == []
 
 
+@seeded
 @given(distances, distances, frequencies)
 def test_fresnel_zone_is_the_same_from_both_ends(a: float, b: float, frequency_hz: float) -> None:
     radius = fresnel_radius_m(a, b, frequency_hz=frequency_hz)
@@ -136,6 +140,7 @@ def test_bulge_is_the_parabola_near_the_circle() -> None:
     assert earth_bulge_m(25e3, 25e3, k=1.0) == pytest.approx(circle, abs=0.01)
 
 
+@seeded
 @given(st.floats(-1000, 1000).filter(lambda g: abs(g + 157) > 1e-3))
 def test_gradient_and_k_are_inverse(gradient: float) -> None:
     k = k_from_gradient(gradient)
@@ -151,6 +156,7 @@ def test_gradient_through_the_pole_of_k() -> None:
     assert effective_earth_radius_m(-2.0) == pytest.approx(-12_742_000.0)
 
 
+@seeded
 @given(st.floats(0, 1e6), st.floats(0, 1e6))
 def test_k_of_the_worst_month_rises_with_length(one: float, other: float) -> None:
     low, high = sorted((one, other))

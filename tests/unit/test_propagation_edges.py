@@ -4,7 +4,7 @@ import math
 
 import numpy as np
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from fellspan.propagation import (
@@ -19,10 +19,13 @@ from fellspan.propagation import (
     smooth_enough_m,
 )
 
+seeded = settings(derandomize=True, deadline=None)
+
 heights = st.floats(-200, 200)
 distances = st.floats(100, 1e5)
 
 
+@seeded
 @given(heights, distances, distances)
 def test_nu_is_clearance_in_zones(above: float, a: float, b: float) -> None:
     radius = fresnel_radius_m(a, b, frequency_hz=6e9)
@@ -31,6 +34,7 @@ def test_nu_is_clearance_in_zones(above: float, a: float, b: float) -> None:
     assert nu == pytest.approx(knife_edge_nu(above, from_a_m=b, from_b_m=a, frequency_hz=6e9), rel=1e-12)
 
 
+@seeded
 @given(st.floats(-50, 50), st.floats(-50, 50))
 def test_higher_edges_never_cost_less(one: float, other: float) -> None:
     low, high = sorted((one, other))
@@ -76,6 +80,7 @@ def test_nan_goes_through() -> None:
     assert [value for value in values if not math.isnan(value)] == []
 
 
+@seeded
 @given(heights, heights, distances, distances, distances)
 def test_two_edges_are_the_same_from_both_ends(one: float, two: float, a: float, b: float, c: float) -> None:
     there = double_edge_loss_db(one, two, a_to_first_m=a, first_to_second_m=b, second_to_b_m=c, frequency_hz=2e9)
