@@ -100,14 +100,15 @@ def test_levels_stand_on_the_samples_of_the_profile() -> None:
 class SharpTerrain:
     """A terrain with a needle that the default step misses; hands out profiles as the real one does."""
 
-    def __init__(self) -> None:
+    def __init__(self, ripple_m: float = 0.0) -> None:
+        self.ripple_m = ripple_m
         self.windows: tuple[tuple[float, float], ...] = ()
         self.step_m = 0.0
 
     def _at(self, distance: np.ndarray) -> PathProfile:
         made = profile_of(8000.0, n=distance.size, cell_m=20.0)
         fields = {name: getattr(made, name) for name in made.__slots__}
-        ground = 30.0 - np.abs(distance - 3003.0) * 0.2
+        ground = 30.0 - np.abs(distance - 3003.0) * 0.2 + self.ripple_m * np.cos(2.0 * np.pi * distance / 20.0)
         return PathProfile(**(fields | {"distance_m": distance, "ground_m": ground, "surface_m": ground.copy()}))
 
     def profile(self, *, a: object, b: object, step_m: float | None = None, name: str | None = None) -> PathProfile:
@@ -134,6 +135,14 @@ def test_the_worst_minima_are_looked_at_again() -> None:
     assert all(one[1] < two[0] for one, two in zip(terrain.windows, terrain.windows[1:], strict=False))
     whole = assess_in_full(link, terrain=terrain)  # type: ignore[arg-type]
     assert whole.profile.distance_m.shape == whole.levels.distance_m.shape
+
+
+def test_windows_that_touch_become_one() -> None:
+    terrain = SharpTerrain(ripple_m=3.0)  # a minimum at every other sample
+    assess(link_of(profile_of(8000.0), 640.0, 640.0), terrain=terrain)  # type: ignore[arg-type]
+    assert terrain.windows
+    assert all(one[1] < two[0] for one, two in zip(terrain.windows, terrain.windows[1:], strict=False))
+    assert max(to_m - from_m for from_m, to_m in terrain.windows) > 20.0
 
 
 def test_the_same_place_twice_is_refused() -> None:

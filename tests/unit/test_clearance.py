@@ -118,6 +118,7 @@ def test_one_short_ridge_is_isolated() -> None:
 
 def test_two_ridges_are_extended() -> None:
     assert is_extended(*_clearance_with_ridges((4000.0, 4100.0), (6000.0, 6100.0)))
+    assert is_extended(*_clearance_with_ridges((4000.0, 4100.0), (4300.0, 4400.0)))  # near each other, but two
 
 
 def test_a_long_ridge_is_extended_from_a_tenth_of_the_path() -> None:

@@ -1,14 +1,18 @@
 """Causes by name, verdicts, basis, sentences and cautions."""
 
+import dataclasses
 import datetime as dt
+import re
 
 import numpy as np
 import pytest
 from made_profiles import link_of, obstacle, profile_of
 
 from fellspan.links.assess import AssessSettings, assess_profile
+from fellspan.links.budget import sea_share
 from fellspan.links.criteria import Criterion
 from fellspan.links.result import AtEnds, LinkResult
+from fellspan.links.site import Antenna
 from fellspan.links.verdicts import signal_verdict
 from fellspan.terrain.profile import PathProfile
 
@@ -40,7 +44,11 @@ def between(from_m: float, to_m: float, height_m: float):  # type: ignore[no-unt
         (profile_of(10e3, ridge(60.0), cover=between(4100, 4300, 14.0)), 20.0, "ground at 60 m and trees, 14 m"),
         (profile_of(10e3, 5.0, obstacles=(obstacle("Crane 2", 4000, 4010, 40.0, ground_m=5.0),)), 20.0, "Crane 2"),
         (profile_of(60e3, 0.4), 30.0, "Earth bulge over the sea"),
-        (profile_of(10e3, ridge(60.0)), 66.5, "ground at 60 m"),  # 0.5 m short with a bulge of 1.4 m: the ridge is to blame
+        (
+            profile_of(10e3, ridge(60.0)),
+            67.5,
+            "ground at 60 m",
+        ),  # 0.5 m short with a bulge of 1.4 m: the ridge is to blame
         (profile_of(60e3, 70.0), 30.0, "Earth bulge"),
         (profile_of(60e3, 3.0, source="sea level"), 30.0, "Earth bulge over the sea"),
         (profile_of(2e3, 0.0), 30.0, "sea"),
@@ -56,7 +64,7 @@ def test_obstructed_says_what_cuts_where_and_what_height_clears_it() -> None:
     assert result.reasons[0] == "Obstructed: ground at 60 m cuts the sight line by 41.4 m at 4.20 km from A."
     extra = result.clearance[0].extra_height_m
     assert extra.both is not None
-    assert f"both by {np.ceil(extra.both * 10) / 10:.1f} m" in result.reasons[2]
+    assert result.reasons[2] == f"Raise both by {np.ceil(extra.both):.0f} m, to be clear with 90 % confidence."
     (stretch,) = result.clearance[0].obstructions
     assert stretch.from_m < 4200.0 < stretch.to_m
     assert stretch.cuts_sight
@@ -96,6 +104,34 @@ def test_no_height_at_the_ends_is_offered_beyond_usual_masts() -> None:
     assert "Raise A" not in " ".join(result.reasons)
 
 
+def test_the_height_said_makes_it_clear_with_the_confidence_asked() -> None:
+    rule = AssessSettings(criteria=(Criterion(name="rule", k=4 / 3, fraction=0.6, source="made"),), confidence=0.95)
+    profile = profile_of(10e3, ridge(60.0), sigma_m=3.0)
+    low = _result(profile, 55.0, 55.0, rule)
+    found = re.fullmatch(
+        r"Raise A by (\d+) m, or B by (\d+) m, or both by (\d+) m, to be clear .* 95 %.*", low.reasons[2]
+    )
+    assert found is not None
+    a, b, both = (float(text) for text in found.groups())
+    for add_a, add_b in ((a, 0.0), (0.0, b), (both, both)):
+        assert _result(profile, 55.0 + add_a, 55.0 + add_b, rule).verdict == "clear"
+        assert _result(profile, 53.5 + add_a, 53.5 + add_b, rule).verdict != "clear"
+
+
+def test_stretches_that_the_raster_cannot_tell_apart_are_one() -> None:
+    rows = profile_of(
+        10e3, 5.0, cover=lambda d: np.where((d > 4000) & (d < 4200) & (d % 20 < 10), 20.0, 0.0), cell_m=30.0
+    )
+    assert len(_result(rows, 15.0, 15.0).clearance[0].obstructions) == 1
+    two = profile_of(
+        10e3, 5.0, cover=lambda d: between(4000, 4100, 20.0)(d) + between(4200, 4300, 20.0)(d), cell_m=30.0
+    )
+    assert len(_result(two, 15.0, 15.0).clearance[0].obstructions) == 2
+    crane = obstacle("Crane 2", 4130.0, 4130.0, 40.0, ground_m=5.0)
+    beside = profile_of(10e3, 5.0, cover=between(4000, 4100, 20.0), cell_m=30.0, obstacles=(crane,))
+    assert [item.cause for item in _result(beside, 15.0, 15.0).clearance[0].obstructions] == ["trees, 20 m", "Crane 2"]
+
+
 def test_clear_on_bare_ground_says_so_first() -> None:
     result = _result(profile_of(5e3), 60.0, 60.0)
     assert result.verdict == "clear"
@@ -117,7 +153,7 @@ def test_surveyed_asks_for_the_samples_that_an_unlisted_tree_could_reach() -> No
     near_ends = np.where(np.minimum(at, 5e3 - at) < 800.0, 2, 0).astype(np.int8)
     too_near = np.where(np.minimum(at, 5e3 - at) < 100.0, 2, 0).astype(np.int8)
     assert _result(profile_of(5e3, valley, measured=0)).basis == "bare ground only"
-    made = profile_of(5e3, valley)
+    made = profile_of(5e3, valley, cover=between(2300, 2700, 68.0))  # listed cover is no unlisted tree
     for measured, basis in ((near_ends, "surveyed"), (too_near, "bare ground only")):
         fields = {name: getattr(made, name) for name in made.__slots__}
         assert _result(PathProfile(**(fields | {"measured": measured}))).basis == basis
@@ -149,6 +185,36 @@ def test_level_by_hand() -> None:
     assert result.margin_db.at_a == pytest.approx(80 - 70.052, abs=5e-4)
     assert result.signal_verdict == "marginal"
     assert any("not yet counted" in reason for reason in result.reasons)
+
+
+def test_feeders_at_both_ends_are_lost() -> None:
+    profile = profile_of(5e3)
+    link = link_of(profile, power_dbm=20.0, gain_dbi=15.0)
+    lossy = dataclasses.replace(
+        link, antenna_a=Antenna(gain_dbi=15.0, feeder_loss_db=1.5), antenna_b=Antenna(gain_dbi=15.0, feeder_loss_db=0.7)
+    )
+    before, after = (assess_profile(item, profile).result.received_dbm.at_a for item in (link, lossy))
+    assert before is not None
+    assert after == pytest.approx(before - 2.2, abs=1e-9)
+
+
+def test_sea_share_counts_length_not_samples() -> None:
+    made = profile_of(1000.0, n=11)
+    fields = {name: getattr(made, name) for name in made.__slots__}
+    distance = np.array([0.0, 10.0, 20.0, 30.0, 40.0, 50.0, 60.0, 70.0, 80.0, 500.0, 1000.0])
+    source = np.array([0, 0, 0, 0, 0, 0, 0, 0, 0, 1, 1], dtype=np.int16)
+    sources = ("made_dtm.tif", "sea level")
+    profile = PathProfile(**(fields | {"distance_m": distance, "source": source, "sources": sources}))
+    assert sea_share(profile) == pytest.approx(0.71, abs=1e-9)
+    assert sea_share(made) == 0.0
+
+
+def test_a_tree_round_the_antenna_itself_cuts_the_sight_line() -> None:
+    profile = profile_of(5e3, obstacles=(obstacle("Old oak", 0.0, 0.0, 15.0, kind="tree"),))
+    result = _result(profile, 10.0, 60.0)
+    assert result.reasons[0] == "Obstructed: Old oak cuts the sight line by 5.0 m at 0 m from A."
+    extra = result.clearance[0].extra_height_m
+    assert (extra.a, extra.b, extra.both) == (pytest.approx(5.0), None, pytest.approx(5.0))
 
 
 def test_unknown_equipment_gives_no_level() -> None:

@@ -18,7 +18,7 @@ from fellspan.links.budget import budget, tilt_deg
 from fellspan.links.cautions import cautions
 from fellspan.links.criteria import Criterion, criteria_for, is_extended, worst_month_k
 from fellspan.links.ends import EndLevel, end_level
-from fellspan.links.evaluate import criterion_result, error_m, governing_row
+from fellspan.links.evaluate import criterion_result, error_m, extra_for_confidence, governing_row
 from fellspan.links.levels import PathLevels
 from fellspan.links.own_building import Standing, standing, with_ground_at_end, with_nodes, with_roof_edge
 from fellspan.links.result import EndResult, Ends, LinkResult
@@ -40,7 +40,8 @@ class AssessSettings:
     """How links are judged.
 
     `criteria` replaces `preset` where it is not empty. `confidence` is the probability asked of every criterion, above 0 and
-    below 1. `date` is for magnetic bearings; None leaves them out.
+    below 1. `date` is for magnetic bearings; None leaves them out. `step_m` is the regular step along paths, None for half
+    the finest cell.
     """
 
     preset: CriteriaPreset = "p530-temperate"
@@ -48,6 +49,7 @@ class AssessSettings:
     median_k: float = 4.0 / 3.0
     confidence: float = 0.9
     date: dt.date | None = None
+    step_m: float | None = None
 
     def __post_init__(self) -> None:
         if math.isnan(self.median_k) or self.median_k == 0.0:
@@ -89,7 +91,7 @@ def assess_in_full(link: Link, *, terrain: "Terrain", settings: AssessSettings =
             f"link '{link.name}': '{link.a.name}' and '{link.b.name}' are the same place ({distance_m:.2f} m apart)",
             "give the two ends different coordinates",
         )
-    coarse = terrain.profile(a=link.a.position, b=link.b.position, name=link.name)
+    coarse = terrain.profile(a=link.a.position, b=link.b.position, step_m=settings.step_m, name=link.name)
     windows = _windows(_Laid.out(link, coarse, settings))
     fine = terrain.refine(coarse, windows, step_m=coarse.cell_m / REFINE_PARTS) if windows else coarse
     return assess_profile(link, fine, settings)
@@ -116,6 +118,7 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
         results=results,
         governing=governing,
         sight=sight,
+        raising=extra_for_confidence(levels, error_m(profile, stands), confidence=settings.confidence),
         confidence=confidence,
         confidence_asked=settings.confidence,
         ignored=stands.ignored,
@@ -141,7 +144,7 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
             (laid.a, laid.b),
             preset=None if settings.criteria else settings.preset,
             median_k=k,
-            raises=any(not result.met for result in results),
+            raises=verdict != "clear",
             diffraction_db=loss.losses.diffraction,
             trees=bool(np.any((stands.cover_kind == 2) & (levels.available_m < levels.need_m[governing]))),
             no_errors=not error_m(profile, stands).any(),

@@ -28,7 +28,8 @@ class Budget:
 
 def sea_share(profile: PathProfile) -> float:
     """Share of the path, 0 to 1, that the study took as open sea, weighted by the length each sample stands for."""
-    weights = np.gradient(profile.distance_m)
+    between = np.diff(profile.distance_m)
+    weights = 0.5 * (np.append(between, 0.0) + np.append(0.0, between))
     return float(np.sum(weights[is_sea_level(profile)]) / np.sum(weights))
 
 

@@ -4,6 +4,7 @@ Reads levels that `clearance` made and turns them into a CriterionResult; comput
 """
 
 import math
+from statistics import NormalDist
 
 import numpy as np
 from numpy.typing import NDArray
@@ -73,7 +74,7 @@ def _obstructions(row: int, *, profile: PathProfile, standing: Standing, levels:
     shortfall = levels.need_m[row] - levels.available_m
     cut = levels.surface_m + levels.bulge_m[row] - levels.available_m
     found = []
-    for first, last, from_m, to_m in clearance.stretches(shortfall, levels.distance_m):
+    for first, last, from_m, to_m in _joined(clearance.stretches(shortfall, levels.distance_m), profile, standing):
         worst = first + int(np.argmax(shortfall[first : last + 1]))
         found.append(
             Obstruction(
@@ -89,6 +90,20 @@ def _obstructions(row: int, *, profile: PathProfile, standing: Standing, levels:
     return tuple(found)
 
 
+def _joined(
+    found: list[tuple[int, int, float, float]], profile: PathProfile, standing: Standing
+) -> list[tuple[int, int, float, float]]:
+    """Stretches less than a cell apart made one, which the raster cannot tell apart; named obstacles stay by themselves."""
+    named = standing.obstacle_index >= 0
+    joined: list[tuple[int, int, float, float]] = []
+    for first, last, from_m, to_m in found:
+        if joined and from_m - joined[-1][3] < profile.cell_m and not named[joined[-1][0] : last + 1].any():
+            joined[-1] = (joined[-1][0], last, joined[-1][2], to_m)
+        else:
+            joined.append((first, last, from_m, to_m))
+    return joined
+
+
 def _cause(profile: PathProfile, standing: Standing, levels: PathLevels, row: int, index: int) -> str:
     return cause_at(
         profile,
@@ -98,6 +113,19 @@ def _cause(profile: PathProfile, standing: Standing, levels: PathLevels, row: in
         bulge_m=float(levels.bulge_m[row, index]),
         need_m=float(levels.need_m[row, index]),
     )
+
+
+def extra_for_confidence(levels: PathLevels, errors_m: NDArray[np.float64], *, confidence: float) -> ExtraHeight:
+    """Height to add so that every criterion holds with a confidence, at A alone, at B alone, at both alike.
+
+    `errors_m` as `error_m` gives them, shape (n,); `confidence` above 0 and below 1.
+    """
+    sigmas = NormalDist().inv_cdf(confidence)
+    shortfall = levels.need_m + sigmas * errors_m - levels.available_m
+    at_a, at_b, both = (
+        _finite(float(np.max(extra))) for extra in clearance.extra_heights_m(shortfall, levels.distance_m)
+    )
+    return ExtraHeight(a=at_a, b=at_b, both=both)
 
 
 def spare_m(result: CriterionResult) -> float:

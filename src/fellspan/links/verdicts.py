@@ -14,7 +14,7 @@ from fellspan.links.causes import cause_at
 from fellspan.links.evaluate import spare_m
 from fellspan.links.levels import PathLevels
 from fellspan.links.own_building import ROOF_SOURCE, Standing
-from fellspan.links.result import AtEnds, CriterionResult, Ignored
+from fellspan.links.result import AtEnds, CriterionResult, ExtraHeight, Ignored
 from fellspan.terrain.profile import MEASURED_TOP, PathProfile
 from fellspan.vocabulary import Basis, PathVerdict, SignalVerdict
 
@@ -100,6 +100,7 @@ def reasons(
     results: tuple[CriterionResult, ...],
     governing: int,
     sight: SightLine,
+    raising: ExtraHeight,
     confidence: float,
     confidence_asked: float,
     ignored: tuple[Ignored, ...],
@@ -138,7 +139,8 @@ def reasons(
         )
     else:
         sentences.append(f"{rule.shortfall_m:.1f} m is missing at {place(rule.shortfall_at_m)} under {rule.criterion}.")
-        sentences.append(_raise_sentence(results))
+    if verdict != "clear":
+        sentences.append(_raise_sentence(raising, confidence_asked))
     sentences.append(_basis_sentence(basis))
     sentences += [
         f"Left out at {item.end}, as the antenna's own building or cover: {item.what}, up to {item.height_m:.1f} m high."
@@ -162,31 +164,21 @@ def place(at_m: float) -> str:
     return f"{at_m / 1000.0:.2f} km from A" if at_m >= 1000.0 else f"{at_m:.0f} m from A"
 
 
-def _raise_sentence(results: tuple[CriterionResult, ...]) -> str:
-    """Heights that meet every criterion on the heights in the data, rounded up to 0.1 m."""
-    extra = [result.extra_height_m for result in results]
-    options = []
-    for words, values in (
-        ("A by", [item.a for item in extra]),
-        ("B by", [item.b for item in extra]),
-        ("both by", [item.both for item in extra]),
-    ):
-        known = [value for value in values if value is not None]
-        if len(known) == len(values) and max(known) <= USUAL_MAST_M:
-            options.append(f"{words} {_up(max(known))} m")
+def _raise_sentence(extra: ExtraHeight, confidence: float) -> str:
+    """Heights to build to: at the confidence asked, rounded up to whole metres of mast."""
+    options = [
+        f"{words} by {math.ceil(height_m - 1e-6)} m"
+        for words, height_m in (("A", extra.a), ("B", extra.b), ("both", extra.both))
+        if height_m is not None and height_m <= USUAL_MAST_M
+    ]
     if options:
-        return f"Raise {', or '.join(options)}, to meet every criterion on the heights in the data."
-    most = [item.both for item in extra if item.both is not None]
-    if most:
+        return f"Raise {', or '.join(options)}, to be clear with {100.0 * confidence:.0f} % confidence."
+    if extra.both is not None:
         return (
-            f"Raising both ends would take {_up(max(most))} m each, more than usual masts give: "
+            f"Raising both ends would take {math.ceil(extra.both)} m each, more than usual masts give: "
             "look for another site or a relay."
         )
-    return "No height at the ends meets every criterion: look for another site or a relay."
-
-
-def _up(height_m: float) -> str:
-    return f"{math.ceil(height_m * 10.0 - 1e-6) / 10.0:.1f}"
+    return "No height at the ends makes this path clear: look for another site or a relay."
 
 
 def _percent(probability: float) -> str:
