@@ -1,7 +1,7 @@
-"""Write the sample's rasters and obstacle files anew: `python sample_terrain/make_sample.py [FOLDER]`.
+"""Write the sample's rasters, obstacles and survey anew: `python sample_terrain/make_sample.py [FOLDER]`.
 
 Everything comes from one seed, so a second run writes the same heights. The place is invented and lies in open ocean.
-The study file beside this script and its survey are written by hand.
+Only the study file beside this script is written by hand.
 """
 
 import sys
@@ -10,6 +10,7 @@ from pathlib import Path
 import numpy as np
 import rasterio
 import relief
+import town
 from numpy.typing import NDArray
 from rasterio import Affine
 from rasterio.crs import CRS
@@ -26,7 +27,7 @@ def ground_counts(seed: int = SEED) -> NDArray[np.int16]:
 
 def tree_counts(ground: NDArray[np.int16], seed: int = SEED) -> NDArray[np.uint8]:
     """Tree heights as stored: counts of 0.1 m above ground, in steps of 0.5 m."""
-    trees_m = relief.make_trees(seed, ground * GROUND_SCALE_M)
+    trees_m = relief.make_trees(seed, ground.astype(np.float64) * GROUND_SCALE_M)
     return (np.round(trees_m / 0.5) * 5).astype(np.uint8)
 
 
@@ -38,6 +39,7 @@ def write_raster(
     crs: CRS,
     nodata: int,
     scale: float,
+    unit: str | None,
     what: str,
 ) -> None:
     """Write one tiled, compressed GeoTIFF whose heights are counts * scale, in metres."""
@@ -58,14 +60,20 @@ def write_raster(
         "zlevel": 9,
     }
     with rasterio.open(path, "w", **profile) as raster:
-        raster.write(counts, 1)
-        raster.scales, raster.offsets, raster.units = (scale,), (0.0,), ("m",)
         raster.descriptions = (what,)
+        raster.scales, raster.offsets = (scale,), (0.0,)
+        if unit is not None:
+            raster.units = (unit,)
+        raster.write(counts, 1)
+    with rasterio.open(path) as raster:
+        if raster.scales != (scale,):
+            raise RuntimeError(f"{path.name} lost its scale")
 
 
-def write_rasters(folder: Path, seed: int = SEED) -> None:
-    """Write tolmera_ground.tif and tolmera_trees.tif."""
+def write_sample(folder: Path, seed: int = SEED) -> None:
+    """Write every file of the sample but the study."""
     ground = ground_counts(seed)
+    trees = tree_counts(ground, seed)
     write_raster(
         folder / "tolmera_ground.tif",
         ground,
@@ -73,19 +81,25 @@ def write_rasters(folder: Path, seed: int = SEED) -> None:
         crs=CRS.from_string("EPSG:32623+3855"),
         nodata=GROUND_NODATA,
         scale=GROUND_SCALE_M,
+        unit=None,  # the vertical part of the CRS says metres; set after it, GDAL 3.10 loses the scale
         what="bare ground above sea level",
     )
     write_raster(
         folder / "tolmera_trees.tif",
-        tree_counts(ground, seed),
+        trees,
         cell_m=relief.COVER_CELL_M,
         crs=CRS.from_epsg(32623),
         nodata=COVER_NODATA,
         scale=COVER_SCALE_M,
+        unit="m",
         what="trees above ground",
     )
+    (folder / "buildings.geojson").write_text(town.buildings_geojson(seed), encoding="utf-8", newline="\n")
+    (folder / "obstacles.csv").write_text(town.obstacles_csv(), encoding="utf-8", newline="\n")
+    survey = town.survey_csv(ground.astype(np.float64) * GROUND_SCALE_M, trees.astype(np.float64) * COVER_SCALE_M, seed)
+    (folder / "survey.csv").write_text(survey, encoding="utf-8", newline="\n")
 
 
 if __name__ == "__main__":
     target = Path(sys.argv[1]) if len(sys.argv) > 1 else Path(__file__).resolve().parent
-    write_rasters(target)
+    write_sample(target)

@@ -38,6 +38,7 @@ ISLETS = (
     Dome(east_m=505_900, north_m=3_993_600, half_east_m=260, half_north_m=330, summit_m=12, roughness=0.2),
 )
 BAY_EAST_M, BAY_NORTH_M, BAY_RADIUS_M = 487_900.0, 3_988_300.0, 1_150.0
+MOLE_FROM, MOLE_TO, MOLE_HALF_WIDTH_M, MOLE_TOP_M = (486_040.0, 3_988_580.0), (486_900.0, 3_988_200.0), 16.0, 4.0
 PLAIN_EAST_M, PLAIN_NORTH_M, PLAIN_RADIUS_M = 485_700.0, 3_987_300.0, 1_650.0
 
 
@@ -45,7 +46,7 @@ def cell_centres(cell_m: float) -> tuple[Grid, Grid]:
     """Eastings (1, columns) and northings (rows, 1) of the cell centres."""
     east = EAST_M + cell_m * (np.arange(round(WIDTH_M / cell_m)) + 0.5)
     north = NORTH_M - cell_m * (np.arange(round(HEIGHT_M / cell_m)) + 0.5)
-    return east[np.newaxis, :], north[:, np.newaxis]
+    return np.asarray(east[np.newaxis, :], dtype=np.float64), np.asarray(north[:, np.newaxis], dtype=np.float64)
 
 
 def noise(rng: np.random.Generator, wave_m: float, cell_m: float, *, octaves: int = 1) -> Grid:
@@ -74,6 +75,14 @@ def _cubic(x: Grid) -> Grid:
 
 def _bump(east: Grid, north: Grid, at_east: float, at_north: float, radius: float) -> Grid:
     return np.exp(-(((east - at_east) ** 2 + (north - at_north) ** 2) / radius**2))
+
+
+def _from_line(east: Grid, north: Grid, start: tuple[float, float], stop: tuple[float, float]) -> Grid:
+    """Distance from a straight stretch."""
+    run_east, run_north = stop[0] - start[0], stop[1] - start[1]
+    share = ((east - start[0]) * run_east + (north - start[1]) * run_north) / (run_east**2 + run_north**2)
+    share = np.clip(share, 0.0, 1.0)
+    return np.hypot(east - start[0] - share * run_east, north - start[1] - share * run_north)
 
 
 def _shape(dome: Dome, east: Grid, north: Grid, wobble: Grid) -> Grid:
@@ -161,7 +170,10 @@ def make_ground(seed: int) -> Grid:
     level += detail * np.clip(level / 40.0, 0.05, 1.4)
     shore = np.clip(fine_shape / 0.03, 0.0, 1.0)
     level = np.maximum(level * shore, 0.0) + 1.5 * shore
-    return np.where(fine_shape > 0.0, np.maximum(level, 0.3), 0.0)
+    ground = np.where(fine_shape > 0.0, np.maximum(level, 0.3), 0.0)
+    return np.where(
+        _from_line(east, north, MOLE_FROM, MOLE_TO) < MOLE_HALF_WIDTH_M, np.maximum(ground, MOLE_TOP_M), ground
+    )
 
 
 def make_trees(seed: int, ground_m: Grid) -> Grid:
