@@ -94,6 +94,19 @@ def test_a_full_study_comes_back_the_same(folder: Path) -> None:
     assert read_study(text, path=folder / "study.toml") == study
 
 
+def test_a_coarse_position_stays_coarse_and_a_fine_one_fine(folder: Path) -> None:
+    fine = Site(name="fine", position=Position(latitude_deg=36.1, longitude_deg=-45.25), height_m=9.0)
+    link = Link(name="l", a=fine, b=dataclasses.replace(fine, name="coarse"), radio=RADIO)
+    terrain = TerrainInputs(ground=(RasterSource(path=folder / "fine"),))
+    notes = ("site 'coarse': the latitude is coarse",)
+    study = Study(title="t", links=(link,), terrain=terrain, date=dt.date(2026, 5, 1), notes=notes)
+    text = study_text(study, folder=folder)
+    assert 'at = "36.10000 N, 45.25000 W"' in text
+    assert 'at = "36.1 N, 45.25 W"' in text
+    (note,) = read_study(text, path=folder / "s.toml").notes
+    assert note.startswith("site 'coarse'")
+
+
 def test_own_rules_come_back(folder: Path) -> None:
     rules = tuple(
         Criterion(name=f"k {k}", k=k, fraction=0.6, source="rule of the study file")

@@ -17,6 +17,7 @@ from fellspan.links.site import Antenna, Link, Radio, Site
 from fellspan.planning.inputs import Study, TerrainInputs
 from fellspan.propagation.refraction import k_from_gradient
 from fellspan.study.messages import Problem, did_you_mean, raise_problems
+from fellspan.study.notes import position_note
 from fellspan.study.schema import (
     AntennaTable,
     CriteriaTable,
@@ -75,6 +76,11 @@ def _median_k(criteria: CriteriaTable) -> float:
     return _DEFAULT_MEDIAN_K if criteria.median_k is None else criteria.median_k
 
 
+def raster_path(text: str, folder: Path) -> str | Path:
+    """A file name resolved against a folder; a name that the raster library resolves by itself stays text."""
+    return text if _ELSEWHERE.match(text) else folder / Path(text).expanduser()
+
+
 class _Assembler:
     """Works through the tables and gathers problems, so that one run tells how many there are."""
 
@@ -112,7 +118,7 @@ class _Assembler:
             return
         self.positions[name] = parsed.position
         if parsed.caution:
-            self.notes.append(f"site '{name}': {parsed.caution}")
+            self.notes.append(position_note(name, parsed.caution))
 
     def links(self) -> tuple[Link, ...]:
         """The links whose parts are all there; what is not is added to the problems."""
@@ -240,15 +246,13 @@ class _Assembler:
         )
 
     def _path(self, key: str, text: str) -> str | Path:
-        if _ELSEWHERE.match(text):
-            return text
-        resolved = self.folder / Path(text).expanduser()
-        if not resolved.exists():
+        resolved = raster_path(text, self.folder)
+        if isinstance(resolved, Path) and not resolved.exists():
             self.problems.append(
                 Problem(
                     f"terrain.{key}",
                     f"there is no file '{text}'",
-                    (f"looked for at {resolved}", "paths are relative to the study file"),
+                    (f"looked for at {resolved.absolute()}", "paths are relative to the study file"),
                 )
             )
         return resolved

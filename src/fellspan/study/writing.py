@@ -13,6 +13,7 @@ from fellspan.errors import StudyError
 from fellspan.links.criteria import Criterion
 from fellspan.links.site import Antenna, Link, Radio, Site
 from fellspan.planning.inputs import Study
+from fellspan.study.notes import position_note
 from fellspan.terrain.sources import CoverSource, RasterSource
 
 _ABOVE = {"ground": "above ground", "roof": "above roof", "sea": "above sea level"}
@@ -41,7 +42,7 @@ def study_text(study: Study, *, folder: Path) -> str:
         ),
         _terrain(study, folder),
         *_criteria(study),
-        *(_site(site) for site in sites.values()),
+        *(_site(site, study.notes) for site in sites.values()),
         *(_radio(radio) for radio in radios.values()),
         *(
             _table("[[antenna]]", ("name", quoted(name)), ("gain", None if gain is None else f'"{_number(gain)} dBi"'))
@@ -85,8 +86,13 @@ def _frequency(frequency_hz: float) -> str:
     return f'"{_number(frequency_hz)} Hz"'
 
 
-def _degrees(value: float, positive: str, negative: str) -> str:
-    return f"{_number(abs(value))} {negative if value < 0 else positive}"
+def _degrees(value: float, positive: str, negative: str, *, coarse: bool) -> str:
+    """Degrees with a letter; filled with zeros to five decimals, unless it was typed so coarsely that a note was made of it."""
+    text = _number(abs(value))
+    if not coarse and "e" not in text:
+        whole, _, decimals = text.partition(".")
+        text = f"{whole}.{decimals:0<5}"
+    return f"{text} {negative if value < 0 else positive}"
 
 
 def _height(site: Site) -> str:
@@ -172,9 +178,13 @@ def _rule(rule: Criterion) -> str:
     )
 
 
-def _site(site: Site) -> str:
+def _site(site: Site, notes: Iterable[str]) -> str:
     position = site.position
-    at = f"{_degrees(position.latitude_deg, 'N', 'S')}, {_degrees(position.longitude_deg, 'E', 'W')}"
+    coarse = any(note.startswith(position_note(site.name, "")) for note in notes)
+    at = (
+        f"{_degrees(position.latitude_deg, 'N', 'S', coarse=coarse)}, "
+        f"{_degrees(position.longitude_deg, 'E', 'W', coarse=coarse)}"
+    )
     return _table(
         "[[site]]",
         ("name", quoted(site.name)),

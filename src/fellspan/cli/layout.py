@@ -1,0 +1,103 @@
+"""Laying out text on a terminal: wrapping, columns, rules, emphasis. Knows nothing of links."""
+
+import os
+import sys
+import textwrap
+import unicodedata
+from collections.abc import Iterable, Sequence
+
+WIDTH = 80
+_BOLD, _GREEN, _YELLOW, _RED, _PLAIN = "\x1b[1m", "\x1b[32m", "\x1b[33m", "\x1b[31m", "\x1b[0m"
+_TONES = {"good": _GREEN, "doubt": _YELLOW, "bad": _RED, "strong": ""}
+
+
+class Ink:
+    """Emphasis for a terminal; text as it is where colours are off. Words always say what a colour says."""
+
+    def __init__(self, *, colours: bool) -> None:
+        self.colours = colours
+
+    def emphasise(self, text: str, tone: str = "strong") -> str:
+        """Text in bold and in the colour of `tone`: 'good', 'doubt', 'bad' or 'strong' (no colour)."""
+        return f"{_BOLD}{_TONES[tone]}{text}{_PLAIN}" if self.colours else text
+
+
+def colours_wanted() -> bool:
+    """Colours only on a terminal that shows them, and not where the reader asked for none (NO_COLOR)."""
+    return sys.stdout.isatty() and not os.environ.get("NO_COLOR") and os.environ.get("TERM") != "dumb"
+
+
+def printable(text: str) -> str:
+    """A user's text on one line, without control characters that a terminal would obey."""
+    return "".join(char if char.isprintable() else " " for char in text)
+
+
+def columns_of(text: str) -> int:
+    """How many columns a terminal gives to the text."""
+    return sum(
+        0 if unicodedata.combining(char) else 2 if unicodedata.east_asian_width(char) in "WF" else 1 for char in text
+    )
+
+
+def cut(text: str, width: int) -> str:
+    """Text of at most `width` columns, ending in '...' where it was longer."""
+    if columns_of(text) <= width:
+        return text
+    kept = ""
+    for char in text:
+        if columns_of(kept + char) > width - 3:
+            break
+        kept += char
+    return kept + "..."
+
+
+def padded(text: str, width: int, *, right: bool = False) -> str:
+    """Text cut or filled to exactly `width` columns."""
+    text = cut(text, width)
+    fill = " " * (width - columns_of(text))
+    return fill + text if right else text + fill
+
+
+def wrapped(text: str, *, first: str = "", rest: str | None = None) -> list[str]:
+    """A paragraph in lines of at most 80 columns: `first` before the first line, `rest` (else blanks) before the others."""
+    lines = textwrap.wrap(
+        printable(text),
+        width=WIDTH,
+        initial_indent=first,
+        subsequent_indent=" " * len(first) if rest is None else rest,
+        break_on_hyphens=False,
+    )
+    return [part for line in lines or [first.rstrip()] for part in _within_width(line)]
+
+
+def _within_width(line: str) -> Iterable[str]:
+    """Lines of wide characters are broken again, since wrapping counts characters."""
+    while columns_of(line) > WIDTH:
+        fits = next(count for count in range(len(line), 0, -1) if columns_of(line[:count]) <= WIDTH)
+        yield line[:fits]
+        line = line[fits:]
+    yield line
+
+
+def labelled(label: str, text: str, *, indent: int = 2, label_width: int = 14) -> list[str]:
+    """A paragraph with its label to the left."""
+    return wrapped(text, first=" " * indent + padded(label, label_width) + " ")
+
+
+def table(
+    heads: Sequence[str], rows: Iterable[Sequence[str]], *, widths: Sequence[int], right: Sequence[int] = ()
+) -> list[str]:
+    """Rows in columns of the given widths, one blank apart; the columns listed in `right` are set to the right."""
+    listed = [tuple(heads), *(tuple(map(printable, row)) for row in rows)]
+    return [
+        " ".join(
+            padded(cell, width, right=index in right)
+            for index, (cell, width) in enumerate(zip(row, widths, strict=True))
+        ).rstrip()
+        for row in listed
+    ]
+
+
+def rule() -> str:
+    """A line across the page."""
+    return "-" * WIDTH

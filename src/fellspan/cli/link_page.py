@@ -1,0 +1,147 @@
+"""The terminal page of one link: the decision, where and by what, what clears it, levels, aiming, cautions.
+
+Shows what assessment found and computes nothing.
+"""
+
+from collections.abc import Container
+from typing import Final
+
+from fellspan.cli import figures
+from fellspan.cli.layout import WIDTH, Ink, columns_of, cut, labelled, printable, table, wrapped
+from fellspan.links.result import AtEnds, CriterionResult, EndResult, LinkResult
+from fellspan.planning.plan import LinkPlan
+
+_TONES: Final = {"clear": "good", "marginal": "doubt", "obstructed": "bad", "meets": "good", "below": "bad"}
+_BASIS_WORDS: Final = {
+    "surveyed": "as surveyed on the ground",
+    "surface raster": "by a raster of the surface; not surveyed",
+    "bare ground only": "on bare ground only: trees and buildings are not in it",
+}
+_SIGNAL_WORDS: Final = {
+    "meets": "the margin wanted is there",
+    "marginal": "less than 3 dB of the margin wanted is missing",
+    "below": "the margin wanted is not there",
+}
+_CRITERIA_WIDTHS: Final = (30, 8, 5, 7, 9, 7)
+
+
+def verdict_tone(verdict: str) -> str:
+    """The tone of emphasis for a verdict."""
+    return _TONES[verdict]
+
+
+def link_lines(plan: LinkPlan, *, ink: Ink, told: Container[str] = ()) -> list[str]:
+    """One link as lines without line ends; cautions that are `told` elsewhere on the page are left out."""
+    result = plan.result
+    return [
+        *_decision(result, ink),
+        *_governing(result),
+        "",
+        *_criteria(result),
+        "",
+        *_level(result, ink),
+        *_ends(result),
+        *_cautions(result, told),
+    ]
+
+
+def _decision(result: LinkResult, ink: Ink) -> list[str]:
+    facts = f"{figures.distance(result.distance_m)} at {figures.frequency(result.frequency_hz)}"
+    name = cut(printable(result.name), WIDTH - len(facts) - 2)
+    gap = " " * (WIDTH - columns_of(name) - len(facts))
+    verdict = result.verdict.upper()
+    lines = [
+        f"{ink.emphasise(name)}{gap}{facts}",
+        f"{ink.emphasise(verdict, _TONES[result.verdict])}, {_BASIS_WORDS[result.basis]}",
+    ]
+    for reason in result.reasons:
+        lines += wrapped(reason, first="  ")
+    return lines
+
+
+def _governing(result: LinkResult) -> list[str]:
+    if not result.clearance:
+        return []
+    criterion = result.clearance[result.governing]
+    at_m = criterion.worst_at_m if criterion.met else criterion.shortfall_at_m
+    where = f"{figures.distance(at_m)} from A"
+    if at_m == criterion.worst_at_m:
+        where += f", at {figures.position(criterion.latitude_deg, criterion.longitude_deg)}"
+    if criterion.met:
+        spare = f"{figures.down(criterion.clearance_m)} clear where {figures.up(criterion.required_m)} is required"
+        return ["", *labelled("Tightest", f"{criterion.cause}: {spare}"), *labelled("Where", where)]
+    return [
+        "",
+        *labelled("By how much", f"{figures.up(criterion.shortfall_m)} short ({criterion.criterion})"),
+        *labelled("Where", where),
+        *labelled("By what", criterion.cause),
+    ]
+
+
+def _criteria(result: LinkResult) -> list[str]:
+    """All criteria in a table: part of the first zone required and found, what is missing; then what height helps."""
+    rows = [_criterion_row(criterion) for criterion in result.clearance]
+    heads = ("Criterion (first zone)", "k", "needs", "has", "missing", "likely")
+    lines = ["  " + line for line in table(heads, rows, widths=_CRITERIA_WIDTHS, right=(1, 2, 3, 4, 5))]
+    for criterion in result.clearance:
+        if not criterion.met:
+            lines += ["", *labelled("Extra height", figures.extra_height(criterion.extra_height_m))]
+            lines += labelled("", f"for {criterion.criterion}")
+    return lines
+
+
+def _criterion_row(criterion: CriterionResult) -> tuple[str, ...]:
+    return (
+        criterion.criterion,
+        figures.earth_factor(criterion.k),
+        f"{criterion.required_fraction:.2f}",
+        "-" if criterion.worst_fraction is None else figures.zone_part(criterion.worst_fraction),
+        "met" if criterion.met else figures.up(criterion.shortfall_m),
+        "-" if criterion.probability is None else figures.percent(criterion.probability),
+    )
+
+
+def _level(result: LinkResult, ink: Ink) -> list[str]:
+    lines = []
+    if result.signal_verdict is not None:
+        word = result.signal_verdict
+        lines.append(f"  {'Signal':<14} {ink.emphasise(word.upper(), _TONES[word])}: {_SIGNAL_WORDS[word]}")
+    lines += labelled("Received", _at_ends(result.received_dbm, "dBm"))
+    if result.margin_db.at_a is not None or result.margin_db.at_b is not None:
+        lines += labelled("Margin", f"{_at_ends(result.margin_db, 'dB')}; {result.wanted_margin_db:g} dB wanted")
+    losses = result.losses_db
+    return lines + labelled("Losses", f"free space {losses.free_space:.1f} dB, diffraction {losses.diffraction:.1f} dB")
+
+
+def _at_ends(values: AtEnds, unit: str) -> str:
+    if values.at_a is None and values.at_b is None:
+        return "not computed: power or an antenna gain is not given"
+    return f"{figures.decibels(values.at_a, unit)} at A, {figures.decibels(values.at_b, unit)} at B"
+
+
+def _ends(result: LinkResult) -> list[str]:
+    lines: list[str] = []
+    for label, end, bearing_deg, tilt_deg in (
+        ("A", result.ends.a, result.bearing_ab_deg, result.tilt_ab_deg),
+        ("B", result.ends.b, result.bearing_ba_deg, result.tilt_ba_deg),
+    ):
+        name = label if end.site == label else f"{label}: {end.site}"
+        lines += ["", *wrapped(f"{name}, {figures.position(end.latitude_deg, end.longitude_deg)}", first="  ")]
+        lines += labelled("Antenna", _antenna(end))
+        lines += labelled(
+            "Aim", f"{figures.bearing(bearing_deg, end.magnetic_bearing_deg)}, tilt {figures.tilt(tilt_deg)}"
+        )
+    return lines
+
+
+def _antenna(end: EndResult) -> str:
+    roof = "" if end.roof_m is None else f", roof {end.roof_m:.1f} m above it"
+    return (
+        f"{end.height_as_given} as given; {end.antenna_agl_m:.1f} m above ground, {end.antenna_amsl_m:.1f} m above sea "
+        f"level (ground {end.ground_m:.1f} m{roof})"
+    )
+
+
+def _cautions(result: LinkResult, told: Container[str]) -> list[str]:
+    lines = [line for text in result.cautions if text not in told for line in wrapped(text, first="  ! ", rest="    ")]
+    return ["", *lines] if lines else []

@@ -1,0 +1,82 @@
+"""What `plan` and `sight` share: planning with progress, printing page or JSON, writing the report.
+
+Imports the engine, so commands import it only when they run.
+"""
+
+import sys
+from collections.abc import Callable
+from pathlib import Path
+
+import typer
+
+from fellspan.cli.layout import WIDTH, Ink, colours_wanted, cut, printable
+from fellspan.cli.page import page_lines
+from fellspan.planning.inputs import Study
+from fellspan.planning.plan import StudyPlan
+from fellspan.planning.planner import plan_study
+
+_BAR = 20
+
+
+def run_plan(study: Study) -> StudyPlan:
+    """Plan a study, with progress on a terminal."""
+    progress = progress_line("planning")
+    try:
+        return plan_study(study, progress=progress)
+    finally:
+        clear_progress(progress)
+
+
+def finish(plan: StudyPlan, *, out: Path | None, as_json: bool) -> None:
+    """Print the page or JSON, tell what failed, and write the report.
+
+    Links that failed are told on standard error, so that they are seen when the output goes elsewhere.
+    """
+    if as_json:
+        from fellspan.exports.results_json import results_text
+
+        typer.echo(results_text(plan), nl=False)
+    elif plan.links:
+        typer.echo("\n".join(page_lines(plan, ink=Ink(colours=colours_wanted()))))
+    sys.stdout.flush()
+    for failure in plan.failures:
+        typer.echo(f"fellspan: {named(failure.link.name, str(failure.error))}", err=True)
+    if out is None:
+        return
+    if not plan.links:
+        return
+    from fellspan.exports.folder import write_folder
+
+    progress = progress_line("writing")
+    try:
+        names = write_folder(plan, out, progress=progress)
+    finally:
+        clear_progress(progress)
+    if not as_json:
+        typer.echo(f"\nreport: {out / 'index.html' if 'index.html' in names else out} ({len(names)} files)")
+
+
+def named(link_name: str, message: str) -> str:
+    """A message that says which link it is about, once."""
+    return message if link_name in message.splitlines()[0] else f"{link_name}: {message}"
+
+
+def progress_line(doing: str) -> Callable[[int, int, str], None] | None:
+    """A line on standard error that is written over; None where nobody watches."""
+    if not sys.stderr.isatty():
+        return None
+
+    def show(done: int, count: int, name: str) -> None:
+        filled = _BAR * done // max(count, 1)
+        text = f"{doing} [{'#' * filled}{'.' * (_BAR - filled)}] {done}/{count} {printable(name)}"
+        sys.stderr.write(f"\r\x1b[K{cut(text, WIDTH - 1)}")
+        sys.stderr.flush()
+
+    return show
+
+
+def clear_progress(progress: Callable[[int, int, str], None] | None) -> None:
+    """Take the progress line away."""
+    if progress is not None:
+        sys.stderr.write("\r\x1b[K")
+        sys.stderr.flush()

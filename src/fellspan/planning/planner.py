@@ -1,0 +1,101 @@
+"""Plans a study: opens its terrain once, assesses each link, and notes which files the plan rests on.
+
+One link that cannot be assessed does not stop the others. Reads no study file and writes nothing.
+"""
+
+from collections.abc import Callable, Iterator
+
+from fellspan import __version__
+from fellspan.errors import FellspanError
+from fellspan.geodesy.position import Position
+from fellspan.links.assess import AssessSettings, assess_in_full
+from fellspan.links.site import Link
+from fellspan.planning.inputs import Study
+from fellspan.planning.plan import LinkFailure, LinkPlan, StudyPlan
+from fellspan.planning.stamp import input_files
+from fellspan.terrain.profile import PathProfile
+from fellspan.terrain.terrain import Terrain
+
+Progress = Callable[[int, int, str], None]
+"""Called with the number of links done, the number of all, and the name of the one in hand."""
+
+
+def plan_study(study: Study, *, progress: Progress | None = None) -> StudyPlan:
+    """Assess every link of a study.
+
+    Raises
+    ------
+    TerrainError
+        The terrain cannot be opened; what is wrong on the path of one link is that link's failure instead.
+    """
+    settings = AssessSettings(
+        preset=study.preset,
+        criteria=study.criteria,
+        median_k=study.median_k,
+        confidence=study.confidence,
+        date=study.date,
+    )
+    planned: list[LinkPlan] = []
+    failures: list[LinkFailure] = []
+    with _open_terrain(study) as terrain:
+        for done, link in enumerate(study.links):
+            if progress is not None:
+                progress(done, len(study.links), link.name)
+            outcome = _plan_link(link, terrain, settings)
+            if isinstance(outcome, LinkPlan):
+                planned.append(outcome)
+            else:
+                failures.append(outcome)
+        cautions = (*study.notes, *terrain.notes, *_unused_survey(study, terrain))
+    if progress is not None:
+        progress(len(study.links), len(study.links), "")
+    return StudyPlan(
+        study=study,
+        links=tuple(planned),
+        failures=tuple(failures),
+        files=input_files(study),
+        version=__version__,
+        cautions=tuple(dict.fromkeys(cautions)),
+    )
+
+
+class _SteppedTerrain(Terrain):
+    """Terrain whose profiles take the study's step where nothing else is asked."""
+
+    default_step_m: float | None = None
+
+    def profile(self, *, a: Position, b: Position, step_m: float | None = None, name: str | None = None) -> PathProfile:
+        return super().profile(a=a, b=b, step_m=self.default_step_m if step_m is None else step_m, name=name)
+
+
+def _open_terrain(study: Study) -> Terrain:
+    inputs = study.terrain
+    terrain = _SteppedTerrain.open(
+        ground=inputs.ground,
+        surface=inputs.surface,
+        cover=inputs.cover,
+        obstacles=inputs.obstacles,
+        survey=inputs.survey,
+        gaps=inputs.gaps,
+        sea_level_m=inputs.sea_level_m,
+        growth_years=study.growth_years,
+    )
+    if isinstance(terrain, _SteppedTerrain):
+        terrain.default_step_m = inputs.step_m
+    return terrain
+
+
+def _plan_link(link: Link, terrain: Terrain, settings: AssessSettings) -> LinkPlan | LinkFailure:
+    try:
+        assessment = assess_in_full(link, terrain=terrain, settings=settings)
+    except FellspanError as error:
+        return LinkFailure(link=link, error=error)
+    return LinkPlan(link=link, result=assessment.result, profile=assessment.profile, levels=assessment.levels)
+
+
+def _unused_survey(study: Study, terrain: Terrain) -> Iterator[str]:
+    """Survey rows that name a link which the study does not have would be lost without a word."""
+    names = {link.name for link in study.links}
+    for name in terrain.survey_links:
+        if name not in names:
+            yield f"survey: rows for a link '{name}', which this study does not have, were not used"

@@ -1,0 +1,135 @@
+"""`fellspan plan`: page, JSON, exit codes, chosen links, failures."""
+
+import json
+from pathlib import Path
+from typing import Any
+
+import pytest
+from made_studies import STUDY, write_ground, write_study
+
+from fellspan.cli import figures, main
+from fellspan.exports.results_json import results_dict
+from fellspan.planning.planner import plan_study
+from fellspan.study.reading import load_study
+
+SECOND = """
+[[site]]
+name = "Offshore"
+at = "36.09000 N, 44.00000 W"
+height = "30 m above ground"
+
+[[link]]
+name = "West - Offshore"
+a = "West"
+b = "Offshore"
+radio = "radio"
+"""
+
+
+def run(*arguments: object) -> int:
+    return main.run([str(argument) for argument in arguments])
+
+
+@pytest.fixture
+def clear_study(tmp_path: Path) -> Path:
+    return write_study(tmp_path)
+
+
+@pytest.fixture
+def cut_study(tmp_path: Path) -> Path:
+    return write_study(tmp_path, hill_m=60.0)
+
+
+def test_page_of_a_clear_link(clear_study: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    assert run("plan", clear_study) == 0
+    out, err = capsys.readouterr()
+    assert err == ""
+    lines = out.splitlines()
+    assert lines[0] == "Trial"
+    assert any(line.startswith("CLEAR") for line in lines[:6])
+    assert "at 5.8 GHz" in lines[4]
+    assert "36.09000 N, 45.28000 W" in out
+    assert "magnetic" in out
+    assert "dBm at A" in out
+    assert max(map(len, lines)) <= 80
+    assert "\x1b" not in out
+
+
+def test_page_of_a_cut_link_says_what_clears_it(cut_study: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    assert run("plan", cut_study) == 0
+    out = capsys.readouterr().out
+    (result,) = plan_study(load_study(cut_study)).links
+    criterion = result.result.clearance[result.result.governing]
+    assert any(line.startswith("OBSTRUCTED") for line in out.splitlines()[:6])
+    assert "A alone" in out
+    assert "both" in out
+    assert f"{figures.up(criterion.shortfall_m)} short" in out
+    assert criterion.cause in " ".join(out.split())
+
+
+def test_json_is_what_the_api_returns(clear_study: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    assert run("plan", clear_study, "--json") == 0
+    printed: Any = json.loads(capsys.readouterr().out)
+    assert printed == json.loads(json.dumps(results_dict(plan_study(load_study(clear_study)))))
+    assert printed["links"][0]["verdict"] == "clear"
+
+
+@pytest.mark.parametrize(("hill_m", "required", "code"), [(0.0, "clear", 0), (60.0, "clear", 1), (60.0, "marginal", 1)])
+def test_required_verdict_sets_the_exit_code(tmp_path: Path, hill_m: float, required: str, code: int) -> None:
+    assert run("plan", write_study(tmp_path, hill_m=hill_m), "--require", required) == code
+
+
+def test_a_failed_link_does_not_stop_the_others(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    study = write_study(tmp_path, STUDY + SECOND)
+    assert run("plan", study) == 2
+    out, err = capsys.readouterr()
+    assert "West - East" in out
+    assert "not planned" in out
+    assert "West - Offshore" in err
+    assert "ground.tif" in err
+    assert len(err.splitlines()) <= 4
+    assert max(map(len, out.splitlines())) <= 80
+    assert run("plan", study, "--require", "clear") == 1
+
+
+def test_one_link_alone(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    study = write_study(tmp_path, STUDY + SECOND)
+    assert run("plan", study, "--link", "West - East") == 0
+    assert "Offshore" not in capsys.readouterr().out
+    assert run("plan", study, "--link", "West - Eats") == 2
+    err = capsys.readouterr().err
+    assert "'West - Eats'" in err
+    assert "did you mean 'West - East'" in err
+
+
+def test_names_that_terminals_would_obey_are_defused(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    hostile = "Ev\\u001b[31mil" + "長い名前" * 20
+    study = write_study(tmp_path, STUDY.replace('"West - East"', f'"{hostile}"') + SECOND)
+    run("plan", study)
+    out, _ = capsys.readouterr()
+    assert "\x1b" not in out
+    assert "長い名前" in out
+
+
+def test_the_files_a_plan_rests_on_are_stamped(clear_study: Path) -> None:
+    plan = plan_study(load_study(clear_study))
+    assert [(file.role, file.name) for file in plan.files] == [("study", "trial.toml"), ("ground", "ground.tif")]
+    assert all(len(file.sha256) == 64 for file in plan.files)
+    before = plan.files[1].sha256
+    write_ground(clear_study.parent / "ground.tif", hill_m=1.0)
+    assert plan_study(load_study(clear_study)).files[1].sha256 != before
+
+
+def test_progress_is_told_link_by_link(clear_study: Path) -> None:
+    told: list[tuple[int, int, str]] = []
+    plan_study(load_study(clear_study), progress=lambda *args: told.append(args))
+    assert told == [(0, 1, "West - East"), (1, 1, "")]
+
+
+def test_the_step_of_the_study_is_used(clear_study: Path) -> None:
+    text = clear_study.read_text(encoding="utf-8").replace(
+        'ground = "ground.tif"', 'ground = "ground.tif"\nstep = "7 m"'
+    )
+    clear_study.write_text(text, encoding="utf-8")
+    (link,) = plan_study(load_study(clear_study)).links
+    assert link.result.step_m == pytest.approx(7.0, rel=0.01)

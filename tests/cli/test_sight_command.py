@@ -1,0 +1,182 @@
+"""`fellspan sight`: positions however the shell split them, questions at a terminal, refusal in a pipe, the saved study."""
+
+import json
+import os
+import pty
+import select
+import subprocess
+import sys
+import time
+from pathlib import Path
+
+import pytest
+from made_studies import A, B, run_command, write_ground
+
+from fellspan.cli import main
+from fellspan.cli.sight_points import read_points
+from fellspan.errors import FellspanError
+from fellspan.study.reading import load_study
+
+OPTIONS = (
+    "--ground",
+    "ground.tif",
+    "--frequency",
+    "5.8 GHz",
+    "--height-a",
+    "30 m above ground",
+    "--height-b",
+    "100 ft agl",
+)
+
+
+@pytest.fixture
+def folder(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> Path:
+    write_ground(tmp_path / "ground.tif")
+    monkeypatch.chdir(tmp_path)
+    return tmp_path
+
+
+@pytest.mark.parametrize(
+    "words",
+    [
+        ["36.09,-45.28", "36.08,-45.25"],
+        ["36.09", "-45.28", "36.08", "-45.25"],
+        ["36.09,", "-45.28", "36.08,", "-45.25"],
+        ["36.09,", "-45.28,", "36.08,", "-45.25"],
+        ["36.09 N, 45.28 W", "36.08 N, 45.25 W"],
+        ["36.09", "N", "45.28", "W", "36.08", "N", "45.25", "W"],
+        ["36.09N", "45.28W", "36.08N", "45.25W"],
+        ["36°05'24\"N 45°16'48\"W", "36°04'48\"N 45°15'00\"W"],
+    ],
+)
+def test_two_positions_however_they_are_split(words: list[str]) -> None:
+    points = [point.position for point in read_points(words, crs=None)]
+    found = [(round(p.latitude_deg, 9), round(p.longitude_deg, 9)) for p in points]
+    assert found == [(36.09, -45.28), (36.08, -45.25)]
+
+
+@pytest.mark.parametrize("words", [["-33.1,18.2"], ["-33.1", "18.2"], ["-33.1,", "18.2"]])
+def test_one_position(words: list[str]) -> None:
+    (point,) = read_points(words, crs=None)
+    assert (point.position.latitude_deg, point.position.longitude_deg) == (-33.1, 18.2)
+
+
+@pytest.mark.parametrize("words", [["here", "there"], ["36.1", "-45.2", "36.2"], ["95,10", "36,10"]])
+def test_what_is_no_pair_is_refused(words: list[str]) -> None:
+    with pytest.raises(FellspanError) as caught:
+        read_points(words, crs=None)
+    assert words[0][:2] in str(caught.value)
+
+
+@pytest.mark.parametrize(
+    "points", [(A, B), ("36.09000,-45.28000", "36.09000,-45.25000"), ("36.09000", "-45.28000", "36.09000", "-45.25000")]
+)
+def test_clear_sight_is_said_and_saved(folder: Path, points: tuple[str, ...]) -> None:
+    done = run_command("sight", *points, *OPTIONS, "--study", "two.toml", folder=folder)
+    assert done.returncode == 0, done.stderr
+    assert "CLEAR, on bare ground only" in done.stdout
+    assert "two.toml" in done.stderr
+    (link,) = load_study(folder / "two.toml").links
+    assert link.b.height_m == pytest.approx(30.48)
+    again = run_command("plan", "two.toml", folder=folder)
+    assert again.stdout.split("A - B")[1] == done.stdout.split("A - B")[1]
+
+
+def test_southern_latitudes_are_no_options(folder: Path) -> None:
+    done = run_command("sight", "-33.10000,18.20000", "-33.20000,18.30000", *OPTIONS, folder=folder)
+    assert done.returncode == 2
+    assert "no data" in done.stderr
+    assert "33." in done.stderr
+
+
+def test_saved_studies_are_never_overwritten(folder: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    for _ in range(2):
+        assert main.run(["sight", A, B, *OPTIONS]) == 0
+    assert len(list(folder.glob("sight-*.toml"))) == 2
+    kept = folder / "mine.toml"
+    kept.write_text("mine", encoding="utf-8")
+    assert main.run(["sight", A, B, *OPTIONS, "--study", "mine.toml"]) == 2
+    assert kept.read_text(encoding="utf-8") == "mine"
+    assert "mine.toml exists" in capsys.readouterr().err
+
+
+def test_nothing_is_saved_when_not_wanted_or_not_planned(folder: Path) -> None:
+    assert main.run(["sight", A, B, *OPTIONS, "--no-save"]) == 0
+    assert main.run(["sight", A, A, *OPTIONS]) == 2
+    assert list(folder.glob("*.toml")) == []
+
+
+def test_json_alone_on_standard_output(folder: Path) -> None:
+    done = run_command("sight", A, B, *OPTIONS, "--json", folder=folder)
+    assert json.loads(done.stdout)["links"][0]["verdict"] == "clear"
+
+
+def test_a_surface_raster_is_another_basis(folder: Path) -> None:
+    options = ["--surface", *OPTIONS[1:]]
+    done = run_command("sight", A, B, *options, "--no-save", folder=folder)
+    assert "CLEAR, by a raster of the surface" in done.stdout
+
+
+def test_a_pipe_is_told_all_that_is_missing(folder: Path) -> None:
+    done = run_command("sight", A, folder=folder)
+    assert done.returncode == 2
+    assert len(done.stderr.splitlines()) <= 4
+    for words in ("the position of B", "--ground or --surface", "--frequency", "--height-a", "--height-b"):
+        assert words in done.stderr
+    assert done.stdout == ""
+
+
+def test_a_height_above_nothing_is_refused_in_a_pipe(folder: Path) -> None:
+    done = run_command("sight", A, B, *OPTIONS[:4], "--height-a", "12 m", "--height-b", "9 m agl", folder=folder)
+    assert done.returncode == 2
+    assert "--height-a '12 m' does not say above what" in done.stderr
+
+
+def test_questions_at_a_terminal(folder: Path) -> None:
+    """A wrong answer is asked again; a height without words draws the question above what."""
+    answers = [
+        ("Position of B", B),
+        ("Frequency", "5.8"),
+        ("Frequency", "5.8 GHz"),
+        ("height at A", "30 m above ground"),
+        ("height at B", "3 m"),
+        ("above what", "roof"),
+        ("roof at B", "27 m"),
+        ("raster", "nothing.tif"),
+        ("raster", "ground.tif"),
+        ("bare ground", "g"),
+    ]
+    code, shown = converse(folder, ["sight", A, "--study", "asked.toml"], answers)
+    assert code == 0, shown
+    assert "has no unit" in shown
+    assert "no file 'nothing.tif'" in shown
+    assert "CLEAR" in shown
+    (link,) = load_study(folder / "asked.toml").links
+    assert (link.b.height_m, link.b.height_reference, link.b.roof_m) == (3.0, "roof", 27.0)
+
+
+def converse(folder: Path, arguments: list[str], answers: list[tuple[str, str]]) -> tuple[int, str]:
+    """Run the command on a terminal of its own; each answer is typed when its question has been shown."""
+    master, slave = pty.openpty()
+    command = [sys.executable, "-c", "from fellspan.cli.main import main; main()", *arguments]
+    with subprocess.Popen(command, cwd=folder, stdin=slave, stdout=slave, stderr=slave, close_fds=True) as process:
+        os.close(slave)
+        shown, seen, deadline = "", 0, time.monotonic() + 60
+        for question, answer in answers:
+            while question not in shown[seen:]:
+                shown += _read(master, deadline)
+            seen = len(shown)
+            os.write(master, f"{answer}\n".encode())
+        while part := _read(master, deadline):
+            shown += part
+        os.close(master)
+        return process.wait(timeout=30), shown
+
+
+def _read(master: int, deadline: float) -> str:
+    ready, _, _ = select.select([master], [], [], max(0.0, deadline - time.monotonic()))
+    assert ready, "the command went silent"
+    try:
+        return os.read(master, 65536).decode()
+    except OSError:  # how a terminal says that the other side has gone
+        return ""
