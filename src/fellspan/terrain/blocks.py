@@ -94,15 +94,31 @@ def _read_group(dataset: DatasetReader, file: RasterFile, corners: list[tuple[In
     )
     rows = np.stack([r for r, _ in corners]) - first_row
     columns = np.stack([c for _, c in corners]) - first_column
+    return _heights(dataset, file, window, rows, columns)
+
+
+def window_heights(
+    dataset: DatasetReader, file: RasterFile, *, column: int, row: int, width: int, height: int
+) -> NDArray[np.float64]:
+    """Heights of a window of cells in metres, shape (height, width), NaN where there is none."""
+    rows, columns = np.indices((height, width))
+    return _heights(dataset, file, Window(column, row, width, height), rows, columns)
+
+
+def _heights(
+    dataset: DatasetReader, file: RasterFile, window: Window, rows: Index, columns: Index
+) -> NDArray[np.float64]:
+    """Heights at cells counted from the window's corner."""
     with gdal_errors(file.name, "read"):
-        cells = dataset.read(file.band, window=window)
-        raw = cells[rows, columns]
+        raw = dataset.read(file.band, window=window)[rows, columns]
         valid = _valid(raw, file)
         if file.has_mask:
             valid &= dataset.read_masks(file.band, window=window)[rows, columns] != 0
         elif file.nodata is None and file.driver == "GTiff" and not raw.all():
             zero = raw == 0
-            valid[zero] &= _written(dataset, file, rows[zero] + first_row, columns[zero] + first_column)
+            valid[zero] &= _written(
+                dataset, file, rows[zero] + int(window.row_off), columns[zero] + int(window.col_off)
+            )
     heights = (raw.astype(np.float64) * file.scale + file.offset) * file.unit_m
     if file.role != "cover":
         valid &= (heights > _LOWEST_M) & (heights < _HIGHEST_M)

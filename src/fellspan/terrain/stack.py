@@ -121,6 +121,12 @@ class RasterStack:
         latitude = np.asarray(latitude_deg, dtype=np.float64)
         return self._sample(ScatteredPlacing(latitude, np.asarray(longitude_deg, dtype=np.float64)))
 
+    def seams_at(self, latitude_deg: ArrayLike, longitude_deg: ArrayLike) -> tuple[Seam, ...]:
+        """The steps between rasters that overlap at positions, arrays of shape (n,), refused ones included."""
+        latitude = np.asarray(latitude_deg, dtype=np.float64)
+        placing = ScatteredPlacing(latitude, np.asarray(longitude_deg, dtype=np.float64))
+        return self._sample(placing, refuse=False).seams
+
     def cell_along(self, path: GeodesicPath) -> float:
         """Ground size, m, of the finest cell that the path touches; `cell_m` where it touches none."""
         placing = PathPlacing(path, np.linspace(0.0, path.length_m, 4 * _CHUNK_SAMPLES))
@@ -137,7 +143,7 @@ class RasterStack:
         """Close the open files of all threads."""
         self._handles.close()
 
-    def _sample(self, placing: Placing) -> StackSample:
+    def _sample(self, placing: Placing, *, refuse: bool = True) -> StackSample:
         value = np.full(placing.size, np.nan)
         source = np.full(placing.size, -1, dtype=np.int16)
         near: list[tuple[int, Floats, Floats, Index]] = []
@@ -156,9 +162,11 @@ class RasterStack:
                     found = np.isfinite(heights)
                     hit = where[open_still][found]
                     value[hit], source[hit] = heights[found], number
-            seams = self._measure_seams(near, value, source)
+            book = self._measure_seams(near, value, source)
+        if refuse:
+            book.refuse()
         sigma = np.append([file.sigma_m for file in self.files], np.nan)[source]
-        return StackSample(value_m=value, source=source, sigma_m=sigma, seams=seams)
+        return StackSample(value_m=value, source=source, sigma_m=sigma, seams=book.seams())
 
     def _read(self, number: int, column: Floats, row: Floats) -> Floats:
         file = self.files[number]
@@ -166,7 +174,7 @@ class RasterStack:
 
     def _measure_seams(
         self, near: list[tuple[int, Floats, Floats, Index]], value: Floats, source: NDArray[np.int16]
-    ) -> tuple[Seam, ...]:
+    ) -> SeamBook:
         """Compare each raster, at a few of the points it shares, with the one that answered there."""
         book = SeamBook()
         for number, column, row, where in near:
@@ -185,8 +193,7 @@ class RasterStack:
                 )
         with self._lock:
             self._seams.keep(book)
-        book.refuse()
-        return book.seams()
+        return book
 
 
 class _CrsGroup:
