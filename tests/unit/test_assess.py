@@ -104,6 +104,7 @@ class SharpTerrain:
         self.ripple_m = ripple_m
         self.windows: tuple[tuple[float, float], ...] = ()
         self.step_m = 0.0
+        self.asked: tuple[float | None, str | None] = (None, None)
 
     def _at(self, distance: np.ndarray) -> PathProfile:
         made = profile_of(8000.0, n=distance.size, cell_m=20.0)
@@ -112,6 +113,7 @@ class SharpTerrain:
         return PathProfile(**(fields | {"distance_m": distance, "ground_m": ground, "surface_m": ground.copy()}))
 
     def profile(self, *, a: object, b: object, step_m: float | None = None, name: str | None = None) -> PathProfile:
+        self.asked = (step_m, name)
         return self._at(np.linspace(0.0, 8000.0, 801))
 
     def refine(self, profile: PathProfile, windows: tuple[tuple[float, float], ...], *, step_m: float) -> PathProfile:
@@ -135,6 +137,12 @@ def test_the_worst_minima_are_looked_at_again() -> None:
     assert all(one[1] < two[0] for one, two in zip(terrain.windows, terrain.windows[1:], strict=False))
     whole = assess_in_full(link, terrain=terrain)  # type: ignore[arg-type]
     assert whole.profile.distance_m.shape == whole.levels.distance_m.shape
+
+
+def test_the_terrain_is_asked_with_the_step_and_the_name_of_the_link() -> None:
+    terrain = SharpTerrain()
+    assess(link_of(profile_of(8000.0)), terrain=terrain, settings=AssessSettings(step_m=7.0))  # type: ignore[arg-type]
+    assert terrain.asked == (7.0, "Alder - Birch")
 
 
 def test_windows_that_touch_become_one() -> None:

@@ -115,7 +115,15 @@ def test_own_outline_does_not_block_but_trees_over_it_do() -> None:
 def test_antenna_below_its_own_building_draws_a_caution() -> None:
     profile = profile_of(2000.0, obstacles=(obstacle("Mill", 1960.0, 2000.0, 12.0),))
     assessment = _assess(profile, 20.0, 5.0)
-    assert _mention(assessment, "antenna of 'Birch' is 7.0 m below the top of the building")
+    assert _mention(
+        assessment,
+        "antenna of 'Birch', 5.0 m above ground, is 7.0 m below the top of what stands at its own spot (Mill)",
+    )
+    among_trees = _assess(profile_of(2000.0, cover=12.0), 8.0, 20.0)
+    assert _mention(
+        among_trees, "'Alder', 8.0 m above ground, is 4.0 m below the top of what stands at its own spot (trees)"
+    )
+    assert not _mention(among_trees, "'Birch'")
     assert assessment.result.ignored[0].end == "B"
 
 

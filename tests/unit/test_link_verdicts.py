@@ -136,7 +136,7 @@ def test_clear_on_bare_ground_says_so_first() -> None:
     result = _result(profile_of(5e3), 60.0, 60.0)
     assert result.verdict == "clear"
     assert result.basis == "bare ground only"
-    assert result.reasons[0].startswith("Clear on bare ground only")
+    assert result.reasons[0].startswith("Clear on bare ground only: every criterion is met with over 99.9 % confidence")
     assert any("trees and buildings are not in the data" in reason for reason in result.reasons)
 
 

@@ -84,7 +84,7 @@ def end_level(site: Site, profile: PathProfile, *, end: EndName) -> EndLevel:
             "give a higher level, measure it from the ground instead, or state the measured ground level of the site",
         )
     if site.height_reference != "roof":
-        cautions += _under_own_roof(site, profile, end=end, antenna=antenna)
+        cautions += _below_what_is_left_out(site, profile, end=end, above_ground_m=antenna - ground)
     return EndLevel(
         end=end,
         site=site,
@@ -129,17 +129,14 @@ def _roof(site: Site, profile: PathProfile, *, end: EndName, ground: float) -> t
     )
 
 
-def _under_own_roof(site: Site, profile: PathProfile, *, end: EndName, antenna: float) -> list[str]:
-    tops = [profile.obstacles[outline].top_amsl_m for outline in own_outlines(profile, end)]
-    if not tops:
-        return []
-    if antenna < max(tops):
-        text = (
-            f"The antenna of '{site.name}' is {max(tops) - antenna:.1f} m below the top of the building it stands at, and that "
-            "building was left out: check on site that the wall or the roof does not stand in the way."
-        )
-        return [text]
-    return []
+def _below_what_is_left_out(site: Site, profile: PathProfile, *, end: EndName, above_ground_m: float) -> list[str]:
+    """A caution where the antenna is lower than the building or trees at its own spot, which do not count against it."""
+    return [
+        f"The antenna of '{site.name}', {above_ground_m:.1f} m above ground, is {item.height_m - above_ground_m:.1f} m below "
+        f"the top of what stands at its own spot ({item.what}), which was left out: check on site that it is not in the way."
+        for item in standing(profile).ignored
+        if item.end == end and item.height_m > above_ground_m
+    ]
 
 
 def roof_edge_cautions(level: EndLevel, profile: PathProfile) -> list[str]:

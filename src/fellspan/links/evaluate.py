@@ -93,11 +93,15 @@ def _obstructions(row: int, *, profile: PathProfile, standing: Standing, levels:
 def _joined(
     found: list[tuple[int, int, float, float]], profile: PathProfile, standing: Standing
 ) -> list[tuple[int, int, float, float]]:
-    """Stretches less than a cell apart made one, which the raster cannot tell apart; named obstacles stay by themselves."""
+    """Stretches less than a cell or a thousandth of the path apart made one; named obstacles stay by themselves.
+
+    The raster cannot tell the first apart, and nobody walks a list of every tree on a long path.
+    """
+    near_m = max(profile.cell_m, 0.001 * profile.length_m)
     named = standing.obstacle_index >= 0
     joined: list[tuple[int, int, float, float]] = []
     for first, last, from_m, to_m in found:
-        if joined and from_m - joined[-1][3] < profile.cell_m and not named[joined[-1][0] : last + 1].any():
+        if joined and from_m - joined[-1][3] < near_m and not named[joined[-1][0] : last + 1].any():
             joined[-1] = (joined[-1][0], last, joined[-1][2], to_m)
         else:
             joined.append((first, last, from_m, to_m))

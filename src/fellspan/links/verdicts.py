@@ -182,7 +182,9 @@ def _raise_sentence(extra: ExtraHeight, confidence: float) -> str:
 
 
 def _percent(probability: float) -> str:
-    """Rounded down, and never 100 % or 0 % unless it is."""
+    """Rounded down; near certainty is not called 100 %, for the error model is not that good."""
+    if probability > 0.999:
+        return "over 99.9 %"
     return f"{math.floor(1000.0 * probability + 1e-9) / 10.0:g} %"
 
 
