@@ -40,7 +40,7 @@ def leaflet_css() -> Markup:
 
 def environment() -> Environment:
     """Jinja with escaping on, strict about names, and no control character let through."""
-    made = Environment(
+    return Environment(
         loader=PackageLoader("fellspan.report", "templates"),
         autoescape=True,
         undefined=StrictUndefined,
@@ -49,7 +49,6 @@ def environment() -> Environment:
         keep_trailing_newline=True,
         finalize=_without_controls,
     )
-    return made
 
 
 def _without_controls(value: object) -> object:

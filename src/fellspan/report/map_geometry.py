@@ -13,7 +13,9 @@ from fellspan.report.relief import MapWindow, mercator_y
 
 Places = list[tuple[float, float]]
 """Latitude and longitude pairs, as the map library takes them."""
-PATH_POINTS = 65
+POINT_EVERY_M = 10_000.0
+"""A geodesic leaves a straight line on the map by about 2 m between points so far apart; more points show as kinks."""
+MOST_POINTS = 257
 ZONE_POINTS = 41
 
 
@@ -44,9 +46,13 @@ def _pairs(latitude: NDArray[np.float64], longitude: NDArray[np.float64]) -> Pla
     return [(round(y, 7), round(x, 7)) for y, x in zip(latitude.tolist(), longitude.tolist(), strict=True)]
 
 
+def _count(length_m: float) -> int:
+    return min(MOST_POINTS, 2 + int(length_m / POINT_EVERY_M))
+
+
 def path(plan: LinkPlan, reference_deg: float) -> Places:
     """The geodesic, ends exact."""
-    return _pairs(*_along(plan, np.linspace(0.0, plan.profile.length_m, PATH_POINTS), reference_deg))
+    return _pairs(*_along(plan, np.linspace(0.0, plan.profile.length_m, _count(plan.profile.length_m)), reference_deg))
 
 
 def stretch(plan: LinkPlan, from_m: float, to_m: float, reference_deg: float) -> Places:
@@ -55,8 +61,7 @@ def stretch(plan: LinkPlan, from_m: float, to_m: float, reference_deg: float) ->
     if to_m - from_m < least:
         middle = (from_m + to_m) / 2.0
         from_m, to_m = max(0.0, middle - least / 2.0), min(plan.profile.length_m, middle + least / 2.0)
-    count = max(2, round(PATH_POINTS * (to_m - from_m) / plan.profile.length_m) + 2)
-    return _pairs(*_along(plan, np.linspace(from_m, to_m, count), reference_deg))
+    return _pairs(*_along(plan, np.linspace(from_m, to_m, _count(to_m - from_m)), reference_deg))
 
 
 def point(plan: LinkPlan, at_m: float, reference_deg: float) -> tuple[float, float]:

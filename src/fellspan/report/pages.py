@@ -31,16 +31,18 @@ OVERVIEW_PIXELS, OVERVIEW_BYTES = 1200, 300_000
 LINK_PIXELS, LINK_BYTES = 720, 120_000
 
 SAFETY = (
-    "This plan is a desk study. Walk the site and verify heights, obstacles and positions before anything is ordered or built.",
-    "Work at height, masts and their foundations: follow local codes and let qualified and, where required, licensed people "
-    "design and do the work.",
+    "This plan is a desk study. Verify heights, obstacles and positions on site before anything is ordered or built.",
+    "Work at height, masts, foundations: follow local codes; let qualified and, where required, licensed people do it.",
     "Keep clear of power lines, above and below ground; ask their operator for the distance to keep.",
     "Earthing and lightning protection: as local codes and a licensed electrician say.",
-    "Radio-frequency exposure: keep people out of the near field of an antenna that transmits, and check the limits that apply.",
+    "Radio-frequency exposure: keep people away from the front of an antenna that transmits; check the limits that apply.",
     "Structures near airfields or flight routes may need notice, a permit, marking or lights; ask the aviation authority.",
     "Frequency, power and antenna must be allowed where they are used: check the rules of the regulator.",
 )
 _LOSS_WORDS = {"free_space": "Free-space loss", "diffraction": "Diffraction loss"}
+
+
+NOTHING = Markup()
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -53,9 +55,9 @@ class LinkView:
     page: str
     anchor: str
     profile_csv: str
-    panel: Markup = Markup()
-    narrow: Markup = Markup()
-    full: Markup = Markup()
+    panel: Markup = NOTHING
+    narrow: Markup = NOTHING
+    full: Markup = NOTHING
     scale: str = ""
 
 

@@ -7,10 +7,11 @@ from numpy.typing import NDArray
 
 from fellspan.links.result import EndResult
 from fellspan.planning.plan import LinkPlan
+from fellspan.report.profile_parts import shortfall_mark
 from fellspan.report.scales import Placed, Scale, Wanted, nice_step, nice_ticks, place_labels, text_width
 from fellspan.report.section import Section, Sheet
 from fellspan.report.svg import el, label, line
-from fellspan.report.wording import kilometres, metres, number, percent, shorten
+from fellspan.report.wording import distance, kilometres, metres, number, percent, shorten
 from fellspan.terrain.profile import PathObstacle
 from fellspan.vocabulary import COVER_KINDS
 
@@ -179,6 +180,9 @@ def key(section: Section, uid: str, *, top: float) -> tuple[str, float]:
         entries.append((line(0, -4, 24, -4, class_="cut-sight"), "cuts the sight line"))
     if any(not item.cuts_sight for item in criterion.obstructions):
         entries.append((line(0, -4, 24, -4, class_="cut-zone"), "reaches into the required part"))
+    if section.other_shortfall:
+        words = f"greatest shortfall: {metres(criterion.shortfall_m)} at {distance(criterion.shortfall_at_m)}"
+        entries.append((shortfall_mark(12.0, -4.0), words))
     x, y = 2.0, top + sheet.line_height
     drawn = []
     for swatch, words in entries:

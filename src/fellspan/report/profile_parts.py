@@ -171,6 +171,11 @@ def _share_words(item: CriterionResult) -> str:
     return f"; {percent(item.worst_fraction)} of the zone is free, {percent(item.required_fraction)} is required"
 
 
+def shortfall_mark(x: float, y: float) -> str:
+    """The sign of the greatest shortfall."""
+    return el("path", d=f"M{num(x)},{num(y - 6)}l5,6l-5,6l-5,-6z", class_="shortfall-point")
+
+
 def governing(section: Section, *, callout_y: float) -> str:
     """The governing point with its dimension, and the callout in the sky above it."""
     item, sheet = section.criterion, section.sheet
@@ -205,11 +210,10 @@ def governing(section: Section, *, callout_y: float) -> str:
             hint=second,
         ),
     ]
-    if item.shortfall_m > 0.0 and abs(item.shortfall_at_m - item.worst_at_m) > 0.002 * section.profile.length_m:
+    if section.other_shortfall:
         index = int(np.argmin(np.abs(section.distance_m - item.shortfall_at_m)))
-        other_x, other_y = section.x.at(item.shortfall_at_m), section.y.at(float(section.checked_drawn[index]))
-        tip_text = f"Greatest shortfall: {metres(item.shortfall_m)} at {distance(item.shortfall_at_m)}"
-        drawn.append(el("circle", el("title", tip_text), cx=other_x, cy=other_y, r=4, class_="shortfall-point"))
+        place = section.x.at(item.shortfall_at_m), section.y.at(float(section.checked_drawn[index]))
+        drawn.append(shortfall_mark(*place))
     return el(
         "g", *drawn, class_=f"governing {met}", data_at_m=repr(item.worst_at_m), data_level_m=repr(surface),
         data_needed_m=repr(needed), data_available_m=repr(item.available_m),

@@ -56,7 +56,7 @@ FULL = Sheet(
     stations=11, station_gap=58, lanes=4, columns=640, roomy=True,
 )  # fmt: skip
 PANEL = Sheet(
-    name="panel", width=940, plot_height=170, axis_width=48, dimension_width=102, right_width=100, font=13,
+    name="panel", width=940, plot_height=152, axis_width=48, dimension_width=102, right_width=100, font=13,
     stations=11, station_gap=58, lanes=2, columns=340, roomy=True,
 )  # fmt: skip
 NARROW = Sheet(
@@ -94,6 +94,12 @@ class Section:
     def profile(self) -> PathProfile:
         """Terrain, all samples."""
         return self.plan.profile
+
+    @property
+    def other_shortfall(self) -> bool:
+        """True where the greatest shortfall stands elsewhere than the governing point."""
+        apart = abs(self.criterion.shortfall_at_m - self.criterion.worst_at_m)
+        return self.criterion.shortfall_m > 0.0 and apart > 0.002 * self.profile.length_m
 
     @property
     def level_arc_m(self) -> Array | None:

@@ -3,11 +3,12 @@ function setUpMap(map, options) {
   "use strict";
   var box = map.getContainer(), frame = box.parentElement, wanted = options.bounds, touched = false, tiles = null;
   map.attributionControl.setPrefix(false);
+  L.control.scale({imperial: false}).addTo(map);
   function fit(bounds) {
     wanted = bounds;
     touched = false;
     map.invalidateSize({animate: false});
-    map.fitBounds(bounds, {padding: [38, 34], maxZoom: 17, animate: false});
+    map.fitBounds(bounds, {padding: [Math.min(90, box.clientWidth * 0.16), 40], maxZoom: 17, animate: false});
   }
   function overlap(one, other) {
     return one.left < other.right + 2 && other.left < one.right + 2 && one.top < other.bottom && other.top < one.bottom;
@@ -15,7 +16,7 @@ function setUpMap(map, options) {
   function declutter() {
     var names = Array.from(box.querySelectorAll(".site-name")), kept = [];
     names.sort(function (a, b) {
-      return Number(b.parentElement.classList.contains("chosen")) - Number(a.parentElement.classList.contains("chosen"));
+      return Number(b.parentElement.classList.contains("is-chosen")) - Number(a.parentElement.classList.contains("is-chosen"));
     });
     names.forEach(function (name) {
       name.classList.remove("crowded");

@@ -4,7 +4,7 @@
   var panel = document.getElementById("chosen"), frame = document.querySelector(".map-frame");
   var entries = Array.from(document.querySelectorAll(".entry")), current = null;
   function mark(index, on) {
-    document.querySelectorAll(".of-link-" + index).forEach(function (part) { part.classList.toggle("chosen", on); });
+    document.querySelectorAll(".of-link-" + index).forEach(function (part) { part.classList.toggle("is-chosen", on); });
     entries[index].setAttribute("aria-pressed", String(on));
   }
   function close() {
@@ -26,7 +26,7 @@
     panel.dataset.link = String(index);
     frame.classList.add("has-choice");
     panel.querySelector("[data-close]").addEventListener("click", close);
-    document.querySelectorAll(".map-path.of-link-" + index + ", .map-cut.of-link-" + index).forEach(function (part) {
+    document.querySelectorAll(".map-path.of-link-" + index + ", .map-cut.of-link-" + index + ", .map-governing.of-link-" + index).forEach(function (part) {
       part.parentNode.appendChild(part);
     });
     document.querySelectorAll(".map-hit").forEach(function (part) { part.parentNode.appendChild(part); });
