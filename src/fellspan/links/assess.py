@@ -9,7 +9,6 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING, Final
 
 import numpy as np
-from numpy.typing import NDArray
 
 from fellspan.errors import LinkError, MagneticModelError, TerrainGapError
 from fellspan.geodesy import geodesic, magnetic
@@ -20,6 +19,7 @@ from fellspan.links.criteria import Criterion, criteria_for, is_extended, worst_
 from fellspan.links.ends import EndLevel, end_level
 from fellspan.links.evaluate import criterion_result, error_m, extra_for_confidence, governing_row
 from fellspan.links.levels import PathLevels
+from fellspan.links.minima import worst_windows
 from fellspan.links.own_building import Standing, standing, with_ground_at_end, with_nodes, with_roof_edge
 from fellspan.links.result import EndResult, Ends, LinkResult
 from fellspan.links.site import Link
@@ -32,7 +32,6 @@ if TYPE_CHECKING:
 SAME_PLACE_M: Final = 0.5
 REFINE_PARTS: Final = 16
 """The worst minima are looked at again at this part of the finest cell."""
-REFINE_MINIMA: Final = 6
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -92,7 +91,7 @@ def assess_in_full(link: Link, *, terrain: "Terrain", settings: AssessSettings =
             "give the two ends different coordinates",
         )
     coarse = terrain.profile(a=link.a.position, b=link.b.position, step_m=settings.step_m, name=link.name)
-    windows = _windows(_Laid.out(link, coarse, settings))
+    windows = worst_windows(_Laid.out(link, coarse, settings).levels)
     fine = terrain.refine(coarse, windows, step_m=coarse.cell_m / REFINE_PARTS) if windows else coarse
     return assess_profile(link, fine, settings)
 
@@ -258,33 +257,6 @@ def _preset_criteria(
         clear = levels.available_m - levels.need_m[0]
         extended = is_extended(profile.distance_m, clearance.normalised_clearance(clear, levels.fresnel_radius_m))
     return criteria_for(settings.preset, distance_m=profile.length_m, median_k=settings.median_k, extended=extended)
-
-
-def _windows(laid: _Laid) -> tuple[tuple[float, float], ...]:
-    """Stretches round the least margins and normalised clearances of every criterion, sorted and merged."""
-    distance, levels = laid.profile.distance_m, laid.levels
-    margin = levels.available_m - levels.need_m
-    clear = levels.available_m - levels.surface_m - levels.bulge_m
-    wanted: set[int] = set()
-    for row in (*margin, *clearance.normalised_clearance(clear, levels.fresnel_radius_m)):
-        wanted.update(_local_minima(row))
-    merged: list[tuple[float, float]] = []
-    for index in sorted(wanted):
-        from_m, to_m = float(distance[max(index - 1, 0)]), float(distance[min(index + 1, distance.size - 1)])
-        if merged and from_m <= merged[-1][1]:
-            merged[-1] = (merged[-1][0], to_m)
-        else:
-            merged.append((from_m, to_m))
-    return tuple(merged)
-
-
-def _local_minima(values: NDArray[np.float64]) -> list[int]:
-    """The lowest interior local minima, at most `REFINE_MINIMA`."""
-    inner = values[1:-1]
-    low = 1 + np.flatnonzero((inner <= values[:-2]) & (inner <= values[2:]) & np.isfinite(inner))
-    if not low.size:
-        low = np.asarray([1 + int(np.argmin(inner))])
-    return [int(index) for index in low[np.argsort(values[low], kind="stable")][:REFINE_MINIMA]]
 
 
 def _end_result(level: EndLevel, bearing_deg: float, date: dt.date | None) -> tuple[EndResult, str | None, str | None]:
