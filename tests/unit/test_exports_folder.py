@@ -14,7 +14,8 @@ from filelock import FileLock
 
 from fellspan.errors import OutputError
 from fellspan.exports import folder as folder_module
-from fellspan.exports.folder import LIST_NAME, LOCK_NAME, RESULTS, write_files, write_folder
+from fellspan.exports.folder import LIST_NAME, LOCK_NAME, RESULTS, Progress, write_files, write_folder
+from fellspan.planning.plan import StudyPlan
 
 OLD = {
     "index.html": "old index",
@@ -43,10 +44,13 @@ def no_waiting_for_the_disk(monkeypatch: pytest.MonkeyPatch) -> None:
 def pages(monkeypatch: pytest.MonkeyPatch) -> None:
     """Stands in for the pages, which are no business of the folder's."""
     module = types.ModuleType("fellspan.report.pages")
-    module.render_pages = lambda plan: {
-        "index.html": "<p>",
-        **{f"link-{i:02d}.html": "" for i, _ in enumerate(plan.links)},
-    }  # type: ignore[attr-defined]
+
+    def render_pages(plan: StudyPlan, *, progress: Progress | None = None) -> dict[str, str]:
+        if progress is not None:
+            progress(0, 1 + len(plan.links), "index.html")
+        return {"index.html": "<p>", **{f"link-{i:02d}.html": "" for i, _ in enumerate(plan.links)}}
+
+    module.render_pages = render_pages  # type: ignore[attr-defined]
     monkeypatch.setitem(sys.modules, "fellspan.report.pages", module)
 
 
@@ -71,8 +75,8 @@ def test_the_folder_holds_pages_and_all_exports_and_says_so(tmp_path: Path) -> N
         RESULTS,
     }
     assert json.loads((tmp_path / "new" / "report" / RESULTS).read_text())["schema"] == 1
-    assert told[0][0] == 0
-    assert told[-1][0] == told[-1][1] == 9
+    assert [done for done, _, _ in told] == [0, *range(3, 12)]
+    assert {total for _, total, _ in told} == {len(names)}
     assert hidden(tmp_path / "new" / "report") <= {LIST_NAME, LOCK_NAME}
 
 

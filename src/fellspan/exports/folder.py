@@ -73,16 +73,18 @@ def report_files(plan: StudyPlan, *, progress: Progress | None = None) -> dict[s
     for index, linked in enumerate(plan.links):
         makers[profile_name(index, linked.result.name)] = lambda linked=linked: profile_csv(linked)  # type: ignore[misc]
     makers[RESULTS] = lambda: results_text(plan)
-    total = len(makers) + 1
-    if progress is not None:
-        progress(0, total, "pages")
-    texts = dict(render_pages(plan))
-    for done, (name, make) in enumerate(makers.items(), start=1):
+    pages = len(plan.links) + 1
+    total = pages + len(makers)
+
+    def tell(done: int, name: str) -> None:
         if progress is not None:
             progress(done, total, name)
+
+    texts = render_pages(plan, progress=lambda done, _, name: tell(min(done, pages), name))
+    for done, (name, make) in enumerate(makers.items(), start=pages):
+        tell(done, name)
         texts[name] = make()
-    if progress is not None:
-        progress(total, total, "")
+    tell(total, "")
     return texts
 
 
