@@ -35,6 +35,8 @@ ATTRIBUTES: Final = (
 """Columns of a CSV file and properties of a GeoJSON feature."""
 
 MIN_AMSL_M, MAX_AMSL_M, MAX_HEIGHT_M = -500.0, 9500.0, 2000.0
+MIN_RADIUS_M = 0.05
+"""A point stands for at least this, m: a mast without any width would never be met."""
 DEFAULT_RADIUS_M, DEFAULT_WIDTH_M = 2.0, 1.0
 """Radius of a point and width of a line whose row states none, m (common practice, no source)."""
 
@@ -120,7 +122,7 @@ def _obstacle(fields: Fields, shape: BaseGeometry, file: Path) -> Obstacle:
         heights_m=heights,
         tops_amsl_m=tops,
         sag_m=sag or 0.0,
-        radius_m=(DEFAULT_RADIUS_M if radius is None else radius) if form == "Point" else 0.0,
+        radius_m=(DEFAULT_RADIUS_M if radius is None else max(radius, MIN_RADIUS_M)) if form == "Point" else 0.0,
         width_m=max(DEFAULT_WIDTH_M if width is None else width, 0.02) if form == "LineString" else 0.0,
         growth_m_per_year=growth or 0.0,
         error_m=fields.number("error_m", 0.0, 1000.0),

@@ -103,7 +103,7 @@ def simple_parts(shape: BaseGeometry, fields: Fields, notes: list[str]) -> list[
         worst = points[np.argmax(np.maximum(np.abs(points[:, 0]) - 360.0, np.abs(points[:, 1]) - 90.0))]
         if abs(worst[0]) > 360.0 or abs(worst[1]) > 90.0:
             raise fields.fail(
-                f"coordinate {worst[0]:g}, {worst[1]:g} is not longitude, latitude in degrees",
+                f"coordinate {worst[0]:.9g}, {worst[1]:.9g} is not longitude, latitude in degrees",
                 "longitude comes first, within -180 to 180; are they swapped, or in metres?",
             )
         flat = _unwrapped(part)

@@ -44,7 +44,7 @@ class Terrain:
         gaps: str = "error",
         sea_level_m: float = 0.0,
         growth_years: float = 0.0,
-    ) -> "Terrain":
+    ) -> Self:
         """Open terrain data.
 
         Parameters
@@ -168,7 +168,7 @@ class Terrain:
     def refine(self, profile: PathProfile, windows: Sequence[tuple[float, float]], *, step_m: float) -> PathProfile:
         """The same profile with more samples inside windows of distance from A, m; the samples it has stay as they are.
 
-        New samples stand at multiples of `step_m` from A, so that refining again changes nothing.
+        New samples stand where `profile` with that step has them, so that refining again changes nothing.
 
         Raises
         ------
@@ -177,6 +177,7 @@ class Terrain:
         """
         if not (math.isfinite(step_m) and step_m > 0.0):
             raise TerrainError(f"step {step_m:g} m is not a distance above 0", "a sixteenth of the cell is fine enough")
+        step_m = profile.length_m / _steps(profile.length_m, step_m)
         ranges = []
         for start, stop in windows:
             first = math.ceil(max(min(start, stop), 0.0) / step_m)
@@ -208,7 +209,7 @@ class Terrain:
             )
         cell_m = min(stack.cell_along(path) for stack in self._layers.stacks)
         wanted = 0.5 * cell_m if step_m is None else step_m
-        count = max(1, math.ceil(path.length_m / wanted - 1e-9))
+        count = _steps(path.length_m, wanted)
         notes: tuple[str, ...] = ()
         if count > MAX_SAMPLES:
             count = MAX_SAMPLES
@@ -260,6 +261,11 @@ class Terrain:
                 dict.fromkeys((*self.notes, *kept, *extra, *path_notes(work, samples, refined=was is not None)))
             ),
         )
+
+
+def _steps(length_m: float, step_m: float) -> int:
+    """How many equal steps of at most `step_m` a path is divided into."""
+    return max(1, math.ceil(length_m / step_m - 1e-9))
 
 
 def _samples_of(profile: PathProfile) -> Samples:
