@@ -9,7 +9,7 @@ from collections.abc import Sequence
 from typing import Final
 
 from fellspan.errors import RasterError
-from fellspan.terrain.handles import is_remote
+from fellspan.terrain.handles import gdal, is_remote
 from fellspan.terrain.raster_file import RasterFile, base_name, read_header
 from fellspan.terrain.sources import CoverSource, RasterSource
 from fellspan.vocabulary import RasterRole
@@ -41,13 +41,14 @@ def open_source(source: RasterSource | CoverSource, *, role: RasterRole) -> list
     if is_remote(path) or not os.path.isdir(path) or _is_grid_folder(path):
         return [read_header(source, path=path, name=base_name(path), role=role)]
     found: list[RasterFile] = []
-    for candidate in _files(path):
-        suffix = os.path.splitext(candidate)[1].lower()
-        try:
-            found.append(read_header(source, path=candidate, name=base_name(candidate), role=role))
-        except RasterError:
-            if suffix in _CERTAIN:
-                raise
+    with gdal():
+        for candidate in _files(path):
+            suffix = os.path.splitext(candidate)[1].lower()
+            try:
+                found.append(read_header(source, path=candidate, name=base_name(candidate), role=role))
+            except RasterError:
+                if suffix in _CERTAIN:
+                    raise
     if not found:
         raise RasterError(
             f"folder {path} holds no raster",

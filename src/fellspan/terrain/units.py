@@ -103,7 +103,6 @@ class ReferenceSystem:
     vertical_unit_m: float | None
 
 
-@lru_cache(maxsize=256)
 def reference_system(wkt: str, raster: str) -> ReferenceSystem:
     """Take the CRS of the raster named `raster` apart.
 
@@ -112,6 +111,16 @@ def reference_system(wkt: str, raster: str) -> ReferenceSystem:
     RasterError
         The CRS is a local one without a place on Earth, or heights are counted downwards.
     """
+    system = _taken_apart(wkt)
+    if isinstance(system, ReferenceSystem):
+        return system
+    problem, remedy = system
+    raise RasterError(f"{raster} {problem}", remedy)
+
+
+@lru_cache(maxsize=256)
+def _taken_apart(wkt: str) -> ReferenceSystem | tuple[str, str]:
+    """The parts, else problem and remedy: thousands of tiles share a CRS, and each has a name of its own."""
     whole = crs_of(wkt)
     crs = whole.source_crs if whole.is_bound and whole.source_crs is not None else whole
     datum: str | None = None
@@ -122,8 +131,8 @@ def reference_system(wkt: str, raster: str) -> ReferenceSystem:
         if vertical.is_bound and vertical.source_crs is not None:
             vertical = vertical.source_crs
         if vertical.axis_info and vertical.axis_info[0].direction == "down":
-            raise RasterError(
-                f"{raster} counts depth downwards ('{vertical.name}'), not height upwards",
+            return (
+                f"counts depth downwards ('{vertical.name}'), not height upwards",
                 "convert it to heights above a vertical datum first",
             )
         datum = vertical.name
@@ -135,8 +144,8 @@ def reference_system(wkt: str, raster: str) -> ReferenceSystem:
         unit = crs.axis_info[2].unit_conversion_factor
     bare = plane.source_crs if plane.is_bound and plane.source_crs is not None else plane
     if not (bare.is_geographic or bare.is_projected):
-        raise RasterError(
-            f"{raster} has a coordinate reference system without a place on Earth: '{bare.name}'",
+        return (
+            f"has a coordinate reference system without a place on Earth: '{bare.name}'",
             "assign the real one, for instance with: gdal_edit.py -a_srs EPSG:CODE FILE",
         )
     turn: float | None = None
