@@ -85,6 +85,7 @@ def test_undefined_is_nan() -> None:
         free_space_loss_db(1.0, frequency_hz=0.0),
         free_space_loss_db(nan, frequency_hz=1e9),
         fresnel_radius_m(-1.0, 5.0, frequency_hz=1e9),
+        fresnel_radius_m(-5.0, 1.0, frequency_hz=1e9),
         fresnel_radius_m(0.0, 0.0, frequency_hz=1e9),
         fresnel_radius_m(1.0, nan, frequency_hz=1e9),
         fresnel_radius_m(1.0, 1.0, frequency_hz=1e9, zone=0),

@@ -126,6 +126,17 @@ def test_exact_grazing_costs_the_grazing_edge(level: float) -> None:
     assert slope == pytest.approx(above, abs=1e-3)
 
 
+def test_grazing_slopes_whose_rounding_would_leave_the_path() -> None:
+    # Found by search: without a guard the crossing falls on the very end of the path, and the loss is undefined.
+    for level, slope in ((-122.85585234441675, 0.006315866001612446), (428.1929081719139, -0.016860823657155116)):
+        ground = level + slope * DISTANCE
+        loss = bullington_loss_db(
+            DISTANCE, ground, a_amsl_m=ground[0], b_amsl_m=ground[-1], frequency_hz=60e9, k=math.inf
+        )
+        # J(0) = 6.0327 dB with the empirical term of P.526-16, equation (57), for 20 km, by hand.
+        assert loss == pytest.approx(6.0327 + (1 - math.exp(-6.0327 / 6)) * 10.4, abs=1e-3)
+
+
 def test_loss_is_continuous_in_one_over_k_through_zero() -> None:
     ground = _terrain(8)
     wave = {**_ends(ground), "frequency_hz": 5.8e9}
