@@ -4,6 +4,7 @@ import errno
 import json
 import multiprocessing
 import os
+import shutil
 import sys
 import types
 from pathlib import Path
@@ -215,6 +216,10 @@ def test_after_a_kill_results_json_stands_only_beside_a_whole_report(tmp_path: P
     found = visible(tmp_path)
     if RESULTS in found:
         assert found in (OLD, NEW)
+    copied = shutil.copytree(tmp_path, tmp_path.with_name(f"killed-at-{step}"))
+    write_files(NEW, copied)  # the next run needs no help
+    assert visible(copied) == NEW
+    assert hidden(copied) <= {LIST_NAME, LOCK_NAME}
     (tmp_path / "notes.txt").write_text("mine")
     folder_module._recover(tmp_path)
     assert visible(tmp_path) == {**OLD, "notes.txt": "mine"}
