@@ -123,6 +123,11 @@ def test_a_local_crs(tmp_path: Path, capfd: pytest.CaptureFixture[str]) -> None:
     assert "without a place on Earth" in refused(write(tmp_path / "local.tif", crs=local), capfd)
 
 
+def test_depths(tmp_path: Path, capfd: pytest.CaptureFixture[str]) -> None:
+    # EPSG:5715 is mean sea level depth, counted downwards
+    assert "depth downwards" in refused(write(tmp_path / "sea.tif", crs="EPSG:32623+5715"), capfd)
+
+
 def test_ground_control_points_only(tmp_path: Path, capfd: pytest.CaptureFixture[str]) -> None:
     points = [GroundControlPoint(r, c, -45.2 + c / 1e4, 36.1 - r / 1e4) for r in (0, 300) for c in (0, 300)]
     path = write(tmp_path / "gcp.tif", transform=Affine.identity(), crs="EPSG:4326", gcps=points)

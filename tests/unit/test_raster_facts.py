@@ -131,6 +131,22 @@ def test_what_is_not_stated_is_said(tmp_path: Path) -> None:
     assert fact.highest_m == pytest.approx(hills(50, cell=10.0).max() * 0.3048, rel=1e-6)
 
 
+@pytest.mark.parametrize(
+    ("crs", "cell", "said"),
+    [
+        ("EPSG:23030", 1.0, "10 m only"),  # ED50 by three parameters: 10 m in the EPSG data set
+        ("EPSG:23030", 25.0, None),
+        ("EPSG:32630", 1.0, None),
+        ("+proj=tmerc +ellps=bessel +lon_0=-3", 25.0, "not known"),
+    ],
+)
+def test_a_loose_horizontal_datum_is_said(tmp_path: Path, crs: str, cell: float, said: str | None) -> None:
+    path = write(tmp_path / "g.tif", hills(50, cell=cell), cell=cell, crs=crs)
+    cautions = [text for text in inspect_raster(RasterSource(path=path)).cautions if "horizontal datum" in text]
+    assert len(cautions) == (said is not None)
+    assert said is None or said in cautions[0]
+
+
 def test_a_folder_is_told_as_one(tmp_path: Path) -> None:
     whole = hills(300, cell=10.0)
     for column in range(3):

@@ -173,8 +173,8 @@ def test_nodata_is_a_gap_up_to_the_edge_of_its_cell_and_weighs_nothing_beside(
     assert np.isnan(got.value_m[1:4]).all()
 
 
-def test_nodata_of_many_digits_is_found_in_float32_cells(tmp_path: Path) -> None:
-    lowest = -3.4028234663852886e38
+@pytest.mark.parametrize("lowest", [-3.4028234663852886e38, -998.7])
+def test_nodata_of_many_digits_is_found_in_float32_cells(tmp_path: Path, lowest: float) -> None:
     cells = np.array([[5.0, lowest], [5.0, 5.0]], dtype=np.float32)
     path = write(tmp_path / "t.tif", cells, transform=grid_around(UTM, cells=2, cell=10.0), nodata=lowest)
     assert np.isnan(sample_at(path, [1.5], [0.5]).value_m[0])

@@ -5,11 +5,13 @@ States what files say, measures what they do not, and marks guesses as such. Pri
 
 import itertools
 import os
+import warnings
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
+from pyproj.transformer import TransformerGroup
 
 from fellspan.errors import VerticalDatumError
 from fellspan.geodesy.transforms import WGS84, transformer
@@ -220,6 +222,9 @@ def _cautions(files: Sequence[RasterFile], survey: CellSurvey, finest: RasterFil
         found.append("heights are above the ellipsoid, not above sea level: they differ by up to about 100 m")
     if len({file.unit_m for file in files}) > 1:
         found.append("tiles count heights in different units; each is converted by what it states")
+    shift = _shift_caution(finest)
+    if shift is not None:
+        found.append(shift)
     if survey.gap_share > 0.0:
         found.append("it has gaps: a path over one is refused unless another raster fills it or the study calls it sea")
     if any(file.nodata is None and not file.has_mask for file in files):
@@ -231,6 +236,20 @@ def _cautions(files: Sequence[RasterFile], survey: CellSurvey, finest: RasterFil
     if role == "surface" and survey.looks_like(finest.cell_m) == "bare ground":
         found.append("declared as a surface model, yet it looks like bare ground: roofs and trees may be missing")
     return found
+
+
+def _shift_caution(file: RasterFile) -> str | None:
+    """How well the horizontal datum is tied to WGS 84, where that matters for cells of this size."""
+    with warnings.catch_warnings():
+        # PROJ's word that a better grid exists comes as a warning; the figure below says what that means
+        warnings.simplefilter("ignore", UserWarning)
+        ways = TransformerGroup(WGS84, file.crs_text, always_xy=True)
+    accuracy_m = ways.transformers[0].accuracy if ways.transformers else -1.0
+    if accuracy_m < 0.0:
+        return "how its horizontal datum lies to WGS 84 is not known: everything may be shifted sideways; check a known spot"
+    if accuracy_m <= max(1.0, file.cell_m / 2.0):
+        return None
+    return f"its horizontal datum is tied to WGS 84 to about {accuracy_m:g} m only: check a known spot"
 
 
 def _one_or_many(texts: Iterable[str]) -> str:
