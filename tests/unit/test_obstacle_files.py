@@ -176,6 +176,9 @@ def test_heights_in_coordinates_are_not_used_silently(tmp_path: Path) -> None:
     obstacles, _, notes = read_obstacles(file)
     assert obstacles[0].height_m == 3.0
     assert "ignored" in notes[0]
+    obstacles, _, notes = read_obstacles(csv_file(tmp_path, "wkt,height_m", '"POINT Z (1 2 55)",3'))
+    assert obstacles[0].height_m == 3.0
+    assert "things.csv" in notes[0]
 
 
 def test_where_the_cover_raster_is_higher_it_stays(tmp_path: Path, hill: Path) -> None:

@@ -57,9 +57,7 @@ def read_obstacles(path: str | Path) -> tuple[tuple[Obstacle, ...], tuple[str, .
     notes: list[str] = []
     datums: list[str] = []
     obstacles: list[Obstacle] = []
-    records = (
-        feature_shapes(file, ATTRIBUTES, notes) if file.suffix.lower() in _SUFFIXES else table_shapes(file, ATTRIBUTES)
-    )
+    records = feature_shapes(file, ATTRIBUTES) if file.suffix.lower() in _SUFFIXES else table_shapes(file, ATTRIBUTES)
     for fields, shape in records:
         datum = fields.text("vertical_datum")
         if datum and datum not in datums:

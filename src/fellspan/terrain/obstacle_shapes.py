@@ -28,18 +28,19 @@ def table_shapes(file: Path, attributes: Sequence[str]) -> Iterator[tuple[Fields
             if latitude is not None or longitude is not None:
                 raise fields.fail("both wkt and latitude_deg/longitude_deg are given", "give one of them")
             try:
-                yield fields, shapely.force_2d(shapely.from_wkt(wkt))
+                shape = shapely.from_wkt(wkt)
             except (shapely.errors.GEOSException, ValueError, TypeError):
                 raise fields.fail(
                     f"wkt '{shown(wkt)}' is not a shape", "example: LINESTRING (-45.2 36.0, -45.1 36.1)"
                 ) from None
+            yield fields, shape
         elif latitude is None or longitude is None:
             raise fields.fail("no place", "give latitude_deg and longitude_deg, or wkt")
         else:
             yield fields, shapely.Point(longitude, latitude)
 
 
-def feature_shapes(file: Path, attributes: Sequence[str], notes: list[str]) -> Iterator[tuple[Fields, BaseGeometry]]:
+def feature_shapes(file: Path, attributes: Sequence[str]) -> Iterator[tuple[Fields, BaseGeometry]]:
     """The features of a GeoJSON file (RFC 7946): longitude and latitude on WGS 84."""
     head = f"obstacle file '{file.name}'"
     for number, feature in enumerate(_loaded(file, head), start=1):
@@ -60,9 +61,6 @@ def feature_shapes(file: Path, attributes: Sequence[str], notes: list[str]) -> I
             raise fields.fail(f"geometry '{shown(geometry)}' is not a shape") from None
         if shape is None or geometry is None:
             raise fields.fail("no geometry", "give a Point, LineString or Polygon")
-        if shapely.has_z(shape):
-            notes.append(f"{head}: heights inside coordinates are ignored; only height_m and top_amsl_m count")
-            shape = shapely.force_2d(shape)
         yield fields, shape
 
 
@@ -93,6 +91,9 @@ def simple_parts(shape: BaseGeometry, fields: Fields, notes: list[str]) -> list[
     """The simple shapes of a row: checked, unwrapped across 180 degrees, outlines made valid."""
     if shape is None or shape.is_empty:
         raise fields.fail("the shape is empty", "give a Point, LineString or Polygon")
+    if shapely.has_z(shape):
+        notes.append(f"{fields.file}: heights inside coordinates are ignored; only the named heights count")
+        shape = shapely.force_2d(shape)
     parts: list[BaseGeometry] = []
     for part in shapely.get_parts(np.array([shape], dtype=object)):
         if part.geom_type not in ("Point", "LineString", "Polygon") or part.is_empty:
@@ -121,6 +122,9 @@ def simple_parts(shape: BaseGeometry, fields: Fields, notes: list[str]) -> list[
 def _unwrapped(shape: BaseGeometry) -> BaseGeometry:
     """Longitudes that run on across 180 degrees, beginning within -180 to 180."""
     points = shapely.get_coordinates(shape)
+    west, east = points[:, 0].min(), points[:, 0].max()
+    if west >= -180.0 and east < 180.0 and east - west <= 180.0:
+        return shape
     longitude = np.unwrap(points[:, 0], period=360.0)
     longitude -= 360.0 * np.floor((longitude[0] + 180.0) / 360.0)
     if np.array_equal(longitude, points[:, 0]):

@@ -111,7 +111,7 @@ class ObstacleIndex:
             large = (shapely.get_num_coordinates(moved) > _MANY_VERTICES) | (_extent_deg(moved) > 0.2)
             for i in np.flatnonzero(large):
                 frame = shapely.bounds(reach_boxes(bounds, reach_m[i : i + 1] + 500.0)[0])
-                moved[i] = shapely.clip_by_rect(moved[i], *frame)
+                moved[i] = _clipped(shapes[i], frame)
         divided: NDArray[np.object_] = shapely.segmentize(moved, _LONG_EDGE_DEG)
         return divided
 
@@ -124,6 +124,16 @@ def _extent_deg(shapes: NDArray[np.object_]) -> Floats:
 
 def _shifted(shape: BaseGeometry, degrees: float) -> BaseGeometry:
     return shapely.transform(shape, lambda points: points + np.array([degrees, 0.0]))
+
+
+def _clipped(shape: BaseGeometry, frame: Floats) -> BaseGeometry:
+    """The part of a large shape inside a frame, whichever way round the Earth the two meet."""
+    part = shapely.clip_by_rect(shape, *frame)
+    for degrees in (-360.0, 360.0):
+        if not part.is_empty:
+            break
+        part = shapely.clip_by_rect(_shifted(shape, degrees), *frame)
+    return part
 
 
 def _to_plane(shapes: NDArray[np.object_], path: GeodesicPath) -> NDArray[np.object_]:

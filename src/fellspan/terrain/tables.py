@@ -66,6 +66,11 @@ class Fields:
         """The error, with file and row in front."""
         return self.error(f"{self.where}: {what}", *details)
 
+    @property
+    def file(self) -> str:
+        """The file part of `where`."""
+        return self.where.rsplit(", ", 1)[0]
+
     def text(self, name: str) -> str:
         """The text of a column, '' where blank."""
         value = self.values.get(name)
