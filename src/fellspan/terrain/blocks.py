@@ -120,8 +120,7 @@ def _heights(
                 dataset, file, rows[zero] + int(window.row_off), columns[zero] + int(window.col_off)
             )
     heights = (raw.astype(np.float64) * file.scale + file.offset) * file.unit_m
-    if file.role != "cover":
-        valid &= (heights > _LOWEST_M) & (heights < _HIGHEST_M)
+    valid &= (heights > _LOWEST_M) & (heights < _HIGHEST_M)
     return np.where(valid, heights, np.nan)
 
 

@@ -80,7 +80,9 @@ def open_dataset(path: str, name: str) -> DatasetReader:
     """
     if not is_remote(path):
         if not os.path.exists(path):
-            raise RasterError(f"there is no raster file {path}", "check the path; it is read from the study's folder")
+            raise RasterError(
+                f"there is no raster file {path}", "check its spelling; paths in a study start from the study's folder"
+            )
         if os.path.isfile(path) and os.path.getsize(path) == 0:
             raise RasterError(f"{name} is empty (0 bytes)", "copy or download the raster again")
     try:
