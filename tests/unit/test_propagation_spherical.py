@@ -105,3 +105,13 @@ def test_arrays_equal_scalars_and_polarizations_mix() -> None:
 def test_a_wrong_polarization_is_named() -> None:
     with pytest.raises(QuantityError, match="'circular'"):
         spherical_earth_loss_db(1e3, a_height_m=1, b_height_m=1, frequency_hz=1e9, polarization="circular")
+
+
+def test_ground_constants() -> None:
+    # P.452-18, section 4.2: land 22 and 0.003 S/m, sea 80 and 5 S/m. Antennas on the ground feel them most.
+    path = {"a_height_m": 0.0, "b_height_m": 0.0, "frequency_hz": 10e9, "polarization": "vertical"}
+    for sea, permittivity, conductivity in ((0.0, 22.0, 0.003), (1.0, 80.0, 5.0)):
+        loss = first_residue_loss_db(
+            1e4, **path, effective_radius_m=6371e3, relative_permittivity=permittivity, conductivity_s_m=conductivity
+        )
+        assert spherical_earth_loss_db(1e4, **path, k=1.0, sea_fraction=sea) == pytest.approx(loss, abs=1e-12)
