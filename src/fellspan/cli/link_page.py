@@ -8,7 +8,7 @@ from typing import Final
 
 from fellspan.cli import figures
 from fellspan.cli.layout import WIDTH, Ink, columns_of, cut, labelled, printable, table, wrapped
-from fellspan.links.result import AtEnds, CriterionResult, EndResult, LinkResult
+from fellspan.links.result import AntennaResult, AtEnds, CriterionResult, EndResult, LinkResult
 from fellspan.planning.plan import LinkPlan
 
 _TONES: Final = {"clear": "good", "marginal": "doubt", "obstructed": "bad", "meets": "good", "below": "bad"}
@@ -110,7 +110,10 @@ def _level(result: LinkResult, ink: Ink) -> list[str]:
     if result.margin_db.at_a is not None or result.margin_db.at_b is not None:
         lines += labelled("Margin", f"{_at_ends(result.margin_db, 'dB')}; {result.wanted_margin_db:g} dB wanted")
     losses = result.losses_db
-    return lines + labelled("Losses", f"free space {losses.free_space:.1f} dB, diffraction {losses.diffraction:.1f} dB")
+    words = f"free space {losses.free_space:.1f} dB, diffraction {losses.diffraction:.1f} dB"
+    if losses.polarization:
+        words += f", polarization {losses.polarization:.1f} dB"
+    return lines + labelled("Losses", words)
 
 
 def _at_ends(values: AtEnds, unit: str) -> str:
@@ -131,7 +134,22 @@ def _ends(result: LinkResult) -> list[str]:
         lines += labelled(
             "Aim", f"{figures.bearing(bearing_deg, end.magnetic_bearing_deg)}, tilt {figures.tilt(tilt_deg)}"
         )
+        if result.antennas is not None:
+            lines += _gain(result.antennas.a if label == "A" else result.antennas.b)
     return lines
+
+
+def _gain(antenna: AntennaResult) -> list[str]:
+    """What the antenna gives toward the other end, and where it points if that is elsewhere."""
+    if antenna.gain_dbi is None:
+        return []
+    words = f"{antenna.name}, {antenna.gain_dbi:.1f} dBi toward the other end"
+    if antenna.peak_gain_dbi is not None and antenna.peak_gain_dbi - antenna.gain_dbi >= 0.05:
+        words += (
+            f", {antenna.peak_gain_dbi:.1f} dBi at its peak; points to {antenna.bearing_deg:05.1f} deg true, "
+            f"tilt {figures.tilt(antenna.tilt_deg)}"
+        )
+    return labelled("Gain", words)
 
 
 def _antenna(end: EndResult) -> str:

@@ -13,6 +13,7 @@ import numpy as np
 from fellspan.errors import LinkError, MagneticModelError, TerrainGapError
 from fellspan.geodesy import geodesic, magnetic
 from fellspan.links import clearance, verdicts
+from fellspan.links.antenna_gains import antenna_cautions, antennas_of, polarization_loss_db
 from fellspan.links.budget import budget, tilt_deg
 from fellspan.links.cautions import cautions
 from fellspan.links.criteria import Criterion, criteria_for, is_extended, worst_month_k
@@ -110,7 +111,25 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
     verdict = verdicts.path_verdict(results, sight, confidence=confidence, confidence_asked=settings.confidence)
     basis = verdicts.basis_of(profile, stands, levels, row=governing)
     a_amsl_m, b_amsl_m = laid.a.antenna_amsl_m, laid.b.antenna_amsl_m
-    loss = budget(link, profile, stands, a_amsl_m=a_amsl_m, b_amsl_m=b_amsl_m, median_k=settings.median_k)
+    length_m, k = profile.length_m, settings.median_k
+    way = geodesic.inverse(link.a.position, link.b.position)
+    bearings = way.bearing_ab_deg, way.bearing_ba_deg
+    tilts = (
+        tilt_deg(distance_m=length_m, from_amsl_m=a_amsl_m, to_amsl_m=b_amsl_m, k=k),
+        tilt_deg(distance_m=length_m, from_amsl_m=b_amsl_m, to_amsl_m=a_amsl_m, k=k),
+    )
+    antennas = antennas_of(link, bearings_deg=bearings, tilts_deg=tilts)
+    polarization_db = polarization_loss_db(link, bearings_deg=bearings, tilts_deg=tilts)
+    loss = budget(
+        link,
+        profile,
+        stands,
+        a_amsl_m=a_amsl_m,
+        b_amsl_m=b_amsl_m,
+        median_k=k,
+        antennas=antennas,
+        polarization_db=polarization_db,
+    )
     sentences = verdicts.reasons(
         verdict=verdict,
         basis=basis,
@@ -123,10 +142,8 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
         ignored=stands.ignored,
     )
     signal = verdicts.signal_sentence(loss.received_dbm, loss.margin_db, wanted_db=link.wanted_margin_db)
-    way = geodesic.inverse(link.a.position, link.b.position)
     end_a, model, caution_a = _end_result(laid.a, way.bearing_ab_deg, settings.date)
     end_b, _, caution_b = _end_result(laid.b, way.bearing_ba_deg, settings.date)
-    length_m, k = profile.length_m, settings.median_k
     result = LinkResult(
         name=link.name,
         a=link.a.name,
@@ -148,12 +165,13 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
             trees=bool(np.any((stands.cover_kind == 2) & (levels.available_m < levels.need_m[governing]))),
             no_errors=not error_m(profile, stands).any(),
             magnetic=(caution_a, caution_b),
+            antennas=antenna_cautions(link, antennas, distance_m=length_m, polarization_db=polarization_db),
         ),
         distance_m=length_m,
-        bearing_ab_deg=way.bearing_ab_deg,
-        bearing_ba_deg=way.bearing_ba_deg,
-        tilt_ab_deg=tilt_deg(distance_m=length_m, from_amsl_m=a_amsl_m, to_amsl_m=b_amsl_m, k=k),
-        tilt_ba_deg=tilt_deg(distance_m=length_m, from_amsl_m=b_amsl_m, to_amsl_m=a_amsl_m, k=k),
+        bearing_ab_deg=bearings[0],
+        bearing_ba_deg=bearings[1],
+        tilt_ab_deg=tilts[0],
+        tilt_ba_deg=tilts[1],
         frequency_hz=link.radio.frequency_hz,
         polarization=link.radio.polarization,
         median_k=k,
@@ -169,6 +187,7 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
         step_m=profile.step_m,
         sources=profile.sources,
         vertical_datum=profile.vertical_datum,
+        antennas=antennas,
     )
     return Assessment(result=result, profile=profile, levels=levels)
 

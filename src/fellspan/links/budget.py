@@ -10,7 +10,7 @@ import numpy as np
 
 from fellspan.links.causes import is_sea_level
 from fellspan.links.own_building import Standing
-from fellspan.links.result import AtEnds, Losses
+from fellspan.links.result import AntennasResult, AtEnds, Losses
 from fellspan.links.site import Link
 from fellspan.propagation import delta_bullington_loss_db, free_space_loss_db
 from fellspan.propagation.constants import EARTH_RADIUS_M
@@ -34,13 +34,21 @@ def sea_share(profile: PathProfile) -> float:
 
 
 def budget(
-    link: Link, profile: PathProfile, standing: Standing, *, a_amsl_m: float, b_amsl_m: float, median_k: float
+    link: Link,
+    profile: PathProfile,
+    standing: Standing,
+    *,
+    a_amsl_m: float,
+    b_amsl_m: float,
+    median_k: float,
+    antennas: AntennasResult,
+    polarization_db: float | None = None,
 ) -> Budget:
     """Losses and levels at the median k.
 
     Diffraction is delta-Bullington (P.526-16, section 4.5.2) over the surface, own buildings taken out, so trees count as
-    opaque; the smooth-Earth fit takes the ground. Free space is over the slant distance. Levels are None where power or a
-    gain is unknown, margins also where the threshold is.
+    opaque; the smooth-Earth fit takes the ground. Free space is over the slant distance. Gains are those toward the other end.
+    Levels are None where power or a gain is unknown, margins also where the threshold is.
     """
     frequency_hz = link.radio.frequency_hz
     free_space = float(free_space_loss_db(math.hypot(profile.length_m, b_amsl_m - a_amsl_m), frequency_hz=frequency_hz))
@@ -57,8 +65,8 @@ def budget(
             surface_m=standing.surface_m,
         )
     )
-    losses = Losses(free_space=free_space, diffraction=max(diffraction, 0.0))
-    level = _received_dbm(link, losses)
+    losses = Losses(free_space=free_space, diffraction=max(diffraction, 0.0), polarization=polarization_db)
+    level = _received_dbm(link, antennas, losses)
     threshold = link.radio.threshold_dbm
     margin = None if level is None or threshold is None else level - threshold
     return Budget(
@@ -69,12 +77,12 @@ def budget(
     )
 
 
-def _received_dbm(link: Link, losses: Losses) -> float | None:
-    power, gain_a, gain_b = link.radio.power_dbm, link.antenna_a.gain_dbi, link.antenna_b.gain_dbi
+def _received_dbm(link: Link, antennas: AntennasResult, losses: Losses) -> float | None:
+    power, gain_a, gain_b = link.radio.power_dbm, antennas.a.gain_dbi, antennas.b.gain_dbi
     if power is None or gain_a is None or gain_b is None:
         return None
     feeders = link.antenna_a.feeder_loss_db + link.antenna_b.feeder_loss_db
-    return power + (gain_a + gain_b - feeders) - (losses.free_space + losses.diffraction)
+    return power + (gain_a + gain_b - feeders) - (losses.free_space + losses.diffraction + (losses.polarization or 0.0))
 
 
 def tilt_deg(*, distance_m: float, from_amsl_m: float, to_amsl_m: float, k: float) -> float:

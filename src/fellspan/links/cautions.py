@@ -1,5 +1,6 @@
 """What a person must know beside a verdict: ranges left, doubtful data, and work that can hurt someone."""
 
+from collections.abc import Sequence
 from typing import Final
 
 from fellspan.links.criteria import range_cautions
@@ -28,12 +29,14 @@ def cautions(
     trees: bool,
     no_errors: bool,
     magnetic: tuple[str | None, str | None],
+    antennas: Sequence[str] = (),
 ) -> tuple[str, ...]:
     """All cautions of one link, each once, the ends first."""
     found: list[str] = []
     for level in levels:
         found += level.cautions
         found += roof_edge_cautions(level, profile)
+    found += antennas
     if preset is not None:
         found += range_cautions(preset, frequency_hz=link.radio.frequency_hz)
     # Below the curve a rule of our own holds its first value, and the criterion's note says so; beyond it nothing is held.

@@ -121,6 +121,38 @@ class Losses:
 
     free_space: float
     diffraction: float
+    polarization: float | None = None
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class AntennaResult:
+    """The antenna at one end and what it gives toward the other end; None where unknown.
+
+    `gain_dbi` is toward the other end, `peak_gain_dbi` at the maximum. `bearing_deg` (true) and `tilt_deg` (up positive) are
+    those of the boresight. `azimuth_off_deg` (right positive) and `elevation_off_deg` (up positive) say where the other end
+    lies, seen from the direction of the greatest gain. Half-power widths are in the planes as mounted.
+    """
+
+    name: str
+    gain_dbi: float | None
+    peak_gain_dbi: float | None
+    bearing_deg: float
+    tilt_deg: float
+    azimuth_off_deg: float
+    elevation_off_deg: float
+    polarization: str
+    azimuth_width_deg: float | None
+    elevation_width_deg: float | None
+    far_field_m: float | None
+    source: str | None
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class AntennasResult:
+    """The antennas at the two ends."""
+
+    a: AntennaResult
+    b: AntennaResult
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -160,3 +192,4 @@ class LinkResult:
     step_m: float
     sources: tuple[str, ...]
     vertical_datum: str | None
+    antennas: AntennasResult | None = None

@@ -1,11 +1,14 @@
-"""Site, Radio and Link: what a user states about two ends and the equipment between them."""
+"""Site, Radio, Antenna and Link: what a user states about two ends and the equipment between them."""
 
 import math
 from dataclasses import dataclass, field
+from pathlib import Path
 
+from fellspan.antennas.mounting import Mounting
+from fellspan.antennas.pattern import Pattern
 from fellspan.errors import LinkError
 from fellspan.geodesy.position import Position
-from fellspan.vocabulary import HeightReference, Polarization
+from fellspan.vocabulary import HeightReference, MountedPolarization, Polarization
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -97,12 +100,61 @@ class Radio:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class Aim:
+    """A mounting as far as it is stated: what is None follows the link.
+
+    `bearing_deg` None points at the other end. `tilt_deg` None points at it too, unless the bearing is stated or the antenna
+    is an omni: then it is level. `polarization` None is the radio's. Ranges are those of `Mounting`.
+    """
+
+    bearing_deg: float | None = None
+    tilt_deg: float | None = None
+    polarization: MountedPolarization | None = None
+    roll_deg: float = 0.0
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class PatternOrigin:
+    """Where a pattern came from, so that a study can be written again: a catalogue name, a file, or data-sheet numbers."""
+
+    model: str | None = None
+    file: Path | None = None
+    azimuth_width_deg: float | None = None
+    elevation_width_deg: float | None = None
+    front_to_back_db: float | None = None
+    cross_polar_db: float | None = None
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class Antenna:
-    """Gain and feeder loss at one end (`gain_dbi` None where unknown)."""
+    """The antenna at one end.
+
+    Parameters
+    ----------
+    gain_dbi
+        Peak gain, dBi; None where unknown, or where the pattern says it.
+    feeder_loss_db
+        Of cable and connectors, dB.
+    pattern
+        Gain in every direction, at the frequency of the radio; None where only the gain is known, which then holds in any
+        direction.
+    mounting
+        Where it points; None is aimed at the other end exactly, with the radio's polarization.
+    origin
+        Where the pattern came from.
+    """
 
     gain_dbi: float | None = None
     feeder_loss_db: float = 0.0
     name: str = "antenna"
+    pattern: Pattern | None = field(default=None, compare=False)
+    mounting: Mounting | Aim | None = None
+    origin: PatternOrigin | None = None
+
+    @property
+    def peak_gain_dbi(self) -> float | None:
+        """Gain at the maximum: the pattern's where there is one, else as stated."""
+        return self.gain_dbi if self.pattern is None else self.pattern.peak_gain_dbi
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
