@@ -178,3 +178,14 @@ def test_a_thin_obstacle_between_two_samples_is_not_missed(tmp_path: Path) -> No
         assert np.abs(profile.distance_m[inside] - distance).max() < 0.06
         beside = np.abs(profile.distance_m - distance)
         assert ((beside > 0.05) & (beside < 0.1) & (profile.cover_m == 0.0)).sum() >= 2  # the step shows
+
+
+def test_a_long_edge_is_straight_in_longitude_and_latitude() -> None:
+    """A line along the parallel of 36.05 N, 20 degrees long, is met where the path has that latitude."""
+    a, b = Position(latitude_deg=36.0, longitude_deg=-45.3), Position(latitude_deg=36.1, longitude_deg=-45.1)
+    path = GeodesicPath.between(a, b)
+    distance = np.linspace(0.0, path.length_m, 200_001)
+    expected = np.interp(36.05, path.positions(distance)[0], distance)
+    line = shapely.LineString([(-55.0, 36.05), (-35.0, 36.05)])
+    ((start, stop),) = spans([obstacle(line, width_m=1.0, rule="follow")], a, b)
+    assert 0.5 * (start + stop) == pytest.approx(expected, abs=0.1)

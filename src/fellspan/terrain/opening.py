@@ -17,6 +17,7 @@ from fellspan.terrain.sources import CoverSource, ObstacleSource, RasterSource, 
 from fellspan.terrain.stack import RasterStack
 from fellspan.terrain.survey import SurveyFile, read_survey
 from fellspan.terrain.survey_hits import SurveyIndex
+from fellspan.terrain.units import datum_key
 from fellspan.vocabulary import GapPolicy, RasterRole
 
 _Source = TypeVar("_Source", RasterSource, CoverSource, ObstacleSource, SurveySource)
@@ -158,21 +159,16 @@ def _policy(gaps: str) -> GapPolicy:
 
 
 def _one_datum(datums: Sequence[tuple[str | None, str]]) -> str | None:
-    """The one vertical datum that files state, compared without regard to case and blanks."""
+    """The one vertical datum that rasters and tables state."""
     first: tuple[str, str] | None = None
     for datum, who in datums:
         if datum is None:
             continue
         if first is None:
             first = (datum, who)
-        elif _plain(datum) != _plain(first[0]):
+        elif datum_key(datum) != datum_key(first[0]):
             raise VerticalDatumError(
                 f"{who} is in vertical datum '{datum}', but {first[1]} is in '{first[0]}'",
                 "convert the heights of one of them; they are not mixed silently",
             )
     return first[0] if first else None
-
-
-def _plain(datum: str) -> str:
-    words = datum.casefold().replace("-", " ").replace("_", " ").split()
-    return "".join(word for word in words if word not in ("height", "heights", "(m)"))
