@@ -203,6 +203,14 @@ def test_refining_a_surveyed_profile_keeps_the_survey(tmp_path: Path, terrain_fi
     assert fine.ground_m[inside] == pytest.approx(40.0 + 0.1 * (fine.distance_m[inside] - 1000.0), abs=1e-9)
 
 
+def test_rows_beyond_the_end_are_said(tmp_path: Path, terrain_files: dict[str, object]) -> None:
+    file = survey_file(tmp_path, "link,distance_m,ground_m", f"{NAME},1000,40", f"{NAME},5100,41", f"{NAME},6000,42")
+    profile = surveyed(terrain_files, file)
+    (note,) = [note for note in profile.notes if "beyond" in note]
+    assert "walk.csv', row 3: distance_m 5100" in note
+    assert "2 such rows" in note
+
+
 @pytest.mark.parametrize(
     ("rows", "said"),
     [

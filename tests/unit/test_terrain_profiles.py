@@ -253,6 +253,25 @@ def test_different_vertical_datums_are_refused(tmp_path: Path) -> None:
         assert terrain.vertical_datum == "EGM96 height"
 
 
+def test_a_gap_names_the_raster_beside_it(tmp_path: Path) -> None:
+    near = raster(tmp_path / "near.tif", 10.0, size=(300, 200))
+    far = raster(tmp_path / "far.tif", 10.0, size=(100, 600), cell_m=11.5)  # the north only
+    with Terrain.open(ground=[near, far]) as terrain:
+        (profile,) = terrain.profiles([(at(500.0, 1500.0), at(5500.0, 1500.0))])
+        (beside,) = terrain.profiles([(at(4000.0, 1500.0), at(5500.0, 1500.0))])
+    assert [gap.raster for gap in profile.gaps] == ["near.tif"]
+    assert [gap.raster for gap in beside.gaps] == ["near.tif, far.tif"]
+
+
+def test_a_datum_that_only_a_table_states_is_said(tmp_path: Path) -> None:
+    ground = raster(tmp_path / "ground.tif", 1.0, crs="EPSG:32623")
+    survey = tmp_path / "walk.csv"
+    survey.write_text("link,distance_m,ground_m,vertical_datum\nA - B,10,1,EGM96\n", encoding="utf-8")
+    with Terrain.open(ground=ground, survey=survey) as terrain:
+        assert terrain.vertical_datum == "EGM96"
+        assert any("taken as that of the tables, 'EGM96'" in note for note in terrain.notes)
+
+
 def test_an_unknown_datum_is_said(tmp_path: Path) -> None:
     with Terrain.open(ground=raster(tmp_path / "ground.tif", 1.0, crs="EPSG:32623")) as terrain:
         assert terrain.vertical_datum is None

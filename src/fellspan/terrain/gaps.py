@@ -18,14 +18,25 @@ def gaps_of(samples: Samples, ground: RasterStack) -> tuple[Gap, ...]:
         return ()
     change = np.diff(np.concatenate(([0], missing.astype(np.int8), [0])))
     starts, stops = np.flatnonzero(change > 0), np.flatnonzero(change < 0) - 1
-    raster = _listed(ground.names)
     return tuple(
-        Gap(from_m=float(samples.distance_m[i]), to_m=float(samples.distance_m[j]), raster=raster)
+        Gap(
+            from_m=float(samples.distance_m[i]),
+            to_m=float(samples.distance_m[j]),
+            raster=_raster_beside(samples, ground.names, int(i), int(j)),
+        )
         for i, j in zip(starts, stops, strict=True)
     )
 
 
-def gap_error(ground: RasterStack, profile: PathProfile) -> TerrainGapError:
+def _raster_beside(samples: Samples, names: tuple[str, ...], first: int, last: int) -> str:
+    """The raster that answers just before a gap, else just after it, else all there are."""
+    for i in (first - 1, last + 1):
+        if 0 <= i < samples.source.size and 0 <= samples.source[i] < len(names):
+            return names[int(samples.source[i])]
+    return ", ".join(names) if len(names) <= 3 else f"{names[0]} and {len(names) - 1} more"
+
+
+def gap_error(profile: PathProfile) -> TerrainGapError:
     """The error that names the first gap, in km from A, with the raster, where it ends, and the remedy."""
     gap = profile.gaps[0]
     more = f", and {len(profile.gaps) - 1} more stretches" if len(profile.gaps) > 1 else ""
@@ -34,7 +45,7 @@ def gap_error(ground: RasterStack, profile: PathProfile) -> TerrainGapError:
     if gap.from_m <= 0.0 and gap.to_m >= profile.length_m:
         middle = profile.distance_m.size // 2
         here = _place(profile, middle)
-        ends = f", which has nothing on the whole path (middle: {here})"
+        ends = f", nothing on the whole path (middle: {here})"
     elif gap.from_m <= 0.0 or gap.to_m >= profile.length_m:
         finite = np.flatnonzero(np.isfinite(profile.ground_m))
         i = int(finite[0] if gap.from_m <= 0.0 else finite[-1])
@@ -49,7 +60,3 @@ def gap_error(ground: RasterStack, profile: PathProfile) -> TerrainGapError:
 def _place(profile: PathProfile, i: int) -> str:
     latitude, longitude = profile.latitude_deg[i], (profile.longitude_deg[i] + 180.0) % 360.0 - 180.0
     return f"{abs(latitude):.4f} {'N' if latitude >= 0 else 'S'} {abs(longitude):.4f} {'E' if longitude >= 0 else 'W'}"
-
-
-def _listed(names: tuple[str, ...]) -> str:
-    return ", ".join(names) if len(names) <= 3 else f"{names[0]} and {len(names) - 1} more"

@@ -5,6 +5,7 @@ Opens files; samples nothing.
 
 import math
 from collections.abc import Iterable, Sequence
+from contextlib import ExitStack
 from dataclasses import replace
 from pathlib import Path
 from typing import TypeAlias, TypeVar, get_args
@@ -12,10 +13,10 @@ from typing import TypeAlias, TypeVar, get_args
 from fellspan.errors import TerrainError, VerticalDatumError
 from fellspan.terrain.assemble import Layers
 from fellspan.terrain.obstacle_files import read_obstacles
-from fellspan.terrain.obstacles import Obstacle, ObstacleIndex
+from fellspan.terrain.obstacles import ObstacleIndex
 from fellspan.terrain.sources import CoverSource, ObstacleSource, RasterSource, SurveySource
 from fellspan.terrain.stack import RasterStack
-from fellspan.terrain.survey import SurveyFile, read_survey
+from fellspan.terrain.survey import read_survey
 from fellspan.terrain.survey_hits import SurveyIndex
 from fellspan.terrain.units import datum_key
 from fellspan.vocabulary import GapPolicy, RasterRole
@@ -59,69 +60,43 @@ def open_layers(
         )
     read_from = [read_obstacles(source.path) for source in obstacle_sources]
     surveys = [read_survey(source.path) for source in survey_sources]
-    stacks: list[RasterStack] = []
-    try:
-        for sources, role in ((ground_sources, "ground"), (surface_sources, "surface")):
-            if sources:
-                stacks.append(RasterStack.open(sources, role=_role(role)))
-        for one in cover_sources:
-            stacks.append(RasterStack.open([one], role="cover"))
-        rasters = 2 if ground_sources and surface_sources else 1
-        datums = [(stack.vertical_datum, stack.names[0]) for stack in stacks[:rasters]]
-        datums += [(datum, f"survey file {file.name}") for file in surveys for datum in file.datums]
-        for source, (_, stated, _) in zip(obstacle_sources, read_from, strict=True):
-            datums += [(datum, f"obstacle file {Path(source.path).name}") for datum in stated]
-        datum = _one_datum(datums)
-    except BaseException:
-        for stack in stacks:
-            stack.close()
-        raise
+    tables = [(datum, f"survey file {file.name}") for file in surveys for datum in file.datums]
+    for source, (_, stated, _) in zip(obstacle_sources, read_from, strict=True):
+        tables += [(datum, f"obstacle file {Path(source.path).name}") for datum in stated]
     notes: list[str] = []
-    if not ground_sources:
+    with ExitStack() as on_failure:
+
+        def opened(sources: Sequence[RasterSource | CoverSource], role: RasterRole) -> RasterStack:
+            stack = RasterStack.open(sources, role=role)
+            on_failure.callback(stack.close)
+            return stack
+
+        bare = opened(ground_sources, "ground") if ground_sources else None
+        top = opened(surface_sources, "surface") if surface_sources else None
+        covers = tuple((source, opened([source], "cover")) for source in cover_sources)
+        rasters = [stack for stack in (bare, top) if stack is not None]
+        datum = _one_datum([*((stack.vertical_datum, stack.names[0]) for stack in rasters), *tables])
+        on_failure.pop_all()
+    if bare is None:
         notes.append("only a surface raster is given: heights above ground are counted from roofs and tree tops there")
+    if datum is not None and all(stack.vertical_datum is None for stack in rasters):
+        notes.append(f"no raster states its vertical datum; taken as that of the tables, '{datum}'")
     for _, _, said in read_from:
         notes.extend(said)
-    return (
-        _layers(
-            stacks,
-            bool(ground_sources),
-            rasters,
-            cover_sources,
-            [o for f in read_from for o in f[0]],
-            surveys,
-            policy,
-            sea_level_m,
-            growth_years,
-        ),
-        datum,
-        tuple(notes),
-    )
-
-
-def _layers(
-    stacks: Sequence[RasterStack],
-    is_bare: bool,
-    rasters: int,
-    covers: Sequence[CoverSource],
-    obstacles: Sequence[Obstacle],
-    surveys: Sequence[SurveyFile],
-    gaps: GapPolicy,
-    sea_level_m: float,
-    growth_years: float,
-) -> Layers:
-    finest = min(stack.cell_m for stack in stacks)
-    return Layers(
-        ground=stacks[0],
-        is_bare=is_bare,
-        surface=stacks[1] if rasters == 2 else None,
-        cover=tuple(zip(covers, stacks[rasters:], strict=True)),
-        obstacles=ObstacleIndex(obstacles),
+    finest = min(stack.cell_m for stack in (*rasters, *(stack for _, stack in covers)))
+    layers = Layers(
+        ground=rasters[0],
+        is_bare=bare is not None,
+        surface=top if bare is not None else None,
+        cover=covers,
+        obstacles=ObstacleIndex([obstacle for read, _, _ in read_from for obstacle in read]),
         survey=SurveyIndex(surveys, radius_m=0.5 * finest),
-        sources=(*stacks[0].names, *(f"survey: {file.name}" for file in surveys), "sea level"),
-        gaps=gaps,
+        sources=(*rasters[0].names, *(f"survey: {file.name}" for file in surveys), "sea level"),
+        gaps=policy,
         sea_level_m=sea_level_m,
         growth_years=growth_years,
     )
+    return layers, datum, tuple(notes)
 
 
 def _listed(given: object, kind: type[_Source]) -> tuple[_Source, ...]:
@@ -144,10 +119,6 @@ def _listed(given: object, kind: type[_Source]) -> tuple[_Source, ...]:
 
 def _rasters(sources: Sequence[RasterSource], role: RasterRole) -> tuple[RasterSource, ...]:
     return tuple(source if source.role == role else replace(source, role=role) for source in sources)
-
-
-def _role(role: str) -> RasterRole:
-    return "surface" if role == "surface" else "ground"
 
 
 def _policy(gaps: str) -> GapPolicy:

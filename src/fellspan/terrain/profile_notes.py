@@ -35,6 +35,11 @@ def path_notes(work: PathWork, samples: Samples, *, refined: bool) -> tuple[str,
         notes.append(
             "obstacle heights above ground are counted from the surface raster, which may hold the obstacle already"
         )
+    if beyond := work.hits.beyond:
+        notes.append(
+            f"{beyond[0].where}: distance_m {beyond[0].distance_m:g} lies beyond the path's end at "
+            f"{work.path.length_m:.0f} m; {len(beyond)} such rows are not used"
+        )
     for hit in [hit for hit in work.hits.points if hit.row.note][:_MOST_SURVEY_NOTES]:
         notes.append(f"surveyed at {hit.at_m / 1000.0:.3f} km: {hit.row.note} ({hit.row.file})")
     return tuple(notes)

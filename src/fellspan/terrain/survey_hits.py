@@ -74,6 +74,8 @@ class SurveyHits:
 
     points: tuple[PointHit, ...] = ()
     segments: tuple[SegmentHit, ...] = ()
+    beyond: tuple[SurveyRow, ...] = ()
+    """Rows of this link whose distance from A is longer than the path."""
 
     def nodes(self) -> Floats:
         """Distances at which a sample must stand, those at points first."""
@@ -202,9 +204,12 @@ class SurveyIndex:
     def on_path(self, path: GeodesicPath, name: str | None) -> SurveyHits:
         """The rows that count on a path: positions near it, and distances along the link of that name."""
         hits: dict[int, PointHit] = {}
+        unused: list[SurveyRow] = []
         for i in self._by_link.get(name.casefold(), ()) if name else ():
             number, row = self._rows[i]
-            if row.distance_m is not None and row.distance_m <= path.length_m + self._radius(row):
+            if row.distance_m is None or row.distance_m > path.length_m + max(self._radius(row), NEAR_M):
+                unused.append(row)
+            else:
                 hits[i] = PointHit(row=row, file=number, at_m=row.distance_m, radius_m=self._radius(row))
         if self._placed.size:
             found, shifts = near_path(self._tree, path)
@@ -214,7 +219,7 @@ class SurveyIndex:
                 number, row = self._rows[i := int(self._placed[found[j]])]
                 hits[i] = PointHit(row=row, file=number, at_m=float(along[j]), radius_m=self._radius(row))
         segments = tuple(self._segments(hits))
-        return SurveyHits(points=tuple(_alone(hits, segments, path.length_m)), segments=segments)
+        return SurveyHits(points=tuple(_alone(hits, segments, path.length_m)), segments=segments, beyond=tuple(unused))
 
     def _radius(self, row: SurveyRow) -> float:
         return self._radius_m if row.radius_m is None else row.radius_m

@@ -162,7 +162,7 @@ class Terrain:
         """
         profile = next(self.iter_profiles([(a, b)], step_m=step_m, names=[name] if name else None))
         if profile.gaps:
-            raise gap_error(self._layers.ground, profile)
+            raise gap_error(profile)
         return profile
 
     def refine(self, profile: PathProfile, windows: Sequence[tuple[float, float]], *, step_m: float) -> PathProfile:
