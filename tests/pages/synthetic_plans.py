@@ -9,7 +9,7 @@ from pathlib import Path
 import numpy as np
 import rasterio
 from pyproj import Geod
-from rasterio.transform import from_origin
+from rasterio.transform import Affine
 
 from fellspan.errors import TerrainGapError
 from fellspan.geodesy.position import Position
@@ -34,6 +34,12 @@ from fellspan.terrain.sources import RasterSource
 GEOD = Geod(ellps="WGS84")
 EARTH_M = 6_371_000.0
 LIGHT_M_S = 299_792_458.0
+TOLMERA = Position(latitude_deg=36.05, longitude_deg=-45.2)
+
+
+def north_up(west, north, wide, tall):
+    """The grid of a raster with north up; rasterio's own helper warns with the newest affine."""
+    return Affine(wide, 0.0, west, 0.0, -tall, north)
 
 
 def land(latitude_deg, longitude_deg, *, at):
@@ -56,7 +62,7 @@ def write_island(path: Path, *, at: Position, cells: int = 400, half_km: float =
     heights[:, : cells // 12] = -9999.0
     options = {"driver": "GTiff", "count": 1, "dtype": "float32", "crs": "EPSG:4326", "nodata": -9999.0, "tiled": True}
     with rasterio.open(
-        path, "w", width=cells, height=cells, transform=from_origin(west, north, wide, step), **options | more
+        path, "w", width=cells, height=cells, transform=north_up(west, north, wide, step), **options | more
     ) as file:
         file.write(heights, 1)
     return path

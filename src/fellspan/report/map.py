@@ -50,7 +50,10 @@ class SiteLabel(MacroElement):
         self.place = [mark.latitude_deg, mark.longitude_deg]
         self.class_name = " ".join(["site-mark", *(f"of-link-{index}" for index in mark.links)])
         name, full = shorten(mark.name, 34), escape(clean(mark.name))
-        self.markup = f'<i class="site-dot"></i><bdi class="site-name {mark.side}" title="{full}">{escape(name)}</bdi>'
+        self.markup = (
+            f'<i class="site-dot"></i><bdi class="site-name {mark.side}" data-side="{mark.side}" '
+            f'title="{full}">{escape(name)}</bdi>'
+        )
 
 
 def link_map(

@@ -243,6 +243,7 @@ def _environment() -> Environment:
         governing_words=wording.governing_words,
         headline=wording.headline,
         k_factor=wording.k_factor,
+        lines=lambda text: Markup("<br>").join(text.split("\n")),
         km=lambda value, length: wording.kilometres(value, length_m=length),
         metres=wording.metres,
         number=wording.number,

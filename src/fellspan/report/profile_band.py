@@ -22,6 +22,7 @@ ROWS = (
     ("Level available, m", "available"),
 )
 MOST_NAMES = 9
+AXIS_NAME = {True: "m above sea level", False: "m asl"}
 
 
 def stations(section: Section) -> list[float]:
@@ -51,7 +52,7 @@ def axes(section: Section) -> str:
         drawn.append(line(sheet.axis_width - 4, y, sheet.axis_width, y, class_="tick-y", data_level_m=repr(level)))
         drawn.append(label(sheet.axis_width - 7, y + sheet.small * 0.35, number(level, 0), class_="axis", anchor="end"))
     drawn.append(line(sheet.axis_width, section.y.from_px, sheet.axis_width, section.y.to_px, class_="axis-line"))
-    drawn.append(label(2, section.y.to_px - 4, "m above sea level" if sheet.roomy else "m asl", class_="axis"))
+    drawn.append(label(2, section.y.to_px - 4, AXIS_NAME[sheet.roomy], class_="axis"))
     return el("g", *drawn, class_="axis-y")
 
 
@@ -117,7 +118,8 @@ class Named:
 def choose_names(plan: LinkPlan, sheet: Sheet) -> list[Named]:
     """The obstacles that are named, those that come nearest to the sight line first, each in a lane of its own.
 
-    Lanes are given from right to left: a leader then never meets the name of its neighbour, which stands higher.
+    One's own building has its site's name over it already. Lanes are given from right to left: a leader then never meets
+    the name of its neighbour, which stands higher.
     """
     profile, criterion = plan.profile, plan.result.clearance[plan.result.governing]
     x = Scale(from_value=0.0, to_value=profile.length_m, from_px=sheet.left, to_px=sheet.right)
@@ -126,7 +128,12 @@ def choose_names(plan: LinkPlan, sheet: Sheet) -> list[Named]:
     def room(item: PathObstacle) -> float:
         return float(np.interp((item.from_m + item.to_m) / 2.0, profile.distance_m, ray)) - item.top_amsl_m
 
-    nearest = sorted(profile.obstacles, key=lambda item: (criterion.cause != item.name, room(item)))[:MOST_NAMES]
+    ignored = plan.result.ignored
+    others = [
+        item for item in profile.obstacles
+        if not any(own.from_m < item.to_m and item.from_m < own.to_m for own in ignored)
+    ]  # fmt: skip
+    nearest = sorted(others, key=lambda item: (criterion.cause != item.name, room(item)))[:MOST_NAMES]
     ordered = sorted(nearest, key=lambda item: -item.from_m)
     contents = [shorten(item.name, 26 if sheet.roomy else 15) for item in ordered]
     wanted = [
@@ -134,7 +141,14 @@ def choose_names(plan: LinkPlan, sheet: Sheet) -> list[Named]:
         for item, content in zip(ordered, contents, strict=True)
     ]
     through = (x.at(criterion.worst_at_m),)
-    placed = place_labels(wanted, low=0.0, high=sheet.width, lanes=sheet.lanes, through=through)
+    # The name of the level axis stands at the left end of the lowest lane.
+    placed = place_labels(
+        wanted,
+        low=text_width(AXIS_NAME[sheet.roomy], sheet.small) + 6.0,
+        high=sheet.width,
+        lanes=sheet.lanes,
+        through=through,
+    )
     return [
         Named(obstacle=item, content=content, spot=spot)
         for item, content, spot in zip(ordered, contents, placed, strict=True)

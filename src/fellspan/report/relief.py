@@ -117,7 +117,7 @@ def _paint(raster: RasterFile, heights: Array, grid: Affine, *, middle_deg: floa
     if raster.period is None:
         return _paint_placed(raster, heights, grid, crs, raster.transform, _mercator(middle_deg), cell_m)
     turn = -middle_deg * raster.period / 360.0
-    places = [Affine.translation(turn + copy * raster.period, 0.0) * raster.transform for copy in (-1, 0, 1)]
+    places = [_after(Affine.translation(turn + copy * raster.period, 0.0), raster.transform) for copy in (-1, 0, 1)]
     painted = [_paint_placed(raster, heights, grid, crs, place, _mercator(0.0), cell_m) for place in places]
     return any(painted)
 
@@ -141,11 +141,8 @@ def _paint_placed(
     values = (values * raster.scale + raster.offset) * raster.unit_m
     if not np.isfinite(values).any():
         return False
-    source_grid = (
-        placed
-        * Affine.translation(window.col_off, window.row_off)
-        * Affine.scale(window.width / shape[1], window.height / shape[0])
-    )
+    cell = Affine(window.width / shape[1], 0.0, window.col_off, 0.0, window.height / shape[0], window.row_off)
+    source_grid = _after(placed, cell)
     drawn = np.full(heights.shape, np.nan, dtype=np.float32)
     reproject(
         values, drawn, src_transform=source_grid, src_crs=crs, src_nodata=np.nan, dst_transform=grid, dst_crs=mercator,
@@ -154,6 +151,18 @@ def _paint_placed(
     known = np.isfinite(drawn)
     heights[known] = drawn[known]
     return bool(known.any())
+
+
+def _after(outer: Affine, inner: Affine) -> Affine:
+    """`inner` first, then `outer`; written out, because releases of affine disagree on the operator."""
+    return Affine(
+        outer.a * inner.a + outer.b * inner.d,
+        outer.a * inner.b + outer.b * inner.e,
+        outer.a * inner.c + outer.b * inner.f + outer.c,
+        outer.d * inner.a + outer.e * inner.d,
+        outer.d * inner.b + outer.e * inner.e,
+        outer.d * inner.c + outer.e * inner.f + outer.f,
+    )
 
 
 def _source_window(

@@ -13,8 +13,25 @@ function setUpMap(map, options) {
   function overlap(one, other) {
     return one.left < other.right + 2 && other.left < one.right + 2 && one.top < other.bottom && other.top < one.bottom;
   }
+  var sides = ["e", "w", "n", "s"];
+  function place(name, side) {
+    name.classList.remove.apply(name.classList, sides);
+    name.classList.add(side);
+  }
+  function keepInside(name) {
+    // A name that the frame would cut stands on another side of its site.
+    var home = name.dataset.side, frame = box.getBoundingClientRect();
+    var order = [home].concat(sides.filter(function (side) { return side !== home; }));
+    var fits = order.find(function (side) {
+      place(name, side);
+      var here = name.getBoundingClientRect();
+      return here.left >= frame.left + 2 && here.right <= frame.right - 2 && here.top >= frame.top && here.bottom <= frame.bottom;
+    });
+    if (!fits) place(name, home);
+  }
   function declutter() {
     var names = Array.from(box.querySelectorAll(".site-name")), kept = [];
+    names.forEach(keepInside);
     names.sort(function (a, b) {
       return Number(b.parentElement.classList.contains("is-chosen")) - Number(a.parentElement.classList.contains("is-chosen"));
     });
@@ -25,6 +42,8 @@ function setUpMap(map, options) {
       else kept.push(here);
     });
   }
+  var key = frame.querySelector("details.map-key");
+  if (key && box.clientWidth < 600) key.open = false;
   if (options.quiet) {
     map.scrollWheelZoom.disable();
     if (L.Browser.mobile) map.dragging.disable();
