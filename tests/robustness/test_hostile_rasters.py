@@ -1,6 +1,8 @@
 """Files that are no rasters, broken ones and unplaced ones: a few clear lines, never GDAL's traceback or log."""
 
 import random
+import subprocess
+import sys
 import warnings
 from pathlib import Path
 from typing import Any
@@ -200,6 +202,32 @@ def test_heights_that_nothing_on_earth_has_are_gaps(tmp_path: Path) -> None:
     with rasterio.open(path, "r+") as dataset:
         dataset.write(np.full((300, 300), 1e20, np.float32), 1)
     assert np.isnan(read_corner(path))
+
+
+def test_nothing_but_our_message_reaches_standard_error(tmp_path: Path) -> None:
+    """In a process of its own: under pytest the log lines of rasterio go elsewhere."""
+    path = write(tmp_path / "t.tif", compress="deflate", tiled=True, blockxsize=64, blockysize=64)
+    whole = bytearray(path.read_bytes())
+    whole[len(whole) // 3 : -100] = bytes(len(whole) - 100 - len(whole) // 3)
+    path.write_bytes(whole)
+    program = (
+        "import sys\n"
+        "from fellspan.errors import RasterError\n"
+        "from fellspan.terrain.inspect import inspect_raster\n"
+        "from fellspan.terrain.sources import RasterSource\n"
+        "for path in sys.argv[1:]:\n"
+        "    try:\n"
+        "        inspect_raster(RasterSource(path=path))\n"
+        "    except RasterError:\n"
+        "        print('refused')\n"
+    )
+    text = tmp_path / "letter.tif"
+    text.write_text("no raster", encoding="utf-8")
+    done = subprocess.run(
+        [sys.executable, "-c", program, str(path), str(text)], capture_output=True, text=True, check=True
+    )
+    assert done.stdout.split() == ["refused", "refused"]
+    assert done.stderr == ""
 
 
 def test_one_broken_tile_of_a_folder_is_named(tmp_path: Path, capfd: pytest.CaptureFixture[str]) -> None:

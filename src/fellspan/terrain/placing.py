@@ -24,7 +24,7 @@ class Placing(Protocol):
 
     size: int
 
-    def in_crs(self, crs_text: str, *, cell: float, period: float | None) -> tuple[Floats, Floats]:
+    def in_crs(self, crs_text: str, *, cell: float) -> tuple[Floats, Floats]:
         """x and y, shape (size,), NaN where the CRS does not reach; `cell` is the finest cell that will be asked."""
         ...
 
@@ -41,7 +41,7 @@ class ScatteredPlacing:
         self.longitude_deg = np.asarray(longitude_deg, dtype=np.float64)
         self.size = self.latitude_deg.size
 
-    def in_crs(self, crs_text: str, *, cell: float, period: float | None) -> tuple[Floats, Floats]:
+    def in_crs(self, crs_text: str, *, cell: float) -> tuple[Floats, Floats]:
         """As `Placing.in_crs`."""
         return to_crs(crs_text, self.latitude_deg, self.longitude_deg)
 
@@ -62,18 +62,18 @@ class PathPlacing:
         """As `Placing.part`."""
         return PathPlacing(self.path, self.distance_m[members])
 
-    def in_crs(self, crs_text: str, *, cell: float, period: float | None) -> tuple[Floats, Floats]:
+    def in_crs(self, crs_text: str, *, cell: float) -> tuple[Floats, Floats]:
         """As `Placing.in_crs`."""
         if self.size <= 2 * _FIRST_INTERVALS or self.path.length_m == 0.0:
             return to_crs(crs_text, *self.path.positions(self.distance_m))
         count = _FIRST_INTERVALS
         nodes = np.linspace(0.0, self.path.length_m, count + 1)
-        x, y = self._nodes(nodes, crs_text, period)
+        x, y = to_crs(crs_text, *self.path.positions(nodes))
         while True:
             middles = (nodes[:-1] + nodes[1:]) / 2.0
             all_nodes = np.empty(2 * count + 1)
             all_nodes[0::2], all_nodes[1::2] = nodes, middles
-            all_x, all_y = self._nodes(all_nodes, crs_text, period)
+            all_x, all_y = to_crs(crs_text, *self.path.positions(all_nodes))
             with np.errstate(invalid="ignore"):
                 off = np.hypot(all_x[1::2] - (x[:-1] + x[1:]) / 2.0, all_y[1::2] - (y[:-1] + y[1:]) / 2.0)
                 settled = off <= _AGREEMENT_CELLS * cell
@@ -83,17 +83,11 @@ class PathPlacing:
         at_x = np.interp(self.distance_m, nodes, x)
         at_y = np.interp(self.distance_m, nodes, y)
         if not settled.all():
-            # a CRS with a seam, or one that does not reach the whole path: there, every point exactly
+            # longitudes that jump, a CRS with a seam, or one that does not reach the whole path: there, every point exactly
             interval = np.clip(np.searchsorted(nodes[0::2], self.distance_m, side="right") - 1, 0, settled.size - 1)
             rest = np.flatnonzero(~settled[interval])
             at_x[rest], at_y[rest] = to_crs(crs_text, *self.path.positions(self.distance_m[rest]))
         return at_x, at_y
-
-    def _nodes(self, distance_m: Floats, crs_text: str, period: float | None) -> tuple[Floats, Floats]:
-        x, y = to_crs(crs_text, *self.path.positions(distance_m))
-        if period is not None and np.isfinite(x).all():
-            x = np.unwrap(x, period=period)
-        return x, y
 
 
 def to_crs(crs_text: str, latitude_deg: Floats, longitude_deg: Floats) -> tuple[Floats, Floats]:

@@ -132,7 +132,7 @@ class RasterStack:
         placing = PathPlacing(path, np.linspace(0.0, path.length_m, 4 * _CHUNK_SAMPLES))
         finest = math.inf
         for group in self._groups:
-            x, y = placing.in_crs(group.crs_text, cell=group.cell, period=group.period)
+            x, y = placing.in_crs(group.crs_text, cell=group.cell)
             for number in group.near(x, y):
                 _, _, inside = _in_cells(self.files[number], x, y)
                 for i in spread(inside, 3):
@@ -148,7 +148,7 @@ class RasterStack:
         source = np.full(placing.size, -1, dtype=np.int16)
         near: list[tuple[int, Floats, Floats, Index]] = []
         for group in self._groups:
-            x, y = placing.in_crs(group.crs_text, cell=group.cell, period=group.period)
+            x, y = placing.in_crs(group.crs_text, cell=group.cell)
             for number, where in group.near(x, y).items():
                 column, row, inside = _in_cells(self.files[number], x[where], y[where])
                 if inside.any():
