@@ -252,3 +252,25 @@ def test_a_wrong_property_is_named(tmp_path: Path, properties: dict[str, object]
 def test_a_missing_file_is_named(tmp_path: Path) -> None:
     with pytest.raises(ObstacleFileError, match=r"none\.csv"):
         read_obstacles(tmp_path / "none.csv")
+
+
+def test_there_and_back_cross_the_same_and_a_batch_equals_single_paths(tmp_path: Path, hill: Path) -> None:
+    rng = np.random.default_rng(8)
+    shapes = [
+        ("Polygon", square(x, 1500.0 + y, 25.0), {"height_m": 7}) for x, y in rng.uniform(-20, 20, (8, 2)) + (3000, 0)
+    ]
+    shapes += [
+        ("Point", lonlat(x, 1500.0 + y), {"height_m": 20, "radius_m": 9})
+        for x, y in rng.uniform(0, 8, (9, 2)) * (500, 1)
+    ]
+    file = geojson_file(tmp_path, *shapes)
+    with Terrain.open(ground=hill, obstacles=file) as terrain:
+        there, back = terrain.profiles([(A, B), (B, A)])
+        single = terrain.profile(a=A, b=B)
+    assert len(there.obstacles) > 8
+    length = there.length_m
+    mirrored = sorted((length - thing.to_m, length - thing.from_m, thing.top_amsl_m) for thing in back.obstacles)
+    found = sorted((thing.from_m, thing.to_m, thing.top_amsl_m) for thing in there.obstacles)
+    assert np.allclose(np.array(found), np.array(mirrored), atol=2e-3)
+    assert np.array_equal(single.surface_m, there.surface_m)
+    assert single.obstacles == there.obstacles
