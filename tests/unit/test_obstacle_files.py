@@ -256,13 +256,10 @@ def test_a_missing_file_is_named(tmp_path: Path) -> None:
 
 def test_there_and_back_cross_the_same_and_a_batch_equals_single_paths(tmp_path: Path, hill: Path) -> None:
     rng = np.random.default_rng(8)
-    shapes = [
-        ("Polygon", square(x, 1500.0 + y, 25.0), {"height_m": 7}) for x, y in rng.uniform(-20, 20, (8, 2)) + (3000, 0)
-    ]
-    shapes += [
-        ("Point", lonlat(x, 1500.0 + y), {"height_m": 20, "radius_m": 9})
-        for x, y in rng.uniform(0, 8, (9, 2)) * (500, 1)
-    ]
+    places = rng.uniform((2980.0, 1480.0), (3020.0, 1520.0), (8, 2))
+    shapes = [("Polygon", square(x, y, 25.0), {"height_m": 7}) for x, y in places]
+    places = rng.uniform((500.0, 1500.0), (5000.0, 1508.0), (9, 2))
+    shapes += [("Point", lonlat(x, y), {"height_m": 20, "radius_m": 9}) for x, y in places]
     file = geojson_file(tmp_path, *shapes)
     with Terrain.open(ground=hill, obstacles=file) as terrain:
         there, back = terrain.profiles([(A, B), (B, A)])
