@@ -141,10 +141,10 @@ def test_questions_at_a_terminal(folder: Path) -> None:
         ("height at A", "30 m above ground"),
         ("height at B", "3 m"),
         ("above what", "roof"),
-        ("roof at B", "27 m"),
+        ("Roof at B", "27 m"),
         ("raster", "nothing.tif"),
         ("raster", "ground.tif"),
-        ("bare ground", "g"),
+        ("Bare ground", "g"),
     ]
     code, shown = converse(folder, ["sight", A, "--study", "asked.toml"], answers)
     assert code == 0, shown
@@ -161,16 +161,23 @@ def converse(folder: Path, arguments: list[str], answers: list[tuple[str, str]])
     command = [sys.executable, "-c", "from fellspan.cli.main import main; main()", *arguments]
     with subprocess.Popen(command, cwd=folder, stdin=slave, stdout=slave, stderr=slave, close_fds=True) as process:
         os.close(slave)
-        shown, seen, deadline = "", 0, time.monotonic() + 60
-        for question, answer in answers:
-            while question not in shown[seen:]:
-                shown += _read(master, deadline)
-            seen = len(shown)
-            os.write(master, f"{answer}\n".encode())
-        while part := _read(master, deadline):
-            shown += part
-        os.close(master)
-        return process.wait(timeout=30), shown
+        try:
+            return _talk(process, master, answers)
+        finally:
+            process.kill()  # a question nobody answers would keep it, and this test, for ever
+            os.close(master)
+
+
+def _talk(process: "subprocess.Popen[bytes]", master: int, answers: list[tuple[str, str]]) -> tuple[int, str]:
+    shown, seen, deadline = "", 0, time.monotonic() + 20
+    for question, answer in answers:
+        while question not in shown[seen:]:
+            shown += _read(master, deadline)
+        seen = len(shown)
+        os.write(master, f"{answer}\n".encode())
+    while part := _read(master, deadline):
+        shown += part
+    return process.wait(timeout=30), shown
 
 
 def _read(master: int, deadline: float) -> str:

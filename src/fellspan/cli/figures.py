@@ -40,8 +40,10 @@ def position(latitude_deg: float, longitude_deg: float) -> str:
 
 
 def percent(value: float) -> str:
-    """A probability in per cent, rounded down, so that a doubt never reads as certainty."""
-    return f"{math.floor(value * 1000 + 1e-6) / 10:g} %"
+    """A probability in per cent, rounded down; near the ends it says so, for heights are never that certain."""
+    if value > 0.999:
+        return ">99.9 %"
+    return "<0.1 %" if value < 0.001 else f"{math.floor(value * 1000 + 1e-6) / 10:g} %"
 
 
 def zone_part(fraction: float) -> str:

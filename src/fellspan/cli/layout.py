@@ -3,7 +3,6 @@
 import os
 import sys
 import textwrap
-import unicodedata
 from collections.abc import Iterable, Sequence
 
 WIDTH = 80
@@ -34,6 +33,10 @@ def printable(text: str) -> str:
 
 def columns_of(text: str) -> int:
     """How many columns a terminal gives to the text."""
+    if text.isascii():
+        return len(text)
+    import unicodedata
+
     return sum(
         0 if unicodedata.combining(char) else 2 if unicodedata.east_asian_width(char) in "WF" else 1 for char in text
     )

@@ -86,7 +86,7 @@ def _criteria(result: LinkResult) -> list[str]:
     for criterion in result.clearance:
         if not criterion.met:
             lines += ["", *labelled("Extra height", figures.extra_height(criterion.extra_height_m))]
-            lines += labelled("", f"for {criterion.criterion}")
+            lines += labelled("", f"for {criterion.criterion}, were all heights exact")
     return lines
 
 
@@ -153,11 +153,9 @@ def _gain(antenna: AntennaResult) -> list[str]:
 
 
 def _antenna(end: EndResult) -> str:
-    roof = "" if end.roof_m is None else f", roof {end.roof_m:.1f} m above it"
-    return (
-        f"{end.height_as_given} as given; {end.antenna_agl_m:.1f} m above ground, {end.antenna_amsl_m:.1f} m above sea "
-        f"level (ground {end.ground_m:.1f} m{roof})"
-    )
+    above_ground = "" if end.height_as_given.endswith("above ground") else f": {end.antenna_agl_m:.1f} m above ground"
+    sea_level = f"{end.antenna_amsl_m:.1f} m above sea level"
+    return f"{end.height_as_given}{above_ground}, {sea_level}; ground at {end.ground_m:.1f} m"
 
 
 def _cautions(result: LinkResult, told: Container[str]) -> list[str]:

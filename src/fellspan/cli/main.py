@@ -21,7 +21,7 @@ from fellspan.cli.terrain_command import terrain_command
 from fellspan.errors import FellspanError
 
 OK, INPUT, BUG, FILES, INTERRUPTED = 0, 2, 3, 4, 130
-_NEGATIVE_NUMBER = re.compile(r"-\s*\.?\d")
+_NEGATIVE_COORDINATE = re.compile(r"""-\s*\.?\d[\d\s.,;:°'"nsew-]*""", re.IGNORECASE)
 
 app = typer.Typer(
     name="fellspan",
@@ -88,7 +88,7 @@ def _write_what_can_be_written() -> None:
 
 def _with_signs_kept(arguments: Sequence[str]) -> list[str]:
     """Arguments in which a coordinate's leading minus is not taken for an option: a blank before it is enough."""
-    return [f" {argument}" if _NEGATIVE_NUMBER.match(argument) else argument for argument in arguments]
+    return [f" {argument}" if _NEGATIVE_COORDINATE.fullmatch(argument) else argument for argument in arguments]
 
 
 def _complain(text: str, code: int) -> int:

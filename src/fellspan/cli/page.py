@@ -10,7 +10,7 @@ from fellspan.cli.layout import Ink, padded, printable, rule, table, wrapped
 from fellspan.cli.link_page import link_lines, verdict_tone
 from fellspan.planning.plan import LinkFailure, LinkPlan, StudyPlan
 
-_WIDTHS = (26, 7, 12, 22, 9)
+_WIDTHS = (31, 7, 11, 19, 8)
 _RIGHT = (1, 4)
 
 

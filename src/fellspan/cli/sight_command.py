@@ -94,7 +94,7 @@ def _save(study: "Study", wanted: Path | None) -> None:
 
     path = wanted or _free_name()
     write_new(path, study_text(study, folder=path.parent))
-    typer.echo(f"study: {path} (fellspan plan {path} plans it again)", err=True)
+    typer.echo(f"study saved as {path}, for fellspan plan", err=True)
 
 
 def _free_name() -> Path:

@@ -101,9 +101,7 @@ def _site(name: str, point: ParsedPosition, height_text: str | None, roof_text: 
     reference = height.reference or _reference(name, height, height_text)
     roof_m = parse_length_m(roof_text) if roof_text else None
     if reference == "roof" and roof_m is None and can_ask():
-        roof_m = ask_or_skip(
-            f"Height of the roof at {name} above ground, if the rasters do not show the building", parse_length_m
-        )
+        roof_m = ask_or_skip(f"Roof at {name} above ground, if no raster shows it", parse_length_m)
     return Site(name=name, position=point.position, height_m=height.height_m, height_reference=reference, roof_m=roof_m)
 
 
@@ -122,9 +120,7 @@ def _terrain(options: SightOptions) -> TerrainInputs:
     ground, surface = list(options.ground), list(options.surface)
     if not ground and not surface:
         file = ask("Elevation raster (file or folder of tiles)", _existing)
-        is_bare = ask_choice(
-            "What does it hold: bare ground, or the surface with roofs and treetops?", ("ground", "surface")
-        )
+        is_bare = ask_choice("Bare ground, or surface with roofs and treetops?", ("ground", "surface"))
         (ground if is_bare == "ground" else surface).append(file)
     return TerrainInputs(
         ground=tuple(RasterSource(path=raster_path(file, Path()), role="ground") for file in ground),
