@@ -85,6 +85,17 @@ def test_a_broken_survey_file_is_one_clear_message(tmp_path: Path, name: str) ->
     check(caught.value, name)
 
 
+def test_names_cannot_command_a_terminal(tmp_path: Path) -> None:
+    file = tmp_path / "named.csv"
+    file.write_text(
+        'latitude_deg,longitude_deg,height_m,name,source\n36,-45,5,"\x1b[2Jmast\u202e\nx",\x07me\n', encoding="utf-8"
+    )
+    ((mast,), _, _) = read_obstacles(file)
+    assert mast.name.isprintable()
+    assert mast.source.isprintable()
+    assert "mast" in mast.name
+
+
 def test_a_folder_is_no_file(tmp_path: Path) -> None:
     with pytest.raises(ObstacleFileError, match="cannot be read"):
         read_obstacles(tmp_path)

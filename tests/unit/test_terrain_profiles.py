@@ -121,12 +121,15 @@ def test_nothing_is_known_in_a_gap_even_under_a_cover_raster(tmp_path: Path) -> 
     assert not any("cover is not known" in note for note in holed.notes)
 
 
-def test_a_path_that_runs_off_is_told_where_the_raster_ends(sloped: Path) -> None:
+@pytest.mark.parametrize("inward", [False, True])
+def test_a_path_that_runs_off_is_told_where_the_raster_ends(sloped: Path, inward: bool) -> None:
+    ends = [at(5000.0, 1500.0), at(7000.0, 1500.0)]
+    a, b = reversed(ends) if inward else ends
     with Terrain.open(ground=sloped) as terrain, pytest.raises(TerrainGapError) as caught:
-        terrain.profile(a=at(5000.0, 1500.0), b=at(7000.0, 1500.0))
+        terrain.profile(a=a, b=b)
     edge = at(6000.0, 1500.0)
-    assert "from 1.00 km to 2.00 km" in str(caught.value)
-    assert f"which ends at {edge.latitude_deg:.4f} N {-edge.longitude_deg:.4f} W" in str(caught.value)
+    assert f"from {'0.00 km to 1.00' if inward else '1.00 km to 2.00'} km" in str(caught.value)
+    assert f"sloped.tif, which ends at {edge.latitude_deg:.4f} N {-edge.longitude_deg:.4f} W" in str(caught.value)
 
 
 def test_a_path_beside_the_raster_says_so(sloped: Path) -> None:

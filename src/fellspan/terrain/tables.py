@@ -72,13 +72,14 @@ class Fields:
         return self.where.rsplit(", ", 1)[0]
 
     def text(self, name: str) -> str:
-        """The text of a column, '' where blank."""
+        """The text of a column, '' where blank; control characters become blanks, so that no terminal obeys them."""
         value = self.values.get(name)
         if value is None:
             return ""
         if isinstance(value, list | dict | bool):
             raise self.fail(f"{name} '{shown(value)}' is not a text")
-        return str(value).strip()
+        text = str(value)
+        return (text if text.isprintable() else "".join(c if c.isprintable() else " " for c in text)).strip()
 
     def number(self, name: str, low: float, high: float) -> float | None:
         """A finite number in low..high, None where blank."""
