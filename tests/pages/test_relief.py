@@ -127,3 +127,15 @@ def test_no_data_in_the_window_is_no_relief(tmp_path):
     assert len(rasters) == 1
     assert shaded_relief(rasters, WINDOW) is None
     assert shaded_relief([], WINDOW) is None
+
+
+def test_a_raster_too_large_to_read_is_left_out_and_named_unless_it_has_overviews(tmp_path, monkeypatch):
+    monkeypatch.setattr("fellspan.report.relief.MOST_CELLS", 100_000)
+    heights, transform = _mesa((1400, 2000), 500, 1000), north_up(-45.3, 36.12, 0.0001, 0.0001)
+    path = _write(tmp_path / "large.tif", heights, crs="EPSG:4326", transform=transform)
+    relief = shaded_relief(open_rasters([RasterSource(path=path)]), WINDOW, pixels=200)
+    assert (relief.url, relief.rasters, relief.left_out) == ("", (), ("large.tif",))
+    with rasterio.open(path, "r+") as file:
+        file.build_overviews([2, 4, 8], rasterio.enums.Resampling.average)
+    relief = shaded_relief(open_rasters([RasterSource(path=path)]), WINDOW, pixels=200)
+    assert (relief.rasters, relief.left_out) == (("large.tif",), ())

@@ -29,6 +29,8 @@ class MapMarkup:
     html: str
     script: str
     bounds: tuple[tuple[float, float], tuple[float, float]]
+    credit: str
+    """What the map names as its source, as HTML."""
 
 
 class SiteLabel(MacroElement):
@@ -71,7 +73,7 @@ def link_map(
     )  # fmt: skip
     chart.default_js, chart.default_css = [], []
     chart._id = name
-    if relief is not None:
+    if relief is not None and relief.url:
         _add_relief(chart, relief)
     for index, (plan, line) in enumerate(zip(plans, paths, strict=True), start=first):
         _add_link(chart, plan, line, index=index, reference=reference, overview=overview)
@@ -84,6 +86,7 @@ def link_map(
         html=figure.html.render(),
         script=_counted(figure.script.render(), name),
         bounds=((south, west), (north, east)),
+        credit=_credit(relief),
     )
 
 
@@ -93,13 +96,24 @@ def _add_relief(chart: folium.Map, relief: Relief) -> None:
         image=relief.url,
         bounds=[[window.south_deg, window.west_deg], [window.north_deg, window.east_deg]],
         pixelated=False,
-        attribution="Relief: " + escape(", ".join(shorten(raster, 40) for raster in _few(relief.rasters))),
         alt="Shaded relief of the study's own terrain",
     ).add_to(chart)
 
 
-def _few(names: Sequence[str]) -> list[str]:
-    return [*names[:2], f"and {len(names) - 2} more"] if len(names) > 3 else list(names)
+def _credit(relief: Relief | None) -> str:
+    if relief is None:
+        return "No relief: the rasters have no data here"
+    words = [f"Relief: {_names(relief.rasters)}"] if relief.rasters else []
+    if relief.left_out:
+        words.append(
+            f"no relief of {_names(relief.left_out)}: too large to shade without overviews (gdaladdo makes them)"
+        )
+    return escape("; ".join(words))
+
+
+def _names(names: Sequence[str]) -> str:
+    few = [*names[:2], f"and {len(names) - 2} more"] if len(names) > 3 else list(names)
+    return ", ".join(shorten(name, 40) for name in few)
 
 
 def _line(chart: folium.Map, places: geometry.Places, class_name: str, *, interactive: bool = False) -> None:

@@ -195,6 +195,7 @@ def _safe_map(chart: MapMarkup) -> dict[str, Any]:
         "html": Markup(chart.html.strip()),
         "script": Markup(chart.script),
         "bounds": chart.bounds,
+        "credit": chart.credit,
     }
 
 

@@ -34,7 +34,14 @@ _RAMP = ((0.0, (216, 222, 200)), (0.35, (230, 221, 190)), (0.7, (226, 205, 171))
 """Light tints, so that lines and names stay readable on them."""
 _QUALITIES = (82, 70, 58, 46)
 
+MOST_CELLS = 150_000_000
+"""Cells that are read for one map, seconds of work; overviews bring a raster of any size below it."""
+
 Array = NDArray[np.float32]
+
+
+class _TooLarge(Exception):
+    """A raster would need more cells than are left."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -54,11 +61,13 @@ class MapWindow:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Relief:
-    """A picture as a data URI, the window it fills, and the rasters that it shows."""
+    """A picture as a data URI ('' where there is nothing to show), the window it fills, the rasters that it shows, and
+    those left out because they are too large to read without overviews."""
 
     url: str
     window: MapWindow
     rasters: tuple[str, ...]
+    left_out: tuple[str, ...] = ()
 
 
 def mercator_y(latitude_deg: float) -> float:
@@ -80,7 +89,7 @@ def open_rasters(sources: Sequence[RasterSource]) -> list[RasterFile]:
 def shaded_relief(
     rasters: Sequence[RasterFile], window: MapWindow, *, pixels: int = 1200, most_bytes: int = 300_000
 ) -> Relief | None:
-    """The relief of a window, its longer side at most `pixels`; None where no raster has data there."""
+    """The relief of a window, its longer side at most `pixels`; None where no raster is there."""
     half = math.radians(window.east_deg - window.middle_deg) * SPHERE_M
     south, north = mercator_y(window.south_deg), mercator_y(window.north_deg)
     if half <= 0.0 or north <= south:
@@ -90,18 +99,42 @@ def shaded_relief(
     transform = Affine(2.0 * half / width, 0.0, -half, 0.0, -(north - south) / height, north)
     heights = np.full((height, width), np.nan, dtype=np.float32)
     shrink = math.cos(math.radians((window.south_deg + window.north_deg) / 2.0))
-    shown = []
+    shown: list[str] = []
+    left_out: list[str] = []
+    budget = _Budget(MOST_CELLS)
     with gdal():
         for raster in rasters:
             try:
-                if _paint(raster, heights, transform, middle_deg=window.middle_deg, cell_m=size * shrink):
+                if _paint(
+                    raster, heights, transform, middle_deg=window.middle_deg, cell_m=size * shrink, budget=budget
+                ):
                     shown.append(raster.name)
+            except _TooLarge:
+                left_out.append(raster.name)
             except (FellspanError, RasterioError, OSError, ValueError):
                 continue
-    if not np.isfinite(heights).any():
+    drawn = bool(np.isfinite(heights).any())
+    if not drawn and not left_out:
         return None
-    picture = _colour(heights, size * shrink)
-    return Relief(url=_encode(picture, most_bytes), window=window, rasters=tuple(dict.fromkeys(shown)))
+    return Relief(
+        url=_encode(_colour(heights, size * shrink), most_bytes) if drawn else "",
+        window=window,
+        rasters=tuple(dict.fromkeys(shown)),
+        left_out=tuple(dict.fromkeys(left_out)),
+    )
+
+
+class _Budget:
+    """Cells that may still be read for a map."""
+
+    def __init__(self, cells: int) -> None:
+        self.left = float(cells)
+
+    def take(self, cells: float) -> None:
+        """Count a reading, or refuse it."""
+        if cells > self.left:
+            raise _TooLarge
+        self.left -= cells
 
 
 def _mercator(middle_deg: float) -> CRS:
@@ -111,19 +144,28 @@ def _mercator(middle_deg: float) -> CRS:
     )
 
 
-def _paint(raster: RasterFile, heights: Array, grid: Affine, *, middle_deg: float, cell_m: float) -> bool:
+def _paint(
+    raster: RasterFile, heights: Array, grid: Affine, *, middle_deg: float, cell_m: float, budget: _Budget
+) -> bool:
     """Put one raster over what is there already; a geographic one is turned to the middle, with its copies a turn away."""
     crs = CRS.from_user_input(raster.crs_text)
     if raster.period is None:
-        return _paint_placed(raster, heights, grid, crs, raster.transform, _mercator(middle_deg), cell_m)
+        return _paint_placed(raster, heights, grid, crs, raster.transform, _mercator(middle_deg), cell_m, budget)
     turn = -middle_deg * raster.period / 360.0
     places = [_after(Affine.translation(turn + copy * raster.period, 0.0), raster.transform) for copy in (-1, 0, 1)]
-    painted = [_paint_placed(raster, heights, grid, crs, place, _mercator(0.0), cell_m) for place in places]
+    painted = [_paint_placed(raster, heights, grid, crs, place, _mercator(0.0), cell_m, budget) for place in places]
     return any(painted)
 
 
 def _paint_placed(
-    raster: RasterFile, heights: Array, grid: Affine, crs: CRS, placed: Affine, mercator: CRS, cell_m: float
+    raster: RasterFile,
+    heights: Array,
+    grid: Affine,
+    crs: CRS,
+    placed: Affine,
+    mercator: CRS,
+    cell_m: float,
+    budget: _Budget,
 ) -> bool:
     window = _source_window(raster, heights.shape, grid, crs, placed, mercator)
     if window is None:
@@ -133,6 +175,8 @@ def _paint_placed(
     limit = 3 * max(heights.shape)
     shape = (min(shape[0], limit), min(shape[1], limit))
     with open_dataset(raster.path, raster.name) as dataset:
+        overview = max((factor for factor in dataset.overviews(raster.band) if factor <= coarser), default=1)
+        budget.take(window.width * window.height / overview**2)
         cells = dataset.read(
             raster.band, window=window, out_shape=shape, masked=True,
             resampling=Resampling.average if coarser > 1.0 else Resampling.nearest,

@@ -3,6 +3,7 @@ function setUpMap(map, options) {
   "use strict";
   var box = map.getContainer(), frame = box.parentElement, wanted = options.bounds, touched = false, tiles = null;
   map.attributionControl.setPrefix(false);
+  map.attributionControl.addAttribution(options.credit);
   L.control.scale({imperial: false}).addTo(map);
   function fit(bounds) {
     wanted = bounds;
