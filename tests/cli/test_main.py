@@ -121,19 +121,17 @@ def test_a_bug_shows_its_traceback_when_asked(
     assert "Traceback" in capsys.readouterr().err
 
 
-def test_a_reader_that_leaves_is_no_error(tmp_path: Path) -> None:
-    links = "".join(
-        STUDY[STUDY.index("[[link]]") :].replace("West - East", f"Link {number} {'x' * 60}") for number in range(40)
-    )
-    study = write_study(tmp_path, STUDY + links)
+@pytest.mark.parametrize("arguments", [["plan", "trial.toml"], ["plan", "trial.toml", "--json"], ["--help"]])
+def test_a_reader_that_leaves_is_no_error(tmp_path: Path, arguments: list[str]) -> None:
+    write_study(tmp_path)
     with subprocess.Popen(
-        [sys.executable, "-c", "from fellspan.cli.main import main; main()", "plan", str(study)],
+        [sys.executable, "-c", "from fellspan.cli.main import main; main()", *arguments],
+        cwd=tmp_path,
         stdout=subprocess.PIPE,
         stderr=subprocess.PIPE,
     ) as process:
         assert process.stdout is not None
         assert process.stderr is not None
-        process.stdout.readline()
         process.stdout.close()
         err = process.stderr.read()
         assert process.wait(timeout=60) == 0

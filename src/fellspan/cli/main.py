@@ -70,6 +70,9 @@ def run(arguments: Sequence[str]) -> int:
         code = INTERRUPTED
     except BrokenPipeError:
         return _reader_left()
+    except SystemExit as ending:
+        # The parser ends by itself when a pipe breaks, and leaves its own wrapper in the place of the stream.
+        return _reader_left() if type(sys.stdout).__name__ == "PacifyFlushWrapper" else int(ending.code or OK)
     except OSError as error:
         return _complain(f"fellspan: {_about_files(error)}", FILES)
     except Exception as error:
@@ -98,7 +101,7 @@ def _complain(text: str, code: int) -> int:
 
 def _reader_left() -> int:
     """The reader of our output closed it (as `head` does): no message, and none from the interpreter's own flush."""
-    os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+    os.dup2(os.open(os.devnull, os.O_WRONLY), 1)
     return OK
 
 

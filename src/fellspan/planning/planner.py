@@ -7,13 +7,11 @@ from collections.abc import Callable, Iterator
 
 from fellspan import __version__
 from fellspan.errors import FellspanError
-from fellspan.geodesy.position import Position
 from fellspan.links.assess import AssessSettings, assess_in_full
 from fellspan.links.site import Link
 from fellspan.planning.inputs import Study
 from fellspan.planning.plan import LinkFailure, LinkPlan, StudyPlan
 from fellspan.planning.stamp import input_files
-from fellspan.terrain.profile import PathProfile
 from fellspan.terrain.terrain import Terrain
 
 Progress = Callable[[int, int, str], None]
@@ -34,6 +32,7 @@ def plan_study(study: Study, *, progress: Progress | None = None) -> StudyPlan:
         median_k=study.median_k,
         confidence=study.confidence,
         date=study.date,
+        step_m=study.terrain.step_m,
     )
     planned: list[LinkPlan] = []
     failures: list[LinkFailure] = []
@@ -59,18 +58,9 @@ def plan_study(study: Study, *, progress: Progress | None = None) -> StudyPlan:
     )
 
 
-class _SteppedTerrain(Terrain):
-    """Terrain whose profiles take the study's step where nothing else is asked."""
-
-    default_step_m: float | None = None
-
-    def profile(self, *, a: Position, b: Position, step_m: float | None = None, name: str | None = None) -> PathProfile:
-        return super().profile(a=a, b=b, step_m=self.default_step_m if step_m is None else step_m, name=name)
-
-
 def _open_terrain(study: Study) -> Terrain:
     inputs = study.terrain
-    terrain = _SteppedTerrain.open(
+    return Terrain.open(
         ground=inputs.ground,
         surface=inputs.surface,
         cover=inputs.cover,
@@ -80,9 +70,6 @@ def _open_terrain(study: Study) -> Terrain:
         sea_level_m=inputs.sea_level_m,
         growth_years=study.growth_years,
     )
-    if isinstance(terrain, _SteppedTerrain):
-        terrain.default_step_m = inputs.step_m
-    return terrain
 
 
 def _plan_link(link: Link, terrain: Terrain, settings: AssessSettings) -> LinkPlan | LinkFailure:
