@@ -133,3 +133,28 @@ def test_the_step_of_the_study_is_used(clear_study: Path) -> None:
     clear_study.write_text(text, encoding="utf-8")
     (link,) = plan_study(load_study(clear_study)).links
     assert link.result.step_m == pytest.approx(7.0, rel=0.01)
+
+
+def test_a_report_goes_into_its_folder(clear_study: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    out_dir = clear_study.parent / "report"
+    assert run("plan", clear_study, "--out", out_dir) == 0
+    assert json.loads((out_dir / "results.json").read_text(encoding="utf-8"))["links"][0]["verdict"] == "clear"
+    assert (out_dir / "index.html").exists()
+    assert f"report: {out_dir / 'index.html'}" in capsys.readouterr().out
+
+
+def test_a_report_that_cannot_be_written_is_exit_code_4(clear_study: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    target = clear_study.parent / "taken"
+    target.write_text("mine", encoding="utf-8")
+    assert run("plan", clear_study, "--out", target) == 4
+    err = capsys.readouterr().err
+    assert str(target) in err
+    assert len(err.splitlines()) <= 4
+    assert target.read_text(encoding="utf-8") == "mine"
+
+
+def test_no_report_when_no_link_could_be_planned(clear_study: Path) -> None:
+    text = clear_study.read_text(encoding="utf-8").replace("45.25000 W", "44.00000 W")
+    clear_study.write_text(text, encoding="utf-8")
+    assert run("plan", clear_study, "--out", clear_study.parent / "report") == 2
+    assert not (clear_study.parent / "report").exists()
