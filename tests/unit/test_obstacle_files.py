@@ -128,6 +128,29 @@ def test_a_power_line_hangs_between_the_tops_of_its_supports(
     assert line.to_m - line.from_m == pytest.approx(2.0**0.5, abs=0.02)  # 1 m wide where not said
 
 
+def test_a_line_that_calls_itself_a_power_line_spans_a_valley(tmp_path: Path) -> None:
+    """Supports on two rims at 100 m, the valley floor at 0: the wire stays up, a road's envelope goes down."""
+    heights = np.full((300, 600), 100.0)
+    heights[145:155, :] = 0.0
+    valley = raster(tmp_path / "valley.tif", heights)
+    (lon_1, lat_1), (lon_2, lat_2) = lonlat(3000.0, 1300.0), lonlat(3000.0, 1700.0)
+    tops = []
+    for envelope in ("power line", "road"):
+        file = csv_file(
+            tmp_path, "wkt,envelope,height_m", f'"LINESTRING ({lon_1} {lat_1}, {lon_2} {lat_2})",{envelope},12'
+        )
+        tops.append(profile_over(valley, file).obstacles[0].top_amsl_m)
+    assert tops == [pytest.approx(112.0), pytest.approx(12.0)]
+
+
+def test_a_line_whose_support_stands_off_the_raster_hangs_from_the_ground_below(tmp_path: Path, hill: Path) -> None:
+    (lon_1, lat_1), (lon_2, lat_2) = lonlat(3000.0, 1400.0), lonlat(3000.0, 4000.0)
+    file = csv_file(tmp_path, "wkt,name,height_m", f'"LINESTRING ({lon_1} {lat_1}, {lon_2} {lat_2})",power line,12')
+    profile = profile_over(hill, file)
+    assert profile.obstacles[0].top_amsl_m == pytest.approx(312.0, abs=0.2)
+    assert any("support of power line is not known" in note for note in profile.notes)
+
+
 def test_sag_is_a_parabola_along_the_span(tmp_path: Path, hill: Path) -> None:
     """A line along the path, level supports at 400 m above sea: the quarter point hangs by three quarters of the sag."""
     (lon_1, lat_1), (lon_2, lat_2) = lonlat(2000.0, 1500.0), lonlat(2400.0, 1500.0)

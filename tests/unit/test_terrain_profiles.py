@@ -185,6 +185,8 @@ def test_unknown_cover_counts_as_none_and_is_said(tmp_path: Path) -> None:
     with Terrain.open(ground=ground, cover=source) as terrain:
         profile = terrain.profile(a=at(500.0, 1500.0), b=at(5500.0, 1500.0))
         elsewhere = terrain.profile(a=at(4000.0, 1500.0), b=at(5500.0, 1500.0))
+        closer = terrain.refine(profile, [(4000.0, 4100.0)], step_m=1.0)
+    assert not closer.surface_is_known  # what was unknown stays so, wherever one looks closer
     assert not profile.surface_is_known
     assert profile.cover_m[np.argmin(np.abs(profile.distance_m - 2000.0))] == 0.0
     assert any("cover is not known from 1.50 to 2.50 km" in note for note in profile.notes)

@@ -35,6 +35,11 @@ def path_notes(work: PathWork, samples: Samples, *, refined: bool) -> tuple[str,
         notes.append(
             "obstacle heights above ground are counted from the surface raster, which may hold the obstacle already"
         )
+    for standing in work.standing:
+        if standing.crossing.obstacle.rule == "span" and standing.span_tops_m is None:
+            notes.append(
+                f"ground under a support of {standing.shown.name} is not known: taken as hung level from below it"
+            )
     if beyond := work.hits.beyond:
         notes.append(
             f"{beyond[0].where}: distance_m {beyond[0].distance_m:g} lies beyond the path's end at "
