@@ -107,20 +107,21 @@ def far_field(
     currents: WireCurrents, azimuth_rad: NDArray[np.float64], elevation_rad: NDArray[np.float64]
 ) -> NDArray[np.float64]:
     """Magnitude of the far field toward directions (boom along azimuth 0), arbitrary scale; arrays broadcast."""
-    azimuth, elevation = np.broadcast_arrays(azimuth_rad, elevation_rad)
-    up, flat = np.sin(elevation), np.cos(elevation)
-    ahead = flat * np.cos(azimuth)
-    total = np.zeros(azimuth.shape, dtype=np.complex128)
-    safe = np.maximum(flat, 1e-9)
+    # Not broadcast before they must be: what depends on the elevation alone is worked out once a row of a grid.
+    up, flat = np.sin(elevation_rad), np.cos(elevation_rad)
+    ahead = flat * np.cos(azimuth_rad)
+    total = np.zeros(ahead.shape, dtype=np.complex128)
+    safe = np.maximum(np.abs(flat), 1e-9)
+    middle = currents.height.shape[1] // 2
     # A wire's modes are symmetric about its centre: the sum over heights is a real cosine series in `up`.
     for wire in range(currents.place.size):
         span = float(currents.mode_length[wire])
         element = (np.cos(_TURN * span * up) - math.cos(_TURN * span)) / (safe * math.sin(_TURN * span))
-        middle = currents.height.shape[1] // 2
-        series = np.full(azimuth.shape, currents.current[wire, middle], dtype=np.complex128)
+        series = np.full(up.shape, currents.current[wire, middle], dtype=np.complex128)
         for mode in range(middle):
             z = float(currents.height[wire, mode])
             series = series + 2.0 * currents.current[wire, mode] * np.cos(_TURN * z * up)
         total += element * series * np.exp(1j * _TURN * float(currents.place[wire]) * ahead)
-    magnitude: NDArray[np.float64] = np.where(flat > 1e-9, np.abs(total), 0.0)
-    return magnitude
+    magnitude: NDArray[np.float64] = np.where(np.abs(flat) > 1e-9, np.abs(total), 0.0)
+    # A direction that is not a number in either angle has no field.
+    return np.where(np.isnan(flat + ahead), np.nan, magnitude)
