@@ -82,9 +82,19 @@ def test_roofs_make_it_look_like_a_surface_model(tmp_path: Path, cell: float) ->
     assert any("declared as a surface model" in caution for caution in misdeclared.cautions)
 
 
-def test_stairs_of_whole_metres_are_not_taken_for_walls(tmp_path: Path) -> None:
-    stairs = np.round(hills(400, cell=1.0)).astype(np.int16)
-    assert inspect_raster(RasterSource(path=write(tmp_path / "g.tif", stairs, cell=1.0))).looks_like == "bare ground"
+@pytest.mark.parametrize("grain", [1.0, 2.0])
+def test_stairs_of_rounded_heights_are_not_taken_for_walls(tmp_path: Path, grain: float) -> None:
+    stairs = np.round(hills(400, cell=1.0) / grain).astype(np.int16)
+    path = write(tmp_path / "g.tif", stairs, cell=1.0)
+    with rasterio.open(path, "r+") as dataset:
+        dataset.scales = (grain,)
+    assert inspect_raster(RasterSource(path=path)).looks_like == "bare ground"
+
+
+def test_rough_grass_in_fine_cells_is_bare_ground(tmp_path: Path) -> None:
+    grass = hills(400, cell=0.5) + np.random.default_rng(3).normal(0.0, 0.15, (400, 400)).astype(np.float32)
+    path = write(tmp_path / "g.tif", grass, cell=0.5)
+    assert inspect_raster(RasterSource(path=path)).looks_like == "bare ground"
 
 
 @pytest.mark.parametrize(("cell", "height"), [(30.0, 1.0), (1.0, 0.0)])
@@ -167,7 +177,7 @@ def test_extent_across_the_antimeridian_runs_on(tmp_path: Path) -> None:
 
 
 def test_cover_has_no_datum_and_no_look(tmp_path: Path) -> None:
-    path = write(tmp_path / "c.tif", np.full((60, 60), 20, np.uint8))
+    path = write(tmp_path / "c.tif", np.full((60, 60), 20, np.uint8), crs="EPSG:32623+5773")
     fact = inspect_raster(CoverSource(path=path, kind="tree"))
     assert (fact.role, fact.looks_like, fact.vertical_datum) == ("cover", "unclear", None)
     assert not any("datum" in caution for caution in fact.cautions)

@@ -173,10 +173,13 @@ def test_nodata_is_a_gap_up_to_the_edge_of_its_cell_and_weighs_nothing_beside(
     assert np.isnan(got.value_m[1:4]).all()
 
 
+@pytest.mark.parametrize("driver", ["GTiff", "ENVI"])
 @pytest.mark.parametrize("lowest", [-3.4028234663852886e38, -998.7])
-def test_nodata_of_many_digits_is_found_in_float32_cells(tmp_path: Path, lowest: float) -> None:
+def test_nodata_of_many_digits_is_found_in_float32_cells(tmp_path: Path, lowest: float, driver: str) -> None:
     cells = np.array([[5.0, lowest], [5.0, 5.0]], dtype=np.float32)
-    path = write(tmp_path / "t.tif", cells, transform=grid_around(UTM, cells=2, cell=10.0), nodata=lowest)
+    path = write(
+        tmp_path / "t.tif", cells, transform=grid_around(UTM, cells=2, cell=10.0), nodata=lowest, driver=driver
+    )
     assert np.isnan(sample_at(path, [1.5], [0.5]).value_m[0])
 
 
@@ -249,10 +252,14 @@ def test_scale_offset_and_unit_apply_in_this_order(tmp_path: Path) -> None:
     assert sample_at(path, [1.7], [1.7], vertical_unit="us-ft").value_m[0] == pytest.approx(70 * 1200 / 3937, abs=1e-9)
 
 
-def test_feet_of_the_crs_are_found(tmp_path: Path) -> None:
+@pytest.mark.parametrize("driver", ["GTiff", "ENVI"])
+def test_feet_of_the_crs_are_found(tmp_path: Path, driver: str) -> None:
+    """GDAL passes them on as the unit of the band for some formats and not for others."""
     # EPSG:6360 is NAVD88 height in US survey feet
     cells = np.full((4, 4), 100.0, np.float32)
-    path = write(tmp_path / "t.tif", cells, crs="EPSG:32623+6360", transform=grid_around(UTM, cells=4, cell=10.0))
+    path = write(
+        tmp_path / "t.tif", cells, crs="EPSG:32623+6360", transform=grid_around(UTM, cells=4, cell=10.0), driver=driver
+    )
     stack = RasterStack.open([RasterSource(path=path)], role="ground")
     assert stack.vertical_datum is not None
     assert "NAVD88" in stack.vertical_datum

@@ -1,9 +1,8 @@
-"""Open GDAL datasets: one handle a thread and file, few at once, quiet, and never a GDAL message as a traceback.
+"""Open GDAL datasets: one handle a thread and file, few at once, and never a GDAL message as a traceback.
 
 Knows nothing of heights.
 """
 
-import logging
 import os
 import threading
 import warnings
@@ -18,9 +17,6 @@ from rasterio.errors import NotGeoreferencedWarning, RasterioError
 from rasterio.io import DatasetReader
 
 from fellspan.errors import RasterError
-
-# without this Python prints GDAL's log lines beside our own message; a handler of the user's still gets them
-logging.getLogger("rasterio").addHandler(logging.NullHandler())
 
 GDAL_CACHE_MB = 64
 _KEPT_OPEN = 24

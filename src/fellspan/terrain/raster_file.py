@@ -128,7 +128,7 @@ def _header(
         crs_text=system.horizontal,
         period=system.period,
         nodata=cast("float | None", dataset.nodatavals[band]),
-        has_mask=MaskFlags.per_dataset in flags or MaskFlags.alpha in flags,
+        has_mask=MaskFlags.per_dataset in flags,  # GDAL counts alpha bands among these
         scale=float(dataset.scales[band]),
         offset=float(dataset.offsets[band]),
         unit_m=unit_m,
