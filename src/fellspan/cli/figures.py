@@ -61,7 +61,7 @@ def by_how_much(criterion: CriterionResult) -> str:
 def extra_height(extra: ExtraHeight) -> str:
     """Which height clears a criterion; an end that cannot do it alone is said so."""
     ends = [
-        f"{label} {up(value)}" if value is not None else f"{label} cannot, alone"
+        f"{label} {up(value)}" if value is not None else f"{label} cannot"
         for label, value in (("A alone", extra.a), ("B alone", extra.b))
     ]
     both = f"or both {up(extra.both)} each" if extra.both is not None else "both alike cannot"
@@ -75,8 +75,13 @@ def decibels(value: float | None, unit: str = "dB") -> str:
 
 def bearing(true_deg: float, magnetic_deg: float | None) -> str:
     """A bearing to aim by, the magnetic one beside it."""
-    magnetic = "magnetic unknown" if magnetic_deg is None else f"{magnetic_deg:05.1f} deg magnetic"
-    return f"{true_deg:05.1f} deg true, {magnetic}"
+    magnetic = "magnetic unknown" if magnetic_deg is None else f"{_compass(magnetic_deg)} deg magnetic"
+    return f"{_compass(true_deg)} deg true, {magnetic}"
+
+
+def _compass(bearing_deg: float) -> str:
+    """Three digits before the point; 359.96 is north, not 360.0."""
+    return f"{round(bearing_deg, 1) % 360.0:05.1f}"
 
 
 def tilt(value_deg: float) -> str:
