@@ -86,7 +86,7 @@ def test_land_is_drawn_where_it_is(tmp_path, grid):
         path = tmp_path
     else:
         path = _write(tmp_path / "one.tif", heights, crs=crs, transform=transform)
-    relief = shaded_relief(open_rasters([RasterSource(path=path)]), WINDOW, pixels=500)
+    relief = shaded_relief(open_rasters([RasterSource(path=path)]), WINDOW, pixels=500, gaps_are_sea=True)
     # a hundredth of the picture is 5 pixels, a quarter of the hill
     assert _land_middle(relief) == pytest.approx(_expected(*place, WINDOW), abs=0.01)
 
@@ -108,7 +108,7 @@ def test_land_is_drawn_across_the_antimeridian(tmp_path, grid, turn):
         heights[45:55, 0:10] = 100
         place = 180.05 + turn, -17.0
     path = _write(tmp_path / "a.tif", heights, crs=crs, transform=transform, compress="deflate")
-    relief = shaded_relief(open_rasters([RasterSource(path=path)]), window, pixels=500)
+    relief = shaded_relief(open_rasters([RasterSource(path=path)]), window, pixels=500, gaps_are_sea=True)
     assert _land_middle(relief) == pytest.approx(_expected(*place, window), abs=0.015)
 
 

@@ -111,7 +111,7 @@ def sites(plans: Sequence[LinkPlan], reference_deg: float, *, first: int = 0) ->
     return marks
 
 
-def window_of(places: Places, *, margin: float = 0.22, least_m: float = 250.0, aspect: float = 1.5) -> MapWindow:
+def window_of(places: Places, *, margin: float = 0.22, least_m: float = 250.0, aspect: float = 1.2) -> MapWindow:
     """The part of the map to show: around the places, with a margin, no narrower than `aspect` allows."""
     latitudes, longitudes = [y for y, _ in places], [x for _, x in places]
     low, high = mercator_y(min(latitudes)), mercator_y(max(latitudes))
@@ -120,7 +120,7 @@ def window_of(places: Places, *, margin: float = 0.22, least_m: float = 250.0, a
     pad = max(margin * max(high - low, east - west), least_m * stretched)
     low, high, west, east = low - pad, high + pad, west - pad, east + pad
     wide = max(0.0, (high - low) * aspect - (east - west)) / 2.0
-    tall = max(0.0, (east - west) / (aspect * 1.4) - (high - low)) / 2.0
+    tall = max(0.0, (east - west) / (aspect * 1.06) - (high - low)) / 2.0
     return MapWindow(
         west_deg=math.degrees((west - wide) / 6_378_137.0), east_deg=math.degrees((east + wide) / 6_378_137.0),
         south_deg=_latitude(low - tall), north_deg=_latitude(high + tall),

@@ -107,7 +107,15 @@ def _overview(plan: StudyPlan, templates: Environment, rasters: list[RasterFile]
 
 def _link_page(plan: StudyPlan, index: int, link: LinkPlan, templates: Environment, rasters: list[RasterFile]) -> str:
     result = link.result
-    chart = _map([link], rasters, name="plan", pixels=LINK_PIXELS, most_bytes=LINK_BYTES, first=index)
+    chart = _map(
+        [link],
+        rasters,
+        name="plan",
+        pixels=LINK_PIXELS,
+        most_bytes=LINK_BYTES,
+        first=index,
+        gaps_are_sea=_gaps_are_sea(plan),
+    )
     view = _view(
         index,
         link,
@@ -128,6 +136,10 @@ def _link_page(plan: StudyPlan, index: int, link: LinkPlan, templates: Environme
         safety=SAFETY,
         quiet=True,
     )
+
+
+def _gaps_are_sea(plan: StudyPlan) -> bool:
+    return plan.study.terrain.gaps == "sea"
 
 
 def _view(index: int, link: LinkPlan, **drawings: Any) -> LinkView:
@@ -153,11 +165,12 @@ def _map(
     most_bytes: int,
     first: int = 0,
     overview: bool = False,
+    gaps_are_sea: bool = False,
 ) -> MapMarkup:
     reference = links[0].result.ends.a.longitude_deg
     places = [place for link in links for place in geometry.path(link, reference)]
     window = geometry.window_of(places, margin=0.25 if overview else 0.4)
-    relief = shaded_relief(rasters, window, pixels=pixels, most_bytes=most_bytes)
+    relief = shaded_relief(rasters, window, pixels=pixels, most_bytes=most_bytes, gaps_are_sea=gaps_are_sea)
     return link_map(links, name=name, relief=relief, first=first, overview=overview)
 
 
@@ -249,6 +262,7 @@ def _environment() -> Environment:
         metres=wording.metres,
         number=wording.number,
         percent=wording.percent,
+        probability=wording.probability,
         unit=_unit,
     )
     made.filters["raise"] = _raise

@@ -182,6 +182,8 @@ def key(section: Section, uid: str, *, top: float) -> tuple[str, float]:
         entries.append((el("rect", x=0, y=-9, width=24, height=10, class_="zone-required"), words))
     entries.append((el("rect", x=0, y=-9, width=24, height=10, fill=f"url(#{uid}-ground)", class_="swatch"),
                     "ground" if section.profile.ground_is_bare else "ground and what stands on it"))  # fmt: skip
+    if section.sea.any():
+        entries.append((el("rect", x=0, y=-9, width=24, height=10, fill=f"url(#{uid}-sea)", class_="swatch"), "sea"))
     if section.level_arc_m is not None:
         entries.append((line(0, -4, 24, -4, class_="level-arc"), "a level surface: the Earth's curve"))
     present = set(section.cover_kind[section.surface_drawn - section.ground_drawn > 0.05].tolist()) - {0}

@@ -23,6 +23,7 @@ def patterns(uid: str) -> str:
     return el(
         "defs",
         hatch("ground", 8, 45, line(0, 0, 0, 8, class_="stroke-ground")),
+        hatch("sea", 12, 0, el("path", d="M0,3q1.5,-2 3,0t3,0M6,9q1.5,-2 3,0t3,0", class_="stroke-sea")),
         hatch("building", 4, 0, line(2, 0, 2, 4, class_="stroke-building")),
         hatch("tree", 6, 0, el("circle", cx=1.5, cy=1.5, r=0.9, class_="dot-tree"),
               el("circle", cx=4.5, cy=4.5, r=0.9, class_="dot-tree")),
@@ -35,7 +36,14 @@ def ground(section: Section, uid: str) -> str:
     xs, ys = section.x.all(section.distance_m), section.y.all(section.ground_drawn)
     bottom = section.y.from_px
     body = points([xs[0], *xs, xs[-1]], [bottom, *ys, bottom]) + "Z"
-    drawn = el("path", d=body, fill=f"url(#{uid}-ground)") + el("path", d=points(xs, ys), class_="ground-line")
+    drawn = el("path", d=body, fill=f"url(#{uid}-ground)")
+    edges = np.flatnonzero(np.r_[True, np.diff(section.sea.astype(int)) != 0, True])
+    for start, stop in zip(edges[:-1].tolist(), edges[1:].tolist(), strict=True):
+        if section.sea[start]:
+            run_x, run_y = xs[start:stop], ys[start:stop]
+            shape = points([run_x[0], *run_x, run_x[-1]], [bottom, *run_y, bottom]) + "Z"
+            drawn += el("path", d=shape, fill=f"url(#{uid}-sea)")
+    drawn += el("path", d=points(xs, ys), class_="ground-line")
     if section.level_arc_m is not None:
         arc = [min(y, bottom) for y in section.y.all(section.level_arc_m)]
         drawn += el("path", d=points(xs, arc), class_="level-arc")

@@ -30,6 +30,7 @@ from fellspan.terrain.tiles import open_source
 SPHERE_M = 6_378_137.0
 """Radius of the web map's sphere, m (EPSG:3857)."""
 SEA_COLOUR = (220, 229, 230)
+UNKNOWN_COLOUR = (236, 234, 230)
 _RAMP = ((0.0, (216, 222, 200)), (0.35, (230, 221, 190)), (0.7, (226, 205, 171)), (1.0, (242, 236, 226)))
 """Light tints, so that lines and names stay readable on them."""
 _QUALITIES = (82, 70, 58, 46)
@@ -87,7 +88,12 @@ def open_rasters(sources: Sequence[RasterSource]) -> list[RasterFile]:
 
 
 def shaded_relief(
-    rasters: Sequence[RasterFile], window: MapWindow, *, pixels: int = 1200, most_bytes: int = 300_000
+    rasters: Sequence[RasterFile],
+    window: MapWindow,
+    *,
+    pixels: int = 1200,
+    most_bytes: int = 300_000,
+    gaps_are_sea: bool = False,
 ) -> Relief | None:
     """The relief of a window, its longer side at most `pixels`; None where no raster is there."""
     half = math.radians(window.east_deg - window.middle_deg) * SPHERE_M
@@ -117,7 +123,7 @@ def shaded_relief(
     if not drawn and not left_out:
         return None
     return Relief(
-        url=_encode(_colour(heights, size * shrink), most_bytes) if drawn else "",
+        url=_encode(_colour(heights, size * shrink, gaps_are_sea=gaps_are_sea), most_bytes) if drawn else "",
         window=window,
         rasters=tuple(dict.fromkeys(shown)),
         left_out=tuple(dict.fromkeys(left_out)),
@@ -231,8 +237,9 @@ def _source_window(
     return Window(left, top, right - left, bottom - top) if right > left and bottom > top else None
 
 
-def _colour(heights: Array, cell_m: float) -> NDArray[np.uint8]:
-    """Tint by height, shade by light from the north-west; what is unknown or flat at sea level is sea."""
+def _colour(heights: Array, cell_m: float, *, gaps_are_sea: bool) -> NDArray[np.uint8]:
+    """Tint by height, shade by light from the north-west; what is flat at sea level is sea, and
+    what is unknown is neither sea nor land unless the study says so."""
     known = np.isfinite(heights)
     filled = np.where(known, heights, 0.0).astype(np.float32)
     down, right = np.gradient(filled, cell_m)
@@ -252,7 +259,8 @@ def _colour(heights: Array, cell_m: float) -> NDArray[np.uint8]:
     bands = []
     for channel in range(3):
         tint = np.interp(share, stops, [colour[channel] for _, colour in _RAMP]) * shade
-        bands.append(np.where(sea, SEA_COLOUR[channel], np.clip(tint, 0, 255)))
+        painted = np.where(sea, SEA_COLOUR[channel], np.clip(tint, 0, 255))
+        bands.append(painted if gaps_are_sea else np.where(known, painted, UNKNOWN_COLOUR[channel]))
     return np.asarray(bands).round().astype(np.uint8)
 
 

@@ -11,6 +11,8 @@ from fellspan.report.scales import Scale, keep_peaks
 from fellspan.terrain.profile import PathProfile
 
 Array = NDArray[np.float64]
+SEA_SOURCE = "sea level"
+"""Name under which a profile tells that a gap was filled with the level of the sea."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -79,6 +81,8 @@ class Section:
     surface_drawn: Array
     checked_drawn: Array
     cover_kind: NDArray[np.int8]
+    sea: NDArray[np.bool_]
+    """Where open sea was filled in because the study says that gaps are sea."""
     bulge_m: Array
     ray_m: Array
     radius_m: Array
@@ -160,6 +164,7 @@ def prepare(plan: LinkPlan, sheet: Sheet, *, plot_top: float) -> Section:
         surface_drawn=surface,
         checked_drawn=levels.surface_m[kept] + bulge[kept],
         cover_kind=profile.cover_kind[kept],
+        sea=np.isin(profile.source[kept], [i for i, name in enumerate(profile.sources) if name == SEA_SOURCE]),
         bulge_m=bulge[kept],
         ray_m=levels.available_m[kept],
         radius_m=levels.fresnel_radius_m[kept],

@@ -60,13 +60,17 @@ def distance(distance_m: float) -> str:
 
 
 def percent(share: float | None, digits: int = 0) -> str:
-    """`0.6` as `60 %`; near-certainty is never rounded up to it."""
+    """`0.6` as `60 %`."""
+    return "–" if share is None else f"{number(share * 100.0, digits)} %"
+
+
+def probability(share: float | None) -> str:
+    """A probability in percent; what is nearly certain or nearly impossible is never rounded to it."""
     if share is None:
         return "–"
-    value = share * 100.0
-    if digits == 0 and 99.5 <= value < 100.0:
-        return "> 99 %"
-    return f"{number(value, digits)} %"
+    if share > 0.995:
+        return "> 99.9 %" if share > 0.9995 else "> 99 %"
+    return "< 1 %" if share < 0.005 else percent(share)
 
 
 def frequency(frequency_hz: float) -> str:

@@ -14,7 +14,7 @@ function setUpMap(map, options) {
   function overlap(one, other) {
     return one.left < other.right + 2 && other.left < one.right + 2 && one.top < other.bottom && other.top < one.bottom;
   }
-  var sides = ["e", "w", "n", "s"];
+  var sides = ["n", "s", "ne", "nw", "se", "sw", "e", "w"];
   function place(name, side) {
     name.classList.remove.apply(name.classList, sides);
     name.classList.add(side);
