@@ -1,0 +1,49 @@
+"""The documentation of the study file agrees with the reader: its example loads, and every key is explained."""
+
+import re
+from pathlib import Path
+
+import pytest
+
+from fellspan.study.reading import read_study
+from fellspan.study.schema import StudyFile, Table
+
+PAGE = Path(__file__).resolve().parents[2] / "docs" / "study-file.md"
+
+
+def tables(model: type[Table] = StudyFile) -> dict[str, type[Table]]:
+    from fellspan.study import schema
+
+    return {name: item for name, item in vars(schema).items() if isinstance(item, type) and issubclass(item, Table)}
+
+
+def example() -> str:
+    found = re.search(r"```toml\n(.*?)```", PAGE.read_text(encoding="utf-8"), re.DOTALL)
+    assert found is not None
+    return found[1]
+
+
+def test_the_example_loads(tmp_path: Path) -> None:
+    (tmp_path / "terrain" / "fine").mkdir(parents=True)
+    for name in ("terrain/coarse.tif", "terrain/surface.tif", "terrain/trees.tif", "obstacles.csv", "survey-march.csv"):
+        (tmp_path / name).touch()
+    (tmp_path / "survey-april.csv").touch()
+    study = read_study(example(), path=tmp_path / "study.toml")
+    assert [link.name for link in study.links] == ["Harbour - North Light", "Harbour - Quarry"]
+    assert study.links[1].a.roof_edge_m == 4.0
+    assert study.notes == ()
+
+
+@pytest.mark.parametrize("name", sorted(tables()))
+def test_every_key_is_explained(name: str) -> None:
+    text = PAGE.read_text(encoding="utf-8")
+    for key in tables()[name].model_fields:
+        assert f"`{key}`" in text or f"[{key}]" in text or f"{{ name, k, {key} }}" in text, f"{name}.{key}"
+
+
+def test_the_example_shows_every_key() -> None:
+    """All but the alternatives that would contradict another key of the example."""
+    shown = set(re.findall(r"\b([a-z_]+) = ", example())) | set(re.findall(r"\[+([a-z]+)\]", example()))
+    keys = {key for table in tables().values() for key in table.model_fields}
+    left_out = keys - shown
+    assert left_out == {"preset", "median_k", "feeder_loss_b", "roof_edge_b", "parapet_a", "parapet_b"}
