@@ -45,5 +45,7 @@ class Study:
     tiles_url: str | None = None
     tiles_credit: str = ""
     path: Path | None = None
+    antenna_catalogue: Path | None = None
+    """Antennas of the user's own, which models may name."""
     notes: tuple[str, ...] = field(default=())
     """Warnings found while reading, such as coarse coordinates."""

@@ -18,7 +18,7 @@ _CHUNK_BYTES = 1024 * 1024
 
 
 def input_files(study: Study) -> tuple[InputFile, ...]:
-    """The study file and all terrain files, in the order of the study; what cannot be read here is said so in its hash."""
+    """The study file, terrain and antenna files, in the order of the study; what cannot be read here is said so in its hash."""
     return tuple(_input_file(role, path) for role, path in _named_files(study))
 
 
@@ -35,6 +35,12 @@ def _named_files(study: Study) -> Iterator[tuple[str, str | Path]]:
     ):
         for source in sources:
             yield role, source.path
+    if study.antenna_catalogue is not None:
+        yield "antennas", study.antenna_catalogue
+    ends = (antenna for link in study.links for antenna in (link.antenna_a, link.antenna_b))
+    files = (antenna.origin.file for antenna in ends if antenna.origin is not None)
+    for path in dict.fromkeys(path for path in files if path is not None):
+        yield "antenna pattern", path
 
 
 def _input_file(role: str, named: str | Path) -> InputFile:

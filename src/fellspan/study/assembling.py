@@ -1,6 +1,6 @@
 """Puts the tables of a study file together into a `Study`: names looked up, positions read, paths resolved.
 
-Sees that files exist, and opens none.
+Sees that files exist, and opens none but those of antennas, by way of `patterns`.
 """
 
 import re
@@ -18,6 +18,7 @@ from fellspan.planning.inputs import Study, TerrainInputs
 from fellspan.propagation.refraction import k_from_gradient
 from fellspan.study.messages import Problem, did_you_mean, raise_problems
 from fellspan.study.notes import position_note
+from fellspan.study.patterns import Patterns
 from fellspan.study.schema import (
     AntennaTable,
     CriteriaTable,
@@ -59,6 +60,7 @@ def assemble(study_file: StudyFile, *, path: Path) -> Study:
         tiles_url=study_file.map.tiles_url,
         tiles_credit=study_file.map.tiles_credit,
         path=path,
+        antenna_catalogue=assembler.patterns.catalogue_path,
         notes=tuple(assembler.notes),
     )
 
@@ -92,6 +94,7 @@ class _Assembler:
         self.sites = self._by_name("site", study_file.site)
         self.radios = self._by_name("radio", study_file.radio)
         self.antennas = self._by_name("antenna", study_file.antenna)
+        self.patterns = Patterns(study_file.antennas, self.folder, problems=self.problems, notes=self.notes)
         self._by_name("link", study_file.link)
         self.positions: dict[str, Position] = {}
         for name, site in self.sites.items():
@@ -128,8 +131,8 @@ class _Assembler:
         where = f"link '{table.name}'"
         a, b = self._site(table, "a"), self._site(table, "b")
         radio = self._named(f"{where}, radio", "radio", table.radio, self.radios)
-        antenna_a = self._antenna(where, "antenna_a", table.antenna_a or table.antenna, table.feeder_loss_a)
-        antenna_b = self._antenna(where, "antenna_b", table.antenna_b or table.antenna, table.feeder_loss_b)
+        antenna_a = self._antenna(where, "antenna_a", table.antenna_a or table.antenna, table.feeder_loss_a, radio)
+        antenna_b = self._antenna(where, "antenna_b", table.antenna_b or table.antenna, table.feeder_loss_b, radio)
         if a is None or b is None or radio is None or antenna_a is None or antenna_b is None:
             return None
         return Link(
@@ -161,11 +164,15 @@ class _Assembler:
         )
         return None
 
-    def _antenna(self, where: str, key: str, name: str | None, feeder_loss_db: float) -> Antenna | None:
+    def _antenna(
+        self, where: str, key: str, name: str | None, feeder_loss_db: float, radio: RadioTable | None
+    ) -> Antenna | None:
         if name is None:
             return Antenna(feeder_loss_db=feeder_loss_db)
         table = self._named(f"{where}, {key}", "antenna", name, self.antennas)
-        return None if table is None else Antenna(name=table.name, gain_dbi=table.gain, feeder_loss_db=feeder_loss_db)
+        if table is None or radio is None:
+            return None
+        return self.patterns.antenna(table, frequency_hz=radio.frequency, feeder_loss_db=feeder_loss_db)
 
     def _site(self, link: LinkTable, end: Literal["a", "b"]) -> Site | None:
         """The site at an end, with what the link states for itself in place of the site's own."""

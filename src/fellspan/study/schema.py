@@ -27,7 +27,14 @@ from fellspan.study.fields import (
     Power,
     Probability,
 )
-from fellspan.vocabulary import CoverKind, CriteriaPreset, GapPolicy, LengthUnit, Polarization
+from fellspan.vocabulary import (
+    CoverKind,
+    CriteriaPreset,
+    GapPolicy,
+    LengthUnit,
+    MountedPolarization,
+    Polarization,
+)
 
 
 class Table(BaseModel):
@@ -209,11 +216,59 @@ class RadioTable(Table):
     polarization: Polarization = Field(default="vertical", description="Polarization of the wave.")
 
 
+class AntennasTable(Table):
+    """[antennas]: where antennas are looked up."""
+
+    catalogue: str | None = Field(
+        default=None, min_length=1, description="File of antennas of your own.", examples=["own-antennas.toml"]
+    )
+
+
 class AntennaTable(Table):
-    """[[antenna]]: an antenna."""
+    """[[antenna]]: an antenna, known by its gain alone, a model, a pattern file or data-sheet numbers; and its mounting."""
 
     name: Name = Field(description="How links call it.", examples=["0.6 m dish"])
-    gain: Gain | None = Field(default=None, description="Gain toward the other end.", examples=["29 dBi"])
+    gain: Gain | None = Field(default=None, description="Gain at the maximum.", examples=["29 dBi"])
+    model: Name | None = Field(default=None, description="Name in the catalogue.", examples=["dish 0.6 m"])
+    pattern: str | None = Field(default=None, min_length=1, description="Pattern file.", examples=["sector.csv"])
+    azimuth_width: Number | None = Field(
+        default=None,
+        gt=0.0,
+        le=360.0,
+        description="Half-power width in azimuth, degrees; 360 is an omni.",
+        examples=[65],
+    )
+    elevation_width: Number | None = Field(
+        default=None, gt=0.0, le=180.0, description="Half-power width in elevation, degrees.", examples=[7]
+    )
+    front_to_back: Loss | None = Field(
+        default=None, description="Peak over the level behind; an omni has none.", examples=["28 dB"]
+    )
+    cross_polar: Loss | None = Field(default=None, description="Cross-polar discrimination.", examples=["25 dB"])
+    bearing: Number | None = Field(
+        default=None, ge=0.0, le=360.0, description="True bearing it points to, degrees.", examples=[120]
+    )
+    tilt: Number | None = Field(
+        default=None, ge=-90.0, le=90.0, description="Tilt, degrees, up positive.", examples=[-3]
+    )
+    polarization: MountedPolarization | None = Field(default=None, description="How it is mounted.")
+    roll: Number | None = Field(
+        default=None, ge=-180.0, le=180.0, description="Turn about its boresight by mistake, degrees.", examples=[5]
+    )
+
+    @model_validator(mode="after")
+    def _one_description(self) -> "AntennaTable":
+        sheet = ("azimuth_width", "elevation_width", "front_to_back", "cross_polar")
+        numbers = [key for key in ("gain", *sheet) if getattr(self, key) is not None]
+        for key in ("model", "pattern"):
+            if getattr(self, key) is not None and numbers:
+                raise ValueError(f"{numbers[0]} is given beside {key}, which says it already; keep one of them")
+        if self.model is not None and self.pattern is not None:
+            raise ValueError("model and pattern are both given; keep one of them")
+        if set(numbers) & set(sheet) and (self.gain is None or self.elevation_width is None):
+            missing = "gain" if self.gain is None else "elevation_width"
+            raise ValueError(f"{missing} is missing; a pattern from a data sheet needs gain and elevation_width")
+        return self
 
 
 class LinkTable(Table):
@@ -279,6 +334,7 @@ class StudyFile(Table):
     criteria: CriteriaTable = Field(default_factory=CriteriaTable)
     site: tuple[SiteTable, ...] = Field(min_length=2)
     radio: tuple[RadioTable, ...] = Field(min_length=1)
+    antennas: AntennasTable = Field(default_factory=AntennasTable)
     antenna: tuple[AntennaTable, ...] = ()
     link: tuple[LinkTable, ...] = Field(min_length=1)
     map: MapTable = Field(default_factory=MapTable)

@@ -11,7 +11,7 @@ from pathlib import Path
 
 from fellspan.errors import StudyError
 from fellspan.links.criteria import Criterion
-from fellspan.links.site import Antenna, Link, Radio, Site
+from fellspan.links.site import Aim, Antenna, Link, PatternOrigin, Radio, Site
 from fellspan.planning.inputs import Study
 from fellspan.study.notes import position_note
 from fellspan.terrain.sources import CoverSource, RasterSource
@@ -44,10 +44,8 @@ def study_text(study: Study, *, folder: Path) -> str:
         *_criteria(study),
         *(_site(site, study.notes) for site in sites.values()),
         *(_radio(radio) for radio in radios.values()),
-        *(
-            _table("[[antenna]]", ("name", quoted(name)), ("gain", None if gain is None else f'"{_number(gain)} dBi"'))
-            for name, gain in antennas.items()
-        ),
+        *_catalogue(study, folder),
+        *(_antenna(antenna, folder) for antenna in antennas.values()),
         *(_link(link, sites) for link in study.links),
     ]
     if study.tiles_url is not None:
@@ -207,6 +205,34 @@ def _radio(radio: Radio) -> str:
     )
 
 
+def _catalogue(study: Study, folder: Path) -> Iterable[str]:
+    if study.antenna_catalogue is not None:
+        yield _table("[antennas]", ("catalogue", _path(study.antenna_catalogue, folder)))
+
+
+def _antenna(antenna: Antenna, folder: Path) -> str:
+    origin, aim = antenna.origin or PatternOrigin(), antenna.mounting or Aim()
+    return _table(
+        "[[antenna]]",
+        ("name", quoted(antenna.name)),
+        ("gain", None if antenna.gain_dbi is None else f'"{_number(antenna.gain_dbi)} dBi"'),
+        ("model", None if origin.model is None else quoted(origin.model)),
+        ("pattern", None if origin.file is None else _path(origin.file, folder)),
+        ("azimuth_width", _plain(origin.azimuth_width_deg)),
+        ("elevation_width", _plain(origin.elevation_width_deg)),
+        ("front_to_back", None if origin.front_to_back_db is None else _decibels(origin.front_to_back_db)),
+        ("cross_polar", None if origin.cross_polar_db is None else _decibels(origin.cross_polar_db)),
+        ("bearing", _plain(aim.bearing_deg)),
+        ("tilt", _plain(aim.tilt_deg)),
+        ("polarization", None if aim.polarization is None else quoted(aim.polarization)),
+        ("roll", _plain(aim.roll_deg) if aim.roll_deg else None),
+    )
+
+
+def _plain(value: float | None) -> str | None:
+    return None if value is None else _number(value)
+
+
 def _link(link: Link, sites: dict[str, Site]) -> str:
     return _table(
         "[[link]]",
@@ -244,7 +270,7 @@ def _antenna_name(antenna: Antenna) -> str | None:
 
 def _is_named(antenna: Antenna) -> bool:
     """Whether a user described it; an end of which nothing is known has the default name and no gain."""
-    return antenna.gain_dbi is not None or antenna.name != Antenna().name
+    return antenna.peak_gain_dbi is not None or antenna.mounting is not None or antenna.name != Antenna().name
 
 
 def _sites(links: Iterable[Link]) -> dict[str, Site]:
@@ -266,9 +292,21 @@ def _radios(links: Iterable[Link]) -> dict[str, Radio]:
     return found
 
 
-def _antennas(links: Iterable[Link]) -> dict[str, float | None]:
-    found: dict[str, float | None] = {}
+def _antennas(links: Iterable[Link]) -> dict[str, Antenna]:
+    """Antennas by name; feeder losses may differ between links, since they are a link's, and patterns with the frequency."""
+    found: dict[str, Antenna] = {}
     for antenna in (end for link in links for end in (link.antenna_a, link.antenna_b)):
-        if _is_named(antenna) and found.setdefault(antenna.name, antenna.gain_dbi) != antenna.gain_dbi:
-            raise StudyError(f"two different antennas are called '{antenna.name}'", "give each one a name of its own")
+        if not _is_named(antenna):
+            continue
+        if antenna.pattern is not None and antenna.origin is None:
+            raise StudyError(
+                f"antenna '{antenna.name}' has a pattern that no study file can name",
+                "write the pattern to a file, or use a model or data-sheet numbers",
+            )
+        first = found.setdefault(antenna.name, antenna)
+        for name in ("gain_dbi", "mounting", "origin"):
+            if getattr(first, name) != getattr(antenna, name):
+                raise StudyError(
+                    f"two different antennas are called '{antenna.name}'", "give each one a name of its own"
+                )
     return found
