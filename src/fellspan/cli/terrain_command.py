@@ -51,7 +51,7 @@ def terrain_command(
     elif facts:
         typer.echo("\n".join(_page(facts, seams)))
     for error in errors:
-        typer.echo(f"fellspan: {error}", err=True)
+        typer.echo("\n".join(map(printable, f"fellspan: {error}".splitlines())), err=True)
     return max((error.exit_code for error in errors), default=0)
 
 
