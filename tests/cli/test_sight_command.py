@@ -7,6 +7,8 @@ import select
 import subprocess
 import sys
 import time
+from collections.abc import Callable
+from dataclasses import dataclass
 from pathlib import Path
 
 import pytest
@@ -34,6 +36,24 @@ def folder(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> Path:
     write_ground(tmp_path / "ground.tif")
     monkeypatch.chdir(tmp_path)
     return tmp_path
+
+
+@dataclass(frozen=True)
+class Done:
+    returncode: int
+    stdout: str
+    stderr: str
+
+
+@pytest.fixture
+def run(folder: Path, capsys: pytest.CaptureFixture[str]) -> Callable[..., Done]:
+    """The command inside this process, which is quick; standard input is no terminal here either."""
+
+    def call(*arguments: str) -> Done:
+        code = main.run(arguments)
+        return Done(code, *capsys.readouterr())
+
+    return call
 
 
 @pytest.mark.parametrize(
@@ -71,14 +91,14 @@ def test_what_is_no_pair_is_refused(words: list[str]) -> None:
 @pytest.mark.parametrize(
     "points", [(A, B), ("36.09000,-45.28000", "36.09000,-45.25000"), ("36.09000", "-45.28000", "36.09000", "-45.25000")]
 )
-def test_clear_sight_is_said_and_saved(folder: Path, points: tuple[str, ...]) -> None:
-    done = run_command("sight", *points, *OPTIONS, "--study", "two.toml", folder=folder)
+def test_clear_sight_is_said_and_saved(folder: Path, run: Callable[..., Done], points: tuple[str, ...]) -> None:
+    done = run("sight", *points, *OPTIONS, "--study", "two.toml")
     assert done.returncode == 0, done.stderr
     assert "CLEAR, on bare ground only" in done.stdout
     assert "two.toml" in done.stderr
     (link,) = load_study(folder / "two.toml").links
     assert link.b.height_m == pytest.approx(30.48)
-    again = run_command("plan", "two.toml", folder=folder)
+    again = run("plan", "two.toml")
     assert again.stdout.split("A - B")[1] == done.stdout.split("A - B")[1]
 
 
@@ -106,19 +126,19 @@ def test_nothing_is_saved_when_not_wanted_or_not_planned(folder: Path) -> None:
     assert list(folder.glob("*.toml")) == []
 
 
-def test_json_alone_on_standard_output(folder: Path) -> None:
-    done = run_command("sight", A, B, *OPTIONS, "--json", folder=folder)
+def test_json_alone_on_standard_output(run: Callable[..., Done]) -> None:
+    done = run("sight", A, B, *OPTIONS, "--json")
     assert json.loads(done.stdout)["links"][0]["verdict"] == "clear"
 
 
-def test_a_surface_raster_is_another_basis(folder: Path) -> None:
+def test_a_surface_raster_is_another_basis(run: Callable[..., Done]) -> None:
     options = ["--surface", *OPTIONS[1:]]
-    done = run_command("sight", A, B, *options, "--no-save", folder=folder)
+    done = run("sight", A, B, *options, "--no-save")
     assert "CLEAR, by a raster of the surface" in done.stdout
 
 
-def test_a_pipe_is_told_all_that_is_missing(folder: Path) -> None:
-    done = run_command("sight", A, folder=folder)
+def test_a_pipe_is_told_all_that_is_missing(run: Callable[..., Done]) -> None:
+    done = run("sight", A)
     assert done.returncode == 2
     assert len(done.stderr.splitlines()) <= 4
     for words in ("the position of B", "--ground or --surface", "--frequency", "--height-a", "--height-b"):
@@ -126,8 +146,8 @@ def test_a_pipe_is_told_all_that_is_missing(folder: Path) -> None:
     assert done.stdout == ""
 
 
-def test_a_height_above_nothing_is_refused_in_a_pipe(folder: Path) -> None:
-    done = run_command("sight", A, B, *OPTIONS[:4], "--height-a", "12 m", "--height-b", "9 m agl", folder=folder)
+def test_a_height_above_nothing_is_refused_in_a_pipe(run: Callable[..., Done]) -> None:
+    done = run("sight", A, B, *OPTIONS[:4], "--height-a", "12 m", "--height-b", "9 m agl")
     assert done.returncode == 2
     assert "--height-a '12 m' does not say above what" in done.stderr
 
