@@ -10,7 +10,9 @@ from watched_browser import ARGUMENTS, CHROMIUM, watching
 
 from fellspan.geodesy.position import Position
 from fellspan.planning.plan import StudyPlan
+from fellspan.planning.planner import plan_study
 from fellspan.report.pages import render_pages
+from fellspan.study.reading import load_study
 
 ANTIMERIDIAN = Position(latitude_deg=36.05, longitude_deg=179.99)
 TILES_URL = "https://tiles.invalid/{z}/{x}/{y}.png"
@@ -66,6 +68,13 @@ def antimeridian(tmp_path_factory):
     """A report of links on both sides of 180 degrees."""
     raster = write_island(tmp_path_factory.mktemp("far") / "island.tif", at=ANTIMERIDIAN)
     return _write(tmp_path_factory.mktemp("antimeridian"), make_study(raster, at=ANTIMERIDIAN))
+
+
+@pytest.fixture(scope="session")
+def sample(tmp_path_factory):
+    """The report of the sample study, planned by the engine."""
+    study = load_study(Path(__file__).parents[2] / "sample_terrain" / "tolmera.toml")
+    return _write(tmp_path_factory.mktemp("sample"), plan_study(study))
 
 
 @pytest.fixture(scope="session")

@@ -98,6 +98,11 @@ def hostile_visits(hostile, browser):
 
 
 @pytest.fixture(scope="module")
+def sample_visits(sample, browser):
+    return _visits(sample, browser, sample.texts)
+
+
+@pytest.fixture(scope="module")
 def tiled_visits(tiled, browser):
     return _visits(tiled, browser, list(tiled.texts)[:2])
 
@@ -107,7 +112,7 @@ def antimeridian_visits(antimeridian, browser):
     return _visits(antimeridian, browser, list(antimeridian.texts)[:3])
 
 
-@pytest.mark.parametrize("kind", ["plain", "hostile", "tiled", "antimeridian"])
+@pytest.mark.parametrize("kind", ["plain", "sample", "hostile", "tiled", "antimeridian"])
 def test_no_page_asks_for_anything_says_anything_or_scrolls_sideways(request, kind):
     visits = request.getfixturevalue(f"{kind}_visits")
     assert {visit.size for visit in visits} == set(SIZES)
@@ -124,10 +129,12 @@ def _on_scale(ticks, value):
     return p0 + (value - v0) / (v1 - v0) * (p1 - p0)
 
 
+@pytest.mark.parametrize("kind", ["plain", "sample"])
 @pytest.mark.parametrize("size", SIZES)
-def test_governing_point_is_drawn_where_the_result_says(plain, plain_visits, size):
-    visits = [visit for visit in plain_visits if visit.size == size and visit.drawings]
-    for plan, visit in zip(plain.plan.links, visits, strict=True):
+def test_governing_point_is_drawn_where_the_result_says(request, kind, size):
+    report, seen = request.getfixturevalue(kind), request.getfixturevalue(f"{kind}_visits")
+    visits = [visit for visit in seen if visit.size == size and visit.drawings]
+    for plan, visit in zip(report.plan.links, visits, strict=True):
         assert len(visit.drawings) == 1
         drawing, item = visit.drawings[0], plan.result.clearance[plan.result.governing]
         # half a pixel: strokes are snapped to the grid of the screen
@@ -232,7 +239,7 @@ def test_names_on_the_map_do_not_overlap_and_stay_inside(plain, watch):
                 assert apart, (one, other)
 
 
-@pytest.mark.parametrize("kind", ["plain", "hostile"])
+@pytest.mark.parametrize("kind", ["plain", "sample", "hostile"])
 def test_texts_of_the_drawing_do_not_overlap_nor_leave_it(request, kind):
     for visit in request.getfixturevalue(f"{kind}_visits"):
         assert len(visit.texts) > 20 or not visit.drawings

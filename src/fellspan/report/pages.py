@@ -132,6 +132,7 @@ def _link_page(plan: StudyPlan, index: int, link: LinkPlan, templates: Environme
             ("B", result.ends.b, result.bearing_ba_deg, result.tilt_ba_deg),
         ],
         losses=_losses(result.losses_db),
+        rests_on=[link.profile.sources[i] for i in sorted(set(link.profile.source.tolist())) if i >= 0],
         cautions=(*result.cautions, *link.profile.notes, *plan.cautions),
         safety=SAFETY,
         quiet=True,

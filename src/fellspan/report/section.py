@@ -5,14 +5,13 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from fellspan.links.causes import SEA_WITHIN_M, is_sea_level
 from fellspan.links.result import CriterionResult, LinkResult
 from fellspan.planning.plan import LinkPlan
 from fellspan.report.scales import Scale, keep_peaks
 from fellspan.terrain.profile import PathProfile
 
 Array = NDArray[np.float64]
-SEA_SOURCE = "sea level"
-"""Name under which a profile tells that a gap was filled with the level of the sea."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -82,7 +81,7 @@ class Section:
     checked_drawn: Array
     cover_kind: NDArray[np.int8]
     sea: NDArray[np.bool_]
-    """Where open sea was filled in because the study says that gaps are sea."""
+    """Where the surface is called the sea, by the rule that names causes."""
     bulge_m: Array
     ray_m: Array
     radius_m: Array
@@ -145,6 +144,7 @@ def prepare(plan: LinkPlan, sheet: Sheet, *, plot_top: float) -> Section:
         exact=tuple(sorted(exact)),
     )
     kept = kept[np.isfinite(profile.surface_m[kept]) & np.isfinite(profile.ground_m[kept])]
+    sea = is_sea_level(profile) | (np.abs(profile.ground_m) <= SEA_WITHIN_M)
     ground = profile.ground_m[kept] + bulge[kept]
     surface = profile.surface_m[kept] + bulge[kept]
     zone_top = float(np.nanmax(levels.available_m + levels.fresnel_radius_m))
@@ -164,7 +164,7 @@ def prepare(plan: LinkPlan, sheet: Sheet, *, plot_top: float) -> Section:
         surface_drawn=surface,
         checked_drawn=levels.surface_m[kept] + bulge[kept],
         cover_kind=profile.cover_kind[kept],
-        sea=np.isin(profile.source[kept], [i for i, name in enumerate(profile.sources) if name == SEA_SOURCE]),
+        sea=sea[kept],
         bulge_m=bulge[kept],
         ray_m=levels.available_m[kept],
         radius_m=levels.fresnel_radius_m[kept],
