@@ -9,6 +9,8 @@ from typing import Final
 
 from fellspan.propagation.constants import K_FORMULA_HIGH_M, K_FORMULA_LOW_M
 from fellspan.propagation.source_types import Source, Validity
+from fellspan.propagation.sources_fading import FADING_SOURCES
+from fellspan.propagation.sources_weather import WEATHER_SOURCES
 
 
 def _frequency(low_hz: float, unit: str = "MHz") -> Validity:
@@ -229,7 +231,9 @@ _ALL: Final = (
 
 __all__ = ["SOURCES", "Source", "Validity", "out_of_range", "source"]
 
-SOURCES: Final[Mapping[str, Source]] = MappingProxyType({entry.key: entry for entry in _ALL})
+SOURCES: Final[Mapping[str, Source]] = MappingProxyType(
+    {entry.key: entry for entry in (*_ALL, *WEATHER_SOURCES, *FADING_SOURCES)}
+)
 """Every source of this room by its key, in the order of the methods page."""
 
 
