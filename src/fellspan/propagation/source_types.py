@@ -4,9 +4,9 @@ import math
 from dataclasses import dataclass
 from typing import Literal
 
-Status = Literal["text", "code", "derived", "practice"]
+Status = Literal["text", "code", "derived", "practice", "unconfirmed"]
 """How we know it: the published text was read; independent implementations agree, text not read; derived from first
-principles here; common practice without a source."""
+principles here; common practice without a source; unconfirmed: from memory, checked by nobody, never shown as authoritative."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
