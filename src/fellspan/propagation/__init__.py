@@ -103,7 +103,15 @@ from fellspan.propagation.rain import (
     rain_loss_001_db,
     rain_path_factor,
 )
-from fellspan.propagation.rain_percent import (
+from fellspan.propagation.rain_rate import (
+    ZONE_RAIN_RATE_001_MM_H,
+    RainZone,
+    rain_probability_percent,
+    rain_rate_mm_h,
+    rain_rate_percent,
+    zone_rain_rate_001_mm_h,
+)
+from fellspan.propagation.rain_statistics import (
     PrecipitationRegime,
     horizontal_from_vertical_rain_db,
     precipitation_regime,
@@ -114,14 +122,6 @@ from fellspan.propagation.rain_percent import (
     rain_percent,
     vertical_from_horizontal_rain_db,
     wet_snow_multiplier,
-)
-from fellspan.propagation.rain_rate import (
-    ZONE_RAIN_RATE_001_MM_H,
-    RainZone,
-    rain_probability_percent,
-    rain_rate_mm_h,
-    rain_rate_percent,
-    zone_rain_rate_001_mm_h,
 )
 from fellspan.propagation.refraction import (
     effective_earth_radius_m,
