@@ -12,7 +12,7 @@ from fellspan.geodesy.geodesic import GeodesicPath
 from fellspan.geodesy.transforms import WGS84, transformer
 
 _AGREEMENT_CELLS = 0.02
-"""Nodes are doubled until midpoints agree so well; the midpoints then serve too, which leaves about a quarter of it."""
+"""Nodes are doubled until the middles lie so near the chord; a parabola through them then leaves far less (tests show it)."""
 _FIRST_INTERVALS = 8
 _MOST_INTERVALS = 1024
 
@@ -80,14 +80,22 @@ class PathPlacing:
             nodes, x, y, count = all_nodes, all_x, all_y, 2 * count
             if settled.all() or count >= min(_MOST_INTERVALS, self.size):
                 break
-        at_x = np.interp(self.distance_m, nodes, x)
-        at_y = np.interp(self.distance_m, nodes, y)
+        # A parabola through both nodes and the middle: what the midpoints told is not thrown away.
+        width = self.path.length_m / settled.size
+        interval = np.clip((self.distance_m / width).astype(np.int64), 0, settled.size - 1)
+        t = self.distance_m / width - interval
+        at_x, at_y = _parabola(x, interval, t), _parabola(y, interval, t)
         if not settled.all():
             # longitudes that jump, a CRS with a seam, or one that does not reach the whole path: there, every point exactly
-            interval = np.clip(np.searchsorted(nodes[0::2], self.distance_m, side="right") - 1, 0, settled.size - 1)
             rest = np.flatnonzero(~settled[interval])
             at_x[rest], at_y[rest] = to_crs(crs_text, *self.path.positions(self.distance_m[rest]))
         return at_x, at_y
+
+
+def _parabola(values: Floats, interval: NDArray[np.int64], t: Floats) -> Floats:
+    """Values at the share `t` of each interval, whose ends and middle stand in `values` in turn."""
+    first, middle, last = values[2 * interval], values[2 * interval + 1], values[2 * interval + 2]
+    return np.asarray(first + t * (4.0 * middle - 3.0 * first - last + 2.0 * t * (first + last - 2.0 * middle)))
 
 
 def to_crs(crs_text: str, latitude_deg: Floats, longitude_deg: Floats) -> tuple[Floats, Floats]:
