@@ -31,15 +31,17 @@ class MeasuredCut:
 
 
 def combine_cuts(azimuth: MeasuredCut, elevation: MeasuredCut) -> AmplitudeFunction:
-    """Amplitude in any direction from the two principal cuts; on each cut it is exactly that cut.
+    """Amplitude in any direction from the two principal cuts, which it keeps where they agree ahead and behind.
 
     Notes
     -----
-    G(az, el) = H(az) - [(1 - w)(V(0) - V(el)) + w (V(180) - V(180 - el))], w = |az|/180 degrees: the horizontal projection
+    G(az, el) = H(az) - [(1 - w)(H(0) - V(el)) + w (H(180) - V(180 - el))], w = |az|/180 degrees: the horizontal projection
     interpolation named in `METHOD`, with V the elevation cut run over the top to the back.
     """
-    front_top = float(elevation.at(np.array([0.0]))[0])
-    back_top = float(elevation.at(np.array([180.0]))[0])
+    # The elevation cut is counted from what the azimuth cut has ahead and behind. Where both were taken through one point that
+    # is the elevation cut's own value there; an azimuth cut taken through a tilted beam is lowered off the beam, as it must be.
+    front_top = float(azimuth.at(np.array([0.0]))[0])
+    back_top = float(azimuth.at(np.array([180.0]))[0])
 
     def amplitude(azimuth_rad: NDArray[np.float64], elevation_rad: NDArray[np.float64]) -> NDArray[np.float64]:
         around, up = np.broadcast_arrays(np.degrees(azimuth_rad), np.degrees(elevation_rad))
@@ -108,20 +110,26 @@ class DenseGrid:
     elevation_deg: NDArray[np.float64]
     relative_db: NDArray[np.float64]
 
-    def amplitude(self, azimuth_rad: NDArray[np.float64], elevation_rad: NDArray[np.float64]) -> NDArray[np.float64]:
-        """Bilinear in amplitude, around the circle in azimuth."""
-        around, up = np.broadcast_arrays(np.degrees(azimuth_rad), np.degrees(elevation_rad))
+    def amplitude(self) -> AmplitudeFunction:
+        """Amplitude in any direction, bilinear in amplitude, around the circle in azimuth."""
         table = 10.0 ** (self.relative_db / 20.0)
+        table = np.concatenate((table, table[:, :1]), axis=1)
         columns, rows = self.azimuth_deg.size, self.elevation_deg.size
-        column = ((around - self.azimuth_deg[0]) % 360.0) / (360.0 / columns)
-        row = (up - self.elevation_deg[0]) / (180.0 / (rows - 1))
-        left = np.floor(column).astype(np.int64) % columns
-        low = np.clip(np.floor(row).astype(np.int64), 0, rows - 2)
-        x, y = column - np.floor(column), row - low
-        right = (left + 1) % columns
-        below = table[low, left] * (1.0 - x) + table[low, right] * x
-        above = table[low + 1, left] * (1.0 - x) + table[low + 1, right] * x
-        return np.asarray(below * (1.0 - y) + above * y)
+        first, low_edge = float(self.azimuth_deg[0]), float(self.elevation_deg[0])
+
+        def at(azimuth_rad: NDArray[np.float64], elevation_rad: NDArray[np.float64]) -> NDArray[np.float64]:
+            around, up = np.broadcast_arrays(np.degrees(azimuth_rad), np.degrees(elevation_rad))
+            column = ((around - first) % 360.0) / (360.0 / columns)
+            row = (up - low_edge) / (180.0 / (rows - 1))
+            # What is not a number takes any cell and stays not a number by its place in it.
+            left = np.clip(np.nan_to_num(column), 0, columns - 1).astype(np.intp)
+            low = np.clip(np.nan_to_num(row), 0, rows - 2).astype(np.intp)
+            x, y = column - left, row - low
+            below = table[low, left] * (1.0 - x) + table[low, left + 1] * x
+            above = table[low + 1, left] * (1.0 - x) + table[low + 1, left + 1] * x
+            return np.asarray(below * (1.0 - y) + above * y)
+
+        return at
 
 
 def _size_from_width(azimuth: MeasuredCut, elevation: MeasuredCut, frequency_hz: float) -> float:

@@ -101,6 +101,7 @@ def dish(
         cross_amplitude=cross,
         size_m=diameter_m,
         efficiency=1.0,
+        polarizations=("vertical", "horizontal", "slant+45", "slant-45") if grid else None,
         source="circular aperture with taper; scattered power under the envelope of Rec. ITU-R F.699",
     )
     possible = directivity_dbi(made)

@@ -8,6 +8,14 @@ from numpy.typing import NDArray
 
 from fellspan.antennas.pattern import Pattern, Plane
 
+HALF_POWER_DB = 10.0 * math.log10(2.0)
+
+SIDE_LOBE_RISE_DB = 1.0
+"""What stands less than this above the valley before it is a ripple of measured data and no side lobe."""
+
+SHEER_DB = 10.0
+"""A fall of this much below half power from one sample to the next is the edge of a ground plane, not a beam's flank."""
+
 BACK_CONE_DEG = 30.0
 """Front-to-back ratio counts the highest level within this angle of straight behind (common practice, no source)."""
 
@@ -30,8 +38,9 @@ class Cut:
 class CutFacts:
     """Facts of one cut; None where there is none (an omni's azimuth cut has no half-power width).
 
-    `side_lobe_db` is the first side lobe relative to the peak, at `side_lobe_deg` from it; `half_power_from_deg` and
-    `half_power_to_deg` are where the main lobe falls 3.01 dB below its maximum.
+    `side_lobe_db` is the first side lobe relative to the peak, at `side_lobe_deg` from it, the higher one of both sides;
+    `half_power_from_deg` and `half_power_to_deg` are where the main lobe falls 3.01 dB below its maximum. A beam that a
+    ground plane cuts off before it has fallen so far has no half-power width.
     """
 
     peak_deg: float
@@ -51,7 +60,8 @@ class PatternFacts:
     magnetic: CutFacts
     azimuth: CutFacts
     elevation: CutFacts
-    front_to_back_db: float
+    front_to_back_db: float | None
+    """Peak over the highest level behind; None where there is no front (an omni), or nothing behind (over 100 dB)."""
     cross_polar_db: float | None
     """Co-polar peak over cross-polar level on the boresight, dB; None where there is none to speak of (over 100 dB)."""
     far_field_m: float
@@ -64,7 +74,7 @@ def cut(pattern: Pattern, plane: Plane, *, step_deg: float | None = None) -> Cut
     """
     step = _fine_step_deg(pattern) if step_deg is None else step_deg
     half = math.ceil(180.0 / step)
-    angle = np.linspace(-180.0, 180.0, 2 * half + 1)
+    angle = np.asarray(np.arange(-half, half + 1) * (180.0 / half), dtype=np.float64)
     if plane == "horizontal":
         azimuth, elevation = angle, np.zeros_like(angle)
     else:
@@ -85,6 +95,7 @@ def facts_of(pattern: Pattern) -> PatternFacts:
     azimuth, elevation = cut_facts(horizontal), cut_facts(vertical)
     back = max(_highest_behind(horizontal), _highest_behind(vertical))
     peak = float(np.max(horizontal.gain_dbi)), float(np.max(vertical.gain_dbi))
+    ratio = max(peak) - back
     cross = max(peak) - float(np.asarray(pattern.cross_gain_dbi(0.0, 0.0)))
     upright = pattern.electric_plane == "vertical"
     return PatternFacts(
@@ -93,7 +104,7 @@ def facts_of(pattern: Pattern) -> PatternFacts:
         magnetic=azimuth if upright else elevation,
         azimuth=azimuth,
         elevation=elevation,
-        front_to_back_db=max(peak) - back,
+        front_to_back_db=ratio if HALF_POWER_DB < ratio < 100.0 else None,
         cross_polar_db=cross if cross < 100.0 else None,
         far_field_m=pattern.far_field_m,
     )
@@ -109,7 +120,7 @@ def cut_facts(data: Cut) -> CutFacts:
     left, right = _crossing(angle, gain, top, -1), _crossing(angle, gain, top, 1)
     lobe_db, lobe_deg = _first_side_lobe(angle, gain, top)
     return CutFacts(
-        peak_deg=float(angle[top]),
+        peak_deg=float(angle[top]) + 0.0,
         half_power_deg=None if left is None or right is None else right - left,
         half_power_from_deg=left,
         half_power_to_deg=right,
@@ -125,11 +136,13 @@ def _fine_step_deg(pattern: Pattern) -> float:
 
 def _crossing(angle: NDArray[np.float64], gain: NDArray[np.float64], top: int, side: int) -> float | None:
     run = gain[top::side]
-    below = np.flatnonzero(run < gain[top] - 10.0 * math.log10(2.0))
+    below = np.flatnonzero(run < gain[top] - HALF_POWER_DB)
     if below.size == 0:
         return None
     after = top + side * int(below[0])
     before = after - side
+    if gain[after] < gain[top] - HALF_POWER_DB - SHEER_DB:
+        return None
     low, high = 10.0 ** (gain[after] / 20.0), 10.0 ** (gain[before] / 20.0)
     wanted = 10.0 ** (gain[top] / 20.0) / math.sqrt(2.0)
     return float(angle[before] + (angle[after] - angle[before]) * (high - wanted) / (high - low))
@@ -140,16 +153,18 @@ def _first_side_lobe(
 ) -> tuple[float | None, float | None]:
     found: list[tuple[float, float]] = []
     for side in (1, -1):
+        # Past straight behind the cut goes on at its other end: a lobe there belongs to the other side.
         run, at = gain[top::side], angle[top::side]
-        falls = np.diff(run)
-        rising = np.flatnonzero(falls > 1e-9)
-        if rising.size == 0:
+        left = np.flatnonzero(run < gain[top] - HALF_POWER_DB)
+        if left.size == 0:
             continue
-        valley = int(rising[0])
-        falling = np.flatnonzero(falls[valley:] < -1e-9)
-        if falling.size == 0:
+        run, at = run[left[0] :], at[left[0] :]
+        risen = np.flatnonzero(run > np.minimum.accumulate(run) + SIDE_LOBE_RISE_DB)
+        if risen.size == 0:
             continue
-        lobe = valley + int(falling[0])
+        run, at = run[risen[0] :], at[risen[0] :]
+        fallen = np.flatnonzero(run < np.maximum.accumulate(run) - SIDE_LOBE_RISE_DB)
+        lobe = int(np.argmax(run[: fallen[0]] if fallen.size else run))
         found.append((float(run[lobe] - gain[top]), float(abs(at[lobe] - angle[top]))))
     return max(found) if found else (None, None)
 

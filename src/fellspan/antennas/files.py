@@ -11,8 +11,9 @@ A dense file has the columns azimuth_deg, elevation_deg and gain_dbi or relative
 """
 
 import csv
+import difflib
 import math
-from collections.abc import Iterable, Iterator
+from collections.abc import Callable, Iterable, Iterator
 from dataclasses import dataclass
 from pathlib import Path
 
@@ -22,7 +23,7 @@ from numpy.typing import NDArray
 from fellspan.antennas.cuts import DenseGrid, MeasuredCut, finished, pattern_from_cuts
 from fellspan.antennas.parts import no_cross_polar, wavelength_m
 from fellspan.antennas.pattern import Pattern, Plane
-from fellspan.errors import AntennaError
+from fellspan.errors import AntennaError, QuantityError
 from fellspan.quantities import parse_frequency_hz, parse_gain_dbi, parse_length_m
 
 PLANES = ("azimuth", "elevation", "azimuth-cross", "elevation-cross")
@@ -30,6 +31,14 @@ WIDEST_STEP_DEG = 5.0
 """A wider step between angles of a cut is taken for a gap."""
 
 _HEADER_KEYS = ("name", "frequency", "gain", "electric_plane", "size")
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class _Said:
+    """A header value and the line it stands in."""
+
+    line: int
+    text: str
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -60,18 +69,19 @@ def read_pattern(path: str | Path) -> Pattern:
 def parse_pattern(text: str, *, file: str) -> Pattern:
     """The same from text; `file` is its name in messages."""
     header, table = _split(text, file)
-    frequency = parse_frequency_hz(_needed(header, "frequency", file))
-    name = header.get("name", Path(file).stem)
-    plane: Plane = "horizontal" if header.get("electric_plane", "vertical") == "horizontal" else "vertical"
-    size = parse_length_m(header["size"]) if "size" in header else None
-    reader = csv.reader(row for _, row in table)
+    _needed(header, "frequency", file)
+    frequency = _quantity(header, "frequency", parse_frequency_hz, file)
+    name = header["name"].text if "name" in header else Path(file).stem
+    plane = _electric_plane(header, file)
+    size = _quantity(header, "size", parse_length_m, file) if "size" in header else None
+    reader = csv.reader((row for _, row in table), quoting=csv.QUOTE_NONE)
     lines = [number for number, _ in table]
     columns = [column.strip() for column in next(reader, [])]
     absolute = _gain_column(columns, file)
     rows = list(_rows(reader, lines[1:], columns, file))
     if not rows:
         raise AntennaError(f"{file} holds no gains", "give at least one row for each angle of both planes")
-    stated = parse_gain_dbi(header["gain"]) if "gain" in header else None
+    stated = _quantity(header, "gain", parse_gain_dbi, file) if "gain" in header else None
     if not absolute and stated is None:
         raise AntennaError(f"{file}: gains are relative, but no '# gain: ... dBi' line says relative to what")
     peak = max(row.gain for row in rows if "cross" not in row.plane)
@@ -93,6 +103,8 @@ def parse_pattern(text: str, *, file: str) -> Pattern:
                 raise AntennaError(
                     f"{file} has no rows of the {which} plane", "two cuts are needed: azimuth and elevation"
                 )
+        if ("azimuth-cross" in cuts) != ("elevation-cross" in cuts):
+            raise AntennaError(f"{file} has cross-polar rows of one plane only", "give both cross-polar cuts, or none")
         return pattern_from_cuts(
             name=name,
             frequency_hz=frequency,
@@ -111,7 +123,7 @@ def parse_pattern(text: str, *, file: str) -> Pattern:
             kind="file",
             frequency_hz=frequency,
             peak_gain_dbi=gain,
-            co_amplitude=grid.amplitude,
+            co_amplitude=grid.amplitude(),
             cross_amplitude=no_cross_polar,
             electric_plane=plane,
             size_m=size or wavelength_m(frequency) * 10.0 ** (gain / 20.0) / 3.0,
@@ -122,8 +134,8 @@ def parse_pattern(text: str, *, file: str) -> Pattern:
     )
 
 
-def _split(text: str, file: str) -> tuple[dict[str, str], list[tuple[int, str]]]:
-    header: dict[str, str] = {}
+def _split(text: str, file: str) -> tuple[dict[str, _Said], list[tuple[int, str]]]:
+    header: dict[str, _Said] = {}
     table: list[tuple[int, str]] = []
     for number, line in enumerate(text.splitlines(), start=1):
         if line.startswith("#"):
@@ -132,18 +144,38 @@ def _split(text: str, file: str) -> tuple[dict[str, str], list[tuple[int, str]]]
             if found and key in _HEADER_KEYS:
                 if key in header:
                     raise AntennaError(f"{file}, line {number}: '{key}' is said twice")
-                header[key] = value.strip()
+                header[key] = _Said(line=number, text=value.strip())
+            elif found and (meant := difflib.get_close_matches(key, _HEADER_KEYS, n=1, cutoff=0.8)):
+                raise AntennaError(f"{file}, line {number}: '{key}' is no key; did you mean '{meant[0]}'?")
         elif line.strip():
             table.append((number, line))
     return header, table
 
 
-def _needed(header: dict[str, str], key: str, file: str) -> str:
+def _needed(header: dict[str, _Said], key: str, file: str) -> None:
     if key not in header:
         raise AntennaError(
             f"{file} has no line '# {key}: ...'", f"add it above the table; keys: {', '.join(_HEADER_KEYS)}"
         )
-    return header[key]
+
+
+def _quantity(header: dict[str, _Said], key: str, parse: Callable[[str], float], file: str) -> float:
+    said = header[key]
+    try:
+        return parse(said.text)
+    except QuantityError as problem:
+        raise AntennaError(f"{file}, line {said.line}: {key}: {problem.what}", *problem.details[:2]) from None
+
+
+def _electric_plane(header: dict[str, _Said], file: str) -> Plane:
+    said = header.get("electric_plane")
+    if said is None or said.text == "vertical":
+        return "vertical"
+    if said.text != "horizontal":
+        raise AntennaError(
+            f"{file}, line {said.line}: electric_plane '{said.text}' is neither 'vertical' nor 'horizontal'"
+        )
+    return "horizontal"
 
 
 def _gain_column(columns: list[str], file: str) -> bool:

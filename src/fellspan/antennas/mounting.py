@@ -86,17 +86,38 @@ def off_boresight_deg(
 
 
 def turn_for(pattern: Pattern, polarization: MountedPolarization) -> float:
-    """Turn about the boresight, degrees clockwise, that gives a pattern the polarisation; 0 where its planes stay put."""
+    """Turn about the boresight, degrees clockwise, that gives a pattern the polarisation.
+
+    0 where its planes stay put: a sector for horizontal polarisation hangs upright like one for vertical, fed otherwise,
+    and its data hold as they are. A Yagi or a dish is turned, and its planes with it.
+    """
     if not pattern.turns or polarization == "dual":
         return 0.0
     built = 90.0 if pattern.electric_plane == "vertical" else 0.0
     return built - FIELD_ANGLE_DEG[polarization]
 
 
+def refuse_unfit(pattern: Pattern, mounting: Mounting) -> None:
+    """Refuse a polarisation that the antenna cannot have, however it is mounted.
+
+    Raises
+    ------
+    AntennaError
+        For instance a collinear omni asked for horizontal polarisation: laid down, it is no omni.
+    """
+    possible = pattern.polarizations
+    if possible is not None and mounting.polarization not in possible:
+        raise AntennaError(
+            f"antenna '{pattern.name}' cannot be mounted for polarisation '{mounting.polarization}'",
+            f"it can be {', '.join(possible)}",
+        )
+
+
 def gain_toward_dbi(
     pattern: Pattern, mounting: Mounting, bearing_deg: ArrayLike, elevation_deg: ArrayLike
 ) -> NDArray[np.float64] | float:
-    """Co-polar gain of a mounted antenna toward true bearings and elevations, dBi."""
+    """Co-polar gain of a mounted antenna toward true bearings and elevations, dBi; AntennaError as in `refuse_unfit`."""
+    refuse_unfit(pattern, mounting)
     azimuth, elevation = off_boresight_deg(
         mounting, bearing_deg, elevation_deg, turn_deg=turn_for(pattern, mounting.polarization)
     )
@@ -106,7 +127,8 @@ def gain_toward_dbi(
 def cross_gain_toward_dbi(
     pattern: Pattern, mounting: Mounting, bearing_deg: ArrayLike, elevation_deg: ArrayLike
 ) -> NDArray[np.float64] | float:
-    """Cross-polar gain of a mounted antenna toward true bearings and elevations, dBi."""
+    """Cross-polar gain of a mounted antenna toward true bearings and elevations, dBi; AntennaError as in `refuse_unfit`."""
+    refuse_unfit(pattern, mounting)
     azimuth, elevation = off_boresight_deg(
         mounting, bearing_deg, elevation_deg, turn_deg=turn_for(pattern, mounting.polarization)
     )

@@ -175,7 +175,7 @@ def patch_array(
             cross_amplitude=no_cross_polar,
             size_m=max(across, upright),
             efficiency=efficiency,
-            turns=rows == columns,
+            turns=rows == columns and downtilt_deg == 0.0,
             source=_SOURCE,
         )
     )

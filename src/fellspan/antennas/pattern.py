@@ -12,6 +12,8 @@ from typing import Literal
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
+from fellspan.vocabulary import MountedPolarization
+
 AmplitudeFunction = Callable[[NDArray[np.float64], NDArray[np.float64]], NDArray[np.float64]]
 """(azimuth_rad, elevation_rad), broadcast together -> field amplitude relative to the co-polar peak, >= 0."""
 
@@ -44,6 +46,8 @@ class Pattern:
     turns
         True where a quarter turn about the boresight changes the polarisation and swaps the planes (dish, Yagi, patch);
         False where the planes stay as they are whatever the polarisation (sector and omni data).
+    polarizations
+        How it may be mounted; None for any way. A collinear omni of upright rods is vertical and nothing else.
     source
         Where its shape comes from, in words.
     notes
@@ -60,6 +64,7 @@ class Pattern:
     size_m: float
     efficiency: float | None
     turns: bool = True
+    polarizations: tuple[MountedPolarization, ...] | None = None
     source: str
     notes: tuple[str, ...] = ()
 
@@ -74,7 +79,10 @@ class Pattern:
         return 2.0 * self.size_m**2 * self.frequency_hz / 299_792_458.0
 
     def gain_dbi(self, azimuth_deg: ArrayLike, elevation_deg: ArrayLike) -> NDArray[np.float64] | float:
-        """Co-polar gain, dBi, toward directions off boresight, degrees; scalar in, float out; NaN in, NaN out."""
+        """Co-polar gain, dBi, toward directions off boresight, degrees: azimuth any turn, elevation -90 to 90.
+
+        Arrays broadcast together; scalar in, float out; NaN in, NaN out.
+        """
         return self._gain(self.co_amplitude, azimuth_deg, elevation_deg)
 
     def cross_gain_dbi(self, azimuth_deg: ArrayLike, elevation_deg: ArrayLike) -> NDArray[np.float64] | float:
@@ -88,6 +96,7 @@ class Pattern:
             np.radians(np.asarray(azimuth_deg, dtype=np.float64)),
             np.radians(np.asarray(elevation_deg, dtype=np.float64)),
         )
-        relative = np.maximum(amplitude(azimuth, elevation), SMALLEST_AMPLITUDE)
+        with np.errstate(invalid="ignore"):
+            relative = np.maximum(amplitude(azimuth, elevation), SMALLEST_AMPLITUDE)
         gain: NDArray[np.float64] = self.peak_gain_dbi + 20.0 * np.log10(relative)
         return float(gain) if gain.ndim == 0 else gain

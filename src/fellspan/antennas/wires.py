@@ -17,7 +17,7 @@ def half_wave_field(elevation_rad: NDArray[np.float64]) -> NDArray[np.float64]:
     across = np.cos(elevation_rad)
     along = np.sin(elevation_rad)
     safe = np.where(across > 1e-9, across, 1.0)
-    return np.where(across > 1e-9, np.abs(np.cos(0.5 * math.pi * along)) / safe, 0.0)
+    return np.where(across <= 1e-9, 0.0, np.abs(np.cos(0.5 * math.pi * along)) / safe)
 
 
 def dipole(*, frequency_hz: float, efficiency: float = 1.0, name: str = "half-wave dipole") -> Pattern:
@@ -100,6 +100,7 @@ def collinear(
         size_m=wavelength * ((elements - 1) * spacing_wavelengths + 0.5),
         efficiency=efficiency,
         turns=elements == 1,
+        polarizations=("vertical", "horizontal", "slant+45", "slant-45") if elements == 1 else ("vertical",),
         source="currents of thin half-wave dipoles (antenna textbooks); coupling left out",
     )
     return with_gain_from_directivity(lossless)

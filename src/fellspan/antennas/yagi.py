@@ -147,6 +147,7 @@ def yagi(
             cross_amplitude=no_cross_polar,
             size_m=max(design.boom_m, *design.length_m),
             efficiency=efficiency,
+            polarizations=("vertical", "horizontal", "slant+45", "slant-45"),
             source="moment method, piecewise-sinusoidal modes; designs of NBS Technical Note 688",
         )
     )
