@@ -25,7 +25,7 @@ def results(plan: fellspan.StudyPlan) -> dict[str, LinkResult]:
 def test_the_study_has_all_verdicts_and_no_caution_of_its_own(
     plan: fellspan.StudyPlan, results: dict[str, LinkResult]
 ) -> None:
-    assert len(results) == 8
+    assert len(results) == 10
     assert {result.verdict for result in results.values()} == {"clear", "marginal", "obstructed"}
     assert {result.signal_verdict for result in results.values()} == {"meets", "marginal", "below"}
     assert plan.cautions == ()
@@ -103,3 +103,35 @@ def test_ships_cut_the_harbour_mouth(results: dict[str, LinkResult]) -> None:
     assert result.verdict == "obstructed"
     governing = result.clearance[result.governing]
     assert {obstruction.cause for obstruction in governing.obstructions} == {"ships in the fairway"}
+
+
+def test_one_sector_serves_three_links_each_with_its_own_gain(results: dict[str, LinkResult]) -> None:
+    served = [results[f"Beacon - {name}"] for name in ("Harbour Office", "School", "Southdown Farm")]
+    assert {result.verdict for result in served} == {"clear"}
+    assert {result.signal_verdict for result in served} == {"meets"}
+    sectors = [result.antennas.a for result in served if result.antennas is not None]
+    assert {(sector.name, sector.bearing_deg, sector.tilt_deg) for sector in sectors} == {
+        ("beacon sector", 140.0, -3.5)
+    }
+    harbour, school, farm = (sector.gain_dbi or 0.0 for sector in sectors)
+    peak = sectors[0].peak_gain_dbi or 0.0
+    assert peak - 1.0 < harbour < peak
+    assert peak - 1.0 < school < peak
+    assert harbour != school
+    assert peak - 8.0 < farm < peak - 4.0
+
+
+def test_far_off_its_bearing_the_sector_is_doubted(results: dict[str, LinkResult]) -> None:
+    told = [text for text in results["Beacon - Southdown Farm"].cautions if "beacon sector" in text]
+    assert len(told) == 1
+    assert "degrees right of" in told[0]
+    assert not [text for text in results["Beacon - School"].cautions if "beacon sector" in text]
+
+
+def test_dishes_are_aimed_at_the_other_end(results: dict[str, LinkResult]) -> None:
+    antennas = results["Harbour Office - Cape Light"].antennas
+    assert antennas is not None
+    for end in (antennas.a, antennas.b):
+        assert end.gain_dbi == pytest.approx(end.peak_gain_dbi)
+        assert end.far_field_m is not None
+        assert end.far_field_m < results["Harbour Office - Cape Light"].distance_m

@@ -10,6 +10,12 @@ from fellspan.study.schema import StudyFile, Table
 
 PAGE = Path(__file__).resolve().parents[2] / "docs" / "study-file.md"
 
+PANEL = "# frequency: 5.8 GHz\nplane,angle_deg,gain_dbi\n" + "".join(
+    f"{plane},{angle},{10.0 if abs(angle) < 30 else -10.0}\n"
+    for plane in ("azimuth", "elevation")
+    for angle in range(-180, 180, 5)
+)
+
 
 def tables(model: type[Table] = StudyFile) -> dict[str, type[Table]]:
     from fellspan.study import schema
@@ -28,10 +34,13 @@ def test_the_example_loads(tmp_path: Path) -> None:
     for name in ("terrain/coarse.tif", "terrain/surface.tif", "terrain/trees.tif", "obstacles.csv", "survey-march.csv"):
         (tmp_path / name).touch()
     (tmp_path / "survey-april.csv").touch()
+    (tmp_path / "panel.csv").write_text(PANEL, encoding="utf-8")
+    (tmp_path / "own-antennas.toml").touch()
     study = read_study(example(), path=tmp_path / "study.toml")
     assert [link.name for link in study.links] == ["Harbour - North Light", "Harbour - Quarry"]
     assert study.links[1].a.roof_edge_m == 4.0
     assert study.notes == ()
+    assert all(end.pattern is not None for link in study.links for end in (link.antenna_a, link.antenna_b))
 
 
 @pytest.mark.parametrize("name", sorted(tables()))

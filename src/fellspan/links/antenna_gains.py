@@ -128,13 +128,12 @@ def polarization_loss_db(
         _discrimination_db(antenna, mounting, bearing, tilt)
         for antenna, mounting, bearing, tilt in zip(ends, mountings, bearings_deg, tilts_deg, strict=True)
     ]
-    return float(
-        hung.polarization_loss_db(
-            hung.field_angle_between_deg(*mountings),
-            discrimination_a_db=discrimination[0],
-            discrimination_b_db=discrimination[1],
-        )
+    loss = hung.polarization_loss_db(
+        hung.field_angle_between_deg(*mountings),
+        discrimination_a_db=discrimination[0],
+        discrimination_b_db=discrimination[1],
     )
+    return max(0.0, float(loss))
 
 
 def _discrimination_db(antenna: Antenna, mounting: Mounting, bearing_deg: float, tilt_deg: float) -> float:

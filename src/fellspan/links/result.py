@@ -6,7 +6,7 @@ Numbers that are infinite or undefined are None.
 
 from dataclasses import dataclass
 
-from fellspan.vocabulary import Basis, PathVerdict, SignalVerdict
+from fellspan.vocabulary import Basis, MountedPolarization, PathVerdict, SignalVerdict
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -140,7 +140,7 @@ class AntennaResult:
     tilt_deg: float
     azimuth_off_deg: float
     elevation_off_deg: float
-    polarization: str
+    polarization: MountedPolarization
     azimuth_width_deg: float | None
     elevation_width_deg: float | None
     far_field_m: float | None

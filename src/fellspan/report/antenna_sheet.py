@@ -7,6 +7,7 @@ from fellspan.antennas.facts import CutFacts, PatternFacts, facts_of
 from fellspan.antennas.footprint import Footprint
 from fellspan.antennas.pattern import Pattern
 from fellspan.report import wording
+from fellspan.report.polar_drawing import BACK_FROM_DEG
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -18,7 +19,13 @@ class AntennaSheet:
     size: str | None = None
     mass_kg: float | None = None
     frontal_area_m2: float | None = None
+    note: str = ""
     footprint: Footprint | None = None
+
+    @property
+    def notes(self) -> tuple[str, ...]:
+        """What a person must know about it."""
+        return (*((self.note,) if self.note else ()), *self.pattern.notes)
 
 
 def sheet_of(
@@ -27,6 +34,7 @@ def sheet_of(
     size: str | None = None,
     mass_kg: float | None = None,
     frontal_area_m2: float | None = None,
+    note: str = "",
     footprint: Footprint | None = None,
 ) -> AntennaSheet:
     """The sheet of one pattern."""
@@ -36,6 +44,7 @@ def sheet_of(
         size=size,
         mass_kg=mass_kg,
         frontal_area_m2=frontal_area_m2,
+        note=note,
         footprint=footprint,
     )
 
@@ -58,7 +67,7 @@ def sheet_rows(sheet: AntennaSheet) -> list[tuple[str, str]]:
     if sheet.mass_kg is not None:
         rows.append(("Mass", f"{sheet.mass_kg:.3g} kg, mount not included"))
     if sheet.frontal_area_m2 is not None:
-        rows.append(("Frontal area", f"{sheet.frontal_area_m2:.2g} m²"))
+        rows.append(("Frontal area", f"{sheet.frontal_area_m2:.3g} m²"))
     rows.append(("Pattern from", pattern.source))
     return rows
 
@@ -74,8 +83,8 @@ def _beam(facts: CutFacts) -> str:
 
 
 def _lobe(facts: CutFacts) -> str:
-    if facts.side_lobe_db is None or facts.side_lobe_deg is None:
-        return "no side lobe"
+    if facts.side_lobe_db is None or facts.side_lobe_deg is None or facts.side_lobe_deg > BACK_FROM_DEG:
+        return "no side lobe in this pattern"
     return (
         f"first side lobe {wording.number(facts.side_lobe_db)} dB, {wording.degrees(facts.side_lobe_deg)} from the peak"
     )
@@ -127,7 +136,7 @@ def sheet_dict(sheet: AntennaSheet) -> dict[str, Any]:
         "mass_kg": sheet.mass_kg,
         "frontal_area_m2": sheet.frontal_area_m2,
         "source": pattern.source,
-        "notes": list(pattern.notes),
+        "notes": list(sheet.notes),
         "footprint": None
         if shown is None
         else {

@@ -92,7 +92,11 @@ def draw_footprint(shown: Footprint, *, name: str, uid: str, width: float = WIDT
     return svg.el(
         "svg",
         svg.el("title", svg.text(title), id=f"{uid}-t"),
-        svg.el("desc", svg.text(" ".join(contour_words(contour) for contour in shown.contours)), id=f"{uid}-d"),
+        svg.el(
+            "desc",
+            svg.text(" ".join(contour_words(contour, reach_m=shown.reach_m) for contour in shown.contours)),
+            id=f"{uid}-d",
+        ),
         *parts,
         class_="footprint",
         viewBox=f"0 0 {svg.num(width)} {svg.num(height)}",
@@ -102,10 +106,10 @@ def draw_footprint(shown: Footprint, *, name: str, uid: str, width: float = WIDT
     )
 
 
-def contour_words(contour: Contour) -> str:
+def contour_words(contour: Contour, *, reach_m: float) -> str:
     """One outline in a sentence."""
     near = "the foot of the mast" if contour.near_m is None else wording.distance(contour.near_m)
-    far = "to beyond the drawing" if contour.far_m is None else f"to {wording.distance(contour.far_m)}"
+    far = f"to beyond {wording.distance(reach_m)}" if contour.far_m is None else f"to {wording.distance(contour.far_m)}"
     wide = "" if contour.width_m is None else f", {wording.distance(contour.width_m)} wide"
     return f"{wording.number(contour.level_db, 0)} dB: from {near} {far}{wide}."
 
@@ -121,7 +125,7 @@ def _legend(shown: Footprint, x: float, y: float) -> list[str]:
     for index, contour in enumerate(shown.contours):
         at = y + 24.0 * index
         parts.append(svg.el("path", d=f"M{svg.num(x)},{svg.num(at - 4.5)}h36", class_=f"lens lens-{index}"))
-        parts.append(svg.label(x + 44.0, at, contour_words(contour), class_="lens-text"))
+        parts.append(svg.label(x + 44.0, at, contour_words(contour, reach_m=shown.reach_m), class_="lens-text"))
     return parts
 
 

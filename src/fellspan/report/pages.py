@@ -16,6 +16,7 @@ from fellspan.links.result import CriterionResult, LinkResult, Losses
 from fellspan.planning.plan import LinkPlan, StudyPlan
 from fellspan.report import assets, wording
 from fellspan.report import map_geometry as geometry
+from fellspan.report.antenna_section import antenna_section
 from fellspan.report.map import MapMarkup, link_map
 from fellspan.report.naming import page_name, slug
 from fellspan.report.profile_drawing import draw_profile, exaggeration_words
@@ -132,6 +133,7 @@ def _link_page(plan: StudyPlan, index: int, link: LinkPlan, templates: Environme
             ("B", result.ends.b, result.bearing_ba_deg, result.tilt_ba_deg),
         ],
         losses=_losses(result.losses_db),
+        antennas=antenna_section(link),
         rests_on=[link.profile.sources[i] for i in sorted(set(link.profile.source.tolist())) if i >= 0],
         cautions=(*result.cautions, *link.profile.notes, *plan.cautions),
         safety=SAFETY,
@@ -193,6 +195,7 @@ def _shared(plan: StudyPlan, chart: MapMarkup | None) -> dict[str, Any]:
             "drawing": assets.asset("drawing.css"),
             "page": assets.asset("page.css"),
             "map": assets.asset("map.css"),
+            "polar": assets.asset("polar.css"),
         },
         "js": {
             "leaflet": assets.leaflet_js(),

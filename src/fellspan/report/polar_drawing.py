@@ -5,7 +5,7 @@ Shows cuts and their facts as `antennas` worked them out; the marks stand where 
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import lru_cache
 
 import numpy as np
@@ -19,6 +19,8 @@ from fellspan.report.scales import keep_peaks
 MOST_CURVES = 6
 """More antennas on one diagram cannot be told apart by line style."""
 LETTERS = "ABCDEF"
+BACK_FROM_DEG = 120.0
+"""A lobe further from the peak than this is the back, not a side lobe (common practice, no source)."""
 WIDTH, HEIGHT, CENTRE, RADIUS = 440.0, 452.0, 220.0, 172.0
 _TOP = 228.0
 _RING_DB = 10.0
@@ -33,6 +35,8 @@ class Curve:
     name: str
     data: Cut
     facts: CutFacts
+    other_end_deg: float | None = None
+    """Where the other end of the link lies, off the boresight; None draws no mark."""
 
     @property
     def peak_dbi(self) -> float:
@@ -46,10 +50,20 @@ def _cut_of(pattern: Pattern, plane: Plane) -> tuple[Cut, CutFacts]:
     return data, cut_facts(data)
 
 
-def curve_of(pattern: Pattern, plane: Plane, *, name: str | None = None) -> Curve:
-    """The curve of one antenna in one plane of its own frame."""
-    data, facts = _cut_of(pattern, plane)
-    return Curve(name=name or pattern.name, data=data, facts=facts)
+def curve_of(
+    pattern: Pattern,
+    plane: Plane,
+    *,
+    name: str | None = None,
+    turned: bool = False,
+    other_end_deg: float | None = None,
+) -> Curve:
+    """The curve of one antenna in one plane; `turned` is one that hangs a quarter turn about its boresight."""
+    own: Plane = plane if not turned else "vertical" if plane == "horizontal" else "horizontal"
+    data, facts = _cut_of(pattern, own)
+    if facts.side_lobe_deg is not None and facts.side_lobe_deg > BACK_FROM_DEG:
+        facts = replace(facts, side_lobe_db=None, side_lobe_deg=None)
+    return Curve(name=name or pattern.name, data=replace(data, plane=plane), facts=facts, other_end_deg=other_end_deg)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -103,6 +117,7 @@ def draw_polar(curves: Sequence[Curve], *, uid: str) -> str:
     parts += [_curve(curve, index, rings, plane) for index, curve in enumerate(curves)]
     parts += [_marks(curve, index, rings, plane, label=alone) for index, curve in enumerate(curves)]
     parts.append(_levels(rings, plane))
+    parts += [_other_end(curve, LETTERS[index], plane, alone=alone) for index, curve in enumerate(curves)]
     if not alone:
         parts.append(_badges(curves, rings, plane))
     title = f"{PLANE_WORD[plane].capitalize()} plane of {' and '.join(curve.name for curve in curves)}"
@@ -217,6 +232,18 @@ def _marks(curve: Curve, index: int, rings: Rings, plane: Plane, *, label: bool)
     if label:
         parts.append(_mark_words(curve))
     return svg.el("g", *parts, class_="marks")
+
+
+def _other_end(curve: Curve, letter: str, plane: Plane, *, alone: bool) -> str:
+    """A mark on the outer ring toward the other end of the link."""
+    if curve.other_end_deg is None:
+        return ""
+    inner, outer = (place(curve.other_end_deg, radius, plane) for radius in (RADIUS - 16.0, RADIUS + 5.0))
+    x, y = place(curve.other_end_deg, RADIUS - 28.0, plane)
+    words = "other end" if alone else f"other end of {letter}"
+    return svg.line(*inner, *outer, class_="other-end") + svg.label(
+        x, y + 4.0, words, class_="other-end-text", anchor="middle"
+    )
 
 
 def _side_lobe_place(curve: Curve, rings: Rings, plane: Plane) -> tuple[float, float] | None:
