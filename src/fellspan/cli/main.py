@@ -14,6 +14,7 @@ from typing import Annotated
 import typer
 
 from fellspan import __version__
+from fellspan.cli.antenna_command import antenna_command
 from fellspan.cli.init_command import init_command
 from fellspan.cli.plan_command import plan_command
 from fellspan.cli.sight_command import sight_command
@@ -50,6 +51,7 @@ def _options(
 app.command("sight")(sight_command)
 app.command("plan")(plan_command)
 app.command("terrain")(terrain_command)
+app.command("antenna")(antenna_command)
 app.command("init")(init_command)
 
 
