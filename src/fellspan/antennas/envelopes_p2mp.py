@@ -107,8 +107,8 @@ def f1336_sector_gain_dbi(
     else:
         edge, drop = math.sqrt(1.33 - 0.33 * kv), 3.0
     upright = np.select(
-        [x < edge, x < 4.0, x < 90.0 / height],
-        [-12.0 * x**2, level + 10.0 * np.log10(safe**-1.5 + kv), -lambda_kv - drop - c * np.log10(safe)],
+        [np.isnan(x), x < edge, x < 4.0, x < 90.0 / height],
+        [np.nan, -12.0 * x**2, level + 10.0 * np.log10(safe**-1.5 + kv), -lambda_kv - drop - c * np.log10(safe)],
         back,
     )
     side = across(np.abs(azimuth) / azimuth_width_deg)
