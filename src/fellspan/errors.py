@@ -13,6 +13,7 @@
     |   `-- SurveyFileError                    a survey file has a wrong row
     |-- AntennaError             ValueError    an antenna or a pattern file cannot be used as given
     |-- LinkError                ValueError    a link cannot be assessed as given
+    |-- RuleError                ValueError    a file of power rules has a wrong row, or a rule is not known
     |-- StudyError               ValueError    a study file has a wrong key or value
     |-- UsageError               ValueError    a command lacks an argument it needs
     `-- OutputError              OSError       results cannot be written (exit code 4)
@@ -87,6 +88,10 @@ class AntennaError(FellspanError, ValueError):
 
 class LinkError(FellspanError, ValueError):
     """A link cannot be assessed as it is given."""
+
+
+class RuleError(FellspanError, ValueError):
+    """A file of power rules has a row that cannot be used, or a rule is named that no file holds."""
 
 
 class StudyError(FellspanError, ValueError):
