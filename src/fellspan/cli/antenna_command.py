@@ -161,7 +161,7 @@ def _write(sheets: "list[AntennaSheet]", out: Path) -> Path:
 
 def _listing(known: "Catalogue") -> list[str]:
     rows = [(one.name, one.kind, _band(one), _size(one), f"{one.mass_kg:g} kg") for one in known.antennas]
-    return table(("Name", "Kind", "Band", "Width x height", "Mass"), rows, widths=(31, 7, 18, 15, 7), right=(4,))
+    return table(("Name", "Kind", "Band", "Width x height", "Mass"), rows, widths=(30, 7, 17, 15, 7), right=(4,))
 
 
 def _listing_json(known: "Catalogue") -> str:

@@ -37,6 +37,8 @@ class Curve:
     facts: CutFacts
     other_end_deg: float | None = None
     """Where the other end of the link lies, off the boresight; None draws no mark."""
+    highest_dbi: float | None = None
+    """Gain at the maximum over all directions, which may lie beside this plane."""
 
     @property
     def peak_dbi(self) -> float:
@@ -63,7 +65,13 @@ def curve_of(
     data, facts = _cut_of(pattern, own)
     if facts.side_lobe_deg is not None and facts.side_lobe_deg > BACK_FROM_DEG:
         facts = replace(facts, side_lobe_db=None, side_lobe_deg=None)
-    return Curve(name=name or pattern.name, data=replace(data, plane=plane), facts=facts, other_end_deg=other_end_deg)
+    return Curve(
+        name=name or pattern.name,
+        data=replace(data, plane=plane),
+        facts=facts,
+        other_end_deg=other_end_deg,
+        highest_dbi=pattern.peak_gain_dbi,
+    )
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -110,7 +118,7 @@ def draw_polar(curves: Sequence[Curve], *, uid: str) -> str:
     plane = curves[0].data.plane
     rings = rings_for(curves)
     alone = len(curves) == 1
-    height = HEIGHT if alone else HEIGHT - 34.0
+    height = HEIGHT if alone else HEIGHT - 24.0
     parts = [_grid(rings, plane)]
     if alone:
         parts.append(_cross(curves[0], rings, plane))
@@ -139,6 +147,8 @@ def curve_words(curve: Curve) -> str:
     """One curve in a sentence: the text equivalent of its line."""
     facts = curve.facts
     words = f"{curve.name}: {wording.number(curve.peak_dbi)} dBi"
+    if curve.highest_dbi is not None and curve.highest_dbi - curve.peak_dbi >= 0.1:
+        words += f" in this plane, {wording.number(curve.highest_dbi)} dBi at its peak beside it"
     if facts.half_power_deg is None:
         words += ", the same or nearly so all around"
     else:
