@@ -219,7 +219,7 @@ def dish_distance_to_limit_m(
     with quiet():
         by_far, by_transition = np.sqrt(far / limit), near * near_end / limit
         reached = np.where(limit <= near, np.minimum(by_transition, far_start), 0.0)
-        reached = np.where(np.isnan(limit + near), np.nan, reached)
+        reached = np.where(np.isnan(limit + near + far), np.nan, reached)
         return as_result(np.where(by_far > far_start, by_far, reached))
 
 
