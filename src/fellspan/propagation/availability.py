@@ -24,7 +24,7 @@ FADING_CAUSES: Final[tuple[FadingCause, ...]] = get_args(FadingCause)
 class Outage:
     """Outage of one direction, or of both at once, in one period: all shares in % of that period, one broadcast shape.
 
-    `dominant` is the cause with the greatest share ("none" where there is no outage): a word, or an array of words.
+    `dominant` is the cause with the greatest share ("none" where there is no outage or a share is NaN): a word, or an array.
     `total_percent` is the sum of the shares, at most 100; NaN where a share is.
     """
 
