@@ -135,6 +135,39 @@ def test_writing_and_reading_give_the_same_antennas(tmp_path: Path, antenna: str
     assert (again.links[0].antenna_a.pattern is None) == (study.links[0].antenna_a.pattern is None)
 
 
+def test_a_model_of_the_catalogue_is_made_at_the_frequency_of_the_radio(tmp_path: Path) -> None:
+    study = study_of(tmp_path, '[[antenna]]\nname = "sector"\nmodel = "Dish 0.6 m"\n')
+    antenna = study.links[0].antenna_a
+    assert antenna.pattern is not None
+    assert antenna.pattern.frequency_hz == 5.8e9
+    # 0.55 (pi D / lambda)^2 (antenna textbooks)
+    assert antenna.peak_gain_dbi == pytest.approx(
+        10 * math.log10(0.55 * (math.pi * 0.6 * 5.8e9 / 299792458) ** 2), abs=0.05
+    )
+    assert read_study(study_text(study, folder=tmp_path), path=tmp_path / "study.toml").links == study.links
+
+
+def test_models_of_an_own_catalogue_are_found_and_the_file_is_stamped(tmp_path: Path) -> None:
+    (tmp_path / "own.toml").write_text(
+        '[[antenna]]\nname = "shed dish"\nkind = "dish"\nlowest = "5 GHz"\nhighest = "6 GHz"\ndiameter = "0.75 m"\n'
+        'aperture_efficiency = 0.5\ncross_polar_db = 30.0\nwidth = "0.75 m"\nheight = "0.75 m"\nmass_kg = 12.0\n'
+        "frontal_area_m2 = 0.46\n",
+        encoding="utf-8",
+    )
+    tables = '[antennas]\ncatalogue = "own.toml"\n\n[[antenna]]\nname = "sector"\nmodel = "shed dish"\n'
+    study = study_of(tmp_path, tables)
+    assert study.links[0].antenna_a.pattern is not None
+    assert study.antenna_catalogue == tmp_path / "own.toml"
+    assert [file.name for file in input_files(study) if file.role == "antennas"] == ["own.toml"]
+    again = read_study(study_text(study, folder=tmp_path), path=tmp_path / "study.toml")
+    assert (again.links, again.antenna_catalogue) == (study.links, study.antenna_catalogue)
+
+
+def test_a_catalogue_that_is_not_there_is_named(tmp_path: Path) -> None:
+    tables = '[antennas]\ncatalogue = "own.toml"\n\n[[antenna]]\nname = "sector"\nmodel = "dish 0.6 m"\n'
+    refused(tmp_path, tables, "antennas.catalogue", "there is no file 'own.toml'")
+
+
 def test_a_pattern_file_survives_writing(tmp_path: Path) -> None:
     (tmp_path / "panel.csv").write_text(pattern_csv(), encoding="utf-8")
     study = study_of(tmp_path, '[[antenna]]\nname = "sector"\npattern = "panel.csv"\nbearing = 10\n')
@@ -148,6 +181,8 @@ def test_a_pattern_file_survives_writing(tmp_path: Path) -> None:
     [
         ('gain = "16 dBi"\nmodel = "dish 0.6 m"', ("antenna 'sector'", "gain is given beside model")),
         ('pattern = "a.csv"\nmodel = "dish 0.6 m"', ("model and pattern are both given",)),
+        ('model = "dish 0.61 m"', ("antenna 'sector'", "no antenna 'dish 0.61 m'", "dish 0.6 m")),
+        ('model = "omni 450 MHz, 2 elements"', ("antenna 'sector'", "not for 5.8 GHz", "0.45 to 0.47 GHz")),
         ("elevation_width = 7", ("gain is missing",)),
         ('gain = "16 dBi"\nazimuth_width = 90', ("elevation_width is missing",)),
         ('gain = "16 dBi"\nazimuth_width = 90\nelevation_width = 7', ("antenna 'sector'", "front-to-back")),

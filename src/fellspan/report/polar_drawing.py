@@ -218,12 +218,17 @@ def _cross(curve: Curve, rings: Rings, plane: Plane) -> str:
     return svg.el("path", d=_path(curve.data.angle_deg, gains, rings, plane), class_="pattern-line line-cross")
 
 
+def _edges(curve: Curve) -> list[float]:
+    """The half-power directions, as far as there are any."""
+    edges = curve.facts.half_power_from_deg, curve.facts.half_power_to_deg
+    return [edge for edge in edges if edge is not None]
+
+
 def _marks(curve: Curve, index: int, rings: Rings, plane: Plane, *, label: bool) -> str:
     """Dots at the half-power directions and an open diamond at the first side lobe, with their numbers where there is room."""
-    facts, parts = curve.facts, []
+    parts = []
     half = curve.peak_dbi - 10.0 * math.log10(2.0)
-    edges = [edge for edge in (facts.half_power_from_deg, facts.half_power_to_deg) if edge is not None]
-    for edge in edges:
+    for edge in _edges(curve):
         x, y = place(edge, rings.radius(half), plane)
         if label:
             out = place(edge, RADIUS, plane)
@@ -245,14 +250,17 @@ def _marks(curve: Curve, index: int, rings: Rings, plane: Plane, *, label: bool)
 
 
 def _other_end(curve: Curve, letter: str, plane: Plane, *, alone: bool) -> str:
-    """A mark on the outer ring toward the other end of the link."""
+    """A ray toward the other end of the link; its words stand in a free corner, where they hide no mark."""
     if curve.other_end_deg is None:
         return ""
-    inner, outer = (place(curve.other_end_deg, radius, plane) for radius in (RADIUS - 16.0, RADIUS + 5.0))
-    x, y = place(curve.other_end_deg, RADIUS - 28.0, plane)
+    end = place(curve.other_end_deg, RADIUS + 6.0, plane)
+    left = letter == LETTERS[0]
+    x, anchor = (4.0, "start") if left else (WIDTH - 4.0, "end")
     words = "other end" if alone else f"other end of {letter}"
-    return svg.line(*inner, *outer, class_="other-end") + svg.label(
-        x, y + 4.0, words, class_="other-end-text", anchor="middle"
+    return (
+        svg.line(CENTRE, _TOP, *end, class_="other-end")
+        + svg.label(x, 40.0, words, class_="other-end-text", anchor=anchor)
+        + svg.label(x, 56.0, wording.degrees(curve.other_end_deg, sign=True), class_="other-end-text", anchor=anchor)
     )
 
 
@@ -299,7 +307,7 @@ def _badges(curves: Sequence[Curve], rings: Rings, plane: Plane) -> str:
     """A letter on each curve, where it runs farthest from the others."""
     angles = np.arange(-160.0, 161.0, 4.0)
     radii = np.array([rings.radii(np.interp(angles, curve.data.angle_deg, curve.data.gain_dbi)) for curve in curves])
-    taken: list[tuple[float, float]] = []
+    taken = [place(edge, rings.radius(curve.peak_dbi - 3.01), plane) for curve in curves for edge in _edges(curve)]
     parts = []
     for index in range(len(curves)):
         others = np.delete(radii, index, axis=0)
