@@ -1,20 +1,15 @@
 """What a person must know beside a verdict: ranges left, doubtful data, and work that can hurt someone."""
 
 from collections.abc import Sequence
-from typing import Final
 
 from fellspan.links.criteria import range_cautions
 from fellspan.links.ends import EndLevel, roof_edge_cautions
+from fellspan.links.safety import RAISING
 from fellspan.links.site import Link
 from fellspan.propagation import inverse_k, out_of_range
 from fellspan.propagation.constants import K_FORMULA_HIGH_M
 from fellspan.terrain.profile import PathProfile
 from fellspan.vocabulary import CriteriaPreset
-
-RAISING: Final = (
-    "Height to add means work at height: structure and wind load, power lines, lightning protection, aviation marking and "
-    "planning rules go by local codes and are for licensed people; nobody climbs near a live antenna or line."
-)
 
 
 def cautions(

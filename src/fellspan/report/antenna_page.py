@@ -6,6 +6,7 @@ from dataclasses import dataclass
 from markupsafe import Markup
 
 from fellspan import __version__
+from fellspan.links.safety import ANTENNA_TOPICS, safety_lines
 from fellspan.report import assets, wording
 from fellspan.report.antenna_sheet import PLANE_OF_FIELD, AntennaSheet, sheet_rows
 from fellspan.report.footprint_drawing import NARROW_WIDTH, contour_words, draw_footprint
@@ -78,6 +79,7 @@ def render_antenna_page(sheets: Sequence[AntennaSheet]) -> str:
         planes=_planes(sheets),
         footprints=_footprints(sheets),
         notes=list(dict.fromkeys(note for sheet in sheets for note in sheet.notes)),
+        safety=safety_lines(ANTENNA_TOPICS),
         version=__version__,
         css={name: assets.asset(f"{name}.css") for name in ("drawing", "page", "polar", "antenna")},
     )

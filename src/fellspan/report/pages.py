@@ -13,6 +13,7 @@ from markupsafe import Markup
 from fellspan.geodesy.coordinates import PositionStyle, format_position
 from fellspan.geodesy.position import Position
 from fellspan.links.result import CriterionResult, LinkResult, Losses
+from fellspan.links.safety import safety_lines
 from fellspan.planning.plan import LinkPlan, StudyPlan
 from fellspan.report import assets, wording
 from fellspan.report import map_geometry as geometry
@@ -31,15 +32,6 @@ OVERVIEW = "index.html"
 OVERVIEW_PIXELS, OVERVIEW_BYTES = 1200, 300_000
 LINK_PIXELS, LINK_BYTES = 720, 120_000
 
-SAFETY = (
-    "This plan is a desk study. Verify heights, obstacles and positions on site before anything is ordered or built.",
-    "Work at height, masts, foundations: follow local codes; let qualified and, where required, licensed people do it.",
-    "Keep clear of power lines, above and below ground; ask their operator for the distance to keep.",
-    "Earthing and lightning protection: as local codes and a licensed electrician say.",
-    "Radio-frequency exposure: keep people away from the front of an antenna that transmits; check the limits that apply.",
-    "Structures near airfields or flight routes may need notice, a permit, marking or lights; ask the aviation authority.",
-    "Frequency, power and antenna must be allowed where they are used: check the rules of the regulator.",
-)
 _LOSS_WORDS = {"free_space": "Free-space loss", "diffraction": "Diffraction loss"}
 
 
@@ -136,7 +128,7 @@ def _link_page(plan: StudyPlan, index: int, link: LinkPlan, templates: Environme
         antennas=antenna_section(link),
         rests_on=[link.profile.sources[i] for i in sorted(set(link.profile.source.tolist())) if i >= 0],
         cautions=(*result.cautions, *link.profile.notes, *plan.cautions),
-        safety=SAFETY,
+        safety=safety_lines(),
         quiet=True,
     )
 
