@@ -138,7 +138,14 @@ def test_average_sector_agrees_with_pycraf() -> None:
     antenna, conversions, u = pycraf_parts()
     azimuth, elevation = np.meshgrid(np.arange(-180.0, 181.0, 15.0), np.arange(-85.0, 86.0, 9.0))
     theirs = antenna.imt_advanced_sectoral_avg_sidelobe_pattern_400_to_6000_mhz(
-        azimuth * u.deg, elevation * u.deg, 17.0 * conversions.dBi, 65.0 * u.deg, 9.516 * u.deg, 0.7, 0.8, 0.7
+        azimuth * u.deg,
+        elevation * u.deg,
+        17.0 * conversions.dBi,
+        65.0 * u.deg,
+        9.516 * u.deg,
+        *(k * conversions.dimless for k in (0.7, 0.8, 0.7)),
+        0.0 * u.deg,
+        0.0 * u.deg,
     )
     ours = f1336_sector_gain_dbi(
         azimuth, elevation, peak_gain_dbi=17.0, azimuth_width_deg=65.0, elevation_width_deg=9.516, side_lobes="average"

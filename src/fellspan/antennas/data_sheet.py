@@ -23,8 +23,9 @@ USUAL_EFFICIENCY = 0.8
 HIGHEST_FLOOR_DB = -15.0
 """The side-lobe floor never stands above this, relative to the peak; the efficiency gives way instead."""
 
-_BACK_FROM = math.radians(90.0)
-_BACK_FULL = math.radians(150.0)
+_BACK = math.radians(90.0), math.radians(150.0)
+_NARROW_BACK = math.radians(150.0), math.radians(172.0)
+"""Where the level behind begins and is reached. A back lobe that would take more than a tenth of all power is a narrow one."""
 
 
 def from_data_sheet(
@@ -87,13 +88,15 @@ def from_data_sheet(
     )
     back = 0.0 if front_to_back_db is None else 10.0 ** (-front_to_back_db / 10.0)
     leak = 10.0 ** (-cross_polar_db / 10.0)
+    # The wide back fills about 3 steradians.
+    begins, reached = _NARROW_BACK if 3.0 * back > 0.4 * math.pi / 10.0 ** (gain_dbi / 10.0) else _BACK
 
     def made(floor: float) -> Pattern:
         def power(azimuth_rad: NDArray[np.float64], elevation_rad: NDArray[np.float64]) -> NDArray[np.float64]:
             bell, outside = beam(azimuth_rad, elevation_rad)
             if azimuth_width_deg is None:
                 return bell + floor * outside
-            behind = _smooth((off_boresight_rad(azimuth_rad, elevation_rad) - _BACK_FROM) / (_BACK_FULL - _BACK_FROM))
+            behind = _smooth((off_boresight_rad(azimuth_rad, elevation_rad) - begins) / (reached - begins))
             return (bell + floor * outside) * (1.0 - behind) + back * behind
 
         def co(azimuth_rad: NDArray[np.float64], elevation_rad: NDArray[np.float64]) -> NDArray[np.float64]:
@@ -127,7 +130,7 @@ def from_data_sheet(
             f"antenna '{name}' would radiate more than it gets: {gain_dbi:.2f} dBi, but beams of "
             f"{'360' if azimuth_width_deg is None else format(azimuth_width_deg, 'g')} by {elevation_width_deg:g} degrees "
             f"hold {gain_dbi - surplus:.2f} dBi at most",
-            "check gain and beamwidths against the data sheet",
+            "check gain, beamwidths and front-to-back ratio against the data sheet",
         )
     return replace(pattern, efficiency=min(10.0 ** (surplus / 10.0), 1.0))
 

@@ -10,7 +10,6 @@ from numpy.typing import NDArray
 
 from fellspan.antennas.parts import check, wavelength_m
 from fellspan.antennas.pattern import Pattern
-from fellspan.antennas.sphere import directivity_dbi
 from fellspan.errors import AntennaError
 
 SPILLED_SOLID = 0.12
@@ -104,7 +103,8 @@ def dish(
         polarizations=("vertical", "horizontal", "slant+45", "slant-45") if grid else None,
         source="circular aperture with taper; scattered power under the envelope of Rec. ITU-R F.699",
     )
-    possible = directivity_dbi(made)
+    every_way = _revolved(lambda theta: co(theta, 0.0 * theta) ** 2 + cross(theta, 0.0 * theta) ** 2, size)
+    possible = 10.0 * math.log10(4.0 * math.pi / every_way)
     if gain > possible:
         raise AntennaError(
             f"{made.name}: an aperture efficiency that gives {gain:.2f} dBi is more than its taper and scattering leave, "
