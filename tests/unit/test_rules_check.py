@@ -33,6 +33,7 @@ def test_a_setting_at_the_limit_keeps_it_and_one_over_it_is_a_breach_by_that_muc
     kept = check_power(ROW, **asked(power_dbm=13.0))  # type: ignore[arg-type]
     assert (kept.breach_db, kept.is_breach, kept.eirp_dbm) == (0.0, False, 36.0)
     assert "over it" not in kept.sentence
+    assert check_power(ROW, **asked(power_dbm=3.0)).breach_db == 0.0  # type: ignore[arg-type]
     broken = check_power(ROW, **asked(power_dbm=13.01))  # type: ignore[arg-type]
     assert broken.breach_db == pytest.approx(0.01)
     assert broken.is_breach
