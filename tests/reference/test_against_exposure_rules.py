@@ -3,6 +3,8 @@
 The dish model is from memory of FCC OET Bulletin 65 and is held only to a calculation by hand of the same formulas.
 """
 
+import math
+
 import pytest
 
 from fellspan.propagation import (
@@ -68,4 +70,6 @@ def test_dish() -> None:
     dish = {"power_w": 0.2, "diameter_m": 0.6, "aperture_efficiency": 0.55, "frequency_hz": 5.8e9}
     assert dish_surface_density_w_m2(power_w=0.2, diameter_m=0.6) == pytest.approx(2.829, abs=6e-4)
     assert dish_density_w_m2([0.0, 1.0, 1.741], **dish) == pytest.approx(1.556, abs=6e-4)
+    # The far field starts at 4.179 m, with a gain of 0.55 (pi 0.6 / 0.051688)^2 = 731.44.
+    assert dish_density_w_m2(4.180, **dish) == pytest.approx(0.2 * 731.44 / (4 * math.pi * 4.18**2), abs=6e-4)
     assert dish_density_w_m2(4.178, **dish) == pytest.approx(1.556 * 1.741 / 4.178, abs=6e-4)

@@ -48,6 +48,13 @@ def test_arrays_equal_scalars_whatever_their_length() -> None:
     vapour = np.array([0.0, 20.0])[:, None]
     whole = gas_attenuation_db_per_km(frequency, dry_pressure_hpa=950.0, temperature_k=280.0, vapour_g_m3=vapour)
     assert whole.shape == (3, 2, 3000)
+    pieces = [
+        gas_attenuation_db_per_km(
+            frequency[..., start : start + 500], dry_pressure_hpa=950.0, temperature_k=280.0, vapour_g_m3=vapour
+        )
+        for start in range(0, 3000, 500)
+    ]
+    np.testing.assert_allclose(whole, np.concatenate(pieces, axis=-1), rtol=1e-13)
     for place in ((0, 0, 0), (1, 1, 1500), (2, 1, 2999)):
         one = gas_attenuation_db_per_km(
             float(frequency[place[0], 0, place[2]]),

@@ -4,9 +4,11 @@ import math
 
 import numpy as np
 import pytest
+import scipy.constants
 
 from fellspan.errors import QuantityError
 from fellspan.propagation import (
+    BOLTZMANN_J_K,
     bit_error_ratio,
     es_n0_for_error_ratio_db,
     ieee_80211_sensitivity_dbm,
@@ -19,6 +21,7 @@ from fellspan.propagation import (
 
 
 def test_noise_adds_up() -> None:
+    assert scipy.constants.k == BOLTZMANN_J_K
     assert thermal_noise_dbm(28e6, noise_figure_db=5.0) == pytest.approx(thermal_noise_dbm(28e6) + 5.0)
     assert thermal_noise_dbm(56e6) - thermal_noise_dbm(28e6) == pytest.approx(10 * math.log10(2))
     level = sensitivity_dbm(28e6, noise_figure_db=5.0, required_snr_db=20.0, implementation_loss_db=2.0)
@@ -39,7 +42,7 @@ def test_interferers_add_as_powers() -> None:
 
 def test_no_interference_no_degradation() -> None:
     assert threshold_degradation_db(-math.inf, noise_dbm=-100.0) == 0.0
-    assert threshold_degradation_db(-300.0, noise_dbm=-100.0) == pytest.approx(4.34e-20, rel=1e-2)
+    assert threshold_degradation_db(-300.0, noise_dbm=-100.0) == pytest.approx(4.343e-20, rel=1e-3, abs=0.0)
     steps = threshold_degradation_db(np.linspace(-150, -50, 101), noise_dbm=-100.0)
     assert np.all(np.diff(steps) > 0.0)
     assert steps[-1] == pytest.approx(50.0, abs=1e-3)

@@ -23,6 +23,7 @@ def test_limits() -> None:
     assert woodland_loss_db(0.01, specific_db_per_m=0.5, saturation_db=30.0) == pytest.approx(0.005, rel=1e-3)
     assert woodland_loss_db(10.0, specific_db_per_m=0.5, saturation_db=0.0) == 0.0
     assert woodland_loss_db(10.0, specific_db_per_m=0.0, saturation_db=30.0) == 0.0
+    assert woodland_loss_db(0.0, specific_db_per_m=0.5, saturation_db=0.0) == 0.0
     for wrong in (
         {"specific_db_per_m": -1.0, "saturation_db": 30.0},
         {"specific_db_per_m": 0.5, "saturation_db": math.nan},

@@ -217,8 +217,8 @@ def dish_distance_to_limit_m(
     limit = positive(limit_w_m2)
     near, near_end, far_start, far = _dish(power_w, diameter_m, aperture_efficiency, frequency_hz)
     with quiet():
-        by_far, by_transition = np.sqrt(far / limit), near * near_end / limit
-        reached = np.where(limit <= near, np.minimum(by_transition, far_start), 0.0)
+        by_far = np.sqrt(far / limit)
+        reached = np.where(limit <= near, near * near_end / limit, 0.0)
         reached = np.where(np.isnan(limit + near + far), np.nan, reached)
         return as_result(np.where(by_far > far_start, by_far, reached))
 
