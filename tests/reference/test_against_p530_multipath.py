@@ -18,6 +18,7 @@ from fellspan.propagation import (
     enhancement_exceeded_percent,
     fade_exceeded_percent,
     fade_for_percent_db,
+    frequency_correlation_squared,
     mean_echo_delay_s,
     multipath_activity,
     multipath_clearance_m,
@@ -68,6 +69,19 @@ def test_occurrence_by_edition_19(
     assert multipath_clearance_m(km * 1e3, **heights) == pytest.approx(clearance, abs=6e-4)
     found = multipath_occurrence_percent(km * 1e3, frequency_hz=ghz * 1e9, log_k=log_k, dn75=dn75, **heights)
     assert found == pytest.approx(percent, abs=0.6e-3 if percent > 100 else 0.6e-4)
+
+
+def test_surface_layer_has_its_limit() -> None:
+    # By hand: 10 km, 1 GHz, both antennas 9.98 m above the mean ground at sea level, dN75 50: hc 9, so that the
+    # exponential is 0.3203 and vlim = 50 x 10^1.5 / 24730 = 0.063935 takes over. p0 = 1e-5 x 10^3.51 x 14^0.447 x 10^(0.376 x 0.80138
+    # - 0.00027 x 9.98 + 17.85 x 0.063935).
+    height = 9.0 + 100.0 / 102.0
+    found = multipath_occurrence_percent(
+        10e3, frequency_hz=1e9, a_amsl_m=height, b_amsl_m=height, mean_ground_amsl_m=0.0, log_k=-5.0, dn75=50.0
+    )
+    limit = 50.0 * 10.0**1.5 / 24730.0
+    exponent = 0.376 * math.tanh(138.0 / 125.0) - 0.00027 * height + 17.85 * limit
+    assert found == pytest.approx(1e-5 * 10.0**3.51 * 14.0**0.447 * 10.0**exponent, rel=1e-12)
 
 
 def test_occurrence_by_edition_17() -> None:
@@ -211,6 +225,12 @@ def test_space_diversity_chain() -> None:
     assert outage(flat, selective) == digits(9.8548e-5, 5)
 
 
+def test_frequency_diversity() -> None:
+    # (163) by hand: p0 20 % has eta 0.058060; 50 MHz at 6 GHz make exp(-0.07/0.058060 x 0.05/6) = 0.990003.
+    found = frequency_correlation_squared(50e6, frequency_hz=6e9, occurrence_percent=20.0)
+    assert found == digits(0.990003, 6)
+
+
 @pytest.mark.parametrize(("rw", "ks2"), [(0.3, 0.8238), (0.6, 0.831704), (0.8, 0.858638), (0.97, 0.934655)])
 def test_selective_correlation(rw: float, ks2: float) -> None:
     assert selective_correlation_squared(rw) == pytest.approx(ks2, abs=6e-7)
@@ -220,6 +240,11 @@ def test_cross_polar_outage() -> None:
     # Sections 4.1 and 4.2: p0 10 %, XPDg 30 dB, C0/I 24 dB; 18 GHz, U0 15 dB, C0/I 20 dB, 30 dB of rain at 0.01 %.
     clear = clear_air_cross_polar_outage_percent(10.0, antenna_discrimination_db=30.0, required_ratio_db=24.0)
     assert clear == digits(0.19428, 5)
+    # Two transmitting antennas 500 wavelengths apart: kXP = 1 - 0.3/e = 0.88964 in place of 0.7.
+    apart = clear_air_cross_polar_outage_percent(
+        10.0, antenna_discrimination_db=30.0, required_ratio_db=24.0, transmit_spacing_wavelengths=500.0
+    )
+    assert apart == pytest.approx(0.19428 * 0.88964 / 0.7, rel=1e-4)
     rain = rain_cross_polar_outage_percent(30.0, frequency_hz=18e9, required_ratio_db=20.0)
     assert rain == digits(1.015e-2, 4)
     # U = 52.658, V = 22.167: at 29.735 dB of rain the discrimination is the 20 dB asked for.
