@@ -73,8 +73,8 @@ def test_occurrence_by_edition_19(
 
 def test_surface_layer_has_its_limit() -> None:
     # By hand: 10 km, 1 GHz, both antennas 9.98 m above the mean ground at sea level, dN75 50: hc 9, so that the
-    # exponential is 0.3203 and vlim = 50 x 10^1.5 / 24730 = 0.063935 takes over. p0 = 1e-5 x 10^3.51 x 14^0.447 x 10^(0.376 x 0.80138
-    # - 0.00027 x 9.98 + 17.85 x 0.063935).
+    # exponential is 0.3203 and vlim = 50 x 10^1.5 / 24730 = 0.063935 takes over. p0 = 1e-5 x 10^3.51 x
+    # 14^0.447 x 10^(0.376 x 0.80138 - 0.00027 x 9.98 + 17.85 x 0.063935).
     height = 9.0 + 100.0 / 102.0
     found = multipath_occurrence_percent(
         10e3, frequency_hz=1e9, a_amsl_m=height, b_amsl_m=height, mean_ground_amsl_m=0.0, log_k=-5.0, dn75=50.0
