@@ -115,10 +115,14 @@ def _probes(pattern: Pattern) -> tuple[NDArray[np.float64], NDArray[np.float64]]
     return direction_from_boresight(theta, random.uniform(0.0, 2.0 * math.pi, theta.size))
 
 
-def _measured(exact: NDArray[np.float64], read: NDArray[np.float64]) -> TableError:
+def _measured(
+    exact: NDArray[np.float64], read: NDArray[np.float64], level: NDArray[np.float64] | None = None
+) -> TableError:
+    """Errors sorted by `level`, the amplitude that the cell reaches; None takes the exact amplitude itself."""
+    level = exact if level is None else level
     off = np.abs(20.0 * np.log10(np.maximum(read, SMALLEST_AMPLITUDE) / exact))
-    near = exact >= _FLOOR
-    below = (exact >= 10.0 ** (-FAR_DB / 20.0)) & ~near
+    near = level >= _FLOOR
+    below = (level >= 10.0 ** (-FAR_DB / 20.0)) & ~near
     return TableError(
         near_db=float(np.max(off, where=near, initial=0.0)),
         below_db=float(np.max(off, where=below, initial=0.0)),
@@ -135,7 +139,8 @@ def _line_table(line: Line, low: float, high: float) -> LineTable:
     for cells in _LINE_CELLS:
         fine = line(np.linspace(low, high, 2 * cells + 1))
         nodes, between = fine[::2], fine[1::2]
-        error = _measured(between, 0.5 * (nodes[1:] + nodes[:-1]))
+        # A steep cell counts by its higher end: the midpoint of one that ends in a null lies below all bounds.
+        error = _measured(between, 0.5 * (nodes[1:] + nodes[:-1]), np.maximum(nodes[1:], nodes[:-1]))
         pairs = np.empty(cells + 1, dtype=np.complex64)
         pairs.real, pairs.imag = nodes, np.append(np.diff(nodes), 0.0)
         table = LineTable(pairs=pairs, cells=cells, error=error)
