@@ -7,8 +7,9 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
+from fellspan.errors import LinkError
 from fellspan.links import clearance
-from fellspan.links.criteria import is_extended
+from fellspan.links.criteria import Criterion, is_extended
 
 
 def test_batch_of_paths_equals_a_loop_over_them() -> None:
@@ -135,3 +136,23 @@ def test_smooth_earth_is_extended() -> None:
     clear = 60.0 - clearance.bulge_m(distance, k=0.75)
     radius = clearance.zone_radius_m(distance, frequency_hz=6e9)
     assert is_extended(distance, clearance.normalised_clearance(clear, radius))
+
+
+@pytest.mark.parametrize(
+    ("field", "value"),
+    [
+        ("k", 0.0),
+        ("k", math.nan),
+        ("fraction", math.nan),
+        ("fraction", -0.1),
+        ("fraction", math.inf),
+    ],
+)
+def test_criteria_that_mean_nothing_are_refused(field: str, value: float) -> None:
+    with pytest.raises(LinkError, match=rf"'house rule'.*{field} {value:g}"):
+        Criterion(**({"name": "house rule", "k": 1.0, "fraction": 0.6, "source": "made"} | {field: value}))  # type: ignore[arg-type]
+
+
+def test_criteria_for_flat_and_hollow_earth_are_legal() -> None:
+    for k in (math.inf, -math.inf, -3.0, 0.5):
+        assert Criterion(name="rule", k=k, fraction=0.0, source="made").k == k

@@ -89,7 +89,7 @@ def test_path_from_the_pole() -> None:
     assert longitude == pytest.approx([40.0, 40.0], abs=1e-9)
 
 
-@settings(max_examples=150, deadline=None)
+@settings(max_examples=150, deadline=None, derandomize=True)
 @given(latitudes, longitudes, latitudes, longitudes)
 def test_series_stays_within_a_millimetre(lat_a: float, lon_a: float, lat_b: float, lon_b: float) -> None:
     path = GeodesicPath.between(at(lat_a, lon_a), at(lat_b, lon_b))
@@ -100,7 +100,7 @@ def test_series_stays_within_a_millimetre(lat_a: float, lon_a: float, lat_b: flo
     assert np.all(np.abs(longitude - path.a.longitude_deg) <= 181.0)
 
 
-@settings(max_examples=100, deadline=None)
+@settings(max_examples=100, deadline=None, derandomize=True)
 @given(latitudes, longitudes, latitudes, longitudes)
 def test_distance_is_the_same_from_either_end(lat_a: float, lon_a: float, lat_b: float, lon_b: float) -> None:
     there, back = inverse(at(lat_a, lon_a), at(lat_b, lon_b)), inverse(at(lat_b, lon_b), at(lat_a, lon_a))

@@ -4,12 +4,14 @@ Knows the published rules and common practice, and how to tell an isolated obstr
 terrain, sites or verdicts.
 """
 
+import math
 from dataclasses import dataclass
 from typing import Final
 
 import numpy as np
 from numpy.typing import ArrayLike
 
+from fellspan.errors import LinkError
 from fellspan.propagation.constants import K_FORMULA_LOW_M
 from fellspan.propagation.refraction import k_exceeded_99_9
 from fellspan.propagation.sources import source
@@ -21,6 +23,11 @@ class Criterion:
     """One rule: at this k the ray clears the surface by this fraction of the first Fresnel zone radius.
 
     `k` may be infinite or negative (1/k is what counts).
+
+    Raises
+    ------
+    LinkError
+        k is 0 or no number, or the fraction is no number, infinite or below 0: such a rule would hold anywhere or nowhere.
     """
 
     name: str
@@ -28,6 +35,18 @@ class Criterion:
     fraction: float
     source: str
     note: str = ""
+
+    def __post_init__(self) -> None:
+        if math.isnan(self.k) or self.k == 0.0:
+            raise LinkError(
+                f"criterion '{self.name}': k {self.k:g} must be a number other than 0",
+                "4/3 is usual; inf is a flat Earth, and below 0 the ray is bent more than the Earth",
+            )
+        if not (math.isfinite(self.fraction) and self.fraction >= 0.0):
+            raise LinkError(
+                f"criterion '{self.name}': fraction {self.fraction:g} of the first Fresnel zone must be a number of 0 or more",
+                "0 lets the ray graze; 0.6 and 1 are usual",
+            )
 
 
 P530: Final = source("p530-19-clearance").reference

@@ -116,7 +116,7 @@ class RuleTable(Table):
 
     name: Name = Field(description="How the rule is called on the pages.", examples=["60 % at k = 4/3"])
     k: InverseEarth = Field(description="Effective Earth radius factor; inf is a flat Earth.", examples=[1.333])
-    fraction: Number = Field(ge=-1.0, le=5.0, description="Fraction of the first Fresnel zone radius.", examples=[0.6])
+    fraction: Number = Field(ge=0.0, le=5.0, description="Fraction of the first Fresnel zone radius.", examples=[0.6])
 
 
 class CriteriaTable(Table):
