@@ -17,6 +17,7 @@ from typing import Final
 from filelock import FileLock, Timeout
 
 from fellspan.errors import OutputError
+from fellspan.exports.coordination import coordination_csv
 from fellspan.exports.geo import links_geojson
 from fellspan.exports.kml import links_kml
 from fellspan.exports.results_json import results_text
@@ -72,6 +73,9 @@ def report_files(plan: StudyPlan, *, progress: Progress | None = None) -> dict[s
     }
     for index, linked in enumerate(plan.links):
         makers[profile_name(index, linked.result.name)] = lambda linked=linked: profile_csv(linked)  # type: ignore[misc]
+    coordination = coordination_csv(plan)
+    if coordination is not None:
+        makers["coordination.csv"] = lambda: coordination
     makers[RESULTS] = lambda: results_text(plan)
     pages = len(plan.links) + 1
     total = pages + len(makers)

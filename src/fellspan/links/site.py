@@ -6,8 +6,9 @@ from pathlib import Path
 
 from fellspan.antennas.mounting import Mounting
 from fellspan.antennas.pattern import Pattern
-from fellspan.errors import LinkError
+from fellspan.errors import LinkError, QuantityError
 from fellspan.geodesy.position import Position
+from fellspan.links.emission import class_of_emission, necessary_bandwidth
 from fellspan.vocabulary import HeightReference, MountedPolarization, Polarization
 
 
@@ -86,6 +87,10 @@ class Radio:
         Received level that the wanted modulation needs, dBm; None where unknown: then no margin is computed.
     polarization
         'horizontal' or 'vertical'.
+    bandwidth_hz
+        Width of the channel, Hz, > 0; None where unknown: then no limit of power density is held against it.
+    emission_class
+        Class of emission of the ITU Radio Regulations, Appendix 1, such as 'D7W'; None where unknown.
     """
 
     frequency_hz: float
@@ -93,10 +98,19 @@ class Radio:
     threshold_dbm: float | None = None
     polarization: Polarization = "vertical"
     name: str = "radio"
+    bandwidth_hz: float | None = None
+    emission_class: str | None = None
 
     def __post_init__(self) -> None:
         if not (math.isfinite(self.frequency_hz) and self.frequency_hz > 0.0):
             raise LinkError(f"radio '{self.name}': frequency {self.frequency_hz:g} Hz must be above 0")
+        try:
+            if self.bandwidth_hz is not None:
+                necessary_bandwidth(self.bandwidth_hz)
+            if self.emission_class is not None:
+                class_of_emission(self.emission_class)
+        except QuantityError as error:
+            raise LinkError(f"radio '{self.name}': {error.what}", *error.details) from None
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
