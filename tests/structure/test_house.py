@@ -84,7 +84,9 @@ def test_physics_knows_nothing_of_terrain_files_or_links(base: str) -> None:
 
 def test_architecture_page_lists_the_rooms_in_order() -> None:
     text = (ROOT / "docs" / "architecture.md").read_text(encoding="utf-8")
-    places = [text.index(f"`{room}`") for room in ROOMS if (PACKAGE / room).exists() or (PACKAGE / f"{room}.py").exists()]
+    places = [
+        text.index(f"`{room}`") for room in ROOMS if (PACKAGE / room).exists() or (PACKAGE / f"{room}.py").exists()
+    ]
     assert places == sorted(places)
 
 
