@@ -1,6 +1,6 @@
 """Prepared patterns: the time of one direction as a ratio to one bare NumPy sine of a double, measured in the same run.
 
-25 million directions a second are 40 ns each; the sine of a double of any size takes 17 ns where this was written, so 2.3 sines a
+25 million directions a second are 40 ns each; the sine of a double takes 17 ns where this was written, so that 2.3 sines a
 direction keep the promise there. Processor time of this thread is measured, so that neighbours count little;
 absolute rates are printed (pytest -s).
 """
