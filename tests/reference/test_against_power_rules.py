@@ -214,6 +214,7 @@ def test_rows_that_nobody_read_are_marked_and_give_no_number() -> None:
 
 
 def test_every_row_has_its_citation_and_date_and_is_tested_here() -> None:
+    assert len({row.id for row in load_rules()}) == len(load_rules()) == 26
     for row in load_rules():
         assert row.citation.startswith(("47 CFR 15.", "ETSI EN 30", "ECC/REC", "ERC/REC"))
         assert row.seen

@@ -1,6 +1,6 @@
 """Power rules of licence-exempt bands: what a row allows with this antenna, the highest setting, and by how much it is broken.
 
-The rows are data (`power_rules.toml`, and users' own files). A row that was not read, does not hold here or lacks a figure
+The rows are data (`power_rules_*.toml`, and users' own files). A row that was not read, does not hold here or lacks a figure
 gives no number, only the reason. Knows nothing of terrain, levels or pages. No legal advice.
 """
 
@@ -17,7 +17,7 @@ from fellspan.errors import RuleError
 from fellspan.links.rule_types import PowerRule
 from fellspan.links.rules_file import read_rules, rules_of
 
-SHIPPED: Final = "power_rules.toml"
+SHIPPED: Final = ("power_rules_us.toml", "power_rules_europe.toml")
 SAME_DB: Final = 0.005
 """A setting this little over the highest one is no breach: it is the rounding of what people type."""
 
@@ -78,7 +78,10 @@ def load_rules(path: Path | None = None) -> tuple[PowerRule, ...]:
 
 @lru_cache(maxsize=1)
 def _shipped() -> tuple[PowerRule, ...]:
-    return rules_of(files("fellspan.links").joinpath(SHIPPED).read_text(encoding="utf-8"), name=SHIPPED)
+    room = files("fellspan.links")
+    return tuple(
+        row for name in SHIPPED for row in rules_of(room.joinpath(name).read_text(encoding="utf-8"), name=name)
+    )
 
 
 def find_rule(rule_id: str, rules: tuple[PowerRule, ...] | None = None) -> PowerRule:
