@@ -14,10 +14,11 @@ from numpy.typing import NDArray
 
 from fellspan.geodesy.geodesic import GeodesicPath
 from fellspan.terrain.alongpath import Floats
+from fellspan.terrain.beside import beside
 from fellspan.terrain.cover import NONE, OTHER, Cover, CoverLayer, combine
 from fellspan.terrain.obstacle_tops import EDGE_M, Standing, nodes, stand
-from fellspan.terrain.obstacles import Crossing, ObstacleIndex
-from fellspan.terrain.profile import MEASURED_GROUND, MEASURED_NOTHING, MEASURED_TOP
+from fellspan.terrain.obstacles import Crossing, ObstacleIndex, crossings_of
+from fellspan.terrain.profile import MEASURED_GROUND, MEASURED_NOTHING, MEASURED_TOP, BesidePath
 from fellspan.terrain.sources import CoverSource
 from fellspan.terrain.stack import RasterStack
 from fellspan.terrain.survey_hits import Measured, SurveyHits, SurveyIndex
@@ -109,8 +110,9 @@ class PathWork:
         self.path = path
         self.node_step_m = max(0.5 * cell_m, 0.05)
         self.hits: SurveyHits = layers.survey.on_path(path, name)
+        self._near = layers.obstacles.near(path)
         self.standing: tuple[Standing, ...] = stand(
-            layers.obstacles.crossings(path),
+            crossings_of(self._near, path),
             ground_along=lambda distance_m: self._ground(distance_m).value_m,
             ground_at_supports=self._ground_at_supports,
             step_m=self.node_step_m,
@@ -125,6 +127,16 @@ class PathWork:
         exact = np.concatenate([self.hits.nodes(), *inside])
         beside = np.concatenate([self.hits.edges(), np.array(outside, dtype=np.float64).ravel()])
         return merged(exact, beside, regular_m, self.path.length_m)
+
+    def beside(self) -> tuple[BesidePath, ...]:
+        """The obstacles that the path passes without crossing them."""
+        crossed = {id(standing.crossing.obstacle) for standing in self.standing}
+        return beside(
+            [one for one in self._near if id(one.obstacle) not in crossed],
+            self.path,
+            ground_at=lambda latitude, longitude: self.layers.ground.sample_positions(latitude, longitude).value_m,
+            growth_years=self.layers.growth_years,
+        )
 
     def samples(self, distance_m: Floats) -> Samples:
         """Everything at rising distances, shape (n,)."""

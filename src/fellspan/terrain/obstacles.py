@@ -28,6 +28,9 @@ _LONG_EDGE_DEG = (
 )
 _MANY_VERTICES = 64
 JOIN_M = 1e-3
+BESIDE_M = 60.0
+"""How far from a path obstacles that it does not cross are still looked at, m (our own choice): the first zone is as wide in
+the middle of 25 km at 0.5 GHz."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -73,6 +76,20 @@ class Crossing:
     """Vertices of a span as (along, across), shape (v, 2), m."""
 
 
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class NearShape:
+    """An obstacle near a path with its shape in (along, across) of that path, m.
+
+    `shift` is what its longitudes were moved by, degrees; a large shape is cut to the path's surroundings.
+    """
+
+    obstacle: Obstacle
+    plane: BaseGeometry
+    shift: float
+    crosses: bool
+    """False where its bounds already keep off the path."""
+
+
 class ObstacleIndex:
     """Finds the obstacles that a path crosses, among many."""
 
@@ -80,11 +97,11 @@ class ObstacleIndex:
         self.obstacles = tuple(obstacles)
         self._shapes = np.array([obstacle.shape for obstacle in self.obstacles], dtype=object)
         self._reach = np.array([obstacle.reach_m for obstacle in self.obstacles], dtype=np.float64)
-        boxes = reach_boxes(shapely.bounds(self._shapes).reshape(-1, 4), self._reach)
+        boxes = reach_boxes(shapely.bounds(self._shapes).reshape(-1, 4), self._reach + BESIDE_M)
         self._tree = shapely.STRtree(boxes)
 
-    def crossings(self, path: GeodesicPath) -> list[Crossing]:
-        """Every crossing of the path, sorted by where it begins; exact to 0.1 m on paths of 50 km."""
+    def near(self, path: GeodesicPath) -> list[NearShape]:
+        """The obstacles that the path crosses or may pass within `BESIDE_M`, in the order of their files."""
         if not self.obstacles:
             return []
         indices, shifts = near_path(self._tree, path)
@@ -92,11 +109,18 @@ class ObstacleIndex:
             return []
         shapes = self._cut(self._shapes[indices], shifts, self._reach[indices], path)
         plane = _to_plane(shapes, path)
-        axis = shapely.LineString([(0.0, 0.0), (path.length_m, 0.0)])
-        found: list[Crossing] = []
-        for index, shift, shape in zip(indices, shifts, plane, strict=True):
-            found.extend(_cross(self.obstacles[index], shape, axis, path, shift))
-        return sorted(found, key=lambda crossing: (crossing.from_m, crossing.to_m, crossing.obstacle.name))
+        bounds = shapely.bounds(plane).reshape(-1, 4)
+        with np.errstate(invalid="ignore"):  # NaN: nothing is left of a shape that was cut
+            reach = self._reach[indices] + JOIN_M
+            meets = (bounds[:, 1] <= reach) & (bounds[:, 3] >= -reach)
+        return [
+            NearShape(obstacle=self.obstacles[index], plane=shape, shift=float(shift), crosses=bool(may))
+            for index, shape, shift, may in zip(indices, plane, shifts, meets, strict=True)
+        ]
+
+    def crossings(self, path: GeodesicPath) -> list[Crossing]:
+        """Every crossing of the path, sorted by where it begins; exact to 0.1 m on paths of 50 km."""
+        return crossings_of(self.near(path), path)
 
     def _cut(
         self, shapes: NDArray[np.object_], shifts: Floats, reach_m: Floats, path: GeodesicPath
@@ -114,6 +138,16 @@ class ObstacleIndex:
                 moved[i] = _clipped(shapes[i], frame)
         divided: NDArray[np.object_] = shapely.segmentize(moved, _LONG_EDGE_DEG)
         return divided
+
+
+def crossings_of(near: Sequence[NearShape], path: GeodesicPath) -> list[Crossing]:
+    """The crossings of obstacles near a path, sorted by where they begin."""
+    axis = shapely.LineString([(0.0, 0.0), (path.length_m, 0.0)])
+    found: list[Crossing] = []
+    for one in near:
+        if one.crosses:
+            found.extend(_cross(one.obstacle, one.plane, axis, path, one.shift))
+    return sorted(found, key=lambda crossing: (crossing.from_m, crossing.to_m, crossing.obstacle.name))
 
 
 def _extent_deg(shapes: NDArray[np.object_]) -> Floats:

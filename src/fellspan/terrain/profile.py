@@ -39,6 +39,23 @@ class PathObstacle:
     sigma_m: float = 0.0
 
 
+@dataclass(frozen=True, slots=True, kw_only=True)
+class BesidePath:
+    """An obstacle of the user's file that a path passes but does not cross.
+
+    `at_m` from A is the place where it is nearest in terms of the path's own Fresnel zones, whatever their frequency: where
+    `offset_m`, the distance from the path to its edge, is least against the zone's radius. `top_amsl_m` is its top there, with
+    growth; NaN where the ground it stands on is not known.
+    """
+
+    name: str
+    kind: CoverKind
+    at_m: float
+    offset_m: float
+    top_amsl_m: float
+    source: str
+
+
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class PathProfile:
     """Terrain along the geodesic from `a` to `b`; all arrays have shape (n,) and are read-only.
@@ -85,6 +102,8 @@ class PathProfile:
     """As the rasters or the study state it; None where nobody did."""
     name: str | None = None
     """The path's name, where it was given; survey rows by link and distance go by it."""
+    beside: tuple[BesidePath, ...] = ()
+    """Obstacles passed within `beside.BESIDE_M` but not crossed, by distance from A; the 50 deepest in the zones at most."""
     notes: tuple[str, ...] = ()
     """Things a person must know: seams found, datum unknown, sea filled in ..."""
 

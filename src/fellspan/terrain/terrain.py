@@ -257,6 +257,7 @@ class Terrain:
             ground_is_bare=self._layers.is_bare,
             surface_is_known=bool(samples.known.all()),
             vertical_datum=self._datum,
+            beside=was.beside if was is not None else work.beside(),
             notes=tuple(
                 dict.fromkeys((*self.notes, *kept, *extra, *path_notes(work, samples, refined=was is not None)))
             ),

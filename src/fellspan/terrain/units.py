@@ -65,6 +65,20 @@ def datum_key(name: str) -> str:
     return re.sub(r"[^a-z0-9]", "", bare)
 
 
+_ELLIPSOIDAL_KEYS: Final = frozenset(("wgs84", "wgs843d", "wgs1984", "etrs89", "grs80", "hae", "epsg4979", "epsg4937"))
+"""What people and files write for a vertical datum when they mean the ellipsoid itself."""
+
+
+def is_ellipsoidal(datum: str | None) -> bool:
+    """True where a vertical datum is an ellipsoid, so that heights above it are not heights above sea level.
+
+    None, a datum that nobody states, is not taken for one.
+    """
+    if datum is None:
+        return False
+    return "ellipso" in datum.casefold() or datum_key(datum) in _ELLIPSOIDAL_KEYS
+
+
 def common_datum(stated: dict[str, str | None]) -> str | None:
     """The one vertical datum that several files state, by file name; None where nobody states any.
 
