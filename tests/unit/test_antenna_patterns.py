@@ -12,7 +12,7 @@ from fellspan.antennas.data_sheet import from_data_sheet
 from fellspan.antennas.dishes import dish
 from fellspan.antennas.envelopes import f699_envelope, f699_gain_dbi
 from fellspan.antennas.envelopes_p2mp import f1336_omni_envelope, f1336_sector_envelope
-from fellspan.antennas.facts import cut, cut_facts, facts_of
+from fellspan.antennas.facts import Cut, cut, cut_facts, facts_of
 from fellspan.antennas.parts import no_cross_polar
 from fellspan.antennas.patches import patch, patch_array
 from fellspan.antennas.pattern import Pattern
@@ -209,6 +209,18 @@ def test_side_lobes_survive_one_degree_data_with_noise() -> None:
     assert got.side_lobe_db == pytest.approx(truth.side_lobe_db, abs=0.6)
     assert got.side_lobe_deg == pytest.approx(truth.side_lobe_deg, abs=1.5)  # its top is flat to the noise so far
     assert got.half_power_deg == pytest.approx(truth.half_power_deg, abs=0.4)
+
+
+def test_ripples_on_the_flank_of_a_wide_beam_are_no_side_lobes() -> None:
+    angle = np.arange(-180.0, 181.0)
+    ripple = np.random.default_rng(4).normal(0.0, 0.15, angle.size)
+    gain = np.maximum(-12.0 * (angle / 65.0) ** 2, -24.0) + ripple
+    found = cut_facts(Cut(plane="horizontal", angle_deg=angle, gain_dbi=gain, cross_gain_dbi=gain - 30.0))
+    assert found.side_lobe_db is None
+    gain = np.maximum(gain, -15.0 - 0.5 * np.abs(np.abs(angle) - 110.0) + ripple)
+    found = cut_facts(Cut(plane="horizontal", angle_deg=angle, gain_dbi=gain, cross_gain_dbi=gain - 30.0))
+    assert found.side_lobe_db == pytest.approx(-15.0, abs=0.5)
+    assert found.side_lobe_deg == pytest.approx(110.0, abs=2.0)
 
 
 def test_electrical_downtilt_lowers_the_beam() -> None:
