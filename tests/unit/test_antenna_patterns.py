@@ -220,7 +220,10 @@ def test_ripples_on_the_flank_of_a_wide_beam_are_no_side_lobes() -> None:
     gain = np.maximum(gain, -15.0 - 0.5 * np.abs(np.abs(angle) - 110.0) + ripple)
     found = cut_facts(Cut(plane="horizontal", angle_deg=angle, gain_dbi=gain, cross_gain_dbi=gain - 30.0))
     assert found.side_lobe_db == pytest.approx(-15.0, abs=0.5)
-    assert found.side_lobe_deg == pytest.approx(110.0, abs=2.0)
+    assert abs(found.peak_deg) < 6.0
+    assert found.side_lobe_deg == pytest.approx(
+        110.0, abs=2.0 + abs(found.peak_deg)
+    )  # counted from where the ripple peaks
 
 
 def test_electrical_downtilt_lowers_the_beam() -> None:
