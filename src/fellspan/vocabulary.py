@@ -22,3 +22,23 @@ MountedPolarization = Literal["horizontal", "vertical", "slant+45", "slant-45", 
 """How an antenna is mounted; "dual" carries two at right angles, so the other end always finds its own."""
 CriteriaPreset = Literal["p530-temperate", "p530-tropical", "sixty-percent"]
 LengthUnit = Literal["m", "ft", "us-ft"]
+
+Duplex = Literal["time", "frequency"]
+FeederKind = Literal[
+    "coaxial 6 mm",
+    "coaxial 10 mm",
+    "coaxial 13 mm",
+    "coaxial 22 mm",
+    "coaxial 28 mm",
+    "coaxial 41 mm",
+    "waveguide 6 GHz",
+    "waveguide 8 GHz",
+    "waveguide 11 GHz",
+    "waveguide 13 GHz",
+    "waveguide 18 GHz",
+    "waveguide 23 GHz",
+]
+"""Coaxial cables by their outer diameter, waveguides by their band."""
+
+TreeWay = Literal["no trees", "through", "over"]
+"""Which way past trees costs less, and so counts: through them, or over them as if they were solid."""

@@ -6,6 +6,7 @@ Numbers that are infinite or undefined are None.
 
 from dataclasses import dataclass
 
+from fellspan.links.signal_result import NOT_COMPUTED, Periods, SignalResult
 from fellspan.vocabulary import Basis, MountedPolarization, PathVerdict, SignalVerdict
 
 
@@ -117,11 +118,24 @@ class AtEnds:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Losses:
-    """Losses of the path, dB, not less than 0; None where not computed. Later kinds are added as keys."""
+    """Losses between the two radios, dB, not less than 0; None where not computed. Later kinds are added as keys.
+
+    In the clear-air level: free space, diffraction, vegetation, gases, polarization, and of both ends together pointing,
+    feeders and branching; at the frequency that A transmits on. Not in it: `rain_001`, exceeded for 0.01 % of the year, and
+    the radomes.
+    """
 
     free_space: float
     diffraction: float
     polarization: float | None = None
+    vegetation: float | None = None
+    gases: float | None = None
+    feeders: float | None = None
+    branching: float | None = None
+    pointing: float | None = None
+    rain_001: float | None = None
+    radomes_wet: float | None = None
+    radomes_iced: float | None = None
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -193,3 +207,9 @@ class LinkResult:
     sources: tuple[str, ...]
     vertical_datum: str | None
     antennas: AntennasResult | None = None
+    modulation: str | None = None
+    """Name of the wanted modulation, to which margin and availability belong; None where the radio lists none."""
+    availability_percent: Periods = NOT_COMPUTED
+    """Of the wanted modulation, both ways at once."""
+    signal: SignalResult | None = None
+    """None in results of versions that did not compute it."""

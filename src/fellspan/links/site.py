@@ -6,10 +6,63 @@ from pathlib import Path
 
 from fellspan.antennas.mounting import Mounting
 from fellspan.antennas.pattern import Pattern
-from fellspan.errors import LinkError, QuantityError
+from fellspan.errors import LinkError
 from fellspan.geodesy.position import Position
-from fellspan.links.emission import class_of_emission, necessary_bandwidth
-from fellspan.vocabulary import HeightReference, MountedPolarization, Polarization
+from fellspan.links.feeders import Feeder
+from fellspan.links.radio import CoChannel, Modulation, Radio, Signature
+from fellspan.vocabulary import HeightReference, MountedPolarization
+
+__all__ = [
+    "Aim",
+    "Antenna",
+    "Channel",
+    "CoChannel",
+    "Diversity",
+    "Feeder",
+    "Link",
+    "Modulation",
+    "NoiseFloor",
+    "PatternOrigin",
+    "Radio",
+    "Signature",
+    "Site",
+    "Sway",
+]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class NoiseFloor:
+    """What a site survey heard at a receiver: noise and interference from others.
+
+    Parameters
+    ----------
+    level_dbm
+        Power in `bandwidth_hz`, dBm, at the port of the radio with the antenna of the link; taken as coming on top of the
+        receiver's own noise.
+    bandwidth_hz
+        Width that it was measured in, Hz; the channel's where not stated.
+    bearing_deg, width_deg
+        The sector that the antenna looked into: true bearing of its middle and its width, degrees; all around where not
+        stated.
+    low_hz, high_hz
+        The part of the band that it holds for; all of it where not stated.
+    """
+
+    level_dbm: float
+    bandwidth_hz: float | None = None
+    bearing_deg: float | None = None
+    width_deg: float = 90.0
+    low_hz: float | None = None
+    high_hz: float | None = None
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Channel:
+    """A stretch of spectrum that a site cannot use, Hz, and why."""
+
+    low_hz: float
+    high_hz: float
+    reason: str = ""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -51,6 +104,8 @@ class Site:
     vertical_datum: str | None = None
     roof_edge_m: float | None = None
     parapet_m: float | None = None
+    noise_floors: tuple[NoiseFloor, ...] = ()
+    unusable_channels: tuple[Channel, ...] = ()
 
     def __post_init__(self) -> None:
         if not math.isfinite(self.height_m) or (self.height_reference != "sea" and self.height_m < 0.0):
@@ -71,46 +126,6 @@ class Site:
                 f"site '{self.name}': parapet {self.parapet_m:g} m given without the distance to the roof edge",
                 "add the distance from the antenna to the edge in the direction of the link",
             )
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Radio:
-    """The radio at both ends of a link.
-
-    Parameters
-    ----------
-    frequency_hz
-        Carrier, Hz, > 0.
-    power_dbm
-        Transmit power at the antenna port, dBm; None where unknown: then no level is computed.
-    threshold_dbm
-        Received level that the wanted modulation needs, dBm; None where unknown: then no margin is computed.
-    polarization
-        'horizontal' or 'vertical'.
-    bandwidth_hz
-        Width of the channel, Hz, > 0; None where unknown: then no limit of power density is held against it.
-    emission_class
-        Class of emission of the ITU Radio Regulations, Appendix 1, such as 'D7W'; None where unknown.
-    """
-
-    frequency_hz: float
-    power_dbm: float | None = None
-    threshold_dbm: float | None = None
-    polarization: Polarization = "vertical"
-    name: str = "radio"
-    bandwidth_hz: float | None = None
-    emission_class: str | None = None
-
-    def __post_init__(self) -> None:
-        if not (math.isfinite(self.frequency_hz) and self.frequency_hz > 0.0):
-            raise LinkError(f"radio '{self.name}': frequency {self.frequency_hz:g} Hz must be above 0")
-        try:
-            if self.bandwidth_hz is not None:
-                necessary_bandwidth(self.bandwidth_hz)
-            if self.emission_class is not None:
-                class_of_emission(self.emission_class)
-        except QuantityError as error:
-            raise LinkError(f"radio '{self.name}': {error.what}", *error.details) from None
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -140,6 +155,32 @@ class PatternOrigin:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class Sway:
+    """How far an antenna is off its aim: steady errors, and the standard deviation of mast twist and sway, degrees.
+
+    What it costs follows from the pattern; for an antenna of which only the gain is known it is not computed.
+    """
+
+    azimuth_sigma_deg: float = 0.0
+    elevation_sigma_deg: float = 0.0
+    azimuth_offset_deg: float = 0.0
+    elevation_offset_deg: float = 0.0
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Diversity:
+    """A second receiving antenna on the same mast.
+
+    `spacing_m` is the height between the two, m; `gain_dbi` and `feeder_loss_db` are those of the second one, None where they
+    are as the first one's.
+    """
+
+    spacing_m: float
+    gain_dbi: float | None = None
+    feeder_loss_db: float | None = None
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class Antenna:
     """The antenna at one end.
 
@@ -148,7 +189,18 @@ class Antenna:
     gain_dbi
         Peak gain, dBi; None where unknown, or where the pattern says it.
     feeder_loss_db
-        Of cable and connectors, dB.
+        Of cable and connectors, dB; with `feeder`, of what comes on top of that run.
+    feeder
+        A run of line of a known class and length; its loss is added.
+    branching_loss_db
+        Of filters, circulators and couplers between radio and feeder, dB.
+    radome_wet_db, radome_iced_db
+        What a wet and an iced radome cost, dB, apart from the rain on the path; the wet one counts while it rains, the iced one
+        is said beside the result.
+    sway
+        Errors of aim and sway; None counts nothing.
+    diversity
+        A second receiving antenna; None where there is one only.
     pattern
         Gain in every direction, at the frequency of the radio; None where only the gain is known, which then holds in any
         direction.
@@ -164,6 +216,12 @@ class Antenna:
     pattern: Pattern | None = field(default=None, compare=False)
     mounting: Mounting | Aim | None = None
     origin: PatternOrigin | None = None
+    feeder: Feeder | None = None
+    branching_loss_db: float = 0.0
+    radome_wet_db: float = 0.0
+    radome_iced_db: float = 0.0
+    sway: Sway | None = None
+    diversity: Diversity | None = None
 
     @property
     def peak_gain_dbi(self) -> float | None:
@@ -173,7 +231,11 @@ class Antenna:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Link:
-    """Two sites and what joins them; `wanted_margin_db` is the margin the signal verdict asks for."""
+    """Two sites and what joins them.
+
+    `wanted_margin_db` is the margin that the signal verdict asks for; `target_availability_percent`, above 0 and below 100, the
+    share of an average year for which each direction must carry the wanted modulation, None where nobody asks for one.
+    """
 
     name: str
     a: Site
@@ -182,3 +244,4 @@ class Link:
     antenna_a: Antenna = field(default_factory=Antenna)
     antenna_b: Antenna = field(default_factory=Antenna)
     wanted_margin_db: float = 10.0
+    target_availability_percent: float | None = None

@@ -4,8 +4,10 @@ import datetime as dt
 from dataclasses import dataclass, field
 from pathlib import Path
 
+from fellspan.climate.given import GivenClimate
 from fellspan.links.criteria import Criterion
 from fellspan.links.site import Link
+from fellspan.propagation.rain import RainEdition, RainReading
 from fellspan.terrain.sources import CoverSource, ObstacleSource, RasterSource, SurveySource
 from fellspan.vocabulary import CriteriaPreset, GapPolicy
 
@@ -49,3 +51,8 @@ class Study:
     """Antennas of the user's own, which models may name."""
     notes: tuple[str, ...] = field(default=())
     """Warnings found while reading, such as coarse coordinates."""
+    climate: GivenClimate = field(default_factory=GivenClimate)
+    """What the study says of the climate; the rest comes from maps, where they are installed."""
+    rain_edition: RainEdition = "19"
+    rain_reading: RainReading = "A"
+    """Edition of Rec. ITU-R P.530 for rain, and the reading of its equation (36)."""
