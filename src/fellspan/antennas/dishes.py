@@ -168,7 +168,9 @@ def _lambda(order: int, u: NDArray[np.float64]) -> NDArray[np.float64]:
 def _scattered(theta_rad: NDArray[np.float64], *, beam_rad: float, behind: float) -> NDArray[np.float64]:
     edge = math.radians(48.0)
     fall = (beam_rad / np.clip(theta_rad, beam_rad, max(edge, beam_rad))) ** 2.5
-    return fall * np.where(theta_rad > 0.5 * math.pi, behind, 1.0)
+    # A grid's rear is stronger; the change takes 20 degrees around the rim's plane.
+    past = np.clip((theta_rad - math.radians(80.0)) / math.radians(20.0), 0.0, 1.0)
+    return np.asarray(fall * (1.0 + (behind - 1.0) * past * past * (3.0 - 2.0 * past)))
 
 
 def _scattered_across(theta_rad: NDArray[np.float64], *, beam_rad: float, behind: float) -> NDArray[np.float64]:
