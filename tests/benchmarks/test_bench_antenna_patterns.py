@@ -58,7 +58,7 @@ def test_a_direction_costs_few_sines(case: str) -> None:
     ready = prepare(CASES[case]())
     sine = quickest(lambda: np.sin(azimuth, out=out))
     read = quickest(lambda: ready.gain_dbi(azimuth, elevation, out=out))
-    print(  # noqa: T201
+    print(
         f"\n{case}: {ready.form}, {DIRECTIONS / read / 1e6:.0f} million directions a second, {read / sine:.2f} sines each"
     )
     assert ready.form != "exact"
