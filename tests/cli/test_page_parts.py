@@ -59,6 +59,9 @@ def test_a_probability_never_reads_as_certainty() -> None:
 def test_an_end_that_cannot_clear_it_is_said_so() -> None:
     text = figures.extra_height(ExtraHeight(a=7.21, b=None, both=4.0))
     assert text == "A alone 7.3 m, B alone cannot, or both 4.0 m each"
+    assert figures.extra_height(ExtraHeight(a=11_273.4, b=1.742, both=100.1)) == (
+        "A alone not practical, B alone 1.8 m, or both not practical"
+    )
 
 
 def test_small_phrases() -> None:

@@ -6,6 +6,7 @@ import numpy as np
 import pytest
 from synthetic_plans import HOSTILE, TOLMERA, make_link, shifted
 
+from fellspan.links.words import spare_m
 from fellspan.report.profile_drawing import draw_profile, profile_text
 from fellspan.report.scales import Wanted, keep_peaks, nice_ticks, place_labels
 from fellspan.report.section import FULL, NARROW, PANEL, prepare
@@ -70,7 +71,9 @@ def test_every_text_is_escaped_and_ids_are_the_callers():
 def test_words_say_what_the_drawing_shows(spiky):
     said = profile_text(spiky)
     item = spiky.result.clearance[spiky.result.governing]
-    assert f"{item.required_m - item.clearance_m:.1f} m short of the required clearance" in said
+    missing = -spare_m(item, length_m=spiky.result.distance_m)
+    assert missing >= item.required_m - item.clearance_m
+    assert f"{missing:.1f} m short of the required clearance" in said
     assert "Obstructed" in said
 
 

@@ -61,7 +61,8 @@ def test_cause_by_name(profile: PathProfile, heights: float, cause: str) -> None
 def test_obstructed_says_what_cuts_where_and_what_height_clears_it() -> None:
     result = _result(profile_of(10e3, ridge(60.0)), 20.0, 20.0)
     assert result.verdict == "obstructed"
-    assert result.reasons[0] == "Obstructed: ground at 60 m cuts the sight line by 41.4 m at 4.20 km from A."
+    # 60 m - 20 m + a bulge of 4.2 km * 5.8 km / (2 * 4/3 * 6371 km) = 41.43 m, rounded up: it is missing
+    assert result.reasons[0] == "Obstructed: ground at 60 m cuts the sight line by 41.5 m at 4.20 km from A."
     extra = result.clearance[0].extra_height_m
     assert extra.both is not None
     assert result.reasons[2] == f"Raise both by {np.ceil(extra.both):.0f} m, to be clear with 90 % confidence."

@@ -2,17 +2,18 @@
 
 import math
 
+from fellspan.links import words
 from fellspan.links.result import CriterionResult, ExtraHeight
 
 
 def up(value_m: float) -> str:
     """Metres to one decimal, rounded up: for what is missing."""
-    return f"{math.ceil(value_m * 10 - 1e-6) / 10:.1f} m"
+    return f"{words.up_m(value_m):.1f} m"
 
 
 def down(value_m: float) -> str:
     """Metres to one decimal, rounded down: for what there is."""
-    return f"{math.floor(value_m * 10 + 1e-6) / 10:.1f} m"
+    return f"{words.down_m(value_m):.1f} m"
 
 
 def distance(value_m: float) -> str:
@@ -48,24 +49,21 @@ def percent(value: float) -> str:
 
 def zone_part(fraction: float) -> str:
     """A part of the first Fresnel zone; hundredths where they can matter."""
-    return f"{fraction:.2f}" if abs(fraction) < 100 else f"{fraction:.0f}"
+    return f"{words.zone_share(fraction):.2f}" if abs(fraction) < 100 else f"{fraction:.0f}"
 
 
 def by_how_much(criterion: CriterionResult) -> str:
-    """What is missing, else the clearance there is beside the one required."""
+    """The greatest height missing, else what is to spare at the governing point."""
     if not criterion.met:
         return f"{up(criterion.shortfall_m)} short"
-    return f"{down(criterion.clearance_m)}, needs {up(criterion.required_m)}"
+    return f"{down(max(criterion.clearance_m - criterion.required_m, 0.0))} to spare"
 
 
 def extra_height(extra: ExtraHeight) -> str:
-    """Which height clears a criterion; an end that cannot do it alone is said so."""
-    ends = [
-        f"{label} {up(value)}" if value is not None else f"{label} cannot"
-        for label, value in (("A alone", extra.a), ("B alone", extra.b))
-    ]
-    both = f"or both {up(extra.both)} each" if extra.both is not None else "both alike cannot"
-    return ", ".join([*ends, both])
+    """Which height clears a criterion; an end that cannot do it alone, or only with a tower, is said so."""
+    both = words.to_build(extra.both)
+    each = " each" if both.endswith(" m") else ""
+    return f"A alone {words.to_build(extra.a)}, B alone {words.to_build(extra.b)}, or both {both}{each}"
 
 
 def decibels(value: float | None, unit: str = "dB") -> str:

@@ -68,8 +68,11 @@ def _governing(result: LinkResult) -> list[str]:
     if at_m == criterion.worst_at_m:
         where += f", at {figures.position(criterion.latitude_deg, criterion.longitude_deg)}"
     if criterion.met:
-        spare = f"{figures.down(criterion.clearance_m)} clear where {figures.up(criterion.required_m)} is required"
-        return ["", *labelled("Tightest", f"{criterion.cause}: {spare}"), *labelled("Where", where)]
+        return [
+            "",
+            *labelled("Tightest", f"{criterion.cause}: {figures.by_how_much(criterion)}"),
+            *labelled("Where", where),
+        ]
     return [
         "",
         *labelled("By how much", f"{figures.up(criterion.shortfall_m)} short ({criterion.criterion})"),

@@ -7,7 +7,8 @@ import xml.etree.ElementTree as ET
 
 from fellspan.exports.places import Place, path_places, places, split_at_antimeridian
 from fellspan.exports.text import xml_text
-from fellspan.links.result import EndResult
+from fellspan.links import words
+from fellspan.links.result import EndResult, LinkResult
 from fellspan.planning.plan import LinkPlan, StudyPlan
 from fellspan.vocabulary import PathVerdict
 
@@ -88,12 +89,18 @@ def _line(mark: ET.Element, vertices: tuple[Place, ...]) -> None:
 
 
 def _end(folder: ET.Element, end: EndResult) -> None:
-    words = f"antenna {end.antenna_agl_m:.1f} m above ground, {end.antenna_amsl_m:.1f} m above sea level"
-    mark = _placemark(folder, end.site, words)
+    heights = f"antenna {end.antenna_agl_m:.1f} m above ground, {end.antenna_amsl_m:.1f} m above sea level"
+    mark = _placemark(folder, end.site, heights)
     point = _child(mark, "Point")
     _child(point, "extrude", "1")
     _child(point, "altitudeMode", "absolute")
     _child(point, "coordinates", f"{end.longitude_deg:.7f},{end.latitude_deg:.7f},{end.antenna_amsl_m:.2f}")
+
+
+def _state(result: LinkResult) -> str:
+    """The state in words, and what it rests on where the state does not say it."""
+    state = words.state_of(result)
+    return words.STATE_WORDS[state] if state == "clear-bare" else f"{words.STATE_WORDS[state]}, {result.basis}"
 
 
 def _link_folder(document: ET.Element, linked: LinkPlan) -> None:
@@ -101,13 +108,13 @@ def _link_folder(document: ET.Element, linked: LinkPlan) -> None:
     governing = result.clearance[result.governing]
     folder = _child(document, "Folder")
     _child(folder, "name", result.name)
-    _child(folder, "description", "\n".join((f"{result.verdict}, {result.basis}", *result.reasons)))
+    _child(folder, "description", "\n".join((_state(result), *result.reasons)))
     _end(folder, result.ends.a)
     _end(folder, result.ends.b)
     ray = _placemark(
         folder,
         f"{result.name}: ray",
-        f"{result.verdict}, {result.basis}; drawn as it runs for {governing.criterion}",
+        f"{_state(result)}; drawn as it runs for {governing.criterion}",
         result.verdict,
     )
     _line(ray, path_places(linked))
@@ -115,17 +122,18 @@ def _link_folder(document: ET.Element, linked: LinkPlan) -> None:
         cut = _placemark(
             folder,
             obstruction.cause,
-            f"{obstruction.shortfall_m:.1f} m short of the required clearance at {obstruction.worst_at_m / 1000:.3f} km from "
+            f"{words.up_m(obstruction.shortfall_m):.1f} m short of the required clearance at "
+            f"{obstruction.worst_at_m / 1000:.3f} km from "
             f"{result.a}; {obstruction.from_m / 1000:.3f} to {obstruction.to_m / 1000:.3f} km ({governing.criterion})",
             "cut",
         )
         _line(cut, places(linked, obstruction.from_m, obstruction.to_m))
     for criterion in result.clearance:
-        spare = criterion.clearance_m - criterion.required_m
-        words = f"{spare:.1f} m to spare" if spare >= 0.0 else f"{-spare:.1f} m short of the required clearance"
+        spare = words.spare_m(criterion, length_m=result.distance_m)
+        said = f"{spare:.1f} m to spare" if spare >= 0.0 else f"{-spare:.1f} m short of the required clearance"
         mark = _placemark(
             folder,
             f"Governing point, {criterion.criterion}",
-            f"{criterion.cause} at {criterion.worst_at_m / 1000:.3f} km from {result.a}: {words}",
+            f"{criterion.cause} at {criterion.worst_at_m / 1000:.3f} km from {result.a}: {said}",
         )
         _point(mark, criterion.longitude_deg, criterion.latitude_deg, criterion.surface_m)

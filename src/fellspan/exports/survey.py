@@ -10,6 +10,7 @@ from dataclasses import dataclass, replace
 from fellspan.exports.places import nearest, position_at
 from fellspan.exports.tables import MEASURED_WORDS
 from fellspan.exports.text import Cell, csv_text, rounded, xml_text
+from fellspan.links import words
 from fellspan.planning.plan import LinkPlan, StudyPlan
 
 GPX_NAMESPACE = "http://www.topografix.com/GPX/1/1"
@@ -123,7 +124,7 @@ def _words(point: SurveyPoint) -> str:
     if point.highest_top_m is None or point.spare_m is None:
         return head
     known = f"now taken as {point.top_m:.1f} m, standard error {point.sigma_m:.1f} m, measured: {point.measured}"
-    return f"{head} Nothing may stand above {point.highest_top_m:.1f} m above sea level here ({known})."
+    return f"{head} Nothing may stand above {words.down_m(point.highest_top_m):.1f} m above sea level here ({known})."
 
 
 def _along(linked: LinkPlan) -> list[SurveyPoint]:

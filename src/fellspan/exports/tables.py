@@ -5,6 +5,7 @@ Columns carry their unit. Text from users cannot start a formula; numbers stay n
 
 from fellspan.exports.text import Cell, csv_text, rounded
 from fellspan.links.result import CriterionResult, EndResult, LinkResult
+from fellspan.links.words import STATE_WORDS, state_of
 from fellspan.planning.plan import LinkFailure, LinkPlan, StudyPlan
 from fellspan.report.naming import page_name, slug
 from fellspan.vocabulary import COVER_KINDS
@@ -17,6 +18,7 @@ LINK_COLUMNS = (
     "a",
     "b",
     "verdict",
+    "state",
     "signal_verdict",
     "basis",
     "confidence",
@@ -164,6 +166,7 @@ def _link_row(result: LinkResult, page: str) -> list[Cell]:
         result.a,
         result.b,
         result.verdict,
+        STATE_WORDS[state_of(result)],
         result.signal_verdict,
         result.basis,
         rounded(result.confidence, 4),
@@ -196,6 +199,6 @@ def _link_row(result: LinkResult, page: str) -> list[Cell]:
 def _failure_row(failure: LinkFailure) -> list[Cell]:
     row: dict[str, Cell] = dict.fromkeys(LINK_COLUMNS)
     link = failure.link
-    row |= {"name": link.name, "a": link.a.name, "b": link.b.name, "verdict": NOT_ASSESSED}
+    row |= {"name": link.name, "a": link.a.name, "b": link.b.name, "verdict": NOT_ASSESSED, "state": NOT_ASSESSED}
     row |= {"frequency_hz": link.radio.frequency_hz, "reason": str(failure.error)}
     return list(row.values())

@@ -11,10 +11,11 @@ import numpy as np
 
 from fellspan.links import clearance
 from fellspan.links.causes import cause_at
-from fellspan.links.evaluate import spare_m
+from fellspan.links.doubts import Doubt
 from fellspan.links.levels import PathLevels
 from fellspan.links.own_building import ROOF_SOURCE, Standing
 from fellspan.links.result import AtEnds, CriterionResult, ExtraHeight, Ignored
+from fellspan.links.words import down_m, up_m, zone_share
 from fellspan.terrain.profile import MEASURED_TOP, PathProfile
 from fellspan.vocabulary import Basis, PathVerdict, SignalVerdict
 
@@ -111,13 +112,13 @@ def reasons(
     asked = f"{100.0 * confidence_asked:.0f} % asked"
     if verdict == "obstructed":
         sentences.append(
-            f"Obstructed: {sight.cause} cuts the sight line by {sight.cut_m:.1f} m at {place(sight.at_m)}."
+            f"Obstructed: {sight.cause} cuts the sight line by {up_m(sight.cut_m):.1f} m at {place(sight.at_m)}."
         )
     elif not rule.met:
         left = (
             ""
             if rule.worst_fraction is None
-            else f"{rule.worst_fraction:.2f} F1 where {rule.required_fraction:g} is required"
+            else f"{zone_share(rule.worst_fraction):.2f} F1 where {rule.required_fraction:g} is required"
         )
         sentences.append(
             f"Marginal: the sight line is free, but {rule.cause} at {place(rule.worst_at_m)} leaves {left} "
@@ -135,11 +136,17 @@ def reasons(
         )
     if rule.met:
         sentences.append(
-            f"{spare_m(rule):.1f} m to spare under {rule.criterion}; nearest the ray: {rule.cause}, {place(rule.worst_at_m)}."
+            f"{down_m(max(rule.clearance_m - rule.required_m, 0.0)):.1f} m to spare under {rule.criterion}; nearest the ray: "
+            f"{rule.cause}, {place(rule.worst_at_m)}."
         )
     else:
-        sentences.append(f"{rule.shortfall_m:.1f} m is missing at {place(rule.shortfall_at_m)} under {rule.criterion}.")
-    if verdict != "clear":
+        told_m = sight.at_m if verdict == "obstructed" else rule.worst_at_m
+        missing, where = f"{up_m(rule.shortfall_m):.1f} m", place(rule.shortfall_at_m)
+        if where == place(told_m):
+            sentences.append(f"{missing} is missing there under {rule.criterion}.")
+        else:
+            sentences.append(f"The most is missing at another point: {missing}, {where}, under {rule.criterion}.")
+    if verdict != "clear" and raising.both != 0.0:
         sentences.append(_raise_sentence(raising, confidence_asked))
     sentences.append(_basis_sentence(basis))
     sentences += [

@@ -13,6 +13,7 @@ import folium
 from branca.element import MacroElement
 from jinja2 import Template
 
+from fellspan.links.words import state_of
 from fellspan.planning.plan import LinkPlan
 from fellspan.report import map_geometry as geometry
 from fellspan.report.relief import Relief
@@ -136,10 +137,11 @@ def _add_link(
     outline = geometry.zone(plan, reference)
     _classed(folium.Polygon(outline, weight=1, fill=True), f"map-zone {which}").add_to(chart)
     _line(chart, line, f"map-casing {which}")
-    _line(chart, line, f"map-path {result.verdict} {which}")
+    state = state_of(result)
+    _line(chart, line, f"map-path {state} {which}")
     for item in criterion.obstructions:
         places = geometry.stretch(plan, item.from_m, item.to_m, reference)
-        _line(chart, places, f"map-cut {'sight' if item.cuts_sight else 'zone'} {which}")
+        _line(chart, places, f"map-cut {'sight' if item.cuts_sight else 'zone'} {state} {which}")
     spot = geometry.point(plan, criterion.worst_at_m, reference)
     _classed(folium.CircleMarker(spot, radius=4, weight=2, fill=True), f"map-governing {which}").add_to(chart)
     if overview:

@@ -14,6 +14,7 @@ from fellspan.geodesy.coordinates import PositionStyle, format_position
 from fellspan.geodesy.position import Position
 from fellspan.links.result import CriterionResult, LinkResult, Losses
 from fellspan.links.safety import safety_lines
+from fellspan.links.words import State, is_two_points, state_of
 from fellspan.planning.plan import LinkPlan, StudyPlan
 from fellspan.report import assets, wording
 from fellspan.report import map_geometry as geometry
@@ -45,6 +46,7 @@ class LinkView:
     plan: LinkPlan
     result: LinkResult
     governing: CriterionResult
+    state: State
     page: str
     anchor: str
     profile_csv: str
@@ -92,7 +94,7 @@ def _overview(plan: StudyPlan, templates: Environment, rasters: list[RasterFile]
     return templates.get_template("index.html.j2").render(
         **_shared(plan, chart),
         links=views,
-        totals=Counter(link.result.verdict for link in plan.links),
+        totals=Counter(state_of(link.result) for link in plan.links),
         notes=(*plan.study.notes, *plan.cautions),
         quiet=False,
     )
@@ -144,6 +146,7 @@ def _view(index: int, link: LinkPlan, **drawings: Any) -> LinkView:
         plan=link,
         result=result,
         governing=result.clearance[result.governing],
+        state=state_of(result),
         page=page_name(index, result.name),
         anchor=f"link-{index + 1:02d}",
         profile_csv=f"profile-{index + 1:02d}-{tail}.csv" if tail else f"profile-{index + 1:02d}.csv",
@@ -227,10 +230,6 @@ def _unit(value: float | None, unit: str, *, sign: bool = False) -> str:
     return "–" if value is None else f"{wording.number(value, sign=sign)} {unit}"
 
 
-def _raise(value: float | None) -> str:
-    return "–" if value is None else wording.metres(value, sign=value > 0.0)
-
-
 def _bytes(size: int) -> str:
     return f"{size} B" if size < 1000 else f"{size / 1e3:.0f} kB" if size < 1e6 else f"{size / 1e6:.1f} MB"
 
@@ -246,6 +245,7 @@ def _environment() -> Environment:
         bearing=wording.bearing,
         bytes=_bytes,
         criterion_words=wording.criterion_words,
+        decisive_words=wording.decisive_words,
         degrees=wording.degrees,
         digest=_digest,
         distance=wording.distance,
@@ -256,17 +256,21 @@ def _environment() -> Environment:
         lines=lambda text: Markup("<br>").join(text.split("\n")),
         km=lambda value, length: wording.kilometres(value, length_m=length),
         metres=wording.metres,
+        missing=wording.missing,
         number=wording.number,
         percent=wording.percent,
         probability=wording.probability,
+        share=wording.share,
+        signal_words=wording.signal_words,
+        to_build=wording.to_build,
         unit=_unit,
     )
-    made.filters["raise"] = _raise
     made.globals.update(
-        symbol=wording.VERDICT_SYMBOL,
-        word=wording.VERDICT_WORD,
+        symbol=wording.STATE_SYMBOL,
+        word=wording.STATE_WORD,
         basis=wording.BASIS_WORD,
-        signal=wording.SIGNAL_WORD,
+        basis_short=wording.BASIS_SHORT,
+        two_points=is_two_points,
         place=_place,
     )
     return made

@@ -5,13 +5,14 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from fellspan.links import words
 from fellspan.links.result import EndResult
 from fellspan.planning.plan import LinkPlan
 from fellspan.report.profile_parts import shortfall_mark
 from fellspan.report.scales import Placed, Scale, Wanted, nice_step, nice_ticks, place_labels, text_width
 from fellspan.report.section import Section, Sheet
 from fellspan.report.svg import el, label, line
-from fellspan.report.wording import distance, kilometres, metres, number, percent, shorten
+from fellspan.report.wording import distance, kilometres, metres, missing, number, percent, shorten
 from fellspan.terrain.profile import PathObstacle
 from fellspan.vocabulary import COVER_KINDS
 
@@ -79,11 +80,15 @@ def band(section: Section, *, top: float) -> tuple[str, float]:
         ground = value(at, section.profile.ground_m)
         drawn.append(line(x, section.y.at(ground + value(at, bulge)), x, top, class_=f"ordinate{here}"))
         drawn.append(line(x, top - 5, x, top + 1, class_="tick-x", data_at_m=repr(at)))
+        available, required = value(at, levels.available_m), value(at, need)
+        if here:
+            # So rounded that the two levels differ by the very number that the callout says.
+            required = round(available, 1) - words.spare_m(section.criterion, length_m=section.profile.length_m)
         texts = (
             kilometres(at, length_m=section.profile.length_m),
             number(ground),
-            number(value(at, need)),
-            number(value(at, levels.available_m)),
+            number(required),
+            number(available),
         )
         for row, content in enumerate(texts):
             baseline = top + row * row_height + row_height * 0.68
@@ -197,7 +202,7 @@ def key(section: Section, uid: str, *, top: float) -> tuple[str, float]:
     if any(not item.cuts_sight for item in criterion.obstructions):
         entries.append((line(0, -4, 24, -4, class_="cut-zone"), "reaches into the required part"))
     if section.other_shortfall:
-        words = f"greatest shortfall: {metres(criterion.shortfall_m)} at {distance(criterion.shortfall_at_m)}"
+        words = f"greatest missing height: {missing(criterion.shortfall_m)} at {distance(criterion.shortfall_at_m)}"
         entries.append((shortfall_mark(12.0, -4.0), words))
     x, y = 2.0, top + sheet.line_height
     drawn = []

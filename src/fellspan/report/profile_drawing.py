@@ -4,13 +4,14 @@ Levels carry the Earth bulge of the governing criterion's k, so that the sight l
 """
 
 from fellspan.links.result import EndResult
+from fellspan.links.words import state_of
 from fellspan.planning.plan import LinkPlan
 from fellspan.report import profile_band, profile_parts
 from fellspan.report.section import FULL, Sheet, prepare
 from fellspan.report.svg import el, num, text
 from fellspan.report.wording import (
     BASIS_WORD,
-    VERDICT_WORD,
+    STATE_WORD,
     criterion_words,
     distance,
     frequency,
@@ -59,7 +60,7 @@ def draw_profile(plan: LinkPlan, *, uid: str, sheet: Sheet = FULL) -> str:
         profile_band.heading(section, ends.a, at_b=False),
         profile_band.heading(section, ends.b, at_b=True),
         key,
-        class_=f"path-profile {sheet.name}",
+        class_=f"path-profile {sheet.name} {state_of(plan.result)}",
         viewBox=f"0 0 {num(sheet.width)} {num(height)}",
         role="img",
         aria_labelledby=f"{uid}-title {uid}-desc",
@@ -83,10 +84,10 @@ def profile_text(plan: LinkPlan) -> str:
     ends = result.ends
     where = f"At {distance(criterion.worst_at_m)} from A ({criterion.cause or 'ground'})"
     words = [
-        f"{VERDICT_WORD[result.verdict]}, {BASIS_WORD[result.basis]}. {headline(result)}",
+        f"{STATE_WORD[state_of(result)]}, {BASIS_WORD[result.basis]}. {headline(result)}",
         f"From A, {_end_words(ends.a)}, to B, {_end_words(ends.b)}: {distance(result.distance_m)}",
         f"Frequency {frequency(result.frequency_hz)}. Governing criterion: {criterion_words(criterion)}",
-        f"{where}: {governing_words(criterion)}",
+        f"{where}: {governing_words(criterion, result.distance_m)}",
     ]
     for item in criterion.obstructions:
         what = "cuts the sight line" if item.cuts_sight else "reaches into the required zone"

@@ -2,10 +2,11 @@
 
 import numpy as np
 
+from fellspan.links import words
 from fellspan.links.result import CriterionResult, EndResult
 from fellspan.report.section import Section
 from fellspan.report.svg import el, label, line, num, points
-from fellspan.report.wording import distance, governing_words, metres, number, percent, shorten
+from fellspan.report.wording import distance, governing_words, metres, missing, number, percent, share, shorten
 from fellspan.vocabulary import COVER_KINDS
 
 LENS_POINTS = 121
@@ -171,12 +172,12 @@ def _share_words(item: CriterionResult) -> str:
     if item.worst_fraction is None:
         return ""
     if item.clearance_m < 0.0:
-        return f"; it stands {metres(-item.clearance_m)} above the sight line"
+        return f"; it stands {missing(-item.clearance_m)} above the sight line"
     if item.required_fraction == 0.0:
         return "; only the sight line must be free at this k"
     if item.worst_fraction > 1.5:
         return "; more than the whole zone is free"
-    return f"; {percent(item.worst_fraction)} of the zone is free, {percent(item.required_fraction)} is required"
+    return f"; {share(item.worst_fraction)} of the zone is free, {percent(item.required_fraction)} is required"
 
 
 def shortfall_mark(x: float, y: float) -> str:
@@ -191,12 +192,14 @@ def governing(section: Section, *, callout_y: float) -> str:
     needed = item.available_m - item.required_m
     x, y, y_needed = section.x.at(item.worst_at_m), section.y.at(surface), section.y.at(needed)
     low, high = max(y, y_needed), min(y, y_needed)
-    met = "met" if item.clearance_m >= item.required_m else "short"
-    first = governing_words(item)
-    share = _share_words(item)
+    met = "met" if item.met else "short"
+    first = governing_words(item, section.profile.length_m)
+    if section.other_shortfall:
+        first = f"Least share of the zone: {first}"
+    free = _share_words(item)
     where = f"{distance(item.worst_at_m)} from A: {item.cause}" if item.cause else f"{distance(item.worst_at_m)} from A"
     room = 96 if sheet.roomy else 50
-    second = where + share if len(where + share) <= room else where
+    second = where + free if len(where + free) <= room else where
     shown = shorten(second, room)
     half = max(len(first) * sheet.font * 0.62, len(shown) * sheet.small * 0.56) / 2.0
     middle = min(max(x, half + 4.0), sheet.width - half - 4.0)
@@ -222,8 +225,9 @@ def governing(section: Section, *, callout_y: float) -> str:
         index = int(np.argmin(np.abs(section.distance_m - item.shortfall_at_m)))
         place = section.x.at(item.shortfall_at_m), section.y.at(float(section.checked_drawn[index]))
         drawn.append(shortfall_mark(*place))
+    spare = words.spare_m(item, length_m=section.profile.length_m)
     return el(
         "g", *drawn, class_=f"governing {met}", data_at_m=repr(item.worst_at_m), data_level_m=repr(surface),
         data_needed_m=repr(needed), data_available_m=repr(item.available_m),
-        data_spare_m=repr(item.clearance_m - item.required_m), data_label=number(item.clearance_m - item.required_m),
+        data_spare_m=repr(item.clearance_m - item.required_m), data_label=number(spare),
     )  # fmt: skip

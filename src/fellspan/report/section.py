@@ -7,6 +7,7 @@ from numpy.typing import NDArray
 
 from fellspan.links.causes import SEA_WITHIN_M, is_sea_level
 from fellspan.links.result import CriterionResult, LinkResult
+from fellspan.links.words import is_two_points
 from fellspan.planning.plan import LinkPlan
 from fellspan.report.scales import Scale, keep_peaks
 from fellspan.terrain.profile import PathProfile
@@ -101,8 +102,7 @@ class Section:
     @property
     def other_shortfall(self) -> bool:
         """True where the greatest shortfall stands elsewhere than the governing point."""
-        apart = abs(self.criterion.shortfall_at_m - self.criterion.worst_at_m)
-        return self.criterion.shortfall_m > 0.0 and apart > 0.002 * self.profile.length_m
+        return is_two_points(self.criterion, length_m=self.profile.length_m)
 
     @property
     def level_arc_m(self) -> Array | None:

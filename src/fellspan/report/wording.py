@@ -3,21 +3,30 @@
 import math
 import re
 
+from fellspan.links import words
 from fellspan.links.result import CriterionResult, LinkResult
-from fellspan.vocabulary import Basis, PathVerdict, SignalVerdict
+from fellspan.links.words import STATE_WORDS, State, state_of
+from fellspan.vocabulary import Basis, SignalVerdict
 
-VERDICT_SYMBOL: dict[PathVerdict, str] = {"clear": "✓", "marginal": "≈", "obstructed": "✕"}
-VERDICT_WORD: dict[PathVerdict, str] = {"clear": "Clear", "marginal": "Marginal", "obstructed": "Obstructed"}
+STATE_SYMBOL: dict[State, str] = {"clear": "✓", "clear-bare": "(✓)", "marginal": "≈", "obstructed": "✕"}
+STATE_WORD: dict[State, str] = {state: text.capitalize() for state, text in STATE_WORDS.items()}
 BASIS_WORD: dict[Basis, str] = {
     "surveyed": "surveyed on the ground",
     "surface raster": "surface raster",
     "bare ground only": "bare ground only: trees and buildings are not in it",
+}
+BASIS_SHORT: dict[Basis, str] = {
+    "surveyed": "surveyed",
+    "surface raster": "by a surface raster",
+    "bare ground only": "on bare ground only",
 }
 SIGNAL_WORD: dict[SignalVerdict, str] = {
     "meets": "meets the wanted margin",
     "marginal": "within 3 dB of the wanted margin",
     "below": "below the wanted margin",
 }
+THROUGH = "meets, but through an obstruction"
+"""A level that arrives by diffraction over what cuts the sight line is no reason to build."""
 
 _CONTROL = re.compile("[\x00-\x08\x0b\x0c\x0e-\x1f\x7f\ud800-\udfff]")
 
@@ -55,8 +64,8 @@ def kilometres(distance_m: float, *, length_m: float | None = None) -> str:
 
 
 def distance(distance_m: float) -> str:
-    """A distance in the unit people would say it in."""
-    return f"{number(distance_m, 0)} m" if distance_m < 1000.0 else f"{kilometres(distance_m)} km"
+    """A distance in the unit people would say it in; always as many decimals, so that two distances compare."""
+    return f"{number(distance_m, 0)} m" if distance_m < 999.5 else f"{number(distance_m / 1000.0, 2)} km"
 
 
 def percent(share: float | None, digits: int = 0) -> str:
@@ -98,12 +107,44 @@ def bearing(value: float | None) -> str:
     return f"{tenths // 10:03d}.{tenths % 10}°"
 
 
-def governing_words(criterion: CriterionResult) -> str:
-    """What is spare or missing at the governing point of a criterion."""
-    spare = criterion.clearance_m - criterion.required_m
+def missing(value_m: float) -> str:
+    """A height that is missing, rounded up."""
+    return metres(words.up_m(value_m))
+
+
+def to_build(value_m: float | None) -> str:
+    """A height to add at an end, with its sign; in words where it is none that is built."""
+    text = words.to_build(value_m)
+    return f"+{text}" if text.endswith(" m") and not text.startswith("0.0") else text
+
+
+def share(fraction: float | None) -> str:
+    """A share of the zone that is free, rounded down."""
+    return "–" if fraction is None else percent(words.zone_share(fraction))
+
+
+def decisive_words(criterion: CriterionResult) -> str:
+    """The greatest height missing, else what is to spare at the governing point."""
+    if criterion.met:
+        return f"{metres(words.down_m(max(criterion.clearance_m - criterion.required_m, 0.0)))} to spare"
+    return f"{missing(criterion.shortfall_m)} missing"
+
+
+def governing_words(criterion: CriterionResult, length_m: float) -> str:
+    """What is spare or missing at the governing point of a criterion, on a path of this length."""
+    spare = words.spare_m(criterion, length_m=length_m)
     if spare >= 0.0:
         return f"{metres(spare)} to spare"
     return f"{metres(-spare)} short of the required clearance"
+
+
+def signal_words(result: LinkResult) -> str:
+    """What the signal verdict says, with the path in mind."""
+    if result.signal_verdict is None:
+        return "not computed"
+    if result.signal_verdict == "meets" and result.verdict == "obstructed":
+        return THROUGH
+    return SIGNAL_WORD[result.signal_verdict]
 
 
 def criterion_words(criterion: CriterionResult) -> str:
@@ -115,4 +156,4 @@ def headline(result: LinkResult) -> str:
     """The decisive reason, or the governing criterion where none was stated."""
     if result.reasons:
         return result.reasons[0]
-    return f"{VERDICT_WORD[result.verdict]}: {governing_words(result.clearance[result.governing])}"
+    return f"{STATE_WORD[state_of(result)]}: {decisive_words(result.clearance[result.governing])}"
