@@ -9,6 +9,7 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING, Final
 
 import numpy as np
+from numpy.typing import NDArray
 
 from fellspan.errors import LinkError, MagneticModelError, TerrainGapError
 from fellspan.geodesy import geodesic, magnetic
@@ -17,20 +18,23 @@ from fellspan.links.antenna_gains import antenna_cautions, antennas_of, polariza
 from fellspan.links.budget import budget, tilt_deg
 from fellspan.links.cautions import cautions
 from fellspan.links.criteria import Criterion, criteria_for, is_extended, worst_month_k
+from fellspan.links.doubts import below_left_out, beside_path, with_doubts
 from fellspan.links.ends import EndLevel, end_level
-from fellspan.links.evaluate import criterion_result, error_m, extra_for_confidence, governing_row
+from fellspan.links.evaluate import criterion_result, extra_for_confidence, governing_row
 from fellspan.links.levels import PathLevels
 from fellspan.links.minima import worst_windows
 from fellspan.links.own_building import Standing, standing, with_ground_at_end, with_nodes, with_roof_edge
 from fellspan.links.result import EndResult, Ends, LinkResult
 from fellspan.links.site import Link
+from fellspan.links.uncertainty import clearance_errors_m
 from fellspan.terrain.profile import PathProfile
-from fellspan.vocabulary import CriteriaPreset
+from fellspan.vocabulary import COVER_KINDS, CriteriaPreset
 
 if TYPE_CHECKING:
     from fellspan.terrain.terrain import Terrain
 
 SAME_PLACE_M: Final = 0.5
+_TREE: Final = COVER_KINDS.index("tree")
 REFINE_PARTS: Final = 16
 """The worst minima are looked at again at this part of the finest cell."""
 
@@ -102,13 +106,19 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
     laid = _Laid.out(link, profile, settings)
     profile, stands, levels = laid.profile, laid.stands, laid.levels
     results = tuple(
-        criterion_result(criterion, row, profile=profile, standing=stands, levels=levels)
+        criterion_result(criterion, row, profile=profile, standing=stands, levels=levels, errors_m=laid.errors_m)
         for row, criterion in enumerate(laid.criteria)
     )
     governing = governing_row(results)
     confidence = min(result.probability or 0.0 for result in results)
     sight = verdicts.sight_line(profile, stands, levels, median_k=settings.median_k)
-    verdict = verdicts.path_verdict(results, sight, confidence=confidence, confidence_asked=settings.confidence)
+    beside, beside_cautions = beside_path(
+        profile, levels, laid.criteria, median_k=settings.median_k, frequency_hz=link.radio.frequency_hz
+    )
+    doubts = (*below_left_out(profile, stands, levels, median_k=settings.median_k), *beside)
+    verdict = verdicts.path_verdict(
+        results, sight, confidence=confidence, confidence_asked=settings.confidence, doubts=doubts
+    )
     basis = verdicts.basis_of(profile, stands, levels, row=governing)
     a_amsl_m, b_amsl_m = laid.a.antenna_amsl_m, laid.b.antenna_amsl_m
     length_m, k = profile.length_m, settings.median_k
@@ -136,12 +146,24 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
         results=results,
         governing=governing,
         sight=sight,
-        raising=extra_for_confidence(levels, error_m(profile, stands), confidence=settings.confidence),
+        raising=with_doubts(
+            extra_for_confidence(levels, laid.errors_m, confidence=settings.confidence),
+            doubts,
+        ),
         confidence=confidence,
         confidence_asked=settings.confidence,
         ignored=stands.ignored,
+        doubts=doubts,
+        not_held=verdicts.not_held(profile),
     )
-    signal = verdicts.signal_sentence(loss.received_dbm, loss.margin_db, wanted_db=link.wanted_margin_db)
+    trees = bool(np.any((stands.cover_kind == _TREE) & np.any(levels.available_m < levels.need_m, axis=0)))
+    signal = verdicts.signal_sentence(
+        loss.received_dbm,
+        loss.margin_db,
+        wanted_db=link.wanted_margin_db,
+        frequency_hz=link.radio.frequency_hz,
+        trees=trees,
+    )
     end_a, model, caution_a = _end_result(laid.a, way.bearing_ab_deg, settings.date)
     end_b, _, caution_b = _end_result(laid.b, way.bearing_ba_deg, settings.date)
     result = LinkResult(
@@ -149,7 +171,7 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
         a=link.a.name,
         b=link.b.name,
         verdict=verdict,
-        signal_verdict=verdicts.signal_verdict(loss.margin_db, wanted_db=link.wanted_margin_db),
+        signal_verdict=verdicts.signal_verdict(loss.margin_db, wanted_db=link.wanted_margin_db, trees=trees),
         basis=basis,
         confidence=confidence,
         confidence_asked=settings.confidence,
@@ -162,9 +184,10 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
             median_k=k,
             raises=verdict != "clear",
             diffraction_db=loss.losses.diffraction,
-            trees=bool(np.any((stands.cover_kind == 2) & (levels.available_m < levels.need_m[governing]))),
-            no_errors=not error_m(profile, stands).any(),
+            trees=trees,
+            no_errors=not profile.sigma_m.any(),
             magnetic=(caution_a, caution_b),
+            beside=beside_cautions,
             antennas=antenna_cautions(link, antennas, distance_m=length_m, polarization_db=polarization_db),
         ),
         distance_m=length_m,
@@ -194,7 +217,7 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class _Laid:
-    """A link laid on a profile: ends levelled, own buildings out, roof edges in, criteria chosen, levels worked out."""
+    """A link laid on a profile: ends levelled, own buildings out, roof edges in, criteria chosen, levels and errors known."""
 
     profile: PathProfile
     stands: Standing
@@ -202,6 +225,7 @@ class _Laid:
     b: EndLevel
     criteria: tuple[Criterion, ...]
     levels: PathLevels
+    errors_m: NDArray[np.float64]
 
     @classmethod
     def out(cls, link: Link, profile: PathProfile, settings: AssessSettings) -> "_Laid":
@@ -222,7 +246,8 @@ class _Laid:
             fraction=[criterion.fraction for criterion in criteria],
             frequency_hz=link.radio.frequency_hz,
         )
-        return cls(profile=profile, stands=stands, a=a, b=b, criteria=criteria, levels=levels)
+        errors_m = clearance_errors_m(profile, stands, a_error_m=a.error_m, b_error_m=b.error_m)
+        return cls(profile=profile, stands=stands, a=a, b=b, criteria=criteria, levels=levels, errors_m=errors_m)
 
 
 def _refuse_gaps(link: Link, profile: PathProfile) -> None:

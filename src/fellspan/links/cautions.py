@@ -1,6 +1,7 @@
 """What a person must know beside a verdict: ranges left, doubtful data, and work that can hurt someone."""
 
 from collections.abc import Sequence
+from typing import Final
 
 from fellspan.links.criteria import range_cautions
 from fellspan.links.ends import EndLevel, roof_edge_cautions
@@ -10,6 +11,9 @@ from fellspan.propagation import inverse_k, out_of_range
 from fellspan.propagation.constants import K_FORMULA_HIGH_M
 from fellspan.terrain.profile import PathProfile
 from fellspan.vocabulary import CriteriaPreset
+
+LONGEST_M: Final = 300_000.0
+"""Longer paths than this are taken for a slip in the coordinates, m (common practice, no source)."""
 
 
 def cautions(
@@ -25,13 +29,20 @@ def cautions(
     no_errors: bool,
     magnetic: tuple[str | None, str | None],
     antennas: Sequence[str] = (),
+    beside: Sequence[str] = (),
 ) -> tuple[str, ...]:
     """All cautions of one link, each once, the ends first."""
     found: list[str] = []
     for level in levels:
         found += level.cautions
         found += roof_edge_cautions(level, profile)
+    found += beside
     found += antennas
+    if profile.length_m > LONGEST_M:
+        found.append(
+            f"The path is {profile.length_m / 1000.0:.0f} km long, more than radio links over land and sea span: check the "
+            "coordinates of both sites."
+        )
     if preset is not None:
         found += range_cautions(preset, frequency_hz=link.radio.frequency_hz)
     # Below the curve a rule of our own holds its first value, and the criterion's note says so; beyond it nothing is held.

@@ -8,15 +8,19 @@ from dataclasses import dataclass
 from typing import Final
 
 from fellspan.errors import LinkError, VerticalDatumError
-from fellspan.links.own_building import EndName, own_outlines, standing
+from fellspan.links.own_building import EndName, own_outlines, own_top_m, standing
 from fellspan.links.site import Site
+from fellspan.links.uncertainty import bare_error_m
 from fellspan.terrain.profile import PathProfile
+from fellspan.terrain.units import datum_key, is_ellipsoidal
 from fellspan.vocabulary import COVER_KINDS
 
 ROOF_FROM_M: Final = 2.0
 """Cover of unknown kind at a site counts as its roof from this height above ground (common practice, no source)."""
 OUTLIER_SIGMAS: Final = 3.0
 """A measured ground level this many standard errors off the raster draws a caution (common practice, no source)."""
+ROOF_DOUBT_M: Final = 1.0
+"""A typed roof this far off the outline's height draws a caution, m (common practice, no source)."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -30,6 +34,8 @@ class EndLevel:
     antenna_amsl_m: float
     height_as_given: str
     cautions: tuple[str, ...]
+    error_m: float = 0.0
+    """Standard error of `antenna_amsl_m`, m: that of the raster under it, 0 where its level was measured."""
 
     @property
     def antenna_agl_m(self) -> float:
@@ -43,7 +49,8 @@ def end_level(site: Site, profile: PathProfile, *, end: EndName) -> EndLevel:
     Raises
     ------
     VerticalDatumError
-        The site names a vertical datum other than the terrain's.
+        The site names a vertical datum other than the terrain's, or gives a height above sea level without naming one while
+        the terrain's heights are above an ellipsoid.
     LinkError
         The antenna is above a roof that neither the site nor the data gives, or it is below ground.
     """
@@ -83,8 +90,7 @@ def end_level(site: Site, profile: PathProfile, *, end: EndName) -> EndLevel:
             f"site '{site.name}': antenna at {antenna:.1f} m above sea level is below the ground there, {ground:.1f} m",
             "give a higher level, measure it from the ground instead, or state the measured ground level of the site",
         )
-    if site.height_reference != "roof":
-        cautions += _below_what_is_left_out(site, profile, end=end, above_ground_m=antenna - ground)
+    cautions += _below_what_is_left_out(site, profile, end=end, above_ground_m=antenna - ground)
     return EndLevel(
         end=end,
         site=site,
@@ -93,7 +99,19 @@ def end_level(site: Site, profile: PathProfile, *, end: EndName) -> EndLevel:
         antenna_amsl_m=antenna,
         height_as_given=given,
         cautions=tuple(cautions),
+        error_m=_error_m(site, profile, index),
     )
+
+
+def _error_m(site: Site, profile: PathProfile, index: int) -> float:
+    """Standard error of the antenna's level: of the raster where that was counted from, 0 where it was measured."""
+    if site.height_reference == "sea":
+        return 0.0
+    if site.height_reference == "roof" and (
+        site.roof_m is None or (not profile.ground_is_bare and site.ground_amsl_m is None)
+    ):
+        return float(profile.sigma_m[index])
+    return 0.0 if site.ground_amsl_m is not None else bare_error_m(profile, index)
 
 
 def _roof(site: Site, profile: PathProfile, *, end: EndName, ground: float) -> tuple[float, float, list[str]]:
@@ -107,11 +125,13 @@ def _roof(site: Site, profile: PathProfile, *, end: EndName, ground: float) -> t
         )
         roof = site.roof_m or 0.0
         return raster_ground - roof, roof, [caution]
-    if site.roof_m is not None:
-        return ground, site.roof_m, []
     outlines = own_outlines(profile, end)
+    # A level top counts at the antenna's own ground: on a slope the outline's greatest height stands elsewhere.
+    outline_m = max(float(own_top_m(profile, end)[index]) - raster_ground, 0.0) if outlines else 0.0
+    if site.roof_m is not None:
+        return ground, site.roof_m, _roof_doubts(site, profile, outlines, outline_m)
     if outlines:
-        return ground, max(profile.obstacles[outline].height_m for outline in outlines), []
+        return ground, outline_m, []
     cover, kind = float(profile.cover_m[index]), COVER_KINDS[int(profile.cover_kind[index])]
     if not profile.ground_is_bare:
         return ground, max(raster_ground - ground, 0.0), []
@@ -127,6 +147,19 @@ def _roof(site: Site, profile: PathProfile, *, end: EndName, ground: float) -> t
         f"site '{site.name}': the antenna is measured from the roof, but the data hold no building at that spot",
         "state the roof height above ground, or measure the antenna height from the ground",
     )
+
+
+def _roof_doubts(site: Site, profile: PathProfile, outlines: tuple[int, ...], outline_m: float) -> list[str]:
+    """A caution where the typed roof is not that of the outline it stands in."""
+    assert site.roof_m is not None
+    if not outlines or abs(site.roof_m - outline_m) <= ROOF_DOUBT_M:
+        return []
+    names = " and ".join(dict.fromkeys(profile.obstacles[index].name for index in outlines))
+    doubt = (
+        f"The roof of '{site.name}' is given as {site.roof_m:g} m above ground, the outline there ({names}) is "
+        f"{outline_m:.1f} m high: check which part of the building the antenna stands on."
+    )
+    return [doubt]
 
 
 def _below_what_is_left_out(site: Site, profile: PathProfile, *, end: EndName, above_ground_m: float) -> list[str]:
@@ -165,14 +198,20 @@ def roof_edge_cautions(level: EndLevel, profile: PathProfile) -> list[str]:
     return cautions
 
 
-def _plain(datum: str) -> str:
-    return "".join(character for character in datum.casefold() if character.isalnum())
-
-
 def _check_datum(site: Site, profile: PathProfile) -> None:
-    if site.vertical_datum is None or profile.vertical_datum is None:
+    if profile.vertical_datum is None:
         return
-    if _plain(site.vertical_datum) != _plain(profile.vertical_datum):
+    if site.vertical_datum is None:
+        above_sea = site.height_reference == "sea" or site.ground_amsl_m is not None
+        if above_sea and is_ellipsoidal(profile.vertical_datum):
+            raise VerticalDatumError(
+                f"site '{site.name}' gives a height above sea level, the terrain's are above an ellipsoid "
+                f"('{profile.vertical_datum}')",
+                "the two differ by tens of metres: convert the rasters to heights above sea level,",
+                "or state the vertical datum of the site, or give its height above ground or roof",
+            )
+        return
+    if datum_key(site.vertical_datum) != datum_key(profile.vertical_datum):
         raise VerticalDatumError(
             f"site '{site.name}' gives heights above '{site.vertical_datum}', the terrain above '{profile.vertical_datum}'",
             "heights of different vertical datums are not mixed: convert the height of the site,",

@@ -18,21 +18,19 @@ from fellspan.links.result import CriterionResult, ExtraHeight, Obstruction
 from fellspan.terrain.profile import MEASURED_TOP, PathProfile
 
 
-def error_m(profile: PathProfile, standing: Standing) -> NDArray[np.float64]:
-    """Standard error of the surface against the ray, m, shape (n,).
-
-    0 on bare ground at the antenna's own spot and within one cell of it: antenna and ground stand on the same raster value
-    there, whose error moves both.
-    """
-    from_end = np.minimum(profile.distance_m, profile.length_m - profile.distance_m)
-    shared = (standing.own | (from_end <= profile.cell_m)) & (standing.cover_m == 0.0)
-    return np.where(shared, 0.0, profile.sigma_m)
-
-
 def criterion_result(
-    criterion: Criterion, row: int, *, profile: PathProfile, standing: Standing, levels: PathLevels
+    criterion: Criterion,
+    row: int,
+    *,
+    profile: PathProfile,
+    standing: Standing,
+    levels: PathLevels,
+    errors_m: NDArray[np.float64],
 ) -> CriterionResult:
-    """Result of the criterion that stands in row `row` of `levels`, which share the samples of `profile`."""
+    """Result of the criterion that stands in row `row` of `levels`, which share the samples of `profile`.
+
+    `errors_m` are those of the clearance, as `uncertainty.clearance_errors_m` gives them, shape (n,).
+    """
     distance = levels.distance_m
     bulge, need = levels.bulge_m[row], levels.need_m[row]
     clear = levels.available_m - levels.surface_m - bulge
@@ -63,7 +61,7 @@ def criterion_result(
         shortfall_at_m=float(distance[short]),
         cause=_cause(profile, standing, levels, row, worst),
         extra_height_m=ExtraHeight(a=extra_a, b=extra_b, both=extra_both),
-        probability=_finite(float(clearance.probability_met(-shortfall, error_m(profile, standing)))),
+        probability=_finite(float(clearance.probability_met(-shortfall, errors_m))),
         obstructions=_obstructions(row, profile=profile, standing=standing, levels=levels),
         source=criterion.source,
         note=criterion.note,
@@ -122,7 +120,7 @@ def _cause(profile: PathProfile, standing: Standing, levels: PathLevels, row: in
 def extra_for_confidence(levels: PathLevels, errors_m: NDArray[np.float64], *, confidence: float) -> ExtraHeight:
     """Height to add so that every criterion holds with a confidence, at A alone, at B alone, at both alike.
 
-    `errors_m` as `error_m` gives them, shape (n,); `confidence` above 0 and below 1.
+    `errors_m` as `uncertainty.clearance_errors_m` gives them, shape (n,); `confidence` above 0 and below 1.
     """
     sigmas = NormalDist().inv_cdf(confidence)
     shortfall = levels.need_m + sigmas * errors_m - levels.available_m

@@ -1,6 +1,7 @@
 """The building an antenna stands on does not block it; its typed roof edge and parapet do.
 
-Takes a PathProfile and says what stands along it for clearance. Ground is never left out, and what was left out is listed.
+Takes a PathProfile and says what stands along it for clearance. Ground is never left out; what was left out is listed, and
+its tops are kept, so that a sight line that passes below them can be told.
 Knows nothing of rays, zones or verdicts.
 """
 
@@ -19,7 +20,16 @@ Scalar = TypeVar("Scalar", bound=np.generic)
 
 NEAR_M: Final = 10.0
 """Without an outline, cover this near to an antenna counts as what it stands on, m (common practice, no source)."""
+NEAR_SHARE: Final = 0.1
+"""... but never more than this share of the path (our own rule)."""
+ERRORS: Final = 2.0
+"""Raster cover counts as the own building's up to this many standard errors above its top (our own rule),"""
+LEAST_TOLERANCE_M, MOST_TOLERANCE_M = 1.0, 5.0
+"""and within these bounds, m (our own rule)."""
+SPOT_M: Final = 100.0
+"""An outline counts as the antenna's own spot up to this far, m; beyond it trees can grow on it (our own rule)."""
 _TOUCH_M: Final = 0.01
+_INSIDE_M: Final = 1e-3
 _BUILDING, _OTHER = COVER_KINDS.index("building"), COVER_KINDS.index("other")
 ROOF_SOURCE: Final = "typed for the site"
 SAME_SPOT_M: Final = 1e-6
@@ -34,7 +44,9 @@ class Standing:
     cover_kind: NDArray[np.int8]
     obstacle_index: NDArray[np.int32]
     own: NDArray[np.bool_]
-    """Samples that belong to the spot an antenna stands on: the outline, else `NEAR_M`."""
+    """Samples that belong to the spot an antenna stands on: the outline up to `SPOT_M`, else `NEAR_M`."""
+    left_out_m: NDArray[np.float64]
+    """Top of what was left out, m above sea level; -inf where nothing was."""
     ignored: tuple[Ignored, ...]
 
 
@@ -49,39 +61,67 @@ def own_outlines(profile: PathProfile, end: EndName) -> tuple[int, ...]:
     )
 
 
+def own_top_m(profile: PathProfile, end: EndName) -> NDArray[np.float64]:
+    """Top of the outlines that hold the end, m above sea level, at each sample; -inf outside them. Shape (n,)."""
+    return _top_m(profile, own_outlines(profile, end))[0]
+
+
 def standing(profile: PathProfile) -> Standing:
     """Take the own buildings out of a profile.
 
-    Inside an outline that holds the end, that outline and building (or unknown) cover are left out; without one, any cover
-    within 10 m of the end. Trees over an outline, other obstacles of the user's file and the ground always stay.
+    Inside an outline that holds the end, that outline is left out, and building (or unknown) cover no taller than it but for
+    raster errors: what stands taller in it stays. Without an outline, cover within 10 m of the end, and within a tenth of the
+    path, is left out, unless it was surveyed or lies on another obstacle. Trees over an outline, other obstacles of the
+    user's file and the ground always stay.
     """
     cover = profile.cover_m.copy()
     kind = profile.cover_kind.copy()
     obstacle = profile.obstacle_index.copy()
     own = np.zeros(cover.shape, dtype=np.bool_)
+    left_out = np.full(cover.shape, -np.inf)
     ignored: list[Ignored] = []
+    tolerance = np.clip(ERRORS * profile.sigma_m, LEAST_TOLERANCE_M, MOST_TOLERANCE_M)
+    near_m = min(NEAR_M, NEAR_SHARE * profile.length_m)
     ends: tuple[EndName, EndName] = ("A", "B")
     for end in ends:
         outlines = own_outlines(profile, end)
+        others = tuple(
+            index
+            for index, item in enumerate(profile.obstacles)
+            if index not in outlines and item.source != ROOF_SOURCE
+        )
+        other_top, which = _top_m(profile, others)
         from_end = profile.distance_m if end == "A" else profile.length_m - profile.distance_m
         if outlines:
-            reach = max(_reach(profile, index, end) for index in outlines)
-            inside = from_end <= reach + SAME_SPOT_M
+            own_top, _ = _top_m(profile, outlines)
+            inside = np.isfinite(own_top)
             house = (obstacle == -1) & ((kind == _BUILDING) | (kind == _OTHER))
+            house &= profile.ground_m + cover <= own_top + tolerance
             out = inside & (cover > 0.0) & (np.isin(obstacle, outlines) | house)
+            own |= inside & (from_end <= SPOT_M)
         else:
-            inside = from_end <= NEAR_M + SAME_SPOT_M
-            out = inside & (cover > 0.0) & (obstacle == -1)
-        own |= inside
+            inside = from_end <= near_m + SAME_SPOT_M
+            kept = (profile.measured == MEASURED_TOP) | np.isfinite(other_top)
+            out = inside & (cover > 0.0) & (obstacle == -1) & ~kept
+            own |= inside
         if out.any():
             ignored.append(_ignored(profile, end, out, outlines))
-        cover[out], kind[out], obstacle[out] = 0.0, 0, -1
+            left_out[out] = (profile.ground_m + cover)[out]
+        # What the own building hid comes to light: another obstacle in its outline stays one.
+        hidden = np.where(out, np.clip(np.minimum(other_top - profile.ground_m, cover), 0.0, None), 0.0)
+        shown = hidden > 0.0
+        cover[out] = hidden[out]
+        kind[out], obstacle[out] = 0, -1
+        obstacle[shown] = which[shown]
+        for index in others:
+            kind[shown & (which == index)] = COVER_KINDS.index(profile.obstacles[index].kind)
     return Standing(
         surface_m=profile.ground_m + cover,
         cover_m=cover,
         cover_kind=kind,
         obstacle_index=obstacle,
         own=own,
+        left_out_m=left_out,
         ignored=tuple(ignored),
     )
 
@@ -130,6 +170,7 @@ def with_ground_at_end(profile: PathProfile, *, end: EndName, ground_amsl_m: flo
         ground_m=_changed(profile.ground_m, index, ground_amsl_m),
         surface_m=_changed(profile.surface_m, index, surface),
         measured=_changed(profile.measured, index, max(1, int(profile.measured[index]))),
+        sigma_m=profile.sigma_m if profile.cover_m[index] > 0.0 else _changed(profile.sigma_m, index, 0.0),
     )
 
 
@@ -164,9 +205,18 @@ def with_nodes(profile: PathProfile, at_m: tuple[float, ...]) -> PathProfile:
     )
 
 
-def _reach(profile: PathProfile, index: int, end: EndName) -> float:
-    obstacle = profile.obstacles[index]
-    return obstacle.to_m if end == "A" else profile.length_m - obstacle.from_m
+def _top_m(profile: PathProfile, indices: tuple[int, ...]) -> tuple[NDArray[np.float64], NDArray[np.int32]]:
+    """Highest top of some obstacles at each sample, m above sea level, and whose it is; -inf and -1 outside them all."""
+    top = np.full(profile.distance_m.shape, -np.inf)
+    which = np.full(top.shape, -1, dtype=np.int32)
+    for index in indices:
+        item = profile.obstacles[index]
+        inside = (profile.distance_m >= item.from_m - _INSIDE_M) & (profile.distance_m <= item.to_m + _INSIDE_M)
+        # A level top is the same all over; one that follows the ground is nowhere higher above it than stated.
+        level = np.minimum(item.top_amsl_m, profile.ground_m + item.height_m)
+        higher = inside & (level > top)
+        top[higher], which[higher] = level[higher], index
+    return top, which
 
 
 def _ignored(profile: PathProfile, end: EndName, out: NDArray[np.bool_], outlines: tuple[int, ...]) -> Ignored:

@@ -24,6 +24,8 @@ UNLISTED_M: Final = 25.0
 USUAL_MAST_M: Final = 60.0
 """More extra height than this is called beyond usual masts (common practice, no source)."""
 SIGNAL_BAND_DB: Final = 3.0
+GASES_AND_RAIN_FROM_HZ: Final = 10e9
+"""Gases count above about 10 GHz (registry: p530-19-gas-path); that rain does too is common practice, no source."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -59,12 +61,17 @@ def sight_line(profile: PathProfile, standing: Standing, levels: PathLevels, *, 
 
 
 def path_verdict(
-    results: tuple[CriterionResult, ...], sight: SightLine, *, confidence: float, confidence_asked: float
+    results: tuple[CriterionResult, ...],
+    sight: SightLine,
+    *,
+    confidence: float,
+    confidence_asked: float,
+    doubts: tuple[Doubt, ...] = (),
 ) -> PathVerdict:
     """'clear', 'marginal' or 'obstructed' (see docs/architecture.md, Verdicts)."""
     if sight.cut_m > clearance.TOLERANCE_M:
         return "obstructed"
-    if all(result.met for result in results) and confidence >= confidence_asked:
+    if all(result.met for result in results) and confidence >= confidence_asked and not doubts:
         return "clear"
     return "marginal"
 
@@ -84,12 +91,21 @@ def basis_of(profile: PathProfile, standing: Standing, levels: PathLevels, *, ro
     return "surface raster" if profile.surface_is_known or not profile.ground_is_bare else "bare ground only"
 
 
-def signal_verdict(margin_db: AtEnds, *, wanted_db: float) -> SignalVerdict | None:
-    """'meets', 'marginal' (within 3 dB below the wanted margin) or 'below'; None where no margin is known."""
+def not_held(profile: PathProfile) -> str | None:
+    """What the notes of a profile say that its data do not hold; None where they say nothing of it."""
+    said = [note.rstrip(".") for note in profile.notes if "cover is not known" in note or "not in the data" in note]
+    return "; ".join(said) or None
+
+
+def signal_verdict(margin_db: AtEnds, *, wanted_db: float, trees: bool = False) -> SignalVerdict | None:
+    """'meets', 'marginal' (within 3 dB below the wanted margin) or 'below'; None where no margin is known.
+
+    With `trees` in the required zone it is 'marginal' at most: what they take changes with leaves, rain and growth.
+    """
     if margin_db.at_a is None or margin_db.at_b is None:
         return None
     least = min(margin_db.at_a, margin_db.at_b)
-    if least >= wanted_db:
+    if least >= wanted_db and not trees:
         return "meets"
     return "marginal" if least >= wanted_db - SIGNAL_BAND_DB else "below"
 
@@ -105,10 +121,13 @@ def reasons(
     confidence: float,
     confidence_asked: float,
     ignored: tuple[Ignored, ...],
+    doubts: tuple[Doubt, ...] = (),
+    not_held: str | None = None,
 ) -> tuple[str, ...]:
-    """Plain sentences, the decisive one first."""
+    """Plain sentences, the decisive one first; `not_held` says what the data do not hold, where that is known."""
     rule = results[governing]
     sentences = []
+    more = [f"Against 'clear' stands too: {doubt.clause}." for doubt in doubts]
     asked = f"{100.0 * confidence_asked:.0f} % asked"
     if verdict == "obstructed":
         sentences.append(
@@ -124,6 +143,11 @@ def reasons(
             f"Marginal: the sight line is free, but {rule.cause} at {place(rule.worst_at_m)} leaves {left} "
             f"({rule.criterion})."
         )
+    elif verdict == "marginal" and doubts:
+        sentences.append(f"Marginal: every criterion is met, but {doubts[0].clause}.")
+        more = more[1:]
+        if confidence < confidence_asked:
+            more.append(f"The confidence is {_percent(confidence)} ({asked}).")
     elif verdict == "marginal":
         sentences.append(
             f"Marginal: every criterion is met on the heights in the data, but with {_percent(confidence)} confidence only "
@@ -148,7 +172,7 @@ def reasons(
             sentences.append(f"The most is missing at another point: {missing}, {where}, under {rule.criterion}.")
     if verdict != "clear" and raising.both != 0.0:
         sentences.append(_raise_sentence(raising, confidence_asked))
-    sentences.append(_basis_sentence(basis))
+    sentences.append(_basis_sentence(basis, not_held))
     sentences += [
         f"Left out at {item.end}, as the antenna's own building or cover: {item.what}, up to {item.height_m:.1f} m high."
         for item in ignored
@@ -156,14 +180,25 @@ def reasons(
     return tuple(sentences)
 
 
-def signal_sentence(received_dbm: AtEnds, margin_db: AtEnds, *, wanted_db: float) -> str | None:
+def signal_sentence(
+    received_dbm: AtEnds, margin_db: AtEnds, *, wanted_db: float, frequency_hz: float, trees: bool = False
+) -> str | None:
     """What arrives and what is not counted in it yet; None where the level is unknown."""
     if received_dbm.at_b is None:
         return None
+    not_counted = _not_counted(frequency_hz)
     level = f"Signal at the median k: {received_dbm.at_b:.1f} dBm at both ends"
     if margin_db.at_b is None:
-        return f"{level}; no threshold is given, so there is no margin. Fading is not yet counted."
-    return f"{level}, margin {margin_db.at_b:.1f} dB, {wanted_db:g} dB wanted. Fading is not yet counted."
+        return f"{level}; no threshold is given, so there is no margin. {not_counted}"
+    capped = " Trees in the required zone hold the signal verdict at 'marginal' at most." if trees else ""
+    return f"{level}, margin {margin_db.at_b:.1f} dB, {wanted_db:g} dB wanted.{capped} {not_counted}"
+
+
+def _not_counted(frequency_hz: float) -> str:
+    """What the level leaves out; the one place that says so."""
+    if frequency_hz > GASES_AND_RAIN_FROM_HZ:
+        return "Fading, gases and rain are not yet counted."
+    return "Fading is not yet counted."
 
 
 def place(at_m: float) -> str:
@@ -195,14 +230,14 @@ def _percent(probability: float) -> str:
     return f"{math.floor(1000.0 * probability + 1e-9) / 10.0:g} %"
 
 
-def _basis_sentence(basis: Basis) -> str:
+def _basis_sentence(basis: Basis, not_held: str | None) -> str:
     if basis == "surveyed":
         return (
             "Basis: surveyed, ground and tops were measured wherever an unlisted tree or building could reach the zone."
         )
     if basis == "surface raster":
         return "Basis: surface raster; what grew or was built since it was flown is not in it."
+    without = not_held or "trees and buildings are not in the data"
     return (
-        "Basis: bare ground only; trees and buildings are not in the data (but for obstacles listed by name), so walk the path "
-        "before trusting this."
+        f"Basis: bare ground only; {without} (but for obstacles listed by name), so walk the path before trusting this."
     )

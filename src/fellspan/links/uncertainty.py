@@ -1,0 +1,65 @@
+"""How far the heights on a path may be wrong against the ray: errors of the surface and of the ground under the antennas.
+
+Knows a profile, what stands on it and the error of each antenna's own level; knows no criteria and no verdicts.
+"""
+
+import numpy as np
+from numpy.typing import NDArray
+
+from fellspan.links.own_building import ROOF_SOURCE, Standing
+from fellspan.terrain.profile import PathProfile
+
+
+def bare_error_m(profile: PathProfile, index: int) -> float:
+    """Standard error of the ground at a sample, m: of the nearest bare sample of the same source, else the stated one."""
+    alike = (profile.cover_m == 0.0) & (profile.source == profile.source[index])
+    if not alike.any():
+        return float(profile.sigma_m[index])
+    away = np.where(alike, np.abs(profile.distance_m - profile.distance_m[index]), np.inf)
+    return min(float(profile.sigma_m[int(np.argmin(away))]), float(profile.sigma_m[index]))
+
+
+def clearance_errors_m(
+    profile: PathProfile, standing: Standing, *, a_error_m: float, b_error_m: float
+) -> NDArray[np.float64]:
+    """Standard error of the clearance at each sample, m, shape (n,).
+
+    The ray is wrong by (1 - x) of the error at A and x of that at B, the surface by its own. The three are independent, but
+    where the surface and the ground under an antenna come from one source they are the same raster value at the antenna: the
+    part they share falls from all of it there to none one cell away. `a_error_m` and `b_error_m` are the errors of the
+    antennas' levels.
+    """
+    distance, length_m = profile.distance_m, profile.length_m
+    share = distance / length_m
+    surface = _surface_errors_m(profile, standing)
+    variance = surface**2 + ((1.0 - share) * a_error_m) ** 2 + (share * b_error_m) ** 2
+    for index, from_end, error_m in ((0, distance, a_error_m), (-1, length_m - distance, b_error_m)):
+        alike = _alike(from_end, profile.cell_m) * (profile.source == profile.source[index])
+        variance -= 2.0 * (1.0 - from_end / length_m) * alike * np.minimum(surface, error_m) ** 2
+    if profile.source[0] == profile.source[-1]:
+        alike_ends = float(_alike(np.asarray(length_m), profile.cell_m))
+        variance += 2.0 * share * (1.0 - share) * alike_ends * min(a_error_m, b_error_m) ** 2
+    # An edge or parapet was measured from the antenna and moves with it, however wrong the ground under both is.
+    lever = np.minimum(share, 1.0 - share)
+    variance = np.where(_typed(profile, standing), lever**2 * (a_error_m**2 + b_error_m**2), variance)
+    return np.asarray(np.sqrt(np.maximum(variance, 0.0)))
+
+
+def _alike(distance_m: NDArray[np.float64], cell_m: float) -> NDArray[np.float64]:
+    """Correlation of the errors of two spots of one raster: 1 at the same spot, falling evenly to 0 one cell away."""
+    return np.asarray(np.clip(1.0 - distance_m / max(cell_m, 1e-9), 0.0, 1.0))
+
+
+def _surface_errors_m(profile: PathProfile, standing: Standing) -> NDArray[np.float64]:
+    """Error of what must be cleared: the stated one, and that of the ground where the own building was left out."""
+    bared = np.isfinite(standing.left_out_m) & (standing.cover_m == 0.0)
+    if not bared.any():
+        return profile.sigma_m
+    near_a = profile.distance_m < 0.5 * profile.length_m
+    ground = np.where(near_a, bare_error_m(profile, 0), bare_error_m(profile, -1))
+    return np.where(bared, np.minimum(profile.sigma_m, ground), profile.sigma_m)
+
+
+def _typed(profile: PathProfile, standing: Standing) -> NDArray[np.bool_]:
+    typed = np.asarray([*(obstacle.source == ROOF_SOURCE for obstacle in profile.obstacles), False])
+    return np.asarray(typed[standing.obstacle_index])
