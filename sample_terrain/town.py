@@ -197,7 +197,18 @@ def survey_csv(ground_m: Grid, trees_m: Grid, seed: int) -> str:
     raster has them.
     """
     rng = np.random.default_rng(seed + 3)
-    columns = ["profile", "link", "distance_m", "ground_m", "top_m", "kind", "error_m", "source", "note"]
+    columns = [
+        "profile",
+        "link",
+        "distance_m",
+        "ground_m",
+        "top_m",
+        "kind",
+        "error_m",
+        "growth_m_per_year",
+        "source",
+        "note",
+    ]
     length = math.dist(BEACON, WEST_POINT)
     rows: list[dict[str, object]] = []
     for name, start, stop in SURVEYED_STRETCHES:
@@ -222,6 +233,7 @@ def survey_csv(ground_m: Grid, trees_m: Grid, seed: int) -> str:
                     "top_m": f"{ground + tree:.2f}",
                     "kind": "tree" if tree > 0.0 else "",
                     "error_m": "0.1" if tree == 0.0 else "0.3",
+                    "growth_m_per_year": "" if tree == 0.0 else "0.2",
                     "source": "levelled and taped",
                     "note": "",
                 }

@@ -70,7 +70,10 @@ def full_study(folder: Path) -> Study:
             ),
             surface=(RasterSource(path=folder.parent / "elsewhere.tif", role="surface"),),
             cover=(CoverSource(path=folder / "trees.tif", kind="tree", error_m=2.0, growth_m_per_year=0.3),),
-            obstacles=(ObstacleSource(path=folder / "obstacles.csv"),),
+            obstacles=(
+                ObstacleSource(path=folder / "obstacles.csv", complete=("building", "tree")),
+                ObstacleSource(path=folder / "survey.csv"),
+            ),
             survey=(SurveySource(path=folder / "survey.csv"),),
             gaps="sea",
             sea_level_m=-0.5,

@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 from made_terrain import at, raster
 
-from fellspan.errors import SurveyFileError
+from fellspan.errors import SurveyFileError, TerrainGapError
 from fellspan.geodesy.geodesic import WGS84_GEOD, GeodesicPath
 from fellspan.terrain.profile import MEASURED_GROUND, MEASURED_NOTHING, MEASURED_TOP, PathProfile
 from fellspan.terrain.sources import CoverSource, RasterSource
@@ -49,29 +49,29 @@ def test_a_profile_by_link_and_distance_replaces_the_raster_between_its_points(
         tmp_path,
         "link,distance_m,ground_m,top_m,kind,profile,error_m",
         f"{NAME},1000,40,40,,P1,0.05",
-        f"{NAME},1100,44,56,tree,P1,0.05",
-        f"{NAME},1200,48,48,,P1,0.05",
+        f"{NAME},1050,44,56,tree,P1,0.05",
+        f"{NAME},1100,48,48,,P1,0.05",
     )
     profile = surveyed(terrain_files, file)
     for distance, ground, top in (
         (1000.0, 40.0, 40.0),
-        (1050.0, 42.0, 48.0),
-        (1100.0, 44.0, 56.0),
-        (1150.0, 46.0, 52.0),
+        (1025.0, 42.0, 48.0),
+        (1050.0, 44.0, 56.0),
+        (1075.0, 46.0, 52.0),
     ):
         i = near(profile, distance)
         s = profile.distance_m[i]
-        assert profile.ground_m[i] == pytest.approx(ground + 0.04 * (s - distance), abs=1e-6)
-        assert profile.surface_m[i] == pytest.approx(top, abs=0.5)
-    inside = (profile.distance_m >= 1000.0) & (profile.distance_m <= 1200.0)
+        assert profile.ground_m[i] == pytest.approx(ground + 0.08 * (s - distance), abs=1e-6)
+        assert profile.surface_m[i] == pytest.approx(top, abs=1.0)
+    inside = (profile.distance_m >= 1000.0) & (profile.distance_m <= 1100.0)
     assert (profile.measured[inside] == MEASURED_TOP).all()
     assert {profile.sources[i] for i in profile.source[inside]} == {"survey: walk.csv"}
     assert profile.sigma_m[inside] == pytest.approx(0.05)
-    outside = ~((profile.distance_m >= 999.98) & (profile.distance_m <= 1200.02))
+    outside = ~((profile.distance_m >= 999.98) & (profile.distance_m <= 1100.02))
     assert (profile.measured[outside] == MEASURED_NOTHING).all()
     assert profile.surface_m[outside] == pytest.approx(60.0)
-    assert profile.cover_kind[near(profile, 1100.0)] == COVER_KINDS.index("tree")
-    assert {1000.0, 1100.0, 1200.0} <= set(profile.distance_m.tolist())
+    assert profile.cover_kind[near(profile, 1050.0)] == COVER_KINDS.index("tree")
+    assert {1000.0, 1050.0, 1100.0} <= set(profile.distance_m.tolist())
 
 
 def test_rows_of_another_link_do_not_count(tmp_path: Path, terrain_files: dict[str, object]) -> None:
@@ -126,25 +126,27 @@ def test_a_profile_of_positions_follows_the_path_whichever_way_it_was_walked(
 ) -> None:
     rows = ["latitude_deg,longitude_deg,ground_m,top_m,profile"]
     path = GeodesicPath.between(A, B)
-    for along, ground in ((1300.0, 30.0), (1200.0, 20.0), (1000.0, 40.0)):
+    for along, ground in ((1080.0, 30.0), (1050.0, 20.0), (1000.0, 40.0)):
         latitude, longitude = path.positions(along)
         rows.append(f"{latitude:.9f},{longitude:.9f},{ground},{ground},walked")
     profile = surveyed(terrain_files, survey_file(tmp_path, *rows))
-    i = near(profile, 1100.0)
-    assert profile.ground_m[i] == pytest.approx(40.0 - 0.1 * (profile.distance_m[i] - 1000.0), abs=0.01)
+    i = near(profile, 1025.0)
+    assert profile.ground_m[i] == pytest.approx(40.0 - 0.4 * (profile.distance_m[i] - 1000.0), abs=0.01)
     assert profile.ground_m.min() == pytest.approx(20.0, abs=1e-3)
 
 
 def test_a_measured_profile_closes_a_gap_of_the_raster(tmp_path: Path) -> None:
     heights = np.full((300, 600), 50.0)
-    heights[:, 200:300] = -9999.0
+    heights[:, 200:208] = -9999.0  # 1500 to 1580 m from A
     ground = raster(tmp_path / "holed.tif", heights)
-    file = survey_file(
-        tmp_path, "link,distance_m,ground_m,profile", f"{NAME},1400,50,P", f"{NAME},2000,20,P", f"{NAME},2600,50,P"
-    )
-    profile = surveyed({"ground": ground}, file)
+    rows = [f"{NAME},1490,50,P", f"{NAME},1540,20,P", f"{NAME},1590,50,P"]
+    profile = surveyed({"ground": ground}, survey_file(tmp_path, "link,distance_m,ground_m,profile", *rows))
     assert not profile.gaps
-    assert profile.ground_m[near(profile, 2000.0)] == pytest.approx(20.0)
+    assert profile.ground_m[near(profile, 1540.0)] == pytest.approx(20.0)
+    # With its middle point left out the line is too long to stand for ground that nobody knows.
+    file = survey_file(tmp_path, "link,distance_m,ground_m,profile", rows[0], rows[2])
+    with pytest.raises(TerrainGapError, match=r"from 1\.50 km to 1\.58 km"):
+        surveyed({"ground": ground}, file)
 
 
 def test_a_top_alone_sets_the_surface_and_keeps_the_ground(tmp_path: Path, terrain_files: dict[str, object]) -> None:
@@ -192,15 +194,15 @@ def test_a_survey_removes_buildings_of_a_file_but_not_what_moves(
 
 def test_refining_a_surveyed_profile_keeps_the_survey(tmp_path: Path, terrain_files: dict[str, object]) -> None:
     file = survey_file(
-        tmp_path, "link,distance_m,ground_m,top_m,profile", f"{NAME},1000,40,40,P", f"{NAME},1200,60,60,P"
+        tmp_path, "link,distance_m,ground_m,top_m,profile", f"{NAME},1000,40,40,P", f"{NAME},1050,60,60,P"
     )
     with Terrain.open(**terrain_files, survey=file) as terrain:
         profile = terrain.profile(a=A, b=B, name=NAME)
-        fine = terrain.refine(profile, [(1000.0, 1200.0)], step_m=0.625)
-    inside = (fine.distance_m >= 1000.0) & (fine.distance_m <= 1200.0)
+        fine = terrain.refine(profile, [(1000.0, 1050.0)], step_m=0.15)
+    inside = (fine.distance_m >= 1000.0) & (fine.distance_m <= 1050.0)
     assert inside.sum() > 300
     assert (fine.measured[inside] == MEASURED_TOP).all()
-    assert fine.ground_m[inside] == pytest.approx(40.0 + 0.1 * (fine.distance_m[inside] - 1000.0), abs=1e-9)
+    assert fine.ground_m[inside] == pytest.approx(40.0 + 0.4 * (fine.distance_m[inside] - 1000.0), abs=1e-9)
 
 
 def test_rows_beyond_the_end_are_said(tmp_path: Path, terrain_files: dict[str, object]) -> None:
@@ -225,6 +227,7 @@ def test_rows_beyond_the_end_are_said(tmp_path: Path, terrain_files: dict[str, o
         (("link,distance_m,ground_m,error_m", "x,5,1,-2"), ["error_m -2"]),
         (("link,distance_m,ground_m,profile", "x,5,1,P", "x,5,1,P"), ["row 3", "does not rise"]),
         (("link,distance_m,ground_m,kind", "x,5,1,hedge"), ["hedge", "tree"]),
+        (("link,distance_m,ground_m,growth_m_per_year", "x,5,1,0.3"), ["growth_m_per_year 0.3", "kind tree"]),
         (("link,distance_m,ground_m", "x,5,1,7"), ["row 2", "'7'"]),
     ],
 )

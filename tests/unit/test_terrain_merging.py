@@ -9,15 +9,16 @@ from hypothesis import strategies as st
 
 from fellspan.geodesy.geodesic import GeodesicPath
 from fellspan.geodesy.position import Position
-from fellspan.terrain.assemble import merged
 from fellspan.terrain.cover import CoverLayer, combine
 from fellspan.terrain.obstacle_tops import stand
 from fellspan.terrain.obstacles import Obstacle, ObstacleIndex
+from fellspan.terrain.samples import merged
 from fellspan.terrain.survey import SurveyFile, SurveyRow
-from fellspan.terrain.survey_hits import SurveyIndex
+from fellspan.terrain.survey_index import SurveyIndex
 from fellspan.vocabulary import COVER_KINDS
 
 PATH = GeodesicPath.towards(Position(latitude_deg=36.05, longitude_deg=-45.2), 60.0, 1000.0)
+LONGEST_M = 60.0
 DISTANCES = np.arange(0.0, 1000.1, 2.5)
 
 distances = st.lists(st.floats(-50.0, 1050.0), max_size=30)
@@ -65,22 +66,32 @@ def test_survey_against_a_plain_rule(
     walked = [(2.5 * s, g, t) for s, g, t in sorted(walk)]
     rows += [row(100 + i, s, g, t, 1.0, "P") for i, (s, g, t) in enumerate(walked)]
     index = SurveyIndex([SurveyFile(name="f", rows=tuple(rows))], radius_m=5.0)
-    found = index.on_path(PATH, "l").measured(DISTANCES)
+    hits = index.on_path(PATH, "l", longest_m=LONGEST_M)
+    found, chords = hits.measured(DISTANCES), hits.chords(DISTANCES)
     for i, s in enumerate(DISTANCES):
         ground = top = None
+        wide: list[float] = []
         for (s0, g0, t0), (s1, g1, t1) in pairwise(walked):
-            if s0 - 1e-3 <= s <= s1 + 1e-3:
+            if s1 - s0 > LONGEST_M:
+                if s0 - 1e-3 <= s <= s1 + 1e-3:
+                    wide.append(g0 + (g1 - g0) * min(max((s - s0) / (s1 - s0), 0.0), 1.0))
+            elif s0 - 1e-3 <= s <= s1 + 1e-3:
                 share = min(max((s - s0) / (s1 - s0), 0.0), 1.0)
                 ground = g0 + (g1 - g0) * share
                 if t0 is not None and t1 is not None:
                     top = t0 + (t1 - t0) * share
         single = [(s_, g, t, r) for s_, g, t, r in points]
         for j, (s_, g, t) in enumerate(walked):
-            beside = [walked[k] for k in (j - 1, j + 1) if 0 <= k < len(walked)]
+            beside = [walked[k] for k in (j - 1, j + 1) if 0 <= k < len(walked) and abs(walked[k][0] - s_) <= LONGEST_M]
             if not beside:
                 single.append((s_, g, t, 1.0))
             elif t is not None and not any(other[2] is not None for other in beside):
                 single.append((s_, None, t, 1.0))
+        wide += [g for s_, g, _, r in single if r > LONGEST_M and abs(s - s_) <= r + 1e-3]
+        single = [(s_, g, t, min(r, LONGEST_M)) for s_, g, t, r in single]
+        assert np.isnan(chords.ground_m[i]) == (not wide)
+        if wide:
+            assert abs(chords.ground_m[i] - max(wide)) < 1e-6
         reach = [(abs(s - s_), g, t) for s_, g, t, r in single if abs(s - s_) <= r + 1e-3]
         with_ground = [(d, g) for d, g, _ in reach if g is not None]
         with_top = [(d, t) for d, _, t in reach if t is not None]
@@ -157,3 +168,11 @@ def test_cover_is_the_highest_of_what_is_known(
         assert (cover.kind[i] == COVER_KINDS.index("none")) == (cover.height_m[i] == 0.0)
         all_kinds = not (np.isnan(trees[i]) or np.isnan(roofs[i]))
         assert cover.known[i] == (all_kinds or (use_surface and not np.isnan(surface[i])))
+        assert cover.valued[i] == cover.known[i]
+    # Trees alone tell nothing of buildings, unless a file is declared to hold them all.
+    alone = combine(ground, layers[:1], top, np.full(6, 0.5) if use_surface else None)
+    with_all = combine(ground, layers[:1], top, np.full(6, 0.5) if use_surface else None, complete=("building",))
+    seen = np.isfinite(np.array(surface)) & use_surface
+    assert np.array_equal(alone.known, seen)
+    assert np.array_equal(with_all.known, seen | np.isfinite(np.array(trees)))
+    assert np.array_equal(alone.valued, with_all.known)

@@ -112,7 +112,7 @@ def test_a_hole_is_named_in_km_with_raster_and_remedy(tmp_path: Path) -> None:
 def test_nothing_is_known_in_a_gap_even_under_a_cover_raster(tmp_path: Path) -> None:
     heights = np.full((300, 600), 50.0)
     heights[:, 200:300] = -9999.0
-    cover = CoverSource(path=raster(tmp_path / "trees.tif", 5.0), kind="tree")
+    cover = CoverSource(path=raster(tmp_path / "trees.tif", 5.0), kind="other")
     with Terrain.open(ground=raster(tmp_path / "holed.tif", heights), cover=cover) as terrain:
         (holed, whole) = terrain.profiles(
             [(at(500.0, 1500.0), at(5500.0, 1500.0)), (at(500.0, 1500.0), at(1500.0, 1500.0))]
@@ -138,7 +138,7 @@ def test_a_path_beside_the_raster_says_so(sloped: Path) -> None:
 
 
 def test_gaps_that_are_sea_are_filled_and_noted(tmp_path: Path) -> None:
-    heights = np.full((300, 600), 50.0)
+    heights = np.full((300, 600), 3.0)
     heights[:, 200:300] = -9999.0
     file = raster(tmp_path / "holed.tif", heights)
     with Terrain.open(ground=file, gaps="sea", sea_level_m=1.5) as terrain:
@@ -181,7 +181,7 @@ def test_unknown_cover_counts_as_none_and_is_said(tmp_path: Path) -> None:
     ground = raster(tmp_path / "ground.tif", 10.0)
     trees = np.full((300, 600), 5.0)
     trees[:, 200:300] = -9999.0
-    source = CoverSource(path=raster(tmp_path / "trees.tif", trees), kind="tree")
+    source = CoverSource(path=raster(tmp_path / "trees.tif", trees), kind="other")
     with Terrain.open(ground=ground, cover=source) as terrain:
         profile = terrain.profile(a=at(500.0, 1500.0), b=at(5500.0, 1500.0))
         elsewhere = terrain.profile(a=at(4000.0, 1500.0), b=at(5500.0, 1500.0))

@@ -12,6 +12,7 @@ from fellspan.links.site import Link
 from fellspan.planning.inputs import Study
 from fellspan.planning.plan import LinkFailure, LinkPlan, StudyPlan
 from fellspan.planning.stamp import input_files
+from fellspan.terrain.survey import link_key
 from fellspan.terrain.terrain import Terrain
 
 Progress = Callable[[int, int, str], None]
@@ -82,7 +83,7 @@ def _plan_link(link: Link, terrain: Terrain, settings: AssessSettings) -> LinkPl
 
 def _unused_survey(study: Study, terrain: Terrain) -> Iterator[str]:
     """Survey rows that name a link which the study does not have would be lost without a word."""
-    names = {link.name for link in study.links}
+    keys = {link_key(link.name) for link in study.links}
     for name in terrain.survey_links:
-        if name not in names:
+        if link_key(name) not in keys:
             yield f"survey: rows for a link '{name}', which this study does not have, were not used"

@@ -235,7 +235,9 @@ class _Assembler:
                 )
                 for row in table.cover
             ),
-            obstacles=tuple(ObstacleSource(path=self._path("obstacles", row.path)) for row in table.obstacles),
+            obstacles=tuple(
+                ObstacleSource(path=self._path("obstacles", row.path), complete=row.complete) for row in table.obstacles
+            ),
             survey=tuple(SurveySource(path=self._path("survey", row.path)) for row in table.survey),
             gaps=table.gaps,
             sea_level_m=table.sea_level,

@@ -5,7 +5,7 @@ between tables: that is `reading`'s work.
 """
 
 import datetime as dt
-from typing import Annotated
+from typing import Annotated, Literal, TypeAlias
 
 from pydantic import BaseModel, ConfigDict, Field, model_validator
 
@@ -35,6 +35,9 @@ from fellspan.vocabulary import (
     MountedPolarization,
     Polarization,
 )
+
+CompleteKind: TypeAlias = Literal["building", "tree"]
+"""Kinds that a file of obstacles may hold all of."""
 
 
 class Table(BaseModel):
@@ -80,10 +83,21 @@ class CoverTable(Table):
     band: int = Field(default=1, ge=1, description="Band of the file, counted from 1.")
 
 
-class FileTable(Table):
-    """A file of obstacles or of surveyed points."""
+class ObstacleTable(Table):
+    """A file of obstacles."""
 
     path: str = Field(min_length=1, description="CSV or GeoJSON file.", examples=["obstacles.csv"])
+    complete: tuple[CompleteKind, ...] = Field(
+        default=(),
+        description="Kinds of which the file holds all that stand near the links.",
+        examples=[["building"]],
+    )
+
+
+class FileTable(Table):
+    """A file of surveyed points."""
+
+    path: str = Field(min_length=1, description="CSV file.", examples=["survey.csv"])
 
 
 class TerrainTable(Table):
@@ -100,7 +114,7 @@ class TerrainTable(Table):
     cover: Annotated[tuple[CoverTable, ...], OneOrMany(CoverTable)] = Field(
         default=(), description="Rasters of heights above ground.", examples=["terrain/trees.tif"]
     )
-    obstacles: Annotated[tuple[FileTable, ...], OneOrMany(FileTable)] = Field(
+    obstacles: Annotated[tuple[ObstacleTable, ...], OneOrMany(ObstacleTable)] = Field(
         default=(), description="Files of obstacles.", examples=["obstacles.csv"]
     )
     survey: Annotated[tuple[FileTable, ...], OneOrMany(FileTable)] = Field(

@@ -14,7 +14,7 @@ from fellspan.links.criteria import Criterion
 from fellspan.links.site import Aim, Antenna, Link, PatternOrigin, Radio, Site
 from fellspan.planning.inputs import Study
 from fellspan.study.notes import position_note
-from fellspan.terrain.sources import CoverSource, RasterSource
+from fellspan.terrain.sources import CoverSource, ObstacleSource, RasterSource
 
 _ABOVE = {"ground": "above ground", "roof": "above roof", "sea": "above sea level"}
 _BANDS = (("GHz", 1e9), ("MHz", 1e6), ("kHz", 1e3))
@@ -104,7 +104,7 @@ def _terrain(study: Study, folder: Path) -> str:
         ("ground", _files(_raster(source, folder) for source in terrain.ground)),
         ("surface", _files(_raster(source, folder) for source in terrain.surface)),
         ("cover", _files(_cover(source, folder) for source in terrain.cover)),
-        ("obstacles", _files(_path(source.path, folder) for source in terrain.obstacles)),
+        ("obstacles", _files(_obstacles(source, folder) for source in terrain.obstacles)),
         ("survey", _files(_path(source.path, folder) for source in terrain.survey)),
         ("gaps", quoted(terrain.gaps) if terrain.gaps != "error" else None),
         ("sea_level", _metres(terrain.sea_level_m) if terrain.sea_level_m else None),
@@ -157,6 +157,11 @@ def _cover(source: CoverSource, folder: Path) -> str:
             ("band", str(source.band) if source.band != 1 else None),
         ),
     )
+
+
+def _obstacles(source: ObstacleSource, folder: Path) -> str:
+    complete = f"[{', '.join(quoted(kind) for kind in source.complete)}]" if source.complete else None
+    return _inline(_path(source.path, folder), (("complete", complete),))
 
 
 def _criteria(study: Study) -> Iterable[str]:

@@ -4,8 +4,8 @@ Every sample is worked out from its own distance alone, so that a profile may be
 Opens nothing; knows nothing of radio.
 """
 
-from collections.abc import Sequence
-from dataclasses import dataclass, fields, replace
+import math
+from dataclasses import dataclass, replace
 from typing import Final
 
 import numpy as np
@@ -15,18 +15,20 @@ from numpy.typing import NDArray
 from fellspan.geodesy.geodesic import GeodesicPath
 from fellspan.terrain.alongpath import Floats
 from fellspan.terrain.beside import beside
-from fellspan.terrain.cover import NONE, OTHER, Cover, CoverLayer, combine
+from fellspan.terrain.cover import NONE, OTHER, Cover, CoverLayer, SurfaceStep, combine, surface_steps
 from fellspan.terrain.obstacle_tops import EDGE_M, Standing, nodes, stand
 from fellspan.terrain.obstacles import Crossing, ObstacleIndex, crossings_of
 from fellspan.terrain.profile import MEASURED_GROUND, MEASURED_NOTHING, MEASURED_TOP, BesidePath
+from fellspan.terrain.samples import Samples, merged
+from fellspan.terrain.sea import SEA_ERROR_M, Shores
 from fellspan.terrain.sources import CoverSource
-from fellspan.terrain.stack import RasterStack
-from fellspan.terrain.survey_hits import Measured, SurveyHits, SurveyIndex
-from fellspan.vocabulary import COVER_KINDS, GapPolicy
+from fellspan.terrain.stack import RasterStack, StackSample
+from fellspan.terrain.survey_hits import Chords, Measured, SurveyHits, chord_m
+from fellspan.terrain.survey_index import SurveyIndex
+from fellspan.vocabulary import COVER_KINDS, CoverKind, GapPolicy
 
-SEA_ERROR_M: Final = 0.5
-"""Standard error of a sea level that fills gaps, m: waves and the tide left over (common practice, no source)."""
-_SAME_M = 5e-4
+_REMOVABLE: Final = ("building", "tree")
+_MOST_SHORES = 200_000
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -43,6 +45,8 @@ class Layers:
     gaps: GapPolicy
     sea_level_m: float
     growth_years: float
+    complete: frozenset[CoverKind] = frozenset()
+    """Kinds of which the obstacle files hold all there is."""
 
     @property
     def first_survey(self) -> int:
@@ -62,44 +66,16 @@ class Layers:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
-class Samples:
-    """What stands at distances along a path; arrays (n,), meanings as in `PathProfile`."""
+class Ground:
+    """The ground at samples, arrays (n,); `raster_m` is what the rasters (or the sea) say, `raster` their samples as such."""
 
-    distance_m: Floats
-    latitude_deg: Floats
-    longitude_deg: Floats
-    ground_m: Floats
-    cover_m: Floats
-    cover_kind: NDArray[np.int8]
-    obstacle_index: NDArray[np.int32]
-    source: NDArray[np.int16]
-    measured: NDArray[np.int8]
-    sigma_m: Floats
-    known: NDArray[np.bool_]
-    negative_cover: bool = False
-
-
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
-class _Ground:
     value_m: Floats
     sigma_m: Floats
     source: NDArray[np.int16]
     raster_m: Floats
+    raster: StackSample
     measured: Measured
-
-
-def merged(exact_m: Floats, beside_m: Floats, regular_m: Floats, length_m: float) -> Floats:
-    """Distances, rising by at least half a millimetre: of those that crowd, exact ones stay first, then those beside."""
-    kept = np.array([0.0, length_m])
-    for group in (exact_m, beside_m, regular_m):
-        inside = np.unique(group[(group > 0.0) & (group < length_m)])
-        if inside.size == 0:
-            continue
-        inside = inside[np.concatenate(([True], np.diff(inside) > _SAME_M))]
-        after = np.searchsorted(kept, inside)
-        away = np.minimum(kept[after] - inside, inside - kept[after - 1])
-        kept = np.union1d(kept, inside[away > _SAME_M])
-    return kept
+    chords: Chords
 
 
 class PathWork:
@@ -108,12 +84,15 @@ class PathWork:
     def __init__(self, layers: Layers, path: GeodesicPath, *, name: str | None, cell_m: float) -> None:
         self.layers = layers
         self.path = path
+        self.cell_m = cell_m
         self.node_step_m = max(0.5 * cell_m, 0.05)
-        self.hits: SurveyHits = layers.survey.on_path(path, name)
+        self.longest_chord_m = chord_m(cell_m)
+        self.hits: SurveyHits = layers.survey.on_path(path, name, longest_m=self.longest_chord_m)
+        self._shores: Shores | None = None
         self._near = layers.obstacles.near(path)
         self.standing: tuple[Standing, ...] = stand(
             crossings_of(self._near, path),
-            ground_along=lambda distance_m: self._ground(distance_m).value_m,
+            ground_along=lambda distance_m: self.ground(distance_m).value_m,
             ground_at_supports=self._ground_at_supports,
             step_m=self.node_step_m,
             growth_years=layers.growth_years,
@@ -142,8 +121,8 @@ class PathWork:
         """Everything at rising distances, shape (n,)."""
         layers = self.layers
         latitude, longitude = self.path.positions(distance_m)
-        ground = self._ground(distance_m)
-        cover = self._cover(distance_m, ground)
+        ground = self.ground(distance_m)
+        cover, steps = self.cover(distance_m, ground)
         value = ground.value_m
         measured = ground.measured
         height, kind = cover.height_m, cover.kind
@@ -161,12 +140,25 @@ class PathWork:
         cover_sigma = np.where(said, measured.top_sigma_m, cover_sigma)
         absolute = (absolute & ~has_cover) | has_top
         kind = np.where(said & (measured.kind != NONE), measured.kind, kind)
+        # A line between points that lie far apart may only raise what stands there.
+        chords = ground.chords
+        chord = np.fmax(chords.top_m - value, chords.cover_m)
+        raises = ~said & np.isfinite(chord) & (chord > height)
+        height = np.where(raises, chord, height)
+        cover_sigma = np.where(raises, chords.sigma_m, cover_sigma)
+        absolute &= ~raises
+        kind = np.where(raises & (chords.kind != NONE), chords.kind, kind)
 
+        removed: set[int] = set()
+        tops_at_m = np.array([hit.at_m for hit in self.hits.ends() if hit.row.has_top])
         index = np.full(distance_m.shape, -1, dtype=np.int32)
         for number, standing in enumerate(self.standing):
             part = standing.covers(distance_m)
             above = standing.top_m(distance_m[part], value[part]) - value[part]
-            wins = (above > height[part]) & ~(said[part] & (not standing.crossing.obstacle.moves))
+            wins = above > height[part]
+            if self._is_removed(standing, tops_at_m) and (gone := wins & said[part]).any():
+                removed.add(number)
+                wins &= ~gone
             height[part] = np.where(wins, above, height[part])
             kind[part] = np.where(wins, COVER_KINDS.index(standing.shown.kind), kind[part])
             index[part] = np.where(wins, number, index[part])
@@ -193,17 +185,27 @@ class PathWork:
             measured=np.where(gap, MEASURED_NOTHING, code).astype(np.int8),
             sigma_m=np.where(gap, np.nan, sigma),
             known=(cover.known | said | (source == layers.sea)) & ~gap,
+            valued=cover.valued | said | (source == layers.sea),
             negative_cover=cover.negative,
+            removed=frozenset(removed),
+            surface_steps=steps,
         )
 
-    def _ground(self, distance_m: Floats) -> _Ground:
-        """The ground: survey before raster before sea."""
+    def _is_removed(self, standing: Standing, tops_at_m: Floats) -> bool:
+        """Whether a survey looked at the very spot: a top was measured within a cell of a building or tree."""
+        crossing = standing.crossing
+        if crossing.obstacle.moves or crossing.obstacle.kind not in _REMOVABLE:
+            return False
+        return bool(np.any((tops_at_m >= crossing.from_m - self.cell_m) & (tops_at_m <= crossing.to_m + self.cell_m)))
+
+    def ground(self, distance_m: Floats) -> Ground:
+        """The ground at rising distances: survey before raster before sea."""
         layers = self.layers
         sample = layers.ground.sample(self.path, distance_m)
         measured = self.hits.measured(distance_m)
         value, sigma, source = sample.value_m, sample.sigma_m, sample.source
-        if layers.gaps == "sea":
-            gap = ~np.isfinite(value)
+        if layers.gaps == "sea" and (gap := ~np.isfinite(value)).any():
+            gap[gap] = self.shores().are_sea(distance_m[gap])
             value = np.where(gap, layers.sea_level_m, value)
             sigma = np.where(gap, SEA_ERROR_M, sigma)
             source = np.where(gap, layers.sea, source).astype(np.int16)
@@ -213,9 +215,44 @@ class PathWork:
             value = np.where(told, measured.ground_m, value)
             sigma = np.where(told, measured.ground_sigma_m, sigma)
             source = np.where(told, layers.first_survey + measured.file, source).astype(np.int16)
-        return _Ground(value_m=value, sigma_m=sigma, source=source, raster_m=raster, measured=measured)
+        chords = self.hits.chords(distance_m)
+        raised = ~told & (chords.ground_m > value)
+        if raised.any():
+            value = np.where(raised, chords.ground_m, value)
+            sigma = np.where(raised, np.maximum(sigma, chords.sigma_m), sigma)
+            source = np.where(raised, layers.first_survey + chords.file, source).astype(np.int16)
+        return Ground(
+            value_m=value,
+            sigma_m=sigma,
+            source=source,
+            raster_m=raster,
+            raster=sample,
+            measured=measured,
+            chords=chords,
+        )
 
-    def _cover(self, distance_m: Floats, ground: _Ground) -> Cover:
+    def shores(self) -> Shores:
+        """The ground beside the gaps of this path, looked up once."""
+        if self._shores is None:
+            count = min(max(16, math.ceil(self.path.length_m / self.node_step_m)), _MOST_SHORES)
+            regular = np.linspace(0.0, self.path.length_m, count + 1)
+            distance = merged(self.hits.nodes(), self.hits.edges(), regular, self.path.length_m)
+            sample, measured = self.layers.ground.sample(self.path, distance), self.hits.measured(distance)
+            told = np.isfinite(measured.ground_m)
+            self._shores = Shores.of(
+                distance,
+                np.where(told, measured.ground_m, sample.value_m),
+                np.where(told, measured.ground_sigma_m, sample.sigma_m),
+                sea_level_m=self.layers.sea_level_m,
+            )
+        return self._shores
+
+    def gap_reason(self, from_m: float, to_m: float) -> str:
+        """Why a gap was not taken as sea; '' where sea was not asked for."""
+        return self.shores().reason(from_m, to_m) if self.layers.gaps == "sea" else ""
+
+    def cover(self, distance_m: Floats, ground: Ground) -> tuple[Cover, tuple[SurfaceStep, ...]]:
+        """What rasters say stands at rising distances, and how the surface raster stands against that of the ground."""
         layers = self.layers
         covers: list[CoverLayer] = []
         for source, stack in layers.cover:
@@ -224,28 +261,19 @@ class PathWork:
             covers.append(CoverLayer(kind=source.kind, value_m=sample.value_m, sigma_m=sample.sigma_m, growth_m=growth))
         if not layers.is_bare:
             cover = combine(ground.raster_m, covers, None, None)
-            return replace(cover, known=np.isfinite(ground.raster_m))
+            finite = np.isfinite(ground.raster_m)
+            return replace(cover, known=finite, valued=finite), ()
         if layers.surface is None:
-            return combine(ground.raster_m, covers, None, None)
+            return combine(ground.raster_m, covers, None, None, complete=layers.complete), ()
         surface = layers.surface.sample(self.path, distance_m)
-        return combine(ground.raster_m, covers, surface.value_m, surface.sigma_m)
+        cover = combine(ground.raster_m, covers, surface.value_m, surface.sigma_m, complete=layers.complete)
+        names = (layers.ground.names, layers.surface.names)
+        return cover, surface_steps(distance_m, ground.raster, surface, names)
 
     def _ground_at_supports(self, crossing: Crossing, spans: NDArray[np.int64]) -> Floats:
         """Ground under both ends of the spans of a crossing's line, m, (k, 2)."""
         line = shapely.get_coordinates(crossing.obstacle.shape)
         ends = np.stack((line[spans], line[spans + 1]), axis=1).reshape(-1, 2)
+        # No sea here: a support without ground hangs its line level, from the highest ground under the crossing.
         value = self.layers.ground.sample_positions(ends[:, 1], ends[:, 0]).value_m
-        if self.layers.gaps == "sea":
-            value = np.where(np.isfinite(value), value, self.layers.sea_level_m)
         return np.asarray(value, dtype=np.float64).reshape(-1, 2)
-
-
-def joined(parts: Sequence[Samples]) -> Samples:
-    """Samples of one path, taken in parts, in the order of their distance."""
-    order = np.argsort(np.concatenate([part.distance_m for part in parts]), kind="stable")
-    arrays = {
-        field.name: np.concatenate([getattr(part, field.name) for part in parts])[order]
-        for field in fields(Samples)
-        if field.name != "negative_cover"
-    }
-    return Samples(**arrays, negative_cover=any(part.negative_cover for part in parts))

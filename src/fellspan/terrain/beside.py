@@ -16,7 +16,7 @@ from fellspan.terrain.alongpath import Floats, along_across
 from fellspan.terrain.obstacles import BESIDE_M, NearShape, Obstacle
 from fellspan.terrain.profile import BesidePath
 
-MOST_BESIDE: Final = 50
+MOST_BESIDE: Final = 200
 """Most obstacles that are listed beside one path."""
 _FINEST_M, _PARTS = 2.0, 500
 _MOST_CORNERS = 64

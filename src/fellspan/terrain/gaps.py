@@ -3,16 +3,21 @@
 Knows samples and the bounds of rasters; opens nothing.
 """
 
+from collections.abc import Callable
+
 import numpy as np
 
 from fellspan.errors import TerrainGapError
-from fellspan.terrain.assemble import Samples
 from fellspan.terrain.profile import Gap, PathProfile
+from fellspan.terrain.samples import Samples
 from fellspan.terrain.stack import RasterStack
 
 
-def gaps_of(samples: Samples, ground: RasterStack) -> tuple[Gap, ...]:
-    """The stretches on which the ground is not known, from the first to the last sample without data."""
+def gaps_of(samples: Samples, ground: RasterStack, *, reason: Callable[[float, float], str]) -> tuple[Gap, ...]:
+    """The stretches on which the ground is not known, from the first to the last sample without data.
+
+    `reason` says of a stretch, from its beginning to its end in m, why it was not taken as sea.
+    """
     missing = ~np.isfinite(samples.ground_m)
     if not missing.any():
         return ()
@@ -23,6 +28,7 @@ def gaps_of(samples: Samples, ground: RasterStack) -> tuple[Gap, ...]:
             from_m=float(samples.distance_m[i]),
             to_m=float(samples.distance_m[j]),
             raster=_raster_beside(samples, ground.names, int(i), int(j)),
+            reason=reason(float(samples.distance_m[i]), float(samples.distance_m[j])),
         )
         for i, j in zip(starts, stops, strict=True)
     )
@@ -50,10 +56,16 @@ def gap_error(profile: PathProfile) -> TerrainGapError:
         finite = np.flatnonzero(np.isfinite(profile.ground_m))
         i = int(finite[0] if gap.from_m <= 0.0 else finite[-1])
         ends = f", which ends at {_place(profile, i)}"
+    remedy = 'add a raster that covers the stretch, or set terrain.gaps = "sea" if it is open water'
+    if gap.reason:
+        remedy = (
+            "add a raster that covers the stretch; if it is open water, survey the ground at its shore or at the end"
+        )
     return TerrainGapError(
         f"terrain has no data from {gap.from_m / 1000.0:.2f} km to {gap.to_m / 1000.0:.2f} km of {called}{more}",
         f"raster: {gap.raster}{ends}",
-        'add a raster that covers the stretch, or set terrain.gaps = "sea" if it is open water',
+        *([gap.reason] if gap.reason else []),
+        remedy,
     )
 
 

@@ -22,7 +22,7 @@ from fellspan.terrain.seams import Seam
 from fellspan.terrain.sources import CoverSource, RasterSource
 from fellspan.terrain.stack import RasterStack
 from fellspan.terrain.tiles import open_source
-from fellspan.terrain.units import common_datum, unit_name
+from fellspan.terrain.units import common_datum, is_ellipsoidal, unit_name
 from fellspan.vocabulary import RasterRole
 
 _SLOW_STRIP_CELLS = 4096
@@ -218,7 +218,7 @@ def _cautions(files: Sequence[RasterFile], survey: CellSurvey, finest: RasterFil
         found.append(
             "vertical datum not stated: heights are taken as above sea level; declare vertical_datum if you know it"
         )
-    if any((file.vertical_datum or "").startswith("ellipsoid") for file in files):
+    if any(is_ellipsoidal(file.vertical_datum) for file in files):
         found.append("heights are above the ellipsoid, not above sea level: they differ by up to about 100 m")
     if len({file.unit_m for file in files}) > 1:
         found.append("tiles count heights in different units; each is converted by what it states")

@@ -17,9 +17,9 @@ from fellspan.terrain.obstacles import ObstacleIndex
 from fellspan.terrain.sources import CoverSource, ObstacleSource, RasterSource, SurveySource
 from fellspan.terrain.stack import RasterStack
 from fellspan.terrain.survey import read_survey
-from fellspan.terrain.survey_hits import SurveyIndex
-from fellspan.terrain.units import datum_key
-from fellspan.vocabulary import GapPolicy, RasterRole
+from fellspan.terrain.survey_index import SurveyIndex
+from fellspan.terrain.units import datum_key, is_ellipsoidal
+from fellspan.vocabulary import CoverKind, GapPolicy, RasterRole
 
 _Source = TypeVar("_Source", RasterSource, CoverSource, ObstacleSource, SurveySource)
 
@@ -76,6 +76,12 @@ def open_layers(
         covers = tuple((source, opened([source], "cover")) for source in cover_sources)
         rasters = [stack for stack in (bare, top) if stack is not None]
         datum = _one_datum([*((stack.vertical_datum, stack.names[0]) for stack in rasters), *tables])
+        if policy == "sea" and is_ellipsoidal(datum):
+            raise VerticalDatumError(
+                f"gaps cannot be filled with sea: heights are above an ellipsoid ('{datum}'), not above sea level",
+                f"raster: {rasters[0].names[0]}",
+                "convert the heights to a datum of sea level (a geoid), or leave gaps at 'error'",
+            )
         on_failure.pop_all()
     if bare is None:
         notes.append("only a surface raster is given: heights above ground are counted from roofs and tree tops there")
@@ -90,7 +96,8 @@ def open_layers(
         surface=top if bare is not None else None,
         cover=covers,
         obstacles=ObstacleIndex([obstacle for read, _, _ in read_from for obstacle in read]),
-        survey=SurveyIndex(surveys, radius_m=0.5 * finest),
+        complete=frozenset(kind for source in obstacle_sources for kind in _complete(source)),
+        survey=SurveyIndex(surveys, radius_m=0.5 * finest, growth_years=growth_years),
         sources=(*rasters[0].names, *(f"survey: {file.name}" for file in surveys), "sea level"),
         gaps=policy,
         sea_level_m=sea_level_m,
@@ -115,6 +122,16 @@ def _listed(given: object, kind: type[_Source]) -> tuple[_Source, ...]:
         else:
             raise TerrainError(f"'{one!r}' is no path and no {kind.__name__}")
     return tuple(sources)
+
+
+def _complete(source: ObstacleSource) -> tuple[CoverKind, ...]:
+    for kind in source.complete:
+        if kind not in ("building", "tree"):
+            raise TerrainError(
+                f"obstacle file '{Path(source.path).name}' cannot be complete for kind '{kind}'",
+                "allowed: building, tree",
+            )
+    return source.complete
 
 
 def _rasters(sources: Sequence[RasterSource], role: RasterRole) -> tuple[RasterSource, ...]:

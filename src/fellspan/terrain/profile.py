@@ -19,6 +19,8 @@ class Gap:
     from_m: float
     to_m: float
     raster: str
+    reason: str = ""
+    """Why it was not taken as sea, where gaps are to be sea."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -103,7 +105,7 @@ class PathProfile:
     name: str | None = None
     """The path's name, where it was given; survey rows by link and distance go by it."""
     beside: tuple[BesidePath, ...] = ()
-    """Obstacles passed within `beside.BESIDE_M` but not crossed, by distance from A; the 50 deepest in the zones at most."""
+    """Obstacles passed within `beside.BESIDE_M` but not crossed, by distance from A; the 200 deepest in the zones at most."""
     notes: tuple[str, ...] = ()
     """Things a person must know: seams found, datum unknown, sea filled in ..."""
 

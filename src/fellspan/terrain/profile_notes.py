@@ -7,7 +7,10 @@ import numpy as np
 from numpy.typing import NDArray
 
 from fellspan.terrain.alongpath import Floats
-from fellspan.terrain.assemble import PathWork, Samples
+from fellspan.terrain.assemble import PathWork
+from fellspan.terrain.cover import missing_kinds
+from fellspan.terrain.samples import Samples
+from fellspan.terrain.survey_notes import survey_notes
 
 _MOST_SURVEY_NOTES = 10
 
@@ -26,11 +29,14 @@ def path_notes(work: PathWork, samples: Samples, *, refined: bool) -> tuple[str,
             f"no raster from {_stretches(samples.distance_m, sea)}: taken as open water at {layers.sea_level_m:g} m"
         )
     if layers.cover or layers.surface is not None:
-        unknown = ~samples.known & np.isfinite(samples.ground_m)
+        unknown = ~samples.valued & np.isfinite(samples.ground_m)
         if unknown.any():
             notes.append(
                 f"cover is not known from {_stretches(samples.distance_m, unknown)}: taken as none there, check on site"
             )
+    if missing := _missing(work, samples):
+        notes.append(missing)
+    notes += [str(step) for step in samples.surface_steps if step.is_noted]
     if not layers.is_bare and work.standing:
         notes.append(
             "obstacle heights above ground are counted from the surface raster, which may hold the obstacle already"
@@ -45,9 +51,26 @@ def path_notes(work: PathWork, samples: Samples, *, refined: bool) -> tuple[str,
             f"{beyond[0].where}: distance_m {beyond[0].distance_m:g} lies beyond the path's end at "
             f"{work.path.length_m:.0f} m; {len(beyond)} such rows are not used"
         )
+    notes.extend(survey_notes(work, samples))
     for hit in [hit for hit in work.hits.points if hit.row.note][:_MOST_SURVEY_NOTES]:
         notes.append(f"surveyed at {hit.at_m / 1000.0:.3f} km: {hit.row.note} ({hit.row.file})")
     return tuple(notes)
+
+
+def _missing(work: PathWork, samples: Samples) -> str:
+    """Which of trees and buildings the data do not hold, where they hold one of them; '' where nothing is lacking."""
+    layers = work.layers
+    kinds = [source.kind for source, _ in layers.cover]
+    lacking = missing_kinds(kinds, layers.complete)
+    if not layers.is_bare or not (kinds or layers.complete) or not lacking:
+        return ""
+    if not (samples.valued & ~samples.known & np.isfinite(samples.ground_m)).any() and kinds:
+        return ""
+    names = " and ".join(f"{kind}s" for kind in lacking)
+    return (
+        f"{names} are not in the data: the surface counts as not known; add a cover raster of them, a surface raster, "
+        f"or an obstacle file declared complete = [{', '.join(repr(kind) for kind in lacking)}]"
+    )
 
 
 def _stretches(distance_m: Floats, where: NDArray[np.bool_]) -> str:

@@ -37,9 +37,14 @@ class CoverSource:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class ObstacleSource:
-    """A CSV or GeoJSON file of obstacles."""
+    """A CSV or GeoJSON file of obstacles.
+
+    `complete` names the kinds, 'building' and 'tree', of which the file holds all that stand anywhere near the paths: only
+    then does their absence from it count as knowledge.
+    """
 
     path: str | Path
+    complete: tuple[CoverKind, ...] = ()
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -20,7 +20,7 @@ from fellspan.terrain.raster_file import RasterFile, on_plane
 from fellspan.terrain.seams import Seam, SeamBook, spread
 from fellspan.terrain.sources import CoverSource, RasterSource
 from fellspan.terrain.tiles import names_of, open_source
-from fellspan.terrain.units import common_datum
+from fellspan.terrain.units import common_datum, is_ellipsoidal
 from fellspan.vocabulary import RasterRole
 
 _SAME_CELL = 1.1
@@ -258,8 +258,8 @@ def _header_notes(
     if datumless and role != "cover":
         taken = "heights are taken as above sea level" if datum is None else f"taken as that of the others, '{datum}'"
         notes.append(f"{_listed(datumless)}: vertical datum not stated, {taken}")
-    if datum is not None and datum.startswith("ellipsoid"):
-        notes.append(f"heights are above the {datum}, not above sea level")
+    if is_ellipsoidal(datum):
+        notes.append(f"heights are above an ellipsoid ('{datum}'), not above sea level")
     return tuple(notes)
 
 

@@ -3,7 +3,7 @@
 Complaints name file, row, value and remedy. Knows nothing of paths and rasters: `survey_hits` lays the rows on a path.
 """
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from pathlib import Path
 from typing import Final
 
@@ -25,12 +25,18 @@ COLUMNS: Final = (
     "radius_m",
     "source",
     "error_m",
+    "growth_m_per_year",
     "vertical_datum",
 )
 DEFAULT_ERROR_M = 0.1
 """Standard error of a surveyed height whose row states none, m (common practice, no source)."""
 
 _MIN_AMSL_M, _MAX_AMSL_M = -500.0, 9500.0
+
+
+def link_key(name: str) -> str:
+    """What two spellings of one link's name have in common: letter case and the width of blanks do not matter."""
+    return " ".join(name.split()).casefold()
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -55,6 +61,23 @@ class SurveyRow:
     radius_m: float | None
     source: str
     error_m: float
+    growth_m_per_year: float | None = None
+    """Of a tree; None where the row does not say."""
+
+    @property
+    def has_top(self) -> bool:
+        """True where a top was measured, above sea level or above ground."""
+        return self.top_m is not None or self.cover_m is not None
+
+    def grown(self, years: float) -> "SurveyRow":
+        """The row with its tree so many years older."""
+        growth = (self.growth_m_per_year or 0.0) * years
+        if growth == 0.0:
+            return self
+        top = self.top_m
+        if top is not None and (self.ground_m is None or top > self.ground_m):
+            top += growth
+        return replace(self, top_m=top, cover_m=self.cover_m + growth if self.cover_m else self.cover_m)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -81,7 +104,7 @@ def read_survey(path: str | Path) -> SurveyFile:
     for fields in read_rows(file, COLUMNS, SurveyFileError, "survey"):
         row = _row(fields, file.name)
         if row.profile and row.distance_m is not None:
-            key = (row.profile, row.link.casefold())
+            key = (row.profile, link_key(row.link))
             if row.distance_m <= last.get(key, -1.0):
                 raise fields.fail(
                     f"distance_m {row.distance_m:g} of profile '{row.profile}' does not rise from {last[key]:g}",
@@ -117,6 +140,10 @@ def _row(fields: Fields, file: str) -> SurveyRow:
     if above is not None and ground is not None:
         top, above = ground + above, None
     error = fields.number("error_m", 0.0, 1000.0)
+    kind = fields.kind("none")
+    growth = fields.number("growth_m_per_year", 0.0, 10.0)
+    if growth is not None and kind != "tree":
+        raise fields.fail(f"growth_m_per_year {growth:g} given for what is no tree", "write kind tree, or leave it out")
     return SurveyRow(
         where=fields.where,
         file=file,
@@ -127,10 +154,11 @@ def _row(fields: Fields, file: str) -> SurveyRow:
         ground_m=ground,
         top_m=top,
         cover_m=above,
-        kind=fields.kind("none"),
+        kind=kind,
         note=fields.text("note"),
         profile=fields.text("profile"),
         radius_m=fields.number("radius_m", 0.0, 10_000.0),
         source=fields.text("source"),
         error_m=DEFAULT_ERROR_M if error is None else error,
+        growth_m_per_year=growth,
     )

@@ -1,24 +1,30 @@
-"""Lays surveyed points and profiles on a path: what they say at each sample, in place of the raster.
+"""Surveyed points and profiles on a path: what they say at each sample, in place of the raster.
 
-Knows nothing of files and rasters.
+Knows nothing of files and rasters; `survey_index` finds what counts on a path.
 """
 
-from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
+from typing import Final
 
 import numpy as np
-import shapely
 from numpy.typing import NDArray
 
-from fellspan.geodesy.geodesic import GeodesicPath
-from fellspan.terrain.alongpath import Floats, along_across, near_path, reach_boxes
+from fellspan.terrain.alongpath import Floats
 from fellspan.terrain.obstacle_tops import EDGE_M
-from fellspan.terrain.survey import SurveyFile, SurveyRow
+from fellspan.terrain.survey import SurveyRow
 from fellspan.vocabulary import COVER_KINDS
 
 NEAR_M = 10.0
 """A surveyed position counts on a path that passes within this or within its radius, m."""
-_TOUCH_M = 1e-3
+CHORD_CELLS: Final = 3.0
+CHORD_LEAST_M, CHORD_MOST_M = 50.0, 150.0
+"""Points farther apart than three cells, within these limits, m, do not make the line between them measured (our own rule)."""
+TOUCH_M = 1e-3
+
+
+def chord_m(cell_m: float) -> float:
+    """The longest line between two measured points that counts as measured, m, over rasters of such a cell."""
+    return min(max(CHORD_CELLS * cell_m, CHORD_LEAST_M), CHORD_MOST_M)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -50,12 +56,30 @@ class PointHit:
     top: bool = True
 
 
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Chords:
+    """Lines between points too far apart to count as measured, arrays (n,); NaN where none is. Only where they lie above
+    everything else do they count."""
+
+    ground_m: Floats
+    top_m: Floats
+    cover_m: Floats
+    sigma_m: Floats
+    kind: NDArray[np.int8]
+    file: NDArray[np.int16]
+
+
 @dataclass(frozen=True, slots=True, kw_only=True)
 class SegmentHit:
-    """Two consecutive points of a measured profile."""
+    """Two consecutive points of a measured profile, or one row at both ends of its own stretch."""
 
     first: PointHit
     second: PointHit
+
+    @property
+    def length_m(self) -> float:
+        """How far it runs along the path, m."""
+        return self.second.at_m - self.first.at_m
 
     @property
     def has_ground(self) -> bool:
@@ -74,14 +98,47 @@ class SurveyHits:
 
     points: tuple[PointHit, ...] = ()
     segments: tuple[SegmentHit, ...] = ()
+    wide: tuple[SegmentHit, ...] = ()
+    """Stretches too long to count as measured."""
     beyond: tuple[SurveyRow, ...] = ()
     """Rows of this link whose distance from A is longer than the path."""
 
     def nodes(self) -> Floats:
         """Distances at which a sample must stand, those at points first."""
         exact = [hit.at_m for hit in self.points]
-        exact += [end.at_m for segment in self.segments for end in (segment.first, segment.second)]
+        exact += [end.at_m for segment in (*self.segments, *self.wide) for end in (segment.first, segment.second)]
         return np.array(exact, dtype=np.float64)
+
+    def ends(self) -> tuple[PointHit, ...]:
+        """Every row that counts as measured on the path, once, by its distance."""
+        every = [*self.points, *(end for segment in self.segments for end in (segment.first, segment.second))]
+        once = {id(hit.row): hit for hit in reversed(every)}
+        return tuple(sorted(once.values(), key=lambda hit: hit.at_m))
+
+    def rows_at(self, distance_m: float) -> tuple[SurveyRow, ...]:
+        """The rows that speak at a distance: the nearest point, else both ends of a stretch."""
+        reach = [hit for hit in self.points if abs(hit.at_m - distance_m) <= hit.radius_m + TOUCH_M]
+        if reach:
+            return (min(reach, key=lambda hit: abs(hit.at_m - distance_m)).row,)
+        for segment in self.segments:
+            if segment.first.at_m - TOUCH_M <= distance_m <= segment.second.at_m + TOUCH_M:
+                return (segment.first.row, segment.second.row)
+        return ()
+
+    def chords(self, distance_m: Floats) -> Chords:
+        """The lines over stretches too long to count as measured, at rising distances; the highest where several are."""
+        count = distance_m.size
+        out = Chords(
+            ground_m=np.full(count, np.nan),
+            top_m=np.full(count, np.nan),
+            cover_m=np.full(count, np.nan),
+            sigma_m=np.zeros(count),
+            kind=np.zeros(count, dtype=np.int8),
+            file=np.full(count, -1, dtype=np.int16),
+        )
+        for segment in self.wide:
+            _lay_chord(segment, distance_m, out)
+        return out
 
     def edges(self) -> Floats:
         """Distances just inside and outside the stretches that the survey speaks for."""
@@ -89,6 +146,8 @@ class SurveyHits:
         out = [hit.at_m + side * (hit.radius_m + EDGE_M) for hit in self.points for side in (-1.0, 1.0)]
         out += [segment.first.at_m - EDGE_M for segment in self.segments]
         out += [segment.second.at_m + EDGE_M for segment in self.segments]
+        ends += [segment.first.at_m - EDGE_M for segment in self.wide]
+        ends += [segment.second.at_m + EDGE_M for segment in self.wide]
         return np.array(ends + out, dtype=np.float64)
 
     def measured(self, distance_m: Floats) -> Measured:
@@ -113,8 +172,8 @@ class SurveyHits:
 
 
 def _stretch(distance_m: Floats, start_m: float, stop_m: float) -> slice:
-    first = np.searchsorted(distance_m, start_m - _TOUCH_M, side="left")
-    return slice(int(first), int(np.searchsorted(distance_m, stop_m + _TOUCH_M, side="right")))
+    first = np.searchsorted(distance_m, start_m - TOUCH_M, side="left")
+    return slice(int(first), int(np.searchsorted(distance_m, stop_m + TOUCH_M, side="right")))
 
 
 def _lay_segment(segment: SegmentHit, distance_m: Floats, out: Measured) -> None:
@@ -141,6 +200,24 @@ def _lay_segment(segment: SegmentHit, distance_m: Floats, out: Measured) -> None
         out.file[part] = first.file
 
 
+def _lay_chord(segment: SegmentHit, distance_m: Floats, out: Chords) -> None:
+    first, second = segment.first, segment.second
+    part = _stretch(distance_m, first.at_m, second.at_m)
+    share = np.clip((distance_m[part] - first.at_m) / (second.at_m - first.at_m), 0.0, 1.0)
+    pairs = (
+        (out.ground_m, first.row.ground_m, second.row.ground_m),
+        (out.top_m, first.row.top_m, second.row.top_m),
+        (out.cover_m, first.row.cover_m, second.row.cover_m),
+    )
+    for values, low, high in pairs:
+        if low is not None and high is not None:
+            values[part] = np.fmax(values[part], low + (high - low) * share)
+    out.sigma_m[part] = np.maximum(out.sigma_m[part], max(first.row.error_m, second.row.error_m))
+    kinds = (COVER_KINDS.index(first.row.kind), COVER_KINDS.index(second.row.kind))
+    out.kind[part] = np.where(share < 0.5, *kinds)
+    out.file[part] = first.file
+
+
 def _lay_point(hit: PointHit, distance_m: Floats, out: Measured, ground_away: Floats, top_away: Floats) -> None:
     row = hit.row
     part = _stretch(distance_m, hit.at_m - hit.radius_m, hit.at_m + hit.radius_m)
@@ -160,100 +237,3 @@ def _lay_point(hit: PointHit, distance_m: Floats, out: Measured, ground_away: Fl
         out.ground_m[part][wins] = row.ground_m
         out.ground_sigma_m[part][wins] = row.error_m
         out.file[part][wins] = hit.file
-
-
-class SurveyIndex:
-    """Finds the surveyed rows that count on a path, among many."""
-
-    def __init__(self, files: Sequence[SurveyFile], *, radius_m: float) -> None:
-        self._radius_m = radius_m
-        self._rows = [(number, row) for number, file in enumerate(files) for row in file.rows]
-        self._before = self._preceding()
-        self._by_link: dict[str, list[int]] = {}
-        placed: list[int] = []
-        for i, (_, row) in enumerate(self._rows):
-            if row.distance_m is None:
-                placed.append(i)
-            else:
-                self._by_link.setdefault(row.link.casefold(), []).append(i)
-        self._placed = np.array(placed, dtype=np.int64)
-        rows = [self._rows[i][1] for i in placed]
-        self._latitude = np.array([row.latitude_deg for row in rows], dtype=np.float64)
-        self._longitude = np.array([row.longitude_deg for row in rows], dtype=np.float64)
-        self._reach = np.array([max(self._radius(row), NEAR_M) for row in rows], dtype=np.float64)
-        bounds = np.column_stack((self._longitude, self._latitude, self._longitude, self._latitude))
-        self._tree = shapely.STRtree(reach_boxes(bounds, self._reach))
-
-    def _preceding(self) -> dict[int, int]:
-        """For each row of a profile but its first, the row before it."""
-        last: dict[tuple[int, str, str], int] = {}
-        before: dict[int, int] = {}
-        for i, (number, row) in enumerate(self._rows):
-            if row.profile:
-                key = (number, row.profile, row.link.casefold())
-                if key in last:
-                    before[i] = last[key]
-                last[key] = i
-        return before
-
-    @property
-    def links(self) -> tuple[str, ...]:
-        """Names of links that rows refer to, in the order of the files."""
-        return tuple(dict.fromkeys(row.link for _, row in self._rows if row.link))
-
-    def on_path(self, path: GeodesicPath, name: str | None) -> SurveyHits:
-        """The rows that count on a path: positions near it, and distances along the link of that name."""
-        hits: dict[int, PointHit] = {}
-        unused: list[SurveyRow] = []
-        for i in self._by_link.get(name.casefold(), ()) if name else ():
-            number, row = self._rows[i]
-            if row.distance_m is None or row.distance_m > path.length_m + max(self._radius(row), NEAR_M):
-                unused.append(row)
-            else:
-                hits[i] = PointHit(row=row, file=number, at_m=row.distance_m, radius_m=self._radius(row))
-        if self._placed.size:
-            found, shifts = near_path(self._tree, path)
-            along, across = along_across(path, self._latitude[found], self._longitude[found] + shifts)
-            beyond = np.maximum(np.maximum(-along, along - path.length_m), 0.0)
-            for j in np.flatnonzero(np.hypot(across, beyond) <= self._reach[found]):
-                number, row = self._rows[i := int(self._placed[found[j]])]
-                hits[i] = PointHit(row=row, file=number, at_m=float(along[j]), radius_m=self._radius(row))
-        segments = tuple(self._segments(hits))
-        return SurveyHits(points=tuple(_alone(hits, segments, path.length_m)), segments=segments, beyond=tuple(unused))
-
-    def _radius(self, row: SurveyRow) -> float:
-        return self._radius_m if row.radius_m is None else row.radius_m
-
-    def _segments(self, hits: dict[int, PointHit]) -> Iterator[SegmentHit]:
-        """Stretches between points that follow one another in a profile and both count on the path."""
-        for i in sorted(hits):
-            if (j := self._before.get(i)) is None or j not in hits:
-                continue
-            first, second = sorted((hits[j], hits[i]), key=lambda hit: hit.at_m)
-            segment = SegmentHit(first=first, second=second)
-            if second.at_m - first.at_m > _TOUCH_M and (segment.has_ground or segment.has_top):
-                yield segment
-
-
-def _alone(hits: dict[int, PointHit], segments: Sequence[SegmentHit], length_m: float) -> Iterator[PointHit]:
-    """What stands for itself: single points, and of a profile's points what no stretch beside them carries."""
-    ground: set[int] = set()
-    top: set[int] = set()
-    for segment in segments:
-        for end in (segment.first, segment.second):
-            if segment.has_ground:
-                ground.add(id(end.row))
-            if segment.has_top:
-                top.add(id(end.row))
-    for i in sorted(hits):
-        hit = hits[i]
-        alone_ground, alone_top = id(hit.row) not in ground, id(hit.row) not in top
-        if -hit.radius_m - NEAR_M <= hit.at_m <= length_m + hit.radius_m + NEAR_M and (alone_ground or alone_top):
-            yield PointHit(
-                row=hit.row,
-                file=hit.file,
-                at_m=min(max(hit.at_m, 0.0), length_m) if hit.radius_m < NEAR_M else hit.at_m,
-                radius_m=hit.radius_m,
-                ground=alone_ground,
-                top=alone_top,
-            )

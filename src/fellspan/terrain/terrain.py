@@ -14,11 +14,12 @@ from fellspan.errors import TerrainError
 from fellspan.geodesy.geodesic import GeodesicPath
 from fellspan.geodesy.position import Position
 from fellspan.terrain.alongpath import Floats
-from fellspan.terrain.assemble import Layers, PathWork, Samples, joined, merged
+from fellspan.terrain.assemble import Layers, PathWork
 from fellspan.terrain.gaps import gap_error, gaps_of
 from fellspan.terrain.opening import CoverLike, ObstaclesLike, RasterLike, SurveyLike, open_layers
 from fellspan.terrain.profile import PathProfile
 from fellspan.terrain.profile_notes import path_notes
+from fellspan.terrain.samples import Samples, joined, merged
 
 MAX_SAMPLES = 2_000_000
 """Most samples of one path; a finer step is made coarser, with a note."""
@@ -219,6 +220,9 @@ class Terrain:
         work = PathWork(self._layers, path, name=name, cell_m=cell_m)
         distance = work.distances(np.linspace(0.0, path.length_m, count + 1))
         samples = work.samples(distance)
+        for step in samples.surface_steps:
+            if step.is_refused:
+                raise step.error()
         return self._made(work, samples, name=name, step_m=path.length_m / count, cell_m=cell_m, extra=notes)
 
     def _made(
@@ -251,7 +255,7 @@ class Terrain:
             sigma_m=samples.sigma_m,
             sources=self._layers.sources,
             obstacles=tuple(standing.shown for standing in work.standing),
-            gaps=gaps_of(samples, self._layers.ground),
+            gaps=gaps_of(samples, self._layers.ground, reason=work.gap_reason),
             step_m=step_m,
             cell_m=cell_m,
             ground_is_bare=self._layers.is_bare,
@@ -283,4 +287,5 @@ def _samples_of(profile: PathProfile) -> Samples:
         measured=profile.measured,
         sigma_m=profile.sigma_m,
         known=np.full(profile.distance_m.shape, profile.surface_is_known),
+        valued=np.full(profile.distance_m.shape, profile.surface_is_known),
     )
