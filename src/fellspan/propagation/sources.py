@@ -11,6 +11,7 @@ from fellspan.propagation.constants import K_FORMULA_HIGH_M, K_FORMULA_LOW_M
 from fellspan.propagation.source_types import Source, Validity
 from fellspan.propagation.sources_antennas import ANTENNA_SOURCES
 from fellspan.propagation.sources_fading import FADING_SOURCES
+from fellspan.propagation.sources_reflection import REFLECTION_SOURCES
 from fellspan.propagation.sources_weather import WEATHER_SOURCES
 
 
@@ -233,7 +234,7 @@ _ALL: Final = (
 __all__ = ["SOURCES", "Source", "Validity", "out_of_range", "source"]
 
 SOURCES: Final[Mapping[str, Source]] = MappingProxyType(
-    {entry.key: entry for entry in (*_ALL, *ANTENNA_SOURCES, *WEATHER_SOURCES, *FADING_SOURCES)}
+    {entry.key: entry for entry in (*_ALL, *ANTENNA_SOURCES, *WEATHER_SOURCES, *FADING_SOURCES, *REFLECTION_SOURCES)}
 )
 """Every source of this room by its key, in the order of the methods page."""
 
