@@ -57,6 +57,26 @@ def test_other_datum_is_refused() -> None:
         _assess(profile, same | {"vertical_datum": "EGM96"})
 
 
+def test_one_datum_in_two_spellings_is_one() -> None:
+    profile = profile_of(2000.0, vertical_datum="EGM2008 height")
+    sea: dict[str, object] = {"height_m": 50.0, "height_reference": "sea", "vertical_datum": "EGM2008"}
+    assert _assess(profile, sea).result.ends.a.antenna_amsl_m == 50.0
+    feet = profile_of(2000.0, vertical_datum="NAVD88 height (ftUS)")
+    assert _assess(feet, sea | {"vertical_datum": "NAVD 88"}).result.ends.a.antenna_amsl_m == 50.0
+
+
+@pytest.mark.parametrize(
+    "site", [{"height_m": 50.0, "height_reference": "sea"}, {"height_m": 9.0, "ground_amsl_m": 2.0}]
+)
+def test_height_above_sea_level_over_ellipsoidal_terrain_is_refused(site: dict[str, object]) -> None:
+    datum = "ellipsoid of WGS 84"
+    profile = profile_of(2000.0, vertical_datum=datum)
+    with pytest.raises(VerticalDatumError, match=r"'Birch'.*ellipsoid \('ellipsoid of WGS 84'\)"):
+        _assess(profile, 10.0, site)
+    assert _assess(profile, 10.0, site | {"vertical_datum": datum}).result.ends.b.antenna_agl_m > 0.0
+    assert _assess(profile, 10.0, 10.0).result.ends.b.antenna_agl_m == 10.0
+
+
 def test_datum_that_nobody_states_draws_a_caution() -> None:
     profile = profile_of(2000.0)
     sea = {"height_m": 50.0, "height_reference": "sea", "vertical_datum": "Tolmera 1974"}

@@ -141,6 +141,12 @@ def test_clear_on_bare_ground_says_so_first() -> None:
     assert any("trees and buildings are not in the data" in reason for reason in result.reasons)
 
 
+def test_bare_ground_names_the_kind_that_the_data_lack() -> None:
+    note = "buildings are not in the data from 0.00 to 5.00 km"
+    result = _result(profile_of(5e3, notes=(note,)), 60.0, 60.0)
+    assert f"Basis: bare ground only; {note} (but for" in " ".join(result.reasons)
+
+
 def test_basis() -> None:
     assert _result(profile_of(5e3, surface_is_known=True)).basis == "surface raster"
     assert _result(profile_of(5e3, ground_is_bare=False)).basis == "surface raster"
@@ -186,6 +192,18 @@ def test_level_by_hand() -> None:
     assert result.margin_db.at_a == pytest.approx(80 - 70.052, abs=5e-4)
     assert result.signal_verdict == "marginal"
     assert any("not yet counted" in reason for reason in result.reasons)
+
+
+def test_above_10_ghz_gases_and_rain_are_missed() -> None:
+    for frequency_hz, said in ((9.9e9, False), (11e9, True)):
+        result = _result(profile_of(5e3), frequency_hz=frequency_hz, power_dbm=20.0, gain_dbi=15.0)
+        assert any("gases and rain are not yet counted" in reason for reason in result.reasons) is said
+
+
+def test_an_absurd_length_draws_a_caution() -> None:
+    far = _result(profile_of(310e3), 3000.0, 3000.0)
+    assert any(caution.startswith("The path is 310 km long") for caution in far.cautions)
+    assert not any("km long" in caution for caution in _result(profile_of(290e3), 3000.0, 3000.0).cautions)
 
 
 def test_feeders_at_both_ends_are_lost() -> None:
