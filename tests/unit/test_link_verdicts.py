@@ -142,9 +142,9 @@ def test_clear_on_bare_ground_says_so_first() -> None:
 
 
 def test_bare_ground_names_the_kind_that_the_data_lack() -> None:
-    note = "buildings are not in the data from 0.00 to 5.00 km"
+    note = "buildings are not in the data: the surface counts as not known"
     result = _result(profile_of(5e3, notes=(note,)), 60.0, 60.0)
-    assert f"Basis: bare ground only; {note} (but for" in " ".join(result.reasons)
+    assert "Basis: bare ground only; buildings are not in the data (but for" in " ".join(result.reasons)
 
 
 def test_basis() -> None:

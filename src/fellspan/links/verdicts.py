@@ -93,8 +93,8 @@ def basis_of(profile: PathProfile, standing: Standing, levels: PathLevels, *, ro
 
 def not_held(profile: PathProfile) -> str | None:
     """What the notes of a profile say that its data do not hold; None where they say nothing of it."""
-    said = [note.rstrip(".") for note in profile.notes if "cover is not known" in note or "not in the data" in note]
-    return "; ".join(said) or None
+    said = [note.split(": ")[0] for note in profile.notes if "cover is not known" in note or "not in the data" in note]
+    return " and ".join(said) or None
 
 
 def signal_verdict(margin_db: AtEnds, *, wanted_db: float, trees: bool = False) -> SignalVerdict | None:
