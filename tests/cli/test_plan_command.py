@@ -1,5 +1,6 @@
 """`fellspan plan`: page, JSON, exit codes, chosen links, failures."""
 
+import csv
 import json
 from pathlib import Path
 from typing import Any
@@ -74,9 +75,78 @@ def test_json_is_what_the_api_returns(clear_study: Path, capsys: pytest.CaptureF
     assert printed["links"][0]["verdict"] == "clear"
 
 
-@pytest.mark.parametrize(("hill_m", "required", "code"), [(0.0, "clear", 0), (60.0, "clear", 1), (60.0, "marginal", 1)])
-def test_required_verdict_sets_the_exit_code(tmp_path: Path, hill_m: float, required: str, code: int) -> None:
-    assert run("plan", write_study(tmp_path, hill_m=hill_m), "--require", required) == code
+AS_SURFACE = STUDY.replace('ground = "ground.tif"', 'surface = "ground.tif"')
+
+
+@pytest.mark.parametrize(
+    ("text", "hill_m", "required", "code"),
+    [
+        (AS_SURFACE, 0.0, "clear", 0),
+        (STUDY, 0.0, "clear", 1),  # clear on bare ground only is not clear
+        (STUDY, 0.0, "clear-bare-ground", 0),
+        (STUDY, 0.0, "marginal", 0),
+        (AS_SURFACE, 60.0, "clear", 1),
+        (STUDY, 60.0, "clear-bare-ground", 1),
+        (STUDY, 60.0, "marginal", 1),
+    ],
+)
+def test_required_verdict_sets_the_exit_code(
+    tmp_path: Path, capsys: pytest.CaptureFixture[str], text: str, hill_m: float, required: str, code: int
+) -> None:
+    assert run("plan", write_study(tmp_path, text, hill_m=hill_m), "--require", required) == code
+    said = f"fellspan: --require {required} is not reached by West - East ("
+    assert capsys.readouterr().err.startswith(said) == (code == 1)
+
+
+def four_links(folder: Path) -> Path:
+    """A study of four links over the same two places."""
+    (head, link) = STUDY.split("[[link]]")
+    links = ["[[link]]" + link.replace("West - East", f"Link {number}") for number in range(4)]
+    return write_study(folder, head + "\n".join(links))
+
+
+def test_many_links_get_a_table_and_their_decisions(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    study = four_links(tmp_path)
+    assert run("plan", study) == 0
+    brief = capsys.readouterr().out
+    assert "dBm at A" not in brief
+    assert "--full" in brief
+    assert max(map(len, brief.splitlines())) <= 80
+    table, *decisions = brief.split("\n\n")[1:6]
+    assert table.count("clear on bare ground only") == len(decisions) == 4
+    for text in decisions:
+        assert 4 <= len(text.splitlines()) <= 6
+        assert "CLEAR ON BARE GROUND ONLY" in text
+        assert "Basis: bare ground only" in text
+    assert run("plan", study, "--full") == 0
+    assert capsys.readouterr().out.count("dBm at A") == 4
+    assert run("plan", study, "--link", "Link 2") == 0
+    assert "dBm at A" in capsys.readouterr().out
+
+
+def test_no_view_calls_a_link_on_bare_ground_clear_alone(clear_study: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    out_dir = clear_study.parent / "report"
+    assert run("plan", clear_study, "--out", out_dir) == 0
+    assert "\nCLEAR ON BARE GROUND ONLY: " in capsys.readouterr().out
+    (row,) = csv.DictReader((out_dir / "links.csv").read_text(encoding="utf-8").splitlines())
+    assert (row["verdict"], row["state"]) == ("clear", "clear on bare ground only")
+    overview = (out_dir / "index.html").read_text(encoding="utf-8")
+    assert '<span class="total clear"><b>0</b> clear</span>' in overview
+    assert '<span class="total clear-bare"><b>1</b> clear on bare ground only</span>' in overview
+    assert '<span class="verdict clear"' not in overview
+    assert '<span class="verdict clear-bare"><b aria-hidden="true">(✓)</b> Clear on bare ground only' in overview
+    assert "map-path clear-bare of-link-0" in overview
+
+
+def test_a_signal_through_an_obstruction_is_no_good_news(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    loud = STUDY.replace('threshold = "-75 dBm"', 'threshold = "-120 dBm"')
+    study = write_study(tmp_path, loud, hill_m=60.0)
+    assert run("plan", study, "--out", tmp_path / "report") == 0
+    out = capsys.readouterr().out
+    assert "MEETS" not in out
+    assert "but through an obstruction" in out
+    (page,) = (tmp_path / "report").glob("link-01*.html")
+    assert "meets, but through an obstruction" in page.read_text(encoding="utf-8")
 
 
 def test_a_failed_link_does_not_stop_the_others(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
@@ -151,6 +221,51 @@ def test_a_report_that_cannot_be_written_is_exit_code_4(clear_study: Path, capsy
     assert str(target) in err
     assert len(err.splitlines()) <= 4
     assert target.read_text(encoding="utf-8") == "mine"
+
+
+def test_a_target_is_refused_before_anything_is_printed_or_left_there(
+    clear_study: Path, capsys: pytest.CaptureFixture[str]
+) -> None:
+    foreign = clear_study.parent / "mine"
+    foreign.mkdir()
+    (foreign / "index.html").write_text("mine", encoding="utf-8")
+    (clear_study.parent / "file").touch()
+    for target, word in ((foreign, "not written by Fellspan"), (clear_study.parent / "file", "is a file")):
+        assert run("plan", clear_study, "--out", target) == 4
+        out, err = capsys.readouterr()
+        assert out == ""
+        assert word in err
+    assert [path.name for path in foreign.iterdir()] == ["index.html"]
+
+
+def test_one_link_does_not_replace_a_report_of_others(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    study, out_dir = four_links(tmp_path), tmp_path / "report"
+    assert run("plan", study, "--out", out_dir) == 0
+    before = {path.name for path in out_dir.iterdir()}
+    capsys.readouterr()
+    assert run("plan", study, "--link", "Link 2", "--out", out_dir) == 2
+    out, err = capsys.readouterr()
+    assert out == ""
+    assert "also holds 'Link 0', 'Link 1', 'Link 3', which --link leaves out" in err
+    assert {path.name for path in out_dir.iterdir()} == before
+    assert run("plan", study, "--link", "Link 2", "--out", tmp_path / "alone") == 0
+    assert run("plan", study, "--link", "Link 2", "--out", tmp_path / "alone") == 0
+    # Links that a study has lost leave the report, and that is said.
+    capsys.readouterr()
+    assert run("plan", write_study(tmp_path), "--out", out_dir) == 0
+    assert "'Link 2' and 1 more, not planned now: removed from it" in capsys.readouterr().err
+
+
+def test_a_run_that_fails_says_that_the_old_report_stands(
+    clear_study: Path, capsys: pytest.CaptureFixture[str]
+) -> None:
+    out_dir = clear_study.parent / "report"
+    assert run("plan", clear_study, "--out", out_dir) == 0
+    capsys.readouterr()
+    (clear_study.parent / "ground.tif").write_text("no raster", encoding="utf-8")
+    assert run("plan", clear_study, "--out", out_dir) == 2
+    assert f"the earlier report in '{out_dir}' stands as it was" in capsys.readouterr().err
+    assert (out_dir / "index.html").exists()
 
 
 def test_no_report_when_no_link_could_be_planned(clear_study: Path) -> None:

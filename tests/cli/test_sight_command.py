@@ -94,7 +94,7 @@ def test_what_is_no_pair_is_refused(words: list[str]) -> None:
 def test_clear_sight_is_said_and_saved(folder: Path, run: Callable[..., Done], points: tuple[str, ...]) -> None:
     done = run("sight", *points, *OPTIONS, "--study", "two.toml")
     assert done.returncode == 0, done.stderr
-    assert "CLEAR, on bare ground only" in done.stdout
+    assert "CLEAR ON BARE GROUND ONLY" in done.stdout
     assert "two.toml" in done.stderr
     (link,) = load_study(folder / "two.toml").links
     assert link.b.height_m == pytest.approx(30.48)

@@ -3,19 +3,22 @@
 Shows what assessment found and computes nothing.
 """
 
-from collections.abc import Container
+from collections.abc import Container, Sequence
 from typing import Final
 
 from fellspan.cli import figures
 from fellspan.cli.layout import WIDTH, Ink, columns_of, cut, labelled, printable, table, wrapped
 from fellspan.links.result import AntennaResult, AtEnds, CriterionResult, EndResult, LinkResult
+from fellspan.links.words import STATE_WORDS, State, state_of
 from fellspan.planning.plan import LinkPlan
 
-_TONES: Final = {"clear": "good", "marginal": "doubt", "obstructed": "bad", "meets": "good", "below": "bad"}
+_TONES: Final = {
+    "clear": "good", "clear-bare": "doubt", "marginal": "doubt", "obstructed": "bad", "meets": "good", "below": "bad",
+}  # fmt: skip
 _BASIS_WORDS: Final = {
     "surveyed": "as surveyed on the ground",
     "surface raster": "by a raster of the surface; not surveyed",
-    "bare ground only": "on bare ground only: trees and buildings are not in it",
+    "bare ground only": "on bare ground only: what stands on it is not all known",
 }
 _SIGNAL_WORDS: Final = {
     "meets": "the margin wanted is there",
@@ -25,16 +28,16 @@ _SIGNAL_WORDS: Final = {
 _CRITERIA_WIDTHS: Final = (30, 8, 5, 7, 9, 7)
 
 
-def verdict_tone(verdict: str) -> str:
-    """The tone of emphasis for a verdict."""
-    return _TONES[verdict]
+def state_tone(state: State) -> str:
+    """The tone of emphasis for the state of a path."""
+    return _TONES[state]
 
 
 def link_lines(plan: LinkPlan, *, ink: Ink, told: Container[str] = ()) -> list[str]:
     """One link as lines without line ends; cautions that are `told` elsewhere on the page are left out."""
     result = plan.result
     return [
-        *_decision(result, ink),
+        *decision_lines(result, ink),
         *_governing(result),
         "",
         *_criteria(result),
@@ -45,18 +48,40 @@ def link_lines(plan: LinkPlan, *, ink: Ink, told: Container[str] = ()) -> list[s
     ]
 
 
-def _decision(result: LinkResult, ink: Ink) -> list[str]:
+def decision_lines(result: LinkResult, ink: Ink, *, most: int | None = None) -> list[str]:
+    """Name, verdict and reasons; only as many whole sentences as `most` lines hold, the basis of a bare one among them."""
     facts = f"{figures.distance(result.distance_m)} at {figures.frequency(result.frequency_hz)}"
     name = cut(printable(result.name), WIDTH - len(facts) - 2)
     gap = " " * (WIDTH - columns_of(name) - len(facts))
-    verdict = result.verdict.upper()
-    lines = [
-        f"{ink.emphasise(name)}{gap}{facts}",
-        f"{ink.emphasise(verdict, _TONES[result.verdict])}, {_BASIS_WORDS[result.basis]}",
-    ]
-    for reason in result.reasons:
-        lines += wrapped(reason, first="  ")
-    return lines
+    state = state_of(result)
+    verdict, basis = STATE_WORDS[state].upper(), f", {_BASIS_WORDS[result.basis]}"
+    if state == "clear-bare":
+        basis = basis[basis.index(":") :]
+    lines = [f"{ink.emphasise(name)}{gap}{facts}", f"{ink.emphasise(verdict, _TONES[state])}{basis}"]
+    room = None if most is None else most - len(lines)
+    return lines + [line for told in _told(result.reasons, room) for line in told]
+
+
+def _told(reasons: Sequence[str], room: int | None) -> list[list[str]]:
+    """The sentences as lines; where room is short whole ones are left out, and what the verdict line says too."""
+    lines = [wrapped(reason, first="  ") for reason in reasons]
+    if room is None:
+        return lines
+    kept: set[int] = set()
+    worth = [i for i, reason in enumerate(reasons) if _is_bare(reason) or not reason.startswith("Basis:")]
+    for index in sorted(worth, key=lambda index: (_weight(reasons[index], index), index)):
+        if sum(len(lines[i]) for i in kept) + len(lines[index]) <= room:
+            kept.add(index)
+    return [lines[index] for index in sorted(kept)]
+
+
+def _weight(reason: str, index: int) -> int:
+    """How far down a sentence stands when room is short: what to build and what is not known come right after the first."""
+    return 0 if index == 0 else 1 if reason.startswith(("Rais", "No height")) or _is_bare(reason) else 2
+
+
+def _is_bare(reason: str) -> bool:
+    return reason.startswith("Basis: bare ground")
 
 
 def _governing(result: LinkResult) -> list[str]:
@@ -108,7 +133,10 @@ def _level(result: LinkResult, ink: Ink) -> list[str]:
     lines = []
     if result.signal_verdict is not None:
         word = result.signal_verdict
-        lines.append(f"  {'Signal':<14} {ink.emphasise(word.upper(), _TONES[word])}: {_SIGNAL_WORDS[word]}")
+        if word == "meets" and result.verdict == "obstructed":
+            lines += labelled("Signal", "meets the margin wanted, but through an obstruction")
+        else:
+            lines.append(f"  {'Signal':<14} {ink.emphasise(word.upper(), _TONES[word])}: {_SIGNAL_WORDS[word]}")
     lines += labelled("Received", _at_ends(result.received_dbm, "dBm"))
     if result.margin_db.at_a is not None or result.margin_db.at_b is not None:
         lines += labelled("Margin", f"{_at_ends(result.margin_db, 'dB')}; {result.wanted_margin_db:g} dB wanted")

@@ -6,23 +6,31 @@ Shows what planning found and computes nothing.
 from collections.abc import Sequence
 
 from fellspan.cli import figures
-from fellspan.cli.layout import Ink, padded, printable, rule, table, wrapped
-from fellspan.cli.link_page import link_lines, verdict_tone
+from fellspan.cli.layout import WIDTH, Ink, padded, printable, rule, table, wrapped
+from fellspan.cli.link_page import decision_lines, link_lines, state_tone
+from fellspan.links.safety import RAISING
+from fellspan.links.words import STATE_WORDS, state_of
 from fellspan.planning.plan import LinkFailure, LinkPlan, StudyPlan
 
-_WIDTHS = (31, 7, 11, 19, 8)
+_FIXED = (7, 15, 8)
 _RIGHT = (1, 4)
+_DECISION_LINES = 6
 
 
-def page_lines(plan: StudyPlan, *, ink: Ink) -> list[str]:
-    """The page as lines without line ends."""
+def page_lines(plan: StudyPlan, *, ink: Ink, brief: bool = False) -> list[str]:
+    """The page as lines without line ends; `brief` shows of each link its decision alone."""
     lines = _title(plan, ink)
     if len(plan.links) + len(plan.failures) > 1:
         lines += ["", *_summary(plan, ink)]
     for link in plan.links:
-        lines += ["", rule(), *link_lines(link, ink=ink, told=plan.cautions)]
+        if brief:
+            lines += ["", *decision_lines(link.result, ink, most=_DECISION_LINES)]
+        else:
+            lines += ["", rule(), *link_lines(link, ink=ink, told=plan.cautions)]
     for failure in plan.failures:
         lines += ["", rule(), *_failure(failure, ink)]
+    if brief:
+        lines += ["", rule(), *_what_is_left_out(plan)]
     if plan.cautions:
         lines += ["", rule(), ink.emphasise("For the whole study")]
         lines += [line for caution in plan.cautions for line in wrapped(caution, first="  ! ")]
@@ -43,16 +51,28 @@ def _title(plan: StudyPlan, ink: Ink) -> list[str]:
 
 def _summary(plan: StudyPlan, ink: Ink) -> list[str]:
     rows = [*(_summary_row(link) for link in plan.links), *(_failed_row(failure) for failure in plan.failures)]
-    heads = table(("Link", "km", "Path", "Clearance", "Margin"), (), widths=_WIDTHS, right=_RIGHT)
-    tones = [*(verdict_tone(link.result.verdict) for link in plan.links), *("bad" for _ in plan.failures)]
-    return [ink.emphasise(heads[0]), *(_coloured(row, tone, ink) for row, tone in zip(rows, tones, strict=True))]
+    km, clearance, margin = _FIXED
+    path = max(len(row[2]) for row in rows)
+    widths = (WIDTH - 4 - sum(_FIXED) - path, km, path, clearance, margin)
+    heads = table(("Link", "km", "Path", "Clearance", "Margin"), (), widths=widths, right=_RIGHT)
+    tones = [*(state_tone(state_of(link.result)) for link in plan.links), *("bad" for _ in plan.failures)]
+    lines = [_coloured(row, tone, ink, widths) for row, tone in zip(rows, tones, strict=True)]
+    return [ink.emphasise(heads[0]), *lines]
 
 
-def _coloured(row: Sequence[str], tone: str, ink: Ink) -> str:
+def _what_is_left_out(plan: StudyPlan) -> list[str]:
+    """Where to read on, and the one caution that no short page may leave out."""
+    lines = wrapped("Criteria, levels, aiming and cautions: --full shows them for every link, --link NAME for one.")
+    if any(RAISING in link.result.cautions for link in plan.links):
+        lines += wrapped(RAISING, first="  ! ")
+    return lines
+
+
+def _coloured(row: Sequence[str], tone: str, ink: Ink, widths: Sequence[int]) -> str:
     """A summary line with its verdict in colour; filled to width first, since colour codes have none."""
     cells = [
         padded(printable(cell), width, right=index in _RIGHT)
-        for index, (cell, width) in enumerate(zip(row, _WIDTHS, strict=True))
+        for index, (cell, width) in enumerate(zip(row, widths, strict=True))
     ]
     cells[2] = ink.emphasise(row[2], tone) + cells[2][len(row[2]) :]
     return " ".join(cells).rstrip()
@@ -65,7 +85,7 @@ def _summary_row(plan: LinkPlan) -> Sequence[str]:
     return (
         result.name,
         f"{result.distance_m / 1000:.2f}",
-        result.verdict,
+        STATE_WORDS[state_of(result)],
         "" if governing is None else figures.by_how_much(governing),
         f"{min(margins):.1f} dB" if margins else "-",
     )

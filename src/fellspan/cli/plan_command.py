@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, Annotated
 
 import typer
 
-from fellspan.errors import UsageError
+from fellspan.errors import FellspanError, UsageError
 
 if TYPE_CHECKING:
     from fellspan.planning.inputs import Study
@@ -17,10 +17,15 @@ INPUT, NOT_REACHED = 2, 1
 
 
 class Required(StrEnum):
-    """The least path verdict that --require accepts."""
+    """The least that --require accepts of a path; 'clear' alone knows what stands on the ground."""
 
     clear = "clear"
+    clear_bare_ground = "clear-bare-ground"
     marginal = "marginal"
+
+
+FULL_UP_TO = 3
+"""More links than this get their decisions alone on the terminal, unless asked for in full."""
 
 
 def plan_command(
@@ -30,26 +35,54 @@ def plan_command(
         list[str] | None, typer.Option("--link", metavar="NAME", help="Plan this link only; may be given again.")
     ] = None,
     require: Annotated[
-        Required | None, typer.Option("--require", help="Exit with 1 if any link is worse than this.")
+        Required | None,
+        typer.Option(
+            "--require",
+            help="Exit with 1 if any link is worse. 'clear' wants trees and buildings in the data or surveyed; "
+            "'clear-bare-ground' also takes what is clear on bare ground only.",
+        ),
     ] = None,
+    full: Annotated[
+        bool, typer.Option("--full", help=f"Print every link in full, also where there are more than {FULL_UP_TO}.")
+    ] = False,
     as_json: Annotated[bool, typer.Option("--json", help="Print results as JSON instead of the page.")] = False,
 ) -> None:
     """Plan every link of a study file: clear or not, by how much, and what would clear it."""
-    from fellspan.cli.running import finish, run_plan
+    from fellspan.cli.running import finish, run_plan, tell_old_report
     from fellspan.study.reading import load_study
 
-    plan = run_plan(_only(load_study(study), link or []))
-    finish(plan, out=out, as_json=as_json)
-    if require is not None and _falls_short(plan, require):
+    if out is not None:
+        from fellspan.exports.folder import check_target
+
+        check_target(out)
+    try:
+        plan = run_plan(_only(load_study(study), link or []))
+    except FellspanError:
+        tell_old_report(out)
+        raise
+    brief = not full and not link and len(plan.links) + len(plan.failures) > FULL_UP_TO
+    finish(plan, out=out, as_json=as_json, brief=brief, chosen=bool(link))
+    if require is not None and (short := _short_of(plan, require)):
+        typer.echo(f"fellspan: --require {require.value} is not reached by {short}", err=True)
         raise typer.Exit(NOT_REACHED)
     if plan.failures:
         raise typer.Exit(INPUT)
 
 
-def _falls_short(plan: "StudyPlan", required: Required) -> bool:
-    """Whether a link failed or its path is worse than required."""
-    enough = {"clear"} if required is Required.clear else {"clear", "marginal"}
-    return bool(plan.failures) or any(link.result.verdict not in enough for link in plan.links)
+def _short_of(plan: "StudyPlan", required: Required) -> str:
+    """The links that failed or whose path is worse than required, with their states; empty where there are none."""
+    from fellspan.cli.layout import printable
+    from fellspan.links.words import STATE_WORDS, state_of
+
+    order = ("clear", "clear-bare", "marginal")
+    enough = order[: list(Required).index(required) + 1]
+    short = [
+        f"{link.result.name} ({STATE_WORDS[state_of(link.result)]})"
+        for link in plan.links
+        if state_of(link.result) not in enough
+    ]
+    short += [f"{failure.link.name} (not planned)" for failure in plan.failures]
+    return printable(", ".join(short[:3]) + (f" and {len(short) - 3} more" if short[3:] else ""))
 
 
 def _only(study: "Study", names: list[str]) -> "Study":

@@ -11,6 +11,7 @@ import typer
 
 from fellspan.cli.layout import WIDTH, Ink, colours_wanted, cut, printable
 from fellspan.cli.page import page_lines
+from fellspan.errors import UsageError
 from fellspan.planning.inputs import Study
 from fellspan.planning.plan import StudyPlan
 from fellspan.planning.planner import plan_study
@@ -27,23 +28,27 @@ def run_plan(study: Study) -> StudyPlan:
         clear_progress(progress)
 
 
-def finish(plan: StudyPlan, *, out: Path | None, as_json: bool) -> None:
+def finish(plan: StudyPlan, *, out: Path | None, as_json: bool, brief: bool = False, chosen: bool = False) -> None:
     """Print the page or JSON, tell what failed, and write the report.
 
-    Links that failed are told on standard error, so that they are seen when the output goes elsewhere.
+    Links that failed are told on standard error, so that they are seen when the output goes elsewhere. Where the report
+    cannot go is said before anything is printed. `chosen` links alone never replace a report that holds others.
     """
+    if out is not None and plan.links:
+        _see_to_target(plan, out, chosen=chosen)
     if as_json:
         from fellspan.exports.results_json import results_text
 
         typer.echo(results_text(plan), nl=False)
     elif plan.links:
-        typer.echo("\n".join(page_lines(plan, ink=Ink(colours=colours_wanted()))))
+        typer.echo("\n".join(page_lines(plan, ink=Ink(colours=colours_wanted()), brief=brief)))
     sys.stdout.flush()
     for failure in plan.failures:
         typer.echo(f"fellspan: {named(failure.link.name, str(failure.error))}", err=True)
     if out is None:
         return
     if not plan.links:
+        tell_old_report(out)
         return
     from fellspan.exports.folder import write_folder
 
@@ -54,6 +59,31 @@ def finish(plan: StudyPlan, *, out: Path | None, as_json: bool) -> None:
         clear_progress(progress)
     if not as_json:
         typer.echo(f"\nreport: {out / 'index.html' if 'index.html' in names else out} ({len(names)} files)")
+
+
+def _see_to_target(plan: StudyPlan, out: Path, *, chosen: bool) -> None:
+    from fellspan.exports.folder import check_folder
+
+    lost = check_folder(plan, out)
+    if not lost:
+        return
+    listed = ", ".join(f"'{printable(name)}'" for name in lost[:3]) + (f" and {len(lost) - 3} more" if lost[3:] else "")
+    if chosen:
+        raise UsageError(
+            f"the report in '{out}' also holds {listed}, which --link leaves out",
+            "their pages would be lost: give another folder for --out, or plan all links",
+        )
+    typer.echo(f"fellspan: the report in '{out}' also holds {listed}, not planned now: removed from it", err=True)
+
+
+def tell_old_report(out: Path | None) -> None:
+    """Say that an earlier report was left as it was, where there is one."""
+    if out is None:
+        return
+    from fellspan.exports.folder import links_in
+
+    if links_in(out):
+        typer.echo(f"fellspan: nothing was written; the earlier report in '{out}' stands as it was", err=True)
 
 
 def named(link_name: str, message: str) -> str:

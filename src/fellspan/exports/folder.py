@@ -10,7 +10,7 @@ import json
 import os
 import re
 import shutil
-from collections.abc import Callable
+from collections.abc import Callable, Iterable
 from pathlib import Path
 from typing import Final
 
@@ -25,6 +25,7 @@ from fellspan.exports.survey import survey_csv, survey_gpx, survey_points
 from fellspan.exports.tables import links_csv, profile_csv, profile_name
 from fellspan.exports.text import utf8
 from fellspan.planning.plan import StudyPlan
+from fellspan.report.naming import page_name
 
 Progress = Callable[[int, int, str], None]
 """Called with the number of files done, the number of all, and the name of the one in hand."""
@@ -35,6 +36,7 @@ LIST_NAME: Final = ".fellspan-files.json"
 STAGING_NAME: Final = ".fellspan-new"
 ASIDE_NAME: Final = ".fellspan-old"
 LOCK_WAIT_S: Final = 5.0
+_TABLES: Final = ("links.csv", "links.geojson", "links.kml", "survey.csv", "survey.gpx", "coordination.csv")
 
 _PLAIN_NAME = re.compile(r"[A-Za-z0-9][A-Za-z0-9._-]*")
 
@@ -97,9 +99,11 @@ def write_files(texts: dict[str, str], folder: Path) -> None:
     wrong = [name for name in texts if not _PLAIN_NAME.fullmatch(name)]
     if wrong or RESULTS not in texts:
         raise ValueError(f"not a report: {wrong or RESULTS!r}")
-    if folder.exists() and not folder.is_dir():
-        raise OutputError(f"'{folder}' is a file, not a folder", "give a folder for the report, or a name that is free")
+    check_target(folder)
     try:
+        if not (folder / ASIDE_NAME).exists():
+            # Before the lock: a folder that is refused gets no file of ours, the lock included.
+            _refuse_foreign(texts, folder, _ours(texts, folder))
         folder.mkdir(parents=True, exist_ok=True)
         with FileLock(folder / LOCK_NAME, timeout=LOCK_WAIT_S):
             _recover(folder)
@@ -121,7 +125,57 @@ def write_files(texts: dict[str, str], folder: Path) -> None:
         ) from error
 
 
-def _ours(texts: dict[str, str], folder: Path) -> set[str]:
+def check_folder(plan: StudyPlan, out_dir: str | Path) -> tuple[str, ...]:
+    """See that a report of this plan may go into a folder, before anything is printed or written; writes nothing.
+
+    Returns
+    -------
+    lost
+        Names of links of which the report that stands there has pages, and this one will not.
+
+    Raises
+    ------
+    OutputError
+        As `write_folder`.
+    """
+    folder = Path(out_dir)
+    check_target(folder)
+    names = report_names(plan)
+    if not (folder / ASIDE_NAME).exists():
+        _refuse_foreign(names, folder, _ours(names, folder))
+    kept = {linked.result.name for linked in plan.links}
+    return tuple(name for name in links_in(folder) if name not in kept)
+
+
+def check_target(folder: Path) -> None:
+    """See that a folder can be made or written to; an OutputError otherwise."""
+    if folder.exists() and not folder.is_dir():
+        raise OutputError(f"'{folder}' is a file, not a folder", "give a folder for the report, or a name that is free")
+    nearest = next((path for path in (folder, *folder.absolute().parents) if path.exists()), folder)
+    if not nearest.is_dir():
+        raise OutputError(f"the report cannot be written to '{folder}': '{nearest}' is a file", "give another folder")
+    if not os.access(nearest, os.W_OK):
+        raise OutputError(f"the report cannot be written to '{folder}': no permission", "give another folder")
+
+
+def report_names(plan: StudyPlan) -> tuple[str, ...]:
+    """Names of the files that the report of a plan may have."""
+    links = [linked.result.name for linked in plan.links]
+    pages = [page_name(index, name) for index, name in enumerate(links)]
+    profiles = [profile_name(index, name) for index, name in enumerate(links)]
+    return ("index.html", *pages, *_TABLES, *profiles, RESULTS)
+
+
+def links_in(folder: Path) -> tuple[str, ...]:
+    """Names of the links that the report in a folder holds; none where there is no report of ours."""
+    try:
+        found = json.loads((folder / RESULTS).read_text(encoding="utf-8"))
+        return tuple(str(link["name"]) for link in (*found["links"], *found["failures"]) if "fellspan" in found)
+    except (OSError, ValueError, KeyError, TypeError, RecursionError):
+        return ()
+
+
+def _ours(texts: Iterable[str], folder: Path) -> set[str]:
     """Names in the folder that earlier runs wrote.
 
     Where the list of them is lost, as when a report was copied without hidden files, but `results.json` is one of ours, the
@@ -147,7 +201,7 @@ def _listed(folder: Path) -> set[str]:
     return {name for name in names if isinstance(name, str) and _PLAIN_NAME.fullmatch(name)}
 
 
-def _refuse_foreign(texts: dict[str, str], folder: Path, ours: set[str]) -> None:
+def _refuse_foreign(texts: Iterable[str], folder: Path, ours: set[str]) -> None:
     for name in texts:
         target = folder / name
         if target.is_dir() and not target.is_symlink():

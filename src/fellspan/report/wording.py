@@ -13,7 +13,7 @@ STATE_WORD: dict[State, str] = {state: text.capitalize() for state, text in STAT
 BASIS_WORD: dict[Basis, str] = {
     "surveyed": "surveyed on the ground",
     "surface raster": "surface raster",
-    "bare ground only": "bare ground only: trees and buildings are not in it",
+    "bare ground only": "bare ground only: what stands on it is not all known",
 }
 BASIS_SHORT: dict[Basis, str] = {
     "surveyed": "surveyed",
