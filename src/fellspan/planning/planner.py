@@ -11,6 +11,7 @@ from fellspan.links.assess import AssessSettings, assess_in_full
 from fellspan.links.site import Link
 from fellspan.planning.inputs import Study
 from fellspan.planning.plan import LinkFailure, LinkPlan, StudyPlan
+from fellspan.planning.slips import explained
 from fellspan.planning.stamp import input_files
 from fellspan.terrain.survey import link_key
 from fellspan.terrain.terrain import Terrain
@@ -77,7 +78,7 @@ def _plan_link(link: Link, terrain: Terrain, settings: AssessSettings) -> LinkPl
     try:
         assessment = assess_in_full(link, terrain=terrain, settings=settings)
     except FellspanError as error:
-        return LinkFailure(link=link, error=error)
+        return LinkFailure(link=link, error=explained(error, link, terrain))
     return LinkPlan(link=link, result=assessment.result, profile=assessment.profile, levels=assessment.levels)
 
 
