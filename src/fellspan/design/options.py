@@ -1,0 +1,150 @@
+"""The named answers on a boundary: lowest at one end, equal, least total, least cost. Geometry and counting of mast steps only.
+
+Heights here are levels above sea level; `Ground` says what the masts stand on and how far they may reach.
+"""
+
+import math
+from dataclasses import dataclass
+from typing import Final
+
+import numpy as np
+from numpy.typing import NDArray
+
+from fellspan.design.boundary import Boundary
+from fellspan.design.heights_result import HeightKind, HeightSettings
+
+Floats = NDArray[np.float64]
+Levels = tuple[float, float]
+_TIE: Final = 1e-7
+MOST_STEPS: Final = 4_000
+HAIR_M: Final = 1e-6
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Ground:
+    """What the masts stand on, m above sea level, the levels that the antennas may have, and those planned."""
+
+    base_a_m: float
+    base_b_m: float
+    a_from_m: float
+    a_to_m: float
+    b_from_m: float
+    b_to_m: float
+    planned: Levels
+
+    def within(self, levels: Levels) -> bool:
+        """Whether both levels are within their limits."""
+        a, b = levels
+        return (
+            self.a_from_m - HAIR_M <= a <= self.a_to_m + HAIR_M and self.b_from_m - HAIR_M <= b <= self.b_to_m + HAIR_M
+        )
+
+
+def exact(
+    kind: HeightKind, boundary: Boundary, share: Floats, need_m: Floats, ground: Ground, settings: HeightSettings
+) -> Levels | None:
+    """The answer before any rounding; None where nothing within the limits works."""
+    planned_a, planned_b = ground.planned
+    if kind == "a alone":
+        return _fits((max(boundary.lowest_a(planned_b), ground.a_from_m), planned_b), ground)
+    if kind == "b alone":
+        return _fits((planned_a, max(boundary.lowest_b(planned_a), ground.b_from_m)), ground)
+    if kind in ("equal", "alike"):
+        foot_a, foot_b = (ground.base_a_m, ground.base_b_m) if kind == "equal" else ground.planned
+        rise = boundary.lift(foot_a, foot_b, share=share, need_m=need_m)
+        rise = max(rise, ground.a_from_m - foot_a, ground.b_from_m - foot_b)
+        return _fits((foot_a + rise, foot_b + rise), ground)
+    limits = (ground.a_from_m, ground.a_to_m, ground.b_from_m, ground.b_to_m)
+    pairs = boundary.candidates(*limits)
+    if kind == "least cost":
+        # A begun section is paid whole: cost falls at its ends too.
+        pairs += boundary.pairs_at(_section_ends(ground, settings, boundary), *limits)
+    return _best(kind, pairs, ground, settings)
+
+
+def rounded(
+    kind: HeightKind, levels: Levels, boundary: Boundary, ground: Ground, settings: HeightSettings
+) -> Levels | None:
+    """The answer at whole mast steps, none below `levels` where one end alone or both alike were asked for."""
+    a, b = levels
+    planned_a, planned_b = ground.planned
+    if kind == "a alone":
+        return _fits((_up(a, ground.base_a_m, settings.step_m), planned_b), ground)
+    if kind == "b alone":
+        return _fits((planned_a, _up(b, ground.base_b_m, settings.step_m)), ground)
+    if kind == "equal":
+        height = max(a - ground.base_a_m, b - ground.base_b_m)
+        height = _up(height, 0.0, settings.step_m)
+        return _fits((ground.base_a_m + height, ground.base_b_m + height), ground)
+    if kind == "alike":
+        rise = _up(max(a - planned_a, b - planned_b), 0.0, settings.step_m)
+        return _fits((planned_a + rise, planned_b + rise), ground)
+    return _best(kind, _steps(boundary, ground, settings), ground, settings)
+
+
+def cost_of(levels: Levels, ground: Ground, settings: HeightSettings) -> float:
+    """What the two masts cost, in the user's currency."""
+    heights = levels[0] - ground.base_a_m, levels[1] - ground.base_b_m
+    rates = settings.cost_a_per_m or 0.0, settings.cost_b_per_m or 0.0
+    sections = sum(math.ceil(max(height, 0.0) / settings.section_m - HAIR_M) for height in heights)
+    return heights[0] * rates[0] + heights[1] * rates[1] + sections * settings.cost_per_section
+
+
+def _up(level: float, base: float, step: float) -> float:
+    return base + math.ceil((level - base) / step - HAIR_M) * step
+
+
+def _fits(levels: Levels, ground: Ground) -> Levels | None:
+    return levels if all(math.isfinite(level) for level in levels) and ground.within(levels) else None
+
+
+def _steps(boundary: Boundary, ground: Ground, settings: HeightSettings) -> list[Levels]:
+    """For every step of A the lowest step of B that works: all pairs that can be the least of anything."""
+    step = settings.step_m
+    start = max(ground.a_from_m, float(boundary.a_m[0]))
+    stop = min(ground.a_to_m, max(float(boundary.a_m[-1]), start) + step)
+    first = math.ceil((start - ground.base_a_m) / step - HAIR_M)
+    last = math.floor((stop - ground.base_a_m) / step + HAIR_M)
+    stride = max(1, -(-(last - first + 1) // MOST_STEPS))
+    pairs = []
+    for number in range(first, last + 1, stride):
+        a = ground.base_a_m + number * step
+        b = boundary.lowest_b(a)
+        if math.isfinite(b):
+            fits = _fits((a, _up(max(b, ground.b_from_m), ground.base_b_m, step)), ground)
+            pairs += [] if fits is None else [fits]
+    return pairs
+
+
+def _section_ends(ground: Ground, settings: HeightSettings, boundary: Boundary) -> list[float]:
+    """Levels of A at which a section of either mast is just full."""
+    low_a, high_a = max(ground.a_from_m, float(boundary.a_m[0])), min(ground.a_to_m, float(boundary.a_m[-1]))
+    low_b, high_b = max(ground.b_from_m, float(boundary.b_m[-1])), min(ground.b_to_m, float(boundary.b_m[0]))
+    at_a = _multiples(low_a, high_a, ground.base_a_m, settings.section_m)
+    at_b = _multiples(low_b, high_b, ground.base_b_m, settings.section_m)
+    return [*at_a, *(boundary.lowest_a(level) for level in at_b)]
+
+
+def _multiples(low: float, high: float, base: float, part: float) -> list[float]:
+    first, last = math.ceil((low - base) / part), math.floor((high - base) / part)
+    return [base + number * part for number in range(first, min(last, first + MOST_STEPS) + 1)]
+
+
+def _best(kind: HeightKind, pairs: list[Levels], ground: Ground, settings: HeightSettings) -> Levels | None:
+    """The cheapest pair; of equally cheap ones the lower total, then the most even one."""
+    if not pairs:
+        return None
+
+    def total(levels: Levels) -> float:
+        return levels[0] - ground.base_a_m + levels[1] - ground.base_b_m
+
+    def uneven(levels: Levels) -> float:
+        return abs((levels[0] - ground.base_a_m) - (levels[1] - ground.base_b_m))
+
+    def price(levels: Levels) -> float:
+        return cost_of(levels, ground, settings) if kind == "least cost" else total(levels)
+
+    least = min(map(price, pairs))
+    cheap = [pair for pair in pairs if price(pair) <= least + _TIE]
+    low = min(map(total, cheap))
+    return min((pair for pair in cheap if total(pair) <= low + _TIE), key=uneven)
