@@ -54,8 +54,8 @@ def errors_m(
 ) -> np.ndarray:
     """Clearance as assessed less clearance with samples every `parts`-th of a cell all along, for random paths.
 
-    Shape (count, 2): for the whole and for 0.6 of the first zone. Paths whose least clearance stands within a cell of a mast
-    decide nothing and are left out.
+    Shape (count, 2): for the whole and for 0.6 of the first zone. Every path counts, also one whose least clearance stands
+    within a cell of a mast: of 500 those are few, and they are no worse than the others.
     """
     file, (west, east, south, north) = real
     rng = np.random.default_rng(20260)
@@ -70,8 +70,6 @@ def errors_m(
             truth = terrain.profile(a=a, b=b, step_m=coarse.cell_m / parts)
             tops = (float(truth.ground_m[0]) + MAST_M, float(truth.ground_m[-1]) + MAST_M)
             true = [clearance_m(truth, tops, fraction) for fraction in (1.0, 0.6)]
-            if any(min(at, coarse.length_m - at) < coarse.cell_m for _, at in true):
-                continue
             used = coarse
             if closer:
                 sites = [Site(name=name, position=where, height_m=MAST_M) for name, where in (("A", a), ("B", b))]
