@@ -69,6 +69,17 @@ def test_a_wall_along_the_path_is_shown_where_it_lies_deepest_in_the_zones(tmp_p
     assert one.top_amsl_m == pytest.approx(62.0)
 
 
+def test_a_line_that_crosses_and_then_runs_beside_is_both(tmp_path: Path) -> None:
+    """It crosses 300 m from A and runs 3 m beside the path from 500 m to 4 km."""
+    line = [lonlat(800.0, 1600.0), lonlat(800.0, 1400.0), lonlat(1000.0, 1497.0), lonlat(4500.0, 1497.0)]
+    profile = passed(tmp_path, ("LineString", line, {"name": "wire", "heights_m": [30] * 4}))
+    assert [thing.name for thing in profile.obstacles] == ["wire"]
+    one = only(profile)
+    assert one.at_m == pytest.approx(2500.0, abs=300.0)
+    assert one.offset_m == pytest.approx(2.5, abs=0.7)
+    assert one.top_amsl_m == pytest.approx(80.0)
+
+
 def test_tops_of_outlines_woods_and_hung_lines(tmp_path: Path) -> None:
     def box(east: float) -> list[list[tuple[float, float]]]:
         ring = [(east, 1510.0), (east + 40.0, 1510.0), (east + 40.0, 1530.0), (east, 1530.0), (east, 1510.0)]

@@ -108,10 +108,10 @@ class PathWork:
         return merged(exact, beside, regular_m, self.path.length_m)
 
     def beside(self) -> tuple[BesidePath, ...]:
-        """The obstacles that the path passes without crossing them."""
-        crossed = {id(standing.crossing.obstacle) for standing in self.standing}
+        """The obstacles that the path passes without crossing them there."""
         return beside(
-            [one for one in self._near if id(one.obstacle) not in crossed],
+            self._near,
+            [standing.crossing for standing in self.standing],
             self.path,
             ground_at=lambda latitude, longitude: self.layers.ground.sample_positions(latitude, longitude).value_m,
             growth_years=self.layers.growth_years,

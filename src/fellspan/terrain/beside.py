@@ -13,7 +13,7 @@ from numpy.typing import ArrayLike
 
 from fellspan.geodesy.geodesic import WGS84_GEOD, GeodesicPath
 from fellspan.terrain.alongpath import Floats, along_across
-from fellspan.terrain.obstacles import BESIDE_M, NearShape, Obstacle
+from fellspan.terrain.obstacles import BESIDE_M, Crossing, NearShape, Obstacle
 from fellspan.terrain.profile import BesidePath
 
 MOST_BESIDE: Final = 200
@@ -42,10 +42,20 @@ class _Passed:
 
 
 def beside(
-    near: Sequence[NearShape], path: GeodesicPath, *, ground_at: GroundAt, growth_years: float
+    near: Sequence[NearShape],
+    crossings: Sequence[Crossing],
+    path: GeodesicPath,
+    *,
+    ground_at: GroundAt,
+    growth_years: float,
 ) -> tuple[BesidePath, ...]:
-    """The obstacles within `BESIDE_M` of a path among those that it does not cross, by distance from A."""
-    passed = [found for one in near if (found := _passed(one, path.length_m)) is not None]
+    """The obstacles within `BESIDE_M` of a path and not within that of a crossing of their own, by distance from A."""
+    crossed: dict[int, list[tuple[float, float]]] = {}
+    for crossing in crossings:
+        crossed.setdefault(id(crossing.obstacle), []).append((crossing.from_m - BESIDE_M, crossing.to_m + BESIDE_M))
+    passed = [
+        found for one in near if (found := _passed(one, crossed.get(id(one.obstacle), ()), path.length_m)) is not None
+    ]
     passed = sorted(passed, key=lambda one: (one.share, one.along_m, one.obstacle.name))[:MOST_BESIDE]
     return tuple(
         sorted(
@@ -65,8 +75,11 @@ def beside(
     )
 
 
-def _passed(near: NearShape, length_m: float) -> _Passed | None:
-    """Where the edge of a shape lies deepest in the zones of the path; None where it stays off or beyond the ends."""
+def _passed(near: NearShape, crossed: Sequence[tuple[float, float]], length_m: float) -> _Passed | None:
+    """Where the edge of a shape lies deepest in the zones of the path; None where it stays off or beyond the ends.
+
+    Stretches where it is crossed are left out: there it counts as crossed.
+    """
     shape = near.plane
     if shape.is_empty:
         return None
@@ -75,6 +88,8 @@ def _passed(near: NearShape, length_m: float) -> _Passed | None:
         shape = shapely.segmentize(shape, max(_FINEST_M, length_m / _PARTS))
     points = shapely.get_coordinates(shape)
     points = points[(points[:, 0] > 0.0) & (points[:, 0] < length_m)]
+    for start, stop in crossed:
+        points = points[(points[:, 0] < start) | (points[:, 0] > stop)]
     offset = np.maximum(np.abs(points[:, 1]) - reach, 0.0)
     within = offset <= BESIDE_M
     if not within.any():

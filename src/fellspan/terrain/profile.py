@@ -43,7 +43,7 @@ class PathObstacle:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class BesidePath:
-    """An obstacle of the user's file that a path passes but does not cross.
+    """An obstacle of the user's file that a path passes but does not cross, there or within 60 m of there.
 
     `at_m` from A is the place where it is nearest in terms of the path's own Fresnel zones, whatever their frequency: where
     `offset_m`, the distance from the path to its edge, is least against the zone's radius. `top_amsl_m` is its top there, with

@@ -55,7 +55,8 @@ class Terrain:
             above sea level, cover is height above ground. At least `ground` or `surface` is needed; `surface` alone is
             taken as the ground, and `ground_is_bare` then is False.
         gaps
-            'error', or 'sea': where the ground rasters have no data lies open water at `sea_level_m`, m.
+            'error', or 'sea': where the ground rasters have no data, and the ground beside is about as low as `sea_level_m`,
+            m, lies open water at that level.
         growth_years
             How far ahead trees are grown, years, by their own rates.
 
@@ -130,6 +131,8 @@ class Terrain:
 
         Raises
         ------
+        SeamError
+            Rasters disagree under a path, or a surface lies below its ground.
         TerrainError
             The ends of a pair are one place, the step is not above 0, or names and pairs differ in number.
         """
