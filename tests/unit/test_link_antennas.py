@@ -67,8 +67,10 @@ def test_antennas_aimed_at_each_other_give_their_peak() -> None:
         assert (end.azimuth_off_deg, end.elevation_off_deg) == (0.0, 0.0)
     assert result.antennas.a.tilt_deg == result.tilt_ab_deg
     assert result.losses_db.polarization == pytest.approx(0.0, abs=1e-6)
+    losses = result.losses_db
+    assert losses.gases is not None
     assert result.received_dbm.at_a == pytest.approx(
-        20.0 + 2.0 * DISH.peak_gain_dbi - result.losses_db.free_space - result.losses_db.diffraction, abs=1e-6
+        20.0 + 2.0 * DISH.peak_gain_dbi - losses.free_space - losses.diffraction - losses.gases, abs=1e-6
     )
     assert not about(result, "antenna of")
 

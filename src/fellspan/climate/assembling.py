@@ -32,7 +32,7 @@ _MAPS: Final = {
 }
 
 
-def figures_for(position: Position, *, given: GivenClimate | None = None) -> ClimateFigures:
+def figures_for(position: Position, *, given: GivenClimate | None = None, maps: bool = True) -> ClimateFigures:
     """Climate figures of a place.
 
     Parameters
@@ -41,6 +41,8 @@ def figures_for(position: Position, *, given: GivenClimate | None = None) -> Cli
         The place; for a link, the middle of its path. The same place rounded to 0.01 degrees is looked up once.
     given
         What the study says; it comes before everything else.
+    maps
+        False leaves the maps aside, which take a second to open: for callers that need the air only.
 
     Returns
     -------
@@ -54,8 +56,8 @@ def figures_for(position: Position, *, given: GivenClimate | None = None) -> Cli
     Never raises for a missing or broken optional package: that too is a note. Offline.
     """
     given = given or GivenClimate()
-    maps, trouble = _maps_at(position, given.altitude_m)
-    found = _Finder(given, maps)
+    looked_up, trouble = _maps_at(position, given.altitude_m) if maps else (None, "")
+    found = _Finder(given, looked_up)
     rain = found("rain_rate_001_mm_h", "mm/h", monthly=_rain_from_months(given))
     dn1 = found("dn1_n_per_km", "N/km")
     dn75, log_k = found("dn75", "N-units"), found("log_k", "")

@@ -120,6 +120,25 @@ def polarization_loss_db(
     ends = link.antenna_a, link.antenna_b
     if all(antenna.pattern is None and antenna.mounting is None for antenna in ends):
         return None
+    mountings, discrimination = _ends_discrimination(link, bearings_deg=bearings_deg, tilts_deg=tilts_deg)
+    loss = hung.polarization_loss_db(
+        hung.field_angle_between_deg(*mountings),
+        discrimination_a_db=discrimination[0],
+        discrimination_b_db=discrimination[1],
+    )
+    return max(0.0, float(loss))
+
+
+def cross_discrimination_db(link: Link, *, bearings_deg: tuple[float, float], tilts_deg: tuple[float, float]) -> float:
+    """Cross-polar discrimination of the worse of both antennas toward the other end, dB; assumed where only gain is known."""
+    return min(_ends_discrimination(link, bearings_deg=bearings_deg, tilts_deg=tilts_deg)[1])
+
+
+def _ends_discrimination(
+    link: Link, *, bearings_deg: tuple[float, float], tilts_deg: tuple[float, float]
+) -> tuple[list[Mounting], list[float]]:
+    """Mounting and cross-polar discrimination toward the other end, dB, of A and of B."""
+    ends = link.antenna_a, link.antenna_b
     mountings = [
         mounted(antenna, bearing_deg=bearing, tilt_deg=tilt, polarization=link.radio.polarization)
         for antenna, bearing, tilt in zip(ends, bearings_deg, tilts_deg, strict=True)
@@ -128,12 +147,7 @@ def polarization_loss_db(
         _discrimination_db(antenna, mounting, bearing, tilt)
         for antenna, mounting, bearing, tilt in zip(ends, mountings, bearings_deg, tilts_deg, strict=True)
     ]
-    loss = hung.polarization_loss_db(
-        hung.field_angle_between_deg(*mountings),
-        discrimination_a_db=discrimination[0],
-        discrimination_b_db=discrimination[1],
-    )
-    return max(0.0, float(loss))
+    return mountings, discrimination
 
 
 def _discrimination_db(antenna: Antenna, mounting: Mounting, bearing_deg: float, tilt_deg: float) -> float:

@@ -11,11 +11,12 @@ from typing import TYPE_CHECKING, Final
 import numpy as np
 from numpy.typing import NDArray
 
+from fellspan.climate.given import GivenClimate
 from fellspan.errors import LinkError, MagneticModelError, TerrainGapError
 from fellspan.geodesy import geodesic, magnetic
 from fellspan.links import clearance, verdicts
 from fellspan.links.antenna_gains import antenna_cautions, antennas_of, polarization_loss_db
-from fellspan.links.budget import budget, tilt_deg
+from fellspan.links.budget import tilt_deg
 from fellspan.links.cautions import cautions
 from fellspan.links.criteria import Criterion, criteria_for, is_extended, worst_month_k
 from fellspan.links.doubts import below_left_out, beside_path, with_doubts
@@ -25,8 +26,11 @@ from fellspan.links.levels import PathLevels
 from fellspan.links.minima import worst_windows
 from fellspan.links.own_building import Standing, standing, with_ground_at_end, with_nodes, with_roof_edge
 from fellspan.links.result import EndResult, Ends, LinkResult
+from fellspan.links.signal import Weather, signal_of, worse_of
+from fellspan.links.signal_words import signal_sentences
 from fellspan.links.site import Link
 from fellspan.links.uncertainty import clearance_errors_m
+from fellspan.propagation.rain import RainEdition, RainReading
 from fellspan.terrain.profile import PathProfile
 from fellspan.vocabulary import COVER_KINDS, CriteriaPreset
 
@@ -45,7 +49,8 @@ class AssessSettings:
 
     `criteria` replaces `preset` where it is not empty. `confidence` is the probability asked of every criterion, above 0 and
     below 1. `date` is for magnetic bearings; None leaves them out. `step_m` is the regular step along paths, None for half
-    the finest cell.
+    the finest cell. `climate` is what is known of it; None leaves all to the maps, where they are installed. `rain_edition` is
+    that of Rec. ITU-R P.530, `rain_reading` that of its equation (36).
     """
 
     preset: CriteriaPreset = "p530-temperate"
@@ -54,12 +59,22 @@ class AssessSettings:
     confidence: float = 0.9
     date: dt.date | None = None
     step_m: float | None = None
+    climate: GivenClimate | None = None
+    rain_edition: RainEdition = "19"
+    rain_reading: RainReading = "A"
 
     def __post_init__(self) -> None:
         if math.isnan(self.median_k) or self.median_k == 0.0:
             raise LinkError(f"median k {self.median_k:g} must be a number other than 0", "4/3 if nothing is known")
         if not 0.0 < self.confidence < 1.0:
             raise LinkError(f"confidence {self.confidence:g} is outside 0 to 1", "0.9 asks for 90 %")
+
+    @property
+    def weather(self) -> Weather:
+        """The part that the signal asks for."""
+        return Weather(
+            given=self.climate or GivenClimate(), rain_edition=self.rain_edition, rain_reading=self.rain_reading
+        )
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -130,7 +145,7 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
     )
     antennas = antennas_of(link, bearings_deg=bearings, tilts_deg=tilts)
     polarization_db = polarization_loss_db(link, bearings_deg=bearings, tilts_deg=tilts)
-    loss = budget(
+    signal = signal_of(
         link,
         profile,
         stands,
@@ -139,6 +154,9 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
         median_k=k,
         antennas=antennas,
         polarization_db=polarization_db,
+        bearings_deg=bearings,
+        tilts_deg=tilts,
+        weather=settings.weather,
     )
     sentences = verdicts.reasons(
         verdict=verdict,
@@ -157,12 +175,10 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
         not_held=verdicts.not_held(profile),
     )
     trees = bool(np.any((stands.cover_kind == _TREE) & np.any(levels.available_m < levels.need_m, axis=0)))
-    signal = verdicts.signal_sentence(
-        loss.received_dbm,
-        loss.margin_db,
-        wanted_db=link.wanted_margin_db,
-        frequency_hz=link.radio.frequency_hz,
-        trees=trees,
+    wanted_db = link.wanted_margin_db
+    by_margin = verdicts.signal_verdict(signal.margin_db, wanted_db=wanted_db, trees=trees)
+    said = signal_sentences(
+        link, signal.result, received_dbm=signal.received_dbm, margin_db=signal.margin_db, trees=trees
     )
     end_a, model, caution_a = _end_result(laid.a, way.bearing_ab_deg, settings.date)
     end_b, _, caution_b = _end_result(laid.b, way.bearing_ba_deg, settings.date)
@@ -171,11 +187,11 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
         a=link.a.name,
         b=link.b.name,
         verdict=verdict,
-        signal_verdict=verdicts.signal_verdict(loss.margin_db, wanted_db=link.wanted_margin_db, trees=trees),
+        signal_verdict=worse_of(by_margin, signal.at_most),
         basis=basis,
         confidence=confidence,
         confidence_asked=settings.confidence,
-        reasons=sentences if signal is None else (*sentences, signal),
+        reasons=(*sentences, *said),
         cautions=cautions(
             link,
             profile,
@@ -183,12 +199,14 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
             preset=None if settings.criteria else settings.preset,
             median_k=k,
             raises=verdict != "clear",
-            diffraction_db=loss.losses.diffraction,
-            trees=trees,
+            trees=signal.result.trees if trees else None,
             no_errors=not profile.sigma_m.any(),
             magnetic=(caution_a, caution_b),
             beside=beside_cautions,
-            antennas=antenna_cautions(link, antennas, distance_m=length_m, polarization_db=polarization_db),
+            antennas=(
+                *antenna_cautions(link, antennas, distance_m=length_m, polarization_db=polarization_db),
+                *signal.cautions,
+            ),
         ),
         distance_m=length_m,
         bearing_ab_deg=bearings[0],
@@ -202,15 +220,18 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
         clearance=results,
         governing=governing,
         ignored=stands.ignored,
-        losses_db=loss.losses,
-        received_dbm=loss.received_dbm,
-        margin_db=loss.margin_db,
-        wanted_margin_db=link.wanted_margin_db,
+        losses_db=signal.losses,
+        received_dbm=signal.received_dbm,
+        margin_db=signal.margin_db,
+        wanted_margin_db=wanted_db,
         magnetic_model=model,
         step_m=profile.step_m,
         sources=profile.sources,
         vertical_datum=profile.vertical_datum,
         antennas=antennas,
+        modulation=signal.modulation,
+        availability_percent=signal.result.availability_percent,
+        signal=signal.result,
     )
     return Assessment(result=result, profile=profile, levels=levels)
 

@@ -6,6 +6,7 @@ from typing import Final
 from fellspan.links.criteria import range_cautions
 from fellspan.links.ends import EndLevel, roof_edge_cautions
 from fellspan.links.safety import RAISING
+from fellspan.links.signal_result import TreeLoss
 from fellspan.links.site import Link
 from fellspan.propagation import inverse_k, out_of_range
 from fellspan.propagation.constants import K_FORMULA_HIGH_M
@@ -24,14 +25,13 @@ def cautions(
     preset: CriteriaPreset | None,
     median_k: float,
     raises: bool,
-    diffraction_db: float,
-    trees: bool,
+    trees: TreeLoss | None,
     no_errors: bool,
     magnetic: tuple[str | None, str | None],
     antennas: Sequence[str] = (),
     beside: Sequence[str] = (),
 ) -> tuple[str, ...]:
-    """All cautions of one link, each once, the ends first."""
+    """All cautions of one link, each once, the ends first; `trees` where trees stand in the required zone."""
     found: list[str] = []
     for level in levels:
         found += level.cautions
@@ -52,11 +52,8 @@ def cautions(
         "p526-16-delta-bullington", frequency_hz=link.radio.frequency_hz, inverse_k=float(inverse_k(median_k))
     )
     found += [f"Diffraction loss: {breach}." for breach in breaches]
-    if trees and diffraction_db > 0.0:
-        found.append(
-            f"Trees stand in the required zone and were taken as opaque in the diffraction loss ({diffraction_db:.1f} dB): "
-            "leaves, rain and growth change it."
-        )
+    if trees is not None:
+        found += _tree_cautions(trees)
     if no_errors:
         found.append(
             "The data state no height error, so the confidence is a plain yes or no: check the heights on site."
@@ -66,3 +63,27 @@ def cautions(
     if raises:
         found.append(RAISING)
     return tuple(dict.fromkeys(found))
+
+
+def _tree_cautions(trees: TreeLoss) -> list[str]:
+    """How trees in the required zone were counted, where that costs anything."""
+    where = "Trees stand in the required zone"
+    if trees.way == "through" and trees.depth_m > 0.0:
+        span = f"{trees.least_through_db:.1f} to {trees.most_through_db:.1f} dB"
+        text = (
+            f"{where}. The ray passes {trees.depth_m:.0f} m of wood: {trees.through_db:.1f} dB with diffraction ({span}), less "
+            f"than over it ({trees.over_db:.1f} dB). Leaves, rain, wind and growth change it."
+        )
+    elif trees.way == "through":
+        text = (
+            f"{where}, below the ray: they are not counted ({trees.through_db:.1f} dB without them), taken as opaque they "
+            f"would cost {trees.over_db:.1f} dB. Leaves, rain and growth change it."
+        )
+    elif trees.over_db > 0.0:
+        text = (
+            f"{where} and were taken as opaque in the diffraction loss ({trees.over_db:.1f} dB): leaves, rain and growth "
+            "change it."
+        )
+    else:
+        return []
+    return [text]

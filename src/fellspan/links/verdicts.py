@@ -24,8 +24,6 @@ UNLISTED_M: Final = 25.0
 USUAL_MAST_M: Final = 60.0
 """More extra height than this is called beyond usual masts (common practice, no source)."""
 SIGNAL_BAND_DB: Final = 3.0
-GASES_AND_RAIN_FROM_HZ: Final = 10e9
-"""Gases count above about 10 GHz (registry: p530-19-gas-path); that rain does too is common practice, no source."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -178,27 +176,6 @@ def reasons(
         for item in ignored
     ]
     return tuple(sentences)
-
-
-def signal_sentence(
-    received_dbm: AtEnds, margin_db: AtEnds, *, wanted_db: float, frequency_hz: float, trees: bool = False
-) -> str | None:
-    """What arrives and what is not counted in it yet; None where the level is unknown."""
-    if received_dbm.at_b is None:
-        return None
-    not_counted = _not_counted(frequency_hz)
-    level = f"Signal at the median k: {received_dbm.at_b:.1f} dBm at both ends"
-    if margin_db.at_b is None:
-        return f"{level}; no threshold is given, so there is no margin. {not_counted}"
-    capped = " Trees in the required zone hold the signal verdict at 'marginal' at most." if trees else ""
-    return f"{level}, margin {margin_db.at_b:.1f} dB, {wanted_db:g} dB wanted.{capped} {not_counted}"
-
-
-def _not_counted(frequency_hz: float) -> str:
-    """What the level leaves out; the one place that says so."""
-    if frequency_hz > GASES_AND_RAIN_FROM_HZ:
-        return "Fading, gases and rain are not yet counted."
-    return "Fading is not yet counted."
 
 
 def place(at_m: float) -> str:

@@ -35,6 +35,9 @@ def plan_study(study: Study, *, progress: Progress | None = None) -> StudyPlan:
         confidence=study.confidence,
         date=study.date,
         step_m=study.terrain.step_m,
+        climate=study.climate,
+        rain_edition=study.rain_edition,
+        rain_reading=study.rain_reading,
     )
     planned: list[LinkPlan] = []
     failures: list[LinkFailure] = []

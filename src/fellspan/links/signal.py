@@ -1,0 +1,376 @@
+"""The signal engine: both directions of a link from its path, its ends and the climate -> SignalResult, losses, levels.
+
+Joins the pieces of this room and the climate; knows no terrain files, no study files and no pages.
+"""
+
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from fellspan.antennas.mounting import FIELD_ANGLE_DEG
+from fellspan.climate.assembling import figures_for
+from fellspan.climate.figures import ClimateFigures, Figure
+from fellspan.climate.given import GivenClimate
+from fellspan.geodesy.position import Position
+from fellspan.links.antenna_gains import cross_discrimination_db
+from fellspan.links.budget import line_loss_db, path_terms, pointing_db
+from fellspan.links.direction import Direction, End, direction_of, shares_of
+from fellspan.links.fading import (
+    Fading,
+    Geometry,
+    Rain,
+    Spread,
+    nodes_of,
+    occurrence,
+    rain_001,
+    spread_of,
+)
+from fellspan.links.own_building import Standing
+from fellspan.links.path_loss import PathLoss, path_loss, sample_lengths_m
+from fellspan.links.ranges import multipath_breaches, multipath_inputs, rain_breaches
+from fellspan.links.receivers import blocked, row_power_dbm, rows_of
+from fellspan.links.result import AntennasResult, AtEnds, Losses
+from fellspan.links.signal_result import (
+    NOT_COMPUTED,
+    ClimateUsed,
+    Editions,
+    Periods,
+    SignalResult,
+)
+from fellspan.links.signal_words import notes_of, signal_cautions
+from fellspan.links.site import Link
+from fellspan.propagation import RainEdition, RainReading, minutes_per_year, two_way_outage
+from fellspan.terrain.profile import PathProfile
+from fellspan.vocabulary import SignalVerdict
+
+BETTER_TO_WORSE: tuple[SignalVerdict, ...] = ("meets", "marginal", "below")
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Weather:
+    """What the study says of the climate, and how rain is to be worked out."""
+
+    given: GivenClimate
+    rain_edition: RainEdition = "19"
+    rain_reading: RainReading = "A"
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Signal:
+    """What the engine hands to `assess`.
+
+    `at_most` is the best verdict that target, timing and channels leave; None where they say nothing.
+    """
+
+    result: SignalResult
+    losses: Losses
+    received_dbm: AtEnds
+    margin_db: AtEnds
+    modulation: str | None
+    at_most: SignalVerdict | None
+    cautions: tuple[str, ...]
+
+
+def signal_of(
+    link: Link,
+    profile: PathProfile,
+    standing: Standing,
+    *,
+    a_amsl_m: float,
+    b_amsl_m: float,
+    median_k: float,
+    antennas: AntennasResult,
+    polarization_db: float | None,
+    bearings_deg: tuple[float, float],
+    tilts_deg: tuple[float, float],
+    weather: Weather,
+) -> Signal:
+    """Work out both directions of a link.
+
+    Parameters
+    ----------
+    link, profile, standing
+        The link, its profile, and what stands along it with the own buildings taken out.
+    a_amsl_m, b_amsl_m
+        Antenna levels, m above sea level.
+    median_k
+        Effective Earth radius factor of the level in clear air.
+    antennas, polarization_db, bearings_deg, tilts_deg
+        What each antenna gives toward the other end, the loss by polarizations that differ, and where the other end lies.
+    weather
+        Climate as given, and how rain is worked out. Maps are asked only where a margin is known.
+    """
+    figures = _climate(link, profile, antennas, weather.given, a_amsl_m=a_amsl_m, b_amsl_m=b_amsl_m)
+    geometry = _geometry(profile, figures.position, a_amsl_m=a_amsl_m, b_amsl_m=b_amsl_m)
+    spread = spread_of(figures, length_m=geometry.length_m)
+    nodes = nodes_of(spread)
+    transmit_hz = link.radio.transmit_hz
+    losses: dict[float, PathLoss] = {}
+    for frequency in dict.fromkeys(transmit_hz):
+        losses[frequency] = path_loss(
+            profile,
+            standing,
+            a_amsl_m=a_amsl_m,
+            b_amsl_m=b_amsl_m,
+            median_k=median_k,
+            frequency_hz=frequency,
+            polarization=link.radio.polarization,
+            air=figures,
+            nodes_inverse_k=nodes,
+        )
+    ends = (
+        End(site=link.a, antenna=link.antenna_a, gain_dbi=antennas.a.gain_dbi, bearing_deg=bearings_deg[0]),
+        End(site=link.b, antenna=link.antenna_b, gain_dbi=antennas.b.gain_dbi, bearing_deg=bearings_deg[1]),
+    )
+    discrimination = cross_discrimination_db(link, bearings_deg=bearings_deg, tilts_deg=tilts_deg)
+    fadings = tuple(
+        _fading(
+            link, figures, geometry=geometry, spread=spread, loss=losses[frequency], antennas=antennas, weather=weather
+        )
+        for frequency in transmit_hz
+    )
+    there, back = (
+        direction_of(
+            link.radio,
+            transmit,
+            receive,
+            name=name,
+            frequency_hz=fading.frequency_hz,
+            path=path_terms(fading.loss, median_k=median_k, polarization_db=polarization_db, air=figures),
+            fading=fading,
+            discrimination_db=discrimination,
+        )
+        for name, transmit, receive, fading in (
+            ("A to B", ends[0], ends[1], fadings[0]),
+            ("B to A", ends[1], ends[0], fadings[1]),
+        )
+    )
+    result = _result(link, figures, there, back, fadings=fadings, geometry=geometry, weather=weather)
+    return Signal(
+        result=result,
+        losses=_losses(link, losses[transmit_hz[0]], fadings[0], polarization_db=polarization_db),
+        received_dbm=AtEnds(at_a=back.result.received_dbm, at_b=there.result.received_dbm),
+        margin_db=AtEnds(at_a=back.result.margin_db, at_b=there.result.margin_db),
+        modulation=there.result.wanted,
+        at_most=_at_most(link, there, back, length_m=geometry.length_m),
+        cautions=signal_cautions(link, profile, result, fadings=fadings),
+    )
+
+
+def worse_of(verdict: SignalVerdict | None, at_most: SignalVerdict | None) -> SignalVerdict | None:
+    """A verdict held down to what else allows; None where no margin is known."""
+    if verdict is None or at_most is None:
+        return verdict
+    return max(verdict, at_most, key=BETTER_TO_WORSE.index)
+
+
+def _climate(
+    link: Link,
+    profile: PathProfile,
+    antennas: AntennasResult,
+    given: GivenClimate,
+    *,
+    a_amsl_m: float,
+    b_amsl_m: float,
+) -> ClimateFigures:
+    """Figures of the middle of the path; its air is at the mean level of the antennas unless the study says otherwise."""
+    middle = int(np.argmin(np.abs(profile.distance_m - 0.5 * profile.length_m)))
+    place = Position(
+        latitude_deg=float(profile.latitude_deg[middle]), longitude_deg=float(profile.longitude_deg[middle])
+    )
+    if given.altitude_m is None:
+        given = replace(given, altitude_m=float(np.clip(0.5 * (a_amsl_m + b_amsl_m), -500.0, 9000.0)))
+    rows = rows_of(link.radio)
+    has_margin = bool(rows) and None not in (
+        antennas.a.gain_dbi,
+        antennas.b.gain_dbi,
+        *(row_power_dbm(link.radio, row) for row in rows),
+    )
+    return figures_for(place, given=given, maps=has_margin)
+
+
+def _geometry(profile: PathProfile, middle: Position, *, a_amsl_m: float, b_amsl_m: float) -> Geometry:
+    weights = sample_lengths_m(profile)
+    return Geometry(
+        length_m=profile.length_m,
+        a_amsl_m=a_amsl_m,
+        b_amsl_m=b_amsl_m,
+        mean_ground_m=float(np.sum(weights * profile.ground_m) / np.sum(weights)),
+        latitude_deg=middle.latitude_deg,
+    )
+
+
+def _rain_tilt_deg(link: Link, antennas: AntennasResult) -> float:
+    """Angle of the field from horizontal that rain is worked out for, degrees: of several the one that rain hits hardest."""
+    if link.radio.dual_polarization:
+        return 0.0
+    angles = [
+        0.0 if mounted == "dual" else abs(FIELD_ANGLE_DEG[mounted])
+        for mounted in (antennas.a.polarization, antennas.b.polarization)
+    ]
+    return min(angles)
+
+
+def _fading(
+    link: Link,
+    figures: ClimateFigures,
+    *,
+    geometry: Geometry,
+    spread: Spread,
+    loss: PathLoss,
+    antennas: AntennasResult,
+    weather: Weather,
+) -> Fading:
+    frequency, tilt = loss.frequency_hz, _rain_tilt_deg(link, antennas)
+    rate = figures.rain_rate_001_mm_h
+    at_001 = rain_001(figures, geometry=geometry, frequency_hz=frequency, tilt_deg=tilt, edition=weather.rain_edition)
+    share = occurrence(figures, geometry=geometry, frequency_hz=frequency)
+    return Fading(
+        frequency_hz=frequency,
+        geometry=geometry,
+        spread=spread,
+        loss=loss,
+        rain=Rain(
+            edition=weather.rain_edition,
+            reading=weather.rain_reading,
+            rate_mm_h=None if rate is None else rate.value,
+            provenance="not computed: no rain rate" if rate is None else rate.provenance,
+            tilt_deg=tilt,
+            breaches=rain_breaches(geometry, frequency_hz=frequency, edition=weather.rain_edition, loss_db=at_001),
+        ),
+        rain_001_db=at_001,
+        occurrence_percent=share,
+        edition=figures.multipath_edition,
+        wet_radomes_db=link.antenna_a.radome_wet_db + link.antenna_b.radome_wet_db,
+        multipath_inputs=multipath_inputs(figures, geometry=geometry),
+        multipath_breaches=multipath_breaches(figures, geometry=geometry, frequency_hz=frequency, percent=share),
+    )
+
+
+def _losses(link: Link, loss: PathLoss, fading: Fading, *, polarization_db: float | None) -> Losses:
+    ends = link.antenna_a, link.antenna_b
+    pointing = [pointing_db(antenna) for antenna in ends]
+    return Losses(
+        free_space=loss.free_space_db,
+        diffraction=loss.diffraction_db,
+        polarization=polarization_db,
+        vegetation=loss.vegetation_db,
+        gases=loss.gases_db,
+        feeders=sum(line_loss_db(antenna, frequency_hz=loss.frequency_hz) for antenna in ends),
+        branching=sum(antenna.branching_loss_db for antenna in ends),
+        pointing=None if None in pointing else sum(one for one in pointing if one is not None),
+        rain_001=fading.rain_001_db,
+        radomes_wet=fading.wet_radomes_db,
+        radomes_iced=sum(antenna.radome_iced_db for antenna in ends),
+    )
+
+
+def _result(
+    link: Link,
+    figures: ClimateFigures,
+    there: Direction,
+    back: Direction,
+    *,
+    fadings: tuple[Fading, ...],
+    geometry: Geometry,
+    weather: Weather,
+) -> SignalResult:
+    periods, minutes, cause = _both_ways(there, back, common=link.radio.shares_frequency)
+    target = link.target_availability_percent
+    shares = [one.result.availability_percent.year for one in (there, back)]
+    met = None
+    if target is not None and None not in shares:
+        met = all(share is not None and share >= target for share in shares)
+    has_rain = fadings[0].rain_001_db is not None
+    edition = figures.multipath_edition
+    return SignalResult(
+        a_to_b=there.result,
+        b_to_a=back.result,
+        availability_percent=periods,
+        minutes_per_year=minutes,
+        dominant_cause=cause,
+        target_availability_percent=target,
+        target_met=met,
+        editions=Editions(
+            diffraction="P.526-16",
+            gases="P.676-12",
+            rain=f"P.530-{weather.rain_edition}" if has_rain else None,
+            rain_reading=weather.rain_reading if has_rain else None,
+            multipath=edition,
+            worst_month=None if edition is None else ("P.530-19" if edition == "P.530-19" else "P.2001-6"),
+        ),
+        climate=_climate_used(figures),
+        trees=fadings[0].loss.trees,
+        notes=notes_of(link, figures, (there.result, back.result), fadings=fadings, geometry=geometry),
+    )
+
+
+def _both_ways(there: Direction, back: Direction, *, common: bool) -> tuple[Periods, float | None, str | None]:
+    """Availability, minutes out and dominant cause of both directions at once."""
+    margins = there.result.margin_db, back.result.margin_db
+    if there.year is None or back.year is None or margins[0] is None or margins[1] is None:
+        return NOT_COMPUTED, None, None
+    assert there.worst_month is not None
+    assert back.worst_month is not None
+    least = min(margins[0], margins[1])
+    year = shares_of(two_way_outage(there.year, back.year, common_multipath=common), margin_db=least)
+    worst = shares_of(two_way_outage(there.worst_month, back.worst_month, common_multipath=common), margin_db=least)
+    return (
+        Periods(
+            year=None if year.total is None else 100.0 - year.total,
+            worst_month=None if worst.total is None else 100.0 - worst.total,
+        ),
+        None if year.total is None else float(minutes_per_year(year.total)),
+        year.dominant,
+    )
+
+
+def _climate_used(figures: ClimateFigures) -> tuple[ClimateUsed, ...]:
+    names = (
+        "rain_rate_001_mm_h",
+        "dn1_n_per_km",
+        "dn75",
+        "log_k",
+        "terrain_roughness_m",
+        "gradient_median_n_per_km",
+        "gradient_tail_n_per_km",
+        "temperature_k",
+        "total_pressure_hpa",
+        "dry_pressure_hpa",
+        "vapour_g_m3",
+        "rain_height_m",
+    )
+    found: list[tuple[str, Figure | None]] = [(name, getattr(figures, name)) for name in names]
+    return tuple(
+        ClimateUsed(
+            key=name,
+            value=figure.value,
+            unit=figure.unit,
+            provenance=figure.provenance,
+            source_key=figure.source_key,
+        )
+        for name, figure in found
+        if figure is not None
+    )
+
+
+def _at_most(link: Link, there: Direction, back: Direction, *, length_m: float) -> SignalVerdict | None:
+    """The best verdict that the target, the radio's timing and the channels leave."""
+    allowed: list[SignalVerdict] = []
+    reach = link.radio.greatest_distance_m
+    if reach is not None and length_m > reach:
+        allowed.append("below")
+    for one, site in ((there, link.b), (back, link.a)):
+        if blocked(site, link.radio, frequency_hz=one.result.frequency_hz) is not None:
+            allowed.append("below")
+        target = link.target_availability_percent
+        if target is None or one.result.margin_db is None:
+            continue
+        share, nearly = one.result.availability_percent.year, one.nearly_percent
+        if share is not None and share >= target:
+            allowed.append("meets")
+        elif share is None or (nearly is not None and nearly >= target):
+            allowed.append("marginal")
+        else:
+            allowed.append("below")
+    return max(allowed, key=BETTER_TO_WORSE.index, default=None)
