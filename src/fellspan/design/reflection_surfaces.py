@@ -1,0 +1,188 @@
+"""Which stretches of a profile can mirror a ray: water that the study states, else ground that is flat enough.
+
+Each surface is a plane that follows the curve of the Earth. Knows nothing of antennas, polarization or levels received.
+"""
+
+from dataclasses import dataclass
+from typing import Final
+
+import numpy as np
+from numpy.typing import NDArray
+
+from fellspan.design.reflection_result import SurfaceKind
+from fellspan.propagation import inverse_k, smooth_up_to_m, wavelength_m
+from fellspan.propagation.constants import EARTH_RADIUS_M
+from fellspan.terrain.profile import PathProfile
+
+Floats = NDArray[np.float64]
+
+SEA: Final = "sea level"
+WATER_WITHIN_M: Final = 0.5
+"""Ground as near as this to the stated water level is water (our own rule)."""
+OPEN_BELOW_M: Final = 0.5
+"""Ground with less cover than this can reflect (our own rule)."""
+LEAST_SAMPLES: Final = 8
+"""Flatness is judged over this many regular steps at least (our own rule)."""
+MOST_PLANES: Final = 3
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Water:
+    """Water levels as the study states them, m above sea level: usual, lowest, highest."""
+
+    level_m: float | None = None
+    low_m: float | None = None
+    high_m: float | None = None
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Surface:
+    """A reflecting plane: `level_a_m` where it is prolonged to A, m above sea level, and `slope` toward B.
+
+    `reflecting_m`, shape (n,), is the length that reflects between A and each sample at `distance_m`.
+    """
+
+    kind: SurfaceKind
+    level_a_m: float
+    slope: float
+    roughness_m: float
+    distance_m: Floats
+    reflecting_m: Floats
+
+    def level_m(self, at_m: float) -> float:
+        """Level of the plane at a distance from A, m above sea level."""
+        return self.level_a_m + self.slope * at_m
+
+    def reflecting_between_m(self, from_m: Floats, to_m: Floats) -> Floats:
+        """Length that reflects between two distances, m; NaN passes through."""
+        return np.interp(to_m, self.distance_m, self.reflecting_m) - np.interp(
+            from_m, self.distance_m, self.reflecting_m
+        )
+
+    def edges_m(self, from_m: float, to_m: float) -> tuple[float, float]:
+        """First and last place between two distances where it reflects."""
+        grown = np.interp([from_m, to_m], self.distance_m, self.reflecting_m)
+        inside = (self.reflecting_m > grown[0]) & (self.reflecting_m < grown[1])
+        places = self.distance_m[inside]
+        if places.size == 0:
+            return from_m, to_m
+        first, last = int(np.argmax(inside)), inside.size - 1 - int(np.argmax(inside[::-1]))
+        start = self.distance_m[first - 1] if first else places[0]
+        stop = self.distance_m[min(last + 1, inside.size - 1)]
+        return max(from_m, float(start)), min(to_m, float(stop))
+
+
+def water_mask(profile: PathProfile, water: Water) -> NDArray[np.bool_]:
+    """Samples that are open water: filled in as sea, or ground at the stated level; shape (n,)."""
+    mask = np.zeros(profile.distance_m.shape, dtype=np.bool_)
+    if SEA in profile.sources:
+        mask |= profile.source == profile.sources.index(SEA)
+    if water.level_m is not None:
+        mask |= np.abs(profile.ground_m - water.level_m) <= WATER_WITHIN_M
+    return np.asarray(mask & (profile.cover_m < OPEN_BELOW_M))
+
+
+def water_surface(profile: PathProfile, mask: NDArray[np.bool_], water: Water) -> Surface | None:
+    """The water of the path, taken as calm; None where there is none."""
+    if not mask.any():
+        return None
+    level = float(np.median(profile.ground_m[mask])) if water.level_m is None else water.level_m
+    return _surface("water", profile, mask, level_a_m=level, slope=0.0, roughness_m=0.0)
+
+
+def flat_surfaces(
+    profile: PathProfile,
+    water: NDArray[np.bool_],
+    *,
+    a_amsl_m: float,
+    b_amsl_m: float,
+    frequency_hz: float,
+    k: float,
+) -> list[Surface]:
+    """Flat ground in the place and at the slope that mirrors the ray at this k.
+
+    A line is fitted to the ground over the Fresnel zone around each sample; where angles in and out are the same, and what is
+    left over is below Rayleigh's criterion, the line is a mirror.
+    """
+    x, length = profile.distance_m, profile.length_m
+    curve = float(inverse_k(k)) / EARTH_RADIUS_M
+    from_b = length - x
+    inner = (x > 0.0) & (from_b > 0.0)
+    bulge = 0.5 * curve * x * from_b
+    with np.errstate(divide="ignore", invalid="ignore"):
+        down_a = (a_amsl_m - profile.ground_m - bulge) / x
+        down_b = (b_amsl_m - profile.ground_m - bulge) / from_b
+        mean = 0.5 * (down_a + down_b)
+        zone = np.sqrt(float(wavelength_m(frequency_hz)) * x * from_b / length) / mean
+    half = np.clip(np.where(mean > 0.0, zone, length), 0.5 * LEAST_SAMPLES * profile.step_m, 0.25 * length)
+    fitted, slope, rest = _fits(x, profile.ground_m, half)
+    tilt = slope + 0.5 * curve * (length - 2.0 * x)
+    with np.errstate(divide="ignore", invalid="ignore"):
+        angle_a = (a_amsl_m - fitted - bulge) / x + tilt
+        angle_b = (b_amsl_m - fitted - bulge) / from_b - tilt
+        grazing = 0.5 * (angle_a + angle_b)
+        smooth = np.asarray(smooth_up_to_m(np.maximum(grazing, 1e-9), frequency_hz=frequency_hz))
+    unlike = angle_a - angle_b
+    open_ground = (profile.cover_m < OPEN_BELOW_M) & ~water
+    usable = inner & open_ground & (angle_a > 0.0) & (angle_b > 0.0) & (rest < smooth)
+    meets = np.flatnonzero(usable[:-1] & usable[1:] & (unlike[:-1] * unlike[1:] <= 0.0))
+    found: list[tuple[float, Surface]] = []
+    for at in meets.tolist():
+        if any(abs(float(x[at]) - place) < float(half[at]) for place, _ in found):
+            continue
+        level = float(fitted[at] - slope[at] * x[at])
+        near = np.abs(profile.ground_m - level - slope[at] * x) <= max(3.0 * float(rest[at]), float(smooth[at]))
+        plane = _surface(
+            "flat ground",
+            profile,
+            open_ground & near,
+            level_a_m=level,
+            slope=float(slope[at]),
+            roughness_m=float(rest[at]),
+        )
+        found.append((float(x[at]), plane))
+    # The wider the zone, the nearer to grazing and the stronger the mirror.
+    found.sort(key=lambda pair: -float(np.interp(pair[0], x, half)))
+    return [plane for _, plane in found[:MOST_PLANES]]
+
+
+def _surface(
+    kind: SurfaceKind,
+    profile: PathProfile,
+    mask: NDArray[np.bool_],
+    *,
+    level_a_m: float,
+    slope: float,
+    roughness_m: float,
+) -> Surface:
+    steps = np.diff(profile.distance_m) * 0.5 * (mask[1:].astype(np.float64) + mask[:-1])
+    return Surface(
+        kind=kind,
+        level_a_m=level_a_m,
+        slope=slope,
+        roughness_m=roughness_m,
+        distance_m=profile.distance_m,
+        reflecting_m=np.concatenate(([0.0], np.cumsum(steps))),
+    )
+
+
+def _fits(x: Floats, z: Floats, half: Floats) -> tuple[Floats, Floats, Floats]:
+    """For each sample a line fitted within `half` of it: its level there, its slope, what is left over (standard deviation).
+
+    Running sums weighed by the spacing of the samples, so that places sampled more closely do not count more.
+    """
+    weight = np.gradient(x)
+    across, up = x - x.mean(), z - z.mean()
+    first, last = np.searchsorted(x, x - half, side="left"), np.searchsorted(x, x + half, side="right")
+
+    def total(values: Floats) -> Floats:
+        sums = np.concatenate(([0.0], np.cumsum(weight * values)))
+        return np.asarray(sums[last] - sums[first])
+
+    mass = total(np.ones_like(x))
+    mean_x, mean_z = total(across) / mass, total(up) / mass
+    var_x = total(across**2) / mass - mean_x**2
+    both = total(across * up) / mass - mean_x * mean_z
+    slope = np.divide(both, var_x, out=np.zeros_like(both), where=var_x > 0.0)
+    rest = np.sqrt(np.maximum(total(up**2) / mass - mean_z**2 - slope * both, 0.0))
+    return np.asarray(mean_z + slope * (across - mean_x) + z.mean()), slope, np.asarray(rest)
