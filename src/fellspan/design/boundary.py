@@ -7,11 +7,13 @@ grid is searched. Knows nothing of terrain or radio.
 
 import math
 from dataclasses import dataclass
+from typing import Final
 
 import numpy as np
 from numpy.typing import NDArray
 
 Floats = NDArray[np.float64]
+_FEW: Final = 32
 
 
 def upper_hull(x: Floats, y: Floats) -> NDArray[np.intp]:
@@ -19,16 +21,25 @@ def upper_hull(x: Floats, y: Floats) -> NDArray[np.intp]:
 
     Points at -inf are left out; the first and the last point must be finite.
     """
+    left = np.flatnonzero(np.isfinite(y))
+    # A point on or below the chord of its two neighbours is no corner: all such at once, again and again.
+    while left.size > _FEW:
+        px, py = x[left], y[left]
+        rise = (py[1:-1] - py[:-2]) * (px[2:] - px[:-2]) - (py[2:] - py[:-2]) * (px[1:-1] - px[:-2])
+        stays = np.concatenate(([True], rise > 0.0, [True]))
+        if stays.all():
+            break
+        left = left[stays]
     kept: list[int] = []
-    xs, ys = x.tolist(), y.tolist()
-    for i in np.flatnonzero(np.isfinite(y)).tolist():
+    xs, ys = x[left].tolist(), y[left].tolist()
+    for i in range(left.size):
         while len(kept) > 1:
             o, m = kept[-2], kept[-1]
             if (ys[m] - ys[o]) * (xs[i] - xs[o]) > (ys[i] - ys[o]) * (xs[m] - xs[o]):
                 break
             kept.pop()
         kept.append(i)
-    return np.asarray(kept, dtype=np.intp)
+    return np.asarray(left[kept], dtype=np.intp)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)

@@ -164,10 +164,13 @@ def _standard_error(probability: float, count: int) -> float:
 
 
 def _assumptions(case: Case, model: ErrorModel) -> tuple[str, ...]:
-    return (
+    reach = (
         f"Errors of the ground hang together over {model.ground_reach_m:.0f} m "
         f"({reach_source(case.profile.cell_m)}), those of cover over {model.cover_reach_m:.0f} m "
-        "(common practice, no source).",
+        "(common practice, no source)."
+    )
+    return (
+        reach,
         f"Positions are known to {model.position_error_m:.1f} m (standard error along each axis).",
         f"The gradient behind each k is known to {model.gradient_error:g} N/km (our own rule).",
     )

@@ -225,7 +225,9 @@ def _points(
     chosen = kept
     while True:
         # The farther from governing, the thinner.
-        bins = np.floor(distance[kept] / (width * np.where(nearness[kept] < 1.0, 1.0, np.where(nearness[kept] < 2.0, 2.0, 4.0))))
+        bins = np.floor(
+            distance[kept] / (width * np.where(nearness[kept] < 1.0, 1.0, np.where(nearness[kept] < 2.0, 2.0, 4.0)))
+        )
         order = np.lexsort((nearness[kept], bins))
         first = order[np.r_[True, np.diff(bins[order]) != 0]]
         chosen = np.sort(kept[first])
@@ -239,9 +241,7 @@ def _points(
     return points, np.maximum(spaced, gaps[points]) if chosen.size < kept.size else gaps[points]
 
 
-def _overshoot_m(
-    case: Case, sigma_m: Floats, points: NDArray[np.intp], spacing_m: Floats, model: ErrorModel
-) -> Floats:
+def _overshoot_m(case: Case, sigma_m: Floats, points: NDArray[np.intp], spacing_m: Floats, model: ErrorModel) -> Floats:
     """How much the samples left out between the points would have added to the greatest error, m, shape (m,).
 
     A first-order process seen at steps w misses 0.5826 sqrt(2 w / reach) standard errors of its running maximum (Siegmund's

@@ -12,13 +12,17 @@ GROUND_REACH_M: Final = (
     # up to this cell, correlation length, where the figure comes from
     (2.0, 50.0, "airborne laser scanning: strips and filtering of vegetation; common practice, no source"),
     (12.0, 200.0, "photogrammetry and fine radar models; common practice, no source"),
-    (100.0, 500.0, "SRTM class: speckle within cells, and motion of the mast over kilometres; common practice, no source"),
+    (
+        100.0,
+        500.0,
+        "SRTM class: speckle within cells, and motion of the mast over kilometres; common practice, no source",
+    ),
     (float("inf"), 2000.0, "two coarse cells; common practice, no source"),
 )
 COVER_REACH_M: Final = 50.0
 """Correlation length of the error of cover heights: the size of a stand or a block (common practice, no source)."""
 POSITION_CELLS: Final = 0.29
-"""Standard error of a horizontal position along each axis, in cells: known to the cell and evenly spread in it, 1 / sqrt(12)."""
+"""Standard error of a horizontal position along each axis, in cells: known to the cell and even in it: 1 / sqrt(12)."""
 GRADIENT_ERROR: Final = 6.0
 """Standard error of the refractivity gradient that a criterion's k stands for, N/km. Our own rule: medians over the map of
 Rec. ITU-R P.453-13 differ by about this much from the one behind k = 4/3. How the gradient varies with time is not in it:

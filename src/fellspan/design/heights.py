@@ -17,7 +17,15 @@ from fellspan.design.case import Case, Rules
 from fellspan.design.confidence import ConfidenceResult, confidence_of, quantile
 from fellspan.design.draws import Draws, draw, errors_of, marginal_m
 from fellspan.design.error_model import ErrorModel, default_error_model
-from fellspan.design.heights_result import HeightKind, HeightOption, HeightSettings, HeightsResult, MetreMore, Pair, Touch
+from fellspan.design.heights_result import (
+    HeightKind,
+    HeightOption,
+    HeightSettings,
+    HeightsResult,
+    MetreMore,
+    Pair,
+    Touch,
+)
 from fellspan.design.options import HAIR_M, Ground, Levels, cost_of, exact, rounded
 from fellspan.links import clearance
 from fellspan.links.assess import Assessment, AssessSettings, assess_profile
@@ -79,7 +87,9 @@ def design_heights(
     holds = search.holds(case.planned)
     return (
         HeightsResult(
-            decision=words.decision(planned, options, holds=holds, confidence=settings.confidence, likely=confidence.all_hold),
+            decision=words.decision(
+                planned, options, holds=holds, confidence=settings.confidence, likely=confidence.all_hold
+            ),
             planned=planned,
             planned_holds=holds,
             base_a=words.base(case.end_a),
@@ -141,7 +151,14 @@ class _Search:
         boundary = Boundary.over(case.share, engine_need)
         if kind in ("least total", "least cost"):
             return self._rounded_pair(kind, rules, engine_need, sigmas)
-        levels = exact(kind, boundary, case.share, engine_need, replace(self.ground, a_to_m=math.inf, b_to_m=math.inf), self.heights)
+        levels = exact(
+            kind,
+            boundary,
+            case.share,
+            engine_need,
+            replace(self.ground, a_to_m=math.inf, b_to_m=math.inf),
+            self.heights,
+        )
         if levels is None:
             return None
         a, b = levels
@@ -193,12 +210,16 @@ class _Search:
         """What `links.assess_profile` itself says at these levels."""
         case = self.case
         link = replace(case.link_at(*levels))
-        return assess_profile(link, self.assessment.profile, replace(case.settings, date=None)).result.verdict == "clear"
+        return (
+            assess_profile(link, self.assessment.profile, replace(case.settings, date=None)).result.verdict == "clear"
+        )
 
     def curve(self, rules: Rules, raw: dict[HeightKind, Levels | None]) -> tuple[tuple[float, float], ...]:
         """Lowest pairs that hold with the confidence, for the chart: mast heights, from some of the draws."""
         case, ground = self.case, self.ground
-        boundary = Boundary.over(case.share, np.maximum(rules.most_m, rules.most_m + NormalDist().inv_cdf(self.asked) * case.errors_m))
+        boundary = Boundary.over(
+            case.share, np.maximum(rules.most_m, rules.most_m + NormalDist().inv_cdf(self.asked) * case.errors_m)
+        )
         fewer = replace(self.draws, error_m=self.draws.error_m[:, : min(CURVE_DRAWS, self.draws.error_m.shape[1])])
         a_from, a_to = _span(case, ground, raw)
         found = []

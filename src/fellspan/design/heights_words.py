@@ -22,9 +22,7 @@ def metres(value: float) -> str:
     return f"{value:.2f}".rstrip("0").rstrip(".") + " m"
 
 
-def decision(
-    planned: Pair, options: Sequence[HeightOption], *, holds: bool, confidence: float, likely: float
-) -> str:
+def decision(planned: Pair, options: Sequence[HeightOption], *, holds: bool, confidence: float, likely: float) -> str:
     """What to build, in one or two sentences."""
     asked = f"{100.0 * confidence:g} %"
     builds = {option.kind: option.build for option in options}
@@ -33,10 +31,17 @@ def decision(
     if holds:
         least = builds.get("least total")
         less = least is not None and least.a_m + least.b_m < planned.a_m + planned.b_m - 0.5
-        spare = f" The least that would do: {metres(least.a_m)} at A and {metres(least.b_m)} at B." if least and less else ""
+        spare = (
+            f" The least that would do: {metres(least.a_m)} at A and {metres(least.b_m)} at B."
+            if least and less
+            else ""
+        )
         return f"High enough as planned: {now} meet every criterion with {_percent(likely)} confidence ({asked} asked).{spare}"
     if not ways:
-        return f"Not high enough as planned ({now}), and no height within the limits gives {asked} confidence: look for another site or a relay."
+        return (
+            f"Not high enough as planned ({now}), and no height within the limits gives {asked} confidence: look for another "
+            "site or a relay."
+        )
     return f"Not high enough as planned ({now}; {_percent(likely)} confidence). With {asked} confidence: {', or '.join(ways)}."
 
 
@@ -69,11 +74,15 @@ def cautions(planned: Pair, options: Sequence[HeightOption], *, growth_years: fl
     builds = [option.build for option in options if option.build is not None]
     found = [RAISING, *safety_lines(("structure and wind", "aviation"))]
     if any(max(pair.a_m, pair.b_m) > USUAL_MAST_M for pair in builds):
-        found.insert(0, f"More than {USUAL_MAST_M:g} m of mast is beyond what is usual: look for another site or a relay first.")
+        found.insert(
+            0, f"More than {USUAL_MAST_M:g} m of mast is beyond what is usual: look for another site or a relay first."
+        )
     if any(min(pair.a_m, pair.b_m) < LOW_M for pair in builds):
         found.append(f"Under {LOW_M:g} m, people, vehicles, grass and snow get in the way and no raster shows them.")
     if growth_years > 0.0:
-        found.append(f"Trees were grown by {growth_years:g} years where their growth is stated; others keep their height.")
+        found.append(
+            f"Trees were grown by {growth_years:g} years where their growth is stated; others keep their height."
+        )
     else:
         found.append("Trees were not grown: leave room, or ask for heights some years ahead.")
     return tuple(found)

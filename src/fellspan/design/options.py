@@ -106,14 +106,13 @@ def _steps(boundary: Boundary, ground: Ground, settings: HeightSettings) -> list
     first = math.ceil((start - ground.base_a_m) / step - HAIR_M)
     last = math.floor((stop - ground.base_a_m) / step + HAIR_M)
     stride = max(1, -(-(last - first + 1) // MOST_STEPS))
-    pairs = []
-    for number in range(first, last + 1, stride):
-        a = ground.base_a_m + number * step
-        b = boundary.lowest_b(a)
-        if math.isfinite(b):
-            fits = _fits((a, _up(max(b, ground.b_from_m), ground.base_b_m, step)), ground)
-            pairs += [] if fits is None else [fits]
-    return pairs
+    a = ground.base_a_m + np.arange(first, last + 1, stride) * step
+    # A first step that is on the boundary but for rounding counts as on it.
+    b = np.interp(np.maximum(a, boundary.a_m[0]), boundary.a_m, boundary.b_m)
+    height = np.maximum(b, ground.b_from_m) - ground.base_b_m
+    b = ground.base_b_m + np.ceil(height / step - HAIR_M) * step
+    fits = b <= ground.b_to_m + HAIR_M
+    return list(zip(a[fits].tolist(), b[fits].tolist(), strict=True))
 
 
 def _section_ends(ground: Ground, settings: HeightSettings, boundary: Boundary) -> list[float]:
