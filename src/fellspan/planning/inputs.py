@@ -44,6 +44,10 @@ class Study:
     median_k: float = 4.0 / 3.0
     confidence: float = 0.9
     growth_years: float = 0.0
+    water_level_m: float | None = None
+    water_low_m: float | None = None
+    water_high_m: float | None = None
+    """Level of open water, and the lowest and highest it comes to, m above sea level; for reflections."""
     tiles_url: str | None = None
     tiles_credit: str = ""
     path: Path | None = None

@@ -2,6 +2,7 @@
 
 from dataclasses import dataclass
 
+from fellspan.design.reflection_result import ReflectionResult
 from fellspan.errors import FellspanError
 from fellspan.links.levels import PathLevels
 from fellspan.links.result import LinkResult
@@ -21,6 +22,7 @@ class LinkPlan:
     result: LinkResult
     profile: PathProfile
     levels: PathLevels
+    reflections: ReflectionResult | None = None
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -6,6 +6,7 @@ One link that cannot be assessed does not stop the others. Reads no study file a
 from collections.abc import Callable, Iterator
 
 from fellspan import __version__
+from fellspan.design.reflections import Water, find_reflections
 from fellspan.errors import FellspanError
 from fellspan.links.assess import AssessSettings, assess_in_full
 from fellspan.links.site import Link
@@ -39,13 +40,14 @@ def plan_study(study: Study, *, progress: Progress | None = None) -> StudyPlan:
         rain_edition=study.rain_edition,
         rain_reading=study.rain_reading,
     )
+    water = Water(level_m=study.water_level_m, low_m=study.water_low_m, high_m=study.water_high_m)
     planned: list[LinkPlan] = []
     failures: list[LinkFailure] = []
     with _open_terrain(study) as terrain:
         for done, link in enumerate(study.links):
             if progress is not None:
                 progress(done, len(study.links), link.name)
-            outcome = _plan_link(link, terrain, settings)
+            outcome = _plan_link(link, terrain, settings, water)
             if isinstance(outcome, LinkPlan):
                 planned.append(outcome)
             else:
@@ -77,12 +79,19 @@ def _open_terrain(study: Study) -> Terrain:
     )
 
 
-def _plan_link(link: Link, terrain: Terrain, settings: AssessSettings) -> LinkPlan | LinkFailure:
+def _plan_link(link: Link, terrain: Terrain, settings: AssessSettings, water: Water) -> LinkPlan | LinkFailure:
     try:
         assessment = assess_in_full(link, terrain=terrain, settings=settings)
     except FellspanError as error:
         return LinkFailure(link=link, error=explained(error, link, terrain))
-    return LinkPlan(link=link, result=assessment.result, profile=assessment.profile, levels=assessment.levels)
+    result, profile, levels = assessment.result, assessment.profile, assessment.levels
+    return LinkPlan(
+        link=link,
+        result=result,
+        profile=profile,
+        levels=levels,
+        reflections=find_reflections(link, result=result, profile=profile, levels=levels, water=water),
+    )
 
 
 def _unused_survey(study: Study, terrain: Terrain) -> Iterator[str]:
