@@ -6,6 +6,7 @@ from dataclasses import dataclass
 import pytest
 from watched_browser import watching
 
+from fellspan.links.words import spare_m
 from fellspan.report.wording import clean
 
 pytestmark = pytest.mark.browser
@@ -79,9 +80,7 @@ def _visits(report, browser, names):
                         texts=page.evaluate(TEXTS) if drawn else [],
                         heading=page.evaluate("() => document.querySelector('h1').textContent"),
                         title=page.title(),
-                        foreign=page.evaluate(
-                            "() => document.querySelectorAll('img:not(.leaflet-image-layer),[onerror]').length"
-                        ),
+                        foreign=page.evaluate(FOREIGN),
                     )
                 )
     return seen
@@ -141,9 +140,9 @@ def test_governing_point_is_drawn_where_the_result_says(request, kind, size):
         assert drawing["point"][0] == pytest.approx(_on_scale(drawing["x"], item.worst_at_m), abs=0.5)
         assert drawing["point"][1] == pytest.approx(_on_scale(drawing["y"], item.surface_m + item.bulge_m), abs=0.5)
         assert float(drawing["said"]["atM"]) == item.worst_at_m
-        spare = item.clearance_m - item.required_m
-        assert drawing["words"].startswith(f"{abs(spare):.1f} m")
-        assert ("short" in drawing["words"]) == (spare < 0.0)
+        spare = spare_m(item, length_m=plan.result.distance_m)
+        assert f"{abs(spare):.1f} m" in drawing["words"]
+        assert ("short" in drawing["words"]) == (spare < 0.0) == (not item.met)
 
 
 def _middle_of_path(page, index):
@@ -267,11 +266,87 @@ def test_a_link_page_prints_on_a_few_sheets_of_a4(plain, watch):
         assert (width, height) == pytest.approx((595.3, 841.9), abs=1.0)
 
 
-def test_the_profile_stands_on_the_first_sheet(plain, watch):
+def test_the_profile_stands_on_the_first_sheet(plain, sample, watch):
     page = watch(1280, 900).page
     page.emulate_media(media="print")
     page.set_viewport_size({"width": 703, "height": 1040})  # A4 less its margins, at 96 px an inch
-    for path in plain.link_pages:
+    for path in (*plain.link_pages, *sample.link_pages):
         page.goto(path.as_uri())
         bottom = page.evaluate("() => document.querySelector('figure.drawing').getBoundingClientRect().bottom")
         assert bottom <= 1040
+
+
+DOTS = """() => { const frame = document.querySelector(".folium-map").getBoundingClientRect();
+  return Array.from(document.querySelectorAll(".site-dot")).map(dot => {
+    const at = dot.getBoundingClientRect();
+    return [at.left - frame.left, frame.right - at.right, at.top - frame.top, frame.bottom - at.bottom,
+            frame.width, frame.height]; }); }"""
+
+
+def _settled(page):
+    page.evaluate("() => new Promise(done => requestAnimationFrame(() => requestAnimationFrame(done)))")
+
+
+@pytest.mark.parametrize("size", ["desktop", "phone"])
+def test_an_open_overview_fits_its_map_to_the_sheet_and_back(sample, watch, size):
+    page = watch(*SIZES[size]).page
+    page.goto((sample.folder / "index.html").as_uri())
+    page.evaluate("() => fellspanMap.map.setZoom(14)")  # as someone leaves it who looked at a detail
+    before = page.evaluate("() => [fellspanMap.map.getZoom(), document.querySelector('.folium-map').clientWidth]")
+    # What a browser does before it draws sheets; the layout is still that of the window.
+    page.evaluate("() => window.dispatchEvent(new Event('beforeprint'))")
+    for dot in page.evaluate(DOTS):
+        assert min(dot[:4]) >= 5, dot
+        assert dot[4:] == [703, 420]
+    page.evaluate("() => window.dispatchEvent(new Event('afterprint'))")
+    assert page.evaluate("() => document.querySelector('.folium-map').clientWidth") == before[1]
+    page.emulate_media(media="print")
+    _settled(page)
+    for dot in page.evaluate(DOTS):
+        assert min(dot[:4]) >= 5, dot
+        assert dot[4:] == [703, 420]
+    assert page.locator(".line-key:visible").count() == 1
+    assert len(re.findall(rb"/Type\s*/Page\b", page.pdf(prefer_css_page_size=True))) <= 2
+
+
+def test_links_fill_the_map_and_names_are_whole(sample, watch):
+    page = watch(*SIZES["desktop"]).page
+    page.goto((sample.folder / "index.html").as_uri())
+    _settled(page)
+    left, right, *_ = (min(side) for side in zip(*page.evaluate(DOTS), strict=True))
+    width = page.locator(".folium-map").bounding_box()["width"]
+    assert width - left - right > 0.8 * width
+    cut = page.evaluate("""() => { const frame = document.querySelector(".folium-map").getBoundingClientRect();
+      return Array.from(document.querySelectorAll(".site-name:not(.crowded)")).filter(name => {
+        const at = name.getBoundingClientRect();
+        return at.left < frame.left || at.right > frame.right || at.top < frame.top || at.bottom > frame.bottom;
+      }).map(name => name.textContent); }""")
+    assert cut == []
+
+
+def test_a_phone_shows_the_key_of_lines_below_the_map(sample, watch):
+    page = watch(*SIZES["phone"]).page
+    page.goto((sample.folder / "index.html").as_uri())
+    chart, key = page.locator(".folium-map").bounding_box(), page.locator(".line-key").bounding_box()
+    assert key["y"] >= chart["y"] + chart["height"]
+    assert "clear on bare ground only" in page.locator(".line-key").inner_text()
+
+
+def test_a_cut_wears_the_colour_of_its_own_link(sample, watch):
+    page = watch(*SIZES["desktop"]).page
+    page.goto((sample.folder / "index.html").as_uri())
+    colours = page.evaluate("""() => Array.from(document.querySelectorAll(".leaflet-pane .map-cut")).map(cut => {
+      const link = cut.getAttribute("class").match(/of-link-\\d+/)[0];
+      return [getComputedStyle(cut).stroke, getComputedStyle(document.querySelector(".map-path." + link)).stroke]; })""")
+    assert len({own for own, _ in colours}) == 2
+    for own, of_the_link in colours:
+        assert own == of_the_link
+
+
+def test_letters_stand_once_on_paper(plain, watch):
+    page = watch(703, 1040).page
+    page.goto(plain.link_pages[0].as_uri())
+    halo = "() => Array.from(document.querySelectorAll('svg text')).filter(t => getComputedStyle(t).stroke !== 'none').length"
+    assert page.evaluate(halo) > 0
+    page.emulate_media(media="print")
+    assert page.evaluate(halo) == 0

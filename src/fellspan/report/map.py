@@ -70,7 +70,7 @@ def link_map(
     west, east = min(x for _, x in places), max(x for _, x in places)
     chart = folium.Map(
         location=[(south + north) / 2.0, (west + east) / 2.0], tiles=None, zoom_start=10, control_scale=False,
-        max_zoom=19, min_zoom=2, zoom_snap=0.25, attribution_control=True,
+        max_zoom=19, min_zoom=2, zoom_snap=0.05, attribution_control=True,
     )  # fmt: skip
     chart.default_js, chart.default_css = [], []
     chart._id = name

@@ -195,7 +195,9 @@ def governing(section: Section, *, callout_y: float) -> str:
     met = "met" if item.met else "short"
     first = governing_words(item, section.profile.length_m)
     if section.other_shortfall:
-        first = f"Least share of the zone: {first}"
+        first = (
+            f"Least share of the zone: {first}" if sheet.roomy else first.replace("of the required clearance", "here")
+        )
     free = _share_words(item)
     where = f"{distance(item.worst_at_m)} from A: {item.cause}" if item.cause else f"{distance(item.worst_at_m)} from A"
     room = 96 if sheet.roomy else 50

@@ -17,7 +17,7 @@ BASIS_WORD: dict[Basis, str] = {
 }
 BASIS_SHORT: dict[Basis, str] = {
     "surveyed": "surveyed",
-    "surface raster": "by a surface raster",
+    "surface raster": "surface raster",
     "bare ground only": "on bare ground only",
 }
 SIGNAL_WORD: dict[SignalVerdict, str] = {

@@ -2,6 +2,7 @@
 function setUpMap(map, options) {
   "use strict";
   var box = map.getContainer(), frame = box.parentElement, wanted = options.bounds, touched = false, tiles = null;
+  var paper = window.matchMedia("print"), onPaper = false;
   map.attributionControl.setPrefix(false);
   map.attributionControl.addAttribution(options.credit);
   L.control.scale({imperial: false}).addTo(map);
@@ -9,7 +10,34 @@ function setUpMap(map, options) {
     wanted = bounds;
     touched = false;
     map.invalidateSize({animate: false});
-    map.fitBounds(bounds, {padding: [Math.min(90, box.clientWidth * 0.16), 40], maxZoom: 17, animate: false});
+    // First close to the frame, then as much further out as the names on its edges need.
+    var room = {left: 22, top: 22, right: 22, bottom: 30};
+    show(bounds, room);
+    var wide = box.clientWidth, high = box.clientHeight, here = box.getBoundingClientRect();
+    box.querySelectorAll(".site-name").forEach(function (name) {
+      place(name, name.dataset.side);
+      var at = name.getBoundingClientRect();
+      room.left = Math.max(room.left, Math.min(22 + here.left - at.left + 6, wide * 0.28));
+      room.right = Math.max(room.right, Math.min(22 + at.right - here.right + 6, wide * 0.28));
+      room.top = Math.max(room.top, Math.min(22 + here.top - at.top + 6, high * 0.2));
+      room.bottom = Math.max(room.bottom, Math.min(30 + at.bottom - here.bottom + 6, high * 0.2));
+    });
+    show(bounds, room);
+  }
+  function show(bounds, room) {
+    map.fitBounds(bounds, {
+      paddingTopLeft: [room.left, room.top], paddingBottomRight: [room.right, room.bottom], maxZoom: 17, animate: false
+    });
+  }
+  function print(on) {
+    // The sheet has another shape than the window: the map is fitted to it before it is drawn there, and back afterwards.
+    on = on || paper.matches;
+    if (on === onPaper) return;
+    onPaper = on;
+    document.documentElement.classList.toggle("printing", on);
+    if (key && on) key.open = true;
+    fit(on ? options.bounds : wanted);
+    declutter();
   }
   function overlap(one, other) {
     return one.left < other.right + 2 && other.left < one.right + 2 && one.top < other.bottom && other.top < one.bottom;
@@ -44,7 +72,6 @@ function setUpMap(map, options) {
     });
   }
   var key = frame.querySelector("details.map-key");
-  if (key && box.clientWidth < 600) key.open = false;
   if (options.quiet) {
     map.scrollWheelZoom.disable();
     if (L.Browser.mobile) map.dragging.disable();
@@ -52,7 +79,7 @@ function setUpMap(map, options) {
   map.on("dragstart zoomstart", function () { touched = true; });
   map.on("zoomend moveend", declutter);
   new ResizeObserver(function () {
-    if (touched) map.invalidateSize({animate: false}); else fit(wanted);
+    if (touched && !onPaper) map.invalidateSize({animate: false}); else fit(wanted);
     declutter();
   }).observe(box);
   var button = frame.querySelector("[data-map=tiles]");
@@ -68,5 +95,9 @@ function setUpMap(map, options) {
   });
   fit(wanted);
   declutter();
+  window.addEventListener("beforeprint", function () { print(true); });
+  window.addEventListener("afterprint", function () { print(false); });
+  paper.addEventListener("change", function (event) { print(event.matches); });
+  print(false);
   return {map: map, fit: fit, declutter: declutter, all: options.bounds};
 }
