@@ -41,6 +41,15 @@ class _Passed:
     """Offset against the radius of a zone: small is deep inside."""
 
 
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class _Probe:
+    """Places (n, 2), latitude and longitude, whose ground tells the top: beside the path, on it, then corners or supports."""
+
+    places: Floats
+    span: int = 0
+    share: float = 0.0
+
+
 def beside(
     near: Sequence[NearShape],
     crossings: Sequence[Crossing],
@@ -57,22 +66,26 @@ def beside(
         found for one in near if (found := _passed(one, crossed.get(id(one.obstacle), ()), path.length_m)) is not None
     ]
     passed = sorted(passed, key=lambda one: (one.share, one.along_m, one.obstacle.name))[:MOST_BESIDE]
-    return tuple(
-        sorted(
-            (
-                BesidePath(
-                    name=one.obstacle.name,
-                    kind=one.obstacle.kind,
-                    at_m=one.along_m,
-                    offset_m=one.offset_m,
-                    top_amsl_m=_top(one, path, ground_at, growth_years),
-                    source=one.obstacle.source,
-                )
-                for one in passed
-            ),
-            key=lambda one: (one.at_m, one.offset_m, one.name),
+    probes = [_probes(one, path) for one in passed]
+    # Ground is asked for once, for all of them.
+    places = np.concatenate([probe.places for probe in probes]) if probes else np.zeros((0, 2))
+    ground = ground_at(places[:, 0], places[:, 1])
+    listed: list[BesidePath] = []
+    at = 0
+    for one, probe in zip(passed, probes, strict=True):
+        under = ground[at : at + len(probe.places)]
+        at += len(probe.places)
+        listed.append(
+            BesidePath(
+                name=one.obstacle.name,
+                kind=one.obstacle.kind,
+                at_m=one.along_m,
+                offset_m=one.offset_m,
+                top_amsl_m=_top(one.obstacle, probe, under) + one.obstacle.growth_m_per_year * growth_years,
+                source=one.obstacle.source,
+            )
         )
-    )
+    return tuple(sorted(listed, key=lambda one: (one.at_m, one.offset_m, one.name)))
 
 
 def _passed(near: NearShape, crossed: Sequence[tuple[float, float]], length_m: float) -> _Passed | None:
@@ -107,50 +120,53 @@ def _passed(near: NearShape, crossed: Sequence[tuple[float, float]], length_m: f
     )
 
 
-def _top(one: _Passed, path: GeodesicPath, ground_at: GroundAt, growth_years: float) -> float:
-    """Its top at that place, m above sea level."""
+def _probes(one: _Passed, path: GeodesicPath) -> _Probe:
+    """Where the ground must be known for the top: beside the path, on it, and at corners or supports."""
     obstacle = one.obstacle
-    growth = obstacle.growth_m_per_year * growth_years
-    if obstacle.rule == "sea" and obstacle.top_amsl_m is not None:
-        return obstacle.top_amsl_m + growth
-    latitude, longitude = _position(path, one.along_m, one.across_m)
-    height = obstacle.height_m if obstacle.height_m is not None else max(obstacle.heights_m or (0.0,))
+    foot = path.positions(np.array([one.along_m]))
+    places = [_position(path, one.along_m, one.across_m), (float(foot[0][0]), float(foot[1][0]))]
     if obstacle.rule == "span":
-        top = _hung(one, path, ground_at)
-        if np.isfinite(top):
-            return top + growth
-    latitudes, longitudes = np.array([latitude]), np.array([longitude])
+        line = shapely.get_coordinates(obstacle.shape)
+        span, share = _span(one, line, path)
+        return _Probe(places=np.array([*places, *line[span : span + 2, ::-1]]), span=span, share=share)
     if obstacle.rule == "level" and obstacle.shape.geom_type == "Polygon":
         corners = shapely.get_coordinates(obstacle.shape)
         corners = corners[np.unique(np.linspace(0, len(corners) - 1, _MOST_CORNERS).astype(np.int64))]
-        latitudes, longitudes = np.append(latitudes, corners[:, 1]), np.append(longitudes, corners[:, 0])
-    ground = ground_at(latitudes, longitudes)
-    if not np.isfinite(ground).any():
-        # The ground of the path at that place is the next best.
-        ground = ground_at(*(np.atleast_1d(value) for value in path.positions(np.array([one.along_m]))))
-    return float(np.nanmax(ground)) + height + growth if np.isfinite(ground).any() else float("nan")
+        return _Probe(places=np.array([*places, *corners[:, ::-1]]))
+    return _Probe(places=np.array(places))
 
 
-def _hung(one: _Passed, path: GeodesicPath, ground_at: GroundAt) -> float:
-    """Height of a line hung between its supports, at its place nearest the path."""
-    obstacle = one.obstacle
-    line = shapely.get_coordinates(obstacle.shape)
+def _top(obstacle: Obstacle, probe: _Probe, ground_m: Floats) -> float:
+    """Its top, m above sea level, without growth, over the ground at its probes."""
+    if obstacle.rule == "sea" and obstacle.top_amsl_m is not None:
+        return obstacle.top_amsl_m
+    if obstacle.rule == "span":
+        if obstacle.tops_amsl_m is not None:
+            first, second = obstacle.tops_amsl_m[probe.span : probe.span + 2]
+        else:
+            supports = len(shapely.get_coordinates(obstacle.shape))
+            heights = obstacle.heights_m or (obstacle.height_m or 0.0,) * supports
+            first, second = ground_m[2] + heights[probe.span], ground_m[3] + heights[probe.span + 1]
+        hung = first + (second - first) * probe.share - 4.0 * obstacle.sag_m * probe.share * (1.0 - probe.share)
+        if np.isfinite(hung):
+            return float(hung)
+    own = np.concatenate((ground_m[:1], ground_m[2:]))
+    if not np.isfinite(own).any():
+        own = ground_m[1:2]  # the ground of the path there is the next best
+    height = obstacle.height_m if obstacle.height_m is not None else max(obstacle.heights_m or (0.0,))
+    return float(np.nanmax(own)) + height if np.isfinite(own).any() else float("nan")
+
+
+def _span(one: _Passed, line: Floats, path: GeodesicPath) -> tuple[int, float]:
+    """Which span of a line is the one beside the path, and how far along it (0 to 1)."""
     along, across = along_across(path, line[:, 1], line[:, 0] + one.shift)
     start, ray = np.column_stack((along, across))[:-1], np.column_stack((np.diff(along), np.diff(across)))
     square = np.maximum(np.sum(ray**2, axis=1), 1e-12)
-    fraction = np.clip(
-        ((one.along_m - start[:, 0]) * ray[:, 0] + (one.across_m - start[:, 1]) * ray[:, 1]) / square, 0, 1
-    )
-    foot = start + fraction[:, None] * ray
+    share = ((one.along_m - start[:, 0]) * ray[:, 0] + (one.across_m - start[:, 1]) * ray[:, 1]) / square
+    share = np.clip(share, 0.0, 1.0)
+    foot = start + share[:, None] * ray
     span = int(np.argmin(np.hypot(foot[:, 0] - one.along_m, foot[:, 1] - one.across_m)))
-    if obstacle.tops_amsl_m is not None:
-        first, second = obstacle.tops_amsl_m[span : span + 2]
-    else:
-        heights = obstacle.heights_m or (obstacle.height_m or 0.0,) * len(line)
-        ground = ground_at(line[span : span + 2, 1], line[span : span + 2, 0])
-        first, second = float(ground[0]) + heights[span], float(ground[1]) + heights[span + 1]
-    share = float(fraction[span])
-    return first + (second - first) * share - 4.0 * obstacle.sag_m * share * (1.0 - share)
+    return span, float(share[span])
 
 
 def _position(path: GeodesicPath, along_m: float, across_m: float) -> tuple[float, float]:
