@@ -294,8 +294,8 @@ def test_an_open_overview_fits_its_map_to_the_sheet_and_back(sample, watch, size
     page.evaluate("() => fellspanMap.map.setZoom(14)")  # as someone leaves it who looked at a detail
     before = page.evaluate("() => [fellspanMap.map.getZoom(), document.querySelector('.folium-map').clientWidth]")
     # What a browser does before it draws sheets; the layout is still that of the window.
-    page.evaluate("() => window.dispatchEvent(new Event('beforeprint'))")
-    for dot in page.evaluate(DOTS):
+    at_once = f"() => {{ window.dispatchEvent(new Event('beforeprint')); return ({DOTS})(); }}"
+    for dot in page.evaluate(at_once):
         assert min(dot[:4]) >= 5, dot
         assert dot[4:] == [703, 420]
     page.evaluate("() => window.dispatchEvent(new Event('afterprint'))")
