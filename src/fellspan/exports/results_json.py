@@ -34,7 +34,9 @@ def results_dict(plan: StudyPlan) -> dict[str, Any]:
         "study": _stamp(plan),
         "files": [_plain(file) for file in plan.files],
         "cautions": list(plan.cautions),
-        "links": [_plain(linked.result) for linked in plan.links],
+        "links": [
+            {**link_result_dict(linked.result), "reflections": _plain(linked.reflections)} for linked in plan.links
+        ],
         "failures": [_failure(failure) for failure in plan.failures],
     }
 
