@@ -16,6 +16,19 @@ PANEL = "# frequency: 5.8 GHz\nplane,angle_deg,gain_dbi\n" + "".join(
     for angle in range(-180, 180, 5)
 )
 
+RULES = """
+[[rule]]
+id = "own-11"
+authority = "Tolmera"
+region = "Tolmera"
+title = "Fixed links"
+band = ["10.7 GHz", "11.7 GHz"]
+eirp_max = "55 dBm"
+citation = "Notice 4"
+seen = "2026"
+status = "rule text seen"
+"""
+
 
 def tables(model: type[Table] = StudyFile) -> dict[str, type[Table]]:
     from fellspan.study import schema
@@ -36,9 +49,12 @@ def test_the_example_loads(tmp_path: Path) -> None:
     (tmp_path / "survey-april.csv").touch()
     (tmp_path / "panel.csv").write_text(PANEL, encoding="utf-8")
     (tmp_path / "own-antennas.toml").touch()
+    (tmp_path / "own-rules.toml").write_text(RULES, encoding="utf-8")
     study = read_study(example(), path=tmp_path / "study.toml")
     assert [link.name for link in study.links] == ["Harbour - North Light", "Harbour - Quarry"]
     assert study.links[1].a.roof_edge_m == 4.0
+    assert study.links[1].radio.high_end == "A"
+    assert [link.power_rule and link.power_rule.id for link in study.links] == ["fcc-15.407-5g8", "own-11"]
     assert study.notes == ()
     assert all(end.pattern is not None for link in study.links for end in (link.antenna_a, link.antenna_b))
 
@@ -52,7 +68,12 @@ def test_every_key_is_explained(name: str) -> None:
 
 def test_the_example_shows_every_key() -> None:
     """All but the alternatives that would contradict another key of the example."""
-    shown = set(re.findall(r"\b([a-z_]+) = ", example())) | set(re.findall(r"\[+([a-z]+)\]", example()))
+    shown = set(re.findall(r"\b([a-z_0-9]+) = ", example())) | set(
+        re.findall(r"\[+(?:[a-z]+\.)?([a-z_]+)\]", example())
+    )
     keys = {key for table in tables().values() for key in table.model_fields}
     left_out = keys - shown
-    assert left_out == {"preset", "median_k", "feeder_loss_b", "roof_edge_b", "parapet_a", "parapet_b"}
+    assert left_out == {
+        *("preset", "median_k", "roof_edge_b", "parapet_a", "parapet_b", "diversity_a"),
+        *(f"{key}_b" for key in ("feeder_loss", "feeder", "branching_loss", "radome_wet", "radome_iced", "sway")),
+    }

@@ -10,6 +10,7 @@ from fellspan.errors import LinkError
 from fellspan.geodesy.position import Position
 from fellspan.links.feeders import Feeder
 from fellspan.links.radio import CoChannel, Modulation, Radio, Signature
+from fellspan.links.rule_types import PowerRule
 from fellspan.vocabulary import HeightReference, MountedPolarization
 
 __all__ = [
@@ -235,6 +236,7 @@ class Link:
 
     `wanted_margin_db` is the margin that the signal verdict asks for; `target_availability_percent`, above 0 and below 100, the
     share of an average year for which each direction must carry the wanted modulation, None where nobody asks for one.
+    `power_rule` is the row that both ends are held against.
     """
 
     name: str
@@ -245,3 +247,4 @@ class Link:
     antenna_b: Antenna = field(default_factory=Antenna)
     wanted_margin_db: float = 10.0
     target_availability_percent: float | None = None
+    power_rule: PowerRule | None = None

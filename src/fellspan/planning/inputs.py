@@ -3,10 +3,12 @@
 import datetime as dt
 from dataclasses import dataclass, field
 from pathlib import Path
+from typing import Literal
 
 from fellspan.climate.given import GivenClimate
 from fellspan.links.criteria import Criterion
 from fellspan.links.site import Link
+from fellspan.propagation.exposure import ExposureRule
 from fellspan.propagation.rain import RainEdition, RainReading
 from fellspan.terrain.sources import CoverSource, ObstacleSource, RasterSource, SurveySource
 from fellspan.vocabulary import CriteriaPreset, GapPolicy
@@ -60,3 +62,6 @@ class Study:
     rain_edition: RainEdition = "19"
     rain_reading: RainReading = "A"
     """Edition of Rec. ITU-R P.530 for rain, and the reading of its equation (36)."""
+    rules_file: Path | None = None
+    """Power rules of the user's own, which links may name."""
+    exposure_rule: ExposureRule | Literal["stricter"] = "stricter"

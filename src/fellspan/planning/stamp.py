@@ -37,6 +37,8 @@ def _named_files(study: Study) -> Iterator[tuple[str, str | Path]]:
             yield role, source.path
     if study.antenna_catalogue is not None:
         yield "antennas", study.antenna_catalogue
+    if study.rules_file is not None:
+        yield "power rules", study.rules_file
     ends = (antenna for link in study.links for antenna in (link.antenna_a, link.antenna_b))
     files = (antenna.origin.file for antenna in ends if antenna.origin is not None)
     for path in dict.fromkeys(path for path in files if path is not None):

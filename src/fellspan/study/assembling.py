@@ -9,18 +9,22 @@ from collections.abc import Mapping
 from pathlib import Path
 from typing import Literal, TypeVar
 
+from fellspan.climate.given import GivenClimate
 from fellspan.errors import FellspanError, LinkError
 from fellspan.geodesy.coordinates import parse_position
 from fellspan.geodesy.position import Position
 from fellspan.links.criteria import Criterion
+from fellspan.links.rule_types import PowerRule
 from fellspan.links.site import Antenna, Link, Radio, Site
 from fellspan.planning.inputs import Study, TerrainInputs
 from fellspan.propagation.refraction import k_from_gradient
 from fellspan.study.messages import Problem, did_you_mean, raise_problems
 from fellspan.study.notes import position_note
 from fellspan.study.patterns import Patterns
+from fellspan.study.radio_side import PowerRules, climate_of, noise_floors, radio_of, unusable_channels, with_line
 from fellspan.study.schema import (
     AntennaTable,
+    ClimateTable,
     CriteriaTable,
     LinkTable,
     RadioTable,
@@ -42,6 +46,7 @@ def assemble(study_file: StudyFile, *, path: Path) -> Study:
     assembler = _Assembler(study_file, path)
     terrain = assembler.terrain(study_file.terrain)
     links = assembler.links()
+    climate = assembler.climate(study_file.climate)
     if assembler.problems:
         raise_problems(path.name, assembler.problems)
     stamp, criteria = study_file.study, study_file.criteria
@@ -61,6 +66,11 @@ def assemble(study_file: StudyFile, *, path: Path) -> Study:
         tiles_credit=study_file.map.tiles_credit,
         path=path,
         antenna_catalogue=assembler.patterns.catalogue_path,
+        climate=climate,
+        rain_edition=study_file.signal.rain_edition,
+        rain_reading=study_file.signal.rain_reading,
+        rules_file=assembler.rules.file,
+        exposure_rule=study_file.exposure.rule,
         notes=tuple(assembler.notes),
     )
 
@@ -95,6 +105,9 @@ class _Assembler:
         self.radios = self._by_name("radio", study_file.radio)
         self.antennas = self._by_name("antenna", study_file.antenna)
         self.patterns = Patterns(study_file.antennas, self.folder, problems=self.problems, notes=self.notes)
+        file = study_file.rules.file
+        self.rules = PowerRules(None if file is None else self.folder / Path(file).expanduser())
+        self._read_rules()
         self._by_name("link", study_file.link)
         self.positions: dict[str, Position] = {}
         for name, site in self.sites.items():
@@ -130,26 +143,71 @@ class _Assembler:
     def _link(self, table: LinkTable) -> Link | None:
         where = f"link '{table.name}'"
         a, b = self._site(table, "a"), self._site(table, "b")
-        radio = self._named(f"{where}, radio", "radio", table.radio, self.radios)
-        antenna_a = self._antenna(where, "antenna_a", table.antenna_a or table.antenna, table.feeder_loss_a, radio)
-        antenna_b = self._antenna(where, "antenna_b", table.antenna_b or table.antenna, table.feeder_loss_b, radio)
+        named = self._named(f"{where}, radio", "radio", table.radio, self.radios)
+        radio = None if named is None else self._radio(table, named)
+        antenna_a = self._antenna(table, "a", named)
+        antenna_b = self._antenna(table, "b", named)
+        rule = self._rule(table)
         if a is None or b is None or radio is None or antenna_a is None or antenna_b is None:
             return None
         return Link(
             name=table.name,
             a=a,
             b=b,
-            radio=Radio(
-                name=radio.name,
-                frequency_hz=radio.frequency,
-                power_dbm=radio.power,
-                threshold_dbm=radio.threshold,
-                polarization=radio.polarization,
-            ),
+            radio=radio,
             antenna_a=antenna_a,
             antenna_b=antenna_b,
             wanted_margin_db=table.wanted_margin,
+            target_availability_percent=table.target_availability,
+            power_rule=rule,
         )
+
+    def _radio(self, link: LinkTable, table: RadioTable) -> Radio | None:
+        if link.high_end is not None and table.duplex != "frequency":
+            self.problems.append(
+                Problem(
+                    f"link '{link.name}', high_end",
+                    f"radio '{table.name}' has no pair of frequencies",
+                    ('give it duplex = "frequency", transmit_a and transmit_b, or drop high_end',),
+                )
+            )
+            return None
+        try:
+            return radio_of(table, high_end=link.high_end)
+        except LinkError as error:
+            problem = Problem("", error.what, error.details)
+            if problem not in self.problems:  # several links share a radio
+                self.problems.append(problem)
+            return None
+
+    def _read_rules(self) -> None:
+        """A wrong file of rules is told at once, also where no link names a rule."""
+        try:
+            if self.rules.file is not None:
+                self.rules.read()
+        except FellspanError as error:
+            self.problems.append(Problem("rules.file", error.what, error.details))
+
+    def _rule(self, link: LinkTable) -> PowerRule | None:
+        name = link.rule or self.tables.rules.rule
+        if name is None or any(problem.where == "rules.file" for problem in self.problems):
+            return None
+        try:
+            return self.rules.find(name)
+        except FellspanError as error:
+            where = "rules.rule" if link.rule is None else f"link '{link.name}', rule"
+            problem = Problem(where, error.what, error.details)
+            if problem not in self.problems:
+                self.problems.append(problem)
+            return None
+
+    def climate(self, table: ClimateTable) -> GivenClimate:
+        """What the study gives of the climate; nothing where that cannot be, which is a problem."""
+        try:
+            return climate_of(table)
+        except FellspanError as error:
+            self.problems.append(Problem("climate", error.what, error.details))
+            return GivenClimate()
 
     def _named(self, where: str, kind: str, name: str, known: Mapping[str, _Row]) -> _Row | None:
         if name in known:
@@ -164,15 +222,16 @@ class _Assembler:
         )
         return None
 
-    def _antenna(
-        self, where: str, key: str, name: str | None, feeder_loss_db: float, radio: RadioTable | None
-    ) -> Antenna | None:
+    def _antenna(self, link: LinkTable, end: Literal["a", "b"], radio: RadioTable | None) -> Antenna | None:
+        name = (link.antenna_a if end == "a" else link.antenna_b) or link.antenna
+        loss_db = link.feeder_loss_a if end == "a" else link.feeder_loss_b
         if name is None:
-            return Antenna(feeder_loss_db=feeder_loss_db)
-        table = self._named(f"{where}, {key}", "antenna", name, self.antennas)
+            return with_line(Antenna(feeder_loss_db=loss_db), link, end=end)
+        table = self._named(f"link '{link.name}', antenna_{end}", "antenna", name, self.antennas)
         if table is None or radio is None:
             return None
-        return self.patterns.antenna(table, frequency_hz=radio.frequency, feeder_loss_db=feeder_loss_db)
+        made = self.patterns.antenna(table, frequency_hz=radio.frequency, feeder_loss_db=loss_db)
+        return None if made is None else with_line(made, link, end=end)
 
     def _site(self, link: LinkTable, end: Literal["a", "b"]) -> Site | None:
         """The site at an end, with what the link states for itself in place of the site's own."""
@@ -206,6 +265,8 @@ class _Assembler:
                 vertical_datum=table.datum,
                 roof_edge_m=roof_edge if roof_edge is not None else table.roof_edge if keeps_roof else None,
                 parapet_m=parapet if parapet is not None else table.parapet if keeps_roof else None,
+                noise_floors=noise_floors(table),
+                unusable_channels=unusable_channels(table),
             )
         except LinkError as error:
             self.problems.append(Problem("", error.what, error.details))

@@ -23,6 +23,7 @@ from pydantic import (
 from pydantic_core import CoreSchema, core_schema
 
 from fellspan import quantities
+from fellspan.study import measures
 
 
 def _text_to(parse: Callable[[str], Any], example: str) -> BeforeValidator:
@@ -87,6 +88,13 @@ def _probability(value: object) -> float:
     return quantities.parse_probability(value)
 
 
+def _share(value: object) -> float:
+    share = _probability(value)
+    if share == 0.0:
+        raise ValueError('a share of 0 leaves nothing; give more than 0, for instance "55 %"')
+    return share
+
+
 def _known_k(value: float) -> float:
     if math.isnan(value) or value == 0.0:
         raise ValueError(
@@ -123,6 +131,18 @@ AntennaHeight = Annotated[
 ]
 Probability = Annotated[
     float, Field(gt=0.0, lt=1.0), BeforeValidator(_probability), WithJsonSchema({"type": ["number", "string"]})
+]
+Share = Annotated[float, BeforeValidator(_share), WithJsonSchema({"type": ["number", "string"]})]
+Percent = Annotated[float, _text_to(quantities.parse_percent, "99.99 %"), _shown_as_text("99.99 %")]
+Width = Annotated[float, _text_to(measures.parse_width_hz, "40 MHz"), _shown_as_text("40 MHz")]
+Rate = Annotated[float, _text_to(measures.parse_rate_bps, "150 Mbit/s"), _shown_as_text("150 Mbit/s")]
+Delay = Annotated[float, _text_to(measures.parse_delay_s, "6.3 ns"), _shown_as_text("6.3 ns")]
+RainRate = Annotated[float, _text_to(measures.parse_rain_rate_mm_h, "30 mm/h"), _shown_as_text("30 mm/h")]
+Temperature = Annotated[float, _text_to(measures.parse_temperature_c, "14 C"), _shown_as_text("14 C", "57 F")]
+Pressure = Annotated[float, _text_to(measures.parse_pressure_hpa, "1013 hPa"), _shown_as_text("1013 hPa")]
+Vapour = Annotated[float, _text_to(measures.parse_vapour_g_m3, "9 g/m3"), _shown_as_text("9 g/m3")]
+LossOfLine = Annotated[
+    float, _text_to(measures.parse_db_per_100_m, "6.5 dB per 100 m"), _shown_as_text("6.5 dB per 100 m")
 ]
 Number = Annotated[float, Field(strict=True)]
 InverseEarth = Annotated[float, Field(strict=True, allow_inf_nan=True), AfterValidator(_known_k)]

@@ -5,7 +5,7 @@ Turns pydantic's findings into a StudyError of at most four lines. Reads no file
 
 import difflib
 import typing
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
 
@@ -72,7 +72,7 @@ def shown(value: object) -> str:
 def place(loc: Sequence[int | str], data: Mapping[str, Any]) -> str:
     """A path of keys for people: "site 'North Light', height" or "terrain.ground, number 2, path"."""
     if len(loc) > 1 and loc[0] in _LISTS and isinstance(loc[1], int):
-        return ", ".join([_row(str(loc[0]), loc[1], data), *(str(key) for key in loc[2:])])
+        return ", ".join([_row(str(loc[0]), loc[1], data), *_within(loc[2:], _row_of(str(loc[0]), loc[1], data))])
     words, previous = "", ""
     for key in loc:
         if isinstance(key, int):
@@ -83,9 +83,30 @@ def place(loc: Sequence[int | str], data: Mapping[str, Any]) -> str:
     return words
 
 
-def _row(table: str, index: int, data: Mapping[str, Any]) -> str:
+def _within(loc: Sequence[int | str], row: object) -> Iterator[str]:
+    """Keys inside a row; of a list in it, the name of the entry or its number: "modulation '64-QAM', threshold"."""
+    key = ""
+    for step in loc:
+        if isinstance(step, str):
+            if key:
+                yield key
+            key, row = step, row.get(step) if isinstance(row, Mapping) else None
+            continue
+        row = row[step] if isinstance(row, list) and step < len(row) else None
+        name = row.get("name") if isinstance(row, Mapping) else None
+        yield f"{key} {shown(name)}" if isinstance(name, str) and name else f"{key}, number {step + 1}"
+        key = ""
+    if key:
+        yield key
+
+
+def _row_of(table: str, index: int, data: Mapping[str, Any]) -> object:
     rows = data.get(table)
-    row = rows[index] if isinstance(rows, list) and index < len(rows) else None
+    return rows[index] if isinstance(rows, list) and index < len(rows) else None
+
+
+def _row(table: str, index: int, data: Mapping[str, Any]) -> str:
+    row = _row_of(table, index, data)
     name = row.get("name") if isinstance(row, Mapping) else None
     return f"{table} {shown(name)}" if isinstance(name, str) and name else f"[[{table}]] number {index + 1}"
 

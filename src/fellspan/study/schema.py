@@ -7,43 +7,69 @@ between tables: that is `reading`'s work.
 import datetime as dt
 from typing import Annotated, Literal, TypeAlias
 
-from pydantic import BaseModel, ConfigDict, Field, model_validator
+from pydantic import Field, model_validator
 
 from fellspan.study.fields import (
-    AntennaHeight,
-    Coordinate,
     Day,
-    Frequency,
-    Gain,
     Growth,
     InverseEarth,
     Length,
-    Level,
     LevelAboveSea,
-    Loss,
     Name,
     Number,
     OneOrMany,
-    Power,
     Probability,
 )
-from fellspan.vocabulary import (
-    CoverKind,
-    CriteriaPreset,
-    GapPolicy,
-    LengthUnit,
-    MountedPolarization,
-    Polarization,
+from fellspan.study.schema_equipment import (
+    AntennasTable,
+    AntennaTable,
+    CoChannelTable,
+    DiversityTable,
+    FeederTable,
+    ModulationTable,
+    RadioTable,
+    SignatureTable,
+    SwayTable,
 )
+from fellspan.study.schema_links import LinkTable, NoiseFloorTable, SiteTable, UnusableTable
+from fellspan.study.schema_weather import ClimateTable, ExposureTable, PowerRulesTable, SignalTable
+from fellspan.study.table import Table
+from fellspan.vocabulary import CoverKind, CriteriaPreset, GapPolicy, LengthUnit
+
+__all__ = [
+    "AntennaTable",
+    "AntennasTable",
+    "ClimateTable",
+    "CoChannelTable",
+    "CompleteKind",
+    "CoverTable",
+    "CriteriaTable",
+    "DiversityTable",
+    "ExposureTable",
+    "FeederTable",
+    "FileTable",
+    "LinkTable",
+    "MapTable",
+    "ModulationTable",
+    "NoiseFloorTable",
+    "ObstacleTable",
+    "PowerRulesTable",
+    "RadioTable",
+    "RasterTable",
+    "RuleTable",
+    "SignalTable",
+    "SignatureTable",
+    "SiteTable",
+    "StudyFile",
+    "StudyTable",
+    "SwayTable",
+    "Table",
+    "TerrainTable",
+    "UnusableTable",
+]
 
 CompleteKind: TypeAlias = Literal["building", "tree"]
 """Kinds that a file of obstacles may hold all of."""
-
-
-class Table(BaseModel):
-    """Base of all tables: an unknown key is an error, a number is finite, values do not change once read."""
-
-    model_config = ConfigDict(extra="forbid", frozen=True, allow_inf_nan=False, str_strip_whitespace=True)
 
 
 class StudyTable(Table):
@@ -159,169 +185,6 @@ class CriteriaTable(Table):
         return self
 
 
-class SiteTable(Table):
-    """[[site]]: a place where an antenna stands."""
-
-    name: Name = Field(description="How you call it.", examples=["North Light"])
-    at: str | None = Field(default=None, min_length=1, description="Position.", examples=["36.04217 N, 45.19876 W"])
-    latitude: Coordinate | None = Field(default=None, description="Latitude, degrees north.", examples=[36.04217])
-    longitude: Coordinate | None = Field(default=None, description="Longitude, degrees east.", examples=[-45.19876])
-    easting: Number | None = Field(
-        default=None, description="Easting in the system that crs names.", examples=[482100.0]
-    )
-    northing: Number | None = Field(
-        default=None, description="Northing in the system that crs names.", examples=[3988400.0]
-    )
-    crs: str | None = Field(
-        default=None, min_length=1, description="Coordinate system of easting and northing.", examples=["EPSG:32623"]
-    )
-    height: AntennaHeight | None = Field(
-        default=None, description="Height of the antenna and what it is measured from.", examples=["12 m above roof"]
-    )
-    roof: Length | None = Field(default=None, description="Height of the roof above ground.", examples=["8 m"])
-    ground: LevelAboveSea | None = Field(
-        default=None, description="Measured ground level above the datum.", examples=["23.4 m"]
-    )
-    datum: str | None = Field(
-        default=None, description="Vertical datum of ground and of a height above sea.", examples=["EGM96"]
-    )
-    roof_edge: Length | None = Field(
-        default=None, description="From the antenna to the roof edge, toward the link.", examples=["3 m"]
-    )
-    parapet: Length | None = Field(
-        default=None, description="Height of the parapet above the roof.", examples=["1.1 m"]
-    )
-
-    @model_validator(mode="after")
-    def _one_position(self) -> "SiteTable":
-        ways = {
-            "at": self.at is not None,
-            "latitude and longitude": self.latitude is not None or self.longitude is not None,
-            "easting and northing": self.easting is not None or self.northing is not None,
-        }
-        given = [way for way, is_given in ways.items() if is_given]
-        if not given:
-            raise ValueError('no position is given; add at = "36.04217 N, 45.19876 W"')
-        if len(given) > 1:
-            raise ValueError(f"the position is given as {' and as '.join(given)}; keep one of them")
-        if given[0] == "latitude and longitude" and (self.latitude is None or self.longitude is None):
-            raise ValueError(f"{'latitude' if self.latitude is None else 'longitude'} is missing beside the other")
-        if given[0] == "easting and northing":
-            if self.easting is None or self.northing is None:
-                raise ValueError(f"{'easting' if self.easting is None else 'northing'} is missing beside the other")
-            if self.crs is None:
-                raise ValueError(
-                    'easting and northing need their coordinate system; add crs = "EPSG:32623" or the like'
-                )
-        if given[0] == "latitude and longitude" and self.crs is not None:
-            raise ValueError("crs belongs to easting and northing; latitude and longitude are WGS 84")
-        return self
-
-
-class RadioTable(Table):
-    """[[radio]]: the radio at both ends of a link."""
-
-    name: Name = Field(description="How links call it.", examples=["5 GHz backhaul"])
-    frequency: Frequency = Field(description="Carrier frequency.", examples=["5.8 GHz"])
-    power: Power | None = Field(default=None, description="Transmit power at the antenna port.", examples=["23 dBm"])
-    threshold: Level | None = Field(
-        default=None, description="Received level that the radio needs.", examples=["-75 dBm"]
-    )
-    polarization: Polarization = Field(default="vertical", description="Polarization of the wave.")
-
-
-class AntennasTable(Table):
-    """[antennas]: where antennas are looked up."""
-
-    catalogue: str | None = Field(
-        default=None, min_length=1, description="File of antennas of your own.", examples=["own-antennas.toml"]
-    )
-
-
-class AntennaTable(Table):
-    """[[antenna]]: an antenna, known by its gain alone, a model, a pattern file or data-sheet numbers; and its mounting."""
-
-    name: Name = Field(description="How links call it.", examples=["0.6 m dish"])
-    gain: Gain | None = Field(default=None, description="Gain at the maximum.", examples=["29 dBi"])
-    model: Name | None = Field(default=None, description="Name in the catalogue.", examples=["dish 0.6 m"])
-    pattern: str | None = Field(default=None, min_length=1, description="Pattern file.", examples=["sector.csv"])
-    azimuth_width: Number | None = Field(
-        default=None,
-        gt=0.0,
-        le=360.0,
-        description="Half-power width in azimuth, degrees; 360 is an omni.",
-        examples=[65],
-    )
-    elevation_width: Number | None = Field(
-        default=None, gt=0.0, le=180.0, description="Half-power width in elevation, degrees.", examples=[7]
-    )
-    front_to_back: Loss | None = Field(
-        default=None, description="Peak over the level behind; an omni has none.", examples=["28 dB"]
-    )
-    cross_polar: Loss | None = Field(default=None, description="Cross-polar discrimination.", examples=["25 dB"])
-    bearing: Number | None = Field(
-        default=None, ge=0.0, le=360.0, description="True bearing it points to, degrees.", examples=[120]
-    )
-    tilt: Number | None = Field(
-        default=None, ge=-90.0, le=90.0, description="Tilt, degrees, up positive.", examples=[-3]
-    )
-    polarization: MountedPolarization | None = Field(default=None, description="How it is mounted.")
-    roll: Number | None = Field(
-        default=None, ge=-180.0, le=180.0, description="Turn about its boresight by mistake, degrees.", examples=[5]
-    )
-
-    @model_validator(mode="after")
-    def _one_description(self) -> "AntennaTable":
-        sheet = ("azimuth_width", "elevation_width", "front_to_back", "cross_polar")
-        numbers = [key for key in ("gain", *sheet) if getattr(self, key) is not None]
-        for key in ("model", "pattern"):
-            if getattr(self, key) is not None and numbers:
-                raise ValueError(f"{numbers[0]} is given beside {key}, which says it already; keep one of them")
-        if self.model is not None and self.pattern is not None:
-            raise ValueError("model and pattern are both given; keep one of them")
-        if set(numbers) & set(sheet) and (self.gain is None or self.elevation_width is None):
-            missing = "gain" if self.gain is None else "elevation_width"
-            raise ValueError(f"{missing} is missing; a pattern from a data sheet needs gain and elevation_width")
-        return self
-
-
-class LinkTable(Table):
-    """[[link]]: two sites and what joins them."""
-
-    name: Name = Field(description="How you call it.", examples=["Harbour - North Light"])
-    a: Name = Field(description="Name of the site at end A.", examples=["Harbour"])
-    b: Name = Field(description="Name of the site at end B.", examples=["North Light"])
-    radio: Name = Field(description="Name of the radio.", examples=["5 GHz backhaul"])
-    antenna: Name | None = Field(default=None, description="Name of the antenna at both ends.", examples=["0.6 m dish"])
-    antenna_a: Name | None = Field(default=None, description="Name of the antenna at A.", examples=["0.6 m dish"])
-    antenna_b: Name | None = Field(default=None, description="Name of the antenna at B.", examples=["0.6 m dish"])
-    feeder_loss_a: Loss = Field(default=0.0, description="Loss of cable and connectors at A.", examples=["1.5 dB"])
-    feeder_loss_b: Loss = Field(default=0.0, description="Loss of cable and connectors at B.", examples=["1.5 dB"])
-    wanted_margin: Loss = Field(default=10.0, description="Margin that the signal must have.", examples=["10 dB"])
-    height_a: AntennaHeight | None = Field(
-        default=None, description="Height at A for this link alone.", examples=["12 m above ground"]
-    )
-    height_b: AntennaHeight | None = Field(
-        default=None, description="Height at B for this link alone.", examples=["12 m above ground"]
-    )
-    roof_edge_a: Length | None = Field(
-        default=None, description="Roof edge at A for this link alone.", examples=["3 m"]
-    )
-    roof_edge_b: Length | None = Field(
-        default=None, description="Roof edge at B for this link alone.", examples=["3 m"]
-    )
-    parapet_a: Length | None = Field(default=None, description="Parapet at A for this link alone.", examples=["1.1 m"])
-    parapet_b: Length | None = Field(default=None, description="Parapet at B for this link alone.", examples=["1.1 m"])
-
-    @model_validator(mode="after")
-    def _ends_differ(self) -> "LinkTable":
-        if self.a == self.b:
-            raise ValueError(f"both ends are the site '{self.a}'; a link needs two sites")
-        if self.antenna is not None and (self.antenna_a is not None or self.antenna_b is not None):
-            raise ValueError("antenna is for both ends; use either antenna or antenna_a and antenna_b")
-        return self
-
-
 class MapTable(Table):
     """[map]: online map tiles that a reader of the report may switch on."""
 
@@ -346,6 +209,10 @@ class StudyFile(Table):
     study: StudyTable = Field(default_factory=StudyTable)
     terrain: TerrainTable
     criteria: CriteriaTable = Field(default_factory=CriteriaTable)
+    climate: ClimateTable = Field(default_factory=ClimateTable)
+    signal: SignalTable = Field(default_factory=SignalTable)
+    rules: PowerRulesTable = Field(default_factory=PowerRulesTable)
+    exposure: ExposureTable = Field(default_factory=ExposureTable)
     site: tuple[SiteTable, ...] = Field(min_length=2)
     radio: tuple[RadioTable, ...] = Field(min_length=1)
     antennas: AntennasTable = Field(default_factory=AntennasTable)

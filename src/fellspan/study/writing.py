@@ -3,23 +3,21 @@
 Makes text only: where it goes, and whether something stands there already, is the caller's business.
 """
 
-import math
 import os
-import re
 from collections.abc import Iterable
 from pathlib import Path
 
 from fellspan.errors import StudyError
 from fellspan.links.criteria import Criterion
-from fellspan.links.site import Aim, Antenna, Link, PatternOrigin, Radio, Site
+from fellspan.links.radio import Radio
+from fellspan.links.site import Aim, Antenna, Link, PatternOrigin, Site
 from fellspan.planning.inputs import Study
 from fellspan.study.notes import position_note
+from fellspan.study.toml_text import decibels, metres, number, plain, quoted, table
+from fellspan.study.writing_radio import heard_text, high_end_of, line_pairs, one_radio_each, radio_text, study_tables
 from fellspan.terrain.sources import CoverSource, ObstacleSource, RasterSource
 
 _ABOVE = {"ground": "above ground", "roof": "above roof", "sea": "above sea level"}
-_BANDS = (("GHz", 1e9), ("MHz", 1e6), ("kHz", 1e3))
-_MUST_ESCAPE = re.compile(r'["\\\x00-\x1f\x7f]')
-_SHORT_ESCAPES = {'"': '\\"', "\\": "\\\\", "\n": "\\n", "\t": "\\t", "\r": "\\r"}
 
 
 def study_text(study: Study, *, folder: Path) -> str:
@@ -30,63 +28,36 @@ def study_text(study: Study, *, folder: Path) -> str:
     StudyError
         Two different sites, radios or antennas bear the same name, which a study file cannot say.
     """
-    sites, radios, antennas = _sites(study.links), _radios(study.links), _antennas(study.links)
+    sites, radios, antennas = _sites(study.links), one_radio_each(study.links), _antennas(study.links)
+    rules_file = None if study.rules_file is None else _path(study.rules_file, folder)
     blocks = [
-        _table(
+        table(
             "[study]",
             ("title", quoted(study.title)),
             ("planner", quoted(study.planner) if study.planner else None),
             ("revision", quoted(study.revision) if study.revision else None),
             ("date", study.date.isoformat()),
-            ("growth_years", _number(study.growth_years) if study.growth_years else None),
+            ("growth_years", number(study.growth_years) if study.growth_years else None),
         ),
         _terrain(study, folder),
         *_criteria(study),
-        *(_site(site, study.notes) for site in sites.values()),
-        *(_radio(radio) for radio in radios.values()),
+        *study_tables(study, rules_file=rules_file),
+        *(text for site in sites.values() for text in (_site(site, study.notes), *heard_text(site))),
+        *(radio_text(radio) for radio in radios.values()),
         *_catalogue(study, folder),
         *(_antenna(antenna, folder) for antenna in antennas.values()),
-        *(_link(link, sites) for link in study.links),
+        *(_link(link, sites, radios) for link in study.links),
     ]
     if study.tiles_url is not None:
         blocks.append(
-            _table("[map]", ("tiles_url", quoted(study.tiles_url)), ("tiles_credit", quoted(study.tiles_credit)))
+            table("[map]", ("tiles_url", quoted(study.tiles_url)), ("tiles_credit", quoted(study.tiles_credit)))
         )
     return "\n".join(blocks)
 
 
-def quoted(text: str) -> str:
-    """A TOML basic string: quotes, backslashes and control characters escaped."""
-    return '"' + _MUST_ESCAPE.sub(lambda found: _SHORT_ESCAPES.get(found[0], f"\\u{ord(found[0]):04x}"), text) + '"'
-
-
-def _table(heading: str, *pairs: tuple[str, str | None]) -> str:
-    return "\n".join([heading, *(f"{key} = {value}" for key, value in pairs if value is not None), ""])
-
-
-def _number(value: float) -> str:
-    """The shortest text that reads back to the same float, without a needless '.0'."""
-    if math.isinf(value):
-        return "inf" if value > 0 else "-inf"
-    text = repr(float(value))
-    return text[:-2] if text.endswith(".0") else text
-
-
-def _metres(value: float | None) -> str | None:
-    return None if value is None else f'"{_number(value)} m"'
-
-
-def _frequency(frequency_hz: float) -> str:
-    for unit, scale in _BANDS:
-        text = _number(round(frequency_hz / scale, 9))
-        if frequency_hz >= scale and float(text) * scale == frequency_hz:
-            return f'"{text} {unit}"'
-    return f'"{_number(frequency_hz)} Hz"'
-
-
 def _degrees(value: float, positive: str, negative: str, *, coarse: bool) -> str:
     """Degrees with a letter; filled with zeros to five decimals, unless it was typed so coarsely that a note was made of it."""
-    text = _number(abs(value))
+    text = number(abs(value))
     if not coarse and "e" not in text:
         whole, _, decimals = text.partition(".")
         text = f"{whole}.{decimals:0<5}"
@@ -94,12 +65,12 @@ def _degrees(value: float, positive: str, negative: str, *, coarse: bool) -> str
 
 
 def _height(site: Site) -> str:
-    return f'"{_number(site.height_m)} m {_ABOVE[site.height_reference]}"'
+    return f'"{number(site.height_m)} m {_ABOVE[site.height_reference]}"'
 
 
 def _terrain(study: Study, folder: Path) -> str:
     terrain = study.terrain
-    return _table(
+    return table(
         "[terrain]",
         ("ground", _files(_raster(source, folder) for source in terrain.ground)),
         ("surface", _files(_raster(source, folder) for source in terrain.surface)),
@@ -107,8 +78,8 @@ def _terrain(study: Study, folder: Path) -> str:
         ("obstacles", _files(_obstacles(source, folder) for source in terrain.obstacles)),
         ("survey", _files(_path(source.path, folder) for source in terrain.survey)),
         ("gaps", quoted(terrain.gaps) if terrain.gaps != "error" else None),
-        ("sea_level", _metres(terrain.sea_level_m) if terrain.sea_level_m else None),
-        ("step", _metres(terrain.step_m)),
+        ("sea_level", metres(terrain.sea_level_m) if terrain.sea_level_m else None),
+        ("step", metres(terrain.step_m)),
     )
 
 
@@ -139,7 +110,7 @@ def _raster(source: RasterSource, folder: Path) -> str:
         (
             ("unit", quoted(source.vertical_unit) if source.vertical_unit else None),
             ("datum", quoted(source.vertical_datum) if source.vertical_datum else None),
-            ("error", _metres(source.error_m)),
+            ("error", metres(source.error_m)),
             ("band", str(source.band) if source.band != 1 else None),
         ),
     )
@@ -152,8 +123,8 @@ def _cover(source: CoverSource, folder: Path) -> str:
         (
             ("kind", quoted(source.kind)),
             ("unit", quoted(source.vertical_unit) if source.vertical_unit else None),
-            ("error", _metres(source.error_m)),
-            ("growth", f'"{_number(growth)} m per year"' if growth else None),
+            ("error", metres(source.error_m)),
+            ("growth", f'"{number(growth)} m per year"' if growth else None),
             ("band", str(source.band) if source.band != 1 else None),
         ),
     )
@@ -165,19 +136,19 @@ def _obstacles(source: ObstacleSource, folder: Path) -> str:
 
 
 def _criteria(study: Study) -> Iterable[str]:
-    yield _table(
+    yield table(
         "[criteria]",
         ("preset", None if study.criteria else quoted(study.preset)),
-        ("median_k", _number(study.median_k)),
-        ("confidence", _number(study.confidence)),
+        ("median_k", number(study.median_k)),
+        ("confidence", number(study.confidence)),
     )
     for rule in study.criteria:
         yield _rule(rule)
 
 
 def _rule(rule: Criterion) -> str:
-    return _table(
-        "[[criteria.rules]]", ("name", quoted(rule.name)), ("k", _number(rule.k)), ("fraction", _number(rule.fraction))
+    return table(
+        "[[criteria.rules]]", ("name", quoted(rule.name)), ("k", number(rule.k)), ("fraction", number(rule.fraction))
     )
 
 
@@ -188,58 +159,43 @@ def _site(site: Site, notes: Iterable[str]) -> str:
         f"{_degrees(position.latitude_deg, 'N', 'S', coarse=coarse)}, "
         f"{_degrees(position.longitude_deg, 'E', 'W', coarse=coarse)}"
     )
-    return _table(
+    return table(
         "[[site]]",
         ("name", quoted(site.name)),
         ("at", quoted(at)),
         ("height", _height(site)),
-        ("roof", _metres(site.roof_m)),
-        ("ground", _metres(site.ground_amsl_m)),
+        ("roof", metres(site.roof_m)),
+        ("ground", metres(site.ground_amsl_m)),
         ("datum", quoted(site.vertical_datum) if site.vertical_datum else None),
-    )
-
-
-def _radio(radio: Radio) -> str:
-    return _table(
-        "[[radio]]",
-        ("name", quoted(radio.name)),
-        ("frequency", _frequency(radio.frequency_hz)),
-        ("power", None if radio.power_dbm is None else f'"{_number(radio.power_dbm)} dBm"'),
-        ("threshold", None if radio.threshold_dbm is None else f'"{_number(radio.threshold_dbm)} dBm"'),
-        ("polarization", quoted(radio.polarization)),
     )
 
 
 def _catalogue(study: Study, folder: Path) -> Iterable[str]:
     if study.antenna_catalogue is not None:
-        yield _table("[antennas]", ("catalogue", _path(study.antenna_catalogue, folder)))
+        yield table("[antennas]", ("catalogue", _path(study.antenna_catalogue, folder)))
 
 
 def _antenna(antenna: Antenna, folder: Path) -> str:
     origin, aim = antenna.origin or PatternOrigin(), antenna.mounting or Aim()
-    return _table(
+    return table(
         "[[antenna]]",
         ("name", quoted(antenna.name)),
-        ("gain", None if antenna.gain_dbi is None else f'"{_number(antenna.gain_dbi)} dBi"'),
+        ("gain", None if antenna.gain_dbi is None else f'"{number(antenna.gain_dbi)} dBi"'),
         ("model", None if origin.model is None else quoted(origin.model)),
         ("pattern", None if origin.file is None else _path(origin.file, folder)),
-        ("azimuth_width", _plain(origin.azimuth_width_deg)),
-        ("elevation_width", _plain(origin.elevation_width_deg)),
-        ("front_to_back", None if origin.front_to_back_db is None else _decibels(origin.front_to_back_db)),
-        ("cross_polar", None if origin.cross_polar_db is None else _decibels(origin.cross_polar_db)),
-        ("bearing", _plain(aim.bearing_deg)),
-        ("tilt", _plain(aim.tilt_deg)),
+        ("azimuth_width", plain(origin.azimuth_width_deg)),
+        ("elevation_width", plain(origin.elevation_width_deg)),
+        ("front_to_back", None if origin.front_to_back_db is None else decibels(origin.front_to_back_db)),
+        ("cross_polar", None if origin.cross_polar_db is None else decibels(origin.cross_polar_db)),
+        ("bearing", plain(aim.bearing_deg)),
+        ("tilt", plain(aim.tilt_deg)),
         ("polarization", None if aim.polarization is None else quoted(aim.polarization)),
-        ("roll", _plain(aim.roll_deg) if aim.roll_deg else None),
+        ("roll", plain(aim.roll_deg) if aim.roll_deg else None),
     )
 
 
-def _plain(value: float | None) -> str | None:
-    return None if value is None else _number(value)
-
-
-def _link(link: Link, sites: dict[str, Site]) -> str:
-    return _table(
+def _link(link: Link, sites: dict[str, Site], radios: dict[str, Radio]) -> str:
+    return table(
         "[[link]]",
         ("name", quoted(link.name)),
         ("a", quoted(link.a.name)),
@@ -247,20 +203,18 @@ def _link(link: Link, sites: dict[str, Site]) -> str:
         ("radio", quoted(link.radio.name)),
         ("antenna_a", _antenna_name(link.antenna_a)),
         ("antenna_b", _antenna_name(link.antenna_b)),
-        ("feeder_loss_a", _decibels(link.antenna_a.feeder_loss_db)),
-        ("feeder_loss_b", _decibels(link.antenna_b.feeder_loss_db)),
-        ("wanted_margin", f'"{_number(link.wanted_margin_db)} dB"'),
+        ("feeder_loss_a", decibels(link.antenna_a.feeder_loss_db)),
+        ("feeder_loss_b", decibels(link.antenna_b.feeder_loss_db)),
+        ("wanted_margin", f'"{number(link.wanted_margin_db)} dB"'),
         ("height_a", _own_height(link.a, sites)),
         ("height_b", _own_height(link.b, sites)),
-        ("roof_edge_a", _metres(link.a.roof_edge_m)),
-        ("roof_edge_b", _metres(link.b.roof_edge_m)),
-        ("parapet_a", _metres(link.a.parapet_m)),
-        ("parapet_b", _metres(link.b.parapet_m)),
+        ("roof_edge_a", metres(link.a.roof_edge_m)),
+        ("roof_edge_b", metres(link.b.roof_edge_m)),
+        ("parapet_a", metres(link.a.parapet_m)),
+        ("parapet_b", metres(link.b.parapet_m)),
+        ("high_end", high_end_of(link, radios)),
+        *line_pairs(link),
     )
-
-
-def _decibels(value: float) -> str | None:
-    return f'"{_number(value)} dB"' if value else None
 
 
 def _own_height(end: Site, sites: dict[str, Site]) -> str | None:
@@ -283,17 +237,9 @@ def _sites(links: Iterable[Link]) -> dict[str, Site]:
     found: dict[str, Site] = {}
     for site in (end for link in links for end in (link.a, link.b)):
         first = found.setdefault(site.name, site)
-        for name in ("position", "roof_m", "ground_amsl_m", "vertical_datum"):
+        for name in ("position", "roof_m", "ground_amsl_m", "vertical_datum", "noise_floors", "unusable_channels"):
             if getattr(first, name) != getattr(site, name):
                 raise StudyError(f"two different sites are called '{site.name}'", "give each one a name of its own")
-    return found
-
-
-def _radios(links: Iterable[Link]) -> dict[str, Radio]:
-    found: dict[str, Radio] = {}
-    for link in links:
-        if found.setdefault(link.radio.name, link.radio) != link.radio:
-            raise StudyError(f"two different radios are called '{link.radio.name}'", "give each one a name of its own")
     return found
 
 
