@@ -43,6 +43,7 @@ def link_lines(plan: LinkPlan, *, ink: Ink, told: Container[str] = ()) -> list[s
         *_criteria(result),
         "",
         *_level(result, ink),
+        *_reflections(plan),
         *_ends(result),
         *_cautions(result, told),
     ]
@@ -145,6 +146,14 @@ def _level(result: LinkResult, ink: Ink) -> list[str]:
     if losses.polarization:
         words += f", polarization {losses.polarization:.1f} dB"
     return lines + labelled("Losses", words)
+
+
+def _reflections(plan: LinkPlan) -> list[str]:
+    """What is mirrored on the way, where that can fade the link."""
+    found = plan.reflections
+    if found is None or not found.matters:
+        return []
+    return labelled("Reflection", " ".join(found.sentences))
 
 
 def _at_ends(values: AtEnds, unit: str) -> str:

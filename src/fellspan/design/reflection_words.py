@@ -46,9 +46,10 @@ def _where(points: list[SpecularPoint]) -> str:
 
 def _how_much(points: list[SpecularPoint]) -> str:
     main = _main(points)
+    side = "above" if main.level_db >= 0.0 else "below"
     words = (
         f"{_K_WORDS[main.name].capitalize()} the mirrored ray arrives {main.from_null_wavelengths:.1f} wavelengths from a "
-        f"null, {main.level_db:+.1f} dB on the direct ray alone"
+        f"null, which puts the level {abs(main.level_db):.1f} dB {side} that of the direct ray"
     )
     depths = {point.name: point.fade_db for point in points if point.fade_db is not None}
     if not depths:

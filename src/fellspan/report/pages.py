@@ -22,6 +22,7 @@ from fellspan.report.antenna_section import antenna_section
 from fellspan.report.map import MapMarkup, link_map
 from fellspan.report.naming import page_name, slug
 from fellspan.report.profile_drawing import draw_profile, exaggeration_words
+from fellspan.report.reflection_section import reflection_section
 from fellspan.report.relief import open_rasters, shaded_relief
 from fellspan.report.section import FULL, NARROW, PANEL
 from fellspan.terrain.raster_file import RasterFile
@@ -128,6 +129,7 @@ def _link_page(plan: StudyPlan, index: int, link: LinkPlan, templates: Environme
         ],
         losses=_losses(result.losses_db),
         antennas=antenna_section(link),
+        reflections=reflection_section(link),
         rests_on=[link.profile.sources[i] for i in sorted(set(link.profile.source.tolist())) if i >= 0],
         cautions=(*result.cautions, *link.profile.notes, *plan.cautions),
         safety=safety_lines(),
