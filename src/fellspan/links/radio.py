@@ -2,12 +2,13 @@
 
 import math
 from dataclasses import dataclass
+from typing import Final
 
 from fellspan.errors import LinkError, QuantityError
 from fellspan.links.emission import class_of_emission, necessary_bandwidth
 from fellspan.vocabulary import Duplex, Polarization
 
-SAME_POWER_DB = 0.05
+SAME_POWER_DB: Final = 0.05
 """Total power and power per chain that differ by more than this contradict each other."""
 
 
@@ -18,6 +19,14 @@ class Signature:
     width_hz: float
     depth_db: float
     delay_s: float = 6.3e-9
+
+    def __post_init__(self) -> None:
+        if not (math.isfinite(self.width_hz) and self.width_hz > 0.0):
+            raise LinkError(f"signature: width {self.width_hz:g} Hz must be above 0")
+        if not (math.isfinite(self.depth_db) and self.depth_db >= 0.0):
+            raise LinkError(f"signature: depth {self.depth_db:g} dB must be 0 or more")
+        if not (math.isfinite(self.delay_s) and self.delay_s > 0.0):
+            raise LinkError(f"signature: delay {self.delay_s:g} s must be above 0", "6.3e-9 (6.3 ns) is usual")
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -48,6 +57,18 @@ class Modulation:
     snr_db: float | None = None
     signature: Signature | None = None
 
+    def __post_init__(self) -> None:
+        rate = self.throughput_bps
+        if rate is not None and not (math.isfinite(rate) and rate > 0.0):
+            raise LinkError(f"modulation '{self.name}': {rate:g} bit/s must be above 0")
+        for label, value in (
+            ("threshold", self.threshold_dbm),
+            ("power", self.power_dbm),
+            ("signal-to-noise ratio", self.snr_db),
+        ):
+            if value is not None and not math.isfinite(value):
+                raise LinkError(f"modulation '{self.name}': {label} {value:g} must be a number")
+
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class CoChannel:
@@ -66,6 +87,10 @@ class CoChannel:
     canceller_db: float = 0.0
     required_ratio_db: float | None = None
     antenna_discrimination_db: float | None = None
+
+    def __post_init__(self) -> None:
+        if not (math.isfinite(self.canceller_db) and self.canceller_db >= 0.0):
+            raise LinkError(f"cross-polar canceller: {self.canceller_db:g} dB must be 0 or more")
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

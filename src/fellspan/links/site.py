@@ -56,6 +56,19 @@ class NoiseFloor:
     low_hz: float | None = None
     high_hz: float | None = None
 
+    def __post_init__(self) -> None:
+        if not math.isfinite(self.level_dbm):
+            raise LinkError(f"noise floor {self.level_dbm:g} dBm must be a number", "a quiet channel needs no entry")
+        width, sector = self.bandwidth_hz, self.width_deg
+        if width is not None and not (math.isfinite(width) and width > 0.0):
+            raise LinkError(f"noise floor: measured in {width:g} Hz", "the width must be above 0")
+        if self.bearing_deg is not None and not 0.0 <= self.bearing_deg <= 360.0:
+            raise LinkError(f"noise floor: bearing {self.bearing_deg:g} degrees is outside 0 to 360")
+        if not 0.0 < sector <= 360.0:
+            raise LinkError(f"noise floor: sector of {sector:g} degrees must be above 0 and at most 360")
+        if self.low_hz is not None and self.high_hz is not None and self.low_hz >= self.high_hz:
+            raise LinkError(f"noise floor: from {self.low_hz / 1e9:g} to {self.high_hz / 1e9:g} GHz is no band")
+
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Channel:
@@ -64,6 +77,13 @@ class Channel:
     low_hz: float
     high_hz: float
     reason: str = ""
+
+    def __post_init__(self) -> None:
+        if not 0.0 <= self.low_hz < self.high_hz:
+            raise LinkError(
+                f"unusable channel from {self.low_hz / 1e9:g} to {self.high_hz / 1e9:g} GHz is no stretch of spectrum",
+                "give its lower and its upper end",
+            )
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -167,6 +187,11 @@ class Sway:
     azimuth_offset_deg: float = 0.0
     elevation_offset_deg: float = 0.0
 
+    def __post_init__(self) -> None:
+        for label, sigma in (("azimuth", self.azimuth_sigma_deg), ("elevation", self.elevation_sigma_deg)):
+            if not (math.isfinite(sigma) and sigma >= 0.0):
+                raise LinkError(f"{label} sway {sigma:g} degrees must be 0 or more")
+
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Diversity:
@@ -179,6 +204,10 @@ class Diversity:
     spacing_m: float
     gain_dbi: float | None = None
     feeder_loss_db: float | None = None
+
+    def __post_init__(self) -> None:
+        if not (math.isfinite(self.spacing_m) and self.spacing_m > 0.0):
+            raise LinkError(f"second antenna: spacing {self.spacing_m:g} m must be above 0", "3 to 23 m are usual")
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -224,6 +253,16 @@ class Antenna:
     sway: Sway | None = None
     diversity: Diversity | None = None
 
+    def __post_init__(self) -> None:
+        for label, loss in (
+            ("feeder loss", self.feeder_loss_db),
+            ("branching loss", self.branching_loss_db),
+            ("wet radome", self.radome_wet_db),
+            ("iced radome", self.radome_iced_db),
+        ):
+            if not (math.isfinite(loss) and loss >= 0.0):
+                raise LinkError(f"antenna '{self.name}': {label} {loss:g} dB must be 0 dB or more")
+
     @property
     def peak_gain_dbi(self) -> float | None:
         """Gain at the maximum: the pattern's where there is one, else as stated."""
@@ -248,3 +287,11 @@ class Link:
     wanted_margin_db: float = 10.0
     target_availability_percent: float | None = None
     power_rule: PowerRule | None = None
+
+    def __post_init__(self) -> None:
+        target = self.target_availability_percent
+        if target is not None and not 0.0 < target < 100.0:
+            raise LinkError(
+                f"link '{self.name}': target availability {target:g} % must be above 0 and below 100",
+                "99.99 allows 53 minutes a year; nothing is there all the time",
+            )
