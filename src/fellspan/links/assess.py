@@ -25,11 +25,13 @@ from fellspan.links.evaluate import criterion_result, extra_for_confidence, gove
 from fellspan.links.levels import PathLevels
 from fellspan.links.minima import worst_windows
 from fellspan.links.own_building import Standing, standing, with_ground_at_end, with_nodes, with_roof_edge
+from fellspan.links.radiated import exposure_pair, power_cautions, power_checks
 from fellspan.links.result import EndResult, Ends, LinkResult
 from fellspan.links.signal import Weather, signal_of, worse_of
 from fellspan.links.signal_words import signal_sentences
 from fellspan.links.site import Link
 from fellspan.links.uncertainty import clearance_errors_m
+from fellspan.propagation.exposure import ExposureRule
 from fellspan.propagation.rain import RainEdition, RainReading
 from fellspan.terrain.profile import PathProfile
 from fellspan.vocabulary import COVER_KINDS, CriteriaPreset
@@ -50,7 +52,7 @@ class AssessSettings:
     `criteria` replaces `preset` where it is not empty. `confidence` is the probability asked of every criterion, above 0 and
     below 1. `date` is for magnetic bearings; None leaves them out. `step_m` is the regular step along paths, None for half
     the finest cell. `climate` is what is known of it; None leaves all to the maps, where they are installed. `rain_edition` is
-    that of Rec. ITU-R P.530, `rain_reading` that of its equation (36).
+    that of Rec. ITU-R P.530, `rain_reading` that of its equation (36). `exposure_rule` says whose limits distances are for.
     """
 
     preset: CriteriaPreset = "p530-temperate"
@@ -62,6 +64,7 @@ class AssessSettings:
     climate: GivenClimate | None = None
     rain_edition: RainEdition = "19"
     rain_reading: RainReading = "A"
+    exposure_rule: ExposureRule | Literal["stricter"] = "stricter"
 
     def __post_init__(self) -> None:
         if math.isnan(self.median_k) or self.median_k == 0.0:
@@ -180,6 +183,7 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
     said = signal_sentences(
         link, signal.result, received_dbm=signal.received_dbm, margin_db=signal.margin_db, trees=trees
     )
+    power = power_checks(link)
     end_a, model, caution_a = _end_result(laid.a, way.bearing_ab_deg, settings.date)
     end_b, _, caution_b = _end_result(laid.b, way.bearing_ba_deg, settings.date)
     result = LinkResult(
@@ -206,6 +210,7 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
             antennas=(
                 *antenna_cautions(link, antennas, distance_m=length_m, polarization_db=polarization_db),
                 *signal.cautions,
+                *power_cautions(power),
             ),
         ),
         distance_m=length_m,
@@ -232,6 +237,8 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
         modulation=signal.modulation,
         availability_percent=signal.result.availability_percent,
         signal=signal.result,
+        power=power,
+        exposure=exposure_pair(link, rule=settings.exposure_rule),
     )
     return Assessment(result=result, profile=profile, levels=levels)
 

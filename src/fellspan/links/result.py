@@ -6,6 +6,8 @@ Numbers that are infinite or undefined are None.
 
 from dataclasses import dataclass
 
+from fellspan.links.exposure import ExposureResult
+from fellspan.links.rules import RuleCheck
 from fellspan.links.signal_result import NOT_COMPUTED, Periods, SignalResult
 from fellspan.vocabulary import Basis, MountedPolarization, PathVerdict, SignalVerdict
 
@@ -170,6 +172,22 @@ class AntennasResult:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class PowerChecks:
+    """What the power rule of the link says of each end, at the highest power of any modulation."""
+
+    a: RuleCheck
+    b: RuleCheck
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class ExposurePair:
+    """Distances to keep from the antenna of each end; None where power or gain is unknown."""
+
+    a: ExposureResult | None
+    b: ExposureResult | None
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class LinkResult:
     """The decision on one link and its numbers (see results.json, schema 1, in docs/results.md)."""
 
@@ -213,3 +231,7 @@ class LinkResult:
     """Of the wanted modulation, both ways at once."""
     signal: SignalResult | None = None
     """None in results of versions that did not compute it."""
+    power: PowerChecks | None = None
+    """None where the link goes by no rule."""
+    exposure: ExposurePair | None = None
+    """None where power or gains are unknown."""

@@ -46,6 +46,7 @@ def plan_study(study: Study, *, progress: Progress | None = None) -> StudyPlan:
     with _open_terrain(study) as terrain:
         for done, link in enumerate(study.links):
             if progress is not None:
+        exposure_rule=study.exposure_rule,
                 progress(done, len(study.links), link.name)
             outcome = _plan_link(link, terrain, settings, water)
             if isinstance(outcome, LinkPlan):
