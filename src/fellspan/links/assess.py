@@ -6,7 +6,7 @@ Puts the pieces of this room together and holds no formula itself; knows nothing
 import datetime as dt
 import math
 from dataclasses import dataclass
-from typing import TYPE_CHECKING, Final
+from typing import TYPE_CHECKING, Final, Literal
 
 import numpy as np
 from numpy.typing import NDArray
