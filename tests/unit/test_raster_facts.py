@@ -230,3 +230,20 @@ def test_datums_that_differ_are_told(tmp_path: Path) -> None:
 )
 def test_default_errors(cell: float, role: Any, error: float) -> None:
     assert default_error_m(cell, role) == error
+
+
+@pytest.mark.parametrize(("floor", "is_told"), [(200.0, True), (0.0, False)])
+def test_holes_of_zero_amid_high_land_are_told_and_a_sea_is_not(tmp_path: Path, floor: float, is_told: bool) -> None:
+    """High land with two holes filled with 0; and an island with a sea around it and a lagoon near its level."""
+    cells = hills(200, cell=10.0) - 200.0 + floor
+    if floor:
+        cells[40:44, 50:60] = 0.0
+        cells[100:103, 100:103] = 0.0
+        cells[150, 150] = 0.0  # one cell alone is an accident
+    else:
+        cells[cells < 3.0] = 0.0
+    cautions = inspect_raster(RasterSource(path=write(tmp_path / "zeros.tif", cells))).cautions
+    told = [text for text in cautions if "exactly 0" in text]
+    assert bool(told) == is_told
+    if told:
+        assert told[0].startswith("49 cells of exactly 0 lie in 2 holes amid land of 202 m")

@@ -45,7 +45,8 @@ def _raster_beside(samples: Samples, names: tuple[str, ...], first: int, last: i
 def gap_error(profile: PathProfile) -> TerrainGapError:
     """The error that names the first gap, in km from A, with the raster, where it ends, and the remedy."""
     gap = profile.gaps[0]
-    more = f", and {len(profile.gaps) - 1} more stretches" if len(profile.gaps) > 1 else ""
+    others = len(profile.gaps) - 1
+    more = f", and {others} more stretch{'es' if others > 1 else ''}" if others else ""
     called = f"'{profile.name}'" if profile.name else "the path"
     ends = ""
     if gap.from_m <= 0.0 and gap.to_m >= profile.length_m:

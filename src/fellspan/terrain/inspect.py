@@ -23,6 +23,7 @@ from fellspan.terrain.sources import CoverSource, RasterSource
 from fellspan.terrain.stack import RasterStack
 from fellspan.terrain.tiles import open_source
 from fellspan.terrain.units import common_datum, is_ellipsoidal, unit_name
+from fellspan.terrain.zeros import ZeroHoles
 from fellspan.vocabulary import RasterRole
 
 _SLOW_STRIP_CELLS = 4096
@@ -213,11 +214,9 @@ def _slowness(file: RasterFile, *, single: bool) -> tuple[str | None, str | None
 def _cautions(files: Sequence[RasterFile], survey: CellSurvey, finest: RasterFile, role: RasterRole) -> list[str]:
     found = []
     if any(not file.unit_is_stated for file in files):
-        found.append("vertical unit not stated: taken as metres; if it is feet, declare vertical_unit")
+        found.append("vertical unit not stated: taken as metres; if it is feet, declare unit = 'ft'")
     if role != "cover" and any(file.vertical_datum is None for file in files):
-        found.append(
-            "vertical datum not stated: heights are taken as above sea level; declare vertical_datum if you know it"
-        )
+        found.append("vertical datum not stated: heights are taken as above sea level; declare datum if you know it")
     if any(is_ellipsoidal(file.vertical_datum) for file in files):
         found.append("heights are above the ellipsoid, not above sea level: they differ by up to about 100 m")
     if len({file.unit_m for file in files}) > 1:
@@ -227,6 +226,8 @@ def _cautions(files: Sequence[RasterFile], survey: CellSurvey, finest: RasterFil
         found.append(shift)
     if survey.gap_share > 0.0:
         found.append("it has gaps: a path over one is refused unless another raster fills it or the study calls it sea")
+    if role != "cover" and survey.zeros.holes:
+        found.append(_zero_caution(survey.zeros))
     if any(file.nodata is None and not file.has_mask for file in files):
         found.append("no nodata value is declared: -9999, -32767, -32768 and impossible heights are taken for gaps")
     if role == "ground" and survey.looks_like(finest.cell_m) == "surface model":
@@ -236,6 +237,14 @@ def _cautions(files: Sequence[RasterFile], survey: CellSurvey, finest: RasterFil
     if role == "surface" and survey.looks_like(finest.cell_m) == "bare ground":
         found.append("declared as a surface model, yet it looks like bare ground: roofs and trees may be missing")
     return found
+
+
+def _zero_caution(zeros: ZeroHoles) -> str:
+    where = "one hole" if zeros.holes == 1 else f"{zeros.holes} holes"
+    return (
+        f"{zeros.cells} cells of exactly 0 lie in {where} amid land of {zeros.rim_m:.0f} m or higher: no sea, but gaps filled "
+        "with 0? A path over them would read clear; make them gaps (nodata)"
+    )
 
 
 def _shift_caution(file: RasterFile) -> str | None:

@@ -14,6 +14,7 @@ from numpy.typing import NDArray
 from fellspan.terrain.blocks import window_heights
 from fellspan.terrain.handles import gdal, open_dataset
 from fellspan.terrain.raster_file import RasterFile
+from fellspan.terrain.zeros import ZeroHoles, zero_holes
 
 Look = Literal["surface model", "bare ground", "unclear"]
 
@@ -41,6 +42,7 @@ class CellSurvey:
     low_m: float | None
     high_m: float | None
     abrupt_share: float | None
+    zeros: ZeroHoles
 
     def looks_like(self, cell_m: float) -> Look:
         """A guess from the share of abrupt cells; 'unclear' for coarse cells and level ground."""
@@ -64,11 +66,13 @@ def survey_cells(files: Sequence[RasterFile]) -> CellSurvey:
     chosen = [files[i] for i in np.unique(np.linspace(0, len(files) - 1, min(len(files), _MOST_FILES)).astype(int))]
     cells = gaps = abrupt = judged = 0
     low, high = math.inf, -math.inf
+    zeros = ZeroHoles()
     for file in chosen:
         for heights in _windows(file, each_way=max(1, round(_WINDOWS_EACH_WAY / math.sqrt(len(chosen))))):
             known = np.isfinite(heights)
             cells += heights.size
             gaps += heights.size - int(known.sum())
+            zeros += zero_holes(heights)
             if known.any():
                 low, high = min(low, float(np.nanmin(heights))), max(high, float(np.nanmax(heights)))
             for kinks, cell in ((_kinks(heights), file.cell_x_m), (_kinks(heights.T), file.cell_y_m)):
@@ -80,6 +84,7 @@ def survey_cells(files: Sequence[RasterFile]) -> CellSurvey:
         low_m=low if gaps < cells else None,
         high_m=high if gaps < cells else None,
         abrupt_share=abrupt / judged if judged else None,
+        zeros=zeros,
     )
 
 

@@ -47,9 +47,10 @@ def path_notes(work: PathWork, samples: Samples, *, refined: bool) -> tuple[str,
                 f"ground under a support of {standing.shown.name} is not known: taken as hung level from below it"
             )
     if beyond := work.hits.beyond:
+        rows = "the row is" if len(beyond) == 1 else f"{len(beyond)} such rows are"
         notes.append(
             f"{beyond[0].where}: distance_m {beyond[0].distance_m:g} lies beyond the path's end at "
-            f"{work.path.length_m:.0f} m; {len(beyond)} such rows are not used"
+            f"{work.path.length_m:.0f} m; {rows} not used"
         )
     notes.extend(survey_notes(work, samples))
     for hit in [hit for hit in work.hits.points if hit.row.note][:_MOST_SURVEY_NOTES]:
@@ -77,4 +78,5 @@ def _stretches(distance_m: Floats, where: NDArray[np.bool_]) -> str:
     change = np.diff(np.concatenate(([0], where.astype(np.int8), [0])))
     starts, stops = np.flatnonzero(change > 0), np.flatnonzero(change < 0) - 1
     said = [f"{distance_m[i] / 1000:.2f} to {distance_m[j] / 1000:.2f} km" for i, j in zip(starts, stops, strict=True)]
-    return ", ".join(said[:3]) + (f" and {len(said) - 3} more stretches" if len(said) > 3 else "")
+    others = len(said) - 3
+    return ", ".join(said[:3]) + (f" and {others} more stretch{'es' if others > 1 else ''}" if others > 0 else "")

@@ -205,7 +205,7 @@ def _unit(
         if metres is None:
             raise RasterError(
                 f"{name} states '{of_band[:40]}' as the unit of its values, which is no length",
-                'if the values are heights, state their unit with vertical_unit = "m", "ft" or "us-ft"',
+                'if the values are heights, state their unit with unit = "m", "ft" or "us-ft"',
             )
         return metres, True
     if of_crs_m is not None:

@@ -107,7 +107,7 @@ class SeamBook:
                     f"{seam.first} and {seam.second} disagree by {abs(seam.median_m):.1f} m where they overlap",
                     f"allowed is {seam.allowed_m:.1f} m, three standard errors of both; median of {seam.points} points",
                     "is one in feet, above another datum, or a surface model? correct its declaration or leave it out,",
-                    "or state the larger error of the worse one with error_m",
+                    'or state the larger error of the worse one, as in error = "3 m"',
                 )
 
     def _enter(self, seam: Seam) -> None:

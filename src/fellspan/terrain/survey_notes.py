@@ -36,8 +36,9 @@ def _wide(work: PathWork) -> Iterator[str]:
             yield f"{first.where}: a radius of {segment.length_m / 2.0:.0f} m {limit}"
         else:
             yield f"{_places((first, second))}: the line over the {segment.length_m:.0f} m between them {limit}"
-    if len(work.hits.wide) > _MOST_LISTED:
-        yield f"survey: {len(work.hits.wide) - _MOST_LISTED} more stretches too long to count as measured"
+    others = len(work.hits.wide) - _MOST_LISTED
+    if others > 0:
+        yield f"survey: {others} more stretch{'es' if others > 1 else ''} too long to count as measured"
 
 
 def _removed(work: PathWork, samples: Samples) -> Iterator[str]:

@@ -97,7 +97,7 @@ def common_datum(stated: dict[str, str | None]) -> str | None:
             raise VerticalDatumError(
                 f"heights of different vertical datums would be mixed: '{first[1]}' and '{datum}'",
                 f"'{first[1]}' is that of {first[0]}, '{datum}' that of {name}",
-                "convert the rasters to one vertical datum, or state it with vertical_datum if a file states it wrongly",
+                "convert the rasters to one vertical datum, or state it with datum if a file states it wrongly",
             )
     return None if first is None else first[1]
 
