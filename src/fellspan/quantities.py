@@ -32,6 +32,9 @@ _DIPOLE_DBI: Final = 2.15
 """Gain of the half-wave dipole, 1.64 times the isotropic one: what lies between dBd and dBi."""
 
 FREQUENCY_RANGE_HZ: Final = (30e6, 300e9)
+HIGHEST_THRESHOLD_DBM: Final = -20.0
+HIGHEST_POWER_DBM: Final = 60.0
+"""Beyond these a figure was mistyped: no receiver of a link needs so much, and no radio of one sends so much (our own rule)."""
 
 _REFERENCES: Final[dict[str, HeightReference]] = {
     "ground": "ground", "ground level": "ground", "local ground": "ground", "agl": "ground",
@@ -160,6 +163,29 @@ def parse_level_dbm(text: str) -> float:
         raise _unknown(text, unit, name="level", allowed="dBm, dBW")
     value = number + (30.0 if unit == "dbw" else 0.0)
     return _within(value, -250.0, 100.0, text=text, name="level", allowed="-250 to 100 dBm")
+
+
+def parse_threshold_dbm(text: str) -> float:
+    """'-72 dBm' to dBm: the least level that a receiver works at, -250 to -20 dBm. Above that the sign was lost."""
+    value = parse_level_dbm(text)
+    if value > HIGHEST_THRESHOLD_DBM:
+        meant = f"; did you mean '{-value:g} dBm'?" if value > 20.0 else ""
+        raise QuantityError(
+            f"threshold {_shown(text)} is above {HIGHEST_THRESHOLD_DBM:g} dBm, which no receiver needs",
+            f"thresholds are negative: -60 to -100 dBm is usual{meant}",
+        )
+    return value
+
+
+def parse_transmit_power_dbm(text: str) -> float:
+    """'23 dBm', '200 mW' to dBm: the power of a radio at its port, -100 to 60 dBm (1 kW)."""
+    value = parse_power_dbm(text)
+    if value > HIGHEST_POWER_DBM:
+        raise QuantityError(
+            f"transmit power {_shown(text)} is {value:.0f} dBm, more than the {HIGHEST_POWER_DBM:g} dBm (1 kW) allowed here",
+            "10 to 40 dBm is usual at the antenna port, without the gain of the antenna; 23 dBm is 200 mW",
+        )
+    return value
 
 
 def parse_percent(text: str) -> float:

@@ -26,6 +26,8 @@ from fellspan.quantities import (
     parse_percent,
     parse_power_dbm,
     parse_probability,
+    parse_threshold_dbm,
+    parse_transmit_power_dbm,
 )
 from fellspan.vocabulary import HeightReference
 
@@ -33,6 +35,8 @@ PARSERS: list[Callable[[str], object]] = [
     parse_frequency_hz,
     parse_length_m,
     parse_power_dbm,
+    parse_threshold_dbm,
+    parse_transmit_power_dbm,
     parse_gain_dbi,
     parse_loss_db,
     parse_level_dbm,
@@ -72,6 +76,8 @@ PARSERS: list[Callable[[str], object]] = [
         (parse_gain_dbi, "-3dBi", -3.0),
         (parse_loss_db, "1.5 dB", 1.5),
         (parse_level_dbm, "-72 dBm", -72.0),
+        (parse_threshold_dbm, "-20 dBm", -20.0),
+        (parse_transmit_power_dbm, "1 kW", 60.0),
         (parse_level_dbm, "\u221272 dBm", -72.0),
         (parse_level_dbm, "-102 dBW", -72.0),
         (parse_percent, "90 %", 90.0),
@@ -104,6 +110,10 @@ def test_values(parse: Callable[[object], float], text: object, value: float) ->
         (parse_power_dbm, "-1 mW", "above 0"),
         (parse_power_dbm, "200 MW", "milliwatts are written mW"),
         (parse_power_dbm, "23 dBi", "not a unit of power"),
+        (parse_transmit_power_dbm, "61 dBm", "60 dBm (1 kW)"),
+        (parse_transmit_power_dbm, "2 kW", "'2 kW' is 63 dBm"),
+        (parse_threshold_dbm, "72 dBm", "did you mean '-72 dBm'"),
+        (parse_threshold_dbm, "-10 dBm", "thresholds are negative"),
         (parse_gain_dbi, "23 dB", "above what"),
         (parse_gain_dbi, "230 dBi", "-50 to 90 dBi"),
         (parse_loss_db, "-1.5 dB", "positive"),

@@ -197,10 +197,15 @@ WRONG: dict[str, tuple[Change, list[str]]] = {
         swap('b = "North Light"', 'b = "Nort Light"'),
         ["link 'Harbour - North Light', b", "'Nort Light'", "did you mean 'North Light'", "Harbour, North Light"],
     ),
+    "a sign lost": (
+        swap('threshold = "-72 dBm"', 'threshold = "72 dBm"'),
+        ["radio 'backhaul', threshold", "'72 dBm' is above -20 dBm", "did you mean '-72 dBm'"],
+    ),
+    "a power of a broadcaster": (swap('power = "200 mW"', 'power = "23 kW"'), ["'23 kW' is 74 dBm", "60 dBm (1 kW)"]),
     "undefined radio": (swap('radio = "backhaul"', 'radio = "fronthaul"'), ["'fronthaul'", "backhaul"]),
     "undefined antenna": (swap('antenna = "dish"', 'antenna_b = "yagi"'), ["antenna_b", "'yagi'", "dish"]),
     "same site twice": (swap('b = "North Light"', 'b = "Harbour"'), ["both ends are the site 'Harbour'"]),
-    "duplicate name": (swap('name = "North Light"', 'name = "Harbour"'), ["site 'Harbour'", "2 times", "more problem"]),
+    "duplicate name": (swap('name = "North Light"', 'name = "Harbour"'), ["site 'Harbour'", "2 times", "wrong too"]),
     "latitude 91": (swap("36.04217 N", "91.04217 N"), ["site 'Harbour', position", "91.04217"]),
     "no position": (swap('at = "36.04217 N, 45.19876 W"', ""), ["site 'Harbour'", "no position"]),
     "half a position": (swap("longitude = -45.17243", ""), ["site 'North Light'", "longitude is missing"]),
@@ -249,12 +254,23 @@ def test_what_is_wrong_is_said(folder: Path, case: str) -> None:
     assert "strait.toml" in message.splitlines()[0]
 
 
-def test_others_are_counted(folder: Path) -> None:
+def test_the_places_of_the_others_are_named(folder: Path) -> None:
     text = (
         GOOD.replace('"5.8 GHz"', "5.8").replace("growth_years = 5", "growth_years = -5").replace("fine.tif", "f.tif")
     )
     lines = refused(folder, text)
-    assert lines[-1].strip() == "and 1 more problem in this file"
+    assert len(lines) <= 4
+    assert "growth_years" in lines[0] or "frequency" in lines[0]
+    assert lines[-1].strip() in ("wrong too: radio 'backhaul', frequency", "wrong too: study.growth_years")
+
+
+def test_a_long_list_of_places_is_cut_and_counted(folder: Path) -> None:
+    sites = "".join(f'[[site]]\nname = "Place {number} of many"\nat = "nowhere"\n' for number in range(12))
+    lines = refused(folder, GOOD + sites)
+    assert len(lines) <= 4
+    assert lines[0].startswith("strait.toml, site 'Place 0 of many', position")
+    assert lines[-1].strip().startswith("wrong too: site 'Place 1 of many', position; site 'Place 2 of many', position")
+    assert lines[-1].endswith("; and 7 more")
 
 
 def test_a_file_that_is_none(tmp_path: Path) -> None:

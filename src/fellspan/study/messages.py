@@ -17,6 +17,7 @@ from fellspan.study.schema import StudyFile
 
 _LISTS = ("site", "radio", "antenna", "link")
 _WIDEST_VALUE = 60
+_WIDEST_LIST = 150
 
 
 @dataclass(frozen=True, slots=True)
@@ -29,11 +30,23 @@ class Problem:
 
 
 def raise_problems(file_name: str, problems: Sequence[Problem]) -> typing.NoReturn:
-    """Raise the first problem in full, with the number of the others."""
-    first, others = problems[0], len(problems) - 1
+    """Raise the first problem in full, with the places of the others."""
+    first, others = problems[0], problems[1:]
     what = f"{file_name}, {first.where}: {first.what}" if first.where else f"{file_name}: {first.what}"
-    more = (f"and {others} more problem{'s' if others > 1 else ''} in this file",) if others else ()
+    more = (f"wrong too: {_places(others)}",) if others else ()
     raise StudyError(what, *first.details[: 3 - len(more)], *more)
+
+
+def _places(problems: Sequence[Problem]) -> str:
+    """Where problems stand, each place once, as many as a line holds; one without a place is told by what it is."""
+    places = list(dict.fromkeys(problem.where or problem.what for problem in problems))
+    listed = places[:1]
+    for place_of in places[1:]:
+        if len("; ".join((*listed, place_of))) > _WIDEST_LIST:
+            break
+        listed.append(place_of)
+    left = len(places) - len(listed)
+    return "; ".join(listed) + (f"; and {left} more" if left else "")
 
 
 def problems_of(errors: Iterable[ErrorDetails], data: Mapping[str, Any]) -> list[Problem]:

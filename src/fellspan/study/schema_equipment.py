@@ -10,7 +10,6 @@ from fellspan.study.fields import (
     Frequency,
     Gain,
     Length,
-    Level,
     Loss,
     LossOfLine,
     Name,
@@ -18,6 +17,7 @@ from fellspan.study.fields import (
     Power,
     Rate,
     Share,
+    Threshold,
     Width,
 )
 from fellspan.study.table import Table
@@ -36,7 +36,7 @@ class ModulationTable(Table):
     """[[radio.modulation]]: one row of a radio's table."""
 
     name: Name = Field(description="As the data sheet calls it.", examples=["64-QAM 5/6"])
-    threshold: Level | None = Field(default=None, description="Received level that it needs.", examples=["-72 dBm"])
+    threshold: Threshold | None = Field(default=None, description="Received level that it needs.", examples=["-72 dBm"])
     snr: Loss | None = Field(
         default=None, description="Signal-to-noise ratio that it needs, instead of threshold.", examples=["24 dB"]
     )
@@ -71,7 +71,7 @@ class RadioTable(Table):
     power: Power | None = Field(
         default=None, description="Transmit power at the antenna port, all chains together.", examples=["23 dBm"]
     )
-    threshold: Level | None = Field(
+    threshold: Threshold | None = Field(
         default=None,
         description="Received level that the radio needs, where no modulations are listed.",
         examples=["-75 dBm"],
