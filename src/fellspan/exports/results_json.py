@@ -35,7 +35,13 @@ def results_dict(plan: StudyPlan) -> dict[str, Any]:
         "files": [_plain(file) for file in plan.files],
         "cautions": list(plan.cautions),
         "links": [
-            {**link_result_dict(linked.result), "reflections": _plain(linked.reflections)} for linked in plan.links
+            {
+                **link_result_dict(linked.result),
+                "reflections": _plain(linked.reflections),
+                "heights": _plain(linked.heights),
+                "confidence_along_path": _plain(linked.confidence),
+            }
+            for linked in plan.links
         ],
         "failures": [_failure(failure) for failure in plan.failures],
     }

@@ -2,7 +2,10 @@
 
 from dataclasses import dataclass
 
+from fellspan.design.confidence import ConfidenceResult
+from fellspan.design.heights_result import HeightsResult
 from fellspan.design.reflection_result import ReflectionResult
+from fellspan.design.survey_list import SurveyPoint
 from fellspan.errors import FellspanError
 from fellspan.links.levels import PathLevels
 from fellspan.links.result import LinkResult
@@ -23,6 +26,9 @@ class LinkPlan:
     profile: PathProfile
     levels: PathLevels
     reflections: ReflectionResult | None = None
+    heights: HeightsResult | None = None
+    confidence: ConfidenceResult | None = None
+    survey: tuple[SurveyPoint, ...] = ()
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -4,9 +4,13 @@ One link that cannot be assessed does not stop the others. Reads no study file a
 """
 
 from collections.abc import Callable, Iterator
+from typing import Final
 
 from fellspan import __version__
+from fellspan.design.heights import design_heights
+from fellspan.design.heights_result import HeightSettings
 from fellspan.design.reflections import Water, find_reflections
+from fellspan.design.survey_list import survey_list
 from fellspan.errors import FellspanError
 from fellspan.links.assess import AssessSettings, assess_in_full
 from fellspan.links.site import Link
@@ -17,12 +21,14 @@ from fellspan.planning.stamp import input_files
 from fellspan.terrain.survey import link_key
 from fellspan.terrain.terrain import Terrain
 
+_AS_USUAL: Final = HeightSettings()
+
 Progress = Callable[[int, int, str], None]
 """Called with the number of links done, the number of all, and the name of the one in hand."""
 
 
-def plan_study(study: Study, *, progress: Progress | None = None) -> StudyPlan:
-    """Assess every link of a study.
+def plan_study(study: Study, *, progress: Progress | None = None, heights: HeightSettings = _AS_USUAL) -> StudyPlan:
+    """Assess every link of a study; `heights` says how antenna heights are searched.
 
     Raises
     ------
@@ -48,7 +54,7 @@ def plan_study(study: Study, *, progress: Progress | None = None) -> StudyPlan:
             if progress is not None:
         exposure_rule=study.exposure_rule,
                 progress(done, len(study.links), link.name)
-            outcome = _plan_link(link, terrain, settings, water)
+            outcome = _plan_link(link, terrain, settings, water, heights, growth_years=study.growth_years)
             if isinstance(outcome, LinkPlan):
                 planned.append(outcome)
             else:
@@ -80,9 +86,18 @@ def _open_terrain(study: Study) -> Terrain:
     )
 
 
-def _plan_link(link: Link, terrain: Terrain, settings: AssessSettings, water: Water) -> LinkPlan | LinkFailure:
+def _plan_link(
+    link: Link,
+    terrain: Terrain,
+    settings: AssessSettings,
+    water: Water,
+    heights: HeightSettings,
+    *,
+    growth_years: float,
+) -> LinkPlan | LinkFailure:
     try:
         assessment = assess_in_full(link, terrain=terrain, settings=settings)
+        answer, confidence = design_heights(link, assessment, settings, heights=heights, growth_years=growth_years)
     except FellspanError as error:
         return LinkFailure(link=link, error=explained(error, link, terrain))
     result, profile, levels = assessment.result, assessment.profile, assessment.levels
@@ -92,6 +107,9 @@ def _plan_link(link: Link, terrain: Terrain, settings: AssessSettings, water: Wa
         profile=profile,
         levels=levels,
         reflections=find_reflections(link, result=result, profile=profile, levels=levels, water=water),
+        heights=answer,
+        confidence=confidence,
+        survey=survey_list(result, profile, levels),
     )
 
 
