@@ -27,7 +27,8 @@ from fellspan.links.minima import worst_windows
 from fellspan.links.own_building import Standing, standing, with_ground_at_end, with_nodes, with_roof_edge
 from fellspan.links.radiated import exposure_pair, power_cautions, power_checks
 from fellspan.links.result import EndResult, Ends, LinkResult
-from fellspan.links.signal import Weather, signal_of, worse_of
+from fellspan.links.signal import signal_of, worse_of
+from fellspan.links.signal_path import Weather
 from fellspan.links.signal_words import signal_sentences
 from fellspan.links.site import Link
 from fellspan.links.uncertainty import clearance_errors_m

@@ -3,33 +3,17 @@
 Joins the pieces of this room and the climate; knows no terrain files, no study files and no pages.
 """
 
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 
-import numpy as np
-
-from fellspan.antennas.mounting import FIELD_ANGLE_DEG
-from fellspan.climate.assembling import figures_for
 from fellspan.climate.figures import ClimateFigures, Figure
-from fellspan.climate.given import GivenClimate
-from fellspan.geodesy.position import Position
-from fellspan.links.antenna_gains import cross_discrimination_db
-from fellspan.links.budget import line_loss_db, path_terms, pointing_db
-from fellspan.links.direction import Direction, End, direction_of, shares_of
-from fellspan.links.fading import (
-    Fading,
-    Geometry,
-    Rain,
-    Spread,
-    nodes_of,
-    occurrence,
-    rain_001,
-    spread_of,
-)
+from fellspan.links.budget import line_loss_db, pointing_db
+from fellspan.links.direction import Direction, shares_of
+from fellspan.links.fading import Fading, Geometry
 from fellspan.links.own_building import Standing
-from fellspan.links.path_loss import PathLoss, path_loss, sample_lengths_m
-from fellspan.links.ranges import multipath_breaches, multipath_inputs, rain_breaches
-from fellspan.links.receivers import blocked, row_power_dbm, rows_of
+from fellspan.links.path_loss import PathLoss
+from fellspan.links.receivers import blocked
 from fellspan.links.result import AntennasResult, AtEnds, Losses
+from fellspan.links.signal_path import SignalPath, Weather, both_directions, has_margin, path_of
 from fellspan.links.signal_result import (
     NOT_COMPUTED,
     ClimateUsed,
@@ -39,20 +23,11 @@ from fellspan.links.signal_result import (
 )
 from fellspan.links.signal_words import notes_of, signal_cautions
 from fellspan.links.site import Link
-from fellspan.propagation import RainEdition, RainReading, minutes_per_year, two_way_outage
+from fellspan.propagation import minutes_per_year, two_way_outage
 from fellspan.terrain.profile import PathProfile
 from fellspan.vocabulary import SignalVerdict
 
 BETTER_TO_WORSE: tuple[SignalVerdict, ...] = ("meets", "marginal", "below")
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Weather:
-    """What the study says of the climate, and how rain is to be worked out."""
-
-    given: GivenClimate
-    rain_edition: RainEdition = "19"
-    rain_reading: RainReading = "A"
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -84,6 +59,7 @@ def signal_of(
     bearings_deg: tuple[float, float],
     tilts_deg: tuple[float, float],
     weather: Weather,
+    path: SignalPath | None = None,
 ) -> Signal:
     """Work out both directions of a link.
 
@@ -99,52 +75,30 @@ def signal_of(
         What each antenna gives toward the other end, the loss by polarizations that differ, and where the other end lies.
     weather
         Climate as given, and how rain is worked out. Maps are asked only where a margin is known.
+    path
+        What `path_of` made of the same link earlier, with whatever antennas: saves working it out again.
     """
-    figures = _climate(link, profile, antennas, weather.given, a_amsl_m=a_amsl_m, b_amsl_m=b_amsl_m)
-    geometry = _geometry(profile, figures.position, a_amsl_m=a_amsl_m, b_amsl_m=b_amsl_m)
-    spread = spread_of(figures, length_m=geometry.length_m)
-    nodes = nodes_of(spread)
-    transmit_hz = link.radio.transmit_hz
-    losses: dict[float, PathLoss] = {}
-    for frequency in dict.fromkeys(transmit_hz):
-        losses[frequency] = path_loss(
+    if path is None:
+        path = path_of(
+            link,
             profile,
             standing,
             a_amsl_m=a_amsl_m,
             b_amsl_m=b_amsl_m,
             median_k=median_k,
-            frequency_hz=frequency,
-            polarization=link.radio.polarization,
-            air=figures,
-            nodes_inverse_k=nodes,
+            weather=weather,
+            maps=has_margin(link, antennas),
         )
-    ends = (
-        End(site=link.a, antenna=link.antenna_a, gain_dbi=antennas.a.gain_dbi, bearing_deg=bearings_deg[0]),
-        End(site=link.b, antenna=link.antenna_b, gain_dbi=antennas.b.gain_dbi, bearing_deg=bearings_deg[1]),
+    fadings, (there, back) = both_directions(
+        link,
+        path,
+        antennas=antennas,
+        polarization_db=polarization_db,
+        bearings_deg=bearings_deg,
+        tilts_deg=tilts_deg,
+        weather=weather,
     )
-    discrimination = cross_discrimination_db(link, bearings_deg=bearings_deg, tilts_deg=tilts_deg)
-    fadings = tuple(
-        _fading(
-            link, figures, geometry=geometry, spread=spread, loss=losses[frequency], antennas=antennas, weather=weather
-        )
-        for frequency in transmit_hz
-    )
-    there, back = (
-        direction_of(
-            link.radio,
-            transmit,
-            receive,
-            name=name,
-            frequency_hz=fading.frequency_hz,
-            path=path_terms(fading.loss, median_k=median_k, polarization_db=polarization_db, air=figures),
-            fading=fading,
-            discrimination_db=discrimination,
-        )
-        for name, transmit, receive, fading in (
-            ("A to B", ends[0], ends[1], fadings[0]),
-            ("B to A", ends[1], ends[0], fadings[1]),
-        )
-    )
+    figures, geometry, losses, transmit_hz = path.figures, path.geometry, path.losses, link.radio.transmit_hz
     result = _result(link, figures, there, back, fadings=fadings, geometry=geometry, weather=weather)
     return Signal(
         result=result,
@@ -162,89 +116,6 @@ def worse_of(verdict: SignalVerdict | None, at_most: SignalVerdict | None) -> Si
     if verdict is None or at_most is None:
         return verdict
     return max(verdict, at_most, key=BETTER_TO_WORSE.index)
-
-
-def _climate(
-    link: Link,
-    profile: PathProfile,
-    antennas: AntennasResult,
-    given: GivenClimate,
-    *,
-    a_amsl_m: float,
-    b_amsl_m: float,
-) -> ClimateFigures:
-    """Figures of the middle of the path; its air is at the mean level of the antennas unless the study says otherwise."""
-    middle = int(np.argmin(np.abs(profile.distance_m - 0.5 * profile.length_m)))
-    place = Position(
-        latitude_deg=float(profile.latitude_deg[middle]), longitude_deg=float(profile.longitude_deg[middle])
-    )
-    if given.altitude_m is None:
-        given = replace(given, altitude_m=float(np.clip(0.5 * (a_amsl_m + b_amsl_m), -500.0, 9000.0)))
-    rows = rows_of(link.radio)
-    has_margin = bool(rows) and None not in (
-        antennas.a.gain_dbi,
-        antennas.b.gain_dbi,
-        *(row_power_dbm(link.radio, row) for row in rows),
-    )
-    return figures_for(place, given=given, maps=has_margin)
-
-
-def _geometry(profile: PathProfile, middle: Position, *, a_amsl_m: float, b_amsl_m: float) -> Geometry:
-    weights = sample_lengths_m(profile)
-    return Geometry(
-        length_m=profile.length_m,
-        a_amsl_m=a_amsl_m,
-        b_amsl_m=b_amsl_m,
-        mean_ground_m=float(np.sum(weights * profile.ground_m) / np.sum(weights)),
-        latitude_deg=middle.latitude_deg,
-    )
-
-
-def _rain_tilt_deg(link: Link, antennas: AntennasResult) -> float:
-    """Angle of the field from horizontal that rain is worked out for, degrees: of several the one that rain hits hardest."""
-    if link.radio.dual_polarization:
-        return 0.0
-    angles = [
-        0.0 if mounted == "dual" else abs(FIELD_ANGLE_DEG[mounted])
-        for mounted in (antennas.a.polarization, antennas.b.polarization)
-    ]
-    return min(angles)
-
-
-def _fading(
-    link: Link,
-    figures: ClimateFigures,
-    *,
-    geometry: Geometry,
-    spread: Spread,
-    loss: PathLoss,
-    antennas: AntennasResult,
-    weather: Weather,
-) -> Fading:
-    frequency, tilt = loss.frequency_hz, _rain_tilt_deg(link, antennas)
-    rate = figures.rain_rate_001_mm_h
-    at_001 = rain_001(figures, geometry=geometry, frequency_hz=frequency, tilt_deg=tilt, edition=weather.rain_edition)
-    share = occurrence(figures, geometry=geometry, frequency_hz=frequency)
-    return Fading(
-        frequency_hz=frequency,
-        geometry=geometry,
-        spread=spread,
-        loss=loss,
-        rain=Rain(
-            edition=weather.rain_edition,
-            reading=weather.rain_reading,
-            rate_mm_h=None if rate is None else rate.value,
-            provenance="not computed: no rain rate" if rate is None else rate.provenance,
-            tilt_deg=tilt,
-            breaches=rain_breaches(geometry, frequency_hz=frequency, edition=weather.rain_edition, loss_db=at_001),
-        ),
-        rain_001_db=at_001,
-        occurrence_percent=share,
-        edition=figures.multipath_edition,
-        wet_radomes_db=link.antenna_a.radome_wet_db + link.antenna_b.radome_wet_db,
-        multipath_inputs=multipath_inputs(figures, geometry=geometry),
-        multipath_breaches=multipath_breaches(figures, geometry=geometry, frequency_hz=frequency, percent=share),
-    )
 
 
 def _losses(link: Link, loss: PathLoss, fading: Fading, *, polarization_db: float | None) -> Losses:
