@@ -5,6 +5,8 @@ from statistics import NormalDist
 
 import numpy as np
 import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
 from made_profiles import link_of, obstacle, profile_of
 
 from fellspan.links.assess import Assessment, AssessSettings, assess_profile
@@ -236,3 +238,54 @@ def test_trees_in_the_zone_hold_the_signal_verdict() -> None:
     house = _with(wood, cover_kind=np.where(wood.cover_m > 0.0, 1, 0).astype(np.int8))
     assert _assess(house, 18.0, 18.0, **radio).result.signal_verdict == "meets"
     assert _assess(wood, 40.0, 40.0, **radio).result.signal_verdict == "meets"
+
+
+SPANS = st.tuples(st.integers(0, 900), st.integers(0, 600), st.integers(1, 60))
+AT_AN_END = st.tuples(st.sampled_from(["from A", "from B", "anywhere"]), SPANS)
+
+
+def _lies(where: str, from_m: float, long_m: float) -> tuple[float, float]:
+    if where == "from A":
+        return 0.0, long_m
+    if where == "from B":
+        return 1000.0 - long_m, 1000.0
+    return from_m, min(from_m + long_m, 1000.0)
+
+
+@settings(max_examples=300, deadline=None, derandomize=True)
+@given(
+    listed=st.lists(st.tuples(AT_AN_END, st.sampled_from(["building", "tree", "other"])), max_size=3),
+    spots=st.lists(AT_AN_END, max_size=3),
+    kind=st.sampled_from(["building", "tree", "other"]),
+    measured=st.sampled_from([0, 2]),
+    heights=st.tuples(st.integers(1, 70), st.integers(1, 70)),
+    on_roof=st.booleans(),
+)
+def test_no_ray_that_passes_below_anything_is_clear(
+    listed: list[tuple[tuple[str, tuple[int, int, int]], str]],
+    spots: list[tuple[str, tuple[int, int, int]]],
+    kind: str,
+    measured: int,
+    heights: tuple[int, int],
+    on_roof: bool,
+) -> None:
+    obstacles = tuple(
+        obstacle(f"item {number}", *_lies(where, from_m, long_m), height_m, kind=what)
+        for number, ((where, (from_m, long_m, height_m)), what) in enumerate(listed)
+    )
+
+    def cover(distance_m: np.ndarray) -> np.ndarray:
+        high = np.zeros(distance_m.shape)
+        for where, (from_m, long_m, height_m) in spots:
+            low, far = _lies(where, from_m, long_m)
+            high = np.where((distance_m >= low) & (distance_m <= far), np.maximum(high, height_m), high)
+        return high
+
+    profile = profile_of(1000.0, cover=cover, kind=kind, obstacles=obstacles, measured=measured, n=201)
+    a: object = {"height_m": heights[0], "height_reference": "roof", "roof_m": 5.0} if on_roof else heights[0]
+    whole = _assess(profile, a, heights[1])
+    levels = whole.levels
+    below = profile.surface_m + levels.bulge_m[0] - levels.available_m > 1e-6
+    if below.any():
+        assert whole.result.verdict != "clear"
+    assert np.all((whole.levels.surface_m == profile.surface_m) | (standing(profile).left_out_m == profile.surface_m))

@@ -106,7 +106,7 @@ def standing(profile: PathProfile) -> Standing:
             own |= inside
         if out.any():
             ignored.append(_ignored(profile, end, out, outlines))
-            left_out[out] = (profile.ground_m + cover)[out]
+            left_out[out] = np.maximum(left_out, profile.ground_m + cover)[out]
         # What the own building hid comes to light: another obstacle in its outline stays one.
         hidden = np.where(out, np.clip(np.minimum(other_top - profile.ground_m, cover), 0.0, None), 0.0)
         shown = hidden > 0.0
