@@ -20,9 +20,6 @@ from fellspan.propagation import (
     multipath_occurrence_quick_percent,
     rain_loss_001_db,
     rain_percent,
-    woodland_loss_db,
-    woodland_saturation_db,
-    woodland_specific_db_per_m,
 )
 
 
@@ -223,55 +220,6 @@ def test_with_maps_nothing_need_be_given() -> None:
     signal = signal_of(assess_profile(over(profile), profile, AssessSettings()).result)
     assert signal.availability_percent.year is not None
     assert any("itur" in figure.provenance for figure in signal.climate)
-
-
-# Trees
-
-
-def _wood(depth_m: float, height_m: float, *, frequency_hz: float = 450e6):  # type: ignore[no-untyped-def]
-    """Flat 10 km with a wood of that depth in the middle, antennas at 20 m."""
-    profile = profile_of(10e3, cover=lambda d: np.where(np.abs(d - 5e3) <= depth_m / 2.0, height_m, 0.0), n=2001)
-    result = result_of(over(profile, height_m=20.0, equipment=radio(frequency_hz=frequency_hz)), profile)
-    return result, signal_of(result).trees
-
-
-def test_thin_trees_cost_the_way_through() -> None:
-    result, trees = _wood(20.0, 40.0)
-    assert trees.way == "through"
-    assert trees.depth_m == pytest.approx(20.0, abs=5.0)
-    woods = woodland_loss_db(
-        trees.depth_m,
-        specific_db_per_m=woodland_specific_db_per_m(450e6),
-        saturation_db=woodland_saturation_db(450e6),
-    )
-    assert result.losses_db.vegetation == pytest.approx(woods)
-    assert result.losses_db.diffraction + woods == pytest.approx(trees.through_db)
-    assert trees.least_through_db < trees.through_db < trees.most_through_db
-    assert any("m of wood" in caution for caution in result.cautions)
-
-
-def test_deep_trees_cost_the_way_over() -> None:
-    result, trees = _wood(3000.0, 25.0, frequency_hz=6e9)
-    assert trees.way == "over"
-    assert result.losses_db.vegetation == 0.0
-    assert result.losses_db.diffraction == pytest.approx(trees.over_db)
-    assert trees.through_db > trees.over_db
-
-
-def test_trees_are_counted_once_whatever_they_are() -> None:
-    for depth, height, frequency in itertools.product((10.0, 100.0, 2000.0), (15.0, 25.0, 45.0), (450e6, 5.8e9)):
-        result, trees = _wood(depth, height, frequency_hz=frequency)
-        vegetation = result.losses_db.vegetation
-        assert vegetation is not None
-        assert result.losses_db.diffraction + vegetation == pytest.approx(min(trees.through_db, trees.over_db))
-
-
-def test_buildings_are_never_passed_through() -> None:
-    profile = profile_of(10e3, cover=lambda d: np.where(np.abs(d - 5e3) <= 50.0, 40.0, 0.0), kind="building")
-    result = result_of(over(profile, height_m=20.0), profile)
-    assert signal_of(result).trees.way == "no trees"
-    assert result.losses_db.vegetation == 0.0
-    assert result.losses_db.diffraction > 10.0
 
 
 # Noise, channels, timing, diversity, cross polarization, radomes
