@@ -4,6 +4,7 @@ Joins the budget, the receiver and the fading; knows no verdicts and no sentence
 """
 
 import math
+from collections.abc import Callable
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -55,14 +56,14 @@ class End:
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Direction:
-    """One direction worked out: its result, the outage of the wanted row for joining both ways, and that with 3 dB more."""
+    """One direction worked out: its result, and the outage of the wanted row for joining both ways."""
 
     result: DirectionResult
     terms: tuple[Term, ...]
     year: Outage | None
     worst_month: Outage | None
-    nearly_percent: float | None
-    """Availability of the year with `NEAR_DB` more margin."""
+    nearly: Callable[[], float | None]
+    """Availability of the year with `NEAR_DB` more margin, %; worked out when asked."""
 
 
 def direction_of(
@@ -75,8 +76,9 @@ def direction_of(
     path: tuple[Term, ...],
     fading: Fading,
     discrimination_db: float,
+    workings: bool = True,
 ) -> Direction:
-    """Work out one direction; `path` holds the terms between the two antennas."""
+    """Work out one direction; `path` holds the terms between the two antennas. Comparing many, leave `workings` out."""
     rows = rows_of(radio)
     wanted = wanted_index(radio, rows)
     power = row_power_dbm(radio, None if wanted is None else rows[wanted])
@@ -124,7 +126,7 @@ def direction_of(
         results = tuple(replace(result, carried_percent=share) for result, share in zip(results, carried, strict=True))
     chosen = None if wanted is None else results[wanted]
     year = chosen.year.total if chosen is not None and chosen.year is not None else None
-    workings = _workings(
+    written = () if not workings else _workings(
         radio, terms, level=level, results=results, wanted=wanted, fading=fading, receiver=receiver,
         own_noise=own_noise, heard=heard, worse=worse, mean=mean, frequency_hz=frequency_hz,
     )  # fmt: skip
@@ -150,12 +152,12 @@ def direction_of(
             availability_percent=NOT_COMPUTED if chosen is None else chosen.availability_percent,
             minutes_per_year=None if year is None else float(minutes_per_year(year)),
             dominant_cause=None if chosen is None or chosen.year is None else chosen.year.dominant,
-            workings=workings,
+            workings=written,
         ),
         terms=terms,
         year=None if picked is None else picked[0],
         worst_month=None if picked is None else picked[1],
-        nearly_percent=_nearly_percent(fading, receiver, margins, wanted),
+        nearly=lambda: _nearly_percent(fading, receiver, margins, wanted),
     )
 
 

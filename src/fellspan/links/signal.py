@@ -60,6 +60,7 @@ def signal_of(
     tilts_deg: tuple[float, float],
     weather: Weather,
     path: SignalPath | None = None,
+    workings: bool = True,
 ) -> Signal:
     """Work out both directions of a link.
 
@@ -77,6 +78,8 @@ def signal_of(
         Climate as given, and how rain is worked out. Maps are asked only where a margin is known.
     path
         What `path_of` made of the same link earlier, with whatever antennas: saves working it out again.
+    workings
+        False leaves them empty, for callers that compare many candidates.
     """
     if path is None:
         path = path_of(
@@ -97,6 +100,7 @@ def signal_of(
         bearings_deg=bearings_deg,
         tilts_deg=tilts_deg,
         weather=weather,
+        workings=workings,
     )
     figures, geometry, losses, transmit_hz = path.figures, path.geometry, path.losses, link.radio.transmit_hz
     result = _result(link, figures, there, back, fadings=fadings, geometry=geometry, weather=weather)
@@ -237,10 +241,10 @@ def _at_most(link: Link, there: Direction, back: Direction, *, length_m: float) 
         target = link.target_availability_percent
         if target is None or one.result.margin_db is None:
             continue
-        share, nearly = one.result.availability_percent.year, one.nearly_percent
+        share = one.result.availability_percent.year
         if share is not None and share >= target:
             allowed.append("meets")
-        elif share is None or (nearly is not None and nearly >= target):
+        elif share is None or ((nearly := one.nearly()) is not None and nearly >= target):
             allowed.append("marginal")
         else:
             allowed.append("below")

@@ -102,6 +102,7 @@ def both_directions(
     bearings_deg: tuple[float, float],
     tilts_deg: tuple[float, float],
     weather: Weather,
+    workings: bool = True,
 ) -> tuple[tuple[Fading, Fading], tuple[Direction, Direction]]:
     """Fading and result of A to B and of B to A."""
     ends = (
@@ -124,6 +125,7 @@ def both_directions(
             path=path_terms(fading.loss, median_k=path.median_k, polarization_db=polarization_db, air=path.figures),
             fading=fading,
             discrimination_db=discrimination,
+            workings=workings,
         )
         for name, transmit, receive, fading in (
             ("A to B", ends[0], ends[1], fadings[0]),
