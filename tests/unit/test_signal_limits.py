@@ -14,6 +14,8 @@ from fellspan.links.assess import AssessSettings, assess_profile
 from fellspan.links.radio import CoChannel
 from fellspan.links.site import Antenna, Channel, Diversity, NoiseFloor
 from fellspan.propagation import (
+    annual_from_worst_month_geographic_percent,
+    annual_from_worst_month_percent,
     fade_exceeded_percent,
     multipath_occurrence_detailed_percent,
     multipath_occurrence_percent,
@@ -183,7 +185,14 @@ def test_the_edition_follows_what_the_climate_gives(edition: str) -> None:
     row = signal.a_to_b.modulations[0]
     assert row.worst_month is not None
     assert row.margin_db is not None
-    assert row.worst_month.multipath == pytest.approx(fade_exceeded_percent(row.margin_db, occurrence_percent=expected))
+    worst = fade_exceeded_percent(row.margin_db, occurrence_percent=expected)
+    assert row.worst_month.multipath == pytest.approx(worst)
+    assert row.year is not None
+    if edition == "P.530-19":
+        annual = annual_from_worst_month_percent(worst)
+    else:
+        annual = annual_from_worst_month_geographic_percent(worst, distance_m=40e3, latitude_deg=0.0)
+    assert row.year.multipath == pytest.approx(annual)
 
 
 def test_rain_edition_and_reading_are_chosen_and_named() -> None:

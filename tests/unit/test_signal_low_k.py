@@ -155,3 +155,11 @@ def test_a_second_antenna_takes_cross_polar_outage_down_with_the_rest() -> None:
         assert row.worst_month is not None
         shares.append(row.worst_month.multipath or 0.0)
     assert shares[1] < 0.2 * shares[0]
+
+
+def test_a_worst_month_holds_no_more_than_all_of_the_year() -> None:
+    """Over open sea the gradient hardly spreads: what the temperate worst month would say does not fit in such a year."""
+    row = _grazing(2.0, gradient_tail_n_per_km=-20.0).modulations[0]
+    assert row.year is not None
+    assert row.worst_month is not None
+    assert row.worst_month.diffraction == pytest.approx(12.0 * (row.year.diffraction or 0.0))
