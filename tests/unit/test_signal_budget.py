@@ -54,7 +54,8 @@ def test_the_budget_of_every_sample_link_closes_both_ways(sample: list[tuple[Lin
             assert level is not None
             assert total_of(direction) == pytest.approx(level, abs=0.01)
             assert direction.received_dbm == level
-            assert by_losses(link, result) == pytest.approx(level, abs=0.01)
+            if direction.frequency_hz == link.radio.transmit_hz[0]:  # losses are given at what A transmits on
+                assert by_losses(link, result) == pytest.approx(level, abs=0.01)
 
 
 def test_every_working_of_the_sample_is_whole(sample: list[tuple[Link, LinkResult]]) -> None:

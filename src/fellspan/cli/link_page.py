@@ -8,7 +8,8 @@ from typing import Final
 
 from fellspan.cli import figures
 from fellspan.cli.layout import WIDTH, Ink, columns_of, cut, labelled, printable, table, wrapped
-from fellspan.links.result import AntennaResult, AtEnds, CriterionResult, EndResult, LinkResult
+from fellspan.cli.signal_page import signal_lines
+from fellspan.links.result import AntennaResult, CriterionResult, EndResult, LinkResult
 from fellspan.links.words import STATE_WORDS, State, state_of
 from fellspan.planning.plan import LinkPlan
 
@@ -19,11 +20,6 @@ _BASIS_WORDS: Final = {
     "surveyed": "as surveyed on the ground",
     "surface raster": "by a raster of the surface; not surveyed",
     "bare ground only": "on bare ground only: what stands on it is not all known",
-}
-_SIGNAL_WORDS: Final = {
-    "meets": "the margin wanted is there",
-    "marginal": "less than 3 dB of the margin wanted is missing",
-    "below": "the margin wanted is not there",
 }
 _CRITERIA_WIDTHS: Final = (30, 8, 5, 7, 9, 7)
 
@@ -42,7 +38,7 @@ def link_lines(plan: LinkPlan, *, ink: Ink, told: Container[str] = ()) -> list[s
         "",
         *_criteria(result),
         "",
-        *_level(result, ink),
+        *signal_lines(result, ink),
         *_reflections(plan),
         *_ends(result),
         *_cautions(result, told),
@@ -130,36 +126,12 @@ def _criterion_row(criterion: CriterionResult) -> tuple[str, ...]:
     )
 
 
-def _level(result: LinkResult, ink: Ink) -> list[str]:
-    lines = []
-    if result.signal_verdict is not None:
-        word = result.signal_verdict
-        if word == "meets" and result.verdict == "obstructed":
-            lines += labelled("Signal", "meets the margin wanted, but through an obstruction")
-        else:
-            lines.append(f"  {'Signal':<14} {ink.emphasise(word.upper(), _TONES[word])}: {_SIGNAL_WORDS[word]}")
-    lines += labelled("Received", _at_ends(result.received_dbm, "dBm"))
-    if result.margin_db.at_a is not None or result.margin_db.at_b is not None:
-        lines += labelled("Margin", f"{_at_ends(result.margin_db, 'dB')}; {result.wanted_margin_db:g} dB wanted")
-    losses = result.losses_db
-    words = f"free space {losses.free_space:.1f} dB, diffraction {losses.diffraction:.1f} dB"
-    if losses.polarization:
-        words += f", polarization {losses.polarization:.1f} dB"
-    return lines + labelled("Losses", words)
-
-
 def _reflections(plan: LinkPlan) -> list[str]:
     """What is mirrored on the way, where that can fade the link."""
     found = plan.reflections
     if found is None or not found.matters:
         return []
     return labelled("Reflection", " ".join(found.sentences))
-
-
-def _at_ends(values: AtEnds, unit: str) -> str:
-    if values.at_a is None and values.at_b is None:
-        return "not computed: power or an antenna gain is not given"
-    return f"{figures.decibels(values.at_a, unit)} at A, {figures.decibels(values.at_b, unit)} at B"
 
 
 def _ends(result: LinkResult) -> list[str]:
