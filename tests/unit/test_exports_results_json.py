@@ -18,7 +18,7 @@ from fellspan.exports.results_json import (
 )
 from fellspan.planning.plan import LinkPlan
 
-TOP = ["schema", "fellspan", "study", "files", "cautions", "links", "failures"]
+TOP = ["schema", "fellspan", "study", "files", "cautions", "links", "failures", "interference"]
 STUDY = [
     "title",
     "planner",

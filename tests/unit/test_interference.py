@@ -7,11 +7,12 @@ from pathlib import Path
 
 import numpy as np
 import pytest
+from exports_made_plan import made_plan
 from made_neighbours import HOME, east_north, free_space, lobe, planned, radio
 from made_terrain import at, raster
 
 from fellspan.antennas.mounting import Mounting
-from fellspan.exports.results_json import _plain
+from fellspan.exports.results_json import results_dict
 from fellspan.geodesy import geodesic
 from fellspan.links.budget import tilt_deg
 from fellspan.links.coupling import elevation_deg, polarization_coupling_loss_db
@@ -354,7 +355,6 @@ def test_many_links_at_once_take_no_terrain_twice(tmp_path: Path) -> None:
         found = study(*links, terrain=terrain)
     assert len(asked) == len(set(asked)) <= 400
     assert len(found.receivers) == 80
-    json.dumps(_plain(found), allow_nan=False)
 
 
 def test_bearings_are_those_of_the_geodesic() -> None:
@@ -362,3 +362,20 @@ def test_bearings_are_those_of_the_geodesic() -> None:
     first = receiver(study(one, other), "South", "B").interferers[0]
     way = geodesic.inverse(one[0].b.position, other[0].a.position)
     assert first.bearing_deg == pytest.approx(way.bearing_ab_deg, abs=1e-9)
+
+
+def keys_of(value: object) -> set[str]:
+    if isinstance(value, dict):
+        return set(value).union(*(keys_of(inner) for inner in value.values()))
+    return set().union(*(keys_of(inner) for inner in value)) if isinstance(value, list) else set()
+
+
+def test_every_key_is_explained_in_the_docs_and_json_can_hold_it() -> None:
+    found = study(*at_one_mast(low_first=True, heights=(30.0, 30.5)))
+    assert found.high_low
+    assert found.near
+    plain = results_dict(replace(made_plan(), interference=found))["interference"]
+    json.dumps(plain, allow_nan=False)
+    page = (Path(__file__).resolve().parents[2] / "docs" / "results.md").read_text(encoding="utf-8")
+    part = page[page.index("### `interference`") : page.index("### an entry of `failures`")]
+    assert sorted(key for key in keys_of(plain) if f"`{key}`" not in part) == []

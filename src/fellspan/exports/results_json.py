@@ -44,6 +44,7 @@ def results_dict(plan: StudyPlan) -> dict[str, Any]:
             for linked in plan.links
         ],
         "failures": [_failure(failure) for failure in plan.failures],
+        "interference": _plain(plan.interference),
     }
 
 

@@ -7,6 +7,7 @@ from fellspan.design.heights_result import HeightsResult
 from fellspan.design.reflection_result import ReflectionResult
 from fellspan.design.survey_list import SurveyPoint
 from fellspan.errors import FellspanError
+from fellspan.links.interference_result import StudyInterference
 from fellspan.links.levels import PathLevels
 from fellspan.links.result import LinkResult
 from fellspan.links.site import Link
@@ -61,3 +62,5 @@ class StudyPlan:
     files: tuple[InputFile, ...]
     version: str
     cautions: tuple[str, ...]
+    interference: StudyInterference | None = None
+    """What the links do to each other; None where fewer than two have their power and gains stated."""

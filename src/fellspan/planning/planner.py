@@ -15,6 +15,7 @@ from fellspan.errors import FellspanError
 from fellspan.links.assess import AssessSettings, assess_in_full
 from fellspan.links.site import Link
 from fellspan.planning.inputs import Study
+from fellspan.planning.neighbours import neighbours_of, with_cautions
 from fellspan.planning.plan import LinkFailure, LinkPlan, StudyPlan
 from fellspan.planning.slips import explained
 from fellspan.planning.stamp import input_files
@@ -45,6 +46,7 @@ def plan_study(study: Study, *, progress: Progress | None = None, heights: Heigh
         climate=study.climate,
         rain_edition=study.rain_edition,
         rain_reading=study.rain_reading,
+        exposure_rule=study.exposure_rule,
     )
     water = Water(level_m=study.water_level_m, low_m=study.water_low_m, high_m=study.water_high_m)
     planned: list[LinkPlan] = []
@@ -52,23 +54,24 @@ def plan_study(study: Study, *, progress: Progress | None = None, heights: Heigh
     with _open_terrain(study) as terrain:
         for done, link in enumerate(study.links):
             if progress is not None:
-        exposure_rule=study.exposure_rule,
                 progress(done, len(study.links), link.name)
             outcome = _plan_link(link, terrain, settings, water, heights, growth_years=study.growth_years)
             if isinstance(outcome, LinkPlan):
                 planned.append(outcome)
             else:
                 failures.append(outcome)
+        interference = neighbours_of(planned, failures, terrain, median_k=study.median_k)
         cautions = (*study.notes, *terrain.notes, *_unused_survey(study, terrain))
     if progress is not None:
         progress(len(study.links), len(study.links), "")
     return StudyPlan(
         study=study,
-        links=tuple(planned),
+        links=with_cautions(planned, interference),
         failures=tuple(failures),
         files=input_files(study),
         version=__version__,
         cautions=tuple(dict.fromkeys(cautions)),
+        interference=interference,
     )
 
 
