@@ -8,6 +8,7 @@ from collections.abc import Sequence
 from fellspan.cli import figures
 from fellspan.cli.layout import WIDTH, Ink, padded, printable, rule, table, wrapped
 from fellspan.cli.link_page import decision_lines, link_lines, state_tone
+from fellspan.cli.neighbour_lines import neighbour_lines
 from fellspan.links.safety import RAISING
 from fellspan.links.words import STATE_WORDS, state_of
 from fellspan.planning.plan import LinkFailure, LinkPlan, StudyPlan
@@ -22,6 +23,8 @@ def page_lines(plan: StudyPlan, *, ink: Ink, brief: bool = False) -> list[str]:
     lines = _title(plan, ink)
     if len(plan.links) + len(plan.failures) > 1:
         lines += ["", *_summary(plan, ink)]
+    if plan.interference is not None:
+        lines += ["", *neighbour_lines(plan.interference, ink)]
     for link in plan.links:
         if brief:
             lines += ["", *decision_lines(link.result, ink, most=_DECISION_LINES)]

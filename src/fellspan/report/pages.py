@@ -21,6 +21,7 @@ from fellspan.report import map_geometry as geometry
 from fellspan.report.antenna_section import antenna_section
 from fellspan.report.map import MapMarkup, link_map
 from fellspan.report.naming import page_name, slug
+from fellspan.report.neighbours import neighbours_view
 from fellspan.report.profile_drawing import draw_profile, exaggeration_words
 from fellspan.report.reflection_section import reflection_section
 from fellspan.report.relief import open_rasters, shaded_relief
@@ -97,6 +98,7 @@ def _overview(plan: StudyPlan, templates: Environment, rasters: list[RasterFile]
         links=views,
         totals=Counter(state_of(link.result) for link in plan.links),
         notes=(*plan.study.notes, *plan.cautions),
+        neighbours=neighbours_view(plan),
         quiet=False,
     )
 
@@ -129,6 +131,7 @@ def _link_page(plan: StudyPlan, index: int, link: LinkPlan, templates: Environme
         ],
         losses=_losses(result.losses_db),
         antennas=antenna_section(link),
+        neighbours=neighbours_view(plan, result.name),
         reflections=reflection_section(link),
         rests_on=[link.profile.sources[i] for i in sorted(set(link.profile.source.tolist())) if i >= 0],
         cautions=(*result.cautions, *link.profile.notes, *plan.cautions),
