@@ -13,6 +13,7 @@ from fellspan.design.reflection_result import SurfaceKind
 from fellspan.propagation import inverse_k, smooth_up_to_m, wavelength_m
 from fellspan.propagation.constants import EARTH_RADIUS_M
 from fellspan.terrain.profile import PathProfile
+from fellspan.terrain.water_outlines import WaterOutlines
 
 Floats = NDArray[np.float64]
 
@@ -24,15 +25,17 @@ OPEN_BELOW_M: Final = 0.5
 LEAST_SAMPLES: Final = 8
 """Flatness is judged over this many regular steps at least (our own rule)."""
 MOST_PLANES: Final = 3
+SAME_LEVEL_M: Final = 0.1
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Water:
-    """Water levels as the study states them, m above sea level: usual, lowest, highest."""
+    """Water as the study states it: usual, lowest and highest level, m above sea level, and outlines of open water."""
 
     level_m: float | None = None
     low_m: float | None = None
     high_m: float | None = None
+    outlines: WaterOutlines | None = None
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -73,8 +76,10 @@ class Surface:
 
 
 def water_mask(profile: PathProfile, water: Water) -> NDArray[np.bool_]:
-    """Samples that are open water: filled in as sea, or ground at the stated level; shape (n,)."""
+    """Samples that are open water: within an outline, filled in as sea, or ground at the stated level; shape (n,)."""
     mask = np.zeros(profile.distance_m.shape, dtype=np.bool_)
+    if water.outlines is not None:
+        mask |= water.outlines.inside(profile.latitude_deg, profile.longitude_deg)
     if SEA in profile.sources:
         mask |= profile.source == profile.sources.index(SEA)
     if water.level_m is not None:
@@ -82,12 +87,27 @@ def water_mask(profile: PathProfile, water: Water) -> NDArray[np.bool_]:
     return np.asarray(mask & (profile.cover_m < OPEN_BELOW_M))
 
 
-def water_surface(profile: PathProfile, mask: NDArray[np.bool_], water: Water) -> Surface | None:
-    """The water of the path, taken as calm; None where there is none."""
-    if not mask.any():
-        return None
-    level = float(np.median(profile.ground_m[mask])) if water.level_m is None else water.level_m
-    return _surface("water", profile, mask, level_a_m=level, slope=0.0, roughness_m=0.0)
+def water_surfaces(profile: PathProfile, mask: NDArray[np.bool_], water: Water) -> list[Surface]:
+    """The waters of the path, taken as calm, one for each level: what lies at the stated one, then lakes above it or below.
+
+    The level of a water is the median of the ground along it, unless that is within 0.5 m of the stated level.
+    """
+    levels: list[tuple[float, NDArray[np.bool_]]] = []
+    edges = np.flatnonzero(np.diff(np.concatenate(([False], mask, [False])).astype(np.int8)))
+    for first, after in zip(edges[::2].tolist(), edges[1::2].tolist(), strict=True):
+        level = float(np.median(profile.ground_m[first:after]))
+        if water.level_m is not None and abs(level - water.level_m) <= WATER_WITHIN_M:
+            level = water.level_m
+        same = next((one for known, one in levels if abs(known - level) <= SAME_LEVEL_M), None)
+        if same is None:
+            same = np.zeros(mask.shape, dtype=np.bool_)
+            levels.append((level, same))
+        same[first:after] = True
+    return [
+        _surface("water", profile, one, level_a_m=level, slope=0.0, roughness_m=0.0)
+        for level, one in levels
+        if int(one.sum()) > 1
+    ]
 
 
 def flat_surfaces(

@@ -21,7 +21,7 @@ from fellspan.design.reflection_result import (
     Spacing,
     SpecularPoint,
 )
-from fellspan.design.reflection_surfaces import Surface, Water, flat_surfaces, water_mask, water_surface
+from fellspan.design.reflection_surfaces import Surface, Water, flat_surfaces, water_mask, water_surfaces
 from fellspan.design.reflection_words import reflection_sentences
 from fellspan.links.criteria import worst_month_k
 from fellspan.links.levels import PathLevels
@@ -88,18 +88,11 @@ def find_reflections(
     """
     rays, notes = rays_of(link, result)
     mask = water_mask(profile, water)
-    sea = water_surface(profile, mask, water)
+    waters = water_surfaces(profile, mask, water)
     by_k: list[list[_Found]] = []
     for name, k in _ks_of_interest(result):
-        surfaces = [] if sea is None else [sea]
-        surfaces += flat_surfaces(
-            profile,
-            mask,
-            a_amsl_m=rays.planned_a_m,
-            b_amsl_m=rays.planned_b_m,
-            frequency_hz=rays.frequency_hz,
-            k=k,
-        )
+        ends = {"a_amsl_m": rays.planned_a_m, "b_amsl_m": rays.planned_b_m}
+        surfaces = [*waters, *flat_surfaces(profile, mask, frequency_hz=rays.frequency_hz, k=k, **ends)]
         found = [_found(rays, surface, name, k, profile, levels) for surface in surfaces]
         kept = [item for item in found if item is not None and item.point.amplitude >= FAINT]
         kept.sort(key=lambda item: (item.point.shaded_at_m is not None, -item.point.amplitude))
@@ -249,7 +242,8 @@ def _with_remedies(
     clear = [item for item in arriving if not _near_horizon(item.point, rays)] or arriving
     inverse = [0.0 if item.point.k is None else 1.0 / item.point.k for item in clear]
     rises: tuple[float, ...] = (0.0,)
-    if main.surface.kind == "water" and water.low_m is not None and water.high_m is not None:
+    tidal = main.surface.kind == "water" and main.surface.level_a_m == water.level_m
+    if tidal and water.low_m is not None and water.high_m is not None:
         rises = (water.low_m - main.surface.level_a_m, 0.0, water.high_m - main.surface.level_a_m)
     pitches = (None, None) if spacing is None else (spacing.pitch_a_m, spacing.pitch_b_m)
     return replace(

@@ -50,6 +50,8 @@ class Study:
     water_low_m: float | None = None
     water_high_m: float | None = None
     """Level of open water, and the lowest and highest it comes to, m above sea level; for reflections."""
+    water_outlines: tuple[str | Path, ...] = ()
+    """Files of areas of open water."""
     tiles_url: str | None = None
     tiles_credit: str = ""
     path: Path | None = None

@@ -19,6 +19,7 @@ from fellspan.planning.neighbours import neighbours_of, with_cautions
 from fellspan.planning.plan import LinkFailure, LinkPlan, StudyPlan
 from fellspan.planning.slips import explained
 from fellspan.planning.stamp import input_files
+from fellspan.planning.water import water_of
 from fellspan.terrain.survey import link_key
 from fellspan.terrain.terrain import Terrain
 
@@ -48,7 +49,7 @@ def plan_study(study: Study, *, progress: Progress | None = None, heights: Heigh
         rain_reading=study.rain_reading,
         exposure_rule=study.exposure_rule,
     )
-    water = Water(level_m=study.water_level_m, low_m=study.water_low_m, high_m=study.water_high_m)
+    water = water_of(study)
     planned: list[LinkPlan] = []
     failures: list[LinkFailure] = []
     with _open_terrain(study) as terrain:

@@ -35,6 +35,8 @@ def _named_files(study: Study) -> Iterator[tuple[str, str | Path]]:
     ):
         for source in sources:
             yield role, source.path
+    for path in study.water_outlines:
+        yield "water", path
     if study.antenna_catalogue is not None:
         yield "antennas", study.antenna_catalogue
     if study.rules_file is not None:

@@ -5,7 +5,7 @@ Sees that files exist, and opens none but those of antennas, by way of `patterns
 
 import re
 from collections import Counter
-from collections.abc import Mapping
+from collections.abc import Iterable, Mapping
 from pathlib import Path
 from typing import Literal, TypeVar
 
@@ -47,6 +47,8 @@ def assemble(study_file: StudyFile, *, path: Path) -> Study:
     terrain = assembler.terrain(study_file.terrain)
     links = assembler.links()
     climate = assembler.climate(study_file.climate)
+    water = study_file.water
+    outlines = assembler.files("water.outlines", (row.path for row in water.outlines))
     if assembler.problems:
         raise_problems(path.name, assembler.problems)
     stamp, criteria = study_file.study, study_file.criteria
@@ -56,6 +58,10 @@ def assemble(study_file: StudyFile, *, path: Path) -> Study:
         revision=stamp.revision,
         date=stamp.date,
         growth_years=stamp.growth_years,
+        water_level_m=water.level,
+        water_low_m=water.low,
+        water_high_m=water.high,
+        water_outlines=outlines,
         terrain=terrain,
         links=links,
         preset=criteria.preset or "p530-temperate",
@@ -315,12 +321,16 @@ class _Assembler:
             band=row.band,
         )
 
+    def files(self, key: str, texts: Iterable[str]) -> tuple[str | Path, ...]:
+        """Files of a table other than [terrain], resolved; one that is not there is a problem."""
+        return tuple(self._path(key, text) for text in texts)
+
     def _path(self, key: str, text: str) -> str | Path:
         resolved = raster_path(text, self.folder)
         if isinstance(resolved, Path) and not resolved.exists():
             self.problems.append(
                 Problem(
-                    f"terrain.{key}",
+                    key if "." in key else f"terrain.{key}",
                     f"there is no file '{text}'",
                     (f"looked for at {resolved.absolute()}", "paths are relative to the study file"),
                 )

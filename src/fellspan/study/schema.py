@@ -53,6 +53,7 @@ __all__ = [
     "ModulationTable",
     "NoiseFloorTable",
     "ObstacleTable",
+    "OutlineTable",
     "PowerRulesTable",
     "RadioTable",
     "RasterTable",
@@ -66,6 +67,7 @@ __all__ = [
     "Table",
     "TerrainTable",
     "UnusableTable",
+    "WaterTable",
 ]
 
 CompleteKind: TypeAlias = Literal["building", "tree"]
@@ -120,6 +122,12 @@ class ObstacleTable(Table):
     )
 
 
+class OutlineTable(Table):
+    """A file of areas of open water."""
+
+    path: str = Field(min_length=1, description="GeoJSON file.", examples=["water.geojson"])
+
+
 class FileTable(Table):
     """A file of surveyed points."""
 
@@ -149,6 +157,30 @@ class TerrainTable(Table):
     gaps: GapPolicy = Field(default="error", description="What a gap in the rasters is: an error, or sea.")
     sea_level: LevelAboveSea = Field(default=0.0, description="Level of the sea in gaps.", examples=["0 m"])
     step: Length | None = Field(default=None, gt=0.0, description="Sampling step along a path.", examples=["5 m"])
+
+
+class WaterTable(Table):
+    """[water]: open water, which mirrors rays; without it only flat ground is looked for."""
+
+    level: LevelAboveSea | None = Field(default=None, description="Usual level of the water.", examples=["0 m"])
+    low: LevelAboveSea | None = Field(default=None, description="Lowest level, at low tide.", examples=["-0.6 m"])
+    high: LevelAboveSea | None = Field(default=None, description="Highest level, at high tide.", examples=["0.8 m"])
+    outlines: Annotated[tuple[OutlineTable, ...], OneOrMany(OutlineTable)] = Field(
+        default=(), description="GeoJSON files of areas of open water.", examples=["water.geojson"]
+    )
+
+    @model_validator(mode="after")
+    def _levels_in_order(self) -> "WaterTable":
+        if self.low is None and self.high is None:
+            return self
+        if self.level is None or self.low is None or self.high is None:
+            missing = next(name for name in ("level", "low", "high") if getattr(self, name) is None)
+            raise ValueError(f"{missing} is missing; lowest and highest water go together with the usual level")
+        if not self.low <= self.level <= self.high:
+            raise ValueError(
+                f"low {self.low:g} m, level {self.level:g} m and high {self.high:g} m are not in rising order"
+            )
+        return self
 
 
 class RuleTable(Table):
@@ -208,6 +240,7 @@ class StudyFile(Table):
 
     study: StudyTable = Field(default_factory=StudyTable)
     terrain: TerrainTable
+    water: WaterTable = Field(default_factory=WaterTable)
     criteria: CriteriaTable = Field(default_factory=CriteriaTable)
     climate: ClimateTable = Field(default_factory=ClimateTable)
     signal: SignalTable = Field(default_factory=SignalTable)

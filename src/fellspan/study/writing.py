@@ -40,6 +40,7 @@ def study_text(study: Study, *, folder: Path) -> str:
             ("growth_years", number(study.growth_years) if study.growth_years else None),
         ),
         _terrain(study, folder),
+        *_water(study, folder),
         *_criteria(study),
         *study_tables(study, rules_file=rules_file),
         *(text for site in sites.values() for text in (_site(site, study.notes), *heard_text(site))),
@@ -133,6 +134,16 @@ def _cover(source: CoverSource, folder: Path) -> str:
 def _obstacles(source: ObstacleSource, folder: Path) -> str:
     complete = f"[{', '.join(quoted(kind) for kind in source.complete)}]" if source.complete else None
     return _inline(_path(source.path, folder), (("complete", complete),))
+
+
+def _water(study: Study, folder: Path) -> Iterable[str]:
+    levels = study.water_level_m, study.water_low_m, study.water_high_m
+    if levels != (None, None, None) or study.water_outlines:
+        yield table(
+            "[water]",
+            *((key, metres(level)) for key, level in zip(("level", "low", "high"), levels, strict=True)),
+            ("outlines", _files(_path(path, folder) for path in study.water_outlines)),
+        )
 
 
 def _criteria(study: Study) -> Iterable[str]:
