@@ -59,6 +59,11 @@ class CatalogueAntenna:
     _entry: "Entry"
     _folder: Path | None
 
+    @property
+    def is_grid(self) -> bool:
+        """Whether it is a dish of rods, which wind passes through."""
+        return bool(getattr(self._entry, "grid", False))
+
     def covers(self, frequency_hz: float) -> bool:
         """True where the frequency lies in its range, both ends included."""
         return self.lowest_hz <= frequency_hz <= self.highest_hz

@@ -178,7 +178,7 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
         doubts=doubts,
         not_held=verdicts.not_held(profile),
     )
-    trees = bool(np.any((stands.cover_kind == _TREE) & np.any(levels.available_m < levels.need_m, axis=0)))
+    trees = trees_in_zone(stands, levels)
     wanted_db = link.wanted_margin_db
     by_margin = verdicts.signal_verdict(signal.margin_db, wanted_db=wanted_db, trees=trees)
     said = signal_sentences(
@@ -242,6 +242,11 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
         exposure=exposure_pair(link, rule=settings.exposure_rule),
     )
     return Assessment(result=result, profile=profile, levels=levels)
+
+
+def trees_in_zone(stands: Standing, levels: PathLevels) -> bool:
+    """Whether trees reach into what any criterion requires to be free: the signal verdict is then marginal at most."""
+    return bool(np.any((stands.cover_kind == _TREE) & np.any(levels.available_m < levels.need_m, axis=0)))
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)

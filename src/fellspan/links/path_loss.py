@@ -128,18 +128,23 @@ def path_loss(
             least_through_db=float(solid[0]) + least,
             most_through_db=float(solid[0]) + most,
         ),
-        gases_db=float(
-            gas_loss_db(
-                slant,
-                frequency_hz=frequency_hz,
-                dry_pressure_hpa=air.dry_pressure_hpa.value,
-                temperature_k=air.temperature_k.value,
-                vapour_g_m3=air.vapour_g_m3.value,
-            )
-        ),
+        gases_db=gases_db(slant, frequency_hz=frequency_hz, air=air),
         sea_fraction=sea,
         inverse_k=np.asarray(nodes_inverse_k),
         by_inverse_k_db=np.minimum(through, over)[1:],
+    )
+
+
+def gases_db(slant_m: float, *, frequency_hz: float, air: ClimateFigures) -> float:
+    """What oxygen and water vapour take over a distance, dB."""
+    return float(
+        gas_loss_db(
+            slant_m,
+            frequency_hz=frequency_hz,
+            dry_pressure_hpa=air.dry_pressure_hpa.value,
+            temperature_k=air.temperature_k.value,
+            vapour_g_m3=air.vapour_g_m3.value,
+        )
     )
 
 

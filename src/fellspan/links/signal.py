@@ -110,7 +110,7 @@ def signal_of(
         received_dbm=AtEnds(at_a=back.result.received_dbm, at_b=there.result.received_dbm),
         margin_db=AtEnds(at_a=back.result.margin_db, at_b=there.result.margin_db),
         modulation=there.result.wanted,
-        at_most=_at_most(link, there, back, length_m=geometry.length_m),
+        at_most=at_most_of(link, there, back, length_m=geometry.length_m),
         cautions=signal_cautions(link, profile, result, fadings=fadings),
     )
 
@@ -150,7 +150,7 @@ def _result(
     geometry: Geometry,
     weather: Weather,
 ) -> SignalResult:
-    periods, minutes, cause = _both_ways(there, back, common=link.radio.shares_frequency)
+    periods, minutes, cause = both_ways(there, back, common=link.radio.shares_frequency)
     target = link.target_availability_percent
     shares = [one.result.availability_percent.year for one in (there, back)]
     met = None
@@ -180,8 +180,8 @@ def _result(
     )
 
 
-def _both_ways(there: Direction, back: Direction, *, common: bool) -> tuple[Periods, float | None, str | None]:
-    """Availability, minutes out and dominant cause of both directions at once."""
+def both_ways(there: Direction, back: Direction, *, common: bool) -> tuple[Periods, float | None, str | None]:
+    """Availability, minutes out a year and dominant cause of both directions at once; `common` where they share a frequency."""
     margins = there.result.margin_db, back.result.margin_db
     if there.year is None or back.year is None or margins[0] is None or margins[1] is None:
         return NOT_COMPUTED, None, None
@@ -229,7 +229,7 @@ def _climate_used(figures: ClimateFigures) -> tuple[ClimateUsed, ...]:
     )
 
 
-def _at_most(link: Link, there: Direction, back: Direction, *, length_m: float) -> SignalVerdict | None:
+def at_most_of(link: Link, there: Direction, back: Direction, *, length_m: float) -> SignalVerdict | None:
     """The best verdict that the target, the radio's timing and the channels leave."""
     allowed: list[SignalVerdict] = []
     reach = link.radio.greatest_distance_m

@@ -3,6 +3,7 @@
 Worked out once, it serves many antennas and radios of one frequency. Knows no terrain files, verdicts or pages.
 """
 
+import math
 from collections.abc import Mapping
 from dataclasses import dataclass, replace
 
@@ -18,12 +19,13 @@ from fellspan.links.budget import path_terms
 from fellspan.links.direction import Direction, End, direction_of
 from fellspan.links.fading import Fading, Geometry, Rain, Spread, nodes_of, occurrence, rain_001, spread_of
 from fellspan.links.own_building import Standing
-from fellspan.links.path_loss import PathLoss, path_loss, sample_lengths_m
+from fellspan.links.path_loss import PathLoss, gases_db, path_loss, sample_lengths_m
 from fellspan.links.ranges import multipath_breaches, multipath_inputs, rain_breaches
 from fellspan.links.receivers import row_power_dbm, rows_of
 from fellspan.links.result import AntennasResult
+from fellspan.links.signal_result import TreeLoss
 from fellspan.links.site import Link
-from fellspan.propagation import RainEdition, RainReading
+from fellspan.propagation import RainEdition, RainReading, free_space_loss_db
 from fellspan.terrain.profile import PathProfile
 
 
@@ -80,6 +82,50 @@ def path_of(
         )
         for frequency in dict.fromkeys(link.radio.transmit_hz)
     }
+    return SignalPath(figures=figures, geometry=geometry, spread=spread, losses=losses, median_k=median_k)
+
+
+def free_path(
+    link: Link,
+    figures: ClimateFigures,
+    *,
+    length_m: float,
+    a_amsl_m: float,
+    b_amsl_m: float,
+    mean_ground_m: float,
+    median_k: float,
+) -> SignalPath:
+    """A path of any length on which nothing stands in the way at any k: free space, air, rain and multipath alone.
+
+    `figures` holds all along it. Levels are those of the antennas and of the mean of the ground, m above sea level.
+    """
+    spread = spread_of(figures, length_m=length_m)
+    nodes = nodes_of(spread)
+    slant = math.hypot(length_m, b_amsl_m - a_amsl_m)
+    losses = {
+        frequency: PathLoss(
+            frequency_hz=frequency,
+            slant_m=slant,
+            free_space_db=float(free_space_loss_db(slant, frequency_hz=frequency)),
+            diffraction_db=0.0,
+            vegetation_db=0.0,
+            trees=TreeLoss(
+                way="no trees", depth_m=0.0, through_db=0.0, over_db=0.0, least_through_db=0.0, most_through_db=0.0
+            ),
+            gases_db=gases_db(slant, frequency_hz=frequency, air=figures),
+            sea_fraction=0.0,
+            inverse_k=nodes,
+            by_inverse_k_db=np.zeros(nodes.size),
+        )
+        for frequency in dict.fromkeys(link.radio.transmit_hz)
+    }
+    geometry = Geometry(
+        length_m=length_m,
+        a_amsl_m=a_amsl_m,
+        b_amsl_m=b_amsl_m,
+        mean_ground_m=mean_ground_m,
+        latitude_deg=figures.position.latitude_deg,
+    )
     return SignalPath(figures=figures, geometry=geometry, spread=spread, losses=losses, median_k=median_k)
 
 
