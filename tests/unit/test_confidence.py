@@ -1,7 +1,6 @@
 """Confidence: stated 90 % must clear in 90 %, of truths drawn here by other code than the one that states it."""
 
 import dataclasses
-import time
 
 import numpy as np
 import pytest
@@ -11,7 +10,7 @@ from numpy.typing import NDArray
 from fellspan.design.case import Case
 from fellspan.design.confidence import ConfidenceResult, quantile
 from fellspan.design.draws import draw, errors_of, marginal_m
-from fellspan.design.error_model import ErrorModel, default_error_model
+from fellspan.design.error_model import ErrorModel
 from fellspan.design.heights import design_heights
 from fellspan.links import clearance
 from fellspan.links.assess import AssessSettings, assess_profile
@@ -204,21 +203,3 @@ def test_the_band_is_the_clearance_and_its_stated_error(out: tuple[Case, Confide
     # 5 % and 95 % of a normal law stand 1.645 standard errors off its middle.
     assert (high - middle) == pytest.approx(1.645 * np.array(band.sigma_m), abs=0.003)
     assert (middle - low) == pytest.approx(high - middle, abs=0.003)
-
-
-@pytest.mark.bench
-def test_draws_of_a_20_km_path_take_little_time() -> None:
-    profile = profile_of(20e3, 0.0, n=4001, sigma_m=1.0, cell_m=10.0)
-    link = link_of(profile, 40.0, 40.0)
-    case = Case.of(link, assess_profile(link, profile, RULES), RULES)
-    a, b = case.planned
-    model = default_error_model(profile)
-    draw(case, model, [(case.rules_at(a, b), a, b)])
-    start = time.perf_counter()
-    draws = draw(case, model, [(case.rules_at(a, b), a, b)])
-    draws.holds(case.rules_at(a, b).most_m, a, b)
-    taken = time.perf_counter() - start
-    start = time.perf_counter()
-    np.random.default_rng(1).standard_normal((240, 5000))
-    # A ratio to the bare drawing of as many numbers, so that a slow machine judges alike.
-    assert taken < 25.0 * (time.perf_counter() - start)

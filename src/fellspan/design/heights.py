@@ -37,6 +37,7 @@ LOWER_BY_M: Final = 0.05
 """A height counts as the lowest if this much less is not enough."""
 _MOST_LOWERINGS: Final = 400
 _MOST_RAISINGS: Final = 40
+_BEYOND_M: Final = 1_000.0
 CURVE_POINTS: Final = 15
 CURVE_DRAWS: Final = 2_000
 _DEFAULTS: Final = HeightSettings()
@@ -222,6 +223,10 @@ class _Search:
         )
         fewer = replace(self.draws, error_m=self.draws.error_m[:, : min(CURVE_DRAWS, self.draws.error_m.shape[1])])
         a_from, a_to = _span(case, ground, raw)
+        # Lower than this no mast at B helps: A's own spot stands too high.
+        high_b = ground.base_b_m + _BEYOND_M
+        least = quantile(fewer.lowest_a(rules.most_m, high_b), self.asked)
+        a_from = min(max(a_from, boundary.lowest_a(high_b), least), a_to)
         found = []
         for a in np.linspace(a_from, a_to, CURVE_POINTS).tolist():
             b = max(boundary.lowest_b(a), quantile(fewer.lowest_b(rules.most_m, a), self.asked), ground.base_b_m)

@@ -27,7 +27,9 @@ def decision(planned: Pair, options: Sequence[HeightOption], *, holds: bool, con
     asked = f"{100.0 * confidence:g} %"
     builds = {option.kind: option.build for option in options}
     now = f"{metres(planned.a_m)} at A and {metres(planned.b_m)} at B"
-    ways = _ways(builds, planned)
+    usual = {kind: pair if pair and max(pair.a_m, pair.b_m) <= USUAL_MAST_M else None for kind, pair in builds.items()}
+    ways = _ways(usual) or _ways(builds)
+    beyond = bool(ways) and not any(usual.values())
     if holds:
         least = builds.get("least total")
         less = least is not None and least.a_m + least.b_m < planned.a_m + planned.b_m - 0.5
@@ -42,10 +44,15 @@ def decision(planned: Pair, options: Sequence[HeightOption], *, holds: bool, con
             f"Not high enough as planned ({now}), and no height within the limits gives {asked} confidence: look for another "
             "site or a relay."
         )
+    if beyond:
+        return (
+            f"Not high enough as planned ({now}), and usual masts are not either. {asked} confidence would take "
+            f"{', or '.join(ways)}: look for another site or a relay."
+        )
     return f"Not high enough as planned ({now}; {_percent(likely)} confidence). With {asked} confidence: {', or '.join(ways)}."
 
 
-def _ways(builds: dict[HeightKind, Pair | None], planned: Pair) -> list[str]:
+def _ways(builds: dict[HeightKind, Pair | None]) -> list[str]:
     ways = []
     a, b, equal, least = (builds.get(kind) for kind in ("a alone", "b alone", "equal", "least total"))
     if a is not None:

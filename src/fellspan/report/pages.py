@@ -19,6 +19,7 @@ from fellspan.planning.plan import LinkPlan, StudyPlan
 from fellspan.report import assets, wording
 from fellspan.report import map_geometry as geometry
 from fellspan.report.antenna_section import antenna_section
+from fellspan.report.heights_section import heights_section
 from fellspan.report.map import MapMarkup, link_map
 from fellspan.report.naming import page_name, slug
 from fellspan.report.neighbours import neighbours_view
@@ -132,6 +133,7 @@ def _link_page(plan: StudyPlan, index: int, link: LinkPlan, templates: Environme
         losses=_losses(result.losses_db),
         antennas=antenna_section(link),
         neighbours=neighbours_view(plan, result.name),
+        heights=heights_section(link),
         reflections=reflection_section(link),
         rests_on=[link.profile.sources[i] for i in sorted(set(link.profile.source.tolist())) if i >= 0],
         cautions=(*result.cautions, *link.profile.notes, *plan.cautions),

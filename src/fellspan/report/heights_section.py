@@ -1,0 +1,81 @@
+"""The heights of one link on its page: the decision, the trade-off, a table and how sure it is. Computes nothing."""
+
+from dataclasses import dataclass
+
+from markupsafe import Markup
+
+from fellspan.design.confidence import ConfidenceResult
+from fellspan.design.heights_result import HEIGHT_WORDS, HeightOption, HeightsResult, Pair
+from fellspan.planning.plan import LinkPlan
+from fellspan.report import wording
+from fellspan.report.heights_drawing import draw_heights, heights_words
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class HeightsSection:
+    """What the link page shows; `rows` hold words, exact pair, pair to build, probability, what governs, what a metre buys."""
+
+    decision: str
+    chart: Markup
+    caption: str
+    rows: tuple[tuple[str, str, str, str, str, str], ...]
+    notes: tuple[str, ...]
+    sure: tuple[str, ...]
+    cautions: tuple[str, ...]
+
+
+def heights_section(link: LinkPlan) -> HeightsSection | None:
+    """The section of a link; None where heights were not worked out."""
+    heights, confidence = link.heights, link.confidence
+    if heights is None or confidence is None:
+        return None
+    ends = link.result.ends
+    notes = dict.fromkeys(option.note for option in heights.options if option.note)
+    return HeightsSection(
+        decision=heights.decision,
+        chart=Markup(draw_heights(heights, uid="heights", names=(ends.a.site, ends.b.site))),
+        caption=heights_words(heights),
+        rows=tuple(_row(option) for option in heights.options),
+        notes=(
+            _legend(heights),
+            *(f"{note[0].upper()}{note[1:]}." for note in notes),
+            heights.checked,
+        ),
+        sure=_sure(heights, confidence),
+        cautions=heights.cautions,
+    )
+
+
+def _legend(heights: HeightsResult) -> str:
+    return (
+        f"Exact: on the heights in the data. To build: with {wording.percent(heights.confidence)} confidence, up to whole "
+        f"steps of {heights.step_m:g} m. Counted from: A {heights.base_a}; B {heights.base_b}."
+    )
+
+
+def _row(option: HeightOption) -> tuple[str, str, str, str, str, str]:
+    touch = option.governs
+    governs, more = "–", "–"
+    if touch is not None:
+        governs = (
+            f"{touch.cause}, {wording.distance(touch.at_m)} from A ({touch.criterion}); error of the data "
+            f"{wording.metres(touch.sigma_m)}, sampling {wording.metres(touch.sampling_m, 2)}"
+        )
+        more = "; ".join(f"{item.end} {wording.metres(item.spare_m, 2)}" for item in option.more)
+    likely = wording.probability(option.probability) if option.probability is not None else "–"
+    return (HEIGHT_WORDS[option.kind], _pair(option.raw, 2), _pair(option.build, 1), likely, governs, more)
+
+
+def _pair(pair: Pair | None, digits: int) -> str:
+    return "–" if pair is None else f"{wording.number(pair.a_m, digits)} / {wording.metres(pair.b_m, digits)}"
+
+
+def _sure(heights: HeightsResult, confidence: ConfidenceResult) -> tuple[str, ...]:
+    lines = [f"As planned every criterion holds with {wording.probability(confidence.all_hold)}."]
+    for stated in confidence.heights:
+        ends = (("A alone", stated.a_m), ("B alone", stated.b_m), ("both alike", stated.both_m))
+        words = ", ".join(
+            f"{name} {'–' if value is None else wording.metres(value, sign=True)}" for name, value in ends
+        )
+        lines.append(f"For {wording.percent(stated.confidence)}: {words}.")
+    return (*lines, *confidence.assumptions)

@@ -1,0 +1,44 @@
+"""The trade-off chart: readable XML, every pair in words, no coordinates out of hand, hostile names kept as text."""
+
+import xml.etree.ElementTree as ET
+
+import pytest
+from made_profiles import link_of, obstacle, profile_of
+
+from fellspan.design.heights import design_heights
+from fellspan.design.heights_result import HeightSettings, HeightsResult, Limits
+from fellspan.links.assess import AssessSettings, assess_profile
+from fellspan.report.heights_drawing import draw_heights, heights_words
+
+
+def heights(top_m: float = 30.0, **limits: float) -> HeightsResult:
+    profile = profile_of(8e3, 0.0, n=401, obstacles=(obstacle("mill", 3_000.0, 3_020.0, top_m),), sigma_m=1.0)
+    link = link_of(profile, 20.0, 20.0)
+    limit = Limits(**limits)
+    settings = HeightSettings(limits_a=limit, limits_b=limit)
+    return design_heights(link, assess_profile(link, profile, AssessSettings()), AssessSettings(), heights=settings)[0]
+
+
+@pytest.mark.parametrize("found", [heights(), heights(300.0), heights(high_m=5.0), heights(0.5)])
+def test_the_chart_is_xml_that_says_in_words_what_it_shows(found: HeightsResult) -> None:
+    drawn = ET.fromstring(draw_heights(found, uid="h", names=('<A & "B">', "East")))
+    assert drawn.findtext("{*}desc") == heights_words(found)
+    assert "&" in "".join(drawn.itertext())
+    assert len(ET.tostring(drawn)) < 20_000
+    circles = drawn.findall(".//{*}circle")
+    assert len(circles) >= 1
+    for circle in circles:
+        assert 0.0 <= float(circle.get("cx", "")) <= 520.0
+        assert 0.0 <= float(circle.get("cy", "")) <= 420.0
+
+
+def test_every_pair_to_build_stands_right_of_and_above_the_exact_edge() -> None:
+    found = heights()
+    for option in found.options:
+        assert option.build is not None
+        assert option.raw is not None
+        at = [b for a, b in found.boundary if a <= option.build.a_m]
+        assert option.build.b_m >= min(at) - 1e-6 if len(at) == len(found.boundary) else True
+    confident = found.boundary_confident
+    assert [a for a, _ in confident] == sorted(a for a, _ in confident)
+    assert [b for _, b in confident] == sorted((b for _, b in confident), reverse=True)
