@@ -38,8 +38,8 @@ DRAG: Final[dict[Shape, Drag]] = {
 """By shape. Only what was seen in its source is `confirmed`; the rest serves to compare, not to build by."""
 
 WORST_ANGLE: Final = (
-    "The force is that of wind from the front, without ice; the worst angle for a dish is often 50 to 60 degrees off, and there "
-    "it twists the mast too, which is not counted here."
+    "The force is that of wind from the front, without ice; the worst angle for a dish is often 50 to 60 degrees off, "
+    "and there it twists the mast too, which is not counted here."
 )
 
 
