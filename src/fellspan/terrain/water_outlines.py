@@ -89,12 +89,12 @@ def _areas(file: Path) -> list[BaseGeometry]:
 def _parts(feature: object, where: str) -> list[BaseGeometry]:
     fields = Fields(where=where, values={}, error=WaterFileError)
     geometry = feature.get("geometry") if isinstance(feature, dict) else None
+    if not isinstance(geometry, dict):
+        raise fields.fail("no geometry", "give a Polygon")
     try:
         shape = shapely.from_geojson(json.dumps(geometry))
     except (shapely.errors.GEOSException, ValueError, TypeError, RecursionError):
         raise fields.fail(f"geometry '{shown(geometry)}' is not a shape", "give a Polygon") from None
-    if geometry is None or shape is None:
-        raise fields.fail("no geometry", "give a Polygon")
     parts = simple_parts(shape, fields, [])
     for part in parts:
         if part.geom_type != "Polygon":
