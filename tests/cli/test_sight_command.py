@@ -3,6 +3,7 @@
 import json
 import os
 import pty
+import re
 import select
 import subprocess
 import sys
@@ -14,9 +15,10 @@ from pathlib import Path
 import pytest
 from made_studies import A, B, run_command, write_ground
 
-from fellspan.cli import main
+from fellspan.cli import main, sight_study
 from fellspan.cli.sight_points import read_points
 from fellspan.errors import FellspanError
+from fellspan.quantities import AntennaHeight
 from fellspan.study.reading import load_study
 
 OPTIONS = (
@@ -29,6 +31,10 @@ OPTIONS = (
     "--height-b",
     "100 ft agl",
 )
+
+
+QUESTION_S = 60
+"""How long each question may take on a busy machine."""
 
 
 @pytest.fixture
@@ -152,24 +158,106 @@ def test_a_height_above_nothing_is_refused_in_a_pipe(run: Callable[..., Done]) -
     assert "--height-a '12 m' does not say above what" in done.stderr
 
 
+@pytest.mark.parametrize("answer", ["roof", "above roof", "r", "the roof", "3 m above roof", "roof + 3 m"])
+def test_above_what_takes_a_word_or_a_whole_height(monkeypatch: pytest.MonkeyPatch, answer: str) -> None:
+    monkeypatch.setattr(sight_study, "can_ask", lambda: True)
+    monkeypatch.setattr(sight_study, "ask", lambda question, read: read(answer))
+    height = sight_study._with_reference("B", AntennaHeight(height_m=3.0, reference=None), "3 m")
+    assert (height.height_m, height.reference) == (3.0, "roof")
+
+
+def test_equipment_gives_level_and_margin(folder: Path, run: Callable[..., Done]) -> None:
+    equipment = ("--power", "200 mW", "--gain-a", "25 dBi", "--gain-b", "19 dBi", "--threshold", "-72 dBm")
+    done = run("sight", A, B, *OPTIONS, *equipment, "--study", "full.toml")
+    assert done.returncode == 0, done.stderr
+    # 23.01 + 25 + 19 - 116.35 dB of free space over 2.70 km at 5.8 GHz (P.525-5, equation 4), and a trace of the air
+    level = re.search(r"Received +(-[0-9.]+) dBm at A", done.stdout)
+    margin = re.search(r"Margin +([0-9.]+) dB at A", done.stdout)
+    assert level is not None
+    assert margin is not None
+    assert float(level[1]) == pytest.approx(-49.34, abs=0.1)
+    assert float(margin[1]) == pytest.approx(22.66, abs=0.1)
+    (link,) = load_study(folder / "full.toml").links
+    assert (link.antenna_a.gain_dbi, link.antenna_b.gain_dbi, link.radio.threshold_dbm) == (25.0, 19.0, -72.0)
+    alike = run("sight", A, B, *OPTIONS, "--gain", "25 dBi", "--study", "alike.toml")
+    assert alike.returncode == 0, alike.stderr
+    assert load_study(folder / "alike.toml").links[0].antenna_b.gain_dbi == 25.0
+
+
+@pytest.mark.parametrize(
+    ("option", "word"),
+    [
+        (("--threshold", "72 dBm"), "did you mean '-72 dBm'"),
+        (("--power", "61 dBm"), "60 dBm"),
+        (("--unit", "feet"), "us-ft"),
+    ],
+)
+def test_equipment_that_cannot_be_meant_is_refused(
+    run: Callable[..., Done], option: tuple[str, str], word: str
+) -> None:
+    done = run("sight", A, B, *OPTIONS, *option, "--no-save")
+    assert done.returncode == 2
+    assert word in done.stderr
+    assert len(done.stderr.splitlines()) <= 4
+
+
+def test_what_a_raster_leaves_out_can_be_said(folder: Path, run: Callable[..., Done]) -> None:
+    write_ground(folder / "bare.tif", crs="EPSG:32623")
+    options = ("--ground", "bare.tif", *OPTIONS[2:], "--unit", "ft", "--datum", "EGM96", "--error", "1.5 m")
+    done = run("sight", A, B, *options, "--study", "said.toml")
+    assert done.returncode == 0, done.stderr
+    assert "ground at 3.0 m" in done.stdout  # 10 ft
+    (raster,) = load_study(folder / "said.toml").terrain.ground
+    assert (raster.vertical_unit, raster.vertical_datum, raster.error_m) == ("ft", "EGM96", 1.5)
+
+
+def test_cover_obstacles_and_survey_are_taken_in(folder: Path, run: Callable[..., Done]) -> None:
+    write_ground(folder / "trees.tif", crs="EPSG:32623")
+    (folder / "masts.csv").write_text(
+        "name,kind,latitude_deg,longitude_deg,height_m,radius_m\nold mast,building,36.09000,-45.26500,45,2\n",
+        encoding="utf-8",
+    )
+    cover = ("--cover", "trees.tif:tree", "--obstacles", "masts.csv:building")
+    done = run("sight", A, B, *OPTIONS, *cover, "--study", "covered.toml")
+    assert done.returncode == 0, done.stderr
+    assert "BARE GROUND" not in done.stdout
+    assert "old mast cuts the sight line" in " ".join(done.stdout.split())
+    terrain = load_study(folder / "covered.toml").terrain
+    assert terrain.cover[0].kind == "tree"
+    assert terrain.obstacles[0].complete == ("building",)
+    for option, name in (("--cover", "no.tif:tree"), ("--obstacles", "no.csv"), ("--survey", "no.csv")):
+        refused = run("sight", A, B, *OPTIONS, option, name, "--no-save")
+        assert (refused.returncode, f"{option}: there is no file 'no." in refused.stderr) == (2, True)
+
+
 def test_questions_at_a_terminal(folder: Path) -> None:
-    """A wrong answer is asked again; a height without words draws the question above what."""
+    """The raster comes first and must cover the points; wrong answers are asked again; 'above what' takes a whole height."""
     answers = [
+        ("Elevation raster", "nothing.tif"),
+        ("Elevation raster", "far.tif"),
+        ("Elevation raster", "ground.tif"),
+        ("Bare ground, or", "g"),
+        ("Position of B", "36.09000 N, 44.00000 W"),
         ("Position of B", B),
         ("Frequency", "5.8"),
         ("Frequency", "5.8 GHz"),
         ("height at A", "30 m above ground"),
         ("height at B", "3 m"),
-        ("above what", "roof"),
+        ("above what", "3 m"),
+        ("above what", "3 m above roof"),
         ("Roof at B", "27 m"),
-        ("raster", "nothing.tif"),
-        ("raster", "ground.tif"),
-        ("Bare ground", "g"),
     ]
+    write_ground(folder / "far.tif", crs="EPSG:32624+3855")
     code, shown = converse(folder, ["sight", A, "--study", "asked.toml"], answers)
     assert code == 0, shown
     assert "has no unit" in shown
     assert "no file 'nothing.tif'" in shown
+    assert "no data at 36.09000" in shown
+    assert "in far.tif" in shown
+    assert "in ground.tif" in shown
+    assert [
+        line for line in re.sub("\x1b.[0-9]*m|\r", "", shown).splitlines() if len(line) > 80 and "/" not in line
+    ] == []
     assert "CLEAR" in shown
     (link,) = load_study(folder / "asked.toml").links
     assert (link.b.height_m, link.b.height_reference, link.b.roof_m) == (3.0, "roof", 27.0)
@@ -189,15 +277,17 @@ def converse(folder: Path, arguments: list[str], answers: list[tuple[str, str]])
 
 
 def _talk(process: "subprocess.Popen[bytes]", master: int, answers: list[tuple[str, str]]) -> tuple[int, str]:
-    shown, seen, deadline = "", 0, time.monotonic() + 20
+    shown, seen = "", 0
     for question, answer in answers:
+        deadline = time.monotonic() + QUESTION_S
         while question not in shown[seen:]:
             shown += _read(master, deadline)
         seen = len(shown)
         os.write(master, f"{answer}\n".encode())
+    deadline = time.monotonic() + QUESTION_S
     while part := _read(master, deadline):
         shown += part
-    return process.wait(timeout=30), shown
+    return process.wait(timeout=QUESTION_S), shown
 
 
 def _read(master: int, deadline: float) -> str:

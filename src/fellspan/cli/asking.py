@@ -9,6 +9,7 @@ from typing import TypeVar
 
 import typer
 
+from fellspan.cli.layout import wrapped
 from fellspan.errors import FellspanError
 
 _T = TypeVar("_T")
@@ -26,7 +27,7 @@ def ask(question: str, read: Callable[[str], _T]) -> _T:
         try:
             return read(answer)
         except FellspanError as error:
-            typer.echo(f"  {error}", err=True)
+            _complain(error)
 
 
 def ask_or_skip(question: str, read: Callable[[str], _T]) -> _T | None:
@@ -38,7 +39,7 @@ def ask_or_skip(question: str, read: Callable[[str], _T]) -> _T | None:
         try:
             return read(answer)
         except FellspanError as error:
-            typer.echo(f"  {error}", err=True)
+            _complain(error)
 
 
 def ask_choice(question: str, choices: Sequence[str]) -> str:
@@ -49,3 +50,10 @@ def ask_choice(question: str, choices: Sequence[str]) -> str:
         if len(fitting) == 1:
             return fitting[0]
         typer.echo(f"  one of: {', '.join(choices)}", err=True)
+
+
+def _complain(error: FellspanError) -> None:
+    """What is wrong with an answer, broken between words."""
+    for text in (error.what, *error.details):
+        for line in wrapped(text, first="  ", rest="    "):
+            typer.echo(line, err=True)

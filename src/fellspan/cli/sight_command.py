@@ -9,7 +9,7 @@ import typer
 from fellspan.cli.choices import one_of
 from fellspan.cli.init_command import write_new
 from fellspan.errors import FellspanError, UsageError
-from fellspan.vocabulary import CriteriaPreset, GapPolicy
+from fellspan.vocabulary import CriteriaPreset, GapPolicy, LengthUnit
 
 if TYPE_CHECKING:
     from fellspan.planning.inputs import Study
@@ -36,6 +36,45 @@ def sight_command(
     ] = None,
     roof_a: Annotated[str | None, typer.Option(metavar="TEXT", help="Roof at A above ground, as in '9 m'.")] = None,
     roof_b: Annotated[str | None, typer.Option(metavar="TEXT", help="Roof at B above ground.")] = None,
+    cover: Annotated[
+        list[str] | None,
+        typer.Option(
+            "--cover",
+            metavar="FILE:KIND",
+            help="Raster of heights above ground, as in trees.tif:tree (tree, building or other).",
+        ),
+    ] = None,
+    obstacles: Annotated[
+        list[str] | None,
+        typer.Option(
+            "--obstacles",
+            metavar="FILE[:KIND]",
+            help="CSV or GeoJSON of buildings, masts, trees; ':building' says that it holds all buildings.",
+        ),
+    ] = None,
+    survey: Annotated[
+        list[str] | None, typer.Option("--survey", metavar="FILE", help="CSV of what was measured on the ground.")
+    ] = None,
+    unit: Annotated[
+        str | None,
+        typer.Option(metavar="|".join(get_args(LengthUnit)), help="Unit of the raster's heights, if it states none."),
+    ] = None,
+    datum: Annotated[
+        str | None, typer.Option(metavar="TEXT", help="Vertical datum of the raster, as in EGM96, if it states none.")
+    ] = None,
+    error: Annotated[
+        str | None, typer.Option(metavar="TEXT", help="One standard error of the raster's heights, as in '1.5 m'.")
+    ] = None,
+    power: Annotated[
+        str | None,
+        typer.Option(metavar="TEXT", help="Transmit power, as in '23 dBm'; with the gains it gives the level."),
+    ] = None,
+    gain: Annotated[str | None, typer.Option(metavar="TEXT", help="Antenna gain at both ends, as in '25 dBi'.")] = None,
+    gain_a: Annotated[str | None, typer.Option(metavar="TEXT", help="Antenna gain at A.")] = None,
+    gain_b: Annotated[str | None, typer.Option(metavar="TEXT", help="Antenna gain at B.")] = None,
+    threshold: Annotated[
+        str | None, typer.Option(metavar="TEXT", help="Level that the radio needs, as in '-72 dBm'; gives the margin.")
+    ] = None,
     crs: Annotated[
         str | None, typer.Option(metavar="TEXT", help="System of the positions, as in EPSG:32623; WGS 84 if left out.")
     ] = None,
@@ -45,7 +84,7 @@ def sight_command(
     criteria: Annotated[
         str, typer.Option(metavar="|".join(get_args(CriteriaPreset)), help="What 'clear' means.")
     ] = "p530-temperate",
-    study: Annotated[
+    saved_as: Annotated[
         Path | None, typer.Option("--study", metavar="OUT.toml", help="Save the study under this name.")
     ] = None,
     save: Annotated[bool, typer.Option("--save/--no-save", help="Save a study file for `fellspan plan`.")] = True,
@@ -55,11 +94,17 @@ def sight_command(
     """Is it clear between two points? Asks for what is missing when at a terminal."""
     gap_policy: GapPolicy = one_of(gaps, get_args(GapPolicy), "--gaps")
     preset: CriteriaPreset = one_of(criteria, get_args(CriteriaPreset), "--criteria")
-    if study is not None and study.exists():
-        raise UsageError(f"{study} exists and is left as it is", "name another file for --study")
+    length_unit: LengthUnit | None = None if unit is None else one_of(unit, get_args(LengthUnit), "--unit")
+    if saved_as is not None and saved_as.exists():
+        raise UsageError(f"{saved_as} exists and is left as it is", "name another file for --study")
 
     from fellspan.cli.running import finish, run_plan
     from fellspan.cli.sight_study import SightOptions, sight_study
+
+    if out is not None:
+        from fellspan.exports.folder import check_target
+
+        check_target(out)
 
     made, was_asked = sight_study(
         SightOptions(
@@ -67,12 +112,22 @@ def sight_command(
             crs=crs,
             ground=ground or (),
             surface=surface or (),
+            cover=cover or (),
+            obstacles=obstacles or (),
+            survey=survey or (),
+            unit=length_unit,
+            datum=datum,
+            error=error,
             gaps=gap_policy,
             frequency=frequency,
             height_a=height_a,
             height_b=height_b,
             roof_a=roof_a,
             roof_b=roof_b,
+            power=power,
+            gain_a=gain_a or gain,
+            gain_b=gain_b or gain,
+            threshold=threshold,
             preset=preset,
         )
     )
@@ -82,11 +137,11 @@ def sight_command(
             raise plan.failures[0].error
     except FellspanError:
         if was_asked and save:
-            _save(made, study)  # what a person has typed is worth keeping, to be mended
+            _save(made, saved_as)  # what a person has typed is worth keeping, to be mended
         raise
     finish(plan, out=out, as_json=as_json)
     if save:
-        _save(made, study)
+        _save(made, saved_as)
 
 
 def _save(study: "Study", wanted: Path | None) -> None:
