@@ -72,8 +72,7 @@ def plan() -> StudyPlan:
     study = load_study(SAMPLE)
     names = ("South Light - Ostrel Landing", "Harbour Office - Cape Light")
     links = tuple(link for link in study.links if link.name in names)
-    tide = {"water_level_m": 0.0, "water_low_m": -0.6, "water_high_m": 0.8}
-    return plan_study(dataclasses.replace(study, links=links, **tide))
+    return plan_study(dataclasses.replace(study, links=links, water_level_m=0.0, water_low_m=-0.6, water_high_m=0.8))
 
 
 def test_levels_and_outlines_are_read_and_written_again(tmp_path: Path) -> None:
