@@ -112,7 +112,8 @@ def test_many_links_get_a_table_and_their_decisions(tmp_path: Path, capsys: pyte
     assert "dBm at A" not in brief
     assert "--full" in brief
     assert max(map(len, brief.splitlines())) <= 80
-    table, *decisions = brief.split("\n\n")[1:6]
+    table, neighbours, *decisions = brief.split("\n\n")[1:7]
+    assert neighbours.startswith("Neighbours\n  Worst pair: ")
     assert table.count("clear on bare ground only") == len(decisions) == 4
     for text in decisions:
         assert 4 <= len(text.splitlines()) <= 6

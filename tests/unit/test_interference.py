@@ -315,9 +315,21 @@ def test_antennas_typed_at_one_point_are_a_metre_apart_and_never_take_in_more_th
     found = study(*at_one_mast(low_first=True, heights=(30.0, 30.0)))
     first = receiver(found, "West", "A").interferers[0]
     assert (first.distance_m, first.patterns_hold) == (1.0, False)
-    loud = Antenna(gain_dbi=60.0, name="loud")
+    loud = Antenna(pattern=lobe(gain_dbi=60.0, floor_db=0.0), name="loud")
     capped = study(*at_one_mast(low_first=True, heights=(30.0, 30.0), antennas=(loud, loud)))
     assert receiver(capped, "West", "A").interferers[0].level_dbm == 20.0
+
+
+def test_an_antenna_of_which_only_the_gain_is_known() -> None:
+    """In every direction as stated, the worst case, but 0 dBi toward its own site."""
+    bare = Antenna(gain_dbi=25.0, name="bare")
+    away = study(*two_parallel(antennas=(bare, bare)))
+    assert {(i.transmit_gain_dbi, i.receive_gain_dbi) for i in receiver(away, "South", "B").interferers} == {
+        (25.0, 25.0)
+    }
+    beside = receiver(study(*at_one_mast(low_first=True, antennas=(bare, bare))), "West", "A").interferers[0]
+    assert (beside.transmit_gain_dbi, beside.receive_gain_dbi) == (0.0, 0.0)
+    assert beside.level_dbm == pytest.approx(20.0 - free_space(4.0, 6.1e9), abs=1e-6)
 
 
 def test_the_worst_pair_comes_first_and_is_named() -> None:

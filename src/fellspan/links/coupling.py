@@ -11,11 +11,16 @@ from numpy.typing import ArrayLike, NDArray
 
 from fellspan.antennas import mounting as hung
 from fellspan.geodesy import geodesic
+from fellspan.links.same_site import SAME_SITE_M
 from fellspan.links.stations import Floats, Station, overlap_db, share_a_sector
 from fellspan.propagation import free_space_loss_db
 from fellspan.propagation.constants import EARTH_RADIUS_M
 
 Indices = NDArray[np.intp]
+
+UNKNOWN_BESIDE_DBI: Final = 0.0
+"""Most that an antenna of which only the gain is known gives to others at its own site: the mean over all directions, since
+none looks at its neighbour (our own rule)."""
 
 LEAST_DISTANCE_M: Final = 1.0
 """Antennas typed nearer than this are taken to hang one above the other, this far apart (our own rule)."""
@@ -72,6 +77,10 @@ def pairs_of(stations: list[Station], *, median_k: float) -> Pairs | None:
     down = elevation_deg(horizontal, -higher, k=median_k)
     transmit_gain, transmit_below = _gains(stations, transmitter, toward_receiver, down)
     receive_gain, receive_below = _gains(stations, receiver, toward_transmitter, up)
+    beside = horizontal <= SAME_SITE_M
+    bare = np.array([one.antenna.pattern is None for one in stations])
+    transmit_gain = np.where(beside & bare[transmitter], np.minimum(transmit_gain, UNKNOWN_BESIDE_DBI), transmit_gain)
+    receive_gain = np.where(beside & bare[receiver], np.minimum(receive_gain, UNKNOWN_BESIDE_DBI), receive_gain)
     polarization = polarization_coupling_loss_db(
         _angles(stations, transmitter, receiver), transmit_below, receive_below
     )

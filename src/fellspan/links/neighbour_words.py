@@ -94,8 +94,8 @@ def rule_notes(
     bare = _of([one for one in stations if one.has_gain and one.antenna.pattern is None])
     if bare:
         notes.append(
-            f"Only the gain is known of antennas of {bare}: taken as the gain in every direction, the worst case. A model or "
-            "data-sheet beamwidths say more."
+            f"Only the gain is known of antennas of {bare}: taken as the gain in every direction, the worst case, but no "
+            "more than 0 dBi toward its own site. A model or data-sheet beamwidths say more."
         )
     mute = _of([one for one in stations if one.power_dbm is None or not one.has_gain])
     if mute:
