@@ -27,6 +27,7 @@ from fellspan.report.profile_drawing import draw_profile, exaggeration_words
 from fellspan.report.reflection_section import reflection_section
 from fellspan.report.relief import open_rasters, shaded_relief
 from fellspan.report.section import FULL, NARROW, PANEL
+from fellspan.report.signal_section import availability_short, rules_section, signal_section
 from fellspan.terrain.raster_file import RasterFile
 
 Progress = Callable[[int, int, str], None]
@@ -131,6 +132,8 @@ def _link_page(plan: StudyPlan, index: int, link: LinkPlan, templates: Environme
             ("B", result.ends.b, result.bearing_ba_deg, result.tilt_ba_deg),
         ],
         losses=_losses(result.losses_db),
+        signal=signal_section(result),
+        held=rules_section(result),
         antennas=antenna_section(link),
         neighbours=neighbours_view(plan, result.name),
         heights=heights_section(link),
@@ -191,6 +194,7 @@ def _shared(plan: StudyPlan, chart: MapMarkup | None) -> dict[str, Any]:
         "plan": plan,
         "map": chart and _safe_map(chart),
         "tiles": tiles,
+        "coordination": any(link.result.received_dbm.at_a is not None for link in plan.links),
         "tile_origin": origin if origin in (" https:", " http:") else "",
         "css": {
             "leaflet": assets.leaflet_css(),
@@ -249,6 +253,7 @@ def _digest(sha256: str) -> str:
 def _environment() -> Environment:
     made = assets.environment()
     made.filters.update(
+        availability=availability_short,
         bearing=wording.bearing,
         bytes=_bytes,
         criterion_words=wording.criterion_words,
@@ -268,6 +273,7 @@ def _environment() -> Environment:
         percent=wording.percent,
         probability=wording.probability,
         share=wording.share,
+        signal_short=wording.signal_short,
         signal_words=wording.signal_words,
         to_build=wording.to_build,
         unit=_unit,

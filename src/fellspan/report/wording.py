@@ -3,10 +3,10 @@
 import math
 import re
 
-from fellspan.links import words
+from fellspan.links import radio_words, words
 from fellspan.links.result import CriterionResult, LinkResult
 from fellspan.links.words import STATE_WORDS, State, state_of
-from fellspan.vocabulary import Basis, SignalVerdict
+from fellspan.vocabulary import Basis
 
 STATE_SYMBOL: dict[State, str] = {"clear": "✓", "clear-bare": "(✓)", "marginal": "≈", "obstructed": "✕"}
 STATE_WORD: dict[State, str] = {state: text.capitalize() for state, text in STATE_WORDS.items()}
@@ -20,14 +20,6 @@ BASIS_SHORT: dict[Basis, str] = {
     "surface raster": "surface raster",
     "bare ground only": "on bare ground only",
 }
-SIGNAL_WORD: dict[SignalVerdict, str] = {
-    "meets": "meets the wanted margin",
-    "marginal": "within 3 dB of the wanted margin",
-    "below": "below the wanted margin",
-}
-THROUGH = "meets, but through an obstruction"
-"""A level that arrives by diffraction over what cuts the sight line is no reason to build."""
-
 _CONTROL = re.compile("[\x00-\x08\x0b\x0c\x0e-\x1f\x7f\ud800-\udfff]")
 
 
@@ -139,12 +131,18 @@ def governing_words(criterion: CriterionResult, length_m: float) -> str:
 
 
 def signal_words(result: LinkResult) -> str:
-    """What the signal verdict says, with the path in mind."""
+    """What the signal verdict says, and what stands behind it, with the path in mind."""
     if result.signal_verdict is None:
         return "not computed"
-    if result.signal_verdict == "meets" and result.verdict == "obstructed":
-        return THROUGH
-    return SIGNAL_WORD[result.signal_verdict]
+    why = radio_words.verdict_why(result)
+    return why if why == radio_words.THROUGH else f"{result.signal_verdict}: {why}"
+
+
+def signal_short(result: LinkResult) -> str:
+    """The verdict in a word or two, for a card."""
+    if radio_words.verdict_why(result) == radio_words.THROUGH:
+        return "through an obstruction"
+    return result.signal_verdict or "not computed"
 
 
 def criterion_words(criterion: CriterionResult) -> str:
