@@ -265,6 +265,15 @@ def test_links_of_one_sector_do_not_disturb_each_other() -> None:
     assert all(result.interferers for result in aimed.receivers)
 
 
+def test_a_sector_sends_once_whatever_the_number_of_its_links() -> None:
+    hung = Aim(bearing_deg=90.0, tilt_deg=0.0)
+    one = hub(("Hub", "Quay"), east_north(4_000.0, 300.0), mounting=hung)
+    other = replace_radio(hub(("Hub", "Mill"), east_north(4_000.0, -300.0), mounting=hung), power_dbm=23.0)
+    third = planned("Third", east_north(6_000.0, 0.0), east_north(9_000.0, 0.0))
+    heard = [i for i in receiver(study(one, other, third), "Third", "A").interferers if i.site == "Hub"]
+    assert [(i.link, i.power_dbm) for i in heard] == [("Hub - Mill", 23.0)]
+
+
 def at_one_mast(low_first: bool, heights: tuple[float, float] = (30.0, 34.0), **more: object):
     """Two links of frequency division that leave one mast in opposite directions."""
     high, low = 6.1e9, 5.9e9

@@ -3,6 +3,7 @@
 Geometry, gains of both antennas, polarization, free space, overlap. Knows no terrain, sums or sentences.
 """
 
+import math
 from dataclasses import dataclass
 from typing import Final
 
@@ -148,10 +149,10 @@ def _overlapping(stations: list[Station]) -> tuple[Indices, Indices, Floats]:
     """Pairs of stations of different links with power and gains known, whose channels overlap, and by how much."""
     channels: dict[tuple[float, float | None, float, float | None], float | None] = {}
     found: list[tuple[int, int, float]] = []
-    apart = _sharing(stations)
+    apart, silent = _sharing(stations)
     usable = [one for one in stations if one.has_gain]
     for sender in usable:
-        if sender.power_dbm is None:
+        if sender.power_dbm is None or sender.number in silent:
             continue
         for hearer in usable:
             key = (sender.transmit_hz, sender.radio.bandwidth_hz, hearer.receive_hz, hearer.radio.bandwidth_hz)
@@ -165,18 +166,28 @@ def _overlapping(stations: list[Station]) -> tuple[Indices, Indices, Floats]:
     return numbers[:, 0], numbers[:, 1], np.array([pair[2] for pair in found], dtype=np.float64)
 
 
-def _sharing(stations: list[Station]) -> set[tuple[int, int]]:
-    """Numbers of links, both ways round, that one sector serves in turn."""
+def _sharing(stations: list[Station]) -> tuple[set[tuple[int, int]], set[int]]:
+    """Numbers of links, both ways round, that one sector serves in turn; and stations that are the sector of another once more.
+
+    A sector sends once, whatever the number of its links: with the greatest power that one of them states.
+    """
     by_site: dict[str, list[Station]] = {}
     for one in stations:
         by_site.setdefault(one.site.name, []).append(one)
-    return {
-        (one.number // 2, other.number // 2)
+    shared = [
+        (one, other)
         for together in by_site.values()
         for one in together
         for other in together
         if share_a_sector(one, other)
-    }
+    ]
+    apart = {(one.number // 2, other.number // 2) for one, other in shared}
+    return apart, {one.number for one, other in shared if _loudness(one) < _loudness(other)}
+
+
+def _loudness(station: Station) -> tuple[float, int]:
+    """Order among the links of one sector: by power, then the one that stands first in the study."""
+    return -math.inf if station.power_dbm is None else station.power_dbm, -station.number
 
 
 def _gains(stations: list[Station], whose: Indices, bearing: Floats, elevation: Floats) -> tuple[Floats, Floats]:
