@@ -14,6 +14,7 @@ from fellspan.design.survey_list import survey_list
 from fellspan.errors import FellspanError
 from fellspan.links.assess import AssessSettings, assess_in_full
 from fellspan.links.site import Link
+from fellspan.planning.far_away import far_cautions
 from fellspan.planning.inputs import Study
 from fellspan.planning.neighbours import neighbours_of, with_cautions
 from fellspan.planning.plan import LinkFailure, LinkPlan, StudyPlan
@@ -62,7 +63,12 @@ def plan_study(study: Study, *, progress: Progress | None = None, heights: Heigh
             else:
                 failures.append(outcome)
         interference = neighbours_of(planned, failures, terrain, median_k=study.median_k)
-        cautions = (*study.notes, *terrain.notes, *_unused_survey(study, terrain))
+        cautions = (
+            *study.notes,
+            *terrain.notes,
+            *_unused_survey(study, terrain),
+            *far_cautions(terrain.listed, study.links),
+        )
     if progress is not None:
         progress(len(study.links), len(study.links), "")
     return StudyPlan(

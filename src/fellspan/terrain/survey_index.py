@@ -50,6 +50,11 @@ class SurveyIndex:
         return before
 
     @property
+    def rows(self) -> tuple[SurveyRow, ...]:
+        """All rows, in the order of the files."""
+        return tuple(row for _, row in self._rows)
+
+    @property
     def links(self) -> tuple[str, ...]:
         """Names of links that rows refer to, in the order of the files."""
         return tuple(dict.fromkeys(row.link for _, row in self._rows if row.link))

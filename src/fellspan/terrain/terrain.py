@@ -16,6 +16,7 @@ from fellspan.geodesy.position import Position
 from fellspan.terrain.alongpath import Floats
 from fellspan.terrain.assemble import Layers, PathWork
 from fellspan.terrain.gaps import gap_error, gaps_of
+from fellspan.terrain.listed import Listed, listed_obstacles, listed_rows
 from fellspan.terrain.opening import CoverLike, ObstaclesLike, RasterLike, SurveyLike, open_layers
 from fellspan.terrain.profile import PathProfile
 from fellspan.terrain.profile_notes import path_notes
@@ -97,6 +98,11 @@ class Terrain:
     def survey_links(self) -> tuple[str, ...]:
         """Names of the links that survey rows refer to by distance."""
         return self._layers.survey.links
+
+    @property
+    def listed(self) -> tuple[Listed, ...]:
+        """Where the obstacles and survey rows stand."""
+        return listed_obstacles(self._layers.obstacles.obstacles), listed_rows(self._layers.survey.rows)
 
     def close(self) -> None:
         """Close all files."""
