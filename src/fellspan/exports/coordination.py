@@ -1,6 +1,7 @@
 """coordination.csv: what a regulator or a neighbour asks of each direction of a link; shows numbers and computes none.
 
-EIRP is the sum of figures that the study states. A direction stands in the sheet where power and both gains are known.
+EIRP is the sum of figures that the study states, at the highest power of any modulation. A direction stands in the sheet where
+power and both gains are known.
 """
 
 from dataclasses import dataclass
@@ -8,7 +9,9 @@ from dataclasses import dataclass
 from fellspan.exports.text import Cell, csv_text, rounded
 from fellspan.geodesy.coordinates import format_position
 from fellspan.geodesy.position import Position
+from fellspan.links.budget import line_loss_db
 from fellspan.links.emission import emission_designator, necessary_bandwidth
+from fellspan.links.radiated import highest_power_dbm
 from fellspan.links.result import AntennaResult, EndResult
 from fellspan.links.site import Antenna
 from fellspan.planning.plan import LinkPlan, StudyPlan
@@ -100,7 +103,7 @@ def _link_rows(linked: LinkPlan, plan: StudyPlan) -> list[list[Cell]]:
         bearing_deg=result.bearing_ba_deg,
         tilt_deg=result.tilt_ba_deg,
     )
-    if link.radio.power_dbm is None or a.peak_gain_dbi is None or b.peak_gain_dbi is None:
+    if highest_power_dbm(link.radio) is None or a.peak_gain_dbi is None or b.peak_gain_dbi is None:
         return []
     return [_row(linked, plan, transmit=one, receive=other) for one, other in ((a, b), (b, a))]
 
@@ -108,18 +111,21 @@ def _link_rows(linked: LinkPlan, plan: StudyPlan) -> list[list[Cell]]:
 def _row(linked: LinkPlan, plan: StudyPlan, *, transmit: _End, receive: _End) -> list[Cell]:
     result, radio = linked.result, linked.link.radio
     width, emission = radio.bandwidth_hz, radio.emission_class
-    at_antenna = None if radio.power_dbm is None else radio.power_dbm - transmit.antenna.feeder_loss_db
+    frequency_hz = radio.transmit_hz[0 if transmit.letter == "A" else 1]
+    power = highest_power_dbm(radio)
+    lost = transmit.antenna.branching_loss_db + line_loss_db(transmit.antenna, frequency_hz=frequency_hz)
+    at_antenna = None if power is None else power - lost
     return [
         result.name,
         f"{transmit.letter} to {receive.letter}",
         HORIZONTAL_DATUM,
         result.vertical_datum,
-        result.frequency_hz,
+        frequency_hz,
         width,
         None if width is None else necessary_bandwidth(width),
         None if width is None or emission is None else emission_designator(width, emission),
-        rounded(radio.power_dbm),
-        rounded(transmit.antenna.feeder_loss_db),
+        rounded(power),
+        rounded(lost),
         _sum(at_antenna, transmit.peak_gain_dbi),
         _sum(at_antenna, transmit.gain_along_path_dbi),
         rounded(result.distance_m),

@@ -66,6 +66,25 @@ LINK_COLUMNS = (
     "margin_at_a_db",
     "margin_at_b_db",
     "wanted_margin_db",
+    "modulation",
+    "availability_year_percent",
+    "availability_worst_month_percent",
+    "outage_minutes_per_year",
+    "dominant_cause",
+    "target_availability_percent",
+    "target_met",
+    "throughput_ab_bps",
+    "throughput_ba_bps",
+    "rain_loss_001_db",
+    "rain_edition",
+    "multipath_edition",
+    "power_rule",
+    "highest_setting_a_dbm",
+    "highest_setting_b_dbm",
+    "power_breach_a_db",
+    "power_breach_b_db",
+    "keep_away_front_a_m",
+    "keep_away_front_b_m",
     "reason",
     "page",
 )
@@ -160,6 +179,40 @@ def _criterion_cells(criterion: CriterionResult) -> list[Cell]:
     ]
 
 
+def _signal_cells(result: LinkResult) -> list[Cell]:
+    """From `modulation` to `multipath_edition`; availability and outage both ways at once."""
+    signal, available = result.signal, result.availability_percent
+    cells: list[Cell] = [result.modulation, rounded(available.year, 6), rounded(available.worst_month, 6)]
+    if signal is None:
+        return cells + [None] * 9
+    met = {True: "yes", False: "no", None: None}[signal.target_met]
+    return [
+        *cells,
+        rounded(signal.minutes_per_year),
+        signal.dominant_cause,
+        signal.target_availability_percent,
+        met,
+        rounded(signal.a_to_b.throughput_mean_bps, 0),
+        rounded(signal.b_to_a.throughput_mean_bps, 0),
+        rounded(result.losses_db.rain_001),
+        signal.editions.rain,
+        signal.editions.multipath,
+    ]
+
+
+def _rule_cells(result: LinkResult) -> list[Cell]:
+    """From `power_rule` to `keep_away_front_b_m`; distances are for the general public."""
+    power, exposure = result.power, result.exposure
+    checks = (None, None) if power is None else (power.a, power.b)
+    ends = (None, None) if exposure is None else (exposure.a, exposure.b)
+    return [
+        None if power is None else power.a.rule_id,
+        *(None if check is None else rounded(check.highest_setting_dbm) for check in checks),
+        *(None if check is None else rounded(check.breach_db) for check in checks),
+        *(None if end is None else rounded(end.public.front_m) for end in ends),
+    ]
+
+
 def _link_row(result: LinkResult, page: str) -> list[Cell]:
     return [
         result.name,
@@ -191,6 +244,8 @@ def _link_row(result: LinkResult, page: str) -> list[Cell]:
         rounded(result.margin_db.at_a),
         rounded(result.margin_db.at_b),
         rounded(result.wanted_margin_db),
+        *_signal_cells(result),
+        *_rule_cells(result),
         result.reasons[0] if result.reasons else None,
         page,
     ]
