@@ -1,15 +1,20 @@
 """Links and results made by hand for the tests of neighbours; invented places in open ocean, no terrain unless asked for."""
 
 import math
+from dataclasses import replace
 
 from fellspan.antennas.pattern import Pattern
 from fellspan.geodesy import geodesic
 from fellspan.geodesy.position import Position
+from fellspan.links.interference import study_interference
+from fellspan.links.interference_result import InterferenceResult, StudyInterference
 from fellspan.links.radio import Radio
 from fellspan.links.result import AtEnds, EndResult, Ends, LinkResult, Losses
 from fellspan.links.site import Antenna, Link, Site
+from fellspan.terrain.terrain import Terrain
 
 HOME = Position(latitude_deg=36.05, longitude_deg=-45.2)
+K = 4.0 / 3.0
 LIGHT_M_S = 299_792_458.0
 EARTH_M = 6_371_000.0
 
@@ -93,3 +98,37 @@ def planned(
         margin_db=AtEnds(at_a=margin, at_b=margin), wanted_margin_db=10.0, magnetic_model=None, step_m=10.0, sources=(),
         vertical_datum=None,
     )  # fmt: skip
+
+
+def study(*links: object, terrain: Terrain | None = None, **more: object) -> StudyInterference:
+    return study_interference(links, terrain=terrain, median_k=K, **more)  # type: ignore[arg-type]
+
+
+def receiver(found: StudyInterference, link: str, end: str) -> InterferenceResult:
+    return next(one for one in found.receivers if (one.link, one.end) == (link, end))
+
+
+def two_parallel(apart_m: float = 500.0, **more: object):
+    north = east_north(0.0, apart_m)
+    return (
+        planned("South", HOME, east_north(5_000.0, 0.0), **more),
+        planned("North", north, east_north(5_000.0, 0.0, start=north), **more),
+    )
+
+
+def replace_radio(given, **changes: object):
+    link, result = given
+    return replace(link, radio=replace(link.radio, **changes)), result
+
+
+def at_one_mast(low_first: bool, heights: tuple[float, float] = (30.0, 34.0), **more: object):
+    """Two links of frequency division that leave one mast in opposite directions."""
+    high, low = 6.1e9, 5.9e9
+    pairs = ((high, low), (low, high) if low_first else (high, low))
+    return [
+        planned(
+            name, HOME, east_north(side * 5_000.0, 0.0), sites=("Hill", name), heights_m=(height, 30.0),
+            own_radio=radio(duplex="frequency", frequency_a_hz=pair[0], frequency_b_hz=pair[1]), **more,
+        )
+        for name, side, pair, height in zip(("East", "West"), (1.0, -1.0), pairs, heights, strict=True)
+    ]  # fmt: skip

@@ -8,39 +8,29 @@ from pathlib import Path
 import numpy as np
 import pytest
 from exports_made_plan import made_plan
-from made_neighbours import HOME, east_north, free_space, lobe, planned, radio
+from made_neighbours import (
+    K,
+    at_one_mast,
+    east_north,
+    free_space,
+    planned,
+    radio,
+    receiver,
+    replace_radio,
+    study,
+    two_parallel,
+)
 from made_terrain import at, raster
 
-from fellspan.antennas.mounting import Mounting
 from fellspan.exports.results_json import results_dict
 from fellspan.geodesy import geodesic
 from fellspan.links.budget import tilt_deg
 from fellspan.links.coupling import elevation_deg, polarization_coupling_loss_db
-from fellspan.links.interference import study_interference
-from fellspan.links.interference_result import InterferenceResult, StudyInterference
 from fellspan.links.neighbour_words import receiver_caution
-from fellspan.links.site import Aim, Antenna
+from fellspan.links.site import Aim
 from fellspan.links.stations import overlap_db
 from fellspan.propagation import threshold_degradation_db
 from fellspan.terrain.terrain import Terrain
-
-K = 4.0 / 3.0
-
-
-def study(*links: object, terrain: Terrain | None = None, **more: object) -> StudyInterference:
-    return study_interference(links, terrain=terrain, median_k=K, **more)  # type: ignore[arg-type]
-
-
-def receiver(found: StudyInterference, link: str, end: str) -> InterferenceResult:
-    return next(one for one in found.receivers if (one.link, one.end) == (link, end))
-
-
-def two_parallel(apart_m: float = 500.0, **more: object):
-    north = east_north(0.0, apart_m)
-    return (
-        planned("South", HOME, east_north(5_000.0, 0.0), **more),
-        planned("North", north, east_north(5_000.0, 0.0, start=north), **more),
-    )
 
 
 def test_two_parallel_links_as_worked_out_by_hand() -> None:
@@ -87,11 +77,6 @@ def test_the_path_is_the_same_both_ways() -> None:
     turned = next(i for i in back.interferers if i.site == "South east")
     assert level.level_dbm == pytest.approx(turned.level_dbm, abs=1e-12)
     assert (level.distance_m, level.free_space_db) == (turned.distance_m, turned.free_space_db)
-
-
-def replace_radio(given, **changes: object):
-    link, result = given
-    return replace(link, radio=replace(link.radio, **changes)), result
 
 
 def crossed(given):
@@ -246,99 +231,6 @@ def test_leaving_out_the_weak_changes_nothing_that_matters(tmp_path: Path) -> No
         strong = [i for i in result.interferers if i.level_dbm > (result.noise_dbm or 0.0) - 10.0]
         assert same.interferers[: len(strong)] == tuple(strong)
     assert fast.worst == full.worst
-
-
-def hub(sites: tuple[str, str], b, *, mounting: Aim | Mounting | None):
-    sector = Antenna(pattern=lobe(gain_dbi=16.0), name="sector", mounting=mounting)
-    return planned(f"Hub - {sites[1]}", HOME, b, sites=sites, antennas=(sector, Antenna(pattern=lobe(), name="dish")))
-
-
-def test_links_of_one_sector_do_not_disturb_each_other() -> None:
-    hung = Aim(bearing_deg=90.0, tilt_deg=0.0)
-    one = hub(("Hub", "Quay"), east_north(4_000.0, 300.0), mounting=hung)
-    other = hub(("Hub", "Mill"), east_north(4_000.0, -300.0), mounting=hung)
-    found = study(one, other)
-    assert all(not result.interferers for result in found.receivers)
-    assert found.near == ()
-    aimed = study(*(hub(("Hub", n), b, mounting=None) for n, b in
-                    (("Quay", east_north(4_000.0, 300.0)), ("Mill", east_north(4_000.0, -300.0)))))  # fmt: skip
-    assert all(result.interferers for result in aimed.receivers)
-
-
-def test_a_sector_sends_once_whatever_the_number_of_its_links() -> None:
-    hung = Aim(bearing_deg=90.0, tilt_deg=0.0)
-    one = hub(("Hub", "Quay"), east_north(4_000.0, 300.0), mounting=hung)
-    other = replace_radio(hub(("Hub", "Mill"), east_north(4_000.0, -300.0), mounting=hung), power_dbm=23.0)
-    third = planned("Third", east_north(6_000.0, 0.0), east_north(9_000.0, 0.0))
-    heard = [i for i in receiver(study(one, other, third), "Third", "A").interferers if i.site == "Hub"]
-    assert [(i.link, i.power_dbm) for i in heard] == [("Hub - Mill", 23.0)]
-
-
-def at_one_mast(low_first: bool, heights: tuple[float, float] = (30.0, 34.0), **more: object):
-    """Two links of frequency division that leave one mast in opposite directions."""
-    high, low = 6.1e9, 5.9e9
-    pairs = ((high, low), (low, high) if low_first else (high, low))
-    return [
-        planned(
-            name, HOME, east_north(side * 5_000.0, 0.0), sites=("Hill", name), heights_m=(height, 30.0),
-            own_radio=radio(duplex="frequency", frequency_a_hz=pair[0], frequency_b_hz=pair[1]), **more,
-        )
-        for name, side, pair, height in zip(("East", "West"), (1.0, -1.0), pairs, heights, strict=True)
-    ]  # fmt: skip
-
-
-def test_high_and_low_on_one_mast_are_named() -> None:
-    found = study(*at_one_mast(low_first=True))
-    (conflict,) = found.high_low
-    assert (conflict.site, conflict.high_link, conflict.low_link) == ("Hill", "East", "West")
-    assert (conflict.high_hz, conflict.low_hz, conflict.distance_m) == (6.1e9, 5.9e9, pytest.approx(4.0))
-    assert any("High/low conflict at 'Hill'" in line and "'West'" in line for line in found.warnings)
-    # West receives at the mast on what East sends there, 4 m above it.
-    assert receiver(found, "West", "A").interferers[0].path == "same site"
-    assert study(*at_one_mast(low_first=False)).high_low == ()
-
-
-def test_other_bands_and_other_sites_have_no_high_low_conflict() -> None:
-    one, other = at_one_mast(low_first=True)
-    elsewhere = replace_radio(other, frequency_hz=11e9, frequency_a_hz=10.9e9, frequency_b_hz=11.1e9)
-    assert study(one, elsewhere).high_low == ()
-    away = planned(
-        "West", east_north(0.0, 150.0), east_north(-5_000.0, 150.0), own_radio=other[0].radio, sites=("Hill 2", "Far")
-    )
-    assert study(one, away).high_low == ()
-
-
-def test_antennas_on_one_mast_that_are_too_near() -> None:
-    """0.6 m at 6 GHz: far field 2 * 0.36 * 20.01 = 14.4 m; keep 0.6 m + 10 wavelengths of 5.08 cm = 1.11 m."""
-    (near,) = study(*at_one_mast(low_first=False, heights=(30.0, 30.5))).near
-    assert near.distance_m == pytest.approx(0.5)
-    assert near.far_field_m == pytest.approx(2.0 * 0.36 * 6e9 / 299_792_458.0, abs=0.01)
-    assert near.keep_m == pytest.approx(0.6 + 10.0 * 299_792_458.0 / 5.9e9, abs=0.001)
-    assert near.is_close
-    (apart,) = study(*at_one_mast(low_first=False)).near
-    assert not apart.is_close
-    assert study(*at_one_mast(low_first=False, heights=(30.0, 50.0))).near == ()
-
-
-def test_antennas_typed_at_one_point_are_a_metre_apart_and_never_take_in_more_than_was_sent() -> None:
-    found = study(*at_one_mast(low_first=True, heights=(30.0, 30.0)))
-    first = receiver(found, "West", "A").interferers[0]
-    assert (first.distance_m, first.patterns_hold) == (1.0, False)
-    loud = Antenna(pattern=lobe(gain_dbi=60.0, floor_db=0.0), name="loud")
-    capped = study(*at_one_mast(low_first=True, heights=(30.0, 30.0), antennas=(loud, loud)))
-    assert receiver(capped, "West", "A").interferers[0].level_dbm == 20.0
-
-
-def test_an_antenna_of_which_only_the_gain_is_known() -> None:
-    """In every direction as stated, the worst case, but 0 dBi toward its own site."""
-    bare = Antenna(gain_dbi=25.0, name="bare")
-    away = study(*two_parallel(antennas=(bare, bare)))
-    assert {(i.transmit_gain_dbi, i.receive_gain_dbi) for i in receiver(away, "South", "B").interferers} == {
-        (25.0, 25.0)
-    }
-    beside = receiver(study(*at_one_mast(low_first=True, antennas=(bare, bare))), "West", "A").interferers[0]
-    assert (beside.transmit_gain_dbi, beside.receive_gain_dbi) == (0.0, 0.0)
-    assert beside.level_dbm == pytest.approx(20.0 - free_space(4.0, 6.1e9), abs=1e-6)
 
 
 def test_the_worst_pair_comes_first_and_is_named() -> None:

@@ -3,8 +3,7 @@
 from dataclasses import replace
 
 from exports_made_plan import made_plan
-from made_neighbours import planned
-from test_interference import at_one_mast, study, two_parallel
+from made_neighbours import at_one_mast, planned, study, two_parallel
 
 from fellspan.cli.layout import WIDTH, Ink
 from fellspan.cli.neighbour_lines import neighbour_lines
