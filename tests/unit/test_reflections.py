@@ -1,6 +1,7 @@
 """Reflections over made profiles: the level on a sphere, nulls in their place, shading, rough ground, both directions."""
 
 import math
+from collections.abc import Callable
 
 import numpy as np
 import pytest
@@ -11,8 +12,9 @@ from fellspan.design.reflection_heights import spare_height_m
 from fellspan.design.reflection_result import ReflectionResult
 from fellspan.design.reflections import Water, find_reflections
 from fellspan.links.assess import AssessSettings, assess_profile
+from fellspan.links.criteria import worst_month_k
 from fellspan.links.site import Antenna, Link
-from fellspan.propagation import ground_permittivity, reflection_coefficient
+from fellspan.propagation import ground_permittivity, reflection_coefficient, specular_geometry
 from fellspan.terrain.profile import PathProfile
 
 SEA = Water(level_m=0.0)
@@ -279,3 +281,95 @@ def test_a_link_takes_little_time() -> None:
         find_reflections(link, result=done.result, profile=done.profile, levels=done.levels, water=SEA)
         best = min(best, time.perf_counter() - start)
     assert best < 0.25  # some 15 ms on an idle machine
+
+
+def rough_but(at_m: float, level: Callable[[np.ndarray], np.ndarray], *, clear_m: float = 1_500.0) -> PathProfile:
+    """A plane with bumps of some metres all along, but for a stretch around one place."""
+
+    def ground(x: np.ndarray) -> np.ndarray:
+        return level(x) + np.where(np.abs(x - at_m) < clear_m, 0.0, 4.0 * np.sin(x / 23.0))
+
+    return profile_of(20e3, ground, n=4001)
+
+
+@pytest.mark.parametrize("slope", [0.002, -0.002, 0.0])
+def test_flat_ground_is_found_only_where_it_mirrors(slope: float) -> None:
+    # Levels of the ends 80 and 30 m above the plane prolonged, so the place is that of a level one.
+    where = float(specular_geometry(20e3, height_a_m=80.0, height_b_m=30.0, k=0.566).from_a_m)
+    for at, is_found in ((where, True), (20e3 - where, False), (where - 4_000.0, False)):
+        profile = rough_but(at, lambda x: 50.0 + slope * x)
+        heights = [80.0 + 50.0 - float(profile.ground_m[0]), 30.0 + 50.0 + slope * 20e3 - float(profile.ground_m[-1])]
+        found = over(profile, *heights, water=Water(), median_k=0.566)
+        assert any(point.name == "median" for point in found.points) is is_found, at
+    assert 1_000.0 * abs(where - 10e3) > 1.0
+
+
+def test_the_amplitude_is_the_product_of_its_factors() -> None:
+    rng = np.random.default_rng(3)
+    bumps = rng.normal(0.0, 0.35, 2001)
+    profile = profile_of(10e3, lambda x: 20.0 + np.interp(x, np.linspace(0, 10e3, 2001), bumps), n=2001)
+    rough = over(profile, water=Water()).points[0]
+    assert 0.3 < rough.roughness_m < 0.4
+    assert rough.roughness_factor < 0.95
+
+    def strip(x: np.ndarray) -> np.ndarray:
+        return np.where(np.abs(x - 10_000.0) < 300.0, 0.0, 5.0 + 3.0 * np.sin(x / 37.0))
+
+    part = next(one for one in over(profile_of(20e3, strip, n=4001), 60.0, 60.0).points if one.surface == "water")
+    assert 0.1 < part.partial_factor < 0.9
+    for one in (rough, part):
+        product = one.coefficient * one.divergence * one.roughness_factor * one.partial_factor
+        assert one.amplitude == pytest.approx(product, rel=1e-12)
+
+
+def test_what_shades_at_low_k_need_not_shade_on_a_flat_earth() -> None:
+    # The leg from A to mid-path passes 5 km at half its height; the bulge there adds to the islet at low k only.
+    def islet(x: np.ndarray) -> np.ndarray:
+        return np.where(np.abs(x - 5_000.0) < 200.0, 27.0, 0.0)
+
+    found = over(profile_of(20e3, islet, n=4001), 60.0, 60.0)
+    shaded = {point.name: point.shaded_at_m is not None for point in found.points}
+    assert shaded == {"worst month": True, "median": False, "infinite": False}
+
+
+@pytest.mark.parametrize("end", ["a", "b"])
+def test_the_lowest_height_counts_the_lever_of_its_end(end: str) -> None:
+    profile = profile_of(12e3, lambda x: np.where(np.abs(x - 3_000.0) < 100.0, 20.0, 0.0), n=2001)
+    heights = {"a": 60.0, "b": 60.0}
+    spare = spare_height_m(assess_profile(link_of(profile, **heights), profile).levels, end)  # type: ignore[arg-type]
+    for more, met in ((1e-3, True), (-1e-3, False)):
+        lower = link_of(profile, **(heights | {end: 60.0 - spare + more}))
+        assert all(item.met for item in assess_profile(lower, profile).result.clearance) is met
+
+
+def test_ranges_of_heights_end_where_a_fade_of_3_db_begins() -> None:
+    profile = profile_of(12e3, n=2001)
+    a_m, b_m = 30.0, 20.0
+    found = over(profile, a_m, b_m, frequency_hz=2.4e9)
+    edges = 0
+
+    def worst(end: str, height: float) -> float:
+        heights = (height, b_m) if end == "a" else (a_m, height)
+        inverse = np.linspace(0.0, 1.0 / worst_month_k(12e3), 41)
+        return min(closed_form_db(12e3, *heights, k=1.0 / max(one, 1e-6), frequency_hz=2.4e9) for one in inverse)
+
+    for item in found.heights:
+        for one in item.ranges:
+            assert one.from_m >= item.lowest_m - 1e-6
+            for inside, outside, limit in (
+                (one.from_m, one.from_m - 0.3, item.searched.from_m),
+                (one.to_m, one.to_m + 0.3, item.searched.to_m),
+            ):
+                assert worst(item.end, inside) > -3.1
+                if abs(inside - limit) > 0.2:
+                    assert worst(item.end, outside) < -2.9
+                    edges += 1
+    assert edges >= 2
+
+
+def test_no_height_below_the_lowest_is_offered() -> None:
+    found = over(profile_of(12e3, n=2001), 12.0, 12.0, frequency_hz=2.4e9)
+    for item in found.heights:
+        assert item.lowest_m > 12.0  # the criteria are not met as planned
+        assert item.searched.from_m == item.lowest_m
+        assert item.change_m is None or item.change_m > 0.0

@@ -11,6 +11,7 @@ from made_profiles import METRES_PER_DEGREE, link_of, profile_of
 
 from fellspan.cli.layout import Ink
 from fellspan.cli.link_page import link_lines
+from fellspan.design.reflection_result import ReflectionResult
 from fellspan.design.reflections import Water, find_reflections
 from fellspan.errors import StudyError
 from fellspan.exports.results_json import results_dict
@@ -153,19 +154,22 @@ def test_a_lake_in_an_outline_lies_at_the_level_of_its_ground(tmp_path: Path) ->
     profile = profile_of(10e3, ground, n=2001)
     link = link_of(profile, 60.0, 60.0)
     done = assess_profile(link, profile)
-    given = {"result": done.result, "profile": done.profile, "levels": done.levels}
+
+    def with_water(water: Water) -> ReflectionResult:
+        return find_reflections(link, result=done.result, profile=done.profile, levels=done.levels, water=water)
+
     west, east = 3_000.0 / METRES_PER_DEGREE, 8_000.0 / METRES_PER_DEGREE
     outlines = read_outlines((square("lake.geojson", west, east, tmp_path),))
-    found = find_reflections(link, water=Water(level_m=0.0, low_m=-5.0, high_m=5.0, outlines=outlines), **given)
+    found = with_water(Water(level_m=0.0, low_m=-5.0, high_m=5.0, outlines=outlines))
     main = next(point for point in found.points if point.name == "median")
     assert main.surface == "water"
     assert main.level_m == pytest.approx(300.0, abs=0.05)
     assert 3_000.0 <= main.from_m < main.at_m < main.to_m <= 8_000.0
     # the tide of the sea is not the lake's: it moves nothing
-    still = find_reflections(link, water=Water(outlines=outlines), **given)
+    still = with_water(Water(outlines=outlines))
     assert found.span_wavelengths == still.span_wavelengths
     assert found.span_wavelengths is not None
-    assert not any(point.surface == "water" for point in find_reflections(link, **given).points)
+    assert not any(point.surface == "water" for point in with_water(Water()).points)
 
 
 def test_the_sample_crosses_its_sea(plan: StudyPlan) -> None:

@@ -121,8 +121,10 @@ def _free_of_nulls(traced: Traced) -> NDArray[np.bool_]:
     that can happen.
     """
     turns = np.where(np.isfinite(traced.wavelengths), traced.wavelengths, 0.0)
-    strength = np.where(np.isfinite(traced.amplitude), traced.amplitude, 1.0).max(axis=0)
+    strength = np.where(np.isfinite(traced.amplitude), traced.amplitude, 1.0)
     deep = 10.0 ** (-MATTERS_FROM_DB / 10.0)
+    # A null is widest, at this depth, for an amplitude of sqrt(1 - deep): of those that occur, the one nearest to it.
+    strength = np.clip(math.sqrt(1.0 - deep), strength.min(axis=0), strength.max(axis=0))
     with np.errstate(divide="ignore", invalid="ignore"):
         cosine = (1.0 + strength**2 - deep) / (2.0 * strength)
     beside = np.arccos(np.clip(cosine, -1.0, 1.0)) / (2.0 * np.pi)

@@ -26,6 +26,9 @@ LEAST_SAMPLES: Final = 8
 """Flatness is judged over this many regular steps at least (our own rule)."""
 MOST_PLANES: Final = 3
 SAME_LEVEL_M: Final = 0.1
+ZONE_PARTS: Final = (1.0, 0.5, 0.25)
+"""Of the half-length of the Fresnel zone on the ground, over which flatness is judged (our own rule)."""
+STRAY_WINDOW, STRAYS_BELOW = 21, 0.75
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -121,49 +124,62 @@ def flat_surfaces(
 ) -> list[Surface]:
     """Flat ground in the place and at the slope that mirrors the ray at this k.
 
-    A line is fitted to the ground over the Fresnel zone around each sample; where angles in and out are the same, and what is
-    left over is below Rayleigh's criterion, the line is a mirror.
+    A line is fitted to the ground over the Fresnel zone around each sample, then over parts of the zone; where angles in and
+    out are the same, and what is left over is below Rayleigh's criterion, the line is a mirror. The wider ones come first.
     """
     x, length = profile.distance_m, profile.length_m
     curve = float(inverse_k(k)) / EARTH_RADIUS_M
     from_b = length - x
     inner = (x > 0.0) & (from_b > 0.0)
     bulge = 0.5 * curve * x * from_b
-    with np.errstate(divide="ignore", invalid="ignore"):
-        down_a = (a_amsl_m - profile.ground_m - bulge) / x
-        down_b = (b_amsl_m - profile.ground_m - bulge) / from_b
-        mean = 0.5 * (down_a + down_b)
-        zone = np.sqrt(float(wavelength_m(frequency_hz)) * x * from_b / length) / mean
-    half = np.clip(np.where(mean > 0.0, zone, length), 0.5 * LEAST_SAMPLES * profile.step_m, 0.25 * length)
-    fitted, slope, rest = _fits(x, profile.ground_m, half)
-    tilt = slope + 0.5 * curve * (length - 2.0 * x)
-    with np.errstate(divide="ignore", invalid="ignore"):
-        angle_a = (a_amsl_m - fitted - bulge) / x + tilt
-        angle_b = (b_amsl_m - fitted - bulge) / from_b - tilt
-        grazing = 0.5 * (angle_a + angle_b)
-        smooth = np.asarray(smooth_up_to_m(np.maximum(grazing, 1e-9), frequency_hz=frequency_hz))
-    unlike = angle_a - angle_b
     open_ground = (profile.cover_m < OPEN_BELOW_M) & ~water
-    usable = inner & open_ground & (angle_a > 0.0) & (angle_b > 0.0) & (rest < smooth)
-    meets = np.flatnonzero(usable[:-1] & usable[1:] & (unlike[:-1] * unlike[1:] <= 0.0))
+    with np.errstate(divide="ignore", invalid="ignore"):
+        mean = 0.5 * ((a_amsl_m - profile.ground_m - bulge) / x + (b_amsl_m - profile.ground_m - bulge) / from_b)
+        zone = np.sqrt(float(wavelength_m(frequency_hz)) * x * from_b / length) / mean
+    zone = np.where(mean > 0.0, zone, length)
     found: list[tuple[float, Surface]] = []
-    for at in meets.tolist():
-        if any(abs(float(x[at]) - place) < float(half[at]) for place, _ in found):
-            continue
-        level = float(fitted[at] - slope[at] * x[at])
-        near = np.abs(profile.ground_m - level - slope[at] * x) <= max(3.0 * float(rest[at]), float(smooth[at]))
-        plane = _surface(
-            "flat ground",
-            profile,
-            open_ground & near,
-            level_a_m=level,
-            slope=float(slope[at]),
-            roughness_m=float(rest[at]),
-        )
-        found.append((float(x[at]), plane))
-    # The wider the zone, the nearer to grazing and the stronger the mirror.
-    found.sort(key=lambda pair: -float(np.interp(pair[0], x, half)))
-    return [plane for _, plane in found[:MOST_PLANES]]
+    for part in ZONE_PARTS:
+        half = np.clip(part * zone, 0.5 * LEAST_SAMPLES * profile.step_m, 0.25 * length)
+        fitted, slope, rest = _fits(x, profile.ground_m, half)
+        tilt = slope + 0.5 * curve * (length - 2.0 * x)
+        with np.errstate(divide="ignore", invalid="ignore"):
+            angle_a = (a_amsl_m - fitted - bulge) / x + tilt
+            angle_b = (b_amsl_m - fitted - bulge) / from_b - tilt
+            smooth = np.asarray(smooth_up_to_m(np.maximum(0.5 * (angle_a + angle_b), 1e-9), frequency_hz=frequency_hz))
+        unlike = angle_a - angle_b
+        usable = inner & open_ground & (angle_a > 0.0) & (angle_b > 0.0) & (rest < smooth)
+        for at in np.flatnonzero(usable[:-1] & usable[1:] & (unlike[:-1] * unlike[1:] <= 0.0)).tolist():
+            place = float(x[at])
+            if any(abs(place - other) < float(zone[at]) for other, _ in found):
+                continue
+            level = float(fitted[at] - slope[at] * x[at])
+            near = np.abs(profile.ground_m - level - slope[at] * x) <= max(3.0 * float(rest[at]), float(smooth[at]))
+            plane = _surface(
+                "flat ground",
+                profile,
+                _run_around(at, open_ground & near),
+                level_a_m=level,
+                slope=float(slope[at]),
+                roughness_m=float(rest[at]),
+            )
+            found.append((place, plane))
+            if len(found) == MOST_PLANES:
+                return [plane for _, plane in found]
+    return [plane for _, plane in found]
+
+
+def _run_around(at: int, near: NDArray[np.bool_]) -> NDArray[np.bool_]:
+    """The samples that lie on a plane without a break around one of them; a few strays do not break it."""
+    share = np.convolve(near, np.ones(STRAY_WINDOW), mode="same") / STRAY_WINDOW
+    steady = share >= STRAYS_BELOW
+    steady[at] = True
+    breaks = np.flatnonzero(~steady)
+    after = int(np.searchsorted(breaks, at))
+    first = int(breaks[after - 1]) + 1 if after else 0
+    last = int(breaks[after]) if after < breaks.size else near.size
+    run = np.zeros(near.shape, dtype=np.bool_)
+    run[first:last] = near[first:last]
+    return run
 
 
 def _surface(
