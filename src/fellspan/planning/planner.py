@@ -38,22 +38,11 @@ def plan_study(study: Study, *, progress: Progress | None = None, heights: Heigh
     TerrainError
         The terrain cannot be opened; what is wrong on the path of one link is that link's failure instead.
     """
-    settings = AssessSettings(
-        preset=study.preset,
-        criteria=study.criteria,
-        median_k=study.median_k,
-        confidence=study.confidence,
-        date=study.date,
-        step_m=study.terrain.step_m,
-        climate=study.climate,
-        rain_edition=study.rain_edition,
-        rain_reading=study.rain_reading,
-        exposure_rule=study.exposure_rule,
-    )
+    settings = settings_of(study)
     water = water_of(study)
     planned: list[LinkPlan] = []
     failures: list[LinkFailure] = []
-    with _open_terrain(study) as terrain:
+    with open_terrain(study) as terrain:
         for done, link in enumerate(study.links):
             if progress is not None:
                 progress(done, len(study.links), link.name)
@@ -82,7 +71,24 @@ def plan_study(study: Study, *, progress: Progress | None = None, heights: Heigh
     )
 
 
-def _open_terrain(study: Study) -> Terrain:
+def settings_of(study: Study) -> AssessSettings:
+    """How the links of a study are judged."""
+    return AssessSettings(
+        preset=study.preset,
+        criteria=study.criteria,
+        median_k=study.median_k,
+        confidence=study.confidence,
+        date=study.date,
+        step_m=study.terrain.step_m,
+        climate=study.climate,
+        rain_edition=study.rain_edition,
+        rain_reading=study.rain_reading,
+        exposure_rule=study.exposure_rule,
+    )
+
+
+def open_terrain(study: Study) -> Terrain:
+    """The terrain of a study, trees grown; close it, or use it in a `with` block."""
     inputs = study.terrain
     return Terrain.open(
         ground=inputs.ground,
