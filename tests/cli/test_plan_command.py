@@ -131,6 +131,8 @@ def test_no_view_calls_a_link_on_bare_ground_clear_alone(clear_study: Path, caps
     assert "\nCLEAR ON BARE GROUND ONLY: " in capsys.readouterr().out
     (row,) = csv.DictReader((out_dir / "links.csv").read_text(encoding="utf-8").splitlines())
     assert (row["verdict"], row["state"]) == ("clear", "clear on bare ground only")
+    assert '"state": "clear on bare ground only"' in (out_dir / "links.geojson").read_text(encoding="utf-8")
+    assert "<styleUrl>#clear-bare</styleUrl>" in (out_dir / "links.kml").read_text(encoding="utf-8")
     overview = (out_dir / "index.html").read_text(encoding="utf-8")
     assert '<span class="total clear"><b>0</b> clear</span>' in overview
     assert '<span class="total clear-bare"><b>1</b> clear on bare ground only</span>' in overview
@@ -147,7 +149,7 @@ def test_a_signal_through_an_obstruction_is_no_good_news(tmp_path: Path, capsys:
     assert "MEETS" not in out
     assert "but through an obstruction" in out
     (page,) = (tmp_path / "report").glob("link-01*.html")
-    assert "meets, but through an obstruction" in page.read_text(encoding="utf-8")
+    assert "but through an obstruction" in page.read_text(encoding="utf-8")
 
 
 def test_a_failed_link_does_not_stop_the_others(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:

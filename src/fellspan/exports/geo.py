@@ -10,6 +10,7 @@ from typing import Any
 from fellspan.exports.places import Place, path_places, places, split_at_antimeridian
 from fellspan.exports.text import finite
 from fellspan.links.result import CriterionResult, EndResult
+from fellspan.links.words import STATE_WORDS, state_of
 from fellspan.planning.plan import LinkPlan, StudyPlan
 from fellspan.report.naming import page_name
 
@@ -101,6 +102,7 @@ def _link_features(linked: LinkPlan, page: str) -> list[Feature]:
                 "a": result.a,
                 "b": result.b,
                 "verdict": result.verdict,
+                "state": STATE_WORDS[state_of(result)],
                 "signal_verdict": result.signal_verdict,
                 "basis": result.basis,
                 "confidence": finite(result.confidence),

@@ -9,12 +9,14 @@ from fellspan.exports.places import Place, path_places, places, split_at_antimer
 from fellspan.exports.text import xml_text
 from fellspan.links import words
 from fellspan.links.result import EndResult, LinkResult
+from fellspan.links.words import State
 from fellspan.planning.plan import LinkPlan, StudyPlan
-from fellspan.vocabulary import PathVerdict
 
 NAMESPACE = "http://www.opengis.net/kml/2.2"
-_WIDTH: dict[PathVerdict, str] = {"clear": "2", "marginal": "4", "obstructed": "6"}
-_COLOUR: dict[PathVerdict, str] = {"clear": "ffb27200", "marginal": "ff009fe6", "obstructed": "ff005ed5"}
+_WIDTH: dict[State, str] = {"clear": "2", "clear-bare": "1", "marginal": "4", "obstructed": "6"}
+_COLOUR: dict[State, str] = {
+    "clear": "ffb27200", "clear-bare": "ffe9b456", "marginal": "ff009fe6", "obstructed": "ff005ed5",
+}  # fmt: skip
 """aabbggrr; told apart without seeing red from green, and by width in greyscale."""
 
 
@@ -23,8 +25,8 @@ def links_kml(plan: StudyPlan) -> str:
     root = ET.Element("kml", xmlns=NAMESPACE)
     document = _child(root, "Document")
     _child(document, "name", plan.study.title)
-    for verdict, width in _WIDTH.items():
-        _line_style(document, verdict, _COLOUR[verdict], width)
+    for state, width in _WIDTH.items():
+        _line_style(document, state, _COLOUR[state], width)
     _line_style(document, "cut", "ff000000", "8")
     for linked in plan.links:
         _link_folder(document, linked)
@@ -115,7 +117,7 @@ def _link_folder(document: ET.Element, linked: LinkPlan) -> None:
         folder,
         f"{result.name}: ray",
         f"{_state(result)}; drawn as it runs for {governing.criterion}",
-        result.verdict,
+        words.state_of(result),
     )
     _line(ray, path_places(linked))
     for obstruction in governing.obstructions:
