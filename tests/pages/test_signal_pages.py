@@ -63,6 +63,8 @@ def test_all_views_tell_the_same_verdict_and_availability(plan: StudyPlan, pages
         assert "2.09 hours out, mostly by multipath" in told
         assert "multipath P.530-17 detailed" in told
     assert "Signal marginal · available 99.976 %" in pages["index.html"]
+    through = pages["index.html"].split("Signal through an obstruction")[1]
+    assert not through.startswith(" · available")
 
 
 def test_the_budget_on_the_page_closes(plan: StudyPlan) -> None:

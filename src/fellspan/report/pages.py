@@ -274,7 +274,6 @@ def _environment() -> Environment:
         probability=wording.probability,
         share=wording.share,
         signal_short=wording.signal_short,
-        signal_words=wording.signal_words,
         to_build=wording.to_build,
         unit=_unit,
     )

@@ -112,9 +112,9 @@ def _known(signal: SignalResult) -> bool:
 
 
 def availability_short(result: LinkResult) -> str:
-    """'99.984 %' of the year for a card; empty where it is not known."""
+    """'99.984 %' of the year for a card; empty where it is not known, or is that of a path that nobody should build on."""
     year = result.availability_percent.year
-    return "" if year is None else percent_text(year)
+    return "" if year is None or radio_words.verdict_why(result) == radio_words.THROUGH else percent_text(year)
 
 
 def _available(signal: SignalResult) -> str:
