@@ -181,6 +181,8 @@ def test_the_sample_crosses_its_sea(plan: StudyPlan) -> None:
         assert all(point.surface == "water" and point.level_m == 0.0 for point in found.points[:3])
         assert "The water between" in found.sentences[0]
         assert found.water_high_m == 0.8
+        deepest = max(point.fade_db or 0.0 for point in found.points[:3])
+        assert f"fades reach {deepest:.0f} dB" in " ".join(found.sentences)
         lines = "\n".join(link_lines(linked, ink=Ink(colours=False)))
         assert "Reflection" in lines
         assert all(len(line) <= 80 for line in lines.splitlines())

@@ -51,7 +51,7 @@ def _how_much(points: list[SpecularPoint]) -> str:
         f"{_K_WORDS[main.name].capitalize()} the mirrored ray arrives {main.from_null_wavelengths:.1f} wavelengths from a "
         f"null, which puts the level {abs(main.level_db):.1f} dB {side} that of the direct ray"
     )
-    depths = {point.name: point.fade_db for point in points if point.fade_db is not None}
+    depths = {point.name: point.fade_db for point in reversed(points) if point.fade_db is not None}
     if not depths:
         return f"{words}; the two can cancel."
     name = max(depths, key=lambda key: depths[key])

@@ -42,8 +42,8 @@ from fellspan.terrain.profile import PathProfile
 
 __all__ = ["Water", "find_reflections"]
 
-FAINT: Final = 0.01
-"""A mirrored ray weaker than this moves the level by less than 0.1 dB and is not listed (our own rule)."""
+FAINT: Final = 0.05
+"""A mirrored ray weaker than this moves the level by less than half a decibel and is not listed (our own rule)."""
 _KEYS: Final = (
     "p530-19-reflection-point",
     "p530-19-reflection",
