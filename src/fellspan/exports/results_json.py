@@ -32,25 +32,25 @@ def results_dict(plan: StudyPlan) -> dict[str, Any]:
         "schema": SCHEMA,
         "fellspan": plan.version,
         "study": _stamp(plan),
-        "files": [_plain(file) for file in plan.files],
+        "files": [plain_of(file) for file in plan.files],
         "cautions": list(plan.cautions),
         "links": [
             {
                 **link_result_dict(linked.result),
-                "reflections": _plain(linked.reflections),
-                "heights": _plain(linked.heights),
-                "confidence_along_path": _plain(linked.confidence),
+                "reflections": plain_of(linked.reflections),
+                "heights": plain_of(linked.heights),
+                "confidence_along_path": plain_of(linked.confidence),
             }
             for linked in plan.links
         ],
         "failures": [_failure(failure) for failure in plan.failures],
-        "interference": _plain(plan.interference),
+        "interference": plain_of(plan.interference),
     }
 
 
 def link_result_dict(result: LinkResult) -> dict[str, Any]:
     """One link as it stands in the list "links" of results.json."""
-    plain: dict[str, Any] = _plain(result)
+    plain: dict[str, Any] = plain_of(result)
     return plain
 
 
@@ -98,9 +98,9 @@ def _stamp(plan: StudyPlan) -> dict[str, Any]:
         "date": study.date.isoformat(),
         "file": None if study.path is None else study.path.name,
         "preset": None if study.criteria else study.preset,
-        "median_k": _plain(study.median_k),
-        "confidence": _plain(study.confidence),
-        "growth_years": _plain(study.growth_years),
+        "median_k": plain_of(study.median_k),
+        "confidence": plain_of(study.confidence),
+        "growth_years": plain_of(study.growth_years),
         "notes": list(study.notes),
     }
 
@@ -117,12 +117,12 @@ def _failure(failure: LinkFailure) -> dict[str, Any]:
     }
 
 
-def _plain(value: Any) -> Any:
+def plain_of(value: Any) -> Any:
     """Dataclasses to dictionaries, tuples to lists, numbers to Python's own, what is not finite to None."""
     if dataclasses.is_dataclass(value) and not isinstance(value, type):
-        return {field.name: _plain(getattr(value, field.name)) for field in dataclasses.fields(value)}
+        return {field.name: plain_of(getattr(value, field.name)) for field in dataclasses.fields(value)}
     if isinstance(value, (tuple, list)):
-        return [_plain(item) for item in value]
+        return [plain_of(item) for item in value]
     if isinstance(value, bool) or value is None:
         return value
     if isinstance(value, str):
