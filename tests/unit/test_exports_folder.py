@@ -246,3 +246,10 @@ def test_a_second_run_waits_briefly_and_then_gives_up(tmp_path: Path, monkeypatc
     assert visible(tmp_path) == OLD
     write_files(NEW, tmp_path)
     assert visible(tmp_path) == NEW
+
+
+def test_a_refused_folder_is_left_without_a_trace(tmp_path: Path) -> None:
+    (tmp_path / "index.html").write_text("mine")
+    with pytest.raises(OutputError, match="not written by Fellspan"):
+        write_files({**NEW, "index.html": "ours"}, tmp_path)
+    assert [path.name for path in tmp_path.iterdir()] == ["index.html"]

@@ -25,6 +25,9 @@
     panel.scrollTop = 0;
     panel.dataset.link = String(index);
     frame.classList.add("has-choice");
+    // Over a low map the key of lines would cover what was chosen; on a phone it stands below the map.
+    var key = frame.querySelector(".map-key");
+    if (key && frame.clientHeight < 340 && !window.matchMedia("(max-width: 760px)").matches) key.open = false;
     panel.querySelector("[data-close]").addEventListener("click", close);
     document.querySelectorAll(".map-path.of-link-" + index + ", .map-cut.of-link-" + index + ", .map-governing.of-link-" + index).forEach(function (part) {
       part.parentNode.appendChild(part);
