@@ -7,7 +7,7 @@ from markupsafe import Markup
 
 from fellspan import __version__
 from fellspan.design.equip_result import EquipResult, EquipRow
-from fellspan.design.equip_words import pair_words
+from fellspan.design.equip_words import down_db, pair_words, up_db
 from fellspan.errors import OutputError
 from fellspan.report import assets, wording
 from fellspan.report.reach_drawing import NARROW_WIDTH, draw_reach, reach_words, shown_rows
@@ -55,7 +55,7 @@ def cells(row: EquipRow) -> tuple[str, ...]:
     return (
         _decibels(_least(row.received_dbm.at_a, row.received_dbm.at_b), "dBm"),
         _decibels(_least(row.margin_db.at_a, row.margin_db.at_b)),
-        _decibels(row.spare_db),
+        _spare(row.spare_db),
         _available(row.availability_percent.year),
         " × ".join(widths) or "–",
         _decibels(row.off_aim_db),
@@ -87,6 +87,13 @@ def _least(one: float | None, other: float | None) -> float | None:
 
 def _decibels(value: float | None, unit: str = "dB") -> str:
     return "–" if value is None else f"{wording.number(value)} {unit}"
+
+
+def _spare(value: float | None) -> str:
+    """Never too much to spare, never too little missing."""
+    if value is None:
+        return "–"
+    return f"{down_db(value)} dB" if value >= 0.0 else f"−{up_db(-value)} dB"
 
 
 def _available(value: float | None) -> str:

@@ -156,7 +156,7 @@ def _names(rows: tuple[EquipRow, ...], result: EquipResult, across: Scale, up: S
         parts.append(
             svg.label(
                 x + shift,
-                y + 4.5,
+                y + (-3.0 if to_right else 14.0),
                 name,
                 class_="note",
                 anchor="start" if to_right else "end",
