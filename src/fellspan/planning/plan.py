@@ -11,8 +11,17 @@ from fellspan.links.interference_result import StudyInterference
 from fellspan.links.levels import PathLevels
 from fellspan.links.result import LinkResult
 from fellspan.links.site import Link
+from fellspan.links.skyline import Skyline
 from fellspan.planning.inputs import Study
 from fellspan.terrain.profile import PathProfile
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Horizons:
+    """The skyline from each end toward the other."""
+
+    a: Skyline
+    b: Skyline
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -30,6 +39,8 @@ class LinkPlan:
     heights: HeightsResult | None = None
     confidence: ConfidenceResult | None = None
     survey: tuple[SurveyPoint, ...] = ()
+    horizons: Horizons | None = None
+    """None where nobody asked for skylines."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

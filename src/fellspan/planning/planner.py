@@ -15,6 +15,7 @@ from fellspan.errors import FellspanError
 from fellspan.links.assess import AssessSettings, assess_in_full
 from fellspan.links.site import Link
 from fellspan.planning.far_away import far_cautions
+from fellspan.planning.horizons import with_horizons
 from fellspan.planning.inputs import Study
 from fellspan.planning.neighbours import neighbours_of, with_cautions
 from fellspan.planning.plan import LinkFailure, LinkPlan, StudyPlan
@@ -30,8 +31,14 @@ Progress = Callable[[int, int, str], None]
 """Called with the number of links done, the number of all, and the name of the one in hand."""
 
 
-def plan_study(study: Study, *, progress: Progress | None = None, heights: HeightSettings = _AS_USUAL) -> StudyPlan:
-    """Assess every link of a study; `heights` says how antenna heights are searched.
+def plan_study(
+    study: Study,
+    *,
+    progress: Progress | None = None,
+    heights: HeightSettings = _AS_USUAL,
+    horizons: bool = False,
+) -> StudyPlan:
+    """Assess every link of a study; `heights` says how antenna heights are searched, `horizons` adds skylines for aiming.
 
     Raises
     ------
@@ -48,7 +55,7 @@ def plan_study(study: Study, *, progress: Progress | None = None, heights: Heigh
                 progress(done, len(study.links), link.name)
             outcome = _plan_link(link, terrain, settings, water, heights, growth_years=study.growth_years)
             if isinstance(outcome, LinkPlan):
-                planned.append(outcome)
+                planned.append(with_horizons(outcome, terrain) if horizons else outcome)
             else:
                 failures.append(outcome)
         interference = neighbours_of(planned, failures, terrain, median_k=study.median_k)

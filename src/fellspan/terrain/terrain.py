@@ -89,6 +89,11 @@ class Terrain:
         return self._layers.is_bare
 
     @property
+    def layers(self) -> Layers:
+        """What was opened, for others of this room."""
+        return self._layers
+
+    @property
     def notes(self) -> tuple[str, ...]:
         """Things a person must know about the files, with the seams that profiles so far have met."""
         of_stacks = [note for stack in self._layers.stacks for note in stack.notes]
