@@ -144,10 +144,20 @@ def test_any_numbers_survive(latitude: float, longitude: float, height: float, f
 def test_one_name_for_two_things_is_refused(folder: Path) -> None:
     study = full_study(folder)
     moved = dataclasses.replace(LIGHT, position=Position(latitude_deg=1.0, longitude_deg=2.0))
-    for change in ({"b": moved}, {"radio": dataclasses.replace(RADIO, frequency_hz=1e9)}):
+    for change in ({"b": moved}, {"radio": dataclasses.replace(RADIO, power_dbm=1.0)}):
         links = (study.links[0], dataclasses.replace(study.links[0], name="third", **change))
         with pytest.raises(StudyError, match="are called"):
             study_text(dataclasses.replace(study, links=links), folder=folder)
+
+
+def test_links_may_use_one_radio_on_channels_of_their_own(folder: Path) -> None:
+    study = full_study(folder)
+    own = dataclasses.replace(RADIO, frequency_hz=5.745e9)
+    links = (*study.links, dataclasses.replace(study.links[0], name="third", radio=own))
+    text = study_text(dataclasses.replace(study, links=links), folder=folder)
+    assert text.count(f'name = "{RADIO.name}"') == 1
+    back = read_study(text, path=folder / "again.toml")
+    assert [link.radio.frequency_hz for link in back.links] == [link.radio.frequency_hz for link in links]
 
 
 def test_the_starter_reads(tmp_path: Path) -> None:

@@ -149,7 +149,7 @@ class _Assembler:
     def _link(self, table: LinkTable) -> Link | None:
         where = f"link '{table.name}'"
         a, b = self._site(table, "a"), self._site(table, "b")
-        named = self._named(f"{where}, radio", "radio", table.radio, self.radios)
+        named = self._on_channel(table, self._named(f"{where}, radio", "radio", table.radio, self.radios))
         radio = None if named is None else self._radio(table, named)
         antenna_a = self._antenna(table, "a", named)
         antenna_b = self._antenna(table, "b", named)
@@ -167,6 +167,21 @@ class _Assembler:
             target_availability_percent=table.target_availability,
             power_rule=rule,
         )
+
+    def _on_channel(self, link: LinkTable, table: RadioTable | None) -> RadioTable | None:
+        """The radio of a link, on the channel that the link states."""
+        if table is None or link.frequency is None:
+            return table
+        if table.duplex == "frequency":
+            self.problems.append(
+                Problem(
+                    f"link '{link.name}', frequency",
+                    f"radio '{table.name}' sends on a pair of frequencies",
+                    ("give the pair with the radio, transmit_a and transmit_b, or drop frequency here",),
+                )
+            )
+            return table
+        return table.model_copy(update={"frequency": link.frequency})
 
     def _radio(self, link: LinkTable, table: RadioTable) -> Radio | None:
         if link.high_end is not None and table.duplex != "frequency":

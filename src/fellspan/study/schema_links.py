@@ -168,6 +168,9 @@ class LinkTable(Table):
         description="Share of the year for which each direction must carry the wanted modulation.",
         examples=["99.99 %"],
     )
+    frequency: Frequency | None = Field(
+        default=None, description="Channel of this link, where it is not the radio's.", examples=["5.745 GHz"]
+    )
     high_end: Literal["a", "b"] | None = Field(
         default=None, description="End that transmits the higher frequency of the radio's pair, for this link."
     )

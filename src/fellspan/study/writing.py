@@ -13,8 +13,16 @@ from fellspan.links.radio import Radio
 from fellspan.links.site import Aim, Antenna, Link, PatternOrigin, Site
 from fellspan.planning.inputs import Study
 from fellspan.study.notes import position_note
-from fellspan.study.toml_text import decibels, metres, number, plain, quoted, table
-from fellspan.study.writing_radio import heard_text, high_end_of, line_pairs, one_radio_each, radio_text, study_tables
+from fellspan.study.toml_text import decibels, hertz, metres, number, plain, quoted, table
+from fellspan.study.writing_radio import (
+    channel_of,
+    heard_text,
+    high_end_of,
+    line_pairs,
+    one_radio_each,
+    radio_text,
+    study_tables,
+)
 from fellspan.terrain.sources import CoverSource, ObstacleSource, RasterSource
 
 _ABOVE = {"ground": "above ground", "roof": "above roof", "sea": "above sea level"}
@@ -223,6 +231,7 @@ def _link(link: Link, sites: dict[str, Site], radios: dict[str, Radio]) -> str:
         ("roof_edge_b", metres(link.b.roof_edge_m)),
         ("parapet_a", metres(link.a.parapet_m)),
         ("parapet_b", metres(link.b.parapet_m)),
+        ("frequency", hertz(channel_of(link, radios))),
         ("high_end", high_end_of(link, radios)),
         *line_pairs(link),
     )

@@ -187,7 +187,7 @@ def _months(values: Iterable[float] | None) -> str | None:
 
 
 def one_radio_each(links: Iterable[Link]) -> dict[str, Radio]:
-    """Radios by name; links may turn the pair of one and the same radio.
+    """Radios by name; links may turn the pair of one and the same radio, or use it on a channel of their own.
 
     Raises
     ------
@@ -197,7 +197,8 @@ def one_radio_each(links: Iterable[Link]) -> dict[str, Radio]:
     found: dict[str, Radio] = {}
     for link in links:
         first = found.setdefault(link.radio.name, link.radio)
-        if first not in (link.radio, turned(link.radio)):
+        retuned = replace(link.radio, frequency_hz=first.frequency_hz)
+        if first not in (link.radio, turned(link.radio)) and (first.duplex == "frequency" or first != retuned):
             raise StudyError(f"two different radios are called '{link.radio.name}'", "give each one a name of its own")
     return found
 
@@ -205,6 +206,11 @@ def one_radio_each(links: Iterable[Link]) -> dict[str, Radio]:
 def turned(radio: Radio) -> Radio:
     """The radio with its pair of frequencies the other way about."""
     return replace(radio, frequency_a_hz=radio.frequency_b_hz, frequency_b_hz=radio.frequency_a_hz)
+
+
+def channel_of(link: Link, radios: dict[str, Radio]) -> float | None:
+    """The link's own frequency, Hz, where it is not that of its radio."""
+    return None if link.radio.frequency_hz == radios[link.radio.name].frequency_hz else link.radio.frequency_hz
 
 
 def high_end_of(link: Link, radios: dict[str, Radio]) -> str | None:
