@@ -7,7 +7,6 @@ from typing import Final
 
 import numpy as np
 from numpy.typing import ArrayLike
-from scipy.special import ndtr, ndtri
 
 from fellspan.propagation._arrays import FloatArray, Result, as_floats, as_result, positive, quiet
 from fellspan.propagation.refraction import inverse_k_from_gradient
@@ -22,6 +21,8 @@ def gradient_spread_n_per_km(
 
     NaN where the tail does not lie above the median. Source key: gradient-normal-law.
     """
+    from scipy.special import ndtri  # heavy to load, and most callers never come here
+
     with quiet():
         deviations = ndtri(as_floats(tail_percent) / 100.0)
         spread = (as_floats(tail_n_per_km) - as_floats(median_n_per_km)) / positive(deviations)
@@ -64,6 +65,8 @@ def diffraction_outage_percent(
     gradient of a map is no average over a path, so that on paths beyond some 20 km the result is pessimistic.
     Source keys: gradient-normal-law, p452-18-k.
     """
+    from scipy.special import ndtr
+
     nodes = as_floats(inverse_k)
     if nodes.ndim != 1 or nodes.size < 2 or not np.all(np.diff(nodes) > 0.0):
         raise ValueError("inverse_k must be one rising row of at least two values")
@@ -89,4 +92,6 @@ def diffraction_outage_percent(
 
 def _between(start: FloatArray, end: FloatArray, median: FloatArray, spread: FloatArray) -> FloatArray:
     """Share of time between two values of 1/k; the upper tail is used so that small shares keep their digits."""
+    from scipy.special import ndtr
+
     return np.asarray(ndtr((median - start) / spread) - ndtr((median - end) / spread), dtype=np.float64)
