@@ -32,6 +32,7 @@ from fellspan.quantities import (
     parse_threshold_dbm,
     parse_transmit_power_dbm,
 )
+from fellspan.study.measures import parse_width_hz
 from fellspan.study.messages import did_you_mean
 from fellspan.study.reading import load_study
 from fellspan.vocabulary import GapPolicy, Polarization
@@ -212,7 +213,7 @@ def _with_radio_options(radio: Radio, asked: EquipAsked) -> Radio:
             radio, threshold_dbm=parse_threshold_dbm(asked.threshold), modulations=(), wanted=None
         )
     if asked.channel is not None:
-        radio = dataclasses.replace(radio, bandwidth_hz=parse_frequency_hz(asked.channel))
+        radio = dataclasses.replace(radio, bandwidth_hz=parse_width_hz(asked.channel))
     return radio
 
 
