@@ -98,6 +98,16 @@ def changed(line: int, text: str | None, source: str = CUTS) -> str:
     return "\n".join(lines) + "\n"
 
 
+def mixed(relative: str) -> str:
+    """One plane in dBi, the other one relative to its own peak."""
+    lines = CUTS.splitlines()
+    for number, line in enumerate(lines[3:], start=3):
+        plane, angle, gain = line.split(",")
+        if plane == relative:
+            lines[number] = f"{plane},{angle},{float(gain) - REAL.peak_gain_dbi + 0.5:.4f}"
+    return "\n".join(lines) + "\n"
+
+
 @pytest.mark.parametrize(
     ("text", "told"),
     [
@@ -109,7 +119,21 @@ def changed(line: int, text: str | None, source: str = CUTS) -> str:
         (changed(10, "sideways,-174,-20"), r"line 10: plane 'sideways'"),
         (changed(10, "azimuth,400,-20"), r"line 10: angle 400 degrees is outside the circle"),
         (changed(10, "azimuth,-181,-20"), r"line 10: angle -181"),
-        (changed(10, "azimuth,-173,14"), r"line 1[01]: the azimuth plane has -173 degrees twice"),
+        (changed(10, "azimuth,-173,14"), r"line 11: the azimuth plane has -173 degrees twice, with different gains"),
+        (CUTS + CUTS.splitlines()[19] + "\n", r"line 726: the azimuth plane has -164 degrees twice\n.*in line 20"),
+        (
+            DENSE + DENSE.splitlines()[110] + "\n",
+            r"line 16384: direction -178, -58 degrees stands twice\n.*in line 111",
+        ),
+        (mixed("elevation"), r"line 545: the elevation plane peaks at 0\.0 dB, but the azimuth plane has 1\d\.\d dB"),
+        (mixed("azimuth"), r"line 545: the elevation plane peaks at 1\d\.\d dB, but the azimuth plane has 0\.0 dB"),
+        (
+            CUTS
+            + "".join(
+                f"{plane}-cross,{angle},40\n" for plane in ("azimuth", "elevation") for angle in range(-180, 180)
+            ),
+            r"line 726: cross-polar gain 40 dB stands above the peak",
+        ),
         (
             "\n".join(CUTS.splitlines()[:100] + CUTS.splitlines()[110:]),
             r"line 101: the azimuth plane has a gap of 11 degrees",
@@ -122,11 +146,11 @@ def changed(line: int, text: str | None, source: str = CUTS) -> str:
         ("# name: again\n" + CUTS, r"line 2: 'name' is said twice"),
         ("# electric_plane: diagonal\n" + CUTS, r"line 1: electric_plane 'diagonal'"),
         (CUTS.replace("gain_dbi", "relative_db"), "relative"),
-        ("# gain: 3 dBi\n" + CUTS, "says 3 dBi"),
-        ("# gain: 15 dBi\n" + CUTS.replace("gain_dbi", "relative_db"), "must peak at 0 dB"),
+        ("# gain: 3 dBi\n" + CUTS, r"line 185: the gain line says 3 dBi"),
+        ("# gain: 15 dBi\n" + CUTS.replace("gain_dbi", "relative_db"), r"line 185: relative gains must peak at 0 dB"),
         (
             CUTS.replace("plane,angle_deg,gain_dbi", "plane,angle_deg,gain_dbi,relative_db"),
-            "mixes absolute and relative",
+            r"line 3 mixes absolute and relative",
         ),
         (CUTS.replace("plane,angle_deg,gain_dbi", "plane;angle;gain"), "no gain_dbi or relative_db column"),
         (CUTS.replace("plane,angle_deg", "plane,degrees"), "degrees"),

@@ -29,6 +29,11 @@ from fellspan.quantities import parse_frequency_hz, parse_gain_dbi, parse_length
 PLANES = ("azimuth", "elevation", "azimuth-cross", "elevation-cross")
 WIDEST_STEP_DEG = 5.0
 """A wider step between angles of a cut is taken for a gap."""
+PLANES_AGREE_DB = 3.0
+"""Straight ahead both planes show one beam: further apart than this they are not of one antenna on one scale (our own rule)."""
+
+_SEAMS = (-180.0, 0.0)
+"""Where the circle closes: -180 and 180, or 0 and 360, may both stand in a file, if they agree."""
 
 _HEADER_KEYS = ("name", "frequency", "gain", "electric_plane", "size")
 
@@ -62,7 +67,8 @@ def read_pattern(path: str | Path) -> Pattern:
     try:
         text = path.read_text(encoding="utf-8-sig")
     except (OSError, UnicodeDecodeError) as problem:
-        raise AntennaError(f"cannot read pattern file {path.name}: {problem}") from None
+        told = problem.strerror if isinstance(problem, OSError) and problem.strerror else problem
+        raise AntennaError(f"cannot read pattern file {path.name}: {told}") from None
     return parse_pattern(text, file=path.name)
 
 
@@ -77,22 +83,25 @@ def parse_pattern(text: str, *, file: str) -> Pattern:
     reader = csv.reader((row for _, row in table), quoting=csv.QUOTE_NONE)
     lines = [number for number, _ in table]
     columns = [column.strip() for column in next(reader, [])]
-    absolute = _gain_column(columns, file)
+    absolute = _gain_column(columns, f"{file}, line {lines[0]}" if lines else file)
     rows = list(_rows(reader, lines[1:], columns, file))
     if not rows:
         raise AntennaError(f"{file} holds no gains", "give at least one row for each angle of both planes")
     stated = _quantity(header, "gain", parse_gain_dbi, file) if "gain" in header else None
     if not absolute and stated is None:
         raise AntennaError(f"{file}: gains are relative, but no '# gain: ... dBi' line says relative to what")
-    peak = max(row.gain for row in rows if "cross" not in row.plane)
+    highest = max((row for row in rows if "cross" not in row.plane), key=lambda row: row.gain, default=None)
+    if highest is None:
+        raise AntennaError(f"{file} has cross-polar rows only", "give the azimuth and elevation planes too")
+    peak = highest.gain
     if absolute and stated is not None and abs(stated - peak) > 0.5:
         raise AntennaError(
-            f"{file}: the gain line says {stated:g} dBi, but the highest gain in the rows is {peak:g} dBi",
+            f"{file}, line {highest.line}: the gain line says {stated:g} dBi, but the highest gain in the rows is {peak:g} dBi",
             "are the rows relative? then name the column relative_db",
         )
     if not absolute and abs(peak) > 0.5:
         raise AntennaError(
-            f"{file}: relative gains must peak at 0 dB, but the highest is {peak:g} dB",
+            f"{file}, line {highest.line}: relative gains must peak at 0 dB, but the highest is {peak:g} dB",
             "are the rows absolute? then name the column gain_dbi",
         )
     gain = peak if absolute else float(stated or 0.0)
@@ -105,6 +114,7 @@ def parse_pattern(text: str, *, file: str) -> Pattern:
                 )
         if ("azimuth-cross" in cuts) != ("elevation-cross" in cuts):
             raise AntennaError(f"{file} has cross-polar rows of one plane only", "give both cross-polar cuts, or none")
+        _refuse_mixed(rows, cuts["azimuth"], cuts["elevation"], peak, file)
         return pattern_from_cuts(
             name=name,
             frequency_hz=frequency,
@@ -228,6 +238,26 @@ def _rows(reader: Iterable[list[str]], lines: list[int], columns: list[str], fil
             yield _Row(line=line, plane="", first=_around(azimuth), second=elevation, gain=gain)
 
 
+def _refuse_mixed(rows: list[_Row], azimuth: MeasuredCut, elevation: MeasuredCut, peak: float, file: str) -> None:
+    """Refuse planes that are not of one antenna on one scale, such as one plane absolute and the other relative."""
+    for row in rows:
+        if "cross" in row.plane and row.gain > peak:
+            raise AntennaError(
+                f"{file}, line {row.line}: cross-polar gain {row.gain:g} dB stands above the peak, {peak:g} dB",
+                "are absolute and relative gain mixed?",
+            )
+    # An azimuth cut runs through the horizon or, of a tilted beam, through the middle of the beam: it has one of both levels.
+    ahead = float(azimuth.at(np.array([0.0]))[0])
+    levels = float(elevation.at(np.array([0.0]))[0]), float(np.max(elevation.relative_db))
+    if min(abs(ahead - level) for level in levels) > PLANES_AGREE_DB:
+        line = max((row for row in rows if row.plane == "elevation"), key=lambda row: row.gain).line
+        raise AntennaError(
+            f"{file}, line {line}: the elevation plane peaks at {round(levels[1] + peak, 1) + 0.0:.1f} dB, but the azimuth plane has "
+            f"{round(ahead + peak, 1) + 0.0:.1f} dB at 0 degrees",
+            "is one absolute and the other relative? or does the beam not stand at azimuth 0?",
+        )
+
+
 def _around(angle: float) -> float:
     return (angle + 180.0) % 360.0 - 180.0
 
@@ -238,10 +268,12 @@ def _cut(rows: list[_Row], plane: str, peak: float, file: str) -> MeasuredCut:
     for row in own:
         step = (row.first - previous.first) % 360.0
         if step == 0.0 and row is not previous:
-            if abs(row.gain - previous.gain) > 0.05:
+            again, other = max(row.line, previous.line), min(row.line, previous.line)
+            if row.first not in _SEAMS or abs(row.gain - previous.gain) > 0.05:
+                gains = "" if row.gain == previous.gain else ", with different gains"
                 raise AntennaError(
-                    f"{file}, line {row.line}: the {plane} plane has {row.first:g} degrees twice, with different gains",
-                    f"the other one stands in line {previous.line}",
+                    f"{file}, line {again}: the {plane} plane has {row.first:g} degrees twice{gains}",
+                    f"the other one stands in line {other}",
                 )
         elif step > WIDEST_STEP_DEG or row is previous:
             raise AntennaError(
@@ -264,15 +296,17 @@ def _grid(rows: list[_Row], peak: float, file: str) -> DenseGrid:
                 f"{file}: the {label} angles are not an even grid over {span:g} degrees in steps up to {WIDEST_STEP_DEG:g}"
             )
     table = np.full((elevation.size, azimuth.size), np.nan)
-    seen: dict[tuple[int, int], int] = {}
+    seen: dict[tuple[int, int], _Row] = {}
     for row in rows:
         at = int(np.searchsorted(elevation, row.second)), int(np.searchsorted(azimuth, row.first))
-        if at in seen and abs(table[at] - (row.gain - peak)) > 0.05:
+        other = seen.get(at)
+        if other is not None and (row.first not in _SEAMS or abs(row.gain - other.gain) > 0.05):
+            gains = "" if row.gain == other.gain else ", with different gains"
             raise AntennaError(
-                f"{file}, line {row.line}: direction {row.first:g}, {row.second:g} degrees stands twice, with different gains",
-                f"the other one stands in line {seen[at]}",
+                f"{file}, line {row.line}: direction {row.first:g}, {row.second:g} degrees stands twice{gains}",
+                f"the other one stands in line {other.line}",
             )
-        seen[at] = row.line
+        seen[at] = row
         table[at] = row.gain - peak
     holes = np.argwhere(np.isnan(table))
     if holes.size:
