@@ -5,7 +5,7 @@ Puts the pieces of this room together and holds no formula itself; knows nothing
 
 import datetime as dt
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING, Final, Literal
 
 import numpy as np
@@ -27,8 +27,9 @@ from fellspan.links.minima import worst_windows
 from fellspan.links.own_building import Standing, standing, with_ground_at_end, with_nodes, with_roof_edge
 from fellspan.links.radiated import exposure_pair, power_cautions, power_checks
 from fellspan.links.result import EndResult, Ends, LinkResult
-from fellspan.links.signal import signal_of, worse_of
+from fellspan.links.signal import signal_of
 from fellspan.links.signal_path import Weather
+from fellspan.links.signal_verdict import judged
 from fellspan.links.signal_words import signal_sentences
 from fellspan.links.site import Link
 from fellspan.links.uncertainty import clearance_errors_m
@@ -180,7 +181,7 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
     )
     trees = trees_in_zone(stands, levels)
     wanted_db = link.wanted_margin_db
-    by_margin = verdicts.signal_verdict(signal.margin_db, wanted_db=wanted_db, trees=trees)
+    signal_verdict, why = judged(signal.margin_db, wanted_db=wanted_db, trees=trees, holds=signal.holds)
     said = signal_sentences(
         link, signal.result, received_dbm=signal.received_dbm, margin_db=signal.margin_db, trees=trees
     )
@@ -192,7 +193,7 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
         a=link.a.name,
         b=link.b.name,
         verdict=verdict,
-        signal_verdict=worse_of(by_margin, signal.at_most),
+        signal_verdict=signal_verdict,
         basis=basis,
         confidence=confidence,
         confidence_asked=settings.confidence,
@@ -237,7 +238,7 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
         antennas=antennas,
         modulation=signal.modulation,
         availability_percent=signal.result.availability_percent,
-        signal=signal.result,
+        signal=replace(signal.result, verdict_reason=why),
         power=power,
         exposure=exposure_pair(link, rule=settings.exposure_rule),
     )

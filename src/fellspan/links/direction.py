@@ -315,6 +315,7 @@ def _workings(
             value=eirp,
             unit="dBm",
             formula="power - branching - feeder + gain toward the receiver",
+            inputs=tuple(WorkingInput(label=term.label, value=term.signed, unit="dB") for term in terms[:4]),
         ),
         Working(
             key="received",

@@ -6,7 +6,7 @@ Explains figures that `fading` and `receivers` worked out; computes none.
 from fellspan.links.fading import Fading, Receiver
 from fellspan.links.radio import Radio
 from fellspan.links.receivers import ASSUMED_NOISE_FIGURE_DB, UNNAMED
-from fellspan.links.signal_result import ModulationResult, Working, WorkingInput
+from fellspan.links.signal_result import DirectionResult, ModulationResult, Shares, Working, WorkingInput
 from fellspan.propagation import minutes_per_year, out_of_range
 
 MULTIPATH_KEYS = {
@@ -161,6 +161,55 @@ def fading_workings(fading: Fading) -> list[Working]:
     return found
 
 
+def _month_breaches(percent: float) -> tuple[str, ...]:
+    return out_of_range("p530-19-worst-month", worst_month_percent=percent)
+
+
+def both_ways_workings(
+    *,
+    directions: tuple[DirectionResult, DirectionResult],
+    year: Shares,
+    worst_month: Shares,
+    common: bool,
+) -> tuple[Working, ...]:
+    """Availability of the wanted modulation both ways at once; `common` where both directions use one frequency."""
+    multipath = (
+        "the larger multipath (one frequency)" if common else "1 - (1 - pa)(1 - pb) of multipath (two frequencies)"
+    )
+    there, back = (one.availability_percent for one in directions)
+    found = []
+    for key, label, shares, ends in (
+        ("availability_both_ways", "average year", year, (there.year, back.year)),
+        (
+            "availability_worst_month_both_ways",
+            "average worst month",
+            worst_month,
+            (there.worst_month, back.worst_month),
+        ),
+    ):
+        out = None if shares.total is None or key != "availability_both_ways" else float(minutes_per_year(shares.total))
+        found.append(
+            Working(
+                key=key,
+                label=f"availability both ways at once, {label}",
+                value=None if shares.total is None else 100.0 - shares.total,
+                unit="%",
+                formula=f"100 - (larger rain + {multipath} + larger low k)",
+                inputs=(
+                    _given("A to B", ends[0], "%"),
+                    _given("B to A", ends[1], "%"),
+                    _given("rain", shares.rain, "%"),
+                    _given("multipath", shares.multipath, "%"),
+                    _given("low k", shares.diffraction, "%"),
+                    *(() if out is None else (_given("outage", out, "minutes a year"),)),
+                ),
+                source_key="outage-rules",
+                note="level short without any fading" if shares.dominant == "level" else "",
+            )
+        )
+    return tuple(found)
+
+
 def outage_workings(results: tuple[ModulationResult, ...], *, fading: Fading, receiver: Receiver) -> list[Working]:
     """Outage of each modulation by cause, and its availability."""
     found = []
@@ -214,6 +263,17 @@ def outage_workings(results: tuple[ModulationResult, ...], *, fading: Fading, re
                 else "worst month by p = Q p_year, Q = 2.85 p_year^-0.13",
                 inputs=(_given("worst month", worst.multipath, "%"),),
                 source_key="p2001-6-worst-month" if older else "p530-19-worst-month",
+                note="" if older or not worst.multipath else "; ".join(_month_breaches(worst.multipath)),
+            ),
+            Working(
+                key=f"rain_outage_worst_month:{name}",
+                label=f"outage{_of(name)} by rain, worst month",
+                value=worst.rain,
+                unit="%",
+                formula="Q p_year, Q = 2.85 p_year^-0.13, at most 12",
+                inputs=(_given("average year", year.rain, "%"),),
+                source_key="p530-19-worst-month",
+                note="" if not worst.rain else "; ".join(_month_breaches(worst.rain)),
             ),
             Working(
                 key=f"diffraction_outage:{name}",
@@ -222,6 +282,19 @@ def outage_workings(results: tuple[ModulationResult, ...], *, fading: Fading, re
                 unit="%",
                 formula="share of time for which diffraction costs more than the margin and what the level counts already",
                 inputs=(margin, _given("diffraction and trees in the level", fading.loss_in_level_db, "dB")),
+                source_key="gradient-normal-law",
+            ),
+            Working(
+                key=f"diffraction_outage_worst_month:{name}",
+                label=f"outage{_of(name)} by low k, worst month",
+                value=worst.diffraction,
+                unit="%",
+                formula="the same, gradient at 99.9 % of the worst month; at least the year, at most 12 times it",
+                inputs=(
+                    margin,
+                    _given("99.9 % of the worst month", fading.spread.worst_month, "N/km"),
+                    _given("average year", year.diffraction, "%"),
+                ),
                 source_key="gradient-normal-law",
             ),
             Working(

@@ -69,6 +69,7 @@ def multipath_breaches(
     if not percent:
         return ()
     found = list(out_of_range("p530-19-fade-depths", occurrence_percent=percent))
+    low_end = {"distance_frequency_m_hz": geometry.length_m * frequency_hz}
     if figures.multipath_edition == "P.530-19" and figures.dn75 is not None:
         height = multipath_clearance_m(
             geometry.length_m,
@@ -84,5 +85,13 @@ def multipath_breaches(
             lower_amsl_m=min(geometry.a_amsl_m, geometry.b_amsl_m),
             clearance_m=float(height),
             dn75=figures.dn75.value,
+            **low_end,
         )
+    else:
+        # The text of -17 was not read; the law of -19 stands on the same kind of measurements. Its least length is left out:
+        # there multipath counts from 5 km on.
+        borrowed = out_of_range(
+            "p530-19-multipath", frequency_hz=frequency_hz, inclination_mrad=geometry.inclination_mrad, **low_end
+        )
+        found += [f"{one} (taken for edition -17 too, whose range was not read)" for one in borrowed]
     return tuple(found)

@@ -65,20 +65,24 @@ def noise_dbm(radio: Radio) -> float | None:
 
 
 def heard_dbm(site: Site, radio: Radio, *, frequency_hz: float, bearing_deg: float) -> float | None:
-    """Strongest noise floor stated for that frequency and direction, dBm in the channel; None where none is."""
+    """Strongest noise floor stated for that channel and direction, dBm in the channel; None where none is.
+
+    One that holds for a part of the channel counts as if it held for all of it, on the safe side.
+    """
     width = radio.bandwidth_hz
+    half = (width or 0.0) / 2.0
     levels = [
         floor.level_dbm + (10.0 * math.log10(width / floor.bandwidth_hz) if width and floor.bandwidth_hz else 0.0)
         for floor in site.noise_floors
-        if _holds(floor, frequency_hz=frequency_hz, bearing_deg=bearing_deg)
+        if _holds(floor, low_hz=frequency_hz - half, high_hz=frequency_hz + half, bearing_deg=bearing_deg)
     ]
     return max(levels, default=None)
 
 
-def _holds(floor: NoiseFloor, *, frequency_hz: float, bearing_deg: float) -> bool:
-    if floor.low_hz is not None and frequency_hz < floor.low_hz:
+def _holds(floor: NoiseFloor, *, low_hz: float, high_hz: float, bearing_deg: float) -> bool:
+    if floor.low_hz is not None and high_hz < floor.low_hz:
         return False
-    if floor.high_hz is not None and frequency_hz > floor.high_hz:
+    if floor.high_hz is not None and low_hz > floor.high_hz:
         return False
     if floor.bearing_deg is None:
         return True

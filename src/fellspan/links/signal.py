@@ -5,13 +5,13 @@ Joins the pieces of this room and the climate; knows no terrain files, no study 
 
 from dataclasses import dataclass
 
-from fellspan.climate.figures import ClimateFigures, Figure
+from fellspan.climate.figures import ClimateFigures, Figure, MultipathEdition
 from fellspan.links.budget import line_loss_db, pointing_db
 from fellspan.links.direction import Direction, shares_of
 from fellspan.links.fading import Fading, Geometry
+from fellspan.links.fading_workings import both_ways_workings
 from fellspan.links.own_building import Standing
 from fellspan.links.path_loss import PathLoss
-from fellspan.links.receivers import blocked
 from fellspan.links.result import AntennasResult, AtEnds, Losses
 from fellspan.links.signal_path import SignalPath, Weather, both_directions, has_margin, path_of
 from fellspan.links.signal_result import (
@@ -19,22 +19,24 @@ from fellspan.links.signal_result import (
     ClimateUsed,
     Editions,
     Periods,
+    Shares,
     SignalResult,
+    Working,
 )
+from fellspan.links.signal_verdict import Hold, at_most_of, holds_of, worse_of
 from fellspan.links.signal_words import notes_of, signal_cautions
 from fellspan.links.site import Link
 from fellspan.propagation import minutes_per_year, two_way_outage
 from fellspan.terrain.profile import PathProfile
-from fellspan.vocabulary import SignalVerdict
 
-BETTER_TO_WORSE: tuple[SignalVerdict, ...] = ("meets", "marginal", "below")
+__all__ = ["Signal", "at_most_of", "both_ways", "signal_of", "worse_of"]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Signal:
     """What the engine hands to `assess`.
 
-    `at_most` is the best verdict that target, timing and channels leave; None where they say nothing.
+    `holds` says what verdict target, timing and channels leave; empty where they say nothing.
     """
 
     result: SignalResult
@@ -42,7 +44,7 @@ class Signal:
     received_dbm: AtEnds
     margin_db: AtEnds
     modulation: str | None
-    at_most: SignalVerdict | None
+    holds: tuple[Hold, ...]
     cautions: tuple[str, ...]
 
 
@@ -103,23 +105,16 @@ def signal_of(
         workings=workings,
     )
     figures, geometry, losses, transmit_hz = path.figures, path.geometry, path.losses, link.radio.transmit_hz
-    result = _result(link, figures, there, back, fadings=fadings, geometry=geometry, weather=weather)
+    result = _result(link, figures, there, back, fadings=fadings, geometry=geometry, weather=weather, workings=workings)
     return Signal(
         result=result,
         losses=_losses(link, losses[transmit_hz[0]], fadings[0], polarization_db=polarization_db),
         received_dbm=AtEnds(at_a=back.result.received_dbm, at_b=there.result.received_dbm),
         margin_db=AtEnds(at_a=back.result.margin_db, at_b=there.result.margin_db),
         modulation=there.result.wanted,
-        at_most=at_most_of(link, there, back, length_m=geometry.length_m),
+        holds=holds_of(link, there, back, length_m=geometry.length_m),
         cautions=signal_cautions(link, profile, result, fadings=fadings),
     )
-
-
-def worse_of(verdict: SignalVerdict | None, at_most: SignalVerdict | None) -> SignalVerdict | None:
-    """A verdict held down to what else allows; None where no margin is known."""
-    if verdict is None or at_most is None:
-        return verdict
-    return max(verdict, at_most, key=BETTER_TO_WORSE.index)
 
 
 def _losses(link: Link, loss: PathLoss, fading: Fading, *, polarization_db: float | None) -> Losses:
@@ -149,6 +144,7 @@ def _result(
     fadings: tuple[Fading, ...],
     geometry: Geometry,
     weather: Weather,
+    workings: bool,
 ) -> SignalResult:
     periods, minutes, cause = both_ways(there, back, common=link.radio.shares_frequency)
     target = link.target_availability_percent
@@ -172,24 +168,28 @@ def _result(
             rain=f"P.530-{weather.rain_edition}" if has_rain else None,
             rain_reading=weather.rain_reading if has_rain else None,
             multipath=edition,
-            worst_month=None if edition is None else ("P.530-19" if edition == "P.530-19" else "P.2001-6"),
+            worst_month=_worst_month_edition(edition, has_rain=has_rain),
         ),
         climate=_climate_used(figures),
         trees=fadings[0].loss.trees,
         notes=notes_of(link, figures, (there.result, back.result), fadings=fadings, geometry=geometry),
+        workings=_workings(there, back, common=link.radio.shares_frequency) if workings else (),
     )
+
+
+def _worst_month_edition(multipath: MultipathEdition | None, *, has_rain: bool) -> str | None:
+    """Rain goes by P.530-19 whatever multipath goes by."""
+    if multipath is None or multipath == "P.530-19":
+        return None if multipath is None and not has_rain else "P.530-19"
+    return "P.2001-6 for multipath, P.530-19 for rain" if has_rain else "P.2001-6"
 
 
 def both_ways(there: Direction, back: Direction, *, common: bool) -> tuple[Periods, float | None, str | None]:
     """Availability, minutes out a year and dominant cause of both directions at once; `common` where they share a frequency."""
-    margins = there.result.margin_db, back.result.margin_db
-    if there.year is None or back.year is None or margins[0] is None or margins[1] is None:
+    joined = _joined(there, back, common=common)
+    if joined is None:
         return NOT_COMPUTED, None, None
-    assert there.worst_month is not None
-    assert back.worst_month is not None
-    least = min(margins[0], margins[1])
-    year = shares_of(two_way_outage(there.year, back.year, common_multipath=common), margin_db=least)
-    worst = shares_of(two_way_outage(there.worst_month, back.worst_month, common_multipath=common), margin_db=least)
+    year, worst = joined
     return (
         Periods(
             year=None if year.total is None else 100.0 - year.total,
@@ -197,6 +197,29 @@ def both_ways(there: Direction, back: Direction, *, common: bool) -> tuple[Perio
         ),
         None if year.total is None else float(minutes_per_year(year.total)),
         year.dominant,
+    )
+
+
+def _joined(there: Direction, back: Direction, *, common: bool) -> tuple[Shares, Shares] | None:
+    """Outage of both directions at once, of the year and of the worst month; None without a margin."""
+    margins = there.result.margin_db, back.result.margin_db
+    if there.year is None or back.year is None or margins[0] is None or margins[1] is None:
+        return None
+    assert there.worst_month is not None
+    assert back.worst_month is not None
+    least = min(margins[0], margins[1])
+    return (
+        shares_of(two_way_outage(there.year, back.year, common_multipath=common), margin_db=least),
+        shares_of(two_way_outage(there.worst_month, back.worst_month, common_multipath=common), margin_db=least),
+    )
+
+
+def _workings(there: Direction, back: Direction, *, common: bool) -> tuple[Working, ...]:
+    joined = _joined(there, back, common=common)
+    if joined is None:
+        return ()
+    return both_ways_workings(
+        directions=(there.result, back.result), year=joined[0], worst_month=joined[1], common=common
     )
 
 
@@ -227,25 +250,3 @@ def _climate_used(figures: ClimateFigures) -> tuple[ClimateUsed, ...]:
         for name, figure in found
         if figure is not None
     )
-
-
-def at_most_of(link: Link, there: Direction, back: Direction, *, length_m: float) -> SignalVerdict | None:
-    """The best verdict that the target, the radio's timing and the channels leave."""
-    allowed: list[SignalVerdict] = []
-    reach = link.radio.greatest_distance_m
-    if reach is not None and length_m > reach:
-        allowed.append("below")
-    for one, site in ((there, link.b), (back, link.a)):
-        if blocked(site, link.radio, frequency_hz=one.result.frequency_hz) is not None:
-            allowed.append("below")
-        target = link.target_availability_percent
-        if target is None or one.result.margin_db is None:
-            continue
-        share = one.result.availability_percent.year
-        if share is not None and share >= target:
-            allowed.append("meets")
-        elif share is None or ((nearly := one.nearly()) is not None and nearly >= target):
-            allowed.append("marginal")
-        else:
-            allowed.append("below")
-    return max(allowed, key=BETTER_TO_WORSE.index, default=None)

@@ -191,3 +191,7 @@ class SignalResult:
     trees: TreeLoss
     notes: tuple[str, ...]
     """What was not computed and how to have it, and what else a person should know of the figures."""
+    verdict_reason: str = ""
+    """What decided the signal verdict of the link, in words; empty where no margin is known."""
+    workings: tuple[Working, ...] = ()
+    """Of the figures of both ways at once."""

@@ -18,6 +18,8 @@ from fellspan.terrain.profile import PathProfile
 
 LEAST_PERCENT, LEAST_MINUTES = 0.001, 5.0
 """Outages of less are not told apart: the law of rain ends at 0.001 % of the year, some 5 minutes."""
+MOST_RAIN_PERCENT: Final = 1.0
+"""Where the law of rain ends at the other side; outages of less than it knows get a note instead of a caution."""
 _CAUSES: Final = {"rain": "rain", "multipath": "multipath", "diffraction": "low k"}
 
 
@@ -62,7 +64,7 @@ def _availability(result: SignalResult) -> str:
     if result.dominant_cause == "level":
         return f"The level is short even in clear air, so the link is not available.{asked}"
     cause = _CAUSES.get(result.dominant_cause or "", "")
-    mostly = f", mostly by {cause}" if cause else ""
+    mostly = f", mostly by {cause}" if cause and minutes >= LEAST_MINUTES else ""
     return (
         f"Available {percent_text(year)} of an average year both ways at once ({minutes_text(minutes)} out{mostly}), "
         f"{percent_text(worst)} of its worst month.{asked}"
@@ -200,11 +202,15 @@ def signal_cautions(
         found += [f"Gases: {one}." for one in gas_breaches(frequency_hz=loss.frequency_hz, loss_db=loss.gases_db)]
         if loss.trees.way == "through" and loss.vegetation_db > 0.0:
             found += [f"Trees: {one}." for one in woodland_breaches(frequency_hz=loss.frequency_hz)]
-        if result.availability_percent.year is not None:
-            found += [f"Rain: {one}." for one in fading.rain.breaches]
-            found += [f"Multipath: {one}." for one in fading.multipath_breaches]
-            found += [f"Second antenna: {one}." for one in _diversity_breaches(link, fading)]
-            found += [f"Cross-polar outage in rain: {one}." for one in _cross_breaches(link, fading)]
+        # Each figure is shown by itself, also where the availability lacks another one.
+        found += [f"Rain: {one}." for one in fading.rain.breaches]
+        found += [f"Multipath: {one}." for one in fading.multipath_breaches]
+        found += [f"Second antenna: {one}." for one in _diversity_breaches(link, fading)]
+        found += [f"Cross-polar outage in rain: {one}." for one in _cross_breaches(link, fading)]
+    for direction in (result.a_to_b, result.b_to_a):
+        share = _wanted_rain(direction)
+        if share is not None and share > MOST_RAIN_PERCENT:
+            found += [f"Rain: {one}." for one in out_of_range("p530-19-rain-percent", percent=share)]
     return tuple(dict.fromkeys(found))
 
 

@@ -26,7 +26,8 @@ FADING_SOURCES: Final = (
         edition="19",
         clause="section 2.3.1, equations (5) to (11)",
         status="text",
-        note="Standard error 5.2 dB. Fitted up to 37 GHz, expected to hold to 45; dN75 above 54 explodes. None up to 5 km.",
+        note="Standard error 5.2 dB. Fitted up to 37 GHz, expected to hold to 45; dN75 above 54 explodes. None up to 5 km. "
+        "Not below about 15 GHz divided by the length in km.",
         ranges=(
             _km(7.5, 300.0),
             _ghz(0.45, 45.0),
@@ -42,6 +43,13 @@ FADING_SOURCES: Final = (
                 quantity="clearance_m", label="height of mid-path over the mean ground", unit="m", low=26, high=1180
             ),
             Validity(quantity="dn75", label="dN75", unit="N-units", low=0.0, high=54.0),
+            Validity(
+                quantity="distance_frequency_m_hz",
+                label="path length times frequency",
+                unit="GHz km",
+                low=15e12,
+                scale=1e12,
+            ),
         ),
     ),
     Source(
