@@ -124,6 +124,16 @@ def test_5850_to_5895_is_for_indoors() -> None:
     assert "indoor" in check.reason
 
 
+# 47 CFR 15.255(c): 40 dBm average and 43 dBm peak where the kinder limits for point-to-point do not hold.
+@pytest.mark.parametrize("gain_dbi", [20.0, 38.0, 51.0])
+def test_the_plain_limit_at_60_ghz_is_40_dbm_eirp_whatever_the_antenna(gain_dbi: float) -> None:
+    check = checked("fcc-15.255-60", gain_dbi, width_hz=2160 * MHZ)
+    assert numbers(check) == pytest.approx((40.0 - gain_dbi, 40.0), abs=1e-9)
+    peaky = checked("fcc-15.255-60", gain_dbi, width_hz=2160 * MHZ, peak_to_average_db=8.0)
+    assert numbers(peaky)[1] == pytest.approx(35.0, abs=1e-9)  # 43 less 8
+    assert peaky.binds == "peak EIRP"
+
+
 # 47 CFR 15.255(c): 82 dBm average, 2 dB less for each dB under 51 dBi, not under 40; peak 85 and 43 alike.
 @pytest.mark.parametrize(
     ("gain_dbi", "eirp_dbm"), [(55, 82), (51, 82), (45, 70), (40, 60), (38, 56), (30, 40), (10, 40)]
@@ -214,7 +224,7 @@ def test_rows_that_nobody_read_are_marked_and_give_no_number() -> None:
 
 
 def test_every_row_has_its_citation_and_date_and_is_tested_here() -> None:
-    assert len({row.id for row in load_rules()}) == len(load_rules()) == 26
+    assert len({row.id for row in load_rules()}) == len(load_rules()) == 27
     for row in load_rules():
         assert row.citation.startswith(("47 CFR 15.", "ETSI EN 30", "ECC/REC", "ERC/REC"))
         assert row.seen
