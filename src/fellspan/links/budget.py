@@ -192,7 +192,7 @@ def path_terms(
             inputs=(
                 frequency,
                 WorkingInput(label="k", value=_finite(median_k), unit=""),
-                WorkingInput(label="share of open sea", value=loss.sea_fraction, unit=""),
+                WorkingInput(label="share that the study takes as sea", value=loss.sea_fraction, unit=""),
             ),
             source_key="p526-16-delta-bullington",
             note=way,
