@@ -1,5 +1,6 @@
 """`fellspan equip`: decision first in 80 columns; a study, two points or a distance; JSON, a page, refusals in four lines."""
 
+import dataclasses
 import json
 from pathlib import Path
 
@@ -7,6 +8,8 @@ import pytest
 from made_studies import STUDY, A, B, run_command, write_ground
 
 from fellspan.cli import main
+from fellspan.design.equip_result import EquipResult, EquipRow, Reach, WindLoad
+from fellspan.design.wind import DRAG
 
 RADIO = ("--frequency", "5.8 GHz", "--power", "20 dBm", "--threshold", "-75 dBm")
 FREE = ("equip", "--distance", "12 km", *RADIO)
@@ -163,3 +166,29 @@ def test_a_target_of_the_study_counts_rain(study: Path) -> None:
     result = json.loads(run.stdout)["equipment"]
     assert result["target_availability_percent"] == 99.99
     assert all(row["availability_percent"]["year"] is not None for row in result["rows"])
+
+
+def test_the_page_on_equipment_names_every_key() -> None:
+    text = (Path(__file__).parents[2] / "docs" / "equip.md").read_text(encoding="utf-8")
+    for kind in (EquipResult, EquipRow, WindLoad, Reach):
+        for field in dataclasses.fields(kind):
+            assert f"`{field.name}`" in text, field.name
+
+
+def test_the_page_on_equipment_names_every_option() -> None:
+    text = (Path(__file__).parents[2] / "docs" / "equip.md").read_text(encoding="utf-8")
+    for shape, drag in DRAG.items():
+        assert f"{drag.coefficient}" in text, shape
+    for option in (
+        "--antennas",
+        "--radio",
+        "--target",
+        "--margin",
+        "--rule",
+        "--end",
+        "--wind",
+        "--arm",
+        "--sway",
+        "--off-aim",
+    ):
+        assert option in text, option

@@ -26,6 +26,17 @@ def test_the_first_use_prints_what_is_shown(
     assert {path.name for path in ROOT.iterdir()} == before
 
 
+def test_the_comparison_of_antennas_prints_what_is_shown(
+    monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
+) -> None:
+    text = (ROOT / "README.md").read_text(encoding="utf-8")
+    shown = re.search(r"```sh\n\.venv/bin/fellspan (equip .*?)```\n\n((?: {4}[^\n]*\n|\n)+)", text, re.DOTALL)
+    assert shown is not None
+    monkeypatch.chdir(ROOT)
+    assert main.run(shlex.split(shown[1].replace("\\\n", " "))) == 0
+    assert re.sub(r"(?m)^ {4}", "", shown[2]).rstrip() in capsys.readouterr().out
+
+
 def test_the_first_use_of_getting_started_runs(
     monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
 ) -> None:

@@ -103,7 +103,7 @@ def compared(asked: EquipAsked) -> EquipResult:
     link = _with_link_options(dataclasses.replace(link, radio=radios[0]), asked, rules_file=study.rules_file)
     catalogue = load_catalogue(asked.catalogue or study.antenna_catalogue)
     offers = (
-        offers_named(_names(asked.antennas), catalogue=catalogue, links=study.links)
+        offers_named(_names(asked.antennas), catalogue=catalogue, links=(link, *study.links))
         if asked.antennas
         else offers_for(tuple(radio.frequency_hz for radio in radios), catalogue=catalogue)
     )
@@ -187,7 +187,8 @@ def _link_of(study: Study, name: str | None) -> Link:
 
 
 def _radios(study: Study, link: Link, names: Sequence[str]) -> list[Radio]:
-    known = {one.radio.name: one.radio for one in study.links}
+    # The link first: another one may use the same radio on another channel.
+    known = {one.radio.name: one.radio for one in (*study.links, link)}
     found = []
     for name in _names(names):
         if name not in known:

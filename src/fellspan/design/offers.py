@@ -4,12 +4,15 @@ Knows no paths, levels or ranking.
 """
 
 from dataclasses import dataclass, replace
+from typing import Final
 
 from fellspan.antennas.catalogue import Catalogue, CatalogueAntenna
 from fellspan.errors import AntennaError
 from fellspan.links.site import Antenna, Link, PatternOrigin
 
-SAME_FREQUENCY = 1e-9
+SAME_FREQUENCY: Final = 1e-9
+NEAR_FREQUENCY: Final = 0.1
+"""A pattern of which no model is known serves up to this share from where it was stated (common practice, no source)."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -42,9 +45,11 @@ class Offer:
             It is not for that frequency.
         """
         stated = self.antenna
-        if stated is not None and (stated.pattern is None or _same(frequency_hz, self.frequency_hz)):
+        if stated is not None and (stated.pattern is None or _within(frequency_hz, self.frequency_hz, SAME_FREQUENCY)):
             return stated
         if self.model is None:
+            if stated is not None and _within(frequency_hz, self.frequency_hz, NEAR_FREQUENCY):
+                return stated
             raise AntennaError(f"antenna '{self.name}' is stated for another frequency than {frequency_hz / 1e9:g} GHz")
         pattern = self.model.pattern(frequency_hz)
         if stated is not None:
@@ -52,8 +57,8 @@ class Offer:
         return Antenna(name=self.name, pattern=pattern, origin=PatternOrigin(model=self.model.name))
 
 
-def _same(one_hz: float, other_hz: float | None) -> bool:
-    return other_hz is not None and abs(one_hz / other_hz - 1.0) < SAME_FREQUENCY
+def _within(one_hz: float, other_hz: float | None, share: float) -> bool:
+    return other_hz is not None and abs(one_hz / other_hz - 1.0) <= share
 
 
 def offers_named(names: tuple[str, ...], *, catalogue: Catalogue, links: tuple[Link, ...] = ()) -> tuple[Offer, ...]:
