@@ -8,6 +8,7 @@ from functools import lru_cache
 from typing import Final
 
 import numpy as np
+from numpy.typing import ArrayLike, NDArray
 
 from fellspan.antennas import mounting as hung
 from fellspan.antennas.facts import PatternFacts, facts_of
@@ -20,7 +21,8 @@ from fellspan.vocabulary import Polarization
 MOST_DISCRIMINATION_DB: Final = 40.0
 """No antenna on a mast keeps its polarisations further apart than this (common practice, no source)."""
 ASSUMED_DISCRIMINATION_DB: Final = 25.0
-"""Cross-polar discrimination of an antenna of which only the gain is known (common practice, no source)."""
+"""Cross-polar discrimination of an antenna of which only the gain is known, or whose pattern holds no cross-polar level:
+real antennas are no better than 20 to 35 dB (common practice, no source)."""
 CAUTION_FROM_DB: Final = 1.0
 """Gain lost to aim or polarisation draws a caution from here on (common practice, no source)."""
 SAME_ANGLE_DEG: Final = 0.05
@@ -154,9 +156,23 @@ def _discrimination_db(antenna: Antenna, mounting: Mounting, bearing_deg: float,
     """Co-polar over cross-polar gain toward the other end, dB, 0 to `MOST_DISCRIMINATION_DB`."""
     if antenna.pattern is None:
         return ASSUMED_DISCRIMINATION_DB
-    co = hung.gain_toward_dbi(antenna.pattern, mounting, bearing_deg, tilt_deg)
-    cross = hung.cross_gain_toward_dbi(antenna.pattern, mounting, bearing_deg, tilt_deg)
-    return float(np.clip(np.asarray(co) - np.asarray(cross), 0.0, MOST_DISCRIMINATION_DB))
+    _, below = gains_toward_db(antenna.pattern, mounting, bearing_deg, tilt_deg)
+    return max(float(below), 0.0)
+
+
+def gains_toward_db(
+    pattern: Pattern, mounting: Mounting, bearing_deg: ArrayLike, elevation_deg: ArrayLike
+) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+    """Co-polar gain, dBi, and how far the cross-polar one lies below it, dB, toward true directions; broadcast.
+
+    At most `MOST_DISCRIMINATION_DB`; `ASSUMED_DISCRIMINATION_DB` of a pattern that was computed or measured without
+    cross-polar level, which is no perfect antenna.
+    """
+    co = np.asarray(hung.gain_toward_dbi(pattern, mounting, bearing_deg, elevation_deg))
+    if pattern_facts(pattern).cross_polar_db is None:
+        return co, np.full(co.shape, ASSUMED_DISCRIMINATION_DB)
+    cross = np.asarray(hung.cross_gain_toward_dbi(pattern, mounting, bearing_deg, elevation_deg))
+    return co, np.minimum(co - cross, MOST_DISCRIMINATION_DB)
 
 
 def antenna_cautions(
@@ -190,7 +206,9 @@ def antenna_cautions(
 
 def _off_words(antenna: Antenna, result: AntennaResult) -> str:
     parts = []
-    if not is_omni(antenna.pattern) and abs(result.azimuth_off_deg) >= SAME_ANGLE_DEG:
+    upright = antenna.pattern is not None and hung.turn_for(antenna.pattern, result.polarization) == 0.0
+    # A dipole laid down is no omni any more: its bearing counts.
+    if not (is_omni(antenna.pattern) and upright) and abs(result.azimuth_off_deg) >= SAME_ANGLE_DEG:
         parts.append(
             f"{abs(result.azimuth_off_deg):.1f} degrees {'right' if result.azimuth_off_deg > 0 else 'left'} of"
         )

@@ -10,9 +10,8 @@ from typing import Final
 import numpy as np
 from numpy.typing import NDArray
 
-from fellspan.antennas import mounting as hung
 from fellspan.antennas.mounting import Mounting
-from fellspan.links.antenna_gains import ASSUMED_DISCRIMINATION_DB, MOST_DISCRIMINATION_DB, is_omni, mounted
+from fellspan.links.antenna_gains import ASSUMED_DISCRIMINATION_DB, gains_toward_db, is_omni, mounted
 from fellspan.links.budget import line_loss_db
 from fellspan.links.radio import Radio
 from fellspan.links.receivers import noise_dbm, row_power_dbm, rows_of
@@ -79,9 +78,7 @@ class Station:
             gain = self.antenna.gain_dbi
             assert gain is not None
             return np.full(bearing_deg.shape, gain), np.full(bearing_deg.shape, ASSUMED_DISCRIMINATION_DB)
-        co = np.asarray(hung.gain_toward_dbi(pattern, self.mounting, bearing_deg, elevation_deg))
-        cross = np.asarray(hung.cross_gain_toward_dbi(pattern, self.mounting, bearing_deg, elevation_deg))
-        return co, np.minimum(co - cross, MOST_DISCRIMINATION_DB)
+        return gains_toward_db(pattern, self.mounting, bearing_deg, elevation_deg)
 
 
 def stations_of(planned: Iterable[tuple[Link, LinkResult]]) -> list[Station]:
