@@ -226,6 +226,20 @@ def test_ripples_on_the_flank_of_a_wide_beam_are_no_side_lobes() -> None:
     )  # counted from where the ripple peaks
 
 
+def test_cross_polar_is_told_in_the_middle_of_a_tilted_beam() -> None:
+    made = from_data_sheet(
+        name="tilted",
+        frequency_hz=5.8e9,
+        gain_dbi=17.0,
+        azimuth_width_deg=65.0,
+        elevation_width_deg=6.0,
+        front_to_back_db=30.0,
+        cross_polar_db=22.0,
+        downtilt_deg=4.0,
+    )
+    assert facts_of(made).cross_polar_db == pytest.approx(22.0, abs=0.01)
+
+
 def test_electrical_downtilt_lowers_the_beam() -> None:
     for antenna, tilt in ((KINDS["omni"], 4.0), (KINDS["sector"], 3.0)):
         assert facts_of(antenna).elevation.peak_deg == pytest.approx(-tilt, abs=0.35)

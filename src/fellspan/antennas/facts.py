@@ -63,7 +63,7 @@ class PatternFacts:
     front_to_back_db: float | None
     """Peak over the highest level behind; None where there is no front (an omni), or nothing behind (over 100 dB)."""
     cross_polar_db: float | None
-    """Co-polar peak over cross-polar level on the boresight, dB; None where there is none to speak of (over 100 dB)."""
+    """Co-polar peak over cross-polar level in the same direction, dB; None where there is none to speak of (over 100 dB)."""
     far_field_m: float
 
 
@@ -96,7 +96,9 @@ def facts_of(pattern: Pattern) -> PatternFacts:
     back = max(_highest_behind(horizontal), _highest_behind(vertical))
     peak = float(np.max(horizontal.gain_dbi)), float(np.max(vertical.gain_dbi))
     ratio = max(peak) - back
-    cross = max(peak) - float(np.asarray(pattern.cross_gain_dbi(0.0, 0.0)))
+    # A beam with electrical downtilt has its middle off the boresight, and its data sheet's discrimination there.
+    best, middle = (vertical, elevation) if peak[1] >= peak[0] else (horizontal, azimuth)
+    cross = max(peak) - float(np.interp(middle.peak_deg, best.angle_deg, best.cross_gain_dbi))
     upright = pattern.electric_plane == "vertical"
     return PatternFacts(
         peak_gain_dbi=pattern.peak_gain_dbi,
