@@ -10,10 +10,12 @@ from fellspan.antennas.data_sheet import from_data_sheet
 from fellspan.antennas.dishes import dish
 from fellspan.antennas.facts import facts_of
 from fellspan.antennas.footprint import footprint
+from fellspan.antennas.patches import patch
 from fellspan.antennas.pattern import Pattern, Plane
 from fellspan.antennas.wires import dipole
 from fellspan.report import beam_drawing, polar_drawing
-from fellspan.report.footprint_drawing import NARROW_WIDTH, draw_footprint
+from fellspan.report.antenna_sheet import sheet_of, sheet_rows
+from fellspan.report.footprint_drawing import NARROW_WIDTH, contour_words, draw_footprint
 from fellspan.report.polar_drawing import CENTRE, RADIUS, Curve, curve_of, draw_polar, rings_for
 
 SPACE = "{http://www.w3.org/2000/svg}"
@@ -124,6 +126,26 @@ def test_a_quarter_turn_swaps_the_planes() -> None:
     assert turned.data.plane == "horizontal"
     assert turned.facts.half_power_deg == upright.facts.half_power_deg
     assert np.array_equal(turned.data.gain_dbi, upright.data.gain_dbi)
+
+
+def test_a_beam_cut_off_by_its_ground_plane_is_no_omni_in_words() -> None:
+    # 4.4 and 1.6 mm at 2.4 GHz: only 2.9 dB down where the ground plane ends it (two-slot model, by hand).
+    made = patch(frequency_hz=2.4e9, permittivity=4.4, height_m=0.0016)
+    told = " ".join(polar([curve_of(made, "vertical")]).itertext())
+    assert "no half-power width: it ends" in told
+    assert "all around" not in told
+    laid_down = " ".join(polar([curve_of(DIPOLE, "vertical", turned=True)]).itertext())
+    assert "nearly the same all around" in laid_down
+    rows = dict(sheet_rows(sheet_of(made)))
+    assert "it ends before" in rows["Elevation beam"]
+    assert "wide at half power" in rows["Azimuth beam"]
+
+
+def test_ground_behind_the_mast_is_said_in_words() -> None:
+    shown = footprint(patch(frequency_hz=2.4e9, front_to_back_db=15.0), height_m=20.0, tilt_deg=-30.0)
+    behind = next(contour for contour in shown.contours if (contour.near_m or 0.0) < -1.0)
+    words = contour_words(behind, reach_m=shown.reach_m)
+    assert f"from {-(behind.near_m or 0.0):.0f} m behind the mast" in words
 
 
 @pytest.mark.parametrize("other", [30.0, None])

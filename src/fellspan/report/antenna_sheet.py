@@ -7,7 +7,7 @@ from fellspan.antennas.facts import CutFacts, PatternFacts, facts_of
 from fellspan.antennas.footprint import Footprint
 from fellspan.antennas.pattern import Pattern
 from fellspan.report import wording
-from fellspan.report.polar_drawing import BACK_FROM_DEG
+from fellspan.report.polar_drawing import BACK_FROM_DEG, no_width_words
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -54,8 +54,8 @@ def sheet_rows(sheet: AntennaSheet) -> list[tuple[str, str]]:
     pattern, facts = sheet.pattern, sheet.facts
     rows = [
         ("Gain", f"{wording.number(facts.peak_gain_dbi)} dBi at {wording.frequency(pattern.frequency_hz)}"),
-        ("Azimuth beam", _beam(facts.azimuth)),
-        ("Elevation beam", _beam(facts.elevation)),
+        ("Azimuth beam", _beam(facts.azimuth, all_around=True)),
+        ("Elevation beam", _beam(facts.elevation, all_around=False)),
         ("Azimuth lobe", _lobe(facts.azimuth)),
         ("Elevation lobe", _lobe(facts.elevation)),
         ("Front to back", _front_to_back(facts)),
@@ -72,9 +72,9 @@ def sheet_rows(sheet: AntennaSheet) -> list[tuple[str, str]]:
     return rows
 
 
-def _beam(facts: CutFacts) -> str:
+def _beam(facts: CutFacts, *, all_around: bool) -> str:
     if facts.half_power_deg is None or facts.half_power_from_deg is None or facts.half_power_to_deg is None:
-        return "no half-power width: nearly the same all around"
+        return no_width_words(all_around=all_around)
     digits = 2 if facts.half_power_deg < 3.0 else 1
     ends = " to ".join(
         wording.degrees(edge, digits, sign=True) for edge in (facts.half_power_from_deg, facts.half_power_to_deg)
@@ -99,7 +99,7 @@ def _front_to_back(facts: PatternFacts) -> str:
 def _cross(facts: PatternFacts) -> str:
     if facts.cross_polar_db is None:
         return "none in this pattern; a real antenna has some"
-    return f"{wording.number(facts.cross_polar_db)} dB below the peak, on the boresight"
+    return f"{wording.number(facts.cross_polar_db)} dB below the peak, in the middle of the beam"
 
 
 def _efficiency(pattern: Pattern) -> str:

@@ -108,10 +108,15 @@ def draw_footprint(shown: Footprint, *, name: str, uid: str, width: float = WIDT
 
 def contour_words(contour: Contour, *, reach_m: float) -> str:
     """One outline in a sentence."""
-    near = "the foot of the mast" if contour.near_m is None else wording.distance(contour.near_m)
+    near = "the foot of the mast" if contour.near_m is None else _place(contour.near_m)
     far = f"to beyond {wording.distance(reach_m)}" if contour.far_m is None else f"to {wording.distance(contour.far_m)}"
     wide = "" if contour.width_m is None else f", {wording.distance(contour.width_m)} wide"
     return f"{wording.number(contour.level_db, 0)} dB: from {near} {far}{wide}."
+
+
+def _place(at_m: float) -> str:
+    """A distance ahead; a steep beam also reaches ground behind its mast."""
+    return wording.distance(at_m) if at_m > -0.5 else f"{wording.distance(-at_m)} behind the mast"
 
 
 def _inner_edge(near_m: float, ahead: Scale, across: Scale) -> str:
@@ -199,7 +204,7 @@ def _distances(shown: Footprint, sheet: _Sheet) -> list[str]:
                 svg.label(
                     x - 4.0 if leftward else x + 4.0,
                     y,
-                    f"{level}: {wording.distance(at_m)}",
+                    f"{level}: {_place(at_m)}",
                     class_="lens-text",
                     anchor="end" if leftward else "start",
                 )

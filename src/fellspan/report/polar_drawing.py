@@ -11,7 +11,7 @@ from functools import lru_cache
 import numpy as np
 from numpy.typing import NDArray
 
-from fellspan.antennas.facts import Cut, CutFacts, cut, cut_facts
+from fellspan.antennas.facts import HALF_POWER_DB, Cut, CutFacts, cut, cut_facts
 from fellspan.antennas.pattern import Pattern, Plane
 from fellspan.report import svg, wording
 from fellspan.report.scales import keep_peaks
@@ -150,7 +150,7 @@ def curve_words(curve: Curve) -> str:
     if curve.highest_dbi is not None and curve.highest_dbi - curve.peak_dbi >= 0.1:
         words += f" in this plane, {wording.number(curve.highest_dbi)} dBi at its peak beside it"
     if facts.half_power_deg is None:
-        words += ", the same or nearly so all around"
+        words += ", the same or nearly so all around" if _is_round(curve) else f", {no_width_words(all_around=False)}"
     else:
         if abs(facts.peak_deg) >= 0.05:
             words += f" at {wording.degrees(facts.peak_deg, sign=True)}"
@@ -284,14 +284,23 @@ def _lobe_dbi(curve: Curve) -> float:
     return curve.peak_dbi + (curve.facts.side_lobe_db or 0.0)
 
 
+def _is_round(curve: Curve) -> bool:
+    """Whether the cut nowhere falls by half, unlike a beam that a ground plane cuts off."""
+    return float(np.min(curve.data.gain_dbi)) >= curve.peak_dbi - HALF_POWER_DB
+
+
+def no_width_words(*, all_around: bool) -> str:
+    """Why a cut has no half-power width: an omni around, a beam that its ground plane cuts off before it has fallen so far."""
+    why = "nearly the same all around" if all_around else "it ends before it has fallen so far"
+    return f"no half-power width: {why}"
+
+
 def _mark_words(curve: Curve) -> str:
     """What the marks say, under the diagram."""
     facts = curve.facts
     parts = []
     if facts.half_power_deg is None:
-        parts.append(
-            svg.label(4.0, HEIGHT - 22.0, "no half-power width: nearly the same all around", class_="mark-text")
-        )
+        parts.append(svg.label(4.0, HEIGHT - 22.0, no_width_words(all_around=_is_round(curve)), class_="mark-text"))
     else:
         parts.append(svg.el("circle", cx=9.0, cy=HEIGHT - 26.5, r=3.6, class_="half-power mark-0"))
         words = f"half power: {wording.degrees(facts.half_power_deg)} wide"
