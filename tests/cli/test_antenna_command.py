@@ -113,6 +113,17 @@ def test_a_pattern_file_serves_as_an_antenna(tmp_path: Path, by_option: bool) ->
     assert "9.0 dBi at 5.8 GHz" in run.stdout
 
 
+def test_a_pattern_file_may_have_any_name_and_a_missing_one_is_no_antenna_name(tmp_path: Path) -> None:
+    write_pattern(tmp_path / "tin.txt")
+    run = run_command("antenna", "--file", "tin.txt", folder=tmp_path)
+    assert run.stdout.startswith("bread-tin panel\n"), run.stderr
+    gone = run_command("antenna", "--file", "gone.txt", folder=tmp_path)
+    assert (gone.returncode, gone.stderr) == (
+        2,
+        "fellspan: cannot read pattern file gone.txt: No such file or directory\n",
+    )
+
+
 def test_an_own_catalogue_is_looked_up_too(tmp_path: Path) -> None:
     (tmp_path / "own.toml").write_text(
         '[[antenna]]\nname = "shed dish"\nkind = "dish"\nlowest = "5 GHz"\nhighest = "6 GHz"\ndiameter = "0.75 m"\n'

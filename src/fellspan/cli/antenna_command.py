@@ -45,11 +45,14 @@ def antenna_command(
     if as_list:
         typer.echo(_listing_json(known) if as_json else "\n".join(_listing(known)))
         return 0
-    asked = [*([str(file)] if file else []), *([name] if name else []), *(compare or [])]
+    named = [*([name] if name else []), *(compare or [])]
+    asked = [*([(str(file), True)] if file else []), *((one, one.lower().endswith(".csv")) for one in named)]
     if not asked:
         raise UsageError("no antenna is named", "fellspan antenna NAME, or --file FILE.csv", "fellspan antenna --list")
-    _check_count(asked)
-    sheets = [_sheet(one, known, frequency=frequency, height=height, tilt_deg=tilt) for one in asked]
+    _check_count(len(asked))
+    sheets = [
+        _sheet(one, known, is_file=is_file, frequency=frequency, height=height, tilt_deg=tilt) for one, is_file in asked
+    ]
     if as_json:
         typer.echo(_json(sheets))
     else:
@@ -61,17 +64,17 @@ def antenna_command(
     return 0
 
 
-def _check_count(asked: list[str]) -> None:
+def _check_count(asked: int) -> None:
     from fellspan.report.polar_drawing import MOST_CURVES
 
-    if len(asked) > MOST_CURVES:
+    if asked > MOST_CURVES:
         raise UsageError(
-            f"{len(asked)} antennas on one diagram cannot be told apart", f"compare {MOST_CURVES} at most at a time"
+            f"{asked} antennas on one diagram cannot be told apart", f"compare {MOST_CURVES} at most at a time"
         )
 
 
 def _sheet(
-    asked: str, known: "Catalogue", *, frequency: str | None, height: str | None, tilt_deg: float
+    asked: str, known: "Catalogue", *, is_file: bool, frequency: str | None, height: str | None, tilt_deg: float
 ) -> "AntennaSheet":
     from fellspan.antennas.files import read_pattern
     from fellspan.antennas.footprint import footprint
@@ -79,7 +82,7 @@ def _sheet(
     from fellspan.report.antenna_sheet import sheet_of
 
     details: dict[str, Any] = {}
-    if asked.lower().endswith(".csv"):
+    if is_file:
         pattern = read_pattern(asked)
         if frequency is not None and abs(parse_frequency_hz(frequency) / pattern.frequency_hz - 1.0) > 1e-6:
             raise UsageError(
