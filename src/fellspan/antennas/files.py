@@ -251,9 +251,10 @@ def _refuse_mixed(rows: list[_Row], azimuth: MeasuredCut, elevation: MeasuredCut
     levels = float(elevation.at(np.array([0.0]))[0]), float(np.max(elevation.relative_db))
     if min(abs(ahead - level) for level in levels) > PLANES_AGREE_DB:
         line = max((row for row in rows if row.plane == "elevation"), key=lambda row: row.gain).line
+        top, level = (round(value + peak, 1) + 0.0 for value in (levels[1], ahead))
         raise AntennaError(
-            f"{file}, line {line}: the elevation plane peaks at {round(levels[1] + peak, 1) + 0.0:.1f} dB, but the azimuth plane has "
-            f"{round(ahead + peak, 1) + 0.0:.1f} dB at 0 degrees",
+            f"{file}, line {line}: the elevation plane peaks at {top:.1f} dB, "
+            f"but the azimuth plane has {level:.1f} dB at 0 degrees",
             "is one absolute and the other relative? or does the beam not stand at azimuth 0?",
         )
 
