@@ -8,7 +8,8 @@ from made_profiles import link_of, obstacle, profile_of
 
 from fellspan.design.case import Case
 from fellspan.design.heights import design_heights
-from fellspan.design.heights_result import HeightSettings, HeightsResult, Limits
+from fellspan.design.heights_result import HeightSettings, HeightsResult, Limits, Pair
+from fellspan.design.heights_words import decision
 from fellspan.links.assess import AssessSettings, assess_profile
 from fellspan.links.criteria import Criterion
 from fellspan.links.site import Link
@@ -219,3 +220,31 @@ def test_heights_come_down_where_the_rule_turns_milder(seed: int, kind: str) -> 
     assert met(link, profile, PLAIN, a, b)
     down_a, down_b = {"equal": (0.05, 0.05), "a alone": (0.05, 0.0), "b alone": (0.0, 0.05)}[kind]
     assert not met(link, profile, PLAIN, a - down_a, b - down_b)
+
+
+def test_a_ridge_between_two_samples_is_what_sampling_can_miss() -> None:
+    # A roof-shaped ridge whose edge falls between two samples, 3 m beside one: the true need is known.
+    def roof(at: np.ndarray, *, edge_m: float) -> np.ndarray:
+        return np.maximum(60.0 - 0.1 * np.abs(at - edge_m), 0.0)
+
+    edge = 5_013.0
+    found = profile_of(10e3, lambda at: roof(at, edge_m=edge), n=401)
+    assert np.abs(found.distance_m - edge).min() == pytest.approx(12.0)
+    sight = Criterion(name="sight", k=4.0 / 3.0, fraction=0.0, source="made")
+    settings, link = AssessSettings(criteria=(sight,)), link_of(found, 30.0, 30.0)
+    case = Case.of(link, assess_profile(link, found, settings), settings)
+    a, b = (level + 20.0 for level in case.planned)
+    rise = float((case.rules[0].most_m - case.ray_m(a, b)).max())
+    at_edge = 60.0 + float(np.interp(edge, found.distance_m, case.curve_m)) / sight.k
+    share = edge / 10e3
+    missed = at_edge - ((1.0 - share) * (a + rise) + share * (b + rise))
+    assert missed > 0.5
+    assert case.between_samples_m(a + rise, b + rise) == pytest.approx(missed, abs=0.01)
+    # Seen from far above nothing that small counts.
+    assert case.between_samples_m(a + rise + missed + 0.1, b + rise + missed + 0.1) == 0.0
+
+
+def test_confidence_in_the_decision_is_rounded_down() -> None:
+    pair = Pair(a_m=3.0, b_m=4.0, a_amsl_m=3.0, b_amsl_m=4.0)
+    said = decision(pair, (), holds=True, confidence=0.9, likely=0.89996)
+    assert "89.9 %" in said

@@ -90,3 +90,15 @@ def test_a_bare_path_lists_where_something_unlisted_would_reach_the_zone() -> No
     assert away.min() >= 400.0 - 26.0  # a twentieth of the path apart, but for a point joined with one a step away
     high = listed(link_of(profile, 90.0, 90.0), profile)
     assert not [point for point in high if "nothing that the data lack" in point.verify and point.spare_m > 25.0]
+
+
+def test_no_walk_is_asked_for_where_the_data_stand_far_too_high_already() -> None:
+    # A ridge of 60 m cuts a ray at 35 m: whatever else stood on it would change nothing.
+    profile = profile_of(10e3, lambda d: np.where(np.abs(d - 5e3) < 1.5e3, 60.0, 0.0), n=401, sigma_m=1.0)
+    points = listed(link_of(profile, 35.0, 35.0), profile)
+    unlisted = [point for point in points if "nothing that the data lack" in point.verify]
+    assert all(point.spare_m is not None and point.spare_m > -3.0 for point in unlisted)
+    assert any(
+        "governing point" in point.verify and point.spare_m is not None and point.spare_m < -20.0 for point in points
+    )
+    assert unlisted

@@ -82,7 +82,7 @@ def _governs(option: HeightOption) -> str:
     assert touch is not None
     return (
         f"{touch.cause}, {figures.distance(touch.at_m)} from A, under {touch.criterion} (k {figures.earth_factor(touch.k)}); "
-        f"raster error {touch.sigma_m:.1f} m, sampling {touch.sampling_m:.2f} m"
+        f"raster error {touch.sigma_m:.1f} m, sampling {_small(touch.sampling_m)}"
     )
 
 
@@ -108,3 +108,7 @@ def _confidence(confidence: ConfidenceResult) -> list[str]:
 def _change(stated: HeightsAt) -> str:
     ends = (("A alone", stated.a_m), ("B alone", stated.b_m), ("both alike", stated.both_m))
     return ", ".join(f"{word} {'cannot' if value is None else f'{value:+.1f} m'}" for word, value in ends)
+
+
+def _small(value_m: float) -> str:
+    return f"{value_m:.2f} m" if value_m >= 0.05 else "under 0.05 m"

@@ -9,6 +9,7 @@ from typing import Final
 from fellspan.cli import figures
 from fellspan.cli.layout import WIDTH, Ink, columns_of, cut, labelled, printable, table, wrapped
 from fellspan.cli.signal_page import signal_lines
+from fellspan.links import words
 from fellspan.links.result import AntennaResult, CriterionResult, EndResult, LinkResult
 from fellspan.links.words import STATE_WORDS, State, state_of
 from fellspan.planning.plan import LinkPlan
@@ -21,6 +22,7 @@ _BASIS_WORDS: Final = {
     "surface raster": "by a raster of the surface; not surveyed",
     "bare ground only": "on bare ground only: what stands on it is not all known",
 }
+_MOST_TO_VERIFY: Final = 3
 _CRITERIA_WIDTHS: Final = (30, 8, 5, 7, 9, 7)
 
 
@@ -40,6 +42,8 @@ def link_lines(plan: LinkPlan, *, ink: Ink, told: Container[str] = ()) -> list[s
         "",
         *signal_lines(result, ink),
         *_reflections(plan),
+        *_heights(plan),
+        *_to_verify(plan),
         *_ends(result),
         *_cautions(result, told),
     ]
@@ -132,6 +136,24 @@ def _reflections(plan: LinkPlan) -> list[str]:
     if found is None or not found.matters:
         return []
     return labelled("Reflection", " ".join(found.sentences))
+
+
+def _heights(plan: LinkPlan) -> list[str]:
+    """What to build, with the confidence asked and in whole mast steps; `fellspan heights` tells the rest."""
+    return [] if plan.heights is None else labelled("Heights", plan.heights.decision)
+
+
+def _to_verify(plan: LinkPlan) -> list[str]:
+    """The points most worth a visit; the whole list stands in the report."""
+    lines: list[str] = []
+    for point in plan.survey[:_MOST_TO_VERIFY]:
+        if point.highest_top_m is None:
+            break
+        top = f"no top above {words.down_m(point.highest_top_m):.1f} m above sea level"
+        data = f"{point.top_m:.1f} m in the data, error {point.sigma_m:.1f} m, surveyed: {point.measured}"
+        told = f"{figures.distance(point.from_a_m)} from A, {point.stands_there}: {top} ({data})"
+        lines += labelled("" if lines else "Verify", told)
+    return lines
 
 
 def _ends(result: LinkResult) -> list[str]:

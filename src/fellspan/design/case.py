@@ -126,6 +126,24 @@ class Case:
         rules = self.rules_at(a_m, b_m)
         return bool((rules.most_m - self.ray_m(a_m, b_m)).max() <= clearance.TOLERANCE_M)
 
+    def between_samples_m(self, a_m: float, b_m: float) -> float:
+        """How far the ground between two samples may stand into what the rules ask for, m: the most along the path, 0 at least.
+
+        Where the ground runs up to two samples from both sides it is prolonged to where the two lines meet; what hides between
+        samples without a sign on either side is not in it.
+        """
+        x, ground = self.profile.distance_m, self.profile.ground_m
+        slope = np.diff(ground) / np.diff(x)
+        before, chord, after = slope[:-2], slope[1:-1], slope[2:]
+        peak = (before > chord) & (chord > after)
+        if not peak.any():
+            return 0.0
+        share = (chord - after)[peak] / (before - after)[peak]
+        rise = (before - chord)[peak] * share * np.diff(x)[1:-1][peak]
+        over = self.rules_at(a_m, b_m).most_m - self.ray_m(a_m, b_m)
+        low, high = over[1:-2][peak], over[2:-1][peak]
+        return max(float((low + share * (high - low) + rise).max()), 0.0)
+
     def quick_confidence(self, a_m: float, b_m: float) -> float:
         """Least probability over the criteria as the verdict has it: errors fully correlated along the path."""
         rules = self.rules_at(a_m, b_m)

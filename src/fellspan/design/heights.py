@@ -279,7 +279,7 @@ def _option(search: _Search, kind: HeightKind, raw: Levels | None) -> HeightOpti
     return HeightOption(
         kind=kind,
         raw=None if raw is None else _pair(raw, ground),
-        build=None if build is None else _pair(build, ground),
+        build=None if build is None else _tidy(_pair(build, ground)),
         governs=governs,
         more=() if raw is None else tuple(_metre_more(case, raw, end) for end in "AB"),
         probability=None if build is None else search.likely(build),
@@ -308,9 +308,6 @@ def _touch(case: Case, levels: Levels) -> Touch:
     spare = case.ray_m(*levels) - rules.most_m
     index = clearance.worst_index(spare, case.profile.distance_m)
     row = int(np.argmax(rules.need_m[:, index]))
-    ground = case.profile.ground_m
-    inner = min(max(index, 1), ground.size - 2)
-    bend = abs(float(ground[inner - 1] - 2.0 * ground[inner] + ground[inner + 1]))
     k = rules.k[row]
     return Touch(
         cause=case.cause(rules, row, index, *levels),
@@ -319,7 +316,7 @@ def _touch(case: Case, levels: Levels) -> Touch:
         k=k if math.isfinite(k) else None,
         fresnel_radius_m=float(case.zone_m[index]),
         sigma_m=float(case.errors_m[index]),
-        sampling_m=bend / 8.0,
+        sampling_m=case.between_samples_m(*levels),
     )
 
 
@@ -341,6 +338,11 @@ def _metre_more(case: Case, levels: Levels, end: str) -> MetreMore:
 def _pair(levels: Levels, ground: Ground) -> Pair:
     a, b = levels
     return Pair(a_m=a - ground.base_a_m, b_m=b - ground.base_b_m, a_amsl_m=a, b_amsl_m=b)
+
+
+def _tidy(pair: Pair) -> Pair:
+    """Steps of a mast without the dust of arithmetic."""
+    return replace(pair, a_m=round(pair.a_m, 6), b_m=round(pair.b_m, 6))
 
 
 def _lines(case: Case, raw: dict[HeightKind, Levels | None]) -> list[tuple[Rules, float, float]]:

@@ -94,7 +94,7 @@ class Touch:
     sigma_m: float
     """Standard error of the clearance there, from the stated errors of the rasters."""
     sampling_m: float
-    """How much higher the ground may stand between two samples there."""
+    """How far the ground between two samples, anywhere along the path, may stand into what is asked for."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -1,5 +1,6 @@
 """Heights in plain sentences, the decision first. Reads results and computes nothing."""
 
+import math
 from collections.abc import Sequence
 from typing import Final
 
@@ -96,4 +97,5 @@ def cautions(planned: Pair, options: Sequence[HeightOption], *, growth_years: fl
 
 
 def _percent(likely: float) -> str:
-    return "over 99.9 %" if likely > 0.999 else f"{100.0 * likely:.1f} %"
+    """Rounded down: what falls short of the confidence asked must not read as if it reached it."""
+    return "over 99.9 %" if likely > 0.999 else f"{math.floor(1000.0 * likely + 1e-6) / 10.0:g} %"

@@ -25,6 +25,8 @@ SAME_PLACE_M: Final = 5.0
 MOST_UNLISTED: Final = 8
 """Places where something that no data list could reach the zone: the closest few, far enough apart to be worth the walk."""
 APART_SHARE, APART_M = 0.04, 100.0
+HOPELESS_SIGMAS: Final = 3.0
+"""Where the data reach this many standard errors too high already, what they may lack there decides nothing (our own rule)."""
 MEASURED_WORDS: Final = ("no", "ground", "ground and top")
 """What was surveyed, by the codes of `PathProfile.measured`."""
 
@@ -52,6 +54,11 @@ class SurveyPoint:
     sigma_m: float
     measured: str
     label: str = ""
+
+
+def label_of(number: int, rank: int) -> str:
+    """What a point is called everywhere: `L02-05` is the fifth of the second link."""
+    return f"L{number:02d}-{rank:02d}"
 
 
 def survey_list(result: LinkResult, profile: PathProfile, levels: PathLevels) -> tuple[SurveyPoint, ...]:
@@ -91,6 +98,7 @@ def _unlisted(profile: PathProfile, levels: PathLevels, spare: Floats) -> Iterat
     """Where a tree or building that no data list would reach the required zone and nobody has measured, closest first."""
     distance = levels.distance_m
     open_to = (spare < UNLISTED_M) & (profile.measured != MEASURED_TOP)
+    open_to &= spare > -HOPELESS_SIGMAS * np.maximum(profile.sigma_m, 0.1)
     open_to &= np.minimum(distance, distance[-1] - distance) > NEAR_M  # nearer is the site itself
     apart_m = max(APART_SHARE * profile.length_m, APART_M)
     taken: list[float] = []

@@ -71,7 +71,7 @@ def report_files(plan: StudyPlan, *, progress: Progress | None = None) -> dict[s
         "links.geojson": lambda: links_geojson(plan),
         "links.kml": lambda: links_kml(plan),
         "survey.csv": lambda: survey_csv(points),
-        "survey.gpx": lambda: survey_gpx(points, title=plan.study.title),
+        "survey.gpx": lambda: survey_gpx(points, title=plan.study.title, growth_years=plan.study.growth_years),
     }
     for index, linked in enumerate(plan.links):
         makers[profile_name(index, linked.result.name)] = lambda linked=linked: profile_csv(linked)  # type: ignore[misc]

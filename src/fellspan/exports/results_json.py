@@ -9,6 +9,7 @@ import math
 from functools import cache
 from typing import TYPE_CHECKING, Any
 
+from fellspan.design.survey_list import label_of
 from fellspan.errors import FellspanError
 from fellspan.links.result import LinkResult
 from fellspan.planning.plan import LinkFailure, StudyPlan
@@ -40,8 +41,11 @@ def results_dict(plan: StudyPlan) -> dict[str, Any]:
                 "reflections": plain_of(linked.reflections),
                 "heights": plain_of(linked.heights),
                 "confidence_along_path": plain_of(linked.confidence),
+                "survey": [
+                    plain_of(dataclasses.replace(point, label=label_of(number, point.rank))) for point in linked.survey
+                ],
             }
-            for linked in plan.links
+            for number, linked in enumerate(plan.links, start=1)
         ],
         "failures": [_failure(failure) for failure in plan.failures],
         "interference": plain_of(plan.interference),

@@ -59,11 +59,15 @@ def _row(option: HeightOption) -> tuple[str, str, str, str, str, str]:
     if touch is not None:
         governs = (
             f"{touch.cause}, {wording.distance(touch.at_m)} from A ({touch.criterion}); error of the data "
-            f"{wording.metres(touch.sigma_m)}, sampling {wording.metres(touch.sampling_m, 2)}"
+            f"{wording.metres(touch.sigma_m)}, sampling {_small(touch.sampling_m)}"
         )
         more = "; ".join(f"{item.end} {wording.metres(item.spare_m, 2)}" for item in option.more)
     likely = wording.probability(option.probability) if option.probability is not None else "–"
     return (HEIGHT_WORDS[option.kind], _pair(option.raw, 2), _pair(option.build, 1), likely, governs, more)
+
+
+def _small(value_m: float) -> str:
+    return wording.metres(value_m, 2) if value_m >= 0.05 else "under 0.05 m"
 
 
 def _pair(pair: Pair | None, digits: int) -> str:

@@ -28,6 +28,7 @@ from fellspan.report.reflection_section import reflection_section
 from fellspan.report.relief import open_rasters, shaded_relief
 from fellspan.report.section import FULL, NARROW, PANEL
 from fellspan.report.signal_section import availability_short, rules_section, signal_section
+from fellspan.report.survey_section import survey_section
 from fellspan.terrain.raster_file import RasterFile
 
 Progress = Callable[[int, int, str], None]
@@ -138,6 +139,7 @@ def _link_page(plan: StudyPlan, index: int, link: LinkPlan, templates: Environme
         neighbours=neighbours_view(plan, result.name),
         heights=heights_section(link),
         reflections=reflection_section(link),
+        survey=survey_section(link, number=index + 1, growth_years=plan.study.growth_years),
         rests_on=[link.profile.sources[i] for i in sorted(set(link.profile.source.tolist())) if i >= 0],
         cautions=(*result.cautions, *link.profile.notes, *plan.cautions),
         safety=safety_lines(),

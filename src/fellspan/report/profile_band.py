@@ -197,6 +197,9 @@ def key(section: Section, uid: str, *, top: float) -> tuple[str, float]:
         word = COVER_KINDS[kind]
         swatch = el("rect", x=0, y=-9, width=24, height=10, fill=f"url(#{uid}-{word})", class_=f"cover cover-{word}")
         entries.append((swatch, names[word]))
+    if section.doubt_m is not None:
+        swatch = el("rect", x=0, y=-9, width=24, height=10, fill=f"url(#{uid}-doubt)", class_="doubt-swatch")
+        entries.append((swatch, "error of the data, 5 to 95 %"))
     if any(item.cuts_sight for item in criterion.obstructions):
         entries.append((line(0, -4, 24, -4, class_="cut-sight"), "cuts the sight line"))
     if any(not item.cuts_sight for item in criterion.obstructions):

@@ -50,6 +50,7 @@ def draw_profile(plan: LinkPlan, *, uid: str, sheet: Sheet = FULL) -> str:
         clip,
         profile_band.axes(section),
         el("g", profile_parts.ground(section, uid), profile_parts.cover(section, uid), class_="land"),
+        el("g", profile_parts.doubt(section, uid), clip_path=f"url(#{uid}-plot)"),
         el("g", profile_parts.zone(section), clip_path=f"url(#{uid}-plot)", class_="zone"),
         el("g", profile_parts.obstructed(section), class_="cuts"),
         band,
@@ -89,6 +90,12 @@ def profile_text(plan: LinkPlan) -> str:
         f"Frequency {frequency(result.frequency_hz)}. Governing criterion: {criterion_words(criterion)}",
         f"{where}: {governing_words(criterion, result.distance_m)}",
     ]
+    if plan.confidence is not None:
+        band = plan.confidence.band
+        index = min(range(len(band.distance_m)), key=lambda at: abs(band.distance_m[at] - criterion.worst_at_m))
+        words.append(
+            f"The clearance there is known to ±{metres(band.middle_m[index] - band.low_m[index])} in 90 % of cases"
+        )
     for item in criterion.obstructions:
         what = "cuts the sight line" if item.cuts_sight else "reaches into the required zone"
         words.append(f"{item.cause} {what} from {distance(item.from_m)} to {distance(item.to_m)}.")

@@ -29,6 +29,7 @@ def patterns(uid: str) -> str:
         hatch("tree", 6, 0, el("circle", cx=1.5, cy=1.5, r=0.9, class_="dot-tree"),
               el("circle", cx=4.5, cy=4.5, r=0.9, class_="dot-tree")),
         hatch("other", 6, 0, el("path", d="M0,0L6,6M6,0L0,6", class_="stroke-other")),
+        hatch("doubt", 5, 0, line(0, 2.5, 2, 2.5, class_="stroke-doubt")),
     )  # fmt: skip
 
 
@@ -75,6 +76,19 @@ def cover(section: Section, uid: str) -> str:
     return "".join(
         el("path", d="".join(parts), class_=f"cover cover-{COVER_KINDS[kind]}", fill=f"url(#{uid}-{COVER_KINDS[kind]})")
         for kind, parts in sorted(shapes.items())
+    )
+
+
+def doubt(section: Section, uid: str) -> str:
+    """How far the errors of the data may move the surface, as a pale band around it; nothing where it would be a hair."""
+    reach = section.doubt_m
+    if reach is None:
+        return ""
+    xs = section.x.all(section.distance_m)
+    upper, lower = section.y.all(section.checked_drawn + reach), section.y.all(section.checked_drawn - reach)
+    body = points([*xs, *reversed(xs)], [*upper, *reversed(lower)]) + "Z"
+    return el("path", d=body, fill=f"url(#{uid}-doubt)", class_="doubt") + el(
+        "path", d=points(xs, upper), class_="doubt-edge"
     )
 
 

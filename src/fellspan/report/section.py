@@ -86,6 +86,8 @@ class Section:
     bulge_m: Array
     ray_m: Array
     radius_m: Array
+    doubt_m: Array | None
+    """How far the surface may stand above or below as drawn, 5 to 95 % of cases; None where that cannot be seen."""
     x: Scale
     y: Scale
 
@@ -117,6 +119,19 @@ class Section:
     def exaggeration(self) -> float:
         """How much steeper the drawing is than the land."""
         return self.y.px_per_unit / self.x.px_per_unit
+
+
+_SEEN_PX = 1.5
+
+
+def _doubt_m(plan: LinkPlan, sheet: Sheet, at_m: Array, y: Scale) -> Array | None:
+    """Half the width of the band of clearance; on the small panels of the overview it would be in the way."""
+    if plan.confidence is None or sheet is PANEL:
+        return None
+    known = plan.confidence.band
+    half = np.array(known.middle_m) - np.array(known.low_m)
+    reach = np.interp(at_m, known.distance_m, half)
+    return reach if float(reach.max()) * y.px_per_unit >= _SEEN_PX else None
 
 
 def nearest_index(distance_m: Array, at_m: float) -> int:
@@ -153,6 +168,7 @@ def prepare(plan: LinkPlan, sheet: Sheet, *, plot_top: float) -> Section:
     span = max(high - low, 6.0)
     low -= 0.12 * span
     high = low + 1.17 * span
+    y = Scale(from_value=low, to_value=high, from_px=plot_top + sheet.plot_height, to_px=plot_top)
     return Section(
         sheet=sheet,
         plan=plan,
@@ -168,6 +184,7 @@ def prepare(plan: LinkPlan, sheet: Sheet, *, plot_top: float) -> Section:
         bulge_m=bulge[kept],
         ray_m=levels.available_m[kept],
         radius_m=levels.fresnel_radius_m[kept],
+        doubt_m=_doubt_m(plan, sheet, levels.distance_m[kept], y),
         x=Scale(from_value=0.0, to_value=float(levels.distance_m[-1]), from_px=sheet.left, to_px=sheet.right),
-        y=Scale(from_value=low, to_value=high, from_px=plot_top + sheet.plot_height, to_px=plot_top),
+        y=y,
     )

@@ -66,12 +66,12 @@ def percent(share: float | None, digits: int = 0) -> str:
 
 
 def probability(share: float | None) -> str:
-    """A probability in percent; what is nearly certain or nearly impossible is never rounded to it."""
+    """A probability in percent, rounded down: 89.6 % must not read as 90 %, nor anything as certain or impossible."""
     if share is None:
         return "–"
     if share > 0.995:
         return "> 99.9 %" if share > 0.9995 else "> 99 %"
-    return "< 1 %" if share < 0.005 else percent(share)
+    return "< 1 %" if share < 0.01 else percent(math.floor(share * 100.0 + 1e-6) / 100.0)
 
 
 def frequency(frequency_hz: float) -> str:
