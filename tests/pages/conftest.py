@@ -29,7 +29,7 @@ class Report:
     @property
     def link_pages(self) -> list[Path]:
         """Pages of the links, in the order of the plan."""
-        return [self.folder / name for name in list(self.texts)[1:]]
+        return [self.folder / name for name in self.texts if name.startswith("link-")]
 
 
 def _write(folder: Path, plan: StudyPlan) -> Report:

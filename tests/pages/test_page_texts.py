@@ -5,7 +5,7 @@ from dataclasses import replace
 
 import pytest
 
-from fellspan.report.naming import page_name
+from fellspan.report.naming import crew_name, page_name
 from fellspan.report.pages import render_pages
 
 
@@ -37,7 +37,9 @@ def test_same_plan_same_bytes(plain):
 def test_every_link_has_its_page_and_progress_is_told(plain):
     told = []
     pages = render_pages(plain.plan, progress=lambda *call: told.append(call))
-    assert list(pages) == ["index.html", *(page_name(i, p.result.name) for i, p in enumerate(plain.plan.links))]
+    names = [p.result.name for p in plain.plan.links]
+    of_links = [[page_name(i, n), crew_name(i, n, "a"), crew_name(i, n, "b")] for i, n in enumerate(names)]
+    assert list(pages) == ["index.html", *(name for three in of_links for name in three)]
     assert told[0] == (0, 8, "index.html")
     assert told[-1] == (8, 8, "")
 

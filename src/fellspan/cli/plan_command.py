@@ -56,7 +56,7 @@ def plan_command(
 
         check_target(out)
     try:
-        plan = run_plan(_only(load_study(study), link or []))
+        plan = run_plan(_only(load_study(study), link or []), reported=out is not None)
     except FellspanError:
         tell_old_report(out)
         raise

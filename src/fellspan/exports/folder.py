@@ -25,7 +25,7 @@ from fellspan.exports.survey import survey_csv, survey_gpx, survey_points
 from fellspan.exports.tables import links_csv, profile_csv, profile_name
 from fellspan.exports.text import utf8
 from fellspan.planning.plan import StudyPlan
-from fellspan.report.naming import page_name
+from fellspan.report.naming import crew_name, page_name
 
 Progress = Callable[[int, int, str], None]
 """Called with the number of files done, the number of all, and the name of the one in hand."""
@@ -162,8 +162,9 @@ def report_names(plan: StudyPlan) -> tuple[str, ...]:
     """Names of the files that the report of a plan may have."""
     links = [linked.result.name for linked in plan.links]
     pages = [page_name(index, name) for index, name in enumerate(links)]
+    crews = [crew_name(index, name, end) for index, name in enumerate(links) for end in ("a", "b")]
     profiles = [profile_name(index, name) for index, name in enumerate(links)]
-    return ("index.html", *pages, *_TABLES, *profiles, RESULTS)
+    return ("index.html", *pages, *crews, *_TABLES, *profiles, RESULTS)
 
 
 def links_in(folder: Path) -> tuple[str, ...]:

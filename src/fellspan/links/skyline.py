@@ -243,11 +243,7 @@ def _landmarks(
             elevation_deg=float(angle[at]),
             distance_m=float(distance[at]),
             top_amsl_m=float(top[at]),
-            what=obstacles[int(what[at])].name
-            if what[at] >= 0
-            else "trees"
-            if what[at] == -2
-            else "rise of the ground",
+            what=obstacles[int(what[at])].name if what[at] >= 0 else "trees" if what[at] == -2 else "hill",
         )
         for at in sorted(chosen)
     )

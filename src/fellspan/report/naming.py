@@ -16,3 +16,8 @@ def page_name(index: int, link_name: str) -> str:
     """File name of the page of a link; `index` counts from 0 in the order of the plan and makes the name unique."""
     tail = slug(link_name)
     return f"link-{index + 1:02d}-{tail}.html" if tail else f"link-{index + 1:02d}.html"
+
+
+def crew_name(index: int, link_name: str, end: str) -> str:
+    """File name of the crew sheet of one end, 'a' or 'b', of a link."""
+    return page_name(index, link_name).replace("link-", "crew-", 1).removesuffix(".html") + f"-{end}.html"

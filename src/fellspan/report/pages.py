@@ -4,7 +4,7 @@ from collections import Counter
 from collections.abc import Callable
 from dataclasses import dataclass, fields
 from html import escape
-from typing import Any
+from typing import Any, Literal
 from urllib.parse import urlsplit
 
 from jinja2 import Environment
@@ -19,9 +19,11 @@ from fellspan.planning.plan import LinkPlan, StudyPlan
 from fellspan.report import assets, wording
 from fellspan.report import map_geometry as geometry
 from fellspan.report.antenna_section import antenna_section
+from fellspan.report.crew_sheet import crew_sheet
 from fellspan.report.heights_section import heights_section
+from fellspan.report.horizon_section import horizon_section
 from fellspan.report.map import MapMarkup, link_map
-from fellspan.report.naming import page_name, slug
+from fellspan.report.naming import crew_name, page_name, slug
 from fellspan.report.neighbours import neighbours_view
 from fellspan.report.profile_drawing import draw_profile, exaggeration_words
 from fellspan.report.reflection_section import reflection_section
@@ -62,7 +64,7 @@ class LinkView:
 
 
 def render_pages(plan: StudyPlan, *, progress: Progress | None = None) -> dict[str, str]:
-    """File names and HTML texts: `index.html`, then one page a link in the order of the study."""
+    """File names and HTML texts: `index.html`, then the page and both crew sheets of each link in the order of the study."""
     templates = _environment()
     rasters = open_rasters(plan.study.terrain.ground or plan.study.terrain.surface)
     total = len(plan.links) + 1
@@ -77,6 +79,7 @@ def render_pages(plan: StudyPlan, *, progress: Progress | None = None) -> dict[s
         name = page_name(index, link.result.name)
         tell(index + 1, name)
         pages[name] = _link_page(plan, index, link, templates, rasters)
+        pages |= _crew_sheets(plan, index, link, templates)
     tell(total, "")
     return pages
 
@@ -138,6 +141,8 @@ def _link_page(plan: StudyPlan, index: int, link: LinkPlan, templates: Environme
         antennas=antenna_section(link),
         neighbours=neighbours_view(plan, result.name),
         heights=heights_section(link),
+        horizons=horizon_section(link),
+        crew=[(letter, crew_name(index, result.name, letter.lower())) for letter in ("A", "B")],
         reflections=reflection_section(link),
         survey=survey_section(link, number=index + 1, growth_years=plan.study.growth_years),
         rests_on=[link.profile.sources[i] for i in sorted(set(link.profile.source.tolist())) if i >= 0],
@@ -145,6 +150,23 @@ def _link_page(plan: StudyPlan, index: int, link: LinkPlan, templates: Environme
         safety=safety_lines(),
         quiet=True,
     )
+
+
+def _crew_sheets(plan: StudyPlan, index: int, link: LinkPlan, templates: Environment) -> dict[str, str]:
+    """The sheets of both ends."""
+    name = link.result.name
+    ends: tuple[Literal["A", "B"], ...] = ("A", "B")
+    return {
+        crew_name(index, name, letter.lower()): templates.get_template("crew.html.j2").render(
+            plan=plan,
+            sheet=crew_sheet(plan, link, letter),
+            page=page_name(index, name),
+            study=wording.shorten(plan.study.title, 60),
+            revision=wording.shorten(plan.study.revision, 20) or "–",
+            css=assets.asset("crew.css"),
+        )
+        for letter in ends
+    }
 
 
 def _gaps_are_sea(plan: StudyPlan) -> bool:
@@ -204,6 +226,7 @@ def _shared(plan: StudyPlan, chart: MapMarkup | None) -> dict[str, Any]:
             "page": assets.asset("page.css"),
             "map": assets.asset("map.css"),
             "polar": assets.asset("polar.css"),
+            "horizon": assets.asset("horizon.css"),
         },
         "js": {
             "leaflet": assets.leaflet_js(),
