@@ -1,8 +1,9 @@
 """Yagi-Uda designs against NBS Technical Note 688 (Viezbicke, 1976), table 1, and against other moment-method programs.
 
 Gains are published in dB over a half-wave dipole, 2.15 dB below dBi. The shortest design is printed with a director of 0.424
-wavelengths in some copies and 0.442 in others; computation agrees with the published gain at 0.442 only, which is used here.
-The independent runs: four open moment-method programs, the range of their results, at the printed dimensions (0.424 for the shortest).
+wavelengths in some copies and 0.442 in others: computed, the first stays 0.4 dB below the published gain, the second, which the
+tool proposes, 0.4 dB above it. The independent runs: four open moment-method programs, the range of their results, at the printed
+dimensions, 0.424 for the shortest.
 """
 
 from dataclasses import replace
