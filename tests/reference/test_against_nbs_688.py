@@ -2,8 +2,8 @@
 
 Gains are published in dB over a half-wave dipole, 2.15 dB below dBi. The shortest design is printed with a director of 0.424
 wavelengths in some copies and 0.442 in others: computed, the first stays 0.4 dB below the published gain, the second, which the
-tool proposes, 0.4 dB above it. The independent runs: four open moment-method programs, the range of their results, at the printed
-dimensions, 0.424 for the shortest.
+tool proposes, 0.4 dB above it. The independent runs: four open moment-method programs, the range of their results, at the
+printed dimensions, 0.424 for the shortest.
 """
 
 from dataclasses import replace
