@@ -15,7 +15,7 @@ from fellspan.climate.given import GivenClimate
 from fellspan.exports.coordination import coordination_csv
 from fellspan.exports.tables import links_csv
 from fellspan.links import radio_words
-from fellspan.links.result import AtEnds, LinkResult
+from fellspan.links.result import LinkResult
 from fellspan.links.site import Antenna
 from fellspan.planning.plan import StudyPlan
 from fellspan.planning.planner import plan_study
@@ -55,7 +55,8 @@ def terminal(plan: StudyPlan, name: str) -> str:
 
 def test_all_views_tell_the_same_verdict_and_availability(plan: StudyPlan, pages: dict[str, str]) -> None:
     why = radio_words.verdict_why(result(plan, SEA))
-    assert why == "less than 3 dB short of the margin and availability wanted"
+    assert "99.99 % wanted, which 3 dB more margin would reach" in why
+    assert why.endswith("dB, 27 dB wanted")
     page = pages["link-01-south-light-ostrel-landing.html"]
     for told in (terminal(plan, SEA), page):
         assert why in told
@@ -163,30 +164,20 @@ def test_each_direction_of_a_pair_has_its_own_frequency_in_the_sheet(plan: Study
 
 
 @pytest.mark.parametrize(
-    ("verdict", "least_db", "target", "met", "words"),
+    ("verdict", "target", "reason", "words"),
     [
-        ("meets", 12.0, None, None, "the margin wanted is there"),
-        ("meets", 12.0, 99.9, True, "margin and availability wanted are there"),
-        ("marginal", 8.0, 99.9, True, "less than 3 dB short of the margin wanted"),
-        ("marginal", 12.0, 99.9, False, "less than 3 dB short of the availability wanted"),
-        ("marginal", 12.0, 99.9, None, "margin is there, but without an availability the target cannot be judged"),
-        ("marginal", 12.0, None, None, "something else holds it down, see the reasons and cautions"),
-        ("below", 2.0, 99.9, False, "the margin and availability wanted are not there"),
-        ("below", 12.0, 99.9, False, "the availability wanted is not there"),
-        ("below", 2.0, None, None, "the margin wanted is not there"),
+        ("meets", None, "", "the margin wanted is there"),
+        ("meets", 99.9, "", "margin and availability wanted are there"),
+        ("marginal", None, "trees stand in the required zone", "trees stand in the required zone"),
+        ("below", 99.9, "4 dB of the margin wanted are missing", "4 dB of the margin wanted are missing"),
+        ("below", None, "", "see the reasons and cautions"),
     ],
 )
 def test_every_signal_verdict_says_what_stands_behind_it(
-    plan: StudyPlan, verdict: str, least_db: float, target: float | None, met: bool | None, words: str
+    plan: StudyPlan, verdict: str, target: float | None, reason: str, words: str
 ) -> None:
     whole = result(plan, SEA)
     assert whole.signal is not None
-    signal = dataclasses.replace(whole.signal, target_availability_percent=target, target_met=met)
-    changed = dataclasses.replace(
-        whole,
-        signal_verdict=verdict,
-        wanted_margin_db=10.0,
-        margin_db=AtEnds(at_a=least_db, at_b=least_db + 1.0),
-        signal=signal,
-    )
+    signal = dataclasses.replace(whole.signal, target_availability_percent=target, verdict_reason=reason)
+    changed = dataclasses.replace(whole, signal_verdict=verdict, signal=signal)
     assert radio_words.verdict_why(changed) == words

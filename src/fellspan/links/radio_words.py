@@ -36,21 +36,10 @@ def verdict_why(result: LinkResult) -> str:
         return ""
     if verdict == "meets" and result.verdict == "obstructed":
         return THROUGH
-    target = None if signal is None else signal.target_availability_percent
-    met = None if signal is None else signal.target_met
     if verdict == "meets":
-        return "margin and availability wanted are there" if target is not None else "the margin wanted is there"
-    margins = [value for value in (result.margin_db.at_a, result.margin_db.at_b) if value is not None]
-    short = bool(margins) and min(margins) < result.wanted_margin_db
-    missed = target is not None and met is False
-    lacking = " and ".join(word for word, holds in (("margin", short), ("availability", missed)) if holds)
-    if not lacking and target is not None and met is None:
-        return "margin is there, but without an availability the target cannot be judged"
-    if not lacking:
-        return "something else holds it down, see the reasons and cautions"
-    if verdict == "marginal":
-        return f"less than 3 dB short of the {lacking} wanted"
-    return f"the {lacking} wanted {'are' if short and missed else 'is'} not there"
+        wanted = None if signal is None else signal.target_availability_percent
+        return "margin and availability wanted are there" if wanted is not None else "the margin wanted is there"
+    return (signal.verdict_reason if signal is not None else "") or "see the reasons and cautions"
 
 
 def rows_named(direction: DirectionResult) -> bool:

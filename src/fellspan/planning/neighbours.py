@@ -8,8 +8,11 @@ from dataclasses import replace
 from typing import TYPE_CHECKING
 
 from fellspan.links.interference import study_interference
-from fellspan.links.interference_result import StudyInterference
+from fellspan.links.interference_result import InterferenceResult, StudyInterference
 from fellspan.links.neighbour_words import receiver_caution
+from fellspan.links.result import AtEnds, LinkResult
+from fellspan.links.signal_verdict import worse_of
+from fellspan.links.verdicts import signal_verdict
 from fellspan.planning.plan import LinkFailure, LinkPlan
 
 if TYPE_CHECKING:
@@ -41,7 +44,26 @@ def _with_cautions(plan: LinkPlan, found: StudyInterference) -> LinkPlan:
     cautions = [caution for one in found.at(plan.result.name) if (caution := receiver_caution(one)) is not None]
     if not cautions:
         return plan
-    return replace(plan, result=replace(plan.result, cautions=(*plan.result.cautions, *cautions)))
+    held = held_by_neighbours(plan.result, found.at(plan.result.name))
+    return replace(plan, result=replace(held, cautions=(*plan.result.cautions, *cautions)))
+
+
+def held_by_neighbours(result: LinkResult, receivers: Sequence[InterferenceResult]) -> LinkResult:
+    """The result with its signal verdict held down to the margin that neighbours leave, and the reason for it."""
+    left = [one.effective_margin_db for one in receivers if one.effective_margin_db is not None]
+    if not left or result.signal_verdict is None:
+        return result
+    least = min(left)
+    verdict = worse_of(
+        result.signal_verdict, signal_verdict(AtEnds(at_a=least, at_b=least), wanted_db=result.wanted_margin_db)
+    )
+    if verdict == result.signal_verdict:
+        return result
+    why = f"neighbours on the same channel leave {least:.1f} dB of margin, {result.wanted_margin_db:g} dB wanted"
+    signal = result.signal
+    if signal is not None:
+        signal = replace(signal, verdict_reason="; ".join(word for word in (why, signal.verdict_reason) if word))
+    return replace(result, signal_verdict=verdict, signal=signal)
 
 
 def _is_known(plan: LinkPlan) -> bool:
