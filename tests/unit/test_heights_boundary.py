@@ -126,6 +126,31 @@ def test_the_hull_of_many_points_is_that_of_few() -> None:
     assert (np.diff(np.diff(y[hull]) / np.diff(x[hull])) < 0.0).all()
 
 
+@pytest.mark.parametrize("kind", ["walk", "bowed", "level", "steps", "gaps"])
+def test_the_hull_is_that_of_a_plain_walk_over_all_points(kind: str) -> None:
+    rng = np.random.default_rng(29)
+    for n in (2, 3, 65, 400, 2_000):
+        x = np.unique(np.concatenate(([0.0, 1.0], rng.random(n))))
+        y = {
+            "walk": lambda x=x: np.cumsum(rng.normal(size=x.size)),
+            # Bulge and zone under small bumps: most points are near the hull.
+            "bowed": lambda x=x: 80.0 * x * (1.0 - x) + rng.normal(0.0, 0.02, x.size),
+            "level": lambda x=x: np.zeros(x.size),
+            "steps": lambda x=x: np.round(rng.random(x.size), 1),
+            "gaps": lambda x=x: np.where(rng.random(x.size) < 0.4, -np.inf, rng.random(x.size)),
+        }[kind]()
+        y[[0, -1]] = 0.0
+        hull: list[int] = []
+        for i in np.flatnonzero(np.isfinite(y)).tolist():
+            while len(hull) > 1 and (y[i] - y[hull[-2]]) * (x[hull[-1]] - x[hull[-2]]) >= (
+                y[hull[-1]] - y[hull[-2]]
+            ) * (x[i] - x[hull[-2]]):
+                hull.pop()
+            hull.append(i)
+        found = upper_hull(x, y)
+        assert np.abs(np.interp(x, x[found], y[found]) - np.interp(x, x[hull], y[hull])).max() < 1e-9
+
+
 @pytest.mark.parametrize("wrong", [{"low_m": -1.0}, {"low_m": 9.0, "high_m": 4.0}, {"low_m": math.nan}])
 def test_limits_that_make_no_range_are_refused(wrong: dict[str, float]) -> None:
     with pytest.raises(LinkError, match="do not make a range"):

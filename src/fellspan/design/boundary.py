@@ -13,7 +13,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 Floats = NDArray[np.float64]
-_FEW: Final = 32
+_FEW: Final = 64
+_DUST_M: Final = 1e-9
 
 
 def upper_hull(x: Floats, y: Floats) -> NDArray[np.intp]:
@@ -22,24 +23,36 @@ def upper_hull(x: Floats, y: Floats) -> NDArray[np.intp]:
     Points at -inf are left out; the first and the last point must be finite.
     """
     left = np.flatnonzero(np.isfinite(y))
-    # A point on or below the chord of its two neighbours is no corner: all such at once, again and again.
+    # What lies below the hull of some of the points is no corner: the highest of each of many blocks leave few others.
     while left.size > _FEW:
-        px, py = x[left], y[left]
-        rise = (py[1:-1] - py[:-2]) * (px[2:] - px[:-2]) - (py[2:] - py[:-2]) * (px[1:-1] - px[:-2])
-        stays = np.concatenate(([True], rise > 0.0, [True]))
-        if stays.all():
+        rough = _walk(x, y, _highest_of_blocks(y[left], left))
+        above = y[left] > np.interp(x[left], x[rough], y[rough]) - _DUST_M
+        before, left = left.size, np.union1d(left[above], rough)
+        if left.size > before // 2:
             break
-        left = left[stays]
+    return _walk(x, y, left)
+
+
+def _highest_of_blocks(y: Floats, indices: NDArray[np.intp]) -> NDArray[np.intp]:
+    """The ends, and of each of some tens of blocks of points the highest."""
+    wide = math.isqrt(y.size)
+    count = y.size // wide
+    tops = y[: count * wide].reshape(count, wide).argmax(axis=1) + wide * np.arange(count)
+    return np.unique(indices[np.concatenate(([0], tops, [y.size - 1]))])
+
+
+def _walk(x: Floats, y: Floats, indices: NDArray[np.intp]) -> NDArray[np.intp]:
+    """The hull of a few points, one after the other."""
     kept: list[int] = []
-    xs, ys = x[left].tolist(), y[left].tolist()
-    for i in range(left.size):
+    xs, ys = x[indices].tolist(), y[indices].tolist()
+    for i in range(indices.size):
         while len(kept) > 1:
             o, m = kept[-2], kept[-1]
             if (ys[m] - ys[o]) * (xs[i] - xs[o]) > (ys[i] - ys[o]) * (xs[m] - xs[o]):
                 break
             kept.pop()
         kept.append(i)
-    return np.asarray(left[kept], dtype=np.intp)
+    return np.asarray(indices[kept], dtype=np.intp)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -82,31 +95,29 @@ class Boundary:
         x = share[self.touches]
         return float((need_m[self.touches] - (1.0 - x) * a_m - x * b_m).max())
 
-    def candidates(self, a_from_m: float, a_to_m: float, b_from_m: float, b_to_m: float) -> list[tuple[float, float]]:
-        """Corners inside the limits, and where the boundary meets them: any linear cost is least at one of these."""
+    def candidates(self, a_from_m: float, a_to_m: float, b_from_m: float, b_to_m: float) -> Floats:
+        """Corners inside the limits, and where the boundary meets them, shape (m, 2): any linear cost is least at one."""
         at = [a_from_m, a_to_m, *self.a_m.tolist(), self.lowest_a(b_from_m), self.lowest_a(b_to_m)]
-        return self.pairs_at(at, a_from_m, a_to_m, b_from_m, b_to_m)
+        return self.pairs_at(np.array(at), a_from_m, a_to_m, b_from_m, b_to_m)
 
-    def pairs_at(
-        self, levels_a_m: list[float], a_from_m: float, a_to_m: float, b_from_m: float, b_to_m: float
-    ) -> list[tuple[float, float]]:
-        """Lowest pairs within the limits at these levels of A; levels that do not work are left out."""
-        found = []
-        for a in levels_a_m:
-            level = max(a, a_from_m)
-            if not (math.isfinite(level) and level <= a_to_m):
-                continue
-            b = max(self.lowest_b(level), b_from_m)
-            if b <= b_to_m and math.isfinite(b):
-                found.append((level, b))
-        return found
+    def lowest_a_each(self, levels_b_m: Floats) -> Floats:
+        """`lowest_a` for many levels of B at once."""
+        return _lowest_each(levels_b_m, self.b_m[::-1], self.a_m[::-1])
+
+    def pairs_at(self, levels_a_m: Floats, a_from_m: float, a_to_m: float, b_from_m: float, b_to_m: float) -> Floats:
+        """Lowest pairs within the limits at these levels of A, shape (m, 2); levels that do not work are left out."""
+        a = np.maximum(levels_a_m, a_from_m)
+        a = a[np.isfinite(a) & (a <= a_to_m)]
+        b = np.maximum(_lowest_each(a, self.a_m, self.b_m), b_from_m)
+        works = np.isfinite(b) & (b <= b_to_m)
+        return np.column_stack((a[works], b[works]))
+
+
+def _lowest_each(levels: Floats, given: Floats, sought: Floats) -> Floats:
+    # A level that misses by rounding alone is on the boundary.
+    return np.where(levels < given[0] - 1e-9, np.inf, np.interp(levels, given, sought))
 
 
 def _lowest(level: float, given: Floats, sought: Floats) -> float:
     """Value of the falling line `sought` over the rising `given`; infinite left of it, its last value right of it."""
-    if level < given[0]:
-        # A level that misses by rounding alone is on the boundary.
-        return float(sought[0]) if level >= given[0] - 1e-9 else math.inf
-    if level >= given[-1]:
-        return float(sought[-1])
-    return float(np.interp(level, given, sought))
+    return float(_lowest_each(np.array(level), given, sought))

@@ -58,7 +58,7 @@ def exact(
     pairs = boundary.candidates(*limits)
     if kind == "least cost":
         # A begun section is paid whole: cost falls at its ends too.
-        pairs += boundary.pairs_at(_section_ends(ground, settings, boundary), *limits)
+        pairs = np.concatenate((pairs, boundary.pairs_at(_section_ends(ground, settings, boundary), *limits)))
     return _best(kind, pairs, ground, settings)
 
 
@@ -84,10 +84,15 @@ def rounded(
 
 def cost_of(levels: Levels, ground: Ground, settings: HeightSettings) -> float:
     """What the two masts cost, in the user's currency."""
-    heights = levels[0] - ground.base_a_m, levels[1] - ground.base_b_m
+    heights = np.array([[levels[0] - ground.base_a_m, levels[1] - ground.base_b_m]])
+    return float(_costs(heights, settings)[0])
+
+
+def _costs(heights: Floats, settings: HeightSettings) -> Floats:
+    """Of pairs of mast heights, shape (m, 2)."""
     rates = settings.cost_a_per_m or 0.0, settings.cost_b_per_m or 0.0
-    sections = sum(math.ceil(max(height, 0.0) / settings.section_m - HAIR_M) for height in heights)
-    return heights[0] * rates[0] + heights[1] * rates[1] + sections * settings.cost_per_section
+    sections = np.ceil(np.maximum(heights, 0.0) / settings.section_m - HAIR_M).sum(axis=1)
+    return np.asarray(heights @ np.array(rates) + sections * settings.cost_per_section)
 
 
 def _up(level: float, base: float, step: float) -> float:
@@ -98,8 +103,8 @@ def _fits(levels: Levels, ground: Ground) -> Levels | None:
     return levels if all(math.isfinite(level) for level in levels) and ground.within(levels) else None
 
 
-def _steps(boundary: Boundary, ground: Ground, settings: HeightSettings) -> list[Levels]:
-    """For every step of A the lowest step of B that works: all pairs that can be the least of anything."""
+def _steps(boundary: Boundary, ground: Ground, settings: HeightSettings) -> Floats:
+    """For every step of A the lowest step of B that works: all pairs that can be the least of anything, shape (m, 2)."""
     step = settings.step_m
     start = max(ground.a_from_m, float(boundary.a_m[0]))
     stop = min(ground.a_to_m, max(float(boundary.a_m[-1]), start) + step)
@@ -112,38 +117,32 @@ def _steps(boundary: Boundary, ground: Ground, settings: HeightSettings) -> list
     height = np.maximum(b, ground.b_from_m) - ground.base_b_m
     b = ground.base_b_m + np.ceil(height / step - HAIR_M) * step
     fits = b <= ground.b_to_m + HAIR_M
-    return list(zip(a[fits].tolist(), b[fits].tolist(), strict=True))
+    return np.column_stack((a[fits], b[fits]))
 
 
-def _section_ends(ground: Ground, settings: HeightSettings, boundary: Boundary) -> list[float]:
+def _section_ends(ground: Ground, settings: HeightSettings, boundary: Boundary) -> Floats:
     """Levels of A at which a section of either mast is just full."""
     low_a, high_a = max(ground.a_from_m, float(boundary.a_m[0])), min(ground.a_to_m, float(boundary.a_m[-1]))
     low_b, high_b = max(ground.b_from_m, float(boundary.b_m[-1])), min(ground.b_to_m, float(boundary.b_m[0]))
     at_a = _multiples(low_a, high_a, ground.base_a_m, settings.section_m)
     at_b = _multiples(low_b, high_b, ground.base_b_m, settings.section_m)
-    return [*at_a, *(boundary.lowest_a(level) for level in at_b)]
+    return np.concatenate((at_a, boundary.lowest_a_each(at_b)))
 
 
-def _multiples(low: float, high: float, base: float, part: float) -> list[float]:
+def _multiples(low: float, high: float, base: float, part: float) -> Floats:
     first, last = math.ceil((low - base) / part), math.floor((high - base) / part)
-    return [base + number * part for number in range(first, min(last, first + MOST_STEPS) + 1)]
+    return np.asarray(base + part * np.arange(first, min(last, first + MOST_STEPS) + 1, dtype=np.float64))
 
 
-def _best(kind: HeightKind, pairs: list[Levels], ground: Ground, settings: HeightSettings) -> Levels | None:
+def _best(kind: HeightKind, pairs: Floats, ground: Ground, settings: HeightSettings) -> Levels | None:
     """The cheapest pair; of equally cheap ones the lower total, then the most even one."""
-    if not pairs:
+    if not pairs.size:
         return None
-
-    def total(levels: Levels) -> float:
-        return levels[0] - ground.base_a_m + levels[1] - ground.base_b_m
-
-    def uneven(levels: Levels) -> float:
-        return abs((levels[0] - ground.base_a_m) - (levels[1] - ground.base_b_m))
-
-    def price(levels: Levels) -> float:
-        return cost_of(levels, ground, settings) if kind == "least cost" else total(levels)
-
-    least = min(map(price, pairs))
-    cheap = [pair for pair in pairs if price(pair) <= least + _TIE]
-    low = min(map(total, cheap))
-    return min((pair for pair in cheap if total(pair) <= low + _TIE), key=uneven)
+    heights = pairs - (ground.base_a_m, ground.base_b_m)
+    total = heights.sum(axis=1)
+    price = _costs(heights, settings) if kind == "least cost" else total
+    cheap = price <= price.min() + _TIE
+    cheap &= total <= total[cheap].min() + _TIE
+    uneven = np.where(cheap, np.abs(heights[:, 0] - heights[:, 1]), np.inf)
+    a, b = pairs[int(np.argmin(uneven))].tolist()
+    return a, b
