@@ -27,9 +27,14 @@ class Report:
     texts: dict[str, str]
 
     @property
+    def main_pages(self) -> list[str]:
+        """File names of the overview and of the pages of links; crew sheets have tests of their own."""
+        return [name for name in self.texts if not name.startswith("crew-")]
+
+    @property
     def link_pages(self) -> list[Path]:
         """Pages of the links, in the order of the plan."""
-        return [self.folder / name for name in self.texts if name.startswith("link-")]
+        return [self.folder / name for name in self.main_pages[1:]]
 
 
 def _write(folder: Path, plan: StudyPlan) -> Report:

@@ -88,27 +88,27 @@ def _visits(report, browser, names):
 
 @pytest.fixture(scope="module")
 def plain_visits(plain, browser):
-    return _visits(plain, browser, plain.texts)
+    return _visits(plain, browser, plain.main_pages)
 
 
 @pytest.fixture(scope="module")
 def hostile_visits(hostile, browser):
-    return _visits(hostile, browser, hostile.texts)
+    return _visits(hostile, browser, hostile.main_pages)
 
 
 @pytest.fixture(scope="module")
 def sample_visits(sample, browser):
-    return _visits(sample, browser, sample.texts)
+    return _visits(sample, browser, sample.main_pages)
 
 
 @pytest.fixture(scope="module")
 def tiled_visits(tiled, browser):
-    return _visits(tiled, browser, list(tiled.texts)[:2])
+    return _visits(tiled, browser, tiled.main_pages[:2])
 
 
 @pytest.fixture(scope="module")
 def antimeridian_visits(antimeridian, browser):
-    return _visits(antimeridian, browser, list(antimeridian.texts)[:3])
+    return _visits(antimeridian, browser, antimeridian.main_pages[:3])
 
 
 @pytest.mark.parametrize("kind", ["plain", "sample", "hostile", "tiled", "antimeridian"])
@@ -162,7 +162,7 @@ def test_a_link_is_chosen_by_a_click_on_its_path_on_the_map(plain, watch):
     assert page.locator("#chosen h2").inner_text() == plain.plan.links[6].result.name
     assert page.locator("#chosen svg.path-profile:visible").count() == 1
     assert page.locator(".entry[aria-pressed=true]").get_attribute("data-link") == "6"
-    assert page.locator("#chosen a.page-link").get_attribute("href") == list(plain.texts)[7]
+    assert page.locator("#chosen a.page-link").get_attribute("href") == plain.main_pages[7]
 
 
 def test_a_link_is_chosen_in_the_list_by_keyboard_alone_and_left_again(plain, watch):
