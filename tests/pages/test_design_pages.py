@@ -87,7 +87,7 @@ def test_the_words_of_the_drawing_tell_how_sure_the_clearance_is(link: LinkPlan)
 def test_every_survey_point_stands_on_the_page_under_the_name_it_has_in_the_table(link: LinkPlan, html: str) -> None:
     section = html[html.index('class="survey"') :]
     section = section[: section.index("</section>")]
-    rows = re.findall(r'<tr>\s*<th scope="row">(.*?)</tr>', section, flags=re.DOTALL)
+    rows = re.findall(r'<tr>\s*<th scope="row" class="num">(.*?)</tr>', section, flags=re.DOTALL)
     assert len(rows) == len(link.survey) > 4
     for row, point in zip(rows, link.survey, strict=True):
         words = " ".join(unescape(re.sub(r"<[^>]+>", " ", row)).split())

@@ -248,3 +248,24 @@ def test_confidence_in_the_decision_is_rounded_down() -> None:
     pair = Pair(a_m=3.0, b_m=4.0, a_amsl_m=3.0, b_amsl_m=4.0)
     said = decision(pair, (), holds=True, confidence=0.9, likely=0.89996)
     assert "89.9 %" in said
+    assert "under 0.1 %" in decision(pair, (), holds=True, confidence=0.9, likely=0.0)
+
+
+@pytest.mark.parametrize("seed", range(300, 310))
+def test_no_other_answer_is_less_than_the_least_and_a_step_less_does_not_hold(seed: int) -> None:
+    profile = some_profile(seed, sigma_m=2.0)
+    costs = HeightSettings(cost_a_per_m=100.0, cost_b_per_m=50.0, cost_per_section=30.0)
+    found, _ = designed(profile, heights=costs)
+    least, cheap = found.option("least total"), found.option("least cost")
+    assert least is not None
+    assert cheap is not None
+    if least.build is None or cheap.build is None or cheap.cost is None:
+        pytest.skip("nothing within reach works")
+    for option in found.options:
+        if option.build is not None and option.cost is not None:
+            assert least.build.a_m + least.build.b_m <= option.build.a_m + option.build.b_m + 1e-6
+            assert cheap.cost <= option.cost + 1e-6
+    for a, b in ((least.build.a_m - 1.0, least.build.b_m), (least.build.a_m, least.build.b_m - 1.0)):
+        if min(a, b) >= 0.0:
+            moved, _ = designed(profile, a=a, b=b)
+            assert not moved.planned_holds

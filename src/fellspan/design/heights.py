@@ -26,7 +26,7 @@ from fellspan.design.heights_result import (
     Pair,
     Touch,
 )
-from fellspan.design.options import HAIR_M, Ground, Levels, cost_of, exact, rounded
+from fellspan.design.options import HAIR_M, Ground, Levels, cheapest, cost_of, exact, rounded
 from fellspan.links import clearance
 from fellspan.links.assess import Assessment, AssessSettings, assess_profile
 from fellspan.links.site import Link
@@ -81,7 +81,13 @@ def design_heights(
         sigma_m=marginal_m(case, errors_of(case), model),
         assessment=assessment,
     )
-    options = tuple(_option(search, kind, raw[kind]) for kind in kinds)
+    builds = {kind: None if raw[kind] is None else search.build(kind) for kind in kinds}
+    fit = [pair for pair in builds.values() if pair is not None and ground.within(pair)]
+    for kind in kinds:
+        # What answers another question can be the least of all: steps are whole.
+        if kind in ("least total", "least cost") and fit:
+            builds[kind] = cheapest(kind, fit, ground, heights)
+    options = tuple(_option(search, kind, raw[kind], builds[kind]) for kind in kinds)
     confidence = confidence_of(case, draws, model)
     rules = _rules_shown(case, raw)
     planned = _pair(case.planned, ground)
@@ -141,8 +147,21 @@ class _Search:
             if levels is None:
                 return None
             if self.case.rules_at(*levels) is rules or rules is self.case.rules[-1]:
-                return self._raised(kind, levels)
+                found = self._raised(kind, levels)
+                return self._settled(found) if found and kind in ("least total", "least cost") else found
         return None
+
+    def _settled(self, levels: Levels) -> Levels:
+        """Lowered by mast steps at either end while it still holds: the lift that found two heights at once is an estimate."""
+        step, (a, b) = self.heights.step_m, levels
+        for _ in range(_MOST_RAISINGS):
+            for lower in ((a - step, b), (a, b - step)):
+                if self.ground.within(lower) and self.holds(lower) and self.verdict_is_clear(lower):
+                    a, b = lower
+                    break
+            else:
+                break
+        return a, b
 
     def _rounded(self, kind: HeightKind, rules: Rules) -> Levels | None:
         """Least heights for the confidence under one set of rules, by draws and by the verdict's errors, rounded up."""
@@ -272,9 +291,8 @@ def _lowered(case: Case, kind: HeightKind, levels: Levels, ground: Ground) -> Le
     return a, b
 
 
-def _option(search: _Search, kind: HeightKind, raw: Levels | None) -> HeightOption:
+def _option(search: _Search, kind: HeightKind, raw: Levels | None, build: Levels | None) -> HeightOption:
     case, ground = search.case, search.ground
-    build = None if raw is None else search.build(kind)
     governs = None if raw is None else _touch(case, raw)
     return HeightOption(
         kind=kind,

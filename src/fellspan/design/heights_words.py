@@ -98,4 +98,6 @@ def cautions(planned: Pair, options: Sequence[HeightOption], *, growth_years: fl
 
 def _percent(likely: float) -> str:
     """Rounded down: what falls short of the confidence asked must not read as if it reached it."""
+    if likely < 0.001:
+        return "under 0.1 %"
     return "over 99.9 %" if likely > 0.999 else f"{math.floor(1000.0 * likely + 1e-6) / 10.0:g} %"

@@ -95,6 +95,11 @@ def _costs(heights: Floats, settings: HeightSettings) -> Floats:
     return np.asarray(heights @ np.array(rates) + sections * settings.cost_per_section)
 
 
+def cheapest(kind: HeightKind, pairs: list[Levels], ground: Ground, settings: HeightSettings) -> Levels | None:
+    """The pair that is the least of its kind; None where there is none."""
+    return _best(kind, np.array(pairs, dtype=np.float64), ground, settings)
+
+
 def _up(level: float, base: float, step: float) -> float:
     return base + math.ceil((level - base) / step - HAIR_M) * step
 
