@@ -167,7 +167,9 @@ class _Search:
         """Least heights for the confidence under one set of rules, by draws and by the verdict's errors, rounded up."""
         case, need, level = self.case, rules.most_m, self.asked
         sigmas = NormalDist().inv_cdf(level)
-        engine_need = np.maximum(need, need + sigmas * case.errors_m)
+        # Only criteria are asked for with a confidence: the own roof is cleared or it is not, for roof and antenna move together.
+        criteria = rules.need_m[: len(rules.criteria)].max(axis=0)
+        engine_need = np.maximum(need, criteria + sigmas * case.errors_m)
         boundary = Boundary.over(case.share, engine_need)
         if kind in ("least total", "least cost"):
             return self._rounded_pair(kind, rules, engine_need, sigmas)
@@ -198,7 +200,8 @@ class _Search:
         case, found = self.case, None
         lift = max(sigmas, 0.0)
         for _ in range(4):
-            need = np.maximum(engine_need, rules.most_m + lift * self.sigma_m)
+            criteria = rules.need_m[: len(rules.criteria)].max(axis=0)
+            need = np.maximum(engine_need, criteria + lift * self.sigma_m)
             boundary = Boundary.over(case.share, need)
             levels = exact(kind, boundary, case.share, need, self.ground, self.heights)
             if levels is None:

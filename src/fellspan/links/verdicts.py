@@ -145,17 +145,9 @@ def reasons(
         sentences.append(f"Marginal: every criterion is met, but {doubts[0].clause}.")
         more = more[1:]
         if confidence < confidence_asked:
-            more.append(f"The confidence is {_percent(confidence)} ({asked}).")
-    elif verdict == "marginal":
-        sentences.append(
-            f"Marginal: every criterion is met on the heights in the data, but with {_percent(confidence)} confidence only "
-            f"({asked})."
-        )
+            more.append(f"The confidence is {percent(confidence)} ({asked}).")
     else:
-        sentences.append(
-            f"{'Clear on bare ground only' if basis == 'bare ground only' else 'Clear'}: every criterion is met with "
-            f"{_percent(confidence)} confidence ({asked})."
-        )
+        sentences.append(met_sentence(verdict, basis, confidence=confidence, confidence_asked=confidence_asked))
     if rule.met:
         sentences.append(
             f"{down_m(max(rule.clearance_m - rule.required_m, 0.0)):.1f} m to spare under {rule.criterion}; nearest the ray: "
@@ -169,7 +161,7 @@ def reasons(
         else:
             sentences.append(f"The most is missing at another point: {missing}, {where}, under {rule.criterion}.")
     if verdict != "clear" and raising.both != 0.0:
-        sentences.append(_raise_sentence(raising, confidence_asked))
+        sentences.append(raise_sentence(raising, confidence_asked))
     sentences.append(_basis_sentence(basis, not_held))
     sentences += [
         f"Left out at {item.end}, as the antenna's own building or cover: {item.what}, up to {item.height_m:.1f} m high."
@@ -178,15 +170,31 @@ def reasons(
     return tuple(sentences)
 
 
+def met_sentence(verdict: PathVerdict, basis: Basis, *, confidence: float, confidence_asked: float) -> str:
+    """The decisive sentence where every criterion is met on the heights in the data: clear, or too unsure to be called so."""
+    asked = f"{100.0 * confidence_asked:.0f} % asked"
+    if verdict == "marginal":
+        return (
+            f"Marginal: every criterion is met on the heights in the data, but with {percent(confidence)} confidence only "
+            f"({asked})."
+        )
+    clear = "Clear on bare ground only" if basis == "bare ground only" else "Clear"
+    return f"{clear}: every criterion is met with {percent(confidence)} confidence ({asked})."
+
+
 def place(at_m: float) -> str:
     """'4.21 km from A', or '830 m from A' on the first kilometre."""
     return f"{at_m / 1000.0:.2f} km from A" if at_m >= 1000.0 else f"{at_m:.0f} m from A"
 
 
-def _raise_sentence(extra: ExtraHeight, confidence: float) -> str:
-    """Heights to build to: at the confidence asked, rounded up to whole metres of mast."""
+RAISING_BEGINS: Final = ("Raise ", "Raising both ends", "No height at the ends")
+"""How `raise_sentence` begins, so that planning can put better heights in its place."""
+
+
+def raise_sentence(extra: ExtraHeight, confidence: float, *, step_m: float = 1.0) -> str:
+    """Heights to add at the confidence asked, rounded up to `step_m` of mast."""
     options = [
-        f"{words} by {math.ceil(height_m - 1e-6)} m"
+        f"{words} by {math.ceil(height_m / step_m - 1e-6) * step_m:.6g} m"
         for words, height_m in (("A", extra.a), ("B", extra.b), ("both", extra.both))
         if height_m is not None and height_m <= USUAL_MAST_M
     ]
@@ -200,7 +208,7 @@ def _raise_sentence(extra: ExtraHeight, confidence: float) -> str:
     return "No height at the ends makes this path clear: look for another site or a relay."
 
 
-def _percent(probability: float) -> str:
+def percent(probability: float) -> str:
     """Rounded down; near certainty is not called 100 %, for the error model is not that good."""
     if probability > 0.999:
         return "over 99.9 %"

@@ -14,6 +14,7 @@ from fellspan.design.survey_list import survey_list
 from fellspan.errors import FellspanError
 from fellspan.links.assess import AssessSettings, assess_in_full
 from fellspan.links.site import Link
+from fellspan.planning.agreement import one_voice
 from fellspan.planning.far_away import far_cautions
 from fellspan.planning.horizons import with_horizons
 from fellspan.planning.inputs import Study
@@ -123,7 +124,8 @@ def _plan_link(
         answer, confidence = design_heights(link, assessment, settings, heights=heights, growth_years=growth_years)
     except FellspanError as error:
         return LinkFailure(link=link, error=explained(error, link, terrain))
-    result, profile, levels = assessment.result, assessment.profile, assessment.levels
+    result = one_voice(assessment.result, answer, confidence)
+    profile, levels = assessment.profile, assessment.levels
     return LinkPlan(
         link=link,
         result=result,
