@@ -255,14 +255,17 @@ def test_confidence_in_the_decision_is_rounded_down() -> None:
 def test_no_other_answer_is_less_than_the_least_and_a_step_less_does_not_hold(seed: int) -> None:
     profile = some_profile(seed, sigma_m=2.0)
     costs = HeightSettings(cost_a_per_m=100.0, cost_b_per_m=50.0, cost_per_section=30.0)
-    found, _ = designed(profile, heights=costs)
+    # A is planned off the steps: what builds on that is no answer to the least.
+    found, _ = designed(profile, a=12.3, heights=costs)
     least, cheap = found.option("least total"), found.option("least cost")
     assert least is not None
     assert cheap is not None
     if least.build is None or cheap.build is None or cheap.cost is None:
         pytest.skip("nothing within reach works")
+    assert all(value == round(value) for value in (least.build.a_m, least.build.b_m, cheap.build.a_m, cheap.build.b_m))
     for option in found.options:
-        if option.build is not None and option.cost is not None:
+        whole = option.build is not None and option.build.a_m == round(option.build.a_m)
+        if whole and option.build is not None and option.cost is not None:
             assert least.build.a_m + least.build.b_m <= option.build.a_m + option.build.b_m + 1e-6
             assert cheap.cost <= option.cost + 1e-6
     for a, b in ((least.build.a_m - 1.0, least.build.b_m), (least.build.a_m, least.build.b_m - 1.0)):

@@ -26,7 +26,7 @@ from fellspan.design.heights_result import (
     Pair,
     Touch,
 )
-from fellspan.design.options import HAIR_M, Ground, Levels, cheapest, cost_of, exact, rounded
+from fellspan.design.options import HAIR_M, Ground, Levels, cheapest, cost_of, exact, rounded, whole_steps
 from fellspan.links import clearance
 from fellspan.links.assess import Assessment, AssessSettings, assess_profile
 from fellspan.links.site import Link
@@ -82,7 +82,7 @@ def design_heights(
         assessment=assessment,
     )
     builds = {kind: None if raw[kind] is None else search.build(kind) for kind in kinds}
-    fit = [pair for pair in builds.values() if pair is not None and ground.within(pair)]
+    fit = [pair for pair in builds.values() if pair is not None and whole_steps(pair, ground, heights)]
     for kind in kinds:
         # What answers another question can be the least of all: steps are whole.
         if kind in ("least total", "least cost") and fit:

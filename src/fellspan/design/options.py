@@ -95,6 +95,12 @@ def _costs(heights: Floats, settings: HeightSettings) -> Floats:
     return np.asarray(heights @ np.array(rates) + sections * settings.cost_per_section)
 
 
+def whole_steps(levels: Levels, ground: Ground, settings: HeightSettings) -> bool:
+    """Whether both masts are within their limits and a whole number of steps high; a planned height need not be."""
+    steps = (levels[0] - ground.base_a_m) / settings.step_m, (levels[1] - ground.base_b_m) / settings.step_m
+    return ground.within(levels) and all(abs(count - round(count)) < 1e-6 for count in steps)
+
+
 def cheapest(kind: HeightKind, pairs: list[Levels], ground: Ground, settings: HeightSettings) -> Levels | None:
     """The pair that is the least of its kind; None where there is none."""
     return _best(kind, np.array(pairs, dtype=np.float64), ground, settings)
