@@ -167,7 +167,7 @@ class _Search:
         """Least heights for the confidence under one set of rules, by draws and by the verdict's errors, rounded up."""
         case, need, level = self.case, rules.most_m, self.asked
         sigmas = NormalDist().inv_cdf(level)
-        # Only criteria are asked for with a confidence: the own roof is cleared or it is not, for roof and antenna move together.
+        # Only criteria ask for a confidence: the own roof is cleared or it is not, for roof and antenna move together.
         criteria = rules.need_m[: len(rules.criteria)].max(axis=0)
         engine_need = np.maximum(need, criteria + sigmas * case.errors_m)
         boundary = Boundary.over(case.share, engine_need)
