@@ -45,6 +45,10 @@ def plan_command(
     full: Annotated[
         bool, typer.Option("--full", help=f"Print every link in full, also where there are more than {FULL_UP_TO}.")
     ] = False,
+    horizons: Annotated[
+        bool,
+        typer.Option("--horizons", help="Work out the skyline from each end too, for aiming; a second or so an end."),
+    ] = False,
     as_json: Annotated[bool, typer.Option("--json", help="Print results as JSON instead of the page.")] = False,
 ) -> None:
     """Plan every link of a study file: clear or not, by how much, and what would clear it."""
@@ -56,7 +60,7 @@ def plan_command(
 
         check_target(out)
     try:
-        plan = run_plan(_only(load_study(study), link or []), reported=out is not None)
+        plan = run_plan(_only(load_study(study), link or []), horizons=horizons)
     except FellspanError:
         tell_old_report(out)
         raise
@@ -99,4 +103,5 @@ def _only(study: "Study", names: list[str]) -> "Study":
                 *did_you_mean(name, known),
                 f"links: {', '.join(known)}",
             )
-    return dataclasses.replace(study, links=tuple(link for link in study.links if link.name in names))
+    chosen = tuple(link for link in study.links if link.name in names)
+    return dataclasses.replace(study, links=chosen, links_left_out=tuple(name for name in known if name not in names))

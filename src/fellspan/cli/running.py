@@ -12,7 +12,6 @@ import typer
 from fellspan.cli.layout import WIDTH, Ink, colours_wanted, cut, printable
 from fellspan.cli.page import page_lines
 from fellspan.errors import UsageError
-from fellspan.planning.horizons import HORIZONS_UP_TO
 from fellspan.planning.inputs import Study
 from fellspan.planning.plan import StudyPlan
 from fellspan.planning.planner import plan_study
@@ -20,11 +19,11 @@ from fellspan.planning.planner import plan_study
 _BAR = 20
 
 
-def run_plan(study: Study, *, reported: bool = False) -> StudyPlan:
-    """Plan a study, with progress on a terminal; with skylines where a report of few links will show them."""
+def run_plan(study: Study, *, horizons: bool = False) -> StudyPlan:
+    """Plan a study, with progress on a terminal; `horizons` adds the skyline from each end, a second or so each."""
     progress = progress_line("planning")
     try:
-        return plan_study(study, progress=progress, horizons=reported and len(study.links) <= HORIZONS_UP_TO)
+        return plan_study(study, progress=progress, horizons=horizons)
     finally:
         clear_progress(progress)
 

@@ -8,9 +8,6 @@ from fellspan.planning.plan import Horizons, LinkPlan
 from fellspan.terrain.fan import Fan
 from fellspan.terrain.terrain import Terrain
 
-HORIZONS_UP_TO = 12
-"""Commands leave skylines out where a study has more links than this and none was chosen by name."""
-
 
 def with_horizons(link: LinkPlan, terrain: Terrain) -> LinkPlan:
     """The link with the skyline from each end, at the median k, 30 degrees to either side of the other end.

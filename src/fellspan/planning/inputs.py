@@ -57,6 +57,8 @@ class Study:
     path: Path | None = None
     antenna_catalogue: Path | None = None
     """Antennas of the user's own, which models may name."""
+    links_left_out: tuple[str, ...] = ()
+    """Names of links of the study that are not planned this time."""
     notes: tuple[str, ...] = field(default=())
     """Warnings found while reading, such as coarse coordinates."""
     climate: GivenClimate = field(default_factory=GivenClimate)

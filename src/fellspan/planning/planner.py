@@ -140,7 +140,7 @@ def _plan_link(
 
 def _unused_survey(study: Study, terrain: Terrain) -> Iterator[str]:
     """Survey rows that name a link which the study does not have would be lost without a word."""
-    keys = {link_key(link.name) for link in study.links}
+    keys = {link_key(name) for name in (*(link.name for link in study.links), *study.links_left_out)}
     for name in terrain.survey_links:
         if link_key(name) not in keys:
             yield f"survey: rows for a link '{name}', which this study does not have, were not used"

@@ -206,7 +206,7 @@ def _landmarks(link: LinkPlan, letter: EndLetter) -> Pairs:
 
 def _no_landmarks(link: LinkPlan) -> str:
     if link.horizons is None:
-        return "No skyline was worked out: plan this link alone with --link to have landmarks, or take them from a map."
+        return "No skyline was worked out: plan with --horizons to have landmarks, or take them from a map."
     return "No summit stands out within 30° of the link: take landmarks from a map."
 
 
