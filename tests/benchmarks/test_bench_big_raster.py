@@ -116,7 +116,7 @@ def test_a_diagonal_over_a_huge_raster_is_cheap(tmp_path: Path) -> None:
         bare.append(run(BARE, raster, given=blocks))
     seconds, bare_seconds = (statistics.median(r["seconds"] for r in runs) for runs in (ours, bare))
     peak = max(r["peak_mb"] for r in ours)
-    print(  # noqa: T201
+    print(
         f"\n56 km at 0.5 m: {ours[0]['samples']} samples, {seconds:.2f} s, peak {peak:.0f} MB; "
         f"rasterio alone {bare_seconds:.2f} s; {len(path_blocks())} blocks"
     )

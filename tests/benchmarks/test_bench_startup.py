@@ -24,5 +24,5 @@ def test_help_takes_little_more_than_importing_typer() -> None:
     )
     pairs = [(seconds(bare), seconds(with_help)) for _ in range(RUNS + 1)][1:]  # the first fills the disk cache
     bare_s, help_s = (statistics.median(times) for times in zip(*pairs, strict=True))
-    print(f"import typer {bare_s * 1000:.0f} ms, fellspan --help {help_s * 1000:.0f} ms: {help_s / bare_s:.2f}")  # noqa: T201
+    print(f"import typer {bare_s * 1000:.0f} ms, fellspan --help {help_s * 1000:.0f} ms: {help_s / bare_s:.2f}")
     assert help_s < 1.5 * bare_s

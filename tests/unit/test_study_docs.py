@@ -44,7 +44,14 @@ def example() -> str:
 
 def test_the_example_loads(tmp_path: Path) -> None:
     (tmp_path / "terrain" / "fine").mkdir(parents=True)
-    for name in ("terrain/coarse.tif", "terrain/surface.tif", "terrain/trees.tif", "obstacles.csv", "survey-march.csv", "water.geojson"):
+    for name in (
+        "terrain/coarse.tif",
+        "terrain/surface.tif",
+        "terrain/trees.tif",
+        "obstacles.csv",
+        "survey-march.csv",
+        "water.geojson",
+    ):
         (tmp_path / name).touch()
     (tmp_path / "survey-april.csv").touch()
     (tmp_path / "panel.csv").write_text(PANEL, encoding="utf-8")
