@@ -51,6 +51,7 @@ def test_the_decision_comes_first_and_the_page_fits_80_columns(study: Path) -> N
         assert words in run.stdout, words
 
 
+@pytest.mark.slow
 def test_levels_are_those_of_plan_with_the_antenna_in_the_study(study: Path) -> None:
     run = run_command("equip", study.name, *SMALL, "--no-reach", "--json", folder=study.parent)
     assert run.returncode == 0, run.stderr

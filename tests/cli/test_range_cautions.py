@@ -34,7 +34,7 @@ def test_a_range_left_is_said_everywhere_and_there_is_a_result(
     assert main.run(["plan", str(study), "--full", "--out", str(out)]) == 0
     terminal = _flat(capsys.readouterr().out)
     held = json.loads((out / "results.json").read_text(encoding="utf-8"))["links"][0]
-    page = next(path for path in out.glob("*.html") if path.name != "index.html" and "West" in path.read_text("utf-8"))
+    page = next(path for path in out.glob("link-*.html") if "West" in path.read_text("utf-8"))
     shown = _flat(html.unescape(re.sub(r"<[^>]+>", " ", page.read_text(encoding="utf-8"))))
     for words in SAID:
         assert words in terminal
