@@ -216,6 +216,7 @@ def _shared(plan: StudyPlan, chart: MapMarkup | None) -> dict[str, Any]:
         origin = f" {urlsplit(study.tiles_url).scheme or 'https'}:"
     return {
         "plan": plan,
+        "open_sea": _gaps_are_sea(plan),
         "map": chart and _safe_map(chart),
         "tiles": tiles,
         "coordination": any(link.result.received_dbm.at_a is not None for link in plan.links),
