@@ -37,7 +37,7 @@ ANTENNA_SOURCES: Final = (
         edition="1976",
         clause="table 1",
         status="code",
-        note="The table was seen in transcription. Our computed gains lie within 0.5 dB of those measured.",
+        note="The table was seen in copies. Our computed gains lie within 0.5 dB of those measured.",
     ),
     Source(
         key="f699-8",
