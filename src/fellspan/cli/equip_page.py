@@ -8,7 +8,7 @@ from typing import Final
 from fellspan.cli import figures
 from fellspan.cli.layout import WIDTH, Ink, columns_of, cut, labelled, printable, table, wrapped
 from fellspan.design.equip_result import EquipResult, EquipRow
-from fellspan.design.equip_words import down_db, pair_words, up_db
+from fellspan.design.equip_words import capital, down_db, pair_words, up_db
 
 _WIDTHS: Final = (2, 26, 6, 6, 6, 8, 5, 6, 6)
 _RIGHT: Final = (0, 2, 3, 4, 5, 6, 7, 8)
@@ -23,8 +23,7 @@ def equip_lines(result: EquipResult, *, ink: Ink) -> list[str]:
     name = cut(printable(result.link), WIDTH - len(facts) - 2)
     lines = [f"{ink.emphasise(name)}{' ' * (WIDTH - columns_of(name) - len(facts))}{facts}"]
     tone = "bad" if result.best is None else "good" if result.path_verdict in (None, "clear") else "doubt"
-    decision = result.decision[:1].upper() + result.decision[1:]
-    lines += [ink.emphasise(line, tone) for line in wrapped(decision)]
+    lines += [ink.emphasise(line, tone) for line in wrapped(capital(result.decision))]
     if result.changes:
         lines += wrapped(result.changes, first="  ")
     lines += ["", ink.emphasise(table(_HEADS, (), widths=_WIDTHS, right=_RIGHT)[0])]

@@ -9,6 +9,7 @@ from typing import Final
 from fellspan.cli import figures
 from fellspan.cli.layout import WIDTH, Ink, columns_of, cut, labelled, printable, table, wrapped
 from fellspan.cli.signal_page import signal_lines
+from fellspan.design.equip_words import capital
 from fellspan.links import words
 from fellspan.links.result import AntennaResult, CriterionResult, EndResult, LinkResult
 from fellspan.links.words import STATE_WORDS, State, state_of
@@ -43,6 +44,7 @@ def link_lines(plan: LinkPlan, *, ink: Ink, told: Container[str] = ()) -> list[s
         *signal_lines(result, ink),
         *_reflections(plan),
         *_heights(plan),
+        *_equipment(plan),
         *_to_verify(plan),
         *_ends(result),
         *_cautions(result, told),
@@ -141,6 +143,11 @@ def _reflections(plan: LinkPlan) -> list[str]:
 def _heights(plan: LinkPlan) -> list[str]:
     """What to build, with the confidence asked and in whole mast steps; `fellspan heights` tells the rest."""
     return [] if plan.heights is None else labelled("Heights", plan.heights.decision)
+
+
+def _equipment(plan: LinkPlan) -> list[str]:
+    """Which antenna would serve, where that was asked; `fellspan equip` tells the rest."""
+    return [] if plan.equipment is None else labelled("Equipment", capital(plan.equipment.decision))
 
 
 def _to_verify(plan: LinkPlan) -> list[str]:

@@ -49,6 +49,10 @@ def plan_command(
         bool,
         typer.Option("--horizons", help="Work out the skyline from each end too, for aiming; a second or so an end."),
     ] = False,
+    equip: Annotated[
+        bool,
+        typer.Option("--equip", help="Compare the antennas of the catalogue on each link too; a second or so a link."),
+    ] = False,
     as_json: Annotated[bool, typer.Option("--json", help="Print results as JSON instead of the page.")] = False,
 ) -> None:
     """Plan every link of a study file: clear or not, by how much, and what would clear it."""
@@ -60,7 +64,7 @@ def plan_command(
 
         check_target(out)
     try:
-        plan = run_plan(_only(load_study(study), link or []), horizons=horizons)
+        plan = run_plan(_only(load_study(study), link or []), horizons=horizons, equipment=equip)
     except FellspanError:
         tell_old_report(out)
         raise

@@ -19,11 +19,11 @@ from fellspan.planning.planner import plan_study
 _BAR = 20
 
 
-def run_plan(study: Study, *, horizons: bool = False) -> StudyPlan:
-    """Plan a study, with progress on a terminal; `horizons` adds the skyline from each end, a second or so each."""
+def run_plan(study: Study, *, horizons: bool = False, equipment: bool = False) -> StudyPlan:
+    """Plan a study, with progress on a terminal; `horizons` and `equipment` are what `plan_study` adds, a second or so each."""
     progress = progress_line("planning")
     try:
-        return plan_study(study, progress=progress, horizons=horizons)
+        return plan_study(study, progress=progress, horizons=horizons, equipment=equipment)
     finally:
         clear_progress(progress)
 

@@ -166,6 +166,11 @@ def assumptions_of(settings: EquipSettings, rows: Sequence[EquipRow], path: Sign
     return tuple(found)
 
 
+def capital(sentence: str) -> str:
+    """A decision as it begins a line."""
+    return sentence[:1].upper() + sentence[1:]
+
+
 def up_db(value: float) -> str:
     """A shortfall to a tenth of a decibel, never too small."""
     return f"{math.ceil(value * 10.0 - 1e-9) / 10.0:.1f}"

@@ -44,6 +44,8 @@ def results_dict(plan: StudyPlan) -> dict[str, Any]:
                 "survey": [
                     plain_of(dataclasses.replace(point, label=label_of(number, point.rank))) for point in linked.survey
                 ],
+                # As exports/equipment.py writes it; absent unless asked for.
+                **({} if linked.equipment is None else {"equipment": plain_of(linked.equipment)}),
             }
             for number, linked in enumerate(plan.links, start=1)
         ],

@@ -3,6 +3,7 @@
 from dataclasses import dataclass
 
 from fellspan.design.confidence import ConfidenceResult
+from fellspan.design.equip_result import EquipResult
 from fellspan.design.heights_result import HeightsResult
 from fellspan.design.reflection_result import ReflectionResult
 from fellspan.design.survey_list import SurveyPoint
@@ -41,6 +42,8 @@ class LinkPlan:
     survey: tuple[SurveyPoint, ...] = ()
     horizons: Horizons | None = None
     """None where nobody asked for skylines."""
+    equipment: EquipResult | None = None
+    """None where nobody asked which antennas would serve, or where the radio states too little to say."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

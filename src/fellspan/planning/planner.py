@@ -7,6 +7,7 @@ from collections.abc import Callable, Iterator
 from typing import Final
 
 from fellspan import __version__
+from fellspan.antennas.catalogue import Catalogue, load_catalogue
 from fellspan.design.heights import design_heights
 from fellspan.design.heights_result import HeightSettings
 from fellspan.design.reflections import Water, find_reflections
@@ -19,6 +20,7 @@ from fellspan.planning.far_away import far_cautions
 from fellspan.planning.horizons import with_horizons
 from fellspan.planning.inputs import Study
 from fellspan.planning.neighbours import neighbours_of, with_cautions
+from fellspan.planning.outfits import equipment_of
 from fellspan.planning.plan import LinkFailure, LinkPlan, StudyPlan
 from fellspan.planning.slips import explained
 from fellspan.planning.stamp import input_files
@@ -38,8 +40,12 @@ def plan_study(
     progress: Progress | None = None,
     heights: HeightSettings = _AS_USUAL,
     horizons: bool = False,
+    equipment: bool = False,
 ) -> StudyPlan:
-    """Assess every link of a study; `heights` says how antenna heights are searched, `horizons` adds skylines for aiming.
+    """Assess every link of a study.
+
+    `heights` says how antenna heights are searched; `horizons` adds skylines for aiming, `equipment` the antennas of the
+    catalogue compared on each link.
 
     Raises
     ------
@@ -48,13 +54,16 @@ def plan_study(
     """
     settings = settings_of(study)
     water = water_of(study)
+    catalogue = load_catalogue(study.antenna_catalogue) if equipment else None
     planned: list[LinkPlan] = []
     failures: list[LinkFailure] = []
     with open_terrain(study) as terrain:
         for done, link in enumerate(study.links):
             if progress is not None:
                 progress(done, len(study.links), link.name)
-            outcome = _plan_link(link, terrain, settings, water, heights, growth_years=study.growth_years)
+            outcome = _plan_link(
+                link, terrain, settings, water, heights, growth_years=study.growth_years, catalogue=catalogue
+            )
             if isinstance(outcome, LinkPlan):
                 planned.append(with_horizons(outcome, terrain) if horizons else outcome)
             else:
@@ -118,6 +127,7 @@ def _plan_link(
     heights: HeightSettings,
     *,
     growth_years: float,
+    catalogue: Catalogue | None,
 ) -> LinkPlan | LinkFailure:
     try:
         assessment = assess_in_full(link, terrain=terrain, settings=settings)
@@ -135,6 +145,7 @@ def _plan_link(
         heights=answer,
         confidence=confidence,
         survey=survey_list(result, profile, levels),
+        equipment=None if catalogue is None else equipment_of(link, assessment, settings, catalogue=catalogue),
     )
 
 

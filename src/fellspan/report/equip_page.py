@@ -1,5 +1,7 @@
-"""The page of a comparison of equipment: decision, chart of reach, ranked table, cautions; everything inside itself."""
+"""What pages show of a comparison of equipment, as a page of its own or a section of a link's: decision, reach, ranking."""
 
+from collections.abc import Container
+from dataclasses import dataclass
 from pathlib import Path
 from typing import Final
 
@@ -7,7 +9,7 @@ from markupsafe import Markup
 
 from fellspan import __version__
 from fellspan.design.equip_result import EquipResult, EquipRow
-from fellspan.design.equip_words import down_db, pair_words, up_db
+from fellspan.design.equip_words import capital, down_db, pair_words, up_db
 from fellspan.errors import OutputError
 from fellspan.report import assets, wording
 from fellspan.report.reach_drawing import NARROW_WIDTH, draw_reach, reach_words, shown_rows
@@ -27,23 +29,54 @@ HEADS: Final = (
     "Far field",
     "Reach",
 )
+OF_WIND: Final = ("Wind", "Moment")
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class EquipView:
+    """What templates show; `rows` hold the row, its name and what stands beside it, in the order of `heads`.
+
+    Columns of wind are left out where no wind was asked for.
+    """
+
+    result: EquipResult
+    decision: str
+    markup: Markup
+    narrow: Markup
+    caption: str
+    heads: tuple[str, ...]
+    rows: tuple[tuple[EquipRow, str, tuple[str, ...]], ...]
+    cautions: tuple[str, ...]
+
+
+def equip_view(result: EquipResult, *, told: Container[str] = ()) -> EquipView:
+    """The comparison for a template; cautions that are `told` elsewhere on the page are left out."""
+    blown = any(row.wind is not None for row in result.rows)
+    kept = [index for index, head in enumerate(HEADS) if blown or head not in OF_WIND]
+    return EquipView(
+        result=result,
+        decision=capital(result.decision),
+        markup=Markup(draw_reach(result, uid="reach")),
+        narrow=Markup(draw_reach(result, uid="reach-n", width=NARROW_WIDTH)),
+        caption="; ".join(reach_words(row, result.rows) for row in shown_rows(result)) + ".",
+        heads=tuple(HEADS[index] for index in kept),
+        rows=tuple(
+            (row, pair_words(row, result.rows), tuple(cells(row)[index - 1] for index in kept[1:]))
+            for row in result.rows
+        ),
+        cautions=tuple(line for line in result.cautions if line not in told),
+    )
 
 
 def render_equip_page(result: EquipResult) -> str:
     """The HTML text of the page; opened with no network it makes no request."""
     made = assets.environment()
     made.filters.update(frequency=wording.frequency, distance=wording.distance)
-    rows = shown_rows(result)
     return made.get_template("equip.html.j2").render(
         result=result,
-        decision=result.decision[:1].upper() + result.decision[1:],
-        chart=Markup(draw_reach(result, uid="reach")),
-        narrow=Markup(draw_reach(result, uid="reach-n", width=NARROW_WIDTH)),
-        caption="; ".join(reach_words(row, result.rows) for row in rows) + ".",
-        heads=HEADS,
-        rows=[(row, pair_words(row, result.rows), cells(row)) for row in result.rows],
+        view=equip_view(result),
         version=__version__,
-        css={name: assets.asset(f"{name}.css") for name in ("drawing", "page", "polar", "antenna")},
+        css={name: assets.asset(f"{name}.css") for name in ("drawing", "page", "polar", "antenna", "equip")},
     )
 
 

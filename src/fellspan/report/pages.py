@@ -20,6 +20,7 @@ from fellspan.report import assets, wording
 from fellspan.report import map_geometry as geometry
 from fellspan.report.antenna_section import antenna_section
 from fellspan.report.crew_sheet import crew_sheet
+from fellspan.report.equip_page import equip_view
 from fellspan.report.heights_section import heights_section
 from fellspan.report.horizon_section import horizon_section
 from fellspan.report.map import MapMarkup, link_map
@@ -141,6 +142,7 @@ def _link_page(plan: StudyPlan, index: int, link: LinkPlan, templates: Environme
         antennas=antenna_section(link),
         neighbours=neighbours_view(plan, result.name),
         heights=heights_section(link),
+        equipment=link.equipment and equip_view(link.equipment, told=safety_lines()),
         horizons=horizon_section(link),
         crew=[(letter, crew_name(index, result.name, letter.lower())) for letter in ("A", "B")],
         reflections=reflection_section(link),
@@ -228,6 +230,7 @@ def _shared(plan: StudyPlan, chart: MapMarkup | None) -> dict[str, Any]:
             "map": assets.asset("map.css"),
             "polar": assets.asset("polar.css"),
             "horizon": assets.asset("horizon.css"),
+            "equip": assets.asset("equip.css"),
         },
         "js": {
             "leaflet": assets.leaflet_js(),
