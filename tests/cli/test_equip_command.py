@@ -193,3 +193,12 @@ def test_the_page_on_equipment_names_every_option() -> None:
         "--off-aim",
     ):
         assert option in text, option
+
+
+def test_power_that_the_rule_took_is_told_and_not_asked_back(capsys: pytest.CaptureFixture[str]) -> None:
+    sample = Path(__file__).resolve().parents[2] / "sample_terrain" / "tolmera.toml"
+    words = ["equip", str(sample), "--link", "Harbour Office - Cape Light", "--antennas", "dish 0.6 m"]
+    assert main.run(words) == 0
+    shown = " ".join(capsys.readouterr().out.split())
+    assert "with the power lowered by 15.7 dB to what the power rule allows" in shown
+    assert "dB more (shorter feeder" in shown

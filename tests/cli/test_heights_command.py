@@ -78,3 +78,15 @@ def test_what_makes_no_sense_is_refused_by_value(
 def test_an_unknown_link_is_refused(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
     assert run("heights", write_study(tmp_path), "--link", "Nowhere") == 2
     assert "Nowhere" in capsys.readouterr().err
+
+
+def test_what_a_study_says_itself_cannot_be_typed_beside_it(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    assert run("heights", write_study(tmp_path), "--frequency", "5 GHz", "--roof-a", "9 m") == 2
+    assert "--frequency, --roof-a cannot stand beside a study" in capsys.readouterr().err
+
+
+def test_the_command_speaks_under_its_own_name(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    words = [str(word) for word in two_points(tmp_path)]
+    at = words.index("--frequency")
+    assert run(*words[:at], *words[at + 2 :]) == 2
+    assert "heights still needs: --frequency" in capsys.readouterr().err

@@ -276,3 +276,11 @@ def test_no_report_when_no_link_could_be_planned(clear_study: Path) -> None:
     clear_study.write_text(text, encoding="utf-8")
     assert run("plan", clear_study, "--out", clear_study.parent / "report") == 2
     assert not (clear_study.parent / "report").exists()
+
+
+def test_links_left_out_are_missed_as_neighbours(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    study = Path(__file__).resolve().parents[2] / "sample_terrain" / "tolmera.toml"
+    assert main.run(["plan", str(study), "--link", "Beacon - School"]) == 0
+    shown = " ".join(capsys.readouterr().out.split())
+    assert "neighbours: 9 other links of this study were left out" in shown
+    assert "rows for a link 'Beacon - West Point'" not in shown

@@ -71,6 +71,18 @@ def heights_command(
         from fellspan.cli.plan_command import _only
         from fellspan.study.reading import load_study
 
+        _refuse_beside_a_study(
+            {
+                "--crs": crs,
+                "--ground": ground,
+                "--surface": surface,
+                "--frequency": frequency,
+                "--height-a": height_a,
+                "--height-b": height_b,
+                "--roof-a": roof_a,
+                "--roof-b": roof_b,
+            }
+        )
         study = _only(load_study(Path(where[0])), link or [])
     else:
         from fellspan.cli.sight_study import SightOptions, sight_study
@@ -88,6 +100,7 @@ def heights_command(
                 roof_a=roof_a,
                 roof_b=roof_b,
                 preset=preset,
+                command="heights",
             )
         )
     if years is not None:
@@ -103,6 +116,16 @@ def heights_command(
         typer.echo(f"fellspan: {failure.link.name}: {failure.error}", err=True)
     if plan.failures:
         raise typer.Exit(INPUT)
+
+
+def _refuse_beside_a_study(given: dict[str, object]) -> None:
+    """Options of two points would be lost beside a study, which says the same itself."""
+    lost = [name for name, value in given.items() if value]
+    if lost:
+        raise UsageError(
+            f"{', '.join(lost)} cannot stand beside a study",
+            "the study says it: change it there, or give two positions instead of the study",
+        )
 
 
 def _is_study(where: list[str]) -> bool:

@@ -55,6 +55,8 @@ class SightOptions:
     unit: LengthUnit | None = None
     datum: str | None = None
     error: str | None = None
+    command: str = "sight"
+    """Which command asks: its name stands in messages."""
 
     def of_terrain(self) -> TerrainOptions:
         """What of it is about terrain."""
@@ -78,7 +80,7 @@ def sight_study(options: SightOptions) -> tuple[Study, bool]:
     missing = _missing(options, len(points))
     if missing and not can_ask():
         raise UsageError(
-            f"sight still needs: {', '.join(missing)}",
+            f"{options.command} still needs: {', '.join(missing)}",
             "the input is no terminal, so nothing can be asked",
             f"for instance: {_EXAMPLE}",
         )

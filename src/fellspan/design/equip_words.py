@@ -54,6 +54,8 @@ def decision_of(link: Link, rows: Sequence[EquipRow], *, path_verdict: PathVerdi
         if path_verdict in (None, "clear")
         else f"The path is {path_verdict}, which no antenna mends; on level alone: "
     )
+    if first.lowered_db > 0.0:
+        lead += f"with the power lowered by {first.lowered_db:.1f} dB to what the power rule allows, "
     if not first.meets:
         if first.spare_db is None:
             return f"{lead}none of {len(rows)} can be held against {target}."
@@ -88,14 +90,14 @@ def changes_of(rows: Sequence[EquipRow]) -> str:
         if first.spare_db is None or first.spare_db >= 0.0:
             return ""
         return (
-            f"With {up_db(-first.spare_db)} dB more (power, shorter feeder, more robust modulation, lower target) "
+            f"With {up_db(-first.spare_db)} dB more ({_ways(first)}shorter feeder, more robust modulation, lower target) "
             f"the {pair_words(first, rows)} would do."
         )
     parts = []
     smaller = runner_up(rows)
     if smaller is not None and smaller.spare_db is not None and smaller.spare_db < 0.0 and _is_smaller(smaller, first):
         parts.append(
-            f"with {up_db(-smaller.spare_db)} dB more (power, shorter feeder, more robust modulation, lower target) "
+            f"with {up_db(-smaller.spare_db)} dB more ({_ways(smaller)}shorter feeder, more robust modulation, lower target) "
             f"the {pair_words(smaller, rows)} would do"
         )
     if first.spare_db is not None:
@@ -106,6 +108,11 @@ def changes_of(rows: Sequence[EquipRow]) -> str:
         )
     text = "; ".join(parts)
     return f"{text[:1].upper()}{text[1:]}." if text else ""
+
+
+def _ways(row: EquipRow) -> str:
+    """More power is no way out where the rule has just taken it away."""
+    return "" if row.lowered_db > 0.0 else "power, "
 
 
 def cautions_of(

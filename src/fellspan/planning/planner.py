@@ -73,6 +73,7 @@ def plan_study(
             *study.notes,
             *terrain.notes,
             *_unused_survey(study, terrain),
+            *_left_out_neighbours(study),
             *far_cautions(terrain.listed, study.links),
         )
     if progress is not None:
@@ -147,6 +148,16 @@ def _plan_link(
         survey=survey_list(result, profile, levels),
         equipment=None if catalogue is None else equipment_of(link, assessment, settings, catalogue=catalogue),
     )
+
+
+def _left_out_neighbours(study: Study) -> Iterator[str]:
+    """A link that is planned alone has no neighbours in this run, but it will have them on the mast."""
+    if study.links_left_out:
+        count = len(study.links_left_out)
+        yield (
+            f"neighbours: {count} other {'link' if count == 1 else 'links'} of this study {'was' if count == 1 else 'were'} "
+            "left out, so what they do to the signal is not counted here; plan the whole study for that"
+        )
 
 
 def _unused_survey(study: Study, terrain: Terrain) -> Iterator[str]:
