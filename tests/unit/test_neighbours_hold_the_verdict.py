@@ -54,3 +54,17 @@ def test_the_margin_that_neighbours_leave_decides(clear: LinkResult, left_db: fl
 def test_neighbours_never_lift_a_verdict(clear: LinkResult) -> None:
     below = replace(clear, signal_verdict="below")
     assert held_by_neighbours(below, [heard(30.0)]) is below
+
+
+def test_a_plan_says_what_neighbours_leave_of_the_margin() -> None:
+    study = load_study(SAMPLE)
+    crowded = tuple(
+        replace(link, radio=replace(link.radio, frequency_hz=5.755e9)) if link.radio.duplex == "time" else link
+        for link in study.links
+        if link.name in ("Beacon - West Point", "Harbour Office - Southdown Farm", "Harbour Office - Cape Light")
+    )
+    plans = plan_study(replace(study, links=crowded)).links
+    told = [plan for plan in plans if any("are not in that margin" in words for words in plan.result.reasons)]
+    assert told
+    for plan in told:
+        assert any("neighbours" in caution.lower() for caution in plan.result.cautions)

@@ -44,8 +44,23 @@ def _with_cautions(plan: LinkPlan, found: StudyInterference) -> LinkPlan:
     cautions = [caution for one in found.at(plan.result.name) if (caution := receiver_caution(one)) is not None]
     if not cautions:
         return plan
-    held = held_by_neighbours(plan.result, found.at(plan.result.name))
-    return replace(plan, result=replace(held, cautions=(*plan.result.cautions, *cautions)))
+    receivers = found.at(plan.result.name)
+    held = held_by_neighbours(plan.result, receivers)
+    reasons = (*held.reasons, *_left_words(receivers))
+    return replace(plan, result=replace(held, reasons=reasons, cautions=(*plan.result.cautions, *cautions)))
+
+
+def _left_words(receivers: Sequence[InterferenceResult]) -> tuple[str, ...]:
+    """What of the margin told above is left beside the neighbours, at the worse end."""
+    known = [one for one in receivers if one.effective_margin_db is not None and one.margin_db is not None]
+    if not known:
+        return ()
+    worst = min(known, key=lambda one: one.effective_margin_db or 0.0)
+    words = (
+        f"Neighbours on the same channel are not in that margin: they leave {worst.effective_margin_db:.1f} dB at "
+        f"'{worst.site}', and availability falls with it."
+    )
+    return (words,)
 
 
 def held_by_neighbours(result: LinkResult, receivers: Sequence[InterferenceResult]) -> LinkResult:
