@@ -10,7 +10,7 @@ from fellspan.cli import figures
 from fellspan.cli.layout import WIDTH, Ink, columns_of, cut, labelled, printable, table, wrapped
 from fellspan.cli.signal_page import signal_lines
 from fellspan.design.equip_words import capital
-from fellspan.links import words
+from fellspan.links import radio_words, words
 from fellspan.links.result import AntennaResult, CriterionResult, EndResult, LinkResult
 from fellspan.links.words import STATE_WORDS, State, state_of
 from fellspan.planning.plan import LinkPlan
@@ -52,7 +52,7 @@ def link_lines(plan: LinkPlan, *, ink: Ink, told: Container[str] = ()) -> list[s
 
 
 def decision_lines(result: LinkResult, ink: Ink, *, most: int | None = None) -> list[str]:
-    """Name, verdict and reasons; only as many whole sentences as `most` lines hold, the basis of a bare one among them."""
+    """Name, verdict and reasons; with `most` a breach of the power rule, and whole sentences as room is."""
     facts = f"{figures.distance(result.distance_m)} at {figures.frequency(result.frequency_hz)}"
     name = cut(printable(result.name), WIDTH - len(facts) - 2)
     gap = " " * (WIDTH - columns_of(name) - len(facts))
@@ -62,6 +62,10 @@ def decision_lines(result: LinkResult, ink: Ink, *, most: int | None = None) -> 
         basis = basis[basis.index(":") :]
     lines = [f"{ink.emphasise(name)}{gap}{facts}", f"{ink.emphasise(verdict, _TONES[state])}{basis}"]
     room = None if most is None else most - len(lines)
+    # A breach has a line of its own on top: it must not push out what to build.
+    over = "" if most is None else radio_words.breach_words(result)
+    if over:
+        lines += wrapped(over, first="  ! ", rest="    ")
     return lines + [line for told in _told(result.reasons, room) for line in told]
 
 

@@ -3,6 +3,7 @@
 Formats results and works nothing out.
 """
 
+import math
 from typing import Final
 
 from fellspan.links.receivers import UNNAMED
@@ -78,6 +79,25 @@ def power_sentences(result: LinkResult) -> tuple[tuple[str, str], ...]:
     if power is None:
         return ()
     return told_by_end(power.a.sentence, power.b.sentence)
+
+
+def breach_words(result: LinkResult) -> str:
+    """'15.7 dB over power rule ROW', the end named where it is one alone or the two differ; empty where none is over it."""
+    power = result.power
+    if power is None:
+        return ""
+    over = {end: _tenth_up(check.breach_db) for end, check in (("A", power.a), ("B", power.b)) if check.is_breach}
+    if not over:
+        return ""
+    rule = f"over power rule {power.a.rule_id}"
+    if len(over) == 2 and over["A"] == over["B"]:
+        return f"{over['A']} dB {rule}"
+    return f"{', '.join(f'{value} dB at {end}' for end, value in over.items())} {rule}"
+
+
+def _tenth_up(value_db: float | None) -> str:
+    """Up, not to the nearest: a breach is never shown as 0.0 dB."""
+    return f"{math.ceil((value_db or 0.0) * 10.0 - 1e-6) / 10.0:.1f}"
 
 
 def exposure_sentences(result: LinkResult) -> tuple[tuple[str, str], ...]:

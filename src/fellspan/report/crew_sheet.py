@@ -16,6 +16,7 @@ from fellspan.links.signal_result import DirectionResult
 from fellspan.links.site import Antenna
 from fellspan.planning.plan import LinkPlan, StudyPlan
 from fellspan.report import wording
+from fellspan.report.crew_banner import NO_LEVEL, Banner, banner_of, has_no_level, over_rule
 from fellspan.report.horizon_drawing import side_words
 from fellspan.report.polar_drawing import Curve, curve_of
 
@@ -51,6 +52,9 @@ class CrewSheet:
     """All that the sheet shows; pairs are label and text."""
 
     letter: EndLetter
+    banner: Banner | None
+    is_tight: bool
+    """Whether warnings take room, so that print is set closer."""
     link: str
     site: str
     other: str
@@ -65,6 +69,7 @@ class CrewSheet:
     no_pattern: str
     work: tuple[str, ...]
     accept: str
+    has_band: bool
     ladder: Pairs
     distances: tuple[tuple[str, str, str, str], ...]
     no_distances: str
@@ -83,9 +88,12 @@ def crew_sheet(plan: StudyPlan, link: LinkPlan, letter: EndLetter) -> CrewSheet:
     exposed = None if result.exposure is None else result.exposure.a if at_a else result.exposure.b
     received = result.received_dbm.at_a if at_a else result.received_dbm.at_b
     datum = result.vertical_datum or "vertical datum not stated by the data"
+    none = has_no_level(result)
     groups = () if exposed is None else (exposed.public, exposed.occupational)
     return CrewSheet(
         letter=letter,
+        banner=banner_of(result),
+        is_tight=banner_of(result) is not None or bool(_over(result, letter)),
         link=_short(result.name),
         site=_short(here.site),
         other=_short(there.site),
@@ -105,13 +113,14 @@ def crew_sheet(plan: StudyPlan, link: LinkPlan, letter: EndLetter) -> CrewSheet:
         no_landmarks="" if _landmarks(link, letter) else _no_landmarks(link),
         state=_state(link, letter),
         level=_level(result, letter, received),
-        misaimed=_misaimed(kit, mounted, received),
+        misaimed=_misaimed(kit, mounted, None if none else received),
         no_pattern=""
         if kit.pattern is not None
         else "Only the gain is known: the study holds no pattern of this antenna.",
         work=_WORK,
-        accept=_accept(received),
-        ladder=_LADDER,
+        accept=f"{NO_LEVEL[0].upper()}{NO_LEVEL[1:]}." if none else _accept(received),
+        has_band=not none,
+        ladder=() if none else _LADDER,
         distances=tuple(_keep(one) for one in groups),
         no_distances=""
         if groups
@@ -224,15 +233,26 @@ def _state(link: LinkPlan, letter: EndLetter) -> Pairs:
     )
     shown = "not stated" if power is None else f"{wording.number(power)} dBm here"
     shown += "" if other is None else f", {wording.number(other)} dBm there"
+    over = _over(link.result, letter)
+    fixed = "planned, over the rule" if over else "fixed"
     return (
         (
             "Modulation",
             f"fixed: {_short(wanted) if wanted else 'one that is stated in the study'}; adaptive modulation off",
         ),
-        ("Power", f"fixed: {shown}, all chains together; automatic power control off at both ends"),
+        (
+            "Power",
+            f"{fixed}: {shown}, all chains together; automatic power control off at both ends",
+        ),
+        *((("OVER THE RULE", over),) if over else ()),
         ("Meter", chains),
         ("Air", "clear, no rain; note hour and tide, and look again later where the path crosses water"),
     )
+
+
+def _over(result: LinkResult, letter: EndLetter) -> str:
+    checks = result.power
+    return "" if checks is None else over_rule(checks.a if letter == "A" else checks.b)
 
 
 def _level(result: LinkResult, letter: EndLetter, received: float | None) -> Pairs:
@@ -241,9 +261,13 @@ def _level(result: LinkResult, letter: EndLetter, received: float | None) -> Pai
     for label, level in ((f"Expected here ({letter})", received), ("Expected at the other end", there)):
         if level is None:
             rows.append((label, "not computed: the study states no power or no gain"))
+        elif has_no_level(result):
+            rows.append((label, f"{wording.number(level)} dBm as computed, not for acceptance"))
         else:
             low, high = wording.number(level - BAND_DB), wording.number(level + BAND_DB)
             rows.append((label, f"{wording.number(level)} dBm; accepted from {low} to {high} dBm"))
+    if has_no_level(result):
+        rows.append(("Acceptance", NO_LEVEL))
     if result.verdict == "obstructed":
         rows.append(("Mind", "the path is obstructed: the level comes over the obstacle and may differ by far more"))
     return tuple(rows)

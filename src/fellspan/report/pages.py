@@ -12,6 +12,7 @@ from markupsafe import Markup
 
 from fellspan.geodesy.coordinates import PositionStyle, format_position
 from fellspan.geodesy.position import Position
+from fellspan.links import radio_words
 from fellspan.links.result import CriterionResult, LinkResult, Losses
 from fellspan.links.safety import safety_lines
 from fellspan.links.words import State, is_two_points, state_of
@@ -284,6 +285,7 @@ def _environment() -> Environment:
     made.filters.update(
         availability=availability_short,
         bearing=wording.bearing,
+        breach=radio_words.breach_words,
         bytes=_bytes,
         criterion_words=wording.criterion_words,
         decisive_words=wording.decisive_words,
