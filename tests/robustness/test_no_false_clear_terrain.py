@@ -235,6 +235,7 @@ def test_a_surface_below_the_ground_on_a_part_is_noted(tmp_path: Path, share: fl
 def test_trees_alone_do_not_make_the_surface_known(tmp_path: Path) -> None:
     ground = raster(tmp_path / "ground.tif", 10.0)
     flat = raster(tmp_path / "cover.tif", 0.0)
+    grown = hill(tmp_path / "surface.tif", top_m=22.0)
     things = obstacle_rows(tmp_path / "things.csv", ("shed", "building", 2500.0, 4.0, 3.0))
     trees, houses = CoverSource(path=flat, kind="tree"), CoverSource(path=flat, kind="building")
 
@@ -254,7 +255,7 @@ def test_trees_alone_do_not_make_the_surface_known(tmp_path: Path) -> None:
         {"cover": [trees, houses]},
         {"cover": CoverSource(path=flat, kind="other")},
         {"cover": trees, "obstacles": ObstacleSource(path=things, complete=("building",))},
-        {"surface": ground, "cover": trees},
+        {"surface": grown, "cover": trees},
     ):
         assert known(**data) == (True, []), data
     with pytest.raises(TerrainError, match=r"'things\.csv' cannot be complete for kind 'other'"):

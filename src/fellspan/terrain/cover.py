@@ -19,6 +19,10 @@ NONE, OTHER = COVER_KINDS.index("none"), COVER_KINDS.index("other")
 _NEEDED: Final[tuple[CoverKind, ...]] = ("tree", "building")
 """What must be known before the surface is."""
 _SIGMAS, _ALWAYS_ALLOWED_M, _FEWEST_POINTS, _NOTED_SHARE = 3.0, 1.0, 5, 0.05
+_RISES_M: Final = 0.5
+"""A surface that nowhere stands this far above the ground shows nothing on it, m (our own rule)."""
+_LONG_M, _LAND_M = 200.0, 1.0
+"""That is remarkable on a path longer than this, most of it on ground above this level, m (our own rule)."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -64,6 +68,10 @@ class SurfaceStep:
     below: int
     worst_m: float
     worst_at_m: float
+    highest_m: float
+    """Greatest height of the surface above the ground."""
+    on_land: int
+    """How many of the points stand above the level of a shore."""
 
     @property
     def is_refused(self) -> bool:
@@ -74,6 +82,16 @@ class SurfaceStep:
     def is_noted(self) -> bool:
         """True where it does so on more than a twentieth of the samples."""
         return self.below > _NOTED_SHARE * self.points
+
+    @property
+    def low_note(self) -> str:
+        """A sentence where the surface lies below the ground in the median, though their errors may explain it; else ''."""
+        if self.median_m >= -_RISES_M:
+            return ""
+        return (
+            f"{self.surface} lies {-self.median_m:.1f} m below {self.ground} in the median along this path: check the unit "
+            "and the vertical datum of both"
+        )
 
     def __str__(self) -> str:
         return (
@@ -116,9 +134,18 @@ def surface_steps(
                 below=int(np.count_nonzero(step[here] < -allowed[here])),
                 worst_m=float(step[worst]),
                 worst_at_m=float(distance_m[worst]),
+                highest_m=float(step[here].max()),
+                on_land=int(np.count_nonzero(ground.value_m[here] > _LAND_M)),
             )
         )
     return tuple(found)
+
+
+def never_rises(steps: Sequence[SurfaceStep], length_m: float) -> bool:
+    """True where no surface raster stands above the ground anywhere on a long path over land: it may be bare ground."""
+    points = sum(step.points for step in steps)
+    on_land = sum(step.on_land for step in steps)
+    return length_m > _LONG_M and 2 * on_land > points and all(step.highest_m <= _RISES_M for step in steps)
 
 
 def missing_kinds(layers: Iterable[CoverKind], complete: Iterable[CoverKind]) -> tuple[CoverKind, ...]:

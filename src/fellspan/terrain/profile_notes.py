@@ -8,7 +8,7 @@ from numpy.typing import NDArray
 
 from fellspan.terrain.alongpath import Floats
 from fellspan.terrain.assemble import PathWork
-from fellspan.terrain.cover import missing_kinds
+from fellspan.terrain.cover import missing_kinds, never_rises
 from fellspan.terrain.samples import Samples
 from fellspan.terrain.survey_notes import survey_notes
 
@@ -37,6 +37,11 @@ def path_notes(work: PathWork, samples: Samples, *, refined: bool) -> tuple[str,
     if missing := _missing(work, samples):
         notes.append(missing)
     notes += [str(step) for step in samples.surface_steps if step.is_noted]
+    notes += [step.low_note for step in samples.surface_steps if step.low_note]
+    if never_rises(samples.surface_steps, work.path.length_m):
+        notes.append(
+            "the surface raster nowhere rises above the ground on this path: is it the same raster, or bare ground?"
+        )
     if not layers.is_bare and work.standing:
         notes.append(
             "obstacle heights above ground are counted from the surface raster, which may hold the obstacle already"
@@ -56,6 +61,13 @@ def path_notes(work: PathWork, samples: Samples, *, refined: bool) -> tuple[str,
     for hit in [hit for hit in work.hits.points if hit.row.note][:_MOST_SURVEY_NOTES]:
         notes.append(f"surveyed at {hit.at_m / 1000.0:.3f} km: {hit.row.note} ({hit.row.file})")
     return tuple(notes)
+
+
+def surface_tells(work: PathWork, samples: Samples) -> bool:
+    """False where the surface raster shows nothing on the ground and no cover raster tells of trees and buildings both."""
+    kinds = [source.kind for source, _ in work.layers.cover]
+    lacking = missing_kinds(kinds, work.layers.complete)
+    return not lacking or not never_rises(samples.surface_steps, work.path.length_m)
 
 
 def _missing(work: PathWork, samples: Samples) -> str:

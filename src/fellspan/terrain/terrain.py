@@ -19,7 +19,7 @@ from fellspan.terrain.gaps import gap_error, gaps_of
 from fellspan.terrain.listed import Listed, listed_obstacles, listed_rows
 from fellspan.terrain.opening import CoverLike, ObstaclesLike, RasterLike, SurveyLike, open_layers
 from fellspan.terrain.profile import PathProfile
-from fellspan.terrain.profile_notes import path_notes
+from fellspan.terrain.profile_notes import path_notes, surface_tells
 from fellspan.terrain.samples import Samples, joined, merged
 
 MAX_SAMPLES = 2_000_000
@@ -273,7 +273,7 @@ class Terrain:
             step_m=step_m,
             cell_m=cell_m,
             ground_is_bare=self._layers.is_bare,
-            surface_is_known=bool(samples.known.all()),
+            surface_is_known=bool(samples.known.all()) and (was is not None or surface_tells(work, samples)),
             vertical_datum=self._datum,
             beside=was.beside if was is not None else work.beside(),
             notes=tuple(
