@@ -7,7 +7,7 @@ import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
-from made_profiles import link_of, obstacle, profile_of
+from made_profiles import link_of, mirrored, obstacle, profile_of
 
 from fellspan.links.assess import Assessment, AssessSettings, assess_profile
 from fellspan.links.own_building import standing
@@ -102,6 +102,47 @@ def test_an_antenna_below_a_roof_of_its_own_is_told_so() -> None:
     )
     assert "roof of 'Alder' is given as 6 m above ground, the outline there (Mill) is 12.0 m high" in told
     assert "roof of" not in " ".join(_assess(mill, ROOF | {"roof_m": 12.5}, 20.0).result.cautions)
+
+
+@pytest.mark.parametrize(
+    ("roof_m", "sigma_m", "verdict"),
+    # Allowed above the 12 m that the data hold: 1 m and two standard errors
+    [
+        (12.9, 0.0, "clear"),
+        (13.2, 0.0, "marginal"),
+        (13.9, 0.5, "clear"),
+        (14.2, 0.5, "marginal"),
+        (40.0, 0.5, "marginal"),
+    ],
+)
+@pytest.mark.parametrize("outline", [True, False])
+@pytest.mark.parametrize("turned", [False, True])
+def test_a_typed_roof_above_the_building_in_the_data_is_never_clear(
+    roof_m: float, sigma_m: float, verdict: str, outline: bool, turned: bool
+) -> None:
+    if outline:
+        profile = profile_of(2000.0, obstacles=(obstacle("Mill", 0.0, 40.0, 12.0),), sigma_m=sigma_m)
+    else:
+        house = lambda d: np.where(d <= 6.0, 12.0, 0.0)  # noqa: E731
+        profile = profile_of(2000.0, cover=house, kind="building", sigma_m=sigma_m)
+    ends = [ROOF | {"roof_m": roof_m, "height_m": 6.0}, 30.0]
+    name = "Birch" if turned else "Alder"
+    if turned:
+        profile, ends = mirrored(profile), ends[::-1]
+    result = _assess(profile, *ends).result
+    assert result.verdict == verdict
+    words = (
+        f"the roof of '{name}' is given as {roof_m:g} m above ground, and what stands there in the data is 12.0 m high"
+    )
+    assert (words in result.reasons[0]) is (verdict == "marginal")
+
+
+@pytest.mark.parametrize(("roof_m", "said"), [(59.0, False), (61.0, True)])
+def test_a_tall_typed_roof_where_the_data_hold_no_building_draws_a_caution(roof_m: float, said: bool) -> None:
+    result = _assess(profile_of(2000.0), ROOF | {"roof_m": roof_m}, 30.0).result
+    words = f"The roof of 'Alder' is given as {roof_m:g} m above ground, and the data hold no building there"
+    assert (words in " ".join(result.cautions)) is said
+    assert result.verdict == "clear"
 
 
 def test_on_a_slope_the_roof_is_level_and_not_as_high_as_its_downhill_wall() -> None:

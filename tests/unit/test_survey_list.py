@@ -1,6 +1,7 @@
 """The survey list: each stated top leaves the criteria exactly met, and what nobody measured comes first."""
 
 import dataclasses
+import math
 
 import numpy as np
 import pytest
@@ -10,7 +11,7 @@ from fellspan.design.survey_list import MEASURED_WORDS, SurveyPoint, survey_list
 from fellspan.links.assess import AssessSettings, assess_profile
 from fellspan.links.criteria import Criterion
 from fellspan.links.site import Link
-from fellspan.terrain.profile import PathProfile
+from fellspan.terrain.profile import BesidePath, PathProfile
 
 RULES = AssessSettings(
     criteria=(
@@ -102,3 +103,34 @@ def test_no_walk_is_asked_for_where_the_data_stand_far_too_high_already() -> Non
         "governing point" in point.verify and point.spare_m is not None and point.spare_m < -20.0 for point in points
     )
     assert unlisted
+
+
+@pytest.mark.parametrize(
+    ("offset_m", "top_m", "is_listed"),
+    [(4.0, 70.0, True), (4.0, float("nan"), True), (4.0, 40.0, False), (12.0, 70.0, False)],
+)
+def test_what_stands_beside_the_path_in_the_required_zone_is_listed(
+    offset_m: float, top_m: float, is_listed: bool
+) -> None:
+    crane = BesidePath(
+        name="Crane 2", kind="other", at_m=5000.0, offset_m=offset_m, top_amsl_m=top_m, source="made.csv"
+    )
+    profile = profile_of(10e3, 0.0, n=401, sigma_m=1.0, beside=(crane,))
+    link = link_of(profile, 60.0, 60.0)
+    points = listed(link, profile)
+    assert [point.rank for point in points] == list(range(1, len(points) + 1))
+    found = [point for point in points if "Crane 2" in point.verify]
+    assert len(found) == is_listed
+    if not is_listed:
+        return
+    (point,) = found
+    assert point.verify == "place and height of Crane 2, 4.0 m beside the path"
+    assert (point.from_a_m, point.longitude_deg) == (5000.0, pytest.approx(profile.longitude_deg[200]))
+    assert (point.spare_m is None) is math.isnan(top_m)
+    assert ("its top not known" in point.stands_there) is math.isnan(top_m)
+    # F1 11.18 m at mid-path, bulge 1.47 m at k 4/3 (hand calculation)
+    assert point.highest_top_m == pytest.approx(60.0 - 1.47 - np.sqrt(11.18**2 - 16.0), abs=0.02)
+    for more, doubted in ((-0.01, False), (0.01, True)):
+        raised = dataclasses.replace(crane, top_amsl_m=point.highest_top_m + more)
+        result = assess_profile(link, dataclasses.replace(profile, beside=(raised,)), RULES).result
+        assert any("Crane 2" in text and "required part" in text for text in result.cautions) is doubted

@@ -4,6 +4,7 @@ For each point the highest top that every criterion still accepts there, so that
 the spot. Reads levels and computes no clearance of its own.
 """
 
+import math
 from collections.abc import Iterator
 from dataclasses import dataclass, replace
 from typing import Final
@@ -12,6 +13,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from fellspan.links.causes import cover_words
+from fellspan.links.clearance import TOLERANCE_M
+from fellspan.links.doubts import zone_edges_m
 from fellspan.links.levels import PathLevels
 from fellspan.links.own_building import NEAR_M
 from fellspan.links.result import LinkResult
@@ -73,6 +76,7 @@ def survey_list(result: LinkResult, profile: PathProfile, levels: PathLevels) ->
             joined.append(point)
         elif point.verify not in joined[twin].verify:
             joined[twin] = replace(joined[twin], verify=f"{joined[twin].verify}; {point.verify}")
+    joined = sorted((*joined, *_beside(result, profile, levels)), key=_urgency)
     sites = (_site(result, profile, end) for end in ("A", "B"))
     return tuple(replace(point, rank=rank) for rank, point in enumerate((*joined, *sites), start=1))
 
@@ -140,6 +144,37 @@ def _point(
         sigma_m=float(profile.sigma_m[index]),
         measured=MEASURED_WORDS[int(profile.measured[index])],
     )
+
+
+def _beside(result: LinkResult, profile: PathProfile, levels: PathLevels) -> Iterator[SurveyPoint]:
+    """What stands beside the path inside the required zone; it is not on the path, so it is no one walk with what is.
+
+    Where its top is not known, `top_m` is that of the path there and `spare_m` None.
+    """
+    rows = [(item.k or result.median_k, item.required_fraction) for item in result.clearance]
+    for item in profile.beside:
+        if not 0.0 < item.at_m < profile.length_m:
+            continue
+        highest = min(zone_edges_m(item, levels, rows, frequency_hz=result.frequency_hz), default=math.inf)
+        known = math.isfinite(item.top_amsl_m)
+        if not math.isfinite(highest) or (known and item.top_amsl_m - highest <= TOLERANCE_M):
+            continue
+        index = int(np.argmin(np.abs(levels.distance_m - item.at_m)))
+        yield SurveyPoint(
+            link=result.name,
+            rank=0,
+            verify=f"place and height of {item.name}, {item.offset_m:.1f} m beside the path",
+            from_a_m=item.at_m,
+            latitude_deg=float(np.interp(item.at_m, profile.distance_m, profile.latitude_deg)),
+            longitude_deg=float(np.interp(item.at_m, profile.distance_m, profile.longitude_deg)),
+            stands_there=f"{item.name}, beside the path" + ("" if known else ", its top not known"),
+            ground_m=float(profile.ground_m[index]),
+            top_m=item.top_amsl_m if known else float(levels.surface_m[index]),
+            highest_top_m=highest,
+            spare_m=highest - item.top_amsl_m if known else None,
+            sigma_m=float(profile.sigma_m[index]),
+            measured=MEASURED_WORDS[0],
+        )
 
 
 def _site(result: LinkResult, profile: PathProfile, letter: str) -> SurveyPoint:

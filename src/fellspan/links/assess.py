@@ -19,7 +19,7 @@ from fellspan.links.antenna_gains import antenna_cautions, antennas_of, polariza
 from fellspan.links.budget import tilt_deg
 from fellspan.links.cautions import cautions
 from fellspan.links.criteria import Criterion, criteria_for, is_extended, worst_month_k
-from fellspan.links.doubts import below_left_out, beside_path, with_doubts
+from fellspan.links.doubts import Doubt, below_left_out, beside_path, with_doubts
 from fellspan.links.ends import EndLevel, end_level
 from fellspan.links.evaluate import criterion_result, extra_for_confidence, governing_row
 from fellspan.links.levels import PathLevels
@@ -135,7 +135,8 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
     beside, beside_cautions = beside_path(
         profile, levels, laid.criteria, median_k=settings.median_k, frequency_hz=link.radio.frequency_hz
     )
-    doubts = (*below_left_out(profile, stands, levels, median_k=settings.median_k), *beside)
+    roofs = (Doubt(clause=clause, extra=None) for level in (laid.a, laid.b) for clause in level.doubts)
+    doubts = (*below_left_out(profile, stands, levels, median_k=settings.median_k), *beside, *roofs)
     verdict = verdicts.path_verdict(
         results, sight, confidence=confidence, confidence_asked=settings.confidence, doubts=doubts
     )

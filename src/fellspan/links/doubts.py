@@ -97,20 +97,27 @@ def _depths_m(
     item: BesidePath, levels: PathLevels, rows: Sequence[tuple[float, float]], *, frequency_hz: float
 ) -> list[float]:
     """How far its top reaches above the zone's lower edge at its offset, m, for each (k, fraction); infinite if unknown."""
+    top = item.top_amsl_m if math.isfinite(item.top_amsl_m) else math.inf
+    edges = zone_edges_m(item, levels, rows, frequency_hz=frequency_hz)
+    return [top - edge if math.isfinite(edge) else -math.inf for edge in edges]
+
+
+def zone_edges_m(
+    item: BesidePath, levels: PathLevels, rows: Sequence[tuple[float, float]], *, frequency_hz: float
+) -> list[float]:
+    """Lower edge of the zone at its offset, m above sea level, for each (k, fraction); infinite where it stands outside."""
     length_m = float(levels.distance_m[-1])
     at = np.array([0.0, item.at_m, length_m])
     ray = float(np.interp(item.at_m, levels.distance_m, levels.available_m))
     radius = float(clearance.zone_radius_m(at, frequency_hz=frequency_hz)[1])
-    depths = []
+    edges = []
     for k, fraction in rows:
         half = (fraction * radius) ** 2 - item.offset_m**2
         if half <= 0.0:
-            depths.append(-math.inf)
-        elif math.isfinite(item.top_amsl_m):
-            depths.append(item.top_amsl_m - (ray - float(clearance.bulge_m(at, k=k)[1]) - math.sqrt(half)))
+            edges.append(math.inf)
         else:
-            depths.append(math.inf)
-    return depths
+            edges.append(ray - float(clearance.bulge_m(at, k=k)[1]) - math.sqrt(half))
+    return edges
 
 
 def _below(item: Ignored, profile: PathProfile, *, cut_m: float, at_m: float) -> str:

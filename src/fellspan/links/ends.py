@@ -7,8 +7,10 @@ import math
 from dataclasses import dataclass
 from typing import Final
 
+import numpy as np
+
 from fellspan.errors import LinkError, VerticalDatumError
-from fellspan.links.own_building import EndName, own_outlines, own_top_m, standing
+from fellspan.links.own_building import ERRORS, NEAR_M, NEAR_SHARE, EndName, own_outlines, own_top_m, standing
 from fellspan.links.site import Site
 from fellspan.links.uncertainty import bare_error_m
 from fellspan.terrain.profile import PathProfile
@@ -21,6 +23,8 @@ OUTLIER_SIGMAS: Final = 3.0
 """A measured ground level this many standard errors off the raster draws a caution (common practice, no source)."""
 ROOF_DOUBT_M: Final = 1.0
 """A typed roof this far off the outline's height draws a caution, m (common practice, no source)."""
+TALL_ROOF_M: Final = 60.0
+"""A typed roof above this height where the data hold no building draws a caution, m (common practice, no source)."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -36,6 +40,8 @@ class EndLevel:
     cautions: tuple[str, ...]
     error_m: float = 0.0
     """Standard error of `antenna_amsl_m`, m: that of the raster under it, 0 where its level was measured."""
+    doubts: tuple[str, ...] = ()
+    """Clauses that hold the verdict at 'marginal': a typed roof far above what the data hold there."""
 
     @property
     def antenna_agl_m(self) -> float:
@@ -67,6 +73,7 @@ def end_level(site: Site, profile: PathProfile, *, end: EndName) -> EndLevel:
                 f"(standard error {sigma:.1f} m): check the position and the vertical datum."
             )
     roof: float | None = None
+    doubts: tuple[str, ...] = ()
     if site.height_reference == "sea":
         antenna = site.height_m
         given = f"{site.height_m:g} m above sea level"
@@ -81,6 +88,9 @@ def end_level(site: Site, profile: PathProfile, *, end: EndName) -> EndLevel:
     else:
         ground, roof, roof_cautions = _roof(site, profile, end=end, ground=ground)
         cautions += roof_cautions
+        if site.roof_m is not None and profile.ground_is_bare:
+            doubts, tall = _roof_above_data(site, profile, end=end)
+            cautions += tall
         antenna = ground + roof + site.height_m
         given = f"{site.height_m:g} m above the roof ({roof:.1f} m above ground)"
     if site.ground_amsl_m is not None or site.height_reference == "sea":
@@ -100,6 +110,7 @@ def end_level(site: Site, profile: PathProfile, *, end: EndName) -> EndLevel:
         height_as_given=given,
         cautions=tuple(cautions),
         error_m=_error_m(site, profile, index),
+        doubts=doubts,
     )
 
 
@@ -160,6 +171,33 @@ def _roof_doubts(site: Site, profile: PathProfile, outlines: tuple[int, ...], ou
         f"{outline_m:.1f} m high: check which part of the building the antenna stands on."
     )
     return [doubt]
+
+
+def _roof_above_data(site: Site, profile: PathProfile, *, end: EndName) -> tuple[tuple[str, ...], list[str]]:
+    """A doubt where the typed roof stands above the building in the data, a caution where it is tall and they hold none.
+
+    Without an outline the highest building (or unknown) cover where the antenna may stand counts; bare data say nothing.
+    """
+    assert site.roof_m is not None
+    index = 0 if end == "A" else -1
+    if own_outlines(profile, end):
+        held = max(float(own_top_m(profile, end)[index] - profile.ground_m[index]), 0.0)
+    else:
+        from_end = profile.distance_m if end == "A" else profile.length_m - profile.distance_m
+        houses = np.isin(profile.cover_kind, (COVER_KINDS.index("building"), COVER_KINDS.index("other")))
+        houses &= (from_end <= min(NEAR_M, NEAR_SHARE * profile.length_m)) & (profile.cover_m >= ROOF_FROM_M)
+        held = float(profile.cover_m[houses].max(initial=0.0))
+    given = f"{site.roof_m:g} m above ground"
+    if held <= 0.0:
+        if site.roof_m <= TALL_ROOF_M:
+            return (), []
+        unheard = f"The roof of '{site.name}' is given as {given}, and the data hold no building there: "
+        return (), [unheard + "check the height and its unit."]
+    if site.roof_m - held <= ROOF_DOUBT_M + ERRORS * float(profile.sigma_m[index]):
+        return (), []
+    return (
+        f"the roof of '{site.name}' is given as {given}, and what stands there in the data is {held:.1f} m high",
+    ), []
 
 
 def _below_what_is_left_out(site: Site, profile: PathProfile, *, end: EndName, above_ground_m: float) -> list[str]:
