@@ -209,3 +209,25 @@ def test_effective_heights_over_a_plane_slope() -> None:
     ground = 10.0 + DISTANCE / 500.0
     a, b = effective_heights_m(DISTANCE, ground, a_amsl_m=10.0 + 25.0, b_amsl_m=50.0 + 35.0)
     assert (a, b) == (pytest.approx(25.0, abs=1e-9), pytest.approx(35.0, abs=1e-9))
+
+
+def test_rows_that_the_smooth_earth_costs_nothing_and_rows_that_it_does_share_a_batch() -> None:
+    # Enough rows for several blocks; high and low masts in turn, so that some have no spherical part and some no sight.
+    count = 240
+    ground = _terrain(21, (count,))
+    mast_m = np.where(np.arange(count) % 3 == 0, 600.0, 4.0)
+    ends = {"a_amsl_m": (ground[:, 0] + mast_m)[:, None], "b_amsl_m": (ground[:, -1] + mast_m)[:, None]}
+    k = 1.0 / np.array([0.75, 1.2, 1.9])
+    batch = np.asarray(delta_bullington_loss_db(DISTANCE, ground[:, None], **ends, frequency_hz=5.8e9, k=k))
+    assert batch.shape == (count, 3)
+    assert 0 < np.count_nonzero(batch == 0.0) < batch.size
+    for i, j in np.ndindex(*batch.shape):
+        one = delta_bullington_loss_db(
+            DISTANCE,
+            ground[i],
+            a_amsl_m=float(ends["a_amsl_m"][i, 0]),
+            b_amsl_m=float(ends["b_amsl_m"][i, 0]),
+            frequency_hz=5.8e9,
+            k=float(k[j]),
+        )
+        assert batch[i, j] == pytest.approx(one, abs=1e-10)

@@ -3,10 +3,13 @@
 Works on bare arrays and 1/k, batched over leading axes; knows nothing of rasters or links. A batch is one call, never a loop.
 """
 
+from copy import copy
+
 import numpy as np
-from numpy.typing import ArrayLike
+from numpy.typing import ArrayLike, NDArray
 
 from fellspan.propagation._arrays import FloatArray, Result, as_floats, as_result, quiet
+from fellspan.propagation._blocks import in_blocks
 from fellspan.propagation.constants import EARTH_RADIUS_M, STANDARD_K
 from fellspan.propagation.free_space import wavelength_m
 from fellspan.propagation.knife_edge import knife_edge_loss_db
@@ -20,38 +23,79 @@ class _Path:
     def __init__(self, distance_m: ArrayLike, k: ArrayLike, frequency_hz: ArrayLike) -> None:
         self.all = as_floats(distance_m)
         self.length = self.all[..., -1]
-        self.from_a = self.all[..., 1:-1]
-        self.from_b = self.length[..., None] - self.from_a
         self.wavelength = as_floats(wavelength_m(frequency_hz))
-        inverse_radius = as_floats(inverse_k(k)) / EARTH_RADIUS_M
-        self.bulge = self.from_a * self.from_b * (inverse_radius / 2.0)[..., None]
+        self.curve = as_floats(inverse_k(k)) / (2.0 * EARTH_RADIUS_M)
 
-    def bullington_db(self, inner_m: FloatArray | float, a: FloatArray, b: FloatArray) -> FloatArray:
-        """Loss over interior heights `inner_m` (..., n - 2) between antenna levels `a` and `b` (...)."""
-        length = self.length
-        a_, b_, length_ = a[..., None], b[..., None], length[..., None]
-        top = inner_m + self.bulge
-        slope_a = _highest((top - a_) / self.from_a)  # (50)
-        slope_ray = (b - a) / length  # (51)
+    def of_rows(self, rows: NDArray[np.intp], shape: tuple[int, ...]) -> "_Path":
+        """Those rows of the first axis of a batch of that shape."""
+        part = copy(self)
+        part.all = _rows_of(self.all, rows, (*shape, self.all.shape[-1]))
+        part.length = part.all[..., -1]
+        part.wavelength, part.curve = (_rows_of(value, rows, shape) for value in (self.wavelength, self.curve))
+        return part
 
-        # Line of sight: the profile point with the largest nu. (52), (53)
-        above_ray = top - (a_ * self.from_b + b_ * self.from_a) / length_
-        nu_sight = _highest(
-            above_ray * np.sqrt(2.0 * length_ / (self.wavelength[..., None] * self.from_a * self.from_b))
+    def bullington_db(self, height_m: FloatArray, a: FloatArray, b: FloatArray) -> FloatArray:
+        """Loss over heights `height_m` (..., n), or (..., 1) for a level, between antenna levels `a` and `b` (...).
+
+        The printed equations with the ray taken off every height first. A horizon of slope S against the ray leaves sight free
+        where S < 0, and the two horizon rays cross at nu = sqrt(2 d Sa Sb / wavelength), which rounding cannot lead out of the
+        path.
+        """
+        slope_a, slope_b, above = self._maxima(height_m, a, b)
+        scale = np.sqrt(2.0 * self.length / self.wavelength)
+        nu = scale * np.where(
+            slope_a < 0.0,  # (50), (51)
+            above,  # line of sight: the profile point with the largest nu. (52), (53)
+            np.sqrt(slope_a * np.maximum(slope_b, 0.0)),  # beyond the horizon. (54) to (56)
         )
+        edge = as_floats(knife_edge_loss_db(nu))
+        return np.asarray(edge + (1.0 - np.exp(-edge / 6.0)) * (10.0 + 0.02 * self.length / 1000.0))  # (57)
 
-        # Beyond the horizon: the point where the two horizon rays cross. (54) to (56)
-        slope_b = _highest((top - b_) / self.from_b)
-        cross = (b - a + slope_b * length) / (slope_a + slope_b)
-        if self.from_a.shape[-1]:
-            # The rays cross between the two horizons; at grazing, where differences cancel, rounding must not lead out.
-            cross = np.clip(cross, self.from_a[..., 0], self.from_a[..., -1])
-        cross = np.where(slope_a + slope_b == 0.0, length / 2.0, cross)
-        above = a + slope_a * cross - (a * (length - cross) + b * cross) / length
-        nu_cross = above * np.sqrt(2.0 * length / (self.wavelength * cross * (length - cross)))
+    def _maxima(self, height_m: FloatArray, a: FloatArray, b: FloatArray) -> FloatArray:
+        """Slopes of both horizons against the ray, and the greatest height above it over sqrt(d1 d2); shape (3, ...).
 
-        edge = as_floats(knife_edge_loss_db(np.where(slope_a < slope_ray, nu_sight, nu_cross)))
-        return np.asarray(edge + (1.0 - np.exp(-edge / 6.0)) * (10.0 + 0.02 * length / 1000.0))  # (57)
+        Whatever is not asked for is left at minus infinity: the second where sight is free, the third where it is not.
+        """
+        shape = np.broadcast_shapes(self.length.shape, height_m.shape[:-1], a.shape, b.shape, self.curve.shape)
+        found = np.full((3, *shape), -np.inf)
+        for piece, (path, height), (a_, b_, curve) in in_blocks(shape, (self.all, height_m), (a, b, self.curve)):
+            out = found[:, piece] if shape else found
+            from_a, length = path[..., 1:-1], path[..., -1:]
+            from_b = length - from_a
+            above = height[..., 1:-1] if height.shape[-1] > 1 else height
+            above = above - _ray(a_, b_, from_a, length)
+            bent = curve[..., np.newaxis]
+            out[0] = _highest(_with(above / from_a, bent, from_b))
+            free = out[0] < 0.0
+            if free.any():
+                root = np.sqrt(from_a * from_b)
+                out[2] = _highest(_with(above / root, bent, root))
+            if not free.all():
+                out[1] = _highest(_with(above / from_b, bent, from_a))
+        return found
+
+
+def _rows_of(array: FloatArray, rows: NDArray[np.intp], shape: tuple[int, ...]) -> FloatArray:
+    """Rows of the first axis of an array that broadcasts to `shape`; the array itself where it is the same in all."""
+    return array[rows] if array.ndim == len(shape) and array.shape[0] > 1 else array
+
+
+def _ray(a: FloatArray, b: FloatArray, from_a: FloatArray, length: FloatArray) -> FloatArray:
+    """Level of the straight line between the antennas, m above sea level."""
+    start = a[..., np.newaxis]
+    level = from_a * ((b[..., np.newaxis] - start) / length)
+    level += start
+    return level
+
+
+def _with(value: FloatArray, factor: FloatArray, times: FloatArray) -> FloatArray:
+    """value + factor * times, with one temporary less where shapes allow."""
+    product = factor * times
+    return (
+        np.add(product, value, out=product)
+        if product.ndim == value.ndim and product.size >= value.size
+        else product + value
+    )
 
 
 def _highest(values: FloatArray) -> FloatArray:
@@ -93,7 +137,7 @@ def bullington_loss_db(
     """
     with quiet():
         path = _Path(distance_m, k, frequency_hz)
-        return as_result(path.bullington_db(as_floats(height_m)[..., 1:-1], as_floats(a_amsl_m), as_floats(b_amsl_m)))
+        return as_result(path.bullington_db(as_floats(height_m), as_floats(a_amsl_m), as_floats(b_amsl_m)))
 
 
 def effective_heights_m(
@@ -119,26 +163,45 @@ def effective_heights_m(
     """
     d, h = as_floats(distance_m), as_floats(ground_m)
     a, b = as_floats(a_amsl_m), as_floats(b_amsl_m)
-    length = d[..., -1]
-    step, d0, d1, h0, h1 = np.diff(d, axis=-1), d[..., :-1], d[..., 1:], h[..., :-1], h[..., 1:]
-    from_a = d[..., 1:-1]
-    from_b = length[..., None] - from_a
+    shape = np.broadcast_shapes(d.shape[:-1], h.shape[:-1], a.shape, b.shape)
+    found = np.empty((2, *shape))
     with quiet():
-        v1 = np.sum(step * (h1 + h0), axis=-1)  # (58)
-        v2 = np.sum(step * (h1 * (2.0 * d1 + d0) + h0 * (d1 + 2.0 * d0)), axis=-1)  # (59)
-        fit_a = (2.0 * v1 * length - v2) / length**2  # (60)
-        fit_b = (v2 - v1 * length) / length**2  # (61)
-
-        above = h[..., 1:-1] - (a[..., None] * from_b + b[..., None] * from_a) / length[..., None]  # no bulge here
-        highest, toward_a, toward_b = _highest(above), _highest(above / from_a), _highest(above / from_b)
-        share_a = toward_a / (toward_a + toward_b)
-        clear = highest <= 0.0
-        fit_a = np.where(clear, fit_a, fit_a - highest * share_a)  # (63)
-        fit_b = np.where(clear, fit_b, fit_b - highest * (1.0 - share_a))
+        for piece, (path, ground), (a_, b_) in in_blocks(shape, (d, h), (a, b)):
+            out = found[:, piece] if shape else found
+            out[0], out[1] = _smooth_ends_m(path, ground, a_, b_)
         return (
-            as_result(a - np.minimum(fit_a, h[..., 0])),  # (64)
-            as_result(b - np.minimum(fit_b, h[..., -1])),
+            as_result(a - np.minimum(found[0], h[..., 0])),  # (64)
+            as_result(b - np.minimum(found[1], h[..., -1])),
         )
+
+
+def _smooth_ends_m(d: FloatArray, h: FloatArray, a: FloatArray, b: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """Levels of the smooth surface at both ends, before it is held below the ground there."""
+    # (58), (59) summed by samples instead of by stretches: every height enters with the stretches on both sides of it.
+    length = d[..., -1]
+    before = np.concatenate((d[..., :1], d[..., :-1]), axis=-1)
+    after = np.concatenate((d[..., 1:], d[..., -1:]), axis=-1)
+    weight = after - before
+    v1 = np.sum(weight * h, axis=-1)  # (58)
+    after += before
+    after += d
+    weight *= after
+    v2 = np.sum(weight * h, axis=-1)  # (59)
+    fit_a = (2.0 * v1 * length - v2) / length**2  # (60)
+    fit_b = (v2 - v1 * length) / length**2  # (61)
+
+    from_a = d[..., 1:-1]
+    above = h[..., 1:-1] - _ray(a, b, from_a, d[..., -1:])  # no bulge here
+    highest = _highest(above)
+    clear = highest <= 0.0
+    if clear.all():
+        return fit_a, fit_b
+    toward_a, toward_b = _highest(above / from_a), _highest(above / (d[..., -1:] - from_a))
+    share_a = toward_a / (toward_a + toward_b)
+    return (
+        np.where(clear, fit_a, fit_a - highest * share_a),  # (63)
+        np.where(clear, fit_b, fit_b - highest * (1.0 - share_a)),
+    )
 
 
 def delta_bullington_loss_db(
@@ -191,9 +254,8 @@ def delta_bullington_loss_db(
     a, b = as_floats(height_a), as_floats(height_b)
     with quiet():
         path = _Path(distance_m, k, frequency_hz)
-        profile = as_floats(ground_m if surface_m is None else surface_m)[..., 1:-1]
+        profile = as_floats(ground_m if surface_m is None else surface_m)
         actual = path.bullington_db(profile, as_floats(a_amsl_m), as_floats(b_amsl_m))
-        smooth = path.bullington_db(0.0, a, b)
         spherical = as_floats(
             spherical_earth_loss_db(
                 path.length,
@@ -205,6 +267,21 @@ def delta_bullington_loss_db(
                 sea_fraction=sea_fraction,
             )
         )
-        added = np.maximum(spherical - smooth, 0.0)
-        negative = (as_floats(inverse_k(k)) < 0.0) & (np.minimum(a, b) >= 0.0)
+        added = _added_db(path, spherical, a, b)
+        negative = (path.curve < 0.0) & (np.minimum(a, b) >= 0.0)
         return as_result(actual + np.where(negative, 0.0, added))  # (66)
+
+
+def _added_db(path: _Path, spherical: FloatArray, a: FloatArray, b: FloatArray) -> FloatArray:
+    """What the smooth Earth costs beyond its own Bullington loss; that is worked out only where it costs anything."""
+    costs = ~(spherical <= 0.0)
+    if not costs.any():
+        return np.zeros(spherical.shape)
+    rows = np.flatnonzero(costs.reshape((*costs.shape[:1], -1)).any(axis=-1)) if costs.ndim else None
+    if rows is None or rows.size == costs.shape[0]:
+        return np.asarray(np.maximum(spherical - path.bullington_db(np.zeros(1), a, b), 0.0))
+    added = np.zeros(spherical.shape)
+    part = path.of_rows(rows, costs.shape)
+    a, b = (_rows_of(value, rows, costs.shape) for value in (a, b))
+    added[rows] = np.maximum(spherical[rows] - part.bullington_db(np.zeros(1), a, b), 0.0)
+    return added

@@ -183,18 +183,44 @@ def spherical_earth_loss_db(
         ratio = np.where(np.minimum(h1, h2) < 1e-9, 0.0, clearance / required)
         modified_radius = 0.5 * (distance / (np.sqrt(h1) + np.sqrt(h2))) ** 2  # (24)
 
-        used_radius = np.where(beyond, radius, modified_radius)
-        over = partial(
-            _first_residue_db,
-            distance=distance,
-            height_a=h1,
-            height_b=h2,
-            radius=used_radius,
-            wavelength=wavelength,
-            vertical=vertical,
+        # Within the horizon a ratio of 1 or more costs nothing: what lies there needs no residues.
+        asked = beyond | ~(ratio >= 1.0)
+        if not asked.any():
+            return as_result(np.zeros(asked.shape))
+        given = np.broadcast_arrays(
+            distance, h1, h2, np.where(beyond, radius, modified_radius), wavelength, vertical, sea, ratio, beyond
         )
-        land = over(permittivity=as_floats(LAND_PERMITTIVITY), conductivity=as_floats(LAND_CONDUCTIVITY_S_M))
+        shape = given[0].shape
+        asked = np.broadcast_to(asked, shape)
+        loss = np.zeros(shape)
+        loss[asked] = _mixed_db(*(array[asked] for array in given))
+        return as_result(loss)
+
+
+def _mixed_db(
+    distance: FloatArray,
+    height_a: FloatArray,
+    height_b: FloatArray,
+    radius: FloatArray,
+    wavelength: FloatArray,
+    vertical: NDArray[np.bool_],
+    sea: FloatArray,
+    ratio: FloatArray,
+    beyond: NDArray[np.bool_],
+) -> FloatArray:
+    """Loss over land and sea in their ratio, by the residues: as they are beyond the horizon, by the clearance this side of it."""
+    over = partial(
+        _first_residue_db,
+        distance=distance,
+        height_a=height_a,
+        height_b=height_b,
+        radius=radius,
+        wavelength=wavelength,
+        vertical=vertical,
+    )
+    residue = over(permittivity=as_floats(LAND_PERMITTIVITY), conductivity=as_floats(LAND_CONDUCTIVITY_S_M))
+    if not np.all(sea == 0.0):
         water = over(permittivity=as_floats(SEA_PERMITTIVITY), conductivity=as_floats(SEA_CONDUCTIVITY_S_M))
-        residue = sea * water + (1.0 - sea) * land
-        within = np.maximum(1.0 - ratio, 0.0) * np.maximum(residue, 0.0)  # (25)
-        return as_result(np.where(beyond, residue, within))
+        residue = sea * water + (1.0 - sea) * residue
+    within = np.maximum(1.0 - ratio, 0.0) * np.maximum(residue, 0.0)  # (25)
+    return np.where(beyond, residue, within)
