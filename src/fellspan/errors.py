@@ -98,6 +98,14 @@ class StudyError(FellspanError, ValueError):
     """A study file has an unknown key, a wrong value or a missing one."""
 
 
+class SitesFileError(FellspanError, ValueError):
+    """A file of hubs, places or pairs cannot be read or has a row that cannot be used."""
+
+
+class RunError(FellspanError, ValueError):
+    """A long run cannot start or go on: its inputs changed, another run is at work, or the cluster is not as it must be."""
+
+
 class UsageError(FellspanError, ValueError):
     """A command was not given what it needs."""
 

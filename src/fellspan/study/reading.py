@@ -38,6 +38,11 @@ def read_study(text: str, *, path: Path) -> Study:
     return assemble(study_file, path=path)
 
 
+def study_table(path: Path) -> dict[str, Any]:
+    """The tables of a study file as they stand, not yet checked; a StudyError where it cannot be read."""
+    return _table_of(_text_of(path), path)
+
+
 def _text_of(path: Path) -> str:
     if path.is_dir():
         raise StudyError(f"{path} is a folder", "name the study file in it, which ends in .toml")

@@ -20,6 +20,7 @@ from fellspan.study.fields import (
     OneOrMany,
     Probability,
 )
+from fellspan.study.schema_candidates import CandidatesTable
 from fellspan.study.schema_equipment import (
     AntennasTable,
     AntennaTable,
@@ -39,6 +40,7 @@ from fellspan.vocabulary import CoverKind, CriteriaPreset, GapPolicy, LengthUnit
 __all__ = [
     "AntennaTable",
     "AntennasTable",
+    "CandidatesTable",
     "ClimateTable",
     "CoChannelTable",
     "CompleteKind",
@@ -251,4 +253,5 @@ class StudyFile(Table):
     antennas: AntennasTable = Field(default_factory=AntennasTable)
     antenna: tuple[AntennaTable, ...] = ()
     link: tuple[LinkTable, ...] = Field(min_length=1)
+    candidates: CandidatesTable = Field(default_factory=CandidatesTable)
     map: MapTable = Field(default_factory=MapTable)
