@@ -208,7 +208,7 @@ def _mixed_db(
     ratio: FloatArray,
     beyond: NDArray[np.bool_],
 ) -> FloatArray:
-    """Loss over land and sea in their ratio, by the residues: as they are beyond the horizon, by the clearance this side of it."""
+    """Loss over land and sea in their ratio: the residues beyond the horizon, their share by the clearance this side of it."""
     over = partial(
         _first_residue_db,
         distance=distance,
