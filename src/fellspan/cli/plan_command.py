@@ -64,7 +64,8 @@ def plan_command(
 
         check_target(out)
     try:
-        plan = run_plan(_only(load_study(study), link or []), horizons=horizons, equipment=equip)
+        chosen = _only(load_study(study), link or [])
+        plan = run_plan(chosen, horizons=horizons, equipment=equip, report=out is not None)
     except FellspanError:
         tell_old_report(out)
         raise

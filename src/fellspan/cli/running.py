@@ -19,11 +19,14 @@ from fellspan.planning.planner import plan_study
 _BAR = 20
 
 
-def run_plan(study: Study, *, horizons: bool = False, equipment: bool = False) -> StudyPlan:
-    """Plan a study, with progress on a terminal; `horizons` and `equipment` are what `plan_study` adds, a second or so each."""
+def run_plan(study: Study, *, horizons: bool = False, equipment: bool = False, report: bool = False) -> StudyPlan:
+    """Plan a study, with progress on a terminal; `horizons` and `equipment` are what `plan_study` adds, a second or so each.
+
+    `report` adds what the pages of a report work with.
+    """
     progress = progress_line("planning")
     try:
-        return plan_study(study, progress=progress, horizons=horizons, equipment=equipment)
+        return plan_study(study, progress=progress, horizons=horizons, equipment=equipment, what_if=report)
     finally:
         clear_progress(progress)
 

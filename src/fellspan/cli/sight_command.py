@@ -132,7 +132,7 @@ def sight_command(
         )
     )
     try:
-        plan = run_plan(made)
+        plan = run_plan(made, report=out is not None)
         if plan.failures:
             raise plan.failures[0].error
     except FellspanError:

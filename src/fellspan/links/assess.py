@@ -265,13 +265,7 @@ class _Laid:
 
     @classmethod
     def out(cls, link: Link, profile: PathProfile, settings: AssessSettings) -> "_Laid":
-        _refuse_gaps(link, profile)
-        a, b = end_level(link.a, profile, end="A"), end_level(link.b, profile, end="B")
-        if profile.distance_m.size < 3:
-            profile = with_nodes(profile, (0.5 * profile.length_m,))
-        for level in (a, b):
-            profile = _with_end(profile, level)
-        stands = standing(profile)
+        profile, stands, a, b = stood(link, profile)
         criteria = settings.criteria or _preset_criteria(link, profile, stands, settings, a=a, b=b)
         levels = clearance.path_levels(
             profile.distance_m,
@@ -284,6 +278,25 @@ class _Laid:
         )
         errors_m = clearance_errors_m(profile, stands, a_error_m=a.error_m, b_error_m=b.error_m)
         return cls(profile=profile, stands=stands, a=a, b=b, criteria=criteria, levels=levels, errors_m=errors_m)
+
+
+def stood(link: Link, profile: PathProfile) -> tuple[PathProfile, Standing, EndLevel, EndLevel]:
+    """A profile as the ends of a link state it, what a ray must clear along it, and the levels of both ends.
+
+    Raises
+    ------
+    LinkError
+        As `assess_in_full`.
+    TerrainGapError
+        The profile has no data somewhere.
+    """
+    _refuse_gaps(link, profile)
+    a, b = end_level(link.a, profile, end="A"), end_level(link.b, profile, end="B")
+    if profile.distance_m.size < 3:
+        profile = with_nodes(profile, (0.5 * profile.length_m,))
+    for level in (a, b):
+        profile = _with_end(profile, level)
+    return profile, standing(profile), a, b
 
 
 def _refuse_gaps(link: Link, profile: PathProfile) -> None:

@@ -14,6 +14,7 @@ from fellspan.links.result import LinkResult
 from fellspan.links.site import Link
 from fellspan.links.skyline import Skyline
 from fellspan.planning.inputs import Study
+from fellspan.planning.what_if import WhatIf
 from fellspan.terrain.profile import PathProfile
 
 
@@ -44,6 +45,8 @@ class LinkPlan:
     """None where nobody asked for skylines."""
     equipment: EquipResult | None = None
     """None where nobody asked which antennas would serve, or where the radio states too little to say."""
+    what_if: WhatIf | None = None
+    """None where nobody asked what would hold at other heights, or where the terrain refused to be looked at so closely."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -4,6 +4,7 @@ One link that cannot be assessed does not stop the others. Reads no study file a
 """
 
 from collections.abc import Callable, Iterator
+from dataclasses import replace
 from typing import Final
 
 from fellspan import __version__
@@ -25,6 +26,7 @@ from fellspan.planning.plan import LinkFailure, LinkPlan, StudyPlan
 from fellspan.planning.slips import explained
 from fellspan.planning.stamp import input_files
 from fellspan.planning.water import water_of
+from fellspan.planning.what_if import what_if_of
 from fellspan.terrain.survey import link_key
 from fellspan.terrain.terrain import Terrain
 
@@ -41,11 +43,12 @@ def plan_study(
     heights: HeightSettings = _AS_USUAL,
     horizons: bool = False,
     equipment: bool = False,
+    what_if: bool = False,
 ) -> StudyPlan:
     """Assess every link of a study.
 
     `heights` says how antenna heights are searched; `horizons` adds skylines for aiming, `equipment` the antennas of the
-    catalogue compared on each link.
+    catalogue compared on each link, `what_if` the points that could govern at other heights, which pages work with.
 
     Raises
     ------
@@ -76,6 +79,9 @@ def plan_study(
             *_left_out_neighbours(study),
             *far_cautions(terrain.listed, study.links),
         )
+        if what_if:
+            # Last, so that a closer look at the terrain changes nothing of the plan.
+            planned = [replace(plan, what_if=what_if_of(plan.link, plan.profile, terrain)) for plan in planned]
     if progress is not None:
         progress(len(study.links), len(study.links), "")
     return StudyPlan(

@@ -19,7 +19,7 @@ class SurveyIndex:
     """Finds the surveyed rows that count on a path, among many."""
 
     def __init__(self, files: Sequence[SurveyFile], *, radius_m: float, growth_years: float = 0.0) -> None:
-        self._radius_m = radius_m
+        self._files, self._radius_m = files, radius_m
         self._rows = [(number, row.grown(growth_years)) for number, file in enumerate(files) for row in file.rows]
         self._before = self._preceding()
         self._by_link: dict[str, list[int]] = {}
@@ -48,6 +48,10 @@ class SurveyIndex:
                     before[i] = last[key]
                 last[key] = i
         return before
+
+    def grown(self, growth_years: float) -> "SurveyIndex":
+        """The same rows with trees grown by another number of years."""
+        return SurveyIndex(self._files, radius_m=self._radius_m, growth_years=growth_years)
 
     @property
     def rows(self) -> tuple[SurveyRow, ...]:

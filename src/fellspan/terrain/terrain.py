@@ -5,6 +5,7 @@ Holds what was opened and says what is missing in words; `assemble` works out th
 
 import math
 from collections.abc import Iterator, Sequence
+from dataclasses import replace
 from types import TracebackType
 from typing import Self
 
@@ -108,6 +109,27 @@ class Terrain:
     def listed(self) -> tuple[Listed, ...]:
         """Where the obstacles and survey rows stand."""
         return listed_obstacles(self._layers.obstacles.obstacles), listed_rows(self._layers.survey.rows)
+
+    @property
+    def growth_years(self) -> float:
+        """How far ahead trees are grown, years."""
+        return self._layers.growth_years
+
+    @property
+    def grows(self) -> bool:
+        """Whether anything has a rate of growth."""
+        layers = self._layers
+        return (
+            any(source.growth_m_per_year for source, _ in layers.cover)
+            or any(obstacle.growth_m_per_year for obstacle in layers.obstacles.obstacles)
+            or any(row.growth_m_per_year for row in layers.survey.rows)
+        )
+
+    def grown(self, growth_years: float) -> Self:
+        """The same files with trees grown by another number of years; close one of the two only, they share what is open."""
+        layers = self._layers
+        again = replace(layers, growth_years=growth_years, survey=layers.survey.grown(growth_years))
+        return type(self)(again, vertical_datum=self._datum, notes=self._notes)
 
     def close(self) -> None:
         """Close all files."""
