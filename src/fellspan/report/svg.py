@@ -2,8 +2,15 @@
 
 from html import escape
 from itertools import pairwise
+from typing import Final
+
+import numpy as np
+import shapely
 
 from fellspan.report.wording import clean
+
+STRAY: Final = 0.15
+"""How far a line may stray from the places it was given, sheet units: a sixth of a pixel, which nobody sees."""
 
 
 def num(value: float) -> str:
@@ -51,15 +58,28 @@ def _tenths(value: int) -> str:
 
 
 def points(xs: list[float], ys: list[float]) -> str:
-    """Path data through the points, to a tenth of a unit; relative steps, which halve the size of a page.
+    """Path data through the points, to a tenth of a unit; relative steps, and no point that a straight line passes within
+    `STRAY`: a page is a third of the size for it.
 
     The steps are differences of rounded places, so that rounding does not add up along a path.
     """
-    places = [(round(x * 10.0), round(y * 10.0)) for x, y in zip(xs, ys, strict=True)]
-    data = [f"M{_tenths(places[0][0])},{_tenths(places[0][1])}l"]
-    steps = [
-        f"{_tenths(after[0] - before[0])},{_tenths(after[1] - before[1])}"
-        for before, after in pairwise(places)
-        if after != before
-    ]
-    return data[0] + " ".join(steps or ["0,0"])
+    places = np.rint(_needed(xs, ys) * 10.0).astype(np.int64).tolist()
+    steps = []
+    for before, after in pairwise(places):
+        across, down = after[0] - before[0], after[1] - before[1]
+        if across or down:
+            shown = _tenths(down)
+            # A minus sign parts two numbers as well as a comma does.
+            steps.append(f"{_tenths(across)}{'' if shown.startswith('-') else ','}{shown}")
+    parts = [step if index == 0 or step.startswith("-") else f" {step}" for index, step in enumerate(steps or ["0,0"])]
+    return f"M{_tenths(places[0][0])},{_tenths(places[0][1])}l{''.join(parts)}"
+
+
+def _needed(xs: list[float], ys: list[float]) -> np.ndarray[tuple[int, int], np.dtype[np.float64]]:
+    given = np.column_stack([xs, ys]).astype(np.float64)
+    if given.shape[0] < 4 or not np.isfinite(given).all():
+        return given
+    kept: np.ndarray[tuple[int, int], np.dtype[np.float64]] = shapely.get_coordinates(
+        shapely.simplify(shapely.linestrings(given), STRAY, preserve_topology=False)
+    )
+    return kept if kept.shape[0] >= 2 else given
