@@ -19,6 +19,9 @@ Floats = NDArray[np.float64]
 TOLERANCE_M: Final = 1e-6
 """Rounding of the arithmetic, m: a height that is missing by less is not missing."""
 
+_SAME: Final = 1e-9
+"""Values that differ by less are equal but for rounding."""
+
 
 def _per_path(value: ArrayLike) -> Floats:
     """A per-path argument with the path axis added, so that it broadcasts against (..., n)."""
@@ -101,8 +104,14 @@ def normalised_clearance(clearance_m: ArrayLike, fresnel_radius_m: ArrayLike) ->
 
 def worst_index(values: Floats, distance_m: Floats) -> int:
     """Index of the least value; of values equal but for rounding the one nearest mid-path, so that A-B equals B-A."""
-    ties = np.flatnonzero(values <= values.min() + 1e-9)
-    return int(ties[np.argmin(np.abs(distance_m[ties] - 0.5 * distance_m[-1]))])
+    return int(worst_indices(values, distance_m))
+
+
+def worst_indices(values: Floats, distance_m: Floats) -> NDArray[np.intp]:
+    """As `worst_index`, for arrays of shape (..., n): indices of shape (...)."""
+    ties = values <= values.min(axis=-1, keepdims=True) + _SAME
+    from_middle = np.abs(distance_m - 0.5 * distance_m[..., -1:])
+    return np.asarray(np.argmin(np.where(ties, from_middle, np.inf), axis=-1))
 
 
 def extra_heights_m(shortfall_m: ArrayLike, distance_m: ArrayLike) -> tuple[Floats, Floats, Floats]:

@@ -9,7 +9,7 @@ from dataclasses import dataclass
 from typing import Final
 
 import numpy as np
-from numpy.typing import ArrayLike
+from numpy.typing import ArrayLike, NDArray
 
 from fellspan.errors import LinkError
 from fellspan.propagation.constants import K_FORMULA_LOW_M
@@ -78,17 +78,28 @@ def is_extended(distance_m: ArrayLike, normalised_clearance: ArrayLike) -> bool:
     normalised_clearance
         (ray - surface - bulge) / F1 at the k of the rule, shape (n,); what is not finite (the two ends) is left out.
     """
+    return bool(are_extended(distance_m, normalised_clearance))
+
+
+def are_extended(distance_m: ArrayLike, normalised_clearance: ArrayLike) -> NDArray[np.bool_]:
+    """As `is_extended`, for arrays of shape (..., n): answers of shape (...)."""
     distance = np.asarray(distance_m, dtype=np.float64)
     normalised = np.asarray(normalised_clearance, dtype=np.float64)
-    finite = np.isfinite(normalised)
-    if not finite.any():
-        return True
-    near = np.flatnonzero(finite & (normalised <= normalised[finite].min() + ISOLATED_BAND))
-    first, last = int(near[0]), int(near[-1])
-    if last - first + 1 != near.size:
-        return True
-    outer_from, outer_to = distance[max(first - 1, 0)], distance[min(last + 1, distance.size - 1)]
-    return bool(outer_to - outer_from >= ISOLATED_SHARE * (distance[-1] - distance[0]))
+    count = normalised.shape[-1]
+    finite = np.where(np.isfinite(normalised), normalised, np.inf)
+    least = finite.min(axis=-1, keepdims=True)
+    near = finite <= least + ISOLATED_BAND
+    first, last = near.argmax(axis=-1), count - 1 - near[..., ::-1].argmax(axis=-1)
+    apart = last - first + 1 != near.sum(axis=-1)
+    outer_from = _at(distance, np.maximum(first - 1, 0))
+    outer_to = _at(distance, np.minimum(last + 1, count - 1))
+    wide = outer_to - outer_from >= ISOLATED_SHARE * (distance[..., -1] - distance[..., 0])
+    return np.asarray(apart | wide | np.isinf(least[..., 0]))
+
+
+def _at(values: NDArray[np.float64], index: NDArray[np.intp]) -> NDArray[np.float64]:
+    """Values (..., n) at one index for each path (...)."""
+    return np.asarray(np.take_along_axis(values, index[..., np.newaxis], axis=-1)[..., 0])
 
 
 def criteria_for(

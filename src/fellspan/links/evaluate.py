@@ -137,9 +137,18 @@ def spare_m(result: CriterionResult) -> float:
 
 def governing_row(results: tuple[CriterionResult, ...]) -> int:
     """The criterion that the drawing shows: the greatest shortfall, else the least spare height at a governing point."""
-    if any(not result.met for result in results):
-        return max(range(len(results)), key=lambda row: results[row].shortfall_m)
-    return min(range(len(results)), key=lambda row: spare_m(results[row]))
+    return int(
+        governing_rows(
+            np.array([result.shortfall_m for result in results]), np.array([spare_m(result) for result in results])
+        )
+    )
+
+
+def governing_rows(shortfall_m: NDArray[np.float64], spare_m: NDArray[np.float64]) -> NDArray[np.intp]:
+    """As `governing_row`, for arrays (c, ...) of shortfalls, 0 where met, and of heights to spare at the governing points."""
+    return np.asarray(
+        np.where((shortfall_m > 0.0).any(axis=0), np.argmax(shortfall_m, axis=0), np.argmin(spare_m, axis=0))
+    )
 
 
 def _finite(value: float) -> float | None:

@@ -4,7 +4,7 @@ Knows a profile, what stands on it and the error of each antenna's own level; kn
 """
 
 import numpy as np
-from numpy.typing import NDArray
+from numpy.typing import ArrayLike, NDArray
 
 from fellspan.links.own_building import ROOF_SOURCE, Standing
 from fellspan.terrain.profile import PathProfile
@@ -29,25 +29,67 @@ def clearance_errors_m(
     part they share falls from all of it there to none one cell away. `a_error_m` and `b_error_m` are the errors of the
     antennas' levels.
     """
-    distance, length_m = profile.distance_m, profile.length_m
-    share = distance / length_m
+    distance = profile.distance_m
     surface = _surface_errors_m(profile, standing)
-    variance = surface**2 + ((1.0 - share) * a_error_m) ** 2 + (share * b_error_m) ** 2
-    for index, from_end, error_m in ((0, distance, a_error_m), (-1, length_m - distance, b_error_m)):
-        alike = _alike(from_end, profile.cell_m) * (profile.source == profile.source[index])
-        variance -= 2.0 * (1.0 - from_end / length_m) * alike * np.minimum(surface, error_m) ** 2
-    if profile.source[0] == profile.source[-1]:
-        alike_ends = float(_alike(np.asarray(length_m), profile.cell_m))
-        variance += 2.0 * share * (1.0 - share) * alike_ends * min(a_error_m, b_error_m) ** 2
+    source = profile.source
+    variance = clearance_variance_m2(
+        distance,
+        surface,
+        a_error_m=a_error_m,
+        b_error_m=b_error_m,
+        cell_m=profile.cell_m,
+        like_a=source == source[0],
+        like_b=source == source[-1],
+        ends_alike=source[0] == source[-1],
+    )
+    share = distance / profile.length_m
     # An edge or parapet was measured from the antenna and moves with it, however wrong the ground under both is.
     lever = np.minimum(share, 1.0 - share)
     variance = np.where(_typed(profile, standing), lever**2 * (a_error_m**2 + b_error_m**2), variance)
     return np.asarray(np.sqrt(np.maximum(variance, 0.0)))
 
 
-def _alike(distance_m: NDArray[np.float64], cell_m: float) -> NDArray[np.float64]:
+def clearance_variance_m2(
+    distance_m: NDArray[np.float64],
+    surface_error_m: ArrayLike,
+    *,
+    a_error_m: ArrayLike,
+    b_error_m: ArrayLike,
+    cell_m: ArrayLike,
+    like_a: NDArray[np.bool_] | bool,
+    like_b: NDArray[np.bool_] | bool,
+    ends_alike: NDArray[np.bool_] | bool,
+) -> NDArray[np.float64]:
+    """Variance of the clearance, m2, shape (..., n), as `clearance_errors_m` says; rounding may leave it a hair below 0.
+
+    Parameters
+    ----------
+    distance_m, surface_error_m
+        From A, and the standard error of what must be cleared, (..., n).
+    a_error_m, b_error_m, cell_m
+        Errors of the antennas' levels and the finest cell, (...).
+    like_a, like_b
+        Where the surface comes from the source that the ground under the antenna comes from, (..., n).
+    ends_alike
+        Whether the ground under both comes from one source, (...).
+    """
+    length = distance_m[..., -1:]
+    share = distance_m / length
+    surface = np.asarray(surface_error_m, dtype=np.float64)
+    a, b, cell = (np.asarray(value, dtype=np.float64)[..., np.newaxis] for value in (a_error_m, b_error_m, cell_m))
+    variance = surface**2 + ((1.0 - share) * a) ** 2 + (share * b) ** 2
+    for from_end, error, like in ((distance_m, a, like_a), (length - distance_m, b, like_b)):
+        alike = _alike(from_end, cell) * like
+        variance -= 2.0 * (1.0 - from_end / length) * alike * np.minimum(surface, error) ** 2
+    both = _alike(length, cell) * np.asarray(ends_alike)[..., np.newaxis] * np.minimum(a, b) ** 2
+    if both.any():
+        variance += 2.0 * share * (1.0 - share) * both
+    return np.asarray(variance)
+
+
+def _alike(distance_m: NDArray[np.float64], cell_m: NDArray[np.float64]) -> NDArray[np.float64]:
     """Correlation of the errors of two spots of one raster: 1 at the same spot, falling evenly to 0 one cell away."""
-    return np.asarray(np.clip(1.0 - distance_m / max(cell_m, 1e-9), 0.0, 1.0))
+    return np.asarray(np.clip(1.0 - distance_m / np.maximum(cell_m, 1e-9), 0.0, 1.0))
 
 
 def _surface_errors_m(profile: PathProfile, standing: Standing) -> NDArray[np.float64]:
