@@ -54,15 +54,25 @@ class Mounting:
             raise AntennaError(f"antenna roll {self.roll_deg:g} degrees is outside -180 to 180")
 
 
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Mountings:
+    """Many ways to hang one kind of antenna: a `Mounting` whose bearing and tilt are arrays of one shape, in its ranges."""
+
+    bearing_deg: NDArray[np.float64]
+    tilt_deg: NDArray[np.float64]
+    polarization: MountedPolarization
+    roll_deg: float = 0.0
+
+
 def off_boresight_deg(
-    mounting: Mounting, bearing_deg: ArrayLike, elevation_deg: ArrayLike, *, turn_deg: float = 0.0
+    mounting: Mounting | Mountings, bearing_deg: ArrayLike, elevation_deg: ArrayLike, *, turn_deg: float = 0.0
 ) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
     """Azimuth and elevation off the boresight, in the antenna's own frame, of directions given on the ground.
 
     Parameters
     ----------
     mounting
-        Boresight and roll.
+        Boresight and roll; many of them broadcast with the directions.
     bearing_deg, elevation_deg
         True bearing and elevation of the directions, degrees; broadcast together.
     turn_deg
@@ -76,8 +86,8 @@ def off_boresight_deg(
     across = np.radians(np.asarray(bearing_deg, dtype=np.float64) - mounting.bearing_deg)
     up = np.radians(np.asarray(elevation_deg, dtype=np.float64))
     ahead, right, high = np.cos(up) * np.cos(across), np.cos(up) * np.sin(across), np.sin(up) + 0.0 * across
-    tilt = math.radians(mounting.tilt_deg)
-    ahead, high = ahead * math.cos(tilt) + high * math.sin(tilt), high * math.cos(tilt) - ahead * math.sin(tilt)
+    tilt = np.radians(mounting.tilt_deg)
+    ahead, high = ahead * np.cos(tilt) + high * np.sin(tilt), high * np.cos(tilt) - ahead * np.sin(tilt)
     roll = math.radians(mounting.roll_deg + turn_deg)
     right, high = right * math.cos(roll) - high * math.sin(roll), high * math.cos(roll) + right * math.sin(roll)
     azimuth = np.degrees(np.arctan2(right, ahead))
@@ -97,7 +107,7 @@ def turn_for(pattern: Pattern, polarization: MountedPolarization) -> float:
     return built - FIELD_ANGLE_DEG[polarization]
 
 
-def refuse_unfit(pattern: Pattern, mounting: Mounting) -> None:
+def refuse_unfit(pattern: Pattern, mounting: Mounting | Mountings) -> None:
     """Refuse a polarisation that the antenna cannot have, however it is mounted.
 
     Raises
@@ -114,7 +124,7 @@ def refuse_unfit(pattern: Pattern, mounting: Mounting) -> None:
 
 
 def gain_toward_dbi(
-    pattern: Pattern, mounting: Mounting, bearing_deg: ArrayLike, elevation_deg: ArrayLike
+    pattern: Pattern, mounting: Mounting | Mountings, bearing_deg: ArrayLike, elevation_deg: ArrayLike
 ) -> NDArray[np.float64] | float:
     """Co-polar gain of a mounted antenna toward true bearings and elevations, dBi; AntennaError as in `refuse_unfit`."""
     refuse_unfit(pattern, mounting)
@@ -125,7 +135,7 @@ def gain_toward_dbi(
 
 
 def cross_gain_toward_dbi(
-    pattern: Pattern, mounting: Mounting, bearing_deg: ArrayLike, elevation_deg: ArrayLike
+    pattern: Pattern, mounting: Mounting | Mountings, bearing_deg: ArrayLike, elevation_deg: ArrayLike
 ) -> NDArray[np.float64] | float:
     """Cross-polar gain of a mounted antenna toward true bearings and elevations, dBi; AntennaError as in `refuse_unfit`."""
     refuse_unfit(pattern, mounting)
@@ -135,7 +145,7 @@ def cross_gain_toward_dbi(
     return pattern.cross_gain_dbi(azimuth, elevation)
 
 
-def field_angle_between_deg(a: Mounting, b: Mounting) -> float:
+def field_angle_between_deg(a: Mounting | Mountings, b: Mounting | Mountings) -> float:
     """Angle between the electric fields of two antennas that face each other, degrees, 0 to 90; 0 where one is dual."""
     if "dual" in (a.polarization, b.polarization):
         return 0.0
@@ -147,7 +157,7 @@ def field_angle_between_deg(a: Mounting, b: Mounting) -> float:
 
 
 def polarization_loss_db(
-    angle_deg: ArrayLike, *, discrimination_a_db: float = math.inf, discrimination_b_db: float = math.inf
+    angle_deg: ArrayLike, *, discrimination_a_db: ArrayLike = math.inf, discrimination_b_db: ArrayLike = math.inf
 ) -> NDArray[np.float64] | float:
     """Loss from fields that stand at an angle to each other.
 
@@ -168,7 +178,7 @@ def polarization_loss_db(
     Malus's law in amplitude; the leaked powers of both antennas add on average.
     """
     angle = np.radians(np.asarray(angle_deg, dtype=np.float64))
-    leak = 10.0 ** (-discrimination_a_db / 10.0) + 10.0 ** (-discrimination_b_db / 10.0)
+    leak = 10.0 ** (-np.asarray(discrimination_a_db) / 10.0) + 10.0 ** (-np.asarray(discrimination_b_db) / 10.0)
     power = np.minimum(np.cos(angle) ** 2 + np.sin(angle) ** 2 * leak, 1.0)
     loss = -10.0 * np.log10(np.maximum(power, 1e-30)) + 0.0  # no minus before a nought
     return float(loss) if loss.ndim == 0 else loss

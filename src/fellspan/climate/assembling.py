@@ -132,22 +132,34 @@ def _maps_at(position: Position, altitude_m: float | None) -> tuple[MapFigures |
         return None, f"the maps cannot be read: {type(error).__name__}: {lines[0] if lines else 'no reason given'}"
 
 
-def _rain_from_months(given: GivenClimate) -> Figure | None:
+def rain_from_months_mm_h(given: GivenClimate) -> float | None:
+    """Rain rate exceeded for 0.01 % of the year from monthly means, mm/h; None without them."""
     if given.monthly_rain_mm is None or given.monthly_temperature_c is None:
         return None
-    rate = rain_rate_mm_h(
-        0.01, monthly_rain_mm=given.monthly_rain_mm, monthly_temperature_c=given.monthly_temperature_c
+    return float(
+        rain_rate_mm_h(0.01, monthly_rain_mm=given.monthly_rain_mm, monthly_temperature_c=given.monthly_temperature_c)
     )
-    return Figure(value=float(rate), unit="mm/h", provenance=FROM_MONTHS, source_key="p837-8-rain-rate")
+
+
+def _rain_from_months(given: GivenClimate) -> Figure | None:
+    rate = rain_from_months_mm_h(given)
+    return (
+        None if rate is None else Figure(value=rate, unit="mm/h", provenance=FROM_MONTHS, source_key="p837-8-rain-rate")
+    )
+
+
+def default_gradient_n_per_km() -> float:
+    """Median gradient where nothing better is known: that of k = 4/3."""
+    return float(gradient_from_k_n_per_km(STANDARD_K))
+
+
+def kelvin(temperature_c: float) -> float:
+    """Degrees Celsius in kelvin."""
+    return temperature_c + _ZERO_CELSIUS_K
 
 
 def _default_gradient() -> Figure:
-    return Figure(
-        value=float(gradient_from_k_n_per_km(STANDARD_K)),
-        unit="N/km",
-        provenance="default: k = 4/3",
-        source_key="p452-18-k",
-    )
+    return Figure(value=default_gradient_n_per_km(), unit="N/km", provenance="default: k = 4/3", source_key="p452-18-k")
 
 
 def _air(given: GivenClimate, found: _Finder) -> tuple[Figure, Figure, Figure, Figure]:
@@ -161,7 +173,7 @@ def _air(given: GivenClimate, found: _Finder) -> tuple[Figure, Figure, Figure, F
         return Figure(value=float(value), unit=unit, provenance=default, source_key="p835-6-standard-air")
 
     if given.temperature_c is not None:
-        temperature = Figure(value=given.temperature_c + _ZERO_CELSIUS_K, unit="K", provenance=GIVEN)
+        temperature = Figure(value=kelvin(given.temperature_c), unit="K", provenance=GIVEN)
     else:
         temperature = found("temperature_k", "K") or standing_in(standard.temperature_k, "K")
     vapour = found("vapour_g_m3", "g/m3") or standing_in(standard.vapour_g_m3, "g/m3")

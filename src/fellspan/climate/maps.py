@@ -4,12 +4,16 @@ itur is an optional extra and takes seconds to import, so it is imported when th
 """
 
 import importlib.util
-from dataclasses import dataclass
+from collections.abc import Iterable
+from dataclasses import dataclass, fields
 from functools import lru_cache
 from importlib import import_module
 from typing import Any, Final
 
 import numpy as np
+from numpy.typing import NDArray
+
+Floats = NDArray[np.float64]
 
 MAP_PACKAGE: Final = "itur"
 PLACE_DECIMALS: Final = 2
@@ -29,6 +33,9 @@ class MapFigures:
     temperature_k: float
     vapour_g_m3: float
     version: str
+
+
+MAP_NAMES: Final = tuple(field.name for field in fields(MapFigures) if field.name != "version")
 
 
 def maps_available() -> bool:
@@ -60,32 +67,51 @@ def map_figures(*, latitude_deg: float, longitude_deg: float, altitude_m: float 
     return _looked_up(round(latitude_deg, PLACE_DECIMALS), round(longitude_deg, PLACE_DECIMALS), altitude)
 
 
+def map_columns(
+    names: Iterable[str], *, latitude_deg: Floats, longitude_deg: Floats, altitude_m: Floats
+) -> dict[str, Floats]:
+    """Some of `MAP_NAMES` for many places, each as `map_figures` has it for one; arrays of shape (p,).
+
+    Every place and height that rounding leaves apart is looked up once. Raises as `map_figures`.
+    """
+    # Python rounds to the nearest decimal, NumPy after a multiplication: the first, so that one place never has two figures.
+    latitude = np.array([round(value, PLACE_DECIMALS) for value in latitude_deg.tolist()])
+    longitude = np.array([round(value, PLACE_DECIMALS) for value in longitude_deg.tolist()])
+    altitude = np.rint(altitude_m / 10.0) * 10.0
+    places, back = np.unique(np.stack((latitude, longitude, altitude)), axis=1, return_inverse=True)
+    with np.errstate(all="ignore"):
+        return {name: _map_values(name, places[0], places[1] % 360.0, places[2])[back.reshape(-1)] for name in names}
+
+
 @lru_cache(maxsize=4096)
 def _looked_up(latitude_deg: float, longitude_deg: float, altitude_m: float | None) -> MapFigures:
+    place = np.array([latitude_deg]), np.array([longitude_deg % 360.0])
+    altitude = None if altitude_m is None else np.array([altitude_m])
     # Importing itur changes NumPy's error state for the whole program: this puts it back, and keeps its divisions quiet.
     with np.errstate(all="ignore"):
-        return _from_itur(latitude_deg, longitude_deg % 360.0, altitude_m)
+        found = {name: float(_map_values(name, *place, altitude)[0]) for name in MAP_NAMES}
+        return MapFigures(**found, version=str(import_module(MAP_PACKAGE).__version__))
 
 
-def _from_itur(latitude_deg: float, longitude_deg: float, altitude_m: float | None) -> MapFigures:
-    version = str(import_module(MAP_PACKAGE).__version__)
+_PUBLIC: Final = {
+    "rain_rate_001_mm_h": ("itu837", "rainfall_rate", (0.01,)),
+    "dn1_n_per_km": ("itu453", "DN65", (1.0,)),
+    "gradient_median_n_per_km": ("itu453", "DN65", (50.0,)),
+    "gradient_tail_n_per_km": ("itu453", "DN65", (99.9,)),
+    "rain_height_m": ("itu839", "rain_height", ()),
+    "temperature_k": ("itu1510", "surface_mean_temperature", ()),
+    "vapour_g_m3": ("itu836", "surface_water_vapour_density", (50.0,)),
+}
 
-    def value(model: str, function: str, *arguments: float, **options: float) -> float:
-        call: Any = getattr(import_module(f"{MAP_PACKAGE}.models.{model}"), function)
-        return float(np.squeeze(call(latitude_deg, longitude_deg, *arguments, **options).value))
 
-    # The roughness map has no public function; the class that holds it is that of itur 0.4.0.
-    older: Any = import_module(f"{MAP_PACKAGE}.models.itu530")._ITU530_17_
-    roughness = older.s_a(np.array([[latitude_deg]]), np.array([[longitude_deg]]))
-    vapour_at = {} if altitude_m is None else {"alt": altitude_m / 1000.0}
-    return MapFigures(
-        rain_rate_001_mm_h=value("itu837", "rainfall_rate", 0.01),
-        dn1_n_per_km=value("itu453", "DN65", 1.0),
-        gradient_median_n_per_km=value("itu453", "DN65", 50.0),
-        gradient_tail_n_per_km=value("itu453", "DN65", 99.9),
-        terrain_roughness_m=float(np.squeeze(roughness)),
-        rain_height_m=value("itu839", "rain_height") * 1000.0,
-        temperature_k=value("itu1510", "surface_mean_temperature"),
-        vapour_g_m3=value("itu836", "surface_water_vapour_density", 50.0, **vapour_at),
-        version=version,
-    )
+def _map_values(name: str, latitude_deg: Floats, longitude_deg: Floats, altitude_m: Floats | None) -> Floats:
+    """One map at many places, shape (p,); longitudes 0 to 360."""
+    if name == "terrain_roughness_m":
+        # The roughness map has no public function; the class that holds it is that of itur 0.4.0.
+        older: Any = import_module(f"{MAP_PACKAGE}.models.itu530")._ITU530_17_
+        return np.asarray(older.s_a(latitude_deg[:, np.newaxis], longitude_deg[:, np.newaxis])).reshape(-1)
+    model, function, arguments = _PUBLIC[name]
+    call: Any = getattr(import_module(f"{MAP_PACKAGE}.models.{model}"), function)
+    options = {"alt": altitude_m / 1000.0} if name == "vapour_g_m3" and altitude_m is not None else {}
+    found = np.asarray(call(latitude_deg, longitude_deg, *arguments, **options).value, dtype=np.float64).reshape(-1)
+    return found * 1000.0 if name == "rain_height_m" else found

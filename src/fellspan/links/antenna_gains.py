@@ -12,7 +12,7 @@ from numpy.typing import ArrayLike, NDArray
 
 from fellspan.antennas import mounting as hung
 from fellspan.antennas.facts import PatternFacts, facts_of
-from fellspan.antennas.mounting import Mounting
+from fellspan.antennas.mounting import Mounting, Mountings
 from fellspan.antennas.pattern import Pattern
 from fellspan.links.result import AntennaResult, AntennasResult, LinkResult
 from fellspan.links.site import Aim, Antenna, Link
@@ -44,18 +44,31 @@ def mounted(antenna: Antenna, *, bearing_deg: float, tilt_deg: float, polarizati
 
     An antenna aimed at the other end points its greatest gain there, so that an electrical downtilt is made up for.
     """
-    stated = antenna.mounting or Aim()
-    if isinstance(stated, Mounting):
-        return stated
-    pattern = antenna.pattern
-    tilt = stated.tilt_deg
-    if tilt is None:
-        tilt = 0.0
-        if stated.bearing_deg is None and not is_omni(pattern):
-            tilt = min(max(tilt_deg - _peak_deg(pattern)[1], -90.0), 90.0)
+    if isinstance(antenna.mounting, Mounting):
+        return antenna.mounting
+    many = all_mounted(antenna, bearing_deg=bearing_deg, tilt_deg=tilt_deg, polarization=polarization)
     return Mounting(
-        bearing_deg=bearing_deg if stated.bearing_deg is None else stated.bearing_deg,
-        tilt_deg=tilt,
+        bearing_deg=float(many.bearing_deg),
+        tilt_deg=float(many.tilt_deg),
+        polarization=many.polarization,
+        roll_deg=many.roll_deg,
+    )
+
+
+def all_mounted(
+    antenna: Antenna, *, bearing_deg: ArrayLike, tilt_deg: ArrayLike, polarization: Polarization
+) -> Mountings:
+    """`mounted` for many other ends at once: one antenna as it hangs toward each; arrays of one shape."""
+    stated = antenna.mounting or Aim()
+    bearing, up = np.broadcast_arrays(np.asarray(bearing_deg, dtype=np.float64), np.asarray(tilt_deg, dtype=np.float64))
+    tilt: ArrayLike = 0.0
+    if stated.tilt_deg is not None:
+        tilt = stated.tilt_deg
+    elif stated.bearing_deg is None and not is_omni(antenna.pattern):
+        tilt = np.clip(up - _peak_deg(antenna.pattern)[1], -90.0, 90.0)
+    return Mountings(
+        bearing_deg=bearing if stated.bearing_deg is None else np.full(bearing.shape, stated.bearing_deg),
+        tilt_deg=np.broadcast_to(np.asarray(tilt, dtype=np.float64), bearing.shape),
         polarization=stated.polarization or polarization,
         roll_deg=stated.roll_deg,
     )
@@ -153,15 +166,21 @@ def _ends_discrimination(
 
 
 def _discrimination_db(antenna: Antenna, mounting: Mounting, bearing_deg: float, tilt_deg: float) -> float:
-    """Co-polar over cross-polar gain toward the other end, dB, 0 to `MOST_DISCRIMINATION_DB`."""
+    return float(discriminations_db(antenna, mounting, bearing_deg, tilt_deg))
+
+
+def discriminations_db(
+    antenna: Antenna, mounting: Mounting | Mountings, bearing_deg: ArrayLike, tilt_deg: ArrayLike
+) -> NDArray[np.float64]:
+    """Co-polar over cross-polar gain toward the other end, dB, 0 to `MOST_DISCRIMINATION_DB`; broadcast."""
     if antenna.pattern is None:
-        return ASSUMED_DISCRIMINATION_DB
+        return np.full(np.broadcast(bearing_deg, tilt_deg).shape, ASSUMED_DISCRIMINATION_DB)
     _, below = gains_toward_db(antenna.pattern, mounting, bearing_deg, tilt_deg)
-    return max(float(below), 0.0)
+    return np.maximum(below, 0.0)
 
 
 def gains_toward_db(
-    pattern: Pattern, mounting: Mounting, bearing_deg: ArrayLike, elevation_deg: ArrayLike
+    pattern: Pattern, mounting: Mounting | Mountings, bearing_deg: ArrayLike, elevation_deg: ArrayLike
 ) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
     """Co-polar gain, dBi, and how far the cross-polar one lies below it, dB, toward true directions; broadcast.
 
