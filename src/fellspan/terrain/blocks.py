@@ -18,7 +18,7 @@ _STRIP_BYTES = 24_000_000
 
 _UNDECLARED = (-9999.0, -32767.0, -32768.0)
 """Numbers that stand for 'no data' by habit; where a file declares none, they are taken for gaps, not for heights."""
-_LOWEST_M, _HIGHEST_M = -12_000.0, 9_500.0
+LOWEST_M, HIGHEST_M = -12_000.0, 9_500.0
 """Nothing on Earth is lower or higher (deepest sea floor some -10 935 m, highest summit 8 849 m; from memory)."""
 
 Index = NDArray[np.int64]
@@ -59,14 +59,25 @@ def bilinear(
     order = np.argsort(group, kind="stable")
     for members in np.split(order, np.flatnonzero(np.diff(group[order])) + 1):
         heights[:, members] = _read_group(dataset, file, [(r[members], c[members]) for r, c in corners])
+    return blended(heights, across, down)
+
+
+def blended(
+    heights: NDArray[np.float64], across: NDArray[np.float64], down: NDArray[np.float64]
+) -> NDArray[np.float64]:
+    """Bilinear between four corners, shape (4, n): top left, top right, bottom left, bottom right.
+
+    `across` and `down` are the shares of a cell from the top left one, 0 to 1, shape (n,). Where some of the corners hold
+    nothing (NaN), their weights go to the others; NaN where the nearest one does.
+    """
     weights = np.stack(((1 - down) * (1 - across), (1 - down) * across, down * (1 - across), down * across))
     valid = np.isfinite(heights)
     weights *= valid
     nearest = 2 * (down >= 0.5) + (across >= 0.5)
     total = weights.sum(axis=0)
     usable = np.take_along_axis(valid, nearest[np.newaxis], axis=0)[0] & (total > 0.0)
-    blended = (np.where(valid, heights, 0.0) * weights).sum(axis=0)
-    return np.asarray(np.divide(blended, total, out=np.full(u.size, np.nan), where=usable))
+    summed = (np.where(valid, heights, 0.0) * weights).sum(axis=0)
+    return np.asarray(np.divide(summed, total, out=np.full(across.size, np.nan), where=usable))
 
 
 def group_shape(file: RasterFile) -> tuple[int, int]:
@@ -116,11 +127,9 @@ def _heights(
             valid &= dataset.read_masks(file.band, window=window)[rows, columns] != 0
         elif file.nodata is None and file.driver == "GTiff" and not raw.all():
             zero = raw == 0
-            valid[zero] &= _written(
-                dataset, file, rows[zero] + int(window.row_off), columns[zero] + int(window.col_off)
-            )
+            valid[zero] &= written(dataset, file, rows[zero] + int(window.row_off), columns[zero] + int(window.col_off))
     heights = (raw.astype(np.float64) * file.scale + file.offset) * file.unit_m
-    valid &= (heights > _LOWEST_M) & (heights < _HIGHEST_M)
+    valid &= (heights > LOWEST_M) & (heights < HIGHEST_M)
     return np.where(valid, heights, np.nan)
 
 
@@ -139,7 +148,17 @@ def _valid(raw: NDArray[np.generic], file: RasterFile) -> NDArray[np.bool_]:
     return valid
 
 
-def _written(dataset: DatasetReader, file: RasterFile, rows: Index, columns: Index) -> NDArray[np.bool_]:
+def no_heights(file: RasterFile, dtype: np.dtype[np.generic]) -> tuple[float, NDArray[np.float64]]:
+    """What cells of `dtype` hold where there is no height: the file's own number (NaN if none), and numbers by habit."""
+    if file.nodata is not None:
+        with np.errstate(over="ignore"):
+            stored = float(np.float32(file.nodata)) if dtype == np.float32 else file.nodata
+        return (stored if np.isfinite(stored) else np.nan), np.zeros(0)
+    by_habit = not file.has_mask and dtype.kind != "u"
+    return np.nan, np.array(_UNDECLARED if by_habit else (), dtype=np.float64)
+
+
+def written(dataset: DatasetReader, file: RasterFile, rows: Index, columns: Index) -> NDArray[np.bool_]:
     """False in blocks that a sparse GeoTIFF never stored: GDAL reads them as 0, but nobody measured that."""
     blocks_across = file.width // file.block_width + 1
     blocks, which = np.unique(

@@ -85,7 +85,7 @@ class Fan:
         cover = combine(
             ground, covers, None if above is None else above.value_m, None if above is None else above.sigma_m
         )
-        height = np.where(self._is_own(flat_b, flat_d, cover.kind), 0.0, cover.height_m)
+        height = np.where(self.is_own(flat_b, flat_d, cover.kind), 0.0, cover.height_m)
         shape = bearing.shape
         return FanSample(
             surface_m=(ground + height).reshape(shape),
@@ -154,8 +154,13 @@ class Fan:
         shape: BaseGeometry = shapely.set_coordinates(shapely.transform(obstacle.shape, lambda xy: xy), east_north)
         return shape.buffer(obstacle.reach_m, quad_segs=_ROUND) if obstacle.reach_m > 0.0 else shape
 
-    def _is_own(self, bearing_deg: Floats, distance_m: Floats, kind: NDArray[np.int8]) -> NDArray[np.bool_]:
-        """Whether cover at points belongs to what the antenna stands on."""
+    @property
+    def stands_on_outline(self) -> bool:
+        """Whether a building outline of the user's files holds the place."""
+        return self._own is not None
+
+    def is_own(self, bearing_deg: Floats, distance_m: Floats, kind: NDArray[np.int8]) -> NDArray[np.bool_]:
+        """Whether cover at points, (n,), belongs to what the antenna stands on."""
         if self._own is None:
             return np.asarray(distance_m <= _NEAR_M)
         west, south, east, north = self._own.bounds
