@@ -79,7 +79,6 @@ def load_screening(
     SitesFileError
         A file of hubs, places or pairs has a wrong row.
     """
-    path = Path(path)
     data = study_table(path)
     try:
         file = LooseStudyFile.model_validate(data)
@@ -89,7 +88,7 @@ def load_screening(
     table = _with_wishes(file.candidates, asked)
     hub_file = read_hubs(hubs, crs=asked.crs, height=table.height_hub)
     place_file = read_places(places, crs=asked.crs, height=table.height_place)
-    kinds = _Kinds(file, table, hub_file, path)
+    kinds = _Kinds(file, table, hub_file, path.absolute())
     study, templates = kinds.assembled()
     first = templates[0]
     candidates = Candidates(
