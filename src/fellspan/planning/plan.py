@@ -2,6 +2,7 @@
 
 from dataclasses import dataclass
 
+from fellspan.design.acceptance_result import AcceptanceResult
 from fellspan.design.confidence import ConfidenceResult
 from fellspan.design.equip_result import EquipResult
 from fellspan.design.heights_result import HeightsResult
@@ -45,6 +46,8 @@ class LinkPlan:
     """None where nobody asked for skylines."""
     equipment: EquipResult | None = None
     """None where nobody asked which antennas would serve, or where the radio states too little to say."""
+    as_built: AcceptanceResult | None = None
+    """What a crew measured, held against the plan; None where no measured file was given."""
     what_if: WhatIf | None = None
     """None where nobody asked what would hold at other heights, or where the terrain refused to be looked at so closely."""
 
