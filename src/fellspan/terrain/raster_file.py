@@ -214,11 +214,19 @@ def _unit(
 
 
 def _cell_on_ground(transform: Affine, crs_text: str, x: float, y: float) -> tuple[float, float]:
-    xs = np.array([x - transform.a / 2, x + transform.a / 2, x - transform.b / 2, x + transform.b / 2])
-    ys = np.array([y - transform.d / 2, y + transform.d / 2, y - transform.e / 2, y + transform.e / 2])
+    along_columns, along_rows = cells_on_ground(transform, crs_text, np.array([x]), np.array([y]))
+    return float(along_columns[0]), float(along_rows[0])
+
+
+def cells_on_ground(
+    transform: Affine, crs_text: str, x: NDArray[np.float64], y: NDArray[np.float64]
+) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+    """Sides of a cell on the ground, m, along columns and along rows, at points (n,) in a CRS."""
+    a, b, d, e = (0.5 * value for value in (transform.a, transform.b, transform.d, transform.e))
+    xs, ys = np.stack((x - a, x + a, x - b, x + b)), np.stack((y - d, y + d, y - e, y + e))
     lon, lat = transformer(crs_text, WGS84).transform(xs, ys)
     lengths = inverse_many(lat[0::2], lon[0::2], lat[1::2], lon[1::2]).distance_m
-    return float(lengths[0]), float(lengths[1])
+    return lengths[0], lengths[1]
 
 
 def on_plane(transform: Affine, column: NDArray[Any], row: NDArray[Any]) -> tuple[NDArray[Any], NDArray[Any]]:

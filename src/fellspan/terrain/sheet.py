@@ -1,0 +1,110 @@
+"""Cells of one raster kept decoded in memory, for batches of paths that come back to them: gathered by index, tile by tile.
+
+Reads only the tiles that paths come near, and reads them as `blocks` does. Knows nothing of CRS or paths.
+"""
+
+import threading
+from collections.abc import Callable
+from typing import Final
+
+import numpy as np
+from numpy.typing import NDArray
+from rasterio.io import DatasetReader
+
+from fellspan.terrain.blocks import blended, window_heights
+from fellspan.terrain.raster_file import RasterFile
+
+TILE: Final = 256
+"""Side of the tiles in which cells are read."""
+MOST_CELLS: Final = 64_000_000
+"""Rasters with more cells are not kept as a sheet: 256 MB of float32, were all of them read."""
+_EXACT_AS_FLOAT32: Final = ("float32", "int16", "uint16", "uint8", "int8")
+
+Floats = NDArray[np.float64]
+
+
+class Sheet:
+    """One raster as a sheet of cells in memory; untouched tiles cost none. Safe to use from several threads."""
+
+    def __init__(self, file: RasterFile, dataset: Callable[[], DatasetReader]) -> None:
+        """`dataset` gives the calling thread's handle on `file`."""
+        self.file = file
+        self._dataset = dataset
+        self._cells = np.empty((file.height, file.width), dtype=self._kept_as(file))
+        self._flat = self._cells.reshape(-1)
+        self._tiles = -(-file.height // TILE), -(-file.width // TILE)
+        self._loaded = np.zeros(self._tiles, dtype=np.bool_)
+        self._complete = False
+        self._lock = threading.Lock()
+
+    @staticmethod
+    def fits(file: RasterFile) -> bool:
+        """Whether a raster is small enough to be kept so, and large enough to be interpolated."""
+        return file.width * file.height <= MOST_CELLS and min(file.width, file.height) > 1
+
+    @staticmethod
+    def _kept_as(file: RasterFile) -> type[np.float32] | type[np.float64]:
+        plain = file.scale == 1.0 and file.offset == 0.0 and file.unit_m == 1.0
+        return np.float32 if plain and file.dtype in _EXACT_AS_FLOAT32 else np.float64
+
+    def read_near(self, column: Floats, row: Floats, *, reach: float) -> None:
+        """Read the tiles within `reach` cells of places in cells; where they are NaN or off the raster nothing is read."""
+        if self._complete:
+            return
+        wanted = np.zeros(self._tiles, dtype=np.bool_)
+        known = np.isfinite(column) & np.isfinite(row)
+        column, row = column[known], row[known]
+        near = (
+            (column > -reach) & (column < self.file.width + reach) & (row > -reach) & (row < self.file.height + reach)
+        )
+        column, row = column[near], row[near]
+        # A corner of the square round a place for every tile that the square can touch.
+        parts = np.linspace(-1.0, 1.0, 2 + int(2.0 * (reach + 1.0) / TILE)) * (reach + 1.0)
+        for down in parts:
+            tile_row = np.clip((row + down) // TILE, 0, self._tiles[0] - 1).astype(np.intp)
+            for across in parts:
+                tile_column = np.clip((column + across) // TILE, 0, self._tiles[1] - 1).astype(np.intp)
+                wanted[tile_row, tile_column] = True
+        if (wanted & ~self._loaded).any():
+            self._read(wanted)
+
+    def _read(self, wanted: NDArray[np.bool_]) -> None:
+        with self._lock:
+            for tile_row, tile_column in np.argwhere(wanted & ~self._loaded).tolist():
+                top, left = tile_row * TILE, tile_column * TILE
+                height, width = min(TILE, self.file.height - top), min(TILE, self.file.width - left)
+                self._cells[top : top + height, left : left + width] = window_heights(
+                    self._dataset(), self.file, column=left, row=top, width=width, height=height
+                )
+                self._loaded[tile_row, tile_column] = True
+            self._complete = bool(self._loaded.all())
+
+    def heights(self, column: Floats, row: Floats) -> Floats:
+        """As `blocks.bilinear`, of tiles that `read_near` has read, for places on the raster in arrays of any one shape."""
+        u, v = column - 0.5, row - 0.5
+        width, height = self.file.width, self.file.height
+        left = np.clip(u, 0.0, width - 2.0).astype(np.int64)
+        top = np.clip(v, 0.0, height - 2.0).astype(np.int64)
+        np.clip(u, 0.0, width - 1.0, out=u)
+        np.clip(v, 0.0, height - 1.0, out=v)
+        u -= left
+        v -= top
+        top *= width
+        top += left
+        first = self._flat.take(top, mode="clip")
+        right = self._flat.take(top + 1, mode="clip")
+        top += width
+        below = self._flat.take(top, mode="clip")
+        opposite = self._flat.take(top + 1, mode="clip")
+        upper = (right - first) * u
+        upper += first
+        lower = (opposite - below) * u
+        lower += below
+        lower -= upper
+        lower *= v
+        lower += upper
+        hollow = np.isnan(lower)
+        if hollow.any():
+            corners = np.stack([one[hollow].astype(np.float64) for one in (first, right, below, opposite)])
+            lower[hollow] = blended(corners, u[hollow], v[hollow])
+        return lower
