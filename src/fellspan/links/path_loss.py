@@ -3,7 +3,6 @@
 Arithmetic over a profile at one frequency; knows no radios, antennas, modulations or verdicts.
 """
 
-import math
 from dataclasses import dataclass
 from typing import Final
 
@@ -14,24 +13,21 @@ from fellspan.climate.figures import ClimateFigures
 from fellspan.links.causes import is_sea_level
 from fellspan.links.own_building import Standing
 from fellspan.links.signal_result import TreeLoss
-from fellspan.propagation import (
-    delta_bullington_loss_db,
-    earth_bulge_m,
-    free_space_loss_db,
-    gas_loss_db,
-    inverse_k,
-    woodland_loss_db,
-    woodland_loss_spread_db,
-    woodland_saturation_db,
-    woodland_specific_db_per_m,
+from fellspan.links.ways_past_trees import (
+    DIFFERS_DB,
+    PathRows,
+    depth_in_trees_m,
+    share_of_path,
+    ways_past_trees,
+    woods_db,
 )
+from fellspan.propagation import free_space_loss_db, gas_loss_db, inverse_k
 from fellspan.terrain.profile import PathProfile
 from fellspan.vocabulary import COVER_KINDS, Polarization, TreeWay
 
 Floats = NDArray[np.float64]
 
 TREE: Final = COVER_KINDS.index("tree")
-_DIFFERS_DB: Final = 1e-9
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -56,14 +52,20 @@ class PathLoss:
 
 def sea_share(profile: PathProfile) -> float:
     """Share of the path, 0 to 1, that the study took as open sea, weighted by the length each sample stands for."""
-    weights = sample_lengths_m(profile)
-    return float(np.sum(weights[is_sea_level(profile)]) / np.sum(weights))
+    return float(share_of_path(profile.distance_m, is_sea_level(profile)))
 
 
-def sample_lengths_m(profile: PathProfile) -> Floats:
-    """Length of path that each sample stands for, m, shape (n,)."""
-    between = np.diff(profile.distance_m)
-    return np.asarray(0.5 * (np.append(between, 0.0) + np.append(0.0, between)))
+def path_rows(profile: PathProfile, standing: Standing, *, a_amsl_m: float, b_amsl_m: float) -> PathRows:
+    """One path as the arrays that losses are worked out from."""
+    return PathRows(
+        distance_m=profile.distance_m,
+        ground_m=profile.ground_m,
+        surface_m=standing.surface_m,
+        trees=standing.cover_kind == TREE,
+        a_amsl_m=np.asarray(a_amsl_m),
+        b_amsl_m=np.asarray(b_amsl_m),
+        sea_fraction=np.asarray(sea_share(profile)),
+    )
 
 
 def path_loss(
@@ -84,54 +86,40 @@ def path_loss(
     takes the ground. Trees count once: the lesser of (diffraction over everything but trees, plus woodland on the way through)
     and (diffraction over everything). Free space is over the slant distance.
     """
-    trees = standing.cover_kind == TREE
-    solid_m = np.where(trees, profile.ground_m, standing.surface_m)
-    sea = sea_share(profile)
-    values_of_k = np.append(inverse_k(median_k), nodes_inverse_k)
-
-    def diffraction(surface_m: Floats) -> Floats:
-        with np.errstate(divide="ignore"):
-            k = 1.0 / values_of_k
-        loss = delta_bullington_loss_db(
-            profile.distance_m,
-            profile.ground_m,
-            a_amsl_m=a_amsl_m,
-            b_amsl_m=b_amsl_m,
-            frequency_hz=frequency_hz,
-            k=k,
-            polarization=polarization,
-            sea_fraction=sea,
-            surface_m=surface_m,
-        )
-        return np.maximum(np.asarray(loss, dtype=np.float64), 0.0)
-
-    over = diffraction(standing.surface_m)
-    solid = diffraction(solid_m) if trees.any() else over
-    depth = _depth_in_trees_m(profile, standing, a_amsl_m=a_amsl_m, b_amsl_m=b_amsl_m, k=median_k)
-    woods, least, most = _woodland_db(depth, frequency_hz)
-    through = solid + woods
-    way: TreeWay = "through" if through[0] < over[0] - _DIFFERS_DB else "over"
-    if depth == 0.0 and abs(through[0] - over[0]) <= _DIFFERS_DB:
+    rows = path_rows(profile, standing, a_amsl_m=a_amsl_m, b_amsl_m=b_amsl_m)
+    depth = depth_in_trees_m(rows, k=median_k)
+    frequency = np.array([frequency_hz])
+    ways = ways_past_trees(
+        rows,
+        inverse_k=np.append(inverse_k(median_k), nodes_inverse_k),
+        frequency_hz=frequency,
+        polarization=polarization,
+        depth_m=depth,
+    )
+    woods, least, most = (float(value[0]) for value in woods_db(depth, frequency))
+    through, over, solid = (float(loss[0, 0]) for loss in (ways.through_db, ways.over_db, ways.solid_db))
+    way: TreeWay = "through" if ways.is_through[0, 0] else "over"
+    if depth == 0.0 and abs(through - over) <= DIFFERS_DB:
         way = "no trees"
-    slant = math.hypot(profile.length_m, b_amsl_m - a_amsl_m)
+    slant = float(rows.slant_m)
     return PathLoss(
         frequency_hz=frequency_hz,
         slant_m=slant,
         free_space_db=float(free_space_loss_db(slant, frequency_hz=frequency_hz)),
-        diffraction_db=float(solid[0] if way == "through" else over[0]),
+        diffraction_db=solid if way == "through" else over,
         vegetation_db=woods if way == "through" else 0.0,
         trees=TreeLoss(
             way=way,
-            depth_m=depth,
-            through_db=float(through[0]),
-            over_db=float(over[0]),
-            least_through_db=float(solid[0]) + least,
-            most_through_db=float(solid[0]) + most,
+            depth_m=float(depth),
+            through_db=through,
+            over_db=over,
+            least_through_db=solid + least,
+            most_through_db=solid + most,
         ),
         gases_db=gases_db(slant, frequency_hz=frequency_hz, air=air),
-        sea_fraction=sea,
+        sea_fraction=float(rows.sea_fraction),
         inverse_k=np.asarray(nodes_inverse_k),
-        by_inverse_k_db=np.minimum(through, over)[1:],
+        by_inverse_k_db=ways.cheaper_db[1:, 0],
     )
 
 
@@ -146,25 +134,3 @@ def gases_db(slant_m: float, *, frequency_hz: float, air: ClimateFigures) -> flo
             vapour_g_m3=air.vapour_g_m3.value,
         )
     )
-
-
-def _depth_in_trees_m(profile: PathProfile, standing: Standing, *, a_amsl_m: float, b_amsl_m: float, k: float) -> float:
-    """Length of the ray between the ground and the tops of trees, m."""
-    at = profile.distance_m
-    share = at / at[-1]
-    ray = a_amsl_m * (1.0 - share) + b_amsl_m * share - np.asarray(earth_bulge_m(at, at[-1] - at, k=k))
-    inside = (standing.cover_kind == TREE) & (ray < standing.surface_m)
-    return float(np.sum(sample_lengths_m(profile)[inside]))
-
-
-def _woodland_db(depth_m: float, frequency_hz: float) -> tuple[float, float, float]:
-    """Loss through woodland, and the least and most of it, dB."""
-    if depth_m == 0.0:
-        return 0.0, 0.0, 0.0
-    loss = woodland_loss_db(
-        depth_m,
-        specific_db_per_m=woodland_specific_db_per_m(frequency_hz),
-        saturation_db=woodland_saturation_db(frequency_hz),
-    )
-    least, most = woodland_loss_spread_db(depth_m, frequency_hz=frequency_hz)
-    return float(loss), float(least), float(most)

@@ -19,12 +19,13 @@ from fellspan.links.budget import path_terms
 from fellspan.links.direction import Direction, End, direction_of
 from fellspan.links.fading import Fading, Geometry, Rain, Spread, nodes_of, occurrence, rain_001, spread_of
 from fellspan.links.own_building import Standing
-from fellspan.links.path_loss import PathLoss, gases_db, path_loss, sample_lengths_m
+from fellspan.links.path_loss import PathLoss, gases_db, path_loss
 from fellspan.links.ranges import multipath_breaches, multipath_inputs, rain_breaches
 from fellspan.links.receivers import row_power_dbm, rows_of
 from fellspan.links.result import AntennasResult
 from fellspan.links.signal_result import TreeLoss
 from fellspan.links.site import Link
+from fellspan.links.ways_past_trees import mean_over_path_m
 from fellspan.propagation import RainEdition, RainReading, free_space_loss_db
 from fellspan.terrain.profile import PathProfile
 
@@ -195,12 +196,11 @@ def _climate(
 
 
 def _geometry(profile: PathProfile, middle: Position, *, a_amsl_m: float, b_amsl_m: float) -> Geometry:
-    weights = sample_lengths_m(profile)
     return Geometry(
         length_m=profile.length_m,
         a_amsl_m=a_amsl_m,
         b_amsl_m=b_amsl_m,
-        mean_ground_m=float(np.sum(weights * profile.ground_m) / np.sum(weights)),
+        mean_ground_m=float(mean_over_path_m(profile.distance_m, profile.ground_m)),
         latitude_deg=middle.latitude_deg,
     )
 
