@@ -29,8 +29,11 @@ STRIPS: Final = 256
 """The path is cut into so many strips, narrower toward its ends, in each of which bulge and zone are as good as straight."""
 LATER_YEARS: Final = 25.0
 """Trees are grown to this age as well, so that one which overtakes another is known."""
+END_STRIPS, END_PARTS = 10, 8
+"""The outermost strips, where the zone widens with the root of the distance, are cut into parts again."""
 SPARE_M: Final = 0.004
-"""A point that stands no higher than this above the line between its neighbours is not kept, m."""
+"""A point that stands no higher than this above the line between its neighbours is not kept, m; near an end, where an antenna
+must be raised by many times what is missing, less."""
 
 GROUND, SEA = -1, -2
 _COVER: Final = -3
@@ -98,7 +101,7 @@ def _chosen(
     profile: PathProfile, stands: Standing, years: list[float], surfaces: list[Floats], *, now: float, grows: bool
 ) -> WhatIf:
     distance = profile.distance_m
-    strip = np.minimum((strips_along(distance) * STRIPS).astype(np.intp), STRIPS - 1)
+    strip = strips_along(distance)
     kept = [_upper(distance, surface, strip) for surface in surfaces]
     kept.append(_lowest(stands.surface_m, strip))
     index = np.unique(np.concatenate([*kept, [0, distance.size - 1]]))
@@ -121,10 +124,13 @@ def _chosen(
     )
 
 
-def strips_along(distance_m: Floats) -> Floats:
-    """Where a distance lies among the strips, 0 to 1: by the angle of a half circle over the path."""
+def strips_along(distance_m: Floats) -> NDArray[np.intp]:
+    """Number of the strip of each distance from A: even parts of a half circle over the path, the outer ones cut finer."""
     share = np.clip(distance_m / distance_m[-1], 0.0, 1.0)
-    return np.asarray(np.arccos(1.0 - 2.0 * share) / np.pi)
+    along = np.arccos(1.0 - 2.0 * share) / np.pi * STRIPS
+    fine = np.minimum(along, END_STRIPS) + np.maximum(along - (STRIPS - END_STRIPS), 0.0)
+    whole = np.clip(along - END_STRIPS, 0.0, STRIPS - 2 * END_STRIPS)
+    return np.asarray(np.floor(whole) + np.floor(fine * END_PARTS), dtype=np.intp)
 
 
 def _upper(distance_m: Floats, surface_m: Floats, strip: NDArray[np.intp]) -> NDArray[np.intp]:
@@ -143,6 +149,8 @@ def _upper(distance_m: Floats, surface_m: Floats, strip: NDArray[np.intp]) -> ND
             over = np.where(inner, surface_m[here] - chord, np.inf)
             out = over <= spare_m
             if spare_m > 0.0:
+                share = distance_m[here] / distance_m[-1]
+                out = over <= spare_m * np.minimum(1.0, 10.0 * np.minimum(share, 1.0 - share))
                 # One of two neighbours at a time, the lesser first: what is left of the other may then stand out.
                 padded = np.concatenate(([np.inf], over, [np.inf]))
                 out &= (over < padded[:-2]) & (over <= padded[2:])

@@ -50,6 +50,11 @@ def _count(length_m: float) -> int:
     return min(MOST_POINTS, 2 + int(length_m / POINT_EVERY_M))
 
 
+def places(plan: LinkPlan, at_m: NDArray[np.float64], reference_deg: float) -> Places:
+    """Places at distances from A, m."""
+    return _pairs(*_along(plan, at_m, reference_deg))
+
+
 def path(plan: LinkPlan, reference_deg: float) -> Places:
     """The geodesic, ends exact."""
     return _pairs(*_along(plan, np.linspace(0.0, plan.profile.length_m, _count(plan.profile.length_m)), reference_deg))

@@ -78,8 +78,10 @@ def band(section: Section, *, top: float) -> tuple[str, float]:
         x = section.x.at(at)
         here = " here" if at == section.criterion.worst_at_m else ""
         ground = value(at, section.profile.ground_m)
-        drawn.append(line(x, section.y.at(ground + value(at, bulge)), x, top, class_=f"ordinate{here}"))
-        drawn.append(line(x, top - 5, x, top + 1, class_="tick-x", data_at_m=repr(at)))
+        column = [
+            line(x, section.y.at(ground + value(at, bulge)), x, top, class_=f"ordinate{here}"),
+            line(x, top - 5, x, top + 1, class_="tick-x", data_at_m=repr(at)),
+        ]
         available, required = value(at, levels.available_m), value(at, need)
         if here:
             # So rounded that the two levels differ by the very number that the callout says.
@@ -92,7 +94,9 @@ def band(section: Section, *, top: float) -> tuple[str, float]:
         )
         for row, content in enumerate(texts):
             baseline = top + row * row_height + row_height * 0.68
-            drawn.append(label(x, baseline, content, class_=f"band-text{here}", anchor="middle"))
+            column.append(label(x, baseline, content, class_=f"band-text{here}", anchor="middle"))
+        surface = f"{value(at, levels.surface_m):.2f}"
+        drawn.append(el("g", *column, class_="station", data_at_m=repr(at), data_surface_m=surface))
     return el("g", *drawn, class_="band"), bottom
 
 

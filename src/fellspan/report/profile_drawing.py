@@ -67,6 +67,14 @@ def draw_profile(plan: LinkPlan, *, uid: str, sheet: Sheet = FULL) -> str:
         aria_labelledby=f"{uid}-title {uid}-desc",
         font_size=num(sheet.font),
         data_length_m=repr(plan.profile.length_m),
+        data_left=num(sheet.left),
+        data_right=num(sheet.right),
+        data_axis=num(sheet.axis_width),
+        data_top=num(section.y.to_px),
+        data_bottom=num(bottom),
+        data_low_m=repr(section.y.from_value),
+        data_high_m=repr(section.y.to_value),
+        data_callout=num(callout_y),
     )
 
 
