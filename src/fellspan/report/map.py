@@ -5,7 +5,7 @@ Everything is inside the page. Ids are counted, not random, so that the same pla
 
 import re
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from html import escape
 from typing import Any
 
@@ -13,12 +13,15 @@ import folium
 from branca.element import MacroElement
 from jinja2 import Template
 
+from fellspan.links.result import Obstruction
 from fellspan.links.words import state_of
 from fellspan.planning.plan import LinkPlan
 from fellspan.report import map_geometry as geometry
 from fellspan.report.relief import Relief
 from fellspan.report.wording import clean, shorten
 
+TOLD_APART = 0.01
+"""Gaps shorter than this share of a path are not seen between two cuts on the map of all links."""
 _RANDOM_ID = re.compile(r"\b([a-z_]+)_([0-9a-f]{32})\b")
 
 
@@ -34,29 +37,33 @@ class MapMarkup:
     """What the map names as its source, as HTML."""
 
 
-class SiteLabel(MacroElement):
-    """A site as a dot with its name; made in one step, so that no picture of a default marker is ever asked for."""
+class SiteNames(MacroElement):
+    """Sites as dots with their names, made by the page's own script: no picture of a default marker is ever asked for."""
 
     _template = Template(
         """
         {% macro script(this, kwargs) %}
-            L.marker({{ this.place|tojson }}, {keyboard: false, interactive: false, icon: L.divIcon(
-                {className: {{ this.class_name|tojson }}, iconSize: [0, 0], html: {{ this.markup|tojson }}}
-            )}).addTo({{ this._parent.get_name() }});
+            addSites({{ this._parent.get_name() }}, {{ this.sites|tojson }});
         {% endmacro %}
         """
     )
 
-    def __init__(self, mark: geometry.SiteMark) -> None:
+    def __init__(self, marks: Sequence[geometry.SiteMark]) -> None:
         super().__init__()  # type: ignore[no-untyped-call]
-        self._name = "SiteLabel"
-        self.place = [mark.latitude_deg, mark.longitude_deg]
-        self.class_name = " ".join(["site-mark", *(f"of-link-{index}" for index in mark.links)])
-        name, full = shorten(mark.name, 34), escape(clean(mark.name))
-        self.markup = (
-            f'<i class="site-dot"></i><bdi class="site-name {mark.side}" data-side="{mark.side}" '
-            f'title="{full}">{escape(name)}</bdi>'
-        )
+        self._name = "SiteNames"
+        self.sites = [
+            [
+                round(mark.latitude_deg, 6), round(mark.longitude_deg, 6), shorten(mark.name, 34),
+                _full(mark.name), mark.side, mark.links,
+            ]
+            for mark in marks
+        ]  # fmt: skip
+
+
+def _full(name: str) -> str:
+    """The whole name where the map shows a part of it, else nothing."""
+    whole = clean(name)
+    return "" if shorten(name, 34) == whole else whole
 
 
 def link_map(
@@ -76,10 +83,14 @@ def link_map(
     chart._id = name
     if relief is not None and relief.url:
         _add_relief(chart, relief)
-    for index, (plan, line) in enumerate(zip(plans, paths, strict=True), start=first):
-        _add_link(chart, plan, line, index=index, reference=reference, overview=overview)
-    for mark in geometry.sites(plans, reference, first=first):
-        SiteLabel(mark).add_to(chart)
+    LinkLines(
+        [
+            _drawn(plan, line, index=index, reference=reference, overview=overview)
+            for index, (plan, line) in enumerate(zip(plans, paths, strict=True), start=first)
+        ],
+        choose=overview,
+    ).add_to(chart)
+    SiteNames(geometry.sites(plans, reference, first=first)).add_to(chart)
     figure: Any = chart.get_root()
     figure.render()
     return MapMarkup(
@@ -117,35 +128,62 @@ def _names(names: Sequence[str]) -> str:
     return ", ".join(shorten(name, 40) for name in few)
 
 
-def _line(chart: folium.Map, places: geometry.Places, class_name: str, *, interactive: bool = False) -> None:
-    element = folium.PolyLine(places, weight=3, smooth_factor=0.6)  # type: ignore[no-untyped-call]
-    _classed(element, class_name, interactive=interactive).add_to(chart)
+class LinkLines(MacroElement):
+    """Paths, cuts and governing points of links as one list, which the page's own script draws: a hundred links stay small."""
+
+    _template = Template(
+        """
+        {% macro script(this, kwargs) %}
+            addLinks({{ this._parent.get_name() }}, {{ this.links|tojson }}, {{ this.choose|tojson }});
+        {% endmacro %}
+        """
+    )
+
+    def __init__(self, links: list[dict[str, Any]], *, choose: bool) -> None:
+        super().__init__()  # type: ignore[no-untyped-call]
+        self._name = "LinkLines"
+        self.links = links
+        self.choose = choose
 
 
-def _classed(element: Any, class_name: str, *, interactive: bool = False) -> Any:
-    element.options["className"] = class_name
-    element.options["interactive"] = interactive
-    return element
-
-
-def _add_link(
-    chart: folium.Map, plan: LinkPlan, line: geometry.Places, *, index: int, reference: float, overview: bool
-) -> None:
+def _drawn(plan: LinkPlan, line: geometry.Places, *, index: int, reference: float, overview: bool) -> dict[str, Any]:
+    """What the script draws of one link: number, state, path, governing point, cuts, and close by also the zone."""
     result = plan.result
     criterion = result.clearance[result.governing]
-    which = f"of-link-{index}"
-    outline = geometry.zone(plan, reference)
-    _classed(folium.Polygon(outline, weight=1, fill=True), f"map-zone {which}").add_to(chart)
-    _line(chart, line, f"map-casing {which}")
-    state = state_of(result)
-    _line(chart, line, f"map-path {state} {which}")
-    for item in criterion.obstructions:
-        places = geometry.stretch(plan, item.from_m, item.to_m, reference)
-        _line(chart, places, f"map-cut {'sight' if item.cuts_sight else 'zone'} {state} {which}")
-    spot = geometry.point(plan, criterion.worst_at_m, reference)
-    _classed(folium.CircleMarker(spot, radius=4, weight=2, fill=True), f"map-governing {which}").add_to(chart)
-    if overview:
-        _line(chart, line, f"map-hit {which}", interactive=True)
+    drawn: dict[str, Any] = {
+        "n": index,
+        "s": state_of(result),
+        "p": _short(line),
+        "g": _short([geometry.point(plan, criterion.worst_at_m, reference)])[0],
+    }
+    cuts = [
+        ["sight" if item.cuts_sight else "zone", *_short(geometry.stretch(plan, item.from_m, item.to_m, reference))]
+        for item in _told_apart(criterion.obstructions, plan.profile.length_m, overview=overview)
+    ]
+    if cuts:
+        drawn["c"] = cuts
+    if not overview:
+        drawn["z"] = _short(geometry.zone(plan, reference))
+    return drawn
+
+
+def _told_apart(cuts: Sequence[Obstruction], length_m: float, *, overview: bool) -> list[Obstruction]:
+    """The cuts; on the map of all links those of a kind that cannot be told apart there are one."""
+    if not overview:
+        return list(cuts)
+    joined: list[Obstruction] = []
+    for cut in cuts:
+        last = joined[-1] if joined else None
+        if last and last.cuts_sight == cut.cuts_sight and cut.from_m - last.to_m < length_m * TOLD_APART:
+            joined[-1] = replace(last, to_m=max(last.to_m, cut.to_m))
+        else:
+            joined.append(cut)
+    return joined
+
+
+def _short(places: geometry.Places) -> list[list[float]]:
+    """To a tenth of a metre, which no map shows."""
+    return [[round(latitude, 6), round(longitude, 6)] for latitude, longitude in places]
 
 
 def _counted(script: str, name: str) -> str:

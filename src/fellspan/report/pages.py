@@ -1,6 +1,5 @@
 """The pages of a plan: an overview with the map, and one page a link. Shows the plan and computes none of it."""
 
-from collections import Counter
 from collections.abc import Callable
 from dataclasses import dataclass, fields
 from html import escape
@@ -27,10 +26,11 @@ from fellspan.report.horizon_section import horizon_section
 from fellspan.report.map import MapMarkup, link_map
 from fellspan.report.naming import crew_name, page_name, slug
 from fellspan.report.neighbours import neighbours_view
+from fellspan.report.overview import overview_view
 from fellspan.report.profile_drawing import draw_profile, exaggeration_words
 from fellspan.report.reflection_section import reflection_section
 from fellspan.report.relief import open_rasters, shaded_relief
-from fellspan.report.section import FULL, NARROW, PANEL
+from fellspan.report.section import FULL, NARROW
 from fellspan.report.signal_section import availability_short, rules_section, signal_section
 from fellspan.report.survey_section import survey_section
 from fellspan.terrain.raster_file import RasterFile
@@ -39,7 +39,7 @@ Progress = Callable[[int, int, str], None]
 """Called with the number of pages done, the number of all, and the name of the one in hand."""
 
 OVERVIEW = "index.html"
-OVERVIEW_PIXELS, OVERVIEW_BYTES = 1200, 300_000
+OVERVIEW_PIXELS, OVERVIEW_BYTES = 1200, 100_000
 LINK_PIXELS, LINK_BYTES = 720, 120_000
 
 _LOSS_WORDS = {"free_space": "Free-space loss", "diffraction": "Diffraction loss"}
@@ -59,7 +59,6 @@ class LinkView:
     page: str
     anchor: str
     profile_csv: str
-    panel: Markup = NOTHING
     narrow: Markup = NOTHING
     full: Markup = NOTHING
     scale: str = ""
@@ -87,15 +86,6 @@ def render_pages(plan: StudyPlan, *, progress: Progress | None = None) -> dict[s
 
 
 def _overview(plan: StudyPlan, templates: Environment, rasters: list[RasterFile]) -> str:
-    views = [
-        _view(
-            index,
-            link,
-            panel=Markup(draw_profile(link, uid=f"p{index}w", sheet=PANEL)),
-            narrow=Markup(draw_profile(link, uid=f"p{index}n", sheet=NARROW)),
-        )
-        for index, link in enumerate(plan.links)
-    ]
     chart = None
     if plan.links:
         chart = _map(
@@ -103,8 +93,7 @@ def _overview(plan: StudyPlan, templates: Environment, rasters: list[RasterFile]
         )
     return templates.get_template("index.html.j2").render(
         **_shared(plan, chart),
-        links=views,
-        totals=Counter(state_of(link.result) for link in plan.links),
+        view=overview_view(plan),
         notes=(*plan.study.notes, *plan.cautions),
         neighbours=neighbours_view(plan),
         quiet=False,
@@ -229,6 +218,7 @@ def _shared(plan: StudyPlan, chart: MapMarkup | None) -> dict[str, Any]:
             "drawing": assets.asset("drawing.css"),
             "page": assets.asset("page.css"),
             "map": assets.asset("map.css"),
+            "overview": assets.asset("overview.css"),
             "polar": assets.asset("polar.css"),
             "horizon": assets.asset("horizon.css"),
             "equip": assets.asset("equip.css"),
@@ -237,6 +227,7 @@ def _shared(plan: StudyPlan, chart: MapMarkup | None) -> dict[str, Any]:
             "leaflet": assets.leaflet_js(),
             "map": assets.asset("map.js"),
             "overview": assets.asset("overview.js"),
+            "table": assets.asset("table.js"),
             "link": assets.asset("link.js"),
         },
     }

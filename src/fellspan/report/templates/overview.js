@@ -1,71 +1,87 @@
-// Chooses a link on the map or in the list and shows its path profile.
-(function () {
+// Chooses a link on the map, in the list or in the table, and shows its small path profile.
+var fellspanOverview = (function () {
   "use strict";
   var panel = document.getElementById("chosen"), frame = document.querySelector(".map-frame");
-  var entries = Array.from(document.querySelectorAll(".entry")), current = null;
+  var entries = Array.from(document.querySelectorAll(".entry")), rows = Array.from(document.querySelectorAll(".sortable tbody tr"));
+  var current = null, from = null, hits = fellspanMap.map.fellspanHits;
+  function make(tag, name, text) {
+    var part = document.createElement(tag);
+    part.className = name;
+    part.textContent = text;
+    return part;
+  }
   function mark(index, on) {
     document.querySelectorAll(".of-link-" + index).forEach(function (part) { part.classList.toggle("is-chosen", on); });
     entries[index].setAttribute("aria-pressed", String(on));
+    rows[index].classList.toggle("is-chosen", on);
   }
   function close() {
     if (current === null) return;
     mark(current, false);
-    entries[current].focus();
+    (from || entries[current]).focus();
     current = null;
     panel.hidden = true;
     panel.replaceChildren();
     frame.classList.remove("has-choice");
   }
-  function choose(index, fromMap) {
+  function head(row) {
+    var made = make("div", "chosen-head", ""), link = row.querySelector("a").cloneNode(true), name = make("h2", "", "");
+    var shut = make("button", "close", "Close");
+    name.appendChild(link.firstChild);
+    link.replaceChildren("Open the page of this link");
+    link.className = "page-link";
+    shut.type = "button";
+    shut.dataset.close = "";
+    shut.setAttribute("aria-label", "Close the path profile");
+    shut.addEventListener("click", close);
+    made.append(name, entries[row.dataset.link].querySelector(".verdict").cloneNode(true), make("span", "basis", row.cells[2].textContent), link, shut);
+    return made;
+  }
+  function choose(index, by) {
+    var narrow = window.matchMedia("(max-width: 760px)").matches;
     if (current !== null) mark(current, false);
     current = index;
+    from = by === "map" ? null : by;
     mark(index, true);
-    panel.replaceChildren(document.getElementById("chosen-" + index).content.cloneNode(true));
+    panel.replaceChildren(head(rows[index]), document.getElementById("chosen-" + index).content.cloneNode(true));
     panel.hidden = false;
     panel.scrollTop = 0;
     panel.dataset.link = String(index);
     frame.classList.add("has-choice");
     // Over a low map the key of lines would cover what was chosen; on a phone it stands below the map.
     var key = frame.querySelector(".map-key");
-    if (key && frame.clientHeight < 340 && !window.matchMedia("(max-width: 760px)").matches) key.open = false;
-    panel.querySelector("[data-close]").addEventListener("click", close);
+    if (key && frame.clientHeight < 340 && !narrow) key.open = false;
     document.querySelectorAll(".map-path.of-link-" + index + ", .map-cut.of-link-" + index + ", .map-governing.of-link-" + index).forEach(function (part) {
       part.parentNode.appendChild(part);
     });
     document.querySelectorAll(".map-hit").forEach(function (part) { part.parentNode.appendChild(part); });
-    entries[index].scrollIntoView({block: "nearest"});
-    if (!fromMap) fellspanMap.fit(boundsOf(index));
+    if (!narrow) entries[index].scrollIntoView({block: "nearest"});
+    if (by !== "map") fellspanMap.fit(hits[index].getBounds());
     fellspanMap.declutter();
-    if (window.matchMedia("(max-width: 760px)").matches) panel.scrollIntoView({block: "start"});
+    if (narrow) panel.scrollIntoView({block: "start"});
+    else if (from && from.closest(".under")) frame.scrollIntoView({block: "start"});
   }
-  function layers() {
-    var found = {};
-    fellspanMap.map.eachLayer(function (layer) {
-      var name = layer.options && layer.options.className || "", match = /^map-hit of-link-(\d+)$/.exec(name);
-      if (match) found[match[1]] = layer;
-    });
-    return found;
-  }
-  var hits = layers();
-  function boundsOf(index) { return hits[index].getBounds(); }
   Object.keys(hits).forEach(function (index) {
     hits[index].on("click", function (event) {
       L.DomEvent.stopPropagation(event);
-      choose(Number(index), true);
+      choose(Number(index), "map");
     });
   });
   entries.forEach(function (entry) {
-    entry.addEventListener("click", function () { choose(Number(entry.dataset.link), false); });
+    entry.addEventListener("click", function () { choose(Number(entry.dataset.link), entry); });
   });
-  document.addEventListener("keydown", function (event) { if (event.key === "Escape") close(); });
-  document.querySelector("[data-map=all]").addEventListener("click", function () { fellspanMap.fit(fellspanMap.all); });
-  var search = document.getElementById("search");
-  if (search) search.addEventListener("input", function () {
-    var words = search.value.toLocaleLowerCase();
-    entries.forEach(function (entry) {
-      entry.parentElement.hidden = entry.textContent.toLocaleLowerCase().indexOf(words) < 0;
+  rows.forEach(function (row) {
+    var name = row.querySelector("a").textContent, show = make("button", "show", "Map");
+    show.type = "button";
+    show.setAttribute("aria-label", "Show " + name + " on the map");
+    row.cells[0].prepend(show);
+    row.addEventListener("click", function (event) {
+      if (!event.target.closest("a") && !String(window.getSelection())) choose(Number(row.dataset.link), show);
     });
   });
-  var asked = entries.findIndex(function (entry) { return "#" + entry.id === window.location.hash; });
-  if (asked >= 0) choose(asked, false);
+  document.addEventListener("keydown", function (event) { if (event.key === "Escape") close(); });
+  document.querySelector("[data-map=all]").addEventListener("click", function () { fellspanMap.fit(fellspanMap.all); fellspanMap.declutter(); });
+  var asked = entries.findIndex(function (entry) { return "#" + entry.dataset.anchor === window.location.hash; });
+  if (asked >= 0) choose(asked, entries[asked]);
+  return {entries: entries, rows: rows};
 })();

@@ -1,0 +1,186 @@
+"""What the overview shows beside the map: a row for each link, totals, hubs, and the survey list of the whole study.
+
+Sorts and words what planning found and works nothing out but sums and counts.
+"""
+
+from collections import Counter
+from dataclasses import dataclass
+from typing import Final
+
+from fellspan.design.heights_result import HeightKind, HeightsResult
+from fellspan.links import words
+from fellspan.links.result import LinkResult
+from fellspan.links.verdicts import USUAL_MAST_M
+from fellspan.links.words import State, state_of
+from fellspan.planning.plan import LinkPlan, StudyPlan
+from fellspan.report import wording
+from fellspan.report.naming import page_name
+from fellspan.report.panel_drawing import Panel, draw_panel
+from fellspan.report.signal_section import availability_short
+from fellspan.report.survey_groups import SurveyGroup, survey_groups
+
+HUB_FROM: Final = 3
+"""A site with so many links is a hub."""
+STATE_ORDER: Final[tuple[State, ...]] = ("clear", "clear-bare", "marginal", "obstructed")
+_SIGNAL_ORDER: Final = ("meets", "marginal", "below")
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Cell:
+    """A cell of the table: what it says, and the number it sorts by where that is not what it says."""
+
+    text: str
+    sort: str = ""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Row:
+    """One link: its card, its row and its small profile."""
+
+    result: LinkResult
+    state: State
+    page: str
+    anchor: str
+    panel: Panel
+    order: int
+    """Place of the path verdict, the best first; 0 is clear."""
+    signal: Cell
+    distance: Cell
+    spare: Cell
+    confidence: Cell
+    levels: Cell
+    margin: Cell
+    left: str
+    """What neighbours leave of the margin, where they take any."""
+    availability: Cell
+    build: str
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Hub:
+    """A site that carries several links."""
+
+    site: str
+    links: tuple[tuple[str, str, State], ...]
+    """Name, page and state of each."""
+    length_m: float
+    worst: State
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class OverviewView:
+    """What the template shows."""
+
+    rows: tuple[Row, ...]
+    states: Counter[State]
+    signals: tuple[tuple[str, int], ...]
+    """Words and count of each kind of signal verdict that occurs."""
+    length_m: float
+    hubs: tuple[Hub, ...]
+    survey: tuple[SurveyGroup, ...]
+    points: int
+
+
+def overview_view(plan: StudyPlan) -> OverviewView:
+    """Everything beside the map."""
+    left = _left_by_neighbours(plan)
+    signals = Counter(_signal(link.result).text for link in plan.links)
+    survey = survey_groups(plan)
+    return OverviewView(
+        rows=tuple(_row(index, link, left.get(link.result.name)) for index, link in enumerate(plan.links)),
+        states=Counter(state_of(link.result) for link in plan.links),
+        signals=tuple((word, signals[word]) for word in sorted(signals, key=_signal_order)),
+        length_m=sum(link.result.distance_m for link in plan.links),
+        hubs=_hubs(plan),
+        survey=survey,
+        points=sum(len(group.rows) for group in survey),
+    )
+
+
+def _row(index: int, link: LinkPlan, left_db: float | None) -> Row:
+    result = link.result
+    governing = result.clearance[result.governing]
+    received, margin = result.received_dbm, result.margin_db
+    known = [value for value in (margin.at_a, margin.at_b) if value is not None]
+    least = min(known, default=None)
+    at = " / ".join(wording.number(value) for value in (received.at_a, received.at_b))
+    spare = max(governing.clearance_m - governing.required_m, 0.0) if governing.met else -governing.shortfall_m
+    return Row(
+        result=result,
+        state=state_of(result),
+        page=page_name(index, result.name),
+        anchor=f"link-{index + 1:02d}",
+        panel=draw_panel(link),
+        order=STATE_ORDER.index(state_of(result)),
+        signal=_signal(result),
+        distance=Cell(text=wording.distance(result.distance_m), sort=f"{result.distance_m:.0f}"),
+        spare=Cell(text=wording.decisive_words(governing), sort=f"{spare:.2f}"),
+        confidence=Cell(text=wording.probability(result.confidence), sort=f"{result.confidence:.4f}"),
+        levels=Cell(text="–" if received.at_a is None and received.at_b is None else at),
+        margin=Cell(text=wording.number(least), sort="" if least is None else f"{least:.2f}"),
+        left=wording.number(left_db) if left_db is not None and least is not None and least - left_db >= 0.05 else "",
+        availability=_availability(result),
+        build=_build(link.heights),
+    )
+
+
+def _signal(result: LinkResult) -> Cell:
+    text = wording.signal_short(result)
+    return Cell(text=text, sort=str(_signal_order(text)))
+
+
+def _signal_order(text: str) -> int:
+    return _SIGNAL_ORDER.index(text) if text in _SIGNAL_ORDER else len(_SIGNAL_ORDER) + (text != "not computed")
+
+
+def _availability(result: LinkResult) -> Cell:
+    year = result.availability_percent.year
+    text = availability_short(result)
+    return Cell(text=text or "–", sort=f"{year:.6f}" if text and year is not None else "")
+
+
+def _left_by_neighbours(plan: StudyPlan) -> dict[str, float]:
+    """The least margin that neighbours leave on each link, dB."""
+    left: dict[str, float] = {}
+    for one in plan.interference.receivers if plan.interference else ():
+        if one.effective_margin_db is not None:
+            left[one.link] = min(one.effective_margin_db, left.get(one.link, one.effective_margin_db))
+    return left
+
+
+def _build(heights: HeightsResult | None) -> str:
+    """What to add to the masts as planned, a phrase; the page of the link says the rest."""
+    if heights is None:
+        return "–"
+    if heights.planned_holds:
+        return "as planned"
+    planned = heights.planned
+    ways = []
+    kinds: tuple[tuple[HeightKind, str], ...] = (("a alone", "A"), ("b alone", "B"), ("alike", "both"))
+    for kind, word in kinds:
+        option = heights.option(kind)
+        pair = option.build if option else None
+        if pair is not None and max(pair.a_m, pair.b_m) <= USUAL_MAST_M:
+            more = pair.b_m - planned.b_m if kind == "b alone" else pair.a_m - planned.a_m
+            ways.append(f"{word} {wording.number(words.up_m(more), sign=True).removesuffix('.0')} m")
+    return " or ".join(ways) if ways else "not by usual masts"
+
+
+def _hubs(plan: StudyPlan) -> tuple[Hub, ...]:
+    """Sites that carry several links, those with the most first; a site is a name at a place."""
+    carried: dict[tuple[str, float, float], list[tuple[int, LinkPlan]]] = {}
+    for index, link in enumerate(plan.links):
+        for end in (link.result.ends.a, link.result.ends.b):
+            spot = (end.site, round(end.latitude_deg, 4), round(end.longitude_deg, 4))
+            carried.setdefault(spot, []).append((index, link))
+    hubs = [
+        Hub(
+            site=spot[0],
+            links=tuple((one.result.name, page_name(i, one.result.name), state_of(one.result)) for i, one in links),
+            length_m=sum(one.result.distance_m for _, one in links),
+            worst=max((state_of(one.result) for _, one in links), key=STATE_ORDER.index),
+        )
+        for spot, links in carried.items()
+        if len(links) >= HUB_FROM
+    ]
+    return tuple(sorted(hubs, key=lambda hub: -len(hub.links)))
