@@ -191,7 +191,7 @@ def test_all_none_and_undefined() -> None:
     assert sum_of_both == pytest.approx(100.0, abs=0.01)
     crossed = diffraction_outage_percent(5.0, inverse_k=GRID, loss_db=flat, median_n_per_km=0.0, tail_n_per_km=-10.0)
     assert math.isnan(float(crossed))
-    for wrong in ([1.0], [1.0, 0.5], [[0.0, 1.0]]):
+    for wrong in ([1.0], [1.0, 0.5], [[0.0, 1.0], [1.0, 0.0]]):
         with pytest.raises(ValueError, match="rising"):
             diffraction_outage_percent(5.0, inverse_k=wrong, loss_db=0.0, median_n_per_km=0.0, tail_n_per_km=10.0)
 
