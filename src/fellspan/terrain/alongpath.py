@@ -73,3 +73,20 @@ def near_path(tree: shapely.STRtree, path: GeodesicPath) -> tuple[NDArray[np.int
         shifts.append(np.full(indices.size, turn))
     indices, first = np.unique(np.concatenate(found), return_index=True)
     return indices, np.concatenate(shifts)[first]
+
+
+def near_lines(tree: shapely.STRtree, longitude_deg: Floats, latitude_deg: Floats) -> NDArray[np.bool_]:
+    """Which of many lines, nodes in arrays (p, m), meet any of the boxes, (p,); longitudes may run beyond 180.
+
+    As `near_path` does for one path, to what lines between nodes two kilometres apart are off the geodesic.
+    """
+    found = np.zeros(longitude_deg.shape[0], dtype=np.bool_)
+    for turn in (-360.0, 0.0, 360.0):
+        lines = shapely.linestrings(np.stack((longitude_deg - turn, latitude_deg), axis=-1))
+        found[np.unique(tree.query(lines, predicate="intersects")[0])] = True
+    return found
+
+
+def nodes_for(length_m: float) -> int:
+    """How many nodes `near_lines` needs on the longest of its lines."""
+    return max(1, int(np.ceil(length_m / _PIECE_M))) + 1

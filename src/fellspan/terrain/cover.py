@@ -12,13 +12,14 @@ from numpy.typing import NDArray
 
 from fellspan.errors import SeamError
 from fellspan.terrain.alongpath import Floats
+from fellspan.terrain.seams import allowed_m
 from fellspan.terrain.stack import StackSample
 from fellspan.vocabulary import COVER_KINDS, CoverKind
 
 NONE, OTHER = COVER_KINDS.index("none"), COVER_KINDS.index("other")
 _NEEDED: Final[tuple[CoverKind, ...]] = ("tree", "building")
 """What must be known before the surface is."""
-_SIGMAS, _ALWAYS_ALLOWED_M, _FEWEST_POINTS, _NOTED_SHARE = 3.0, 1.0, 5, 0.05
+_FEWEST_POINTS, _NOTED_SHARE = 5, 0.05
 _RISES_M: Final = 0.5
 """A surface that nowhere stands this far above the ground shows nothing on it, m (our own rule)."""
 _LONG_M, _LAND_M = 200.0, 1.0
@@ -118,7 +119,7 @@ def surface_steps(
     if not both.any():
         return ()
     step = surface.value_m - ground.value_m
-    allowed = np.maximum(_ALWAYS_ALLOWED_M, _SIGMAS * np.hypot(ground.sigma_m, surface.sigma_m))
+    allowed = allowed_m(ground.sigma_m, surface.sigma_m)
     pairs = np.column_stack((ground.source, surface.source))
     found = []
     for first, second in np.unique(pairs[both], axis=0).tolist():
@@ -146,6 +147,31 @@ def never_rises(steps: Sequence[SurfaceStep], length_m: float) -> bool:
     points = sum(step.points for step in steps)
     on_land = sum(step.on_land for step in steps)
     return length_m > _LONG_M and 2 * on_land > points and all(step.highest_m <= _RISES_M for step in steps)
+
+
+def may_be_refused(
+    step_m: Floats, ground_sigma_m: Floats, surface_sigma_m: Floats, *, inside: NDArray[np.bool_], is_one_pair: bool
+) -> NDArray[np.bool_]:
+    """Paths (q,) of which `surface_steps` might refuse the pair of rasters, by surface less ground at samples (q, n).
+
+    `inside` tells samples from what fills up shorter paths, (q, n); `is_one_pair` whether one ground and one surface raster
+    answer everywhere.
+    """
+    below = inside & (step_m < -allowed_m(ground_sigma_m, surface_sigma_m))
+    count = below.sum(axis=1)
+    if not is_one_pair:
+        return np.asarray(2 * count >= _FEWEST_POINTS)
+    return np.asarray((2 * count >= _FEWEST_POINTS) & (2 * count >= (inside & np.isfinite(step_m)).sum(axis=1)))
+
+
+def rises_somewhere(
+    step_m: Floats, ground_m: Floats, length_m: Floats, *, inside: NDArray[np.bool_]
+) -> NDArray[np.bool_]:
+    """Paths (q,) of which `never_rises` is False, by surface less ground and by ground at samples (q, n)."""
+    both = inside & np.isfinite(step_m)
+    on_land = (both & (ground_m > _LAND_M)).sum(axis=1)
+    highest = np.where(both, step_m, -np.inf).max(axis=1)
+    return np.asarray(~((length_m > _LONG_M) & (2 * on_land > both.sum(axis=1)) & (highest <= _RISES_M)))
 
 
 def missing_kinds(layers: Iterable[CoverKind], complete: Iterable[CoverKind]) -> tuple[CoverKind, ...]:

@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 from shapely.geometry.base import BaseGeometry
 
 from fellspan.geodesy.geodesic import GeodesicPath
-from fellspan.terrain.alongpath import Floats, along_across, near_path, reach_boxes
+from fellspan.terrain.alongpath import Floats, along_across, near_lines, near_path, reach_boxes
 from fellspan.vocabulary import CoverKind
 
 TopRule = Literal["level", "follow", "span", "sea"]
@@ -117,6 +117,12 @@ class ObstacleIndex:
             NearShape(obstacle=self.obstacles[index], plane=shape, shift=float(shift), crosses=bool(may))
             for index, shape, shift, may in zip(indices, plane, shifts, meets, strict=True)
         ]
+
+    def meets(self, longitude_deg: Floats, latitude_deg: Floats) -> NDArray[np.bool_]:
+        """Which of many paths, nodes in arrays (p, m), come near any obstacle, (p,): `near` is empty for the others."""
+        if not self.obstacles:
+            return np.zeros(longitude_deg.shape[0], dtype=np.bool_)
+        return near_lines(self._tree, longitude_deg, latitude_deg)
 
     def crossings(self, path: GeodesicPath) -> list[Crossing]:
         """Every crossing of the path, sorted by where it begins; exact to 0.1 m on paths of 50 km."""

@@ -6,7 +6,7 @@ Knows differences and names; reads no raster.
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import NDArray
+from numpy.typing import ArrayLike, NDArray
 
 from fellspan.errors import SeamError
 
@@ -54,6 +54,11 @@ def spread(wanted: NDArray[np.bool_], most: int = _MOST_POINTS) -> NDArray[np.in
     return found[np.linspace(0, found.size - 1, most).astype(np.int64)]
 
 
+def allowed_m(first_error_m: ArrayLike, second_error_m: ArrayLike) -> NDArray[np.float64]:
+    """How far two rasters of such errors may disagree, m: 3 combined standard errors, 1 m at least."""
+    return np.asarray(np.maximum(_ALWAYS_ALLOWED_M, _SIGMAS * np.hypot(first_error_m, second_error_m)))
+
+
 def seam_of(
     names: tuple[str, str], step_m: NDArray[np.float64], *, errors_m: tuple[float, float], siblings: bool
 ) -> Seam | None:
@@ -67,7 +72,7 @@ def seam_of(
         median_m=float(np.median(both)),
         p95_m=float(np.percentile(np.abs(both), 95.0)),
         points=int(both.size),
-        allowed_m=max(_ALWAYS_ALLOWED_M, _SIGMAS * float(np.hypot(*errors_m))),
+        allowed_m=float(allowed_m(*errors_m)),
         siblings=siblings,
     )
 

@@ -5,11 +5,12 @@ Heights in metres, gaps as gaps. Knows nothing of cover kinds, obstacles or radi
 
 import math
 import threading
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
+from rasterio.io import DatasetReader
 
 from fellspan.errors import TerrainError
 from fellspan.geodesy.geodesic import GeodesicPath
@@ -26,7 +27,8 @@ from fellspan.vocabulary import RasterRole
 _SAME_CELL = 1.1
 """Cells within a tenth count as equally fine: tiles of one model vary by latitude, and the user's order decides."""
 _CHUNK_SAMPLES = 256
-_EDGE_CELLS = 1e-6
+EDGE_CELLS = 1e-6
+"""Places this little off a raster still count as on its edge, in cells."""
 
 Floats = NDArray[np.float64]
 Index = NDArray[np.int64]
@@ -139,6 +141,11 @@ class RasterStack:
                     finest = min(finest, *self.files[number].cell_at_m(float(x[i]), float(y[i])))
         return finest if math.isfinite(finest) else self.cell_m
 
+    def dataset_of(self, number: int) -> Callable[[], DatasetReader]:
+        """What gives the calling thread its handle on a file."""
+        file = self.files[number]
+        return lambda: self._handles.dataset(file.path, file.name)
+
     def close(self) -> None:
         """Close the open files of all threads."""
         self._handles.close()
@@ -242,8 +249,8 @@ def _in_cells(file: RasterFile, x: Floats, y: Floats) -> tuple[Floats, Floats, N
         middle = (file.bounds[0] + file.bounds[2]) / 2.0
         x = x + file.period * np.round((middle - x) / file.period)
     column, row = on_plane(~file.transform, x, y)
-    inside = (column >= -_EDGE_CELLS) & (column <= file.width + _EDGE_CELLS)
-    inside &= (row >= -_EDGE_CELLS) & (row <= file.height + _EDGE_CELLS)
+    inside = (column >= -EDGE_CELLS) & (column <= file.width + EDGE_CELLS)
+    inside &= (row >= -EDGE_CELLS) & (row <= file.height + EDGE_CELLS)
     return column, row, inside
 
 

@@ -8,9 +8,10 @@ from dataclasses import replace
 
 import numpy as np
 import shapely
+from numpy.typing import NDArray
 
 from fellspan.geodesy.geodesic import GeodesicPath
-from fellspan.terrain.alongpath import along_across, near_path, reach_boxes
+from fellspan.terrain.alongpath import Floats, along_across, near_lines, near_path, reach_boxes
 from fellspan.terrain.survey import SurveyFile, SurveyRow, link_key
 from fellspan.terrain.survey_hits import NEAR_M, TOUCH_M, PointHit, SegmentHit, SurveyHits
 
@@ -62,6 +63,16 @@ class SurveyIndex:
     def links(self) -> tuple[str, ...]:
         """Names of links that rows refer to, in the order of the files."""
         return tuple(dict.fromkeys(row.link for _, row in self._rows if row.link))
+
+    def meets(self, longitude_deg: Floats, latitude_deg: Floats) -> NDArray[np.bool_]:
+        """Which of many paths, nodes in arrays (p, m), come near any row with a position, (p,)."""
+        if not self._placed.size:
+            return np.zeros(longitude_deg.shape[0], dtype=np.bool_)
+        return near_lines(self._tree, longitude_deg, latitude_deg)
+
+    def names(self, link: str) -> bool:
+        """Whether rows go by the name of a link."""
+        return link_key(link) in self._by_link
 
     def on_path(self, path: GeodesicPath, name: str | None, *, longest_m: float) -> SurveyHits:
         """The rows that count on a path: positions near it, and distances along the link of that name.

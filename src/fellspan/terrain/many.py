@@ -1,0 +1,170 @@
+"""Terrain for many paths at once: ground and cover from rasters as `assemble` puts them together for one path.
+
+For paths on which rasters alone count; those near an obstacle or a surveyed point are named, for the caller to take one by one.
+Opens nothing itself; knows nothing of radio.
+"""
+
+from dataclasses import dataclass
+from typing import Protocol
+
+import numpy as np
+from numpy.typing import NDArray
+
+from fellspan.terrain.assemble import Layers
+from fellspan.terrain.cover import NONE, OTHER, CoverLayer, combine, may_be_refused, missing_kinds, rises_somewhere
+from fellspan.terrain.raster_file import RasterFile
+from fellspan.terrain.stack_sheets import Curves, PathsOnStack, StackSheets, sigmas_of
+
+Floats = NDArray[np.float64]
+Index = NDArray[np.int64]
+
+
+class Paths(Protocol):
+    """A batch of paths that can say where it runs."""
+
+    size: int
+    length_m: Floats
+
+    def curves_on(self, file: RasterFile) -> Curves:
+        """The paths on a raster."""
+        ...
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class ManySamples:
+    """What stands along paths, arrays (q, n); those that are one value for all of a path may be (q, 1).
+
+    Meanings as in `PathProfile`; `ground_m` is NaN in a gap, `cover_m` and `cover_kind` None where no raster tells of cover.
+    """
+
+    ground_m: Floats
+    cover_m: Floats | None
+    cover_kind: NDArray[np.int8] | None
+    sigma_m: Floats
+    """Standard error of what must be cleared."""
+    ground_sigma_m: Floats
+    source: NDArray[np.int16]
+    known: NDArray[np.bool_]
+    """Trees and buildings are both known here."""
+    doubtful: NDArray[np.bool_]
+    """Paths (q,) on which rasters disagree so that planning might refuse them."""
+    tells: NDArray[np.bool_]
+    """Paths (q,) on which the surface raster shows anything at all, or others tell of trees and buildings."""
+
+
+class ManyPaths:
+    """A terrain's rasters kept as sheets, for batch after batch."""
+
+    def __init__(self, layers: Layers) -> None:
+        self.layers = layers
+        self._ground = StackSheets(layers.ground)
+        self._surface = None if layers.surface is None else StackSheets(layers.surface)
+        self._cover = tuple((source, StackSheets(stack)) for source, stack in layers.cover)
+
+    def lay(self, paths: Paths) -> "LaidPaths":
+        """A batch of paths laid on the rasters."""
+        return LaidPaths(self, paths)
+
+    @property
+    def stacks(self) -> tuple[StackSheets, ...]:
+        """All stacks, ground first."""
+        beside = () if self._surface is None else (self._surface,)
+        return (self._ground, *beside, *(sheets for _, sheets in self._cover))
+
+
+class LaidPaths:
+    """A batch of paths on the rasters, ready to be sampled anywhere."""
+
+    def __init__(self, many: ManyPaths, paths: Paths) -> None:
+        self._many, self._paths = many, paths
+        self._stacks = [sheets.over(paths) for sheets in many.stacks]
+        self.usable = np.logical_and.reduce([stack.usable for stack in self._stacks])
+        """Whether sheets serve all of a path, (p,)."""
+        self.cell_m: Floats = np.minimum.reduce([stack.cell_m for stack in self._stacks])
+        """The finest cell of each path, m, (p,)."""
+
+    def read_for(self, t: Floats, which: Index) -> None:
+        """Read what lies under places t, -1 at A to 1 at B, rising, (q, n), of paths `which`, and between them."""
+        for stack in self._stacks:
+            stack.read_for(t, which)
+
+    def sample(self, t: Floats, which: Index, *, inside: NDArray[np.bool_] | None = None) -> ManySamples:
+        """Everything at t, -1 at A to 1 at B, (q, n), of the paths `which`, (q,).
+
+        With `inside`, (q, n), which tells samples from what fills up shorter paths, `doubtful` and `tells` look at the surface
+        raster all along; without, the places are some of the path's only and they say nothing of it.
+        """
+        layers = self._many.layers
+        ground = self._stacks[0].sample(t, which)
+        value, source = ground.value_m, ground.source
+        ground_sigma = sigmas_of(layers.ground.files, source)
+        doubtful, tells = ground.doubtful, np.ones(which.size, dtype=np.bool_)
+        if not layers.is_bare:
+            known = np.isfinite(value)
+            return self._bare(value, ground_sigma, source, known, doubtful, tells)
+        covers: list[CoverLayer] = []
+        cover_stacks = self._stacks[len(self._stacks) - len(layers.cover) :]
+        for (declared, _), laid in zip(layers.cover, cover_stacks, strict=True):
+            heights, sigma, doubt = _sampled(laid, t, which)
+            growth = declared.growth_m_per_year * layers.growth_years
+            covers.append(CoverLayer(kind=declared.kind, value_m=heights, sigma_m=sigma, growth_m=growth))
+            doubtful = doubtful | doubt
+        if layers.surface is None:
+            if not covers:
+                known = np.full((which.size, 1), not missing_kinds((), layers.complete))
+                return self._bare(value, ground_sigma, source, known, doubtful, tells)
+            cover = combine(value, covers, None, None, complete=layers.complete)
+        else:
+            surface, sigma, doubt = _sampled(self._stacks[1], t, which)
+            cover = combine(value, covers, surface, sigma, complete=layers.complete)
+            step = surface - value
+            doubtful = doubtful | doubt
+            if inside is not None:
+                one = len(layers.ground.files) == 1 and len(layers.surface.files) == 1
+                doubtful |= may_be_refused(step, ground_sigma, sigma, inside=inside, is_one_pair=one)
+                if missing_kinds([declared.kind for declared, _ in layers.cover], layers.complete):
+                    tells = rises_somewhere(step, value, self._paths.length_m[which], inside=inside)
+        height = cover.height_m
+        stands = height > 0.0
+        kind = np.where(stands, np.where(cover.kind == NONE, OTHER, cover.kind), NONE).astype(np.int8)
+        cover_sigma = np.where(stands, cover.sigma_m, 0.0)
+        sigma = np.where(cover.from_surface, cover_sigma, np.hypot(ground_sigma, cover_sigma))
+        return ManySamples(
+            ground_m=value,
+            cover_m=height,
+            cover_kind=kind,
+            sigma_m=sigma,
+            ground_sigma_m=ground_sigma,
+            source=source,
+            known=cover.known & np.isfinite(value),
+            doubtful=doubtful,
+            tells=tells,
+        )
+
+    @staticmethod
+    def _bare(
+        value: Floats,
+        sigma: Floats,
+        source: NDArray[np.int16],
+        known: NDArray[np.bool_],
+        doubtful: NDArray[np.bool_],
+        tells: NDArray[np.bool_],
+    ) -> ManySamples:
+        return ManySamples(
+            ground_m=value,
+            cover_m=None,
+            cover_kind=None,
+            sigma_m=sigma,
+            ground_sigma_m=sigma,
+            source=source,
+            known=known,
+            doubtful=doubtful,
+            tells=tells,
+        )
+
+
+def _sampled(laid: PathsOnStack, t: Floats, which: Index) -> tuple[Floats, Floats, NDArray[np.bool_]]:
+    """Heights, their standard errors, and the paths in doubt."""
+    found = laid.sample(t, which)
+    sigma = np.broadcast_to(sigmas_of(laid.sheets.stack.files, found.source), t.shape)
+    return found.value_m, sigma, found.doubtful
