@@ -35,7 +35,7 @@ def test_the_section_shows_decision_ranking_and_reach(plan: StudyPlan) -> None:
     result = plan.links[0].equipment
     assert result is not None
     html, alone = link_page(plan), render_equip_page(result)
-    section = html[html.index('<section class="equipment">') :]
+    section = html[html.index('<section class="equipment" id="equipment">') :]
     section = section[: section.index("</section>")]
     text = unescape(section)
     assert "<h2>Equipment</h2>" in text

@@ -20,6 +20,7 @@ from fellspan.links.site import Antenna
 from fellspan.planning.plan import StudyPlan
 from fellspan.planning.planner import plan_study
 from fellspan.report.pages import render_pages
+from fellspan.report.workings_section import value_words
 from fellspan.study.reading import load_study
 
 STUDY = Path(__file__).parents[2] / "sample_terrain" / "tolmera.toml"
@@ -126,9 +127,17 @@ def test_workings_carry_formula_inputs_source_and_range(pages: dict[str, str], p
     page = pages["link-01-south-light-ostrel-landing.html"]
     signal = result(plan, SEA).signal
     assert signal is not None
-    assert f"A to B: South Light to Ostrel Landing , {len(signal.a_to_b.workings)} figures" in page
+    keys = {one.key for direction in (signal.a_to_b, signal.b_to_a) for one in direction.workings}
+    assert f"{len(keys)} figures of the signal" in page
+    assert "A to B: South Light to Ostrel Landing ; B to A: Ostrel Landing to South Light ." in page
+    for direction in (signal.a_to_b, signal.b_to_a):
+        for one in direction.workings:
+            assert value_words(one.value, one.unit) in page
+            assert one.formula in page
+            for given in one.inputs:
+                assert f"{given.label} {value_words(given.value, given.unit)}" in page
     assert "20 log(4 pi d f / c)" in page
-    assert "Rec. ITU-R P.525-5" in page
+    assert page.count("Rec. ITU-R P.525-5") == 1  # a source is told once, its rows carry its number
     assert "Valid for" in page
 
 

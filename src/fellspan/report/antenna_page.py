@@ -87,17 +87,8 @@ def render_antenna_page(sheets: Sequence[AntennaSheet]) -> str:
 
 def _svg_file(markup: str) -> str:
     """A diagram as a file of its own: style inside, a sheet behind it, readable in light and dark viewers."""
-    style = (
-        f"<style>{_tokens()}{assets.asset('polar.css')}.polar,.beam-view,.footprint{{background:var(--sheet)}}</style>"
-    )
+    sheet = ".polar,.beam-view,.footprint{background:var(--sheet)}"
+    style = f"<style>{assets.colours()}{assets.asset('polar.css')}{sheet}</style>"
     end = markup.index(">") + 1
     font = "style=\"font-family:'Source Sans 3','Segoe UI','Liberation Sans',Arial,sans-serif\""
     return f'<?xml version="1.0" encoding="UTF-8"?>\n{markup[: end - 1]} {font}>{style}{markup[end:]}\n'
-
-
-def _tokens() -> str:
-    """The names of colours: those of the drawings, and their dark counterparts."""
-    drawing, dark = str(assets.asset("drawing.css")), str(assets.asset("antenna.css"))
-    light = drawing[drawing.index(":root") : drawing.index("}") + 1]
-    start = dark.index("@media screen and (prefers-color-scheme: dark)")
-    return light + dark[start : dark.index("/* end of dark */")]

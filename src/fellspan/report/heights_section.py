@@ -21,6 +21,7 @@ class HeightsSection:
     rows: tuple[tuple[str, str, str, str, str, str], ...]
     notes: tuple[str, ...]
     sure: tuple[str, ...]
+    assumptions: tuple[str, ...]
     cautions: tuple[str, ...]
 
 
@@ -41,7 +42,8 @@ def heights_section(link: LinkPlan) -> HeightsSection | None:
             *(f"{note[0].upper()}{note[1:]}." for note in notes),
             heights.checked,
         ),
-        sure=_sure(heights, confidence),
+        sure=_sure(confidence),
+        assumptions=confidence.assumptions,
         cautions=heights.cautions,
     )
 
@@ -74,7 +76,7 @@ def _pair(pair: Pair | None, digits: int) -> str:
     return "–" if pair is None else f"{wording.number(pair.a_m, digits)} / {wording.metres(pair.b_m, digits)}"
 
 
-def _sure(heights: HeightsResult, confidence: ConfidenceResult) -> tuple[str, ...]:
+def _sure(confidence: ConfidenceResult) -> tuple[str, ...]:
     lines = [f"As planned every criterion holds with {wording.probability(confidence.all_hold)}."]
     for stated in confidence.heights:
         ends = (("A alone", stated.a_m), ("B alone", stated.b_m), ("both alike", stated.both_m))
@@ -82,4 +84,4 @@ def _sure(heights: HeightsResult, confidence: ConfidenceResult) -> tuple[str, ..
             f"{name} {'–' if value is None else wording.metres(value, sign=True)}" for name, value in ends
         )
         lines.append(f"For {wording.percent(stated.confidence)}: {words}.")
-    return (*lines, *confidence.assumptions)
+    return tuple(lines)

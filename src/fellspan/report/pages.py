@@ -20,6 +20,7 @@ from fellspan.report import assets, wording
 from fellspan.report import map_geometry as geometry
 from fellspan.report.antenna_section import antenna_section
 from fellspan.report.crew_sheet import crew_sheet
+from fellspan.report.decision_section import decision_section
 from fellspan.report.equip_page import equip_view
 from fellspan.report.heights_section import heights_section
 from fellspan.report.horizon_section import horizon_section
@@ -33,6 +34,7 @@ from fellspan.report.relief import open_rasters, shaded_relief
 from fellspan.report.section import FULL, NARROW
 from fellspan.report.signal_section import availability_short, rules_section, signal_section
 from fellspan.report.survey_section import survey_section
+from fellspan.report.workings_section import workings_section
 from fellspan.terrain.raster_file import RasterFile
 
 Progress = Callable[[int, int, str], None]
@@ -40,7 +42,7 @@ Progress = Callable[[int, int, str], None]
 
 OVERVIEW = "index.html"
 OVERVIEW_PIXELS, OVERVIEW_BYTES = 1200, 100_000
-LINK_PIXELS, LINK_BYTES = 720, 120_000
+LINK_PIXELS, LINK_BYTES = 640, 40_000
 
 _LOSS_WORDS = {"free_space": "Free-space loss", "diffraction": "Diffraction loss"}
 
@@ -127,7 +129,9 @@ def _link_page(plan: StudyPlan, index: int, link: LinkPlan, templates: Environme
             ("B", result.ends.b, result.bearing_ba_deg, result.tilt_ba_deg),
         ],
         losses=_losses(result.losses_db),
+        decision=decision_section(link, number=index + 1, growth_years=plan.study.growth_years),
         signal=signal_section(result),
+        workings=workings_section(result),
         held=rules_section(result),
         antennas=antenna_section(link),
         neighbours=neighbours_view(plan, result.name),
@@ -218,6 +222,7 @@ def _shared(plan: StudyPlan, chart: MapMarkup | None) -> dict[str, Any]:
             "drawing": assets.asset("drawing.css"),
             "page": assets.asset("page.css"),
             "map": assets.asset("map.css"),
+            "link": assets.asset("link.css"),
             "overview": assets.asset("overview.css"),
             "polar": assets.asset("polar.css"),
             "horizon": assets.asset("horizon.css"),

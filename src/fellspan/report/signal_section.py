@@ -1,4 +1,4 @@
-"""The radio side of one link on its page: budget, modulations, outages, climate, rule, exposure, workings. Computes nothing."""
+"""The radio side of one link on its page: budget, modulations, outages, climate, rule, exposure. Computes nothing."""
 
 import math
 from collections.abc import Iterator
@@ -13,6 +13,7 @@ from fellspan.links.signal_result import DirectionResult, ModulationResult, Shar
 from fellspan.links.signal_words import minutes_text, percent_text, rate_text
 from fellspan.propagation.sources import SOURCES
 from fellspan.report import wording
+from fellspan.report.workings_section import value_words
 
 _ENDS: Final = {
     "transmit_branching": "branching, transmitting end",
@@ -32,18 +33,6 @@ Rows = tuple[tuple[str, ...], ...]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
-class WorkingRow:
-    """One working in words."""
-
-    label: str
-    value: str
-    formula: str
-    inputs: str
-    source: str
-    note: str
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
 class SignalSection:
     """What the link page shows of the radio side; every list may be empty where its figures are not known."""
 
@@ -57,7 +46,6 @@ class SignalSection:
     climate: Rows
     editions: str
     notes: tuple[str, ...]
-    workings: tuple[tuple[str, tuple[WorkingRow, ...]], ...]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -91,7 +79,7 @@ def signal_section(result: LinkResult) -> SignalSection | None:
         climate=tuple(
             (
                 radio_words.CLIMATE_WORDS.get(one.key, one.key),
-                _value(one.value, one.unit),
+                value_words(one.value, one.unit),
                 _provenance(one.provenance, one.source_key),
             )
             for one in signal.climate
@@ -100,10 +88,6 @@ def signal_section(result: LinkResult) -> SignalSection | None:
         else (),
         editions=radio_words.editions_words(signal),
         notes=signal.notes,
-        workings=tuple(
-            (f"{one.direction}: {one.transmitter} to {one.receiver}", tuple(_working(row) for row in one.workings))
-            for one in (there, back)
-        ),
     )
 
 
@@ -213,40 +197,6 @@ def _percent(value: float | None) -> str:
 def _provenance(words: str, source_key: str) -> str:
     found = SOURCES.get(source_key)
     return words if found is None or "Rec. ITU-R" in words else f"{words} ({found.reference})"
-
-
-def _working(working: Working) -> WorkingRow:
-    found = SOURCES.get(working.source_key)
-    source = "the study" if found is None else f"{found.title}: {found.reference}"
-    if found is not None:
-        ranges = "; ".join(f"{one.label} {one.text()}" for one in found.ranges)
-        source += f". Valid for {ranges}" if ranges else ""
-        source += ". UNCONFIRMED" if found.status == "unconfirmed" else ""
-    return WorkingRow(
-        label=working.label[:1].upper()
-        + working.label[1:]
-        + (f" ({working.key.partition(':')[2]})" if ":" in working.key else ""),
-        value=_value(working.value, working.unit),
-        formula=working.formula,
-        inputs="; ".join(f"{one.label} {_value(one.value, one.unit)}" for one in working.inputs),
-        source=source,
-        note=working.note,
-    )
-
-
-def _value(value: float | str | None, unit: str) -> str:
-    if value is None:
-        return "–"
-    if isinstance(value, str):
-        return value
-    if unit == "bit/s":
-        return rate_text(value)
-    if unit == "%":
-        # An availability is told from 100 by its decimals, an outage by its first figures.
-        text = f"{value:.5f}" if value > 50.0 else f"{value:.3g}"
-    else:
-        text = f"{value:.2f}" if unit in ("dB", "dBm", "dBi") else f"{value:.5g}"
-    return f"{text.replace('-', '−')} {unit}".rstrip()
 
 
 def rules_section(result: LinkResult) -> RulesSection:
