@@ -7,6 +7,7 @@ Only the study file beside this script is written by hand.
 import sys
 from pathlib import Path
 
+import network
 import numpy as np
 import rasterio
 import relief
@@ -98,6 +99,14 @@ def write_sample(folder: Path, seed: int = SEED) -> None:
     (folder / "obstacles.csv").write_text(town.obstacles_csv(), encoding="utf-8", newline="\n")
     survey = town.survey_csv(ground.astype(np.float64) * GROUND_SCALE_M, trees.astype(np.float64) * COVER_SCALE_M, seed)
     (folder / "survey.csv").write_text(survey, encoding="utf-8", newline="\n")
+    write_network(folder, ground, trees, seed)
+
+
+def write_network(folder: Path, ground: NDArray[np.int16], trees: NDArray[np.uint8], seed: int = SEED) -> None:
+    """Write the tables of hubs and places, from the heights as stored."""
+    heights = ground.astype(np.float64) * GROUND_SCALE_M, trees.astype(np.float64) * COVER_SCALE_M
+    (folder / "hubs.csv").write_text(network.hubs_csv(), encoding="utf-8", newline="\n")
+    (folder / "places.csv").write_text(network.places_csv(*heights, seed), encoding="utf-8", newline="\n")
 
 
 if __name__ == "__main__":

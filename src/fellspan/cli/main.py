@@ -15,6 +15,7 @@ import typer
 
 from fellspan import __version__
 from fellspan.cli.antenna_command import antenna_command
+from fellspan.cli.candidates_command import candidates_command
 from fellspan.cli.equip_command import equip_command
 from fellspan.cli.heights_command import heights_command
 from fellspan.cli.init_command import init_command
@@ -54,6 +55,7 @@ app.command("sight")(sight_command)
 app.command("heights")(heights_command)
 app.command("equip")(equip_command)
 app.command("plan")(plan_command)
+app.command("candidates")(candidates_command)
 app.command("terrain")(terrain_command)
 app.command("antenna")(antenna_command)
 app.command("init")(init_command)

@@ -8,7 +8,7 @@ import sqlite3
 from collections.abc import Iterator, Mapping, Sequence
 from contextlib import contextmanager
 from pathlib import Path
-from typing import Final
+from typing import Any, Final
 
 import numpy as np
 
@@ -198,7 +198,7 @@ class Store:
                     self._connection.execute("ROLLBACK")
                 raise
 
-    def query(self, sql: str, parameters: Sequence[object] = ()) -> Iterator[tuple[object, ...]]:
+    def query(self, sql: str, parameters: Sequence[object] = ()) -> Iterator[tuple[Any, ...]]:
         """Rows of a question, one after the other; sorting that does not fit into memory goes to disk."""
         with errors(self.path):
             yield from self._connection.execute(sql, parameters)

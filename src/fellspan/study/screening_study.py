@@ -233,7 +233,7 @@ class _Kinds:
         table = self.table
         site = {"at": "0.00000 N, 0.00000 E", "height": "10 m above ground"}
         links = tuple(
-            LinkTable(
+            LinkTable.model_construct(
                 name=f"candidates {number}" if number else "candidates",
                 a=_HUB,
                 b=_PLACE,

@@ -1,0 +1,192 @@
+"""What `fellspan candidates` does: reads, runs, writes, prints. Imports the engine, so the command imports it when it runs."""
+
+import sys
+import threading
+import time
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Final
+
+import typer
+
+from fellspan.cli.candidates_page import page_lines
+from fellspan.cli.layout import WIDTH, Ink, colours_wanted, cut, printable
+from fellspan.errors import UsageError
+from fellspan.exports.candidates import summary_json
+from fellspan.exports.candidates_folder import CHOSEN, NAMES, write_run
+from fellspan.quantities import AntennaHeight
+from fellspan.runs.inputs import local_files, run_facts
+from fellspan.runs.listing import PairList
+from fellspan.runs.run import RunPlan, finish_run, locked, open_store
+from fellspan.study.screening_study import Screening, Wishes, load_screening
+
+_BAR: Final = 20
+_EVERY_S: Final = 0.2
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Asked:
+    """The command line, parsed."""
+
+    study: Path
+    hubs: Path
+    places: Path
+    pairs: Path | None
+    out: Path
+    best: int
+    fresh: bool
+    scheduler: str | None
+    chunk: int
+    threads: int | None
+    as_json: bool
+    wishes: Wishes
+
+
+def run_candidates(asked: Asked) -> None:
+    """Run, or go on with, a run over pairs; then write its files and print its summary."""
+    screening = load_screening(
+        asked.study, hubs=asked.hubs, places=asked.places, pairs=asked.pairs, wishes=asked.wishes
+    )
+    plan = _plan(screening, asked)
+    notes = list(screening.notes)
+    with (
+        locked(asked.out),
+        open_store(asked.out, plan, fresh=asked.fresh, outputs=NAMES) as store,
+        _Progress() as progress,
+    ):
+        finish_run(store, plan, watcher=progress, note=notes.append)
+        summary = write_run(asked.out, store, screening, keep=asked.best, notes=notes, tell=progress.writing)
+    if asked.as_json:
+        typer.echo(summary_json(summary, title=screening.study.title, notes=notes), nl=False)
+        return
+    lines = page_lines(
+        summary,
+        title=screening.study.title,
+        notes=notes,
+        out=asked.out,
+        chosen=(asked.out / CHOSEN).exists(),
+        ink=Ink(colours=colours_wanted()),
+    )
+    typer.echo("\n".join(lines))
+
+
+def _plan(screening: Screening, asked: Asked) -> RunPlan:
+    candidates = screening.candidates
+    pairs = PairList(
+        hubs=candidates.hubs,
+        places=candidates.places,
+        listed=screening.pairs,
+        min_distance_m=screening.min_distance_m,
+        max_distance_m=screening.max_distance_m,
+        chunk_pairs=asked.chunk,
+    )
+    count = pairs.count()
+    if not count.pairs:
+        raise UsageError(
+            "no pair of a hub and a place is left to judge",
+            f"{len(candidates.hubs.name)} hubs and {len(candidates.places.name)} places were read; look at the distances asked",
+        )
+    files = {"hubs": asked.hubs, "places": asked.places, **({} if asked.pairs is None else {"pairs": asked.pairs})}
+    facts, _ = run_facts(
+        screening.study,
+        templates=screening.templates,
+        files=files,
+        options=_options(screening, asked),
+        count=count,
+    )
+    return RunPlan(
+        study=screening.study,
+        candidates=candidates,
+        pairs=pairs,
+        facts=facts,
+        files=local_files(screening.study),
+        scheduler=asked.scheduler,
+        threads=asked.threads,
+    )
+
+
+def _options(screening: Screening, asked: Asked) -> dict[str, str]:
+    """What was asked on the command line and shapes the results."""
+    wishes = asked.wishes
+    given = {
+        "--radio": wishes.radio,
+        "--hub-antenna": wishes.antenna_hub,
+        "--place-antenna": wishes.antenna_place,
+        "--hub-height": _height_words(wishes.height_hub),
+        "--place-height": _height_words(wishes.height_place),
+        "--crs": wishes.crs,
+        "--min-distance": f"{screening.min_distance_m:g} m",
+        "--max-distance": f"{screening.max_distance_m:g} m",
+        "--chunk": str(asked.chunk),
+    }
+    return {name: value for name, value in given.items() if value is not None}
+
+
+def _height_words(height: AntennaHeight | None) -> str | None:
+    return None if height is None else f"{height.height_m!r} m above {height.reference}"
+
+
+class _Progress:
+    """A line on standard error with rate and time left; nothing where nobody watches."""
+
+    def __init__(self) -> None:
+        self._watched = sys.stderr.isatty()
+        self._lock = threading.Lock()
+        self._all = self._before = self._now = 0
+        self._started = self._told = 0.0
+
+    def __enter__(self) -> "_Progress":
+        return self
+
+    def __exit__(self, *_: object) -> None:
+        self._clear()
+
+    def begin(self, pairs: int, done: int) -> None:
+        """So many pairs in all, and so many of them from earlier."""
+        self._all, self._before, self._started = pairs, done, time.monotonic()
+        self._show(self._started)
+
+    def done(self, pairs: int) -> None:
+        """So many pairs more are worked out; may be called by any thread."""
+        with self._lock:
+            self._now += pairs
+            now = time.monotonic()
+            if now - self._told >= _EVERY_S:
+                self._show(now)
+
+    def writing(self, name: str) -> None:
+        """A file is being written."""
+        self._put(f"writing {name}")
+
+    def _show(self, now: float) -> None:
+        self._told = now
+        self._put(progress_text(self._all, self._before, self._now, seconds=now - self._started))
+
+    def _put(self, text: str) -> None:
+        if self._watched:
+            sys.stderr.write(f"\r\x1b[K{cut(printable(text), WIDTH - 1)}")
+            sys.stderr.flush()
+
+    def _clear(self) -> None:
+        if self._watched:
+            sys.stderr.write("\r\x1b[K")
+            sys.stderr.flush()
+
+
+def progress_text(pairs: int, before: int, now: int, *, seconds: float) -> str:
+    """Bar, count, rate and time left; the rate counts what this process did."""
+    done = before + now
+    filled = _BAR * done // max(pairs, 1)
+    text = f"judging [{'#' * filled}{'.' * (_BAR - filled)}] {done}/{pairs} pairs"
+    if now and seconds > 0.0:
+        rate = now / seconds
+        text += f", {rate:.3g}/s, {duration_words((pairs - done) / rate)} left"
+    return text
+
+
+def duration_words(seconds: float) -> str:
+    """'40 s', '12 min', '3 h 20 min'."""
+    if seconds < 90.0:
+        return f"{seconds:.0f} s"
+    minutes = round(seconds / 60.0)
+    return f"{minutes} min" if minutes < 90 else f"{minutes // 60} h {minutes % 60:02d} min"

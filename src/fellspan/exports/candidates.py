@@ -1,0 +1,206 @@
+"""The files of a finished run: candidates.csv, candidates.geojson, best.csv, summary.json; written row by row.
+
+Shows what the store holds and computes nothing. Names come from users: none can start a formula, none breaks the JSON.
+"""
+
+import json
+import math
+from collections.abc import Iterator, Sequence
+from typing import Final, TextIO
+
+from fellspan import __version__
+from fellspan.exports.places import Place, split_at_antimeridian
+from fellspan.exports.text import csv_cell, utf8
+from fellspan.links.words import STATE_WORDS
+from fellspan.runs.store import STATES, Store
+from fellspan.runs.summary import HubCount, PairRow, RunSummary, rows_in_order
+from fellspan.screening.pairs import BASES, PATH_VERDICTS, SIGNAL_VERDICTS, STATUSES, Candidates, SiteColumns
+
+NUMBERS: Final = (
+    ("distance_m", 1),
+    ("bearing_deg", 2),
+    ("confidence", 4),
+    ("worst_fraction", 3),
+    ("worst_at_m", 1),
+    ("extra_at_place_m", 2),
+    ("diffraction_db", 2),
+    ("received_at_hub_dbm", 2),
+    ("received_at_place_dbm", 2),
+    ("margin_at_hub_db", 2),
+    ("margin_at_place_db", 2),
+    ("availability_percent", 6),
+    ("gap_from_m", 1),
+    ("gap_to_m", 1),
+)
+"""Numbers of a pair and their decimals."""
+CANDIDATE_COLUMNS: Final = (
+    "hub",
+    "place",
+    "sector",
+    "status",
+    "state",
+    "verdict",
+    "basis",
+    "signal_verdict",
+    "criterion",
+    *(name for name, _ in NUMBERS),
+    "raising_the_place_helps",
+    "reason",
+)
+BEST_COLUMNS: Final = ("place", "rank", *(name for name in CANDIDATE_COLUMNS if name != "place"))
+NO_HUB_WORDS: Final = "no hub in reach"
+STATE_OF: Final = (*(STATE_WORDS[state] for state in STATES), "")
+
+
+class CandidateTable:
+    """Rows of a run as cells; names are made safe once each."""
+
+    def __init__(self, candidates: Candidates) -> None:
+        self.hubs = [csv_cell(name) for name in candidates.hubs.name]
+        self.places = [csv_cell(name) for name in candidates.places.name]
+        self.sectors = [csv_cell(sector.name) for sector in candidates.sectors]
+        self.criteria = criterion_words(candidates)
+
+    def cells(self, row: PairRow) -> list[str]:
+        """The cells of `CANDIDATE_COLUMNS`."""
+        infinite = row.extra_at_place_m is not None and math.isinf(row.extra_at_place_m)
+        cells = [
+            self.hubs[row.hub],
+            self.places[row.place],
+            "" if row.sector is None else self.sectors[row.sector],
+            STATUSES[row.status],
+            STATE_OF[row.state],
+            "" if row.verdict is None else PATH_VERDICTS[row.verdict],
+            "" if row.basis is None else BASES[row.basis],
+            "" if row.signal_verdict is None else SIGNAL_VERDICTS[row.signal_verdict],
+            "" if row.governing is None else self.criteria[min(row.governing, len(self.criteria) - 1)],
+        ]
+        cells += [_number(getattr(row, name), decimals) for name, decimals in NUMBERS]
+        cells.append(
+            "" if row.extra_at_place_m is None else "no" if infinite else "yes" if row.extra_at_place_m else ""
+        )
+        cells.append(csv_cell(row.reason) if row.reason else "")
+        return cells
+
+    def best_cells(self, rank: int, row: PairRow | int) -> list[str]:
+        """The cells of `BEST_COLUMNS`; for a place without a hub its name and that word."""
+        if isinstance(row, int):
+            return [self.places[row], "", "", "", NO_HUB_WORDS, *("" for _ in BEST_COLUMNS[5:])]
+        cells = self.cells(row)
+        return [cells[1], str(rank), cells[0], *cells[2:]]
+
+
+def criterion_words(candidates: Candidates) -> tuple[str, ...]:
+    """What the rows of the criteria are called."""
+    settings = candidates.settings
+    if settings.criteria:
+        return tuple(csv_cell(criterion.name) for criterion in settings.criteria)
+    if settings.preset == "sixty-percent":
+        return ("0.6 F1 at k = 4/3",)
+    return ("median k", "worst-month k")
+
+
+def _number(value: float | None, decimals: int) -> str:
+    return "" if value is None or not math.isfinite(value) else repr(round(value, decimals) + 0.0)
+
+
+def write_csv(stream: TextIO, rows: Iterator[list[str]], columns: Sequence[str]) -> None:
+    """A table, row by row."""
+    import csv
+
+    writer = csv.writer(stream, lineterminator="\n")
+    writer.writerow(columns)
+    writer.writerows(rows)
+
+
+def write_candidates_csv(stream: TextIO, store: Store, candidates: Candidates) -> None:
+    """candidates.csv: every pair, by hub and place."""
+    table = CandidateTable(candidates)
+    write_csv(stream, map(table.cells, rows_in_order(store)), CANDIDATE_COLUMNS)
+
+
+def write_candidates_geojson(stream: TextIO, store: Store, candidates: Candidates) -> None:
+    """candidates.geojson: a line from hub to place for every pair, longitude first (RFC 7946)."""
+    hubs, places = _spots(candidates.hubs), _spots(candidates.places)
+    names = [json.dumps(utf8(name), ensure_ascii=False) for name in candidates.hubs.name]
+    to = [json.dumps(utf8(name), ensure_ascii=False) for name in candidates.places.name]
+    sectors = [json.dumps(utf8(sector.name), ensure_ascii=False) for sector in candidates.sectors]
+    stream.write('{"type": "FeatureCollection", "features": [')
+    mark = "\n"
+    for row in rows_in_order(store):
+        properties = ", ".join(
+            (
+                f'"hub": {names[row.hub]}',
+                f'"place": {to[row.place]}',
+                f'"sector": {"null" if row.sector is None else sectors[row.sector]}',
+                f'"status": "{STATUSES[row.status]}"',
+                f'"state": {_worded(STATE_OF[row.state])}',
+                f'"verdict": {_worded("" if row.verdict is None else PATH_VERDICTS[row.verdict])}',
+                f'"basis": {_worded("" if row.basis is None else BASES[row.basis])}',
+                f'"signal_verdict": {_worded("" if row.signal_verdict is None else SIGNAL_VERDICTS[row.signal_verdict])}',
+                f'"distance_m": {_number(row.distance_m, 1) or "null"}',
+                f'"margin_db": {_number(row.margin_db, 2) or "null"}',
+                f'"worst_fraction": {_number(row.worst_fraction, 3) or "null"}',
+                f'"extra_at_place_m": {_number(row.extra_at_place_m, 2) or "null"}',
+            )
+        )
+        geometry = _geometry(hubs[row.hub], places[row.place])
+        stream.write(f'{mark}{{"type": "Feature", "geometry": {geometry}, "properties": {{{properties}}}}}')
+        mark = ",\n"
+    stream.write("\n]}\n")
+
+
+def _worded(word: str) -> str:
+    return f'"{word}"' if word else "null"
+
+
+def _spots(sites: SiteColumns) -> list[tuple[float, float]]:
+    return [
+        (round(x, 7) + 0.0, round(y, 7) + 0.0)
+        for x, y in zip(sites.longitude_deg.tolist(), sites.latitude_deg.tolist(), strict=True)
+    ]
+
+
+def _geometry(a: tuple[float, float], b: tuple[float, float]) -> str:
+    if abs(a[0] - b[0]) <= 180.0:
+        return f'{{"type": "LineString", "coordinates": [[{a[0]!r}, {a[1]!r}], [{b[0]!r}, {b[1]!r}]]}}'
+    ends = tuple(Place(distance_m=0.0, latitude_deg=y, longitude_deg=x, ray_amsl_m=0.0) for x, y in (a, b))
+    parts = [[list(place.lonlat) for place in part] for part in split_at_antimeridian(ends)]
+    return json.dumps({"type": "MultiLineString", "coordinates": parts})
+
+
+def summary_json(summary: RunSummary, *, title: str, notes: Sequence[str]) -> str:
+    """summary.json: the counts, as `--json` prints them."""
+    return (
+        json.dumps(
+            {
+                "schema": 1,
+                "fellspan": __version__,
+                "title": utf8(title),
+                "pairs": summary.pairs,
+                "by_status": summary.by_status,
+                "by_state": summary.by_state,
+                "by_basis": summary.by_basis,
+                "by_signal_verdict": summary.by_signal,
+                "places": summary.places,
+                "places_by_best_state": summary.by_best_state,
+                "places_clear_and_signal_meets": summary.places_served,
+                "hubs": [_hub(hub) for hub in summary.hubs],
+                "refusals": [{"reason": utf8(reason), "pairs": count} for reason, count in summary.refusals],
+                "notes": [utf8(note) for note in notes],
+            },
+            ensure_ascii=False,
+            indent=1,
+        )
+        + "\n"
+    )
+
+
+def _hub(hub: HubCount) -> dict[str, object]:
+    return {
+        "name": utf8(hub.name),
+        "pairs": hub.pairs,
+        "by_state": hub.by_state,
+        "clear_and_signal_meets": hub.clear_and_meets,
+        "best_for_places": hub.best_for,
+    }

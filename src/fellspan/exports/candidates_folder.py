@@ -1,0 +1,129 @@
+"""The files of a finished run, put into its folder whole or not at all; `summary.json` comes last.
+
+Each is written beside its place first and moved there when all are whole. What they hold is their writers' business.
+"""
+
+import csv
+import os
+from collections.abc import Callable, Mapping, Sequence
+from contextlib import suppress
+from pathlib import Path
+from typing import Final, TextIO
+
+from fellspan.errors import OutputError, StudyError
+from fellspan.exports.candidates import (
+    BEST_COLUMNS,
+    CandidateTable,
+    summary_json,
+    write_candidates_csv,
+    write_candidates_geojson,
+)
+from fellspan.exports.text import utf8
+from fellspan.report.candidates_page import render_candidates_page
+from fellspan.runs.store import STATES, Store
+from fellspan.runs.summary import RunSummary, summarise
+from fellspan.study.chosen import MOST_CHOSEN, chosen_text
+from fellspan.study.screening_study import Screening
+
+SUMMARY: Final = "summary.json"
+CHOSEN: Final = "chosen.toml"
+NAMES: Final = ("candidates.csv", "candidates.geojson", "best.csv", CHOSEN, "index.html", SUMMARY)
+_PART: Final = ".part"
+
+Write = Callable[[TextIO], object]
+"""Writes a file; False where there is nothing to say, so that the file is left out."""
+
+
+def write_run(
+    folder: Path,
+    store: Store,
+    screening: Screening,
+    *,
+    keep: int,
+    notes: Sequence[str],
+    tell: Callable[[str], None],
+) -> RunSummary:
+    """Write the files of a run whose chunks are all there; `keep` hubs are listed for each place, `tell` hears each file.
+
+    Raises
+    ------
+    OutputError
+        A file cannot be written; those that stood there are unchanged.
+    """
+    candidates, study = screening.candidates, screening.study
+    table = CandidateTable(candidates)
+    found: list[RunSummary] = []
+
+    def best(stream: TextIO) -> None:
+        writer = csv.writer(stream, lineterminator="\n")
+        writer.writerow(BEST_COLUMNS)
+        found.append(
+            summarise(store, candidates, keep=keep, take=lambda rank, row: writer.writerow(table.best_cells(rank, row)))
+        )
+
+    def chosen(stream: TextIO) -> bool:
+        text = _chosen(screening, found[0], folder)
+        stream.write(utf8(text))
+        return bool(text)
+
+    writers: dict[str, Write] = {
+        "candidates.csv": lambda stream: write_candidates_csv(stream, store, candidates),
+        "candidates.geojson": lambda stream: write_candidates_geojson(stream, store, candidates),
+        "best.csv": best,
+        CHOSEN: chosen,
+        "index.html": lambda stream: stream.write(
+            utf8(render_candidates_page(found[0], study, candidates, notes=notes))
+        ),
+        SUMMARY: lambda stream: stream.write(summary_json(found[0], title=study.title, notes=notes)),
+    }
+    write_files_of_run(folder, writers, tell=tell)
+    return found[0]
+
+
+def _chosen(screening: Screening, summary: RunSummary, folder: Path) -> str:
+    """The study of the best hubs; empty where there are none, too many, or names that a study cannot say."""
+    best = summary.best
+    places = [
+        place
+        for place, state in enumerate(best.state.tolist())
+        if state <= STATES.index("marginal") and best.hub[place] >= 0
+    ]
+    if not 0 < len(places) <= MOST_CHOSEN:
+        return ""
+    pairs = ((int(best.hub[place]), int(best.sector[place]), place) for place in places)
+    try:
+        return chosen_text(screening.study, screening.candidates, pairs, folder=folder)
+    except StudyError:
+        return ""
+
+
+def write_files_of_run(folder: Path, writers: Mapping[str, Write], *, tell: Callable[[str], None]) -> None:
+    """Write files by their writers, in order; an old file of `NAMES` that has no writer, or nothing to say, is removed."""
+    parts: dict[str, Path] = {}
+    left_out: set[str] = set(NAMES) - set(writers)
+    try:
+        for name, write in writers.items():
+            tell(name)
+            parts[name] = folder / f".{name}{_PART}"
+            with parts[name].open("w", encoding="utf-8", newline="\n") as stream:
+                if write(stream) is False:
+                    left_out.add(name)
+                stream.flush()
+                os.fsync(stream.fileno())
+        (folder / SUMMARY).unlink(missing_ok=True)
+        for name in left_out:
+            (folder / name).unlink(missing_ok=True)
+        for name in sorted(set(parts) - left_out, key=lambda name: name == SUMMARY):
+            parts[name].replace(folder / name)
+    except OSError as error:
+        if isinstance(error, OutputError):
+            raise
+        raise OutputError(
+            f"the files of the run cannot be written to '{folder}': {error.strerror or error}",
+            "check that the disk has room and that you may write there",
+            "what is worked out is kept: give the same command again to write them",
+        ) from error
+    finally:
+        for part in parts.values():
+            with suppress(OSError):
+                part.unlink(missing_ok=True)
