@@ -23,7 +23,8 @@ def by_queue(
     level = np.empty((1, distance.size))
     has_cover = not np.array_equal(ground, surface, equal_nan=True)
     own = NEAR_M, NEAR_M, NEAR_SHARE
-    sweep_kernel.sweep(distance, ground[None], surface[None], has_cover, antenna, roots, flats, *own, level)
+    every = np.arange(distance.size)
+    sweep_kernel.sweep(distance, every, ground[None], surface[None], has_cover, antenna, roots, flats, *own, level)
     return level[0]
 
 
@@ -101,6 +102,6 @@ def test_without_machine_code_it_says_the_same() -> None:
     plain = getattr(sweep_kernel.sweep, "py_func", sweep_kernel.sweep)
     twice = []
     for run in (plain, sweep_kernel.sweep):
-        run(distance, ground[None], surface[None], True, 130.0, roots, flats, 10.0, 10.0, 0.1, level)
+        run(distance, np.arange(199), ground[None], surface[None], True, 130.0, roots, flats, 10.0, 10.0, 0.1, level)
         twice.append(level[0].copy())
     np.testing.assert_allclose(twice[0], twice[1], rtol=0.0, atol=1e-10)

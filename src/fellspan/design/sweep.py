@@ -33,6 +33,10 @@ _CHUNK_RAYS: Final = 48
 _ROWS: Final = 64
 MOST_SAMPLES: Final = 120_000_000
 """Of all rays together; 4 bytes each. More are avoided by coarser cells, with a note."""
+QUICK_SAMPLES: Final = 30_000_000
+"""Up to so many, samples and rays are closer together."""
+_CLOSENESS: Final = ((0.25, 0.5), (0.5, 0.5), (0.5, 1.0), (1.0, 1.0))
+"""Steps along rays and gaps between them, in cells, to choose from."""
 Bounds = tuple[float, float, float, float]
 
 
@@ -77,11 +81,15 @@ class HeightField:
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class PolarField:
-    """The answer on the rays themselves, exact for their samples; `level_m` (rays, n) m above sea level, NaN beyond gaps."""
+    """The answer on the rays themselves: `level_m` (rays, targets) m above sea level, NaN beyond gaps.
+
+    `ground_m`, `surface_m` (rays, samples) are what it was asked over.
+    """
 
     rays: Rays
     level_m: Floats
     ground_m: Floats
+    surface_m: Floats
     antenna_amsl_m: float
 
 
@@ -123,16 +131,16 @@ def height_field(
     antenna = site_level_m(terrain, site)
     at = site.position
     finest = min(stack.cell_m for stack in terrain.layers.stacks)
-    wanted, notes = cell_m, []
+    wanted = cell_m
     while True:
         grid, side_m = grid_around(terrain, at, reach_m=radius_m, cell_m=wanted, bounds=window)
         reach_m, sector = _reach(at, grid, radius_m) if window is not None else (radius_m, None)
-        rays = rays_around(at, reach_m=reach_m, step_m=finest, apart_m=side_m, sector_deg=sector)
-        if rays.held * rays.count <= MOST_SAMPLES:
+        rays = _rays(at, reach_m=reach_m, sample_m=finest, cell_m=side_m, sector_deg=sector)
+        if max(rays.held * rays.count, grid.rows * grid.columns) <= MOST_SAMPLES:
             break
-        finest = max(finest, 0.5 * side_m)
-        wanted = 2.0 * side_m if wanted is None or rays.held * rays.count > MOST_SAMPLES else wanted
-    if (wanted or 0.0) > (cell_m or 0.0):
+        wanted, finest = 2.0 * side_m, max(finest, 0.5 * side_m)
+    notes = []
+    if wanted != cell_m:
         notes.append(f"cells of {side_m:.3g} m: finer ones would not fit into memory over so wide an area")
     around = Surroundings(terrain, rays)
     if around.factor > 1:
@@ -162,6 +170,18 @@ def height_field(
     )
 
 
+def _rays(
+    at: Position, *, reach_m: float, sample_m: float, cell_m: float, sector_deg: tuple[float, float] | None
+) -> Rays:
+    """Samples as close as a quarter of the finest cell, and rays half a cell apart, while that is quick; else coarser."""
+    for along, beside in _CLOSENESS:
+        step_m, apart_m = along * sample_m, beside * cell_m
+        rays = rays_around(at, reach_m=reach_m, step_m=step_m, apart_m=apart_m, sector_deg=sector_deg)
+        if rays.held * rays.count <= QUICK_SAMPLES:
+            break
+    return rays
+
+
 def polar_field(
     terrain: "Terrain",
     *,
@@ -178,11 +198,13 @@ def polar_field(
     fan = rays_around(site.position, reach_m=radius_m, step_m=step_m, apart_m=2.0 * math.pi * radius_m / rays)
     around = Surroundings(terrain, fan)
     samples = around.samples(0, fan.held)
-    level = np.empty(samples.ground_m.shape)
+    level = np.empty((fan.held, fan.count))
     _sweep(
         around, samples.ground_m, samples.surface_m, samples.has_cover, antenna, _rules(criteria, frequency_hz), level
     )
-    return PolarField(rays=fan, level_m=level, ground_m=samples.ground_m, antenna_amsl_m=antenna)
+    return PolarField(
+        rays=fan, level_m=level, ground_m=samples.ground_m, surface_m=samples.surface_m, antenna_amsl_m=antenna
+    )
 
 
 def site_level_m(terrain: "Terrain", site: Site) -> float:
@@ -239,12 +261,14 @@ def _sweep(
     from fellspan.design.sweep_kernel import sweep
 
     own_m = 0.0 if around.stands_on_outline else NEAR_M
-    sweep(around.rays.distance_m, ground, surface, has_cover, antenna, *rules, own_m, NEAR_M, NEAR_SHARE, level)
+    rays = around.rays
+    sweep(rays.distance_m, rays.target, ground, surface, has_cover, antenna, *rules, own_m, NEAR_M, NEAR_SHARE, level)
 
 
 def _swept(around: Surroundings, antenna: float, asked: Sequence[tuple[Floats, Floats]]) -> list[Plane]:
     rays = around.rays
-    polars = [np.empty((rays.held, rays.count), dtype=np.float32) for _ in asked]
+    again = 1 if rays.is_whole else 0
+    polars = [np.empty((rays.held + again, rays.count), dtype=np.float32) for _ in asked]
 
     def work(first: int) -> None:
         last = min(first + _CHUNK_RAYS, rays.held)
@@ -253,15 +277,18 @@ def _swept(around: Surroundings, antenna: float, asked: Sequence[tuple[Floats, F
             _sweep(around, samples.ground_m, samples.surface_m, samples.has_cover, antenna, rules, polar[first:last])
 
     in_threads(work, range(0, rays.held, _CHUNK_RAYS))
+    for polar in polars if again else ():
+        polar[-1] = polar[0]
     return polars
 
 
 def _to_cells(
     polar: Plane, rays: Rays, grid: CellGrid, at: Position, cell_m: float, ground: Plane, distance: Plane
 ) -> Plane:
-    from fellspan.terrain.rays_kernel import cells_from_rays
+    from fellspan.terrain.rays_kernel import arctangent, cells_from_rays
 
     easts, norths, columns = grid.around(at, cell_m=cell_m)
+    waves = arctangent(rays.whole)
     needed = np.empty(ground.shape, dtype=np.float32)
 
     def work(first: int) -> None:
@@ -275,6 +302,7 @@ def _to_cells(
             easts[part],
             norths[part],
             columns,
+            waves,
             ground[part],
             needed[part],
             distance[part],

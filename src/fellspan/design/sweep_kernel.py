@@ -87,6 +87,7 @@ def _beside_a(
 @compiled
 def sweep(  # noqa: PLR0912  # one loop: a call for each part of it would cost more than the part
     distance: Floats,
+    target: NDArray[np.int64],
     ground: Floats,
     surface: Floats,
     has_cover: bool,
@@ -103,7 +104,9 @@ def sweep(  # noqa: PLR0912  # one loop: a call for each part of it would cost m
     Parameters
     ----------
     distance
-        (n,), m from A, rising, above 0.
+        (n,), of the samples, m from A, rising, above 0.
+    target
+        (n,), which target a sample is, rising, or -1.
     ground, surface
         (m, n), m above sea level, NaN in gaps; `surface` is not read where `has_cover` is False.
     antenna
@@ -113,7 +116,7 @@ def sweep(  # noqa: PLR0912  # one loop: a call for each part of it would cost m
     site_near_m, near_m, near_share
         Cover so near to A, or to the target, and within this share of the path, is what that end stands on.
     level
-        (m, n), written: NaN beyond a gap; where nothing stands before the target, its own ground.
+        (m, targets), written: NaN beyond a gap; where nothing stands before the target, its own ground.
     """
     count = distance.size
     near_end = 1.0 / distance
@@ -124,38 +127,36 @@ def sweep(  # noqa: PLR0912  # one loop: a call for each part of it would cost m
     for ray in range(level.shape[0]):
         for rule in range(roots.size):
             c, flat = roots[rule], flats[rule]
-            head = tail = head_b = tail_b = waiting = 0
+            head = tail = head_b = tail_b = waiting = due = 0
             for j in range(count):
                 end, v = distance[j], near_end[j]
-                best = -math.inf
-                if has_cover and end < short:
-                    best = _beside_a(
-                        distance, ground[ray], surface[ray], j, antenna, c, flat, site_near_m, near_m, near_share
-                    )
-                else:
+                height = ground[ray, j]
+                if target[j] >= 0:
+                    due = target[j] + 1
                     while head + 1 < tail and takes[head + 1] >= v:
                         head += 1
-                    if tail > head:
-                        best = slope[head] + c * math.sqrt(near[head] - v)
-                if has_cover and end >= short:
-                    while end - distance[waiting] > near_m + 1e-6:
-                        x = distance[waiting]
-                        if x > site_near_m + 1e-6:
-                            asked = (surface[ray, waiting] - antenna) * near_end[waiting] - x * flat
-                            tail_b = _push(slope_b, near_b, takes_b, head_b, tail_b, asked, near_end[waiting], c, last)
-                        waiting += 1
-                    while head_b + 1 < tail_b and takes_b[head_b + 1] >= v:
-                        head_b += 1
-                    if tail_b > head_b:
-                        best = max(best, slope_b[head_b] + c * math.sqrt(near_b[head_b] - v))
-                height = ground[ray, j]
-                asked_level = antenna + end * (best + end * flat)
-                if best == -math.inf:
-                    asked_level = height
-                if rule == 0 or asked_level > level[ray, j] or math.isnan(asked_level):
-                    level[ray, j] = asked_level
+                    best = slope[head] + c * math.sqrt(near[head] - v) if tail > head else -math.inf
+                    if has_cover and end < short:
+                        own = site_near_m, near_m, near_share
+                        best = _beside_a(distance, ground[ray], surface[ray], j, antenna, c, flat, *own)
+                    elif has_cover:
+                        while end - distance[waiting] > near_m + 1e-6:
+                            x = distance[waiting]
+                            if x > site_near_m + 1e-6:
+                                asked = (surface[ray, waiting] - antenna) * near_end[waiting] - x * flat
+                                tail_b = _push(
+                                    slope_b, near_b, takes_b, head_b, tail_b, asked, near_end[waiting], c, last
+                                )
+                            waiting += 1
+                        while head_b + 1 < tail_b and takes_b[head_b + 1] >= v:
+                            head_b += 1
+                        if tail_b > head_b:
+                            best = max(best, slope_b[head_b] + c * math.sqrt(near_b[head_b] - v))
+                    asked_level = height if best == -math.inf else antenna + end * (best + end * flat)
+                    if rule == 0 or asked_level > level[ray, due - 1]:
+                        level[ray, due - 1] = asked_level
                 if math.isnan(height):
-                    level[ray, j + 1 :] = np.nan
+                    level[ray, due:] = np.nan
                     break
                 asked = (height - antenna) * v - end * flat
                 tail = _push(slope, near, takes, head, tail, asked, v, c, last)

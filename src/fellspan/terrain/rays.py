@@ -28,13 +28,16 @@ AGREEMENT_CELLS: Final = 0.01
 _LADDER: Final = ((64, 5), (128, 7), (256, 9), (512, 11), (1024, 13))
 _GRID_LADDER: Final = (5, 8, 12, 18)
 _CHECKS: Final = 400
+_CLOSER: Final = ((8, 8), (32, 4), (128, 2))
+"""Up to so many steps from the place a step is parted into so many."""
 
 
 @dataclass(frozen=True, eq=False)
 class Rays:
     """`held` rays from number `first` on, of `whole` that leave `at` evenly around the compass; the first of all points north.
 
-    Samples stand at `step_m`, 2 `step_m` ... `count` times.
+    Targets stand at `step_m`, 2 `step_m` ... `count` times. Samples stand there too, and closer together near the place, where
+    an error of height is a greater error of slope.
     """
 
     at: Position
@@ -46,13 +49,34 @@ class Rays:
 
     @property
     def reach_m(self) -> float:
-        """Distance of the last sample, m."""
+        """Distance of the last target, m."""
         return self.step_m * self.count
+
+    @property
+    def is_whole(self) -> bool:
+        """Whether all rays are held."""
+        return self.held == self.whole
 
     @cached_property
     def distance_m(self) -> Floats:
-        """Of the samples, (count,)."""
-        return np.asarray(self.step_m * np.arange(1.0, self.count + 1.0))
+        """Of the samples, (n,), rising."""
+        stretches, begun = [], 0
+        for end, parts in _CLOSER:
+            until = min(end, self.count)
+            stretches.append(begun + np.arange(1, (until - begun) * parts + 1) / parts)
+            begun = until
+        return np.asarray(self.step_m * np.concatenate((*stretches, np.arange(begun + 1.0, self.count + 1.0))))
+
+    @cached_property
+    def target(self) -> NDArray[np.int64]:
+        """Which target each sample is, (n,); -1 for those in between."""
+        number = np.rint(self.distance_m / self.step_m).astype(np.int64)
+        return np.where(np.abs(self.distance_m - number * self.step_m) < 1e-6 * self.step_m, number - 1, -1)
+
+    @cached_property
+    def share(self) -> Floats:
+        """Of the samples, as shares of the reach, (n,)."""
+        return np.asarray(self.distance_m / self.reach_m)
 
     @cached_property
     def bearing_deg(self) -> Floats:
@@ -204,7 +228,7 @@ def _as_powers(series: Floats) -> Floats:
 def rays_around(
     at: Position, *, reach_m: float, step_m: float, apart_m: float, sector_deg: tuple[float, float] | None = None
 ) -> Rays:
-    """Rays with samples every `step_m`, at the rim at most `apart_m` from each other; `sector_deg` from, to clockwise."""
+    """Rays with targets every `step_m`, at the rim at most `apart_m` from each other; `sector_deg` from, to clockwise."""
     count = max(2, math.ceil(reach_m / step_m - 1e-9))
     whole = max(16, math.ceil(2.0 * math.pi * reach_m / apart_m))
     first, held = 0, whole

@@ -72,7 +72,7 @@ class Surroundings:
 
     def samples(self, first: int, last: int) -> RaySamples:
         """On rays `first` to `last` (not included) of those held."""
-        layers, count = self._layers, self.rays.count
+        layers = self._layers
         ground = _gathered(self._ground, self.rays, first, last)
         if layers.gaps == "sea":
             np.copyto(ground, layers.sea_level_m, where=np.isnan(ground))
@@ -102,8 +102,7 @@ class Surroundings:
             for ray, near, far, top in zip(
                 tops.ray[at] - first, tops.near[at], tops.far[at], tops.top_m[at], strict=True
             ):
-                low, high = max(int(near), 0), min(int(far), count - 1)
-                part = surface[ray, low : high + 1]
+                part = surface[ray, near : far + 1]
                 np.maximum(part, np.linspace(top[0], top[2], part.size) if part.size > 1 else top.max(), out=part)
         return RaySamples(ground_m=ground, surface_m=surface, has_cover=True)
 
@@ -111,6 +110,12 @@ class Surroundings:
         """Ground at the centres of cells, (rows, columns), m above sea level, NaN where there is none or out of reach."""
         from fellspan.terrain.rays_kernel import gather_cells
 
+        if len(self._ground) == 1 and self._layers.gaps != "sea":
+            plate = self._ground[0][0]
+            if (
+                view := _view(plate, ~plate.file.transform * _shifted(grid.transform, plate.file, grid), grid)
+            ) is not None:
+                return view
         out = np.full((grid.rows, grid.columns), np.nan, dtype=np.float32)
         abroad = []
         for plate, *_ in self._ground:
@@ -120,7 +125,7 @@ class Surroundings:
                 continue
             to_file = ~file.transform * _shifted(grid.transform, file, grid)
             scaled = Affine.scale(1.0 / plate.factor) * to_file
-            if _copied(plate, scaled, out):
+            if _copied(plate, scaled, grid, out):
                 continue
             numbers = np.array(scaled[:6], dtype=np.float64)
             gather_cells(plate.heights, numbers, plate.width, plate.height, float(plate.left), float(plate.top), out)
@@ -161,12 +166,10 @@ class Surroundings:
         known = np.isfinite(top).all(axis=1)
         order = np.argsort(ray[known], kind="stable")
         ray, distance, top = ray[known][order], distance[known][order], top[known][order]
-        # the samples inside, and for one too narrow for any the nearest
-        near = np.ceil(distance[:, 0] / rays.step_m - 1.0)
-        far = np.floor(distance[:, 2] / rays.step_m - 1.0)
-        middle = np.clip(np.rint(distance[:, 1] / rays.step_m - 1.0), 0, rays.count - 1)
-        narrow = near > far
-        return _Tops(ray=ray, near=np.where(narrow, middle, near), far=np.where(narrow, middle, far), top_m=top)
+        # the samples inside, and for one too narrow for any the next one
+        near = np.searchsorted(rays.distance_m, distance[:, 0], side="left")
+        far = np.searchsorted(rays.distance_m, distance[:, 2], side="right") - 1
+        return _Tops(ray=ray, near=near, far=np.maximum(near, far), top_m=top)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -174,8 +177,8 @@ class _Tops:
     """Obstacles on rays, (r,), sorted by ray: samples from `near` to `far`, tops (r, 3)."""
 
     ray: NDArray[np.intp]
-    near: Floats
-    far: Floats
+    near: NDArray[np.intp]
+    far: NDArray[np.intp]
     top_m: Floats
 
 
@@ -221,22 +224,41 @@ def _along(polynomials: Floats, share: float) -> Floats:
 def _gathered(plates: list[_Placed], rays: Rays, first: int, last: int) -> Floats:
     from fellspan.terrain.rays_kernel import gather
 
-    out = np.full((last - first, rays.count), np.nan)
-    share = np.arange(1.0, rays.count + 1.0) / rays.count
+    out = np.full((last - first, rays.share.size), np.nan)
+    is_new = True
     for plate, columns, rows in plates:
-        left, top = float(plate.left), float(plate.top)
-        gather(plate.heights, share, columns[first:last], rows[first:last], plate.width, plate.height, left, top, out)
+        size = plate.width, plate.height, float(plate.left), float(plate.top)
+        gather(plate.heights, rays.share, columns[first:last], rows[first:last], *size, out, is_new)
+        is_new = False
     return out
 
 
-def _copied(plate: Plate, to_plate: Affine, out: Plane) -> bool:
+def _view(plate: Plate, to_file: Affine, grid: CellGrid) -> Plane | None:
+    """The plate's own cells, where they are the grid's and hold all of it."""
+    if plate.file.crs_text != grid.crs_text or plate.factor != 1 or (at := _offset(to_file, grid)) is None:
+        return None
+    column, row = at[0] - plate.left, at[1] - plate.top
+    high, wide = plate.heights.shape
+    if column < 0 or row < 0 or column + grid.columns > wide or row + grid.rows > high:
+        return None
+    return plate.heights[row : row + grid.rows, column : column + grid.columns].view()
+
+
+def _offset(to_cells: Affine, grid: CellGrid) -> tuple[int, int] | None:
+    """Column and row of the grid's first cell, where its cells are those that `to_cells` leads to."""
+    t = to_cells
+    if max(abs(t.a - 1.0), abs(t.e - 1.0), abs(t.b), abs(t.d)) * max(grid.rows, grid.columns) > 1e-6:
+        return None
+    column, row = round(t.c), round(t.f)
+    return (column, row) if max(abs(t.c - column), abs(t.f - row)) <= 1e-6 else None
+
+
+def _copied(plate: Plate, to_plate: Affine, grid: CellGrid, out: Plane) -> bool:
     """Copy cells over where the grid's are the plate's own; False where they are not."""
-    t = to_plate
-    if max(abs(t.a - 1.0), abs(t.e - 1.0), abs(t.b), abs(t.d)) * max(out.shape) > 1e-6:
+    at = _offset(to_plate, grid)
+    if at is None:
         return False
-    column, row = round(t.c) - plate.left, round(t.f) - plate.top
-    if max(abs(t.c - round(t.c)), abs(t.f - round(t.f))) > 1e-6:
-        return False
+    column, row = at[0] - plate.left, at[1] - plate.top
     high, wide = plate.heights.shape
     top, bottom = max(0, -row), min(out.shape[0], high - row)
     left, right = max(0, -column), min(out.shape[1], wide - column)
