@@ -7,6 +7,9 @@ import math
 from dataclasses import dataclass
 from functools import lru_cache
 
+import numpy as np
+from numpy.typing import NDArray
+
 from fellspan.antennas.mounting import pointing_loss
 from fellspan.antennas.pattern import Pattern
 from fellspan.climate.figures import ClimateFigures
@@ -255,5 +258,20 @@ def tilt_deg(*, distance_m: float, from_amsl_m: float, to_amsl_m: float, k: floa
 
     The straight line over an Earth of radius k * 6371 km, which falls away by half the path's angle at its middle.
     """
+    return float(
+        tilts_deg(
+            distance_m=np.asarray(distance_m), from_amsl_m=np.asarray(from_amsl_m), to_amsl_m=np.asarray(to_amsl_m), k=k
+        )
+    )
+
+
+def tilts_deg(
+    *,
+    distance_m: NDArray[np.float64],
+    from_amsl_m: NDArray[np.float64],
+    to_amsl_m: NDArray[np.float64],
+    k: float,
+) -> NDArray[np.float64]:
+    """As `tilt_deg`, for arrays of one shape."""
     curve = 0.5 * distance_m / (k * EARTH_RADIUS_M)
-    return math.degrees(math.atan((to_amsl_m - from_amsl_m) / distance_m - curve))
+    return np.asarray(np.degrees(np.arctan((to_amsl_m - from_amsl_m) / distance_m - curve)))

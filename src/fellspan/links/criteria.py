@@ -102,6 +102,24 @@ def _at(values: NDArray[np.float64], index: NDArray[np.intp]) -> NDArray[np.floa
     return np.asarray(np.take_along_axis(values, index[..., np.newaxis], axis=-1)[..., 0])
 
 
+def rule_numbers(
+    preset: CriteriaPreset, *, distance_m: ArrayLike, median_k: float = 4.0 / 3.0, extended: ArrayLike = True
+) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+    """k and fraction of the criteria of a preset for many paths, each of shape (c, ...).
+
+    Parameters as for `criteria_for`, of shape (...). Where a preset asks less of some paths, their rows repeat the first.
+    """
+    distance, long_obstruction = np.broadcast_arrays(np.asarray(distance_m, dtype=np.float64), np.asarray(extended))
+    if preset == "sixty-percent":
+        return np.full((1, *distance.shape), 4.0 / 3.0), np.full((1, *distance.shape), 0.6)
+    first_k, first = np.full(distance.shape, median_k), np.ones(distance.shape)
+    worst_k = np.asarray(k_exceeded_99_9(distance), dtype=np.float64)
+    if preset == "p530-tropical":
+        short = distance <= TROPICAL_FROM_M
+        return np.stack((first_k, np.where(short, median_k, worst_k))), np.stack((first, np.where(short, 1.0, 0.6)))
+    return np.stack((first_k, worst_k)), np.stack((first, np.where(long_obstruction, 0.3, 0.0)))
+
+
 def criteria_for(
     preset: CriteriaPreset, *, distance_m: float, median_k: float = 4.0 / 3.0, extended: bool = True
 ) -> tuple[Criterion, ...]:
@@ -118,10 +136,16 @@ def criteria_for(
     extended
         Whether the obstruction is extended along part of the path (`is_extended`); read by 'p530-temperate' only.
     """
+    numbers = rule_numbers(preset, distance_m=distance_m, median_k=median_k, extended=extended)
+    k, fractions = (rows.tolist() for rows in numbers)
     if preset == "sixty-percent":
-        return (Criterion(name="0.6 F1 at k = 4/3", k=4.0 / 3.0, fraction=0.6, source=COMMON_PRACTICE),)
+        return (Criterion(name="0.6 F1 at k = 4/3", k=k[0], fraction=fractions[0], source=COMMON_PRACTICE),)
     first = Criterion(
-        name="1.0 F1 at the median k", k=median_k, fraction=1.0, source=f"{P530}, step 1", note=f"k = {median_k:.3g}"
+        name="1.0 F1 at the median k",
+        k=k[0],
+        fraction=fractions[0],
+        source=f"{P530}, step 1",
+        note=f"k = {median_k:.3g}",
     )
     if preset == "p530-tropical" and distance_m <= TROPICAL_FROM_M:
         note = (
@@ -129,21 +153,18 @@ def criteria_for(
             "is checked"
         )
         return (Criterion(name=first.name, k=first.k, fraction=first.fraction, source=first.source, note=note),)
-    k_worst = worst_month_k(distance_m)
+    k_worst, fraction = k[1], fractions[1]
     about_k = f"k = {k_worst:.3g}, exceeded 99.9 % of the worst month for {distance_m / 1000.0:.3g} km (equation 4)"
     if distance_m < K_FORMULA_LOW_M:
         about_k += (
             "; the published curve begins at about 18 km: on shorter paths its value there is held (our own rule)"
         )
     if preset == "p530-tropical":
-        fraction, about_rule = 0.6, "tropical climate, path over 30 km"
+        about_rule = "tropical climate, path over 30 km"
     elif extended:
-        fraction, about_rule = 0.3, "obstruction taken as extended along part of the path"
+        about_rule = "obstruction taken as extended along part of the path"
     else:
-        fraction, about_rule = (
-            0.0,
-            "single isolated obstruction: one stretch shorter than 10 % of the path (common practice)",
-        )
+        about_rule = "single isolated obstruction: one stretch shorter than 10 % of the path (common practice)"
     return (
         first,
         Criterion(
