@@ -20,7 +20,11 @@ class HeightsSection:
     caption: str
     rows: tuple[tuple[str, str, str, str, str, str], ...]
     notes: tuple[str, ...]
-    sure: tuple[str, ...]
+    governs: str
+    """What governs every row, told once; '' where rows differ."""
+    sure: str
+    steps: tuple[tuple[str, str, str, str], ...]
+    """Confidence, and what to add for it at A alone, at B alone, at both."""
     assumptions: tuple[str, ...]
     cautions: tuple[str, ...]
 
@@ -32,17 +36,20 @@ def heights_section(link: LinkPlan) -> HeightsSection | None:
         return None
     ends = link.result.ends
     notes = dict.fromkeys(option.note for option in heights.options if option.note)
+    told = tuple(_row(option) for option in heights.options)
     return HeightsSection(
         decision=heights.decision,
         chart=Markup(draw_heights(heights, uid="heights", names=(ends.a.site, ends.b.site))),
         caption=heights_words(heights),
-        rows=tuple(_row(option) for option in heights.options),
+        rows=told,
         notes=(
             _legend(heights),
             *(f"{note[0].upper()}{note[1:]}." for note in notes),
             heights.checked,
         ),
-        sure=_sure(confidence),
+        governs=told[0][4] if len({row[4] for row in told}) == 1 else "",
+        sure=f"As planned every criterion holds with {wording.probability(confidence.all_hold)} probability.",
+        steps=_steps(confidence),
         assumptions=confidence.assumptions,
         cautions=heights.cautions,
     )
@@ -76,12 +83,10 @@ def _pair(pair: Pair | None, digits: int) -> str:
     return "–" if pair is None else f"{wording.number(pair.a_m, digits)} / {wording.metres(pair.b_m, digits)}"
 
 
-def _sure(confidence: ConfidenceResult) -> tuple[str, ...]:
-    lines = [f"As planned every criterion holds with {wording.probability(confidence.all_hold)}."]
-    for stated in confidence.heights:
-        ends = (("A alone", stated.a_m), ("B alone", stated.b_m), ("both alike", stated.both_m))
-        words = ", ".join(
-            f"{name} {'–' if value is None else wording.metres(value, sign=True)}" for name, value in ends
-        )
-        lines.append(f"For {wording.percent(stated.confidence)}: {words}.")
-    return tuple(lines)
+def _steps(confidence: ConfidenceResult) -> tuple[tuple[str, str, str, str], ...]:
+    def add(value_m: float | None) -> str:
+        return wording.metres(value_m, sign=True)
+
+    return tuple(
+        (wording.percent(one.confidence), add(one.a_m), add(one.b_m), add(one.both_m)) for one in confidence.heights
+    )
