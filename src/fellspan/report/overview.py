@@ -117,7 +117,10 @@ def _row(index: int, link: LinkPlan, left_db: float | None) -> Row:
         spare=Cell(text=wording.decisive_words(governing), sort=f"{spare:.2f}"),
         confidence=Cell(text=wording.probability(result.confidence), sort=f"{result.confidence:.4f}"),
         levels=Cell(text="–" if received.at_a is None and received.at_b is None else at),
-        margin=Cell(text=wording.number(least), sort="" if least is None else f"{least:.2f}"),
+        margin=Cell(
+            text=wording.number(least),
+            sort="" if least is None else f"{min(least, least if left_db is None else left_db):.2f}",
+        ),
         left=wording.number(left_db) if left_db is not None and least is not None and least - left_db >= 0.05 else "",
         availability=_availability(result),
         build=_build(link.heights),

@@ -16,8 +16,12 @@ function addLinks(map, links, choose) {
     L.circleMarker(link.g, {className: "map-governing of-link-" + link.n, radius: 4, weight: 2, interactive: false}).addTo(map);
   });
   map.fellspanHits = {};
-  if (choose) links.forEach(function (link) {
-    map.fellspanHits[link.n] = L.polyline(link.p, {className: "map-hit of-link-" + link.n, smoothFactor: 0.6}).addTo(map);
+  if (!choose) return;
+  // What takes the pointer lies above all that is drawn, whatever is brought forward there.
+  map.createPane("hits").style.zIndex = 450;
+  links.forEach(function (link) {
+    var more = {className: "map-hit of-link-" + link.n, smoothFactor: 0.6, pane: "hits"};
+    map.fellspanHits[link.n] = L.polyline(link.p, more).addTo(map);
   });
 }
 function addSites(map, sites) {

@@ -54,7 +54,6 @@ var fellspanOverview = (function () {
     document.querySelectorAll(".map-path.of-link-" + index + ", .map-cut.of-link-" + index + ", .map-governing.of-link-" + index).forEach(function (part) {
       part.parentNode.appendChild(part);
     });
-    document.querySelectorAll(".map-hit").forEach(function (part) { part.parentNode.appendChild(part); });
     if (!narrow) entries[index].scrollIntoView({block: "nearest"});
     if (by !== "map") fellspanMap.fit(hits[index].getBounds());
     fellspanMap.declutter();
