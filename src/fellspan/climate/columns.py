@@ -54,6 +54,11 @@ class ClimateColumns:
         """Some of the places."""
         return ClimateColumns(**{name: getattr(self, name)[rows] for name in self.__slots__})
 
+    def where(self, chosen: NDArray[np.bool_], other: "ClimateColumns") -> "ClimateColumns":
+        """These figures at the places chosen, those of `other` elsewhere."""
+        both = {name: np.where(chosen, getattr(self, name), getattr(other, name)) for name in self.__slots__}
+        return ClimateColumns(**both)
+
     @property
     def edition_19(self) -> NDArray[np.bool_]:
         """Where multipath goes by edition P.530-19; see `ClimateFigures.multipath_edition`."""

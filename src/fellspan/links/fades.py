@@ -52,7 +52,8 @@ def worst_month_n_per_km(climate: ClimateColumns, *, length_m: Floats) -> Floats
     """Gradient of 99.9 % of the worst month, N/km: that of `k_exceeded_99_9`, never short of the year's, nor of the median."""
     worst = np.asarray(gradient_from_k_n_per_km(k_exceeded_99_9(length_m)))
     year = climate.gradient_tail_n_per_km
-    return np.maximum(worst, np.where(np.isnan(year), climate.gradient_median_n_per_km + 1.0, year))
+    least = np.where(np.isnan(year), climate.gradient_median_n_per_km + 1.0, year)
+    return np.asarray(np.maximum(worst, least))
 
 
 def nodes_inverse_k(median_n_per_km: Floats, *, year_n_per_km: Floats, worst_n_per_km: Floats) -> Floats:

@@ -226,7 +226,7 @@ def outage_workings(results: tuple[ModulationResult, ...], *, fading: Fading, re
         if receiver.second is not None:
             extra.append(_given("spacing of two antennas", receiver.second.spacing_m, "m"))
         if receiver.cross is not None:
-            extra.append(_given("cross-polar discrimination", receiver.cross.discrimination_db, "dB"))
+            extra.append(_given("cross-polar discrimination", float(receiver.cross.discrimination_db), "dB"))
         breaches = "" if not year.rain else "; ".join(out_of_range("p530-19-rain-percent", percent=year.rain))
         name = result.name
         found += [

@@ -4,11 +4,11 @@ Everything broadcasts: values of shape () with margins (m,), or all of shape (p,
 tables, budgets, thresholds or verdicts.
 """
 
-from dataclasses import dataclass
-from typing import Final
+from dataclasses import dataclass, replace
+from typing import Any, Final
 
 import numpy as np
-from numpy.typing import ArrayLike, NDArray
+from numpy.typing import NDArray
 
 from fellspan.links.site import Diversity
 from fellspan.propagation import (
@@ -41,7 +41,7 @@ LEAST_RAIN_MARGIN_DB: Final = 0.1
 class Cross:
     """Cross-polar interference of a direction: discrimination of the antennas and what a canceller improves, dB."""
 
-    discrimination_db: ArrayLike
+    discrimination_db: Floats | float
     canceller_db: float
 
 
@@ -58,7 +58,7 @@ class Receiver:
     required_ratio_db: Floats
     cross: Cross | None
     second: Diversity | None
-    level_difference_db: ArrayLike
+    level_difference_db: Floats | float
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -88,7 +88,7 @@ class Causes:
     frequency_hz: float
     rain_reading: RainReading
     rain_001_db: Floats
-    wet_radomes_db: ArrayLike
+    wet_radomes_db: Floats | float
     occurrence_percent: Floats
     geographic: NDArray[np.bool_]
     length_m: Floats
@@ -100,6 +100,15 @@ class Causes:
     inverse_k: Floats
     by_inverse_k_db: Floats
     loss_in_level_db: Floats
+
+    def part(self, rows: NDArray[np.int64]) -> "Causes":
+        """Some of many paths."""
+        columns: dict[str, Any] = {
+            name: value[rows]
+            for name in self.__slots__
+            if isinstance(value := getattr(self, name), np.ndarray) and value.ndim
+        }
+        return replace(self, **columns)
 
 
 def outages_of(causes: Causes, margin_db: Floats, receiver: Receiver) -> tuple[Outage, Outage]:

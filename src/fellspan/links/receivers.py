@@ -7,11 +7,14 @@ import math
 from typing import Final
 
 import numpy as np
+from numpy.typing import NDArray
 
-from fellspan.links.fading import Cross, Receiver
+from fellspan.links.outages import Cross, Receiver
 from fellspan.links.radio import Modulation, Radio
 from fellspan.links.site import Antenna, Channel, NoiseFloor, Site
 from fellspan.propagation import sensitivity_dbm, thermal_noise_dbm, threshold_degradation_db
+
+Floats = NDArray[np.float64]
 
 ASSUMED_NOISE_FIGURE_DB: Final = 6.0
 """Of a receiver whose noise figure is not stated (common practice, no source)."""
@@ -109,11 +112,11 @@ def receiver_of(
     rows: tuple[Modulation, ...],
     antenna: Antenna,
     *,
-    discrimination_db: float,
-    gain_dbi: float | None,
+    discrimination_db: Floats | float,
+    gain_dbi: Floats | float | None,
     line_loss_db: float,
 ) -> Receiver:
-    """What the rows ask of fading, one entry each."""
+    """What the rows ask of fading, one entry each; for many links of one row, discrimination and gain are arrays."""
     signatures = [row.signature for row in rows]
     cross, ratios = None, np.full(len(rows), np.nan)
     if radio.co_channel is not None:
@@ -122,7 +125,8 @@ def receiver_of(
         cross = Cross(discrimination_db=discrimination_db if found is None else found, canceller_db=stated.canceller_db)
         needs = [row.snr_db if stated.required_ratio_db is None else stated.required_ratio_db for row in rows]
         ratios = np.array([math.nan if need is None else need for need in needs], dtype=np.float64)
-    second, weaker = antenna.diversity, 0.0
+    second = antenna.diversity
+    weaker: Floats | float = 0.0
     if second is not None and gain_dbi is not None:
         other_gain = gain_dbi if second.gain_dbi is None else second.gain_dbi
         other_line = line_loss_db if second.feeder_loss_db is None else second.feeder_loss_db

@@ -8,6 +8,7 @@ from collections.abc import Mapping
 from dataclasses import dataclass, replace
 
 import numpy as np
+from numpy.typing import NDArray
 
 from fellspan.antennas.mounting import FIELD_ANGLE_DEG
 from fellspan.climate.assembling import figures_for
@@ -20,6 +21,7 @@ from fellspan.links.direction import Direction, End, direction_of
 from fellspan.links.fading import Fading, Geometry, Rain, Spread, nodes_of, occurrence, rain_001, spread_of
 from fellspan.links.own_building import Standing
 from fellspan.links.path_loss import PathLoss, gases_db, path_loss
+from fellspan.links.radio import Radio
 from fellspan.links.ranges import multipath_breaches, multipath_inputs, rain_breaches
 from fellspan.links.receivers import row_power_dbm, rows_of
 from fellspan.links.result import AntennasResult
@@ -28,6 +30,7 @@ from fellspan.links.site import Link
 from fellspan.links.ways_past_trees import mean_over_path_m
 from fellspan.propagation import RainEdition, RainReading, free_space_loss_db
 from fellspan.terrain.profile import PathProfile
+from fellspan.vocabulary import MountedPolarization
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -182,6 +185,11 @@ def both_directions(
     return fadings, (there, back)
 
 
+def air_level_m(a_amsl_m: NDArray[np.float64], b_amsl_m: NDArray[np.float64]) -> NDArray[np.float64]:
+    """Height of the air of paths, m above sea level: the mean of the antennas, within what a climate can be asked for."""
+    return np.clip(0.5 * (a_amsl_m + b_amsl_m), -500.0, 9000.0)
+
+
 def _climate(
     profile: PathProfile, given: GivenClimate, *, a_amsl_m: float, b_amsl_m: float, maps: bool
 ) -> ClimateFigures:
@@ -191,7 +199,7 @@ def _climate(
         latitude_deg=float(profile.latitude_deg[middle]), longitude_deg=float(profile.longitude_deg[middle])
     )
     if given.altitude_m is None:
-        given = replace(given, altitude_m=float(np.clip(0.5 * (a_amsl_m + b_amsl_m), -500.0, 9000.0)))
+        given = replace(given, altitude_m=float(air_level_m(np.asarray(a_amsl_m), np.asarray(b_amsl_m))))
     return figures_for(place, given=given, maps=maps)
 
 
@@ -205,15 +213,11 @@ def _geometry(profile: PathProfile, middle: Position, *, a_amsl_m: float, b_amsl
     )
 
 
-def _rain_tilt_deg(link: Link, antennas: AntennasResult) -> float:
+def rain_tilt_deg(radio: Radio, *, a: MountedPolarization, b: MountedPolarization) -> float:
     """Angle of the field from horizontal that rain is worked out for, degrees: of several the one that rain hits hardest."""
-    if link.radio.dual_polarization:
+    if radio.dual_polarization:
         return 0.0
-    angles = [
-        0.0 if mounted == "dual" else abs(FIELD_ANGLE_DEG[mounted])
-        for mounted in (antennas.a.polarization, antennas.b.polarization)
-    ]
-    return min(angles)
+    return min(0.0 if mounted == "dual" else abs(FIELD_ANGLE_DEG[mounted]) for mounted in (a, b))
 
 
 def fading_over(
@@ -221,7 +225,7 @@ def fading_over(
 ) -> Fading:
     """Fading of the direction that is sent on `frequency_hz`."""
     figures, geometry, loss = path.figures, path.geometry, path.losses[frequency_hz]
-    frequency, tilt = frequency_hz, _rain_tilt_deg(link, antennas)
+    frequency, tilt = frequency_hz, rain_tilt_deg(link.radio, a=antennas.a.polarization, b=antennas.b.polarization)
     rate = figures.rain_rate_001_mm_h
     at_001 = rain_001(figures, geometry=geometry, frequency_hz=frequency, tilt_deg=tilt, edition=weather.rain_edition)
     share = occurrence(figures, geometry=geometry, frequency_hz=frequency)

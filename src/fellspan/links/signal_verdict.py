@@ -7,13 +7,19 @@ import math
 from dataclasses import dataclass
 from typing import Final
 
+import numpy as np
+from numpy.typing import NDArray
+
 from fellspan.links.direction import Direction
 from fellspan.links.receivers import blocked
 from fellspan.links.result import AtEnds
 from fellspan.links.signal_words import percent_text
 from fellspan.links.site import Link
-from fellspan.links.verdicts import signal_verdict
+from fellspan.links.verdicts import SIGNAL_BAND_DB, signal_verdict
 from fellspan.vocabulary import SignalVerdict
+
+Floats = NDArray[np.float64]
+Flags = NDArray[np.bool_]
 
 BETTER_TO_WORSE: Final[tuple[SignalVerdict, ...]] = ("meets", "marginal", "below")
 TREES: Final = "trees stand in the required zone, and what they take changes with leaves, rain and growth"
@@ -84,3 +90,39 @@ def judged(
     if verdict == "meets":
         return verdict, "margin and availability wanted are there" if holds else "the margin wanted is there"
     return verdict, "; ".join(dict.fromkeys(hold.why for hold in all_of_them if hold.verdict == verdict))
+
+
+def verdict_codes(
+    least_margin_db: Floats,
+    *,
+    wanted_db: float,
+    trees: Flags,
+    too_far: Flags,
+    target_percent: float | None,
+    shares_percent: tuple[Floats, Floats],
+    nearly_percent: tuple[Floats, Floats],
+) -> NDArray[np.int8]:
+    """`judged` on columns of links, without its words: indices into `BETTER_TO_WORSE`, shape (p,).
+
+    Parameters
+    ----------
+    least_margin_db
+        Of both directions; the code of a NaN is not to be used.
+    trees, too_far
+        Trees stand in the required zone; the path is longer than the timing of the radio allows.
+    target_percent, shares_percent, nearly_percent
+        Availability wanted, that of each direction, NaN where not computed, and what `NEAR_DB` more margin would make of it.
+    """
+    meets, marginal, below = range(len(BETTER_TO_WORSE))
+    code = np.where(
+        least_margin_db >= wanted_db,
+        meets,
+        np.where(least_margin_db >= wanted_db - SIGNAL_BAND_DB, marginal, below),
+    )
+    code = np.where(too_far, below, np.where(trees, np.maximum(code, marginal), code))
+    if target_percent is not None:
+        for share, nearly in zip(shares_percent, nearly_percent, strict=True):
+            missed = np.where(nearly >= target_percent, marginal, below)
+            by_target = np.where(np.isnan(share), marginal, np.where(share >= target_percent, meets, missed))
+            code = np.maximum(code, by_target)
+    return code.astype(np.int8)

@@ -1,0 +1,97 @@
+"""What the paths of many pairs take in clear air, and the climate over them; knows no antennas, powers or margins."""
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from fellspan.climate.columns import ClimateColumns, climate_columns
+from fellspan.links.path_loss import TREE
+from fellspan.links.signal_path import air_level_m
+from fellspan.links.ways_past_trees import PathRows, depth_in_trees_m, share_of_path, ways_past_trees
+from fellspan.propagation import free_space_loss_db, gas_loss_db, inverse_k
+from fellspan.screening.laid import LaidBucket
+from fellspan.screening.pairs import Candidates
+
+Floats = NDArray[np.float64]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Level:
+    """Clear air at the median k, dB, shape (p, f) for the frequencies of the radio."""
+
+    frequency_hz: Floats
+    diffraction_db: Floats
+    vegetation_db: Floats
+    total_db: Floats
+    """Free space, diffraction, trees and gases."""
+
+    def at(self, frequency_hz: float) -> int:
+        """The column of a frequency."""
+        return int(np.flatnonzero(self.frequency_hz == frequency_hz)[0])
+
+
+def rows_of_bucket(bucket: LaidBucket) -> PathRows:
+    """The paths of a bucket as losses are worked out from."""
+    count = bucket.length_m.size
+    return PathRows(
+        distance_m=bucket.distance_m,
+        ground_m=bucket.ground_m,
+        surface_m=bucket.surface_m,
+        trees=None if bucket.cover_kind is None else bucket.cover_kind == TREE,
+        a_amsl_m=bucket.a_amsl_m,
+        b_amsl_m=bucket.b_amsl_m,
+        sea_fraction=np.zeros(count) if bucket.is_sea is None else share_of_path(bucket.distance_m, bucket.is_sea),
+    )
+
+
+def climate_of(candidates: Candidates, bucket: LaidBucket, *, has_margin: NDArray[np.bool_]) -> ClimateColumns:
+    """Figures of the middles of the paths; from the maps only where a margin is known, as for one link."""
+    given = candidates.settings.weather.given
+    altitude = air_level_m(bucket.a_amsl_m, bucket.b_amsl_m)
+    if given.altitude_m is not None:
+        altitude = np.full(altitude.shape, given.altitude_m)
+
+    def figures(maps: bool) -> ClimateColumns:
+        return climate_columns(
+            latitude_deg=bucket.middle_latitude_deg,
+            longitude_deg=bucket.middle_longitude_deg,
+            altitude_m=altitude,
+            given=given,
+            maps=maps,
+        )
+
+    if has_margin.all() or not has_margin.any():
+        return figures(bool(has_margin.any()))
+    return figures(True).where(has_margin, figures(False))
+
+
+def level_of(candidates: Candidates, rows: PathRows, climate: ClimateColumns) -> Level:
+    """What paths take in clear air at the median k, at the frequencies of the radio."""
+    radio, k = candidates.radio, candidates.settings.median_k
+    frequency = np.array(list(dict.fromkeys(radio.transmit_hz)))
+    ways = ways_past_trees(
+        rows,
+        inverse_k=np.array([inverse_k(k)]),
+        frequency_hz=frequency,
+        polarization=radio.polarization,
+        depth_m=depth_in_trees_m(rows, k=k),
+    )
+    through = ways.is_through[:, 0]
+    diffraction = np.where(through, ways.solid_db[:, 0], ways.over_db[:, 0])
+    vegetation = np.where(through, ways.woods_db, 0.0)
+    slant = rows.slant_m[:, np.newaxis]
+    gases = gas_loss_db(
+        slant,
+        frequency_hz=frequency,
+        dry_pressure_hpa=climate.dry_pressure_hpa[:, np.newaxis],
+        temperature_k=climate.temperature_k[:, np.newaxis],
+        vapour_g_m3=climate.vapour_g_m3[:, np.newaxis],
+    )
+    free = np.asarray(free_space_loss_db(slant, frequency_hz=frequency))
+    return Level(
+        frequency_hz=frequency,
+        diffraction_db=diffraction,
+        vegetation_db=vegetation,
+        total_db=free + diffraction + vegetation + gases,
+    )
