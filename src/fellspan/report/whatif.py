@@ -1,7 +1,7 @@
 """What the script of a link page is fed so that it can answer what-if: the points that can govern, levels, criteria, the way.
 
-Packs what planning found and works nothing out. Distances are whole millimetres and levels tenths of them, each number but the first the
-difference to the one before, so that a long path stays small.
+Packs what planning found and works nothing out. Distances are whole millimetres and levels tenths of them, each number but
+the first the difference to the one before, so that a long path stays small.
 """
 
 import json
@@ -25,6 +25,8 @@ from fellspan.vocabulary import COVER_KINDS
 
 Floats = NDArray[np.float64]
 
+WHAT_IF_SCRIPTS = ("need.js", "whatif_words.js", "whatif_drawing.js", "whatif.js", "spot.js")
+"""In the order in which they go by one another."""
 SPOTS = 220
 """At so many places along the path the page can tell ground, surface and position."""
 WAY_EVERY_M, MOST_WAY = 1_000.0, 129
@@ -179,7 +181,8 @@ def _way(link: LinkPlan) -> list[int]:
 def _steps(values: ArrayLike, scale: float) -> list[int]:
     """Whole numbers of `1/scale`: the first, then differences."""
     whole = np.rint(np.asarray(values, dtype=np.float64) * scale).astype(np.int64)
-    return np.diff(whole, prepend=np.int64(0)).tolist()
+    steps: list[int] = np.diff(whole, prepend=np.int64(0)).tolist()
+    return steps
 
 
 def _runs(values: NDArray[np.int64] | Sequence[int]) -> list[int]:
