@@ -235,6 +235,19 @@ def on_plane(transform: Affine, column: NDArray[Any], row: NDArray[Any]) -> tupl
     return t.a * column + t.b * row + t.c, t.d * column + t.e * row + t.f
 
 
+def chained(outer: Affine, inner: Affine) -> Affine:
+    """The transform that does `inner` first; the sign for it differs between releases of affine."""
+    o, i = outer, inner
+    return Affine(
+        o.a * i.a + o.b * i.d,
+        o.a * i.b + o.b * i.e,
+        o.a * i.c + o.b * i.f + o.c,
+        o.d * i.a + o.e * i.d,
+        o.d * i.b + o.e * i.e,
+        o.d * i.c + o.e * i.f + o.f,
+    )
+
+
 def base_name(path: str) -> str:
     """What to call a raster before people."""
     return os.path.basename(path.rstrip("/\\")) or path

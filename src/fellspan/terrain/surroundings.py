@@ -20,7 +20,7 @@ from fellspan.terrain.fan import Fan
 from fellspan.terrain.handles import HandlePool
 from fellspan.terrain.placing import to_crs
 from fellspan.terrain.plates import Plane, Plate, read_plate
-from fellspan.terrain.raster_file import RasterFile, on_plane
+from fellspan.terrain.raster_file import RasterFile, chained, on_plane
 from fellspan.terrain.rays import CellGrid, Floats, Rays
 from fellspan.terrain.stack import RasterStack
 from fellspan.terrain.terrain import Terrain
@@ -113,7 +113,7 @@ class Surroundings:
         if len(self._ground) == 1 and self._layers.gaps != "sea":
             plate = self._ground[0][0]
             if (
-                view := _view(plate, ~plate.file.transform * _shifted(grid.transform, plate.file, grid), grid)
+                view := _view(plate, chained(~plate.file.transform, _shifted(grid.transform, plate.file, grid)), grid)
             ) is not None:
                 return view
         out = np.full((grid.rows, grid.columns), np.nan, dtype=np.float32)
@@ -123,8 +123,8 @@ class Surroundings:
             if file.crs_text != grid.crs_text:
                 abroad.append(plate)
                 continue
-            to_file = ~file.transform * _shifted(grid.transform, file, grid)
-            scaled = Affine.scale(1.0 / plate.factor) * to_file
+            to_file = chained(~file.transform, _shifted(grid.transform, file, grid))
+            scaled = chained(Affine.scale(1.0 / plate.factor), to_file)
             if _copied(plate, scaled, grid, out):
                 continue
             numbers = np.array(scaled[:6], dtype=np.float64)
@@ -272,9 +272,9 @@ def _shifted(transform: Affine, file: RasterFile, grid: CellGrid) -> Affine:
     """The grid's transform, whole turns moved so that its middle lies nearest to the raster's."""
     if file.period is None:
         return transform
-    x, _ = transform * (grid.columns / 2.0, grid.rows / 2.0)
-    turns = round(((file.bounds[0] + file.bounds[2]) / 2.0 - x) / file.period)
-    return Affine.translation(turns * file.period, 0.0) * transform
+    x, _ = on_plane(transform, np.array(grid.columns / 2.0), np.array(grid.rows / 2.0))
+    turns = round(((file.bounds[0] + file.bounds[2]) / 2.0 - float(x)) / file.period)
+    return chained(Affine.translation(turns * file.period, 0.0), transform)
 
 
 def _check_seams(stack: RasterStack, rays: Rays) -> None:
@@ -341,7 +341,7 @@ def grid_around(
             f"nothing within {reach_m / 1000:.3g} km of {at.latitude_deg:.5f}, {at.longitude_deg:.5f} lies in the area",
             "choose a larger radius or another area",
         )
-    transform = file.transform * Affine.translation(left, top) * Affine.scale(factor)
+    transform = chained(chained(file.transform, Affine.translation(left, top)), Affine.scale(factor))
     grid = CellGrid(transform=transform, crs_text=file.crs_text, rows=high, columns=wide)
     return grid, min(own_m) * factor
 
