@@ -121,18 +121,29 @@ def extra_heights_m(shortfall_m: ArrayLike, distance_m: ArrayLike) -> tuple[Floa
     end; 0 where nothing is missing.
     """
     shortfall = np.asarray(shortfall_m, dtype=np.float64)
-    distance = np.asarray(distance_m, dtype=np.float64)
-    share = np.broadcast_to(distance / distance[..., -1:], shortfall.shape)
+    share = _share(distance_m)
     missing = shortfall > TOLERANCE_M
-
-    def at_one_end(lever: Floats) -> Floats:
-        height = np.zeros(shortfall.shape)
-        np.divide(shortfall, lever, out=height, where=missing & (lever > 0.0))
-        height[missing & (lever <= 0.0)] = np.inf
-        return np.asarray(height.max(axis=-1))
-
     both = np.where(missing, shortfall, 0.0).max(axis=-1)
-    return at_one_end(1.0 - share), at_one_end(share), np.asarray(both)
+    return _at_one_end(shortfall, 1.0 - share), _at_one_end(shortfall, share), np.asarray(both)
+
+
+def extra_at_b_m(shortfall_m: ArrayLike, distance_m: ArrayLike) -> Floats:
+    """The second of `extra_heights_m` alone: height to add at B, shape (...)."""
+    return _at_one_end(np.asarray(shortfall_m, dtype=np.float64), _share(distance_m))
+
+
+def _share(distance_m: ArrayLike) -> Floats:
+    distance = np.asarray(distance_m, dtype=np.float64)
+    return np.asarray(distance / distance[..., -1:])
+
+
+def _at_one_end(shortfall: Floats, lever: Floats) -> Floats:
+    """Height to add where each metre lifts the ray by `lever`, (..., n); infinite where that is nothing."""
+    missing = shortfall > TOLERANCE_M
+    height = np.zeros(shortfall.shape)
+    np.divide(shortfall, lever, out=height, where=missing & (lever > 0.0))
+    height[missing & (lever <= 0.0)] = np.inf
+    return np.asarray(height.max(axis=-1))
 
 
 def probability_met(margin_m: ArrayLike, sigma_m: ArrayLike) -> Floats:

@@ -17,6 +17,7 @@ _CODES: Final = ("verdict", "signal_verdict", "basis", "governing")
 _FLOATS: Final = (
     "distance_m",
     "bearing_deg",
+    "back_bearing_deg",
     "confidence",
     "worst_fraction",
     "worst_at_m",
@@ -39,6 +40,7 @@ class Columns:
 
     distance_m: NDArray[np.float64]
     bearing_deg: NDArray[np.float64]
+    back_bearing_deg: NDArray[np.float64]
     confidence: NDArray[np.float64]
     worst_fraction: NDArray[np.float64]
     worst_at_m: NDArray[np.float64]

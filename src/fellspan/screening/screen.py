@@ -3,22 +3,32 @@
 Splits the pairs by what their paths need and puts the answers together; holds no formula.
 """
 
+from concurrent.futures import ThreadPoolExecutor
+from typing import Final
+
 import numpy as np
 from numpy.typing import NDArray
 
-from fellspan.errors import CoordinateError
+from fellspan.errors import FellspanError
 from fellspan.geodesy import geodesic
 from fellspan.links.assess import SAME_PLACE_M
+from fellspan.screening.batch import Batch, Setting, wrong_sites
 from fellspan.screening.columns import DONE, SAME_PLACE, Columns
 from fellspan.screening.pairs import Candidates, PairResults, SiteColumns
-from fellspan.screening.single import screen_single, site_of
+from fellspan.screening.single import draw_single, screen_single, site_of
 from fellspan.terrain.terrain import Terrain
 
-Index = NDArray[np.int64]
+BATCH: Final = 8192
+"""Pairs that are laid out at once."""
 
 
 def screen_pairs(
-    candidates: Candidates, *, hub: NDArray[np.int64], place: NDArray[np.int64], terrain: Terrain
+    candidates: Candidates,
+    *,
+    hub: NDArray[np.int64],
+    place: NDArray[np.int64],
+    terrain: Terrain,
+    threads: int = 2,
 ) -> PairResults:
     """Assess pairs of hubs and places, of shape (n,), as planning would assess each of them alone.
 
@@ -30,6 +40,8 @@ def screen_pairs(
         Indices into `candidates.hubs` and `candidates.places`, shape (n,).
     terrain
         Opened; its trees grown already.
+    threads
+        How many work at once; the answers do not depend on it.
 
     Raises
     ------
@@ -38,32 +50,54 @@ def screen_pairs(
     """
     hub, place = np.asarray(hub, dtype=np.int64), np.asarray(place, dtype=np.int64)
     columns = Columns(hub, place)
-    _ways(candidates, columns)
-    for row in np.flatnonzero(columns.status == DONE).tolist():
-        screen_single(candidates, columns, row, terrain=terrain)
+    setting = Setting(
+        candidates=candidates,
+        many=terrain.many,
+        vertical_datum=terrain.vertical_datum,
+        wrong_hubs=wrong_sites(candidates.hubs, vertical_datum=terrain.vertical_datum),
+        wrong_places=wrong_sites(candidates.places, vertical_datum=terrain.vertical_datum),
+    )
+    _ways(setting, columns)
+    rows = np.flatnonzero(columns.status == DONE)
+    with ThreadPoolExecutor(max_workers=threads) as pool:
+        for start in range(0, rows.size, BATCH):
+            batch = Batch(setting, columns, rows[start : start + BATCH])
+            one_by_one, unsure = [batch.others], []
+            for others, drawn in pool.map(batch.run, batch.blocks()):
+                one_by_one.append(others)
+                unsure.append(drawn)
+            for row in np.sort(np.concatenate(one_by_one)).tolist():
+                screen_single(candidates, columns, row, terrain=terrain)
+            for row in np.sort(np.concatenate([*unsure, np.zeros(0, dtype=np.int64)])).tolist():
+                draw_single(candidates, columns, row, terrain=terrain)
     return columns.results()
 
 
-def _ways(candidates: Candidates, columns: Columns) -> None:
-    """Distances and bearings; pairs at one place, and those whose positions are none, are told apart at once."""
-    hubs, places = candidates.hubs, candidates.places
+def _ways(setting: Setting, columns: Columns) -> None:
+    """Distances and bearings; pairs at one place are told apart, those of positions that are none are refused."""
+    hubs, places = setting.candidates.hubs, setting.candidates.places
+    there = _on_earth(hubs)[columns.hub] & _on_earth(places)[columns.place]
+    rows = np.flatnonzero(there)
+    hub, place = columns.hub[rows], columns.place[rows]
     way = geodesic.inverse_many(
-        hubs.latitude_deg[columns.hub],
-        hubs.longitude_deg[columns.hub],
-        places.latitude_deg[columns.place],
-        places.longitude_deg[columns.place],
+        hubs.latitude_deg[hub], hubs.longitude_deg[hub], places.latitude_deg[place], places.longitude_deg[place]
     )
-    columns.distance_m[:], columns.bearing_deg[:] = way.distance_m, way.bearing_ab_deg
-    columns.status[way.distance_m < SAME_PLACE_M] = SAME_PLACE
-    for row in np.flatnonzero(~np.isfinite(way.distance_m)).tolist():
+    columns.distance_m[rows], columns.bearing_deg[rows] = way.distance_m, way.bearing_ab_deg
+    columns.back_bearing_deg[rows] = way.bearing_ba_deg
+    columns.status[rows[way.distance_m < SAME_PLACE_M]] = SAME_PLACE
+    for row in np.flatnonzero(~there).tolist():
         columns.refuse(
             row, _why_no_place(hubs, int(columns.hub[row])) or _why_no_place(places, int(columns.place[row]))
         )
 
 
+def _on_earth(sites: SiteColumns) -> NDArray[np.bool_]:
+    return np.asarray((np.abs(sites.latitude_deg) <= 90.0) & (np.abs(sites.longitude_deg) <= 360.0))
+
+
 def _why_no_place(sites: SiteColumns, index: int) -> str:
     try:
         site_of(sites, index)
-    except CoordinateError as error:
+    except FellspanError as error:
         return error.what
     return ""

@@ -104,6 +104,13 @@ def screen_single(candidates: Candidates, columns: Columns, row: int, *, terrain
         with_draws(columns, row, link, assessment, settings)
 
 
+def draw_single(candidates: Candidates, columns: Columns, row: int, *, terrain: Terrain) -> None:
+    """Let draws decide on a row that is filled and clear."""
+    link = link_of(candidates, int(columns.hub[row]), int(columns.sector[row]), int(columns.place[row]))
+    assessment = assess_in_full(link, terrain=terrain, settings=candidates.settings)
+    with_draws(columns, row, link, assessment, candidates.settings)
+
+
 def with_draws(columns: Columns, row: int, link: Link, assessment: Assessment, settings: AssessSettings) -> None:
     """The lesser of both confidences, as planning takes it, and the verdict that it allows."""
     _, drawn = design_heights(link, assessment, settings)

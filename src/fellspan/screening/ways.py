@@ -106,8 +106,12 @@ class Ways:
 
     def positions(self, share: Floats) -> tuple[Floats, Floats]:
         """Latitude and longitude, degrees, at one share of each path, shape (p,); longitudes may run beyond 180."""
-        latitude = self._latitude.reshape(self.size, NODES).T
-        longitude = self._longitude.reshape(self.size, NODES).T
+        return self.positions_of(np.arange(self.size), share)
+
+    def positions_of(self, which: Index, share: Floats) -> tuple[Floats, Floats]:
+        """As `positions`, of the paths `which`, shape (q,)."""
+        latitude = self._latitude.reshape(self.size, NODES)[which].T
+        longitude = self._longitude.reshape(self.size, NODES)[which].T
         longitude = longitude[:1] + (np.mod(longitude - longitude[:1] + 180.0, 360.0) - 180.0)
         t = (2.0 * share - 1.0)[:, np.newaxis]
         return _value(_terms(latitude), t)[:, 0], _value(_terms(longitude), t)[:, 0]

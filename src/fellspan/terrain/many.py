@@ -22,8 +22,15 @@ Index = NDArray[np.int64]
 class Paths(Protocol):
     """A batch of paths that can say where it runs."""
 
-    size: int
-    length_m: Floats
+    @property
+    def size(self) -> int:
+        """How many."""
+        ...
+
+    @property
+    def length_m(self) -> Floats:
+        """How long each is, m, (p,)."""
+        ...
 
     def curves_on(self, file: RasterFile) -> Curves:
         """The paths on a raster."""

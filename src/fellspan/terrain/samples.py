@@ -12,7 +12,8 @@ from numpy.typing import NDArray
 from fellspan.terrain.alongpath import Floats
 from fellspan.terrain.cover import SurfaceStep
 
-_SAME_M = 5e-4
+SAME_M = 5e-4
+"""Samples no further apart than this are one."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -47,10 +48,10 @@ def merged(exact_m: Floats, beside_m: Floats, regular_m: Floats, length_m: float
         inside = np.unique(group[(group > 0.0) & (group < length_m)])
         if inside.size == 0:
             continue
-        inside = inside[np.concatenate(([True], np.diff(inside) > _SAME_M))]
+        inside = inside[np.concatenate(([True], np.diff(inside) > SAME_M))]
         after = np.searchsorted(kept, inside)
         away = np.minimum(kept[after] - inside, inside - kept[after - 1])
-        kept = np.union1d(kept, inside[away > _SAME_M])
+        kept = np.union1d(kept, inside[away > SAME_M])
     return kept
 
 

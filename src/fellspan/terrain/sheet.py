@@ -12,6 +12,7 @@ from numpy.typing import NDArray
 from rasterio.io import DatasetReader
 
 from fellspan.terrain.blocks import blended, window_heights
+from fellspan.terrain.handles import gdal
 from fellspan.terrain.raster_file import RasterFile
 
 TILE: Final = 256
@@ -69,7 +70,7 @@ class Sheet:
             self._read(wanted)
 
     def _read(self, wanted: NDArray[np.bool_]) -> None:
-        with self._lock:
+        with self._lock, gdal():
             for tile_row, tile_column in np.argwhere(wanted & ~self._loaded).tolist():
                 top, left = tile_row * TILE, tile_column * TILE
                 height, width = min(TILE, self.file.height - top), min(TILE, self.file.width - left)

@@ -29,7 +29,10 @@ Index = NDArray[np.int64]
 class Curves(Protocol):
     """Where paths run on one raster."""
 
-    is_close: NDArray[np.bool_]
+    @property
+    def is_close(self) -> NDArray[np.bool_]:
+        """Whether they are known closely enough, (p,)."""
+        ...
 
     def at(self, t: Floats, which: Index) -> tuple[Floats, Floats]:
         """Columns and rows at t, -1 at A to 1 at B, shape (q, n), of the paths `which`, shape (q,)."""
@@ -43,7 +46,10 @@ class Curves(Protocol):
 class Paths(Protocol):
     """A batch of paths that can say where it runs on any raster."""
 
-    size: int
+    @property
+    def size(self) -> int:
+        """How many."""
+        ...
 
     def curves_on(self, file: RasterFile) -> Curves:
         """The paths on a raster."""

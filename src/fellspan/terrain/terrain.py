@@ -18,6 +18,7 @@ from fellspan.terrain.alongpath import Floats
 from fellspan.terrain.assemble import Layers, PathWork
 from fellspan.terrain.gaps import gap_error, gaps_of
 from fellspan.terrain.listed import Listed, listed_obstacles, listed_rows
+from fellspan.terrain.many import ManyPaths
 from fellspan.terrain.opening import CoverLike, ObstaclesLike, RasterLike, SurveyLike, open_layers
 from fellspan.terrain.profile import PathProfile
 from fellspan.terrain.profile_notes import path_notes, surface_tells
@@ -34,6 +35,7 @@ class Terrain:
         self._layers = layers
         self._datum = vertical_datum
         self._notes = notes
+        self._many: ManyPaths | None = None
 
     @classmethod
     def open(
@@ -93,6 +95,13 @@ class Terrain:
     def layers(self) -> Layers:
         """What was opened, for others of this room."""
         return self._layers
+
+    @property
+    def many(self) -> ManyPaths:
+        """The rasters as sheets of cells in memory, kept for batch after batch of paths."""
+        if self._many is None:
+            self._many = ManyPaths(self._layers)
+        return self._many
 
     @property
     def notes(self) -> tuple[str, ...]:

@@ -1,0 +1,244 @@
+"""A batch of pairs from positions to columns: laid on the rasters, looked at more closely, judged, and its signal worked out.
+
+Puts the pieces of this room together for pairs on whose paths rasters alone count, and says which pairs are not of that kind.
+"""
+
+from dataclasses import dataclass
+from typing import Final
+
+import numpy as np
+from numpy.typing import NDArray
+
+from fellspan.errors import FellspanError
+from fellspan.links.assess import REFINE_PARTS
+from fellspan.links.budget import tilts_deg
+from fellspan.screening.columns import Columns
+from fellspan.screening.laid import LaidBucket
+from fellspan.screening.pairs import HEIGHT_REFERENCES, Candidates, SiteColumns
+from fellspan.screening.profiles import Profiles, closer, regular, steps_of, width_of
+from fellspan.screening.rays import CLEAR, Judged, judged, rays_over, worth_a_closer_look
+from fellspan.screening.signal import best_sector, signal_columns
+from fellspan.screening.single import name_of
+from fellspan.screening.stand import Antennas, antennas_at, standings
+from fellspan.screening.sure import surely_clear
+from fellspan.screening.ways import Ways
+from fellspan.terrain.alongpath import nodes_for
+from fellspan.terrain.many import ManyPaths
+from fellspan.terrain.units import is_ellipsoidal
+
+Floats = NDArray[np.float64]
+Index = NDArray[np.int64]
+
+MOST_SAMPLES: Final = 65_536
+"""Samples of a block of pairs: its arrays stay near the processor's caches."""
+LONGEST_STEPS: Final = 30_000
+"""Paths of more steps are taken one by one."""
+FEWEST_STEPS: Final = 4
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Setting:
+    """What all batches of a run share."""
+
+    candidates: Candidates
+    many: ManyPaths
+    vertical_datum: str | None
+    wrong_hubs: NDArray[np.bool_]
+    """Sites that cannot be as given: their pairs are taken one by one, which says why."""
+    wrong_places: NDArray[np.bool_]
+
+
+def wrong_sites(sites: SiteColumns, *, vertical_datum: str | None) -> NDArray[np.bool_]:
+    """Sites (m,) that `links` would refuse or cannot be told at once to be right."""
+    above_sea = sites.height_reference == HEIGHT_REFERENCES.index("sea")
+    wrong = ~np.isfinite(sites.height_m) | (~above_sea & (sites.height_m < 0.0))
+    wrong |= (sites.roof_m < 0.0) | np.isinf(sites.roof_m)
+    wrong |= ~(np.abs(sites.latitude_deg) <= 90.0) | ~(np.abs(sites.longitude_deg) <= 360.0)
+    return np.asarray(wrong | (above_sea & is_ellipsoidal(vertical_datum)))
+
+
+class Batch:
+    """Some rows of the columns, laid on the rasters; `blocks` are to be run in any order and on any thread."""
+
+    def __init__(self, setting: Setting, columns: Columns, rows: Index) -> None:
+        self._setting, self._columns, self._rows = setting, columns, rows
+        candidates = setting.candidates
+        hubs = candidates.hubs
+        hub, place = columns.hub[rows], columns.place[rows]
+        self._hub, self._place = hub, place
+        self._ways = Ways(
+            hubs.latitude_deg[hub],
+            hubs.longitude_deg[hub],
+            columns.bearing_deg[rows],
+            columns.back_bearing_deg[rows],
+            columns.distance_m[rows],
+        )
+        self._laid = setting.many.lay(self._ways)
+        length, cell = columns.distance_m[rows], self._laid.cell_m
+        stated = candidates.settings.step_m
+        step = 0.5 * cell if stated is None else np.full(cell.shape, stated)
+        self._steps = steps_of(length, step)
+        self._fine_m = length / steps_of(length, cell / REFINE_PARTS)
+        fit = self._laid.usable & (self._steps >= FEWEST_STEPS) & (self._steps <= LONGEST_STEPS)
+        fit &= ~(setting.wrong_hubs[hub] | setting.wrong_places[place]) & ~self._near_others()
+        self._fit = fit
+
+    @property
+    def others(self) -> Index:
+        """Rows of the columns that must be taken one by one."""
+        return np.asarray(self._rows[~self._fit])
+
+    def blocks(self) -> list[Index]:
+        """The pairs that fit, in blocks of one width each."""
+        fit = np.flatnonzero(self._fit)
+        width = width_of(self._steps[fit] + 1)
+        found: list[Index] = []
+        for one in np.unique(width).tolist():
+            some = fit[width == one]
+            most = max(1, MOST_SAMPLES // one)
+            found += [some[start : start + most] for start in range(0, some.size, most)]
+        return found
+
+    def _near_others(self) -> NDArray[np.bool_]:
+        """Pairs whose paths come near an obstacle or a surveyed point."""
+        layers = self._setting.many.layers
+        survey, obstacles = layers.survey, layers.obstacles
+        near = np.zeros(self._rows.size, dtype=np.bool_)
+        if not obstacles.obstacles and not survey.rows:
+            return near
+        nodes = nodes_for(float(self._ways.length_m.max(initial=1.0)))
+        share = np.linspace(0.0, 1.0, nodes)
+        places = [self._ways.positions(np.full(self._rows.size, one)) for one in share.tolist()]
+        latitude, longitude = (np.stack([place[axis] for place in places], axis=1) for axis in (0, 1))
+        near |= obstacles.meets(longitude, latitude) | survey.meets(longitude, latitude)
+        if survey.links:
+            pairs = zip(self._hub.tolist(), self._place.tolist(), strict=True)
+            near |= np.array([survey.names(name_of(self._setting.candidates, *pair)) for pair in pairs], dtype=np.bool_)
+        return near
+
+    def run(self, which: Index) -> tuple[Index, Index]:
+        """Fill the rows of a block; give those to be taken one by one instead, and those of which draws must decide."""
+        setting, settings = self._setting, self._setting.candidates.settings
+        width = int(width_of(self._steps[which] + 1).max())
+        others: list[Index] = []
+        coarse, doubtful = regular(self._laid, which, length_m=self._ways.length_m, steps=self._steps, width=width)
+        gap = ~np.isfinite(coarse.ground_m).all(axis=1)
+        if gap.any() and setting.many.layers.gaps == "error":
+            self._note_gaps(coarse.rows(gap & ~doubtful))
+        else:
+            doubtful = doubtful | gap
+        others.append(self._rows[which[doubtful]])
+        coarse, a, b = self._with_antennas(coarse.rows(~gap & ~doubtful))
+        refused = a.refused | b.refused
+        others.append(self._rows[coarse.which[refused]])
+        if refused.any():
+            coarse, a, b = coarse.rows(~refused), a.rows(~refused), b.rows(~refused)
+        if coarse.which.size == 0:
+            return np.concatenate(others), np.zeros(0, dtype=np.int64)
+        frequency_hz = setting.candidates.radio.frequency_hz
+        rays = rays_over(coarse, standings(coarse), a, b, settings=settings, frequency_hz=frequency_hz)
+        wanted = worth_a_closer_look(rays, coarse)
+        fine, doubtful = closer(self._laid, coarse, wanted, step_m=self._fine_m[coarse.which])
+        doubtful |= ~np.isfinite(fine.ground_m).all(axis=1)
+        others.append(self._rows[fine.which[doubtful]])
+        unsure: list[Index] = []
+        own_width = width_of(fine.last + 1, per_octave=4)
+        for one in np.unique(own_width[~doubtful]).tolist():
+            some = np.flatnonzero((own_width == one) & ~doubtful)
+            unsure.append(self._judge(fine.rows(some).narrowed(one), a.rows(some), b.rows(some), others))
+        return np.concatenate(others), np.concatenate([*unsure, np.zeros(0, dtype=np.int64)])
+
+    def _with_antennas(self, profiles: Profiles) -> tuple[Profiles, Antennas, Antennas]:
+        candidates, bare = self._setting.candidates, self._setting.many.layers.is_bare
+        hub, place = self._hub[profiles.which], self._place[profiles.which]
+        a = antennas_at(candidates.hubs, hub, profiles, at_a=True, ground_is_bare=bare)
+        b = antennas_at(candidates.places, place, profiles, at_a=False, ground_is_bare=bare)
+        return profiles, a, b
+
+    def _note_gaps(self, profiles: Profiles) -> None:
+        """The first stretch without data, as `gaps_of` tells it of one path."""
+        missing = ~np.isfinite(profiles.ground_m)
+        first = missing.argmax(axis=1)
+        place = np.arange(missing.shape[1])
+        ended = ~missing & (place > first[:, np.newaxis])
+        after = np.where(ended.any(axis=1), ended.argmax(axis=1), missing.shape[1])
+        last = np.minimum(after - 1, profiles.last)
+        for row, index, start, stop in zip(self._rows[profiles.which], range(first.size), first, last, strict=True):
+            self._columns.gap(
+                int(row), float(profiles.distance_m[index, start]), float(profiles.distance_m[index, stop])
+            )
+
+    def _judge(self, profiles: Profiles, a: Antennas, b: Antennas, others: list[Index]) -> Index:
+        """Verdict and signal of pairs of one width; those of which draws must decide."""
+        setting, columns = self._setting, self._columns
+        candidates, settings = setting.candidates, setting.candidates.settings
+        stands = standings(profiles)
+        rays = rays_over(profiles, stands, a, b, settings=settings, frequency_hz=candidates.radio.frequency_hz)
+        found = judged(rays, profiles, stands, a, b, settings=settings, ground_is_bare=setting.many.layers.is_bare)
+        rows = self._rows[profiles.which]
+        bucket = self._bucket(profiles, stands.surface_m, stands.cover_kind, a, b, found)
+        try:
+            sector = best_sector(
+                candidates, hub=bucket.hub, bearing_deg=bucket.bearing_ab_deg, tilt_deg=bucket.tilt_ab_deg
+            )
+            signal = signal_columns(candidates, bucket, sector=sector)
+        except FellspanError:
+            # What one of them cannot have, planning says of each.
+            others.append(rows)
+            return np.zeros(0, dtype=np.int64)
+        columns.sector[rows] = sector
+        for name in ("verdict", "basis", "confidence", "governing", "worst_fraction", "worst_at_m", "extra_at_place_m"):
+            getattr(columns, name)[rows] = getattr(found, name)
+        for name in (
+            "diffraction_db",
+            "received_at_hub_dbm",
+            "received_at_place_dbm",
+            "margin_at_hub_db",
+            "margin_at_place_db",
+            "availability_percent",
+            "signal_verdict",
+        ):
+            getattr(columns, name)[rows] = getattr(signal, name)
+        clear = np.flatnonzero(found.verdict == CLEAR)
+        if clear.size == 0:
+            return np.zeros(0, dtype=np.int64)
+        sure = surely_clear(rays, profiles, stands, found.errors, clear, settings=settings)
+        return np.asarray(rows[clear[~sure]])
+
+    def _bucket(
+        self,
+        profiles: Profiles,
+        surface_m: Floats,
+        cover_kind: NDArray[np.int8] | None,
+        a: Antennas,
+        b: Antennas,
+        found: Judged,
+    ) -> LaidBucket:
+        which, length = profiles.which, profiles.length_m
+        k = self._setting.candidates.settings.median_k
+        distance = profiles.distance_m
+        middle = np.argmin(np.abs(distance - 0.5 * length[:, np.newaxis]), axis=1)
+        share = np.zeros(self._rows.size)
+        share[which] = distance[np.arange(which.size), middle] / length
+        latitude, longitude = self._ways.positions_of(which, share[which])
+        return LaidBucket(
+            row=self._rows[which],
+            hub=self._hub[which],
+            place=self._place[which],
+            sector=np.full(which.size, -1, dtype=np.int64),
+            length_m=length,
+            bearing_ab_deg=self._ways.bearing_ab_deg[which],
+            bearing_ba_deg=self._ways.bearing_ba_deg[which],
+            tilt_ab_deg=tilts_deg(distance_m=length, from_amsl_m=a.amsl_m, to_amsl_m=b.amsl_m, k=k),
+            tilt_ba_deg=tilts_deg(distance_m=length, from_amsl_m=b.amsl_m, to_amsl_m=a.amsl_m, k=k),
+            a_amsl_m=a.amsl_m,
+            b_amsl_m=b.amsl_m,
+            middle_latitude_deg=latitude,
+            middle_longitude_deg=longitude,
+            trees_in_zone=found.trees_in_zone,
+            distance_m=distance,
+            ground_m=profiles.ground_m,
+            surface_m=surface_m,
+            cover_kind=cover_kind,
+            is_sea=None,
+        )
