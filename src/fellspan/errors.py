@@ -106,6 +106,10 @@ class RunError(FellspanError, ValueError):
     """A long run cannot start or go on: its inputs changed, another run is at work, or the cluster is not as it must be."""
 
 
+class MeasuredFileError(FellspanError, ValueError):
+    """A file of what was measured of a link as built has an unknown key, a wrong value or a missing one."""
+
+
 class UsageError(FellspanError, ValueError):
     """A command was not given what it needs."""
 

@@ -68,7 +68,7 @@ def heights_command(
     preset: CriteriaPreset = one_of(criteria, get_args(CriteriaPreset), "--criteria")
     wanted = _settings(step, limit_a, limit_b, cost_per_metre, cost_per_section, section)
     if _is_study(where):
-        from fellspan.cli.plan_command import _only
+        from fellspan.cli.plan_command import only
         from fellspan.study.reading import load_study
 
         _refuse_beside_a_study(
@@ -83,7 +83,7 @@ def heights_command(
                 "--roof-b": roof_b,
             }
         )
-        study = _only(load_study(Path(where[0])), link or [])
+        study = only(load_study(Path(where[0])), link or [])
     else:
         from fellspan.cli.sight_study import SightOptions, sight_study
 

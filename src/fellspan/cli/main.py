@@ -14,6 +14,7 @@ from typing import Annotated
 import typer
 
 from fellspan import __version__
+from fellspan.cli.accept_command import accept_command
 from fellspan.cli.antenna_command import antenna_command
 from fellspan.cli.candidates_command import candidates_command
 from fellspan.cli.equip_command import equip_command
@@ -58,6 +59,7 @@ app.command("plan")(plan_command)
 app.command("candidates")(candidates_command)
 app.command("terrain")(terrain_command)
 app.command("antenna")(antenna_command)
+app.command("accept")(accept_command)
 app.command("init")(init_command)
 
 

@@ -64,7 +64,7 @@ def plan_command(
 
         check_target(out)
     try:
-        chosen = _only(load_study(study), link or [])
+        chosen = only(load_study(study), link or [])
         plan = run_plan(chosen, horizons=horizons, equipment=equip, report=out is not None)
     except FellspanError:
         tell_old_report(out)
@@ -94,8 +94,8 @@ def _short_of(plan: "StudyPlan", required: Required) -> str:
     return printable(", ".join(short[:3]) + (f" and {len(short) - 3} more" if short[3:] else ""))
 
 
-def _only(study: "Study", names: list[str]) -> "Study":
-    """The study with the named links alone."""
+def only(study: "Study", names: list[str]) -> "Study":
+    """The study with the named links alone; all of them where none is named."""
     if not names:
         return study
     known = [link.name for link in study.links]

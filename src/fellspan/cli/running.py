@@ -53,6 +53,11 @@ def finish(plan: StudyPlan, *, out: Path | None, as_json: bool, brief: bool = Fa
     if not plan.links:
         tell_old_report(out)
         return
+    write_report(plan, out, quiet=as_json)
+
+
+def write_report(plan: StudyPlan, out: Path, *, quiet: bool) -> None:
+    """Write the report, with progress on a terminal, and say where it is unless `quiet`."""
     from fellspan.exports.folder import write_folder
 
     progress = progress_line("writing")
@@ -60,7 +65,7 @@ def finish(plan: StudyPlan, *, out: Path | None, as_json: bool, brief: bool = Fa
         names = write_folder(plan, out, progress=progress)
     finally:
         clear_progress(progress)
-    if not as_json:
+    if not quiet:
         typer.echo(f"\nreport: {out / 'index.html' if 'index.html' in names else out} ({len(names)} files)")
 
 

@@ -23,7 +23,7 @@ OF_LOSS: Final = 0.15
 """Share of the loss by terrain and trees that is added to it (our own figure)."""
 LEAST_READ_DB: Final = 1.0
 MOST_CAUSES: Final = 5
-FITS_SHARE: Final = 0.8
+FITS_SHARE: Final = 0.85
 ALIKE_OF_TOP: Final = 0.2
 LEAST_SHARE: Final = 0.04
 TOO_FAR: Final = 7.0

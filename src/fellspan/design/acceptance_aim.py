@@ -148,7 +148,7 @@ def _side_lobes(numbers: Numbers) -> Iterator[Hypothesis]:
                 a_db=level,
                 b_db=level,
                 spread_db=(2.0 if angle is not None else 3.5, 0.0, 0.0),
-                weight=0.18 / len(sets[end]) * (0.5 if angle is None else 0.5 * (4.0 if seen else 1.0)),
+                weight=0.16 / len(sets[end]) * (0.5 if angle is None else 0.5 * (4.0 if seen else 1.0)),
                 why=f"the first side lobe of the antenna at {label(end)} in {plane} lies {db(-level)} down{where} "
                 f"({origin}), and both directions lose as much"
                 + (f"; the bearing read there is {abs(off or 0.0):.1f} degrees off the plan" if seen else ""),
@@ -263,11 +263,11 @@ def _declination(numbers: Numbers) -> Iterator[Hypothesis]:
         if change is None or change[0] > -LEAST_DB:
             continue
         off = off_plan_deg(numbers, end)
-        built, weight = numbers.built.end(end), 0.03
+        built, weight = numbers.built.end(end), 0.015
         if off is not None:
             error = COMPASS_DEG if built.bearing_is == "magnetic" else BEARING_DEG
             shows = abs(abs(off) - abs(east)) < 1.5 * error and abs(east) > error
-            weight = 0.6 if shows else 0.05 if built.bearing_is != "magnetic" and abs(off) < error else 0.003
+            weight = 0.6 if shows else 0.012 if built.bearing_is != "magnetic" and abs(off) < 2.0 * error else 0.003
         found[end] = (change[0], change[1], weight)
     sets: list[tuple[EndLetter, ...]] = [(end,) for end in found]
     if len(found) == 2:

@@ -21,6 +21,8 @@ IMBALANCE_DB: Final = 6.0
 """Chains that lie this far apart are not accepted (common practice, no source: 3 dB is usual, 6 dB is a fault)."""
 SWING_DB: Final = 4.0
 """Readings of different times that lie this far apart are worth a word (our own figure)."""
+SWING_HELD_DB: Final = 6.0
+"""Readings that lie this far apart are not accepted before it is known why (our own figure: the width of the usual band)."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -103,7 +103,7 @@ def _power(numbers: Numbers) -> Iterator[Hypothesis]:
 
 def _power_control(numbers: Numbers) -> Iterator[Hypothesis]:
     state, reach = numbers.built.power_control, numbers.link.radio.power_control_db
-    weight = 2.0 if state == "on" else 0.002 if state == "off" else 0.14 if reach > 0.0 else 0.03
+    weight = 2.0 if state == "on" else 0.002 if state == "off" else 0.3 if reach > 0.0 else 0.06
     mean, spread = (-0.55 * reach, 0.3 * reach) if reach > 0.0 else (-8.0, 4.5)
     a, b = numbers.expected_a_dbm, numbers.expected_b_dbm
     # Both ends settle on the same level, so the one that would be stronger loses more.
@@ -146,7 +146,7 @@ def _chains(numbers: Numbers) -> Iterator[Hypothesis]:
             a_db=lost if "a" in ends else 0.0,
             b_db=lost if "b" in ends else 0.0,
             spread_db=(0.0, 1.0 if "a" in ends else 0.0, 1.0 if "b" in ends else 0.0),
-            weight=0.04,
+            weight=0.02,
             why=f"without one of its {count} chains the level of all together falls by {db(-lost)} at {at}"
             + (
                 "; low at both ends, it is a line, a port or a polarization that both directions share"
@@ -180,7 +180,7 @@ def _read_per_chain(numbers: Numbers) -> Iterator[Hypothesis]:
         a_db=change,
         b_db=change,
         spread_db=(0.5, 0.0, 0.0),
-        weight=0.2 if told is None else 0.03,
+        weight=0.08 if told is None else 0.02,
         why=f"a radio of {count} chains shows each of them {db(step)} under all together, and "
         + ("the file does not say which was read" if told is None else f"the file says '{told}'"),
         settled_by="the handbook of the radio, or the level of each chain beside the total",
@@ -228,8 +228,8 @@ def _polarization(numbers: Numbers) -> Iterator[Hypothesis]:
         title="polarizations a quarter turn apart",
         a_db=crossed.a_db,
         b_db=crossed.b_db,
-        spread_db=(3.0, 0.0, 0.0),
-        weight=0.10 * (0.4 if dual else 1.0) * (0.4 if len(told) == 2 else 1.0),
+        spread_db=(2.5, 0.0, 0.0),
+        weight=0.10 * (0.8 if dual else 1.0) * (0.8 if len(told) == 2 else 1.0),
         why=f"with one antenna turned a quarter turn the cross-polar discrimination of both leaves {db(-crossed.a_db)} less, "
         "in both directions" + ("; a radio on two polarizations may find its chains exchanged instead" if dual else ""),
         settled_by="the marks of polarization on both antennas, or one of them turned a quarter turn",

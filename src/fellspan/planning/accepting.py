@@ -7,7 +7,7 @@ from dataclasses import dataclass, replace
 
 from fellspan.design.acceptance import in_ladder_order, rank_causes
 from fellspan.design.acceptance_built import built_checks
-from fellspan.design.acceptance_directions import IMBALANCE_DB, SAME_POWER_DB, Judged, judge
+from fellspan.design.acceptance_directions import IMBALANCE_DB, SAME_POWER_DB, SWING_HELD_DB, Judged, judge
 from fellspan.design.acceptance_hypotheses import DESK, ENDS, GROUND, MAST, Change, Check, Numbers, db, label
 from fellspan.design.acceptance_result import AcceptanceResult, Cause, DirectionCheck, PathAsBuilt
 from fellspan.design.as_built import AsBuilt
@@ -27,6 +27,21 @@ _ORDER: tuple[PathVerdict, ...] = ("clear", "marginal", "obstructed")
 NO_LEVEL = "the link is not expected to work as planned, so the plan has no level to accept by"
 WORTH_DB = 0.7
 """What the crew wrote down counts as a cause from this change on (our own figure)."""
+
+
+_TAPE = Check(rung=GROUND, text="measure both heights again with a tape, from the same reference as planned")
+_LOWER = Cause(
+    key="height",
+    title="antenna height or place as measured is not that of the plan",
+    fit="stated by the crew",
+    share=1.0,
+    change_a_db=0.0,
+    change_b_db=0.0,
+    why="the level of an ordinary day does not show it, but the path as built is worse than the one planned",
+    alike=(),
+    tells_apart="",
+    checks=(_TAPE.text,),
+)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -74,8 +89,8 @@ def accept_link(study: Study, planned: LinkPlan, built: AsBuilt, *, terrain: Ter
     if isinstance(placed, Assessment):
         ends = placed.result.ends
         levels = ends.a.antenna_amsl_m, ends.b.antenna_amsl_m
-    causes, checks, notes = _causes(numbers, stated, there=there, back=back)
     path = _path(result, placed)
+    causes, checks, notes = _causes(numbers, stated, there=there, back=back, worse=_is_worse(path))
     holds = _holds(link, built, path, (there, back))
     directions = there.check, back.check
     accepted = all(one.verdict == "accepted" for one in directions) and not holds
@@ -137,18 +152,15 @@ def _stated(
     link, result = planned.link, planned.result
     found: list[_Stated | None] = []
     if isinstance(placed, Assessment):
-        title, check = (
-            "antenna height or place as measured is not that of the plan",
-            "measure both heights again, with a tape",
-        )
-        found.append(_changed("height", title, placed.result, result, (GROUND, check)))
+        found.append(_changed("height", _LOWER.title, placed.result, result, _TAPE))
     _, lost = changed.stated_line(link, built)
     if lost:
         change = Change(words="", a_db=-lost, b_db=-lost)
-        check = Check(rung=MAST, text="shorten the line or take a better one, or put its loss into the study")
-        found.append(
-            _Stated(key="feeder", title="feeders as measured lose other than planned", change=change, checks=(check,))
+        title = (
+            "feeders as measured lose more than planned" if lost > 0.0 else "feeders as measured lose less than planned"
         )
+        line = Check(rung=MAST, text="shorten the line or take a better one, or put its loss into the study")
+        found.append(_Stated(key="feeder", title=title, change=change, checks=(line,)))
     other, turned = link, link
     for end in ENDS:
         told = built.end(end)
@@ -190,12 +202,15 @@ def _changed(key: str, title: str, new: LinkResult, planned: LinkResult, check: 
 
 
 def _causes(
-    numbers: Numbers, stated: tuple[_Stated, ...], *, there: Judged, back: Judged
+    numbers: Numbers, stated: tuple[_Stated, ...], *, there: Judged, back: Judged, worse: bool
 ) -> tuple[tuple[Cause, ...], list[Check], list[str]]:
     """Causes, the likeliest first; what the crew wrote down leads where it brings the levels nearer."""
     notes: list[str] = []
     listed: list[Cause] = []
     checks: list[Check] = []
+    if worse and "height" not in {one.key for one in stated}:
+        listed.append(_LOWER)
+        checks.append(_TAPE)
     for end, judged in (("A", there), ("B", back)):
         if abs(judged.stated_change_db) > SAME_POWER_DB:
             check = Check(rung=DESK, text=f"set power and modulation at {end} as planned, and read again")
@@ -214,10 +229,10 @@ def _causes(
             notes.append(
                 f"{one.title}: that should change the level by {steps[0]:+.1f} dB, and it did not; check what was written down"
             )
-    chains = any(_uneven(judged) for judged in (there, back))
+    told = any(_uneven(judged) or judged.check.swing_db >= SWING_HELD_DB for judged in (there, back))
     left = [None if off is None else off - part for off, part in zip(offs, shift, strict=True)]
     bands = back.check.band_db, there.check.band_db
-    if chains or any(off is not None and abs(off) > band for off, band in zip(left, bands, strict=True)):
+    if told or any(off is not None and abs(off) > band for off, band in zip(left, bands, strict=True)):
         ranked, more = rank_causes(numbers, at_a=back, at_b=there, shift_a_db=shift[0], shift_b_db=shift[1])
         taken = {cause.key for cause in listed}
         listed += [cause for cause in ranked if cause.key not in taken]
@@ -306,15 +321,23 @@ def _path(planned: LinkResult, placed: Assessment | FellspanError | None) -> Pat
     )
 
 
+def _is_worse(path: PathAsBuilt) -> bool:
+    return path.verdict is not None and _ORDER.index(path.verdict) > _ORDER.index(path.planned_verdict)
+
+
 def _holds(link: Link, built: AsBuilt, path: PathAsBuilt, judged: tuple[Judged, Judged]) -> tuple[str, ...]:
     """What stands against acceptance whatever the levels are."""
     found: list[str] = []
-    if path.verdict is not None and _ORDER.index(path.verdict) > _ORDER.index(path.planned_verdict):
+    if _is_worse(path):
         found.append(f"{path.sentence}: the level of today says nothing of the worst month")
     for one in judged:
         if one.read is not None and _uneven(one):
             low = f"chain {one.read.weakest} is {one.read.imbalance_db:.1f} dB under the best of the others"
             found.append(f"{one.check.direction}: {low}")
+        if one.check.swing_db >= SWING_HELD_DB:
+            found.append(
+                f"{one.check.direction}: readings of different times lie {one.check.swing_db:.1f} dB apart; find out why first"
+            )
     for end in ENDS:
         power = built.end(end).power_dbm
         if power is None:
