@@ -14,6 +14,7 @@ from fellspan.cli.layout import WIDTH, Ink, colours_wanted, cut, printable
 from fellspan.errors import UsageError
 from fellspan.exports.candidates import summary_json
 from fellspan.exports.candidates_folder import CHOSEN, NAMES, write_run
+from fellspan.planning.planner import open_terrain
 from fellspan.quantities import AntennaHeight
 from fellspan.runs.inputs import local_files, run_facts
 from fellspan.runs.listing import PairList
@@ -48,13 +49,14 @@ def run_candidates(asked: Asked) -> None:
         asked.study, hubs=asked.hubs, places=asked.places, pairs=asked.pairs, wishes=asked.wishes
     )
     plan = _plan(screening, asked)
-    notes = list(screening.notes)
+    with open_terrain(screening.study) as terrain:  # a raster that cannot be read is told before anything is made
+        notes = tuple(dict.fromkeys((*screening.notes, *terrain.notes)))
     with (
         locked(asked.out),
         open_store(asked.out, plan, fresh=asked.fresh, outputs=NAMES) as store,
         _Progress() as progress,
     ):
-        finish_run(store, plan, watcher=progress, note=notes.append)
+        finish_run(store, plan, watcher=progress, note=_tell)
         summary = write_run(asked.out, store, screening, keep=asked.best, notes=notes, tell=progress.writing)
     if asked.as_json:
         typer.echo(summary_json(summary, title=screening.study.title, notes=notes), nl=False)
@@ -68,6 +70,10 @@ def run_candidates(asked: Asked) -> None:
         ink=Ink(colours=colours_wanted()),
     )
     typer.echo("\n".join(lines))
+
+
+def _tell(note: str) -> None:
+    typer.echo(f"fellspan: {note}", err=True)
 
 
 def _plan(screening: Screening, asked: Asked) -> RunPlan:

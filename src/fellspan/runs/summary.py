@@ -67,7 +67,10 @@ class PairRow(NamedTuple):
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class HubCount:
-    """What became of the pairs of one hub: by state, those whose signal meets too, and the places that it is the best for."""
+    """What became of the pairs of one hub: by state, and those whose signal meets too.
+
+    `best_for` counts the places that it is the best hub of, by a path that is not obstructed.
+    """
 
     name: str
     pairs: int
@@ -215,7 +218,8 @@ def _hubs(store: Store, candidates: Candidates, best: BestHubs) -> tuple[HubCoun
         counts[hub, state] = count
         if state <= STATES.index("clear-bare"):
             good[hub] += met
-    first = np.bincount(best.hub[best.hub >= 0], minlength=len(candidates.hubs.name))
+    carried = best.hub[(best.hub >= 0) & (best.state <= STATES.index("marginal"))]
+    first = np.bincount(carried, minlength=len(candidates.hubs.name))
     return tuple(
         HubCount(
             name=name,

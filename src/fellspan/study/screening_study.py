@@ -214,13 +214,18 @@ class _Kinds:
     def _described(self, sector: SectorRow) -> AntennaTable | None:
         """The table of an antenna that a row describes by model or data-sheet numbers."""
         row = sector.row
-        values: dict[str, object] = {"name": f"antenna of {sector.row.where}"}
+        values: dict[str, object] = {"name": f"of {self.hubs.rows.file}, {row.where}"}
         for column in _ITSELF[1:]:
             text = row.text(column)
             if text and column in ("azimuth_width", "elevation_width"):
                 values[column] = _degrees(text)
             elif text:
                 values[column] = text
+        if row.text("azimuth_width") and values["azimuth_width"] != 360.0 and not row.text("front_to_back"):
+            self.hubs.rows.add_problem(
+                row, "front_to_back is missing", "the data sheet of a sector gives it, as '25 dB'"
+            )
+            return None
         try:
             return AntennaTable.model_validate(values)
         except ValidationError as error:

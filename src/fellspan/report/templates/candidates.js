@@ -67,11 +67,12 @@
     else { drawLines(pen); drawPlaces(pen, size); }
     drawHubs(pen, size);
   }
+  function carries(hub, index) { return places.hub[index] === hub && places.state[index] <= 2; }
   function drawLines(pen) {
     if (shownHub < 0 && shownPlace < 0) return;
     pen.strokeStyle = ink; pen.lineWidth = 1; pen.globalAlpha = 0.55;
     places.hub.forEach(function (hub, index) {
-      if (hub < 0 || (shownPlace >= 0 ? index !== shownPlace : hub !== shownHub)) return;
+      if (hub < 0 || (shownPlace >= 0 ? index !== shownPlace : !carries(shownHub, index))) return;
       var from = at(hubs.lat[hub], hubs.lon[hub]), to = at(places.lat[index], places.lon[index]);
       pen.beginPath(); pen.moveTo(from.x, from.y); pen.lineTo(to.x, to.y); pen.stroke();
     });
@@ -156,7 +157,7 @@
   }
   function chooseHub(index) {
     shownHub = index; shownPlace = -1;
-    var count = places.hub.filter(function (hub) { return hub === index; }).length;
+    var count = places.hub.filter(function (_, place) { return carries(index, place); }).length;
     tell(hubs.name[index], data.squares ? [] : ["The best hub for " + count + (count === 1 ? " place" : " places") + ", joined by lines."]);
     draw();
   }
