@@ -12,10 +12,11 @@ import numpy as np
 from numpy.typing import NDArray
 
 from fellspan.design import heights_words as words
+from fellspan.design.answers import LOWER_BY_M, answers_of, draws_near, ground_of
 from fellspan.design.boundary import Boundary
 from fellspan.design.case import Case, Rules
 from fellspan.design.confidence import ConfidenceResult, confidence_of, quantile
-from fellspan.design.draws import Draws, draw, errors_of, marginal_m
+from fellspan.design.draws import Draws, errors_of, marginal_m
 from fellspan.design.error_model import ErrorModel, default_error_model
 from fellspan.design.heights_result import (
     HeightKind,
@@ -33,9 +34,6 @@ from fellspan.links.site import Link
 
 Floats = NDArray[np.float64]
 
-LOWER_BY_M: Final = 0.05
-"""A height counts as the lowest if this much less is not enough."""
-_MOST_LOWERINGS: Final = 400
 _MOST_RAISINGS: Final = 40
 _BEYOND_M: Final = 1_000.0
 CURVE_POINTS: Final = 15
@@ -66,13 +64,11 @@ def design_heights(
         How far ahead the trees of the profile were grown already; it is said, not applied.
     """
     case = Case.of(link, assessment, settings)
-    ground = _ground(case, heights)
-    kinds: tuple[HeightKind, ...] = ("a alone", "b alone", "equal", "alike", "least total")
-    if heights.counts_cost:
-        kinds = (*kinds, "least cost")
-    raw = {kind: _raw(case, kind, ground, heights) for kind in kinds}
+    ground = ground_of(case, heights)
+    raw = answers_of(case, ground, heights)
+    kinds = tuple(raw)
     model = model or default_error_model(case.profile)
-    draws = draw(case, model, _lines(case, raw))
+    draws = draws_near(case, raw, model)
     search = _Search(
         case=case,
         draws=draws,
@@ -257,43 +253,6 @@ class _Search:
         return tuple(found)
 
 
-def _ground(case: Case, heights: HeightSettings) -> Ground:
-    a, b = heights.limits_a, heights.limits_b
-    return Ground(
-        base_a_m=case.base_a_m,
-        base_b_m=case.base_b_m,
-        a_from_m=case.base_a_m + (a.low_m or 0.0),
-        a_to_m=case.base_a_m + (math.inf if a.high_m is None else a.high_m),
-        b_from_m=case.base_b_m + (b.low_m or 0.0),
-        b_to_m=case.base_b_m + (math.inf if b.high_m is None else b.high_m),
-        planned=case.planned,
-    )
-
-
-def _raw(case: Case, kind: HeightKind, ground: Ground, heights: HeightSettings) -> Levels | None:
-    """The exact answer under the rules that apply at it; lowered further where lower heights bring milder rules."""
-    levels: Levels | None = None
-    for rules in case.rules:
-        boundary = Boundary.over(case.share, rules.most_m)
-        levels = exact(kind, boundary, case.share, rules.most_m, ground, heights)
-        if levels is None or case.rules_at(*levels) is rules:
-            return levels
-    return None if levels is None else _lowered(case, kind, levels, ground)
-
-
-def _lowered(case: Case, kind: HeightKind, levels: Levels, ground: Ground) -> Levels:
-    """The rules that apply are milder than those solved for: come down while the clearance rules still hold."""
-    a, b = levels
-    ways = {"a alone": ((1.0, 0.0),), "b alone": ((0.0, 1.0),), "equal": ((1.0, 1.0),), "alike": ((1.0, 1.0),)}
-    for down_a, down_b in ways.get(kind, ((1.0, 1.0), (1.0, 0.0), (0.0, 1.0))):
-        for _ in range(_MOST_LOWERINGS):
-            lower = a - down_a * LOWER_BY_M, b - down_b * LOWER_BY_M
-            if not (ground.within(lower) or kind in ("a alone", "b alone")) or not case.passes(*lower):
-                break
-            a, b = lower
-    return a, b
-
-
 def _option(search: _Search, kind: HeightKind, raw: Levels | None, build: Levels | None) -> HeightOption:
     case, ground = search.case, search.ground
     governs = None if raw is None else _touch(case, raw)
@@ -364,12 +323,6 @@ def _pair(levels: Levels, ground: Ground) -> Pair:
 def _tidy(pair: Pair) -> Pair:
     """Steps of a mast without the dust of arithmetic."""
     return replace(pair, a_m=round(pair.a_m, 6), b_m=round(pair.b_m, 6))
-
-
-def _lines(case: Case, raw: dict[HeightKind, Levels | None]) -> list[tuple[Rules, float, float]]:
-    """Lines near which samples are drawn: as planned, and every answer, under all rules."""
-    levels = {case.planned, *(pair for pair in raw.values() if pair is not None)}
-    return [(rules, *pair) for pair in sorted(levels) for rules in case.rules]
 
 
 def _rules_shown(case: Case, raw: dict[HeightKind, Levels | None]) -> Rules:

@@ -7,7 +7,7 @@ import math
 
 import numpy as np
 
-from fellspan.design.heights import design_heights
+from fellspan.design.answers import drawn_confidence
 from fellspan.errors import FellspanError, TerrainGapError
 from fellspan.geodesy.position import Position
 from fellspan.links.antenna_gains import antennas_of
@@ -113,8 +113,7 @@ def draw_single(candidates: Candidates, columns: Columns, row: int, *, terrain: 
 
 def with_draws(columns: Columns, row: int, link: Link, assessment: Assessment, settings: AssessSettings) -> None:
     """The lesser of both confidences, as planning takes it, and the verdict that it allows."""
-    _, drawn = design_heights(link, assessment, settings)
-    sure = min(assessment.result.confidence, drawn.all_hold)
+    sure = min(assessment.result.confidence, drawn_confidence(link, assessment, settings))
     columns.confidence[row] = sure
     if sure < settings.confidence:
         columns.verdict[row] = PATH_VERDICTS.index("marginal")
