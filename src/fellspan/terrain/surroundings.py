@@ -19,7 +19,7 @@ from fellspan.terrain.cover import CoverLayer, combine
 from fellspan.terrain.fan import Fan
 from fellspan.terrain.handles import HandlePool
 from fellspan.terrain.placing import to_crs
-from fellspan.terrain.plates import Plane, Plate, read_plate
+from fellspan.terrain.plates import MOST_CELLS, Plane, Plate, read_plate
 from fellspan.terrain.raster_file import RasterFile, chained, on_plane
 from fellspan.terrain.rays import CellGrid, Floats, Rays
 from fellspan.terrain.stack import RasterStack
@@ -198,6 +198,7 @@ def _plates(stack: RasterStack, rays: Rays, handles: HandlePool) -> list[_Placed
                 handles,
                 columns=(float(at_columns.min()) + shift - 1.0, float(at_columns.max()) + shift + 1.0),
                 rows=(float(at_rows.min()) - 1.0, float(at_rows.max()) + 1.0),
+                most_cells=MOST_CELLS,
             )
             if plate is not None:
                 moved = columns.copy()
@@ -333,7 +334,7 @@ def grid_around(
         low_c, high_c = max(low_c, float(np.nanmin(c))), min(high_c, float(np.nanmax(c)))
         low_r, high_r = max(low_r, float(np.nanmin(r))), min(high_r, float(np.nanmax(r)))
     own_m = file.cell_at_m(float(x[0]), float(y[0]))
-    factor = 1 if cell_m is None else max(1, math.floor(cell_m / max(own_m) + 1e-6))
+    factor = 1 if cell_m is None else max(1, math.floor(cell_m / max(own_m) + 0.02))
     left, top = math.floor(low_c / factor) * factor, math.floor(low_r / factor) * factor
     wide, high = math.ceil((high_c - left) / factor), math.ceil((high_r - top) / factor)
     if wide < 1 or high < 1:
