@@ -57,7 +57,7 @@ def sea_share(profile: PathProfile) -> float:
 
 def path_rows(profile: PathProfile, standing: Standing, *, a_amsl_m: float, b_amsl_m: float) -> PathRows:
     """One path as the arrays that losses are worked out from."""
-    return PathRows(
+    return PathRows.of(
         distance_m=profile.distance_m,
         ground_m=profile.ground_m,
         surface_m=standing.surface_m,

@@ -11,13 +11,15 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from fellspan.propagation import (
-    delta_bullington_loss_db,
     earth_bulge_m,
+    effective_heights_m,
+    spherical_earth_loss_db,
     woodland_loss_db,
     woodland_loss_spread_db,
     woodland_saturation_db,
     woodland_specific_db_per_m,
 )
+from fellspan.propagation.bullington import fitted_delta_bullington_loss_db
 from fellspan.vocabulary import Polarization
 
 Floats = NDArray[np.float64]
@@ -32,7 +34,8 @@ class PathRows:
     """Paths laid on the terrain, own buildings out; the last axis of the first four runs along the path.
 
     `surface_m` is what a ray must clear, `trees` where that is trees; None where there are none anywhere. Levels are m above
-    sea level, `sea_fraction` is the share of the path over open sea.
+    sea level, `a_height_m` and `b_height_m` those above the smooth Earth fitted to the ground; `sea_fraction` is the share of
+    the path over open sea.
     """
 
     distance_m: Floats
@@ -41,7 +44,35 @@ class PathRows:
     trees: Flags | None
     a_amsl_m: Floats
     b_amsl_m: Floats
+    a_height_m: Floats
+    b_height_m: Floats
     sea_fraction: Floats
+
+    @classmethod
+    def of(
+        cls,
+        *,
+        distance_m: Floats,
+        ground_m: Floats,
+        surface_m: Floats,
+        trees: Flags | None,
+        a_amsl_m: Floats,
+        b_amsl_m: Floats,
+        sea_fraction: Floats,
+    ) -> "PathRows":
+        """Paths with the smooth Earth fitted to their ground."""
+        a_height, b_height = effective_heights_m(distance_m, ground_m, a_amsl_m=a_amsl_m, b_amsl_m=b_amsl_m)
+        return cls(
+            distance_m=distance_m,
+            ground_m=ground_m,
+            surface_m=surface_m,
+            trees=trees,
+            a_amsl_m=a_amsl_m,
+            b_amsl_m=b_amsl_m,
+            a_height_m=np.asarray(a_height),
+            b_height_m=np.asarray(b_height),
+            sea_fraction=sea_fraction,
+        )
 
     @property
     def length_m(self) -> Floats:
@@ -63,6 +94,8 @@ class PathRows:
             trees=None if self.trees is None else self.trees[rows],
             a_amsl_m=self.a_amsl_m[rows],
             b_amsl_m=self.b_amsl_m[rows],
+            a_height_m=self.a_height_m[rows],
+            b_height_m=self.b_height_m[rows],
             sea_fraction=self.sea_fraction[rows],
         )
 
@@ -166,19 +199,54 @@ def _diffraction_db(
     rows: PathRows, surface_m: Floats, *, k: Floats, frequency_hz: Floats, polarization: Polarization
 ) -> Floats:
     """Shape (..., m, f)."""
-    ground = rows.ground_m[..., np.newaxis, np.newaxis, :]
-    loss = delta_bullington_loss_db(
+    loss = fitted_delta_bullington_loss_db(
         rows.distance_m[..., np.newaxis, np.newaxis, :],
-        ground,
+        surface_m[..., np.newaxis, np.newaxis, :],
         a_amsl_m=rows.a_amsl_m[..., np.newaxis, np.newaxis],
         b_amsl_m=rows.b_amsl_m[..., np.newaxis, np.newaxis],
+        a_height_m=rows.a_height_m[..., np.newaxis, np.newaxis],
+        b_height_m=rows.b_height_m[..., np.newaxis, np.newaxis],
         frequency_hz=frequency_hz,
         k=k[..., np.newaxis],
         polarization=polarization,
         sea_fraction=rows.sea_fraction[..., np.newaxis, np.newaxis],
-        surface_m=None if surface_m is rows.ground_m else surface_m[..., np.newaxis, np.newaxis, :],
     )
     return np.maximum(np.asarray(loss, dtype=np.float64), 0.0)
+
+
+def most_db(
+    rows: PathRows, over_db: Floats, *, inverse_k: Floats, frequency_hz: Floats, polarization: Polarization
+) -> Floats:
+    """What the cheaper way does not exceed at any of several k, dB, shape (..., f); cheap, and sure rather than near.
+
+    Parameters
+    ----------
+    rows, frequency_hz, polarization
+        As for `ways_past_trees`.
+    over_db
+        Diffraction over everything at the greatest of the values of 1/k, shape (..., f).
+    inverse_k
+        The values of 1/k, shape (..., m).
+
+    Notes
+    -----
+    The more the Earth bulges, the more the Bullington part costs: its slopes and heights above the ray only grow. The smooth
+    Earth adds no more than its whole loss, which asks for no samples.
+    """
+    with np.errstate(divide="ignore"):
+        k = 1.0 / inverse_k
+    smooth = spherical_earth_loss_db(
+        rows.length_m[..., np.newaxis, np.newaxis],
+        a_height_m=rows.a_height_m[..., np.newaxis, np.newaxis],
+        b_height_m=rows.b_height_m[..., np.newaxis, np.newaxis],
+        frequency_hz=frequency_hz,
+        k=k[..., np.newaxis],
+        polarization=polarization,
+        sea_fraction=rows.sea_fraction[..., np.newaxis, np.newaxis],
+    )
+    # Where k is below 0 the smooth Earth is not defined, and adds nothing.
+    counted = np.where(inverse_k[..., np.newaxis] < 0.0, 0.0, np.maximum(smooth, 0.0))
+    return np.asarray(over_db + np.max(counted, axis=-2))
 
 
 def woods_db(depth_m: Floats, frequency_hz: Floats) -> tuple[Floats, Floats, Floats]:

@@ -6,7 +6,7 @@ from typing import Final
 
 from fellspan.propagation._arrays import FloatArray
 
-BLOCK: Final = 1 << 14
+BLOCK: Final = 1 << 15
 """Samples (times what each is worked out for) in one piece; a few temporaries of that many doubles fit a second-level cache."""
 
 

@@ -178,26 +178,25 @@ def effective_heights_m(
 def _smooth_ends_m(d: FloatArray, h: FloatArray, a: FloatArray, b: FloatArray) -> tuple[FloatArray, FloatArray]:
     """Levels of the smooth surface at both ends, before it is held below the ground there."""
     # (58), (59) summed by samples instead of by stretches: every height enters with the stretches on both sides of it.
-    length = d[..., -1]
-    before = np.concatenate((d[..., :1], d[..., :-1]), axis=-1)
-    after = np.concatenate((d[..., 1:], d[..., -1:]), axis=-1)
-    weight = after - before
-    v1 = np.sum(weight * h, axis=-1)  # (58)
-    after += before
-    after += d
-    weight *= after
-    v2 = np.sum(weight * h, axis=-1)  # (59)
+    length, from_a, inner = d[..., -1], d[..., 1:-1], h[..., 1:-1]
+    before, after = d[..., :-2], d[..., 2:]
+    first, last = d[..., 1] * h[..., 0], (length - d[..., -2]) * h[..., -1]
+    weighed = (after - before) * inner
+    v1 = np.sum(weighed, axis=-1) + first + last  # (58)
+    moment = after + before
+    moment += from_a
+    v2 = np.sum(np.multiply(moment, weighed, out=weighed), axis=-1)  # (59)
+    v2 = v2 + first * d[..., 1] + last * (2.0 * length + d[..., -2])
     fit_a = (2.0 * v1 * length - v2) / length**2  # (60)
     fit_b = (v2 - v1 * length) / length**2  # (61)
 
-    from_a = d[..., 1:-1]
-    above = h[..., 1:-1] - _ray(a, b, from_a, d[..., -1:])  # no bulge here
+    above = inner - _ray(a, b, from_a, d[..., -1:])  # no bulge here
     highest = _highest(above)
-    clear = highest <= 0.0
-    if clear.all():
+    if not np.any(highest > 0.0):
         return fit_a, fit_b
     toward_a, toward_b = _highest(above / from_a), _highest(above / (d[..., -1:] - from_a))
     share_a = toward_a / (toward_a + toward_b)
+    clear = highest <= 0.0
     return (
         np.where(clear, fit_a, fit_a - highest * share_a),  # (63)
         np.where(clear, fit_b, fit_b - highest * (1.0 - share_a)),
@@ -250,12 +249,39 @@ def delta_bullington_loss_db(
     part is undefined and adds nothing; at infinite k it is the flat-Earth limit. The surface heights follow P.1812-8,
     equations (13) and (83) to (87). Source key: p526-16-delta-bullington.
     """
-    height_a, height_b = effective_heights_m(distance_m, ground_m, a_amsl_m=a_amsl_m, b_amsl_m=b_amsl_m)
-    a, b = as_floats(height_a), as_floats(height_b)
+    a_height_m, b_height_m = effective_heights_m(distance_m, ground_m, a_amsl_m=a_amsl_m, b_amsl_m=b_amsl_m)
+    return fitted_delta_bullington_loss_db(
+        distance_m,
+        ground_m if surface_m is None else surface_m,
+        a_amsl_m=a_amsl_m,
+        b_amsl_m=b_amsl_m,
+        a_height_m=a_height_m,
+        b_height_m=b_height_m,
+        frequency_hz=frequency_hz,
+        k=k,
+        polarization=polarization,
+        sea_fraction=sea_fraction,
+    )
+
+
+def fitted_delta_bullington_loss_db(
+    distance_m: ArrayLike,
+    height_m: ArrayLike,
+    *,
+    a_amsl_m: ArrayLike,
+    b_amsl_m: ArrayLike,
+    a_height_m: ArrayLike,
+    b_height_m: ArrayLike,
+    frequency_hz: ArrayLike,
+    k: ArrayLike,
+    polarization: ArrayLike,
+    sea_fraction: ArrayLike,
+) -> Result:
+    """`delta_bullington_loss_db` over heights (..., n) where the effective heights of the antennas, m, are known already."""
+    a, b = as_floats(a_height_m), as_floats(b_height_m)
     with quiet():
         path = _Path(distance_m, k, frequency_hz)
-        profile = as_floats(ground_m if surface_m is None else surface_m)
-        actual = path.bullington_db(profile, as_floats(a_amsl_m), as_floats(b_amsl_m))
+        actual = path.bullington_db(as_floats(height_m), as_floats(a_amsl_m), as_floats(b_amsl_m))
         spherical = as_floats(
             spherical_earth_loss_db(
                 path.length,

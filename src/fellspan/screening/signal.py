@@ -14,7 +14,7 @@ from fellspan.screening.laid import LaidBucket
 from fellspan.screening.pairs import UNKNOWN, Candidates
 from fellspan.screening.signal_ends import PairEnds, best_sector, lines_dbm, pair_ends
 from fellspan.screening.signal_fading import Shares, shares_of_year
-from fellspan.screening.signal_level import Level, climate_of, level_of, rows_of_bucket
+from fellspan.screening.signal_level import Level, climate_of, level_of, rows_of_bucket, spread_columns
 
 __all__ = ["SignalColumns", "best_sector", "signal_columns"]
 
@@ -65,7 +65,8 @@ def signal_columns(candidates: Candidates, bucket: LaidBucket, *, sector: Index)
     has_gains = np.isfinite(ends.gain_a_dbi) & np.isfinite(ends.gain_b_dbi)
     climate = climate_of(candidates, bucket, has_margin=has_gains & weather_known)
     rows = rows_of_bucket(bucket)
-    level = level_of(candidates, rows, climate)
+    spread = spread_columns(rows, climate)
+    level = level_of(candidates, rows, climate, spread)
     power = row_power_dbm(radio, None if wanted is None else table[wanted])
     at_place, at_hub = (
         _received_dbm(candidates, level, ends, sector=sector, power_dbm=power, to_place=to_place)
@@ -79,6 +80,7 @@ def signal_columns(candidates: Candidates, bucket: LaidBucket, *, sector: Index)
         climate,
         ends,
         level=level,
+        spread=spread,
         sector=sector,
         latitude_deg=bucket.middle_latitude_deg,
         margins_db=(margin_place, margin_hub),

@@ -17,16 +17,18 @@ from fellspan.links.outages import Causes, outage_of_year
 from fellspan.links.receivers import receiver_of, rows_of, wanted_index
 from fellspan.links.site import Antenna
 from fellspan.links.verdicts import SIGNAL_BAND_DB
-from fellspan.links.ways_past_trees import PathRows, depth_in_trees_m, mean_over_path_m, ways_past_trees
+from fellspan.links.ways_past_trees import PathRows, depth_in_trees_m, mean_over_path_m, most_db, ways_past_trees
 from fellspan.propagation import Outage, one_way_outage, two_way_outage
 from fellspan.screening.pairs import Candidates
 from fellspan.screening.signal_ends import PairEnds, groups_of_receivers
-from fellspan.screening.signal_level import Level
+from fellspan.screening.signal_level import Level, SpreadColumns
 
 Floats = NDArray[np.float64]
 Index = NDArray[np.int64]
 
 _ALL: Final = 100.0
+_SURELY_DB: Final = 1e-6
+"""So much below a margin that rounding does not matter."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -48,6 +50,7 @@ def shares_of_year(
     ends: PairEnds,
     *,
     level: Level,
+    spread: SpreadColumns,
     sector: Index,
     latitude_deg: Floats,
     margins_db: tuple[Floats, Floats],
@@ -66,10 +69,19 @@ def shares_of_year(
     both = np.where(known & (least < 0.0), 0.0, np.nan)
     some = np.flatnonzero(asked)
     if some.size:
-        fading = _Fading(
-            candidates, rows, climate, ends, level=level, sector=sector, latitude_deg=latitude_deg, some=some
-        )
         margins = margins_db[0][some], margins_db[1][some]
+        fading = _Fading(
+            candidates,
+            rows.part(some),
+            climate.part(some),
+            ends,
+            level=level,
+            spread=spread.part(some),
+            sector=sector,
+            latitude_deg=latitude_deg[some],
+            margins_db=margins,
+            some=some,
+        )
         outages = fading.outages(margins)
         for share, outage, margin in zip(each, outages, margins, strict=True):
             share[some] = _share(outage, margin)
@@ -94,37 +106,36 @@ class _Fading:
     def __init__(
         self,
         candidates: Candidates,
-        rows: PathRows,
+        path: PathRows,
         climate: ClimateColumns,
         ends: PairEnds,
         *,
         level: Level,
+        spread: SpreadColumns,
         sector: Index,
         latitude_deg: Floats,
+        margins_db: tuple[Floats, Floats],
         some: Index,
     ) -> None:
         self._candidates, self._ends, self._some, self._sector = candidates, ends, some, sector[some]
         radio, weather = candidates.radio, candidates.settings.weather
-        path, climate = rows.part(some), climate.part(some)
         columns = fades.PathColumns(
             length_m=path.length_m,
             a_amsl_m=path.a_amsl_m,
             b_amsl_m=path.b_amsl_m,
             mean_ground_m=mean_over_path_m(path.distance_m, path.ground_m),
-            latitude_deg=latitude_deg[some],
+            latitude_deg=latitude_deg,
         )
-        year, median = climate.gradient_tail_n_per_km, climate.gradient_median_n_per_km
-        worst = fades.worst_month_n_per_km(climate, length_m=columns.length_m)
-        nodes = fades.nodes_inverse_k(median, year_n_per_km=year, worst_n_per_km=worst)
-        ways = ways_past_trees(
-            path,
-            inverse_k=nodes,
-            frequency_hz=level.frequency_hz,
-            polarization=radio.polarization,
-            depth_m=depth_in_trees_m(path, k=candidates.settings.median_k),
-        )
-        cheaper = ways.cheaper_db
         in_level = level.diffraction_db[some] + level.vegetation_db[some]
+        cheaper = _by_inverse_k_db(
+            candidates,
+            path,
+            spread,
+            level,
+            lowest_k_db=level.lowest_k_db[some],
+            in_level_db=in_level,
+            margins_db=margins_db,
+        )
         self._causes: dict[float, Causes] = {}
         for frequency in dict.fromkeys(radio.transmit_hz):
             column = level.at(frequency)
@@ -144,10 +155,10 @@ class _Fading:
                 length_m=columns.length_m,
                 latitude_deg=columns.latitude_deg,
                 inclination_mrad=columns.inclination_mrad,
-                median_n_per_km=median,
-                year_n_per_km=year,
-                worst_month_n_per_km=worst,
-                inverse_k=nodes,
+                median_n_per_km=spread.median_n_per_km,
+                year_n_per_km=spread.year_n_per_km,
+                worst_month_n_per_km=spread.worst_month_n_per_km,
+                inverse_k=spread.inverse_k,
                 by_inverse_k_db=cheaper[..., column],
                 loss_in_level_db=in_level[:, column],
             )
@@ -197,3 +208,35 @@ def _joined(parts: list[tuple[Index, Outage]], count: int) -> Outage:
     for rows, outage in parts:
         shares[:, rows] = outage.rain_percent, outage.multipath_percent, outage.diffraction_percent
     return one_way_outage(rain_percent=shares[0], multipath_percent=shares[1], diffraction_percent=shares[2])
+
+
+def _by_inverse_k_db(
+    candidates: Candidates,
+    path: PathRows,
+    spread: SpreadColumns,
+    level: Level,
+    *,
+    lowest_k_db: Floats,
+    in_level_db: Floats,
+    margins_db: tuple[Floats, Floats],
+) -> Floats:
+    """Diffraction and trees by k on the cheaper way, dB, shape (p, m, f); 0 where they cannot use a margin up at any k."""
+    frequency, polarization = level.frequency_hz, candidates.radio.polarization
+    most = most_db(path, lowest_k_db, inverse_k=spread.inverse_k, frequency_hz=frequency, polarization=polarization)
+    enough = np.ones(most.shape[0], dtype=np.bool_)
+    for margin, transmit_hz in zip(margins_db, candidates.radio.transmit_hz, strict=True):
+        column = level.at(transmit_hz)
+        enough &= most[:, column] < margin + in_level_db[:, column] - _SURELY_DB
+    found = np.zeros((*spread.inverse_k.shape, frequency.size))
+    rows = np.flatnonzero(~enough)
+    if rows.size:
+        few = path.part(rows)
+        ways = ways_past_trees(
+            few,
+            inverse_k=spread.inverse_k[rows],
+            frequency_hz=frequency,
+            polarization=polarization,
+            depth_m=depth_in_trees_m(few, k=candidates.settings.median_k),
+        )
+        found[rows] = ways.cheaper_db
+    return found

@@ -6,6 +6,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from fellspan.climate.columns import ClimateColumns, climate_columns
+from fellspan.links import fades
 from fellspan.links.path_loss import TREE
 from fellspan.links.signal_path import air_level_m
 from fellspan.links.ways_past_trees import PathRows, depth_in_trees_m, share_of_path, ways_past_trees
@@ -25,6 +26,8 @@ class Level:
     vegetation_db: Floats
     total_db: Floats
     """Free space, diffraction, trees and gases."""
+    lowest_k_db: Floats
+    """Diffraction over everything at the lowest k at which it is worked out."""
 
     def at(self, frequency_hz: float) -> int:
         """The column of a frequency."""
@@ -34,7 +37,7 @@ class Level:
 def rows_of_bucket(bucket: LaidBucket) -> PathRows:
     """The paths of a bucket as losses are worked out from."""
     count = bucket.length_m.size
-    return PathRows(
+    return PathRows.of(
         distance_m=bucket.distance_m,
         ground_m=bucket.ground_m,
         surface_m=bucket.surface_m,
@@ -66,13 +69,40 @@ def climate_of(candidates: Candidates, bucket: LaidBucket, *, has_margin: NDArra
     return figures(True).where(has_margin, figures(False))
 
 
-def level_of(candidates: Candidates, rows: PathRows, climate: ClimateColumns) -> Level:
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class SpreadColumns:
+    """Spread of the gradient of refractivity over paths, N/km, shape (p,), and the values of 1/k that it makes one ask."""
+
+    median_n_per_km: Floats
+    year_n_per_km: Floats
+    worst_month_n_per_km: Floats
+    inverse_k: Floats
+    """Rising, shape (p, m)."""
+
+    def part(self, rows: NDArray[np.int64]) -> "SpreadColumns":
+        """Some of the paths."""
+        return SpreadColumns(**{name: getattr(self, name)[rows] for name in self.__slots__})
+
+
+def spread_columns(rows: PathRows, climate: ClimateColumns) -> SpreadColumns:
+    """How far the gradient spreads over paths in their climates."""
+    median, year = climate.gradient_median_n_per_km, climate.gradient_tail_n_per_km
+    worst = fades.worst_month_n_per_km(climate, length_m=rows.length_m)
+    return SpreadColumns(
+        median_n_per_km=median,
+        year_n_per_km=year,
+        worst_month_n_per_km=worst,
+        inverse_k=fades.nodes_inverse_k(median, year_n_per_km=year, worst_n_per_km=worst),
+    )
+
+
+def level_of(candidates: Candidates, rows: PathRows, climate: ClimateColumns, spread: SpreadColumns) -> Level:
     """What paths take in clear air at the median k, at the frequencies of the radio."""
     radio, k = candidates.radio, candidates.settings.median_k
     frequency = np.array(list(dict.fromkeys(radio.transmit_hz)))
     ways = ways_past_trees(
         rows,
-        inverse_k=np.array([inverse_k(k)]),
+        inverse_k=np.stack((np.full(rows.length_m.shape, inverse_k(k)), spread.inverse_k[:, -1]), axis=-1),
         frequency_hz=frequency,
         polarization=radio.polarization,
         depth_m=depth_in_trees_m(rows, k=k),
@@ -94,4 +124,5 @@ def level_of(candidates: Candidates, rows: PathRows, climate: ClimateColumns) ->
         diffraction_db=diffraction,
         vegetation_db=vegetation,
         total_db=free + diffraction + vegetation + gases,
+        lowest_k_db=ways.over_db[:, 1],
     )
