@@ -63,6 +63,7 @@ def write_folder(plan: StudyPlan, out_dir: str | Path, *, progress: Progress | N
 
 def report_files(plan: StudyPlan, *, progress: Progress | None = None) -> dict[str, str]:
     """File names and texts of the whole report, `results.json` last."""
+    from fellspan.report.drawing_files import drawing_files
     from fellspan.report.pages import render_pages
 
     points = survey_points(plan)
@@ -87,6 +88,9 @@ def report_files(plan: StudyPlan, *, progress: Progress | None = None) -> dict[s
             progress(done, total, name)
 
     texts = render_pages(plan, progress=lambda done, _, name: tell(min(done, pages), name))
+    for page, text in list(texts.items()):
+        if page.startswith("link-"):
+            texts |= drawing_files(page, text)
     for done, (name, make) in enumerate(makers.items(), start=pages):
         tell(done, name)
         texts[name] = make()
@@ -160,11 +164,14 @@ def check_target(folder: Path) -> None:
 
 def report_names(plan: StudyPlan) -> tuple[str, ...]:
     """Names of the files that the report of a plan may have."""
+    from fellspan.report.drawing_files import drawing_names
+
     links = [linked.result.name for linked in plan.links]
     pages = [page_name(index, name) for index, name in enumerate(links)]
     crews = [crew_name(index, name, end) for index, name in enumerate(links) for end in ("a", "b")]
     profiles = [profile_name(index, name) for index, name in enumerate(links)]
-    return ("index.html", *pages, *crews, *_TABLES, *profiles, RESULTS)
+    drawings = [name for page in pages for name in drawing_names(page)]
+    return ("index.html", *pages, *crews, *drawings, *_TABLES, *profiles, RESULTS)
 
 
 def links_in(folder: Path) -> tuple[str, ...]:

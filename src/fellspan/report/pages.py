@@ -21,6 +21,7 @@ from fellspan.report import map_geometry as geometry
 from fellspan.report.antenna_section import antenna_section
 from fellspan.report.crew_sheet import crew_sheet
 from fellspan.report.decision_section import decision_section
+from fellspan.report.drawing_files import with_list
 from fellspan.report.equip_page import equip_view
 from fellspan.report.heights_section import heights_section
 from fellspan.report.horizon_section import horizon_section
@@ -120,7 +121,7 @@ def _link_page(plan: StudyPlan, index: int, link: LinkPlan, templates: Environme
         narrow=Markup(draw_profile(link, uid="narrow", sheet=NARROW)),
         scale=exaggeration_words(link),
     )
-    return templates.get_template("link.html.j2").render(
+    text = templates.get_template("link.html.j2").render(
         **_shared(plan, chart),
         link=view,
         obstructions=[(item.criterion, cut) for item in result.clearance for cut in item.obstructions],
@@ -146,6 +147,7 @@ def _link_page(plan: StudyPlan, index: int, link: LinkPlan, templates: Environme
         safety=safety_lines(),
         quiet=True,
     )
+    return with_list(view.page, text)
 
 
 def _crew_sheets(plan: StudyPlan, index: int, link: LinkPlan, templates: Environment) -> dict[str, str]:
