@@ -45,6 +45,7 @@ def heights_section(link: LinkPlan) -> HeightsSection | None:
         notes=(
             _legend(heights),
             *(f"{note[0].upper()}{note[1:]}." for note in notes),
+            *((errors,) if (errors := _errors(heights)) else ()),
             heights.checked,
         ),
         governs=told[0][4] if len({row[4] for row in told}) == 1 else "",
@@ -66,13 +67,24 @@ def _row(option: HeightOption) -> tuple[str, str, str, str, str, str]:
     touch = option.governs
     governs, more = "–", "–"
     if touch is not None:
-        governs = (
-            f"{touch.cause}, {wording.distance(touch.at_m)} from A ({touch.criterion}); error of the data "
-            f"{wording.metres(touch.sigma_m)}, sampling {_small(touch.sampling_m)}"
-        )
+        governs = f"{touch.cause}, {wording.distance(touch.at_m)} from A ({touch.criterion})"
         more = "; ".join(f"{item.end} {wording.metres(item.spare_m, 2)}" for item in option.more)
     likely = wording.probability(option.probability) if option.probability is not None else "–"
     return (HEIGHT_WORDS[option.kind], _pair(option.raw, 2), _pair(option.build, 1), likely, governs, more)
+
+
+def _errors(heights: HeightsResult) -> str:
+    """How well the points that govern are known, from the least to the most; '' where none governs."""
+    touches = [option.governs for option in heights.options if option.governs is not None]
+    if not touches:
+        return ""
+    sigmas, samplings = [one.sigma_m for one in touches], [one.sampling_m for one in touches]
+    return f"Error of the data there {_range(sigmas)}, sampling {_range(samplings)}."
+
+
+def _range(values_m: list[float]) -> str:
+    least, most = _small(min(values_m)), _small(max(values_m))
+    return least if least == most else f"{least} to {most}"
 
 
 def _small(value_m: float) -> str:
