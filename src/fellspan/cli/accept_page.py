@@ -10,7 +10,6 @@ from fellspan.cli.layout import WIDTH, Ink, columns_of, cut, labelled, printable
 from fellspan.design.acceptance_result import AcceptanceResult, Cause, DirectionCheck
 
 _LEVELS: Final = (8, 24, 10, 10, 7, 6, 8)
-_ROWS: Final = (2, 16, 22, 22, 13)
 _TONES: Final = {"accepted": "good", "not accepted": "bad", "cannot be judged": "doubt"}
 FIT_WORDS: Final = {
     "stated by the crew": "written down by the crew",
@@ -86,15 +85,12 @@ def _built(found: AcceptanceResult) -> Iterator[str]:
     if not found.built:
         return
     yield ""
-    heads = ("", "as built", "planned", "measured", "difference")
-    rows = [
-        (one.end, one.what, one.planned, one.measured, ("! " if one.differs else "") + one.difference)
-        for one in found.built
-    ]
-    yield from ("  " + line for line in table(heads, rows, widths=_ROWS))
     for one in found.built:
-        if one.note:
-            yield from wrapped(f"{one.end}, {one.what}: {one.note}", first="  ", rest="    ")
+        mark = "!" if one.differs else " "
+        told = f"{one.what}: {one.measured}; planned {one.planned} ({one.difference})" + (
+            f"; {one.note}" if one.note else ""
+        )
+        yield from wrapped(told, first=f"{mark} {one.end}  ", rest="       ")
 
 
 def _causes(found: AcceptanceResult, ink: Ink) -> Iterator[str]:

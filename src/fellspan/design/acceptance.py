@@ -12,7 +12,7 @@ from typing import Final
 from fellspan.design.acceptance_aim import aim_causes
 from fellspan.design.acceptance_directions import Judged
 from fellspan.design.acceptance_gear import gear_causes
-from fellspan.design.acceptance_hypotheses import Check, Hypothesis, Numbers
+from fellspan.design.acceptance_hypotheses import Check, Hypothesis, Numbers, joined
 from fellspan.design.acceptance_path import path_causes
 from fellspan.design.acceptance_result import Cause, Fit
 from fellspan.design.acceptance_swing import swing_factors
@@ -98,6 +98,13 @@ def in_ladder_order(checks: Iterable[Check]) -> tuple[str, ...]:
     return tuple(dict.fromkeys(check.text for rung in (0, 1, 2) for check in listed if check.rung == rung))
 
 
+def titled(near: Sequence[Hypothesis]) -> str:
+    """The title of the likeliest, with the ends that it and what is as likely would stand at."""
+    best = near[0]
+    places = dict.fromkeys(joined(one.where) for one in near if one.title == best.title and one.where)
+    return f"{best.title}, at {' or at '.join(places)}" if places else best.title
+
+
 def _score(
     one: Hypothesis,
     offs: tuple[float | None, float | None],
@@ -179,27 +186,21 @@ def _cause(
         fit = "cannot be told apart"
     elif key == top and not lost and share >= FITS_SHARE and (best.sharp or members[0].decided):
         fit = "fits well"
+    near = [one.hypothesis for one in members if one.likelihood > 0.3 * members[0].likelihood]
     why = best.why
-    also = next(
-        (
-            one.hypothesis.title
-            for one in members[1:]
-            if one.likelihood > 0.3 * members[0].likelihood and one.hypothesis.title != best.title
-        ),
-        None,
-    )
+    also = next((one.title for one in near[1:] if one.title != best.title), None)
     if also is not None:
         why += f"; as likely: {also}"
     settled = [best.settled_by, *(groups[other][0].hypothesis.settled_by for other in alike[:1])]
     return Cause(
         key=key,
-        title=best.title,
+        title=titled(near),
         fit=fit,
         share=share,
         change_a_db=best.a_db,
         change_b_db=best.b_db,
         why=why,
-        alike=tuple(groups[other][0].hypothesis.title for other in alike),
+        alike=tuple(titled([groups[other][0].hypothesis]) for other in alike),
         tells_apart="; or ".join(dict.fromkeys(text for text in settled if text)),
         checks=tuple(check.text for check in best.checks),
     )

@@ -20,6 +20,7 @@ from fellspan.design.acceptance_hypotheses import (
     Hypothesis,
     Numbers,
     db,
+    joined,
     label,
 )
 from fellspan.design.as_built import EndLetter
@@ -144,7 +145,8 @@ def _side_lobes(numbers: Numbers) -> Iterator[Hypothesis]:
             seen = angle is not None and off is not None and abs(abs(off) - angle) < 2.0 and plane == "azimuth"
             yield Hypothesis(
                 key="side lobe",
-                title=f"antenna at {label(end)} aimed by its first side lobe",
+                title="an antenna aimed by its first side lobe",
+                where=(end,),
                 a_db=level,
                 b_db=level,
                 spread_db=(2.0 if angle is not None else 3.5, 0.0, 0.0),
@@ -280,11 +282,12 @@ def _declination(numbers: Numbers) -> Iterator[Hypothesis]:
         lost = sum(found[end][0] for end in ends)
         spread = float(np.hypot.reduce([found[end][1] for end in ends]))
         east = numbers.place(ends[0]).declination_deg or 0.0
-        at = " and ".join(label(end) for end in ends)
+        at = joined(ends)
         read = [end for end in ends if end in shown]
         yield Hypothesis(
             key="declination",
-            title=f"a magnetic bearing taken for a true one at {at}",
+            title="a magnetic bearing taken for a true one",
+            where=ends,
             a_db=lost,
             b_db=lost,
             spread_db=(spread, 0.0, 0.0),

@@ -99,8 +99,8 @@ def _height(end: EndLetter, built: BuiltEnd, place: EndResult, amsl_m: float | N
     yield BuiltCheck(
         end=label(end),
         what="antenna height",
-        planned=f"{place.height_as_given}, {place.antenna_amsl_m:.1f} m above sea",
-        measured=given if amsl_m is None else f"{given}, {amsl_m:.1f} m above sea",
+        planned=place.height_as_given,
+        measured=given,
         difference="-" if off is None else f"{off:+.1f} m",
         differs=off is not None and abs(off) > HEIGHT_M,
         note="" if amsl_m is not None else "the link could not be worked out at this height",

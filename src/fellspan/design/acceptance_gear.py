@@ -142,7 +142,8 @@ def _chains(numbers: Numbers) -> Iterator[Hypothesis]:
         at = " and at ".join(label(end) for end in ends)
         yield Hypothesis(
             key="one chain",
-            title=f"one chain low at {at}",
+            title="one chain low",
+            where=ends,
             a_db=lost if "a" in ends else 0.0,
             b_db=lost if "b" in ends else 0.0,
             spread_db=(0.0, 1.0 if "a" in ends else 0.0, 1.0 if "b" in ends else 0.0),
@@ -246,7 +247,8 @@ def _other_antenna(numbers: Numbers) -> Iterator[Hypothesis]:
         named = bool(numbers.built.end(other.end).antenna)
         yield Hypothesis(
             key="other antenna",
-            title=f"another antenna at {label(other.end)} than planned",
+            title="another antenna than planned",
+            where=(other.end,),
             a_db=other.gain_db,
             b_db=other.gain_db,
             spread_db=(0.8, 0.0, 0.0),

@@ -37,8 +37,9 @@ class Hypothesis:
 
     `a_db` and `b_db` are the changes of the level received at A and at B; `spread_db` the standard deviations of what is open
     about them: common to both, at A alone, at B alone. `weight` is how likely it is before any level was read, relative to the
-    others. `varies` says whether readings of other hours or water levels would differ. `chain_at` are the ends where one chain
-    would stand low. `sharp` is False where it would fit almost any level, so that a fit says little.
+    others. `where` are the ends it stands at, where the title does not say so. `varies` says whether readings of other hours
+    or water levels would differ. `chain_at` are the ends where one chain would stand low. `sharp` is False where it would fit
+    almost any level, so that a fit says little.
     """
 
     key: str
@@ -51,6 +52,7 @@ class Hypothesis:
     settled_by: str
     checks: tuple[Check, ...]
     varies: Varies = "steady"
+    where: tuple[EndLetter, ...] = ()
     chain_at: tuple[EndLetter, ...] = ()
     sharp: bool = True
 
@@ -118,6 +120,11 @@ class Numbers:
 def label(end: EndLetter) -> str:
     """A or B."""
     return end.upper()
+
+
+def joined(ends: tuple[EndLetter, ...]) -> str:
+    """'A' or 'A and B'."""
+    return " and ".join(label(end) for end in ends)
 
 
 def db(value: float) -> str:
