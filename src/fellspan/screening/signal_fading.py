@@ -72,13 +72,13 @@ def shares_of_year(
         margins = margins_db[0][some], margins_db[1][some]
         fading = _Fading(
             candidates,
-            rows.part(some),
+            rows,
             climate.part(some),
             ends,
             level=level,
-            spread=spread.part(some),
+            spread=spread,
             sector=sector,
-            latitude_deg=latitude_deg[some],
+            latitude_deg=latitude_deg,
             margins_db=margins,
             some=some,
         )
@@ -106,7 +106,7 @@ class _Fading:
     def __init__(
         self,
         candidates: Candidates,
-        path: PathRows,
+        rows: PathRows,
         climate: ClimateColumns,
         ends: PairEnds,
         *,
@@ -119,23 +119,23 @@ class _Fading:
     ) -> None:
         self._candidates, self._ends, self._some, self._sector = candidates, ends, some, sector[some]
         radio, weather = candidates.radio, candidates.settings.weather
+        # Only one edition asks for the mean of the ground.
+        asks = bool(climate.edition_19.any())
+        ground = mean_over_path_m(rows.distance_m, rows.ground_m) if asks else np.full(rows.length_m.shape, np.nan)
         columns = fades.PathColumns(
-            length_m=path.length_m,
-            a_amsl_m=path.a_amsl_m,
-            b_amsl_m=path.b_amsl_m,
-            mean_ground_m=mean_over_path_m(path.distance_m, path.ground_m),
-            latitude_deg=latitude_deg,
+            length_m=rows.length_m[some],
+            a_amsl_m=rows.a_amsl_m[some],
+            b_amsl_m=rows.b_amsl_m[some],
+            mean_ground_m=ground[some],
+            latitude_deg=latitude_deg[some],
         )
         in_level = level.diffraction_db[some] + level.vegetation_db[some]
-        cheaper = _by_inverse_k_db(
-            candidates,
-            path,
-            spread,
-            level,
-            lowest_k_db=level.lowest_k_db[some],
-            in_level_db=in_level,
-            margins_db=margins_db,
+        rooms = tuple(
+            margin + in_level[:, level.at(transmit_hz)]
+            for margin, transmit_hz in zip(margins_db, radio.transmit_hz, strict=True)
         )
+        cheaper = _by_inverse_k_db(candidates, rows, spread, level, some=some, rooms_db=rooms)
+        spread = spread.part(some)
         self._causes: dict[float, Causes] = {}
         for frequency in dict.fromkeys(radio.transmit_hz):
             column = level.at(frequency)
@@ -212,31 +212,34 @@ def _joined(parts: list[tuple[Index, Outage]], count: int) -> Outage:
 
 def _by_inverse_k_db(
     candidates: Candidates,
-    path: PathRows,
+    rows: PathRows,
     spread: SpreadColumns,
     level: Level,
     *,
-    lowest_k_db: Floats,
-    in_level_db: Floats,
-    margins_db: tuple[Floats, Floats],
+    some: Index,
+    rooms_db: tuple[Floats, ...],
 ) -> Floats:
-    """Diffraction and trees by k on the cheaper way, dB, shape (p, m, f); 0 where they cannot use a margin up at any k."""
+    """Diffraction and trees by k of some pairs on the cheaper way, dB, shape (p, m, f).
+
+    Left at 0 where they cannot use up at any k what each direction has room for: there is no outage then whatever they are.
+    """
     frequency, polarization = level.frequency_hz, candidates.radio.polarization
-    most = most_db(path, lowest_k_db, inverse_k=spread.inverse_k, frequency_hz=frequency, polarization=polarization)
-    enough = np.ones(most.shape[0], dtype=np.bool_)
-    for margin, transmit_hz in zip(margins_db, candidates.radio.transmit_hz, strict=True):
-        column = level.at(transmit_hz)
-        enough &= most[:, column] < margin + in_level_db[:, column] - _SURELY_DB
-    found = np.zeros((*spread.inverse_k.shape, frequency.size))
-    rows = np.flatnonzero(~enough)
-    if rows.size:
-        few = path.part(rows)
+    most = most_db(
+        rows, level.lowest_k_db, inverse_k=spread.inverse_k, frequency_hz=frequency, polarization=polarization
+    )[some]
+    enough = np.ones(some.size, dtype=np.bool_)
+    for room, transmit_hz in zip(rooms_db, candidates.radio.transmit_hz, strict=True):
+        enough &= most[:, level.at(transmit_hz)] < room - _SURELY_DB
+    found = np.zeros((some.size, spread.inverse_k.shape[-1], frequency.size))
+    short = np.flatnonzero(~enough)
+    if short.size:
+        few = rows.part(some[short])
         ways = ways_past_trees(
             few,
-            inverse_k=spread.inverse_k[rows],
+            inverse_k=spread.inverse_k[some[short]],
             frequency_hz=frequency,
             polarization=polarization,
             depth_m=depth_in_trees_m(few, k=candidates.settings.median_k),
         )
-        found[rows] = ways.cheaper_db
+        found[short] = ways.cheaper_db
     return found

@@ -9,7 +9,14 @@ from fellspan.climate.columns import ClimateColumns, climate_columns
 from fellspan.links import fades
 from fellspan.links.path_loss import TREE
 from fellspan.links.signal_path import air_level_m
-from fellspan.links.ways_past_trees import PathRows, depth_in_trees_m, share_of_path, ways_past_trees
+from fellspan.links.ways_past_trees import (
+    DIFFERS_DB,
+    PathRows,
+    depth_in_trees_m,
+    over_everything_db,
+    share_of_path,
+    ways_past_trees,
+)
 from fellspan.propagation import free_space_loss_db, gas_loss_db, inverse_k
 from fellspan.screening.laid import LaidBucket
 from fellspan.screening.pairs import Candidates
@@ -100,16 +107,28 @@ def level_of(candidates: Candidates, rows: PathRows, climate: ClimateColumns, sp
     """What paths take in clear air at the median k, at the frequencies of the radio."""
     radio, k = candidates.radio, candidates.settings.median_k
     frequency = np.array(list(dict.fromkeys(radio.transmit_hz)))
-    ways = ways_past_trees(
+    over = over_everything_db(
         rows,
         inverse_k=np.stack((np.full(rows.length_m.shape, inverse_k(k)), spread.inverse_k[:, -1]), axis=-1),
         frequency_hz=frequency,
         polarization=radio.polarization,
-        depth_m=depth_in_trees_m(rows, k=k),
     )
-    through = ways.is_through[:, 0]
-    diffraction = np.where(through, ways.solid_db[:, 0], ways.over_db[:, 0])
-    vegetation = np.where(through, ways.woods_db, 0.0)
+    diffraction, vegetation = over[:, 0].copy(), np.zeros(over[:, 0].shape)
+    # The way through trees costs at least nothing: it can only be the cheaper one where the way over them costs something.
+    costs = ~(diffraction <= DIFFERS_DB).all(axis=-1)
+    through = np.flatnonzero(costs & rows.trees.any(axis=-1)) if rows.trees is not None else np.zeros(0, dtype=np.int64)
+    if through.size:
+        few = rows.part(through)
+        ways = ways_past_trees(
+            few,
+            inverse_k=np.array([inverse_k(k)]),
+            frequency_hz=frequency,
+            polarization=radio.polarization,
+            depth_m=depth_in_trees_m(few, k=k),
+        )
+        wins = ways.is_through[:, 0]
+        diffraction[through] = np.where(wins, ways.solid_db[:, 0], ways.over_db[:, 0])
+        vegetation[through] = np.where(wins, ways.woods_db, 0.0)
     slant = rows.slant_m[:, np.newaxis]
     gases = gas_loss_db(
         slant,
@@ -124,5 +143,5 @@ def level_of(candidates: Candidates, rows: PathRows, climate: ClimateColumns, sp
         diffraction_db=diffraction,
         vegetation_db=vegetation,
         total_db=free + diffraction + vegetation + gases,
-        lowest_k_db=ways.over_db[:, 1],
+        lowest_k_db=over[:, 1],
     )
