@@ -46,6 +46,8 @@ def results_dict(plan: StudyPlan) -> dict[str, Any]:
                 ],
                 # As exports/equipment.py writes it; absent unless asked for.
                 **({} if linked.equipment is None else {"equipment": plain_of(linked.equipment)}),
+                # Absent unless `fellspan accept` held a measured file against the link.
+                **({} if linked.as_built is None else {"as_built": plain_of(linked.as_built)}),
             }
             for number, linked in enumerate(plan.links, start=1)
         ],
