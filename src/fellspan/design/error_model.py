@@ -53,11 +53,16 @@ class ErrorModel:
 
 def default_error_model(profile: PathProfile) -> ErrorModel:
     """The defaults for the finest raster of a path."""
-    reach = next(reach for up_to, reach, _ in GROUND_REACH_M if profile.cell_m <= up_to)
+    return error_model(profile.cell_m)
+
+
+def error_model(cell_m: float) -> ErrorModel:
+    """The defaults for a raster of such a cell."""
+    reach = next(reach for up_to, reach, _ in GROUND_REACH_M if cell_m <= up_to)
     return ErrorModel(
-        ground_reach_m=max(reach, profile.cell_m),
-        cover_reach_m=max(COVER_REACH_M, profile.cell_m),
-        position_error_m=POSITION_CELLS * profile.cell_m,
+        ground_reach_m=max(reach, cell_m),
+        cover_reach_m=max(COVER_REACH_M, cell_m),
+        position_error_m=POSITION_CELLS * cell_m,
     )
 
 

@@ -16,11 +16,11 @@ from fellspan.screening.columns import Columns
 from fellspan.screening.laid import LaidBucket
 from fellspan.screening.pairs import HEIGHT_REFERENCES, Candidates, SiteColumns
 from fellspan.screening.profiles import Profiles, closer, regular, steps_of, width_of
-from fellspan.screening.rays import CLEAR, Judged, judged, rays_over, worth_a_closer_look
+from fellspan.screening.rays import CLEAR, MARGINAL, Judged, Rays, judged, rays_over, worth_a_closer_look
 from fellspan.screening.signal import best_sector, signal_columns
 from fellspan.screening.single import name_of
-from fellspan.screening.stand import Antennas, antennas_at, standings
-from fellspan.screening.sure import surely_clear
+from fellspan.screening.stand import Antennas, Standings, antennas_at, standings
+from fellspan.screening.sure import likely_clear
 from fellspan.screening.ways import Ways
 from fellspan.terrain.alongpath import nodes_for
 from fellspan.terrain.many import ManyPaths
@@ -199,11 +199,28 @@ class Batch:
             "signal_verdict",
         ):
             getattr(columns, name)[rows] = getattr(signal, name)
+        return self._after_draws(rays, profiles, stands, found)
+
+    def _after_draws(self, rays: Rays, profiles: Profiles, stands: Standings, found: Judged) -> Index:
+        """Let bounds of what draws would say decide on the clear ones; those on which only the draws themselves can."""
+        settings, columns = self._setting.candidates.settings, self._columns
         clear = np.flatnonzero(found.verdict == CLEAR)
+        rows = self._rows[profiles.which[clear]]
         if clear.size == 0:
-            return np.zeros(0, dtype=np.int64)
-        sure = surely_clear(rays, profiles, stands, found.errors, clear, settings=settings)
-        return np.asarray(rows[clear[~sure]])
+            return np.asarray(rows)
+        least, most = likely_clear(
+            rays,
+            profiles,
+            stands,
+            found.errors,
+            clear,
+            median_k=settings.median_k,
+            confidence=settings.confidence,
+        )
+        falls = most < settings.confidence
+        columns.verdict[rows[falls]] = MARGINAL
+        columns.confidence[rows[falls]] = np.minimum(columns.confidence[rows[falls]], most[falls])
+        return np.asarray(rows[~falls & (least < settings.confidence)])
 
     def _bucket(
         self,
