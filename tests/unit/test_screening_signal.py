@@ -4,17 +4,22 @@ from dataclasses import replace
 
 import numpy as np
 import pytest
-from made_pairs import Spot, bucket_of, directions_of, planned, sites_of, spots
+from made_pairs import HUB, Spot, bucket_of, directions_of, planned, sites_of, spots
 from signal_links import CLIMATE, SIGNATURE, TABLE, radio
 
 from fellspan.antennas.data_sheet import from_data_sheet
 from fellspan.antennas.dishes import dish
 from fellspan.antennas.mounting import Mounting
 from fellspan.antennas.wires import collinear
+from fellspan.climate.assembling import figures_for
+from fellspan.climate.columns import ClimateColumns, climate_columns
 from fellspan.climate.given import GivenClimate
+from fellspan.errors import AntennaError
+from fellspan.geodesy.position import Position
+from fellspan.links.antenna_gains import antennas_of
 from fellspan.links.assess import Assessment, AssessSettings
 from fellspan.links.radio import CoChannel, Modulation, Radio
-from fellspan.links.site import Aim, Antenna, Diversity, Feeder, Sway
+from fellspan.links.site import Aim, Antenna, Diversity, Feeder, Link, Site, Sway
 from fellspan.screening.laid import LaidBucket
 from fellspan.screening.pairs import SIGNAL_VERDICTS, UNKNOWN, Candidates, Sector
 from fellspan.screening.signal import SignalColumns, best_sector, signal_columns
@@ -196,3 +201,118 @@ def test_the_cases_hold_what_they_should() -> None:
     assert any(one.result.losses_db.vegetation > 0.0 for one in assessments)
     assert bucket.is_sea is not None
     assert bucket.is_sea.any()
+
+
+def test_maps_are_read_as_for_one_link() -> None:
+    pytest.importorskip("itur")
+    # Only the rain is said; a sector of unknown gain needs no weather, and then its air is the standard one.
+    asked = candidates(
+        SPOTS[:12],
+        settings=settings(GivenClimate(rain_rate_001_mm_h=45.0)),
+        sectors=(*one_sector(PLAIN), Sector(hub=0, name="nobody knows", antenna=Antenna())),
+        radio=radio(frequency_hz=23e9),
+    )
+    sector = np.arange(12) % 2
+    assessments = planned(asked, SPOTS[:12], sector)
+    found = signal_columns(asked, bucket_of(assessments, sector), sector=sector)
+    assert_equal(found, assessments)
+    assert np.array_equal(np.isnan(found.received_at_hub_dbm), sector == 1)
+
+
+def test_the_sector_that_gives_most_serves_and_the_first_of_equals() -> None:
+    asked = candidates(sectors=sectors(4), radio=TDD)
+    bearing, tilt = np.array([10.0, 55.0, 100.1, 190.0, 280.0, 359.0, 144.9]), np.full(7, -1.0)
+    hub = np.zeros(7, dtype=np.int64)
+    # 55 degrees lies in the middle between the first two, which give the same there.
+    np.testing.assert_array_equal(
+        best_sector(asked, hub=hub, bearing_deg=bearing, tilt_deg=tilt), [0, 0, 1, 2, 3, 0, 1]
+    )
+    gains = [
+        [
+            antennas_of(
+                Link(
+                    name="one",
+                    a=Site(name="a", position=HUB, height_m=1.0),
+                    b=Site(name="b", position=HUB, height_m=1.0),
+                    radio=TDD,
+                    antenna_a=sector.antenna,
+                ),
+                bearings_deg=(at, (at + 180.0) % 360.0),
+                tilts_deg=(-1.0, 1.0),
+            ).a.gain_dbi
+            for sector in asked.sectors
+        ]
+        for at in bearing.tolist()
+    ]
+    chosen = best_sector(asked, hub=hub, bearing_deg=bearing, tilt_deg=tilt)
+    for one, row in zip(chosen.tolist(), gains, strict=True):
+        assert row[one] == pytest.approx(max(row), abs=1e-9)  # type: ignore[type-var]
+
+
+def test_sectors_of_many_hubs_keep_to_their_hub() -> None:
+    first, second = sectors(2)
+    unknown = Sector(hub=2, name="unknown", antenna=Antenna())
+    asked = candidates(
+        sectors=(
+            replace(first, hub=1),
+            unknown,
+            replace(second, hub=1),
+            Sector(hub=0, name="only", antenna=PLAIN),
+            replace(unknown, name="unknown too"),
+        )
+    )
+    hub = np.array([1, 0, 1, 2, 1])
+    bearing = np.array([10.0, 190.0, 190.0, 0.0, 20.0])
+    found = best_sector(asked, hub=hub, bearing_deg=bearing, tilt_deg=np.zeros(5))
+    np.testing.assert_array_equal(found, [0, 3, 2, 1, 0])
+
+
+def test_an_antenna_that_cannot_hang_so_is_refused_as_in_planning() -> None:
+    omni = Antenna(pattern=collinear(frequency_hz=5.8e9, elements=8), mounting=Aim(polarization="horizontal"))
+    asked = candidates(SPOTS[:2], sectors=one_sector(omni), radio=TDD)
+    sector = np.zeros(2, dtype=np.int64)
+    bucket = bucket_of(planned(replace(asked, sectors=one_sector(PLAIN)), SPOTS[:2], sector), sector)
+    with pytest.raises(AntennaError, match="cannot be mounted"):
+        signal_columns(asked, bucket, sector=sector)
+
+
+def test_a_batch_does_not_depend_on_what_else_is_in_it() -> None:
+    asked = CASES["two frequencies"]
+    bucket, sector, _ = _laid(asked)
+    whole = signal_columns(asked, bucket, sector=sector)
+    rows = np.arange(3, 9)
+    part = replace(
+        bucket, **{name: getattr(bucket, name)[rows] for name in bucket.__slots__ if getattr(bucket, name) is not None}
+    )
+    alone = signal_columns(asked, part, sector=sector[rows])
+    for name in whole.__slots__:
+        np.testing.assert_array_equal(getattr(whole, name)[rows], getattr(alone, name), err_msg=name)
+
+
+@pytest.mark.parametrize(
+    "given",
+    [
+        GivenClimate(),
+        CLIMATE,
+        GivenClimate(
+            monthly_rain_mm=(60.0,) * 12,
+            monthly_temperature_c=(12.0,) * 12,
+            gradient_median_n_per_km=60.0,
+            vapour_g_m3=9.0,
+        ),
+    ],
+    ids=["maps", "given", "months"],
+)
+@pytest.mark.parametrize("maps", [True, False])
+def test_climate_columns_are_the_figures_of_each_place(given: GivenClimate, maps: bool) -> None:
+    if maps:
+        pytest.importorskip("itur")
+    random = np.random.default_rng(4)
+    latitude, longitude = random.uniform(-60.0, 70.0, 8), random.uniform(-180.0, 180.0, 8)
+    altitude = random.uniform(0.0, 900.0, 8)
+    found = climate_columns(latitude_deg=latitude, longitude_deg=longitude, altitude_m=altitude, given=given, maps=maps)
+    for row in range(8):
+        place = Position(latitude_deg=float(latitude[row]), longitude_deg=float(longitude[row]))
+        one = ClimateColumns.of(figures_for(place, given=replace(given, altitude_m=float(altitude[row])), maps=maps))
+        for name in found.__slots__:
+            np.testing.assert_allclose(getattr(found, name)[row], getattr(one, name), rtol=1e-12, err_msg=name)

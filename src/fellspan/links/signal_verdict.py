@@ -107,7 +107,7 @@ def verdict_codes(
     Parameters
     ----------
     least_margin_db
-        Of both directions; the code of a NaN is not to be used.
+        Of both directions, where it is known.
     trees, too_far
         Trees stand in the required zone; the path is longer than the timing of the radio allows.
     target_percent, shares_percent, nearly_percent

@@ -93,7 +93,11 @@ def signal_columns(candidates: Candidates, bucket: LaidBucket, *, sector: Index)
         margin_at_hub_db=margin_hub,
         margin_at_place_db=margin_place,
         availability_percent=shares.both_percent,
-        signal_verdict=_verdict(candidates, bucket, shares, margins_db=(margin_place, margin_hub)),
+        signal_verdict=np.where(
+            has_gains if power is not None and wanted is not None else False,
+            _verdict(candidates, bucket, shares, margins_db=(margin_place, margin_hub)),
+            UNKNOWN,
+        ).astype(np.int8),
     )
 
 
@@ -120,7 +124,7 @@ def _verdict(
 ) -> NDArray[np.int8]:
     least = np.minimum(*margins_db)
     reach = candidates.radio.greatest_distance_m
-    codes = verdict_codes(
+    return verdict_codes(
         least,
         wanted_db=candidates.wanted_margin_db,
         trees=bucket.trees_in_zone,
@@ -129,4 +133,3 @@ def _verdict(
         shares_percent=shares.each_percent,
         nearly_percent=shares.nearly_percent,
     )
-    return np.where(np.isnan(least), UNKNOWN, codes).astype(np.int8)
