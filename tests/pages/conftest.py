@@ -79,7 +79,7 @@ def antimeridian(tmp_path_factory):
 def sample(tmp_path_factory):
     """The report of the sample study, planned by the engine."""
     study = load_study(Path(__file__).parents[2] / "sample_terrain" / "tolmera.toml")
-    return _write(tmp_path_factory.mktemp("sample"), plan_study(study))
+    return _write(tmp_path_factory.mktemp("sample"), plan_study(study, what_if=True))
 
 
 @pytest.fixture(scope="session")
