@@ -35,6 +35,7 @@ from fellspan.report.relief import open_rasters, shaded_relief
 from fellspan.report.section import FULL, NARROW
 from fellspan.report.signal_section import availability_short, rules_section, signal_section
 from fellspan.report.survey_section import survey_section
+from fellspan.report.whatif import WHAT_IF_SCRIPTS, what_if_data
 from fellspan.report.workings_section import workings_section
 from fellspan.terrain.raster_file import RasterFile
 
@@ -145,6 +146,8 @@ def _link_page(plan: StudyPlan, index: int, link: LinkPlan, templates: Environme
         rests_on=[link.profile.sources[i] for i in sorted(set(link.profile.source.tolist())) if i >= 0],
         cautions=(*result.cautions, *link.profile.notes, *plan.cautions),
         safety=safety_lines(),
+        what_if=what_if_data(plan, link),
+        plan_link=link,
         quiet=True,
     )
     return with_list(view.page, text)
@@ -225,6 +228,7 @@ def _shared(plan: StudyPlan, chart: MapMarkup | None) -> dict[str, Any]:
             "page": assets.asset("page.css"),
             "map": assets.asset("map.css"),
             "link": assets.asset("link.css"),
+            "whatif": assets.asset("whatif.css"),
             "overview": assets.asset("overview.css"),
             "polar": assets.asset("polar.css"),
             "horizon": assets.asset("horizon.css"),
@@ -236,6 +240,7 @@ def _shared(plan: StudyPlan, chart: MapMarkup | None) -> dict[str, Any]:
             "overview": assets.asset("overview.js"),
             "table": assets.asset("table.js"),
             "link": assets.asset("link.js"),
+            "what_if": Markup("").join(assets.asset(name) for name in WHAT_IF_SCRIPTS),
         },
     }
 
