@@ -4,7 +4,7 @@ Everything is inside the page. Ids are counted, not random, so that the same pla
 """
 
 import re
-from collections.abc import Sequence
+from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, replace
 from html import escape
 from typing import Any
@@ -12,6 +12,7 @@ from typing import Any
 import folium
 from branca.element import MacroElement
 from jinja2 import Template
+from jinja2.utils import htmlsafe_json_dumps
 
 from fellspan.links.result import Obstruction
 from fellspan.links.words import state_of
@@ -43,7 +44,7 @@ class SiteNames(MacroElement):
     _template = Template(
         """
         {% macro script(this, kwargs) %}
-            addSites({{ this._parent.get_name() }}, {{ this.sites|tojson }});
+            addSites({{ this._parent.get_name() }}, {{ this.sites }});
         {% endmacro %}
         """
     )
@@ -51,13 +52,18 @@ class SiteNames(MacroElement):
     def __init__(self, marks: Sequence[geometry.SiteMark]) -> None:
         super().__init__()  # type: ignore[no-untyped-call]
         self._name = "SiteNames"
-        self.sites = [
+        self.sites = _no_template(
             [
                 round(mark.latitude_deg, 6), round(mark.longitude_deg, 6), shorten(mark.name, 34),
                 _full(mark.name), mark.side, mark.links,
             ]
             for mark in marks
-        ]  # fmt: skip
+        )  # fmt: skip
+
+
+def _no_template(places: Iterable[list[Any]]) -> str:
+    """A list for the script with no brace in it: the map library reads what it is given as a template, names included."""
+    return str(htmlsafe_json_dumps(list(places))).replace("{", "\\u007b").replace("}", "\\u007d")
 
 
 def _full(name: str) -> str:

@@ -149,7 +149,7 @@ Number = Annotated[float, Field(strict=True)]
 InverseEarth = Annotated[float, Field(strict=True, allow_inf_nan=True), AfterValidator(_known_k)]
 Day = Annotated[dt.date, BeforeValidator(_day)]
 Coordinate = Annotated[str, BeforeValidator(_coordinate_text), WithJsonSchema({"type": ["number", "string"]})]
-Name = Annotated[str, Field(min_length=1, max_length=120)]
+Name = Annotated[str, Field(min_length=1, max_length=400)]
 
 
 @dataclass(frozen=True, slots=True)

@@ -79,8 +79,8 @@ CompleteKind: TypeAlias = Literal["building", "tree"]
 class StudyTable(Table):
     """[study]: the stamp of the issue."""
 
-    title: str = Field(default="Untitled study", max_length=200, description="Heading of every page.")
-    planner: str = Field(default="", max_length=200, description="Who answers for the plan.")
+    title: str = Field(default="Untitled study", max_length=400, description="Heading of every page.")
+    planner: str = Field(default="", max_length=400, description="Who answers for the plan.")
     revision: str = Field(default="", max_length=60, description="Issue of the plan, as you count them.")
     date: Day = Field(
         default_factory=dt.date.today,
