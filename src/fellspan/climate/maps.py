@@ -4,6 +4,7 @@ itur is an optional extra and takes seconds to import, so it is imported when th
 """
 
 import importlib.util
+import threading
 from collections.abc import Iterable
 from dataclasses import dataclass, fields
 from functools import lru_cache
@@ -36,6 +37,10 @@ class MapFigures:
 
 
 MAP_NAMES: Final = tuple(field.name for field in fields(MapFigures) if field.name != "version")
+
+
+_ONE_AT_A_TIME: Final = threading.Lock()
+"""Two threads that import the package at once find it half made, and its maps are read when first asked for."""
 
 
 def maps_available() -> bool:
@@ -79,7 +84,7 @@ def map_columns(
     longitude = np.array([round(value, PLACE_DECIMALS) for value in longitude_deg.tolist()])
     altitude = np.rint(altitude_m / 10.0) * 10.0
     places, back = np.unique(np.stack((latitude, longitude, altitude)), axis=1, return_inverse=True)
-    with np.errstate(all="ignore"):
+    with _ONE_AT_A_TIME, np.errstate(all="ignore"):
         return {name: _map_values(name, places[0], places[1] % 360.0, places[2])[back.reshape(-1)] for name in names}
 
 
@@ -88,7 +93,7 @@ def _looked_up(latitude_deg: float, longitude_deg: float, altitude_m: float | No
     place = np.array([latitude_deg]), np.array([longitude_deg % 360.0])
     altitude = None if altitude_m is None else np.array([altitude_m])
     # Importing itur changes NumPy's error state for the whole program: this puts it back, and keeps its divisions quiet.
-    with np.errstate(all="ignore"):
+    with _ONE_AT_A_TIME, np.errstate(all="ignore"):
         found = {name: float(_map_values(name, *place, altitude)[0]) for name in MAP_NAMES}
         return MapFigures(**found, version=str(import_module(MAP_PACKAGE).__version__))
 

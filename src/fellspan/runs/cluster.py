@@ -9,6 +9,7 @@ from typing import Any, Final
 
 from fellspan import __version__
 from fellspan.errors import FellspanError, RunError
+from fellspan.runs.inputs import version_of
 from fellspan.runs.listing import Chunk
 from fellspan.runs.work import Job, work
 from fellspan.screening.pairs import PairResults
@@ -20,20 +21,14 @@ _WORKERS_S: Final = 30.0
 _ASK_S: Final = 5.0
 MOST_TRIES: Final = 10
 """A chunk is given to workers this often before it is taken for the chunk that kills them."""
+_MUST_AGREE: Final = ("fellspan", "itur")
+"""Without climate maps a worker would find other availabilities."""
 _ALONGSIDE: Final = ("numpy", "rasterio", "pyproj")
 
 
 def facts_of_worker() -> dict[str, str]:
     """Versions where this runs: of Fellspan and of what its numbers come from."""
-    from importlib.metadata import PackageNotFoundError, version
-
-    found = {"fellspan": __version__}
-    for name in _ALONGSIDE:
-        try:
-            found[name] = version(name)
-        except PackageNotFoundError:
-            found[name] = "absent"
-    return found
+    return {"fellspan": __version__, **{name: version_of(name) for name in ("itur", *_ALONGSIDE)}}
 
 
 def work_on_cluster(
@@ -96,11 +91,12 @@ def _see_to_workers(client: Any, address: str, note: Callable[[str], None]) -> i
         ) from None
     here = facts_of_worker()
     for worker, facts in sorted(found.items()):
-        if facts["fellspan"] != __version__:
-            raise RunError(
-                f"worker {worker} runs Fellspan {facts['fellspan']}, and this is {__version__}",
-                "install the same version on all machines",
-            )
+        for name in _MUST_AGREE:
+            if facts[name] != here[name]:
+                raise RunError(
+                    f"worker {worker} has {name} {facts[name]}, and here it is {here[name]}",
+                    "install the same version on all machines",
+                )
         others = [f"{name} {facts[name]}" for name in _ALONGSIDE if facts[name] != here[name]]
         if others:
             note(f"worker {worker} has {', '.join(others)}, other than here: last digits of results may differ")
@@ -120,7 +116,7 @@ def _gathered(
 
     given: dict[Any, tuple[Chunk, Job, int]] = {}
     watch: Any = distributed.as_completed
-    completed = watch(with_results=False)
+    completed = watch(loop=client.loop, with_results=False)
 
     def give(chunk: Chunk, job: Job, tries: int) -> None:
         # pure=False and a key of its own: two runs on one scheduler never share a result

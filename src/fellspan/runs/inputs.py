@@ -7,6 +7,7 @@ import dataclasses
 import hashlib
 import json
 from collections.abc import Iterable, Mapping
+from importlib.metadata import PackageNotFoundError, version
 from pathlib import Path
 from typing import Final
 
@@ -48,11 +49,20 @@ def run_facts(
     facts |= {f"option {name}": value for name, value in options.items()}
     facts |= {
         "fellspan": __version__,
+        "climate maps (itur)": version_of("itur"),
         "list of pairs": count.digest,
         PAIRS_KEY: str(count.pairs),
         CHUNKS_KEY: str(count.chunks),
     }
     return facts, (*rests_on, *given)
+
+
+def version_of(package: str) -> str:
+    """Version of an installed package, or 'absent'."""
+    try:
+        return version(package)
+    except PackageNotFoundError:
+        return "absent"
 
 
 def run_key(facts: Mapping[str, str]) -> str:
@@ -86,9 +96,10 @@ def _said(name: str, found: Mapping[str, str], now: Mapping[str, str]) -> str:
         return f"{rest} {words}"
     if kind == "option":
         return f"{rest} was {found.get(name, 'not given')} and is {now.get(name, 'not given')}"
-    if name == "fellspan":
-        return f"Fellspan was {found.get(name)} and is {now.get(name)}"
-    return ""
+    if name == "list of pairs" or name in (PAIRS_KEY, CHUNKS_KEY):
+        return ""
+    named = "Fellspan" if name == "fellspan" else name
+    return f"{named} was {found.get(name, 'not stated')} and is {now.get(name, 'not stated')}"
 
 
 def _given(role: str, path: Path) -> InputFile:
