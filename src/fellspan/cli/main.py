@@ -16,6 +16,7 @@ import typer
 from fellspan import __version__
 from fellspan.cli.accept_command import accept_command
 from fellspan.cli.antenna_command import antenna_command
+from fellspan.cli.around_command import around_command
 from fellspan.cli.candidates_command import candidates_command
 from fellspan.cli.equip_command import equip_command
 from fellspan.cli.heights_command import heights_command
@@ -57,6 +58,7 @@ app.command("heights")(heights_command)
 app.command("equip")(equip_command)
 app.command("plan")(plan_command)
 app.command("candidates")(candidates_command)
+app.command("around")(around_command)
 app.command("terrain")(terrain_command)
 app.command("antenna")(antenna_command)
 app.command("accept")(accept_command)

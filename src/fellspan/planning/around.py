@@ -26,7 +26,7 @@ from fellspan.vocabulary import Basis
 
 MASTS_M: Final = (5.0, 10.0, 15.0, 20.0, 30.0)
 """Heights that shares, contours and classes are told for, m above ground, where none are asked."""
-MOST_MASTS: Final = 8
+MOST_MASTS: Final = 6
 SECTORS: Final = ("N", "NE", "E", "SE", "S", "SW", "W", "NW")
 """Eighths of the compass, each 45 degrees wide around its name."""
 _ROWS: Final = 256
@@ -73,12 +73,21 @@ class Around:
     sectors: tuple[Sector, ...]
     farthest: Farthest | None
     cautions: tuple[str, ...]
+    sea_level_m: float | None = None
+    """Level of the open water that gaps are, m above sea level; None where they are not."""
     version: str = __version__
 
     @property
     def site(self) -> Site:
         """Where the rays start."""
         return self.field.site
+
+    def on_land(self, rows: slice = slice(None)) -> NDArray[np.bool_]:
+        """Cells of some rows where a mast could stand: all but the open water that gaps are."""
+        ground = self.field.ground_m[rows]
+        if self.sea_level_m is None:
+            return np.ones(ground.shape, dtype=np.bool_)
+        return np.asarray(ground != np.float32(self.sea_level_m))
 
     @property
     def share(self) -> float:
@@ -139,6 +148,7 @@ def look_around(
         sectors=tuple(tally.sector(number) for number in range(len(SECTORS))),
         farthest=tally.farthest(),
         cautions=cautions,
+        sea_level_m=sea_level_m,
     )
 
 
