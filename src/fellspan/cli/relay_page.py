@@ -1,0 +1,96 @@
+"""The terminal page of `fellspan relay`: whether a relay serves and where, each hop, what was searched, what to beware of.
+
+Shows what the search found and computes nothing.
+"""
+
+from typing import Final
+
+from fellspan.cli import figures
+from fellspan.cli.layout import WIDTH, Ink, cut, labelled, printable, table, wrapped
+from fellspan.links.words import STATE_WORDS, state_of
+from fellspan.planning.plan import LinkPlan
+from fellspan.planning.relay_result import RelayResult, RelayRoute
+
+_WIDTHS: Final = (21, 9, 25, 8, 9)
+_RIGHT: Final = (1, 3, 4)
+_MOST_REFUSED: Final = 3
+
+
+def relay_lines(result: RelayResult, *, ink: Ink) -> list[str]:
+    """The page as lines without line ends."""
+    lines = [ink.emphasise(cut(printable(f"Relay for {result.link_name}"), WIDTH))]
+    lines += [ink.emphasise(line, "good" if result.routes else "bad") for line in wrapped(decision(result))]
+    direct = result.direct
+    if direct is not None:
+        state = STATE_WORDS[state_of(direct.result)]
+        lines += ["", *labelled("Direct path", f"{figures.distance(direct.result.distance_m)}, {state}")]
+    for number, route in enumerate(result.routes, start=1):
+        lines += ["", *_route(route, number, ink)]
+    lines += ["", *labelled("Searched", searched(result))]
+    for why in result.refused[:_MOST_REFUSED]:
+        lines += labelled("Left out", why)
+    if len(result.refused) > _MOST_REFUSED:
+        lines += labelled("", f"and {len(result.refused) - _MOST_REFUSED} more")
+    if result.cautions:
+        lines += ["", *(line for text in result.cautions for line in wrapped(text, first="  ! ", rest="    "))]
+    return lines
+
+
+def decision(result: RelayResult) -> str:
+    """One sentence: what was found."""
+    mast = "" if result.request.sites else f" with {result.request.mast_m:g} m of mast"
+    if not result.routes:
+        chain = "neither one relay nor two" if result.request.two_relays and not result.request.sites else "no relay"
+        return (
+            f"No way round found: {chain}{mast} joins the ends with clear hops of at most "
+            f"{figures.distance(result.hop_m)} each."
+        )
+    best = result.routes[0]
+    names = " and ".join(printable(site.name) for site in best.relays)
+    margin = "" if best.worst_margin_db is None else f", least margin {best.worst_margin_db:.1f} dB"
+    how = "One relay serves" if len(best.relays) == 1 else "It takes a chain of two relays"
+    return f"{how}{mast}: best is {names}, every hop clear{margin}."
+
+
+def searched(result: RelayResult) -> str:
+    """What was asked and how much of it serves."""
+    area = result.area
+    hop = f"hops up to {figures.distance(result.hop_m)}"
+    if area is None:
+        return f"{len(result.request.sites)} candidate sites, {hop}"
+    part = "judged one by one as plan does" if area.exact else "by the sweep"
+    return (
+        f"{area.looked_at} cells, {hop}; both ends seen clear from {area.cells} of them "
+        f"({area.area_m2 / 1e6:.3g} km2), {part}; {result.tried} planned in full"
+    )
+
+
+def _route(route: RelayRoute, number: int, ink: Ink) -> list[str]:
+    lines = []
+    for site, ground_m in zip(route.relays, route.ground_amsl_m, strict=True):
+        where = figures.position(site.position.latitude_deg, site.position.longitude_deg)
+        lines += [ink.emphasise(cut(f"{number}. {printable(site.name)}", WIDTH))]
+        lines += wrapped(
+            f"{where}; ground {ground_m:.1f} m above sea level, antenna {site.height_m:g} m above {site.height_reference}",
+            first="   ",
+            rest="   ",
+        )
+    lines += wrapped(
+        f"{figures.distance(route.length_m)} in all, {figures.distance(route.off_path_m)} off the straight path",
+        first="   ",
+    )
+    heads = ("Hop", "distance", "path", "to spare", "margin")
+    rows = [_hop(hop) for hop in route.hops]
+    return lines + ["   " + line for line in table(heads, rows, widths=_WIDTHS, right=_RIGHT)]
+
+
+def _hop(hop: LinkPlan) -> tuple[str, ...]:
+    result = hop.result
+    margins = [margin for margin in (result.margin_db.at_a, result.margin_db.at_b) if margin is not None]
+    return (
+        printable(result.name),
+        figures.distance(result.distance_m),
+        STATE_WORDS[state_of(result)],
+        figures.by_how_much(result.clearance[result.governing]).removesuffix(" to spare"),
+        figures.decibels(min(margins)) if margins else "-",
+    )

@@ -1,0 +1,180 @@
+"""What a search for a relay leaves behind: JSON, GeoJSON of places and area, a study to plan on with, the report folder.
+
+Shows what was found and computes nothing.
+"""
+
+import dataclasses
+import json
+from pathlib import Path
+from typing import Any, Final
+
+import numpy as np
+import rasterio.features
+import shapely
+from shapely.geometry.base import BaseGeometry
+
+from fellspan import __version__
+from fellspan.exports.folder import RESULTS, report_files, write_files
+from fellspan.exports.results_json import link_result_dict
+from fellspan.exports.text import finite, utf8
+from fellspan.geodesy.transforms import WGS84, transformer
+from fellspan.planning.inputs import Study
+from fellspan.planning.plan import StudyPlan
+from fellspan.planning.relay_result import RelayArea, RelayResult, RelayRoute
+from fellspan.planning.stamp import input_files
+from fellspan.study.writing import study_text
+
+GEOJSON: Final = "relay.geojson"
+STUDY: Final = "relay.toml"
+_SCHEMA: Final = 1
+
+
+def relay_json(result: RelayResult) -> str:
+    """The result as JSON; each hop has the keys of `results.json`."""
+    area = result.area
+    data: dict[str, Any] = {
+        "schema": _SCHEMA,
+        "fellspan": __version__,
+        "link": result.link_name,
+        "longest_hop_m": finite(result.hop_m),
+        "mast_m": None if result.request.sites else finite(result.request.mast_m),
+        "direct_verdict": None if result.direct is None else result.direct.result.verdict,
+        "relays": [_route(route) for route in result.routes],
+        "area": None
+        if area is None
+        else {
+            "cells": area.cells,
+            "area_m2": finite(area.area_m2),
+            "looked_at": area.looked_at,
+            "each_cell_judged_as_planned": area.exact,
+        },
+        "planned_in_full": result.tried,
+        "left_out": list(result.refused),
+        "cautions": list(result.cautions),
+    }
+    return utf8(json.dumps(data, ensure_ascii=False, allow_nan=False, indent=1) + "\n")
+
+
+def relay_geojson(result: RelayResult) -> str:
+    """A FeatureCollection (RFC 7946): the ends, relays and hops of every route, and the area from which both ends are clear."""
+    features = []
+    for end, position in zip("ab", result.ends, strict=True):
+        features.append(_feature(_point(position.longitude_deg, position.latitude_deg), {"what": "end", "end": end}))
+    for rank, route in enumerate(result.routes, start=1):
+        for site, ground_m in zip(route.relays, route.ground_amsl_m, strict=True):
+            features.append(
+                _feature(
+                    _point(site.position.longitude_deg, site.position.latitude_deg),
+                    {
+                        "what": "relay",
+                        "rank": rank,
+                        "name": site.name,
+                        "antenna_m": finite(site.height_m),
+                        "above": site.height_reference,
+                        "ground_amsl_m": finite(ground_m),
+                        "worst_margin_db": finite(route.worst_margin_db),
+                    },
+                )
+            )
+        for hop in route.hops:
+            ends = hop.result.ends
+            line = [[round(end.longitude_deg, 7), round(end.latitude_deg, 7)] for end in (ends.a, ends.b)]
+            features.append(
+                _feature(
+                    {"type": "LineString", "coordinates": line},
+                    {"what": "hop", "rank": rank, "name": hop.result.name, "verdict": hop.result.verdict},
+                )
+            )
+    if result.area is not None and result.area.cells:
+        outline = area_outline(result.area)
+        features.append(
+            _feature(
+                json.loads(shapely.to_geojson(outline)),
+                {
+                    "what": "both ends clear from here",
+                    "mast_m": finite(result.request.mast_m),
+                    "cells": result.area.cells,
+                },
+            )
+        )
+    text = json.dumps(
+        {"type": "FeatureCollection", "features": features}, ensure_ascii=False, allow_nan=False, indent=1
+    )
+    return utf8(text + "\n")
+
+
+def area_outline(area: RelayArea) -> BaseGeometry:
+    """The cells of an area as polygons, degrees of longitude and latitude (WGS 84), a millionth of a degree exact."""
+    to_degrees = transformer(area.crs, WGS84)
+    shapes = rasterio.features.shapes(area.clear.astype("uint8"), mask=area.clear, transform=area.transform)
+    parts = [shapely.geometry.shape(geometry) for geometry, value in shapes if value]
+    joined: BaseGeometry = shapely.GeometryCollection(parts)
+    joined = shapely.transform(joined, lambda at: np.column_stack(to_degrees.transform(at[:, 0], at[:, 1])))
+    rounded: BaseGeometry = shapely.set_precision(shapely.unary_union(joined), 1e-7)
+    return rounded
+
+
+def write_relay_folder(result: RelayResult, study: Study, out: Path) -> tuple[str, ...]:
+    """The report of all hops, with `relay.geojson` and `relay.toml` beside it; errors as `exports.folder.write_folder`."""
+    plan = relay_plan(result, study)
+    texts = report_files(plan)
+    last = texts.pop(RESULTS)
+    texts[GEOJSON] = relay_geojson(result)
+    texts[STUDY] = study_text(relay_study(result, study), folder=out)
+    texts[RESULTS] = last
+    write_files(texts, out)
+    return tuple(texts)
+
+
+def relay_study(result: RelayResult, study: Study) -> Study:
+    """A study of the hops alone, to plan on with."""
+    return dataclasses.replace(
+        study,
+        title=f"{study.title}: relay for {result.link_name}",
+        links=tuple(hop.link for route in result.routes for hop in route.hops),
+        links_left_out=(),
+    )
+
+
+def relay_plan(result: RelayResult, study: Study) -> StudyPlan:
+    """The hops of every route, and the link itself, as one plan: routes are alternatives, so none is another's neighbour."""
+    direct = () if result.direct is None else (result.direct,)
+    plans = (*direct, *(hop for route in result.routes for hop in route.hops))
+    made = dataclasses.replace(relay_study(result, study), links=tuple(plan.link for plan in plans))
+    return StudyPlan(
+        study=made,
+        links=plans,
+        failures=(),
+        files=input_files(study),
+        version=__version__,
+        cautions=(*result.cautions, *study.notes),
+        interference=None,
+    )
+
+
+def _route(route: RelayRoute) -> dict[str, Any]:
+    return {
+        "sites": [
+            {
+                "name": site.name,
+                "latitude_deg": site.position.latitude_deg,
+                "longitude_deg": site.position.longitude_deg,
+                "antenna_m": finite(site.height_m),
+                "above": site.height_reference,
+                "ground_amsl_m": finite(ground_m),
+            }
+            for site, ground_m in zip(route.relays, route.ground_amsl_m, strict=True)
+        ],
+        "length_m": finite(route.length_m),
+        "off_path_m": finite(route.off_path_m),
+        "worst_margin_db": finite(route.worst_margin_db),
+        "hops": [link_result_dict(hop.result) for hop in route.hops],
+    }
+
+
+def _feature(geometry: dict[str, Any], properties: dict[str, Any]) -> dict[str, Any]:
+    return {"type": "Feature", "geometry": geometry, "properties": properties}
+
+
+def _point(longitude_deg: float, latitude_deg: float) -> dict[str, Any]:
+    return {"type": "Point", "coordinates": [round(longitude_deg, 7) + 0.0, round(latitude_deg, 7) + 0.0]}

@@ -1,0 +1,134 @@
+"""One hop to many possible relay places, as arrays: the batch engine asked from an end of the link.
+
+Turns a link and a set of places into what `screening` takes, and its columns into what the relay search asks: is the path
+clear, and what margin is left. Holds no physics.
+"""
+
+from collections.abc import Callable
+from dataclasses import dataclass, replace
+from typing import Final, Literal
+
+import numpy as np
+from numpy.typing import NDArray
+
+from fellspan.links.assess import AssessSettings
+from fellspan.links.site import Aim, Antenna, Link, Site
+from fellspan.screening.pairs import (
+    HEIGHT_REFERENCES,
+    PATH_VERDICTS,
+    SIGNAL_VERDICTS,
+    STATUSES,
+    UNKNOWN,
+    Candidates,
+    Floats,
+    PairResults,
+    Sector,
+    SiteColumns,
+)
+from fellspan.screening.screen import screen_pairs
+from fellspan.terrain.terrain import Terrain
+
+End = Literal["a", "b"]
+Progress = Callable[[int, int, str], None]
+CHUNK: Final = 4096
+"""Pairs in one call of the engine; keeps memory level and the progress moving."""
+_CLEAR: Final = PATH_VERDICTS.index("clear")
+_MEETS: Final = SIGNAL_VERDICTS.index("meets")
+_DONE: Final = STATUSES.index("done")
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class HopColumns:
+    """What one hop is worth at each place, shape (n,)."""
+
+    clear: NDArray[np.bool_]
+    serves: NDArray[np.bool_]
+    """Clear, and the signal meets what is wanted wherever levels are known."""
+    margin_db: Floats
+    """The lesser of both ends, NaN where levels are not known."""
+    free_share: Floats
+    """Least free share of the first zone under the criterion that governs."""
+
+    @classmethod
+    def of(cls, pairs: PairResults, *, margin_db: float) -> "HopColumns":
+        margin = np.minimum(pairs.margin_at_hub_db, pairs.margin_at_place_db)
+        clear = (pairs.status == _DONE) & (pairs.verdict == _CLEAR)
+        meets = (pairs.signal_verdict == UNKNOWN) | (pairs.signal_verdict == _MEETS)
+        return cls(
+            clear=clear,
+            serves=clear & meets & (np.isnan(margin) | (margin >= margin_db)),
+            margin_db=margin,
+            free_share=pairs.worst_fraction,
+        )
+
+
+def columns_of(sites: tuple[Site, ...]) -> SiteColumns:
+    """Sites as columns; roof edges and measured levels stay behind, the full plan of a relay brings them back."""
+    return SiteColumns(
+        name=tuple(site.name for site in sites),
+        latitude_deg=np.array([site.position.latitude_deg for site in sites]),
+        longitude_deg=np.array([site.position.longitude_deg for site in sites]),
+        height_m=np.array([site.height_m for site in sites]),
+        height_reference=np.array([HEIGHT_REFERENCES.index(site.height_reference) for site in sites], dtype=np.int8),
+        roof_m=np.array([np.nan if site.roof_m is None else site.roof_m for site in sites]),
+    )
+
+
+def aimed_anew(antenna: Antenna) -> Antenna:
+    """The same antenna turned to whatever the other end of its hop is; polarization and roll stay."""
+    mounting = antenna.mounting
+    if mounting is None:
+        return antenna
+    return replace(antenna, mounting=Aim(polarization=mounting.polarization, roll_deg=mounting.roll_deg))
+
+
+def hop_link(link: Link, *, name: str, a: Site, b: Site) -> Link:
+    """One hop of a chain with the radio, the antennas and the wishes of the link."""
+    return replace(
+        link, name=name, a=a, b=b, antenna_a=aimed_anew(link.antenna_a), antenna_b=aimed_anew(link.antenna_b)
+    )
+
+
+def screen_hop(
+    link: Link,
+    *,
+    end: End | Site,
+    places: SiteColumns,
+    terrain: Terrain,
+    settings: AssessSettings,
+    margin_db: float,
+    growth_years: float = 0.0,
+    progress: Callable[[int], None] | None = None,
+) -> HopColumns:
+    """The hop from end 'a' or 'b' of the link (or from another site, with A's antenna) to each place."""
+    site = link.a if end == "a" else link.b if end == "b" else end
+    here, there = (link.antenna_b, link.antenna_a) if end == "b" else (link.antenna_a, link.antenna_b)
+    candidates = Candidates(
+        hubs=columns_of((site,)),
+        places=places,
+        sectors=(Sector(hub=0, name="", antenna=aimed_anew(here)),),
+        place_antenna=aimed_anew(there),
+        radio=link.radio,
+        settings=settings,
+        wanted_margin_db=link.wanted_margin_db,
+        target_availability_percent=link.target_availability_percent,
+        power_rule=link.power_rule,
+        growth_years=growth_years,
+    )
+    count = len(places.name)
+    parts = []
+    for first in range(0, count, CHUNK):
+        chosen = np.arange(first, min(first + CHUNK, count), dtype=np.int64)
+        found = screen_pairs(candidates, hub=np.zeros(chosen.size, dtype=np.int64), place=chosen, terrain=terrain)
+        parts.append(HopColumns.of(found, margin_db=margin_db))
+        if progress is not None:
+            progress(int(chosen[-1]) + 1)
+    if not parts:
+        nothing = np.zeros(0)
+        return HopColumns(clear=nothing > 0, serves=nothing > 0, margin_db=nothing, free_share=nothing)
+    return HopColumns(
+        clear=np.concatenate([part.clear for part in parts]),
+        serves=np.concatenate([part.serves for part in parts]),
+        margin_db=np.concatenate([part.margin_db for part in parts]),
+        free_share=np.concatenate([part.free_share for part in parts]),
+    )

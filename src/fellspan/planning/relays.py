@@ -1,0 +1,326 @@
+"""Where a relay would go: for a link that fails, the places from which both hops are clear, the best planned in full.
+
+Sweeps from both ends let cells through, the batch engine judges each as `plan` would, the best few that stand apart are
+planned; only those that pass are reported. Where no single place serves, chains of two are sought among places that an end
+sees. Writes nothing.
+"""
+
+import dataclasses
+import itertools
+from collections.abc import Callable, Iterator
+from typing import Final
+
+import numpy as np
+import shapely
+
+from fellspan.design.relay_picks import spread_picks, thinned
+from fellspan.errors import LinkError
+from fellspan.geodesy.geodesic import GeodesicPath, inverse
+from fellspan.geodesy.position import Position
+from fellspan.links.site import Link, Site
+from fellspan.planning.inputs import Study
+from fellspan.planning.plan import LinkPlan
+from fellspan.planning.planner import open_terrain, plan_study, settings_of
+from fellspan.planning.relay_cells import Cells, Ground, cells_between
+from fellspan.planning.relay_chains import chains_of_two
+from fellspan.planning.relay_hops import End, HopColumns, columns_of, hop_link, screen_hop
+from fellspan.planning.relay_result import RelayArea, RelayRequest, RelayResult, RelayRoute
+from fellspan.screening.pairs import Floats, SiteColumns
+from fellspan.terrain.alongpath import along_across
+from fellspan.terrain.terrain import Terrain
+
+_ALWAYS: Final = (
+    "a relay needs ground that may be built on, power, access and a right to stand there: none of it is in the data",
+    "antennas are aimed anew; radios, powers and rules are the link's; other links near by are not counted as neighbours",
+    "every hop adds delay and its own outage: the chain is available less than its worst hop",
+)
+
+Progress = Callable[[int, int, str], None]
+"""Called with the number of places judged, of all, and what is in hand."""
+
+JUDGE_AT_MOST: Final = 60_000
+"""Cells that are judged one by one; of more, the best of each block of cells stands for it."""
+_TRIES: Final = 8
+"""Places planned in full for each one asked, before the search gives up."""
+
+
+def find_relay(study: Study, link_name: str, request: RelayRequest, *, progress: Progress | None = None) -> RelayResult:
+    """Search intermediate sites for one link of a study.
+
+    Raises
+    ------
+    LinkError
+        The study has no such link, or the longest hop is too short for the distance.
+    TerrainError
+        The terrain cannot be opened.
+    """
+    link = _named(study, link_name)
+    length_m = inverse(link.a.position, link.b.position).distance_m
+    hop_m = request.hop_m if request.hop_m is not None else length_m
+    most = 3 if request.two_relays else 2
+    if most * hop_m <= length_m:
+        raise LinkError(
+            f"link '{link.name}' is {length_m / 1000.0:.2f} km long: {most} hops of {hop_m / 1000.0:.2f} km do not reach",
+            "allow longer hops, or plan towards a site of your own in between",
+        )
+    search = _Search(study=study, link=link, request=request, length_m=length_m, hop_m=hop_m, progress=progress)
+    return search.run()
+
+
+def _named(study: Study, name: str) -> Link:
+    for link in study.links:
+        if link.name == name:
+            return link
+    raise LinkError(
+        f"there is no link named '{name}' in this study", f"links: {', '.join(x.name for x in study.links)}"
+    )
+
+
+@dataclasses.dataclass(frozen=True, slots=True, kw_only=True)
+class _Search:
+    study: Study
+    link: Link
+    request: RelayRequest
+    length_m: float
+    hop_m: float
+    progress: Progress | None
+
+    @property
+    def margin_db(self) -> float:
+        asked = self.request.margin_db
+        return self.link.wanted_margin_db if asked is None else asked
+
+    @property
+    def apart_m(self) -> float:
+        asked = self.request.apart_m
+        return 0.05 * self.length_m if asked is None else asked
+
+    def tell(self, done: int, total: int, what: str) -> None:
+        if self.progress is not None:
+            self.progress(done, total, what)
+
+    def run(self) -> RelayResult:
+        direct = self._direct()
+        refused: list[str] = []
+        with open_terrain(self.study) as terrain:
+            if self.request.sites:
+                area, ranked = None, self._ranked_sites(terrain, refused)
+            else:
+                area, ranked = self._ranked_cells(terrain, refused)
+            routes, tried = self._planned(([site] for site in ranked), refused)
+            if not routes and self.request.two_relays and not self.request.sites:
+                chains = chains_of_two(
+                    self.study,
+                    self.link,
+                    terrain,
+                    mast_m=self.request.mast_m,
+                    hop_m=self.hop_m,
+                    area=self.request.area,
+                    margin_db=self.margin_db,
+                    apart_m=self.apart_m,
+                    tell=self.tell,
+                )
+                routes, more = self._planned(chains, refused)
+                tried += more
+        self.tell(1, 1, "")
+        return RelayResult(
+            request=self.request,
+            direct=direct,
+            link_name=self.link.name,
+            ends=(self.link.a.position, self.link.b.position),
+            hop_m=self.hop_m,
+            routes=tuple(routes),
+            area=area,
+            tried=tried,
+            refused=tuple(dict.fromkeys(refused)),
+            cautions=self._cautions(routes, area),
+        )
+
+    def _direct(self) -> LinkPlan | None:
+        self.tell(0, 1, "the link itself")
+        plan = plan_study(self._study_of((self.link,)))
+        return plan.links[0] if plan.links else None
+
+    def _study_of(self, links: tuple[Link, ...]) -> Study:
+        return dataclasses.replace(self.study, links=links, links_left_out=())
+
+    # cells ----------------------------------------------------------------------------------------------------------
+
+    def _ranked_cells(self, terrain: Terrain, refused: list[str]) -> tuple[RelayArea, Iterator[Site]]:
+        self.tell(0, 1, "sweep from both ends")
+        cells = all_cells = cells_between(
+            Ground(
+                study=self.study,
+                link=self.link,
+                ends=(self.link.a, self.link.b),
+                hop_m=self.hop_m,
+                mast_m=self.request.mast_m,
+                area=self.request.area,
+                terrain=terrain,
+            )
+        )
+        if cells.row.size > JUDGE_AT_MOST:
+            cells = cells.chosen(thinned(cells.spare_m, cells.row, cells.column, most=JUDGE_AT_MOST))
+        hops = self._both_hops(cells.columns(self.request.mast_m), terrain)
+        exact = all_cells.whole and cells.row.size == all_cells.row.size
+        clear = np.zeros(cells.shape, dtype=np.bool_)
+        if exact:
+            seen = hops[0].clear & hops[1].clear
+            clear[cells.row[seen], cells.column[seen]] = True
+        else:
+            seen = all_cells.spare_m >= 0.0
+            clear[all_cells.row[seen], all_cells.column[seen]] = True
+        count = int(clear.sum())
+        area = RelayArea(
+            clear=clear,
+            transform=cells.transform,
+            crs=cells.crs,
+            exact=exact,
+            cells=count,
+            area_m2=count * cells.cell_area_m2,
+            looked_at=cells.looked_at,
+        )
+        return area, self._best_cells(cells, hops, refused)
+
+    def _hop(self, end: End, places: SiteColumns, terrain: Terrain, *, before: int, total: int) -> HopColumns:
+        return screen_hop(
+            self.link,
+            end=end,
+            places=places,
+            terrain=terrain,
+            settings=settings_of(self.study),
+            margin_db=self.margin_db,
+            growth_years=self.study.growth_years,
+            progress=lambda done: self.tell(before + done, total, "places judged"),
+        )
+
+    def _both_hops(self, places: SiteColumns, terrain: Terrain) -> tuple[HopColumns, HopColumns]:
+        count = len(places.name)
+        there = self._hop("a", places, terrain, before=0, total=2 * count)
+        back = self._hop("b", places, terrain, before=count, total=2 * count)
+        return there, back
+
+    def _best_cells(self, cells: Cells, hops: tuple[HopColumns, HopColumns], refused: list[str]) -> Iterator[Site]:
+        score = self._score(hops, refused)
+        picks = spread_picks(score, cells.x_m, cells.y_m, apart_m=self.apart_m, count=self.request.count * _TRIES)
+        for index in picks.tolist():
+            yield Site(
+                name="relay",
+                position=Position(
+                    latitude_deg=round(float(cells.latitude_deg[index]), 7),
+                    longitude_deg=round(float(cells.longitude_deg[index]), 7),
+                ),
+                height_m=self.request.mast_m,
+            )
+
+    def _ranked_sites(self, terrain: Terrain, refused: list[str]) -> Iterator[Site]:
+        area = self.request.area
+        sites = [
+            site
+            for site in self.request.sites
+            if (area is None or shapely.contains_xy(area, site.position.longitude_deg, site.position.latitude_deg))
+            and all(inverse(end.position, site.position).distance_m <= self.hop_m for end in (self.link.a, self.link.b))
+        ]
+        left_out = len(self.request.sites) - len(sites)
+        if left_out:
+            refused.append(f"{left_out} of {len(self.request.sites)} candidate sites lie outside the hops or the area")
+        if not sites:
+            return iter(())
+        score = self._score(self._both_hops(columns_of(tuple(sites)), terrain), refused)
+        order = np.argsort(-score, kind="stable")
+        return iter([sites[index] for index in order.tolist() if np.isfinite(score[index])])
+
+    def _score(self, hops: tuple[HopColumns, HopColumns], refused: list[str]) -> Floats:
+        """The margin of the weaker hop, or its free share of the zone where levels are not known; -inf where one fails."""
+        there, back = hops
+        serves = there.serves & back.serves
+        seen = there.clear & back.clear
+        short = int((seen & ~serves).sum())
+        if short:
+            best = float(np.max(np.fmin(there.margin_db, back.margin_db)[seen]))
+            refused.append(
+                f"{short} places see both ends, but the signal falls short there (best margin {best:.1f} dB of "
+                f"{self.margin_db:g} dB wanted)"
+            )
+        known = np.isfinite(there.margin_db) & np.isfinite(back.margin_db)
+        value = np.where(
+            known, np.minimum(there.margin_db, back.margin_db), np.minimum(there.free_share, back.free_share)
+        )
+        return np.where(serves, value, -np.inf)
+
+    # plans ----------------------------------------------------------------------------------------------------------
+
+    def _planned(self, chains: Iterator[list[Site]], refused: list[str]) -> tuple[list[RelayRoute], int]:
+        routes: list[RelayRoute] = []
+        tried = 0
+        for chain in chains:
+            if len(routes) == self.request.count or tried >= self.request.count * _TRIES:
+                break
+            tried += 1
+            self.tell(len(routes), self.request.count, "places planned in full")
+            route, why = self._route(chain, number=len(routes) + 1)
+            if route is None:
+                refused.append(why)
+            else:
+                routes.append(route)
+        return routes, tried
+
+    def _route(self, chain: list[Site], *, number: int) -> tuple[RelayRoute | None, str]:
+        letters = "" if len(chain) == 1 else "ab"
+        relays = [
+            site if site.name != "relay" else dataclasses.replace(site, name=f"Relay {number}{letters[at : at + 1]}")
+            for at, site in enumerate(chain)
+        ]
+        stations = [self.link.a, *relays, self.link.b]
+        links = tuple(
+            hop_link(self.link, name=f"{one.name} - {two.name}", a=one, b=two)
+            for one, two in itertools.pairwise(stations)
+        )
+        plan = plan_study(self._study_of(links))
+        where = relays[0].position
+        at = f"{where.latitude_deg:.5f}, {where.longitude_deg:.5f}"
+        if plan.failures:
+            return None, f"a place at {at}: {plan.failures[0].error.what}"
+        for hop in plan.links:
+            if hop.result.verdict != "clear":
+                return None, f"a place at {at}: planned in full, '{hop.result.name}' is {hop.result.verdict}"
+            if hop.result.signal_verdict not in (None, "meets"):
+                return (
+                    None,
+                    f"a place at {at}: planned in full, the signal of '{hop.result.name}' is short of what is wanted",
+                )
+        margins = [
+            margin
+            for hop in plan.links
+            for margin in (hop.result.margin_db.at_a, hop.result.margin_db.at_b)
+            if margin is not None
+        ]
+        if margins and min(margins) < self.margin_db:
+            return None, f"a place at {at}: planned in full, its margin is {min(margins):.1f} dB"
+        path = GeodesicPath.between(self.link.a.position, self.link.b.position)
+        _, across = along_across(
+            path,
+            np.array([site.position.latitude_deg for site in relays]),
+            np.array([site.position.longitude_deg for site in relays]),
+        )
+        return (
+            RelayRoute(
+                relays=tuple(relays),
+                ground_amsl_m=tuple(hop.result.ends.b.ground_m for hop in plan.links[:-1]),
+                hops=plan.links,
+                worst_margin_db=min(margins) if margins else None,
+                off_path_m=float(np.max(np.abs(across))),
+            ),
+            "",
+        )
+
+    def _cautions(self, routes: list[RelayRoute], area: RelayArea | None) -> tuple[str, ...]:
+        said = []
+        if area is not None and not area.exact:
+            said.append(
+                f"more than {JUDGE_AT_MOST} cells could serve: the area is that of the sweep, and of each block of cells the "
+                "best one was judged"
+            )
+        if routes:
+            said += _ALWAYS
+        return tuple(said)
