@@ -6,6 +6,8 @@ Names load when first used (PEP 562), so that importing the package, and with it
 from importlib import import_module
 from typing import TYPE_CHECKING, Any
 
+from fellspan import showing
+
 if TYPE_CHECKING:
     from fellspan.errors import FellspanError
     from fellspan.geodesy.position import Position
@@ -58,6 +60,10 @@ __all__ = [
     "plan_study",
     "propagation",
 ]
+
+
+# A result in a notebook asks for its HTML; only here is every room known, so only here can the drawings be named to it.
+showing.writers_are_found_by(lambda: import_module("fellspan.report.notebook").WRITERS)
 
 
 def __getattr__(name: str) -> Any:

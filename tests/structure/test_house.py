@@ -15,6 +15,7 @@ PACKAGE = ROOT / "src" / "fellspan"
 ROOMS = (
     "errors",
     "vocabulary",
+    "showing",
     "quantities",
     "propagation",
     "antennas",

@@ -9,6 +9,7 @@ from dataclasses import dataclass
 from fellspan.links.exposure import ExposureResult
 from fellspan.links.rules import RuleCheck
 from fellspan.links.signal_result import NOT_COMPUTED, Periods, SignalResult
+from fellspan.showing import Shown
 from fellspan.vocabulary import Basis, MountedPolarization, PathVerdict, SignalVerdict
 
 
@@ -188,7 +189,7 @@ class ExposurePair:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
-class LinkResult:
+class LinkResult(Shown):
     """The decision on one link and its numbers (see results.json, schema 1, in docs/results.md)."""
 
     name: str

@@ -16,6 +16,7 @@ from fellspan.links.site import Link
 from fellspan.links.skyline import Skyline
 from fellspan.planning.inputs import Study
 from fellspan.planning.what_if import WhatIf
+from fellspan.showing import Shown
 from fellspan.terrain.profile import PathProfile
 
 
@@ -28,7 +29,7 @@ class Horizons:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
-class LinkPlan:
+class LinkPlan(Shown):
     """One planned link: the result, and the profile and levels it was worked out from.
 
     `profile` has the same samples as `levels`.
@@ -73,7 +74,7 @@ class InputFile:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
-class StudyPlan:
+class StudyPlan(Shown):
     """All links of a study, planned; `links` and `failures` keep the order of the study."""
 
     study: Study
