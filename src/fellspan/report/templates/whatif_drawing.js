@@ -247,7 +247,8 @@ var fellspanSketch = function (svg, data, points) {
     group.dataset.atM = item.worstAt;
     group.dataset.levelM = level;
     group.dataset.spareM = item.spare;
-    stroke(group, "leader", px, under, px, Math.max(high - (low - high < 16 ? 14 : 2), under));
+    // Below the names of obstacles, whose halo parts it where they meet.
+    stroke(layers.ends, "leader", px, under, px, Math.max(high - (low - high < 16 ? 14 : 2), under));
     dimension(group, px, low, high);
     stroke(group, "extension", px - 9, here, px + 9, here);
     stroke(group, "extension", px - 9, edge, px + 9, edge);
