@@ -29,13 +29,21 @@ class Spot:
     height_m: float
 
 
-def spots(count: int, *, seed: int, longest_m: float = 40e3, n: int = 160) -> list[Spot]:
+def spots(
+    count: int,
+    *,
+    seed: int,
+    longest_m: float = 40e3,
+    shortest_m: float = 1000.0,
+    rough_m: tuple[float, ...] = (0.0, 0.3, 2.0),
+    n: int = 160,
+) -> list[Spot]:
     """Paths of many kinds: rough or smooth, over sea in part, with trees and houses or without, short and long."""
     random = np.random.default_rng(seed)
     found = []
     for number in range(count):
         near = number % 7 == 3
-        reach = (random.uniform(300.0, 700.0) if near else random.uniform(1000.0, longest_m)) / 111e3
+        reach = (random.uniform(300.0, 700.0) if near else random.uniform(shortest_m, longest_m)) / 111e3
         angle = random.uniform(0.0, 2.0 * np.pi)
         place = Position(
             latitude_deg=HUB.latitude_deg + reach * np.cos(angle),
@@ -44,7 +52,7 @@ def spots(count: int, *, seed: int, longest_m: float = 40e3, n: int = 160) -> li
         length = geodesic.inverse(HUB, place).distance_m
         samples = n - number % 3
         share = np.linspace(0.0, 1.0, samples)
-        rough = random.choice([0.0, 0.3, 2.0])
+        rough = random.choice(rough_m)
         ground = random.uniform(5.0, 900.0) + np.cumsum(random.normal(0.0, rough, samples))
         sea = np.zeros(samples, dtype=np.int16)
         if number % 4 == 0:

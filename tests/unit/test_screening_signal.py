@@ -203,6 +203,38 @@ def test_the_cases_hold_what_they_should() -> None:
     assert bucket.is_sea.any()
 
 
+@pytest.mark.parametrize("power_dbm", [-12.0, 0.0, 10.0])
+def test_low_k_counts_where_it_can_use_a_margin_up(power_dbm: float) -> None:
+    # Long smooth paths near grazing at 2 GHz: without rain, and little multipath at the margins that are left.
+    low = spots(24, seed=8, longest_m=60e3, shortest_m=25e3, rough_m=(0.05, 0.3))
+    still = replace(CLIMATE, rain_rate_001_mm_h=0.0, dn1_n_per_km=-1.0)
+    asked = candidates(
+        low,
+        radio=Radio(frequency_hz=2e9, power_dbm=power_dbm, threshold_dbm=-90.0, polarization="vertical"),
+        settings=settings(still),
+        wanted_margin_db=0.0,
+    )
+    sector = np.zeros(len(low), dtype=np.int64)
+    assessments = planned(asked, low, sector)
+    assert_equal(signal_columns(asked, bucket_of(assessments, sector), sector=sector), assessments)
+    years = [one.result.signal.a_to_b.modulations[0].year for one in assessments if one.result.signal is not None]
+    taken = [year.diffraction for year in years if year is not None and year.diffraction is not None]
+    assert sum(1e-6 < one < 50.0 for one in taken) > 2
+
+
+def test_a_target_that_three_decibels_would_reach_is_nearly_met() -> None:
+    free = CASES["a target and hardly any margin wanted"]
+    bucket, sector, assessments = _laid(free)
+    shares = np.array([one.result.availability_percent.year or 0.0 for one in assessments])
+    margin = np.array([one.result.margin_db.at_a or 0.0 for one in assessments])
+    row = int(np.flatnonzero((shares > 90.0) & (shares < 99.999) & (margin > 2.0))[0])
+    asked = replace(free, target_availability_percent=float(shares[row] + 0.2 * (100.0 - shares[row])))
+    assessments = planned(asked, SPOTS, sector)
+    found = signal_columns(asked, bucket, sector=sector)
+    assert_equal(found, assessments)
+    assert SIGNAL_VERDICTS[int(found.signal_verdict[row])] == "marginal"
+
+
 def test_maps_are_read_as_for_one_link() -> None:
     pytest.importorskip("itur")
     # Only the rain is said; a sector of unknown gain needs no weather, and then its air is the standard one.
