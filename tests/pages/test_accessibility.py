@@ -49,7 +49,9 @@ def pages(sample, tmp_path_factory):
     }
 
 
-SETTLED = "() => new Promise(done => requestAnimationFrame(() => requestAnimationFrame(() => requestAnimationFrame(done))))"
+SETTLED = (
+    "() => new Promise(done => requestAnimationFrame(() => requestAnimationFrame(() => requestAnimationFrame(done))))"
+)
 AXE_RUN = """async () => {
   document.querySelectorAll("details").forEach(part => { part.open = true; });
   const found = await axe.run(document, {resultTypes: ["violations"]});
@@ -93,73 +95,38 @@ def _open(browser, path, *, width=1280, scheme="light"):
     return page
 
 
-@pytest.mark.parametrize("scheme", ["light", "dark"])
+DUMB = """() => Array.from(document.querySelectorAll("svg, img")).filter(one =>
+  !one.closest("[aria-hidden=true], .leaflet-container, template") && !one.querySelector("title") &&
+  !one.getAttribute("aria-label") && !one.getAttribute("alt")).map(one => one.outerHTML.slice(0, 120))"""
+
+
 @pytest.mark.parametrize("kind", KINDS)
-def test_axe_finds_nothing_serious(pages, browser, axe, kind, scheme):
-    page = _open(browser, pages[kind], scheme=scheme)
+@pytest.mark.parametrize(("width", "scheme"), [(1280, "light"), (1280, "dark"), (390, "dark")])
+def test_a_page_is_for_everyone(pages, browser, axe, kind, width, scheme):
+    page = _open(browser, pages[kind], width=width, scheme=scheme)
+    assert page.evaluate(JUMPS) < 0.01
+    wide, shown = page.evaluate("() => [document.documentElement.scrollWidth, window.innerWidth]")
+    assert wide <= shown == width
+    assert page.evaluate(DUMB) == []
+    seen = page.evaluate(CONTRAST)
+    assert (seen["ground"] > 0.8) if scheme == "light" else (seen["ground"] < 0.05)
+    assert seen["body"] >= 7.0
+    assert seen["pale"] == []
+    assert seen["count"] > 10 or kind in ("index", "crew sheet")
     page.evaluate(axe)
     assert page.evaluate(AXE_RUN) == []
+    page.emulate_media(media="print")
+    assert page.evaluate(CONTRAST)["ground"] > 0.99, "paper is white"
     page.context.close()
 
 
-@pytest.mark.parametrize("kind", KINDS)
-def test_axe_finds_nothing_serious_on_a_phone(pages, browser, axe, kind):
-    page = _open(browser, pages[kind], width=390)
-    page.evaluate(axe)
-    assert page.evaluate(AXE_RUN) == []
-    page.context.close()
-
-
-@pytest.mark.parametrize("kind", KINDS)
-def test_dark_is_dark_and_words_stand_out_in_both(pages, browser, kind):
-    grounds = {}
-    for scheme in ("light", "dark"):
-        page = _open(browser, pages[kind], scheme=scheme)
-        seen = page.evaluate(CONTRAST)
-        grounds[scheme] = seen["ground"]
-        assert seen["body"] >= 7.0, scheme
-        assert seen["pale"] == [], scheme
-        assert seen["count"] > 10 or kind in ("index", "crew sheet")
-        page.emulate_media(media="print")
-        assert page.evaluate(CONTRAST)["ground"] > 0.99, "paper is white"
-        page.context.close()
-    assert grounds["light"] > 0.8
-    assert grounds["dark"] < 0.05
-
-
-@pytest.mark.parametrize("kind", KINDS)
-def test_nothing_jumps_while_a_page_loads(pages, browser, kind):
-    for width in (1280, 390):
-        page = _open(browser, pages[kind], width=width)
-        assert page.evaluate(JUMPS) < 0.01
-        wide, shown = page.evaluate("() => [document.documentElement.scrollWidth, window.innerWidth]")
-        assert wide <= shown == width
-        page.context.close()
-
-
-def test_every_figure_has_words(pages, browser):
-    for kind in KINDS:
-        page = _open(browser, pages[kind])
-        dumb = page.evaluate("""() => Array.from(document.querySelectorAll("svg, img")).filter(one =>
-          !one.closest("[aria-hidden=true], .leaflet-container, template") && !one.querySelector("title") &&
-          !one.getAttribute("aria-label") && !one.getAttribute("alt")).map(one => one.outerHTML.slice(0, 120))""")
-        assert dumb == [], kind
-        page.context.close()
-
-
-def test_the_decision_and_the_start_of_the_drawing_stand_above_the_fold(sample, browser):
+def test_the_decision_stands_above_the_fold_and_a_link_takes_few_sheets(sample, browser):
+    sheets = []
     for path in sample.link_pages:
         page = _open(browser, path)
         bottom, top = page.evaluate("""() => ["section.decision", "figure.drawing"].map(
           (name, index) => document.querySelector(name).getBoundingClientRect()[index ? "top" : "bottom"])""")
         assert bottom < top < 720, path.name
-        page.context.close()
-
-
-def test_a_link_takes_few_sheets(sample, browser):
-    sheets = []
-    for path in sample.link_pages:
-        page = _open(browser, path)
         sheets.append(len(re.findall(rb"/Type\s*/Page\b", page.pdf(prefer_css_page_size=True))))
         page.context.close()
     assert max(sheets) <= MOST_SHEETS, sheets
