@@ -14,7 +14,7 @@ from fellspan.links.signal_words import minutes_text, percent_text, rate_text
 
 _TONES: Final = {"meets": "good", "marginal": "doubt", "below": "bad"}
 _CAUSES: Final = {"rain": "rain", "multipath": "multipath", "diffraction": "low k", "level": "too little level"}
-_WIDTHS: Final = (17, 6, 10, 7, 11, 7, 11)
+_WIDTHS: Final = (18, 4, 12, 9, 10, 9, 10)
 _OTHER_LOSSES: Final = (
     ("vegetation", "trees"),
     ("gases", "air"),
@@ -104,7 +104,7 @@ def _modulations(signal: SignalResult) -> list[str]:
         )
         for index, one in enumerate(there.modulations)
     ]
-    heads = ("Modulation", "dBm", "for users", "A to B", "of year", "B to A", "of year")
+    heads = ("Modulation", "dBm", "for users", "A to B dB", "of year", "B to A dB", "of year")
     lines = table(heads, rows, widths=_WIDTHS, right=(1, 2, 3, 4, 5, 6))
     lines.append("* wanted; dBm: the level it needs; A to B, B to A: the margin in clear air")
     mean = there.throughput_mean_bps, back.throughput_mean_bps
@@ -116,7 +116,9 @@ def _modulations(signal: SignalResult) -> list[str]:
 def _cells(direction: DirectionResult, index: int) -> tuple[str, str]:
     row = direction.modulations[index]
     year = row.availability_percent.year
-    return figures.decibels(row.margin_db), "-" if year is None else percent_text(year).replace("over ", ">")
+    return figures.decibels(row.margin_db, "").strip(), "-" if year is None else percent_text(year).replace(
+        "over ", ">"
+    )
 
 
 def _people_and_rules(result: LinkResult) -> list[str]:

@@ -1,0 +1,49 @@
+"""The terminal page of the sample: 80 columns, plain, the decisions of the overview, and margins that own up to neighbours."""
+
+import re
+from pathlib import Path
+
+import pytest
+
+from fellspan.cli.layout import WIDTH, Ink, columns_of
+from fellspan.cli.page import page_lines
+from fellspan.links.words import STATE_WORDS
+from fellspan.planning.plan import StudyPlan
+from fellspan.planning.planner import plan_study
+from fellspan.report.overview import overview_view
+from fellspan.study.reading import load_study
+
+
+@pytest.fixture(scope="module")
+def plan() -> StudyPlan:
+    return plan_study(load_study(Path(__file__).parents[2] / "sample_terrain" / "tolmera.toml"))
+
+
+@pytest.mark.parametrize("brief", [True, False])
+def test_no_line_is_wider_than_the_terminal_and_colours_change_no_word(plan: StudyPlan, brief: bool) -> None:
+    plain = page_lines(plan, ink=Ink(colours=False), brief=brief)
+    assert max(map(columns_of, plain)) <= WIDTH
+    assert not [line for line in plain if "\x1b" in line or line != line.rstrip()]
+    inked = page_lines(plan, ink=Ink(colours=True), brief=brief)
+    assert [re.sub(r"\x1b\[\d+m", "", line).rstrip() for line in inked] == plain
+
+
+def test_no_figure_is_cut(plan: StudyPlan) -> None:
+    lines = page_lines(plan, ink=Ink(colours=False))
+    start = [index for index, line in enumerate(lines) if line.startswith("  Modulation ")]
+    assert len(start) == len(plan.links)
+    for index in start:
+        for line in lines[index : index + 8]:
+            assert "..." not in line
+
+
+def test_terminal_and_overview_say_the_same(plan: StudyPlan) -> None:
+    lines = page_lines(plan, ink=Ink(colours=False), brief=True)
+    for link, row in zip(plan.links, overview_view(plan).rows, strict=True):
+        line = next(line for line in lines if line.startswith(link.result.name))
+        assert STATE_WORDS[row.state] in line
+        margin = float(line.split()[-2])
+        assert margin == pytest.approx(float(row.margin.sort), abs=0.051)
+        assert line.endswith("*") == bool(row.left)
+    assert any(line.endswith("*") for line in lines)
+    assert "  * what neighbours on the same channel leave of it" in lines
