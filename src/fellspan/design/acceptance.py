@@ -19,8 +19,10 @@ from fellspan.design.acceptance_swing import swing_factors
 
 PLAN_DB: Final = 1.5
 """Standard error of a level that a plan gives, common to both directions: gains, lines, air (common practice, no source)."""
-OF_LOSS: Final = 0.15
+OF_LOSS: Final = 0.12
 """Share of the loss by terrain and trees that is added to it (our own figure)."""
+WRONG_WAY: Final = 1e-3
+"""Factor on a cause that lowers a level which is high, or the reverse."""
 LEAST_READ_DB: Final = 1.0
 MOST_CAUSES: Final = 5
 FITS_SHARE: Final = 0.85
@@ -85,7 +87,9 @@ def rank_causes(
     known = sorted((key for key in groups if key != UNKNOWN), key=lambda key: -shares[key])
     top = known[0]
     fits_nothing = shares[UNKNOWN] > shares[top] or groups[top][0].distance > TOO_FAR
-    named = [key for key in known if shares[key] >= LEAST_SHARE][:MOST_CAUSES] or known[:1]
+    named = [key for key in known if shares[key] >= LEAST_SHARE][:MOST_CAUSES]
+    if not named or (fits_nothing and shares[top] < 0.5 * shares[UNKNOWN]):
+        return (), ()
     causes = tuple(
         _cause(groups[key], shares[key], named=named, groups=groups, shares=shares, lost=fits_nothing) for key in named
     )
@@ -123,12 +127,22 @@ def _score(
     density, distance = _normal(left, common=common, each=each)
     chains = _chain_factor(one, judged)
     likelihood = one.weight * density * chains * swings.get(one.varies, 1.0)
+    if _wrong_way(one, offs, judged):
+        likelihood *= WRONG_WAY
     return _Scored(
         hypothesis=one,
         likelihood=likelihood,
         distance=distance,
         decided=(bool(one.chain_at) and chains > 30.0)
         or (one.varies != "steady" and swings.get(one.varies, 1.0) > 30.0),
+    )
+
+
+def _wrong_way(one: Hypothesis, offs: tuple[float | None, float | None], judged: tuple[Judged, Judged]) -> bool:
+    """Whether a level outside its band stands on the other side of the plan than this cause would bring it to."""
+    return any(
+        off is not None and abs(off) > at.check.band_db and off * change < 0.0
+        for off, change, at in zip(offs, (one.a_db, one.b_db), judged, strict=True)
     )
 
 

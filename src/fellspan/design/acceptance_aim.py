@@ -150,7 +150,7 @@ def _side_lobes(numbers: Numbers) -> Iterator[Hypothesis]:
                 a_db=level,
                 b_db=level,
                 spread_db=(2.0 if angle is not None else 3.5, 0.0, 0.0),
-                weight=0.16 / len(sets[end]) * (0.5 if angle is None else 0.5 * (4.0 if seen else 1.0)),
+                weight=0.16 / len(sets[end]) * (0.25 if angle is None else 0.5 * (4.0 if seen else 1.0)),
                 why=f"the first side lobe of the antenna at {label(end)} in {plane} lies {db(-level)} down{where} "
                 f"({origin}), and both directions lose as much"
                 + (f"; the bearing read there is {abs(off or 0.0):.1f} degrees off the plan" if seen else ""),

@@ -38,6 +38,7 @@ QUARTER_TURN: dict[MountedPolarization, MountedPolarization] = {
 def gear_causes(numbers: Numbers) -> Iterator[Hypothesis]:
     """Everything that equipment and settings can do."""
     yield from _power(numbers)
+    yield from _both_powers(numbers)
     yield from _power_control(numbers)
     yield from _chains(numbers)
     yield from _read_per_chain(numbers)
@@ -101,9 +102,28 @@ def _power(numbers: Numbers) -> Iterator[Hypothesis]:
         )
 
 
+def _both_powers(numbers: Numbers) -> Iterator[Hypothesis]:
+    """A level that is too high both ways: seldom a fault of the path, and a matter of the rule."""
+    yield Hypothesis(
+        key="power",
+        title="both ends transmit with more power than stated",
+        a_db=5.0,
+        b_db=5.0,
+        spread_db=(3.0, 0.0, 0.0),
+        weight=0.04,
+        why="both levels are above the plan, and power set too high raises both",
+        settled_by="the transmit power that both radios show, all chains together",
+        checks=(
+            _READ_POWER,
+            Check(rung=DESK, text="hold the power of both ends against the power rule before anything else"),
+        ),
+        sharp=False,
+    )
+
+
 def _power_control(numbers: Numbers) -> Iterator[Hypothesis]:
     state, reach = numbers.built.power_control, numbers.link.radio.power_control_db
-    weight = 2.0 if state == "on" else 0.002 if state == "off" else 0.3 if reach > 0.0 else 0.06
+    weight = 2.0 if state == "on" else 0.002 if state == "off" else 0.4 if reach > 0.0 else 0.06
     mean, spread = (-0.55 * reach, 0.3 * reach) if reach > 0.0 else (-8.0, 4.5)
     a, b = numbers.expected_a_dbm, numbers.expected_b_dbm
     # Both ends settle on the same level, so the one that would be stronger loses more.
@@ -181,7 +201,7 @@ def _read_per_chain(numbers: Numbers) -> Iterator[Hypothesis]:
         a_db=change,
         b_db=change,
         spread_db=(0.5, 0.0, 0.0),
-        weight=0.08 if told is None else 0.02,
+        weight=0.05 if told is None else 0.02,
         why=f"a radio of {count} chains shows each of them {db(step)} under all together, and "
         + ("the file does not say which was read" if told is None else f"the file says '{told}'"),
         settled_by="the handbook of the radio, or the level of each chain beside the total",

@@ -82,6 +82,8 @@ class PathAsBuilt:
     confidence: float | None
     missing_m: float | None
     """Height missing to the governing criterion; 0 where it is met."""
+    planned_missing_m: float
+    """The same as planned."""
     sentence: str
     remeasured: bool
     """Whether heights or positions were measured at all."""

@@ -12,6 +12,8 @@ from fellspan.links.result import LinkResult
 from fellspan.vocabulary import PathVerdict
 
 _ORDER: tuple[PathVerdict, ...] = ("clear", "marginal", "obstructed")
+WORSE_M = 0.5
+"""A path that lacks this much more height than planned is worse, whatever its verdict (our own figure)."""
 TAPE = Check(rung=GROUND, text="measure both heights again with a tape, from the same reference as planned")
 LOWER = Cause(
     key="height",
@@ -75,12 +77,14 @@ def written(one: Stated) -> Cause:
 
 def path_as_built(planned: LinkResult, placed: Assessment | FellspanError | None) -> PathAsBuilt:
     """The verdict on the path where the antennas were measured."""
+    short = planned.clearance[planned.governing].shortfall_m
     if placed is None:
         return PathAsBuilt(
             verdict=None,
             planned_verdict=planned.verdict,
             confidence=None,
             missing_m=None,
+            planned_missing_m=short,
             sentence="heights and places were not measured, or are as planned: the verdict on the path stands as planned",
             remeasured=False,
         )
@@ -90,6 +94,7 @@ def path_as_built(planned: LinkResult, placed: Assessment | FellspanError | None
             planned_verdict=planned.verdict,
             confidence=None,
             missing_m=None,
+            planned_missing_m=short,
             sentence=f"the path could not be worked out as built: {placed.what}",
             remeasured=True,
         )
@@ -100,7 +105,8 @@ def path_as_built(planned: LinkResult, placed: Assessment | FellspanError | None
     )
     if governing.shortfall_m > 0.0:
         words += (
-            f"; {governing.shortfall_m:.1f} m are missing at {governing.shortfall_at_m / 1000.0:.2f} km from A for "
+            f"; {governing.shortfall_m:.1f} m (planned: {short:.1f} m) are missing at "
+            f"{governing.shortfall_at_m / 1000.0:.2f} km from A for "
             f"{governing.criterion} ({governing.cause})"
         )
     return PathAsBuilt(
@@ -108,6 +114,7 @@ def path_as_built(planned: LinkResult, placed: Assessment | FellspanError | None
         planned_verdict=planned.verdict,
         confidence=result.confidence,
         missing_m=governing.shortfall_m,
+        planned_missing_m=short,
         sentence=words,
         remeasured=True,
     )
@@ -115,7 +122,10 @@ def path_as_built(planned: LinkResult, placed: Assessment | FellspanError | None
 
 def is_worse(path: PathAsBuilt) -> bool:
     """Whether the path as built is worse than the one planned."""
-    return path.verdict is not None and _ORDER.index(path.verdict) > _ORDER.index(path.planned_verdict)
+    if path.verdict is None or path.missing_m is None:
+        return False
+    lower = path.missing_m > path.planned_missing_m + WORSE_M
+    return lower or _ORDER.index(path.verdict) > _ORDER.index(path.planned_verdict)
 
 
 def state_notes(built: AsBuilt) -> list[str]:
@@ -147,6 +157,10 @@ def _told(directions: tuple[DirectionCheck, ...]) -> str:
     return "; ".join(parts)
 
 
+def _is_off(one: DirectionCheck) -> bool:
+    return one.difference_db is not None and abs(one.difference_db) > one.band_db
+
+
 def decision(directions: tuple[DirectionCheck, ...], holds: tuple[str, ...], causes: tuple[Cause, ...]) -> str:
     """One sentence for the top of the page."""
     if all(one.verdict == "accepted" for one in directions):
@@ -155,8 +169,10 @@ def decision(directions: tuple[DirectionCheck, ...], holds: tuple[str, ...], cau
         return f"Not accepted, though both directions are within their band: {holds[0]}."
     parts = _told(directions)
     first = next((cause for cause in causes), None)
-    if first is None:
+    if first is None and not any(_is_off(one) for one in directions):
         return f"{parts}."
+    if first is None:
+        return f"{parts}. No cause known here explains it: see first that the file is of this link, and its units are right."
     words = {
         "stated by the crew": "by what the crew wrote down",
         "fits well": "likeliest, and it fits well",
