@@ -42,6 +42,7 @@ def chunks_kept(store: Path) -> set[int]:
 
 
 @pytest.mark.slow
+@pytest.mark.timeout(1200)
 def test_killed_at_twenty_random_moments_the_bytes_are_the_same(tmp_path: Path) -> None:
     made_runs.write_inputs(tmp_path, places=PAIRS // 2)
     began = time.monotonic()
@@ -81,9 +82,10 @@ def test_killed_at_twenty_random_moments_the_bytes_are_the_same(tmp_path: Path) 
 
 
 @pytest.mark.slow
+@pytest.mark.timeout(600)
 def test_two_runs_at_once_and_an_interrupted_one(tmp_path: Path) -> None:
     made_runs.write_inputs(tmp_path, places=PAIRS // 2)
-    first = start(tmp_path, "out", **{fake_engine.SLOW: "0.3"})
+    first = start(tmp_path, "out", **{fake_engine.SLOW: "2"})
     store = tmp_path / "out" / "candidates.sqlite"
     try:
         deadline = time.monotonic() + 60.0

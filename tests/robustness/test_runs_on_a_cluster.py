@@ -101,6 +101,7 @@ def chunks_in(store: Path) -> int:
 
 
 @pytest.mark.slow
+@pytest.mark.timeout(600)
 def test_one_worker_is_killed_midway_and_the_bytes_are_those_of_a_local_run(tmp_path: Path) -> None:
     made_runs.write_inputs(tmp_path, places=PLACES)
     local = made_runs.run_here(tmp_path, *made_runs.arguments("local", "--chunk", str(CHUNK)))
@@ -120,6 +121,7 @@ def test_one_worker_is_killed_midway_and_the_bytes_are_those_of_a_local_run(tmp_
 
 
 @pytest.mark.slow
+@pytest.mark.timeout(600)
 def test_the_real_engine_on_a_worker_gives_the_bytes_of_a_local_run(tmp_path: Path) -> None:
     made_runs.write_inputs(tmp_path, places=20)
     with cluster(tmp_path, fake=False, workers=1) as (address, _):
@@ -133,6 +135,7 @@ def test_the_real_engine_on_a_worker_gives_the_bytes_of_a_local_run(tmp_path: Pa
 
 
 @pytest.mark.slow
+@pytest.mark.timeout(600)
 def test_no_scheduler_and_another_version_are_told(tmp_path: Path) -> None:
     made_runs.write_inputs(tmp_path, places=20)
     process = run_on(f"tcp://127.0.0.1:{free_port()}", tmp_path, "out", fake=True)

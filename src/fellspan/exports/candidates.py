@@ -3,10 +3,11 @@
 Shows what the store holds and computes nothing. Names come from users: none can start a formula, none breaks the JSON.
 """
 
+import csv
 import json
-import math
 from collections.abc import Iterator, Sequence
-from typing import Final, TextIO
+from math import isfinite, isinf
+from typing import Any, Final, TextIO
 
 from fellspan import __version__
 from fellspan.exports.places import Place, split_at_antimeridian
@@ -17,22 +18,23 @@ from fellspan.runs.summary import HubCount, PairRow, RunSummary, rows_in_order
 from fellspan.screening.pairs import BASES, PATH_VERDICTS, SIGNAL_VERDICTS, STATUSES, Candidates, SiteColumns
 
 NUMBERS: Final = (
-    ("distance_m", 1),
-    ("bearing_deg", 2),
-    ("confidence", 4),
-    ("worst_fraction", 3),
-    ("worst_at_m", 1),
-    ("extra_at_place_m", 2),
-    ("diffraction_db", 2),
-    ("received_at_hub_dbm", 2),
-    ("received_at_place_dbm", 2),
-    ("margin_at_hub_db", 2),
-    ("margin_at_place_db", 2),
-    ("availability_percent", 6),
-    ("gap_from_m", 1),
-    ("gap_to_m", 1),
+    ("distance_m", "%.1f"),
+    ("bearing_deg", "%.2f"),
+    ("confidence", "%.4f"),
+    ("worst_fraction", "%.3f"),
+    ("worst_at_m", "%.1f"),
+    ("extra_at_place_m", "%.2f"),
+    ("diffraction_db", "%.2f"),
+    ("received_at_hub_dbm", "%.2f"),
+    ("received_at_place_dbm", "%.2f"),
+    ("margin_at_hub_db", "%.2f"),
+    ("margin_at_place_db", "%.2f"),
+    ("availability_percent", "%.6f"),
+    ("gap_from_m", "%.1f"),
+    ("gap_to_m", "%.1f"),
 )
-"""Numbers of a pair and their decimals."""
+"""Numbers of a pair and how they are written."""
+_NUMBER_AT: Final = tuple((PairRow._fields.index(name), form) for name, form in NUMBERS)
 CANDIDATE_COLUMNS: Final = (
     "hub",
     "place",
@@ -63,7 +65,7 @@ class CandidateTable:
 
     def cells(self, row: PairRow) -> list[str]:
         """The cells of `CANDIDATE_COLUMNS`."""
-        infinite = row.extra_at_place_m is not None and math.isinf(row.extra_at_place_m)
+        infinite = row.extra_at_place_m is not None and isinf(row.extra_at_place_m)
         cells = [
             self.hubs[row.hub],
             self.places[row.place],
@@ -75,7 +77,7 @@ class CandidateTable:
             "" if row.signal_verdict is None else SIGNAL_VERDICTS[row.signal_verdict],
             "" if row.governing is None else self.criteria[min(row.governing, len(self.criteria) - 1)],
         ]
-        cells += [_number(getattr(row, name), decimals) for name, decimals in NUMBERS]
+        cells += [_number(row[index], form) for index, form in _NUMBER_AT]
         cells.append(
             "" if row.extra_at_place_m is None else "no" if infinite else "yes" if row.extra_at_place_m else ""
         )
@@ -100,14 +102,12 @@ def criterion_words(candidates: Candidates) -> tuple[str, ...]:
     return ("median k", "worst-month k")
 
 
-def _number(value: float | None, decimals: int) -> str:
-    return "" if value is None or not math.isfinite(value) else repr(round(value, decimals) + 0.0)
+def _number(value: Any, form: str) -> str:
+    return form % value if value is not None and isfinite(value) else ""
 
 
 def write_csv(stream: TextIO, rows: Iterator[list[str]], columns: Sequence[str]) -> None:
     """A table, row by row."""
-    import csv
-
     writer = csv.writer(stream, lineterminator="\n")
     writer.writerow(columns)
     writer.writerows(rows)
@@ -138,10 +138,10 @@ def write_candidates_geojson(stream: TextIO, store: Store, candidates: Candidate
                 f'"verdict": {_worded("" if row.verdict is None else PATH_VERDICTS[row.verdict])}',
                 f'"basis": {_worded("" if row.basis is None else BASES[row.basis])}',
                 f'"signal_verdict": {_worded("" if row.signal_verdict is None else SIGNAL_VERDICTS[row.signal_verdict])}',
-                f'"distance_m": {_number(row.distance_m, 1) or "null"}',
-                f'"margin_db": {_number(row.margin_db, 2) or "null"}',
-                f'"worst_fraction": {_number(row.worst_fraction, 3) or "null"}',
-                f'"extra_at_place_m": {_number(row.extra_at_place_m, 2) or "null"}',
+                f'"distance_m": {_number(row.distance_m, "%.1f") or "null"}',
+                f'"margin_db": {_number(row.margin_db, "%.2f") or "null"}',
+                f'"worst_fraction": {_number(row.worst_fraction, "%.3f") or "null"}',
+                f'"extra_at_place_m": {_number(row.extra_at_place_m, "%.2f") or "null"}',
             )
         )
         geometry = _geometry(hubs[row.hub], places[row.place])
