@@ -52,16 +52,21 @@ def leaflet_js() -> Markup:
     """The map library's script, packed to two fifths, with its licence in plain letters and what unpacks and runs it."""
     plain = _MAP_COMMENT.sub("", _leaflet("leaflet.js"))
     licence = _LICENCE.match(plain)
-    packed = base64.b64encode(_packed(plain.encode("utf-8"))).decode("ascii")
-    return Markup(
-        f'{licence[0] if licence else ""}\n{asset("unpack.js")}\nrunPacked("{packed}", {len(plain.encode("utf-8"))});'
-    )
+    return Markup(f"{licence[0] if licence else ''}\n{asset('unpack.js')}\n{_packed(plain)}")
 
 
-def _packed(plain: bytes) -> bytes:
-    """Raw deflate, RFC 1951."""
+@cache
+def packed(*names: str) -> Markup:
+    """Scripts of the templates folder, one after the other, packed; `leaflet_js` brings what unpacks them."""
+    return Markup(_packed("\n".join(asset(name) for name in names)))
+
+
+def _packed(script: str) -> str:
+    """A call that runs the script: raw deflate (RFC 1951) in base64."""
+    plain = script.encode("utf-8")
     packer = zlib.compressobj(9, zlib.DEFLATED, -zlib.MAX_WBITS, 9)
-    return packer.compress(plain) + packer.flush()
+    data = packer.compress(plain) + packer.flush()
+    return f'runPacked("{base64.b64encode(data).decode("ascii")}", {len(plain)});'
 
 
 @cache

@@ -240,7 +240,7 @@ def _shared(plan: StudyPlan, chart: MapMarkup | None) -> dict[str, Any]:
             "overview": assets.asset("overview.js"),
             "table": assets.asset("table.js"),
             "link": assets.asset("link.js"),
-            "what_if": Markup("").join(assets.asset(name) for name in WHAT_IF_SCRIPTS),
+            "what_if": assets.packed(*WHAT_IF_SCRIPTS),
         },
     }
 
