@@ -158,7 +158,7 @@ var fellspanWhatIf = (function () {
   });
   boxes.k.addEventListener("input", function () { if (boxes.k.value.trim() === "") { mark(boxes.k, true); ask({k: null}); } });
   boxes.unit.addEventListener("change", function () { ask({years: plan.years, taller: 0}); });
-  reset.addEventListener("click", function () { boxes.unit.value = data.growth.grows ? "years" : "m"; ask(plan); });
+  reset.addEventListener("click", function () { boxes.unit.value = data.growth.grows ? "years" : "m"; ask(plan); panel.focus({preventScroll: true}); });
   copy.addEventListener("click", function () {
     var text = say.toml(state, plan).join("\n");
     function mine() {
