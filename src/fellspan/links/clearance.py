@@ -22,6 +22,8 @@ TOLERANCE_M: Final = 1e-6
 _SAME: Final = 1e-9
 """Values that differ by less are equal but for rounding."""
 
+_FEW: Final = 16
+
 
 def _per_path(value: ArrayLike) -> Floats:
     """A per-path argument with the path axis added, so that it broadcasts against (..., n)."""
@@ -109,9 +111,15 @@ def worst_index(values: Floats, distance_m: Floats) -> int:
 
 def worst_indices(values: Floats, distance_m: Floats) -> NDArray[np.intp]:
     """As `worst_index`, for arrays of shape (..., n): indices of shape (...)."""
-    ties = values <= values.min(axis=-1, keepdims=True) + _SAME
-    from_middle = np.abs(distance_m - 0.5 * distance_m[..., -1:])
-    return np.asarray(np.argmin(np.where(ties, from_middle, np.inf), axis=-1))
+    found = np.asarray(np.argmin(values, axis=-1))
+    least = np.take_along_axis(values, found[..., np.newaxis], axis=-1)
+    ties = values <= least + _SAME
+    many = np.count_nonzero(ties, axis=-1) > 1
+    if many.any():
+        from_middle = np.abs(distance_m - 0.5 * distance_m[..., -1:])
+        near = np.broadcast_to(from_middle, values.shape)[many]
+        found[many] = np.argmin(np.where(ties[many], near, np.inf), axis=-1)
+    return found
 
 
 def extra_heights_m(shortfall_m: ArrayLike, distance_m: ArrayLike) -> tuple[Floats, Floats, Floats]:
@@ -156,8 +164,17 @@ def probability_met(margin_m: ArrayLike, sigma_m: ArrayLike) -> Floats:
     z = np.where(margin >= -TOLERANCE_M, np.inf, -np.inf)
     np.divide(margin, sigma, out=z, where=sigma > 0.0)
     worst = z.min(axis=-1)
-    phi = [0.5 * (1.0 + math.erf(value / math.sqrt(2.0))) for value in np.ravel(worst)]
-    return np.asarray(phi, dtype=np.float64).reshape(worst.shape)
+    return _normal(worst)
+
+
+def _normal(z: Floats) -> Floats:
+    """Probability that a standard normal number is below `z`; SciPy loads for batches only."""
+    if z.size <= _FEW:
+        few = [0.5 * (1.0 + math.erf(value / math.sqrt(2.0))) for value in np.ravel(z)]
+        return np.asarray(few, dtype=np.float64).reshape(z.shape)
+    from scipy.special import erf
+
+    return np.asarray(0.5 * (1.0 + erf(z / math.sqrt(2.0))))
 
 
 def stretches(shortfall_m: Floats, distance_m: Floats) -> list[tuple[int, int, float, float]]:

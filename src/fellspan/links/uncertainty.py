@@ -79,8 +79,13 @@ def clearance_variance_m2(
     a, b, cell = (np.asarray(value, dtype=np.float64)[..., np.newaxis] for value in (a_error_m, b_error_m, cell_m))
     variance = surface**2 + ((1.0 - share) * a) ** 2 + (share * b) ** 2
     for from_end, error, like in ((distance_m, a, like_a), (length - distance_m, b, like_b)):
-        alike = _alike(from_end, cell) * like
-        variance -= 2.0 * (1.0 - from_end / length) * alike * np.minimum(surface, error) ** 2
+        # Beyond one cell nothing is shared.
+        near = np.nonzero(from_end < cell)
+        apart, whole, size, wrong, same, below = (
+            np.broadcast_to(value, variance.shape)[near] for value in (from_end, length, cell, error, like, surface)
+        )
+        alike = _alike(apart, size) * same
+        variance[near] -= 2.0 * (1.0 - apart / whole) * alike * np.minimum(below, wrong) ** 2
     both = _alike(length, cell) * np.asarray(ends_alike)[..., np.newaxis] * np.minimum(a, b) ** 2
     if both.any():
         variance += 2.0 * share * (1.0 - share) * both

@@ -3,7 +3,7 @@
 Puts the pieces of this room together for pairs on whose paths rasters alone count, and says which pairs are not of that kind.
 """
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field, fields
 from typing import Final
 
 import numpy as np
@@ -13,11 +13,11 @@ from fellspan.errors import FellspanError
 from fellspan.links.assess import REFINE_PARTS
 from fellspan.links.budget import tilts_deg
 from fellspan.screening.columns import Columns
-from fellspan.screening.laid import LaidBucket
+from fellspan.screening.laid import LaidBucket, joined_buckets
 from fellspan.screening.pairs import HEIGHT_REFERENCES, Candidates, SiteColumns
-from fellspan.screening.profiles import Profiles, closer, regular, steps_of, width_of
+from fellspan.screening.profiles import FINE_PER_OCTAVE, Profiles, closer, regular, steps_of, width_of
 from fellspan.screening.rays import CLEAR, MARGINAL, Judged, Rays, judged, rays_over, worth_a_closer_look
-from fellspan.screening.signal import best_sector, signal_columns
+from fellspan.screening.signal import SignalColumns, best_sector, signal_columns
 from fellspan.screening.single import name_of
 from fellspan.screening.stand import Antennas, Standings, antennas_at, standings
 from fellspan.screening.sure import likely_clear
@@ -29,8 +29,11 @@ from fellspan.terrain.units import is_ellipsoidal
 Floats = NDArray[np.float64]
 Index = NDArray[np.int64]
 
-MOST_SAMPLES: Final = 65_536
-"""Samples of a block of pairs: its arrays stay near the processor's caches."""
+NEAR_SAMPLES: Final = 65_536
+"""Samples of pairs that are worked on at once: their arrays stay near the processor's caches."""
+BLOCK_PAIRS: Final = 8_192
+BLOCK_SAMPLES: Final = 2_000_000
+"""Pairs and samples of a block: what a thread takes at a time."""
 LONGEST_STEPS: Final = 30_000
 """Paths of more steps are taken one by one."""
 FEWEST_STEPS: Final = 4
@@ -55,6 +58,14 @@ def wrong_sites(sites: SiteColumns, *, vertical_datum: str | None) -> NDArray[np
     wrong |= (sites.roof_m < 0.0) | np.isinf(sites.roof_m)
     wrong |= ~(np.abs(sites.latitude_deg) <= 90.0) | ~(np.abs(sites.longitude_deg) <= 360.0)
     return np.asarray(wrong | (above_sea & is_ellipsoidal(vertical_datum)))
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Block:
+    """Rows that a block could not decide on: those to be taken one by one, and clear ones on which draws must decide."""
+
+    one_by_one: list[Index] = field(default_factory=list)
+    unsure: list[Index] = field(default_factory=list)
 
 
 class Batch:
@@ -95,7 +106,7 @@ class Batch:
         found: list[Index] = []
         for one in np.unique(width).tolist():
             some = fit[width == one]
-            most = max(1, MOST_SAMPLES // one)
+            most = max(1, min(BLOCK_PAIRS, BLOCK_SAMPLES // one))
             found += [some[start : start + most] for start in range(0, some.size, most)]
         return found
 
@@ -116,44 +127,59 @@ class Batch:
             near |= np.array([survey.names(name_of(self._setting.candidates, *pair)) for pair in pairs], dtype=np.bool_)
         return near
 
-    def run(self, which: Index) -> tuple[Index, Index]:
-        """Fill the rows of a block; give those to be taken one by one instead, and those of which draws must decide."""
-        setting, settings = self._setting, self._setting.candidates.settings
+    def run(self, which: Index) -> Block:
+        """Fill the rows of a block of one width; give those that it could not decide on."""
+        block = Block()
         width = int(width_of(self._steps[which] + 1).max())
-        others: list[Index] = []
+        most = max(1, NEAR_SAMPLES // width)
+        laid: dict[int, list[LaidBucket]] = {}
+        for start in range(0, which.size, most):
+            for bucket in self._geometry(which[start : start + most], width, block):
+                laid.setdefault(bucket.distance_m.shape[1], []).append(bucket)
+        for buckets in laid.values():
+            # What is worked out for pairs as a whole is worked out for many at once.
+            self._signal(joined_buckets(buckets), block)
+        return block
+
+    def _geometry(self, which: Index, width: int, block: Block) -> list[LaidBucket]:
+        """Everything but the signal of a few pairs of one width, and what their signals are to be worked out from."""
+        setting, settings = self._setting, self._setting.candidates.settings
         coarse, doubtful = regular(self._laid, which, length_m=self._ways.length_m, steps=self._steps, width=width)
         gap = ~np.isfinite(coarse.ground_m).all(axis=1)
         if gap.any() and setting.many.layers.gaps == "error":
             self._note_gaps(coarse.rows(gap & ~doubtful))
         else:
             doubtful = doubtful | gap
-        others.append(self._rows[which[doubtful]])
-        coarse, a, b = self._with_antennas(coarse.rows(~gap & ~doubtful))
+        block.one_by_one.append(self._rows[which[doubtful]])
+        if gap.any() or doubtful.any():
+            coarse = coarse.rows(~gap & ~doubtful)
+        a, b = self._antennas(coarse)
         refused = a.refused | b.refused
-        others.append(self._rows[coarse.which[refused]])
         if refused.any():
+            block.one_by_one.append(self._rows[coarse.which[refused]])
             coarse, a, b = coarse.rows(~refused), a.rows(~refused), b.rows(~refused)
         if coarse.which.size == 0:
-            return np.concatenate(others), np.zeros(0, dtype=np.int64)
+            return []
         frequency_hz = setting.candidates.radio.frequency_hz
         rays = rays_over(coarse, standings(coarse), a, b, settings=settings, frequency_hz=frequency_hz)
         wanted = worth_a_closer_look(rays, coarse)
         fine, doubtful = closer(self._laid, coarse, wanted, step_m=self._fine_m[coarse.which])
         doubtful |= ~np.isfinite(fine.ground_m).all(axis=1)
-        others.append(self._rows[fine.which[doubtful]])
-        unsure: list[Index] = []
-        own_width = width_of(fine.last + 1, per_octave=4)
+        block.one_by_one.append(self._rows[fine.which[doubtful]])
+        own_width = width_of(fine.last + 1, per_octave=FINE_PER_OCTAVE)
+        found: list[LaidBucket] = []
         for one in np.unique(own_width[~doubtful]).tolist():
             some = np.flatnonzero((own_width == one) & ~doubtful)
-            unsure.append(self._judge(fine.rows(some).narrowed(one), a.rows(some), b.rows(some), others))
-        return np.concatenate(others), np.concatenate([*unsure, np.zeros(0, dtype=np.int64)])
+            found.append(self._judge(fine.rows(some).narrowed(one), a.rows(some), b.rows(some), block))
+        return found
 
-    def _with_antennas(self, profiles: Profiles) -> tuple[Profiles, Antennas, Antennas]:
+    def _antennas(self, profiles: Profiles) -> tuple[Antennas, Antennas]:
         candidates, bare = self._setting.candidates, self._setting.many.layers.is_bare
         hub, place = self._hub[profiles.which], self._place[profiles.which]
-        a = antennas_at(candidates.hubs, hub, profiles, at_a=True, ground_is_bare=bare)
-        b = antennas_at(candidates.places, place, profiles, at_a=False, ground_is_bare=bare)
-        return profiles, a, b
+        return (
+            antennas_at(candidates.hubs, hub, profiles, at_a=True, ground_is_bare=bare),
+            antennas_at(candidates.places, place, profiles, at_a=False, ground_is_bare=bare),
+        )
 
     def _note_gaps(self, profiles: Profiles) -> None:
         """The first stretch without data, as `gaps_of` tells it of one path."""
@@ -168,15 +194,22 @@ class Batch:
                 int(row), float(profiles.distance_m[index, start]), float(profiles.distance_m[index, stop])
             )
 
-    def _judge(self, profiles: Profiles, a: Antennas, b: Antennas, others: list[Index]) -> Index:
-        """Verdict and signal of pairs of one width; those of which draws must decide."""
+    def _judge(self, profiles: Profiles, a: Antennas, b: Antennas, block: Block) -> LaidBucket:
+        """The path verdict of pairs of one width, and what their signal is worked out from."""
         setting, columns = self._setting, self._columns
         candidates, settings = setting.candidates, setting.candidates.settings
         stands = standings(profiles)
         rays = rays_over(profiles, stands, a, b, settings=settings, frequency_hz=candidates.radio.frequency_hz)
         found = judged(rays, profiles, stands, a, b, settings=settings, ground_is_bare=setting.many.layers.is_bare)
         rows = self._rows[profiles.which]
-        bucket = self._bucket(profiles, stands.surface_m, stands.cover_kind, a, b, found)
+        for name in ("verdict", "basis", "confidence", "governing", "worst_fraction", "worst_at_m", "extra_at_place_m"):
+            getattr(columns, name)[rows] = getattr(found, name)
+        block.unsure.append(self._after_draws(rays, profiles, stands, found))
+        return self._bucket(profiles, stands.surface_m, stands.cover_kind, a, b, found)
+
+    def _signal(self, bucket: LaidBucket, block: Block) -> None:
+        """Fill the columns of the signal."""
+        candidates, columns = self._setting.candidates, self._columns
         try:
             sector = best_sector(
                 candidates, hub=bucket.hub, bearing_deg=bucket.bearing_ab_deg, tilt_deg=bucket.tilt_ab_deg
@@ -184,22 +217,11 @@ class Batch:
             signal = signal_columns(candidates, bucket, sector=sector)
         except FellspanError:
             # What one of them cannot have, planning says of each.
-            others.append(rows)
-            return np.zeros(0, dtype=np.int64)
-        columns.sector[rows] = sector
-        for name in ("verdict", "basis", "confidence", "governing", "worst_fraction", "worst_at_m", "extra_at_place_m"):
-            getattr(columns, name)[rows] = getattr(found, name)
-        for name in (
-            "diffraction_db",
-            "received_at_hub_dbm",
-            "received_at_place_dbm",
-            "margin_at_hub_db",
-            "margin_at_place_db",
-            "availability_percent",
-            "signal_verdict",
-        ):
-            getattr(columns, name)[rows] = getattr(signal, name)
-        return self._after_draws(rays, profiles, stands, found)
+            block.one_by_one.append(bucket.row)
+            return
+        columns.sector[bucket.row] = sector
+        for column in fields(SignalColumns):
+            getattr(columns, column.name)[bucket.row] = getattr(signal, column.name)
 
     def _after_draws(self, rays: Rays, profiles: Profiles, stands: Standings, found: Judged) -> Index:
         """Let bounds of what draws would say decide on the clear ones; those on which only the draws themselves can."""

@@ -32,6 +32,8 @@ _FLOATS: Final = (
     "gap_to_m",
 )
 
+_WAYS: Final = ("distance_m", "bearing_deg", "back_bearing_deg")
+
 
 class Columns:
     """One row a pair; numbers start as NaN, codes as `UNKNOWN`, the status as 'done'. Threads may fill rows of their own."""
@@ -71,13 +73,24 @@ class Columns:
 
     def refuse(self, row: int, why: str) -> None:
         """A pair that cannot be assessed as given, and why."""
+        self._clear(row)
         self.status[row] = REFUSED
         self.reason[row] = why
 
     def gap(self, row: int, from_m: float, to_m: float) -> None:
         """A pair with terrain missing; its first stretch, from the hub."""
+        self._clear(row)
         self.status[row] = GAP
         self.gap_from_m[row], self.gap_to_m[row] = from_m, to_m
+
+    def _clear(self, row: int) -> None:
+        """Take back what was filled in of the answers."""
+        for name in _FLOATS:
+            if name not in _WAYS:
+                getattr(self, name)[row] = np.nan
+        for name in _CODES:
+            getattr(self, name)[row] = UNKNOWN
+        self.sector[row] = UNKNOWN
 
     def results(self) -> PairResults:
         """What was filled in; the arrays are handed over, not copied."""

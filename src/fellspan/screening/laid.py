@@ -3,7 +3,8 @@
 Holds arrays and nothing else: no terrain, no physics.
 """
 
-from dataclasses import dataclass
+from collections.abc import Sequence
+from dataclasses import dataclass, fields
 
 import numpy as np
 from numpy.typing import NDArray
@@ -48,3 +49,16 @@ class LaidBucket:
     """Index into `vocabulary.COVER_KINDS`; None where nothing stands anywhere."""
     is_sea: NDArray[np.bool_] | None
     """Samples that the study took as open sea; None where there are none."""
+
+
+def joined_buckets(buckets: Sequence[LaidBucket]) -> LaidBucket:
+    """Buckets of one width as one, in their order."""
+    if len(buckets) == 1:
+        return buckets[0]
+    columns: dict[str, NDArray[np.generic] | None] = {}
+    for field in fields(LaidBucket):
+        parts = [getattr(bucket, field.name) for bucket in buckets]
+        columns[field.name] = None if parts[0] is None else np.concatenate(parts)
+    if all(bucket.surface_m is bucket.ground_m for bucket in buckets):
+        columns["surface_m"] = columns["ground_m"]
+    return LaidBucket(**columns)  # type: ignore[arg-type]

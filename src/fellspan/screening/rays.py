@@ -58,14 +58,16 @@ def rays_over(
         fraction = np.array([[rule.fraction] * count for rule in settings.criteria])
     else:
         k, fraction = rule_numbers(settings.preset, distance_m=profiles.length_m, median_k=settings.median_k)
-    clear = above - clearance.bulge_m(distance, k=k)
+    clear = clearance.bulge_m(distance, k=k)
+    np.subtract(above, clear, out=clear)
     normalised = clearance.normalised_clearance(clear, radius)
     if not settings.criteria and settings.preset == "p530-temperate":
         extended = are_extended(distance, normalised[1])
         _, fraction = rule_numbers(
             settings.preset, distance_m=profiles.length_m, median_k=settings.median_k, extended=extended
         )
-    margin = clear - fraction[..., np.newaxis] * radius
+    margin = fraction[..., np.newaxis] * radius
+    np.subtract(clear, margin, out=margin)
     return Rays(
         available_m=available,
         radius_m=radius,
@@ -113,9 +115,9 @@ def judged(
 ) -> Judged:
     """The verdict on every pair, and the numbers beside it."""
     distance = profiles.distance_m
-    shortfall = -rays.margin_m
     worst = np.stack([clearance.worst_indices(row, distance) for row in rays.normalised])
-    most = shortfall.max(axis=-1)
+    most = -rays.margin_m.min(axis=-1)
+    least = rays.margin_m.min(axis=0)
     missing = np.where(most > clearance.TOLERANCE_M, most, 0.0)
     at_worst = np.take_along_axis(rays.margin_m, worst[..., np.newaxis], axis=-1)[..., 0]
     governing = governing_rows(missing, at_worst)
@@ -124,8 +126,10 @@ def judged(
     errors = height_errors(profiles, stands, a, b)
     probability = clearance.probability_met(rays.margin_m, errors.clearance_m)
     confidence = np.asarray(probability.min(axis=0))
-    sight_m = rays.available_m - stands.surface_m - clearance.bulge_m(distance, k=settings.median_k)
-    cut = -sight_m.min(axis=-1) > clearance.TOLERANCE_M
+    sight = rays.clear_m[0]
+    if not (rays.k[0] == settings.median_k).all():
+        sight = rays.available_m - stands.surface_m - clearance.bulge_m(distance, k=settings.median_k)
+    cut = -sight.min(axis=-1) > clearance.TOLERANCE_M
     doubts = roof_doubts(a, profiles, at_a=True) | roof_doubts(b, profiles, at_a=False)
     if stands.left_out_m is not None:
         over = stands.left_out_m + clearance.bulge_m(distance, k=settings.median_k) - rays.available_m
@@ -134,10 +138,13 @@ def judged(
     sure = met & (confidence >= settings.confidence) & ~doubts
     verdict = np.where(cut, OBSTRUCTED, np.where(sure, CLEAR, MARGINAL)).astype(np.int8)
     known = profiles.known.all(axis=1) & profiles.tells
+    extra = np.zeros(rows.size)
+    lacking = np.flatnonzero(~met)
+    if lacking.size:
+        extra[lacking] = clearance.extra_at_b_m(-least[lacking], distance[lacking])
     trees = np.zeros(rows.size, dtype=np.bool_)
     if stands.cover_kind is not None:
-        reach = (shortfall > 0.0).any(axis=0)
-        trees = ((stands.cover_kind == _TREE) & reach).any(axis=-1)
+        trees = ((stands.cover_kind == _TREE) & (least < 0.0)).any(axis=-1)
     return Judged(
         verdict=verdict,
         basis=np.where(known | (not ground_is_bare), _RASTER, _BARE).astype(np.int8),
@@ -145,7 +152,7 @@ def judged(
         governing=governing.astype(np.int8),
         worst_fraction=rays.normalised[governing, rows, worst_at],
         worst_at_m=distance[rows, worst_at],
-        extra_at_place_m=clearance.extra_at_b_m(shortfall, distance).max(axis=0),
+        extra_at_place_m=extra,
         trees_in_zone=trees,
         errors=errors,
     )

@@ -18,7 +18,7 @@ from fellspan.screening.pairs import Candidates, PairResults, SiteColumns
 from fellspan.screening.single import draw_single, screen_single, site_of
 from fellspan.terrain.terrain import Terrain
 
-BATCH: Final = 8192
+BATCH: Final = 131_072
 """Pairs that are laid out at once."""
 
 
@@ -62,15 +62,17 @@ def screen_pairs(
     with ThreadPoolExecutor(max_workers=threads) as pool:
         for start in range(0, rows.size, BATCH):
             batch = Batch(setting, columns, rows[start : start + BATCH])
-            one_by_one, unsure = [batch.others], []
-            for others, drawn in pool.map(batch.run, batch.blocks()):
-                one_by_one.append(others)
-                unsure.append(drawn)
-            for row in np.sort(np.concatenate(one_by_one)).tolist():
+            done = list(pool.map(batch.run, batch.blocks()))
+            for row in _sorted([batch.others, *(rows for block in done for rows in block.one_by_one)]):
                 screen_single(candidates, columns, row, terrain=terrain)
-            for row in np.sort(np.concatenate([*unsure, np.zeros(0, dtype=np.int64)])).tolist():
-                draw_single(candidates, columns, row, terrain=terrain)
+            for row in _sorted([rows for block in done for rows in block.unsure]):
+                if columns.status[row] == DONE:
+                    draw_single(candidates, columns, row, terrain=terrain)
     return columns.results()
+
+
+def _sorted(rows: list[NDArray[np.int64]]) -> list[int]:
+    return sorted(set(np.concatenate([*rows, np.zeros(0, dtype=np.int64)]).tolist()))
 
 
 def _ways(setting: Setting, columns: Columns) -> None:

@@ -17,9 +17,8 @@ from fellspan.terrain.raster_file import RasterFile
 
 TILE: Final = 256
 """Side of the tiles in which cells are read."""
-MOST_CELLS: Final = 64_000_000
-"""Rasters with more cells are not kept as a sheet: 256 MB of float32, were all of them read."""
-_EXACT_AS_FLOAT32: Final = ("float32", "int16", "uint16", "uint8", "int8")
+MOST_CELLS: Final = 32_000_000
+"""Rasters with more cells are not kept as a sheet: 256 MB, were all of them read."""
 
 Floats = NDArray[np.float64]
 
@@ -31,7 +30,7 @@ class Sheet:
         """`dataset` gives the calling thread's handle on `file`."""
         self.file = file
         self._dataset = dataset
-        self._cells = np.empty((file.height, file.width), dtype=self._kept_as(file))
+        self._cells = np.empty((file.height, file.width))
         self._flat = self._cells.reshape(-1)
         self._tiles = -(-file.height // TILE), -(-file.width // TILE)
         self._loaded = np.zeros(self._tiles, dtype=np.bool_)
@@ -43,10 +42,10 @@ class Sheet:
         """Whether a raster is small enough to be kept so, and large enough to be interpolated."""
         return file.width * file.height <= MOST_CELLS and min(file.width, file.height) > 1
 
-    @staticmethod
-    def _kept_as(file: RasterFile) -> type[np.float32] | type[np.float64]:
-        plain = file.scale == 1.0 and file.offset == 0.0 and file.unit_m == 1.0
-        return np.float32 if plain and file.dtype in _EXACT_AS_FLOAT32 else np.float64
+    @property
+    def tiles_read(self) -> int:
+        """How many tiles are in memory."""
+        return int(np.count_nonzero(self._loaded))
 
     def read_near(self, column: Floats, row: Floats, *, reach: float) -> None:
         """Read the tiles within `reach` cells of places in cells; where they are NaN or off the raster nothing is read."""
@@ -84,28 +83,34 @@ class Sheet:
         """As `blocks.bilinear`, of tiles that `read_near` has read, for places on the raster in arrays of any one shape."""
         u, v = column - 0.5, row - 0.5
         width, height = self.file.width, self.file.height
-        left = np.clip(u, 0.0, width - 2.0).astype(np.int64)
-        top = np.clip(v, 0.0, height - 2.0).astype(np.int64)
         np.clip(u, 0.0, width - 1.0, out=u)
         np.clip(v, 0.0, height - 1.0, out=v)
+        left, top = u.astype(np.int64), v.astype(np.int64)
+        np.minimum(left, width - 2, out=left)
+        np.minimum(top, height - 2, out=top)
         u -= left
         v -= top
         top *= width
         top += left
-        first = self._flat.take(top, mode="clip")
-        right = self._flat.take(top + 1, mode="clip")
+        flat = self._flat
+        first = flat.take(top, mode="clip")
+        top += 1
+        right = flat.take(top, mode="clip")
         top += width
-        below = self._flat.take(top, mode="clip")
-        opposite = self._flat.take(top + 1, mode="clip")
-        upper = (right - first) * u
+        opposite = flat.take(top, mode="clip")
+        top -= 1
+        below = flat.take(top, mode="clip")
+        upper = right - first
+        upper *= u
         upper += first
-        lower = (opposite - below) * u
+        lower = opposite - below
+        lower *= u
         lower += below
         lower -= upper
         lower *= v
         lower += upper
         hollow = np.isnan(lower)
         if hollow.any():
-            corners = np.stack([one[hollow].astype(np.float64) for one in (first, right, below, opposite)])
+            corners = np.stack([one[hollow] for one in (first, right, below, opposite)])
             lower[hollow] = blended(corners, u[hollow], v[hollow])
         return lower
