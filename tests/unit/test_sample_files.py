@@ -73,6 +73,9 @@ def test_what_stands_on_the_islands_is_what_the_script_makes(script: ModuleType)
     survey = town.survey_csv(counts("tolmera_ground.tif") * 0.1, counts("tolmera_trees.tif") * 0.1, script.SEED)
     assert (SAMPLE / "survey.csv").read_text(encoding="utf-8") == survey
     assert town.buildings_geojson(script.SEED + 1) != town.buildings_geojson(script.SEED)
+    network, heights = script.network, (counts("tolmera_ground.tif") * 0.1, counts("tolmera_trees.tif") * 0.1)
+    assert (SAMPLE / "hubs.csv").read_text(encoding="utf-8") == network.hubs_csv()
+    assert (SAMPLE / "places.csv").read_text(encoding="utf-8") == network.places_csv(*heights, script.SEED)
 
 
 def test_the_same_seed_makes_the_same_noise_at_both_cell_sizes(script: ModuleType) -> None:
