@@ -328,10 +328,20 @@ def test_what_is_typed_wrong_is_marked_and_changes_nothing(watch, sample):
         page.evaluate(FRAMES)
         assert page.get_attribute(f"[data-box={box}]", "aria-invalid") == "true", (box, text)
         assert page.evaluate("() => JSON.stringify(fellspanWhatIf.state()) === JSON.stringify(fellspanWhatIf.plan)")
+        assert re.fullmatch(r"[\d.]+ to [\d.]+", page.inner_text(f"label:has([data-box={box}]) > span")), box
         page.locator(f"[data-box={box}]").blur()
         page.evaluate(FRAMES)
         assert page.get_attribute(f"[data-box={box}]", "aria-invalid") is None
     quiet(watched)
+
+
+def test_units_may_be_typed_with_the_numbers(watch, sample):
+    page = opened(watch, sample, 1).page
+    typed(page, a="40 ft", b="12 m", frequency="900 MHz", k="2/3")
+    state = page.evaluate("() => fellspanWhatIf.state()")
+    assert (state["a"], state["b"], state["frequency"]) == pytest.approx((12.192, 12.0, 9e8))
+    assert state["k"] == pytest.approx(2 / 3)
+    assert page.locator("[aria-invalid]").count() == 0
 
 
 def test_without_a_script_the_page_reads_as_before(browser, sample):

@@ -130,19 +130,26 @@ var fellspanWhatIf = (function () {
     if (boxes.k !== document.activeElement) { boxes.k.value = say.kFactor(now.k); mark(boxes.k, true); }
     trees.disabled = !points.tree.some(Boolean);
   }
-  function mark(box, good) {
+  // A box that is typed wrong says what is allowed in the place of its name.
+  function mark(box, good, range) {
+    var label = box.closest("label"), name = label.querySelector("span");
     if (good) box.removeAttribute("aria-invalid"); else box.setAttribute("aria-invalid", "true");
-    box.closest("label").classList.toggle("is-wrong", !good);
+    label.classList.toggle("is-wrong", !good);
+    if (!label.dataset.name) label.dataset.name = name.textContent;
+    name.textContent = good ? label.dataset.name : range;
   }
 
+  var UNITS = {ghz: 1, mhz: 1e-3, m: 1, ft: 0.3048, years: 1, year: 1};
   function typedNumber(text) {
-    var parts = text.trim().replace(",", ".").split("/").map(function (part) { return part.trim() === "" ? NaN : Number(part); });
-    return parts.length === 1 ? parts[0] : parts.length === 2 ? parts[0] / parts[1] : NaN;
+    var unit = (text.match(/[a-z]+\s*$/i) || [""])[0].trim().toLowerCase(), rest = text.replace(/[a-z]+\s*$/i, "").replace(",", ".");
+    var parts = rest.split("/").map(function (part) { return part.trim() === "" ? NaN : Number(part); });
+    var value = parts.length === 1 ? parts[0] : parts.length === 2 ? parts[0] / parts[1] : NaN;
+    return unit === "" ? value : value * (UNITS[unit] || NaN);
   }
   function take(name, low, high, into) {
     boxes[name].addEventListener("input", function () {
       var value = typedNumber(boxes[name].value), good = Number.isFinite(value) && value >= low - 1e-9 && value <= high + 1e-9;
-      mark(boxes[name], good);
+      mark(boxes[name], good, say.plain(low) + " to " + say.plain(high));
       if (good) ask(into(value));
     });
     boxes[name].addEventListener("change", function () { if (last) requestAnimationFrame(function () { fill(last); }); });
