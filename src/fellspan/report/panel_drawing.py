@@ -23,6 +23,8 @@ WIDE, HIGH = 1000, 300
 """Units of the picture; places are whole units, finer than a screen shows."""
 COLUMNS = 150
 LENS_POINTS = 25
+CUT_EVERY = 6
+"""Units: the highest point in each makes the line of a cut, so that rough tops do not fray it."""
 
 Array = NDArray[np.float64]
 
@@ -124,12 +126,13 @@ def _cuts(plan: LinkPlan, criterion: CriterionResult, frame: _Frame, bulge: Arra
         inside = np.flatnonzero((distance >= item.from_m - 1e-6) & (distance <= item.to_m + 1e-6))
         if inside.size == 0:
             continue
-        columns: dict[int, int] = {}
+        columns: dict[int, tuple[int, int]] = {}
         for x, y in zip(frame.x(distance[inside]), frame.y(tops[inside]), strict=True):
-            columns[x // 6 * 6] = min(y, columns.get(x // 6 * 6, HIGH))
-        xs, ys = list(columns), list(columns.values())
-        if len(xs) == 1:
-            xs, ys = [max(0, xs[0] - 3), xs[0] + 3], [ys[0], ys[0]]
+            if x // CUT_EVERY not in columns or y < columns[x // CUT_EVERY][1]:
+                columns[x // CUT_EVERY] = (x, y)
+        xs, ys = [x for x, _ in columns.values()], [y for _, y in columns.values()]
+        if xs[-1] - xs[0] < CUT_EVERY:
+            xs, ys = [max(0, xs[0] - 3), *xs, min(WIDE, xs[-1] + 3)], [ys[0], *ys, ys[-1]]
         drawn.setdefault("cut-sight" if item.cuts_sight else "cut-zone", []).append(_line(xs, ys))
     return [el("path", d="".join(lines), class_=name) for name, lines in sorted(drawn.items())]
 

@@ -105,7 +105,12 @@ function setUpMap(map, options) {
   }
   function declutter() {
     // The chosen link's ends first, then the sites that carry most: each takes the first side that is free.
-    var sites = map.fellspanSites, wide = box.clientWidth, high = box.clientHeight, kept = [];
+    var sites = map.fellspanSites, wide = box.clientWidth, high = box.clientHeight, here = box.getBoundingClientRect();
+    // No name goes below the buttons or the key of lines.
+    var kept = Array.from(frame.querySelectorAll(".map-tools, .map-key, .leaflet-control-zoom")).map(function (part) {
+      var at = part.getBoundingClientRect();
+      return {left: at.left - here.left, right: at.right - here.left, top: at.top - here.top, bottom: at.bottom - here.top};
+    });
     var sizes = sites.map(function (site) {
       site.name.classList.remove("crowded");
       return site.size || [site.name.offsetWidth, site.name.offsetHeight];
