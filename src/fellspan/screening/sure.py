@@ -114,7 +114,8 @@ class _Part:
             spare_m=spare,
             ground_m=ground,
             cover_m=np.sqrt(np.maximum(total**2 - ground**2, 0.0)),
-            slope=_slopes(profiles, which),
+            # What is known exactly does not move with a shift along the path.
+            slope=np.where(total > 0.0, _slopes(profiles, which), 0.0),
             curve=curve,
             a_m=errors.a_m[which, np.newaxis],
             b_m=errors.b_m[which, np.newaxis],
