@@ -1,6 +1,6 @@
 """How far cells of the sweep are from the path to them on real terrain, in metres of mast.
 
-The terrain is the SRTM sample that matplotlib ships (Jacksboro fault, Tennessee; 3 arc seconds, cells of 75 by 93 m). The truth is
+The terrain is the SRTM sample that matplotlib ships (Jacksboro fault, Tennessee; cells of 75 by 93 m). The truth is
 the path to the cell's centre with samples every sixteenth of a cell, need worked out here anew from distances and heights.
 """
 

@@ -8,6 +8,7 @@ plan of a link, which decides. Knows no gains, no levels of signal and no pages.
 import math
 from collections.abc import Sequence
 from dataclasses import dataclass
+from functools import cached_property
 from typing import TYPE_CHECKING, Final
 
 import numpy as np
@@ -40,7 +41,7 @@ _CLOSENESS: Final = ((0.25, 0.5), (0.5, 0.5), (0.5, 1.0), (1.0, 1.0))
 Bounds = tuple[float, float, float, float]
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@dataclass(frozen=True, kw_only=True, eq=False)
 class HeightField:
     """Heights that the other antenna needs, on a grid of cells; arrays (rows, columns), read-only.
 
@@ -51,8 +52,6 @@ class HeightField:
     """Least height above ground at which every criterion holds, m, 0 or more; NaN where no data or out of reach."""
     ground_m: Plane
     """Ground at the cell's centre, m above sea level; NaN where there is none."""
-    distance_m: Plane
-    """From the site, m."""
     sight_needed_m: Plane | None
     """As `needed_m`, for the bare sight line at `sight_k`; None where not asked."""
     transform: Affine
@@ -66,6 +65,22 @@ class HeightField:
     radius_m: float
     notes: tuple[str, ...]
     """What a person must know: what was coarsened, what was left out."""
+
+    @cached_property
+    def distance_m(self) -> Plane:
+        """From the site, m; worked out when asked for."""
+        from fellspan.terrain.rays_kernel import cell_distances
+
+        easts, norths, columns = self.grid.around(self.site.position, cell_m=self.cell_m)
+        distance = np.empty(self.shape, dtype=np.float32)
+
+        def work(first: int) -> None:
+            part = slice(first, first + _ROWS)
+            cell_distances(easts[part], norths[part], columns, distance[part])
+
+        in_threads(work, range(0, self.shape[0], _ROWS))
+        distance.flags.writeable = False
+        return distance
 
     @property
     def shape(self) -> tuple[int, int]:
@@ -149,14 +164,12 @@ def height_field(
     asked = [rules] if sight_k is None else [rules, _rules_of([0.0], [sight_k], frequency_hz)]
     polars = _swept(around, antenna, asked)
     ground = around.ground_of(grid)
-    distance = np.empty(ground.shape, dtype=np.float32)
-    needed = [_to_cells(polar, rays, grid, at, side_m, ground, distance) for polar in polars]
-    for array in (*needed, ground, distance):
+    needed = [_to_cells(polar, rays, grid, at, side_m, ground) for polar in polars]
+    for array in (*needed, ground):
         array.flags.writeable = False
     return HeightField(
         needed_m=needed[0],
         ground_m=ground,
-        distance_m=distance,
         sight_needed_m=needed[1] if sight_k is not None else None,
         transform=grid.transform,
         crs=grid.crs_text,
@@ -282,9 +295,7 @@ def _swept(around: Surroundings, antenna: float, asked: Sequence[tuple[Floats, F
     return polars
 
 
-def _to_cells(
-    polar: Plane, rays: Rays, grid: CellGrid, at: Position, cell_m: float, ground: Plane, distance: Plane
-) -> Plane:
+def _to_cells(polar: Plane, rays: Rays, grid: CellGrid, at: Position, cell_m: float, ground: Plane) -> Plane:
     from fellspan.terrain.rays_kernel import arctangent, cells_from_rays
 
     easts, norths, columns = grid.around(at, cell_m=cell_m)
@@ -305,7 +316,6 @@ def _to_cells(
             waves,
             ground[part],
             needed[part],
-            distance[part],
         )
 
     in_threads(work, range(0, grid.rows, _ROWS))

@@ -148,13 +148,13 @@ def _valid(raw: NDArray[np.generic], file: RasterFile) -> NDArray[np.bool_]:
     return valid
 
 
-def no_heights(file: RasterFile, dtype: np.dtype[np.generic]) -> tuple[float, NDArray[np.float64]]:
-    """What cells of `dtype` hold where there is no height: the file's own number (NaN if none), and numbers by habit."""
+def no_heights(file: RasterFile) -> tuple[float, NDArray[np.float64]]:
+    """What float32 copies of cells hold where there is no height: the file's own number (NaN if none), and numbers by habit."""
     if file.nodata is not None:
         with np.errstate(over="ignore"):
-            stored = float(np.float32(file.nodata)) if dtype == np.float32 else file.nodata
+            stored = float(np.float32(file.nodata))
         return (stored if np.isfinite(stored) else np.nan), np.zeros(0)
-    by_habit = not file.has_mask and dtype.kind != "u"
+    by_habit = not file.has_mask and np.dtype(file.dtype).kind != "u"
     return np.nan, np.array(_UNDECLARED if by_habit else (), dtype=np.float64)
 
 

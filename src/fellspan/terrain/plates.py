@@ -64,7 +64,7 @@ def read_plate(
     factor = max(1, math.ceil(math.sqrt((right - left) * (bottom - top) / most_cells)))
     left, top = left // factor * factor, top // factor * factor
     wide, high = -(-(right - left) // factor), -(-(bottom - top) // factor)
-    heights = np.full((high, wide), np.nan, dtype=np.float32)
+    heights = np.empty((high, wide), dtype=np.float32)
     strip = max(1, _STRIP_CELLS // ((right - left) * factor))
     block = max(1, file.block_height // factor)
     strip = max(block, strip // block * block) if block <= 4 * strip else strip
@@ -73,8 +73,12 @@ def read_plate(
         last = min(first + strip, high)
         window = Window(left, top + first * factor, right - left, min(last * factor, bottom - top) - first * factor)
         with gdal():
-            cells = _window(file, handles, window)
-        heights[first:last] = cells if factor == 1 else _highest(cells, factor, last - first, wide)
+            if factor == 1:
+                _read(file, handles, window, heights[first:last])
+            else:
+                cells = np.empty((int(window.height), int(window.width)), dtype=np.float32)
+                _read(file, handles, window, cells)
+                heights[first:last] = _highest(cells, factor, last - first, wide)
 
     in_threads(read, range(0, high, strip))
     return Plate(
@@ -98,22 +102,26 @@ def in_threads(work: Callable[[int], None], firsts: Sequence[int]) -> None:
             pass
 
 
-def _window(file: RasterFile, handles: HandlePool, window: Window) -> Plane:
+def _read(file: RasterFile, handles: HandlePool, window: Window, out: Plane) -> None:
+    """Heights of a window, put into `out`; GDAL turns cells of any type into its own."""
     from fellspan.terrain.rays_kernel import clean
 
     dataset = handles.dataset(file.path, file.name)
     with gdal_errors(file.name, "read"):
-        raw = dataset.read(file.band, window=window)
-        out = np.empty(raw.shape, dtype=np.float32)
-        nodata, habits = blocks.no_heights(file, raw.dtype)
-        clean(raw, nodata, habits, file.scale, file.offset, file.unit_m, blocks.LOWEST_M, blocks.HIGHEST_M, out)
+        dataset.read(file.band, window=window, out=out)
+        empty = None
         if file.has_mask:
-            out[dataset.read_masks(file.band, window=window) == 0] = np.nan
-        elif file.nodata is None and file.driver == "GTiff" and not raw.all():
-            rows, columns = np.nonzero(raw == 0)
-            lost = ~blocks.written(dataset, file, rows + int(window.row_off), columns + int(window.col_off))
-            out[rows[lost], columns[lost]] = np.nan
-    return out
+            empty = dataset.read_masks(file.band, window=window) == 0
+        elif file.nodata is None and file.driver == "GTiff" and not out.all():
+            empty = out == 0.0
+            rows, columns = np.nonzero(empty)
+            empty[rows, columns] = ~blocks.written(
+                dataset, file, rows + int(window.row_off), columns + int(window.col_off)
+            )
+    nodata, habits = blocks.no_heights(file)
+    clean(out, nodata, habits, file.scale, file.offset, file.unit_m, blocks.LOWEST_M, blocks.HIGHEST_M)
+    if empty is not None:
+        out[empty] = np.nan
 
 
 def _highest(cells: Plane, factor: int, high: int, wide: int) -> Plane:

@@ -4,7 +4,6 @@ This module imports numba; import it where it is called. Places are in cells, th
 """
 
 import math
-from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -17,25 +16,17 @@ Plane = NDArray[np.float32]
 
 @compiled
 def clean(
-    raw: NDArray[Any],
-    nodata: float,
-    habits: Floats,
-    scale: float,
-    offset: float,
-    unit_m: float,
-    low_m: float,
-    high_m: float,
-    out: Plane,
+    cells: Plane, nodata: float, habits: Floats, scale: float, offset: float, unit_m: float, low_m: float, high_m: float
 ) -> None:
-    """Heights of cells in metres, NaN where there is none: `nodata` (NaN: none stated), `habits`, and what is not on Earth."""
-    for row in range(raw.shape[0]):
-        for column in range(raw.shape[1]):
-            cell = float(raw[row, column])
+    """Raw cells become heights in metres, NaN where there is none: `nodata` (NaN: none stated), `habits`, not on Earth."""
+    for row in range(cells.shape[0]):
+        for column in range(cells.shape[1]):
+            cell = float(cells[row, column])
             height = (cell * scale + offset) * unit_m
             valid = cell != nodata and low_m < height < high_m
             for habit in habits:
                 valid = valid and cell != habit
-            out[row, column] = height if valid else math.nan
+            cells[row, column] = height if valid else math.nan
 
 
 @compiled
@@ -100,7 +91,7 @@ def gather(
     columns, rows
         (m, p), the polynomials of each ray, highest power first: share of the length to place in cells of the raster.
     is_new
-        Whether nothing in `out` was written yet.
+        Whether nothing in `out` was written yet: then all of it is, with NaN beside the raster.
     """
     block = 64  # neighbouring rays pass the same cells: block by block these stay at hand
     edge = 1e-6
@@ -130,11 +121,11 @@ def gather(
                     out[ray, first + i] = value if not math.isnan(value) else _height(plane, at_u, at_v)
                 continue
             for i in range(count):
-                if u[i] < -edge - left - 0.5 or u[i] > width + edge - left - 0.5:
-                    continue
-                if v[i] < -edge - top - 0.5 or v[i] > height + edge - top - 0.5:
-                    continue
-                if is_new or math.isnan(out[ray, first + i]):
+                beside = u[i] < -edge - left - 0.5 or u[i] > width + edge - left - 0.5
+                beside = beside or v[i] < -edge - top - 0.5 or v[i] > height + edge - top - 0.5
+                if beside:
+                    out[ray, first + i] = math.nan if is_new else out[ray, first + i]
+                elif is_new or math.isnan(out[ray, first + i]):
                     at_u, at_v = min(max(u[i], 0.0), most_u), min(max(v[i], 0.0), most_v)
                     out[ray, first + i] = _height(plane, at_u, at_v)
 
@@ -196,7 +187,6 @@ def cells_from_rays(
     waves: Floats,
     ground: Plane,
     needed: Plane,
-    distance: Plane,
 ) -> None:
     """Levels on rays, read at cells, less their ground: bilinear in bearing and distance, NaN out of reach or beside a gap.
 
@@ -212,8 +202,8 @@ def cells_from_rays(
         As `arctangent` gives them.
     ground
         (rows, c), of the cells.
-    needed, distance
-        (rows, c), written; `needed` is 0 or more.
+    needed
+        (rows, c), written: 0 or more.
     """
     block = 64  # cells of a square lie on the same rays: square by square these stay at hand
     held, most = polar.shape
@@ -230,7 +220,6 @@ def cells_from_rays(
             _angles(east[:count], north[:count], float(ray_count), waves, angle[:count])
             for j in range(count):
                 away = math.sqrt(east[j] * east[j] + north[j] * north[j])
-                distance[i, first + j] = away
                 beside = angle[j] - first_ray
                 angle[j] = beside + ray_count if beside < 0.0 else beside
                 along[j] = max(away * per_step - 1.0, 0.0) if away <= reach_m else -1.0
@@ -246,3 +235,14 @@ def cells_from_rays(
                 there = flat[also] + ahead * (flat[also + one] - flat[also])
                 above = here + beside * (there - here) - ground[i, first + j]
                 needed[i, first + j] = 0.0 if above < 0.0 else above
+
+
+@compiled
+def cell_distances(easts: Floats, norths: Floats, columns: Floats, out: Plane) -> None:
+    """How far cells are from the site, (rows, c), m; arguments as of `cells_from_rays`."""
+    east, north = np.empty(columns.size), np.empty(columns.size)
+    for i in range(out.shape[0]):
+        _places(columns, easts[i], 0.0, east)
+        _places(columns, norths[i], 0.0, north)
+        for j in range(columns.size):
+            out[i, j] = math.sqrt(east[j] * east[j] + north[j] * north[j])

@@ -225,7 +225,9 @@ def _along(polynomials: Floats, share: float) -> Floats:
 def _gathered(plates: list[_Placed], rays: Rays, first: int, last: int) -> Floats:
     from fellspan.terrain.rays_kernel import gather
 
-    out = np.full((last - first, rays.share.size), np.nan)
+    out = np.empty((last - first, rays.share.size))
+    if not plates:
+        out[:] = np.nan
     is_new = True
     for plate, columns, rows in plates:
         size = plate.width, plate.height, float(plate.left), float(plate.top)
