@@ -98,9 +98,10 @@ def path_levels(
 
 def normalised_clearance(clearance_m: ArrayLike, fresnel_radius_m: ArrayLike) -> Floats:
     """Clearance / F1, shape (..., n); +inf where the zone has no width (the two ends)."""
-    clearance, radius = np.broadcast_arrays(np.asarray(clearance_m, float), np.asarray(fresnel_radius_m, float))
-    result = np.full(clearance.shape, np.inf)
-    np.divide(clearance, radius, out=result, where=radius > 0.0)
+    radius = np.asarray(fresnel_radius_m, dtype=np.float64)
+    with np.errstate(divide="ignore", invalid="ignore"):
+        result = np.asarray(np.asarray(clearance_m, dtype=np.float64) / radius)
+    np.copyto(result, np.inf, where=~(radius > 0.0))
     return result
 
 
@@ -160,10 +161,14 @@ def probability_met(margin_m: ArrayLike, sigma_m: ArrayLike) -> Floats:
     Errors are taken as normal and fully correlated along the path (one raster too high or too low as a whole), so the
     probability is that of the single worst sample, Phi(min(margin / sigma)). A standard error of 0 makes it a step.
     """
-    margin, sigma = np.broadcast_arrays(np.asarray(margin_m, float), np.asarray(sigma_m, float))
-    z = np.where(margin >= -TOLERANCE_M, np.inf, -np.inf)
-    np.divide(margin, sigma, out=z, where=sigma > 0.0)
-    worst = z.min(axis=-1)
+    margin, sigma = np.asarray(margin_m, dtype=np.float64), np.asarray(sigma_m, dtype=np.float64)
+    if bool((sigma > 0.0).all()):
+        worst = np.asarray((margin / sigma).min(axis=-1))
+    else:
+        margin, sigma = np.broadcast_arrays(margin, sigma)
+        z = np.where(margin >= -TOLERANCE_M, np.inf, -np.inf)
+        np.divide(margin, sigma, out=z, where=sigma > 0.0)
+        worst = z.min(axis=-1)
     return _normal(worst)
 
 

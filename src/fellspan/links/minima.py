@@ -47,28 +47,36 @@ def lowest_minima(values: NDArray[np.float64], *, last: NDArray[np.int64] | None
     minima
         Shape (..., n), True at the minima.
     """
-    inner = values[..., 1:-1]
-    low = (inner <= values[..., :-2]) & (inner <= values[..., 2:]) & np.isfinite(inner)
+    count = values.shape[-1]
+    rows = values.reshape(-1, count)
+    inner = rows[:, 1:-1]
+    low = inner <= rows[:, :-2]
+    low &= inner <= rows[:, 2:]
     if last is not None:
-        inside = np.arange(1, values.shape[-1] - 1) < last[..., np.newaxis]
-        low &= inside
-        inner = np.where(inside, inner, np.inf)
-    lowest = np.where(low, inner, np.inf)
-    if inner.shape[-1] > MINIMA:
-        # The sixth lowest bounds the rest; where others equal it, the first ones count.
-        bound = np.partition(lowest, MINIMA - 1, axis=-1)[..., MINIMA - 1 : MINIMA]
-        low &= inner <= bound
-        crowded = low.sum(axis=-1) > MINIMA
-        if crowded.any():
-            order = np.argsort(lowest[crowded], axis=-1, kind="stable")[..., :MINIMA]
-            few = np.zeros(lowest[crowded].shape, dtype=np.bool_)
-            np.put_along_axis(few, order, True, axis=-1)
-            low[crowded] = few
-    none = ~low.any(axis=-1)
-    if none.any():
-        only = np.zeros(inner[none].shape, dtype=np.bool_)
-        np.put_along_axis(only, np.argmin(inner[none], axis=-1)[..., np.newaxis], True, axis=-1)
-        low[none] = only
-    found = np.zeros(values.shape, dtype=np.bool_)
-    found[..., 1:-1] = low
-    return found
+        low &= np.arange(1, count - 1) < last.reshape(-1, 1)
+    found = np.zeros(rows.shape, dtype=np.bool_)
+    path, at = np.nonzero(low)
+    level = inner[path, at]
+    if not np.isfinite(level).all():
+        known = np.isfinite(level)
+        path, at, level = path[known], at[known], level[known]
+    many = np.bincount(path, minlength=rows.shape[0])
+    # The minima of each path side by side, so that few numbers are sorted.
+    rank = np.arange(path.size) - (np.cumsum(many) - many)[path]
+    lowest = np.full((rows.shape[0], max(int(many.max(initial=0)), MINIMA + 1)), np.inf)
+    lowest[path, rank] = level
+    bound = np.partition(lowest, MINIMA - 1, axis=1)[:, MINIMA - 1]
+    chosen = level <= bound[path]
+    crowded = np.flatnonzero(np.bincount(path[chosen], minlength=rows.shape[0]) > MINIMA)
+    if crowded.size:
+        # Where others equal the sixth lowest, the first ones count.
+        order = np.argsort(lowest[crowded], axis=1, kind="stable")[:, :MINIMA]
+        few = np.zeros(lowest.shape, dtype=np.bool_)
+        few[crowded[:, np.newaxis], order] = True
+        within = np.isin(path, crowded)
+        chosen[within] = few[path[within], rank[within]]
+    found[path[chosen], at[chosen] + 1] = True
+    for row in np.flatnonzero(many == 0).tolist():
+        own = inner[row] if last is None else inner[row, : int(last.reshape(-1)[row]) - 1]
+        found[row, 1 + int(np.argmin(own))] = True
+    return found.reshape(values.shape)

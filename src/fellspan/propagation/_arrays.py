@@ -33,12 +33,16 @@ def quiet() -> np.errstate:
 def positive(value: ArrayLike) -> FloatArray:
     """The value where it is above zero, NaN elsewhere."""
     array = as_floats(value)
+    if array.size and array.min() > 0.0:
+        return array
     return np.where(array > 0.0, array, np.nan)
 
 
 def not_negative(value: ArrayLike) -> FloatArray:
     """The value where it is zero or more, NaN elsewhere."""
     array = as_floats(value)
+    if array.size and array.min() >= 0.0:
+        return array
     return np.where(array >= 0.0, array, np.nan)
 
 

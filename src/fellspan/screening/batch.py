@@ -29,7 +29,7 @@ from fellspan.terrain.units import is_ellipsoidal
 Floats = NDArray[np.float64]
 Index = NDArray[np.int64]
 
-NEAR_SAMPLES: Final = 65_536
+NEAR_SAMPLES: Final = 131_072
 """Samples of pairs that are worked on at once: their arrays stay near the processor's caches."""
 BLOCK_PAIRS: Final = 8_192
 BLOCK_SAMPLES: Final = 2_000_000

@@ -127,11 +127,12 @@ def closer(
     fine_place = np.repeat(place[path, interval], more) + 1 + within
 
     # Where each sample comes from: one of the coarse ones, or one of the new ones behind them all.
-    come_from = np.broadcast_to((np.arange(count) * columns + coarse.last - 1)[:, np.newaxis], (count, width)).copy()
-    own = np.arange(columns) < coarse.last[:, np.newaxis]
     rows = np.arange(count)[:, np.newaxis] * width
+    come_from = np.zeros((count, width), dtype=np.int64)
     flat = come_from.reshape(-1)
-    flat[(place + rows)[own]] = np.flatnonzero(own)
+    np.copyto(place, width - 1, where=np.arange(columns) >= coarse.last[:, np.newaxis])
+    place += rows
+    flat[place] = np.arange(count * columns).reshape(count, columns)
     flat[fine_place + fine_path * width] = count * columns + np.arange(fine_m.size)
     # Beyond the last sample but one: the last new one of the path, where the path ends with new ones.
     behind = flat[(total - 2) + rows[:, 0]]

@@ -43,6 +43,11 @@ class Sheet:
         return file.width * file.height <= MOST_CELLS and min(file.width, file.height) > 1
 
     @property
+    def is_complete(self) -> bool:
+        """Whether all of the raster is in memory."""
+        return self._complete
+
+    @property
     def tiles_read(self) -> int:
         """How many tiles are in memory."""
         return int(np.count_nonzero(self._loaded))

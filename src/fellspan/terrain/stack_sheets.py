@@ -172,7 +172,7 @@ class PathsOnStack:
         for place, number in enumerate(self.numbers):
             rows = np.flatnonzero(self._touches[place][which])
             sheet = self.sheets.sheet(number)
-            if rows.size == 0 or sheet is None:
+            if rows.size == 0 or sheet is None or sheet.is_complete:
                 continue
             column, row = self.curves[place].at(t[rows][:, few], which[rows])
             reach = max(float(np.abs(np.diff(one, axis=1)).max(initial=0.0)) for one in (column, row))
