@@ -26,7 +26,7 @@ from fellspan.planning.plan import LinkFailure, LinkPlan, StudyPlan
 from fellspan.planning.slips import explained
 from fellspan.planning.stamp import input_files
 from fellspan.planning.water import water_of
-from fellspan.planning.what_if import what_if_of
+from fellspan.planning.what_if import ages_of, what_if_of
 from fellspan.terrain.survey import link_key
 from fellspan.terrain.terrain import Terrain
 
@@ -81,7 +81,10 @@ def plan_study(
         )
         if what_if:
             # Last, so that a closer look at the terrain changes nothing of the plan.
-            planned = [replace(plan, what_if=what_if_of(plan.link, plan.profile, terrain)) for plan in planned]
+            ages = ages_of(terrain)
+            planned = [
+                replace(plan, what_if=what_if_of(plan.link, plan.profile, terrain, ages=ages)) for plan in planned
+            ]
     if progress is not None:
         progress(len(study.links), len(study.links), "")
     return StudyPlan(

@@ -4,6 +4,7 @@ Chooses points of a closely sampled profile and works out no clearance: whoever 
 pages.
 """
 
+from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import Final
 
@@ -67,28 +68,36 @@ def cover_code(kind: str) -> int:
     return next(_COVER - code for code, name in enumerate(COVER_KINDS) if name == kind)
 
 
-def what_if_of(link: Link, profile: PathProfile, terrain: Terrain) -> WhatIf | None:
+def ages_of(terrain: Terrain) -> dict[float, Terrain]:
+    """The terrain at the ages of its trees that are looked at, by years: once for all links of a study."""
+    years = {0.0, LATER_YEARS} if terrain.grows else set()
+    return {year: terrain.grown(year) for year in years - {terrain.growth_years}} | {terrain.growth_years: terrain}
+
+
+def what_if_of(
+    link: Link, profile: PathProfile, terrain: Terrain, *, ages: Mapping[float, Terrain] | None = None
+) -> WhatIf | None:
     """The points of one link, looked at everywhere as closely as the engine looks at its worst minima.
 
-    `profile` is that of the plan. None where the terrain, looked at so closely, refuses.
+    `profile` is that of the plan, `ages` what `ages_of` gives for `terrain`. None where the terrain, looked at so closely,
+    refuses.
     """
     step_m = max(profile.cell_m / PARTS, profile.length_m / MOST_SAMPLES)
+    now = terrain.growth_years
     trees = bool((profile.cover_kind == _TREE).any()) or any(item.growth_m_per_year for item in profile.obstacles)
-    grows = terrain.grows and trees
-    years = sorted({0.0, terrain.growth_years, LATER_YEARS}) if grows else [terrain.growth_years]
+    looked_at = (ages_of(terrain) if ages is None else ages) if trees else {now: terrain}
+    years = sorted(looked_at)
     try:
-        looked = {
-            year: terrain.grown(year).profile(a=profile.a, b=profile.b, step_m=step_m, name=profile.name)
-            for year in years
+        stands = {
+            year: stood(link, aged.profile(a=profile.a, b=profile.b, step_m=step_m, name=profile.name))
+            for year, aged in looked_at.items()
         }
-        stands = {year: stood(link, dense) for year, dense in looked.items()}
     except FellspanError:
         return None
-    now = terrain.growth_years
     surfaces = [stands[year][1].surface_m for year in years]
     if any(surface.shape != surfaces[0].shape for surface in surfaces):
         years, surfaces = [now], [stands[now][1].surface_m]
-    return _chosen(stands[now][0], stands[now][1], years, surfaces, now=now, grows=grows)
+    return _chosen(stands[now][0], stands[now][1], years, surfaces, now=now, grows=len(years) > 1)
 
 
 def what_if_without_terrain(link: Link, profile: PathProfile, *, growth_years: float) -> WhatIf:
