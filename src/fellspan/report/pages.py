@@ -1,6 +1,7 @@
 """The pages of a plan: an overview with the map, and one page a link. Shows the plan and computes none of it."""
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
+from contextlib import closing
 from dataclasses import dataclass, fields
 from html import escape
 from typing import Any, Literal
@@ -18,6 +19,7 @@ from fellspan.links.words import State, is_two_points, state_of
 from fellspan.planning.plan import LinkPlan, StudyPlan
 from fellspan.report import assets, wording
 from fellspan.report import map_geometry as geometry
+from fellspan.report.ahead import ahead
 from fellspan.report.antenna_section import antenna_section
 from fellspan.report.crew_sheet import crew_sheet
 from fellspan.report.decision_section import decision_section
@@ -31,7 +33,7 @@ from fellspan.report.neighbours import neighbours_view
 from fellspan.report.overview import overview_view
 from fellspan.report.profile_drawing import draw_profile, exaggeration_words
 from fellspan.report.reflection_section import reflection_section
-from fellspan.report.relief import open_rasters, shaded_relief
+from fellspan.report.relief import Relief, open_rasters, shaded_relief
 from fellspan.report.section import FULL, NARROW
 from fellspan.report.signal_section import availability_short, rules_section, signal_section
 from fellspan.report.survey_section import survey_section
@@ -44,7 +46,7 @@ Progress = Callable[[int, int, str], None]
 
 OVERVIEW = "index.html"
 OVERVIEW_PIXELS, OVERVIEW_BYTES = 1200, 100_000
-LINK_PIXELS, LINK_BYTES = 640, 40_000
+LINK_PIXELS, LINK_BYTES, KEY_PLAN_ASPECT = 640, 40_000, 1.3
 
 _LOSS_WORDS = {"free_space": "Free-space loss", "diffraction": "Diffraction loss"}
 
@@ -79,12 +81,13 @@ def render_pages(plan: StudyPlan, *, progress: Progress | None = None) -> dict[s
             progress(done, total, name)
 
     tell(0, OVERVIEW)
-    pages = {OVERVIEW: _overview(plan, templates, rasters)}
-    for index, link in enumerate(plan.links):
-        name = page_name(index, link.result.name)
-        tell(index + 1, name)
-        pages[name] = _link_page(plan, index, link, templates, rasters)
-        pages |= _crew_sheets(plan, index, link, templates)
+    with closing(ahead(lambda link: _relief_of(plan, link, rasters), plan.links)) as reliefs:
+        pages = {OVERVIEW: _overview(plan, templates, rasters)}
+        for index, (link, relief) in enumerate(zip(plan.links, reliefs, strict=True)):
+            name = page_name(index, link.result.name)
+            tell(index + 1, name)
+            pages[name] = _link_page(plan, index, link, templates, relief)
+            pages |= _crew_sheets(plan, index, link, templates)
     tell(total, "")
     return pages
 
@@ -92,9 +95,9 @@ def render_pages(plan: StudyPlan, *, progress: Progress | None = None) -> dict[s
 def _overview(plan: StudyPlan, templates: Environment, rasters: list[RasterFile]) -> str:
     chart = None
     if plan.links:
-        chart = _map(
-            plan.links, rasters, name="overview", pixels=OVERVIEW_PIXELS, most_bytes=OVERVIEW_BYTES, overview=True
-        )
+        window = geometry.window_of(_places(plan.links), margin=0.25)
+        relief = shaded_relief(rasters, window, pixels=OVERVIEW_PIXELS, most_bytes=OVERVIEW_BYTES)
+        chart = link_map(plan.links, name="overview", relief=relief, overview=True)
     return templates.get_template("index.html.j2").render(
         **_shared(plan, chart),
         view=overview_view(plan),
@@ -104,17 +107,9 @@ def _overview(plan: StudyPlan, templates: Environment, rasters: list[RasterFile]
     )
 
 
-def _link_page(plan: StudyPlan, index: int, link: LinkPlan, templates: Environment, rasters: list[RasterFile]) -> str:
+def _link_page(plan: StudyPlan, index: int, link: LinkPlan, templates: Environment, relief: Relief | None) -> str:
     result = link.result
-    chart = _map(
-        [link],
-        rasters,
-        name="plan",
-        pixels=LINK_PIXELS,
-        most_bytes=LINK_BYTES,
-        first=index,
-        gaps_are_sea=_gaps_are_sea(plan),
-    )
+    chart = link_map([link], name="plan", relief=relief, first=index)
     view = _view(
         index,
         link,
@@ -189,22 +184,15 @@ def _view(index: int, link: LinkPlan, **drawings: Any) -> LinkView:
     )
 
 
-def _map(
-    links: tuple[LinkPlan, ...] | list[LinkPlan],
-    rasters: list[RasterFile],
-    *,
-    name: str,
-    pixels: int,
-    most_bytes: int,
-    first: int = 0,
-    overview: bool = False,
-    gaps_are_sea: bool = False,
-) -> MapMarkup:
+def _relief_of(plan: StudyPlan, link: LinkPlan, rasters: list[RasterFile]) -> Relief | None:
+    """The land around one link, in the shape of the key plan."""
+    window = geometry.window_of(_places([link]), margin=0.5, aspect=KEY_PLAN_ASPECT)
+    return shaded_relief(rasters, window, pixels=LINK_PIXELS, most_bytes=LINK_BYTES, gaps_are_sea=_gaps_are_sea(plan))
+
+
+def _places(links: Sequence[LinkPlan]) -> geometry.Places:
     reference = links[0].result.ends.a.longitude_deg
-    places = [place for link in links for place in geometry.path(link, reference)]
-    window = geometry.window_of(places, margin=0.25 if overview else 0.4)
-    relief = shaded_relief(rasters, window, pixels=pixels, most_bytes=most_bytes, gaps_are_sea=gaps_are_sea)
-    return link_map(links, name=name, relief=relief, first=first, overview=overview)
+    return [place for link in links for place in geometry.path(link, reference)]
 
 
 def _shared(plan: StudyPlan, chart: MapMarkup | None) -> dict[str, Any]:
@@ -299,7 +287,6 @@ def _environment() -> Environment:
         governing_words=wording.governing_words,
         headline=wording.headline,
         k_factor=wording.k_factor,
-        lines=lambda text: Markup("<br>").join(text.split("\n")),
         km=lambda value, length: wording.kilometres(value, length_m=length),
         metres=wording.metres,
         missing=wording.missing,
