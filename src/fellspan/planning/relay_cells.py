@@ -28,6 +28,7 @@ from fellspan.links.site import Link, Site
 from fellspan.planning.inputs import Study
 from fellspan.planning.water import water_of
 from fellspan.screening.pairs import HEIGHT_REFERENCES, Floats, SiteColumns
+from fellspan.terrain.raster_file import on_plane
 from fellspan.terrain.terrain import Terrain
 
 SLACK_M: Final = 2.0
@@ -203,10 +204,10 @@ def _on_grid(first: HeightField, other: HeightField) -> Floats:
     if same and other.needed_m.shape == (rows, columns):
         return np.asarray(other.needed_m, dtype=np.float64)
     across, down = np.meshgrid(np.arange(columns) + 0.5, np.arange(rows) + 0.5)
-    x, y = first.transform * (across, down)
+    x, y = on_plane(first.transform, across, down)
     if first.crs != other.crs:
         x, y = transformer(first.crs, other.crs).transform(x, y)
-    column, row = ~other.transform * (np.asarray(x), np.asarray(y))
+    column, row = on_plane(~other.transform, np.asarray(x), np.asarray(y))
     column, row = np.floor(column + 1e-6).astype(np.int64), np.floor(row + 1e-6).astype(np.int64)
     inside = (row >= 0) & (row < other.needed_m.shape[0]) & (column >= 0) & (column < other.needed_m.shape[1])
     found = np.full((rows, columns), np.nan)
@@ -267,7 +268,7 @@ def _joined(parts: Sequence[Cells], coarse: Cells, *, looked_at: int) -> Cells:
     latitude = np.concatenate([part.latitude_deg for part in parts])
     longitude = np.concatenate([part.longitude_deg for part in parts])
     x, y = transformer(WGS84, coarse.crs).transform(longitude, latitude)
-    column, row = ~coarse.transform * (np.asarray(x), np.asarray(y))
+    column, row = on_plane(~coarse.transform, np.asarray(x), np.asarray(y))
     return dataclasses.replace(
         coarse,
         latitude_deg=latitude,

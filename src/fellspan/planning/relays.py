@@ -103,8 +103,12 @@ class _Search:
         direct = self._direct()
         refused: list[str] = []
         with open_terrain(self.study) as terrain:
+            area: RelayArea | None = None
+            ranked: Iterator[Site] = iter(())
             if self.request.sites:
-                area, ranked = None, self._ranked_sites(terrain, refused)
+                ranked = self._ranked_sites(terrain, refused)
+            elif 2.0 * self.hop_m < self.length_m:
+                refused.append(f"one relay: two hops of {self.hop_m / 1000.0:.2f} km do not reach from end to end")
             else:
                 area, ranked = self._ranked_cells(terrain, refused)
             routes, tried = self._planned(([site] for site in ranked), refused)
