@@ -96,7 +96,9 @@ def _overview(plan: StudyPlan, templates: Environment, rasters: list[RasterFile]
     chart = None
     if plan.links:
         window = geometry.window_of(_places(plan.links), margin=0.25)
-        relief = shaded_relief(rasters, window, pixels=OVERVIEW_PIXELS, most_bytes=OVERVIEW_BYTES)
+        relief = shaded_relief(
+            rasters, window, pixels=OVERVIEW_PIXELS, most_bytes=OVERVIEW_BYTES, gaps_are_sea=_gaps_are_sea(plan)
+        )
         chart = link_map(plan.links, name="overview", relief=relief, overview=True)
     return templates.get_template("index.html.j2").render(
         **_shared(plan, chart),
