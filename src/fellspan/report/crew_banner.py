@@ -44,14 +44,21 @@ def has_no_level(result: LinkResult) -> bool:
     return result.verdict == "obstructed" or result.signal_verdict == "below"
 
 
+def most_allowed_dbm(check: RuleCheck | None) -> float | None:
+    """The most power that the rule allows, dBm, where the power planned is over it; else None."""
+    if check is None or not check.is_breach or check.highest_setting_dbm is None or check.breach_db is None:
+        return None
+    # Down, not to the nearest: what is set by this sheet must keep the rule.
+    return math.floor(check.highest_setting_dbm * 10.0 + 1e-6) / 10.0
+
+
 def over_rule(check: RuleCheck | None) -> str:
     """What the rule allows where the power planned is over it; else empty."""
-    if check is None or not check.is_breach or check.highest_setting_dbm is None or check.breach_db is None:
+    most = most_allowed_dbm(check)
+    if most is None or check is None or check.highest_setting_dbm is None or check.breach_db is None:
         return ""
-    # Down, not to the nearest: what is set by this sheet must keep the rule.
-    most = math.floor(check.highest_setting_dbm * 10.0 + 1e-6) / 10.0
     planned = check.highest_setting_dbm + check.breach_db
     return (
         f"power rule {wording.shorten(check.rule_id, 60)} allows at most {wording.number(most)} dBm with this antenna; "
-        f"planned {wording.number(planned)} dBm is over it: do not transmit at it. Levels below are for the planned power"
+        f"planned {wording.number(planned)} dBm is over it: do not transmit at it"
     )

@@ -6,6 +6,7 @@ from typing import Final, Literal
 
 import numpy as np
 
+from fellspan.antennas.facts import CutFacts
 from fellspan.antennas.mounting import turn_for
 from fellspan.geodesy.coordinates import format_position
 from fellspan.geodesy.position import Position
@@ -17,11 +18,20 @@ from fellspan.links.site import Antenna
 from fellspan.planning.plan import LinkPlan, StudyPlan
 from fellspan.report import wording
 from fellspan.report.crew_banner import NO_LEVEL, Banner, banner_of, has_no_level, over_rule
+from fellspan.report.crew_work import (
+    BAND_DB,
+    BLANKS,
+    Pairs,
+    accept_words,
+    checks_of,
+    ladder,
+    over_db,
+    power_words,
+    work,
+)
 from fellspan.report.horizon_drawing import side_words
 from fellspan.report.polar_drawing import Curve, curve_of
 
-BAND_DB: Final = 3.0
-"""Within this of the expected level an alignment is accepted (common practice, no source)."""
 MOST_LANDMARKS: Final = 5
 _LONGEST: Final = 60
 _GROUPS: Final = {"public": "general public", "occupational": "trained workers"}
@@ -34,7 +44,6 @@ _TOPICS: Final[tuple[SafetyTopic, ...]] = (
 )
 
 EndLetter = Literal["A", "B"]
-Pairs = tuple[tuple[str, str], ...]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -82,18 +91,18 @@ def crew_sheet(plan: StudyPlan, link: LinkPlan, letter: EndLetter) -> CrewSheet:
     result = link.result
     at_a = letter == "A"
     here, there = (result.ends.a, result.ends.b) if at_a else (result.ends.b, result.ends.a)
-    site = link.link.a if at_a else link.link.b
     kit = link.link.antenna_a if at_a else link.link.antenna_b
     mounted = None if result.antennas is None else result.antennas.a if at_a else result.antennas.b
     exposed = None if result.exposure is None else result.exposure.a if at_a else result.exposure.b
-    received = result.received_dbm.at_a if at_a else result.received_dbm.at_b
+    received = _heard(result, letter)
     datum = result.vertical_datum or "vertical datum not stated by the data"
     none = has_no_level(result)
+    banner = banner_of(result)
     groups = () if exposed is None else (exposed.public, exposed.occupational)
     return CrewSheet(
         letter=letter,
-        banner=banner_of(result),
-        is_tight=banner_of(result) is not None or bool(_over(result, letter)),
+        banner=banner,
+        is_tight=banner is not None or bool(over_rule(checks_of(result, letter)[0])),
         link=_short(result.name),
         site=_short(here.site),
         other=_short(there.site),
@@ -112,30 +121,21 @@ def crew_sheet(plan: StudyPlan, link: LinkPlan, letter: EndLetter) -> CrewSheet:
         landmarks=_landmarks(link, letter),
         no_landmarks="" if _landmarks(link, letter) else _no_landmarks(link),
         state=_state(link, letter),
-        level=_level(result, letter, received),
+        level=_level(result, letter),
         misaimed=_misaimed(kit, mounted, None if none else received),
         no_pattern=""
         if kit.pattern is not None
         else "Only the gain is known: the study holds no pattern of this antenna.",
-        work=_WORK,
-        accept=f"{NO_LEVEL[0].upper()}{NO_LEVEL[1:]}." if none else _accept(received),
+        work=work(is_stopped=banner is not None and banner.heavy, check=checks_of(result, letter)[0]),
+        accept=f"{NO_LEVEL[0].upper()}{NO_LEVEL[1:]}." if none else accept_words(received),
         has_band=not none,
-        ladder=() if none else _LADDER,
+        ladder=() if none else ladder(_lobes(kit, mounted)),
         distances=tuple(_keep(one) for one in groups),
         no_distances=""
         if groups
         else "not computed, power or gain is unknown: switch off before work near the antenna",
         cautions=safety_lines(_TOPICS),
-        blanks=(
-            "Level here, each chain, dBm",
-            "Level there, each chain, dBm",
-            "Bearing as built, tilt",
-            "Antenna centre above ground, m",
-            f"Roof or ground measured ({site.height_reference}), m",
-            "Radio, antenna, serial numbers",
-            "Date, hour, weather, tide",
-            "Names, signature",
-        ),
+        blanks=BLANKS,
     )
 
 
@@ -179,9 +179,9 @@ def _pointing(link: LinkPlan, letter: EndLetter, mounted: AntennaResult | None, 
     if here.declination_deg is None:
         rows.append(("Magnetic", "not computed"))
     else:
-        model = f", {result.magnetic_model or 'model not named'} for {date}"
-        words = f"{wording.bearing(here.magnetic_bearing_deg)}; declination {wording.degrees(here.declination_deg, sign=True)}"
-        rows.append(("Magnetic", f"{words}{model}"))
+        model = result.magnetic_model or "model not named"
+        rows.append(("Magnetic", wording.bearing(here.magnetic_bearing_deg)))
+        rows.append(("Declination", f"{wording.degrees(here.declination_deg, sign=True)}, {model} for {date}"))
     rows += [
         ("Tilt, up is +", f"{wording.degrees(tilt, 2, sign=True)} at k {wording.k_factor(result.median_k)}"),
         ("Distance", wording.distance(result.distance_m)),
@@ -231,10 +231,9 @@ def _state(link: LinkPlan, letter: EndLetter) -> Pairs:
         if radio.chains > 1
         else "one chain"
     )
-    shown = "not stated" if power is None else f"{wording.number(power)} dBm here"
-    shown += "" if other is None else f", {wording.number(other)} dBm there"
-    over = _over(link.result, letter)
-    fixed = "planned, over the rule" if over else "fixed"
+    mine, theirs = checks_of(link.result, letter)
+    shown = f"{power_words(mine, power)} here" + ("" if other is None else f", {power_words(theirs, other)} there")
+    over = over_rule(mine)
     return (
         (
             "Modulation",
@@ -242,7 +241,7 @@ def _state(link: LinkPlan, letter: EndLetter) -> Pairs:
         ),
         (
             "Power",
-            f"{fixed}: {shown}, all chains together; automatic power control off at both ends",
+            f"fixed: {shown}, all chains together; automatic power control off at both ends",
         ),
         *((("OVER THE RULE", over),) if over else ()),
         ("Meter", chains),
@@ -250,22 +249,33 @@ def _state(link: LinkPlan, letter: EndLetter) -> Pairs:
     )
 
 
-def _over(result: LinkResult, letter: EndLetter) -> str:
-    checks = result.power
-    return "" if checks is None else over_rule(checks.a if letter == "A" else checks.b)
+def _heard(result: LinkResult, letter: EndLetter) -> float | None:
+    """Level here, dBm, with no more power at the other end than its rule allows."""
+    received = result.received_dbm.at_a if letter == "A" else result.received_dbm.at_b
+    sender = _directions(result, letter)[1]
+    over = over_db(checks_of(result, letter)[1], None if sender is None else sender.power_dbm)
+    return None if received is None else received - over
 
 
-def _level(result: LinkResult, letter: EndLetter, received: float | None) -> Pairs:
-    there = result.received_dbm.at_b if letter == "A" else result.received_dbm.at_a
+def _level(result: LinkResult, letter: EndLetter) -> Pairs:
+    other: EndLetter = "B" if letter == "A" else "A"
     rows = []
-    for label, level in ((f"Expected here ({letter})", received), ("Expected at the other end", there)):
-        if level is None:
+    for label, end in ((f"Expected here ({letter})", letter), ("Expected at the other end", other)):
+        level = _heard(result, end)
+        planned = result.received_dbm.at_a if end == "A" else result.received_dbm.at_b
+        if level is None or planned is None:
             rows.append((label, "not computed: the study states no power or no gain"))
-        elif has_no_level(result):
-            rows.append((label, f"{wording.number(level)} dBm as computed, not for acceptance"))
+            continue
+        cut = (
+            ""
+            if planned - level < 0.05
+            else f" with the power that the rule allows ({wording.number(planned)} as planned)"
+        )
+        if has_no_level(result):
+            rows.append((label, f"{wording.number(level)} dBm as computed{cut}, not for acceptance"))
         else:
             low, high = wording.number(level - BAND_DB), wording.number(level + BAND_DB)
-            rows.append((label, f"{wording.number(level)} dBm; accepted from {low} to {high} dBm"))
+            rows.append((label, f"{wording.number(level)} dBm{cut}; accepted from {low} to {high} dBm"))
     if has_no_level(result):
         rows.append(("Acceptance", NO_LEVEL))
     if result.verdict == "obstructed":
@@ -273,16 +283,24 @@ def _level(result: LinkResult, letter: EndLetter, received: float | None) -> Pai
     return tuple(rows)
 
 
+def _lobes(kit: Antenna, mounted: AntennaResult | None) -> tuple[CutFacts, ...]:
+    """Facts of the antenna in both planes; none where only its gain is known."""
+    return tuple(curve.facts for _, curve in _planes(kit, mounted))
+
+
 def _misaimed(kit: Antenna, mounted: AntennaResult | None, received: float | None) -> tuple[Misaimed, ...]:
+    return tuple(_plane(word, curve, received) for word, curve in _planes(kit, mounted))
+
+
+def _planes(kit: Antenna, mounted: AntennaResult | None) -> tuple[tuple[str, Curve], ...]:
     pattern = kit.pattern
     if pattern is None:
         return ()
     turned = mounted is not None and abs(turn_for(pattern, mounted.polarization)) == 90.0
-    planes = (
+    return (
         ("azimuth", curve_of(pattern, "horizontal", turned=turned)),
         ("elevation", curve_of(pattern, "vertical", turned=turned)),
     )
-    return tuple(_plane(word, curve, received) for word, curve in planes)
 
 
 def _plane(word: str, curve: Curve, received: float | None) -> Misaimed:
@@ -314,41 +332,6 @@ def _meter(change_db: float, received: float | None) -> str:
 
 def _at_level(change_db: float, received: float | None) -> str:
     return "" if received is None else f" (about {wording.number(received + change_db)} dBm)"
-
-
-_WORK: Final = (
-    "Read the cautions; transmitter off. Check position, height and polarization against this sheet.",
-    "Point by landmark first, by true bearing on a map second. A compass is last: steel of mast and roof spoils it.",
-    "Set tilt with an inclinometer on the mounting face. Fix the radios of both ends in the state above.",
-    "One end moves at a time. Sweep azimuth wide, past a fall on both sides, and find the highest of all peaks.",
-    "Then elevation in the same way, then azimuth again; then the other end does the same.",
-    "Tighten, and see that the level did not move. Read the level at both ends, each chain, and write it down.",
-    "Power control and adaptive modulation back on. Photograph mount, aim and labels.",
-)
-
-
-def _accept(received: float | None) -> str:
-    if received is None:
-        return "No level could be computed: compare both ends with each other, and sweep both planes."
-    return (
-        f"Accept when both ends read within {BAND_DB:g} dB of the level expected and within {BAND_DB:g} dB of each other "
-        "once the difference planned is allowed for. If not, from the top:"
-    )
-
-
-_LADDER: Final[Pairs] = (
-    (
-        "Both ways 15 to 25 dB low",
-        "an antenna stands on a side lobe, or polarizations differ: sweep wider, then compare feeds",
-    ),
-    ("Both ways low by less", "height or position as built, something new in the path, aim in elevation"),
-    ("One way low", "power or feeder at the sending end, noise or fault at the receiving end"),
-    ("One chain low", "its cable, connector or polarization port; water in a connector"),
-    (
-        "Changes with tide or hour",
-        "reflection from water or layers in the air: log it for a day before moving anything",
-    ),
-)
 
 
 def _keep(one: ExposureDistances) -> tuple[str, str, str, str]:
