@@ -1,5 +1,6 @@
 """The page of a run in a real browser: it draws, sorts, finds and tells, asks no network and stays within bounds."""
 
+import os
 from collections.abc import Iterator
 from contextlib import contextmanager
 from pathlib import Path
@@ -8,6 +9,7 @@ from typing import Any
 import made_runs
 import numpy as np
 import pytest
+from test_accessibility import AXE, AXE_RUN
 
 from fellspan.cli.main import run
 from fellspan.report import candidates_page
@@ -164,6 +166,23 @@ def test_lists_sort_find_and_tell(small: Path, watch: Any) -> None:
         assert "place 000007" in page.locator("#told").inner_text()
         page.locator("[data-hub]").nth(0).click()
         assert "joined by lines" in page.locator("#told").inner_text()
+
+
+@pytest.mark.browser
+@pytest.mark.parametrize(("width", "scheme"), [(1280, "light"), (1280, "dark"), (390, "dark")])
+def test_it_is_for_everyone(small: Path, browser: Any, width: int, scheme: str) -> None:
+    if not AXE.exists() and os.environ.get("CI") != "true":
+        pytest.skip(f"axe-core is not at {AXE}")
+    context = browser.new_context(viewport={"width": width, "height": 900}, color_scheme=scheme)
+    page = context.new_page()
+    page.goto(small.as_uri())
+    page.evaluate(AXE.read_text(encoding="utf-8"))
+    assert page.evaluate(AXE_RUN) == []
+    before = page.evaluate("document.querySelector('.state-key canvas').toDataURL()")
+    page.emulate_media(color_scheme="light" if scheme == "dark" else "dark")
+    # what is painted on a canvas follows the colours of the page by itself only where the script sees to it
+    page.wait_for_function("was => document.querySelector('.state-key canvas').toDataURL() !== was", arg=before)
+    context.close()
 
 
 @pytest.mark.browser

@@ -45,7 +45,7 @@ def running(*words: str, folder: Path, log: str, **more: str) -> Iterator[subpro
 def cluster(
     folder: Path, *, fake: bool, workers: int = 2, **more: str
 ) -> Iterator[tuple[str, list[subprocess.Popen[bytes]]]]:
-    """A scheduler and workers, each a process of its own without a nanny that would bring it back."""
+    """A scheduler and workers, each a process of its own without a nanny that would bring it back; the scheduler comes last."""
     address = f"tcp://127.0.0.1:{free_port()}"
     with ExitStack() as stack:
         scheduler = (
@@ -57,7 +57,7 @@ def cluster(
             "--no-dashboard",
             "--no-show",
         )
-        stack.enter_context(running(*scheduler, folder=folder, log="scheduler.log"))
+        first = stack.enter_context(running(*scheduler, folder=folder, log="scheduler.log"))
         preload = ("--preload", "fake_engine") if fake else ()
         started = [
             stack.enter_context(
@@ -69,7 +69,26 @@ def cluster(
             )
             for number in range(workers)
         ]  # fmt: skip
-        yield address, started
+        yield address, [*started, first]
+
+
+@pytest.mark.slow
+@pytest.mark.timeout(600)
+def test_a_scheduler_that_dies_is_told_and_the_run_ends_here_with_the_same_bytes(tmp_path: Path) -> None:
+    made_runs.write_inputs(tmp_path, places=PLACES)
+    with cluster(tmp_path, fake=True, **{fake_engine.SLOW: "0.3"}) as (address, processes):
+        process = run_on(address, tmp_path, "out", fake=True)
+        wait_for_chunks(tmp_path / "out" / "candidates.sqlite", 3, process)
+        for one in reversed(processes):  # the scheduler is the last
+            os.kill(one.pid, signal.SIGKILL)
+        _, said = process.communicate(timeout=150)
+        assert process.returncode == 2, said
+        assert "the scheduler is gone" in said
+    assert len(said.strip().splitlines()[-4:]) <= 4
+    for out in ("out", "local"):
+        done = made_runs.run_here(tmp_path, *made_runs.arguments(out, "--chunk", str(CHUNK)))
+        assert done.returncode == 0, done.stderr
+    assert made_runs.outputs(tmp_path / "out") == made_runs.outputs(tmp_path / "local")
 
 
 def run_on(address: str, folder: Path, out: str, *, fake: bool) -> subprocess.Popen[str]:
@@ -100,6 +119,14 @@ def chunks_in(store: Path) -> int:
         connection.close()
 
 
+def wait_for_chunks(store: Path, count: int, process: subprocess.Popen[str]) -> int:
+    """How many chunks there are once there are so many, or once the run has ended or takes too long."""
+    deadline = time.monotonic() + 120.0
+    while (found := chunks_in(store)) < count and time.monotonic() < deadline and process.poll() is None:
+        pass
+    return found
+
+
 @pytest.mark.slow
 @pytest.mark.timeout(600)
 def test_one_worker_is_killed_midway_and_the_bytes_are_those_of_a_local_run(tmp_path: Path) -> None:
@@ -108,11 +135,7 @@ def test_one_worker_is_killed_midway_and_the_bytes_are_those_of_a_local_run(tmp_
     assert local.returncode == 0, local.stderr
     with cluster(tmp_path, fake=True, **{fake_engine.SLOW: "0.3"}) as (address, workers):
         process = run_on(address, tmp_path, "out", fake=True)
-        store = tmp_path / "out" / "candidates.sqlite"
-        deadline = time.monotonic() + 100.0
-        while chunks_in(store) < 4 and time.monotonic() < deadline and process.poll() is None:
-            pass
-        before = chunks_in(store)
+        before = wait_for_chunks(tmp_path / "out" / "candidates.sqlite", 4, process)
         os.kill(workers[0].pid, signal.SIGKILL)
         _, said = process.communicate(timeout=150)
         assert process.returncode == 0, said

@@ -4,6 +4,7 @@ The only place that knows dask.distributed, which is an extra. A job holds all t
 nothing with it: its chunks are given to another.
 """
 
+import time
 from collections.abc import Callable, Generator, Iterator
 from typing import Any, Final
 
@@ -19,6 +20,9 @@ _AHEAD: Final = 3
 _CONNECT_S: Final = 15.0
 _WORKERS_S: Final = 30.0
 _ASK_S: Final = 5.0
+_LOOK_S: Final = 0.05
+_LOST_S: Final = 20.0
+"""A scheduler that is not back by then is given up."""
 MOST_TRIES: Final = 10
 """A chunk is given to workers this often before it is taken for the chunk that kills them."""
 _MUST_AGREE: Final = ("fellspan", "itur")
@@ -50,7 +54,11 @@ def work_on_cluster(
     client = _client(address)
     try:
         threads = _see_to_workers(client, address, note)
-        yield from _gathered(client, jobs, threads=threads, tell=tell)
+        yield from _gathered(client, jobs, threads=threads, tell=tell, note=note)
+    except OSError as error:
+        if isinstance(error, FellspanError):
+            raise
+        raise _gone() from None
     finally:
         # outstanding chunks are forgotten with their futures; what was committed stays
         client.close(timeout=_ASK_S)
@@ -108,7 +116,12 @@ def _threads_of(client: Any) -> int:
 
 
 def _gathered(
-    client: Any, jobs: Iterator[tuple[Chunk, Job]], *, threads: int, tell: Callable[[int], None]
+    client: Any,
+    jobs: Iterator[tuple[Chunk, Job]],
+    *,
+    threads: int,
+    tell: Callable[[int], None],
+    note: Callable[[str], None],
 ) -> Iterator[tuple[Chunk, PairResults]]:
     import distributed
     from distributed import CancelledError, KilledWorker
@@ -133,16 +146,14 @@ def _gathered(
 
     give_more()
     while given:
+        _wait_for_one(client, completed, note)
         future = next(completed)
         chunk, job, tries = given.pop(future)
         try:
             results: PairResults = future.result()
         except (KilledWorker, CancelledError, NoValidWorkerError) as error:
             if client.status != "running":
-                raise RunError(
-                    f"the scheduler is gone ({_first_line(error)})",
-                    "what is finished is kept: start one and give the same command again to go on",
-                ) from None
+                raise _gone() from None
             if tries >= MOST_TRIES:
                 raise RunError(
                     f"chunk {chunk.number} took {tries} workers down with it ({_first_line(error)})",
@@ -158,6 +169,32 @@ def _gathered(
         yield chunk, results
         del future, results
         give_more()
+
+
+def _wait_for_one(client: Any, completed: Any, note: Callable[[str], None]) -> None:
+    """Wait until a chunk is done; where nobody is left to do one, say so, and give up with the scheduler."""
+    lost_at: float | None = None
+    alone, asked_at = False, time.monotonic()
+    while not completed.has_ready():
+        time.sleep(_LOOK_S)
+        if client.status == "running":
+            lost_at = None
+            if time.monotonic() - asked_at < _ASK_S or alone:
+                continue
+            asked_at = time.monotonic()
+            if not client.nthreads():
+                alone = True
+                note("no worker is left; the run waits until one comes (dask worker ADDRESS)")
+            continue
+        lost_at = time.monotonic() if lost_at is None else lost_at
+        if time.monotonic() - lost_at > _LOST_S:
+            raise _gone()
+
+
+def _gone() -> RunError:
+    return RunError(
+        "the scheduler is gone", "what is finished is kept: start one and give the same command again to go on"
+    )
 
 
 def _first_line(error: BaseException) -> str:

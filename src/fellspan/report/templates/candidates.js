@@ -5,8 +5,13 @@
   var relief = JSON.parse(document.getElementById("relief").textContent);
   var places = data.places, hubs = data.hubs, styles = getComputedStyle(document.documentElement);
   function tone(name) { return styles.getPropertyValue(name).trim() || "#333"; }
-  var ink = tone("--ink"), sheet = tone("--sheet");
-  var tones = [tone("--teal"), tone("--teal"), tone("--ochre"), tone("--plum"), tone("--stone"), tone("--stone")];
+  var ink, sheet, tones;
+  function readTones() {
+    ink = tone("--ink");
+    sheet = tone("--sheet");
+    tones = ["--teal", "--teal", "--ochre", "--plum", "--stone", "--stone"].map(tone);
+  }
+  readTones();
   var shownHub = -1, shownPlace = -1;
 
   // A state is told by its shape: disc, ring, triangle, cross, square, dot.
@@ -196,7 +201,9 @@
     matching.slice(0, visible).forEach(function (index) {
       var row = body.appendChild(document.createElement("tr")), head = row.appendChild(document.createElement("th"));
       head.scope = "row";
-      head.appendChild(document.createElement("bdi")).textContent = places.name[index];
+      var name = head.appendChild(document.createElement("button"));
+      name.type = "button"; name.className = "as-link";
+      name.appendChild(document.createElement("bdi")).textContent = places.name[index];
       var cell = row.appendChild(document.createElement("td")), icon = cell.appendChild(document.createElement("canvas"));
       icon.className = "mark"; icon.dataset.state = places.state[index]; icon.setAttribute("aria-hidden", "true");
       paintMark(icon);
@@ -226,6 +233,11 @@
   });
   [find, only].forEach(function (input) { input.addEventListener("input", function () { visible = PART; fill(); }); });
   more.addEventListener("click", function () { visible += PART; fill(); });
+  // Colours differ by night and on paper: what is painted is painted again.
+  function repaint() { readTones(); document.querySelectorAll("canvas.mark").forEach(paintMark); draw(); }
+  ["(prefers-color-scheme: dark)", "print"].forEach(function (query) {
+    window.matchMedia(query).addEventListener("change", repaint);
+  });
   new ResizeObserver(fit).observe(document.getElementById("map"));
   fit(); draw(); sorted(); fill();
   window.fellspanPage = {map: map, data: data, choosePlace: choosePlace, chooseHub: chooseHub};
