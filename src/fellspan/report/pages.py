@@ -16,11 +16,13 @@ from fellspan.links import radio_words
 from fellspan.links.result import CriterionResult, LinkResult, Losses
 from fellspan.links.safety import safety_lines
 from fellspan.links.words import State, is_two_points, state_of
+from fellspan.planning.accepting import as_built_issue
 from fellspan.planning.plan import LinkPlan, StudyPlan
 from fellspan.report import assets, wording
 from fellspan.report import map_geometry as geometry
 from fellspan.report.ahead import ahead
 from fellspan.report.antenna_section import antenna_section
+from fellspan.report.as_built_section import as_built_section
 from fellspan.report.crew_sheet import crew_sheet
 from fellspan.report.decision_section import decision_section
 from fellspan.report.drawing_files import with_list
@@ -86,7 +88,7 @@ def render_pages(plan: StudyPlan, *, progress: Progress | None = None) -> dict[s
         for index, (link, relief) in enumerate(zip(plan.links, reliefs, strict=True)):
             name = page_name(index, link.result.name)
             tell(index + 1, name)
-            pages[name] = _link_page(plan, index, link, templates, relief)
+            pages[name] = _link_page(as_built_issue(plan, link), index, link, templates, relief)
             pages |= _crew_sheets(plan, index, link, templates)
     tell(total, "")
     return pages
@@ -137,6 +139,7 @@ def _link_page(plan: StudyPlan, index: int, link: LinkPlan, templates: Environme
         heights=heights_section(link),
         equipment=link.equipment and equip_view(link.equipment, told=safety_lines()),
         horizons=horizon_section(link),
+        as_built=as_built_section(link),
         crew=[(letter, crew_name(index, result.name, letter.lower())) for letter in ("A", "B")],
         reflections=reflection_section(link),
         survey=survey_section(link, number=index + 1, growth_years=plan.study.growth_years),
@@ -223,6 +226,7 @@ def _shared(plan: StudyPlan, chart: MapMarkup | None) -> dict[str, Any]:
             "polar": assets.asset("polar.css"),
             "horizon": assets.asset("horizon.css"),
             "equip": assets.asset("equip.css"),
+            "as_built": assets.asset("as_built.css"),
         },
         "js": {
             "leaflet": assets.leaflet_js(),
