@@ -22,6 +22,7 @@ from fellspan.cli.equip_command import equip_command
 from fellspan.cli.heights_command import heights_command
 from fellspan.cli.init_command import init_command
 from fellspan.cli.plan_command import plan_command
+from fellspan.cli.relay_command import relay_command
 from fellspan.cli.sight_command import sight_command
 from fellspan.cli.terrain_command import terrain_command
 from fellspan.errors import FellspanError
@@ -59,6 +60,7 @@ app.command("equip")(equip_command)
 app.command("plan")(plan_command)
 app.command("candidates")(candidates_command)
 app.command("around")(around_command)
+app.command("relay")(relay_command)
 app.command("terrain")(terrain_command)
 app.command("antenna")(antenna_command)
 app.command("accept")(accept_command)
