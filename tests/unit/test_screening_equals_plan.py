@@ -235,7 +235,8 @@ def test_neither_blocks_nor_threads_nor_company_change_a_bit(tmp_path: Path, mon
     with Terrain.open(ground=ground_file(tmp_path), cover=trees(tmp_path)) as terrain:
         whole = screen_pairs(made, hub=hub, place=place, terrain=terrain)
         monkeypatch.setattr(screen, "BATCH", 7)
-        monkeypatch.setattr(batch, "BLOCK_PAIRS", 3)
+        monkeypatch.setattr(batch, "BLOCK_SAMPLES", 900)
+        monkeypatch.setattr(batch, "NEAR_SAMPLES", 1500)
         assert same_bytes(whole, screen_pairs(made, hub=hub, place=place, terrain=terrain, threads=1))
         order = np.random.default_rng(39).permutation(hub.size)
         mixed = screen_pairs(made, hub=hub[order], place=place[order], terrain=terrain, threads=3)

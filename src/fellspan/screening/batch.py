@@ -13,7 +13,7 @@ from fellspan.errors import FellspanError
 from fellspan.links.assess import REFINE_PARTS
 from fellspan.links.budget import tilts_deg
 from fellspan.screening.columns import Columns
-from fellspan.screening.laid import LaidBucket, joined_buckets
+from fellspan.screening.laid import LaidBucket, joined_buckets, pair_columns
 from fellspan.screening.pairs import HEIGHT_REFERENCES, Candidates, SiteColumns
 from fellspan.screening.profiles import FINE_PER_OCTAVE, Profiles, closer, regular, steps_of, width_of
 from fellspan.screening.rays import CLEAR, MARGINAL, Judged, Rays, judged, rays_over, worth_a_closer_look
@@ -31,9 +31,8 @@ Index = NDArray[np.int64]
 
 NEAR_SAMPLES: Final = 131_072
 """Samples of pairs that are worked on at once: their arrays stay near the processor's caches."""
-BLOCK_PAIRS: Final = 8_192
 BLOCK_SAMPLES: Final = 2_000_000
-"""Pairs and samples of a block: what a thread takes at a time."""
+"""Samples of a block: what a thread takes at a time."""
 LONGEST_STEPS: Final = 30_000
 """Paths of more steps are taken one by one."""
 FEWEST_STEPS: Final = 4
@@ -99,16 +98,24 @@ class Batch:
         """Rows of the columns that must be taken one by one."""
         return np.asarray(self._rows[~self._fit])
 
-    def blocks(self) -> list[Index]:
-        """The pairs that fit, in blocks of one width each."""
+    def blocks(self) -> list[list[Index]]:
+        """The pairs that fit, in parts of one width each, and these in blocks, each for a thread to take."""
         fit = np.flatnonzero(self._fit)
         width = width_of(self._steps[fit] + 1)
-        found: list[Index] = []
-        for one in np.unique(width).tolist():
-            some = fit[width == one]
-            most = max(1, min(BLOCK_PAIRS, BLOCK_SAMPLES // one))
-            found += [some[start : start + most] for start in range(0, some.size, most)]
-        return found
+        order = np.argsort(width, kind="stable")
+        fit, width = fit[order], width[order]
+        blocks: list[list[Index]] = [[]]
+        held = 0
+        for some in np.split(fit, np.flatnonzero(np.diff(width)) + 1):
+            one = int(width_of(self._steps[some[:1]] + 1)[0]) if some.size else 1
+            for start in range(0, some.size, max(1, NEAR_SAMPLES // one)):
+                part = some[start : start + max(1, NEAR_SAMPLES // one)]
+                if held and held + part.size * one > BLOCK_SAMPLES:
+                    blocks.append([])
+                    held = 0
+                blocks[-1].append(part)
+                held += part.size * one
+        return [block for block in blocks if block]
 
     def _near_others(self) -> NDArray[np.bool_]:
         """Pairs whose paths come near an obstacle or a surveyed point."""
@@ -127,18 +134,16 @@ class Batch:
             near |= np.array([survey.names(name_of(self._setting.candidates, *pair)) for pair in pairs], dtype=np.bool_)
         return near
 
-    def run(self, which: Index) -> Block:
-        """Fill the rows of a block of one width; give those that it could not decide on."""
+    def run(self, parts: list[Index]) -> Block:
+        """Fill the rows of a block; give those that it could not decide on."""
         block = Block()
-        width = int(width_of(self._steps[which] + 1).max())
-        most = max(1, NEAR_SAMPLES // width)
         laid: dict[int, list[LaidBucket]] = {}
-        for start in range(0, which.size, most):
-            for bucket in self._geometry(which[start : start + most], width, block):
+        for which in parts:
+            for bucket in self._geometry(which, int(width_of(self._steps[which] + 1).max()), block):
                 laid.setdefault(bucket.distance_m.shape[1], []).append(bucket)
-        for buckets in laid.values():
+        if laid:
             # What is worked out for pairs as a whole is worked out for many at once.
-            self._signal(joined_buckets(buckets), block)
+            self._signal([joined_buckets(laid[width]) for width in sorted(laid)], block)
         return block
 
     def _geometry(self, which: Index, width: int, block: Block) -> list[LaidBucket]:
@@ -207,21 +212,22 @@ class Batch:
         block.unsure.append(self._after_draws(rays, profiles, stands, found))
         return self._bucket(profiles, stands.surface_m, stands.cover_kind, a, b, found)
 
-    def _signal(self, bucket: LaidBucket, block: Block) -> None:
+    def _signal(self, buckets: list[LaidBucket], block: Block) -> None:
         """Fill the columns of the signal."""
         candidates, columns = self._setting.candidates, self._columns
+        pairs = pair_columns(buckets)
         try:
             sector = best_sector(
-                candidates, hub=bucket.hub, bearing_deg=bucket.bearing_ab_deg, tilt_deg=bucket.tilt_ab_deg
+                candidates, hub=pairs.hub, bearing_deg=pairs.bearing_ab_deg, tilt_deg=pairs.tilt_ab_deg
             )
-            signal = signal_columns(candidates, bucket, sector=sector)
+            signal = signal_columns(candidates, *buckets, sector=sector)
         except FellspanError:
             # What one of them cannot have, planning says of each.
-            block.one_by_one.append(bucket.row)
+            block.one_by_one.append(pairs.row)
             return
-        columns.sector[bucket.row] = sector
+        columns.sector[pairs.row] = sector
         for column in fields(SignalColumns):
-            getattr(columns, column.name)[bucket.row] = getattr(signal, column.name)
+            getattr(columns, column.name)[pairs.row] = getattr(signal, column.name)
 
     def _after_draws(self, rays: Rays, profiles: Profiles, stands: Standings, found: Judged) -> Index:
         """Let bounds of what draws would say decide on the clear ones; those on which only the draws themselves can."""

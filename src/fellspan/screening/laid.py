@@ -62,3 +62,17 @@ def joined_buckets(buckets: Sequence[LaidBucket]) -> LaidBucket:
     if all(bucket.surface_m is bucket.ground_m for bucket in buckets):
         columns["surface_m"] = columns["ground_m"]
     return LaidBucket(**columns)  # type: ignore[arg-type]
+
+
+def pair_columns(buckets: Sequence[LaidBucket]) -> LaidBucket:
+    """The columns of buckets of any widths as one bucket without samples, in their order."""
+    if len(buckets) == 1:
+        return buckets[0]
+    count = sum(bucket.row.size for bucket in buckets)
+    columns: dict[str, NDArray[np.generic]] = {}
+    for field in fields(LaidBucket):
+        if field.name in ("distance_m", "ground_m", "surface_m", "cover_kind", "is_sea"):
+            columns[field.name] = np.zeros((count, 0))
+        else:
+            columns[field.name] = np.concatenate([getattr(bucket, field.name) for bucket in buckets])
+    return LaidBucket(**columns)  # type: ignore[arg-type]

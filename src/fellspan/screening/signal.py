@@ -10,8 +10,9 @@ from numpy.typing import NDArray
 
 from fellspan.links.receivers import row_power_dbm, row_threshold_dbm, rows_of, wanted_index
 from fellspan.links.signal_verdict import verdict_codes
-from fellspan.screening.laid import LaidBucket
+from fellspan.screening.laid import LaidBucket, pair_columns
 from fellspan.screening.pairs import UNKNOWN, Candidates
+from fellspan.screening.path_sets import PathSets
 from fellspan.screening.signal_ends import PairEnds, best_sector, lines_dbm, pair_ends
 from fellspan.screening.signal_fading import Shares, shares_of_year
 from fellspan.screening.signal_level import Level, climate_of, level_of, rows_of_bucket, spread_columns
@@ -35,15 +36,15 @@ class SignalColumns:
     signal_verdict: NDArray[np.int8]
 
 
-def signal_columns(candidates: Candidates, bucket: LaidBucket, *, sector: Index) -> SignalColumns:
-    """Level, margin, availability and verdict of a bucket's pairs.
+def signal_columns(candidates: Candidates, *buckets: LaidBucket, sector: Index) -> SignalColumns:
+    """Level, margin, availability and verdict of the pairs of one or more buckets, in their order.
 
     Parameters
     ----------
     candidates
         What the pairs are made of.
-    bucket
-        The pairs laid on the terrain.
+    buckets
+        The pairs laid on the terrain, a bucket for each width.
     sector
         Index into `candidates.sectors` of the sector that serves each pair, shape (p,); from `best_sector`.
 
@@ -57,6 +58,7 @@ def signal_columns(candidates: Candidates, bucket: LaidBucket, *, sector: Index)
     Each row equals the result of planning that pair alone, but for what its neighbours would leave of it.
     """
     radio = candidates.radio
+    bucket = pair_columns(buckets)
     ends = pair_ends(candidates, bucket, sector=sector)
     table = rows_of(radio)
     wanted = wanted_index(radio, table)
@@ -64,7 +66,7 @@ def signal_columns(candidates: Candidates, bucket: LaidBucket, *, sector: Index)
     weather_known = bool(table) and None not in powers
     has_gains = np.isfinite(ends.gain_a_dbi) & np.isfinite(ends.gain_b_dbi)
     climate = climate_of(candidates, bucket, has_margin=has_gains & weather_known)
-    rows = rows_of_bucket(bucket)
+    rows = PathSets.of([rows_of_bucket(one) for one in buckets])
     spread = spread_columns(rows, climate)
     level = level_of(candidates, rows, climate, spread)
     power = row_power_dbm(radio, None if wanted is None else table[wanted])

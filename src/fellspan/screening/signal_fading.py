@@ -17,9 +17,10 @@ from fellspan.links.outages import Causes, outage_of_year
 from fellspan.links.receivers import receiver_of, rows_of, wanted_index
 from fellspan.links.site import Antenna
 from fellspan.links.verdicts import SIGNAL_BAND_DB
-from fellspan.links.ways_past_trees import PathRows, depth_in_trees_m, mean_over_path_m, most_db, ways_past_trees
+from fellspan.links.ways_past_trees import depth_in_trees_m, mean_over_path_m, most_db, ways_past_trees
 from fellspan.propagation import Outage, one_way_outage, two_way_outage
 from fellspan.screening.pairs import Candidates
+from fellspan.screening.path_sets import PathSets
 from fellspan.screening.signal_ends import PairEnds, groups_of_receivers
 from fellspan.screening.signal_level import Level, SpreadColumns
 
@@ -45,7 +46,7 @@ class Shares:
 
 def shares_of_year(
     candidates: Candidates,
-    rows: PathRows,
+    rows: PathSets,
     climate: ClimateColumns,
     ends: PairEnds,
     *,
@@ -106,7 +107,7 @@ class _Fading:
     def __init__(
         self,
         candidates: Candidates,
-        rows: PathRows,
+        rows: PathSets,
         climate: ClimateColumns,
         ends: PairEnds,
         *,
@@ -121,7 +122,9 @@ class _Fading:
         radio, weather = candidates.radio, candidates.settings.weather
         # Only one edition asks for the mean of the ground.
         asks = bool(climate.edition_19.any())
-        ground = mean_over_path_m(rows.distance_m, rows.ground_m) if asks else np.full(rows.length_m.shape, np.nan)
+        ground = np.full(rows.length_m.shape, np.nan)
+        for own, part in rows.each() if asks else ():
+            ground[own] = mean_over_path_m(part.distance_m, part.ground_m)
         columns = fades.PathColumns(
             length_m=rows.length_m[some],
             a_amsl_m=rows.a_amsl_m[some],
@@ -212,7 +215,7 @@ def _joined(parts: list[tuple[Index, Outage]], count: int) -> Outage:
 
 def _by_inverse_k_db(
     candidates: Candidates,
-    rows: PathRows,
+    rows: PathSets,
     spread: SpreadColumns,
     level: Level,
     *,
@@ -224,22 +227,28 @@ def _by_inverse_k_db(
     Left at 0 where they cannot use up at any k what each direction has room for: there is no outage then whatever they are.
     """
     frequency, polarization = level.frequency_hz, candidates.radio.polarization
-    most = most_db(
-        rows, level.lowest_k_db, inverse_k=spread.inverse_k, frequency_hz=frequency, polarization=polarization
-    )[some]
+    every = np.empty((rows.length_m.size, frequency.size))
+    for own, part in rows.each():
+        every[own] = most_db(
+            part,
+            level.lowest_k_db[own],
+            inverse_k=spread.inverse_k[own],
+            frequency_hz=frequency,
+            polarization=polarization,
+        )
+    most = every[some]
     enough = np.ones(some.size, dtype=np.bool_)
     for room, transmit_hz in zip(rooms_db, candidates.radio.transmit_hz, strict=True):
         enough &= most[:, level.at(transmit_hz)] < room - _SURELY_DB
     found = np.zeros((some.size, spread.inverse_k.shape[-1], frequency.size))
     short = np.flatnonzero(~enough)
-    if short.size:
-        few = rows.part(some[short])
+    for place, few in rows.among(some[short]):
         ways = ways_past_trees(
             few,
-            inverse_k=spread.inverse_k[some[short]],
+            inverse_k=spread.inverse_k[some[short[place]]],
             frequency_hz=frequency,
             polarization=polarization,
             depth_m=depth_in_trees_m(few, k=candidates.settings.median_k),
         )
-        found[short] = ways.cheaper_db
+        found[short[place]] = ways.cheaper_db
     return found

@@ -20,6 +20,7 @@ from fellspan.links.ways_past_trees import (
 from fellspan.propagation import free_space_loss_db, gas_loss_db, inverse_k
 from fellspan.screening.laid import LaidBucket
 from fellspan.screening.pairs import Candidates
+from fellspan.screening.path_sets import PathSets
 
 Floats = NDArray[np.float64]
 
@@ -91,7 +92,7 @@ class SpreadColumns:
         return SpreadColumns(**{name: getattr(self, name)[rows] for name in self.__slots__})
 
 
-def spread_columns(rows: PathRows, climate: ClimateColumns) -> SpreadColumns:
+def spread_columns(rows: PathSets, climate: ClimateColumns) -> SpreadColumns:
     """How far the gradient spreads over paths in their climates."""
     median, year = climate.gradient_median_n_per_km, climate.gradient_tail_n_per_km
     worst = fades.worst_month_n_per_km(climate, length_m=rows.length_m)
@@ -103,22 +104,22 @@ def spread_columns(rows: PathRows, climate: ClimateColumns) -> SpreadColumns:
     )
 
 
-def level_of(candidates: Candidates, rows: PathRows, climate: ClimateColumns, spread: SpreadColumns) -> Level:
+def level_of(candidates: Candidates, rows: PathSets, climate: ClimateColumns, spread: SpreadColumns) -> Level:
     """What paths take in clear air at the median k, at the frequencies of the radio."""
     radio, k = candidates.radio, candidates.settings.median_k
     frequency = np.array(list(dict.fromkeys(radio.transmit_hz)))
-    over = over_everything_db(
-        rows,
-        inverse_k=np.stack((np.full(rows.length_m.shape, inverse_k(k)), spread.inverse_k[:, -1]), axis=-1),
-        frequency_hz=frequency,
-        polarization=radio.polarization,
-    )
+    both_k = np.stack((np.full(rows.length_m.shape, inverse_k(k)), spread.inverse_k[:, -1]), axis=-1)
+    over = np.empty((*both_k.shape, frequency.size))
+    wooded = np.zeros(rows.length_m.shape, dtype=np.bool_)
+    for own, some in rows.each():
+        over[own] = over_everything_db(
+            some, inverse_k=both_k[own], frequency_hz=frequency, polarization=radio.polarization
+        )
+        wooded[own] = False if some.trees is None else some.trees.any(axis=-1)
     diffraction, vegetation = over[:, 0].copy(), np.zeros(over[:, 0].shape)
     # The way through trees costs at least nothing: it can only be the cheaper one where the way over them costs something.
-    costs = ~(diffraction <= DIFFERS_DB).all(axis=-1)
-    through = np.flatnonzero(costs & rows.trees.any(axis=-1)) if rows.trees is not None else np.zeros(0, dtype=np.int64)
-    if through.size:
-        few = rows.part(through)
+    through = np.flatnonzero(wooded & ~(diffraction <= DIFFERS_DB).all(axis=-1))
+    for place, few in rows.among(through):
         ways = ways_past_trees(
             few,
             inverse_k=np.array([inverse_k(k)]),
@@ -127,8 +128,8 @@ def level_of(candidates: Candidates, rows: PathRows, climate: ClimateColumns, sp
             depth_m=depth_in_trees_m(few, k=k),
         )
         wins = ways.is_through[:, 0]
-        diffraction[through] = np.where(wins, ways.solid_db[:, 0], ways.over_db[:, 0])
-        vegetation[through] = np.where(wins, ways.woods_db, 0.0)
+        diffraction[through[place]] = np.where(wins, ways.solid_db[:, 0], ways.over_db[:, 0])
+        vegetation[through[place]] = np.where(wins, ways.woods_db, 0.0)
     slant = rows.slant_m[:, np.newaxis]
     gases = gas_loss_db(
         slant,
