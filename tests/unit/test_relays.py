@@ -33,8 +33,8 @@ def both_hops_clear(study: Study, sites: list[Site]) -> list[bool]:
     seen = [at for at, clear in enumerate(near) if clear]
     far = planned_clear(study, [hop_link(link, name=f"b {at}", a=sites[at], b=link.b) for at in seen])
     answer = [False] * len(sites)
-    for at, clear in zip(seen, far, strict=True):
-        answer[at] = clear
+    for number, clear in zip(seen, far, strict=True):
+        answer[number] = clear
     return answer
 
 
