@@ -18,6 +18,10 @@ browser_only = pytest.mark.browser
 FOUND = """() => Array.from(document.querySelectorAll(".sortable tbody tr")).filter(row => !row.hidden)
   .map(row => row.querySelector("a").textContent)"""
 
+SPOT = """() => { let at; fellspanMap.map.eachLayer(layer => {
+    if (layer.options.className === "map-spot") at = layer.getLatLng(); });
+  return [at.lat, at.lng]; }"""
+
 
 def overview_of(plan) -> str:
     return pages._overview(plan, pages._environment(), [])
@@ -217,3 +221,25 @@ def test_the_small_profile_keeps_ends_peaks_and_the_governing_point(sample):
         # two units of rounding, and hollows between the kept tops
         assert spans[0] <= spans[1] * per_m + 2.0
         assert spans[0] >= 0.8 * spans[1] * per_m - 2.0
+
+
+@browser_only
+def test_pointing_at_the_small_profile_marks_the_place_on_the_map(plain, watch):
+    watched = watch(1280, 900)
+    page = watched.page
+    page.goto((plain.folder / "index.html").as_uri())
+    page.locator(".entry[data-link='6']").click()  # the longest, of several stretches
+    box = page.locator(".strip-plot").bounding_box()
+    result, profile = plain.plan.links[6].result, plain.plan.links[6].profile
+    for share in (0.0, 0.3, 0.75):
+        page.mouse.move(box["x"] + 1 + share * (box["width"] - 2), box["y"] + 20)
+        place = page.evaluate(SPOT)
+        index = int(np.argmin(np.abs(profile.distance_m - share * result.distance_m)))
+        # a pixel of the picture
+        reach = 2.0 * result.distance_m / box["width"] / 90_000.0
+        assert place == pytest.approx([profile.latitude_deg[index], profile.longitude_deg[index]], abs=reach)
+    assert page.locator(".strip-at").inner_text().endswith("km from A")
+    page.mouse.move(640, 200)
+    assert page.locator(".map-spot").count() == 0
+    page.keyboard.press("Escape")
+    assert watched.messages == []

@@ -17,6 +17,7 @@ var fellspanOverview = (function () {
   }
   function close() {
     if (current === null) return;
+    unmark();
     mark(current, false);
     (from || entries[current]).focus();
     current = null;
@@ -37,14 +38,44 @@ var fellspanOverview = (function () {
     made.append(name, entries[row.dataset.link].querySelector(".verdict").cloneNode(true), make("span", "basis", row.cells[2].textContent), link, shut);
     return made;
   }
+  // Pointing at the small profile marks the place on the map.
+  var spot = null, line = null;
+  function unmark() {
+    if (spot) spot.remove();
+    if (line) line.remove();
+    spot = line = null;
+    var said = panel.querySelector(".strip-at");
+    if (said) said.textContent = "";
+  }
+  function follow(index) {
+    var plot = panel.querySelector(".strip-plot"), length = Number(rows[index].cells[4].dataset.v), places = hits[index].getLatLngs();
+    plot.addEventListener("pointermove", function (event) {
+      var at = plot.getBoundingClientRect(), share = Math.min(1, Math.max(0, (event.clientX - at.left) / at.width));
+      // The points of a path stand at even steps.
+      var step = share * (places.length - 1), first = Math.min(Math.floor(step), places.length - 2), on = step - first;
+      var place = L.latLng(
+        places[first].lat + on * (places[first + 1].lat - places[first].lat), places[first].lng + on * (places[first + 1].lng - places[first].lng)
+      );
+      if (!spot) {
+        spot = L.circleMarker(place, {className: "map-spot", radius: 6, interactive: false}).addTo(fellspanMap.map);
+        line = plot.appendChild(document.createElement("b"));
+      }
+      spot.setLatLng(place);
+      line.style.left = share * 100 + "%";
+      panel.querySelector(".strip-at").textContent = (share * length / 1000).toFixed(2) + " km from A";
+    });
+    plot.addEventListener("pointerleave", unmark);
+  }
   function choose(index, by) {
     var narrow = window.matchMedia("(max-width: 760px)").matches;
+    unmark();
     if (current !== null) mark(current, false);
     current = index;
     from = by === "map" ? null : by;
     mark(index, true);
     panel.replaceChildren(head(rows[index]), document.getElementById("chosen-" + index).content.cloneNode(true));
     panel.hidden = false;
+    follow(index);
     panel.scrollTop = 0;
     panel.dataset.link = String(index);
     frame.classList.add("has-choice");
