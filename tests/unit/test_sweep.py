@@ -254,6 +254,31 @@ def test_the_antimeridian_is_no_edge(tmp_path: Path) -> None:
     np.testing.assert_allclose(fields[0].needed_m, fields[1].needed_m, rtol=0.0, atol=0.05)
 
 
+def test_a_raster_of_the_whole_turn_is_met_on_both_of_its_edges(tmp_path: Path) -> None:
+    """The same belt of heights, cut open at 180 degrees under the site, and at 0 on the other side of the Earth."""
+    columns, step = 3600, 0.1
+    wave = np.cos(np.linspace(0.0, 2.0 * np.pi * 90, columns, endpoint=False))
+    heights = (400.0 + 90.0 * wave * np.linspace(0.5, 1.5, 40)[:, None]).astype(np.float32)
+    fields = []
+    for cut in (-180.0, 0.0):
+        file = tmp_path / f"belt{cut:g}.tif"
+        turned = np.roll(heights, round((-180.0 - cut) / step), axis=1)
+        with rasterio.open(
+            file, "w", driver="GTiff", height=40, width=columns, count=1, dtype="float32", crs="EPSG:4326",
+            transform=Affine(step, 0.0, cut, 0.0, -step, 2.0),
+        ) as dataset:  # fmt: skip
+            dataset.write(turned, 1)
+        site = Site(name="S", position=Position(latitude_deg=0.01, longitude_deg=179.98), height_m=300.0)
+        with Terrain.open(ground=file) as terrain:
+            fields.append(field_of(terrain, site=site, radius_m=90_000.0))
+    assert fields[0].shape == fields[1].shape
+    known = np.isfinite(fields[1].needed_m)
+    assert known.sum() > 100
+    # where the raster is cut the height of the outer half cell holds, for want of a neighbour
+    np.testing.assert_array_equal(np.isfinite(fields[0].needed_m), known)
+    assert np.median(np.abs(fields[0].needed_m - fields[1].needed_m)[known]) < 1.0
+
+
 def test_heights_are_joined_where_memory_is_short(relief: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     with Terrain.open(ground=relief) as terrain:
         fine = field_of(terrain)

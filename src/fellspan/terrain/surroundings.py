@@ -123,12 +123,12 @@ class Surroundings:
             if file.crs_text != grid.crs_text:
                 abroad.append(plate)
                 continue
-            to_file = chained(~file.transform, _shifted(grid.transform, file, grid))
-            scaled = chained(Affine.scale(1.0 / plate.factor), to_file)
-            if _copied(plate, scaled, grid, out):
-                continue
-            numbers = np.array(scaled[:6], dtype=np.float64)
-            gather_cells(plate.heights, numbers, plate.width, plate.height, float(plate.left), float(plate.top), out)
+            size = plate.width, plate.height, float(plate.left), float(plate.top)
+            for turn in (0.0,) if file.period is None else (0.0, -file.period, file.period):
+                placed = chained(Affine.translation(turn, 0.0), _shifted(grid.transform, file, grid))
+                scaled = chained(Affine.scale(1.0 / plate.factor), chained(~file.transform, placed))
+                if not _copied(plate, scaled, grid, out):
+                    gather_cells(plate.heights, np.array(scaled[:6], dtype=np.float64), *size, out)
         if abroad:
             self._from_abroad(grid, out)
         if self._layers.gaps == "sea":
