@@ -237,6 +237,8 @@ def _holds(link: Link, built: AsBuilt, path: PathAsBuilt, judged: tuple[Judged, 
     found: list[str] = []
     if is_worse(path):
         found.append(f"{path.sentence}: the level of today says nothing of the worst month")
+    elif path.remeasured and path.verdict is None:
+        found.append(path.sentence)
     for one in judged:
         if one.read is not None and _uneven(one):
             low = f"chain {one.read.weakest} is {one.read.imbalance_db:.1f} dB under the best of the others"

@@ -19,7 +19,8 @@ def refuse(file: str, errors: Sequence[ErrorDetails], data: Mapping[str, Any], *
     """Raise the first error, unknown keys first; `rows` says at which row of a table a value stood."""
     ordered = sorted(errors, key=lambda error: error["type"] != "extra_forbidden")
     error = ordered[0]
-    where = _place(error["loc"], data, rows)
+    unknown = error["type"] == "extra_forbidden"
+    where = _place(error["loc"][:-1] if unknown else error["loc"], data, rows)
     what, help_text = _words(error)
     more = [_place(other["loc"], data, rows) for other in ordered[1:4]]
     raise MeasuredFileError(
@@ -36,7 +37,7 @@ def _place(loc: Sequence[int | str], data: Mapping[str, Any], rows: Mapping[Path
         if row is not None:
             keys = [str(key) for key in loc if isinstance(key, str) and key not in ("reading", "measured", "a", "b")]
             return ", ".join([f"row {row}", *keys])
-    words = []
+    words: list[str] = []
     for index, key in enumerate(loc):
         if isinstance(key, int):
             if index and loc[index - 1] == "reading":
