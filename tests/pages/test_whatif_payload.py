@@ -97,9 +97,11 @@ def test_trees_stand_in_other_years_as_terrain_opened_for_those_years_has_them(s
                 more = years - study.growth_years
                 grown = s + more * (pair[:, 1] if more > 0 else pair[:, 0])
                 nearest = np.abs(dense.distance_m[None, :] - x[:, None]).argmin(axis=1)
-                assert np.abs(dense.distance_m[nearest] - x).max() < 1e-3
-                assert np.abs(grown - stands.surface_m[nearest]).max() < 0.01, (plan.link.name, years)
-                seen += int(tree.sum())
+                # The samples of the plan itself stand at another step; those of the closer look are the same.
+                same = np.abs(dense.distance_m[nearest] - x) < 1e-3
+                assert same.mean() > 0.4
+                assert np.abs(grown - stands.surface_m[nearest])[same].max() < 0.01, (plan.link.name, years)
+                seen += int((tree & same).sum())
     assert seen > 100
 
 
@@ -112,6 +114,12 @@ def test_terrain_grown_is_terrain_opened_for_that_year():
         assert terrain.growth_years == study.growth_years
         np.testing.assert_array_equal(terrain.grown(17.0).profile(**ends).surface_m, fresh.profile(**ends).surface_m)
         assert np.abs(terrain.profile(**ends).surface_m - fresh.profile(**ends).surface_m).max() > 1.0
+        closer = terrain.refine(terrain.profile(**ends), [(900.0, 1200.0), (4000.0, 4100.0)], step_m=0.4)
+        again = terrain.grown(17.0).resampled(closer)
+        np.testing.assert_array_equal(again.distance_m, closer.distance_m)
+        same = np.isin(closer.distance_m, fresh.profile(**ends).distance_m)
+        np.testing.assert_array_equal(again.surface_m[same], fresh.profile(**ends).surface_m)
+        np.testing.assert_array_equal(terrain.resampled(closer).surface_m, closer.surface_m)
 
 
 def test_looking_closer_changes_nothing_of_the_plan():

@@ -24,15 +24,15 @@ Floats = NDArray[np.float64]
 
 PARTS: Final = 16
 """The profile is looked at again at this part of the finest cell, as the engine does at its worst minima."""
-MOST_SAMPLES: Final = 100_000
-"""Longer paths are looked at with as many samples."""
+NEAR_M: Final = 0.5
+"""A top this near below one that could govern is looked at again too: between two samples it may stand higher, m."""
 STRIPS: Final = 256
 """The path is cut into so many strips, narrower toward its ends, in each of which bulge and zone are as good as straight."""
 LATER_YEARS: Final = 25.0
 """Trees are grown to this age as well, so that one which overtakes another is known."""
 END_STRIPS, END_PARTS = 10, 8
 """The outermost strips, where the zone widens with the root of the distance, are cut into parts again."""
-SPARE_M: Final = 0.004
+SPARE_M: Final = 0.002
 """A point that stands no higher than this above the line between its neighbours is not kept, m; near an end, where an antenna
 must be raised by many times what is missing, less."""
 
@@ -77,20 +77,19 @@ def ages_of(terrain: Terrain) -> dict[float, Terrain]:
 def what_if_of(
     link: Link, profile: PathProfile, terrain: Terrain, *, ages: Mapping[float, Terrain] | None = None
 ) -> WhatIf | None:
-    """The points of one link, looked at everywhere as closely as the engine looks at its worst minima.
+    """The points of one link, looked at as closely as the engine looks at its worst minima.
 
     `profile` is that of the plan, `ages` what `ages_of` gives for `terrain`. None where the terrain, looked at so closely,
     refuses.
     """
-    step_m = max(profile.cell_m / PARTS, profile.length_m / MOST_SAMPLES)
     now = terrain.growth_years
     trees = bool((profile.cover_kind == _TREE).any()) or any(item.growth_m_per_year for item in profile.obstacles)
     looked_at = (ages_of(terrain) if ages is None else ages) if trees else {now: terrain}
     years = sorted(looked_at)
     try:
+        closer = terrain.refine(profile, _windows(link, profile), step_m=profile.cell_m / PARTS)
         stands = {
-            year: stood(link, aged.profile(a=profile.a, b=profile.b, step_m=step_m, name=profile.name))
-            for year, aged in looked_at.items()
+            year: stood(link, closer if year == now else aged.resampled(closer)) for year, aged in looked_at.items()
         }
     except FellspanError:
         return None
@@ -142,24 +141,53 @@ def strips_along(distance_m: Floats) -> NDArray[np.intp]:
     return np.asarray(np.floor(whole) + np.floor(fine * END_PARTS), dtype=np.intp)
 
 
-def _upper(distance_m: Floats, surface_m: Floats, strip: NDArray[np.intp]) -> NDArray[np.intp]:
+def _windows(link: Link, profile: PathProfile) -> tuple[tuple[float, float], ...]:
+    """Stretches worth a closer look: round each sample that could govern, and each top that comes near to one, trees or not."""
+    profile, stands, _, _ = stood(link, profile)
+    distance, strip = profile.distance_m, strips_along(profile.distance_m)
+    # Near an antenna, where the zone is narrow, a hair counts.
+    wanted = (strip < END_STRIPS * END_PARTS) | (strip > strip[-1] - END_STRIPS * END_PARTS)
+    trees = stands.cover_kind == _TREE
+    for surface in (stands.surface_m, np.where(trees, profile.ground_m, stands.surface_m))[: 2 if trees.any() else 1]:
+        over = _over_neighbours(distance, surface)
+        upper = _upper(distance, surface, strip, spare_m=(0.0,))
+        below = np.interp(distance, distance[upper], surface[upper]) - surface
+        wanted |= (over > SPARE_M) & (below < NEAR_M)
+    index = np.flatnonzero(wanted)
+    if not index.size:
+        return ()
+    low, high = distance[np.maximum(index - 1, 0)], distance[np.minimum(index + 1, distance.size - 1)]
+    apart = np.flatnonzero(low[1:] > high[:-1])
+    return tuple(zip(low[np.r_[0, apart + 1]].tolist(), high[np.r_[apart, index.size - 1]].tolist(), strict=True))
+
+
+def _over_neighbours(distance_m: Floats, surface_m: Floats) -> Floats:
+    """How far each sample stands above the line between its neighbours, m; 0 at the ends."""
+    share = (distance_m[1:-1] - distance_m[:-2]) / (distance_m[2:] - distance_m[:-2])
+    chord = surface_m[:-2] * (1.0 - share) + surface_m[2:] * share
+    return np.concatenate(([0.0], surface_m[1:-1] - chord, [0.0]))
+
+
+def _upper(
+    distance_m: Floats, surface_m: Floats, strip: NDArray[np.intp], *, spare_m: tuple[float, ...] = (0.0, SPARE_M)
+) -> NDArray[np.intp]:
     """The points that no line between two others of their strip passes above: whatever is asked, one of them governs.
 
     All points below the line between their neighbours go at once, and again until none does; what stands out by a hair only
     goes at last.
     """
     index = np.arange(distance_m.size)
-    for spare_m in (0.0, SPARE_M):
+    for spare in spare_m:
         while index.size > 2:
             before, here, after = index[:-2], index[1:-1], index[2:]
             share = (distance_m[here] - distance_m[before]) / (distance_m[after] - distance_m[before])
             chord = surface_m[before] * (1.0 - share) + surface_m[after] * share
             inner = (strip[before] == strip[here]) & (strip[here] == strip[after])
             over = np.where(inner, surface_m[here] - chord, np.inf)
-            out = over <= spare_m
-            if spare_m > 0.0:
+            out = over <= spare
+            if spare > 0.0:
                 share = distance_m[here] / distance_m[-1]
-                out = over <= spare_m * np.minimum(1.0, 10.0 * np.minimum(share, 1.0 - share))
+                out = over <= spare * np.minimum(1.0, 10.0 * np.minimum(share, 1.0 - share))
                 # One of two neighbours at a time, the lesser first: what is left of the other may then stand out.
                 padded = np.concatenate(([np.inf], over, [np.inf]))
                 out &= (over < padded[:-2]) & (over <= padded[2:])

@@ -247,6 +247,14 @@ class Terrain:
         both = joined((old, work.samples(new)))
         return self._made(work, both, name=profile.name, step_m=profile.step_m, cell_m=profile.cell_m, was=profile)
 
+    def resampled(self, profile: PathProfile) -> PathProfile:
+        """The same samples of the same path, as this terrain has them: for one that is grown otherwise."""
+        work = PathWork(
+            self._layers, GeodesicPath.between(profile.a, profile.b), name=profile.name, cell_m=profile.cell_m
+        )
+        samples = work.samples(profile.distance_m)
+        return self._made(work, samples, name=profile.name, step_m=profile.step_m, cell_m=profile.cell_m, was=profile)
+
     def _profile(self, a: Position, b: Position, step_m: float | None, name: str | None, *, label: str) -> PathProfile:
         path = GeodesicPath.between(a, b)
         if not path.length_m > 0.001:
