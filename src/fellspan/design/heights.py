@@ -29,7 +29,7 @@ from fellspan.design.heights_result import (
 )
 from fellspan.design.options import HAIR_M, Ground, Levels, cheapest, cost_of, exact, rounded, whole_steps
 from fellspan.links import clearance
-from fellspan.links.assess import Assessment, AssessSettings, assess_profile
+from fellspan.links.assess import Assessment, AssessSettings, path_verdict_of
 from fellspan.links.site import Link
 
 Floats = NDArray[np.float64]
@@ -226,12 +226,8 @@ class _Search:
         return None
 
     def verdict_is_clear(self, levels: Levels) -> bool:
-        """What `links.assess_profile` itself says at these levels."""
-        case = self.case
-        link = replace(case.link_at(*levels))
-        return (
-            assess_profile(link, self.assessment.profile, replace(case.settings, date=None)).result.verdict == "clear"
-        )
+        """What `links` itself says of the path at these levels."""
+        return path_verdict_of(self.case.link_at(*levels), self.assessment.profile, self.case.settings) == "clear"
 
     def curve(self, rules: Rules, raw: dict[HeightKind, Levels | None]) -> tuple[tuple[float, float], ...]:
         """Lowest pairs that hold with the confidence, for the chart: mast heights, from some of the draws."""

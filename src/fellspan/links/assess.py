@@ -19,12 +19,13 @@ from fellspan.links.antenna_gains import antenna_cautions, antennas_of, polariza
 from fellspan.links.budget import tilt_deg
 from fellspan.links.cautions import cautions
 from fellspan.links.criteria import Criterion, criteria_for, is_extended, worst_month_k
-from fellspan.links.doubts import Doubt, below_left_out, beside_path, with_doubts
+from fellspan.links.doubts import with_doubts
 from fellspan.links.ends import EndLevel, end_level
-from fellspan.links.evaluate import criterion_result, extra_for_confidence, governing_row
+from fellspan.links.evaluate import extra_for_confidence, governing_row
 from fellspan.links.levels import PathLevels
 from fellspan.links.minima import worst_windows
 from fellspan.links.own_building import Standing, standing, with_ground_at_end, with_nodes, with_roof_edge
+from fellspan.links.path_judging import PathJudgement, judge_path
 from fellspan.links.radiated import exposure_pair, power_cautions, power_checks
 from fellspan.links.result import EndResult, Ends, LinkResult
 from fellspan.links.signal import signal_of
@@ -36,7 +37,7 @@ from fellspan.links.uncertainty import clearance_errors_m
 from fellspan.propagation.exposure import ExposureRule
 from fellspan.propagation.rain import RainEdition, RainReading
 from fellspan.terrain.profile import PathProfile
-from fellspan.vocabulary import COVER_KINDS, CriteriaPreset
+from fellspan.vocabulary import COVER_KINDS, CriteriaPreset, PathVerdict
 
 if TYPE_CHECKING:
     from fellspan.terrain.terrain import Terrain
@@ -125,21 +126,9 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
     """Decide on one link over a profile as it is, without looking closer anywhere."""
     laid = _Laid.out(link, profile, settings)
     profile, stands, levels = laid.profile, laid.stands, laid.levels
-    results = tuple(
-        criterion_result(criterion, row, profile=profile, standing=stands, levels=levels, errors_m=laid.errors_m)
-        for row, criterion in enumerate(laid.criteria)
-    )
-    governing = governing_row(results)
-    confidence = min(result.probability or 0.0 for result in results)
-    sight = verdicts.sight_line(profile, stands, levels, median_k=settings.median_k)
-    beside, beside_cautions = beside_path(
-        profile, levels, laid.criteria, median_k=settings.median_k, frequency_hz=link.radio.frequency_hz
-    )
-    roofs = (Doubt(clause=clause, extra=None) for level in (laid.a, laid.b) for clause in level.doubts)
-    doubts = (*below_left_out(profile, stands, levels, median_k=settings.median_k), *beside, *roofs)
-    verdict = verdicts.path_verdict(
-        results, sight, confidence=confidence, confidence_asked=settings.confidence, doubts=doubts
-    )
+    judged_path = laid.judged(link, settings)
+    results, confidence, doubts = judged_path.results, judged_path.confidence, judged_path.doubts
+    governing, verdict = governing_row(results), judged_path.verdict
     basis = verdicts.basis_of(profile, stands, levels, row=governing)
     a_amsl_m, b_amsl_m = laid.a.antenna_amsl_m, laid.b.antenna_amsl_m
     length_m, k = profile.length_m, settings.median_k
@@ -169,7 +158,7 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
         basis=basis,
         results=results,
         governing=governing,
-        sight=sight,
+        sight=judged_path.sight,
         raising=with_doubts(
             extra_for_confidence(levels, laid.errors_m, confidence=settings.confidence),
             doubts,
@@ -209,7 +198,7 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
             trees=signal.result.trees if trees else None,
             no_errors=not profile.sigma_m.any(),
             magnetic=(caution_a, caution_b),
-            beside=beside_cautions,
+            beside=judged_path.beside,
             antennas=(
                 *antenna_cautions(link, antennas, distance_m=length_m, polarization_db=polarization_db),
                 *signal.cautions,
@@ -246,6 +235,11 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
     return Assessment(result=result, profile=profile, levels=levels)
 
 
+def path_verdict_of(link: Link, profile: PathProfile, settings: AssessSettings = _DEFAULTS) -> PathVerdict:
+    """The verdict on the path alone, the one that `assess_profile` gives with all the rest."""
+    return _Laid.out(link, profile, settings).judged(link, settings).verdict
+
+
 def trees_in_zone(stands: Standing, levels: PathLevels) -> bool:
     """Whether trees reach into what any criterion requires to be free: the signal verdict is then marginal at most."""
     return bool(np.any((stands.cover_kind == _TREE) & np.any(levels.available_m < levels.need_m, axis=0)))
@@ -278,6 +272,12 @@ class _Laid:
         )
         errors_m = clearance_errors_m(profile, stands, a_error_m=a.error_m, b_error_m=b.error_m)
         return cls(profile=profile, stands=stands, a=a, b=b, criteria=criteria, levels=levels, errors_m=errors_m)
+
+    def judged(self, link: Link, settings: AssessSettings) -> PathJudgement:
+        return judge_path(
+            self.profile, self.stands, self.levels, self.criteria, ends=(self.a, self.b), errors_m=self.errors_m,
+            median_k=settings.median_k, frequency_hz=link.radio.frequency_hz, confidence_asked=settings.confidence,
+        )  # fmt: skip
 
 
 def stood(link: Link, profile: PathProfile) -> tuple[PathProfile, Standing, EndLevel, EndLevel]:
