@@ -20,6 +20,7 @@ from made_terrain import raster
 
 import fellspan.screening.batch as batch
 import fellspan.screening.screen as screen
+import fellspan.terrain.many as many
 from fellspan.links.assess import AssessSettings
 from fellspan.links.criteria import Criterion
 from fellspan.screening.pairs import PATH_VERDICTS, STATUSES, Candidates, PairResults
@@ -191,7 +192,8 @@ def test_obstacles_and_survey_send_a_path_to_planning_alone(tmp_path: Path, monk
     obstacles, survey = tmp_path / "obstacles.csv", tmp_path / "survey.csv"
     mast = made.places.latitude_deg[3], made.places.longitude_deg[3]
     obstacles.write_text(
-        "name,kind,latitude_deg,longitude_deg,height_m,radius_m\n" + f"tank,building,{mast[0] + 0.001},{mast[1]},30,60\n"
+        "name,kind,latitude_deg,longitude_deg,height_m,radius_m\n"
+        f"tank,building,{mast[0] + 0.001},{mast[1]},30,60\n"
     )
     survey.write_text(
         "latitude_deg,longitude_deg,ground_m\n" + f"{made.places.latitude_deg[5]},{made.places.longitude_deg[5]},120\n"
@@ -268,3 +270,33 @@ def test_only_tiles_that_paths_cross_are_read(tmp_path: Path, monkeypatch: pytes
         assert sheet.tiles_read == 1
     with rasterio.open(tmp_path / "ground.tif") as file:
         assert file.width * file.height > 2 * 256 * 256
+
+
+def test_memory_given_back_between_parts_changes_nothing(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    made = candidates(sites("H", 2, seed=44, height_m=30.0), sites("P", 40, seed=45))
+    hub, place = every_pair(made)
+    with Terrain.open(ground=ground_file(tmp_path), cover=trees(tmp_path)) as terrain:
+        whole = screen_pairs(made, hub=hub, place=place, terrain=terrain)
+        monkeypatch.setattr(many, "MOST_BYTES", 0)
+        monkeypatch.setattr(batch, "NEAR_SAMPLES", 1500)
+        assert same_bytes(whole, screen_pairs(made, hub=hub, place=place, terrain=terrain))
+
+
+def test_a_raster_far_larger_than_memory_costs_what_paths_cross(tmp_path: Path) -> None:
+    import rasterio
+    from affine import Affine
+    from made_terrain import NORTH, WEST
+
+    path = tmp_path / "huge.tif"
+    side = 40_000
+    with rasterio.open(
+        path, "w", driver="GTiff", width=side, height=side, count=1, dtype="float32", crs="EPSG:32623",
+        transform=Affine(10.0, 0.0, WEST, 0.0, -10.0, NORTH), tiled=True, SPARSE_OK=True, nodata=-9999.0,
+    ) as file:  # fmt: skip
+        window = rasterio.windows.Window(0, 0, 600, 300)
+        file.write(hills().astype(np.float32), 1, window=window)
+    made = candidates(sites("H", 1, seed=46, height_m=30.0), sites("P", 8, seed=47))
+    with Terrain.open(ground=path) as terrain:
+        found = compared(made, terrain)
+        assert terrain.many.held_bytes < 20e6
+    assert (found.status == 0).all()

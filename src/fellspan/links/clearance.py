@@ -22,8 +22,6 @@ TOLERANCE_M: Final = 1e-6
 _SAME: Final = 1e-9
 """Values that differ by less are equal but for rounding."""
 
-_FEW: Final = 16
-
 
 def _per_path(value: ArrayLike) -> Floats:
     """A per-path argument with the path axis added, so that it broadcasts against (..., n)."""
@@ -173,8 +171,8 @@ def probability_met(margin_m: ArrayLike, sigma_m: ArrayLike) -> Floats:
 
 
 def _normal(z: Floats) -> Floats:
-    """Probability that a standard normal number is below `z`; SciPy loads for batches only."""
-    if z.size <= _FEW:
+    """Probability that a standard normal number is below `z`; SciPy loads for batches (c, q) only."""
+    if z.ndim < 2:
         few = [0.5 * (1.0 + math.erf(value / math.sqrt(2.0))) for value in np.ravel(z)]
         return np.asarray(few, dtype=np.float64).reshape(z.shape)
     from scipy.special import erf

@@ -139,8 +139,9 @@ class Batch:
         block = Block()
         laid: dict[int, list[LaidBucket]] = {}
         for which in parts:
-            for bucket in self._geometry(which, int(width_of(self._steps[which] + 1).max()), block):
-                laid.setdefault(bucket.distance_m.shape[1], []).append(bucket)
+            with self._setting.many.in_use():
+                for bucket in self._geometry(which, int(width_of(self._steps[which] + 1).max()), block):
+                    laid.setdefault(bucket.distance_m.shape[1], []).append(bucket)
         if laid:
             # What is worked out for pairs as a whole is worked out for many at once.
             self._signal([joined_buckets(laid[width]) for width in sorted(laid)], block)

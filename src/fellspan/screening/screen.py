@@ -63,11 +63,11 @@ def screen_pairs(
         for start in range(0, rows.size, BATCH):
             batch = Batch(setting, columns, rows[start : start + BATCH])
             done = list(pool.map(batch.run, batch.blocks()))
-            for row in _sorted([batch.others, *(rows for block in done for rows in block.one_by_one)]):
-                screen_single(candidates, columns, row, terrain=terrain)
-            for row in _sorted([rows for block in done for rows in block.unsure]):
-                if columns.status[row] == DONE:
-                    draw_single(candidates, columns, row, terrain=terrain)
+            others = _sorted([batch.others, *(rows for block in done for rows in block.one_by_one)])
+            list(pool.map(lambda row: screen_single(candidates, columns, row, terrain=terrain), others))
+            unsure = _sorted([rows for block in done for rows in block.unsure])
+            unsure = [row for row in unsure if columns.status[row] == DONE]
+            list(pool.map(lambda row: draw_single(candidates, columns, row, terrain=terrain), unsure))
     return columns.results()
 
 

@@ -4,8 +4,11 @@ For paths on which rasters alone count; those near an obstacle or a surveyed poi
 Opens nothing itself; knows nothing of radio.
 """
 
+import threading
+from collections.abc import Iterator
+from contextlib import contextmanager
 from dataclasses import dataclass
-from typing import Protocol
+from typing import Final, Protocol
 
 import numpy as np
 from numpy.typing import NDArray
@@ -17,6 +20,9 @@ from fellspan.terrain.stack_sheets import Curves, PathsOnStack, StackSheets, sig
 
 Floats = NDArray[np.float64]
 Index = NDArray[np.int64]
+
+MOST_BYTES: Final = 300_000_000
+"""Tiles of all rasters together that stay in memory from one part of a batch to the next."""
 
 
 class Paths(Protocol):
@@ -67,6 +73,34 @@ class ManyPaths:
         self._ground = StackSheets(layers.ground)
         self._surface = None if layers.surface is None else StackSheets(layers.surface)
         self._cover = tuple((source, StackSheets(stack)) for source, stack in layers.cover)
+        self._users = 0
+        self._turn = threading.Condition()
+
+    @contextmanager
+    def in_use(self) -> Iterator[None]:
+        """For the time between reading and sampling, on each thread: tiles stay in memory inside.
+
+        Where they take more than `MOST_BYTES`, whoever enters waits for the others to leave and gives all of it back first.
+        """
+        with self._turn:
+            while self._users and self.held_bytes > MOST_BYTES:
+                self._turn.wait()
+            if self.held_bytes > MOST_BYTES:
+                for sheets in self.stacks:
+                    for sheet in sheets.sheets:
+                        sheet.forget()
+            self._users += 1
+        try:
+            yield
+        finally:
+            with self._turn:
+                self._users -= 1
+                self._turn.notify_all()
+
+    @property
+    def held_bytes(self) -> int:
+        """What the tiles in memory take."""
+        return sum(sheet.held_bytes for sheets in self.stacks for sheet in sheets.sheets)
 
     def lay(self, paths: Paths) -> "LaidPaths":
         """A batch of paths laid on the rasters."""

@@ -3,6 +3,7 @@
 Reads only the tiles that paths come near, and reads them as `blocks` does. Knows nothing of CRS or paths.
 """
 
+import mmap
 import threading
 from collections.abc import Callable
 from typing import Final
@@ -17,8 +18,8 @@ from fellspan.terrain.raster_file import RasterFile
 
 TILE: Final = 256
 """Side of the tiles in which cells are read."""
-MOST_CELLS: Final = 32_000_000
-"""Rasters with more cells are not kept as a sheet: 256 MB, were all of them read."""
+MOST_CELLS: Final = 4_000_000_000
+"""Rasters with more cells are not kept as a sheet: even addresses have an end."""
 
 Floats = NDArray[np.float64]
 
@@ -30,8 +31,9 @@ class Sheet:
         """`dataset` gives the calling thread's handle on `file`."""
         self.file = file
         self._dataset = dataset
-        self._cells = np.empty((file.height, file.width))
-        self._flat = self._cells.reshape(-1)
+        self._memory = _Memory(8 * file.height * file.width)
+        self._flat: Floats = np.frombuffer(self._memory.buffer, dtype=np.float64, count=file.height * file.width)
+        self._cells = self._flat.reshape(file.height, file.width)
         self._tiles = -(-file.height // TILE), -(-file.width // TILE)
         self._loaded = np.zeros(self._tiles, dtype=np.bool_)
         self._complete = False
@@ -41,6 +43,18 @@ class Sheet:
     def fits(file: RasterFile) -> bool:
         """Whether a raster is small enough to be kept so, and large enough to be interpolated."""
         return file.width * file.height <= MOST_CELLS and min(file.width, file.height) > 1
+
+    @property
+    def held_bytes(self) -> int:
+        """What the tiles in memory take, at most twice as much by whole pages."""
+        return 8 * TILE * TILE * self.tiles_read
+
+    def forget(self) -> None:
+        """Give the memory of all tiles back; nobody may be gathering meanwhile."""
+        with self._lock:
+            if self._memory.give_back():
+                self._loaded[:] = False
+                self._complete = False
 
     @property
     def is_complete(self) -> bool:
@@ -119,3 +133,23 @@ class Sheet:
             corners = np.stack([one[hollow] for one in (first, right, below, opposite)])
             lower[hollow] = blended(corners, u[hollow], v[hollow])
         return lower
+
+
+class _Memory:
+    """Addresses for all cells of a raster, of which only those written to take memory, and which can be given back."""
+
+    def __init__(self, size: int) -> None:
+        self._mapped: mmap.mmap | None = None
+        if hasattr(mmap, "MAP_NORESERVE") and hasattr(mmap, "MADV_DONTNEED"):
+            flags = mmap.MAP_PRIVATE | mmap.MAP_ANONYMOUS | mmap.MAP_NORESERVE
+            self._mapped = mmap.mmap(-1, size, flags=flags)
+        self.buffer: mmap.mmap | bytearray | memoryview = (
+            np.empty(size, dtype=np.uint8).data if self._mapped is None else self._mapped
+        )
+
+    def give_back(self) -> bool:
+        """Whether the system took it back; what is read again then starts as 0."""
+        if self._mapped is None:
+            return False
+        self._mapped.madvise(mmap.MADV_DONTNEED)
+        return True

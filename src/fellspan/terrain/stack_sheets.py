@@ -92,6 +92,11 @@ class StackSheets:
             self._sizes[number] = CellSizes(self.stack.files[number])
         return self._sizes[number]
 
+    @property
+    def sheets(self) -> tuple[Sheet, ...]:
+        """Those made so far."""
+        return tuple(self._sheets.values())
+
     def over(self, paths: Paths) -> "PathsOnStack":
         """A batch of paths laid on the stack."""
         return PathsOnStack(self, paths)
