@@ -24,7 +24,7 @@ from fellspan.planning.around import MASTS_M, SECTORS, Around, area_criteria, lo
 from fellspan.planning.inputs import Study, TerrainInputs
 from fellspan.report.around_map import classes_of, luminance
 from fellspan.report.around_page import decision, share_words
-from fellspan.terrain.sources import CoverSource, RasterSource
+from fellspan.terrain.sources import CoverSource, ObstacleSource, RasterSource
 
 CELL_M, SIDE = 40.0, 120
 LONGITUDE, LATITUDE = transformer(CRS, "EPSG:4326").transform(WEST_M + 2_410.0, SOUTH_M + 2_390.0)
@@ -108,6 +108,24 @@ def test_bare_ground_is_never_just_reached(around: Around, relief: Path, tmp_pat
     assert "of the land within" in decision(known)
     assert known.known_share == 1.0  # the hole is water: nobody builds there
     assert (~known.on_land()).sum() > 50
+
+
+def test_what_was_not_looked_at_is_said(relief: Path, tmp_path: Path) -> None:
+    file = tmp_path / "wires.geojson"
+    ends = [[LONGITUDE, LATITUDE + 0.003], [LONGITUDE + 0.004, LATITUDE + 0.003]]
+    wire = {
+        "type": "Feature",
+        "geometry": {"type": "LineString", "coordinates": ends},
+        "properties": {"name": "Line", "kind": "other", "envelope": "span", "heights_m": "30; 30", "sag_m": 4},
+    }
+    file.write_text(json.dumps({"type": "FeatureCollection", "features": [wire]}), encoding="utf-8")
+    terrain = TerrainInputs(
+        surface=(RasterSource(path=relief, role="surface"),), obstacles=(ObstacleSource(path=file),)
+    )
+    told = seen_from(made_study(relief, terrain=terrain)).cautions
+    assert any("Hanging wires" in line for line in told)
+    assert any("roofs and treetops" in line for line in told)
+    assert not any("Hanging wires" in line for line in seen_from(made_study(relief)).cautions)
 
 
 def test_rules_are_taken_at_their_strictest_distance(relief: Path) -> None:

@@ -132,7 +132,7 @@ def look_around(
             sight_k=study.median_k,
         )
         basis = _basis(terrain)
-        cautions = tuple(dict.fromkeys((*_cautions(study, field, basis), *study.notes, *terrain.notes)))
+        cautions = tuple(dict.fromkeys((*_cautions(study, field, basis, terrain), *study.notes, *terrain.notes)))
     sea_level_m = study.terrain.sea_level_m if study.terrain.gaps == "sea" else None
     tally = _Tally(field, masts, other_m, sea_level_m)
     return Around(
@@ -178,7 +178,7 @@ def _basis(terrain: Terrain) -> Basis:
     return "bare ground only" if told else "surface raster"
 
 
-def _cautions(study: Study, field: HeightField, basis: Basis) -> list[str]:
+def _cautions(study: Study, field: HeightField, basis: Basis, terrain: Terrain) -> list[str]:
     found = []
     if basis == "bare ground only":
         found.append(
@@ -191,6 +191,10 @@ def _cautions(study: Study, field: HeightField, basis: Basis) -> list[str]:
     sigma_m = max(source.error_m or 0.0 for source in (*study.terrain.ground, *study.terrain.surface))
     if sigma_m > 0.0:
         found.append(f"Heights are for the raster as it is; its stated standard error of {sigma_m:g} m is not added.")
+    if not terrain.ground_is_bare:
+        found.append("Heights are above the surface raster, which takes roofs and treetops for ground.")
+    if any(item.rule == "span" or item.moves for item in terrain.layers.obstacles.obstacles):
+        found.append("Hanging wires, and what comes and goes, were not looked at here; the plan of a link does.")
     if study.terrain.survey:
         found.append("Surveyed points were not used here; the plan of a link uses them.")
     if not field.criteria[0].source.startswith(COMMON_PRACTICE):
