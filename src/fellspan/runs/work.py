@@ -22,7 +22,7 @@ from fellspan.screening.pairs import Candidates, PairResults, Sector, SiteColumn
 from fellspan.screening.screen import screen_pairs
 from fellspan.terrain.terrain import Terrain
 
-BATCH_PAIRS: Final = 1024
+BATCH_PAIRS: Final = 4096
 """Pairs given to the engine at a time, the same everywhere; between two of them a run can be stopped."""
 
 Index = NDArray[np.int64]
