@@ -20,6 +20,7 @@ _LEAST_SPAN_DEG: Final = 2.5
 _LANES: Final = 4
 _LANE_PX: Final = 26.0
 _LABEL_PX: Final = 150.0
+_PLAIN_DEG: Final = (-24.0, -12.0, 12.0, 24.0)
 _LAYER_WORDS: Final[dict[LayerName, str]] = {"near": "up to 1 km", "middle": "1 to 5 km", "far": "beyond 5 km"}
 
 
@@ -196,14 +197,26 @@ def _far_site(target: Target, across: Scale, up: Scale) -> list[str]:
     ]
 
 
+def _plain(seen: Skyline) -> list[tuple[float, float, str, float]]:
+    """Bearing, elevation and distance of the skyline at even steps, for one without a summit to name; not where it is open."""
+    found = []
+    for wanted in _PLAIN_DEG:
+        at = int(np.argmin(np.abs(seen.offset_deg - wanted)))
+        if np.isfinite(seen.elevation_deg[at]) and seen.distance_m[at] < seen.reach_m[at] - 1.0:
+            bearing = (seen.bearing_deg + float(seen.offset_deg[at])) % 360.0
+            found.append((bearing, float(seen.elevation_deg[at]), "skyline", float(seen.distance_m[at])))
+    return found
+
+
 def _labels(seen: Skyline, across: Scale, up: Scale) -> list[str]:
     """Bearing, what and how far of each landmark, in lanes above the sketch with a leader down to it."""
     ends = [-math.inf] * _LANES
     parts = []
     axis = across.at(0.0)
-    for mark in seen.landmarks:
-        x = across.at(offset_deg(mark.bearing_deg, seen.bearing_deg))
-        y = min(max(up.at(mark.elevation_deg), _TOP), _TOP + _PLOT)
+    marks = [(one.bearing_deg, one.elevation_deg, one.what, one.distance_m) for one in seen.landmarks] or _plain(seen)
+    for bearing, elevation, what, distance_m in marks:
+        x = across.at(offset_deg(bearing, seen.bearing_deg))
+        y = min(max(up.at(elevation), _TOP), _TOP + _PLOT)
         start = min(max(x - 4.0, _LEFT), _RIGHT - _LABEL_PX)
         lane = next((i for i in range(_LANES) if start >= ends[i] + 8.0), None)
         if lane is None:
@@ -214,7 +227,7 @@ def _labels(seen: Skyline, across: Scale, up: Scale) -> list[str]:
         ends[lane] = start + _LABEL_PX
         parts.append(svg.line(x, lane_y + 4.0, x, y, class_="leader"))
         parts.append(svg.el("path", d=f"M{svg.num(x - 4)},{svg.num(y - 6)}h8l-4,6z", class_="summit"))
-        full = f"{wording.bearing(mark.bearing_deg)} {mark.what}, {wording.distance(mark.distance_m)}"
+        full = f"{wording.bearing(bearing)} {what}, {wording.distance(distance_m)}"
         parts.append(svg.label(start, lane_y, wording.shorten(full, 27), class_="mark", hint=full))
     return parts
 
