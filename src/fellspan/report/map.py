@@ -23,6 +23,7 @@ from fellspan.report.wording import clean, shorten
 
 TOLD_APART = 0.01
 """Gaps shorter than this share of a path are not seen between two cuts on the map of all links."""
+_TEXT = re.compile(r'"(?:[^"\\]|\\.)*"')
 _RANDOM_ID = re.compile(r"\b([a-z_]+)_([0-9a-f]{32})\b")
 
 
@@ -61,9 +62,10 @@ class SiteNames(MacroElement):
         )  # fmt: skip
 
 
-def _no_template(places: Iterable[list[Any]]) -> str:
-    """A list for the script with no brace in it: the map library reads what it is given as a template, names included."""
-    return str(htmlsafe_json_dumps(list(places))).replace("{", "\\u007b").replace("}", "\\u007d")
+def _no_template(value: Iterable[list[Any]] | dict[str, Any]) -> str:
+    """JSON for the script with no brace in its texts: the map library reads what it is given as a template, names included."""
+    written = str(htmlsafe_json_dumps(value if isinstance(value, dict) else list(value)))
+    return _TEXT.sub(lambda text: text[0].replace("{", "\\u007b").replace("}", "\\u007d"), written)
 
 
 def _full(name: str) -> str:
