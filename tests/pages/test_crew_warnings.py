@@ -111,6 +111,27 @@ def test_the_power_over_a_rule_is_forbidden_beside_the_power_to_set(plan, texts)
     assert not any("do not transmit at it" in text for text in both(plan, texts, OBSTRUCTED))
 
 
+def test_the_order_of_work_keeps_the_rule_and_the_stop(plan, texts) -> None:
+    for text in both(plan, texts, OVER):
+        assert "Do not install before the plan is changed" in text
+        assert "but never above the 7.3 dBm that the rule allows here" in text
+        assert "at most 7.3 dBm (planned 23.0 dBm) here, at most 7.3 dBm (planned 23.0 dBm) there" in text
+    for text in both(plan, texts, CLEAR):
+        assert "Do not install" not in text
+        assert "Fix the radios of both ends in the state above." in text
+        assert "fellspan accept" in text
+
+
+def test_the_band_is_for_the_power_that_the_rule_allows(plan) -> None:
+    link = next(one for one in plan.links if one.result.name == OVER)
+    changed = dataclasses.replace(link, result=dataclasses.replace(link.result, verdict="clear"))
+    one = dataclasses.replace(plan, links=(changed,), interference=None)
+    # 23.0 dBm planned, 7.3 dBm allowed at the other end: 15.7 dB less arrives
+    level = link.result.received_dbm.at_a - 15.7
+    for text in both(one, render_pages(one), OVER):
+        assert f"accepted from {level - 3.0:.1f} to {level + 3.0:.1f} dBm".replace("-", "−") in text
+
+
 def test_a_breach_is_a_line_of_the_short_plan(plan) -> None:
     lines = decision_lines(result_of(plan, OVER), Ink(colours=False), most=6)
     assert f"  ! {BREACH}" in lines
