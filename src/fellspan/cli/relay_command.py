@@ -1,15 +1,20 @@
 """`fellspan relay`: where could an intermediate site stand, for a link that no single hop serves?"""
 
+import dataclasses
+from collections.abc import Callable
 from pathlib import Path
-from typing import TYPE_CHECKING, Annotated
+from typing import TYPE_CHECKING, Annotated, TypeVar
 
 import typer
 
-from fellspan.errors import UsageError
+from fellspan.errors import QuantityError, UsageError
 
 if TYPE_CHECKING:
-    from fellspan.planning.relay_result import RelayRequest
+    from fellspan.links.site import Site
+    from fellspan.planning.inputs import Study
+    from fellspan.planning.relay_result import RelayRequest, RelayResult
 
+_T = TypeVar("_T")
 NOT_REACHED = 1
 
 
@@ -47,38 +52,47 @@ def relay_command(
     """Where could an intermediate site stand? Places from which both hops are clear, the best planned in full."""
     from fellspan.cli.layout import Ink, colours_wanted
     from fellspan.cli.relay_page import relay_lines
-    from fellspan.cli.running import clear_progress, progress_line
+    from fellspan.cli.running import clear_progress, progress_line, tell_old_report
     from fellspan.planning.relays import find_relay
     from fellspan.study.reading import load_study
 
     if out is not None:
-        from fellspan.exports.folder import check_target
+        from fellspan.exports.relay import check_relay_folder
 
-        check_target(out)
+        check_relay_folder(out)
     loaded = load_study(study)
     name = _link_name(link, [one.name for one in loaded.links])
-    request = _request(mast, hop, area, sites, count, apart, margin, single)
+    request, notes = _request(mast, hop, area, sites, count, apart, margin, single)
     progress = progress_line("searching")
     try:
         result = find_relay(loaded, name, request, progress=progress)
     finally:
         clear_progress(progress)
+    result = dataclasses.replace(result, cautions=(*notes, *result.cautions))
     if as_json:
         from fellspan.exports.relay import relay_json
 
         typer.echo(relay_json(result), nl=False)
     else:
         typer.echo("\n".join(relay_lines(result, ink=Ink(colours=colours_wanted()))))
-    if out is not None and result.routes:
-        from fellspan.exports.relay import write_relay_folder
-
-        names = write_relay_folder(result, loaded, out)
-        if not as_json:
-            typer.echo(
-                f"\nreport: {out / 'index.html'} ({len(names)} files); the study to plan on with: {out / 'relay.toml'}"
-            )
     if not result.routes:
+        tell_old_report(out)
         raise typer.Exit(NOT_REACHED)
+    if out is not None:
+        _write(result, loaded, out, quiet=as_json)
+
+
+def _write(result: "RelayResult", study: "Study", out: Path, *, quiet: bool) -> None:
+    from fellspan.cli.running import clear_progress, progress_line
+    from fellspan.exports.relay import write_relay_folder
+
+    progress = progress_line("writing")
+    try:
+        names = write_relay_folder(result, study, out, progress=progress)
+    finally:
+        clear_progress(progress)
+    if not quiet:
+        typer.echo(f"\nreport: {out / 'index.html'} ({len(names)} files)\nnext: fellspan plan {out / 'relay.toml'}")
 
 
 def _link_name(given: str | None, known: list[str]) -> str:
@@ -103,26 +117,41 @@ def _request(
     apart: str | None,
     margin: str | None,
     single: bool,
-) -> "RelayRequest":
+) -> "tuple[RelayRequest, tuple[str, ...]]":
+    """What is asked, and what is doubtful in it."""
     from fellspan.planning.relay_result import RelayRequest
     from fellspan.quantities import parse_antenna_height, parse_length_m, parse_loss_db
     from fellspan.screening.single import site_of
     from fellspan.study.places import read_places
     from fellspan.terrain.water_outlines import read_outlines
 
-    mast_m = parse_length_m(mast.removesuffix("above ground").strip())
-    outlines = None if area is None else read_outlines((area,))
-    candidates = None
+    height = _of_option("--mast", parse_antenna_height, mast)
+    if height.reference not in (None, "ground"):
+        raise UsageError(
+            f"--mast '{mast}': a relay's mast stands on the ground", "give a height above ground, as in 10 m"
+        )
+    outlines = None if area is None else read_outlines((area,), what="area")
+    candidates: tuple[Site, ...] = ()
+    notes: tuple[str, ...] = ()
     if sites is not None:
-        read = read_places(sites, height=parse_antenna_height(f"{mast_m:g} m above ground"))
+        read = read_places(sites, height=parse_antenna_height(f"{height.height_m:g} m above ground"))
         candidates = tuple(site_of(read.sites, index) for index in range(len(read.sites.name)))
-    return RelayRequest(
-        mast_m=mast_m,
-        hop_m=None if hop is None else parse_length_m(hop),
+        notes = read.notes
+    request = RelayRequest(
+        mast_m=height.height_m,
+        hop_m=None if hop is None else _of_option("--hop", parse_length_m, hop),
         area=None if outlines is None else outlines.shape,
-        sites=candidates or (),
+        sites=candidates,
         count=count,
-        apart_m=None if apart is None else parse_length_m(apart),
-        margin_db=None if margin is None else parse_loss_db(margin),
+        apart_m=None if apart is None else _of_option("--apart", parse_length_m, apart),
+        margin_db=None if margin is None else _of_option("--margin", parse_loss_db, margin),
         two_relays=not single,
     )
+    return request, notes
+
+
+def _of_option(option: str, parse: Callable[[str], _T], text: str) -> _T:
+    try:
+        return parse(text)
+    except QuantityError as error:
+        raise UsageError(f"{option}: {error.what}", *error.details) from None

@@ -10,6 +10,7 @@ from fellspan.cli.layout import WIDTH, Ink, cut, labelled, printable, table, wra
 from fellspan.links.words import STATE_WORDS, state_of
 from fellspan.planning.plan import LinkPlan
 from fellspan.planning.relay_result import RelayResult, RelayRoute
+from fellspan.report.relay_words import decision, direct_words, searched
 
 _WIDTHS: Final = (21, 9, 25, 8, 9)
 _RIGHT: Final = (1, 3, 4)
@@ -20,10 +21,8 @@ def relay_lines(result: RelayResult, *, ink: Ink) -> list[str]:
     """The page as lines without line ends."""
     lines = [ink.emphasise(cut(printable(f"Relay for {result.link_name}"), WIDTH))]
     lines += [ink.emphasise(line, "good" if result.routes else "bad") for line in wrapped(decision(result))]
-    direct = result.direct
-    if direct is not None:
-        state = STATE_WORDS[state_of(direct.result)]
-        lines += ["", *labelled("Direct path", f"{figures.distance(direct.result.distance_m)}, {state}")]
+    if result.direct is not None:
+        lines += ["", *labelled("Direct path", direct_words(result))]
     for number, route in enumerate(result.routes, start=1):
         lines += ["", *_route(route, number, ink)]
     lines += ["", *labelled("Searched", searched(result))]
@@ -34,35 +33,6 @@ def relay_lines(result: RelayResult, *, ink: Ink) -> list[str]:
     if result.cautions:
         lines += ["", *(line for text in result.cautions for line in wrapped(text, first="  ! ", rest="    "))]
     return lines
-
-
-def decision(result: RelayResult) -> str:
-    """One sentence: what was found."""
-    mast = "" if result.request.sites else f" with {result.request.mast_m:g} m of mast"
-    if not result.routes:
-        chain = "neither one relay nor two" if result.request.two_relays and not result.request.sites else "no relay"
-        return (
-            f"No way round found: {chain}{mast} joins the ends with clear hops of at most "
-            f"{figures.distance(result.hop_m)} each."
-        )
-    best = result.routes[0]
-    names = " and ".join(printable(site.name) for site in best.relays)
-    margin = "" if best.worst_margin_db is None else f", least margin {best.worst_margin_db:.1f} dB"
-    how = "One relay serves" if len(best.relays) == 1 else "It takes a chain of two relays"
-    return f"{how}{mast}: best is {names}, every hop clear{margin}."
-
-
-def searched(result: RelayResult) -> str:
-    """What was asked and how much of it serves."""
-    area = result.area
-    hop = f"hops up to {figures.distance(result.hop_m)}"
-    if area is None:
-        return f"{len(result.request.sites)} candidate sites, {hop}"
-    part = "judged one by one as plan does" if area.exact else "by the sweep"
-    return (
-        f"{area.looked_at} cells, {hop}; both ends seen clear from {area.cells} of them "
-        f"({area.area_m2 / 1e6:.3g} km2), {part}; {result.tried} planned in full"
-    )
 
 
 def _route(route: RelayRoute, number: int, ink: Ink) -> list[str]:

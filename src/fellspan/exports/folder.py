@@ -25,6 +25,7 @@ from fellspan.exports.survey import survey_csv, survey_gpx, survey_points
 from fellspan.exports.tables import links_csv, profile_csv, profile_name
 from fellspan.exports.text import utf8
 from fellspan.planning.plan import StudyPlan
+from fellspan.planning.relay_result import RelayResult
 from fellspan.report.naming import crew_name, page_name
 
 Progress = Callable[[int, int, str], None]
@@ -61,8 +62,10 @@ def write_folder(plan: StudyPlan, out_dir: str | Path, *, progress: Progress | N
     return tuple(texts)
 
 
-def report_files(plan: StudyPlan, *, progress: Progress | None = None) -> dict[str, str]:
-    """File names and texts of the whole report, `results.json` last."""
+def report_files(
+    plan: StudyPlan, *, progress: Progress | None = None, relays: RelayResult | None = None
+) -> dict[str, str]:
+    """File names and texts of the whole report, `results.json` last; `relays` as `report.pages.render_pages` takes it."""
     from fellspan.report.drawing_files import drawing_files
     from fellspan.report.pages import render_pages
 
@@ -87,7 +90,7 @@ def report_files(plan: StudyPlan, *, progress: Progress | None = None) -> dict[s
         if progress is not None:
             progress(done, total, name)
 
-    texts = render_pages(plan, progress=lambda done, _, name: tell(min(done, pages), name))
+    texts = render_pages(plan, progress=lambda done, _, name: tell(min(done, pages), name), relays=relays)
     for page, text in list(texts.items()):
         if page.startswith("link-"):
             texts |= drawing_files(page, text)
@@ -143,12 +146,17 @@ def check_folder(plan: StudyPlan, out_dir: str | Path) -> tuple[str, ...]:
         As `write_folder`.
     """
     folder = Path(out_dir)
-    check_target(folder)
-    names = report_names(plan)
-    if not (folder / ASIDE_NAME).exists():
-        _refuse_foreign(names, folder, _ours(names, folder))
+    check_files(report_names(plan), folder)
     kept = {linked.result.name for linked in plan.links}
     return tuple(name for name in links_in(folder) if name not in kept)
+
+
+def check_files(names: Iterable[str], folder: Path) -> None:
+    """See that files of these names may go into a folder: an OutputError where one is there that Fellspan did not write."""
+    check_target(folder)
+    listed = tuple(names)
+    if not (folder / ASIDE_NAME).exists():
+        _refuse_foreign(listed, folder, _ours(listed, folder))
 
 
 def check_target(folder: Path) -> None:

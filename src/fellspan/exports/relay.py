@@ -8,24 +8,26 @@ import json
 from pathlib import Path
 from typing import Any, Final
 
-import numpy as np
-import rasterio.features
 import shapely
-from shapely.geometry.base import BaseGeometry
 
 from fellspan import __version__
-from fellspan.exports.folder import RESULTS, report_files, write_files
+from fellspan.errors import OutputError
+from fellspan.exports.folder import RESULTS, Progress, check_files, links_in, report_files, write_files
 from fellspan.exports.results_json import link_result_dict
 from fellspan.exports.text import finite, utf8
-from fellspan.geodesy.transforms import WGS84, transformer
 from fellspan.planning.inputs import Study
 from fellspan.planning.plan import StudyPlan
-from fellspan.planning.relay_result import RelayArea, RelayResult, RelayRoute
+from fellspan.planning.planner import open_terrain
+from fellspan.planning.relay_result import RelayResult, RelayRoute
 from fellspan.planning.stamp import input_files
+from fellspan.planning.what_if import ages_of, what_if_of
+from fellspan.report.relay_area import area_outline
+from fellspan.report.relay_section import relay_study_name
+from fellspan.report.wording import shorten
 from fellspan.study.writing import study_text
 
+JSON: Final = "relay.json"
 GEOJSON: Final = "relay.geojson"
-STUDY: Final = "relay.toml"
 _SCHEMA: Final = 1
 
 
@@ -103,51 +105,78 @@ def relay_geojson(result: RelayResult) -> str:
     return utf8(text + "\n")
 
 
-def area_outline(area: RelayArea) -> BaseGeometry:
-    """The cells of an area as polygons, degrees of longitude and latitude (WGS 84), a millionth of a degree exact."""
-    to_degrees = transformer(area.crs, WGS84)
-    shapes = rasterio.features.shapes(area.clear.astype("uint8"), mask=area.clear, transform=area.transform)
-    parts = [shapely.geometry.shape(geometry) for geometry, value in shapes if value]
-    joined: BaseGeometry = shapely.GeometryCollection(parts)
-    joined = shapely.transform(joined, lambda at: np.column_stack(to_degrees.transform(at[:, 0], at[:, 1])))
-    rounded: BaseGeometry = shapely.set_precision(shapely.unary_union(joined), 1e-7)
-    return rounded
+def check_relay_folder(out: Path) -> None:
+    """See, before anything is searched, that a report of relays may go into a folder.
+
+    Raises
+    ------
+    OutputError
+        The folder cannot be written to, holds files that Fellspan did not write, or the report of something else.
+    """
+    check_files(("index.html", JSON, GEOJSON, relay_study_name(1), RESULTS), out)
+    held = links_in(out)
+    if held and not (out / GEOJSON).exists():
+        listed = ", ".join(f"'{name}'" for name in held[:3]) + (f" and {len(held) - 3} more" if held[3:] else "")
+        raise OutputError(
+            f"'{out}' holds the report of {listed}",
+            "its pages would be lost: give another folder for the relays",
+        )
 
 
-def write_relay_folder(result: RelayResult, study: Study, out: Path) -> tuple[str, ...]:
-    """The report of all hops, with `relay.geojson` and `relay.toml` beside it; errors as `exports.folder.write_folder`."""
+def write_relay_folder(
+    result: RelayResult, study: Study, out: Path, *, progress: Progress | None = None
+) -> tuple[str, ...]:
+    """The report of all hops, with the relays as JSON, GeoJSON and studies beside it; errors as `exports.folder.write_folder`.
+
+    Returns
+    -------
+    names
+        Names of the files.
+    """
     plan = relay_plan(result, study)
-    texts = report_files(plan)
+    texts = report_files(plan, progress=progress, relays=result)
     last = texts.pop(RESULTS)
+    texts[JSON] = relay_json(result)
     texts[GEOJSON] = relay_geojson(result)
-    texts[STUDY] = study_text(relay_study(result, study), folder=out)
+    for rank, route in enumerate(result.routes, start=1):
+        texts[relay_study_name(rank)] = study_text(relay_study(result, route, study), folder=out)
     texts[RESULTS] = last
     write_files(texts, out)
     return tuple(texts)
 
 
-def relay_study(result: RelayResult, study: Study) -> Study:
-    """A study of the hops alone, to plan on with."""
+def relay_study(result: RelayResult, route: RelayRoute, study: Study) -> Study:
+    """A study of the hops of one way round alone, to plan on with."""
     return dataclasses.replace(
         study,
-        title=f"{study.title}: relay for {result.link_name}",
-        links=tuple(hop.link for route in result.routes for hop in route.hops),
+        title=shorten(f"{study.title}: relay for {result.link_name}", 400),
+        links=tuple(hop.link for hop in route.hops),
         links_left_out=(),
     )
 
 
 def relay_plan(result: RelayResult, study: Study) -> StudyPlan:
-    """The hops of every route, and the link itself, as one plan: routes are alternatives, so none is another's neighbour."""
+    """The link itself and the hops of every way as one plan: ways are alternatives, so none is another's neighbour."""
     direct = () if result.direct is None else (result.direct,)
     plans = (*direct, *(hop for route in result.routes for hop in route.hops))
-    made = dataclasses.replace(relay_study(result, study), links=tuple(plan.link for plan in plans))
+    with open_terrain(study) as terrain:
+        ages = ages_of(terrain)
+        plans = tuple(
+            dataclasses.replace(plan, what_if=what_if_of(plan.link, plan.profile, terrain, ages=ages)) for plan in plans
+        )
+    made = dataclasses.replace(
+        study,
+        title=shorten(f"{study.title}: relay for {result.link_name}", 400),
+        links=tuple(plan.link for plan in plans),
+        links_left_out=(),
+    )
     return StudyPlan(
         study=made,
         links=plans,
         failures=(),
         files=input_files(study),
         version=__version__,
-        cautions=(*result.cautions, *study.notes),
+        cautions=tuple(study.notes),
         interference=None,
     )
 

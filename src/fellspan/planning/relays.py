@@ -40,6 +40,8 @@ Progress = Callable[[int, int, str], None]
 
 JUDGE_AT_MOST: Final = 60_000
 """Cells that are judged one by one; of more, the best of each block of cells stands for it."""
+LONGEST_NAME: Final = 400
+"""Letters of a link's name that a study file takes."""
 _TRIES: Final = 8
 """Places planned in full for each one asked, before the search gives up."""
 
@@ -74,6 +76,19 @@ def _named(study: Study, name: str) -> Link:
     raise LinkError(
         f"there is no link named '{name}' in this study", f"links: {', '.join(x.name for x in study.links)}"
     )
+
+
+def _free(name: str, taken: set[str]) -> str:
+    """A name for a relay that no end of the link bears."""
+    while name in taken:
+        name += "'"
+    return name
+
+
+def _hop_name(one: Site, two: Site, *, way: int, hop: int) -> str:
+    """The names of both ends; where they are too long for a name together, which hop of which way it is."""
+    name = f"{one.name} - {two.name}"
+    return name if len(name) <= LONGEST_NAME else f"Way {way}, hop {hop}"
 
 
 @dataclasses.dataclass(frozen=True, slots=True, kw_only=True)
@@ -219,13 +234,19 @@ class _Search:
 
     def _ranked_sites(self, terrain: Terrain, refused: list[str]) -> Iterator[Site]:
         area = self.request.area
+        ends = {self.link.a.name, self.link.b.name}
+        named = [site.name for site in self.request.sites if site.name in ends]
+        refused += [
+            f"candidate site '{name}' bears the name of an end of the link: rename it to try it" for name in named
+        ]
         sites = [
             site
             for site in self.request.sites
-            if (area is None or shapely.contains_xy(area, site.position.longitude_deg, site.position.latitude_deg))
+            if site.name not in ends
+            and (area is None or shapely.contains_xy(area, site.position.longitude_deg, site.position.latitude_deg))
             and all(inverse(end.position, site.position).distance_m <= self.hop_m for end in (self.link.a, self.link.b))
         ]
-        left_out = len(self.request.sites) - len(sites)
+        left_out = len(self.request.sites) - len(named) - len(sites)
         if left_out:
             refused.append(f"{left_out} of {len(self.request.sites)} candidate sites lie outside the hops or the area")
         if not sites:
@@ -271,14 +292,17 @@ class _Search:
 
     def _route(self, chain: list[Site], *, number: int) -> tuple[RelayRoute | None, str]:
         letters = "" if len(chain) == 1 else "ab"
+        taken = {self.link.a.name, self.link.b.name}
         relays = [
-            site if site.name != "relay" else dataclasses.replace(site, name=f"Relay {number}{letters[at : at + 1]}")
+            site
+            if self.request.sites
+            else dataclasses.replace(site, name=_free(f"Relay {number}{letters[at : at + 1]}", taken))
             for at, site in enumerate(chain)
         ]
         stations = [self.link.a, *relays, self.link.b]
         links = tuple(
-            hop_link(self.link, name=f"{one.name} - {two.name}", a=one, b=two)
-            for one, two in itertools.pairwise(stations)
+            hop_link(self.link, name=_hop_name(one, two, way=number, hop=at), a=one, b=two)
+            for at, (one, two) in enumerate(itertools.pairwise(stations), start=1)
         )
         plan = plan_study(self._study_of(links))
         where = relays[0].position

@@ -17,7 +17,9 @@ from jinja2.utils import htmlsafe_json_dumps
 from fellspan.links.result import Obstruction
 from fellspan.links.words import state_of
 from fellspan.planning.plan import LinkPlan
+from fellspan.planning.relay_result import RelayResult
 from fellspan.report import map_geometry as geometry
+from fellspan.report.relay_section import map_overlay
 from fellspan.report.relief import Relief
 from fellspan.report.wording import clean, shorten
 
@@ -46,13 +48,15 @@ class SiteNames(MacroElement):
         """
         {% macro script(this, kwargs) %}
             addSites({{ this._parent.get_name() }}, {{ this.sites }});
+            {% if this.relays %}markRelays({{ this._parent.get_name() }});{% endif %}
         {% endmacro %}
         """
     )
 
-    def __init__(self, marks: Sequence[geometry.SiteMark]) -> None:
+    def __init__(self, marks: Sequence[geometry.SiteMark], *, relays: bool = False) -> None:
         super().__init__()  # type: ignore[no-untyped-call]
         self._name = "SiteNames"
+        self.relays = relays
         self.sites = _no_template(
             [
                 round(mark.latitude_deg, 6), round(mark.longitude_deg, 6), shorten(mark.name, 34),
@@ -75,9 +79,18 @@ def _full(name: str) -> str:
 
 
 def link_map(
-    plans: Sequence[LinkPlan], *, name: str, relief: Relief | None, first: int = 0, overview: bool = False
+    plans: Sequence[LinkPlan],
+    *,
+    name: str,
+    relief: Relief | None,
+    first: int = 0,
+    overview: bool = False,
+    relays: RelayResult | None = None,
 ) -> MapMarkup:
-    """A map of some links; `first` is the number of the first of them in the study, `name` an identifier."""
+    """A map of some links; `first` is the number of the first of them in the study, `name` an identifier.
+
+    `relays` are those of a search whose report has its links in the order of `relay_section.hop_ranks`.
+    """
     reference = plans[0].result.ends.a.longitude_deg
     paths = [geometry.path(plan, reference) for plan in plans]
     places = [place for line in paths for place in line]
@@ -91,6 +104,8 @@ def link_map(
     chart._id = name
     if relief is not None and relief.url:
         _add_relief(chart, relief)
+    if relays is not None:
+        RelayMarks(map_overlay(relays, reference)).add_to(chart)
     LinkLines(
         [
             _drawn(plan, line, index=index, reference=reference, overview=overview)
@@ -98,7 +113,7 @@ def link_map(
         ],
         choose=overview,
     ).add_to(chart)
-    SiteNames(geometry.sites(plans, reference, first=first)).add_to(chart)
+    SiteNames(geometry.sites(plans, reference, first=first), relays=relays is not None).add_to(chart)
     figure: Any = chart.get_root()
     figure.render()
     return MapMarkup(
@@ -134,6 +149,23 @@ def _credit(relief: Relief | None) -> str:
 def _names(names: Sequence[str]) -> str:
     few = [*names[:2], f"and {len(names) - 2} more"] if len(names) > 3 else list(names)
     return ", ".join(shorten(name, 40) for name in few)
+
+
+class RelayMarks(MacroElement):
+    """Area, numbers and diamonds of a search for a relay, below the lines."""
+
+    _template = Template(
+        """
+        {% macro script(this, kwargs) %}
+            addRelays({{ this._parent.get_name() }}, {{ this.found }});
+        {% endmacro %}
+        """
+    )
+
+    def __init__(self, found: dict[str, Any]) -> None:
+        super().__init__()  # type: ignore[no-untyped-call]
+        self._name = "RelayMarks"
+        self.found = _no_template(found)
 
 
 class LinkLines(MacroElement):

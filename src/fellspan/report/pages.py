@@ -18,6 +18,7 @@ from fellspan.links.safety import safety_lines
 from fellspan.links.words import State, is_two_points, state_of
 from fellspan.planning.accepting import as_built_issue
 from fellspan.planning.plan import LinkPlan, StudyPlan
+from fellspan.planning.relay_result import RelayResult
 from fellspan.report import assets, wording
 from fellspan.report import map_geometry as geometry
 from fellspan.report.ahead import ahead
@@ -35,6 +36,7 @@ from fellspan.report.neighbours import neighbours_view
 from fellspan.report.overview import overview_view
 from fellspan.report.profile_drawing import draw_profile, exaggeration_words
 from fellspan.report.reflection_section import reflection_section
+from fellspan.report.relay_section import relays_view
 from fellspan.report.relief import Relief, open_rasters, shaded_relief
 from fellspan.report.section import FULL, NARROW
 from fellspan.report.signal_section import availability_short, rules_section, signal_section
@@ -72,8 +74,13 @@ class LinkView:
     scale: str = ""
 
 
-def render_pages(plan: StudyPlan, *, progress: Progress | None = None) -> dict[str, str]:
-    """File names and HTML texts: `index.html`, then the page and both crew sheets of each link in the order of the study."""
+def render_pages(
+    plan: StudyPlan, *, progress: Progress | None = None, relays: RelayResult | None = None
+) -> dict[str, str]:
+    """File names and HTML texts: `index.html`, then the page and both crew sheets of each link in the order of the study.
+
+    `relays` is the search that the links of the plan come from; the overview then shows it.
+    """
     templates = _environment()
     rasters = open_rasters(plan.study.terrain.ground or plan.study.terrain.surface)
     total = len(plan.links) + 1
@@ -84,7 +91,7 @@ def render_pages(plan: StudyPlan, *, progress: Progress | None = None) -> dict[s
 
     tell(0, OVERVIEW)
     with closing(ahead(lambda link: _relief_of(plan, link, rasters), plan.links)) as reliefs:
-        pages = {OVERVIEW: _overview(plan, templates, rasters)}
+        pages = {OVERVIEW: _overview(plan, templates, rasters, relays)}
         for index, (link, relief) in enumerate(zip(plan.links, reliefs, strict=True)):
             name = page_name(index, link.result.name)
             tell(index + 1, name)
@@ -94,19 +101,22 @@ def render_pages(plan: StudyPlan, *, progress: Progress | None = None) -> dict[s
     return pages
 
 
-def _overview(plan: StudyPlan, templates: Environment, rasters: list[RasterFile]) -> str:
+def _overview(
+    plan: StudyPlan, templates: Environment, rasters: list[RasterFile], relays: RelayResult | None = None
+) -> str:
     chart = None
     if plan.links:
         window = geometry.window_of(_places(plan.links), margin=0.25)
         relief = shaded_relief(
             rasters, window, pixels=OVERVIEW_PIXELS, most_bytes=OVERVIEW_BYTES, gaps_are_sea=_gaps_are_sea(plan)
         )
-        chart = link_map(plan.links, name="overview", relief=relief, overview=True)
+        chart = link_map(plan.links, name="overview", relief=relief, overview=True, relays=relays)
     return templates.get_template("index.html.j2").render(
         **_shared(plan, chart),
         view=overview_view(plan),
         notes=(*plan.study.notes, *plan.cautions),
         neighbours=neighbours_view(plan),
+        relays=relays and relays_view(relays),
         quiet=False,
     )
 
@@ -223,6 +233,7 @@ def _shared(plan: StudyPlan, chart: MapMarkup | None) -> dict[str, Any]:
             "link": assets.asset("link.css"),
             "whatif": assets.asset("whatif.css"),
             "overview": assets.asset("overview.css"),
+            "relays": assets.asset("relays.css"),
             "polar": assets.asset("polar.css"),
             "horizon": assets.asset("horizon.css"),
             "equip": assets.asset("equip.css"),
@@ -232,6 +243,7 @@ def _shared(plan: StudyPlan, chart: MapMarkup | None) -> dict[str, Any]:
             "leaflet": assets.leaflet_js(),
             "map": assets.asset("map.js"),
             "overview": assets.asset("overview.js"),
+            "relays": assets.asset("relays.js"),
             "table": assets.asset("table.js"),
             "link": assets.asset("link.js"),
             "what_if": assets.packed(*WHAT_IF_SCRIPTS),

@@ -1,4 +1,4 @@
-"""Outlines of open water from a GeoJSON file, and which places lie within them.
+"""Outlines of open water, or of other areas, from a GeoJSON file, and which places lie within them.
 
 Knows nothing of levels, paths and reflections.
 """
@@ -41,10 +41,10 @@ class WaterOutlines:
         return within
 
 
-def read_outlines(paths: tuple[str | Path, ...]) -> WaterOutlines | None:
+def read_outlines(paths: tuple[str | Path, ...], *, what: str = "water") -> WaterOutlines | None:
     """The outlines of all files together; None where no file is given.
 
-    Properties of the features are not read, so any file of areas will do.
+    Properties of the features are not read, so any file of areas will do; `what` is what messages call them.
 
     Raises
     ------
@@ -53,7 +53,7 @@ def read_outlines(paths: tuple[str | Path, ...]) -> WaterOutlines | None:
     """
     parts: list[BaseGeometry] = []
     for path in paths:
-        parts += _areas(Path(path))
+        parts += _areas(Path(path), what)
     if not parts:
         return None
     shape = shapely.union_all(np.array(parts, dtype=object))
@@ -61,10 +61,10 @@ def read_outlines(paths: tuple[str | Path, ...]) -> WaterOutlines | None:
     return WaterOutlines(shape=shape)
 
 
-def _areas(file: Path) -> list[BaseGeometry]:
-    head = f"water file '{file.name}'"
+def _areas(file: Path, what: str) -> list[BaseGeometry]:
+    head = f"{what} file '{file.name}'"
     try:
-        data = json.loads(read_text(file, WaterFileError, "water"))
+        data = json.loads(read_text(file, WaterFileError, what))
     except (ValueError, RecursionError) as problem:
         if isinstance(problem, WaterFileError):
             raise
@@ -98,5 +98,5 @@ def _parts(feature: object, where: str) -> list[BaseGeometry]:
     parts = simple_parts(shape, fields, [])
     for part in parts:
         if part.geom_type != "Polygon":
-            raise fields.fail(f"a {part.geom_type} is no area of water", "give a Polygon")
+            raise fields.fail(f"a {part.geom_type} is no area", "give a Polygon")
     return parts
