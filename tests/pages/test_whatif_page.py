@@ -9,6 +9,7 @@ import tomllib
 from pathlib import Path
 
 import pytest
+from whatif_reading import FRAMES, opened, quiet, typed
 
 from fellspan.links.assess import assess_in_full
 from fellspan.links.criteria import Criterion
@@ -21,15 +22,6 @@ pytestmark = pytest.mark.browser
 SAMPLE = Path(__file__).parents[2] / "sample_terrain"
 LINKS = (0, 1, 2, 5, 9)
 """Past a growing tree, over a ridge, across the sea, over woods with survey, past ships."""
-FRAMES = "() => new Promise(done => requestAnimationFrame(() => requestAnimationFrame(done)))"
-ANSWER = """() => {
-  const now = fellspanWhatIf.last(), item = now.result;
-  return {fraction: item.fraction, at: item.worstAt, extra: item.extra, name: now.found.criterion.name,
-          rule: fellspanWhatIf.say.ruleWords(now), k: now.k, met: item.met, spare: item.spare,
-          sentence: document.querySelector(".what-if-answer").textContent,
-          callout: document.querySelector(".only-wide .what-if-layer .callout")?.textContent};
-}"""
-SEEN = "element => element.getClientRects().length > 0"
 
 
 def settings(number):
@@ -42,25 +34,6 @@ def settings(number):
             | ({"trees": str(chosen.choice([0, 12]))} if "k" not in more else {})
             | more
         )
-
-
-def opened(watch, report, number, *, width=1280, height=900):
-    watched = watch(width, height)
-    watched.page.goto(report.link_pages[number].as_uri())
-    watched.page.evaluate(FRAMES)
-    return watched
-
-
-def quiet(watched):
-    assert watched.messages == []
-    assert watched.requests == []
-
-
-def typed(page, **values):
-    for name, value in values.items():
-        page.fill(f"[data-box={name}]", str(value))
-    page.evaluate(FRAMES)
-    return page.evaluate(ANSWER)
 
 
 def engine(study, plan, wanted, *, grows):
