@@ -122,7 +122,9 @@ def work(
         if stopped is not None and stopped():
             raise Stopped
         part = slice(start, start + BATCH_PAIRS)
-        done.append(screen_pairs(job.candidates, hub=job.chunk.hub[part], place=job.chunk.place[part], terrain=terrain))
+        hub, place = job.chunk.hub[part], job.chunk.place[part]
+        # one thread: chunks already keep all cores busy
+        done.append(screen_pairs(job.candidates, hub=hub, place=place, terrain=terrain, threads=1))
         if tell is not None:
             tell(done[-1].hub.size)
     together = joined(done)
