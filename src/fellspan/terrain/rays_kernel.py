@@ -217,12 +217,18 @@ def cells_from_rays(
         for i in range(needed.shape[0]):
             _places(part, easts[i], 0.0, east[:count])
             _places(part, norths[i], 0.0, north[:count])
-            _angles(east[:count], north[:count], float(ray_count), waves, angle[:count])
+            nearest = math.inf
             for j in range(count):
                 away = math.sqrt(east[j] * east[j] + north[j] * north[j])
+                nearest = min(nearest, away)
+                along[j] = max(away * per_step - 1.0, 0.0) if away <= reach_m else -1.0
+            if nearest > reach_m:
+                needed[i, first : first + count] = math.nan
+                continue
+            _angles(east[:count], north[:count], float(ray_count), waves, angle[:count])
+            for j in range(count):
                 beside = angle[j] - first_ray
                 angle[j] = beside + ray_count if beside < 0.0 else beside
-                along[j] = max(away * per_step - 1.0, 0.0) if away <= reach_m else -1.0
             for j in range(count):
                 if along[j] < 0.0 or angle[j] > held - 1.0:
                     needed[i, first + j] = math.nan
