@@ -160,13 +160,20 @@ def test_gaps_are_a_status(tmp_path: Path) -> None:
     assert {STATUSES[code] for code in found.status} == {"done", "gap"}
 
 
-def test_gaps_taken_as_sea(tmp_path: Path) -> None:
+def test_gaps_taken_as_sea(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     ground = np.maximum(hills() - 110.0, 0.3)
     ground[:, 250:330] = -9999.0
+    ground[50:80, 100:120] = -9999.0
+    ground[200:, 480:500] = np.where(hills()[200:, 480:500] > 100.0, -9999.0, 30.0)
     file = raster(tmp_path / "ground.tif", ground)
-    made = candidates(sites("H", 2, seed=25, height_m=30.0), sites("P", 10, seed=26))
-    with Terrain.open(ground=file, gaps="sea") as terrain:
-        compared(made, terrain)
+    made = candidates(sites("H", 2, seed=25, height_m=30.0), sites("P", 14, seed=26))
+    hub, place = every_pair(made)
+    with Terrain.open(ground=file, cover=trees(tmp_path), growth_years=2.0, gaps="sea", sea_level_m=0.5) as terrain:
+        found = compared(made, terrain)
+        taken = only_arrays(monkeypatch)
+        screen_pairs(made, hub=hub, place=place, terrain=terrain)
+    assert {STATUSES[code] for code in found.status} == {"done", "gap"}
+    assert len(taken) <= 2
 
 
 def test_rasters_side_by_side_and_one_over_another(tmp_path: Path) -> None:
@@ -192,8 +199,7 @@ def test_obstacles_and_survey_send_a_path_to_planning_alone(tmp_path: Path, monk
     obstacles, survey = tmp_path / "obstacles.csv", tmp_path / "survey.csv"
     mast = made.places.latitude_deg[3], made.places.longitude_deg[3]
     obstacles.write_text(
-        "name,kind,latitude_deg,longitude_deg,height_m,radius_m\n"
-        f"tank,building,{mast[0] + 0.001},{mast[1]},30,60\n"
+        f"name,kind,latitude_deg,longitude_deg,height_m,radius_m\ntank,building,{mast[0] + 0.001},{mast[1]},30,60\n"
     )
     survey.write_text(
         "latitude_deg,longitude_deg,ground_m\n" + f"{made.places.latitude_deg[5]},{made.places.longitude_deg[5]},120\n"

@@ -36,6 +36,8 @@ BLOCK_SAMPLES: Final = 2_000_000
 LONGEST_STEPS: Final = 30_000
 """Paths of more steps are taken one by one."""
 FEWEST_STEPS: Final = 4
+SHORE_STEPS: Final = 16
+"""Fewer than these are not enough to tell the shores of a gap by: `terrain.assemble` then looks closer."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -152,10 +154,12 @@ class Batch:
         setting, settings = self._setting, self._setting.candidates.settings
         coarse, doubtful = regular(self._laid, which, length_m=self._ways.length_m, steps=self._steps, width=width)
         gap = ~np.isfinite(coarse.ground_m).all(axis=1)
-        if gap.any() and setting.many.layers.gaps == "error":
-            self._note_gaps(coarse.rows(gap & ~doubtful))
-        else:
-            doubtful = doubtful | gap
+        # A profile's own samples are those that tell the shores, but for few or at a step of the study's.
+        by_shores = setting.many.layers.gaps == "sea"
+        if by_shores:
+            at_shores = (coarse.last >= SHORE_STEPS) & (settings.step_m is None)
+            doubtful = doubtful | (~at_shores & (gap | (coarse.source == setting.many.layers.sea).any(axis=1)))
+        self._note_gaps(coarse.rows(gap & ~doubtful))
         block.one_by_one.append(self._rows[which[doubtful]])
         if gap.any() or doubtful.any():
             coarse = coarse.rows(~gap & ~doubtful)
@@ -251,6 +255,10 @@ class Batch:
         columns.confidence[rows[falls]] = np.minimum(columns.confidence[rows[falls]], most[falls])
         return np.asarray(rows[~falls & (least < settings.confidence)])
 
+    def _sea(self, profiles: Profiles) -> NDArray[np.bool_] | None:
+        sea = profiles.source == self._setting.many.layers.sea
+        return np.broadcast_to(sea, profiles.distance_m.shape) if sea.any() else None
+
     def _bucket(
         self,
         profiles: Profiles,
@@ -286,5 +294,5 @@ class Batch:
             ground_m=profiles.ground_m,
             surface_m=surface_m,
             cover_kind=cover_kind,
-            is_sea=None,
+            is_sea=self._sea(profiles),
         )

@@ -58,6 +58,10 @@ def joined_buckets(buckets: Sequence[LaidBucket]) -> LaidBucket:
     columns: dict[str, NDArray[np.generic] | None] = {}
     for field in fields(LaidBucket):
         parts = [getattr(bucket, field.name) for bucket in buckets]
+        if field.name == "is_sea":
+            # Some buckets may have met none.
+            dry = [np.zeros(bucket.distance_m.shape, dtype=np.bool_) for bucket in buckets]
+            parts = [one if one is not None else none for one, none in zip(parts, dry, strict=True)]
         columns[field.name] = None if parts[0] is None else np.concatenate(parts)
     if all(bucket.surface_m is bucket.ground_m for bucket in buckets):
         columns["surface_m"] = columns["ground_m"]

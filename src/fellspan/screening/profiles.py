@@ -55,6 +55,7 @@ class Profiles:
     ground_sigma_m: Floats
     source: NDArray[np.int16]
     known: NDArray[np.bool_]
+    wet: NDArray[np.bool_] | None
     tells: NDArray[np.bool_]
 
     def rows(self, rows: Index | NDArray[np.bool_]) -> "Profiles":
@@ -140,7 +141,8 @@ def closer(
     come_from[:, -1] = np.arange(count) * columns + coarse.last
 
     t = 2.0 * (fine_m / coarse.length_m[fine_path]) - 1.0
-    found = laid.sample(t[:, np.newaxis], coarse.which[fine_path])
+    wet = None if coarse.wet is None else np.repeat(coarse.wet[path, interval], more)[:, np.newaxis]
+    found = laid.sample(t[:, np.newaxis], coarse.which[fine_path], wet=wet)
     doubtful = np.zeros(count, dtype=np.bool_)
     doubtful[fine_path[found.doubtful]] = True
 
@@ -170,6 +172,7 @@ def closer(
         ground_sigma_m=alike(coarse.ground_sigma_m, found.ground_sigma_m),
         source=alike(coarse.source, found.source),
         known=alike(coarse.known, found.known),
+        wet=None,
     )
     return profiles, doubtful
 
@@ -190,5 +193,6 @@ def _profiles(
         ground_sigma_m=found.ground_sigma_m,
         source=found.source,
         known=found.known,
+        wet=found.wet,
         tells=found.tells,
     )

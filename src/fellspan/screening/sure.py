@@ -84,7 +84,7 @@ class _Part:
     a_m: Floats
     b_m: Floats
     is_plain: NDArray[np.bool_]
-    """Pairs whose ground has one source, which is bare somewhere: errors of ground and cover are then told apart as written."""
+    """Pairs on which cover stands on one source only, bare somewhere: else errors of ground and cover are not told apart so."""
 
     @classmethod
     def of(
@@ -100,9 +100,11 @@ class _Part:
         ground = np.minimum(profiles.ground_sigma_m[which], sigma)
         total = sigma if stands.bared is None else np.where(stands.bared[which], ground, sigma)
         source = profiles.source[which]
-        plain = (source == source[:, :1]).all(axis=1)
+        plain = np.ones(which.size, dtype=np.bool_)
         if profiles.cover_m is not None:
-            plain &= (profiles.cover_m[which] == 0.0).any(axis=1)
+            one = source == source[:, :1]
+            bare = profiles.cover_m[which] == 0.0
+            plain = (bare & one).any(axis=1) & (bare | one).all(axis=1)
         models = [error_model(cell) for cell in profiles.cell_m[which].tolist()]
         return cls(
             reach_m=np.array([[one.ground_reach_m] for one in models]),

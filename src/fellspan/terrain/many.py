@@ -16,6 +16,7 @@ from numpy.typing import NDArray
 from fellspan.terrain.assemble import Layers
 from fellspan.terrain.cover import NONE, OTHER, CoverLayer, combine, may_be_refused, missing_kinds, rises_somewhere
 from fellspan.terrain.raster_file import RasterFile
+from fellspan.terrain.sea import SEA_ERROR_M, near_shores
 from fellspan.terrain.stack_sheets import Curves, PathsOnStack, StackSheets, sigmas_of
 
 Floats = NDArray[np.float64]
@@ -61,6 +62,8 @@ class ManySamples:
     """Trees and buildings are both known here."""
     doubtful: NDArray[np.bool_]
     """Paths (q,) on which rasters disagree so that planning might refuse them."""
+    wet: NDArray[np.bool_] | None
+    """Whether what has no data between each sample and the next is sea; None where that was not asked or nowhere so."""
     tells: NDArray[np.bool_]
     """Paths (q,) on which the surface raster shows anything at all, or others tell of trees and buildings."""
 
@@ -129,20 +132,39 @@ class LaidPaths:
         for stack in self._stacks:
             stack.read_for(t, which)
 
-    def sample(self, t: Floats, which: Index, *, inside: NDArray[np.bool_] | None = None) -> ManySamples:
+    def sample(
+        self,
+        t: Floats,
+        which: Index,
+        *,
+        inside: NDArray[np.bool_] | None = None,
+        wet: NDArray[np.bool_] | None = None,
+    ) -> ManySamples:
         """Everything at t, -1 at A to 1 at B, (q, n), of the paths `which`, (q,).
 
         With `inside`, (q, n), which tells samples from what fills up shorter paths, `doubtful` and `tells` look at the surface
-        raster all along; without, the places are some of the path's only and they say nothing of it.
+        raster all along, and gaps are taken as sea by their shores; without, the places are some of the path's only, and gaps
+        are sea where `wet`, (q, n), says so.
         """
         layers = self._many.layers
         ground = self._stacks[0].sample(t, which)
         value, source = ground.value_m, ground.source
         ground_sigma = sigmas_of(layers.ground.files, source)
+        raster, along = value, None
+        if layers.gaps == "sea" and (gap := ~np.isfinite(value)).any():
+            if inside is not None:
+                before, after = near_shores(value, ground_sigma, inside, sea_level_m=layers.sea_level_m)
+                gap &= before & after
+                along = before & np.concatenate((after[:, 1:], after[:, -1:]), axis=1)
+            else:
+                gap &= False if wet is None else wet
+            value = np.where(gap, layers.sea_level_m, value)
+            ground_sigma = np.where(gap, SEA_ERROR_M, ground_sigma)
+            source = np.where(gap, layers.sea, source).astype(np.int16)
         doubtful, tells = ground.doubtful, np.ones(which.size, dtype=np.bool_)
         if not layers.is_bare:
             known = np.isfinite(value)
-            return self._bare(value, ground_sigma, source, known, doubtful, tells)
+            return self._bare(value, ground_sigma, source, known, doubtful, tells, along)
         covers: list[CoverLayer] = []
         cover_stacks = self._stacks[len(self._stacks) - len(layers.cover) :]
         for (declared, _), laid in zip(layers.cover, cover_stacks, strict=True):
@@ -152,19 +174,19 @@ class LaidPaths:
             doubtful = doubtful | doubt
         if layers.surface is None:
             if not covers:
-                known = np.full((which.size, 1), not missing_kinds((), layers.complete))
-                return self._bare(value, ground_sigma, source, known, doubtful, tells)
+                known = np.full((which.size, 1), not missing_kinds((), layers.complete)) | (source == layers.sea)
+                return self._bare(value, ground_sigma, source, known, doubtful, tells, along)
             cover = combine(value, covers, None, None, complete=layers.complete)
         else:
             surface, sigma, doubt = _sampled(self._stacks[1], t, which)
             cover = combine(value, covers, surface, sigma, complete=layers.complete)
-            step = surface - value
+            step = surface - raster
             doubtful = doubtful | doubt
             if inside is not None:
                 one = len(layers.ground.files) == 1 and len(layers.surface.files) == 1
                 doubtful |= may_be_refused(step, ground_sigma, sigma, inside=inside, is_one_pair=one)
                 if missing_kinds([declared.kind for declared, _ in layers.cover], layers.complete):
-                    tells = rises_somewhere(step, value, self._paths.length_m[which], inside=inside)
+                    tells = rises_somewhere(step, raster, self._paths.length_m[which], inside=inside)
         height = cover.height_m
         stands = height > 0.0
         kind = np.where(stands, np.where(cover.kind == NONE, OTHER, cover.kind), NONE).astype(np.int8)
@@ -177,7 +199,8 @@ class LaidPaths:
             sigma_m=sigma,
             ground_sigma_m=ground_sigma,
             source=source,
-            known=cover.known & np.isfinite(value),
+            known=(cover.known | (source == layers.sea)) & np.isfinite(value),
+            wet=along,
             doubtful=doubtful,
             tells=tells,
         )
@@ -190,6 +213,7 @@ class LaidPaths:
         known: NDArray[np.bool_],
         doubtful: NDArray[np.bool_],
         tells: NDArray[np.bool_],
+        wet: NDArray[np.bool_] | None,
     ) -> ManySamples:
         return ManySamples(
             ground_m=value,
@@ -200,6 +224,7 @@ class LaidPaths:
             source=source,
             known=known,
             doubtful=doubtful,
+            wet=wet,
             tells=tells,
         )
 

@@ -66,3 +66,23 @@ class Shores:
             f"not taken as sea: beside it, at {self.distance_m[beside] / 1000.0:.2f} km, the ground is "
             f"{self.ground_m[beside]:.1f} m, and the sea {self.sea_level_m:g} m"
         )
+
+
+def near_shores(
+    ground_m: Floats, sigma_m: Floats, inside: NDArray[np.bool_], *, sea_level_m: float
+) -> tuple[NDArray[np.bool_], NDArray[np.bool_]]:
+    """For many paths, arrays (q, n): whether the nearest known ground at or before each sample lies near the sea's level, and
+    whether the nearest at or after it does. False where there is none; `inside` tells samples from what fills up paths.
+
+    A place without data is sea, as `Shores.are_sea` has it, where both hold of the samples on its two sides.
+    """
+    count = ground_m.shape[1]
+    known = inside & np.isfinite(ground_m)
+    with np.errstate(invalid="ignore"):
+        low = known & (np.abs(ground_m - sea_level_m) <= SHORE_M + _SIGMAS * sigma_m)
+    place = np.arange(count)
+    before = np.maximum.accumulate(np.where(known, place, -1), axis=1)
+    after = np.minimum.accumulate(np.where(known, place, count)[:, ::-1], axis=1)[:, ::-1]
+    low_before = np.take_along_axis(low, np.maximum(before, 0), axis=1) & (before >= 0)
+    low_after = np.take_along_axis(low, np.minimum(after, count - 1), axis=1) & (after < count)
+    return low_before, low_after
