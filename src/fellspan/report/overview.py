@@ -15,13 +15,11 @@ from fellspan.links.words import State, state_of
 from fellspan.planning.plan import LinkPlan, StudyPlan
 from fellspan.report import wording
 from fellspan.report.naming import page_name
+from fellspan.report.network import HUB_FROM, STATE_ORDER, Hub, hubs_of
 from fellspan.report.panel_drawing import Panel, draw_panel
 from fellspan.report.signal_section import availability_short
 from fellspan.report.survey_groups import SurveyGroup, survey_groups
 
-HUB_FROM: Final = 3
-"""A site with so many links is a hub."""
-STATE_ORDER: Final[tuple[State, ...]] = ("clear", "clear-bare", "marginal", "obstructed")
 _SIGNAL_ORDER: Final = ("meets", "marginal", "below")
 
 
@@ -56,17 +54,6 @@ class Row:
     build: str
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Hub:
-    """A site that carries several links."""
-
-    site: str
-    links: tuple[tuple[str, str, State], ...]
-    """Name, page and state of each."""
-    length_m: float
-    worst: State
-
-
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class OverviewView:
     """What the template shows."""
@@ -77,6 +64,8 @@ class OverviewView:
     """Words and count of each kind of signal verdict that occurs."""
     length_m: float
     hubs: tuple[Hub, ...]
+    joints: tuple[Hub, ...]
+    """Sites with two links."""
     survey: tuple[SurveyGroup, ...]
     points: int
 
@@ -86,12 +75,14 @@ def overview_view(plan: StudyPlan) -> OverviewView:
     left = _left_by_neighbours(plan)
     signals = Counter(_signal(link.result).text for link in plan.links)
     survey = survey_groups(plan)
+    sites = hubs_of(plan)
     return OverviewView(
         rows=tuple(_row(index, link, left.get(link.result.name)) for index, link in enumerate(plan.links)),
         states=Counter(state_of(link.result) for link in plan.links),
         signals=tuple((word, signals[word]) for word in sorted(signals, key=_signal_order)),
         length_m=sum(link.result.distance_m for link in plan.links),
-        hubs=_hubs(plan),
+        hubs=tuple(site for site in sites if len(site.links) >= HUB_FROM),
+        joints=tuple(site for site in sites if len(site.links) < HUB_FROM),
         survey=survey,
         points=sum(len(group.rows) for group in survey),
     )
@@ -167,23 +158,3 @@ def _build(heights: HeightsResult | None) -> str:
             more = pair.b_m - planned.b_m if kind == "b alone" else pair.a_m - planned.a_m
             ways.append(f"{word} {wording.number(words.up_m(more), sign=True).removesuffix('.0')} m")
     return " or ".join(ways) if ways else "not by usual masts"
-
-
-def _hubs(plan: StudyPlan) -> tuple[Hub, ...]:
-    """Sites that carry several links, those with the most first; a site is a name at a place."""
-    carried: dict[tuple[str, float, float], list[tuple[int, LinkPlan]]] = {}
-    for index, link in enumerate(plan.links):
-        for end in (link.result.ends.a, link.result.ends.b):
-            spot = (end.site, round(end.latitude_deg, 4), round(end.longitude_deg, 4))
-            carried.setdefault(spot, []).append((index, link))
-    hubs = [
-        Hub(
-            site=spot[0],
-            links=tuple((one.result.name, page_name(i, one.result.name), state_of(one.result)) for i, one in links),
-            length_m=sum(one.result.distance_m for _, one in links),
-            worst=max((state_of(one.result) for _, one in links), key=STATE_ORDER.index),
-        )
-        for spot, links in carried.items()
-        if len(links) >= HUB_FROM
-    ]
-    return tuple(sorted(hubs, key=lambda hub: -len(hub.links)))

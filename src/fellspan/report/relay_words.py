@@ -15,10 +15,11 @@ def decision(result: RelayResult) -> str:
             f"{_needless(result)}"
         )
     best = result.routes[0]
+    bare = any(state_of(hop.result) == "clear-bare" for hop in best.hops)
     names = " and ".join(site.name for site in best.relays)
     margin = "" if best.worst_margin_db is None else f", least margin {best.worst_margin_db:.1f} dB"
     how = "One relay serves" if len(best.relays) == 1 else "It takes a chain of two relays"
-    return f"{how}{mast}: best is {names}, every hop clear{margin}.{_needless(result)}"
+    return f"{how}{mast}: best is {names}, every hop clear{' on bare ground only' if bare else ''}{margin}.{_needless(result)}"
 
 
 def _needless(result: RelayResult) -> str:
@@ -54,5 +55,8 @@ def searched(result: RelayResult) -> str:
 
 def legend_words(result: RelayResult) -> str:
     """What the area on the map is."""
+    bare = any(state_of(hop.result) == "clear-bare" for route in result.routes for hop in route.hops)
     part = "" if result.area is None or result.area.exact else ", by the sweep"
-    return f"both ends clear from here with a {result.request.mast_m:g} m mast{part}"
+    return (
+        f"both ends clear from here with a {result.request.mast_m:g} m mast{', on bare ground' if bare else ''}{part}"
+    )
