@@ -20,6 +20,8 @@ MOST_BYTES = 400_000
 MOST_SHEETS, SHEETS_OF_A_STREET = 4, 3
 """What a link may take on paper: the longest of the sample, and one across a street."""
 STREET = 3
+PAPER_PX = 703
+"""A4 less its margins, at 96 pixels an inch."""
 KINDS = ["index", "sea link", "hidden link", "crew sheet", "antenna"]
 
 pytestmark = pytest.mark.browser
@@ -127,6 +129,10 @@ def test_the_decision_stands_above_the_fold_and_a_link_takes_few_sheets(sample, 
         bottom, top = page.evaluate("""() => ["section.decision", "figure.drawing"].map(
           (name, index) => document.querySelector(name).getBoundingClientRect()[index ? "top" : "bottom"])""")
         assert bottom < top < 720, path.name
+        # Wider than the sheet, a browser would shrink all of it: few sheets, but nobody could read them.
+        page.set_viewport_size({"width": PAPER_PX, "height": 1040})
+        page.emulate_media(media="print")
+        assert page.evaluate("() => document.documentElement.scrollWidth") <= PAPER_PX, path.name
         sheets.append(len(re.findall(rb"/Type\s*/Page\b", page.pdf(prefer_css_page_size=True))))
         page.context.close()
     assert max(sheets) <= MOST_SHEETS, sheets
