@@ -31,7 +31,7 @@ Index = NDArray[np.int64]
 
 NEAR_SAMPLES: Final = 131_072
 """Samples of pairs that are worked on at once: their arrays stay near the processor's caches."""
-BLOCK_SAMPLES: Final = 2_000_000
+BLOCK_SAMPLES: Final = 1_000_000
 """Samples of a block: what a thread takes at a time."""
 LONGEST_STEPS: Final = 30_000
 """Paths of more steps are taken one by one."""

@@ -62,10 +62,9 @@ def rays_over(
     np.subtract(above, clear, out=clear)
     normalised = clearance.normalised_clearance(clear, radius)
     if not settings.criteria and settings.preset == "p530-temperate":
-        extended = are_extended(distance, normalised[1])
-        _, fraction = rule_numbers(
-            settings.preset, distance_m=profiles.length_m, median_k=settings.median_k, extended=extended
-        )
+        # The least of P.530's second rule is for an isolated obstruction; rule_numbers gave that for an extended one.
+        _, isolated = rule_numbers(settings.preset, distance_m=profiles.length_m[:1], extended=False)
+        fraction[1] = np.where(are_extended(distance, normalised[1]), fraction[1], isolated[1, 0])
     margin = fraction[..., np.newaxis] * radius
     np.subtract(clear, margin, out=margin)
     return Rays(
