@@ -1,6 +1,6 @@
 """Ten planted faults: the first cause named is the planted one in at least eight, and no wrong one is ever said to fit well.
 
-Seeds 1 to 3 served for choosing the weights of causes; the others did not.
+Seeds 1 to 3 and 11 served, on these links, for choosing the weights of causes; seeds 21 to 23 were not looked at before.
 """
 
 import pytest
