@@ -46,3 +46,17 @@ def test_the_first_use_of_getting_started_runs(
     monkeypatch.chdir(ROOT)
     assert main.run([*shlex.split(shown[1].replace("\\\n", " ")), "--no-save"]) == 0
     assert "BARE GROUND" not in capsys.readouterr().out
+
+
+@pytest.mark.parametrize("command", ["candidates", "around"])
+def test_what_is_shown_of_many_links_is_printed(
+    command: str, tmp_path: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
+) -> None:
+    text = (ROOT / "README.md").read_text(encoding="utf-8")
+    shown = re.search(rf"```sh\n\.venv/bin/fellspan ({command} .*?)```\n\n((?: {{4}}[^\n]*\n|\n)+)", text, re.DOTALL)
+    assert shown is not None
+    words = shlex.split(shown[1].replace("\\\n", " "))
+    words[words.index("--out") + 1] = str(tmp_path / "out")
+    monkeypatch.chdir(ROOT)
+    assert main.run(words) == 0
+    assert re.sub(r"(?m)^ {4}", "", shown[2]).strip() in capsys.readouterr().out
