@@ -15,6 +15,7 @@ from fellspan.errors import UsageError
 from fellspan.planning.inputs import Study
 from fellspan.planning.plan import StudyPlan
 from fellspan.planning.planner import plan_study
+from fellspan.planning.processes import processes_at_hand
 
 _BAR = 20
 
@@ -26,7 +27,14 @@ def run_plan(study: Study, *, horizons: bool = False, equipment: bool = False, r
     """
     progress = progress_line("planning")
     try:
-        return plan_study(study, progress=progress, horizons=horizons, equipment=equipment, what_if=report)
+        return plan_study(
+            study,
+            progress=progress,
+            horizons=horizons,
+            equipment=equipment,
+            what_if=report,
+            processes=processes_at_hand(),
+        )
     finally:
         clear_progress(progress)
 
@@ -62,7 +70,7 @@ def write_report(plan: StudyPlan, out: Path, *, quiet: bool) -> None:
 
     progress = progress_line("writing")
     try:
-        names = write_folder(plan, out, progress=progress)
+        names = write_folder(plan, out, progress=progress, processes=processes_at_hand())
     finally:
         clear_progress(progress)
     if not quiet:

@@ -42,7 +42,9 @@ _TABLES: Final = ("links.csv", "links.geojson", "links.kml", "survey.csv", "surv
 _PLAIN_NAME = re.compile(r"[A-Za-z0-9][A-Za-z0-9._-]*")
 
 
-def write_folder(plan: StudyPlan, out_dir: str | Path, *, progress: Progress | None = None) -> tuple[str, ...]:
+def write_folder(
+    plan: StudyPlan, out_dir: str | Path, *, progress: Progress | None = None, processes: int = 1
+) -> tuple[str, ...]:
     """Write the report of a plan into a folder, which is made where it does not exist.
 
     Returns
@@ -57,15 +59,15 @@ def write_folder(plan: StudyPlan, out_dir: str | Path, *, progress: Progress | N
         Fellspan did not write. An old report is then still there, unchanged.
     """
     folder = Path(out_dir)
-    texts = report_files(plan, progress=progress)
+    texts = report_files(plan, progress=progress, processes=processes)
     write_files(texts, folder)
     return tuple(texts)
 
 
 def report_files(
-    plan: StudyPlan, *, progress: Progress | None = None, relays: RelayResult | None = None
+    plan: StudyPlan, *, progress: Progress | None = None, relays: RelayResult | None = None, processes: int = 1
 ) -> dict[str, str]:
-    """File names and texts of the whole report, `results.json` last; `relays` as `report.pages.render_pages` takes it."""
+    """File names and texts of the whole report, `results.json` last; the rest as `report.pages.render_pages` takes it."""
     from fellspan.report.drawing_files import drawing_files
     from fellspan.report.pages import render_pages
 
@@ -90,7 +92,9 @@ def report_files(
         if progress is not None:
             progress(done, total, name)
 
-    texts = render_pages(plan, progress=lambda done, _, name: tell(min(done, pages), name), relays=relays)
+    texts = render_pages(
+        plan, progress=lambda done, _, name: tell(min(done, pages), name), relays=relays, processes=processes
+    )
     for page, text in list(texts.items()):
         if page.startswith("link-"):
             texts |= drawing_files(page, text)

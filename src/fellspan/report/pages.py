@@ -1,6 +1,6 @@
 """The pages of a plan: an overview with the map, and one page a link. Shows the plan and computes none of it."""
 
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Iterator, Sequence
 from contextlib import closing
 from dataclasses import dataclass, fields
 from html import escape
@@ -18,6 +18,7 @@ from fellspan.links.safety import safety_lines
 from fellspan.links.words import State, is_two_points, state_of
 from fellspan.planning.accepting import as_built_issue
 from fellspan.planning.plan import LinkPlan, StudyPlan
+from fellspan.planning.processes import MANY, shared_work
 from fellspan.planning.relay_result import RelayResult
 from fellspan.report import assets, wording
 from fellspan.report import map_geometry as geometry
@@ -75,14 +76,13 @@ class LinkView:
 
 
 def render_pages(
-    plan: StudyPlan, *, progress: Progress | None = None, relays: RelayResult | None = None
+    plan: StudyPlan, *, progress: Progress | None = None, relays: RelayResult | None = None, processes: int = 1
 ) -> dict[str, str]:
     """File names and HTML texts: `index.html`, then the page and both crew sheets of each link in the order of the study.
 
-    `relays` is the search that the links of the plan come from; the overview then shows it.
+    `relays` is the search that the links of the plan come from; the overview then shows it. `processes` above 1 shares the
+    pages of many links between so many processes; they are the same, byte for byte.
     """
-    templates = _environment()
-    rasters = open_rasters(plan.study.terrain.ground or plan.study.terrain.surface)
     total = len(plan.links) + 1
 
     def tell(done: int, name: str) -> None:
@@ -90,15 +90,40 @@ def render_pages(
             progress(done, total, name)
 
     tell(0, OVERVIEW)
-    with closing(ahead(lambda link: _relief_of(plan, link, rasters), plan.links)) as reliefs:
-        pages = {OVERVIEW: _overview(plan, templates, rasters, relays)}
-        for index, (link, relief) in enumerate(zip(plan.links, reliefs, strict=True)):
-            name = page_name(index, link.result.name)
-            tell(index + 1, name)
-            pages[name] = _link_page(as_built_issue(plan, link), index, link, templates, relief)
-            pages |= _crew_sheets(plan, index, link, templates)
+    desk = _Desk(plan)
+    pages = {OVERVIEW: _overview(plan, desk.templates, desk.rasters, relays)}
+    if processes > 1 and len(plan.links) >= MANY:
+        made = shared_work(_Desk, _Desk.pages_of, plan, count=len(plan.links), processes=processes)
+    else:
+        made = desk.all_pages()
+    for index, texts in enumerate(made):
+        tell(index + 1, next(iter(texts)))
+        pages |= texts
     tell(total, "")
     return pages
+
+
+class _Desk:
+    """What pages are made with: templates and rasters, opened once."""
+
+    def __init__(self, plan: StudyPlan) -> None:
+        self.plan = plan
+        self.templates = _environment()
+        self.rasters = open_rasters(plan.study.terrain.ground or plan.study.terrain.surface)
+
+    def all_pages(self) -> Iterator[dict[str, str]]:
+        """The pages of every link, the reliefs of the next ones shaded meanwhile."""
+        with closing(ahead(lambda link: _relief_of(self.plan, link, self.rasters), self.plan.links)) as reliefs:
+            for index, relief in enumerate(reliefs):
+                yield self.pages_of(index, relief)
+
+    def pages_of(self, index: int, relief: Relief | Literal["to shade"] | None = "to shade") -> dict[str, str]:
+        """The page and both crew sheets of one link."""
+        link = self.plan.links[index]
+        if relief == "to shade":
+            relief = _relief_of(self.plan, link, self.rasters)
+        page = _link_page(as_built_issue(self.plan, link), index, link, self.templates, relief)
+        return {page_name(index, link.result.name): page} | _crew_sheets(self.plan, index, link, self.templates)
 
 
 def _overview(
