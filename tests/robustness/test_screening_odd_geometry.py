@@ -1,0 +1,82 @@
+"""Odd places on odd rasters: whatever hypothesis thinks of, a batch answers as planning does and never ends the run."""
+
+from pathlib import Path
+
+import numpy as np
+import pytest
+import rasterio
+from affine import Affine
+from hypothesis import HealthCheck, given, settings
+from hypothesis import strategies as st
+from made_screening import assert_as_planned, candidates, every_pair, hills, one_by_one
+from pyproj import Transformer
+
+from fellspan.screening.pairs import SiteColumns
+from fellspan.screening.screen import screen_pairs
+from fellspan.terrain.terrain import Terrain
+
+SIZE = (120, 160)
+
+
+def odd_raster(folder: Path, kind: str) -> tuple[Path, Affine, str]:
+    """Rotated, of oblong cells, in degrees across the antimeridian, or in feet far north."""
+    placing = {
+        "rotated": (
+            Affine.translation(474_000, 3_997_000) @ Affine.rotation(-30.0) @ Affine.scale(10.0, -10.0),
+            "EPSG:32623",
+        ),
+        "oblong": (Affine(25.0, 0.0, 474_000, 0.0, -6.0, 3_997_000), "EPSG:32623"),
+        "antimeridian": (Affine(1e-4, 0.0, 179.992, 0.0, -1e-4, -16.0), "EPSG:4326"),
+        "far north": (Affine(12.0, 0.0, 400_000, 0.0, -12.0, 8_900_000), "EPSG:32633"),
+    }
+    transform, crs = placing[kind]
+    file = folder / f"{kind.replace(' ', '_')}.tif"
+    if not file.exists():
+        ground = hills(SIZE, seed=3, height_m=20.0).astype(np.float32)
+        ground[60:64, 80:90] = -9999.0
+        profile = {"driver": "GTiff", "height": SIZE[0], "width": SIZE[1], "count": 1, "dtype": "float32", "crs": crs}
+        with rasterio.open(file, "w", **profile, transform=transform, nodata=-9999.0) as out:
+            out.write(ground, 1)
+    return file, transform, crs
+
+
+@pytest.mark.slow
+@pytest.mark.parametrize("kind", ["rotated", "oblong", "antimeridian", "far north"])
+@settings(max_examples=4, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture], derandomize=True)
+@given(
+    spots=st.lists(
+        st.tuples(st.floats(-4.0, SIZE[1] + 4.0), st.floats(-4.0, SIZE[0] + 4.0), st.floats(0.0, 60.0)),
+        min_size=3,
+        max_size=5,
+    )
+)
+def test_batches_answer_as_planning_does(tmp_path: Path, kind: str, spots: list[tuple[float, float, float]]) -> None:
+    file, transform, crs = odd_raster(tmp_path, kind)
+    column, row, height = np.array(spots).T
+    x, y = (
+        transform.a * column + transform.b * row + transform.c,
+        transform.d * column + transform.e * row + transform.f,
+    )
+    longitude, latitude = Transformer.from_crs(crs, "EPSG:4326", always_xy=True).transform(x, y)
+    longitude = (np.asarray(longitude) + 180.0) % 360.0 - 180.0
+
+    def some(which: slice, letter: str) -> SiteColumns:
+        count = height[which].size
+        return SiteColumns(
+            name=tuple(f"{letter}{number}" for number in range(count)),
+            latitude_deg=np.asarray(latitude)[which],
+            longitude_deg=longitude[which],
+            height_m=height[which],
+            height_reference=np.zeros(count, dtype=np.int8),
+            roof_m=np.full(count, np.nan),
+        )
+
+    made = candidates(some(slice(0, 1), "H"), some(slice(1, None), "P"))
+    hub, place = every_pair(made)
+    with Terrain.open(ground=file) as terrain:
+        found = screen_pairs(made, hub=hub, place=place, terrain=terrain)
+        planned = one_by_one(made, hub, place, terrain)
+    apart = found.status != 2  # planning refuses what stands at one place, in words of its own
+    np.testing.assert_array_equal(planned.status[~apart], 3)
+    if apart.all():
+        assert_as_planned(found, planned)
