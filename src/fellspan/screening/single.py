@@ -105,10 +105,14 @@ def screen_single(candidates: Candidates, columns: Columns, row: int, *, terrain
 
 
 def draw_single(candidates: Candidates, columns: Columns, row: int, *, terrain: Terrain) -> None:
-    """Let draws decide on a row that is filled and clear."""
-    link = link_of(candidates, int(columns.hub[row]), int(columns.sector[row]), int(columns.place[row]))
-    assessment = assess_in_full(link, terrain=terrain, settings=candidates.settings)
-    with_draws(columns, row, link, assessment, candidates.settings)
+    """Let draws decide on a row that is filled and clear; planning has the last word where it cannot even assess it."""
+    try:
+        link = link_of(candidates, int(columns.hub[row]), int(columns.sector[row]), int(columns.place[row]))
+        assessment = assess_in_full(link, terrain=terrain, settings=candidates.settings)
+        with_draws(columns, row, link, assessment, candidates.settings)
+    except FellspanError:
+        # A path along the very edge of a raster lies on it or off it by a micrometre.
+        screen_single(candidates, columns, row, terrain=terrain)
 
 
 def with_draws(columns: Columns, row: int, link: Link, assessment: Assessment, settings: AssessSettings) -> None:
