@@ -76,6 +76,12 @@ def as_built_section(link: LinkPlan) -> AsBuiltView | None:
     )
 
 
+def verdict_words(found: AcceptanceResult) -> str:
+    """The verdict with its sign, for lists of many links."""
+    verdict = _verdict(found)
+    return f"{_SYMBOL[verdict]} {verdict}"
+
+
 def _verdict(found: AcceptanceResult) -> str:
     if found.accepted:
         return "accepted"

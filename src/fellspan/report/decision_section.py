@@ -16,6 +16,8 @@ from fellspan.report import wording
 
 MOST_CHECKS: Final = 3
 _SIGNAL_BEGINS: Final = ("Signal at ", "Available ", "Availability ", "The level is short", "Mean throughput")
+_WATER: Final = ("sea", "Earth bulge over the sea")
+"""What cannot be measured as a top: the names that causes give to open water."""
 _DOUBT_BEGINS: Final = (
     "Basis:",
     "Against 'clear'",
@@ -114,13 +116,17 @@ def _more_changes(link: LinkPlan, growth_years: float) -> list[str]:
     return found + fades[:1]
 
 
+def _to_do(point: SurveyPoint) -> str:
+    return "check high water and both antenna heights" if point.stands_there in _WATER else "measure the top"
+
+
 def _check(point: SurveyPoint, number: int, length_m: float) -> tuple[str, str, str]:
     """Label, place and what it is, and the figure to hold it against."""
     assert point.highest_top_m is not None
     limit = wording.metres(words.down_m(point.highest_top_m))
     place = f"{wording.kilometres(point.from_a_m, length_m=length_m)} km from A: {point.stands_there}"
     if point.spare_m is not None and point.spare_m < 0.0:
-        told = f"in the data {wording.missing(-point.spare_m)} too high, {limit} at most; measure the top"
+        told = f"in the data {wording.missing(-point.spare_m)} too high, {limit} at most; {_to_do(point)}"
     else:
         told = f"top no higher than {limit}, {wording.metres(point.top_m)} in the data"
     return label_of(number, point.rank), place, told

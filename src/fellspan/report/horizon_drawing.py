@@ -263,8 +263,8 @@ def _bearings(seen: Skyline, target: Target, across: Scale) -> list[str]:
     x = _RIGHT
     for name, _ in reversed(BANDS):
         word = _LAYER_WORDS[name]
-        parts.append(svg.label(x, end + 24.0, word, class_="note", anchor="end"))
         x -= 84.0
+        parts.append(svg.label(x, end + 24.0, word, class_="note"))
         parts.append(svg.line(x - 30.0, end + 19.0, x - 6.0, end + 19.0, class_=f"outline outline-{name}"))
         x -= 42.0
     return parts

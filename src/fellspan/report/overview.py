@@ -14,6 +14,7 @@ from fellspan.links.verdicts import USUAL_MAST_M
 from fellspan.links.words import State, state_of
 from fellspan.planning.plan import LinkPlan, StudyPlan
 from fellspan.report import wording
+from fellspan.report.as_built_section import verdict_words
 from fellspan.report.naming import page_name
 from fellspan.report.network import HUB_FROM, STATE_ORDER, Hub, hubs_of
 from fellspan.report.panel_drawing import Panel, draw_panel
@@ -52,6 +53,8 @@ class Row:
     """What neighbours leave of the margin, where they take any."""
     availability: Cell
     build: str
+    built: str
+    """Verdict on the link as built, where it was measured."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -115,6 +118,7 @@ def _row(index: int, link: LinkPlan, left_db: float | None) -> Row:
         left=wording.number(left_db) if left_db is not None and least is not None and least - left_db >= 0.05 else "",
         availability=_availability(result),
         build=_build(link.heights),
+        built="" if link.as_built is None else verdict_words(link.as_built),
     )
 
 

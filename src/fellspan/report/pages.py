@@ -179,7 +179,7 @@ def _link_page(plan: StudyPlan, index: int, link: LinkPlan, templates: Environme
         reflections=reflection_section(link),
         survey=survey_section(link, number=index + 1, growth_years=plan.study.growth_years),
         rests_on=[link.profile.sources[i] for i in sorted(set(link.profile.source.tolist())) if i >= 0],
-        cautions=(*result.cautions, *link.profile.notes, *plan.cautions),
+        cautions=tuple(dict.fromkeys((*result.cautions, *link.profile.notes, *plan.cautions))),
         safety=safety_lines(),
         what_if=what_if_data(plan, link),
         plan_link=link,
