@@ -218,6 +218,12 @@ def _labels(seen: Skyline, across: Scale, up: Scale) -> list[str]:
         x = across.at(offset_deg(bearing, seen.bearing_deg))
         y = min(max(up.at(elevation), _TOP), _TOP + _PLOT)
         start = min(max(x - 4.0, _LEFT), _RIGHT - _LABEL_PX)
+        # Words never stand on the line to the far site: they end left of it where its landmark stands left of it.
+        leftward = x <= axis < start + _LABEL_PX + 4.0
+        if leftward:
+            start = min(x + 4.0, axis - 4.0) - _LABEL_PX
+        elif axis < x < axis + 8.0:
+            start = axis + 4.0
         lane = next((i for i in range(_LANES) if start >= ends[i] + 8.0), None)
         if lane is None:
             continue
@@ -228,7 +234,11 @@ def _labels(seen: Skyline, across: Scale, up: Scale) -> list[str]:
         parts.append(svg.line(x, lane_y + 4.0, x, y, class_="leader"))
         parts.append(svg.el("path", d=f"M{svg.num(x - 4)},{svg.num(y - 6)}h8l-4,6z", class_="summit"))
         full = f"{wording.bearing(bearing)} {what}, {wording.distance(distance_m)}"
-        parts.append(svg.label(start, lane_y, wording.shorten(full, 27), class_="mark", hint=full))
+        words = wording.shorten(full, 27)
+        if leftward:
+            parts.append(svg.label(start + _LABEL_PX, lane_y, words, class_="mark", hint=full, anchor="end"))
+        else:
+            parts.append(svg.label(start, lane_y, words, class_="mark", hint=full))
     return parts
 
 
