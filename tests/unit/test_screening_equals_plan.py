@@ -1,5 +1,6 @@
 """A pair's result equals its plan result: the arrays of screening against planning each pair alone, over many terrains."""
 
+from concurrent.futures import ThreadPoolExecutor
 from dataclasses import replace
 from pathlib import Path
 
@@ -306,3 +307,13 @@ def test_a_raster_far_larger_than_memory_costs_what_paths_cross(tmp_path: Path) 
         found = compared(made, terrain)
         assert terrain.many.held_bytes < 20e6
     assert (found.status == 0).all()
+
+
+def test_runs_that_share_a_terrain_do_not_disturb_each_other(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr(many, "MOST_BYTES", 0)
+    monkeypatch.setattr(batch, "NEAR_SAMPLES", 3000)
+    made = candidates(sites("H", 2, seed=48, height_m=30.0), sites("P", 30, seed=49))
+    hub, place = every_pair(made)
+    with Terrain.open(ground=ground_file(tmp_path), cover=trees(tmp_path)) as terrain, ThreadPoolExecutor(3) as pool:
+        found = list(pool.map(lambda _: screen_pairs(made, hub=hub, place=place, terrain=terrain), range(3)))
+    assert all(same_bytes(found[0], one) for one in found[1:])

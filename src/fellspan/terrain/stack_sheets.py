@@ -4,6 +4,7 @@ Takes the columns and rows of whole batches; knows no geodesics and no obstacles
 rasters may disagree too much are named, for the caller to look at one by one.
 """
 
+import threading
 from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Final, Protocol
@@ -70,32 +71,36 @@ class Sampled:
 
 
 class StackSheets:
-    """The sheets of a stack, made when first asked for. Safe to use from several threads once `over` has returned."""
+    """The sheets of a stack, made when first asked for. Safe to use from several threads."""
 
     def __init__(self, stack: RasterStack) -> None:
         self.stack = stack
         self._sheets: dict[int, Sheet] = {}
         self._sizes: dict[int, CellSizes] = {}
+        self._lock = threading.Lock()
 
     def sheet(self, number: int) -> Sheet | None:
         """The sheet of a file; None where the raster is too large for one."""
         file = self.stack.files[number]
         if not Sheet.fits(file):
             return None
-        if number not in self._sheets:
-            self._sheets[number] = Sheet(file, self.stack.dataset_of(number))
-        return self._sheets[number]
+        with self._lock:
+            if number not in self._sheets:
+                self._sheets[number] = Sheet(file, self.stack.dataset_of(number))
+            return self._sheets[number]
 
     def sizes(self, number: int) -> CellSizes:
         """How large the cells of a file are."""
-        if number not in self._sizes:
-            self._sizes[number] = CellSizes(self.stack.files[number])
-        return self._sizes[number]
+        with self._lock:
+            if number not in self._sizes:
+                self._sizes[number] = CellSizes(self.stack.files[number])
+            return self._sizes[number]
 
     @property
     def sheets(self) -> tuple[Sheet, ...]:
         """Those made so far."""
-        return tuple(self._sheets.values())
+        with self._lock:
+            return tuple(self._sheets.values())
 
     def over(self, paths: Paths) -> "PathsOnStack":
         """A batch of paths laid on the stack."""

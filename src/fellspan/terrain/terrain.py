@@ -4,6 +4,7 @@ Holds what was opened and says what is missing in words; `assemble` works out th
 """
 
 import math
+import threading
 from collections.abc import Iterator, Sequence
 from dataclasses import replace
 from types import TracebackType
@@ -36,6 +37,7 @@ class Terrain:
         self._datum = vertical_datum
         self._notes = notes
         self._many: ManyPaths | None = None
+        self._making = threading.Lock()
 
     @classmethod
     def open(
@@ -99,9 +101,10 @@ class Terrain:
     @property
     def many(self) -> ManyPaths:
         """The rasters as sheets of cells in memory, kept for batch after batch of paths."""
-        if self._many is None:
-            self._many = ManyPaths(self._layers)
-        return self._many
+        with self._making:
+            if self._many is None:
+                self._many = ManyPaths(self._layers)
+            return self._many
 
     @property
     def notes(self) -> tuple[str, ...]:
