@@ -46,7 +46,7 @@ def pages(monkeypatch: pytest.MonkeyPatch) -> None:
     """Stands in for the pages, which are no business of the folder's."""
     module = types.ModuleType("fellspan.report.pages")
 
-    def render_pages(plan: StudyPlan, *, progress: Progress | None = None) -> dict[str, str]:
+    def render_pages(plan: StudyPlan, *, progress: Progress | None = None, **more: object) -> dict[str, str]:
         if progress is not None:
             progress(0, 1 + len(plan.links), "index.html")
         return {"index.html": "<p>", **{f"link-{i:02d}.html": "" for i, _ in enumerate(plan.links)}}

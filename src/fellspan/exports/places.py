@@ -51,18 +51,14 @@ def places(linked: LinkPlan, from_m: float, to_m: float) -> tuple[Place, ...]:
     picked = inside[:: max(1, -(-inside.size // (MOST_VERTICES - 2)))]
     ray = levels.available_m - levels.bulge_m[linked.result.governing]
     distances = [from_m] if to_m <= from_m else [from_m, *picked.tolist(), to_m]
-    made = []
-    for distance in distances:
-        longitude, latitude = position_at(profile, distance)
-        made.append(
-            Place(
-                distance_m=distance,
-                latitude_deg=latitude,
-                longitude_deg=longitude,
-                ray_amsl_m=float(np.interp(distance, levels.distance_m, ray)),
-            )
-        )
-    return tuple(made)
+    latitude = np.interp(distances, profile.distance_m, profile.latitude_deg)
+    longitude = np.interp(distances, profile.distance_m, np.unwrap(profile.longitude_deg, period=360.0))
+    rays = np.interp(distances, levels.distance_m, ray)
+    columns = distances, latitude.tolist(), ((longitude + 180.0) % 360.0 - 180.0).tolist(), rays.tolist()
+    return tuple(
+        Place(distance_m=distance, latitude_deg=north, longitude_deg=east, ray_amsl_m=level)
+        for distance, north, east, level in zip(*columns, strict=True)
+    )
 
 
 def path_places(linked: LinkPlan) -> tuple[Place, ...]:

@@ -125,10 +125,20 @@ def _failure(failure: LinkFailure) -> dict[str, Any]:
     }
 
 
+@cache
+def _names(kind: Any) -> tuple[str, ...]:
+    return tuple(field.name for field in dataclasses.fields(kind))
+
+
 def plain_of(value: Any) -> Any:
     """Dataclasses to dictionaries, tuples to lists, numbers to Python's own, what is not finite to None."""
+    kind: Any = type(value)
+    if kind is float:
+        return value + 0.0 if math.isfinite(value) else None
+    if kind is str or kind is int:
+        return value
     if dataclasses.is_dataclass(value) and not isinstance(value, type):
-        return {field.name: plain_of(getattr(value, field.name)) for field in dataclasses.fields(value)}
+        return {name: plain_of(getattr(value, name)) for name in _names(kind)}
     if isinstance(value, (tuple, list)):
         return [plain_of(item) for item in value]
     if isinstance(value, bool) or value is None:

@@ -3,7 +3,7 @@
 Columns carry their unit. Text from users cannot start a formula; numbers stay numbers.
 """
 
-from fellspan.exports.text import Cell, csv_text, rounded
+from fellspan.exports.text import Cell, csv_text, number_cells, rounded, text_cells
 from fellspan.links.result import CriterionResult, EndResult, LinkResult
 from fellspan.links.words import STATE_WORDS, state_of
 from fellspan.planning.plan import LinkFailure, LinkPlan, StudyPlan
@@ -129,24 +129,26 @@ def profile_csv(linked: LinkPlan) -> str:
     ]
     for criterion in linked.result.clearance:
         header += [f"bulge_m ({criterion.criterion})", f"need_m ({criterion.criterion})"]
-    columns: list[list[Cell]] = [
-        [rounded(value) for value in profile.distance_m.tolist()],
-        [rounded(value, 8) for value in profile.latitude_deg.tolist()],
-        [rounded(value, 8) for value in profile.longitude_deg.tolist()],
-        [rounded(value) for value in profile.ground_m.tolist()],
-        [rounded(value) for value in profile.cover_m.tolist()],
-        [COVER_KINDS[code] for code in profile.cover_kind.tolist()],
-        [profile.obstacles[code].name if code >= 0 else None for code in profile.obstacle_index.tolist()],
-        [rounded(value) for value in levels.surface_m.tolist()],
-        [rounded(value) for value in profile.sigma_m.tolist()],
-        [MEASURED_WORDS[code] for code in profile.measured.tolist()],
-        [profile.sources[code] if code >= 0 else None for code in profile.source.tolist()],
-        [rounded(value) for value in levels.available_m.tolist()],
-        [rounded(value) for value in levels.fresnel_radius_m.tolist()],
+    obstacles = [*(obstacle.name for obstacle in profile.obstacles), None]
+    sources = [*profile.sources, None]
+    columns = [
+        number_cells(profile.distance_m),
+        number_cells(profile.latitude_deg, 8),
+        number_cells(profile.longitude_deg, 8),
+        number_cells(profile.ground_m),
+        number_cells(profile.cover_m),
+        text_cells(COVER_KINDS, profile.cover_kind),
+        text_cells(obstacles, profile.obstacle_index),
+        number_cells(levels.surface_m),
+        number_cells(profile.sigma_m),
+        text_cells(MEASURED_WORDS, profile.measured),
+        text_cells(sources, profile.source),
+        number_cells(levels.available_m),
+        number_cells(levels.fresnel_radius_m),
     ]
     for bulge, need in zip(levels.bulge_m, levels.need_m, strict=True):
-        columns += [[rounded(value) for value in bulge.tolist()], [rounded(value) for value in need.tolist()]]
-    return csv_text(header, zip(*columns, strict=True))
+        columns += [number_cells(bulge), number_cells(need)]
+    return csv_text(header, ()) + "".join(",".join(row) + "\n" for row in zip(*columns, strict=True))
 
 
 def _end_cells(end: EndResult) -> list[Cell]:

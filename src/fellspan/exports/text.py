@@ -9,6 +9,10 @@ import io
 import math
 import re
 from collections.abc import Iterable, Sequence
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
 
 _FORMULA_STARTS = ("=", "+", "-", "@", "\t", "\r", "\n", "＝", "＋", "－", "＠")
 _NOT_IN_XML = re.compile("[\x00-\x08\x0b\x0c\x0e-\x1f\x7f\ud800-\udfff￾￿]")
@@ -59,3 +63,22 @@ def csv_text(header: Sequence[str], rows: Iterable[Sequence[Cell]]) -> str:
     writer.writerow([csv_cell(name) for name in header])
     writer.writerows([csv_cell(cell) for cell in row] for row in rows)
     return buffer.getvalue()
+
+
+def number_cells(values: NDArray[np.float64], digits: int = 3) -> list[str]:
+    """A column of rounded numbers as cells, ready to be joined; empty where not finite, never a negative zero."""
+    rounded_values = (np.round(values, digits) + 0.0).tolist()
+    if np.isfinite(values).all():
+        return [repr(value) for value in rounded_values]
+    return [repr(value) if math.isfinite(value) else "" for value in rounded_values]
+
+
+def text_cells(words: Sequence[str | None], codes: NDArray[np.integer[Any]]) -> list[str]:
+    """A column of texts that `codes` number, as cells with their quotes, ready to be joined; -1 counts from the end."""
+    cells = []
+    for word in words:
+        buffer = io.StringIO()
+        # A second, empty cell: one alone would be quoted where it is empty.
+        csv.writer(buffer, lineterminator="").writerow([csv_cell(word), ""])
+        cells.append(buffer.getvalue()[:-1])
+    return [cells[code] for code in codes.tolist()]
