@@ -9,6 +9,7 @@ from whatif_reading import typed
 
 from fellspan.design.as_built import AsBuilt, BuiltEnd, Reading
 from fellspan.planning.accepting import accept_link, with_acceptance
+from fellspan.planning.horizons import with_horizons
 from fellspan.planning.planner import open_terrain
 from fellspan.report.overview import overview_view
 from fellspan.report.pages import render_pages
@@ -116,4 +117,18 @@ def test_a_changed_drawing_is_for_everyone(sample, browser, axe, width, scheme):
     assert page.evaluate(CONTRAST)["pale"] == []
     page.evaluate(axe)
     assert page.evaluate(AXE_RUN) == []
+    page.context.close()
+
+
+@pytest.mark.browser
+def test_a_phone_shows_the_far_site_in_the_horizon_first(sample, browser, tmp_path):
+    with open_terrain(sample.plan.study) as terrain:
+        link = with_horizons(sample.plan.links[SEA], terrain)
+    texts = render_pages(replace(sample.plan, links=(link,)))
+    name = next(name for name in texts if name.startswith("link-"))
+    (tmp_path / name).write_text(texts[name], encoding="utf-8")
+    page = _open(browser, tmp_path / name, 390, "light")
+    for at in range(2):
+        box = page.locator(".horizons svg .far-site").nth(at).bounding_box()
+        assert 0 < box["x"] < 390 - box["width"]
     page.context.close()

@@ -19,6 +19,7 @@ from fellspan.links.result import LinkResult
 from fellspan.links.site import Antenna
 from fellspan.planning.plan import StudyPlan
 from fellspan.planning.planner import plan_study
+from fellspan.report.overview import overview_view
 from fellspan.report.pages import render_pages
 from fellspan.report.workings_section import value_words
 from fellspan.study.reading import load_study
@@ -64,9 +65,12 @@ def test_all_views_tell_the_same_verdict_and_availability(plan: StudyPlan, pages
         assert "99.99 % of the year in each direction: not met" in told
         assert "2.09 hours out, mostly by multipath" in told
         assert "multipath P.530-17 detailed" in told
-    assert "Signal marginal · available 99.976 %" in pages["index.html"]
-    through = pages["index.html"].split("Signal through an obstruction")[1]
-    assert not through.startswith(" · available")
+    rows = {row.result.name: row for row in overview_view(plan).rows}
+    assert (rows[SEA].signal.text, rows[SEA].availability.text) == ("marginal", "99.976 %")
+    assert (rows[HARBOUR].signal.text, rows[HARBOUR].availability.text) == ("through an obstruction", "–")
+    for row in (rows[SEA], rows[HARBOUR]):
+        cells = (row.signal, row.distance, row.spare, row.confidence, row.levels, row.margin, row.availability)
+        assert " ".join(cell.text for cell in cells) in pages["index.html"]
 
 
 def test_the_budget_on_the_page_closes(plan: StudyPlan) -> None:

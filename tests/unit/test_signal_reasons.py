@@ -10,8 +10,8 @@ from signal_links import CLIMATE, over, radio, result_of, signal_of, working
 
 from fellspan.climate import assembling
 from fellspan.climate.given import GivenClimate
-from fellspan.links.result import LinkResult
-from fellspan.links.signal_verdict import TREES
+from fellspan.links.result import AtEnds, LinkResult
+from fellspan.links.signal_verdict import TREES, judged
 from fellspan.links.site import Antenna, Channel, Link, NoiseFloor
 from fellspan.links.verdicts import signal_verdict
 
@@ -33,16 +33,23 @@ def test_a_verdict_that_nothing_holds_down_says_so() -> None:
     assert reason(replace(link, radio=radio(power_dbm=None))) == (None, "")
 
 
-def test_a_short_margin_is_told_in_numbers_rounded_down() -> None:
+@pytest.mark.parametrize("tenths", [0.02, 0.08])
+def test_a_margin_far_short_is_told_as_the_sentence_of_the_level_tells_it(tenths: float) -> None:
+    margin = AtEnds(at_a=-30.0 - tenths, at_b=-29.0)
+    assert judged(margin, wanted_db=10.0, trees=False, holds=())[1] == f"margin {margin.at_a:.1f} dB, 10 dB wanted"
+
+
+def test_a_short_margin_is_never_told_as_what_is_wanted() -> None:
     link = over(profile_of(20e3))
     result = result_of(link, profile_of(20e3))
     assert result.margin_db.at_a is not None
     least = min(result.margin_db.at_a, result.margin_db.at_b or math.inf)
     verdict, why = reason(replace(link, wanted_margin_db=least + 0.01))
-    shown = math.floor(10.0 * least) / 10.0
     assert verdict == "marginal"
-    assert why == f"margin {shown:.1f} dB, {least + 0.01:g} dB wanted"
-    assert float(why.split()[1]) < least + 0.01  # never shown as what is wanted
+    assert why.endswith(f" dB, {least + 0.01:g} dB wanted")
+    assert least - 0.1 < float(why.split()[1]) < least + 0.01
+    _, why = judged(AtEnds(at_a=9.97, at_b=12.0), wanted_db=10.0, trees=False, holds=())
+    assert why == "margin 9.9 dB, 10 dB wanted"
 
 
 def test_trees_in_the_zone_are_the_reason_where_the_margin_is_ample() -> None:

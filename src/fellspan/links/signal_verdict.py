@@ -84,7 +84,9 @@ def judged(
     if by_margin is None or margin_db.at_a is None or margin_db.at_b is None:
         return None, ""
     least = min(margin_db.at_a, margin_db.at_b)
-    short = Hold(verdict=by_margin, why=f"margin {math.floor(10.0 * least) / 10.0:.1f} dB, {wanted_db:g} dB wanted")
+    # As everywhere else, but never as what is wanted.
+    shown = round(least, 1) if round(least, 1) < wanted_db else math.floor(10.0 * least) / 10.0
+    short = Hold(verdict=by_margin, why=f"margin {shown:.1f} dB, {wanted_db:g} dB wanted")
     all_of_them = (*holds, short, *((Hold(verdict="marginal", why=TREES),) if trees else ()))
     verdict = max((hold.verdict for hold in all_of_them), key=BETTER_TO_WORSE.index)
     if verdict == "meets":

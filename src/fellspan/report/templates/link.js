@@ -1,4 +1,4 @@
-// Opens the key plan to the full window and closes it again.
+// Opens the key plan to the full window and closes it again; shows wide sketches from their middle, where the far site is.
 (function () {
   "use strict";
   var plan = document.getElementById("key-plan"), button = plan.querySelector("[data-map=open]"), map = fellspanMap.map;
@@ -12,6 +12,7 @@
     fellspanMap.fit(fellspanMap.all);
     fellspanMap.declutter();
   }
+  document.querySelectorAll(".horizons .roll").forEach(function (roll) { roll.scrollLeft = (roll.scrollWidth - roll.clientWidth) / 2; });
   button.addEventListener("click", function () { toggle(!plan.classList.contains("open")); });
   document.addEventListener("keydown", function (event) {
     if (event.key === "Escape" && plan.classList.contains("open")) { toggle(false); button.focus(); }
