@@ -82,6 +82,7 @@ def test_the_verdict_as_built_stands_over_that_of_the_plan(pages, built, browser
     assert page.evaluate("() => document.querySelector('#as-built').getBoundingClientRect().top") < 450
     page.emulate_media(media="print")
     assert head.is_visible()
+    assert "−0.1°" in page.locator("#as-built").inner_text(), "figures as everywhere on the page"
     page.context.close()
 
 

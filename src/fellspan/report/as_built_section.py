@@ -1,5 +1,6 @@
 """The section of a link's page on what a crew measured: levels, causes, what to do, what was built. Computes nothing."""
 
+import re
 from dataclasses import dataclass
 from typing import Final
 
@@ -16,6 +17,8 @@ FIT_WORDS: Final = {
     "possible": "possible",
     "cannot be told apart": "possible, and like others here",
 }
+_MINUS: Final = re.compile(r"(?<![\w.-])-(?=\d)")
+_DEGREES: Final = re.compile(r"(?<=\d) deg\b")
 Cells = tuple[str, ...]
 
 
@@ -67,7 +70,11 @@ def as_built_section(link: LinkPlan) -> AsBuiltView | None:
         levels=tuple(_level(one) for one in found.directions),
         level_notes=tuple(f"{one.direction}: {note}." for one in found.directions for note in _notes(one)),
         built=tuple(
-            ((row.end, capital(row.what), row.planned, row.measured, row.difference), row.differs, row.note)
+            (
+                (row.end, capital(row.what), *(_figures(cell) for cell in (row.planned, row.measured, row.difference))),
+                row.differs,
+                row.note,
+            )
             for row in found.built
         ),
         causes=tuple(_cause(cause) for cause in found.causes),
@@ -123,6 +130,11 @@ def _notes(one: DirectionCheck) -> list[str]:
             f"{one.readings} readings, {wording.number(one.swing_db)} dB between the highest and the lowest time"
         )
     return notes
+
+
+def _figures(words: str) -> str:
+    """Numbers of the terminal's words as pages write them; names stay as they are."""
+    return _DEGREES.sub("°", _MINUS.sub("−", words))
 
 
 def _dbm(value: float | None) -> str:
