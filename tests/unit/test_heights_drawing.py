@@ -42,3 +42,23 @@ def test_every_pair_to_build_stands_right_of_and_above_the_exact_edge() -> None:
     confident = found.boundary_confident
     assert [a for a, _ in confident] == sorted(a for a, _ in confident)
     assert [b for _, b in confident] == sorted((b for _, b in confident), reverse=True)
+
+
+@pytest.mark.parametrize("found", [heights(), heights(14.0), heights(22.0), heights(40.0)])
+def test_words_beside_the_marks_meet_neither_each_other_nor_other_marks(found: HeightsResult) -> None:
+    drawn = ET.fromstring(draw_heights(found, uid="h", names=("West", "East")))
+    boxes = []
+    for text in drawn.findall(".//{*}text[@class='note']"):
+        x, y, width = float(text.get("x", "")), float(text.get("y", "")), 5.5 * len(text.text or "")
+        left = x - width if text.get("text-anchor") == "end" else x
+        boxes.append((left, y - 9.0, left + width, y + 2.0))
+        assert left >= 54.0 - 1.0
+        assert left + width <= 504.0 + 1.0
+    marks = [(float(one.get("cx", "")), float(one.get("cy", ""))) for one in drawn.findall(".//{*}circle")]
+    assert len(boxes) == len(marks) >= 2
+    for index, box in enumerate(boxes):
+        assert not any(box[0] < x < box[2] and box[1] < y < box[3] for x, y in marks)
+        assert not any(
+            box[0] < other[2] and other[0] < box[2] and box[1] < other[3] and other[1] < box[3]
+            for other in boxes[index + 1 :]
+        )

@@ -16,6 +16,11 @@ _MOST_M: Final = 120.0
 """Pairs beyond this are told in the table alone: they would flatten the part that people can build."""
 _MOST_STEPS: Final = 45
 
+_LETTER_PX: Final = 6.4
+"""Width that a letter of the words beside a mark takes at most, on average."""
+
+Box = tuple[float, float, float, float]
+"""Left, top, right, bottom."""
 Corners = tuple[tuple[float, float], ...]
 
 
@@ -126,22 +131,41 @@ def _marks(heights: HeightsResult, across: Scale, up: Scale) -> list[str]:
     for option in heights.options:
         if option.build is not None and _fits(option, across, up):
             words.setdefault((option.build.a_m, option.build.b_m), []).append(HEIGHT_WORDS[option.kind].split(",")[0])
+    marks = [*words.items(), ((heights.planned.a_m, heights.planned.b_m), ["planned"])]
+    taken = [(across.at(a) - 6.0, up.at(b) - 6.0, across.at(a) + 6.0, up.at(b) + 6.0) for (a, b), _ in marks]
     parts = []
-    used: list[float] = []
-    planned = (heights.planned.a_m, heights.planned.b_m)
-    for (a, b), named in [*words.items(), (planned, ["planned"])]:
+    for (a, b), named in marks:
         x, y = across.at(a), up.at(b)
         mark = "planned-pair" if named == ["planned"] else "built-pair"
         parts.append(svg.el("circle", cx=x, cy=y, r=4.5, class_=mark))
-        text_y = y - 8.0
-        while any(abs(text_y - other) < 14.0 for other in used) and text_y > _TOP + 14.0:
-            text_y -= 14.0
-        used.append(text_y)
-        anchor = "end" if x > (_LEFT + _RIGHT) / 2.0 else "start"
-        shift = -8.0 if anchor == "end" else 8.0
         shown = f"{', '.join(named)}: {a:.4g}, {b:.4g}"
-        parts.append(svg.label(x + shift, text_y, shown, class_="note", anchor=anchor))
+        box, anchor = _free(x, y, _LETTER_PX * len(shown), taken)
+        taken.append(box)
+        parts.append(
+            svg.label(box[0] if anchor == "start" else box[2], box[3] - 3.0, shown, class_="note", anchor=anchor)
+        )
     return parts
+
+
+def _free(x: float, y: float, width: float, taken: list[Box]) -> tuple[Box, str]:
+    """Where words stand beside their mark: the nearest place inside the frame that meets neither words nor marks."""
+    right_first = x <= (_LEFT + _RIGHT) / 2.0
+    found: list[tuple[Box, str]] = []
+    for down in (4.0, -8.0, 16.0, -20.0, 28.0, -32.0, 40.0, -44.0):
+        for right in (right_first, not right_first):
+            start = x + 8.0 if right else x - 8.0 - width
+            box = (start, y + down - 10.0, start + width, y + down + 3.0)
+            if box[0] >= _LEFT and box[2] <= _RIGHT and box[1] >= _TOP and box[3] <= _BOTTOM:
+                found.append((box, "start" if right else "end"))
+    # Words too long for either side stand over or under their mark.
+    start = max(min(x - 0.5 * width, _RIGHT - width), _LEFT)
+    found += [((start, y + down - 10.0, start + width, y + down + 3.0), "start") for down in (-12.0, 20.0, -26.0, 34.0)]
+    clear = [one for one in found if not any(_meet(one[0], other) for other in taken)]
+    return (clear or found)[0]
+
+
+def _meet(one: Box, other: Box) -> bool:
+    return one[0] < other[2] and other[0] < one[2] and one[1] < other[3] and other[1] < one[3]
 
 
 def _fits(option: HeightOption, across: Scale, up: Scale) -> bool:
