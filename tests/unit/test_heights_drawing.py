@@ -1,6 +1,7 @@
 """The trade-off chart: readable XML, every pair in words, no coordinates out of hand, hostile names kept as text."""
 
 import xml.etree.ElementTree as ET
+from dataclasses import replace
 
 import pytest
 from made_profiles import link_of, obstacle, profile_of
@@ -44,7 +45,22 @@ def test_every_pair_to_build_stands_right_of_and_above_the_exact_edge() -> None:
     assert [b for _, b in confident] == sorted((b for _, b in confident), reverse=True)
 
 
-@pytest.mark.parametrize("found", [heights(), heights(14.0), heights(22.0), heights(40.0)])
+def with_pairs(planned: tuple[float, float], *pairs: tuple[float, float]) -> HeightsResult:
+    """A result of which the pairs to build are these, in the order of its options."""
+    found = heights()
+    assert len(found.options) == len(pairs)
+    options = tuple(
+        replace(option, build=replace(found.planned, a_m=a, b_m=b))
+        for option, (a, b) in zip(found.options, pairs, strict=True)
+    )
+    return replace(found, planned=replace(found.planned, a_m=planned[0], b_m=planned[1]), options=options)
+
+
+CROWDED = with_pairs((5, 10), (4, 10), (5, 6), (6, 6), (4, 9), (8, 1))
+CLOSE = with_pairs((8, 8), (16, 8), (8, 18), (13, 13), (13, 13), (15, 9))
+
+
+@pytest.mark.parametrize("found", [heights(), heights(22.0), CROWDED, CLOSE])
 def test_words_beside_the_marks_meet_neither_each_other_nor_other_marks(found: HeightsResult) -> None:
     drawn = ET.fromstring(draw_heights(found, uid="h", names=("West", "East")))
     boxes = []
