@@ -16,7 +16,7 @@ from fellspan.links.site import Link, Site
 from fellspan.planning.inputs import Study
 from fellspan.planning.planner import settings_of
 from fellspan.planning.relay_cells import Cells, Ground, cells_between
-from fellspan.planning.relay_hops import HopColumns, screen_hop
+from fellspan.planning.relay_hops import HopColumns, affordable, screen_hop
 from fellspan.terrain.terrain import Terrain
 
 OUTER: Final = 1500
@@ -48,7 +48,9 @@ def chains_of_two(
         ground = Ground(study=study, link=link, ends=(site,), hop_m=hop_m, mast_m=mast_m, area=area, terrain=terrain)
         cells = cells_between(ground)
         # High ground sees far: of each block the highest cell stands for it.
-        cells = cells.chosen(thinned(cells.ground_m, cells.row, cells.column, most=OUTER)) if cells.row.size else cells
+        if cells.row.size:
+            most = affordable((site,), cells.latitude_deg, cells.longitude_deg, terrain, most=OUTER)
+            cells = cells.chosen(thinned(cells.ground_m, cells.row, cells.column, most=most))
         hop = screen_hop(
             link,
             end="a" if end == "a" else "b",

@@ -32,6 +32,8 @@ End = Literal["a", "b"]
 Progress = Callable[[int, int, str], None]
 CHUNK: Final = 4096
 """Pairs in one call of the engine; keeps memory level and the progress moving."""
+ONE_BY_ONE: Final = 1000
+"""Most hops of one end that are taken one by one: half a minute."""
 _CLEAR: Final = PATH_VERDICTS.index("clear")
 _MEETS: Final = SIGNAL_VERDICTS.index("meets")
 _DONE: Final = STATUSES.index("done")
@@ -60,6 +62,55 @@ class HopColumns:
             margin_db=margin,
             free_share=pairs.worst_fraction,
         )
+
+    def of_some(self, which: NDArray[np.int64], count: int) -> "HopColumns":
+        """These as the answers for places `which` of `count`; the others were not asked and serve nobody."""
+        whole = HopColumns(
+            clear=np.zeros(count, dtype=np.bool_),
+            serves=np.zeros(count, dtype=np.bool_),
+            margin_db=np.full(count, np.nan),
+            free_share=np.full(count, np.nan),
+        )
+        for name in ("clear", "serves", "margin_db", "free_share"):
+            getattr(whole, name)[which] = getattr(self, name)
+        return whole
+
+
+def chosen_places(places: SiteColumns, which: NDArray[np.int64]) -> SiteColumns:
+    """Some of the places."""
+    return SiteColumns(
+        name=tuple(places.name[index] for index in which.tolist()),
+        latitude_deg=places.latitude_deg[which],
+        longitude_deg=places.longitude_deg[which],
+        height_m=places.height_m[which],
+        height_reference=places.height_reference[which],
+        roof_m=places.roof_m[which],
+    )
+
+
+def one_by_one(end: Site, latitude_deg: Floats, longitude_deg: Floats, terrain: Terrain) -> int:
+    """How many hops from an end to places, shape (n,), come near an obstacle or a surveyed point.
+
+    The engine takes these one by one, some 30 ms each, and all others as arrays, a thousand times faster.
+    """
+    layers = terrain.many.layers
+    east = np.remainder(longitude_deg - end.position.longitude_deg + 180.0, 360.0) - 180.0
+    ends = end.position.longitude_deg, end.position.latitude_deg
+    longitude, latitude = (
+        np.stack([np.full(way.shape, start), start + way], axis=1)
+        for start, way in zip(ends, (east, latitude_deg - end.position.latitude_deg), strict=True)
+    )
+    return int((layers.obstacles.meets(longitude, latitude) | layers.survey.meets(longitude, latitude)).sum())
+
+
+def affordable(
+    ends: tuple[Site, ...], latitude_deg: Floats, longitude_deg: Floats, terrain: Terrain, *, most: int
+) -> int:
+    """How many of these places may be judged: `most`, or fewer where many would be taken one by one."""
+    slow = max(one_by_one(end, latitude_deg, longitude_deg, terrain) for end in ends)
+    if slow <= ONE_BY_ONE:
+        return most
+    return min(most, max(1, latitude_deg.size * ONE_BY_ONE // slow))
 
 
 def columns_of(sites: tuple[Site, ...]) -> SiteColumns:

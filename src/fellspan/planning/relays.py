@@ -15,6 +15,7 @@ import shapely
 
 from fellspan.design.relay_picks import spread_picks, thinned
 from fellspan.errors import LinkError
+from fellspan.geodesy.coordinates import format_position
 from fellspan.geodesy.geodesic import GeodesicPath, inverse
 from fellspan.geodesy.position import Position
 from fellspan.links.site import Link, Site
@@ -23,7 +24,7 @@ from fellspan.planning.plan import LinkPlan
 from fellspan.planning.planner import open_terrain, plan_study, settings_of
 from fellspan.planning.relay_cells import Cells, Ground, cells_between
 from fellspan.planning.relay_chains import chains_of_two
-from fellspan.planning.relay_hops import End, HopColumns, columns_of, hop_link, screen_hop
+from fellspan.planning.relay_hops import End, HopColumns, affordable, chosen_places, columns_of, hop_link, screen_hop
 from fellspan.planning.relay_result import RelayArea, RelayRequest, RelayResult, RelayRoute
 from fellspan.screening.pairs import Floats, SiteColumns
 from fellspan.terrain.alongpath import along_across
@@ -31,6 +32,7 @@ from fellspan.terrain.terrain import Terrain
 
 _ALWAYS: Final = (
     "a relay needs ground that may be built on, power, access and a right to stand there: none of it is in the data",
+    "each hop is judged alone: give the two a channel each, for a relay that uses one channel twice hears itself",
     "antennas are aimed anew; radios, powers and rules are the link's; other links near by are not counted as neighbours",
     "every hop adds delay and its own outage: the chain is available less than its worst hop",
 )
@@ -178,8 +180,12 @@ class _Search:
                 terrain=terrain,
             )
         )
-        if cells.row.size > JUDGE_AT_MOST:
-            cells = cells.chosen(thinned(cells.spare_m, cells.row, cells.column, most=JUDGE_AT_MOST))
+        if cells.row.size:
+            most = affordable(
+                (self.link.a, self.link.b), cells.latitude_deg, cells.longitude_deg, terrain, most=JUDGE_AT_MOST
+            )
+            if cells.row.size > most:
+                cells = cells.chosen(thinned(cells.spare_m, cells.row, cells.column, most=most))
         hops = self._both_hops(cells.columns(self.request.mast_m), terrain)
         exact = all_cells.whole and cells.row.size == all_cells.row.size
         clear = np.zeros(cells.shape, dtype=np.bool_)
@@ -216,8 +222,10 @@ class _Search:
     def _both_hops(self, places: SiteColumns, terrain: Terrain) -> tuple[HopColumns, HopColumns]:
         count = len(places.name)
         there = self._hop("a", places, terrain, before=0, total=2 * count)
-        back = self._hop("b", places, terrain, before=count, total=2 * count)
-        return there, back
+        # The far end is asked only of places that the near end sees.
+        asked = np.flatnonzero(there.clear).astype(np.int64)
+        back = self._hop("b", chosen_places(places, asked), terrain, before=count, total=count + asked.size)
+        return there, back.of_some(asked, count)
 
     def _best_cells(self, cells: Cells, hops: tuple[HopColumns, HopColumns], refused: list[str]) -> Iterator[Site]:
         score = self._score(hops, refused)
@@ -304,27 +312,30 @@ class _Search:
             hop_link(self.link, name=_hop_name(one, two, way=number, hop=at), a=one, b=two)
             for at, (one, two) in enumerate(itertools.pairwise(stations), start=1)
         )
-        plan = plan_study(self._study_of(links))
         where = relays[0].position
-        at = f"{where.latitude_deg:.5f}, {where.longitude_deg:.5f}"
-        if plan.failures:
-            return None, f"a place at {at}: {plan.failures[0].error.what}"
-        for hop in plan.links:
+        at = f"a place at {format_position(where)}: planned in full"
+        hops: list[LinkPlan] = []
+        for link in links:
+            # Each hop alone: they need a channel each, for on one channel a relay hears itself.
+            plan = plan_study(self._study_of((link,)))
+            if plan.failures:
+                return None, f"{at}, '{link.name}': {plan.failures[0].error.what}"
+            hops += plan.links
+        for hop in hops:
             if hop.result.verdict != "clear":
-                return None, f"a place at {at}: planned in full, '{hop.result.name}' is {hop.result.verdict}"
-            if hop.result.signal_verdict not in (None, "meets"):
-                return (
-                    None,
-                    f"a place at {at}: planned in full, the signal of '{hop.result.name}' is short of what is wanted",
-                )
+                return None, f"{at}, '{hop.result.name}' is {hop.result.verdict}"
         margins = [
             margin
-            for hop in plan.links
+            for hop in hops
             for margin in (hop.result.margin_db.at_a, hop.result.margin_db.at_b)
             if margin is not None
         ]
+        for hop in hops:
+            if hop.result.signal_verdict not in (None, "meets"):
+                least = f", margin {min(margins):.1f} dB" if margins else ""
+                return None, f"{at}, the signal of '{hop.result.name}' is {hop.result.signal_verdict}{least}"
         if margins and min(margins) < self.margin_db:
-            return None, f"a place at {at}: planned in full, its margin is {min(margins):.1f} dB"
+            return None, f"{at}, its margin is {min(margins):.1f} dB of {self.margin_db:g} dB wanted"
         path = GeodesicPath.between(self.link.a.position, self.link.b.position)
         _, across = along_across(
             path,
@@ -334,8 +345,8 @@ class _Search:
         return (
             RelayRoute(
                 relays=tuple(relays),
-                ground_amsl_m=tuple(hop.result.ends.b.ground_m for hop in plan.links[:-1]),
-                hops=plan.links,
+                ground_amsl_m=tuple(hop.result.ends.b.ground_m for hop in hops[:-1]),
+                hops=tuple(hops),
                 worst_margin_db=min(margins) if margins else None,
                 off_path_m=float(np.max(np.abs(across))),
             ),
@@ -346,8 +357,8 @@ class _Search:
         said = []
         if area is not None and not area.exact:
             said.append(
-                f"more than {JUDGE_AT_MOST} cells could serve: the area is that of the sweep, and of each block of cells the "
-                "best one was judged"
+                "more cells could serve than can be judged one by one: the area is that of the sweep, and of each block of "
+                "cells the best one was judged"
             )
         if routes:
             said += _ALWAYS

@@ -2,7 +2,7 @@
 
 from fellspan.links.words import STATE_WORDS, state_of
 from fellspan.planning.relay_result import RelayResult
-from fellspan.report.wording import distance
+from fellspan.report.wording import distance, signal_short
 
 
 def decision(result: RelayResult) -> str:
@@ -11,7 +11,7 @@ def decision(result: RelayResult) -> str:
     if not result.routes:
         chain = "neither one relay nor two" if result.request.two_relays and not result.request.sites else "no relay"
         return (
-            f"No way round found: {chain}{mast} joins the ends with clear hops of at most {distance(result.hop_m)} each."
+            f"No way round found: {chain}{mast} joins the ends with hops that are clear and have the margin, each of at most {distance(result.hop_m)}."
             f"{_needless(result)}"
         )
     best = result.routes[0]
@@ -34,7 +34,7 @@ def direct_words(result: RelayResult) -> str:
     if result.direct is None:
         return ""
     direct = result.direct.result
-    signal = f", signal {direct.signal_verdict}" if direct.signal_verdict else ""
+    signal = f", signal {signal_short(direct)}" if direct.signal_verdict else ""
     return f"{distance(direct.distance_m)}, {STATE_WORDS[state_of(direct)]}{signal}"
 
 
