@@ -9,7 +9,7 @@ from made_profiles import link_of, obstacle, profile_of
 from fellspan.design.heights import design_heights
 from fellspan.design.heights_result import HeightSettings, HeightsResult, Limits
 from fellspan.links.assess import AssessSettings, assess_profile
-from fellspan.report.heights_drawing import draw_heights, heights_words
+from fellspan.report.heights_drawing import draw_heights, heights_words, shows_what_works
 
 
 def heights(top_m: float = 30.0, **limits: float) -> HeightsResult:
@@ -78,3 +78,8 @@ def test_words_beside_the_marks_meet_neither_each_other_nor_other_marks(found: H
             box[0] < other[2] and other[0] < box[2] and box[1] < other[3] and other[1] < box[3]
             for other in boxes[index + 1 :]
         )
+
+
+def test_a_sheet_on_which_nothing_works_is_told_from_one_with_shade() -> None:
+    assert shows_what_works(CROWDED)
+    assert not shows_what_works(replace(with_pairs((5, 15), *[(346, 356)] * 5), planned_holds=False))

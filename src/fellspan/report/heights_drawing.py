@@ -52,6 +52,12 @@ def draw_heights(heights: HeightsResult, *, uid: str, names: tuple[str, str]) ->
     )
 
 
+def shows_what_works(heights: HeightsResult) -> bool:
+    """Whether a pair of heights with the confidence asked lies on the sheet."""
+    across, up = _scales(heights)
+    return heights.planned_holds or any(_fits(option, across, up) for option in heights.options)
+
+
 def heights_words(heights: HeightsResult) -> str:
     """The drawing in words: the planned pair and every pair to build."""
     parts = [f"Planned: {_pair_words(heights.planned)}."]

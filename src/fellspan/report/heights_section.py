@@ -1,6 +1,7 @@
 """The heights of one link on its page: the decision, the trade-off, a table and how sure it is. Computes nothing."""
 
 from dataclasses import dataclass
+from typing import Final
 
 from markupsafe import Markup
 
@@ -8,7 +9,7 @@ from fellspan.design.confidence import ConfidenceResult
 from fellspan.design.heights_result import HEIGHT_WORDS, HeightOption, HeightsResult, Pair
 from fellspan.planning.plan import LinkPlan
 from fellspan.report import wording
-from fellspan.report.heights_drawing import draw_heights, heights_words
+from fellspan.report.heights_drawing import draw_heights, heights_words, shows_what_works
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -29,6 +30,10 @@ class HeightsSection:
     cautions: tuple[str, ...]
 
 
+_SHADED: Final = "Shaded: works with the confidence asked. Broken line: exact on the heights in the data."
+_BEYOND: Final = "No heights on this sheet work: those that would lie beyond it."
+
+
 def heights_section(link: LinkPlan) -> HeightsSection | None:
     """The section of a link; None where heights were not worked out."""
     heights, confidence = link.heights, link.confidence
@@ -40,7 +45,7 @@ def heights_section(link: LinkPlan) -> HeightsSection | None:
     return HeightsSection(
         decision=heights.decision,
         chart=Markup(draw_heights(heights, uid="heights", names=(ends.a.site, ends.b.site))),
-        caption=heights_words(heights),
+        caption=f"{_SHADED if shows_what_works(heights) else _BEYOND} {heights_words(heights)}",
         rows=told,
         notes=(
             _legend(heights),
