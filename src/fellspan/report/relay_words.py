@@ -11,8 +11,8 @@ def decision(result: RelayResult) -> str:
     if not result.routes:
         chain = "neither one relay nor two" if result.request.two_relays and not result.request.sites else "no relay"
         return (
-            f"No way round found: {chain}{mast} joins the ends with hops that are clear and have the margin, each of at most {distance(result.hop_m)}."
-            f"{_needless(result)}"
+            f"No way round found: {chain}{mast} joins the ends with hops that are clear and have the margin, each of at "
+            f"most {distance(result.hop_m)}.{_needless(result)}"
         )
     best = result.routes[0]
     bare = any(state_of(hop.result) == "clear-bare" for hop in best.hops)
