@@ -291,7 +291,7 @@ def _settled(page):
 def test_an_open_overview_fits_its_map_to_the_sheet_and_back(sample, watch, size):
     page = watch(*SIZES[size]).page
     page.goto((sample.folder / "index.html").as_uri())
-    page.evaluate("() => fellspanMap.map.setZoom(14)")  # as someone leaves it who looked at a detail
+    page.evaluate("() => fellspanMap.map.setZoom(14, {animate: false})")  # as someone leaves it who looked at a detail
     before = page.evaluate("() => [fellspanMap.map.getZoom(), document.querySelector('.folium-map').clientWidth]")
     # What a browser does before it draws sheets; the layout is still that of the window.
     at_once = f"() => {{ window.dispatchEvent(new Event('beforeprint')); return ({DOTS})(); }}"
