@@ -102,3 +102,34 @@ def test_a_path_along_the_very_edge_does_not_end_the_run(tmp_path: Path) -> None
     with Terrain.open(ground=file) as terrain:
         found = screen_pairs(made, hub=np.zeros(2, dtype=np.int64), place=np.array([1, 2]), terrain=terrain)
     assert set(found.status.tolist()) <= {0, 1}
+
+
+@pytest.mark.parametrize(
+    "crs", ["EPSG:32623", "EPSG:3035", "+proj=ortho +lat_0=36 +lon_0=-45", "+proj=stere +lat_0=90"]
+)
+def test_positions_that_no_projection_reaches_are_the_status_of_their_pairs(tmp_path: Path, crs: str) -> None:
+    x, y = Transformer.from_crs("EPSG:4326", crs, always_xy=True).transform(-45.2, 36.05)
+    profile = {"driver": "GTiff", "height": SIZE[0], "width": SIZE[1], "count": 1, "dtype": "float32", "crs": crs}
+    with rasterio.open(
+        tmp_path / "one.tif", "w", **profile, transform=Affine(20.0, 0.0, x - 1600.0, 0.0, -20.0, y + 1200.0)
+    ) as out:
+        out.write(hills(SIZE, seed=3, height_m=20.0).astype(np.float32), 1)
+    latitude = np.array([36.05, 36.051, -45.2, 36.05, -36.05, 89.99, -89.99, 36.05, 3.0])
+    longitude = np.array([-45.2, -45.199, 36.0464, 45.19, 134.8, 0.0, 0.0, 44.8, -45.2])
+    count = latitude.size
+    sites = SiteColumns(
+        name=tuple(f"S{i}" for i in range(count)),
+        latitude_deg=latitude,
+        longitude_deg=longitude,
+        height_m=np.full(count, 60.0),
+        height_reference=np.zeros(count, dtype=np.int8),
+        roof_m=np.full(count, np.nan),
+    )
+    made = candidates(sites, sites)
+    made = candidates(sites, sites, sectors=tuple(replace(made.sectors[0], hub=i) for i in range(count)))
+    with Terrain.open(ground=tmp_path / "one.tif") as terrain:
+        found = screen_pairs(
+            made, hub=np.array([0] * (count - 1) + [2]), place=np.arange(1, count + 1) % count, terrain=terrain
+        )
+    assert found.status.tolist()[0] == 0
+    assert set(found.status.tolist()[1:]) <= {1, 3}

@@ -19,6 +19,7 @@ from fellspan.quantities import AntennaHeight
 from fellspan.runs.inputs import local_files, run_facts
 from fellspan.runs.listing import PairList
 from fellspan.runs.run import RunPlan, finish_run, locked, open_store
+from fellspan.study.far_places import refuse_far_places
 from fellspan.study.screening_study import Screening, Wishes, load_screening
 
 _BAR: Final = 20
@@ -48,9 +49,10 @@ def run_candidates(asked: Asked) -> None:
     screening = load_screening(
         asked.study, hubs=asked.hubs, places=asked.places, pairs=asked.pairs, wishes=asked.wishes
     )
-    plan = _plan(screening, asked)
     with open_terrain(screening.study) as terrain:  # a raster that cannot be read is told before anything is made
+        refuse_far_places(screening.candidates, screening.hub_rows, screening.place_rows, terrain)
         notes = tuple(dict.fromkeys((*screening.notes, *terrain.notes)))
+    plan = _plan(screening, asked)
     with (
         locked(asked.out),
         open_store(asked.out, plan, fresh=asked.fresh, outputs=NAMES) as store,

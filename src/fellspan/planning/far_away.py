@@ -14,7 +14,7 @@ from fellspan.terrain.listed import Listed
 
 FAR_M: Final = 50_000.0
 """What is farther from every link than this cannot stand in its zone (our own choice)."""
-_RADIUS_M: Final = 6_371_000.0
+RADIUS_M: Final = 6_371_000.0
 _PARTS: Final = 9
 """Points along each link that are compared: a link of 400 km is then met every 50 km."""
 
@@ -51,7 +51,7 @@ def far_cautions(listed: Sequence[Listed], links: Sequence[Link]) -> Iterator[st
 def _along(links: Sequence[Link]) -> Floats:
     """Unit vectors of points along the links, shape (m, 3)."""
     ends = [
-        [_unit(np.array(p.latitude_deg), np.array(p.longitude_deg)) for p in (x.a.position, x.b.position)]
+        [unit_vectors(np.array(p.latitude_deg), np.array(p.longitude_deg)) for p in (x.a.position, x.b.position)]
         for x in links
     ]
     share = np.linspace(0.0, 1.0, _PARTS)[:, None]
@@ -60,7 +60,8 @@ def _along(links: Sequence[Link]) -> Floats:
     return np.asarray(points / np.where(length > 0.0, length, 1.0))
 
 
-def _unit(latitude_deg: Floats, longitude_deg: Floats) -> Floats:
+def unit_vectors(latitude_deg: Floats, longitude_deg: Floats) -> Floats:
+    """Directions of places from the centre of a sphere, shape (..., 3)."""
     north, east = np.radians(latitude_deg), np.radians(longitude_deg)
     return np.stack((np.cos(north) * np.cos(east), np.cos(north) * np.sin(east), np.sin(north)), axis=-1)
 
@@ -70,7 +71,7 @@ def _distance_m(latitude_deg: Floats, longitude_deg: Floats, places: Floats) -> 
     if not latitude_deg.size:
         return np.empty(0)
     nearest = np.full(latitude_deg.size, -1.0)
-    points = _unit(latitude_deg, longitude_deg)
+    points = unit_vectors(latitude_deg, longitude_deg)
     for start in range(0, len(places), 512):
         nearest = np.maximum(nearest, (points @ places[start : start + 512].T).max(axis=1))
-    return np.asarray(_RADIUS_M * np.arccos(np.clip(nearest, -1.0, 1.0)))
+    return np.asarray(RADIUS_M * np.arccos(np.clip(nearest, -1.0, 1.0)))

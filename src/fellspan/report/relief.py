@@ -13,6 +13,7 @@ from dataclasses import dataclass
 import numpy as np
 from affine import Affine
 from numpy.typing import NDArray
+from rasterio._err import CPLE_BaseError
 from rasterio.crs import CRS
 from rasterio.enums import MaskFlags, Resampling
 from rasterio.errors import NotGeoreferencedWarning, RasterioError
@@ -124,7 +125,8 @@ def shaded_relief(
                     shown.append(raster.name)
             except _TooLarge:
                 left_out.append(raster.name)
-            except (FellspanError, RasterioError, OSError, ValueError):
+            except (FellspanError, RasterioError, CPLE_BaseError, OSError, ValueError):
+                # GDAL's own errors too: a window may reach farther than the projection of a raster does.
                 continue
     drawn = bool(np.isfinite(heights).any())
     if not drawn and not left_out:

@@ -91,12 +91,15 @@ class PlaceFile:
     sites: SiteColumns
     sectors: tuple[SectorRow, ...]
     rows: Rows
+    where: NDArray[np.str_]
+    """Row, feature or placemark of each site; the first of a hub's."""
     notes: tuple[str, ...]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class _Site:
     name: str
+    where: str
     position: Position
     height: AntennaHeight
     roof_m: float
@@ -230,7 +233,7 @@ class _Reader:
         roof_m = self._try(row, f"'{shown(name)}', roof", lambda: _roof_m(row))
         if position is None or height is None or roof_m is None:
             return None
-        site = _Site(name=name, position=position, height=height, roof_m=roof_m)
+        site = _Site(name=name, where=row.where, position=position, height=height, roof_m=roof_m)
         self.sites.setdefault(name, site)
         return site
 
@@ -318,6 +321,7 @@ class _Reader:
             sites=columns,
             sectors=sectors,
             rows=self.rows,
+            where=np.array([site.where for site in sites], dtype=np.str_),
             notes=(*self.rows.notes, *self._coarse(), *_at_one_spot(sites, self.kind)),
         )
 

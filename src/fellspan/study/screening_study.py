@@ -20,6 +20,7 @@ from fellspan.planning.planner import settings_of
 from fellspan.quantities import AntennaHeight
 from fellspan.screening.pairs import Candidates, Sector
 from fellspan.study.assembling import assemble
+from fellspan.study.far_places import SiteRows
 from fellspan.study.messages import Problem, did_you_mean, problems_of, raise_problems
 from fellspan.study.places import PlaceFile, SectorRow, read_hubs, read_pairs, read_places
 from fellspan.study.reading import study_table
@@ -65,6 +66,8 @@ class Screening:
     min_distance_m: float
     max_distance_m: float
     notes: tuple[str, ...]
+    hub_rows: SiteRows
+    place_rows: SiteRows
 
 
 def load_screening(
@@ -115,6 +118,8 @@ def load_screening(
         min_distance_m=table.min_distance or 0.0,
         max_distance_m=np.inf if table.max_distance is None else table.max_distance,
         notes=(*study.notes, *hub_file.notes, *place_file.notes, *pair_notes, *kinds.notes),
+        hub_rows=SiteRows(file=hub_file.rows.file, where=hub_file.where),
+        place_rows=SiteRows(file=place_file.rows.file, where=place_file.where),
     )
 
 
