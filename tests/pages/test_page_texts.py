@@ -59,7 +59,9 @@ def test_pages_name_no_address_but_those_of_namespaces(request, kind):
 def test_only_links_to_files_of_the_report(plain):
     for text in plain.texts.values():
         for target in re.findall(r'href="([^"]*)"', re.sub(r"<script>.*?</script>", "", text, flags=re.DOTALL)):
-            assert re.fullmatch(r"data:,|#[\w-]+|[A-Za-z0-9-]+\.(html|json|csv|geojson|kml|gpx|svg)(#[\w-]+)?", target), target
+            assert re.fullmatch(
+                r"data:,|#[\w-]+|[A-Za-z0-9-]+\.(html|json|csv|geojson|kml|gpx|svg)(#[\w-]+)?", target
+            ), target
 
 
 def test_failures_and_their_messages_are_listed(plain):
