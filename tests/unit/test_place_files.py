@@ -174,7 +174,7 @@ def test_what_is_wrong_is_told_in_four_lines_with_its_place(
 
 def test_all_wrong_rows_are_told_at_once(tmp_path: Path) -> None:
     rows = "".join(f"P{n},36.0{n:03d}x,-45.2,6 m above ground\n" for n in range(40))
-    with pytest.raises(SitesFileError, match=r"wrong too: row 3, .* and \d+ more"):
+    with pytest.raises(SitesFileError, match=r"wrong too: row 5, .* and \d+ more"):
         read_places(made(tmp_path, HEAD + rows))
 
 
@@ -247,3 +247,60 @@ def test_listed_pairs_are_looked_up_and_sorted(tmp_path: Path) -> None:
             read_pairs(made(tmp_path, text + wrong, "pairs.csv"), hubs=hubs, places=places)
     with pytest.raises(SitesFileError, match="CSV"):
         read_pairs(made(tmp_path, "{}", "pairs.json"), hubs=hubs, places=places)
+
+
+GOOD = "Alder,36.05000,-45.20000,6 m agl\n"
+
+
+@pytest.mark.parametrize(("count", "lines"), [(2, 2), (3, 3), (4, 4), (40, 4)])
+def test_the_first_three_wrong_rows_are_told_with_what_is_wrong(tmp_path: Path, count: int, lines: int) -> None:
+    wrong = ("B,36.05000,-45.20000,6 flagons agl", "C,north,-45.2,6 m agl", ",36.05000,-45.20000,6 m agl")
+    rows = [*wrong, *(f"D{n},36.05000,-45.20000,2 km agl" for n in range(40))][:count]
+    with pytest.raises(SitesFileError) as raised:
+        read_places(made(tmp_path, HEAD + GOOD + "".join(f"{row}\n" for row in rows)))
+    told = str(raised.value).splitlines()
+    assert lines <= len(told) <= 4
+    assert told[0].startswith("places.csv, row 3: 'B': ")
+    assert "flagons" in told[0]
+    assert any(line.strip().startswith("row 4: 'C': ") for line in told[1:])
+    if count > 2:
+        assert any(line.strip().startswith("row 5: there is no name") for line in told[1:])
+    if count > 3:
+        assert told[3].strip().startswith("wrong too: row 6")
+    if count == 40:
+        assert " and " in told[3]
+        assert told[3].endswith(" more")
+
+
+def test_a_multipoint_of_one_point_is_that_point(tmp_path: Path) -> None:
+    def of(*points: list[float]) -> str:
+        features = [
+            {
+                "type": "Feature",
+                "geometry": {"type": "MultiPoint", "coordinates": points},
+                "properties": {"name": "Alder", "height": "3 m above roof"},
+            }
+        ]
+        return json.dumps({"type": "FeatureCollection", "features": features})
+
+    assert spots(read_places(made(tmp_path, of([-45.2, 36.05]), "places.geojson"))) == BOTH[:1]
+    for points in ((), ([-45.2, 36.05], [-45.1, 36.05])):
+        with pytest.raises(SitesFileError, match="a MultiPoint stands where a Point belongs"):
+            read_places(made(tmp_path, of(*points), "places.geojson"))
+
+
+def test_heights_of_files_with_semicolons_have_decimal_commas(tmp_path: Path) -> None:
+    head = "name;latitude;longitude;height;roof_m\n"
+    file = read_places(made(tmp_path, head + "Alder;36,05000;-45,20000;7,5 m above roof;4,25\n"))
+    assert spots(file) == [("Alder", 36.05, -45.2, 7.5, "roof")]
+    assert file.sites.roof_m.tolist() == [4.25]
+    with pytest.raises(SitesFileError):  # 1.5 or 1500?
+        read_places(made(tmp_path, head + "Alder;36,05000;-45,20000;1,500 ft agl;\n"))
+    with pytest.raises(SitesFileError):
+        read_places(made(tmp_path, HEAD + 'Alder,36.05000,-45.20000,"7,5 m agl"\n'))
+
+
+def test_sectors_of_files_with_semicolons_have_decimal_commas(tmp_path: Path) -> None:
+    text = "name;latitude;longitude;height;gain;bearing\nNorth;36,05000;-45,20000;20 m agl;16,5 dBi;12,5\n"
+    row = read_hubs(made(tmp_path, text)).sectors[0].row
+    assert (row.text("gain"), row.text("bearing")) == ("16.5 dBi", "12.5")

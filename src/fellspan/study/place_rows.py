@@ -19,6 +19,13 @@ MAX_FILE_BYTES: Final = 200_000_000
 MAX_FIELD: Final = 1_000_000
 _GEOJSON: Final = (".geojson", ".json")
 _WIDEST_LIST: Final = 60
+_TOLD: Final = 3
+"""Rows whose problems a message tells; it has four lines."""
+_NUMBERS: Final = (
+    "height", "height_m", "roof", "roof_m", "gain", "azimuth_width", "elevation_width", "front_to_back", "bearing", "downtilt",
+)  # fmt: skip
+_COMMA: Final = re.compile(r"(?<![\d.,])(\d+),(\d{1,2}|\d{4,})(?![\d.,])")
+"""A decimal comma; with three digits behind it, it may part thousands, and stays for the reader of quantities to refuse."""
 OF_GEOMETRY: Final = ("latitude", "longitude")
 POSITION: Final = (*OF_GEOMETRY, "position", "easting", "northing", "crs")
 _OTHER_ENCODINGS: Final = ((b"\xff\xfe", "UTF-16"), (b"\xfe\xff", "UTF-16"))
@@ -51,22 +58,28 @@ class Rows:
         self.wrong.append((row.where, SitesFileError(f"{self.file}, {row.where}: {what}", *details[:2])))
 
     def raise_if_wrong(self) -> None:
-        """Raise the first problem in full, with the places of the others."""
+        """Raise what is wrong in the first three rows that are, with the places of the others."""
         if not self.wrong:
             return
-        first = self.wrong[0][1]
-        others = list(dict.fromkeys(where for where, _ in self.wrong[1:] if where != self.wrong[0][0]))
+        of_row: dict[str, SitesFileError] = {}
+        for where, error in self.wrong:
+            of_row.setdefault(where, error)
+        first, *others = of_row.values()
         if not others:
             raise first
-        few = others[:1]
-        for where in others[1:]:
+        told = [error.what.removeprefix(f"{self.file}, ") for error in others[: _TOLD - 1]]
+        if len(others) == 1:
+            raise SitesFileError(first.what, *first.details[:1], *told, *others[0].details[:1])
+        if len(others) < _TOLD:
+            raise SitesFileError(first.what, *first.details[:1], *told)
+        left = list(of_row)[_TOLD:]
+        few = left[:1]
+        for where in left[1:]:
             if len(", ".join((*few, where))) > _WIDEST_LIST:
                 break
             few.append(where)
-        left = len(others) - len(few)
-        raise SitesFileError(
-            first.what, *first.details[:2], f"wrong too: {', '.join(few)}" + (f" and {left} more" if left else "")
-        )
+        more = len(left) - len(few)
+        raise SitesFileError(first.what, *told, f"wrong too: {', '.join(few)}" + (f" and {more} more" if more else ""))
 
 
 def read_place_rows(
@@ -225,7 +238,11 @@ def _read_csv(reader: _Columns, text: str, file: str) -> None:
                 )  # fmt: skip
                 continue
             pairs = ((name, plain(cell)) for name, cell in zip(header, cells, strict=False) if name is not None)
-            reader.rows.rows.append(Row(where, {name: cell for name, cell in pairs if cell}))
+            values = {name: cell for name, cell in pairs if cell}
+            if mark == ";":
+                # Spreadsheets that part cells by semicolons do so because their numbers have commas.
+                values |= {name: _COMMA.sub(r"\1.\2", values[name]) for name in _NUMBERS if name in values}
+            reader.rows.rows.append(Row(where, values))
     except csv.Error as problem:
         raise SitesFileError(f"{file}, row {table.line_num}: {problem}", "is a double quote left open?") from None
     finally:
@@ -269,6 +286,8 @@ def _feature(feature: object, where: str) -> dict[str, str]:
     geometry = feature.get("geometry") if isinstance(feature, dict) else None
     kind = geometry.get("type") if isinstance(geometry, dict) else None
     place = geometry.get("coordinates") if isinstance(geometry, dict) else None
+    if kind == "MultiPoint" and isinstance(place, list) and len(place) == 1:
+        kind, place = "Point", place[0]
     if not isinstance(feature, dict) or kind != "Point":
         raise SitesFileError(f"{where}: a {shown(kind)} stands where a Point belongs")
     if not isinstance(place, list) or len(place) < 2 or not all(isinstance(value, str) for value in place[:2]):
