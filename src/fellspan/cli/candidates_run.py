@@ -12,7 +12,7 @@ import typer
 from fellspan.cli.candidates_page import page_lines
 from fellspan.cli.layout import WIDTH, Ink, colours_wanted, cut, printable
 from fellspan.errors import UsageError
-from fellspan.exports.candidates import summary_json
+from fellspan.exports.candidates import JUDGED_ALONE, summary_json
 from fellspan.exports.candidates_folder import CHOSEN, NAMES, write_run
 from fellspan.planning.planner import open_terrain
 from fellspan.quantities import AntennaHeight
@@ -51,7 +51,7 @@ def run_candidates(asked: Asked) -> None:
     )
     with open_terrain(screening.study) as terrain:  # a raster that cannot be read is told before anything is made
         refuse_far_places(screening.candidates, screening.hub_rows, screening.place_rows, terrain)
-        notes = tuple(dict.fromkeys((*screening.notes, *terrain.notes)))
+        notes = tuple(dict.fromkeys((JUDGED_ALONE, *screening.notes, *terrain.notes)))
     plan = _plan(screening, asked)
     with (
         locked(asked.out),

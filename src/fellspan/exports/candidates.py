@@ -34,6 +34,7 @@ NUMBERS: Final = (
     ("gap_to_m", "%.1f"),
 )
 """Numbers of a pair and how they are written."""
+_MARGINAL: Final = PATH_VERDICTS.index("marginal")
 _NUMBER_AT: Final = tuple((PairRow._fields.index(name), form) for name, form in NUMBERS)
 CANDIDATE_COLUMNS: Final = (
     "hub",
@@ -50,6 +51,13 @@ CANDIDATE_COLUMNS: Final = (
     "reason",
 )
 BEST_COLUMNS: Final = ("place", "rank", *(name for name in CANDIDATE_COLUMNS if name != "place"))
+JUDGED_ALONE: Final = (
+    "each pair is judged alone: radios that share a channel, sectors of one hub among them, are not counted here; "
+    "fellspan plan chosen.toml counts them"
+)
+"""What every run must say of its signals."""
+UNSURE_WORDS: Final = "not sure enough"
+"""Beside no height to add: all criteria are met at the heights of the data, and the path is marginal by their errors alone."""
 NO_HUB_WORDS: Final = "no hub in reach"
 STATE_OF: Final = (*(STATE_WORDS[state] for state in STATES), "")
 
@@ -78,9 +86,8 @@ class CandidateTable:
             "" if row.governing is None else self.criteria[min(row.governing, len(self.criteria) - 1)],
         ]
         cells += [_number(row[index], form) for index, form in _NUMBER_AT]
-        cells.append(
-            "" if row.extra_at_place_m is None else "no" if infinite else "yes" if row.extra_at_place_m else ""
-        )
+        unsure = row.extra_at_place_m == 0.0 and row.verdict == _MARGINAL
+        cells.append("no" if infinite else UNSURE_WORDS if unsure else "yes" if row.extra_at_place_m else "")
         cells.append(csv_cell(row.reason) if row.reason else "")
         return cells
 

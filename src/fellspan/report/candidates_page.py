@@ -150,7 +150,7 @@ def _data(summary: RunSummary, candidates: Candidates, turned: _Turned) -> dict[
             "signal": best.signal[shown].tolist(),
             "margin": _rounded(best.margin_db[shown], 1),
             "km": _rounded(best.distance_m[shown] / 1000.0, 2),
-            "extra": _extra(best.extra_m[shown]),
+            "extra": _extra(best.extra_m[shown], best.state[shown]),
             "clear": best.clear_hubs[shown].tolist(),
         },
         "listed": min(count, MOST_LISTED),
@@ -162,11 +162,18 @@ def _rounded(values: NDArray[np.float64], decimals: int) -> list[float | None]:
     return [round(value, decimals) + 0.0 if math.isfinite(value) else None for value in values.tolist()]
 
 
-def _extra(values: NDArray[np.float64]) -> list[float | str | None]:
-    """Heights to add, rounded up to a tenth; 'no' where none helps."""
+def _extra(values: NDArray[np.float64], state: NDArray[np.integer]) -> list[float | str | None]:
+    """Heights to add, rounded up to a tenth; 'no' where none helps, 'unsure' where only errors of the data are in the way."""
+    marginal = STATE_CODES.index("marginal")
     return [
-        None if math.isnan(value) else "no" if math.isinf(value) else math.ceil(value * 10.0 - 1e-6) / 10.0 + 0.0
-        for value in values.tolist()
+        None
+        if math.isnan(value)
+        else "no"
+        if math.isinf(value)
+        else "unsure"
+        if value == 0.0 and code == marginal
+        else math.ceil(value * 10.0 - 1e-6) / 10.0 + 0.0
+        for value, code in zip(values.tolist(), state.tolist(), strict=True)
     ]
 
 

@@ -149,14 +149,14 @@
   }
   function number(value, digits) { return value === null ? "\u2013" : value.toFixed(digits).replace("-", "\u2212"); }
   function extraWords(value) {
-    return value === null ? "\u2013" : value === "no" ? "none helps" : value === 0 ? "0" : "+" + value.toFixed(1);
+    return value === null ? "\u2013" : value === "no" ? "none helps" : value === "unsure" ? "0, not sure enough" : value === 0 ? "0" : "+" + value.toFixed(1);
   }
   function choosePlace(index) {
     shownPlace = index; shownHub = -1;
     var hub = places.hub[index], lines = [data.states[places.state[index]].label];
     if (hub >= 0) lines.push("Best hub: " + hubs.name[hub] + ", " + number(places.km[index], 2) + " km");
     if (places.signal[index] >= 0) lines.push("Signal: " + data.signals[places.signal[index]] + ", margin " + number(places.margin[index], 1) + " dB");
-    if (places.extra[index]) lines.push("Height to add at the place: " + extraWords(places.extra[index]) + (places.extra[index] === "no" ? "" : " m"));
+    if (places.extra[index]) lines.push("Height to add at the place: " + extraWords(places.extra[index]) + (typeof places.extra[index] === "string" ? "" : " m"));
     tell(places.name[index], lines);
     draw();
   }
@@ -179,7 +179,7 @@
     if (by === "name") return places.name[index].toLocaleLowerCase();
     if (by === "hub") return places.hub[index] < 0 ? null : hubs.name[places.hub[index]].toLocaleLowerCase();
     var value = places[by][index];
-    return value === "no" ? Infinity : by === "signal" && value < 0 ? null : value;
+    return value === "no" ? Infinity : value === "unsure" ? 0 : by === "signal" && value < 0 ? null : value;
   }
   function sorted() {
     order.sort(function (a, b) {
