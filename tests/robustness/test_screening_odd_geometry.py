@@ -111,7 +111,7 @@ def test_positions_that_no_projection_reaches_are_the_status_of_their_pairs(tmp_
     x, y = Transformer.from_crs("EPSG:4326", crs, always_xy=True).transform(-45.2, 36.05)
     profile = {"driver": "GTiff", "height": SIZE[0], "width": SIZE[1], "count": 1, "dtype": "float32", "crs": crs}
     with rasterio.open(
-        tmp_path / "one.tif", "w", **profile, transform=Affine(20.0, 0.0, x - 1600.0, 0.0, -20.0, y + 1200.0)
+        tmp_path / "one.tif", "w", **profile, transform=Affine(200.0, 0.0, x - 16_000.0, 0.0, -200.0, y + 12_000.0)
     ) as out:
         out.write(hills(SIZE, seed=3, height_m=20.0).astype(np.float32), 1)
     latitude = np.array([36.05, 36.051, -45.2, 36.05, -36.05, 89.99, -89.99, 36.05, 3.0])
