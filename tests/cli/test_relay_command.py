@@ -101,7 +101,7 @@ def test_the_page_says_first_what_was_found_and_fits_80_columns(report) -> None:
     assert ran.stdout.isascii()
     assert lines[0] == "Relay for West - East"
     assert lines[1].startswith("One relay serves with 12 m of mast: best is Relay 1, every hop clear on bare")
-    for words in ("obstructed", "West - Relay 1", "Relay 1 - East", "above sea level", "cells", "may be built on"):
+    for words in ("obstructed", "to Relay 1", "to East", "above sea level", "cells", "may be built on"):
         assert words in ran.stdout, words
     assert lines[-2].startswith("report: found/index.html (")
     assert lines[-1] == "next: fellspan plan found/relay.toml"

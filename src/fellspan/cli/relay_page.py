@@ -58,7 +58,7 @@ def _hop(hop: LinkPlan) -> tuple[str, ...]:
     result = hop.result
     margins = [margin for margin in (result.margin_db.at_a, result.margin_db.at_b) if margin is not None]
     return (
-        printable(result.name),
+        printable(f"to {result.ends.b.site}"),
         figures.distance(result.distance_m),
         STATE_WORDS[state_of(result)],
         figures.by_how_much(result.clearance[result.governing]).removesuffix(" to spare"),

@@ -29,6 +29,10 @@ from fellspan.study.writing import study_text
 JSON: Final = "relay.json"
 GEOJSON: Final = "relay.geojson"
 _SCHEMA: Final = 1
+_STUDY_HEAD: Final = (
+    "# One way round, found by `fellspan relay`, each hop judged alone.\n"
+    "# Give each hop a channel of its own (frequency = ...): a relay that uses one channel twice hears itself.\n\n"
+)
 
 
 def relay_json(result: RelayResult) -> str:
@@ -139,7 +143,7 @@ def write_relay_folder(
     texts[JSON] = relay_json(result)
     texts[GEOJSON] = relay_geojson(result)
     for rank, route in enumerate(result.routes, start=1):
-        texts[relay_study_name(rank)] = study_text(relay_study(result, route, study), folder=out)
+        texts[relay_study_name(rank)] = _STUDY_HEAD + study_text(relay_study(result, route, study), folder=out)
     texts[RESULTS] = last
     write_files(texts, out)
     return tuple(texts)

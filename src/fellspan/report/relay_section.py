@@ -89,7 +89,7 @@ def relays_view(result: RelayResult) -> RelaysView:
         link=result.link_name,
         decision=relay_words.decision(result),
         direct=relay_words.direct_words(result),
-        searched=relay_words.searched(result),
+        searched=relay_words.searched(result).replace("km2", "km²"),
         ways=tuple(ways),
         left_out=result.refused,
         cautions=result.cautions,
