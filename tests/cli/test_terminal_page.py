@@ -7,6 +7,7 @@ import pytest
 
 from fellspan.cli.layout import WIDTH, Ink, columns_of
 from fellspan.cli.page import page_lines
+from fellspan.links.radio_words import THROUGH, verdict_why
 from fellspan.links.words import STATE_WORDS
 from fellspan.planning.plan import StudyPlan
 from fellspan.planning.planner import plan_study
@@ -42,8 +43,18 @@ def test_terminal_and_overview_say_the_same(plan: StudyPlan) -> None:
     for link, row in zip(plan.links, overview_view(plan).rows, strict=True):
         line = next(line for line in lines if line.startswith(link.result.name))
         assert STATE_WORDS[row.state] in line
+        if verdict_why(link.result) == THROUGH:
+            assert line.endswith(" -"), "a margin past an obstruction is nothing to rely on"
+            continue
         margin = float(line.split()[-2])
         assert margin == pytest.approx(float(row.margin.sort), abs=0.051)
         assert line.endswith("*") == bool(row.left)
     assert any(line.endswith("*") for line in lines)
     assert "  * what neighbours on the same channel leave of it" in lines
+    assert any(verdict_why(link.result) == THROUGH for link in plan.links)
+
+
+def test_a_hub_carries_no_better_signal_than_its_worst_link(plan: StudyPlan) -> None:
+    signals = {hub.site: hub.signal for hub in overview_view(plan).hubs}
+    assert signals["Harbour Office"] == "through an obstruction"
+    assert signals["Beacon"] == "meets"

@@ -9,6 +9,7 @@ from fellspan.cli import figures
 from fellspan.cli.layout import WIDTH, Ink, padded, printable, rule, table, wrapped
 from fellspan.cli.link_page import decision_lines, link_lines, state_tone
 from fellspan.cli.neighbour_lines import neighbour_lines
+from fellspan.links.radio_words import THROUGH, verdict_why
 from fellspan.links.safety import RAISING
 from fellspan.links.words import STATE_WORDS, state_of
 from fellspan.planning.plan import LinkFailure, LinkPlan, StudyPlan
@@ -109,7 +110,9 @@ def _summary_row(plan: LinkPlan, left: Mapping[str, float]) -> Sequence[str]:
     result = plan.result
     governing = result.clearance[result.governing] if result.clearance else None
     margin, star = _least_margin(plan), ""
-    if result.name in left:
+    if verdict_why(result) == THROUGH:
+        margin = None  # worked out past what stands in the way: nothing to rely on
+    elif result.name in left:
         margin, star = left[result.name], "*"
     return (
         result.name,

@@ -35,7 +35,7 @@ def decision(planned: Pair, options: Sequence[HeightOption], *, holds: bool, con
         least = builds.get("least total")
         less = least is not None and least.a_m + least.b_m < planned.a_m + planned.b_m - 0.5
         spare = (
-            f" The least that would do: {metres(least.a_m)} at A and {metres(least.b_m)} at B."
+            f" The least in all that would do: {metres(least.a_m)} at A and {metres(least.b_m)} at B."
             if least and less
             else ""
         )

@@ -28,9 +28,10 @@ def receiver_caution(result: InterferenceResult) -> str | None:
     if worse is None:
         if ratio is None or ratio >= CAUTION_RATIO_DB:
             return None
+        side = "above" if ratio >= 0.0 else "below"
         return (
-            f"Neighbours: {_pair(result)}; the carrier is {ratio:.1f} dB above all of them together. State the channel "
-            "width of the radio to know what that costs, or use another channel."
+            f"Neighbours: {_pair(result)}; the carrier is {abs(ratio):.1f} dB {side} all of them together. State the "
+            "channel width of the radio to know what that costs, or use another channel."
         )
     if worse <= CAUTION_FROM_DB:
         return None

@@ -12,11 +12,12 @@ from fellspan.links.words import State, state_of
 from fellspan.planning.plan import LinkPlan, StudyPlan
 from fellspan.report.naming import page_name
 from fellspan.report.signal_section import availability_short
+from fellspan.report.wording import signal_short
 
 HUB_FROM: Final = 3
 """A site with so many links is a hub; one with two joins them, as a relay does."""
 STATE_ORDER: Final[tuple[State, ...]] = ("clear", "clear-bare", "marginal", "obstructed")
-_SIGNAL_ORDER: Final = ("meets", "marginal", "below")
+_SIGNAL_ORDER: Final = ("meets", "marginal", "below", "through an obstruction")
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -82,7 +83,7 @@ def _hub(site: str, links: list[tuple[int, LinkPlan]]) -> Hub:
 
 
 def _signal(results: list[LinkResult]) -> str:
-    known = [result.signal_verdict for result in results if result.signal_verdict is not None]
+    known = [signal_short(result) for result in results if result.signal_verdict is not None]
     if not known:
         return "not computed"
     worst = max(known, key=_SIGNAL_ORDER.index)
