@@ -15,8 +15,8 @@ def blank_text(link: Link) -> str:
     )
     return f"""\
 # What was measured of a link as built. Take away the # before a key and fill it in; what nobody measured stays as it is.
-# Levels, bearings, tilts, roofs and ground levels here are examples of how to write them, not this link's; where a line tells what
-# is planned, it says so.
+# Levels, bearings, tilts, roofs and ground levels here are examples of how to write them, not this link's; what is planned
+# is called so.
 # Then: fellspan accept STUDY --link NAME --measured THIS_FILE
 
 [measured]
