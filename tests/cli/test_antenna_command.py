@@ -91,7 +91,7 @@ def test_a_page_and_its_diagrams_stand_alone(tmp_path: Path) -> None:
         assert drawing.tag == f"{space}svg"
         assert drawing.find(f"{space}title") is not None
         assert (drawing.findtext(f"{space}desc") or "").strip()
-        assert "prefers-color-scheme: dark" in (drawing.findtext(f"{space}style") or "")
+        assert "prefers-color-scheme:dark" in (drawing.findtext(f"{space}style") or "")
 
 
 def test_an_html_name_is_the_page_and_the_diagrams_take_its_name(tmp_path: Path) -> None:

@@ -190,7 +190,7 @@ def test_the_sample_crosses_its_sea(plan: StudyPlan) -> None:
 
 def test_the_page_of_a_link_shows_curves_and_words(plan: StudyPlan) -> None:
     page = next(text for name, text in render_pages(plan).items() if name.startswith("link-01"))
-    section = page[page.index('<section class="reflections">') :]
+    section = page[page.index('<section class="reflections" id="reflections">') :]
     section = section[: section.index("</section>")]
     assert section.count('class="beam-view lobing"') == 2
     assert "The water between" in section
