@@ -10,12 +10,12 @@ import numpy as np
 from fellspan.design.answers import drawn_confidence
 from fellspan.errors import FellspanError, TerrainGapError
 from fellspan.geodesy.position import Position
-from fellspan.links.antenna_gains import antennas_of
 from fellspan.links.assess import Assessment, AssessSettings, assess_in_full
 from fellspan.links.result import LinkResult
 from fellspan.links.site import Antenna, Link, Site
 from fellspan.screening.columns import Columns
 from fellspan.screening.pairs import BASES, HEIGHT_REFERENCES, PATH_VERDICTS, SIGNAL_VERDICTS, Candidates, SiteColumns
+from fellspan.screening.signal_ends import best_sector
 from fellspan.terrain.terrain import Terrain
 
 
@@ -62,22 +62,6 @@ def sectors_of(candidates: Candidates, hub: int) -> tuple[int, ...]:
     return tuple(number for number, sector in enumerate(candidates.sectors) if sector.hub == hub)
 
 
-def best_sector(candidates: Candidates, link: Link, sectors: tuple[int, ...], result: LinkResult) -> int:
-    """Of several sectors the one with the most gain toward the place; the first of equals, or where a gain is unknown."""
-    bearings, tilts = (result.bearing_ab_deg, result.bearing_ba_deg), (result.tilt_ab_deg, result.tilt_ba_deg)
-
-    def gain(sector: int) -> float:
-        turned = _link_with(link, candidates.sectors[sector].antenna)
-        found = antennas_of(turned, bearings_deg=bearings, tilts_deg=tilts).a.gain_dbi
-        return -math.inf if found is None else found
-
-    return max(sectors, key=gain)
-
-
-def _link_with(link: Link, antenna: Antenna) -> Link:
-    return Link(name=link.name, a=link.a, b=link.b, radio=link.radio, antenna_a=antenna, antenna_b=link.antenna_b)
-
-
 def screen_single(candidates: Candidates, columns: Columns, row: int, *, terrain: Terrain) -> None:
     """Fill one row of `columns` as planning would; a gap and a refusal are its status."""
     hub, place = int(columns.hub[row]), int(columns.place[row])
@@ -88,7 +72,15 @@ def screen_single(candidates: Candidates, columns: Columns, row: int, *, terrain
         assessment = assess_in_full(link, terrain=terrain, settings=settings)
         chosen = sectors[0]
         if len(sectors) > 1:
-            chosen = best_sector(candidates, link, sectors, assessment.result)
+            result = assessment.result
+            chosen = int(
+                best_sector(
+                    candidates,
+                    hub=np.array([hub]),
+                    bearing_deg=np.array([result.bearing_ab_deg]),
+                    tilt_deg=np.array([result.tilt_ab_deg]),
+                )[0]
+            )
             if chosen != sectors[0]:
                 link = link_of(candidates, hub, chosen, place)
                 assessment = assess_in_full(link, terrain=terrain, settings=settings)
