@@ -12,6 +12,7 @@ from numpy.typing import NDArray
 from fellspan.errors import FellspanError
 from fellspan.links.assess import REFINE_PARTS
 from fellspan.links.budget import tilts_deg
+from fellspan.links.clearance import bulge_m
 from fellspan.screening.columns import Columns
 from fellspan.screening.laid import LaidBucket, joined_buckets, pair_columns
 from fellspan.screening.pairs import HEIGHT_REFERENCES, Candidates, SiteColumns
@@ -241,15 +242,11 @@ class Batch:
         rows = self._rows[profiles.which[clear]]
         if clear.size == 0:
             return np.asarray(rows)
-        least, most = likely_clear(
-            rays,
-            profiles,
-            stands,
-            found.errors,
-            clear,
-            median_k=settings.median_k,
-            confidence=settings.confidence,
-        )
+        spare = rays.margin_m.min(axis=0)
+        if stands.left_out_m is not None:
+            bulge = bulge_m(profiles.distance_m, k=settings.median_k)
+            spare = np.minimum(spare, rays.available_m - stands.left_out_m - bulge)
+        least, most = likely_clear(spare, profiles, stands, found.errors, clear, confidence=settings.confidence)
         falls = most < settings.confidence
         columns.verdict[rows[falls]] = MARGINAL
         columns.confidence[rows[falls]] = np.minimum(columns.confidence[rows[falls]], most[falls])

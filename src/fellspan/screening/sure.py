@@ -16,7 +16,6 @@ from fellspan.design.draws import DRAWS, MOST_POINTS
 from fellspan.design.error_model import GRADIENT_UNIT, error_model
 from fellspan.links import clearance
 from fellspan.screening.profiles import Profiles
-from fellspan.screening.rays import Rays
 from fellspan.screening.stand import HeightErrors, Standings
 
 Floats = NDArray[np.float64]
@@ -29,16 +28,17 @@ THINNED: Final = 0.02
 
 
 def likely_clear(
-    rays: Rays,
+    spare_m: Floats,
     profiles: Profiles,
     stands: Standings,
     errors: HeightErrors,
     which: Index,
     *,
-    median_k: float,
     confidence: float,
 ) -> tuple[Floats, Floats]:
     """Of the pairs `which`, (m,), which all are clear by the quick confidence: the least and the most that drawn errors leave.
+
+    `spare_m`, (q, n), is the height that rays have to spare over what they must clear, the least over the rules.
 
     Returns
     -------
@@ -46,7 +46,7 @@ def likely_clear(
         Bounds of the probability that all rules hold, by the draws, (m,), and room for their scatter: 'clear' stands
         where `least` is at least the confidence asked, and falls where `most` is below it.
     """
-    part = _Part.of(rays, profiles, stands, errors, which, median_k=median_k)
+    part = _Part.of(spare_m, profiles, stands, errors, which)
     sigma = np.sqrt(np.maximum(part.variance(), 0.0))
     z = np.where(part.spare_m >= -clearance.TOLERANCE_M, np.inf, -np.inf)
     np.divide(part.spare_m, sigma, out=z, where=sigma > 0.0)
@@ -87,15 +87,10 @@ class _Part:
     """Pairs on which cover stands on one source only, bare somewhere: else errors of ground and cover are not told apart so."""
 
     @classmethod
-    def of(
-        cls, rays: Rays, profiles: Profiles, stands: Standings, errors: HeightErrors, which: Index, *, median_k: float
-    ) -> "_Part":
+    def of(cls, spare_m: Floats, profiles: Profiles, stands: Standings, errors: HeightErrors, which: Index) -> "_Part":
         distance = profiles.distance_m[which]
         length = profiles.length_m[which, np.newaxis]
         curve = clearance.bulge_m(distance, k=1.0)
-        spare = rays.margin_m[:, which].min(axis=0)
-        if stands.left_out_m is not None:
-            spare = np.minimum(spare, rays.available_m[which] - stands.left_out_m[which] - curve / median_k)
         sigma = profiles.sigma_m[which]
         ground = np.minimum(profiles.ground_sigma_m[which], sigma)
         total = sigma if stands.bared is None else np.where(stands.bared[which], ground, sigma)
@@ -113,7 +108,7 @@ class _Part:
             gradient=models[0].gradient_error,
             distance_m=distance,
             length_m=length,
-            spare_m=spare,
+            spare_m=spare_m[which],
             ground_m=ground,
             cover_m=np.sqrt(np.maximum(total**2 - ground**2, 0.0)),
             # What is known exactly does not move with a shift along the path.
