@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 from fellspan.geodesy.geodesic import WGS84_GEOD, GeodesicPath
 
 _MEAN_RADIUS_M = 6_371_008.8  # IUGG mean radius R1; a first guess only
-_METRES_PER_DEGREE = 110_574.0  # one degree of latitude at the equator on WGS 84, the shortest
+METRES_PER_DEGREE = 110_574.0  # one degree of latitude at the equator on WGS 84, the shortest
 _PIECE_M = 2_000.0
 
 Floats = NDArray[np.float64]
@@ -24,31 +24,49 @@ def along_across(path: GeodesicPath, latitude_deg: Floats, longitude_deg: Floats
     before A. Newton steps on the foot of the perpendicular: at the foot, the geodesic to the point leaves at 90 degrees.
     """
     count = latitude_deg.size
-    if count == 0:
+    a = path.a
+    return along_across_many(
+        np.full(count, a.latitude_deg),
+        np.full(count, a.longitude_deg),
+        np.full(count, path.bearing_ab_deg),
+        latitude_deg,
+        longitude_deg,
+    )
+
+
+def along_across_many(
+    a_latitude_deg: Floats, a_longitude_deg: Floats, bearing_deg: Floats, latitude_deg: Floats, longitude_deg: Floats
+) -> tuple[Floats, Floats]:
+    """As `along_across` for points (n,) each beside a path of its own, which leaves A, (n,), at a true bearing, (n,).
+
+    What a point gets does not depend on the others.
+    """
+    if latitude_deg.size == 0:
         return np.zeros(0), np.zeros(0)
-    a, azimuth = path.a, path.bearing_ab_deg
-    a_longitude, a_latitude = np.full(count, a.longitude_deg), np.full(count, a.latitude_deg)
-    start = np.full(count, azimuth)
-    bearing, _, distance = WGS84_GEOD.inv(a_longitude, a_latitude, longitude_deg, latitude_deg)
-    turn = np.radians(np.asarray(bearing) - azimuth)
+    bearing, _, distance = WGS84_GEOD.inv(a_longitude_deg, a_latitude_deg, longitude_deg, latitude_deg)
+    turn = np.radians(np.asarray(bearing) - bearing_deg)
     arc = np.asarray(distance) / _MEAN_RADIUS_M
     along = _MEAN_RADIUS_M * np.arctan2(np.cos(turn) * np.sin(arc), np.cos(arc))
     across = np.asarray(distance) * np.sin(turn)
+    open_ = np.arange(latitude_deg.size)
     for _ in range(6):
-        foot_longitude, foot_latitude, back = WGS84_GEOD.fwd(a_longitude, a_latitude, start, along)
-        bearing, _, distance = WGS84_GEOD.inv(foot_longitude, foot_latitude, longitude_deg, latitude_deg)
+        foot_longitude, foot_latitude, back = WGS84_GEOD.fwd(
+            a_longitude_deg[open_], a_latitude_deg[open_], bearing_deg[open_], along[open_]
+        )
+        bearing, _, distance = WGS84_GEOD.inv(foot_longitude, foot_latitude, longitude_deg[open_], latitude_deg[open_])
         turn = np.radians(np.asarray(bearing) - (np.asarray(back) + 180.0))
         ahead = np.asarray(distance) * np.cos(turn)
-        across = np.asarray(distance) * np.sin(turn)
-        along = along + ahead
-        if float(np.max(np.abs(ahead))) < 1e-5:
+        across[open_] = np.asarray(distance) * np.sin(turn)
+        along[open_] += ahead
+        open_ = open_[np.abs(ahead) >= 1e-5]
+        if open_.size == 0:
             break
     return along, across
 
 
 def reach_boxes(bounds: Floats, reach_m: Floats) -> NDArray[np.object_]:
     """Boxes in longitude and latitude, (n,), around bounds (n, 4: west, south, east, north), `reach_m` (n,) wider all round."""
-    reach_deg = (np.asarray(reach_m) + 5.0) / _METRES_PER_DEGREE
+    reach_deg = (np.asarray(reach_m) + 5.0) / METRES_PER_DEGREE
     south, north = bounds[:, 1] - reach_deg, bounds[:, 3] + reach_deg
     poleward = np.minimum(np.maximum(np.abs(south), np.abs(north)), 90.0)
     # Beside a pole every longitude is near: the box goes all the way round.

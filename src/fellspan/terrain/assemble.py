@@ -16,8 +16,9 @@ from fellspan.geodesy.geodesic import GeodesicPath
 from fellspan.terrain.alongpath import Floats
 from fellspan.terrain.beside import beside
 from fellspan.terrain.cover import NONE, OTHER, Cover, CoverLayer, SurfaceStep, combine, surface_steps
+from fellspan.terrain.many_obstacles import ManyObstacles
 from fellspan.terrain.obstacle_tops import EDGE_M, Standing, nodes, stand
-from fellspan.terrain.obstacles import Crossing, ObstacleIndex, crossings_of
+from fellspan.terrain.obstacles import Crossing, crossings_of
 from fellspan.terrain.profile import MEASURED_GROUND, MEASURED_NOTHING, MEASURED_TOP, BesidePath
 from fellspan.terrain.samples import Samples, merged
 from fellspan.terrain.sea import SEA_ERROR_M, Shores
@@ -39,7 +40,7 @@ class Layers:
     is_bare: bool
     surface: RasterStack | None
     cover: tuple[tuple[CoverSource, RasterStack], ...]
-    obstacles: ObstacleIndex
+    obstacles: ManyObstacles
     survey: SurveyIndex
     sources: tuple[str, ...]
     gaps: GapPolicy

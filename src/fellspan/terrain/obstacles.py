@@ -75,6 +75,17 @@ class Crossing:
     supports: Floats | None = None
     """Vertices of a span as (along, across), shape (v, 2), m."""
 
+    @classmethod
+    def between(
+        cls, obstacle: Obstacle, start_m: float, stop_m: float, *, length_m: float, supports: Floats | None
+    ) -> "Crossing | None":
+        """The part of a stretch that lies on a path of a length; None where none does."""
+        if stop_m < 0.0 or start_m > length_m:
+            return None
+        begin, finish = max(start_m, 0.0), min(stop_m, length_m)
+        nearest = min(max(0.5 * (start_m + stop_m), begin), finish)
+        return cls(obstacle=obstacle, from_m=begin, to_m=finish, nearest_m=nearest, supports=supports)
+
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class NearShape:
@@ -107,7 +118,7 @@ class ObstacleIndex:
         indices, shifts = near_path(self._tree, path)
         if indices.size == 0:
             return []
-        shapes = self._cut(self._shapes[indices], shifts, self._reach[indices], path)
+        shapes = self.cut(self._shapes[indices], shifts, self._reach[indices], path)
         plane = _to_plane(shapes, path)
         bounds = shapely.bounds(plane).reshape(-1, 4)
         with np.errstate(invalid="ignore"):  # NaN: nothing is left of a shape that was cut
@@ -128,7 +139,7 @@ class ObstacleIndex:
         """Every crossing of the path, sorted by where it begins; exact to 0.1 m on paths of 50 km."""
         return crossings_of(self.near(path), path)
 
-    def _cut(
+    def cut(
         self, shapes: NDArray[np.object_], shifts: Floats, reach_m: Floats, path: GeodesicPath
     ) -> NDArray[np.object_]:
         """The shapes moved to the path's longitudes, large ones cut to its surroundings, long edges divided."""
@@ -138,12 +149,11 @@ class ObstacleIndex:
         latitude, longitude = path.positions(np.linspace(0.0, path.length_m, max(2, int(path.length_m / 2000.0) + 2)))
         bounds = np.array([[longitude.min(), latitude.min(), longitude.max(), latitude.max()]])
         if np.abs(bounds[0, [1, 3]]).max() < 88.0:
-            large = (shapely.get_num_coordinates(moved) > _MANY_VERTICES) | (_extent_deg(moved) > 0.2)
+            large = are_large(moved)
             for i in np.flatnonzero(large):
                 frame = shapely.bounds(reach_boxes(bounds, reach_m[i : i + 1] + 500.0)[0])
                 moved[i] = _clipped(shapes[i], frame)
-        divided: NDArray[np.object_] = shapely.segmentize(moved, _LONG_EDGE_DEG)
-        return divided
+        return divided(moved)
 
 
 def crossings_of(near: Sequence[NearShape], path: GeodesicPath) -> list[Crossing]:
@@ -154,6 +164,17 @@ def crossings_of(near: Sequence[NearShape], path: GeodesicPath) -> list[Crossing
         if one.crosses:
             found.extend(_cross(one.obstacle, one.plane, axis, path, one.shift))
     return sorted(found, key=lambda crossing: (crossing.from_m, crossing.to_m, crossing.obstacle.name))
+
+
+def are_large(shapes: NDArray[np.object_]) -> NDArray[np.bool_]:
+    """Shapes (n,) of which only the part beside a path is looked at."""
+    return np.asarray((shapely.get_num_coordinates(shapes) > _MANY_VERTICES) | (_extent_deg(shapes) > 0.2))
+
+
+def divided(shapes: NDArray[np.object_]) -> NDArray[np.object_]:
+    """The same shapes with long edges divided, so that they stay straight in longitude and latitude."""
+    short: NDArray[np.object_] = shapely.segmentize(shapes, _LONG_EDGE_DEG)
+    return short
 
 
 def _extent_deg(shapes: NDArray[np.object_]) -> Floats:
@@ -191,7 +212,6 @@ def _cross(
 ) -> list[Crossing]:
     if shape.is_empty:
         return []
-    length = path.length_m
     supports: Floats | None = None
     if isinstance(shape, shapely.Point):
         half = obstacle.radius_m**2 - shape.y**2
@@ -205,22 +225,25 @@ def _cross(
             supports = np.column_stack(along_across(path, points[:, 1], points[:, 0] + shift))
     else:
         ends = _intervals(shape, axis)
-    crossings = []
-    for start, stop in ends:
-        if stop < 0.0 or start > length:
-            continue
-        begin, finish = max(start, 0.0), min(stop, length)
-        nearest = min(max(0.5 * (start + stop), begin), finish)
-        crossings.append(Crossing(obstacle=obstacle, from_m=begin, to_m=finish, nearest_m=nearest, supports=supports))
-    return crossings
+    found = (Crossing.between(obstacle, *one, length_m=path.length_m, supports=supports) for one in ends)
+    return [crossing for crossing in found if crossing is not None]
 
 
 def _intervals(area: BaseGeometry, axis: shapely.LineString) -> list[tuple[float, float]]:
-    """Where an area covers the axis: intervals, sorted, touching ones joined."""
+    """Where an area covers the axis."""
+    return intervals_of(common_of(area, axis))
+
+
+def common_of(area: BaseGeometry, axis: BaseGeometry) -> BaseGeometry:
+    """What an area has in common with the axis of a path."""
     try:
-        common = shapely.intersection(area, axis)
+        return shapely.intersection(area, axis)
     except shapely.errors.GEOSException:
-        common = shapely.intersection(shapely.make_valid(area), axis)
+        return shapely.intersection(shapely.make_valid(area), axis)
+
+
+def intervals_of(common: BaseGeometry) -> list[tuple[float, float]]:
+    """Parts of an axis as intervals, sorted, touching ones joined."""
     if common.is_empty:
         return []
     parts = [shapely.bounds(part) for part in shapely.get_parts(np.array([common], dtype=object))]

@@ -12,8 +12,8 @@ from typing import TypeAlias, TypeVar, get_args
 
 from fellspan.errors import TerrainError, VerticalDatumError
 from fellspan.terrain.assemble import Layers
+from fellspan.terrain.many_obstacles import ManyObstacles
 from fellspan.terrain.obstacle_files import read_obstacles
-from fellspan.terrain.obstacles import ObstacleIndex
 from fellspan.terrain.sources import CoverSource, ObstacleSource, RasterSource, SurveySource
 from fellspan.terrain.stack import RasterStack
 from fellspan.terrain.survey import read_survey
@@ -95,7 +95,7 @@ def open_layers(
         is_bare=bare is not None,
         surface=top if bare is not None else None,
         cover=covers,
-        obstacles=ObstacleIndex([obstacle for read, _, _ in read_from for obstacle in read]),
+        obstacles=ManyObstacles([obstacle for read, _, _ in read_from for obstacle in read]),
         complete=frozenset(kind for source in obstacle_sources for kind in _complete(source)),
         survey=SurveyIndex(surveys, radius_m=0.5 * finest, growth_years=growth_years),
         sources=(*rasters[0].names, *(f"survey: {file.name}" for file in surveys), "sea level"),
