@@ -19,7 +19,7 @@ Floats = NDArray[np.float64]
 TOLERANCE_M: Final = 1e-6
 """Rounding of the arithmetic, m: a height that is missing by less is not missing."""
 
-_SAME: Final = 1e-9
+SAME: Final = 1e-9
 """Values that differ by less are equal but for rounding."""
 
 
@@ -112,7 +112,7 @@ def worst_indices(values: Floats, distance_m: Floats) -> NDArray[np.intp]:
     """As `worst_index`, for arrays of shape (..., n): indices of shape (...)."""
     found = np.asarray(np.argmin(values, axis=-1))
     least = np.take_along_axis(values, found[..., np.newaxis], axis=-1)
-    ties = values <= least + _SAME
+    ties = values <= least + SAME
     many = np.count_nonzero(ties, axis=-1) > 1
     if many.any():
         from_middle = np.abs(distance_m - 0.5 * distance_m[..., -1:])

@@ -5,7 +5,7 @@ Arrays throughout, so that one path and a batch are the same thing: path arrays 
 """
 
 from dataclasses import dataclass
-from typing import Final
+from typing import Final, Protocol
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -223,8 +223,32 @@ def _diffraction_db(
     return np.maximum(np.asarray(loss, dtype=np.float64), 0.0)
 
 
+class FittedPaths(Protocol):
+    """Paths by what the smooth Earth fitted to them needs, one value a path (...)."""
+
+    @property
+    def length_m(self) -> Floats:
+        """Path lengths."""
+        ...
+
+    @property
+    def a_height_m(self) -> Floats:
+        """Of A above the smooth Earth."""
+        ...
+
+    @property
+    def b_height_m(self) -> Floats:
+        """Of B."""
+        ...
+
+    @property
+    def sea_fraction(self) -> Floats:
+        """Share of the path over open sea."""
+        ...
+
+
 def most_db(
-    rows: PathRows, over_db: Floats, *, inverse_k: Floats, frequency_hz: Floats, polarization: Polarization
+    rows: FittedPaths, over_db: Floats, *, inverse_k: Floats, frequency_hz: Floats, polarization: Polarization
 ) -> Floats:
     """What the cheaper way does not exceed at any of several k, dB, shape (..., f); cheap, and sure rather than near.
 

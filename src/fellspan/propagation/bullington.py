@@ -3,6 +3,7 @@
 Works on bare arrays and 1/k, batched over leading axes; knows nothing of rasters or links. A batch is one call, never a loop.
 """
 
+from collections.abc import Callable
 from copy import copy
 
 import numpy as np
@@ -41,15 +42,7 @@ class _Path:
         where S < 0, and the two horizon rays cross at nu = sqrt(2 d Sa Sb / wavelength), which rounding cannot lead out of the
         path.
         """
-        slope_a, slope_b, above = self._maxima(height_m, a, b)
-        scale = np.sqrt(2.0 * self.length / self.wavelength)
-        nu = scale * np.where(
-            slope_a < 0.0,  # (50), (51)
-            above,  # line of sight: the profile point with the largest nu. (52), (53)
-            np.sqrt(slope_a * np.maximum(slope_b, 0.0)),  # beyond the horizon. (54) to (56)
-        )
-        edge = as_floats(knife_edge_loss_db(nu))
-        return np.asarray(edge + (1.0 - np.exp(-edge / 6.0)) * (10.0 + 0.02 * self.length / 1000.0))  # (57)
+        return _over_horizons_db(self._maxima(height_m, a, b), self.length, self.wavelength)
 
     def _maxima(self, height_m: FloatArray, a: FloatArray, b: FloatArray) -> FloatArray:
         """Slopes of both horizons against the ray, and the greatest height above it over sqrt(d1 d2); shape (3, ...).
@@ -73,6 +66,17 @@ class _Path:
             if not free.all():
                 out[1] = _highest(_with(above / from_b, bent, from_a))
         return found
+
+
+def _over_horizons_db(horizons: FloatArray, length: FloatArray, wavelength: FloatArray) -> FloatArray:
+    slope_a, slope_b, above = horizons
+    nu = np.sqrt(2.0 * length / wavelength) * np.where(
+        slope_a < 0.0,  # (50), (51)
+        above,  # line of sight: the profile point with the largest nu. (52), (53)
+        np.sqrt(slope_a * np.maximum(slope_b, 0.0)),  # beyond the horizon. (54) to (56)
+    )
+    edge = as_floats(knife_edge_loss_db(nu))
+    return np.asarray(edge + (1.0 - np.exp(-edge / 6.0)) * (10.0 + 0.02 * length / 1000.0))  # (57)
 
 
 def _rows_of(array: FloatArray, rows: NDArray[np.intp], shape: tuple[int, ...]) -> FloatArray:
@@ -311,3 +315,53 @@ def _added_db(path: _Path, spherical: FloatArray, a: FloatArray, b: FloatArray) 
     a, b = (_rows_of(value, rows, costs.shape) for value in (a, b))
     added[rows] = np.maximum(spherical[rows] - part.bullington_db(np.zeros(1), a, b), 0.0)
     return added
+
+
+def delta_bullington_over_horizons_db(
+    horizons: FloatArray,
+    smooth_horizons: Callable[[NDArray[np.intp]], FloatArray],
+    *,
+    length_m: FloatArray,
+    a_height_m: FloatArray,
+    b_height_m: FloatArray,
+    frequency_hz: FloatArray,
+    k: FloatArray,
+    polarization: ArrayLike,
+    sea_fraction: FloatArray,
+) -> FloatArray:
+    """`fitted_delta_bullington_loss_db` of many paths whose horizons are known already, dB, shape (p, ...).
+
+    Parameters
+    ----------
+    horizons
+        Shape (3, p, ...): slopes of the horizons of A and of B against the ray, and the greatest height above it over
+        sqrt(d1 d2); the second counts where the first is not below 0, the third where it is.
+    smooth_horizons
+        Gives the same of the smooth Earth, a level of 0 seen from the effective heights, for some of the p paths.
+    length_m, a_height_m, b_height_m, frequency_hz, k, sea_fraction
+        Broadcast to (p, ...); `length_m` has as many axes.
+    polarization
+        "horizontal" or "vertical".
+    """
+    with quiet():
+        wavelength = as_floats(wavelength_m(frequency_hz))
+        actual = _over_horizons_db(horizons, length_m, wavelength)
+        spherical = as_floats(
+            spherical_earth_loss_db(
+                length_m,
+                a_height_m=a_height_m,
+                b_height_m=b_height_m,
+                frequency_hz=frequency_hz,
+                k=k,
+                polarization=polarization,
+                sea_fraction=sea_fraction,
+            )
+        )
+        negative = (as_floats(inverse_k(k)) < 0.0) & (np.minimum(a_height_m, b_height_m) >= 0.0)
+        costs = np.broadcast_to(~(spherical <= 0.0) & ~negative, actual.shape)
+        rows = np.flatnonzero(costs.reshape((costs.shape[0], -1)).any(axis=-1))
+        if rows.size:
+            smooth = _over_horizons_db(smooth_horizons(rows), length_m[rows], wavelength)
+            added = np.maximum(np.broadcast_to(spherical, actual.shape)[rows] - smooth, 0.0)
+            actual[rows] += np.where(np.broadcast_to(negative, actual.shape)[rows], 0.0, added)  # (66)
+        return actual

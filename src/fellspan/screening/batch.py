@@ -12,12 +12,11 @@ from numpy.typing import NDArray
 from fellspan.errors import FellspanError
 from fellspan.links.assess import REFINE_PARTS
 from fellspan.links.budget import tilts_deg
-from fellspan.links.clearance import bulge_m
 from fellspan.screening.columns import Columns
-from fellspan.screening.laid import LaidBucket, joined_buckets, pair_columns
+from fellspan.screening.laid import LaidBucket, pair_columns
 from fellspan.screening.pairs import HEIGHT_REFERENCES, Candidates, SiteColumns
 from fellspan.screening.profiles import FINE_PER_OCTAVE, Profiles, closer, regular, steps_of, width_of
-from fellspan.screening.rays import CLEAR, MARGINAL, Judged, Rays, judged, rays_over, worth_a_closer_look
+from fellspan.screening.rays import CLEAR, MARGINAL, Judged, Rules, closer_look, judged
 from fellspan.screening.signal import SignalColumns, best_sector, signal_columns
 from fellspan.screening.single import name_of
 from fellspan.screening.stand import Antennas, Standings, antennas_at, standings
@@ -140,14 +139,13 @@ class Batch:
     def run(self, parts: list[Index]) -> Block:
         """Fill the rows of a block; give those that it could not decide on."""
         block = Block()
-        laid: dict[int, list[LaidBucket]] = {}
+        laid: list[LaidBucket] = []
         for which in parts:
             with self._setting.many.in_use():
-                for bucket in self._geometry(which, int(width_of(self._steps[which] + 1).max()), block):
-                    laid.setdefault(bucket.distance_m.shape[1], []).append(bucket)
+                laid += self._geometry(which, int(width_of(self._steps[which] + 1).max()), block)
         if laid:
             # What is worked out for pairs as a whole is worked out for many at once.
-            self._signal([joined_buckets(laid[width]) for width in sorted(laid)], block)
+            self._signal(laid, block)
         return block
 
     def _geometry(self, which: Index, width: int, block: Block) -> list[LaidBucket]:
@@ -171,17 +169,20 @@ class Batch:
             coarse, a, b = coarse.rows(~refused), a.rows(~refused), b.rows(~refused)
         if coarse.which.size == 0:
             return []
-        frequency_hz = setting.candidates.radio.frequency_hz
-        rays = rays_over(coarse, standings(coarse), a, b, settings=settings, frequency_hz=frequency_hz)
-        wanted = worth_a_closer_look(rays, coarse)
-        fine, doubtful = closer(self._laid, coarse, wanted, step_m=self._fine_m[coarse.which])
-        doubtful |= ~np.isfinite(fine.ground_m).all(axis=1)
-        block.one_by_one.append(self._rows[fine.which[doubtful]])
-        own_width = width_of(fine.last + 1, per_octave=FINE_PER_OCTAVE)
+        rules = Rules.of(coarse.length_m, settings=settings, frequency_hz=setting.candidates.radio.frequency_hz)
+        step = self._fine_m[coarse.which]
+        more, total = closer_look(coarse, standings(coarse).surface_m, a, b, rules, step_m=step)
+        width_own = width_of(total, per_octave=FINE_PER_OCTAVE)
         found: list[LaidBucket] = []
-        for one in np.unique(own_width[~doubtful]).tolist():
-            some = np.flatnonzero((own_width == one) & ~doubtful)
-            found.append(self._judge(fine.rows(some).narrowed(one), a.rows(some), b.rows(some), block))
+        for one in np.unique(width_own).tolist():
+            rows = np.flatnonzero(width_own == one)
+            fine, doubtful = closer(self._laid, coarse, rows, more=more, total=total, width=one, step_m=step)
+            doubtful |= ~np.isfinite(fine.ground_m).all(axis=1)
+            if doubtful.any():
+                block.one_by_one.append(self._rows[fine.which[doubtful]])
+                fine, rows = fine.rows(~doubtful), rows[~doubtful]
+            if rows.size:
+                found.append(self._judge(fine, a.rows(rows), b.rows(rows), rules.rows(rows), block))
         return found
 
     def _antennas(self, profiles: Profiles) -> tuple[Antennas, Antennas]:
@@ -205,17 +206,16 @@ class Batch:
                 int(row), float(profiles.distance_m[index, start]), float(profiles.distance_m[index, stop])
             )
 
-    def _judge(self, profiles: Profiles, a: Antennas, b: Antennas, block: Block) -> LaidBucket:
+    def _judge(self, profiles: Profiles, a: Antennas, b: Antennas, rules: Rules, block: Block) -> LaidBucket:
         """The path verdict of pairs of one width, and what their signal is worked out from."""
         setting, columns = self._setting, self._columns
-        candidates, settings = setting.candidates, setting.candidates.settings
         stands = standings(profiles)
-        rays = rays_over(profiles, stands, a, b, settings=settings, frequency_hz=candidates.radio.frequency_hz)
-        found = judged(rays, profiles, stands, a, b, settings=settings, ground_is_bare=setting.many.layers.is_bare)
+        bare = setting.many.layers.is_bare
+        found = judged(profiles, stands, a, b, rules, settings=setting.candidates.settings, ground_is_bare=bare)
         rows = self._rows[profiles.which]
         for name in ("verdict", "basis", "confidence", "governing", "worst_fraction", "worst_at_m", "extra_at_place_m"):
             getattr(columns, name)[rows] = getattr(found, name)
-        block.unsure.append(self._after_draws(rays, profiles, stands, found))
+        block.unsure.append(self._after_draws(profiles, stands, found))
         return self._bucket(profiles, stands.surface_m, stands.cover_kind, a, b, found)
 
     def _signal(self, buckets: list[LaidBucket], block: Block) -> None:
@@ -235,18 +235,14 @@ class Batch:
         for column in fields(SignalColumns):
             getattr(columns, column.name)[pairs.row] = getattr(signal, column.name)
 
-    def _after_draws(self, rays: Rays, profiles: Profiles, stands: Standings, found: Judged) -> Index:
+    def _after_draws(self, profiles: Profiles, stands: Standings, found: Judged) -> Index:
         """Let bounds of what draws would say decide on the clear ones; those on which only the draws themselves can."""
         settings, columns = self._setting.candidates.settings, self._columns
         clear = np.flatnonzero(found.verdict == CLEAR)
         rows = self._rows[profiles.which[clear]]
         if clear.size == 0:
             return np.asarray(rows)
-        spare = rays.margin_m.min(axis=0)
-        if stands.left_out_m is not None:
-            bulge = bulge_m(profiles.distance_m, k=settings.median_k)
-            spare = np.minimum(spare, rays.available_m - stands.left_out_m - bulge)
-        least, most = likely_clear(spare, profiles, stands, found.errors, clear, confidence=settings.confidence)
+        least, most = likely_clear(found.spare_m, profiles, stands, found.errors, clear, confidence=settings.confidence)
         falls = most < settings.confidence
         columns.verdict[rows[falls]] = MARGINAL
         columns.confidence[rows[falls]] = np.minimum(columns.confidence[rows[falls]], most[falls])
@@ -267,11 +263,7 @@ class Batch:
     ) -> LaidBucket:
         which, length = profiles.which, profiles.length_m
         k = self._setting.candidates.settings.median_k
-        distance = profiles.distance_m
-        middle = np.argmin(np.abs(distance - 0.5 * length[:, np.newaxis]), axis=1)
-        share = np.zeros(self._rows.size)
-        share[which] = distance[np.arange(which.size), middle] / length
-        latitude, longitude = self._ways.positions_of(which, share[which])
+        latitude, longitude = self._ways.positions_of(which, found.middle)
         return LaidBucket(
             row=self._rows[which],
             hub=self._hub[which],
@@ -287,7 +279,7 @@ class Batch:
             middle_latitude_deg=latitude,
             middle_longitude_deg=longitude,
             trees_in_zone=found.trees_in_zone,
-            distance_m=distance,
+            distance_m=profiles.distance_m,
             ground_m=profiles.ground_m,
             surface_m=surface_m,
             cover_kind=cover_kind,

@@ -51,23 +51,6 @@ class LaidBucket:
     """Samples that the study took as open sea; None where there are none."""
 
 
-def joined_buckets(buckets: Sequence[LaidBucket]) -> LaidBucket:
-    """Buckets of one width as one, in their order."""
-    if len(buckets) == 1:
-        return buckets[0]
-    columns: dict[str, NDArray[np.generic] | None] = {}
-    for field in fields(LaidBucket):
-        parts = [getattr(bucket, field.name) for bucket in buckets]
-        if field.name == "is_sea":
-            # Some buckets may have met none.
-            dry = [np.zeros(bucket.distance_m.shape, dtype=np.bool_) for bucket in buckets]
-            parts = [one if one is not None else none for one, none in zip(parts, dry, strict=True)]
-        columns[field.name] = None if parts[0] is None else np.concatenate(parts)
-    if all(bucket.surface_m is bucket.ground_m for bucket in buckets):
-        columns["surface_m"] = columns["ground_m"]
-    return LaidBucket(**columns)  # type: ignore[arg-type]
-
-
 def pair_columns(buckets: Sequence[LaidBucket]) -> LaidBucket:
     """The columns of buckets of any widths as one bucket without samples, in their order."""
     if len(buckets) == 1:

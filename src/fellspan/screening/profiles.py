@@ -65,106 +65,98 @@ class Profiles:
             **{field.name: value[rows] for field in fields(self) if (value := getattr(self, field.name)) is not None},
         )
 
-    def narrowed(self, width: int) -> "Profiles":
-        """As it is, or with fewer columns where what fills up the paths can be spared."""
-        count = self.distance_m.shape[1]
-        if width >= count:
-            return self
-
-        def narrow(values: NDArray[Scalar]) -> NDArray[Scalar]:
-            if values.ndim < 2 or values.shape[1] != count:
-                return values
-            return np.concatenate((values[:, : width - 1], values[:, -1:]), axis=1)
-
-        return replace(
-            self,
-            **{field.name: narrow(value) for field in fields(self) if (value := getattr(self, field.name)) is not None},
-        )
-
 
 def regular(
     laid: LaidPaths, which: Index, *, length_m: Floats, steps: Index, width: int
 ) -> tuple[Profiles, NDArray[np.bool_]]:
     """Paths at their regular steps, filled up to `width` with repeats of the last sample; and which are in doubt, (q,)."""
-    last = steps[which]
-    length = length_m[which]
-    place = np.arange(width)
-    distance = np.minimum(place, last[:, np.newaxis]) * (length / last)[:, np.newaxis]
-    inside = place <= last[:, np.newaxis]
-    np.copyto(distance, length[:, np.newaxis], where=place >= last[:, np.newaxis])
-    t = 2.0 * (distance / length[:, np.newaxis]) - 1.0
+    from fellspan.screening import paths_kernel
+
+    last, length = steps[which], length_m[which]
+    distance, t = np.empty((which.size, width)), np.empty((which.size, width))
+    paths_kernel.equal_steps(length, last, distance, t)
     laid.read_for(t, which)
-    found = laid.sample(t, which, inside=inside)
+    found = laid.sample(t, which, last=last)
     profiles = _profiles(found, which=which, last=last, length_m=length, cell_m=laid.cell_m[which], distance_m=distance)
     return profiles, found.doubtful
 
 
 def closer(
-    laid: LaidPaths, coarse: Profiles, wanted: NDArray[np.bool_], *, step_m: Floats
+    laid: LaidPaths, coarse: Profiles, rows: Index, *, more: NDArray[np.int32], total: Index, width: int, step_m: Floats
 ) -> tuple[Profiles, NDArray[np.bool_]]:
-    """The same paths with more samples on both sides of those `wanted`, (q, n), at distances that `step_m`, (q,), divides.
+    """Some of the paths, with more samples.
 
-    Filled up with repeats of the last sample but one: maxima, minima and lengths do not notice. Also which are in doubt, (q,).
+    Parameters
+    ----------
+    laid
+        What they are sampled from.
+    coarse
+        Paths at their regular steps.
+    rows
+        Which of them, (g,).
+    more, total, step_m
+        Of all of `coarse`: how many samples come after each, (q, n), at distances that `step_m`, (q,), divides, and how many
+        the path then has, (q,), at most `width`.
+
+    Returns
+    -------
+    profiles, doubtful
+        Filled up with repeats of the last sample but one: maxima, minima and lengths do not notice. Which are in doubt, (g,).
     """
-    count, columns = coarse.distance_m.shape
-    covered = wanted[:, :-1] | wanted[:, 1:]
-    path, interval = np.nonzero(covered)
-    step = step_m[path]
-    start, stop = coarse.distance_m[path, interval], coarse.distance_m[path, interval + 1]
-    # As `merged` has it, what stands within half a millimetre of a sample is left out.
-    first = np.floor((start + SAME_M) / step) + 1.0
-    after = np.ceil((stop - SAME_M) / step)
-    more = np.maximum(after - first, 0.0).astype(np.int64)
-    added = np.zeros((count, columns), dtype=np.int64)
-    added[path, interval + 1] = more
-    place = np.cumsum(added, axis=1) + np.arange(columns)
-    total = place[np.arange(count), coarse.last] + 1
-    width = int(width_of(total, per_octave=FINE_PER_OCTAVE).max())
+    from fellspan.screening import paths_kernel
 
-    begins = np.cumsum(more) - more
-    within = np.arange(int(more.sum())) - np.repeat(begins, more)
-    fine_path = np.repeat(path, more)
-    fine_m = (np.repeat(first, more) + within) * np.repeat(step, more)
-    fine_place = np.repeat(place[path, interval], more) + 1 + within
+    columns = coarse.distance_m.shape[1]
+    new = total[rows] - 1 - coarse.last[rows]
+    count = int(new.sum())
+    distance, come_from = np.empty((rows.size, width)), np.empty((rows.size, width), dtype=np.int64)
+    t, row_of, start_of = np.empty((count, 1)), np.empty(count, dtype=np.int64), np.empty(count, dtype=np.int64)
+    paths_kernel.with_more(
+        rows,
+        coarse.distance_m,
+        coarse.last,
+        coarse.length_m,
+        more,
+        step_m,
+        SAME_M,
+        np.cumsum(new) - new,
+        distance,
+        come_from,
+        t[:, 0],
+        row_of,
+        start_of,
+    )
+    which = coarse.which[rows]
+    wet = None if coarse.wet is None else coarse.wet.reshape(-1)[start_of][:, np.newaxis]
+    found = laid.sample(t, which[row_of], wet=wet)
+    doubtful = np.zeros(rows.size, dtype=np.bool_)
+    doubtful[row_of[found.doubtful]] = True
 
-    # Where each sample comes from: one of the coarse ones, or one of the new ones behind them all.
-    rows = np.arange(count)[:, np.newaxis] * width
-    come_from = np.zeros((count, width), dtype=np.int64)
-    flat = come_from.reshape(-1)
-    np.copyto(place, width - 1, where=np.arange(columns) >= coarse.last[:, np.newaxis])
-    place += rows
-    flat[place] = np.arange(count * columns).reshape(count, columns)
-    flat[fine_place + fine_path * width] = count * columns + np.arange(fine_m.size)
-    # Beyond the last sample but one: the last new one of the path, where the path ends with new ones.
-    behind = flat[(total - 2) + rows[:, 0]]
-    np.copyto(come_from, behind[:, np.newaxis], where=np.arange(width) >= (total - 1)[:, np.newaxis])
-    come_from[:, -1] = np.arange(count) * columns + coarse.last
+    def both(old: NDArray[Scalar], fresh: NDArray[Scalar]) -> NDArray[Scalar]:
+        wide = np.broadcast_to(old, (coarse.distance_m.shape[0], columns))
+        joined = np.empty(come_from.shape, dtype=old.dtype)
+        paths_kernel.joined(
+            np.ascontiguousarray(wide).reshape(-1), np.ascontiguousarray(fresh[:, 0]), come_from, joined
+        )
+        return joined
 
-    t = 2.0 * (fine_m / coarse.length_m[fine_path]) - 1.0
-    wet = None if coarse.wet is None else np.repeat(coarse.wet[path, interval], more)[:, np.newaxis]
-    found = laid.sample(t[:, np.newaxis], coarse.which[fine_path], wet=wet)
-    doubtful = np.zeros(count, dtype=np.bool_)
-    doubtful[fine_path[found.doubtful]] = True
-
-    def both(old: NDArray[Scalar], new: NDArray[Scalar]) -> NDArray[Scalar]:
-        wide = np.broadcast_to(old, (count, columns)).reshape(-1)
-        return np.concatenate((wide, new.reshape(-1))).take(come_from)
-
-    def alike(old: NDArray[Scalar], new: NDArray[Scalar]) -> NDArray[Scalar]:
+    def alike(old: NDArray[Scalar], fresh: NDArray[Scalar]) -> NDArray[Scalar]:
         """One value all along stays one, unless the closer look has met another."""
-        if old.shape[1] == 1 and (columns > 1) and bool((new[:, 0] == old[fine_path, 0]).all()):
-            return old
-        return both(old, np.broadcast_to(new, (fine_m.size, 1)))
+        fresh = np.broadcast_to(fresh, (count, 1))
+        if old.shape[1] == 1 and (columns > 1) and bool((fresh[:, 0] == old[rows[row_of], 0]).all()):
+            return old[rows]
+        return both(old, fresh)
 
     cover = kind = None
     if coarse.cover_m is not None and found.cover_m is not None:
         cover = both(coarse.cover_m, found.cover_m)
     if coarse.cover_kind is not None and found.cover_kind is not None:
         kind = both(coarse.cover_kind, found.cover_kind)
-    profiles = replace(
-        coarse,
-        last=total - 1,
-        distance_m=both(coarse.distance_m, fine_m),
+    profiles = Profiles(
+        which=which,
+        last=total[rows] - 1,
+        length_m=coarse.length_m[rows],
+        cell_m=coarse.cell_m[rows],
+        distance_m=distance,
         ground_m=both(coarse.ground_m, found.ground_m),
         cover_m=cover,
         cover_kind=kind,
@@ -173,6 +165,7 @@ def closer(
         source=alike(coarse.source, found.source),
         known=alike(coarse.known, found.known),
         wet=None,
+        tells=coarse.tells[rows],
     )
     return profiles, doubtful
 

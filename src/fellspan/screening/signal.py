@@ -15,7 +15,7 @@ from fellspan.screening.pairs import UNKNOWN, Candidates
 from fellspan.screening.path_sets import PathSets
 from fellspan.screening.signal_ends import PairEnds, best_sector, lines_dbm, pair_ends
 from fellspan.screening.signal_fading import Shares, shares_of_year
-from fellspan.screening.signal_level import Level, climate_of, level_of, rows_of_bucket, spread_columns
+from fellspan.screening.signal_level import Level, climate_of, level_of, spread_columns
 
 __all__ = ["SignalColumns", "best_sector", "signal_columns"]
 
@@ -66,7 +66,7 @@ def signal_columns(candidates: Candidates, *buckets: LaidBucket, sector: Index) 
     weather_known = bool(table) and None not in powers
     has_gains = np.isfinite(ends.gain_a_dbi) & np.isfinite(ends.gain_b_dbi)
     climate = climate_of(candidates, bucket, has_margin=has_gains & weather_known)
-    rows = PathSets.of([rows_of_bucket(one) for one in buckets])
+    rows = PathSets.of(buckets)
     spread = spread_columns(rows, climate)
     level = level_of(candidates, rows, climate, spread)
     power = row_power_dbm(radio, None if wanted is None else table[wanted])

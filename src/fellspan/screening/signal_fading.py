@@ -17,7 +17,7 @@ from fellspan.links.outages import Causes, outage_of_year
 from fellspan.links.receivers import receiver_of, rows_of, wanted_index
 from fellspan.links.site import Antenna
 from fellspan.links.verdicts import SIGNAL_BAND_DB
-from fellspan.links.ways_past_trees import depth_in_trees_m, mean_over_path_m, most_db, ways_past_trees
+from fellspan.links.ways_past_trees import depth_in_trees_m, most_db, ways_past_trees
 from fellspan.propagation import Outage, one_way_outage, two_way_outage
 from fellspan.screening.pairs import Candidates
 from fellspan.screening.path_sets import PathSets
@@ -120,16 +120,11 @@ class _Fading:
     ) -> None:
         self._candidates, self._ends, self._some, self._sector = candidates, ends, some, sector[some]
         radio, weather = candidates.radio, candidates.settings.weather
-        # Only one edition asks for the mean of the ground.
-        asks = bool(climate.edition_19.any())
-        ground = np.full(rows.length_m.shape, np.nan)
-        for own, part in rows.each() if asks else ():
-            ground[own] = mean_over_path_m(part.distance_m, part.ground_m)
         columns = fades.PathColumns(
             length_m=rows.length_m[some],
             a_amsl_m=rows.a_amsl_m[some],
             b_amsl_m=rows.b_amsl_m[some],
-            mean_ground_m=ground[some],
+            mean_ground_m=rows.mean_ground_m[some],
             latitude_deg=latitude_deg[some],
         )
         in_level = level.diffraction_db[some] + level.vegetation_db[some]
@@ -227,15 +222,9 @@ def _by_inverse_k_db(
     Left at 0 where they cannot use up at any k what each direction has room for: there is no outage then whatever they are.
     """
     frequency, polarization = level.frequency_hz, candidates.radio.polarization
-    every = np.empty((rows.length_m.size, frequency.size))
-    for own, part in rows.each():
-        every[own] = most_db(
-            part,
-            level.lowest_k_db[own],
-            inverse_k=spread.inverse_k[own],
-            frequency_hz=frequency,
-            polarization=polarization,
-        )
+    every = most_db(
+        rows, level.lowest_k_db, inverse_k=spread.inverse_k, frequency_hz=frequency, polarization=polarization
+    )
     most = every[some]
     enough = np.ones(some.size, dtype=np.bool_)
     for room, transmit_hz in zip(rooms_db, candidates.radio.transmit_hz, strict=True):

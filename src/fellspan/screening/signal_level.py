@@ -7,20 +7,18 @@ from numpy.typing import NDArray
 
 from fellspan.climate.columns import ClimateColumns, climate_columns
 from fellspan.links import fades
-from fellspan.links.path_loss import TREE
 from fellspan.links.signal_path import air_level_m
 from fellspan.links.ways_past_trees import (
     DIFFERS_DB,
-    PathRows,
     depth_in_trees_m,
-    over_everything_db,
-    share_of_path,
     ways_past_trees,
 )
 from fellspan.propagation import free_space_loss_db, gas_loss_db, inverse_k
+from fellspan.propagation.bullington import delta_bullington_over_horizons_db
 from fellspan.screening.laid import LaidBucket
 from fellspan.screening.pairs import Candidates
 from fellspan.screening.path_sets import PathSets
+from fellspan.vocabulary import Polarization
 
 Floats = NDArray[np.float64]
 
@@ -40,20 +38,6 @@ class Level:
     def at(self, frequency_hz: float) -> int:
         """The column of a frequency."""
         return int(np.flatnonzero(self.frequency_hz == frequency_hz)[0])
-
-
-def rows_of_bucket(bucket: LaidBucket) -> PathRows:
-    """The paths of a bucket as losses are worked out from."""
-    count = bucket.length_m.size
-    return PathRows.of(
-        distance_m=bucket.distance_m,
-        ground_m=bucket.ground_m,
-        surface_m=bucket.surface_m,
-        trees=None if bucket.cover_kind is None else bucket.cover_kind == TREE,
-        a_amsl_m=bucket.a_amsl_m,
-        b_amsl_m=bucket.b_amsl_m,
-        sea_fraction=np.zeros(count) if bucket.is_sea is None else share_of_path(bucket.distance_m, bucket.is_sea),
-    )
 
 
 def climate_of(candidates: Candidates, bucket: LaidBucket, *, has_margin: NDArray[np.bool_]) -> ClimateColumns:
@@ -109,12 +93,9 @@ def level_of(candidates: Candidates, rows: PathSets, climate: ClimateColumns, sp
     radio, k = candidates.radio, candidates.settings.median_k
     frequency = np.array(list(dict.fromkeys(radio.transmit_hz)))
     both_k = np.stack((np.full(rows.length_m.shape, inverse_k(k)), spread.inverse_k[:, -1]), axis=-1)
-    over = np.empty((*both_k.shape, frequency.size))
+    over = _over_everything_db(rows, inverse_k=both_k, frequency_hz=frequency, polarization=radio.polarization)
     wooded = np.zeros(rows.length_m.shape, dtype=np.bool_)
     for own, some in rows.each():
-        over[own] = over_everything_db(
-            some, inverse_k=both_k[own], frequency_hz=frequency, polarization=radio.polarization
-        )
         wooded[own] = False if some.trees is None else some.trees.any(axis=-1)
     diffraction, vegetation = over[:, 0].copy(), np.zeros(over[:, 0].shape)
     # The way through trees costs at least nothing: it can only be the cheaper one where the way over them costs something.
@@ -146,3 +127,27 @@ def level_of(candidates: Candidates, rows: PathSets, climate: ClimateColumns, sp
         total_db=free + diffraction + vegetation + gases,
         lowest_k_db=over[:, 1],
     )
+
+
+def _over_everything_db(
+    rows: PathSets, *, inverse_k: Floats, frequency_hz: Floats, polarization: Polarization
+) -> Floats:
+    """Diffraction over everything at values of 1/k (p, m) and frequencies (f,), dB, shape (p, m, f)."""
+    length, a, b, sea = (
+        column[:, np.newaxis, np.newaxis]
+        for column in (rows.length_m, rows.a_height_m, rows.b_height_m, rows.sea_fraction)
+    )
+    with np.errstate(divide="ignore"):
+        k = 1.0 / inverse_k[..., np.newaxis]
+    loss = delta_bullington_over_horizons_db(
+        rows.horizons(inverse_k)[..., np.newaxis],
+        lambda some: rows.smooth_horizons(inverse_k, some)[..., np.newaxis],
+        length_m=length,
+        a_height_m=a,
+        b_height_m=b,
+        frequency_hz=frequency_hz,
+        k=k,
+        polarization=polarization,
+        sea_fraction=sea,
+    )
+    return np.maximum(loss, 0.0)

@@ -11,7 +11,6 @@ from numpy.typing import NDArray
 
 from fellspan.links.ends import ROOF_DOUBT_M, ROOF_FROM_M
 from fellspan.links.own_building import ERRORS, NEAR_M, NEAR_SHARE, SAME_SPOT_M
-from fellspan.links.uncertainty import clearance_variance_m2
 from fellspan.screening.pairs import HEIGHT_REFERENCES, SiteColumns
 from fellspan.screening.profiles import Profiles
 from fellspan.vocabulary import COVER_KINDS
@@ -127,12 +126,11 @@ def roof_doubts(antennas: Antennas, profiles: Profiles, *, at_a: bool) -> NDArra
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class HeightErrors:
-    """Standard errors: of the antennas' levels, (q,); of what must be cleared and of the clearance, (q, n) or (q, 1)."""
+    """Standard errors: of the antennas' levels, (q,); of what must be cleared, (q, n) or (q, 1)."""
 
     a_m: Floats
     b_m: Floats
     surface_m: Floats
-    clearance_m: Floats
 
 
 def height_errors(profiles: Profiles, stands: Standings, a: Antennas, b: Antennas) -> HeightErrors:
@@ -147,19 +145,7 @@ def height_errors(profiles: Profiles, stands: Standings, a: Antennas, b: Antenna
         near_a = profiles.distance_m < 0.5 * profiles.length_m[:, np.newaxis]
         ground = np.where(near_a, bare_a[:, np.newaxis], bare_b[:, np.newaxis])
         surface = np.where(stands.bared, np.minimum(surface, ground), surface)
-    source = profiles.source
-    variance = clearance_variance_m2(
-        profiles.distance_m,
-        surface,
-        a_error_m=errors[0],
-        b_error_m=errors[1],
-        cell_m=profiles.cell_m,
-        like_a=source == source[:, :1],
-        like_b=source == source[:, -1:],
-        ends_alike=source[:, 0] == source[:, -1],
-    )
-    np.maximum(variance, 0.0, out=variance)
-    return HeightErrors(a_m=errors[0], b_m=errors[1], surface_m=surface, clearance_m=np.sqrt(variance, out=variance))
+    return HeightErrors(a_m=errors[0], b_m=errors[1], surface_m=surface)
 
 
 def _bare_error_m(profiles: Profiles, column: int) -> Floats:

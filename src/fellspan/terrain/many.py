@@ -17,7 +17,8 @@ from fellspan.terrain.assemble import Layers
 from fellspan.terrain.cover import NONE, OTHER, CoverLayer, combine, may_be_refused, missing_kinds, rises_somewhere
 from fellspan.terrain.raster_file import RasterFile
 from fellspan.terrain.sea import SEA_ERROR_M, near_shores
-from fellspan.terrain.stack_sheets import Curves, PathsOnStack, StackSheets, sigmas_of
+from fellspan.terrain.sheet import Curves
+from fellspan.terrain.stack_sheets import PathsOnStack, StackSheets, sigmas_of
 
 Floats = NDArray[np.float64]
 Index = NDArray[np.int64]
@@ -137,14 +138,14 @@ class LaidPaths:
         t: Floats,
         which: Index,
         *,
-        inside: NDArray[np.bool_] | None = None,
+        last: Index | None = None,
         wet: NDArray[np.bool_] | None = None,
     ) -> ManySamples:
         """Everything at t, -1 at A to 1 at B, (q, n), of the paths `which`, (q,).
 
-        With `inside`, (q, n), which tells samples from what fills up shorter paths, `doubtful` and `tells` look at the surface
-        raster all along, and gaps are taken as sea by their shores; without, the places are some of the path's only, and gaps
-        are sea where `wet`, (q, n), says so.
+        With `last`, (q,), the index of each path's last sample, `doubtful` and `tells` look at the surface raster all along and
+        gaps are taken as sea by their shores; without, the places are some of the path's only, and gaps are sea where `wet`,
+        (q, n), says so.
         """
         layers = self._many.layers
         ground = self._stacks[0].sample(t, which)
@@ -152,8 +153,8 @@ class LaidPaths:
         ground_sigma = sigmas_of(layers.ground.files, source)
         raster, along = value, None
         if layers.gaps == "sea" and (gap := ~np.isfinite(value)).any():
-            if inside is not None:
-                before, after = near_shores(value, ground_sigma, inside, sea_level_m=layers.sea_level_m)
+            if last is not None:
+                before, after = near_shores(value, ground_sigma, _own(last, t.shape[1]), sea_level_m=layers.sea_level_m)
                 gap &= before & after
                 along = before & np.concatenate((after[:, 1:], after[:, -1:]), axis=1)
             else:
@@ -182,11 +183,11 @@ class LaidPaths:
             cover = combine(value, covers, surface, sigma, complete=layers.complete)
             step = surface - raster
             doubtful = doubtful | doubt
-            if inside is not None:
+            if last is not None:
                 one = len(layers.ground.files) == 1 and len(layers.surface.files) == 1
-                doubtful |= may_be_refused(step, ground_sigma, sigma, inside=inside, is_one_pair=one)
+                doubtful |= may_be_refused(step, ground_sigma, sigma, inside=_own(last, t.shape[1]), is_one_pair=one)
                 if missing_kinds([declared.kind for declared, _ in layers.cover], layers.complete):
-                    tells = rises_somewhere(step, raster, self._paths.length_m[which], inside=inside)
+                    tells = rises_somewhere(step, raster, self._paths.length_m[which], inside=_own(last, t.shape[1]))
         height = cover.height_m
         stands = height > 0.0
         kind = np.where(stands, np.where(cover.kind == NONE, OTHER, cover.kind), NONE).astype(np.int8)
@@ -227,6 +228,11 @@ class LaidPaths:
             wet=wet,
             tells=tells,
         )
+
+
+def _own(last: Index, width: int) -> NDArray[np.bool_]:
+    """Which samples are a path's own, and not what fills up shorter ones, (q, width)."""
+    return np.asarray(np.arange(width) <= last[:, np.newaxis])
 
 
 def _sampled(laid: PathsOnStack, t: Floats, which: Index) -> tuple[Floats, Floats, NDArray[np.bool_]]:

@@ -6,7 +6,7 @@ Reads only the tiles that paths come near, and reads them as `blocks` does. Know
 import mmap
 import threading
 from collections.abc import Callable
-from typing import Final
+from typing import Final, Protocol
 
 import numpy as np
 from numpy.typing import NDArray
@@ -22,6 +22,34 @@ MOST_CELLS: Final = 4_000_000_000
 """Rasters with more cells are not kept as a sheet: even addresses have an end."""
 
 Floats = NDArray[np.float64]
+Index = NDArray[np.int64]
+
+
+class Curves(Protocol):
+    """Where paths run on one raster: coefficients of powers of t, -1 at A to 1 at B, each (d, p)."""
+
+    @property
+    def column(self) -> Floats:
+        """Of columns, (0, 0) the outer corner of the first cell."""
+        ...
+
+    @property
+    def row(self) -> Floats:
+        """Of rows."""
+        ...
+
+    @property
+    def is_close(self) -> NDArray[np.bool_]:
+        """Whether they are known closely enough, (p,)."""
+        ...
+
+    def at(self, t: Floats, which: Index) -> tuple[Floats, Floats]:
+        """Columns and rows at t, shape (q, n), of the paths `which`, shape (q,)."""
+        ...
+
+    def range_of(self) -> tuple[Floats, Floats, Floats, Floats]:
+        """Least and greatest column, least and greatest row, each (p,)."""
+        ...
 
 
 class Sheet:
@@ -97,6 +125,18 @@ class Sheet:
                 )
                 self._loaded[tile_row, tile_column] = True
             self._complete = bool(self._loaded.all())
+
+    def heights_along(self, curves: "Curves", t: Floats, which: Index) -> tuple[Floats, bool]:
+        """As `heights`, at t (q, n) along the paths `which`, (q,), all of which lie on the raster; and whether none is NaN."""
+        from fellspan.terrain import sheet_kernel
+
+        found = np.empty(t.shape)
+        if not sheet_kernel.along(self._cells, curves.column, curves.row, which, t, found):
+            return found, True
+        hollow = np.nonzero(np.isnan(found))
+        column, row = curves.at(t[hollow][:, np.newaxis], which[hollow[0]])
+        found[hollow] = self.heights(column, row)[:, 0]
+        return found, not np.isnan(found[hollow]).any()
 
     def heights(self, column: Floats, row: Floats) -> Floats:
         """As `blocks.bilinear`, of tiles that `read_near` has read, for places on the raster in arrays of any one shape."""

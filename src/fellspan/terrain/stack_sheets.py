@@ -15,7 +15,7 @@ from numpy.typing import NDArray
 from fellspan.terrain.cell_size import CellSizes
 from fellspan.terrain.raster_file import RasterFile
 from fellspan.terrain.seams import allowed_m
-from fellspan.terrain.sheet import Sheet
+from fellspan.terrain.sheet import Curves, Sheet
 from fellspan.terrain.stack import EDGE_CELLS, RasterStack
 
 ALONG: Final = 4 * 256
@@ -25,23 +25,6 @@ _ROWS = 256
 
 Floats = NDArray[np.float64]
 Index = NDArray[np.int64]
-
-
-class Curves(Protocol):
-    """Where paths run on one raster."""
-
-    @property
-    def is_close(self) -> NDArray[np.bool_]:
-        """Whether they are known closely enough, (p,)."""
-        ...
-
-    def at(self, t: Floats, which: Index) -> tuple[Floats, Floats]:
-        """Columns and rows at t, -1 at A to 1 at B, shape (q, n), of the paths `which`, shape (q,)."""
-        ...
-
-    def range_of(self) -> tuple[Floats, Floats, Floats, Floats]:
-        """Least and greatest column, least and greatest row, each (p,)."""
-        ...
 
 
 class Paths(Protocol):
@@ -217,20 +200,21 @@ class PathsOnStack:
 
     def _on_single_files(self, t: Floats, which: Index) -> Sampled:
         numbers = np.argmax(self._touches[:, which], axis=0)
+        source = np.asarray(self.numbers, dtype=np.int16)[numbers][:, np.newaxis]
         value: Floats | None = None
-        source = np.empty((which.size, 1), dtype=np.int16)
-        for place in np.unique(numbers).tolist():
+        whole = True
+        for place in np.unique(numbers).tolist() if len(self.numbers) > 1 else (0,):
             sheet = self.sheets.sheet(self.numbers[place])
             assert sheet is not None
             rows = np.flatnonzero(numbers == place)
-            source[rows] = self.numbers[place]
             if rows.size == which.size:
-                value = sheet.heights(*self.curves[place].at(t, which))
+                value, whole = sheet.heights_along(self.curves[place], t, which)
             else:
                 value = np.empty(t.shape) if value is None else value
-                value[rows] = sheet.heights(*self.curves[place].at(t[rows], which[rows]))
+                value[rows], none_missing = sheet.heights_along(self.curves[place], t[rows], which[rows])
+                whole &= none_missing
         assert value is not None
-        if not np.isfinite(value).all():
+        if not whole:
             source = np.where(np.isfinite(value), source, -1).astype(np.int16)
         return Sampled(value_m=value, source=source, doubtful=np.zeros(which.size, dtype=np.bool_))
 
