@@ -15,6 +15,7 @@ from numpy.typing import NDArray
 
 from fellspan.design.case import Case, Rules
 from fellspan.design.error_model import GRADIENT_UNIT, ErrorModel
+from fellspan.design.normals import normals
 from fellspan.links import clearance
 from fellspan.links.own_building import ROOF_SOURCE
 from fellspan.terrain.profile import PathProfile
@@ -27,7 +28,8 @@ MOST_POINTS: Final = 240
 """Samples drawn at most: more would not fit into the time, and thinner ones are made up for (`_overshoot_m`)."""
 NEAR: Final = 3.6
 """Samples with this many standard errors to spare at the lowest workable heights are left out."""
-_CHUNK = 2_500
+LEAST_M: Final = 1e-3
+"""Errors of cover or by a shift that are smaller anywhere are left out there, m."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -161,49 +163,89 @@ def draw(
 
     Half of the draws are the other half with the signs turned, so that averages need fewer of them.
     """
-    errors = errors_of(case)
-    sigma = marginal_m(case, errors, model)
-    points, spacing_m = _points(case, sigma, lines)
-    distance = case.profile.distance_m[points]
-    rng = np.random.default_rng(seed)
+    parts = parts_of(case, model, lines)
     half = (count + 1) // 2
-    field = _field(rng, distance, model.ground_reach_m, half)
+    rows = parts.rows
+    numbers = normals(seed, half * rows).reshape(rows, half)
+    field = _field(numbers[: parts.points.size], case.profile.distance_m[parts.points], model.ground_reach_m)
     e_a, e_b = field[0].copy(), field[-1].copy()
-    moves = errors.moves_with[points]
     error = field
-    error *= np.where(moves < 0, errors.ground_m[points], 0.0)[:, np.newaxis].astype(np.float32)
-    for sizes, reach in (
-        (np.where(moves < 0, errors.cover_m[points], 0.0), model.cover_reach_m),
-        (errors.slope[points] * model.position_error_m, model.ground_reach_m),
-    ):
-        some = np.flatnonzero(np.abs(sizes) > 1e-3)
+    error *= parts.ground_m[:, np.newaxis].astype(np.float32)
+    row = parts.points.size
+    for some, sizes, reach in parts.fields:
         if some.size:
-            error[some] += _field(rng, distance[some], reach, half) * sizes[some, np.newaxis].astype(np.float32)
-    share = case.share[points]
-    lever_a = case.a_error_m * ((moves == 0) - (1.0 - share))
-    lever_b = case.b_error_m * ((moves == 1) - share)
-    along = rng.standard_normal(half, dtype=np.float32) * model.position_error_m
-    gradient = rng.standard_normal(half, dtype=np.float32) * model.gradient_error * GRADIENT_UNIT
-    common = np.stack((lever_a, lever_b, errors.slope[points], case.curve_m[points]), axis=1).astype(np.float32)
-    error += common @ np.stack((e_a, e_b, along, gradient)).astype(np.float32)
+            own = _field(numbers[row : row + some.size], case.profile.distance_m[parts.points[some]], reach)
+            error[some] += own * sizes[some, np.newaxis].astype(np.float32)
+            row += some.size
+    along = numbers[-2] * model.position_error_m
+    gradient = numbers[-1] * model.gradient_error * GRADIENT_UNIT
+    error += parts.common.astype(np.float32) @ np.stack((e_a, e_b, along, gradient)).astype(np.float32)
     return Draws(
         case=case,
-        points=points,
-        share=share,
+        points=parts.points,
+        share=parts.share,
         error_m=np.concatenate((error, -error), axis=1)[:, :count],
-        shift_m=_overshoot_m(case, sigma[points], points, spacing_m, model),
+        shift_m=parts.shift_m,
     )
 
 
-def _field(rng: np.random.Generator, distance_m: Floats, reach_m: float, count: int) -> NDArray[np.float32]:
-    """Unit normal errors with correlation exp(-distance / reach) along the points, shape (m, count)."""
-    field = rng.standard_normal((distance_m.size, count), dtype=np.float32)
-    keep = np.exp(-np.diff(distance_m) / reach_m)
-    fresh = np.sqrt(1.0 - keep**2)
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Parts:
+    """What the draws of a case are made of, at the samples that are drawn, (m,)."""
+
+    points: NDArray[np.intp]
+    share: Floats
+    shift_m: Floats
+    ground_m: Floats
+    fields: tuple[tuple[NDArray[np.intp], Floats, float], ...]
+    """Of cover and of the shift along the path: which samples have it, its sizes, m, (m,), and its reach, m."""
+    common: Floats
+    """What the errors at A and at B, a metre of shift and a unit of 1/k do to each, (m, 4)."""
+
+    @property
+    def rows(self) -> int:
+        """Rows of unit normals that each draw takes a number of: of the ground, of each field, of shift and gradient."""
+        return self.points.size + sum(some.size for some, _, _ in self.fields) + 2
+
+
+def parts_of(case: Case, model: ErrorModel, lines: Sequence[tuple[Rules, float, float]]) -> Parts:
+    """Choose the samples to draw, and take the errors apart there."""
+    errors = errors_of(case)
+    sigma = marginal_m(case, errors, model)
+    points, spacing_m = _points(case, sigma, lines)
+    moves = errors.moves_with[points]
+    cover = np.where(moves < 0, errors.cover_m[points], 0.0)
+    shift = errors.slope[points] * model.position_error_m
+    share = case.share[points]
+    lever_a = case.a_error_m * ((moves == 0) - (1.0 - share))
+    lever_b = case.b_error_m * ((moves == 1) - share)
+    return Parts(
+        points=points,
+        share=share,
+        shift_m=_overshoot_m(case, sigma[points], points, spacing_m, model),
+        ground_m=np.where(moves < 0, errors.ground_m[points], 0.0),
+        fields=tuple(
+            (np.flatnonzero(np.abs(sizes) > LEAST_M), sizes, reach)
+            for sizes, reach in ((cover, model.cover_reach_m), (shift, model.ground_reach_m))
+        ),
+        common=np.stack((lever_a, lever_b, errors.slope[points], case.curve_m[points]), axis=1),
+    )
+
+
+def _field(fresh: NDArray[np.float32], distance_m: Floats, reach_m: float) -> NDArray[np.float32]:
+    """Unit normal errors with correlation exp(-distance / reach) along the points, from fresh ones, shape (m, count)."""
+    field = fresh.copy()
+    keep, new = links_of(distance_m, reach_m)
     for i in range(1, distance_m.size):
-        field[i] *= np.float32(fresh[i - 1])
+        field[i] *= np.float32(new[i - 1])
         field[i] += np.float32(keep[i - 1]) * field[i - 1]
     return field
+
+
+def links_of(distance_m: Floats, reach_m: float) -> tuple[Floats, Floats]:
+    """What each point of such a field keeps of the one before it, and how much of it is new, shape (m - 1,)."""
+    keep = np.exp(-np.diff(distance_m) / reach_m)
+    return keep, np.sqrt(1.0 - keep**2)
 
 
 def _points(
