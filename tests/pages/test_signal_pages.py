@@ -81,8 +81,10 @@ def test_the_budget_on_the_page_closes(plan: StudyPlan) -> None:
     level = next(index for index, row in enumerate(rows) if "Received level" in row[0])
     for column, ends in ((0, "at_b"), (1, "at_a")):
         shown = sum(row[column] for row in numbers[:level])
-        assert shown == pytest.approx(numbers[level][column], abs=0.05 * level)
-        assert numbers[level][column] == pytest.approx(getattr(result(plan, SEA).received_dbm, ends), abs=0.051)
+        assert shown == pytest.approx(numbers[level][column], abs=0.05 * level + 0.1)  # a level goes down
+        assert 0.0 <= getattr(result(plan, SEA).received_dbm, ends) - numbers[level][column] < 0.1
+        # Level less what it needs is the margin, as printed.
+        assert numbers[level][column] - numbers[level + 1][column] == pytest.approx(numbers[level + 2][column])
 
 
 def test_modulations_stand_in_both_views(plan: StudyPlan, pages: dict[str, str]) -> None:

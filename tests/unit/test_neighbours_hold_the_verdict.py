@@ -64,7 +64,12 @@ def test_a_plan_says_what_neighbours_leave_of_the_margin() -> None:
         if link.name in ("Beacon - West Point", "Harbour Office - Southdown Farm", "Harbour Office - Cape Light")
     )
     plans = plan_study(replace(study, links=crowded)).links
-    told = [plan for plan in plans if any("are not in that margin" in words for words in plan.result.reasons)]
+    told = [plan for plan in plans if any(" dB with neighbours, " in words for words in plan.result.reasons)]
     assert told
     for plan in told:
-        assert any("neighbours" in caution.lower() for caution in plan.result.cautions)
+        left = plan.result.margin_with_neighbours_db
+        assert left is not None
+        assert left != plan.result.margin_db
+        available = [words for words in plan.result.reasons if words.startswith("Available ")]
+        assert all("neighbours on the channel are left out of it" in words for words in available)
+    assert any("neighbours" in caution.lower() for plan in told for caution in plan.result.cautions)

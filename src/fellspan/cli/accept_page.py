@@ -6,6 +6,7 @@ Shows what was found and computes nothing.
 from collections.abc import Iterator
 from typing import Final
 
+from fellspan.cli import figures
 from fellspan.cli.layout import WIDTH, Ink, columns_of, cut, labelled, printable, table, wrapped
 from fellspan.design.acceptance_result import AcceptanceResult, Cause, DirectionCheck
 
@@ -78,7 +79,7 @@ def _of_direction(one: DirectionCheck) -> Iterator[str]:
 
 
 def _dbm(value: float | None) -> str:
-    return "-" if value is None else f"{value:.1f} dBm"
+    return figures.decibels(value, "dBm")
 
 
 def _built(found: AcceptanceResult) -> Iterator[str]:

@@ -51,8 +51,8 @@ def _cells(row: EquipRow, result: EquipResult) -> tuple[str, ...]:
     return (
         f"{row.rank}",
         ("* " if row.meets else "  ") + pair_words(row, result.rows),
-        "-" if level is None else f"{level:.1f}",
-        "-" if margin is None else f"{margin:.1f}",
+        figures.decibels(level, ""),
+        figures.decibels(margin, ""),
         "-" if row.spare_db is None else down_db(row.spare_db) if row.spare_db >= 0.0 else f"-{up_db(-row.spare_db)}",
         _availability(row.availability_percent.year),
         "-" if row.mass_kg is None else f"{row.mass_kg:.3g}",

@@ -67,8 +67,8 @@ def extra_height(extra: ExtraHeight) -> str:
 
 
 def decibels(value: float | None, unit: str = "dB") -> str:
-    """A level or a loss, or a dash where it was not computed."""
-    return "-" if value is None else f"{value:.1f} {unit}"
+    """A margin, or a level in dBm, rounded down as everywhere; a dash where it was not computed."""
+    return "-" if value is None else f"{words.down_db(value):.1f} {unit}".rstrip()
 
 
 def bearing(true_deg: float, magnetic_deg: float | None) -> str:

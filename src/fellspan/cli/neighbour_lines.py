@@ -5,6 +5,7 @@ Shows what planning found and computes nothing.
 
 from typing import Final
 
+from fellspan.cli import figures
 from fellspan.cli.layout import Ink, table, wrapped
 from fellspan.links.interference_result import InterferenceResult, StudyInterference
 
@@ -57,9 +58,9 @@ def _row(one: InterferenceResult) -> tuple[str, ...]:
         f"{one.interferers[0].end} of {one.interferers[0].link}",
         _number(one.c_i_db),
         _number(one.threshold_degradation_db),
-        _number(one.effective_margin_db),
+        figures.decibels(one.effective_margin_db, ""),
     )
 
 
 def _number(value: float | None) -> str:
-    return "-" if value is None else f"{value:.1f}"
+    return "-" if value is None else f"{value + 0.0:.1f}".replace("-0.0", "0.0")

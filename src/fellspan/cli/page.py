@@ -3,12 +3,13 @@
 Shows what planning found and computes nothing.
 """
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Sequence
 
 from fellspan.cli import figures
 from fellspan.cli.layout import WIDTH, Ink, padded, printable, rule, table, wrapped
 from fellspan.cli.link_page import decision_lines, link_lines, state_tone
 from fellspan.cli.neighbour_lines import neighbour_lines
+from fellspan.links import words
 from fellspan.links.radio_words import THROUGH, verdict_why
 from fellspan.links.safety import RAISING
 from fellspan.links.words import STATE_WORDS, state_of
@@ -17,8 +18,6 @@ from fellspan.planning.plan import LinkFailure, LinkPlan, StudyPlan
 _FIXED = (7, 15, 9)
 _RIGHT = (1, 4)
 _DECISION_LINES = 6
-_SEEN_DB = 0.05
-"""Less than this is not seen in a margin."""
 
 
 def page_lines(plan: StudyPlan, *, ink: Ink, brief: bool = False) -> list[str]:
@@ -56,36 +55,16 @@ def _title(plan: StudyPlan, ink: Ink) -> list[str]:
 
 
 def _summary(plan: StudyPlan, ink: Ink) -> list[str]:
-    left = _left_by_neighbours(plan)
-    rows = [*(_summary_row(link, left) for link in plan.links), *(_failed_row(failure) for failure in plan.failures)]
+    rows = [*(_summary_row(link) for link in plan.links), *(_failed_row(failure) for failure in plan.failures)]
     km, clearance, margin = _FIXED
     path = max(len(row[2]) for row in rows)
     widths = (WIDTH - 4 - sum(_FIXED) - path, km, path, clearance, margin)
     heads = table(("Link", "km", "Path", "Clearance", "Margin"), (), widths=widths, right=_RIGHT)
     tones = [*(state_tone(state_of(link.result)) for link in plan.links), *("bad" for _ in plan.failures)]
     lines = [_coloured(row, tone, ink, widths) for row, tone in zip(rows, tones, strict=True)]
-    if left:
+    if any(row[4].endswith("*") for row in rows):
         lines += wrapped("* what neighbours on the same channel leave of it", first="  ", rest="    ")
     return [ink.emphasise(heads[0]), *lines]
-
-
-def _left_by_neighbours(plan: StudyPlan) -> dict[str, float]:
-    """Margins that neighbours leave, dB, at the weaker end of each link from which they take what the column shows."""
-    left: dict[str, float] = {}
-    for one in plan.interference.receivers if plan.interference else ():
-        if one.effective_margin_db is not None:
-            left[one.link] = min(one.effective_margin_db, left.get(one.link, one.effective_margin_db))
-    least = {link.result.name: _least_margin(link) for link in plan.links}
-    return {
-        name: value
-        for name, value in left.items()
-        if (alone := least.get(name)) is not None and alone - value >= _SEEN_DB
-    }
-
-
-def _least_margin(plan: LinkPlan) -> float | None:
-    margin = plan.result.margin_db
-    return min((value for value in (margin.at_a, margin.at_b) if value is not None), default=None)
 
 
 def _what_is_left_out(plan: StudyPlan) -> list[str]:
@@ -106,20 +85,19 @@ def _coloured(row: Sequence[str], tone: str, ink: Ink, widths: Sequence[int]) ->
     return " ".join(cells).rstrip()
 
 
-def _summary_row(plan: LinkPlan, left: Mapping[str, float]) -> Sequence[str]:
+def _summary_row(plan: LinkPlan) -> Sequence[str]:
     result = plan.result
     governing = result.clearance[result.governing] if result.clearance else None
-    margin, star = _least_margin(plan), ""
+    margin = words.least_db(words.decisive_margin_db(result))
+    star = "*" if words.are_told_apart(words.least_db(result.margin_db), margin) else " "
     if verdict_why(result) == THROUGH:
-        margin = None  # worked out past what stands in the way: nothing to rely on
-    elif result.name in left:
-        margin, star = left[result.name], "*"
+        margin, star = None, ""  # worked out past what stands in the way: nothing to rely on
     return (
         result.name,
         f"{result.distance_m / 1000:.2f}",
         STATE_WORDS[state_of(result)],
         "" if governing is None else figures.by_how_much(governing),
-        "-" if margin is None else f"{margin:.1f} dB{star or ' '}",
+        "-" if margin is None else f"{figures.decibels(margin)}{star}",
     )
 
 

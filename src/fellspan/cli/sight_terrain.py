@@ -15,7 +15,7 @@ from fellspan.geodesy.coordinates import ParsedPosition, format_position
 from fellspan.geodesy.position import Position
 from fellspan.planning.inputs import TerrainInputs
 from fellspan.quantities import parse_length_m
-from fellspan.study.assembling import raster_path
+from fellspan.study.assembling import address_trouble, raster_path
 from fellspan.terrain.sources import CoverSource, ObstacleSource, RasterSource, SurveySource
 from fellspan.vocabulary import CoverKind, GapPolicy, LengthUnit, RasterRole
 
@@ -121,6 +121,9 @@ def _with_kinds(text: str) -> tuple[str, tuple[CoverKind, ...]]:
 
 def _existing(option: str, text: str) -> str | Path:
     path = raster_path(text, Path())
+    wrong = address_trouble(text, raster=option in ("raster", "--cover")) if isinstance(path, str) else None
+    if wrong is not None:
+        raise UsageError(f"{option}: {wrong[0]}", *wrong[1:])
     if isinstance(path, Path) and not path.exists():
         raise UsageError(f"{option}: there is no file '{text}'", f"looked for at {path.absolute()}")
     return path

@@ -7,10 +7,10 @@ from typing import Final
 
 from fellspan.cli import figures
 from fellspan.cli.layout import Ink, labelled, table, wrapped
-from fellspan.links import radio_words
+from fellspan.links import radio_words, words
 from fellspan.links.result import AtEnds, LinkResult, Losses
 from fellspan.links.signal_result import DirectionResult, SignalResult
-from fellspan.links.signal_words import minutes_text, percent_text, rate_text
+from fellspan.links.signal_words import LEFT_OUT, minutes_text, percent_text, rate_text
 
 _TONES: Final = {"meets": "good", "marginal": "doubt", "below": "bad"}
 _CAUSES: Final = {"rain": "rain", "multipath": "multipath", "diffraction": "low k", "level": "too little level"}
@@ -39,6 +39,8 @@ def signal_lines(result: LinkResult, ink: Ink) -> list[str]:
     if result.margin_db.at_a is not None or result.margin_db.at_b is not None:
         of = f" of {result.modulation}" if result.modulation else ""
         lines += labelled("Margin", f"{_at_ends(result.margin_db, 'dB')}{of}; {result.wanted_margin_db:g} dB wanted")
+        if words.neighbours_take(result):
+            lines += labelled("", f"with neighbours {_at_ends(words.decisive_margin_db(result), 'dB')}")
     lines += labelled("Losses", _losses(result.losses_db))
     if result.signal is not None:
         lines += _availability(result.signal)
@@ -72,7 +74,8 @@ def _availability(signal: SignalResult) -> list[str]:
         lines += labelled(
             "Available",
             f"{percent_text(year)} of the year both ways ({minutes_text(signal.minutes_per_year)} out"
-            f"{f', mostly by {cause}' if cause else ''}), {percent_text(month)} of its worst month",
+            f"{f', mostly by {cause}' if cause else ''}), {percent_text(month)} of its worst month"
+            f"{f'; {LEFT_OUT}' if radio_words.leaves_neighbours_out(signal) else ''}",
         )
     if signal.target_availability_percent is not None:
         said = {True: "met", False: "not met", None: "cannot be judged"}[signal.target_met]
@@ -107,6 +110,8 @@ def _modulations(signal: SignalResult) -> list[str]:
     heads = ("Modulation", "dBm", "for users", "A to B dB", "of year", "B to A dB", "of year")
     lines = table(heads, rows, widths=_WIDTHS, right=(1, 2, 3, 4, 5, 6))
     lines.append("* wanted; dBm: the level it needs; A to B, B to A: the margin in clear air")
+    if radio_words.leaves_neighbours_out(signal):
+        lines.append("margins and shares of the year leave neighbours out")
     mean = there.throughput_mean_bps, back.throughput_mean_bps
     if mean[0] is not None and mean[1] is not None:
         lines.append(f"for users, mean over the year: {rate_text(mean[0])} A to B, {rate_text(mean[1])} B to A")
@@ -116,19 +121,17 @@ def _modulations(signal: SignalResult) -> list[str]:
 def _cells(direction: DirectionResult, index: int) -> tuple[str, str]:
     row = direction.modulations[index]
     year = row.availability_percent.year
-    return figures.decibels(row.margin_db, "").strip(), "-" if year is None else percent_text(year).replace(
-        "over ", ">"
-    )
+    return figures.decibels(row.margin_db, ""), "-" if year is None else percent_text(year).replace("over ", ">")
 
 
 def _people_and_rules(result: LinkResult) -> list[str]:
     """What the power rule allows, and how far people keep away."""
     lines: list[str] = []
-    for ends, words in radio_words.power_sentences(result):
-        lines += labelled("Power rule", f"{ends}: {words}")
+    for ends, said in radio_words.power_sentences(result):
+        lines += labelled("Power rule", f"{ends}: {said}")
     if result.received_dbm.at_a is not None and result.power is None:
         lines += labelled("Power rule", radio_words.NO_RULE)
     if result.exposure is not None:
-        for ends, words in radio_words.exposure_sentences(result):
-            lines += labelled("Exposure", f"{ends}: {words}")
+        for ends, said in radio_words.exposure_sentences(result):
+            lines += labelled("Exposure", f"{ends}: {said}")
     return lines

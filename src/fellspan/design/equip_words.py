@@ -1,6 +1,5 @@
 """The sentences of a comparison of equipment: decision, what would change it, cautions, assumptions. Computes nothing."""
 
-import math
 from collections.abc import Sequence
 from typing import Final
 
@@ -11,6 +10,7 @@ from fellspan.design.wind import WORST_ANGLE
 from fellspan.links.safety import safety_lines
 from fellspan.links.signal_path import SignalPath
 from fellspan.links.site import Link
+from fellspan.links.tenths import down_tenth, up_tenth
 from fellspan.vocabulary import PathVerdict
 
 IN_WEATHER: Final = {
@@ -180,12 +180,12 @@ def capital(sentence: str) -> str:
 
 def up_db(value: float) -> str:
     """A shortfall to a tenth of a decibel, never too small."""
-    return f"{math.ceil(value * 10.0 - 1e-9) / 10.0:.1f}"
+    return f"{up_tenth(value):.1f}"
 
 
 def down_db(value: float) -> str:
     """What is to spare, to a tenth of a decibel, never too much."""
-    return f"{math.floor(value * 10.0 + 1e-9) / 10.0:.1f}"
+    return f"{down_tenth(value):.1f}"
 
 
 def _is_smaller(one: EquipRow, other: EquipRow) -> bool:

@@ -5,7 +5,7 @@ Columns carry their unit. Text from users cannot start a formula; numbers stay n
 
 from fellspan.exports.text import Cell, csv_text, number_cells, rounded, text_cells
 from fellspan.links.result import CriterionResult, EndResult, LinkResult
-from fellspan.links.words import STATE_WORDS, state_of
+from fellspan.links.words import STATE_WORDS, decisive_margin_db, state_of
 from fellspan.planning.plan import LinkFailure, LinkPlan, StudyPlan
 from fellspan.report.naming import page_name, slug
 from fellspan.vocabulary import COVER_KINDS
@@ -65,6 +65,8 @@ LINK_COLUMNS = (
     "received_at_b_dbm",
     "margin_at_a_db",
     "margin_at_b_db",
+    "margin_with_neighbours_at_a_db",
+    "margin_with_neighbours_at_b_db",
     "wanted_margin_db",
     "modulation",
     "availability_year_percent",
@@ -245,6 +247,8 @@ def _link_row(result: LinkResult, page: str) -> list[Cell]:
         rounded(result.received_dbm.at_b),
         rounded(result.margin_db.at_a),
         rounded(result.margin_db.at_b),
+        rounded(decisive_margin_db(result).at_a),
+        rounded(decisive_margin_db(result).at_b),
         rounded(result.wanted_margin_db),
         *_signal_cells(result),
         *_rule_cells(result),

@@ -15,6 +15,7 @@ import numpy as np
 from fellspan.antennas.pattern import Pattern
 from fellspan.antennas.sphere import direction_from_boresight
 from fellspan.links.site import Antenna
+from fellspan.links.tenths import up_tenth
 from fellspan.propagation.exposure import (
     EXPOSURE_LIMITS,
     ExposureGroup,
@@ -286,4 +287,4 @@ def _notes(pattern: Pattern | None, public: ExposureDistances) -> tuple[str, ...
 
 def _up(value_m: float) -> str:
     """Up to the next tenth of a metre."""
-    return f"{math.ceil(value_m * 10.0 - 1e-9) / 10.0:.1f}"
+    return f"{up_tenth(value_m):.1f}"

@@ -5,6 +5,7 @@ from typing import Final
 
 from fellspan.links.interference_result import HighLowConflict, InterferenceResult, NearAntennas
 from fellspan.links.stations import Station
+from fellspan.links.words import down_db
 
 CAUTION_FROM_DB: Final = 1.0
 """A threshold raised by more than this draws a caution (common practice, no source)."""
@@ -36,7 +37,7 @@ def receiver_caution(result: InterferenceResult) -> str | None:
     if worse <= CAUTION_FROM_DB:
         return None
     left = result.effective_margin_db
-    margin = "" if left is None else f", which leaves a margin of {left:.1f} dB"
+    margin = "" if left is None else f", which leaves a margin of {down_db(left):.1f} dB"
     return (
         f"Neighbours: other links of this study raise the threshold at '{result.site}' by {worse:.1f} dB{margin}; most comes "
         f"from {_sender(result)}. Use another channel, the other polarization or an antenna that hears less there."

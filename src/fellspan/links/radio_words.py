@@ -3,12 +3,13 @@
 Formats results and works nothing out.
 """
 
-import math
 from typing import Final
 
 from fellspan.links.receivers import UNNAMED
 from fellspan.links.result import LinkResult
 from fellspan.links.signal_result import ClimateUsed, DirectionResult, SignalResult
+from fellspan.links.signal_words import LEFT_OUT_NOTE
+from fellspan.links.words import up_db
 
 THROUGH: Final = "the level is there, but through an obstruction"
 """A level that arrives by diffraction over what cuts the sight line is no reason to build."""
@@ -41,6 +42,11 @@ def verdict_why(result: LinkResult) -> str:
         wanted = None if signal is None else signal.target_availability_percent
         return "margin and availability wanted are there" if wanted is not None else "the margin wanted is there"
     return (signal.verdict_reason if signal is not None else "") or "see the reasons and cautions"
+
+
+def leaves_neighbours_out(signal: SignalResult) -> bool:
+    """Whether there are neighbours on the channel, which availability does not count."""
+    return LEFT_OUT_NOTE in signal.notes
 
 
 def rows_named(direction: DirectionResult) -> bool:
@@ -86,18 +92,18 @@ def breach_words(result: LinkResult) -> str:
     power = result.power
     if power is None:
         return ""
-    over = {end: _tenth_up(check.breach_db) for end, check in (("A", power.a), ("B", power.b)) if check.is_breach}
+    # Up, not to the nearest: a breach is never shown as 0.0 dB.
+    over = {
+        end: f"{up_db(check.breach_db or 0.0):.1f}"
+        for end, check in (("A", power.a), ("B", power.b))
+        if check.is_breach
+    }
     if not over:
         return ""
     rule = f"over power rule {power.a.rule_id}"
     if len(over) == 2 and over["A"] == over["B"]:
         return f"{over['A']} dB {rule}"
     return f"{', '.join(f'{value} dB at {end}' for end, value in over.items())} {rule}"
-
-
-def _tenth_up(value_db: float | None) -> str:
-    """Up, not to the nearest: a breach is never shown as 0.0 dB."""
-    return f"{math.ceil((value_db or 0.0) * 10.0 - 1e-6) / 10.0:.1f}"
 
 
 def exposure_sentences(result: LinkResult) -> tuple[tuple[str, str], ...]:

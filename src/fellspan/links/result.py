@@ -236,3 +236,5 @@ class LinkResult(Shown):
     """None where the link goes by no rule."""
     exposure: ExposurePair | None = None
     """None where power or gains are unknown."""
+    margin_with_neighbours_db: AtEnds | None = None
+    """What other links of the study leave of `margin_db`: the margin that decides. None where none were compared."""

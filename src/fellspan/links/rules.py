@@ -16,6 +16,7 @@ from typing import Final, Literal
 from fellspan.errors import RuleError
 from fellspan.links.rule_types import PowerRule
 from fellspan.links.rules_file import read_rules, rules_of
+from fellspan.links.tenths import down_tenth, up_tenth
 
 SHIPPED: Final = ("power_rules_us.toml", "power_rules_europe.toml")
 SAME_DB: Final = 0.005
@@ -300,13 +301,13 @@ def _sentence(
     )
     if breach:
         # Up, not to the nearest: a breach is never shown as 0.0 dB.
-        words += f"; the {power_dbm:g} dBm set are {math.ceil(breach * 10.0 - 1e-6) / 10.0:.1f} dB over it"
+        words += f"; the {power_dbm:g} dBm set are {up_tenth(breach):.1f} dB over it"
     return f"{words}; confirm with your regulator."
 
 
 def _down(value: float) -> str:
     """To a tenth of a dB, never above the limit."""
-    return f"{math.floor(value * 10.0 + 1e-6) / 10.0:.1f}"
+    return f"{down_tenth(value):.1f}"
 
 
 def _channel_words(frequency_hz: float, bandwidth_hz: float | None) -> str:

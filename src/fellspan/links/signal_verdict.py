@@ -3,7 +3,6 @@
 Judges what others worked out; knows no terrain and no pages.
 """
 
-import math
 from dataclasses import dataclass
 from typing import Final
 
@@ -13,7 +12,7 @@ from numpy.typing import NDArray
 from fellspan.links.direction import Direction
 from fellspan.links.receivers import blocked
 from fellspan.links.result import AtEnds
-from fellspan.links.signal_words import percent_text
+from fellspan.links.signal_words import percent_text, wanted_words
 from fellspan.links.site import Link
 from fellspan.links.verdicts import SIGNAL_BAND_DB, signal_verdict
 from fellspan.vocabulary import SignalVerdict
@@ -84,9 +83,7 @@ def judged(
     if by_margin is None or margin_db.at_a is None or margin_db.at_b is None:
         return None, ""
     least = min(margin_db.at_a, margin_db.at_b)
-    # As everywhere else, but never as what is wanted.
-    shown = round(least, 1) if round(least, 1) < wanted_db else math.floor(10.0 * least) / 10.0
-    short = Hold(verdict=by_margin, why=f"margin {shown:.1f} dB, {wanted_db:g} dB wanted")
+    short = Hold(verdict=by_margin, why=wanted_words(least, wanted_db=wanted_db))
     all_of_them = (*holds, short, *((Hold(verdict="marginal", why=TREES),) if trees else ()))
     verdict = max((hold.verdict for hold in all_of_them), key=BETTER_TO_WORSE.index)
     if verdict == "meets":

@@ -13,6 +13,7 @@ from fellspan.links.receivers import ASSUMED_NOISE_FIGURE_DB, blocked
 from fellspan.links.result import AtEnds
 from fellspan.links.signal_result import DirectionResult, SignalResult
 from fellspan.links.site import Link
+from fellspan.links.words import down_db, least_db, margin_words
 from fellspan.propagation import out_of_range
 from fellspan.terrain.profile import PathProfile
 
@@ -21,33 +22,55 @@ LEAST_PERCENT, LEAST_MINUTES = 0.001, 5.0
 MOST_RAIN_PERCENT: Final = 1.0
 """Where the law of rain ends at the other side; outages of less than it knows get a note instead of a caution."""
 _CAUSES: Final = {"rain": "rain", "multipath": "multipath", "diffraction": "low k"}
+LEVEL_BEGINS: Final = "Signal at the median k in clear air: "
+AVAILABLE_BEGINS: Final = "Available "
+"""How the sentences begin that neighbours change, so that planning can put those with neighbours in their place."""
+TREES_HOLD: Final = "Trees in the required zone hold the signal verdict at 'marginal' at most."
+LEFT_OUT: Final = "neighbours on the channel are left out of it"
+"""What availability says where there are any."""
+LEFT_OUT_NOTE: Final = "neighbours on the channel are left out of availability and throughput"
 
 
 def signal_sentences(
     link: Link, result: SignalResult, *, received_dbm: AtEnds, margin_db: AtEnds, trees: bool
 ) -> tuple[str, ...]:
     """Level, margin, availability and throughput in plain sentences; empty where the level is unknown."""
+    level = level_sentence(link, received_dbm=received_dbm, margin_db=margin_db, wanted=result.a_to_b.wanted)
+    if level is None:
+        return ()
+    if margin_db.at_a is None or margin_db.at_b is None:
+        return (level,)
+    held = (TREES_HOLD,) if trees else ()
+    return (level, *held, availability_sentence(result), *_throughput(result))
+
+
+def level_sentence(
+    link: Link, *, received_dbm: AtEnds, margin_db: AtEnds, wanted: str | None, left_db: AtEnds | None = None
+) -> str | None:
+    """The level and the margin over the `wanted` modulation, with what neighbours leave of it; None where no level is known."""
     at_a, at_b = received_dbm.at_a, received_dbm.at_b
     if at_a is None or at_b is None:
-        return ()
-    if f"{at_a:.1f}" == f"{at_b:.1f}":
-        level = f"Signal at the median k in clear air: {at_b:.1f} dBm at both ends"
+        return None
+    at_a, at_b = down_db(at_a), down_db(at_b)
+    if at_a == at_b:
+        level = f"{LEVEL_BEGINS}{at_b:.1f} dBm at both ends"
     else:
-        level = f"Signal at the median k in clear air: {at_b:.1f} dBm at {link.b.name}, {at_a:.1f} dBm at {link.a.name}"
+        level = f"{LEVEL_BEGINS}{at_b:.1f} dBm at {link.b.name}, {at_a:.1f} dBm at {link.a.name}"
     if margin_db.at_a is None or margin_db.at_b is None:
-        return (f"{level}; no threshold is given, so there is no margin and no availability.",)
-    wanted = "" if result.a_to_b.wanted is None else f" of {result.a_to_b.wanted}"
-    one, other = sorted((margin_db.at_a, margin_db.at_b))
-    least = f"margin{wanted} {one:.1f} dB" if f"{one:.1f}" == f"{other:.1f}" else f"least margin{wanted} {one:.1f} dB"
-    capped = " Trees in the required zone hold the signal verdict at 'marginal' at most." if trees else ""
-    return (
-        f"{level}, {least}, {link.wanted_margin_db:g} dB wanted.{capped}",
-        _availability(result),
-        *_throughput(result),
-    )
+        return f"{level}; no threshold is given, so there is no margin and no availability."
+    least = "margin" if down_db(margin_db.at_a) == down_db(margin_db.at_b) else "least margin"
+    of = "" if wanted is None else f" of {wanted}"
+    margin = margin_words(least_db(margin_db), None if left_db is None else least_db(left_db))
+    return f"{level}, {least}{of} {margin}, {link.wanted_margin_db:g} dB wanted."
 
 
-def _availability(result: SignalResult) -> str:
+def wanted_words(least_db: float, left_db: float | None = None, *, wanted_db: float) -> str:
+    """'margin 8.2 dB, 10 dB wanted', with what neighbours leave of it: why a signal falls short."""
+    return f"margin {margin_words(least_db, left_db)}, {wanted_db:g} dB wanted"
+
+
+def availability_sentence(result: SignalResult, *, neighbours: bool = False) -> str:
+    """The availability of the wanted modulation; `neighbours` says that there are some, which it leaves out."""
     year, worst, minutes = (
         result.availability_percent.year,
         result.availability_percent.worst_month,
@@ -66,8 +89,8 @@ def _availability(result: SignalResult) -> str:
     cause = _CAUSES.get(result.dominant_cause or "", "")
     mostly = f", mostly by {cause}" if cause and minutes >= LEAST_MINUTES else ""
     return (
-        f"Available {percent_text(year)} of an average year both ways at once ({minutes_text(minutes)} out{mostly}), "
-        f"{percent_text(worst)} of its worst month.{asked}"
+        f"{AVAILABLE_BEGINS}{percent_text(year)} of an average year both ways at once ({minutes_text(minutes)} out{mostly}), "
+        f"{percent_text(worst)} of its worst month{f'; {LEFT_OUT}' if neighbours else ''}.{asked}"
     )
 
 
@@ -146,7 +169,7 @@ def notes_of(
     if iced and directions[0].margin_db is not None and directions[1].margin_db is not None:
         least = min(directions[0].margin_db, directions[1].margin_db)
         found.append(
-            f"with both radomes iced the least margin is {least - iced:.1f} dB; how often that is, is not computed"
+            f"with both radomes iced the least margin is {down_db(least - iced):.1f} dB; how often that is, is not computed"
         )
     if radio.modulations and not any(row.signature for row in radio.modulations) and _has_multipath(fadings):
         found.append("no signature is stated, so selective fading is not counted; it grows with the channel width")

@@ -6,7 +6,8 @@ Rounded toward caution: what is missing goes up, what is spare goes down. Format
 import math
 from typing import Final, Literal
 
-from fellspan.links.result import CriterionResult, LinkResult
+from fellspan.links.result import AtEnds, CriterionResult, LinkResult
+from fellspan.links.tenths import down_tenth, up_tenth
 
 State = Literal["clear", "clear-bare", "marginal", "obstructed"]
 STATE_WORDS: Final[dict[State, str]] = {
@@ -33,12 +34,43 @@ def state_of(result: LinkResult) -> State:
 
 def up_m(value_m: float) -> float:
     """To a tenth of a metre, rounded up: for what is missing and what is to be built."""
-    return math.ceil(value_m * 10.0 - _FUZZ) / 10.0 + 0.0
+    return up_tenth(value_m)
 
 
 def down_m(value_m: float) -> float:
     """To a tenth of a metre, rounded down: for what there is."""
-    return math.floor(value_m * 10.0 + _FUZZ) / 10.0 + 0.0
+    return down_tenth(value_m)
+
+
+def down_db(value_db: float) -> float:
+    """A margin, or a level, to a tenth of a decibel, rounded down: -30.46 is -30.5, in sentences as in rows."""
+    return down_tenth(value_db)
+
+
+def up_db(value_db: float) -> float:
+    """To a tenth of a decibel, rounded up: for what is missing, or over a limit."""
+    return up_tenth(value_db)
+
+
+def least_db(margin_db: AtEnds) -> float | None:
+    """The margin at the weaker end; None where none is known."""
+    return min((one for one in (margin_db.at_a, margin_db.at_b) if one is not None), default=None)
+
+
+def decisive_margin_db(result: LinkResult) -> AtEnds:
+    """The margin that decides: what neighbours leave of it, where any were looked at."""
+    return result.margin_db if result.margin_with_neighbours_db is None else result.margin_with_neighbours_db
+
+
+def are_told_apart(alone_db: float | None, left_db: float | None) -> bool:
+    """Whether a margin reads differently with neighbours and without."""
+    return alone_db is not None and left_db is not None and down_db(alone_db) != down_db(left_db)
+
+
+def neighbours_take(result: LinkResult) -> bool:
+    """Whether neighbours take, at either end, what is seen in a margin."""
+    left = decisive_margin_db(result)
+    return are_told_apart(result.margin_db.at_a, left.at_a) or are_told_apart(result.margin_db.at_b, left.at_b)
 
 
 def zone_share(fraction: float) -> float:
@@ -63,6 +95,16 @@ def spare_m(criterion: CriterionResult, *, length_m: float) -> float:
     if not is_two_points(criterion, length_m=length_m):
         return -up_m(criterion.shortfall_m)
     return down_m(spare) if spare >= 0.0 else -up_m(-spare)
+
+
+def margin_words(alone_db: float | None, left_db: float | None) -> str:
+    """'14.2 dB', or '14.2 dB, 11.0 dB with neighbours' where they take what is seen; a dash where no margin is known."""
+    if alone_db is None:
+        return "-"
+    words = f"{down_db(alone_db):.1f} dB"
+    if left_db is None or not are_told_apart(alone_db, left_db):
+        return words
+    return f"{words}, {down_db(left_db):.1f} dB with neighbours"
 
 
 def to_build(value_m: float | None) -> str:

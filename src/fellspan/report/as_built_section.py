@@ -138,7 +138,7 @@ def _figures(words: str) -> str:
 
 
 def _dbm(value: float | None) -> str:
-    return "–" if value is None else f"{wording.number(value)} dBm"
+    return wording.decibels(value, "dBm")
 
 
 def _cause(cause: Cause) -> CauseView:

@@ -1,10 +1,9 @@
 """What stands over a crew sheet before anything else: whether to install, and the power allowed. Computes nothing."""
 
-import math
 from dataclasses import dataclass
 from typing import Final
 
-from fellspan.links import radio_words
+from fellspan.links import radio_words, words
 from fellspan.links.result import LinkResult
 from fellspan.links.rules import RuleCheck
 from fellspan.links.verdicts import RAISING_BEGINS
@@ -49,7 +48,7 @@ def most_allowed_dbm(check: RuleCheck | None) -> float | None:
     if check is None or not check.is_breach or check.highest_setting_dbm is None or check.breach_db is None:
         return None
     # Down, not to the nearest: what is set by this sheet must keep the rule.
-    return math.floor(check.highest_setting_dbm * 10.0 + 1e-6) / 10.0
+    return words.down_db(check.highest_setting_dbm)
 
 
 def over_rule(check: RuleCheck | None) -> str:

@@ -269,13 +269,13 @@ def _level(result: LinkResult, letter: EndLetter) -> Pairs:
         cut = (
             ""
             if planned - level < 0.05
-            else f" with the power that the rule allows ({wording.number(planned)} as planned)"
+            else f" with the power that the rule allows ({wording.decibels(planned, '')} as planned)"
         )
         if has_no_level(result):
-            rows.append((label, f"{wording.number(level)} dBm as computed{cut}, not for acceptance"))
+            rows.append((label, f"{wording.decibels(level, 'dBm')} as computed{cut}, not for acceptance"))
         else:
-            low, high = wording.number(level - BAND_DB), wording.number(level + BAND_DB)
-            rows.append((label, f"{wording.number(level)} dBm{cut}; accepted from {low} to {high} dBm"))
+            low, high = wording.decibels(level - BAND_DB, ""), wording.decibels(level + BAND_DB, "")
+            rows.append((label, f"{wording.decibels(level, 'dBm')}{cut}; accepted from {low} to {high} dBm"))
     if has_no_level(result):
         rows.append(("Acceptance", NO_LEVEL))
     if result.verdict == "obstructed":
@@ -327,11 +327,11 @@ def _plane(word: str, curve: Curve, received: float | None) -> Misaimed:
 
 def _meter(change_db: float, received: float | None) -> str:
     words = f"{wording.number(change_db)} dB"
-    return words if received is None else f"{words}: {wording.number(received + change_db)} dBm"
+    return words if received is None else f"{words}: {wording.decibels(received + change_db, 'dBm')}"
 
 
 def _at_level(change_db: float, received: float | None) -> str:
-    return "" if received is None else f" (about {wording.number(received + change_db)} dBm)"
+    return "" if received is None else f" (about {wording.decibels(received + change_db, 'dBm')})"
 
 
 def _keep(one: ExposureDistances) -> tuple[str, str, str, str]:

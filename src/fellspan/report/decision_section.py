@@ -9,13 +9,21 @@ from typing import Final, Literal
 from fellspan.design.survey_list import SurveyPoint, label_of
 from fellspan.links import radio_words, words
 from fellspan.links.result import AntennaResult, EndResult, LinkResult
+from fellspan.links.signal_words import AVAILABLE_BEGINS, LEVEL_BEGINS, TREES_HOLD
 from fellspan.links.verdicts import RAISING_BEGINS
 from fellspan.links.words import State
 from fellspan.planning.plan import LinkPlan
 from fellspan.report import wording
 
 MOST_CHECKS: Final = 3
-_SIGNAL_BEGINS: Final = ("Signal at ", "Available ", "Availability ", "The level is short", "Mean throughput")
+_SIGNAL_BEGINS: Final = (
+    LEVEL_BEGINS,
+    TREES_HOLD,
+    AVAILABLE_BEGINS,
+    "Availability ",
+    "The level is short",
+    "Mean throughput",
+)
 _WATER: Final = ("sea", "Earth bulge over the sea")
 """What cannot be measured as a top: the names that causes give to open water."""
 _DOUBT_BEGINS: Final = (
@@ -23,7 +31,6 @@ _DOUBT_BEGINS: Final = (
     "Against 'clear'",
     "The confidence is",
     "Left out at",
-    "Neighbours on the same channel",
 )
 
 

@@ -86,8 +86,8 @@ def cells(row: EquipRow) -> tuple[str, ...]:
     mark = "" if wind is None or wind.confirmed else "~"
     widths = [f"{one:.1f}°" for one in (row.azimuth_width_deg, row.elevation_width_deg) if one is not None]
     return (
-        _decibels(_least(row.received_dbm.at_a, row.received_dbm.at_b), "dBm"),
-        _decibels(_least(row.margin_db.at_a, row.margin_db.at_b)),
+        wording.decibels(_least(row.received_dbm.at_a, row.received_dbm.at_b), "dBm"),
+        wording.decibels(_least(row.margin_db.at_a, row.margin_db.at_b)),
         _spare(row.spare_db),
         _available(row.availability_percent.year),
         " × ".join(widths) or "–",

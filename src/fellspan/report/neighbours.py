@@ -4,6 +4,8 @@ from dataclasses import dataclass
 from typing import Final
 
 from fellspan.links.interference_result import InterferenceResult, Interferer, PathStatus
+from fellspan.links.result import AtEnds, LinkResult
+from fellspan.links.words import decisive_margin_db, neighbours_take
 from fellspan.planning.plan import StudyPlan
 
 MOST_ROWS: Final = 40
@@ -29,6 +31,11 @@ class NeighboursView:
     warnings: tuple[str, ...]
     notes: tuple[str, ...]
     path_words: dict[PathStatus, str]
+
+
+def left_by_neighbours(result: LinkResult) -> AtEnds | None:
+    """The margin that neighbours leave at both ends; None where they take nothing that is seen of it."""
+    return decisive_margin_db(result) if neighbours_take(result) else None
 
 
 def neighbours_view(plan: StudyPlan, link: str | None = None) -> NeighboursView | None:

@@ -9,11 +9,13 @@ import re
 from html import escape
 from typing import Final
 
+from fellspan.links import radio_words, words
 from fellspan.links.result import LinkResult
 from fellspan.links.words import state_of
 from fellspan.planning.plan import LinkPlan, StudyPlan
 from fellspan.report import wording
 from fellspan.report.drawing_files import stand_alone
+from fellspan.report.neighbours import left_by_neighbours
 from fellspan.report.profile_drawing import draw_profile, profile_text
 from fellspan.report.section import FULL
 from fellspan.report.signal_section import availability_short
@@ -67,7 +69,7 @@ def _decision(result: LinkResult) -> str:
 
 def _numbers(result: LinkResult) -> str:
     governing = result.clearance[result.governing]
-    received, margin = result.received_dbm, result.margin_db
+    received, margin, left = result.received_dbm, result.margin_db, left_by_neighbours(result)
     rows = [
         ("Length", wording.distance(result.distance_m)),
         (
@@ -80,19 +82,35 @@ def _numbers(result: LinkResult) -> str:
             "Confidence",
             f"{wording.probability(result.confidence)}, {wording.probability(result.confidence_asked)} asked",
         ),
-        ("Level at A, at B", f"{_db(received.at_a, 'dBm')}, {_db(received.at_b, 'dBm')}"),
-        ("Margin at A, at B", f"{_db(margin.at_a, 'dB')}, {_db(margin.at_b, 'dB')}"),
-        ("Available", availability_short(result) or "–"),
+        ("Level at A, at B", f"{wording.decibels(received.at_a, 'dBm')}, {wording.decibels(received.at_b, 'dBm')}"),
+        ("Margin at A, at B", f"{wording.decibels(margin.at_a)}, {wording.decibels(margin.at_b)}"),
+        *(
+            ()
+            if left is None
+            else (("With neighbours", f"{wording.decibels(left.at_a)}, {wording.decibels(left.at_b)}"),)
+        ),
+        ("Available", _available(result)),
     ]
     return _table((), rows)
 
 
-def _db(value: float | None, unit: str) -> str:
-    return "–" if value is None else f"{wording.number(value)} {unit}"
+def _available(result: LinkResult) -> str:
+    """The share of the year; where there are neighbours, that it does not count them."""
+    share = availability_short(result)
+    out = share and result.signal is not None and radio_words.leaves_neighbours_out(result.signal)
+    return f"{share}, neighbours left out" if out else share or "–"
+
+
+def _margin(result: LinkResult) -> str:
+    """What decides: the margin at the weaker end with neighbours, and without where they take what is seen."""
+    alone, left = words.least_db(result.margin_db), words.least_db(words.decisive_margin_db(result))
+    said = wording.decibels(left, "")
+    return (
+        f"{said} with neighbours, {wording.decibels(alone, '')} without" if words.are_told_apart(alone, left) else said
+    )
 
 
 def _row(result: LinkResult) -> tuple[str, ...]:
-    known = [value for value in (result.margin_db.at_a, result.margin_db.at_b) if value is not None]
     return (
         result.name,
         wording.STATE_WORD[state_of(result)],
@@ -100,8 +118,8 @@ def _row(result: LinkResult) -> tuple[str, ...]:
         wording.distance(result.distance_m),
         wording.decisive_words(result.clearance[result.governing]),
         wording.signal_short(result),
-        wording.number(min(known, default=None)),
-        availability_short(result) or "–",
+        _margin(result),
+        _available(result),
     )
 
 

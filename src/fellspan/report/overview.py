@@ -8,7 +8,7 @@ from dataclasses import dataclass
 from typing import Final
 
 from fellspan.design.heights_result import HeightKind, HeightsResult
-from fellspan.links import words
+from fellspan.links import radio_words, words
 from fellspan.links.result import LinkResult
 from fellspan.links.verdicts import USUAL_MAST_M
 from fellspan.links.words import State, state_of
@@ -49,8 +49,9 @@ class Row:
     confidence: Cell
     levels: Cell
     margin: Cell
-    left: str
-    """What neighbours leave of the margin, where they take any."""
+    """What neighbours leave of it, at the weaker end."""
+    alone: str
+    """The margin without neighbours, where they take what is seen."""
     availability: Cell
     build: str
     built: str
@@ -71,16 +72,17 @@ class OverviewView:
     """Sites with two links."""
     survey: tuple[SurveyGroup, ...]
     points: int
+    neighbours_left_out: bool
+    """Whether any link has neighbours on its channel, which availability does not count."""
 
 
 def overview_view(plan: StudyPlan) -> OverviewView:
     """Everything beside the map."""
-    left = _left_by_neighbours(plan)
     signals = Counter(_signal(link.result).text for link in plan.links)
     survey = survey_groups(plan)
     sites = hubs_of(plan)
     return OverviewView(
-        rows=tuple(_row(index, link, left.get(link.result.name)) for index, link in enumerate(plan.links)),
+        rows=tuple(_row(index, link) for index, link in enumerate(plan.links)),
         states=Counter(state_of(link.result) for link in plan.links),
         signals=tuple((word, signals[word]) for word in sorted(signals, key=_signal_order)),
         length_m=sum(link.result.distance_m for link in plan.links),
@@ -88,16 +90,18 @@ def overview_view(plan: StudyPlan) -> OverviewView:
         joints=tuple(site for site in sites if len(site.links) < HUB_FROM),
         survey=survey,
         points=sum(len(group.rows) for group in survey),
+        neighbours_left_out=any(
+            link.result.signal is not None and radio_words.leaves_neighbours_out(link.result.signal)
+            for link in plan.links
+        ),
     )
 
 
-def _row(index: int, link: LinkPlan, left_db: float | None) -> Row:
+def _row(index: int, link: LinkPlan) -> Row:
     result = link.result
     governing = result.clearance[result.governing]
-    received, margin = result.received_dbm, result.margin_db
-    known = [value for value in (margin.at_a, margin.at_b) if value is not None]
-    least = min(known, default=None)
-    at = " / ".join(wording.number(value) for value in (received.at_a, received.at_b))
+    received = result.received_dbm
+    at = " / ".join(wording.decibels(value, "") for value in (received.at_a, received.at_b))
     spare = max(governing.clearance_m - governing.required_m, 0.0) if governing.met else -governing.shortfall_m
     return Row(
         result=result,
@@ -111,15 +115,25 @@ def _row(index: int, link: LinkPlan, left_db: float | None) -> Row:
         spare=Cell(text=wording.decisive_words(governing), sort=f"{spare:.2f}"),
         confidence=Cell(text=wording.probability(result.confidence), sort=f"{result.confidence:.4f}"),
         levels=Cell(text="–" if received.at_a is None and received.at_b is None else at),
-        margin=Cell(
-            text=wording.number(least),
-            sort="" if least is None else f"{min(least, least if left_db is None else left_db):.2f}",
-        ),
-        left=wording.number(left_db) if left_db is not None and least is not None and least - left_db >= 0.05 else "",
+        margin=_margin(result),
+        alone=_alone(result),
         availability=_availability(result),
         build=_build(link.heights),
         built="" if link.as_built is None else verdict_words(link.as_built),
     )
+
+
+def _margin(result: LinkResult) -> Cell:
+    least = words.least_db(words.decisive_margin_db(result))
+    if least is None or radio_words.verdict_why(result) == radio_words.THROUGH:
+        return Cell(text="–")  # worked out past what stands in the way: nothing to rely on
+    return Cell(text=wording.decibels(least, ""), sort=f"{least:.2f}")
+
+
+def _alone(result: LinkResult) -> str:
+    alone = words.least_db(result.margin_db)
+    told = words.are_told_apart(alone, words.least_db(words.decisive_margin_db(result)))
+    return wording.decibels(alone, "") if told and _margin(result).sort else ""
 
 
 def _signal(result: LinkResult) -> Cell:
@@ -135,15 +149,6 @@ def _availability(result: LinkResult) -> Cell:
     year = result.availability_percent.year
     text = availability_short(result)
     return Cell(text=text or "–", sort=f"{year:.6f}" if text and year is not None else "")
-
-
-def _left_by_neighbours(plan: StudyPlan) -> dict[str, float]:
-    """The least margin that neighbours leave on each link, dB."""
-    left: dict[str, float] = {}
-    for one in plan.interference.receivers if plan.interference else ():
-        if one.effective_margin_db is not None:
-            left[one.link] = min(one.effective_margin_db, left.get(one.link, one.effective_margin_db))
-    return left
 
 
 def _build(heights: HeightsResult | None) -> str:

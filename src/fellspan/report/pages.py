@@ -33,7 +33,7 @@ from fellspan.report.heights_section import heights_section
 from fellspan.report.horizon_section import horizon_section
 from fellspan.report.map import MapMarkup, link_map
 from fellspan.report.naming import crew_name, page_name, slug
-from fellspan.report.neighbours import neighbours_view
+from fellspan.report.neighbours import left_by_neighbours, neighbours_view
 from fellspan.report.overview import overview_view
 from fellspan.report.profile_drawing import draw_profile, exaggeration_words
 from fellspan.report.reflection_section import reflection_section
@@ -323,6 +323,7 @@ def _environment() -> Environment:
         bytes=_bytes,
         criterion_words=wording.criterion_words,
         decisive_words=wording.decisive_words,
+        decibels=wording.decibels,
         degrees=wording.degrees,
         digest=_digest,
         distance=wording.distance,
@@ -330,6 +331,7 @@ def _environment() -> Environment:
         governing_words=wording.governing_words,
         headline=wording.headline,
         k_factor=wording.k_factor,
+        left_by_neighbours=left_by_neighbours,
         km=lambda value, length: wording.kilometres(value, length_m=length),
         metres=wording.metres,
         missing=wording.missing,

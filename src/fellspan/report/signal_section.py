@@ -10,7 +10,7 @@ from fellspan.links.exposure import RULE_WORDS, ExposureDistances, ExposureResul
 from fellspan.links.result import LinkResult
 from fellspan.links.rules import RuleCheck
 from fellspan.links.signal_result import DirectionResult, ModulationResult, Shares, SignalResult, Working
-from fellspan.links.signal_words import minutes_text, percent_text, rate_text
+from fellspan.links.signal_words import LEFT_OUT, minutes_text, percent_text, rate_text
 from fellspan.propagation.sources import SOURCES
 from fellspan.report import wording
 from fellspan.report.workings_section import value_words
@@ -117,7 +117,7 @@ def _available(signal: SignalResult) -> str:
     mostly = f", mostly by {cause}" if cause else ""
     return (
         f"{percent_text(year)} of the year both ways at once, {minutes_text(minutes)} out{mostly}; "
-        f"{percent_text(month)} of its worst month"
+        f"{percent_text(month)} of its worst month{f'; {LEFT_OUT}' if radio_words.leaves_neighbours_out(signal) else ''}"
     )
 
 
@@ -153,8 +153,8 @@ def _modulation(row: ModulationResult, direction: DirectionResult) -> tuple[str,
         f"{row.name} (wanted)" if row.name == direction.wanted else row.name,
         f"{wording.number(row.power_dbm)} dBm",
         f"{wording.number(row.threshold_dbm)} dBm",
-        f"{wording.number(row.received_dbm)} dBm",
-        f"{wording.number(row.margin_db, sign=True)} dB",
+        wording.decibels(row.received_dbm, "dBm"),
+        wording.decibels(row.margin_db, sign=True),
         "–" if year is None else percent_text(year),
         "–" if month is None else percent_text(month),
         "–" if row.throughput_bps is None else rate_text(row.throughput_bps),

@@ -49,6 +49,11 @@ def metres(value: float | None, digits: int = 1, *, sign: bool = False) -> str:
     return "–" if value is None else f"{number(value, digits, sign=sign)} m"
 
 
+def decibels(value: float | None, unit: str = "dB", *, sign: bool = False) -> str:
+    """A margin, or a level in dBm: rounded down as everywhere; no unit where `unit` is empty."""
+    return "–" if value is None else f"{number(words.down_db(value), sign=sign)} {unit}".rstrip()
+
+
 def kilometres(distance_m: float, *, length_m: float | None = None) -> str:
     """Kilometres with as many decimals as the path (`length_m`, else the distance itself) deserves, no unit."""
     scale = distance_m if length_m is None else length_m
