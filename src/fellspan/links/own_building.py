@@ -28,7 +28,7 @@ LEAST_TOLERANCE_M, MOST_TOLERANCE_M = 1.0, 5.0
 """and within these bounds, m (our own rule)."""
 SPOT_M: Final = 100.0
 """An outline counts as the antenna's own spot up to this far, m; beyond it trees can grow on it (our own rule)."""
-_TOUCH_M: Final = 0.01
+TOUCH_M: Final = 0.01
 _INSIDE_M: Final = 1e-3
 _BUILDING, _OTHER = COVER_KINDS.index("building"), COVER_KINDS.index("other")
 ROOF_SOURCE: Final = "typed for the site"
@@ -57,7 +57,7 @@ def own_outlines(profile: PathProfile, end: EndName) -> tuple[int, ...]:
         for index, obstacle in enumerate(profile.obstacles)
         if obstacle.kind == "building"
         and obstacle.source != ROOF_SOURCE
-        and (obstacle.from_m <= _TOUCH_M if end == "A" else obstacle.to_m >= profile.length_m - _TOUCH_M)
+        and (obstacle.from_m <= TOUCH_M if end == "A" else obstacle.to_m >= profile.length_m - TOUCH_M)
     )
 
 
@@ -133,7 +133,7 @@ def with_roof_edge(
 
     `edge_m` counts from that end. The obstacle is named 'parapet at A' or, without a parapet, 'roof edge of A'.
     """
-    from_end = float(np.clip(edge_m, _TOUCH_M, profile.length_m - _TOUCH_M))
+    from_end = float(np.clip(edge_m, TOUCH_M, profile.length_m - TOUCH_M))
     at_m = from_end if end == "A" else profile.length_m - from_end
     profile = with_nodes(profile, (at_m,))
     index = int(np.argmin(np.abs(profile.distance_m - at_m)))

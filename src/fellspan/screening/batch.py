@@ -14,15 +14,14 @@ from fellspan.links.assess import REFINE_PARTS
 from fellspan.links.budget import tilts_deg
 from fellspan.screening.columns import Columns
 from fellspan.screening.laid import LaidBucket, pair_columns
+from fellspan.screening.near_index import nearby
 from fellspan.screening.pairs import HEIGHT_REFERENCES, Candidates, SiteColumns
 from fellspan.screening.profiles import FINE_PER_OCTAVE, Profiles, closer, regular, steps_of, width_of
 from fellspan.screening.rays import CLEAR, MARGINAL, Judged, Rules, closer_look, judged
 from fellspan.screening.signal import SignalColumns, best_sector, signal_columns
-from fellspan.screening.single import name_of
 from fellspan.screening.stand import Antennas, Standings, antennas_at, standings
 from fellspan.screening.sure import likely_clear
 from fellspan.screening.ways import Ways
-from fellspan.terrain.alongpath import nodes_for
 from fellspan.terrain.many import ManyPaths
 from fellspan.terrain.units import is_ellipsoidal
 
@@ -92,13 +91,13 @@ class Batch:
         self._steps = steps_of(length, step)
         self._fine_m = length / steps_of(length, cell / REFINE_PARTS)
         fit = self._laid.usable & (self._steps >= FEWEST_STEPS) & (self._steps <= LONGEST_STEPS)
-        fit &= ~(setting.wrong_hubs[hub] | setting.wrong_places[place]) & ~self._near_others()
-        self._fit = fit
-
-    @property
-    def others(self) -> Index:
+        fit &= ~(setting.wrong_hubs[hub] | setting.wrong_places[place])
+        near = self._near_others()
+        self.others: Index = rows[~fit]
         """Rows of the columns that must be taken one by one."""
-        return np.asarray(self._rows[~self._fit])
+        self.near: Index = rows[fit & near]
+        """Rows that `NearBatch` takes."""
+        self._fit = fit & ~near
 
     def blocks(self) -> list[list[Index]]:
         """The pairs that fit, in parts of one width each, and these in blocks, each for a thread to take."""
@@ -121,20 +120,8 @@ class Batch:
 
     def _near_others(self) -> NDArray[np.bool_]:
         """Pairs whose paths come near an obstacle or a surveyed point."""
-        layers = self._setting.many.layers
-        survey, obstacles = layers.survey, layers.obstacles
-        near = np.zeros(self._rows.size, dtype=np.bool_)
-        if not obstacles.obstacles and not survey.rows:
-            return near
-        nodes = nodes_for(float(self._ways.length_m.max(initial=1.0)))
-        share = np.linspace(0.0, 1.0, nodes)
-        places = [self._ways.positions(np.full(self._rows.size, one)) for one in share.tolist()]
-        latitude, longitude = (np.stack([place[axis] for place in places], axis=1) for axis in (0, 1))
-        near |= obstacles.meets(longitude, latitude) | survey.meets(longitude, latitude)
-        if survey.links:
-            pairs = zip(self._hub.tolist(), self._place.tolist(), strict=True)
-            near |= np.array([survey.names(name_of(self._setting.candidates, *pair)) for pair in pairs], dtype=np.bool_)
-        return near
+        setting = self._setting
+        return nearby(setting.candidates, setting.many.layers, self._ways, self._hub, self._place).paths()
 
     def run(self, parts: list[Index]) -> Block:
         """Fill the rows of a block; give those that it could not decide on."""

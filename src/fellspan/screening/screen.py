@@ -14,6 +14,7 @@ from fellspan.geodesy import geodesic
 from fellspan.links.assess import SAME_PLACE_M
 from fellspan.screening.batch import Batch, Setting, wrong_sites
 from fellspan.screening.columns import DONE, SAME_PLACE, Columns
+from fellspan.screening.near import NEAR_BATCH, NearBatch
 from fellspan.screening.pairs import Candidates, PairResults, SiteColumns
 from fellspan.screening.single import draw_single, screen_single, site_of
 from fellspan.terrain.terrain import Terrain
@@ -63,8 +64,13 @@ def screen_pairs(
         for start in range(0, rows.size, BATCH):
             batch = Batch(setting, columns, rows[start : start + BATCH])
             done = list(pool.map(batch.run, batch.blocks()))
-            others = _sorted([batch.others, *(rows for block in done for rows in block.one_by_one)])
-            list(pool.map(lambda row: screen_single(candidates, columns, row, terrain=terrain), others))
+            others = [batch.others]
+            for part in np.split(batch.near, range(NEAR_BATCH, batch.near.size, NEAR_BATCH)):
+                near = NearBatch(setting, columns, part)
+                others.append(near.others)
+                done += pool.map(near.run, near.blocks())
+            alone = _sorted([*others, *(rows for block in done for rows in block.one_by_one)])
+            list(pool.map(lambda row: screen_single(candidates, columns, row, terrain=terrain), alone))
             unsure = _sorted([rows for block in done for rows in block.unsure])
             unsure = [row for row in unsure if columns.status[row] == DONE]
             list(pool.map(lambda row: draw_single(candidates, columns, row, terrain=terrain), unsure))

@@ -157,7 +157,7 @@ class PathWork:
             part = standing.covers(distance_m)
             above = standing.top_m(distance_m[part], value[part]) - value[part]
             wins = above > height[part]
-            if self._is_removed(standing, tops_at_m) and (gone := wins & said[part]).any():
+            if is_removed(standing, tops_at_m, cell_m=self.cell_m) and (gone := wins & said[part]).any():
                 removed.add(number)
                 wins &= ~gone
             height[part] = np.where(wins, above, height[part])
@@ -191,13 +191,6 @@ class PathWork:
             removed=frozenset(removed),
             surface_steps=steps,
         )
-
-    def _is_removed(self, standing: Standing, tops_at_m: Floats) -> bool:
-        """Whether a survey looked at the very spot: a top was measured within a cell of a building or tree."""
-        crossing = standing.crossing
-        if crossing.obstacle.moves or crossing.obstacle.kind not in _REMOVABLE:
-            return False
-        return bool(np.any((tops_at_m >= crossing.from_m - self.cell_m) & (tops_at_m <= crossing.to_m + self.cell_m)))
 
     def ground(self, distance_m: Floats) -> Ground:
         """The ground at rising distances: survey before raster before sea."""
@@ -278,3 +271,11 @@ class PathWork:
         # No sea here: a support without ground hangs its line level, from the highest ground under the crossing.
         value = self.layers.ground.sample_positions(ends[:, 1], ends[:, 0]).value_m
         return np.asarray(value, dtype=np.float64).reshape(-1, 2)
+
+
+def is_removed(standing: Standing, tops_at_m: Floats, *, cell_m: float) -> bool:
+    """Whether a survey looked at the very spot: a top was measured within a cell of a building or tree."""
+    crossing = standing.crossing
+    if crossing.obstacle.moves or crossing.obstacle.kind not in _REMOVABLE:
+        return False
+    return bool(np.any((tops_at_m >= crossing.from_m - cell_m) & (tops_at_m <= crossing.to_m + cell_m)))

@@ -31,7 +31,9 @@ class GroundAt(Protocol):
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
-class _Passed:
+class Passed:
+    """Where an obstacle's edge lies deepest in the zones of a path that passes it."""
+
     obstacle: Obstacle
     shift: float
     along_m: float
@@ -59,36 +61,46 @@ def beside(
     growth_years: float,
 ) -> tuple[BesidePath, ...]:
     """The obstacles within `BESIDE_M` of a path and not within that of a crossing of their own, by distance from A."""
-    crossed: dict[int, list[tuple[float, float]]] = {}
-    for crossing in crossings:
-        crossed.setdefault(id(crossing.obstacle), []).append((crossing.from_m - BESIDE_M, crossing.to_m + BESIDE_M))
-    passed = [
-        found for one in near if (found := _passed(one, crossed.get(id(one.obstacle), ()), path.length_m)) is not None
-    ]
-    passed = sorted(passed, key=lambda one: (one.share, one.along_m, one.obstacle.name))[:MOST_BESIDE]
-    probes = [_probes(one, path) for one in passed]
-    # Ground is asked for once, for all of them.
-    places = np.concatenate([probe.places for probe in probes]) if probes else np.zeros((0, 2))
-    ground = ground_at(places[:, 0], places[:, 1])
-    listed: list[BesidePath] = []
-    at = 0
-    for one, probe in zip(passed, probes, strict=True):
-        under = ground[at : at + len(probe.places)]
-        at += len(probe.places)
-        listed.append(
-            BesidePath(
-                name=one.obstacle.name,
-                kind=one.obstacle.kind,
-                at_m=one.along_m,
-                offset_m=one.offset_m,
-                top_amsl_m=_top(one.obstacle, probe, under) + one.obstacle.growth_m_per_year * growth_years,
-                source=one.obstacle.source,
-            )
+    passed = passed_by(near, crossings, path.length_m)
+    tops = tops_m([(one, path) for one in passed], ground_at=ground_at, growth_years=growth_years)
+    listed = [
+        BesidePath(
+            name=one.obstacle.name,
+            kind=one.obstacle.kind,
+            at_m=one.along_m,
+            offset_m=one.offset_m,
+            top_amsl_m=top,
+            source=one.obstacle.source,
         )
+        for one, top in zip(passed, tops, strict=True)
+    ]
     return tuple(sorted(listed, key=lambda one: (one.at_m, one.offset_m, one.name)))
 
 
-def _passed(near: NearShape, crossed: Sequence[tuple[float, float]], length_m: float) -> _Passed | None:
+def passed_by(near: Sequence[NearShape], crossings: Sequence[Crossing], length_m: float) -> list[Passed]:
+    """The obstacles that `beside` lists, the deepest in the zones first."""
+    crossed: dict[int, list[tuple[float, float]]] = {}
+    for crossing in crossings:
+        crossed.setdefault(id(crossing.obstacle), []).append((crossing.from_m - BESIDE_M, crossing.to_m + BESIDE_M))
+    passed = [found for one in near if (found := _passed(one, crossed.get(id(one.obstacle), ()), length_m)) is not None]
+    return sorted(passed, key=lambda one: (one.share, one.along_m, one.obstacle.name))[:MOST_BESIDE]
+
+
+def tops_m(passed: Sequence[tuple[Passed, GeodesicPath]], *, ground_at: GroundAt, growth_years: float) -> list[float]:
+    """Tops of obstacles beside paths, m above sea level, with growth; ground is asked for once, for all of them."""
+    probes = [_probes(one, path) for one, path in passed]
+    places = np.concatenate([probe.places for probe in probes]) if probes else np.zeros((0, 2))
+    ground = ground_at(places[:, 0], places[:, 1])
+    tops: list[float] = []
+    at = 0
+    for (one, _), probe in zip(passed, probes, strict=True):
+        under = ground[at : at + len(probe.places)]
+        at += len(probe.places)
+        tops.append(_top(one.obstacle, probe, under) + one.obstacle.growth_m_per_year * growth_years)
+    return tops
+
+
+def _passed(near: NearShape, crossed: Sequence[tuple[float, float]], length_m: float) -> Passed | None:
     """Where the edge of a shape lies deepest in the zones of the path; None where it stays off or beyond the ends.
 
     Stretches where it is crossed are left out: there it counts as crossed.
@@ -110,7 +122,7 @@ def _passed(near: NearShape, crossed: Sequence[tuple[float, float]], length_m: f
     points, offset = points[within], offset[within]
     share = offset / np.sqrt(points[:, 0] * (length_m - points[:, 0]) / length_m)
     i = int(np.argmin(share))
-    return _Passed(
+    return Passed(
         obstacle=near.obstacle,
         shift=near.shift,
         along_m=float(points[i, 0]),
@@ -120,7 +132,7 @@ def _passed(near: NearShape, crossed: Sequence[tuple[float, float]], length_m: f
     )
 
 
-def _probes(one: _Passed, path: GeodesicPath) -> _Probe:
+def _probes(one: Passed, path: GeodesicPath) -> _Probe:
     """Where the ground must be known for the top: beside the path, on it, and at corners or supports."""
     obstacle = one.obstacle
     foot = path.positions(np.array([one.along_m]))
@@ -157,7 +169,7 @@ def _top(obstacle: Obstacle, probe: _Probe, ground_m: Floats) -> float:
     return float(np.nanmax(own)) + height if np.isfinite(own).any() else float("nan")
 
 
-def _span(one: _Passed, line: Floats, path: GeodesicPath) -> tuple[int, float]:
+def _span(one: Passed, line: Floats, path: GeodesicPath) -> tuple[int, float]:
     """Which span of a line is the one beside the path, and how far along it (0 to 1)."""
     along, across = along_across(path, line[:, 1], line[:, 0] + one.shift)
     start, ray = np.column_stack((along, across))[:-1], np.column_stack((np.diff(along), np.diff(across)))

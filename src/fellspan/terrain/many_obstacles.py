@@ -81,9 +81,12 @@ class ManyObstacles(ObstacleIndex):
             some = np.flatnonzero((moved.max(axis=1) >= west) & (moved.min(axis=1) <= east))
             if some.size == 0:
                 continue
-            lines = shapely.linestrings(np.stack((moved[some], latitude_deg[some]), axis=-1))
-            line, obstacle = tree.query(lines, predicate="intersects")
-            found.append((some[line], obstacle.astype(np.int64), np.full(line.size, turn)))
+            points = np.stack((moved[some], latitude_deg[some]), axis=-1)
+            # Piece by piece: the box round a long oblique line holds half a town.
+            pieces = shapely.linestrings(np.stack((points[:, :-1], points[:, 1:]), axis=2).reshape(-1, 2, 2))
+            piece, obstacle = tree.query(pieces, predicate="intersects")
+            path = some[piece // (points.shape[1] - 1)]
+            found.append((path, obstacle.astype(np.int64), np.full(path.size, turn)))
         if not found:
             return np.zeros(0, dtype=np.int64), np.zeros(0, dtype=np.int64), np.zeros(0)
         path, obstacle, shift = (np.concatenate([one[column] for one in found]) for column in range(3))

@@ -81,13 +81,14 @@ def stand(
     for crossing, place in zip(crossings, places, strict=True):
         under = ground[at : at + place.size]
         at += place.size
-        standing.append(_settle(crossing, place, under, ground_at_supports, growth_years))
+        standing.append(settled_on(crossing, place, under, ground_at_supports, growth_years))
     return tuple(standing)
 
 
-def _settle(
+def settled_on(
     crossing: Crossing, place_m: Floats, ground_m: Floats, ground_at_supports: GroundAtSupports, growth_years: float
 ) -> Standing:
+    """Settle the top of one crossing, with the ground at its `nodes`, m."""
     obstacle = crossing.obstacle
     growth = obstacle.growth_m_per_year * growth_years
     highest = float(np.nanmax(ground_m)) if np.isfinite(ground_m).any() else math.nan
