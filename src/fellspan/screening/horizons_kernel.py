@@ -9,12 +9,12 @@ import math
 import numpy as np
 from numpy.typing import NDArray
 
-from fellspan.terrain.compiling import compiled
+from fellspan.terrain.compiling import compiled_for_numbers
 
 Floats = NDArray[np.float64]
 
 
-@compiled
+@compiled_for_numbers
 def horizons(distance: Floats, height: Floats, a: Floats, b: Floats, curve: Floats, found: Floats) -> None:
     """Slopes of both horizons against the ray, and the greatest height above it over sqrt(d1 d2).
 
@@ -32,34 +32,43 @@ def horizons(distance: Floats, height: Floats, a: Floats, b: Floats, curve: Floa
         (3, q, m), written; minus infinity for what is not asked for: the second where sight is free, the third where it is not.
     """
     count, level = distance.shape[1], height.shape[1] == 0
-    above = np.empty(count)
+    above, slope, other = np.empty(count), np.empty(count), np.empty(count)
     for path in range(distance.shape[0]):
         length = distance[path, count - 1]
         rise = (b[path] - a[path]) / length
         for i in range(1, count - 1):
-            above[i] = (0.0 if level else height[path, i]) - (a[path] + distance[path, i] * rise)
+            d = distance[path, i]
+            above[i] = (0.0 if level else height[path, i]) - (a[path] + d * rise)
+            slope[i] = above[i] / d
+        ready = 0  # what `other` holds: 1 heights over roots, 2 slopes seen from B
         for number in range(curve.shape[1]):
             bend = curve[path, number]
             most = -math.inf
             for i in range(1, count - 1):
-                d = distance[path, i]
-                most = max(most, above[i] / d + bend * (length - d))
+                most = max(most, slope[i] + bend * (length - distance[path, i]))
             found[0, path, number] = most
             found[1, path, number] = found[2, path, number] = -math.inf
-            most_b = -math.inf
+            next_most = -math.inf
             if most < 0.0:
+                if ready != 1:
+                    for i in range(1, count - 1):
+                        other[i] = above[i] / math.sqrt(distance[path, i] * (length - distance[path, i]))
+                    ready = 1
                 for i in range(1, count - 1):
                     root = math.sqrt(distance[path, i] * (length - distance[path, i]))
-                    most_b = max(most_b, above[i] / root + bend * root)
-                found[2, path, number] = most_b
+                    next_most = max(next_most, other[i] + bend * root)
+                found[2, path, number] = next_most
             else:
+                if ready != 2:
+                    for i in range(1, count - 1):
+                        other[i] = above[i] / (length - distance[path, i])
+                    ready = 2
                 for i in range(1, count - 1):
-                    d = distance[path, i]
-                    most_b = max(most_b, above[i] / (length - d) + bend * d)
-                found[1, path, number] = most_b
+                    next_most = max(next_most, other[i] + bend * distance[path, i])
+                found[1, path, number] = next_most
 
 
-@compiled
+@compiled_for_numbers
 def smooth_ends(distance: Floats, ground: Floats, a: Floats, b: Floats, ends: Floats, mean: Floats) -> None:
     """Levels of the smooth surface at both ends, (2, q), held below the ground there; and the mean of the ground, (q,); m."""
     count = distance.shape[1]

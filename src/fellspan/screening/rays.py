@@ -40,14 +40,14 @@ class Rules:
     fraction: Floats
     """Of the first zone, (q, c)."""
     isolated: Floats
-    """What the second asks for instead where the obstruction is isolated, (q,); NaN where it does not tell the two apart."""
+    """What the second asks for instead where the obstruction is isolated, (q,); infinite where it does not tell the two apart."""
     median_curve: float
     wavelength_m: float
 
     @classmethod
     def of(cls, length_m: Floats, *, settings: AssessSettings, frequency_hz: float) -> "Rules":
         """For paths of lengths (q,)."""
-        isolated = np.full(length_m.shape, np.nan)
+        isolated = np.full(length_m.shape, np.inf)
         if settings.criteria:
             k = np.array([[rule.k] * length_m.size for rule in settings.criteria])
             fraction = np.array([[rule.fraction] * length_m.size for rule in settings.criteria])

@@ -10,14 +10,14 @@ import math
 import numpy as np
 from numpy.typing import NDArray
 
-from fellspan.terrain.compiling import compiled
+from fellspan.terrain.compiling import compiled_for_numbers
 
 Floats = NDArray[np.float64]
 Index = NDArray[np.int64]
 Flags = NDArray[np.bool_]
 
 
-@compiled
+@compiled_for_numbers
 def _levels(
     distance: Floats,
     surface: Floats,
@@ -34,13 +34,14 @@ def _levels(
 ) -> None:
     """Of one path, samples 0 to `end` side by side: distances, ray above the surface, zone; a row for each criterion."""
     length = distance[-1]
-    for i in range(end + 1):
-        column = i if i < end else distance.size - 1
-        d = distance[column]
+    per_length = wavelength / length
+    for i in range(end):
+        d = distance[i]
         share = d / length
         at[i] = d
-        above[i] = a * (1.0 - share) + b * share - surface[column]
-        radius[i] = math.sqrt(wavelength * d * (length - d) / length)
+        above[i] = a * (1.0 - share) + b * share - surface[i]
+        radius[i] = math.sqrt(per_length * d * (length - d))
+    at[end], above[end], radius[end] = length, b - surface[-1], 0.0
     for rule in range(curve.size):
         bend = curve[rule]
         for i in range(end + 1):
@@ -50,7 +51,7 @@ def _levels(
         normalised[rule, 0] = normalised[rule, end] = math.inf
 
 
-@compiled
+@compiled_for_numbers
 def _is_extended(at: Floats, normalised: Floats, end: int, band: float, share: float) -> bool:
     """As `links.criteria.are_extended`."""
     least = math.inf
@@ -67,7 +68,7 @@ def _is_extended(at: Floats, normalised: Floats, end: int, band: float, share: f
     return bool(at[min(last + 1, end)] - at[max(first - 1, 0)] >= share * (at[end] - at[0]))
 
 
-@compiled
+@compiled_for_numbers
 def _mark_lowest(values: Floats, end: int, most: int, lowest: Floats, where: Index, wanted: Flags) -> None:
     """As `links.minima.lowest_minima`: the lowest `most` interior minima, of equals the first."""
     held = 0
@@ -92,7 +93,7 @@ def _mark_lowest(values: Floats, end: int, most: int, lowest: Floats, where: Ind
         wanted[where[place]] = True
 
 
-@compiled
+@compiled_for_numbers
 def look(
     distance: Floats,
     surface: Floats,
@@ -121,7 +122,7 @@ def look(
         (q,): index of the last sample, levels of the antennas.
     curve, fraction
         (q, c), of each criterion: 1 / (2 k a), and the fraction of the zone; `fraction` of the second becomes `isolated`, (q,),
-        where that is a number and what comes nearest is not extended.
+        where that is finite and what comes nearest is not extended.
     wavelength, band, share, most
         m; the two figures by which obstructions are isolated; how many minima count.
     step, same_m
@@ -153,7 +154,7 @@ def look(
         wanted[: end + 1] = False
         for rule in range(rules):
             asked = fraction[path, rule]
-            if rule == 1 and not math.isnan(isolated[path]):
+            if rule == 1 and not math.isinf(isolated[path]):
                 asked = asked if _is_extended(at, normalised[rule], end, band, share) else isolated[path]
             _mark_lowest(normalised[rule], end, most, lowest, where, wanted)
             for i in range(end + 1):
@@ -170,20 +171,20 @@ def look(
         total[path] = found
 
 
-@compiled
+@compiled_for_numbers
 def _worst(at: Floats, normalised: Floats, end: int, same: float) -> int:
     """As `links.clearance.worst_index`."""
-    best = 0
+    lowest = math.inf
     for i in range(end + 1):
-        best = i if normalised[i] < normalised[best] else best
-    bound, middle, away = normalised[best] + same, 0.5 * at[end], math.inf
+        lowest = min(lowest, normalised[i])
+    best, away, middle = 0, math.inf, 0.5 * at[end]
     for i in range(end + 1):
-        if normalised[i] <= bound and abs(at[i] - middle) < away:
+        if normalised[i] <= lowest + same and abs(at[i] - middle) < away:
             best, away = i, abs(at[i] - middle)
     return best
 
 
-@compiled
+@compiled_for_numbers
 def _variance(
     d: float, length: float, error: float, a: float, b: float, cell: float, like_a: bool, like_b: bool, both: float
 ) -> float:
@@ -197,7 +198,7 @@ def _variance(
     return max(variance + 2.0 * share * (1.0 - share) * both, 0.0)
 
 
-@compiled
+@compiled_for_numbers
 def judge(  # noqa: PLR0912, PLR0915  # one pass: a call for each part of it would cost more than the part
     distance: Floats,
     surface: Floats,
@@ -278,7 +279,7 @@ def judge(  # noqa: PLR0912, PLR0915  # one pass: a call for each part of it wou
         met = True
         for rule in range(rules):
             asked = fraction[path, rule]
-            if rule == 1 and not math.isnan(isolated[path]):
+            if rule == 1 and not math.isinf(isolated[path]):
                 asked = asked if _is_extended(at, normalised[rule], end, band, share) else isolated[path]
             lowest = math.inf
             for i in range(end + 1):
@@ -298,40 +299,60 @@ def judge(  # noqa: PLR0912, PLR0915  # one pass: a call for each part of it wou
         both = 0.0
         if first == final and length < size:
             both = (1.0 - length / size) * min(ends_a, ends_b) ** 2
-        own, wooded = left_out.shape[1] > 0, trees.shape[1] > 0
-        cut, over, in_trees = False, False, False
-        extra, extra_sure, sure = 0.0, 0.0, math.inf
-        middle, away = 0, math.inf
+        # No error is greater than this one: most samples are too far from the ray to matter.
+        greatest = error[path, 0]
+        if wide_error:
+            for i in range(count):
+                greatest = max(greatest, error[path, i])
+        greatest = math.sqrt(greatest**2 + max(ends_a, ends_b) ** 2 + 0.5 * both) * (1.0 + 1e-9) + 1e-12
+        nearest = 0
         for i in range(end + 1):
+            nearest = i if least[i] < least[nearest] else nearest
+        sure, extra_sure = math.inf, 0.0
+        for number in range(-1, end + 1):
+            # The one nearest to its need goes first.
+            i = nearest if number < 0 else number
+            if least[i] >= sure * greatest and z_asked * greatest - least[i] <= tolerance:
+                continue
             column = i if i < end else count - 1
-            d = at[i]
-            bulge = d * (length - d) * median_curve
-            cut = cut or bulge - above[i] > tolerance
-            lever = d / length
-            if -least[i] > tolerance:
-                extra = max(extra, -least[i] / lever if lever > 0.0 else math.inf)
-                in_trees = in_trees or (wooded and trees[path, column] and least[i] < 0.0)
-            elif wooded and least[i] < 0.0:
-                in_trees = in_trees or trees[path, column]
             here = source[path, column] if wide_source else first
             wrong = error[path, column] if wide_error else error[path, 0]
-            sigma = math.sqrt(_variance(d, length, wrong, ends_a, ends_b, size, here == first, here == final, both))
+            sigma = math.sqrt(_variance(at[i], length, wrong, ends_a, ends_b, size, here == first, here == final, both))
             if sigma > 0.0:
                 sure = min(sure, least[i] / sigma)
             elif least[i] < -tolerance:
                 sure = -math.inf
             lacking = z_asked * sigma - least[i]
             if lacking > tolerance:
-                extra_sure = max(extra_sure, lacking / lever if lever > 0.0 else math.inf)
-            spare[path, column] = least[i]
-            if own:
-                room = above[i] + surface[path, column] - left_out[path, column] - bulge
+                extra_sure = max(extra_sure, lacking * length / at[i] if i > 0 else math.inf)
+        extra = 0.0
+        for i in range(end + 1 if not met else 0):
+            if -least[i] > tolerance:
+                extra = max(extra, -least[i] * length / at[i] if i > 0 else math.inf)
+        lowest = math.inf
+        for i in range(end + 1):
+            lowest = min(lowest, above[i] - at[i] * (length - at[i]) * median_curve)
+        cut = -lowest > tolerance
+        in_trees, over = False, False
+        if trees.shape[1] > 0:
+            for i in range(end + 1):
+                in_trees = in_trees or (least[i] < 0.0 and trees[path, i if i < end else count - 1])
+        for i in range(end + 1):
+            spare[path, i if i < end else count - 1] = least[i]
+        if left_out.shape[1] > 0:
+            for i in range(end + 1):
+                column = i if i < end else count - 1
+                room = (
+                    above[i] + surface[path, column] - left_out[path, column] - at[i] * (length - at[i]) * median_curve
+                )
                 over = over or -room > tolerance
                 spare[path, column] = min(least[i], room)
-            if abs(d - 0.5 * length) < away:
-                middle, away = i, abs(d - 0.5 * length)
         for column in range(end, count - 1):
             spare[path, column] = spare[path, end - 1]
+        middle = 0
+        while at[middle] < 0.5 * length:
+            middle += 1
+        middle -= 0.5 * length - at[middle - 1] <= at[middle] - 0.5 * length
         numbers[path, 0] = normalised[governing, worst[governing]]
         numbers[path, 1] = at[worst[governing]]
         numbers[path, 2] = extra

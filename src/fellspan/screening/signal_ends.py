@@ -4,6 +4,7 @@ Asks antennas and mountings; knows no terrain, paths or weather.
 """
 
 from dataclasses import dataclass
+from functools import lru_cache
 
 import numpy as np
 from numpy.typing import NDArray
@@ -155,6 +156,7 @@ def lines_dbm(
     return np.asarray(power_dbm + np.array(hub)[back.reshape(-1)] + place)
 
 
+@lru_cache(maxsize=512)
 def _line_db(antenna: Antenna, frequency_hz: float, *, transmits: bool) -> float:
     level = level_dbm(line_terms(antenna, gain_dbi=0.0, frequency_hz=frequency_hz, transmits=transmits, site=""))
     assert level is not None

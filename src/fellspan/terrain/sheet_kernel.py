@@ -15,6 +15,21 @@ Index = NDArray[np.int64]
 
 
 @compiled
+def _height(cells: Floats, u: float, v: float) -> float:
+    """Bilinear between the centres of cells, `u` and `v` counted from the first one's; held on the sheet."""
+    down, across = cells.shape
+    x = min(u, across - 1.0) if u > 0.0 else 0.0  # not a number: anywhere on the sheet, never off it
+    y = min(v, down - 1.0) if v > 0.0 else 0.0
+    left, above = min(int(x), across - 2), min(int(y), down - 2)
+    x -= left
+    y -= above
+    first, below = cells[above, left], cells[above + 1, left]
+    upper = first + (cells[above, left + 1] - first) * x
+    lower = below + (cells[above + 1, left + 1] - below) * x
+    return float(upper + (lower - upper) * y)
+
+
+@compiled
 def along(cells: Floats, column: Floats, row: Floats, which: Index, t: Floats, heights: Floats) -> int:
     """Bilinear heights at places along paths, as `Sheet.heights` has them where all four cells hold something; else NaN.
 
@@ -34,31 +49,34 @@ def along(cells: Floats, column: Floats, row: Floats, which: Index, t: Floats, h
     hollow
         How many of them are NaN.
     """
-    down, across = cells.shape
-    degrees, hollow = column.shape[0], 0
+    degrees, count = column.shape[0], t.shape[1]
+    u, v = np.empty(count), np.empty(count)
     x, y = np.empty(degrees), np.empty(degrees)
-    for path in range(which.size):
-        top = 1
-        for degree in range(degrees):
-            x[degree], y[degree] = column[degree, which[path]], row[degree, which[path]]
-            if x[degree] != 0.0 or y[degree] != 0.0:
-                top = max(degree, 1)
-        for place in range(t.shape[1]):
-            at = t[path, place]
-            u, v = x[top] * at, y[top] * at
-            for degree in range(top - 1, 0, -1):
-                u = (u + x[degree]) * at
-                v = (v + y[degree]) * at
-            u, v = u + x[0] - 0.5, v + y[0] - 0.5
-            u = min(u, across - 1.0) if u > 0.0 else 0.0  # not a number: anywhere on the sheet, never off it
-            v = min(v, down - 1.0) if v > 0.0 else 0.0
-            left, above = min(int(u), across - 2), min(int(v), down - 2)
-            u -= left
-            v -= above
-            first, below = cells[above, left], cells[above + 1, left]
-            upper = first + (cells[above, left + 1] - first) * u
-            lower = below + (cells[above + 1, left + 1] - below) * u
-            height = upper + (lower - upper) * v
-            heights[path, place] = height
-            hollow += math.isnan(height)
+    path, top, hollow = -1, 1, 0
+    for row_of in range(which.size):
+        if which[row_of] != path:
+            path = which[row_of]
+            top = 1
+            for degree in range(degrees):
+                x[degree], y[degree] = column[degree, path], row[degree, path]
+                if degree > 1 and (x[degree] != 0.0 or y[degree] != 0.0):
+                    top = degree
+        if count == 1:
+            at = t[row_of, 0]
+            across, down = x[top], y[top]
+            for degree in range(top - 1, -1, -1):
+                across = across * at + x[degree]
+                down = down * at + y[degree]
+            heights[row_of, 0] = _height(cells, across - 0.5, down - 0.5)
+        else:
+            for terms, places in ((x, u), (y, v)):
+                for place in range(count):
+                    places[place] = terms[top] * t[row_of, place] + terms[top - 1]
+                for degree in range(top - 2, -1, -1):
+                    for place in range(count):
+                        places[place] = places[place] * t[row_of, place] + terms[degree]
+            for place in range(count):
+                heights[row_of, place] = _height(cells, u[place] - 0.5, v[place] - 0.5)
+        for place in range(count):
+            hollow += math.isnan(heights[row_of, place])
     return hollow
