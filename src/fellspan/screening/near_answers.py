@@ -57,7 +57,7 @@ class Laid:
     def fraction(self, row: int, rule: int) -> float:
         """What one criterion asks for of the zone on one path."""
         asked = float(self.rules.fraction[row, rule])
-        if rule != 1 or math.isnan(self.rules.isolated[row]):
+        if rule != 1 or math.isinf(self.rules.isolated[row]):
             return asked
         distance = self.over.profiles.distance_m[row]
         normalised = clearance.normalised_clearance(self.clear_m(row, rule), self.radius_m(distance))
