@@ -1,0 +1,185 @@
+"""Pairs near obstacles and surveyed points: the arrays against planning each pair alone, over a made town."""
+
+from dataclasses import replace
+from pathlib import Path
+
+import numpy as np
+import pytest
+from made_near import survey_file, town_file
+from made_screening import (
+    assert_as_planned,
+    candidates,
+    every_pair,
+    ground_file,
+    hills,
+    one_by_one,
+    same_bytes,
+    sites,
+)
+from made_terrain import raster
+
+import fellspan.screening.near as near
+import fellspan.screening.screen as screen
+from fellspan.links.assess import AssessSettings
+from fellspan.links.criteria import Criterion
+from fellspan.screening.pairs import BASES, PATH_VERDICTS, Candidates, PairResults
+from fellspan.screening.screen import screen_pairs
+from fellspan.terrain.sources import CoverSource, ObstacleSource, RasterSource
+from fellspan.terrain.terrain import Terrain
+
+
+def compared(made: Candidates, terrain: Terrain, monkeypatch: pytest.MonkeyPatch, *, alone: int = 0) -> PairResults:
+    """All pairs as planned, and at most so many of them taken one by one on the way."""
+    taken: list[int] = []
+    real = screen.screen_single
+
+    def single(made: Candidates, columns: object, row: int, *, terrain: Terrain) -> None:
+        taken.append(row)
+        real(made, columns, row, terrain=terrain)  # type: ignore[arg-type]
+
+    monkeypatch.setattr(screen, "screen_single", single)
+    hub, place = every_pair(made)
+    found = screen_pairs(made, hub=hub, place=place, terrain=terrain)
+    assert_as_planned(found, one_by_one(made, hub, place, terrain), confidence=made.settings.confidence)
+    assert len(taken) <= alone
+    return found
+
+
+def trees(folder: Path) -> CoverSource:
+    heights = np.clip(hills((600, 1200), seed=7, height_m=8.0) - 96.0, 0.0, 25.0)
+    file = raster(folder / "trees.tif", heights, cell_m=5.0, crs="EPSG:32623")
+    return CoverSource(path=file, kind="tree", growth_m_per_year=0.3, error_m=1.5)
+
+
+def in_town(hubs: int, places: int, *, seed: int, hub_m: float = 60.0, place_m: float = 20.0) -> Candidates:
+    return candidates(sites("H", hubs, seed=seed, height_m=hub_m), sites("P", places, seed=seed + 1, height_m=place_m))
+
+
+def test_a_town_on_bare_ground(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    made = in_town(2, 30, seed=1)
+    with Terrain.open(ground=ground_file(tmp_path), obstacles=town_file(tmp_path, seed=3)) as terrain:
+        found = compared(made, terrain, monkeypatch)
+    assert set(found.verdict.tolist()) == {0, 1, 2}
+
+
+@pytest.mark.parametrize("typed", [np.nan, 9.0, 40.0])
+def test_antennas_on_the_roofs_of_outlines(tmp_path: Path, monkeypatch: pytest.MonkeyPatch, typed: float) -> None:
+    made = candidates(
+        sites("H", 1, seed=5, height_m=40.0),
+        sites("P", 40, seed=6, height_m=2.0, reference="roof", roof_m=typed, extent_m=(1800.0, 900.0)),
+    )
+    town = town_file(tmp_path, seed=7, houses=350, extent_m=(1800.0, 900.0))
+    with Terrain.open(ground=ground_file(tmp_path), obstacles=town) as terrain:
+        found = compared(made, terrain, monkeypatch, alone=40 if np.isnan(typed) else 0)
+    # Some stand in an outline, some where none is.
+    assert (found.status == 0).sum() > 4
+    if np.isnan(typed):
+        assert (found.status == 3).any()
+
+
+def test_trees_that_grow_in_rasters_and_outlines(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    made = in_town(1, 30, seed=9)
+    town = ObstacleSource(path=town_file(tmp_path, seed=11), complete=("building",))
+    with Terrain.open(ground=ground_file(tmp_path), cover=trees(tmp_path), obstacles=town, growth_years=8.0) as terrain:
+        found = compared(made, terrain, monkeypatch)
+    assert (found.basis == BASES.index("surface raster")).all()
+
+
+def test_a_surface_beside_ground_and_alone(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    made = in_town(1, 12, seed=13)
+    top = hills() + np.clip(hills(seed=11, height_m=6.0) - 100.0, 0.0, 20.0)
+    surface = RasterSource(path=raster(tmp_path / "surface.tif", top), role="surface", error_m=1.0)
+    town, ground = town_file(tmp_path, seed=15), ground_file(tmp_path)
+    with Terrain.open(ground=ground, surface=surface, obstacles=town) as terrain:
+        compared(made, terrain, monkeypatch)
+    on_roofs = replace(made, places=sites("P", 12, seed=14, reference="roof", roof_m=6.0))
+    with Terrain.open(surface=surface, obstacles=town) as terrain:
+        compared(on_roofs, terrain, monkeypatch)
+
+
+def test_surveyed_points_within_and_beside_paths(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    made = in_town(2, 25, seed=17, hub_m=70.0)
+    survey = survey_file(tmp_path, seed=19)
+    with Terrain.open(ground=ground_file(tmp_path), survey=survey) as terrain:
+        compared(made, terrain, monkeypatch)
+
+
+def test_survey_among_obstacles_and_trees(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    made = in_town(1, 30, seed=21, hub_m=70.0)
+    survey, town = survey_file(tmp_path, seed=23, points=300), town_file(tmp_path, seed=24)
+    with Terrain.open(
+        ground=ground_file(tmp_path), cover=trees(tmp_path), survey=survey, obstacles=town, growth_years=3.0
+    ) as terrain:
+        compared(made, terrain, monkeypatch)
+
+
+def test_rows_that_go_by_the_name_of_a_pair(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    made = candidates(
+        sites("H", 1, seed=25, height_m=25.0, extent_m=(500.0, 400.0)),
+        sites("P", 6, seed=26, height_m=15.0, extent_m=(500.0, 400.0)),
+    )
+    survey = survey_file(tmp_path, seed=27, points=0, links=("H0 - P1", "h0 -  p3", "H0 - P4"))
+    with Terrain.open(ground=raster(tmp_path / "ground.tif", hills(height_m=4.0)), survey=survey) as terrain:
+        found = compared(made, terrain, monkeypatch)
+    assert (found.basis == BASES.index("surveyed")).any()
+
+
+def test_gaps_on_the_way_and_gaps_taken_as_sea(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    ground = np.maximum(hills() - 110.0, 0.3)
+    ground[:, 250:330] = -9999.0
+    ground[50:80, 100:120] = -9999.0
+    ground[200:, 480:500] = np.where(hills()[200:, 480:500] > 100.0, -9999.0, 30.0)
+    file, town = raster(tmp_path / "ground.tif", ground), town_file(tmp_path, seed=29)
+    made = in_town(1, 30, seed=31)
+    with Terrain.open(ground=file, obstacles=town, gaps="sea", sea_level_m=0.5) as terrain:
+        found = compared(made, terrain, monkeypatch, alone=2)
+    assert set(found.status.tolist()) == {0, 1}
+    with Terrain.open(ground=file, obstacles=town) as terrain:
+        found = compared(in_town(1, 12, seed=32), terrain, monkeypatch, alone=1)
+    assert (found.status == 1).any()
+
+
+def test_rules_of_the_study_its_own_step_and_a_low_band(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    rules = (
+        Criterion(name="flat", k=float("inf"), fraction=1.4, source="made"),
+        Criterion(name="bent up", k=-2.0, fraction=0.2, source="made"),
+    )
+    settings = AssessSettings(criteria=rules, step_m=13.0, confidence=0.6)
+    made = in_town(1, 25, seed=33, hub_m=110.0, place_m=60.0)
+    low = replace(made.radio, frequency_hz=0.9e9)
+    with Terrain.open(ground=ground_file(tmp_path), obstacles=town_file(tmp_path, seed=35)) as terrain:
+        compared(replace(made, settings=settings, radio=low), terrain, monkeypatch)
+
+
+def test_what_stands_beside_a_path_keeps_it_from_being_clear(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    flat = raster(tmp_path / "ground.tif", 10.0)
+    hubs, places = sites("H", 1, seed=1), sites("P", 1, seed=2)
+    for columns, longitude in ((hubs, -45.28), (places, -45.24)):
+        columns.latitude_deg[0], columns.longitude_deg[0] = 36.1, longitude
+        columns.height_m[0] = 40.0
+    made = candidates(hubs, places)
+    verdicts = []
+    for north_m in (9.0, 30.0):
+        mast = tmp_path / f"mast{north_m:g}.csv"
+        latitude = 36.1 + north_m / 111_000.0
+        mast.write_text(f"name,kind,latitude_deg,longitude_deg,height_m,radius_m\nmast,other,{latitude},-45.26,80,3\n")
+        with Terrain.open(ground=flat, obstacles=mast) as terrain:
+            verdicts.append(PATH_VERDICTS[int(compared(made, terrain, monkeypatch).verdict[0])])
+    assert verdicts == ["marginal", "clear"]
+
+
+def test_neither_company_nor_threads_change_a_bit(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    made = in_town(2, 60, seed=37)
+    hub, place = every_pair(made)
+    survey, town = survey_file(tmp_path, seed=39, points=20), town_file(tmp_path, seed=40, houses=60)
+    with Terrain.open(ground=ground_file(tmp_path), cover=trees(tmp_path), survey=survey, obstacles=town) as terrain:
+        whole = screen_pairs(made, hub=hub, place=place, terrain=terrain)
+        monkeypatch.setattr(screen, "BATCH", 17)
+        monkeypatch.setattr(screen, "NEAR_BATCH", 5)
+        assert same_bytes(whole, screen_pairs(made, hub=hub, place=place, terrain=terrain, threads=1))
+        order = np.random.default_rng(41).permutation(hub.size)
+        mixed = screen_pairs(made, hub=hub[order], place=place[order], terrain=terrain, threads=3)
+    back = np.argsort(order)
+    for name in ("worst_fraction", "diffraction_db", "availability_percent", "margin_at_hub_db", "confidence"):
+        assert getattr(mixed, name)[back].tobytes() == getattr(whole, name).tobytes(), name
+    assert near.NEAR_BATCH > 1000
