@@ -248,7 +248,7 @@ def judge(  # noqa: PLR0912, PLR0915  # one pass: a call for each part of it wou
         (q, n), written: the least over criteria of what is left of the clearance, own cover counted in.
     numbers
         (q, 6), written: least normalised clearance under the governing criterion, where, height to add at B alone, the same for
-        the confidence asked, least margin in standard errors, share of the path at its sample nearest mid-path.
+        the confidence asked and over own cover, least margin in standard errors, share of the path at its sample nearest mid-path.
     answers
         (q, 4), written: governing criterion; 1 all met or 0; 1 cut; 1 trees in the zone, 2 own cover in the way, or their sum.
     """
@@ -345,7 +345,9 @@ def judge(  # noqa: PLR0912, PLR0915  # one pass: a call for each part of it wou
                 room = (
                     above[i] + surface[path, column] - left_out[path, column] - at[i] * (length - at[i]) * median_curve
                 )
-                over = over or -room > tolerance
+                if -room > tolerance:
+                    over = True
+                    extra_sure = max(extra_sure, -room * length / at[i] if i > 0 else math.inf)
                 spare[path, column] = min(least[i], room)
         for column in range(end, count - 1):
             spare[path, column] = spare[path, end - 1]
