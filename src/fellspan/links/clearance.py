@@ -134,11 +134,6 @@ def extra_heights_m(shortfall_m: ArrayLike, distance_m: ArrayLike) -> tuple[Floa
     return _at_one_end(shortfall, 1.0 - share), _at_one_end(shortfall, share), np.asarray(both)
 
 
-def extra_at_b_m(shortfall_m: ArrayLike, distance_m: ArrayLike) -> Floats:
-    """The second of `extra_heights_m` alone: height to add at B, shape (...)."""
-    return _at_one_end(np.asarray(shortfall_m, dtype=np.float64), _share(distance_m))
-
-
 def _share(distance_m: ArrayLike) -> Floats:
     distance = np.asarray(distance_m, dtype=np.float64)
     return np.asarray(distance / distance[..., -1:])

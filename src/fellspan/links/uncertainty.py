@@ -3,15 +3,11 @@
 Knows a profile, what stands on it and the error of each antenna's own level; knows no criteria and no verdicts.
 """
 
-from typing import TypeVar
-
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from fellspan.links.own_building import ROOF_SOURCE, Standing
 from fellspan.terrain.profile import PathProfile
-
-Value = TypeVar("Value", bound=np.generic)
 
 
 def bare_error_m(profile: PathProfile, index: int) -> float:
@@ -83,33 +79,10 @@ def clearance_variance_m2(
     a, b, cell = (np.asarray(value, dtype=np.float64)[..., np.newaxis] for value in (a_error_m, b_error_m, cell_m))
     variance = surface**2 + ((1.0 - share) * a) ** 2 + (share * b) ** 2
     for from_end, error, like in ((distance_m, a, like_a), (length - distance_m, b, like_b)):
-        # Beyond one cell nothing is shared.
-        near = _columns_near(from_end, cell)
-        apart, below = from_end[..., near], _cut(surface, near)
-        alike = _alike(apart, cell) * _cut(np.asarray(like), near)
-        variance[..., near] -= 2.0 * (1.0 - apart / length) * alike * np.minimum(below, error) ** 2
+        alike = _alike(from_end, cell) * np.asarray(like)
+        variance -= 2.0 * (1.0 - from_end / length) * alike * np.minimum(surface, error) ** 2
     both = _alike(length, cell) * np.asarray(ends_alike)[..., np.newaxis] * np.minimum(a, b) ** 2
-    if both.any():
-        variance += 2.0 * share * (1.0 - share) * both
-    return np.asarray(variance)
-
-
-def _columns_near(from_end_m: NDArray[np.float64], cell_m: NDArray[np.float64]) -> slice:
-    """The columns at one end, rising or falling distances (..., n), in which any path is within one cell of that end."""
-    count = from_end_m.shape[-1]
-    from_start = from_end_m[..., 0].max() <= from_end_m[..., -1].max()
-    few = 16
-    while few < count:
-        edge = few if from_start else count - 1 - few
-        if bool((from_end_m[..., edge : edge + 1] >= cell_m).all()):
-            break
-        few *= 2
-    return slice(0, min(few, count)) if from_start else slice(max(count - few, 0), count)
-
-
-def _cut(values: NDArray[Value], columns: slice) -> NDArray[Value]:
-    """Some columns of an array (..., n); what holds all along, (..., 1) or a single value, as it is."""
-    return values if values.ndim == 0 or values.shape[-1] == 1 else values[..., columns]
+    return np.asarray(variance + 2.0 * share * (1.0 - share) * both)
 
 
 def _alike(distance_m: NDArray[np.float64], cell_m: NDArray[np.float64]) -> NDArray[np.float64]:

@@ -195,15 +195,6 @@ def ways_past_trees(
     return WaysPast(over_db=over, solid_db=solid, woods_db=woods_db(depth_m, frequency_hz)[0])
 
 
-def over_everything_db(
-    rows: PathRows, *, inverse_k: Floats, frequency_hz: Floats, polarization: Polarization
-) -> Floats:
-    """Diffraction over everything alone, dB, shape (..., m, f); parameters as for `ways_past_trees`."""
-    with np.errstate(divide="ignore"):
-        k = 1.0 / inverse_k
-    return _diffraction_db(rows, rows.surface_m, k=k, frequency_hz=frequency_hz, polarization=polarization)
-
-
 def _diffraction_db(
     rows: PathRows, surface_m: Floats, *, k: Floats, frequency_hz: Floats, polarization: Polarization
 ) -> Floats:
