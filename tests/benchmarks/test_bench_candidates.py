@@ -110,7 +110,7 @@ def without_weather_and_draws(monkeypatch: pytest.MonkeyPatch) -> None:
         return Shares(both_percent=none, each_percent=(none, none), nearly_percent=(none, none))
 
     monkeypatch.setattr(signal, "shares_of_year", no_shares)
-    monkeypatch.setattr(batch.Batch, "_after_draws", lambda *_: np.zeros(0, dtype=np.int64))
+    monkeypatch.setattr(batch.Batch, "_after_draws", lambda *_, **__: np.zeros(0, dtype=np.int64))
 
 
 def test_everything_costs_at_most_three_bare_gathers(terrain: Terrain, monkeypatch: pytest.MonkeyPatch) -> None:
