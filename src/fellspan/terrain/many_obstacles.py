@@ -126,26 +126,33 @@ class ManyObstacles(ObstacleIndex):
         axes: NDArray[np.object_] = np.asarray(shapely.linestrings(axis), dtype=object)
         widths = np.array([0.5 * self.obstacles[one].width_m for one in touched.obstacle[may[is_line]].tolist()])
         plane[is_line] = shapely.buffer(plane[is_line], widths)
-        common = np.full(may.size, None, dtype=object)
-        common[~is_point] = _common(plane[~is_point], axes[~is_point])
+        whole = np.flatnonzero(~is_point)
+        part, start, stop = _parts(_common(plane[whole], axes[whole]))
+        points = np.flatnonzero(is_point)
+        of_point, from_point, to_point = self._discs(points, plane, touched.obstacle[may])
+        part = np.concatenate((whole[part], of_point))
+        start, stop = np.concatenate((start, from_point)), np.concatenate((stop, to_point))
         found: dict[int, list[Crossing]] = {}
-        for i, k in enumerate(may.tolist()):
+        supports: dict[int, Floats] = {}
+        for i, begin, end in zip(part.tolist(), start.tolist(), stop.tolist(), strict=True):
+            k = int(may[i])
             obstacle, path = self.obstacles[int(touched.obstacle[k])], int(touched.path[k])
-            if is_point[i]:
-                half = obstacle.radius_m**2 - plane[i].y ** 2
-                ends = [(plane[i].x - half**0.5, plane[i].x + half**0.5)] if half >= 0.0 else []
-            else:
-                ends = intervals_of(common[i])
-            supports = None
-            if is_line[i] and obstacle.rule == "span" and ends:
-                supports = _supports(obstacle, starts, path, float(touched.shift_deg[k]))
-            for start, stop in ends:
-                crossing = Crossing.between(obstacle, start, stop, length_m=float(length[i]), supports=supports)
-                if crossing is not None:
-                    found.setdefault(path, []).append(crossing)
+            if is_line[i] and obstacle.rule == "span" and k not in supports:
+                supports[k] = _supports(obstacle, starts, path, float(touched.shift_deg[k]))
+            crossing = Crossing.between(obstacle, begin, end, length_m=float(length[i]), supports=supports.get(k))
+            if crossing is not None:
+                found.setdefault(path, []).append(crossing)
         for crossings in found.values():
             crossings.sort(key=lambda one: (one.from_m, one.to_m, one.obstacle.name))
         return found
+
+    def _discs(self, points: Index, plane: NDArray[np.object_], obstacle: Index) -> tuple[Index, Floats, Floats]:
+        """Which discs of some lie on the axis of their path, from where and to where."""
+        radius = np.array([self.obstacles[one].radius_m for one in obstacle[points].tolist()])
+        half = radius**2 - shapely.get_y(plane[points]) ** 2
+        hit = np.flatnonzero(half >= 0.0)
+        along, half = shapely.get_x(plane[points[hit]]), half[hit] ** 0.5
+        return points[hit], along - half, along + half
 
     @property
     def _divided(self) -> "_Divided":
@@ -213,6 +220,23 @@ def _common(areas: NDArray[np.object_], axes: NDArray[np.object_]) -> NDArray[np
         return common
     except shapely.errors.GEOSException:
         return np.array([common_of(area, axis) for area, axis in zip(areas, axes, strict=True)], dtype=object)
+
+
+def _parts(common: NDArray[np.object_]) -> tuple[Index, Floats, Floats]:
+    """The parts of axes as intervals, touching ones joined: of which each is, its start and its stop, (i,)."""
+    parts, of = shapely.get_parts(common, return_index=True)
+    bounds = shapely.bounds(parts).reshape(-1, 4)
+    of, start, stop = of[bounds[:, 0] <= bounds[:, 2]], bounds[:, 0], bounds[:, 2]
+    start, stop = start[start <= stop], stop[start <= stop]
+    several = np.flatnonzero(np.bincount(of, minlength=common.size) > 1)
+    alone = ~np.isin(of, several)
+    joined = [(int(one), *span) for one in several for span in intervals_of(common[one])]
+    more = np.array(joined, dtype=np.float64).reshape(-1, 3)
+    return (
+        np.concatenate((of[alone], more[:, 0].astype(np.int64))),
+        np.concatenate((start[alone], more[:, 1])),
+        np.concatenate((stop[alone], more[:, 2])),
+    )
 
 
 def _supports(obstacle: Obstacle, starts: Starts, path: int, shift_deg: float) -> Floats:

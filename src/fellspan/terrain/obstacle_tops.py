@@ -5,7 +5,7 @@ Works on crossings and ground levels handed in; knows nothing of files and raste
 
 import math
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
@@ -57,9 +57,16 @@ class Standing:
 
 def nodes(crossing: Crossing, step_m: float) -> Floats:
     """Distances inside a crossing at which it is looked at: its ends, its nearest point and a regular division."""
-    count = min(_MOST_NODES, 2 + math.ceil((crossing.to_m - crossing.from_m) / step_m))
-    inside = np.linspace(crossing.from_m, crossing.to_m, count)
-    return np.unique(np.append(inside, crossing.nearest_m))
+    length = crossing.to_m - crossing.from_m
+    if not length > 0.0:
+        return np.array([crossing.from_m])
+    count = min(_MOST_NODES, 2 + math.ceil(length / step_m))
+    inside: Floats = crossing.from_m + np.arange(count, dtype=np.float64) * (length / (count - 1))
+    inside[-1] = crossing.to_m
+    nearest = int(inside.searchsorted(crossing.nearest_m))
+    if inside[nearest] == crossing.nearest_m:
+        return inside
+    return np.concatenate((inside[:nearest], [crossing.nearest_m], inside[nearest:]))
 
 
 def stand(
@@ -91,42 +98,48 @@ def settled_on(
     """Settle the top of one crossing, with the ground at its `nodes`, m."""
     obstacle = crossing.obstacle
     growth = obstacle.growth_m_per_year * growth_years
-    highest = float(np.nanmax(ground_m)) if np.isfinite(ground_m).any() else math.nan
-    span_tops: Floats | None = None
-    follows = False
+    highest = _highest(ground_m, math.nan)
     height = (obstacle.height_m if obstacle.height_m is not None else max(obstacle.heights_m or (0.0,))) + growth
+    follows, base, span_tops = False, highest + height, None
     if obstacle.rule == "sea" and obstacle.top_amsl_m is not None:
         base = obstacle.top_amsl_m + growth
-    elif obstacle.rule == "span":
-        span_tops = _support_tops(crossing, ground_at_supports, growth)
-        base = highest + height
     elif obstacle.rule == "follow":
         follows, base = True, height
-    else:
-        base = highest + height
-    shown = PathObstacle(
-        name=obstacle.name,
-        kind=obstacle.kind,
-        from_m=crossing.from_m,
-        to_m=crossing.to_m,
-        top_amsl_m=base,
-        height_m=height,
-        source=obstacle.source,
-        growth_m_per_year=obstacle.growth_m_per_year,
-        sigma_m=obstacle.error_m if obstacle.error_m is not None else DEFAULT_ERROR_M[obstacle.kind],
+    elif obstacle.rule == "span" and crossing.supports is not None:
+        span_tops = _support_tops(crossing, ground_at_supports, growth)
+        tops = _hung(crossing.supports, span_tops, obstacle.sag_m, place_m)
+        if not np.isfinite(tops).all():
+            # No ground at a support: hang the line level from the highest ground under the crossing.
+            span_tops = None
+    if span_tops is None:
+        tops = ground_m + base if follows else np.full(place_m.shape, base)
+    return Standing(
+        crossing=crossing,
+        shown=PathObstacle(
+            name=obstacle.name,
+            kind=obstacle.kind,
+            from_m=crossing.from_m,
+            to_m=crossing.to_m,
+            top_amsl_m=_highest(tops, math.nan),
+            height_m=_highest(tops - ground_m, height),
+            source=obstacle.source,
+            growth_m_per_year=obstacle.growth_m_per_year,
+            sigma_m=obstacle.error_m if obstacle.error_m is not None else DEFAULT_ERROR_M[obstacle.kind],
+        ),
+        follows=follows,
+        base_m=base,
+        span_tops_m=span_tops,
+        sag_m=obstacle.sag_m,
     )
-    settled = Standing(
-        crossing=crossing, shown=shown, follows=follows, base_m=base, span_tops_m=span_tops, sag_m=obstacle.sag_m
-    )
-    tops = settled.top_m(place_m, ground_m)
-    if span_tops is not None and not np.isfinite(tops).all():
-        # No ground at a support: hang the line level from the highest ground under the crossing.
-        settled = replace(settled, span_tops_m=None)
-        tops = settled.top_m(place_m, ground_m)
-    above = tops - ground_m
-    top = float(np.nanmax(tops)) if np.isfinite(tops).any() else math.nan
-    height = float(np.nanmax(above)) if np.isfinite(above).any() else height
-    return replace(settled, shown=replace(shown, top_amsl_m=top, height_m=height))
+
+
+def _highest(levels_m: Floats, unknown_m: float) -> float:
+    """The highest of the levels that are known; else what is given."""
+    highest = float(levels_m.max())
+    if math.isnan(highest):
+        known = levels_m[np.isfinite(levels_m)]
+        return float(known.max()) if known.size else unknown_m
+    return highest
 
 
 def _support_tops(crossing: Crossing, ground_at_supports: GroundAtSupports, growth_m: float) -> Floats:

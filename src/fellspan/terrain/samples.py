@@ -45,13 +45,16 @@ def merged(exact_m: Floats, beside_m: Floats, regular_m: Floats, length_m: float
     """Distances, rising by at least half a millimetre: of those that crowd, exact ones stay first, then those beside."""
     kept = np.array([0.0, length_m])
     for group in (exact_m, beside_m, regular_m):
-        inside = np.unique(group[(group > 0.0) & (group < length_m)])
+        inside = np.sort(group[(group > 0.0) & (group < length_m)])
         if inside.size == 0:
             continue
-        inside = inside[np.concatenate(([True], np.diff(inside) > SAME_M))]
-        after = np.searchsorted(kept, inside)
+        apart = np.empty(inside.size, dtype=np.bool_)
+        apart[0] = True
+        np.greater(inside[1:] - inside[:-1], SAME_M, out=apart[1:])
+        inside = inside[apart]
+        after = kept.searchsorted(inside)
         away = np.minimum(kept[after] - inside, inside - kept[after - 1])
-        kept = np.union1d(kept, inside[away > SAME_M])
+        kept = np.sort(np.concatenate((kept, inside[away > SAME_M])))
     return kept
 
 
