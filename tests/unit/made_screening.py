@@ -23,6 +23,7 @@ CLOSE = {
     "worst_fraction": 1e-6,
     "worst_at_m": 1e-6,
     "extra_at_place_m": 1e-4,
+    "extra_for_confidence_m": 1e-4,
     "diffraction_db": 1e-6,
     "received_at_hub_dbm": 1e-6,
     "received_at_place_dbm": 1e-6,
@@ -108,7 +109,7 @@ def one_by_one(made: Candidates, hub: NDArray[np.int64], place: NDArray[np.int64
 
 
 def assert_as_planned(found: PairResults, planned: PairResults, *, confidence: float = 0.9) -> None:
-    """Every column of the arrays as planning has it; where draws were spared, on the same side of the confidence asked."""
+    """Every column of the arrays as planning has it; where draws were spared, on the same side of what is asked."""
     for name in CODES:
         np.testing.assert_array_equal(getattr(found, name), getattr(planned, name), err_msg=name)
     assert found.reason == planned.reason
@@ -120,7 +121,8 @@ def assert_as_planned(found: PairResults, planned: PairResults, *, confidence: f
     drawn = np.abs(found.confidence - planned.confidence) > 1e-6
     above = planned.confidence >= confidence
     np.testing.assert_array_equal(found.confidence[drawn] >= confidence, above[drawn])
-    assert (found.confidence[drawn] >= planned.confidence[drawn] - 1e-6).all()
+    # Where bounds decide it is an upper one; where few draws do, it is their share: 512 scatter by 0.013 at most.
+    assert (found.confidence[drawn] >= planned.confidence[drawn] - 0.05).all()
 
 
 def same_bytes(one: PairResults, other: PairResults) -> bool:

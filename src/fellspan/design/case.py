@@ -13,10 +13,10 @@ import numpy as np
 from numpy.typing import NDArray
 
 from fellspan.links import clearance
-from fellspan.links.assess import Assessment, AssessSettings
+from fellspan.links.assess import Assessment, AssessSettings, stood
 from fellspan.links.causes import cause_at
 from fellspan.links.criteria import Criterion, criteria_for, is_extended, worst_month_k
-from fellspan.links.ends import end_level
+from fellspan.links.ends import EndLevel, end_level
 from fellspan.links.own_building import Standing, standing, with_nodes
 from fellspan.links.result import EndResult
 from fellspan.links.site import Link
@@ -53,8 +53,8 @@ class Case:
     settings: AssessSettings
     profile: PathProfile
     stands: Standing
-    end_a: EndResult
-    end_b: EndResult
+    end_a: EndResult | EndLevel
+    end_b: EndResult | EndLevel
     a_error_m: float
     b_error_m: float
     share: Floats
@@ -70,16 +70,35 @@ class Case:
         profile = assessment.profile
         beside = [item.at_m for item in profile.beside if 0.0 < item.at_m < profile.length_m]
         profile = with_nodes(profile, tuple(beside)) if beside else profile
-        stands = standing(profile)
         a, b = end_level(link.a, profile, end="A"), end_level(link.b, profile, end="B")
-        distance = profile.distance_m
+        ends = assessment.result.ends
+        return cls._made(link, profile, settings, stands=standing(profile), ends=(ends.a, ends.b), levels=(a, b))
+
+    @classmethod
+    def over(cls, link: Link, profile: PathProfile, settings: AssessSettings) -> "Case":
+        """From a profile that passes nothing beside it, and no assessment: what the heights in the data say is not asked."""
+        profile, stands, a, b = stood(link, profile)
+        return cls._made(link, profile, settings, stands=stands, ends=(a, b), levels=(a, b))
+
+    @classmethod
+    def _made(
+        cls,
+        link: Link,
+        profile: PathProfile,
+        settings: AssessSettings,
+        *,
+        stands: Standing,
+        ends: tuple[EndResult | EndLevel, EndResult | EndLevel],
+        levels: tuple[EndLevel, EndLevel],
+    ) -> "Case":
+        (a, b), distance = levels, profile.distance_m
         case = cls(
             link=link,
             settings=settings,
             profile=profile,
             stands=stands,
-            end_a=assessment.result.ends.a,
-            end_b=assessment.result.ends.b,
+            end_a=ends[0],
+            end_b=ends[1],
             a_error_m=a.error_m,
             b_error_m=b.error_m,
             share=distance / distance[-1],

@@ -260,6 +260,8 @@ def _points(
         z = np.where(spare <= clearance.TOLERANCE_M, 0.0, np.inf)
         np.divide(spare, sigma_m, out=z, where=sigma_m > 0.0)
         nearness = np.minimum(nearness, z - z.min())
+    # Which of two samples that are as near is kept must not hang on rounding: answers touch several at once.
+    nearness = np.round(nearness, 6)
     kept = np.flatnonzero(nearness < NEAR)
     gaps = np.gradient(distance)
     finest = float(np.median(gaps))

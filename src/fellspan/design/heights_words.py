@@ -5,6 +5,7 @@ from collections.abc import Sequence
 from typing import Final
 
 from fellspan.design.heights_result import HeightKind, HeightOption, Pair
+from fellspan.links.ends import EndLevel
 from fellspan.links.result import EndResult
 from fellspan.links.safety import RAISING, safety_lines
 from fellspan.links.verdicts import USUAL_MAST_M
@@ -13,7 +14,7 @@ LOW_M: Final = 2.0
 """Below this height above what they stand on, people, vehicles, grass and snow get in the way (common practice, no source)."""
 
 
-def base(end: EndResult) -> str:
+def base(end: EndResult | EndLevel) -> str:
     """What the heights at one end are counted from."""
     return "ground" if end.roof_m is None else f"roof, {end.roof_m:.1f} m above ground"
 

@@ -15,12 +15,13 @@ from fellspan.links.budget import tilts_deg
 from fellspan.screening.columns import Columns
 from fellspan.screening.laid import LaidBucket, pair_columns
 from fellspan.screening.near_index import nearby
+from fellspan.screening.own_draws import own_share
 from fellspan.screening.pairs import HEIGHT_REFERENCES, Candidates, SiteColumns
 from fellspan.screening.profiles import FINE_PER_OCTAVE, Profiles, closer, regular, steps_of, width_of
-from fellspan.screening.rays import CLEAR, MARGINAL, Judged, Rules, closer_look, judged
+from fellspan.screening.rays import CLEAR, JUDGED, MARGINAL, Judged, Rules, closer_look, judged
 from fellspan.screening.signal import SignalColumns, best_sector, signal_columns
 from fellspan.screening.stand import Antennas, Standings, antennas_at, standings
-from fellspan.screening.sure import likely_clear
+from fellspan.screening.sure import HOLDS, UNSURE, likely
 from fellspan.screening.ways import Ways
 from fellspan.terrain.many import ManyPaths
 from fellspan.terrain.units import is_ellipsoidal
@@ -200,9 +201,9 @@ class Batch:
         bare = setting.many.layers.is_bare
         found = judged(profiles, stands, a, b, rules, settings=setting.candidates.settings, ground_is_bare=bare)
         rows = self._rows[profiles.which]
-        for name in ("verdict", "basis", "confidence", "governing", "worst_fraction", "worst_at_m", "extra_at_place_m"):
+        for name in JUDGED:
             getattr(columns, name)[rows] = getattr(found, name)
-        block.unsure.append(self._after_draws(profiles, stands, found))
+        block.unsure.append(self._after_draws(profiles, stands, found, rasters_alone=True))
         return self._bucket(profiles, stands.surface_m, stands.cover_kind, a, b, found)
 
     def _signal(self, buckets: list[LaidBucket], block: Block) -> None:
@@ -222,18 +223,29 @@ class Batch:
         for column in fields(SignalColumns):
             getattr(columns, column.name)[pairs.row] = getattr(signal, column.name)
 
-    def _after_draws(self, profiles: Profiles, stands: Standings, found: Judged) -> Index:
-        """Let bounds of what draws would say decide on the clear ones; those on which only the draws themselves can."""
-        settings, columns = self._setting.candidates.settings, self._columns
+    def _after_draws(
+        self, profiles: Profiles, stands: Standings, found: Judged, *, rasters_alone: bool = False
+    ) -> Index:
+        """Let bounds of what draws would say, or draws, decide on the clear ones; the rows that planning itself must decide."""
+        candidates, columns = self._setting.candidates, self._columns
         clear = np.flatnonzero(found.verdict == CLEAR)
         rows = self._rows[profiles.which[clear]]
         if clear.size == 0:
             return np.asarray(rows)
-        least, most = likely_clear(found.spare_m, profiles, stands, found.errors, clear, confidence=settings.confidence)
-        falls = most < settings.confidence
-        columns.verdict[rows[falls]] = MARGINAL
-        columns.confidence[rows[falls]] = np.minimum(columns.confidence[rows[falls]], most[falls])
-        return np.asarray(rows[~falls & (least < settings.confidence)])
+        asked = candidates.settings.confidence
+        said = likely(found.spare_m, profiles, stands, found.errors, clear, confidence=asked)
+        holds, share = said.verdict == HOLDS, said.confidence
+        left = said.verdict == UNSURE
+        if rasters_alone:
+            bare = self._setting.many.layers.is_bare
+            for one in np.flatnonzero(left).tolist():
+                hub, place = int(self._hub[profiles.which[clear[one]]]), int(self._place[profiles.which[clear[one]]])
+                own = own_share(candidates, hub, place, profiles, int(clear[one]), is_bare=bare)
+                if own is not None:
+                    share[one], holds[one], left[one] = own, own >= asked, False
+        columns.verdict[rows[~holds & ~left]] = MARGINAL
+        columns.confidence[rows] = np.minimum(columns.confidence[rows], share)
+        return np.asarray(rows[left])
 
     def _sea(self, profiles: Profiles) -> NDArray[np.bool_] | None:
         sea = profiles.source == self._setting.many.layers.sea
