@@ -58,6 +58,7 @@ def made_page(folder: Path, count: int, *, hubs: int = 3) -> str:
         margin_db=np.where(reached, np.linspace(-20.0, 20.0, count), np.nan),
         distance_m=np.where(state < 5, np.linspace(300.0, 9000.0, count), np.nan),
         extra_m=np.where(state == 3, np.inf, np.where(state == 2, 4.21, np.where(reached, 0.0, np.nan))),
+        extra_sure_m=np.where(state == 3, np.inf, np.where(state == 2, 5.13, np.where(reached, 0.0, np.nan))),
         clear_hubs=np.where(state < 2, 1, 0),
     )
     counts = np.bincount(state, minlength=len(STATE_CODES)).tolist()

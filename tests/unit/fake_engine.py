@@ -56,6 +56,7 @@ def screen_pairs(
         worst_fraction=of_done(1.0 - turn),
         worst_at_m=of_done(luck * way.distance_m),
         extra_at_place_m=of_done(np.where(turn > 0.9, np.inf, turn * 30.0)),
+        extra_for_confidence_m=of_done(np.where(turn > 0.8, np.inf, turn * 31.0)),
         diffraction_db=of_done(turn * 20.0),
         received_at_hub_dbm=of_done(-60.0 - 30.0 * luck),
         received_at_place_dbm=of_done(-61.0 - 30.0 * luck),

@@ -11,7 +11,7 @@ import pytest
 from fellspan.cli.main import run
 from fellspan.exports.candidates import CANDIDATE_COLUMNS, CandidateTable
 from fellspan.report import candidates_page
-from fellspan.report.candidates_page import _extra
+from fellspan.report.candidates_page import _heights, _sure_heights
 from fellspan.runs.summary import STATE_CODES, PairRow
 from fellspan.screening.pairs import PATH_VERDICTS
 from fellspan.study.screening_study import load_screening
@@ -24,22 +24,25 @@ def test_no_height_to_add_is_told_apart_from_not_sure_enough(tmp_path: Path) -> 
     at = CANDIDATE_COLUMNS.index("raising_the_place_helps")
     blank = dict.fromkeys(PairRow._fields) | {"hub": 0, "place": 0, "status": 0, "state": 0}
 
-    def said(verdict: str, extra_m: float | None) -> str:
-        row = blank | {"verdict": PATH_VERDICTS.index(verdict), "extra_at_place_m": extra_m}
-        return table.cells(PairRow(**row))[at]
+    def said(verdict: str, meets_m: float | None, sure_m: float | None) -> str:
+        heights = {"extra_at_place_m": meets_m, "extra_for_confidence_m": sure_m}
+        return table.cells(PairRow(**blank | {"verdict": PATH_VERDICTS.index(verdict)} | heights))[at]
 
-    assert said("marginal", 0.0) == "not sure enough"
-    assert said("clear", 0.0) == ""
-    assert said("marginal", 1.25) == said("obstructed", 9.0) == "yes"
-    assert said("obstructed", math.inf) == "no"
-    assert said("marginal", None) == ""
+    assert said("marginal", 0.0, 0.0) == "not known"
+    assert said("marginal", 0.0, math.inf) == said("obstructed", 3.0, math.inf) == "not sure enough"
+    assert said("clear", 0.0, 0.0) == ""
+    assert said("marginal", 0.0, 1.25) == said("obstructed", 9.0, 9.5) == "yes"
+    assert said("obstructed", math.inf, math.inf) == "no"
+    assert said("marginal", None, None) == ""
 
 
 def test_the_page_does_too() -> None:
     marginal, clear, obstructed = (STATE_CODES.index(word) for word in ("marginal", "clear", "obstructed"))
-    values = np.array([0.0, 0.0, 1.21, np.inf, np.nan])
-    state = np.array([marginal, clear, marginal, obstructed, clear], dtype=np.int8)
-    assert _extra(values, state) == ["unsure", 0.0, 1.3, "no", None]
+    meets = np.array([0.0, 0.0, 1.21, np.inf, np.nan, 0.0])
+    sure = np.array([0.0, 0.0, 1.51, np.inf, np.nan, np.inf])
+    state = np.array([marginal, clear, marginal, obstructed, clear, marginal], dtype=np.int8)
+    assert _heights(meets) == [0.0, 0.0, 1.3, "no", None, 0.0]
+    assert _sure_heights(meets, sure, state) == ["some", 0.0, 1.6, "no", None, "unsure"]
 
 
 def test_terminal_page_and_summary_say_that_neighbours_are_not_counted(

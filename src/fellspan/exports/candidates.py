@@ -24,6 +24,7 @@ NUMBERS: Final = (
     ("worst_fraction", "%.3f"),
     ("worst_at_m", "%.1f"),
     ("extra_at_place_m", "%.2f"),
+    ("extra_for_confidence_m", "%.2f"),
     ("diffraction_db", "%.2f"),
     ("received_at_hub_dbm", "%.2f"),
     ("received_at_place_dbm", "%.2f"),
@@ -57,7 +58,9 @@ JUDGED_ALONE: Final = (
 )
 """What every run must say of its signals."""
 UNSURE_WORDS: Final = "not sure enough"
-"""Beside no height to add: all criteria are met at the heights of the data, and the path is marginal by their errors alone."""
+"""A height at the place meets all criteria, and none there with the confidence asked."""
+UNKNOWN_WORDS: Final = "not known"
+"""The path lacks confidence by drawn errors alone, or by what no height is known to mend: the stated bound is 0."""
 NO_HUB_WORDS: Final = "no hub in reach"
 STATE_OF: Final = (*(STATE_WORDS[state] for state in STATES), "")
 
@@ -73,7 +76,6 @@ class CandidateTable:
 
     def cells(self, row: PairRow) -> list[str]:
         """The cells of `CANDIDATE_COLUMNS`."""
-        infinite = row.extra_at_place_m is not None and isinf(row.extra_at_place_m)
         cells = [
             self.hubs[row.hub],
             self.places[row.place],
@@ -86,8 +88,7 @@ class CandidateTable:
             "" if row.governing is None else self.criteria[min(row.governing, len(self.criteria) - 1)],
         ]
         cells += [_number(row[index], form) for index, form in _NUMBER_AT]
-        unsure = row.extra_at_place_m == 0.0 and row.verdict == _MARGINAL
-        cells.append("no" if infinite else UNSURE_WORDS if unsure else "yes" if row.extra_at_place_m else "")
+        cells.append(raising_words(row))
         cells.append(csv_cell(row.reason) if row.reason else "")
         return cells
 
@@ -97,6 +98,20 @@ class CandidateTable:
             return [self.places[row], "", "", "", NO_HUB_WORDS, *("" for _ in BEST_COLUMNS[5:])]
         cells = self.cells(row)
         return [cells[1], str(rank), cells[0], *cells[2:]]
+
+
+def raising_words(row: PairRow) -> str:
+    """Whether raising the place alone makes the path clear; empty where it is, or where nothing was judged."""
+    meets, sure = row.extra_at_place_m, row.extra_for_confidence_m
+    if meets is None or sure is None:
+        return ""
+    if isinf(meets):
+        return "no"
+    if isinf(sure):
+        return UNSURE_WORDS
+    if sure == 0.0:
+        return UNKNOWN_WORDS if row.verdict == _MARGINAL else ""
+    return "yes"
 
 
 def criterion_words(candidates: Candidates) -> tuple[str, ...]:
@@ -149,6 +164,7 @@ def write_candidates_geojson(stream: TextIO, store: Store, candidates: Candidate
                 f'"margin_db": {_number(row.margin_db, "%.2f") or "null"}',
                 f'"worst_fraction": {_number(row.worst_fraction, "%.3f") or "null"}',
                 f'"extra_at_place_m": {_number(row.extra_at_place_m, "%.2f") or "null"}',
+                f'"extra_for_confidence_m": {_number(row.extra_for_confidence_m, "%.2f") or "null"}',
             )
         )
         geometry = _geometry(hubs[row.hub], places[row.place])

@@ -27,7 +27,7 @@ from fellspan.links.minima import worst_windows
 from fellspan.links.own_building import Standing, standing, with_ground_at_end, with_nodes, with_roof_edge
 from fellspan.links.path_judging import PathJudgement, judge_path
 from fellspan.links.radiated import exposure_pair, power_cautions, power_checks
-from fellspan.links.result import EndResult, Ends, LinkResult
+from fellspan.links.result import EndResult, Ends, ExtraHeight, LinkResult
 from fellspan.links.signal import signal_of
 from fellspan.links.signal_path import Weather
 from fellspan.links.signal_verdict import judged
@@ -85,11 +85,15 @@ class AssessSettings:
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Assessment:
-    """A result with the arrays it was worked out from; `profile` has the same samples as `levels`."""
+    """A result with the arrays it was worked out from; `profile` has the same samples as `levels`.
+
+    `raising` is the height that makes the verdict 'clear' as far as height can: criteria at the confidence asked, doubts gone.
+    """
 
     result: LinkResult
     profile: PathProfile
     levels: PathLevels
+    raising: ExtraHeight
 
 
 _DEFAULTS: Final = AssessSettings()
@@ -153,16 +157,14 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
         tilts_deg=tilts,
         weather=settings.weather,
     )
+    raising = with_doubts(extra_for_confidence(levels, laid.errors_m, confidence=settings.confidence), doubts)
     sentences = verdicts.reasons(
         verdict=verdict,
         basis=basis,
         results=results,
         governing=governing,
         sight=judged_path.sight,
-        raising=with_doubts(
-            extra_for_confidence(levels, laid.errors_m, confidence=settings.confidence),
-            doubts,
-        ),
+        raising=raising,
         confidence=confidence,
         confidence_asked=settings.confidence,
         ignored=stands.ignored,
@@ -232,7 +234,7 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
         power=power,
         exposure=exposure_pair(link, rule=settings.exposure_rule),
     )
-    return Assessment(result=result, profile=profile, levels=levels)
+    return Assessment(result=result, profile=profile, levels=levels, raising=raising)
 
 
 def path_verdict_of(link: Link, profile: PathProfile, settings: AssessSettings = _DEFAULTS) -> PathVerdict:

@@ -64,6 +64,7 @@ def render_candidates_page(summary: RunSummary, study: Study, candidates: Candid
             summary=summary,
             clear=summary.by_best_state["clear"] + summary.by_best_state["clear-bare"],
             bare=summary.by_basis["bare ground only"],
+            confidence=f"{100.0 * candidates.settings.confidence:g} %",
             states=_states(summary),
             labels=STATE_LABEL,
             signal=any(summary.by_signal.values()),
@@ -150,10 +151,12 @@ def _data(summary: RunSummary, candidates: Candidates, turned: _Turned) -> dict[
             "signal": best.signal[shown].tolist(),
             "margin": _rounded(best.margin_db[shown], 1),
             "km": _rounded(best.distance_m[shown] / 1000.0, 2),
-            "extra": _extra(best.extra_m[shown], best.state[shown]),
+            "extra": _heights(best.extra_m[shown]),
+            "sure": _sure_heights(best.extra_m[shown], best.extra_sure_m[shown], best.state[shown]),
             "clear": best.clear_hubs[shown].tolist(),
         },
         "listed": min(count, MOST_LISTED),
+        "confidence": f"{100.0 * candidates.settings.confidence:g} %",
         "squares": None if dots else _squares(summary, turned),
     }
 
@@ -162,18 +165,27 @@ def _rounded(values: NDArray[np.float64], decimals: int) -> list[float | None]:
     return [round(value, decimals) + 0.0 if math.isfinite(value) else None for value in values.tolist()]
 
 
-def _extra(values: NDArray[np.float64], state: NDArray[np.integer]) -> list[float | str | None]:
-    """Heights to add, rounded up to a tenth; 'no' where none helps, 'unsure' where only errors of the data are in the way."""
+def _heights(values: NDArray[np.float64]) -> list[float | str | None]:
+    """Heights to add, rounded up to a tenth; 'no' where none helps."""
+    return [
+        None if math.isnan(value) else "no" if math.isinf(value) else math.ceil(value * 10.0 - 1e-6) / 10.0 + 0.0
+        for value in values.tolist()
+    ]
+
+
+def _sure_heights(
+    meets: NDArray[np.float64], sure: NDArray[np.float64], state: NDArray[np.integer]
+) -> list[float | str | None]:
+    """Heights to add for the confidence asked; 'unsure' where one meets the criteria and none is sure to, 'some' where the
+    bound is 0 and the path marginal all the same."""
     marginal = STATE_CODES.index("marginal")
     return [
-        None
-        if math.isnan(value)
-        else "no"
-        if math.isinf(value)
-        else "unsure"
-        if value == 0.0 and code == marginal
-        else math.ceil(value * 10.0 - 1e-6) / 10.0 + 0.0
-        for value, code in zip(values.tolist(), state.tolist(), strict=True)
+        "unsure"
+        if height == "no" and math.isfinite(value)
+        else "some"
+        if height == 0.0 and code == marginal
+        else height
+        for height, value, code in zip(_heights(sure), meets.tolist(), state.tolist(), strict=True)
     ]
 
 

@@ -25,7 +25,8 @@ from fellspan.screening.pairs import (
 )
 
 STORE_NAME: Final = "candidates.sqlite"
-SCHEMA: Final = 1
+SCHEMA: Final = 2
+"""2: height for the confidence asked."""
 APPLICATION_ID: Final = 0x46454C31
 """Marks the file as one of these runs (the four bytes read 'FEL1')."""
 _WAIT_S: Final = 30.0
@@ -41,6 +42,7 @@ RESULT_COLUMNS: Final = (
     "worst_fraction",
     "worst_at_m",
     "extra_at_place_m",
+    "extra_for_confidence_m",
     "diffraction_db",
     "received_at_hub_dbm",
     "received_at_place_dbm",

@@ -48,6 +48,7 @@ class PairRow(NamedTuple):
     worst_fraction: float | None
     worst_at_m: float | None
     extra_at_place_m: float | None
+    extra_for_confidence_m: float | None
     diffraction_db: float | None
     received_at_hub_dbm: float | None
     received_at_place_dbm: float | None
@@ -90,6 +91,9 @@ class BestHubs:
     margin_db: NDArray[np.float64]
     distance_m: NDArray[np.float64]
     extra_m: NDArray[np.float64]
+    """Height to add at the place so that all criteria are met; infinite where none does."""
+    extra_sure_m: NDArray[np.float64]
+    """The same for the confidence asked."""
     clear_hubs: NDArray[np.int64]
     """How many hubs reach the place clear, on whatever basis."""
 
@@ -175,6 +179,7 @@ def _best(store: Store, candidates: Candidates, *, keep: int, take: Callable[[in
         margin_db=np.full(count, np.nan),
         distance_m=np.full(count, np.nan),
         extra_m=np.full(count, np.nan),
+        extra_sure_m=np.full(count, np.nan),
         clear_hubs=np.zeros(count, dtype=np.int64),
     )
     following, rank = 0, 0
@@ -202,7 +207,11 @@ def _first(best: BestHubs, row: PairRow) -> None:
         return
     best.hub[at], best.sector[at] = row.hub, -1 if row.sector is None else row.sector
     best.signal[at] = -1 if row.signal_verdict is None else row.signal_verdict
-    for column, value in ((best.margin_db, row.margin_db), (best.extra_m, row.extra_at_place_m)):
+    for column, value in (
+        (best.margin_db, row.margin_db),
+        (best.extra_m, row.extra_at_place_m),
+        (best.extra_sure_m, row.extra_for_confidence_m),
+    ):
         if value is not None:
             column[at] = value
 

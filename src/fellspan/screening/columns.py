@@ -22,6 +22,7 @@ _FLOATS: Final = (
     "worst_fraction",
     "worst_at_m",
     "extra_at_place_m",
+    "extra_for_confidence_m",
     "diffraction_db",
     "received_at_hub_dbm",
     "received_at_place_dbm",
@@ -47,6 +48,7 @@ class Columns:
     worst_fraction: NDArray[np.float64]
     worst_at_m: NDArray[np.float64]
     extra_at_place_m: NDArray[np.float64]
+    extra_for_confidence_m: NDArray[np.float64]
     diffraction_db: NDArray[np.float64]
     received_at_hub_dbm: NDArray[np.float64]
     received_at_place_dbm: NDArray[np.float64]
@@ -109,6 +111,7 @@ class Columns:
             worst_fraction=self.worst_fraction,
             worst_at_m=self.worst_at_m,
             extra_at_place_m=self.extra_at_place_m,
+            extra_for_confidence_m=self.extra_for_confidence_m,
             diffraction_db=self.diffraction_db,
             received_at_hub_dbm=self.received_at_hub_dbm,
             received_at_place_dbm=self.received_at_place_dbm,

@@ -16,12 +16,12 @@ from fellspan.geodesy.position import Position
 from fellspan.screening.batch import SHORE_STEPS, Batch, Block, Setting
 from fellspan.screening.columns import Columns
 from fellspan.screening.laid import LaidBucket
-from fellspan.screening.near_answers import SURVEYED, Laid, doubted_rows, surveyed_rows
+from fellspan.screening.near_answers import SURVEYED, Laid, over_beside_m, surveyed_rows
 from fellspan.screening.near_ends import Outlines, near_antennas, near_roof_doubts, near_standings
 from fellspan.screening.near_index import nearby
 from fellspan.screening.near_overlay import OnPath, Overlaid, ground_at, overlaid
 from fellspan.screening.profiles import Profiles, closer, regular, width_of
-from fellspan.screening.rays import CLEAR, MARGINAL, Judged, Rules, closer_look, judged
+from fellspan.screening.rays import CLEAR, JUDGED, MARGINAL, Judged, Rules, closer_look, judged
 from fellspan.screening.single import name_of
 from fellspan.screening.stand import Antennas, Standings
 from fellspan.terrain.alongpath import Floats
@@ -156,24 +156,25 @@ class NearBatch(Batch):
         doubts = np.zeros(profiles.which.size, dtype=np.bool_)
         if bare:
             doubts = near_roof_doubts(a, over, outlines, at_a=True) | near_roof_doubts(b, over, outlines, at_a=False)
-        clear = np.flatnonzero((found.verdict == CLEAR) & ~doubts).tolist()
         layers = setting.many.layers
-        doubts[
-            doubted_rows(
-                laid,
-                clear,
-                lambda row: self._near_path(int(profiles.which[row])),
-                ground_at=lambda latitude, longitude: layers.ground.sample_positions(latitude, longitude).value_m,
-                growth_years=layers.growth_years,
-            )
-        ] = True
+        beside = over_beside_m(
+            laid,
+            range(doubts.size),
+            lambda row: self._near_path(int(profiles.which[row])),
+            ground_at=lambda latitude, longitude: layers.ground.sample_positions(latitude, longitude).value_m,
+            growth_years=layers.growth_years,
+        )
+        over_m = np.zeros(doubts.size)
+        over_m[list(beside)] = list(beside.values())
+        doubts[list(beside)] = True
         found = replace(
             found,
+            extra_for_confidence_m=np.maximum(found.extra_for_confidence_m, over_m),
             verdict=np.where(doubts & (found.verdict == CLEAR), MARGINAL, found.verdict).astype(np.int8),
             basis=np.where(surveyed_rows(laid, own, found), SURVEYED, found.basis).astype(np.int8),
         )
         rows = self._rows[profiles.which]
-        for name in ("verdict", "basis", "confidence", "governing", "worst_fraction", "worst_at_m", "extra_at_place_m"):
+        for name in JUDGED:
             getattr(columns, name)[rows] = getattr(found, name)
         block.unsure.append(self._after_draws_near(profiles, stands, found, on))
         return self._bucket(profiles, stands.surface_m, stands.cover_kind, a, b, found)

@@ -79,12 +79,13 @@ def surveyed_rows(laid: Laid, own: Flags, found: Judged) -> Flags:
     return rests
 
 
-def doubted_rows(
+def over_beside_m(
     laid: Laid, rows: Sequence[int], near: NearOf, *, ground_at: GroundAt, growth_years: float
-) -> list[int]:
-    """Which of some paths pass an obstacle that stands in the part of the zone that a criterion asks for.
+) -> dict[int, float]:
+    """Of some paths those that pass an obstacle in the part of the zone that a criterion asks for, with the height to add at B.
 
-    As `links.doubts.beside_path` says; `near` gives the obstacles of a path, its crossings and its geodesic.
+    As `links.doubts.beside_path` says; 0 where it is not known how high the obstacle is. `near` gives the obstacles of a path,
+    its crossings and its geodesic.
     """
     inside: list[tuple[int, float, tuple[Passed, GeodesicPath]]] = []
     for row in rows:
@@ -94,14 +95,16 @@ def doubted_rows(
             if math.isfinite(edge):
                 inside.append((row, edge, (one, path)))
     if not inside:
-        return []
+        return {}
     tops = tops_m([one for _, _, one in inside], ground_at=ground_at, growth_years=growth_years)
-    doubted = (
-        row
-        for (row, edge, _), top in zip(inside, tops, strict=True)
-        if not math.isfinite(top) or top - edge > clearance.TOLERANCE_M
-    )
-    return list(dict.fromkeys(doubted))
+    found: dict[int, float] = {}
+    for (row, edge, (one, path)), top in zip(inside, tops, strict=True):
+        missing = top - edge
+        if not math.isfinite(top):
+            found.setdefault(row, 0.0)
+        elif missing > clearance.TOLERANCE_M:
+            found[row] = max(found.get(row, 0.0), missing * path.length_m / one.along_m)
+    return found
 
 
 def _lower_edge_m(laid: Laid, row: int, one: Passed) -> float:

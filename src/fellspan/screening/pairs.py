@@ -97,6 +97,11 @@ class PairResults:
     """Where, from the hub."""
     extra_at_place_m: Floats
     """Height to add at the place alone so that every criterion is met; 0 none, inf not possible there alone."""
+    extra_for_confidence_m: Floats
+    """The same so that every criterion holds with the confidence asked, and what else stands against 'clear' falls away.
+
+    By errors that go together along the path: at least so much, since draws of errors are stricter than these on some paths.
+    """
     diffraction_db: Floats
     received_at_hub_dbm: Floats
     received_at_place_dbm: Floats

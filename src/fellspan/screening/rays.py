@@ -107,6 +107,19 @@ def closer_look(
     return more, total
 
 
+JUDGED: Final = (
+    "verdict",
+    "basis",
+    "confidence",
+    "governing",
+    "worst_fraction",
+    "worst_at_m",
+    "extra_at_place_m",
+    "extra_for_confidence_m",
+)
+"""Columns of `Judged` that are columns of `PairResults` too."""
+
+
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Judged:
     """Verdicts of pairs, columns (q,), as those of the same names in `PairResults`."""

@@ -248,7 +248,8 @@ def judge(  # noqa: PLR0912, PLR0915  # one pass: a call for each part of it wou
         (q, n), written: the least over criteria of what is left of the clearance, own cover counted in.
     numbers
         (q, 6), written: least normalised clearance under the governing criterion, where, height to add at B alone, the same for
-        the confidence asked and over own cover, least margin in standard errors, share of the path at its sample nearest mid-path.
+        the confidence asked and over own cover, least margin in standard errors, share of the path at its sample nearest
+        mid-path.
     answers
         (q, 4), written: governing criterion; 1 all met or 0; 1 cut; 1 trees in the zone, 2 own cover in the way, or their sum.
     """

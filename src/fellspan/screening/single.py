@@ -92,6 +92,8 @@ def screen_single(candidates: Candidates, columns: Columns, row: int, *, terrain
         return
     columns.sector[row] = chosen
     _write(columns, row, assessment.result)
+    raising = assessment.raising.b
+    columns.extra_for_confidence_m[row] = math.inf if raising is None else raising
     if assessment.result.verdict == "clear":
         with_draws(columns, row, link, assessment, settings)
 

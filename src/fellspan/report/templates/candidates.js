@@ -149,14 +149,24 @@
   }
   function number(value, digits) { return value === null ? "\u2013" : value.toFixed(digits).replace("-", "\u2212"); }
   function extraWords(value) {
-    return value === null ? "\u2013" : value === "no" ? "none helps" : value === "unsure" ? "0, not sure enough" : value === 0 ? "0" : "+" + value.toFixed(1);
+    var words = {no: "none helps", unsure: "not sure enough", some: "> 0"};
+    return value === null ? "\u2013" : words[value] || (value === 0 ? "0" : "+" + value.toFixed(1));
+  }
+  function heightLine(index) {
+    var meets = places.extra[index], sure = places.sure[index], asked = data.confidence + " confidence";
+    if (meets === null || sure === 0) return "";
+    if (meets === "no") return "No height at the place alone is enough.";
+    var first = meets === 0 ? "Every criterion is met on the heights in the data" : "At the place alone, +" + meets.toFixed(1) + " m meets every criterion";
+    if (sure === "unsure") return first + "; no height there does with " + asked + ".";
+    if (sure === "some") return first + ", but not with " + asked + "; fellspan heights works out what would.";
+    return first + "; with " + asked + " it takes at least +" + sure.toFixed(1) + " m.";
   }
   function choosePlace(index) {
     shownPlace = index; shownHub = -1;
     var hub = places.hub[index], lines = [data.states[places.state[index]].label];
     if (hub >= 0) lines.push("Best hub: " + hubs.name[hub] + ", " + number(places.km[index], 2) + " km");
     if (places.signal[index] >= 0) lines.push("Signal: " + data.signals[places.signal[index]] + ", margin " + number(places.margin[index], 1) + " dB");
-    if (places.extra[index]) lines.push("Height to add at the place: " + extraWords(places.extra[index]) + (typeof places.extra[index] === "string" ? "" : " m"));
+    if (heightLine(index)) lines.push(heightLine(index));
     tell(places.name[index], lines);
     draw();
   }
@@ -179,7 +189,7 @@
     if (by === "name") return places.name[index].toLocaleLowerCase();
     if (by === "hub") return places.hub[index] < 0 ? null : hubs.name[places.hub[index]].toLocaleLowerCase();
     var value = places[by][index];
-    return value === "no" ? Infinity : value === "unsure" ? 0 : by === "signal" && value < 0 ? null : value;
+    return value === "no" ? Infinity : value === "unsure" ? Number.MAX_VALUE : value === "some" ? 0.01 : by === "signal" && value < 0 ? null : value;
   }
   function sorted() {
     order.sort(function (a, b) {
@@ -211,7 +221,7 @@
       [
         places.hub[index] < 0 ? "\u2013" : hubs.name[places.hub[index]], number(places.km[index], 2),
         places.signal[index] < 0 ? "\u2013" : data.signals[places.signal[index]], number(places.margin[index], 1),
-        extraWords(places.extra[index]), String(places.clear[index])
+        extraWords(places.sure[index]), String(places.clear[index])
       ].forEach(function (text, column) {
         var made = row.appendChild(document.createElement("td"));
         made.textContent = text;
