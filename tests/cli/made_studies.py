@@ -1,6 +1,7 @@
 """Small rasters, studies and runs of the real command for the command-line tests; in open ocean, invented."""
 
 import os
+import re
 import subprocess
 import sys
 from pathlib import Path
@@ -76,6 +77,11 @@ def write_study(folder: Path, text: str = STUDY, *, hill_m: float = 0.0) -> Path
     path = folder / "trial.toml"
     path.write_text(text, encoding="utf-8")
     return path
+
+
+def unwrapped(message: str) -> str:
+    """A message of the terminal as it was before its lines were broken: what runs on stands four blanks in."""
+    return re.sub(r"\n {4}(?=\S)", " ", message)
 
 
 def run_command(*arguments: str, folder: Path, env: dict[str, str] | None = None) -> subprocess.CompletedProcess[str]:

@@ -6,6 +6,7 @@ from html import unescape
 from pathlib import Path
 
 import pytest
+from made_studies import unwrapped
 
 from fellspan.cli import main
 
@@ -72,7 +73,7 @@ def test_bad_input_ends_with_2_and_few_lines(
     assert accept(written(tmp_path, text), link=link) == 2
     error = capsys.readouterr().err
     assert said in error
-    assert len(error.splitlines()) <= 4
+    assert len(unwrapped(error).splitlines()) <= 4
 
 
 def test_one_of_measured_and_blank_is_asked_for(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:

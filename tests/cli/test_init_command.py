@@ -4,7 +4,7 @@ import json
 from pathlib import Path
 
 import pytest
-from made_studies import write_ground
+from made_studies import unwrapped, write_ground
 
 from fellspan.cli import main
 from fellspan.study.reading import load_study
@@ -35,7 +35,7 @@ def test_nothing_is_overwritten(tmp_path: Path, capsys: pytest.CaptureFixture[st
     path.write_text("mine", encoding="utf-8")
     assert main.run(["init", str(tmp_path), *(["--schema"] if schema else [])]) == 2
     assert path.read_text(encoding="utf-8") == "mine"
-    assert f"{path} exists" in capsys.readouterr().err
+    assert f"{path} exists" in unwrapped(capsys.readouterr().err)
 
 
 def test_odd_places_are_refused(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:

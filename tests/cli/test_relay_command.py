@@ -6,7 +6,7 @@ from pathlib import Path
 import pytest
 import shapely
 from made_pass import CELL_M, cell_centre, ground_with_pass
-from made_studies import run_command
+from made_studies import run_command, unwrapped
 from made_terrain import lonlat, raster
 
 from fellspan.cli.main import run
@@ -251,4 +251,4 @@ def test_refusals_are_short_and_name_the_value(
     assert words in said.err
     assert "Traceback" not in said.err
     assert "bug" not in said.err
-    assert len(said.err.splitlines()) <= 4
+    assert len(unwrapped(said.err).splitlines()) <= 4

@@ -3,7 +3,7 @@
 from pathlib import Path
 
 import pytest
-from made_studies import STUDY, write_ground
+from made_studies import STUDY, unwrapped, write_ground
 
 from fellspan.cli import main
 
@@ -31,7 +31,7 @@ def test_sight_names_the_swapped_end(
     folder: Path, capsys: pytest.CaptureFixture[str], a: str, b: str, whose: str, is_absurd: bool
 ) -> None:
     code = main.run(("sight", a, b, *OPTIONS, "--height-b", "30 m above ground", "--no-save"))
-    told = capsys.readouterr().err
+    told = unwrapped(capsys.readouterr().err)
     assert code == 2
     assert f"with latitude and longitude of {whose} swapped the path would be 2.7 km long: latitude comes first" in told
     assert ("which no radio link spans" in told) is is_absurd
@@ -42,7 +42,7 @@ def test_a_far_path_between_right_positions_is_called_absurd_only(
     folder: Path, capsys: pytest.CaptureFixture[str]
 ) -> None:
     code = main.run(("sight", GOOD_A, "40.5,-40.5", *OPTIONS, "--height-b", "30 m above ground", "--no-save"))
-    told = capsys.readouterr().err
+    told = unwrapped(capsys.readouterr().err)
     assert code == 2
     assert "km long, which no radio link spans" in told
     assert "swapped" not in told
@@ -50,7 +50,7 @@ def test_a_far_path_between_right_positions_is_called_absurd_only(
 
 def test_just_off_the_raster_nothing_is_suspected(folder: Path, capsys: pytest.CaptureFixture[str]) -> None:
     code = main.run(("sight", GOOD_A, "36.2,-45.28", *OPTIONS, "--height-b", "30 m above ground", "--no-save"))
-    told = capsys.readouterr().err
+    told = unwrapped(capsys.readouterr().err)
     assert code == 2
     assert "add a raster that covers the stretch" in told
     assert "swapped" not in told

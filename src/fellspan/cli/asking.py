@@ -9,7 +9,7 @@ from typing import TypeVar
 
 import typer
 
-from fellspan.cli.layout import wrapped
+from fellspan.cli.telling import tell
 from fellspan.errors import FellspanError
 
 _T = TypeVar("_T")
@@ -49,11 +49,9 @@ def ask_choice(question: str, choices: Sequence[str]) -> str:
         fitting = [choice for choice in choices if answer and choice.startswith(answer)]
         if len(fitting) == 1:
             return fitting[0]
-        typer.echo(f"  one of: {', '.join(choices)}", err=True)
+        tell(f"  one of: {', '.join(choices)}")
 
 
 def _complain(error: FellspanError) -> None:
     """What is wrong with an answer, broken between words."""
-    for text in (error.what, *error.details):
-        for line in wrapped(text, first="  ", rest="    "):
-            typer.echo(line, err=True)
+    tell("\n".join(f"  {text}" for text in (error.what, *error.details)))

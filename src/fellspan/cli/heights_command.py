@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING, Annotated, get_args
 import typer
 
 from fellspan.cli.choices import one_of
+from fellspan.cli.telling import tell
 from fellspan.errors import UsageError
 from fellspan.vocabulary import CriteriaPreset, GapPolicy
 
@@ -113,7 +114,7 @@ def heights_command(
     else:
         _print(plan)
     for failure in plan.failures:
-        typer.echo(f"fellspan: {failure.link.name}: {failure.error}", err=True)
+        tell(f"fellspan: {failure.link.name}: {failure.error}")
     if plan.failures:
         raise typer.Exit(INPUT)
 

@@ -1,11 +1,15 @@
 """Laying out text on a terminal: wrapping, columns, rules, emphasis. Knows nothing of links."""
 
 import os
+import re
 import sys
 import textwrap
 from collections.abc import Iterable, Sequence
 
 WIDTH = 80
+_RUN_ON = "    "
+_BEGINS_PATH = re.compile(r"(?:~|\.{1,2})?/")
+_HAS_ENDING = re.compile(r"\.\w{1,5}[:,;]?$")
 _BOLD, _GREEN, _YELLOW, _RED, _PLAIN = "\x1b[1m", "\x1b[32m", "\x1b[33m", "\x1b[31m", "\x1b[0m"
 _TONES = {"good": _GREEN, "doubt": _YELLOW, "bad": _RED, "strong": ""}
 
@@ -71,6 +75,72 @@ def wrapped(text: str, *, first: str = "", rest: str | None = None) -> list[str]
         break_on_hyphens=False,
     )
     return [part for line in lines or [first.rstrip()] for part in _within_width(line)]
+
+
+def message_lines(message: str) -> list[str]:
+    """A message for standard error in lines of 80 columns, a detail with its indentation and what runs on four blanks in.
+
+    Broken between words alone, and never inside a path or a quoted value, so that both can be copied: one that is longer
+    than a line stands out over it.
+    """
+    return [part for line in message.splitlines() for part in _message_line(line)]
+
+
+def _message_line(line: str) -> Iterable[str]:
+    text = printable(line).rstrip()
+    words = _kept_together(text.split())
+    shown = text[: len(text) - len(text.lstrip())]
+    for number, word in enumerate(words):
+        too_long = columns_of(shown) + 1 + columns_of(word) > WIDTH
+        # A word too long for any line stays behind the name of the program.
+        if number and too_long and (number > 1 or columns_of(word) <= WIDTH - len(_RUN_ON)):
+            yield shown
+            shown = f"{_RUN_ON}{word}"
+        else:
+            shown += f" {word}" if number else word
+    yield shown
+
+
+def _kept_together(words: Sequence[str]) -> list[str]:
+    """Words, those of one quoted value or of one path joined again."""
+    kept: list[str] = []
+    at = 0
+    while at < len(words):
+        last = max(_end_of_quoted(words, at), _end_of_path(words, at))
+        kept.append(" ".join(words[at : last + 1]))
+        at = last + 1
+    return kept
+
+
+def _end_of_quoted(words: Sequence[str], at: int) -> int:
+    """Index of the word that closes the quote opened in the word `at`; `at` itself where none is."""
+    opened = re.match(r"""[(\[{<=]*(?:--?[\w-]+=|[\w.]+=)?(['"])""", words[at])
+    if opened is None:
+        return at
+    closes = re.compile(rf"{opened[1]}[\])}}>.,:;?!]*$")
+    rest = (words[at][opened.end() :], *words[at + 1 :])
+    return next((at + step for step, word in enumerate(rest) if closes.search(word)), at)
+
+
+def _end_of_path(words: Sequence[str], at: int) -> int:
+    """Index of the last word of the path that begins with the word `at`: blanks in its folders, and before its ending."""
+    if not _BEGINS_PATH.match(words[at]):
+        return at
+    last = at
+    for index in range(at, len(words)):
+        if index > at and _BEGINS_PATH.match(words[index]):
+            break
+        if "/" in words[index]:
+            last = index
+        if words[index].endswith((":", ",", ";")):
+            break
+    if "." in words[last].rpartition("/")[2] or words[last].endswith((":", ",", ";")):
+        return last
+    # What it says of a file stands behind a colon; without one a name of a few words is taken for part of it.
+    rest = range(last + 1, len(words))
+    told = (index for index in rest if _HAS_ENDING.search(words[index]) and words[index].endswith(":"))
+    near = (index for index in rest[:3] if _HAS_ENDING.search(words[index]))
+    return next(told, next(near, last))
 
 
 def _within_width(line: str) -> Iterable[str]:

@@ -21,6 +21,7 @@ from fellspan.cli.candidates_command import candidates_command
 from fellspan.cli.equip_command import equip_command
 from fellspan.cli.heights_command import heights_command
 from fellspan.cli.init_command import init_command
+from fellspan.cli.layout import message_lines
 from fellspan.cli.plan_command import plan_command
 from fellspan.cli.relay_command import relay_command
 from fellspan.cli.sight_command import sight_command
@@ -109,7 +110,7 @@ def _with_signs_kept(arguments: Sequence[str]) -> list[str]:
 
 
 def _complain(text: str, code: int) -> int:
-    print(text, file=sys.stderr)  # noqa: T201
+    print("\n".join(message_lines(text)), file=sys.stderr)  # noqa: T201
     return code
 
 

@@ -6,7 +6,7 @@ Shows what planning found and computes nothing.
 from collections.abc import Sequence
 
 from fellspan.cli import figures
-from fellspan.cli.layout import WIDTH, Ink, padded, printable, rule, table, wrapped
+from fellspan.cli.layout import WIDTH, Ink, message_lines, padded, printable, rule, table, wrapped
 from fellspan.cli.link_page import decision_lines, link_lines, state_tone
 from fellspan.cli.neighbour_lines import neighbour_lines
 from fellspan.links import words
@@ -107,5 +107,5 @@ def _failed_row(failure: LinkFailure) -> Sequence[str]:
 
 def _failure(failure: LinkFailure, ink: Ink) -> list[str]:
     name = padded(printable(failure.link.name), 66).rstrip()
-    what = [line for text in (failure.error.what, *failure.error.details) for line in wrapped(text, first="  ")]
+    what = [line for text in (failure.error.what, *failure.error.details) for line in message_lines(f"  {text}")]
     return [f"{ink.emphasise(name)}: {ink.emphasise('not planned', 'bad')}", *what]

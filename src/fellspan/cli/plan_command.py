@@ -57,6 +57,7 @@ def plan_command(
 ) -> None:
     """Plan every link of a study file: clear or not, by how much, and what would clear it."""
     from fellspan.cli.running import finish, run_plan, tell_old_report
+    from fellspan.cli.telling import tell
     from fellspan.study.reading import load_study
 
     if out is not None:
@@ -72,7 +73,7 @@ def plan_command(
     brief = not full and not link and len(plan.links) + len(plan.failures) > FULL_UP_TO
     finish(plan, out=out, as_json=as_json, brief=brief, chosen=bool(link))
     if require is not None and (short := _short_of(plan, require)):
-        typer.echo(f"fellspan: --require {require.value} is not reached by {short}", err=True)
+        tell(f"fellspan: --require {require.value} is not reached by {short}")
         raise typer.Exit(NOT_REACHED)
     if plan.failures:
         raise typer.Exit(INPUT)

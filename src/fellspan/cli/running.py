@@ -11,6 +11,7 @@ import typer
 
 from fellspan.cli.layout import WIDTH, Ink, colours_wanted, cut, printable
 from fellspan.cli.page import page_lines
+from fellspan.cli.telling import tell
 from fellspan.errors import UsageError
 from fellspan.planning.inputs import Study
 from fellspan.planning.plan import StudyPlan
@@ -55,7 +56,7 @@ def finish(plan: StudyPlan, *, out: Path | None, as_json: bool, brief: bool = Fa
         typer.echo("\n".join(page_lines(plan, ink=Ink(colours=colours_wanted()), brief=brief)))
     sys.stdout.flush()
     for failure in plan.failures:
-        typer.echo(f"fellspan: {named(failure.link.name, str(failure.error))}", err=True)
+        tell(f"fellspan: {named(failure.link.name, str(failure.error))}")
     if out is None:
         return
     if not plan.links:
@@ -89,7 +90,7 @@ def _see_to_target(plan: StudyPlan, out: Path, *, chosen: bool) -> None:
             f"the report in '{out}' also holds {listed}, which --link leaves out",
             "their pages would be lost: give another folder for --out, or plan all links",
         )
-    typer.echo(f"fellspan: the report in '{out}' also holds {listed}, not planned now: removed from it", err=True)
+    tell(f"fellspan: the report in '{out}' also holds {listed}, not planned now: removed from it")
 
 
 def tell_old_report(out: Path | None) -> None:
@@ -99,7 +100,7 @@ def tell_old_report(out: Path | None) -> None:
     from fellspan.exports.folder import links_in
 
     if links_in(out):
-        typer.echo(f"fellspan: nothing was written; the earlier report in '{out}' stands as it was", err=True)
+        tell(f"fellspan: nothing was written; the earlier report in '{out}' stands as it was")
 
 
 def named(link_name: str, message: str) -> str:

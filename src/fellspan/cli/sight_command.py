@@ -8,6 +8,7 @@ import typer
 
 from fellspan.cli.choices import one_of
 from fellspan.cli.init_command import write_new
+from fellspan.cli.telling import tell
 from fellspan.errors import FellspanError, UsageError
 from fellspan.vocabulary import CriteriaPreset, GapPolicy, LengthUnit
 
@@ -149,7 +150,7 @@ def _save(study: "Study", wanted: Path | None) -> None:
 
     path = wanted or _free_name()
     write_new(path, study_text(study, folder=path.parent))
-    typer.echo(f"study saved as {path}, for fellspan plan", err=True)
+    tell(f"study saved as {path}, for fellspan plan")
 
 
 def _free_name() -> Path:

@@ -5,6 +5,7 @@ from typing import TYPE_CHECKING, Annotated
 import typer
 
 from fellspan.cli.layout import labelled, printable, wrapped
+from fellspan.cli.telling import tell
 from fellspan.errors import FellspanError
 from fellspan.vocabulary import RasterRole
 
@@ -51,7 +52,7 @@ def terrain_command(
     elif facts:
         typer.echo("\n".join(_page(facts, seams)))
     for error in errors:
-        typer.echo("\n".join(map(printable, f"fellspan: {error}".splitlines())), err=True)
+        tell(f"fellspan: {error}")
     return max((error.exit_code for error in errors), default=0)
 
 
