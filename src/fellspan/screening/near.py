@@ -16,18 +16,18 @@ from fellspan.geodesy.position import Position
 from fellspan.screening.batch import SHORE_STEPS, Batch, Block, Setting
 from fellspan.screening.columns import Columns
 from fellspan.screening.laid import LaidBucket
-from fellspan.screening.near_answers import SURVEYED, Laid, over_beside_m, surveyed_rows
+from fellspan.screening.near_answers import SURVEYED, Beside, Laid, over_beside_m, surveyed_rows
 from fellspan.screening.near_ends import Outlines, near_antennas, near_roof_doubts, near_standings
-from fellspan.screening.near_index import nearby
+from fellspan.screening.near_index import greatest_share, nearby
 from fellspan.screening.near_overlay import OnPath, Overlaid, ground_at, overlaid
 from fellspan.screening.profiles import Profiles, closer, regular, width_of
 from fellspan.screening.rays import CLEAR, JUDGED, MARGINAL, Judged, Rules, closer_look, judged
 from fellspan.screening.single import name_of
 from fellspan.screening.stand import Antennas, Standings
 from fellspan.terrain.alongpath import Floats
+from fellspan.terrain.beside import passed_by, tops_m
 from fellspan.terrain.many_obstacles import Starts
 from fellspan.terrain.obstacle_tops import EDGE_M, Standing, nodes, settled_on
-from fellspan.terrain.obstacles import Crossing, NearShape
 from fellspan.terrain.samples import merged
 from fellspan.terrain.support_ground import SupportGround
 from fellspan.terrain.survey_hits import SurveyHits, chord_m
@@ -55,11 +55,25 @@ class NearBatch(Batch):
         )
         near = nearby(candidates, layers, self._ways, self._hub, self._place)
         self._surveyed = near.surveyed
-        self._touched = layers.obstacles.laid(
-            self._starts, near.path, near.obstacle, near.shift_deg, path_of=self._geodesic
+        obstacles = layers.obstacles
+        touched = obstacles.laid(self._starts, near.path, near.obstacle, near.shift_deg, path_of=self._geodesic)
+        self._crossed = obstacles.crossed(touched, self._starts)
+        self._beside: dict[int, list[Beside]] = {}
+        passed = passed_by(
+            touched,
+            obstacles.obstacles,
+            self._crossed,
+            self._starts.length_m,
+            most_share=greatest_share(candidates),
         )
-        self._crossed = layers.obstacles.crossed(self._touched, self._starts)
-        self._from = np.searchsorted(near.path, np.arange(rows.size + 1))
+        tops = tops_m(
+            passed,
+            self._starts,
+            ground_at=lambda latitude, longitude: layers.ground.sample_positions(latitude, longitude).value_m,
+            growth_years=layers.growth_years,
+        )
+        for one, top in zip(passed, tops, strict=True):
+            self._beside.setdefault(one.path, []).append((one, top))
 
     def _near_others(self) -> NDArray[np.bool_]:
         return np.zeros(self._rows.size, dtype=np.bool_)
@@ -156,14 +170,7 @@ class NearBatch(Batch):
         doubts = np.zeros(profiles.which.size, dtype=np.bool_)
         if bare:
             doubts = near_roof_doubts(a, over, outlines, at_a=True) | near_roof_doubts(b, over, outlines, at_a=False)
-        layers = setting.many.layers
-        beside = over_beside_m(
-            laid,
-            range(doubts.size),
-            lambda row: self._near_path(int(profiles.which[row])),
-            ground_at=lambda latitude, longitude: layers.ground.sample_positions(latitude, longitude).value_m,
-            growth_years=layers.growth_years,
-        )
+        beside = over_beside_m(laid, lambda row: self._beside.get(int(profiles.which[row]), ()))
         over_m = np.zeros(doubts.size)
         over_m[list(beside)] = list(beside.values())
         doubts[list(beside)] = True
@@ -198,19 +205,6 @@ class NearBatch(Batch):
         """Leave pairs to be taken one by one."""
         if which.size:
             block.one_by_one.append(self._rows[which])
-
-    def _near_path(self, path: int) -> tuple[Sequence[NearShape], Sequence[Crossing], GeodesicPath]:
-        touched, obstacles = self._touched, self._setting.many.layers.obstacles.obstacles
-        near = [
-            NearShape(
-                obstacle=obstacles[int(touched.obstacle[k])],
-                plane=touched.plane[k],
-                shift=float(touched.shift_deg[k]),
-                crosses=True,
-            )
-            for k in range(int(self._from[path]), int(self._from[path + 1]))
-        ]
-        return near, self._crossed.get(path, ()), self._geodesic(path)
 
     def _hits(self, coarse: Profiles) -> list[SurveyHits | None]:
         """What was surveyed on each path; None where nothing was."""

@@ -11,7 +11,6 @@ from typing import Final
 import numpy as np
 from numpy.typing import NDArray
 
-from fellspan.geodesy.geodesic import GeodesicPath
 from fellspan.links import clearance
 from fellspan.links.criteria import are_extended
 from fellspan.links.verdicts import UNLISTED_M
@@ -20,13 +19,13 @@ from fellspan.screening.near_overlay import Overlaid
 from fellspan.screening.pairs import BASES
 from fellspan.screening.rays import Judged, Rules
 from fellspan.screening.stand import Antennas, Standings
-from fellspan.terrain.beside import GroundAt, Passed, passed_by, tops_m
-from fellspan.terrain.obstacles import Crossing, NearShape
+from fellspan.terrain.beside import Passed
 from fellspan.terrain.profile import MEASURED_TOP
 
 Floats = NDArray[np.float64]
 Flags = NDArray[np.bool_]
-NearOf = Callable[[int], tuple[Sequence[NearShape], Sequence[Crossing], GeodesicPath]]
+Beside = tuple[Passed, float]
+"""What stands beside a path, and its top, m above sea level; NaN where that is not known."""
 
 SURVEYED: Final = BASES.index("surveyed")
 
@@ -79,43 +78,33 @@ def surveyed_rows(laid: Laid, own: Flags, found: Judged) -> Flags:
     return rests
 
 
-def over_beside_m(
-    laid: Laid, rows: Sequence[int], near: NearOf, *, ground_at: GroundAt, growth_years: float
-) -> dict[int, float]:
-    """Of some paths those that pass an obstacle in the part of the zone that a criterion asks for, with the height to add at B.
+def over_beside_m(laid: Laid, beside: Callable[[int], Sequence[Beside]]) -> dict[int, float]:
+    """Paths that pass an obstacle in the part of the zone that a criterion asks for, with the height to add at B for it.
 
-    As `links.doubts.beside_path` says; 0 where it is not known how high the obstacle is. `near` gives the obstacles of a path,
-    its crossings and its geodesic.
+    As `links.doubts.beside_path` says; 0 where it is not known how high the obstacle is. `beside` gives those of a path.
     """
-    inside: list[tuple[int, float, tuple[Passed, GeodesicPath]]] = []
-    for row in rows:
-        shapes, crossings, path = near(row)
-        for one in passed_by(shapes, crossings, path.length_m):
-            edge = _lower_edge_m(laid, row, one)
-            if math.isfinite(edge):
-                inside.append((row, edge, (one, path)))
-    if not inside:
-        return {}
-    tops = tops_m([one for _, _, one in inside], ground_at=ground_at, growth_years=growth_years)
     found: dict[int, float] = {}
-    for (row, edge, (one, path)), top in zip(inside, tops, strict=True):
-        missing = top - edge
-        if not math.isfinite(top):
-            found.setdefault(row, 0.0)
-        elif missing > clearance.TOLERANCE_M:
-            found[row] = max(found.get(row, 0.0), missing * path.length_m / one.along_m)
+    for row, length in enumerate(laid.over.profiles.length_m.tolist()):
+        for one, top in beside(row):
+            edge = _lower_edge_m(laid, row, one)
+            if math.isinf(edge):
+                continue
+            if not math.isfinite(top):
+                found.setdefault(row, 0.0)
+            elif top - edge > clearance.TOLERANCE_M:
+                found[row] = max(found.get(row, 0.0), (top - edge) * length / one.along_m)
     return found
 
 
 def _lower_edge_m(laid: Laid, row: int, one: Passed) -> float:
     """Lowest edge of the zones asked for at an obstacle's offset, m above sea level; infinite where it stands outside them."""
     length = float(laid.over.profiles.length_m[row])
-    radius = float(laid.radius_m(np.array([0.0, one.along_m, length]))[1])
+    square = laid.rules.wavelength_m * one.along_m * (length - one.along_m) / length
     share, lowest = one.along_m / length, math.inf
-    for rule in range(laid.rules.fraction.shape[1]):
-        half = -1.0
-        if one.offset_m < float(laid.rules.fraction[row, rule]) * radius:
-            half = (laid.fraction(row, rule) * radius) ** 2 - one.offset_m**2
+    for rule, most in enumerate(laid.rules.fraction[row].tolist()):
+        if most**2 * square <= one.offset_m**2:
+            continue
+        half = laid.fraction(row, rule) ** 2 * square - one.offset_m**2
         if half > 0.0:
             ray = float(laid.a.amsl_m[row]) * (1.0 - share) + float(laid.b.amsl_m[row]) * share
             bulge = one.along_m * (length - one.along_m) * float(laid.rules.curve[row, rule])

@@ -3,6 +3,7 @@
 Asks the indices of `terrain`; what a pair is told does not depend on the pairs beside it. Knows no heights.
 """
 
+import math
 from dataclasses import dataclass
 from typing import Final
 
@@ -30,6 +31,18 @@ class Nearby:
     obstacle: Index
     shift_deg: Floats
     surveyed: NDArray[np.bool_]
+
+    def of(self, paths: Index) -> "Nearby":
+        """What some of the paths, rising, come near."""
+        new = np.full(self.surveyed.size, -1, dtype=np.int64)
+        new[paths] = np.arange(paths.size)
+        some = np.flatnonzero(new[self.path] >= 0)
+        return Nearby(
+            path=new[self.path[some]],
+            obstacle=self.obstacle[some],
+            shift_deg=self.shift_deg[some],
+            surveyed=self.surveyed[paths],
+        )
 
     def paths(self) -> NDArray[np.bool_]:
         """Which paths come near anything, (p,)."""
@@ -64,10 +77,15 @@ def nearby(candidates: Candidates, layers: Layers, ways: Ways, hub: Index, place
     return Nearby(path=path[order], obstacle=obstacle[order], shift_deg=shift[order], surveyed=surveyed)
 
 
+def greatest_share(candidates: Candidates) -> float:
+    """How wide the zone is that a criterion may ask for, against that of a wavelength of 1 m."""
+    fraction = max(1.0, *(rule.fraction for rule in candidates.settings.criteria), 0.0)
+    return fraction * math.sqrt(float(wavelength_m(candidates.radio.frequency_hz)))
+
+
 def _classes(candidates: Candidates, length_m: Floats) -> tuple[Floats, Index]:
     """How far beside each path obstacles count, m, and its number of nodes, both (p,): of few values, by its length alone."""
-    fraction = max(1.0, *(rule.fraction for rule in candidates.settings.criteria), 0.0)
-    widest = fraction * 0.5 * np.sqrt(float(wavelength_m(candidates.radio.frequency_hz)) * length_m)
+    widest = 0.5 * greatest_share(candidates) * np.sqrt(length_m)
     within = np.minimum(np.exp2(np.ceil(np.log2(np.maximum(widest, _LEAST_WITHIN_M)))), BESIDE_M)
     doubled = np.exp2(np.ceil(np.log2(np.maximum(length_m, 1.0))))
     nodes = {length: nodes_for(length) for length in np.unique(doubled).tolist()}

@@ -1,18 +1,20 @@
-"""Obstacles that a path passes without crossing them: where they come nearest, how far off, how high.
+"""Obstacles that paths pass without crossing them: where they come nearest, how far off, how high.
 
-Works on shapes in the plane of the path; opens nothing and knows no frequency.
+Works on shapes in the planes of many paths, or of one; opens nothing and knows no frequency.
 """
 
-from collections.abc import Sequence
+import math
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from typing import Final, Protocol
 
 import numpy as np
 import shapely
-from numpy.typing import ArrayLike
+from numpy.typing import ArrayLike, NDArray
 
 from fellspan.geodesy.geodesic import WGS84_GEOD, GeodesicPath
-from fellspan.terrain.alongpath import Floats, along_across
+from fellspan.terrain.alongpath import Floats, along_across_many
+from fellspan.terrain.many_obstacles import Starts, Touched
 from fellspan.terrain.obstacles import BESIDE_M, Crossing, NearShape, Obstacle
 from fellspan.terrain.profile import BesidePath
 
@@ -34,13 +36,14 @@ class GroundAt(Protocol):
 class Passed:
     """Where an obstacle's edge lies deepest in the zones of a path that passes it."""
 
+    path: int
     obstacle: Obstacle
     shift: float
     along_m: float
     across_m: float
     offset_m: float
     share: float
-    """Offset against the radius of a zone: small is deep inside."""
+    """Offset against the radius of a zone of wavelength 1 m: small is deep inside."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -61,8 +64,24 @@ def beside(
     growth_years: float,
 ) -> tuple[BesidePath, ...]:
     """The obstacles within `BESIDE_M` of a path and not within that of a crossing of their own, by distance from A."""
-    passed = passed_by(near, crossings, path.length_m)
-    tops = tops_m([(one, path) for one in passed], ground_at=ground_at, growth_years=growth_years)
+    if not near:
+        return ()
+    starts = Starts(
+        latitude_deg=np.array([path.a.latitude_deg]),
+        longitude_deg=np.array([path.a.longitude_deg]),
+        bearing_deg=np.array([path.bearing_ab_deg]),
+        length_m=np.array([path.length_m]),
+    )
+    plane = np.full(len(near), None, dtype=object)
+    plane[:] = [one.plane for one in near]
+    touched = Touched(
+        path=np.zeros(len(near), dtype=np.int64),
+        obstacle=np.arange(len(near)),
+        shift_deg=np.array([one.shift for one in near]),
+        plane=plane,
+    )
+    passed = passed_by(touched, [one.obstacle for one in near], {0: crossings}, starts.length_m)
+    tops = tops_m(passed, starts, ground_at=ground_at, growth_years=growth_years)
     listed = [
         BesidePath(
             name=one.obstacle.name,
@@ -77,75 +96,126 @@ def beside(
     return tuple(sorted(listed, key=lambda one: (one.at_m, one.offset_m, one.name)))
 
 
-def passed_by(near: Sequence[NearShape], crossings: Sequence[Crossing], length_m: float) -> list[Passed]:
-    """The obstacles that `beside` lists, the deepest in the zones first."""
-    crossed: dict[int, list[tuple[float, float]]] = {}
-    for crossing in crossings:
-        crossed.setdefault(id(crossing.obstacle), []).append((crossing.from_m - BESIDE_M, crossing.to_m + BESIDE_M))
-    passed = [found for one in near if (found := _passed(one, crossed.get(id(one.obstacle), ()), length_m)) is not None]
-    return sorted(passed, key=lambda one: (one.share, one.along_m, one.obstacle.name))[:MOST_BESIDE]
+def passed_by(
+    touched: Touched,
+    obstacles: Sequence[Obstacle],
+    crossings: Mapping[int, Sequence[Crossing]],
+    length_m: Floats,
+    *,
+    most_share: float = math.inf,
+) -> list[Passed]:
+    """The obstacles that `beside` lists, for each path the deepest in the zones first; those of a lesser share only, if asked.
+
+    Parameters
+    ----------
+    touched
+        Obstacles near paths, columns (k,), `obstacle` an index into `obstacles`.
+    crossings
+        Of each path; stretches where an obstacle is crossed are left out: there it counts as crossed.
+    length_m
+        Of each path, (p,).
+    """
+    length = length_m[touched.path]
+    reach = np.array([obstacles[one].reach_m for one in touched.obstacle.tolist()])
+    points, of = shapely.get_coordinates(_divided(touched.plane, length), return_index=True)
+    along, across = points[:, 0], points[:, 1]
+    offset = np.maximum(np.abs(across) - reach[of], 0.0)
+    inside = (along > 0.0) & (along < length[of]) & (offset <= BESIDE_M)
+    for start, stop in _crossed(touched, obstacles, crossings):
+        inside &= (along < start[of]) | (along > stop[of])
+    kept = np.flatnonzero(inside)
+    of, along, across, offset = of[kept], along[kept], across[kept], offset[kept]
+    share = offset / np.sqrt(along * (length[of] - along) / length[of])
+    if math.isfinite(most_share):
+        deep = np.flatnonzero(share < most_share)
+        of, along, across, offset, share = of[deep], along[deep], across[deep], offset[deep], share[deep]
+    order = np.lexsort((share, of))
+    first = order[np.flatnonzero(np.diff(of[order], prepend=-1))]
+    passed = [
+        Passed(
+            path=int(touched.path[of[i]]),
+            obstacle=obstacles[int(touched.obstacle[of[i]])],
+            shift=float(touched.shift_deg[of[i]]),
+            along_m=float(along[i]),
+            across_m=float(across[i]),
+            offset_m=float(offset[i]),
+            share=float(share[i]),
+        )
+        for i in first.tolist()
+    ]
+    passed.sort(key=lambda one: (one.path, one.share, one.along_m, one.obstacle.name))
+    listed: dict[int, int] = {}
+    kept_of_path: list[Passed] = []
+    for one in passed:
+        listed[one.path] = listed.get(one.path, 0) + 1
+        if listed[one.path] <= MOST_BESIDE:
+            kept_of_path.append(one)
+    return kept_of_path
 
 
-def tops_m(passed: Sequence[tuple[Passed, GeodesicPath]], *, ground_at: GroundAt, growth_years: float) -> list[float]:
+def _divided(plane: NDArray[np.object_], length_m: Floats) -> NDArray[np.object_]:
+    """Shapes (k,) with points fine enough to tell where they are nearest to a path of length (k,)."""
+    areas = np.flatnonzero((shapely.get_type_id(plane) != shapely.GeometryType.POINT) & ~shapely.is_empty(plane))
+    divided = plane.copy()
+    divided[areas] = shapely.segmentize(plane[areas], np.maximum(_FINEST_M, length_m[areas] / _PARTS))
+    return divided
+
+
+def _crossed(
+    touched: Touched, obstacles: Sequence[Obstacle], crossings: Mapping[int, Sequence[Crossing]]
+) -> list[tuple[Floats, Floats]]:
+    """Where obstacles near paths are crossed: the first stretch of each, (k,) and (k,), the second, and so on; else inf."""
+    rounds: list[tuple[Floats, Floats]] = []
+    count = touched.path.size
+    for k, (path, obstacle) in enumerate(zip(touched.path.tolist(), touched.obstacle.tolist(), strict=True)):
+        own = [one for one in crossings.get(path, ()) if one.obstacle is obstacles[obstacle]]
+        for number, one in enumerate(own):
+            if number == len(rounds):
+                rounds.append((np.full(count, np.inf), np.full(count, np.inf)))
+            rounds[number][0][k], rounds[number][1][k] = one.from_m - BESIDE_M, one.to_m + BESIDE_M
+    return rounds
+
+
+def tops_m(passed: Sequence[Passed], starts: Starts, *, ground_at: GroundAt, growth_years: float) -> list[float]:
     """Tops of obstacles beside paths, m above sea level, with growth; ground is asked for once, for all of them."""
-    probes = [_probes(one, path) for one, path in passed]
-    places = np.concatenate([probe.places for probe in probes]) if probes else np.zeros((0, 2))
+    if not passed:
+        return []
+    path = np.array([one.path for one in passed])
+    along = np.array([one.along_m for one in passed])
+    across = np.array([one.across_m for one in passed])
+    longitude, latitude, back = (
+        np.asarray(one)
+        for one in WGS84_GEOD.fwd(
+            starts.longitude_deg[path], starts.latitude_deg[path], starts.bearing_deg[path], np.maximum(along, 1e-3)
+        )
+    )
+    off_longitude, off_latitude, _ = WGS84_GEOD.fwd(longitude, latitude, back + 180.0 + 90.0, across)
+    feet = np.column_stack((latitude, longitude))
+    edges = np.column_stack((off_latitude, off_longitude))
+    probes = [_probes(one, starts, edge, foot) for one, edge, foot in zip(passed, edges, feet, strict=True)]
+    places = np.concatenate([probe.places for probe in probes])
     ground = ground_at(places[:, 0], places[:, 1])
     tops: list[float] = []
     at = 0
-    for (one, _), probe in zip(passed, probes, strict=True):
+    for one, probe in zip(passed, probes, strict=True):
         under = ground[at : at + len(probe.places)]
         at += len(probe.places)
         tops.append(_top(one.obstacle, probe, under) + one.obstacle.growth_m_per_year * growth_years)
     return tops
 
 
-def _passed(near: NearShape, crossed: Sequence[tuple[float, float]], length_m: float) -> Passed | None:
-    """Where the edge of a shape lies deepest in the zones of the path; None where it stays off or beyond the ends.
-
-    Stretches where it is crossed are left out: there it counts as crossed.
-    """
-    shape = near.plane
-    if shape.is_empty:
-        return None
-    reach = near.obstacle.reach_m
-    if not isinstance(shape, shapely.Point):
-        shape = shapely.segmentize(shape, max(_FINEST_M, length_m / _PARTS))
-    points = shapely.get_coordinates(shape)
-    points = points[(points[:, 0] > 0.0) & (points[:, 0] < length_m)]
-    for start, stop in crossed:
-        points = points[(points[:, 0] < start) | (points[:, 0] > stop)]
-    offset = np.maximum(np.abs(points[:, 1]) - reach, 0.0)
-    within = offset <= BESIDE_M
-    if not within.any():
-        return None
-    points, offset = points[within], offset[within]
-    share = offset / np.sqrt(points[:, 0] * (length_m - points[:, 0]) / length_m)
-    i = int(np.argmin(share))
-    return Passed(
-        obstacle=near.obstacle,
-        shift=near.shift,
-        along_m=float(points[i, 0]),
-        across_m=float(points[i, 1]),
-        offset_m=float(offset[i]),
-        share=float(share[i]),
-    )
-
-
-def _probes(one: Passed, path: GeodesicPath) -> _Probe:
+def _probes(one: Passed, starts: Starts, edge: Floats, foot: Floats) -> _Probe:
     """Where the ground must be known for the top: beside the path, on it, and at corners or supports."""
     obstacle = one.obstacle
-    foot = path.positions(np.array([one.along_m]))
-    places = [_position(path, one.along_m, one.across_m), (float(foot[0][0]), float(foot[1][0]))]
     if obstacle.rule == "span":
         line = shapely.get_coordinates(obstacle.shape)
-        span, share = _span(one, line, path)
-        return _Probe(places=np.array([*places, *line[span : span + 2, ::-1]]), span=span, share=share)
+        span, share = _span(one, line, starts)
+        return _Probe(places=np.array([edge, foot, *line[span : span + 2, ::-1]]), span=span, share=share)
     if obstacle.rule == "level" and obstacle.shape.geom_type == "Polygon":
         corners = shapely.get_coordinates(obstacle.shape)
         corners = corners[np.unique(np.linspace(0, len(corners) - 1, _MOST_CORNERS).astype(np.int64))]
-        return _Probe(places=np.array([*places, *corners[:, ::-1]]))
-    return _Probe(places=np.array(places))
+        return _Probe(places=np.array([edge, foot, *corners[:, ::-1]]))
+    return _Probe(places=np.array([edge, foot]))
 
 
 def _top(obstacle: Obstacle, probe: _Probe, ground_m: Floats) -> float:
@@ -169,9 +239,13 @@ def _top(obstacle: Obstacle, probe: _Probe, ground_m: Floats) -> float:
     return float(np.nanmax(own)) + height if np.isfinite(own).any() else float("nan")
 
 
-def _span(one: Passed, line: Floats, path: GeodesicPath) -> tuple[int, float]:
+def _span(one: Passed, line: Floats, starts: Starts) -> tuple[int, float]:
     """Which span of a line is the one beside the path, and how far along it (0 to 1)."""
-    along, across = along_across(path, line[:, 1], line[:, 0] + one.shift)
+    latitude, longitude, bearing = (
+        np.full(len(line), float(column[one.path]))
+        for column in (starts.latitude_deg, starts.longitude_deg, starts.bearing_deg)
+    )
+    along, across = along_across_many(latitude, longitude, bearing, line[:, 1], line[:, 0] + one.shift)
     start, ray = np.column_stack((along, across))[:-1], np.column_stack((np.diff(along), np.diff(across)))
     square = np.maximum(np.sum(ray**2, axis=1), 1e-12)
     share = ((one.along_m - start[:, 0]) * ray[:, 0] + (one.across_m - start[:, 1]) * ray[:, 1]) / square
@@ -179,12 +253,3 @@ def _span(one: Passed, line: Floats, path: GeodesicPath) -> tuple[int, float]:
     foot = start + share[:, None] * ray
     span = int(np.argmin(np.hypot(foot[:, 0] - one.along_m, foot[:, 1] - one.across_m)))
     return span, float(share[span])
-
-
-def _position(path: GeodesicPath, along_m: float, across_m: float) -> tuple[float, float]:
-    """Latitude and longitude of a place beside the path."""
-    longitude, latitude, back = WGS84_GEOD.fwd(
-        path.a.longitude_deg, path.a.latitude_deg, path.bearing_ab_deg, max(along_m, 1e-3)
-    )
-    longitude, latitude, _ = WGS84_GEOD.fwd(longitude, latitude, back + 180.0 + 90.0, across_m)
-    return float(latitude), float(longitude)
