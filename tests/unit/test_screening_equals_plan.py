@@ -3,6 +3,7 @@
 from concurrent.futures import ThreadPoolExecutor
 from dataclasses import replace
 from pathlib import Path
+from typing import Any
 
 import numpy as np
 import pytest
@@ -24,6 +25,7 @@ import fellspan.screening.screen as screen
 import fellspan.terrain.many as many
 from fellspan.links.assess import AssessSettings
 from fellspan.links.criteria import Criterion
+from fellspan.screening.near import NearBatch
 from fellspan.screening.pairs import PATH_VERDICTS, STATUSES, Candidates, PairResults
 from fellspan.screening.screen import screen_pairs
 from fellspan.terrain.sources import CoverSource, RasterSource
@@ -195,7 +197,7 @@ def test_rasters_that_disagree_are_refused_as_planning_refuses_them(tmp_path: Pa
     assert {STATUSES[code] for code in found.status} == {"done", "refused"}
 
 
-def test_obstacles_and_survey_send_a_path_to_planning_alone(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+def test_an_obstacle_and_a_surveyed_point_among_paths_that_meet_neither(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     made = candidates(sites("H", 2, seed=31, height_m=30.0), sites("P", 10, seed=32))
     obstacles, survey = tmp_path / "obstacles.csv", tmp_path / "survey.csv"
     mast = made.places.latitude_deg[3], made.places.longitude_deg[3]
@@ -209,8 +211,17 @@ def test_obstacles_and_survey_send_a_path_to_planning_alone(tmp_path: Path, monk
         compared(made, terrain)
         taken = only_arrays(monkeypatch)
         hub, place = every_pair(made)
+        near = NearBatch.__init__
+        rows: list[int] = []
+
+        def counted(self: NearBatch, *given: Any) -> None:
+            rows.extend(given[2].tolist())
+            near(self, *given)
+
+        monkeypatch.setattr(NearBatch, "__init__", counted)
         screen_pairs(made, hub=hub, place=place, terrain=terrain)
-    assert 0 < len(taken) < hub.size
+    assert not taken
+    assert 0 < len(rows) < hub.size
 
 
 def test_pairs_at_one_place_and_sites_that_cannot_be(tmp_path: Path) -> None:

@@ -3,6 +3,7 @@
 Puts the pieces of this room together for pairs on whose paths rasters alone count, and says which pairs are not of that kind.
 """
 
+from collections.abc import Iterator
 from dataclasses import dataclass, field, fields
 from typing import Final
 
@@ -14,10 +15,10 @@ from fellspan.links.assess import REFINE_PARTS
 from fellspan.links.budget import tilts_deg
 from fellspan.screening.columns import Columns
 from fellspan.screening.laid import LaidBucket, pair_columns
-from fellspan.screening.near_index import nearby
+from fellspan.screening.near_index import Nearby, nearby
 from fellspan.screening.own_draws import own_share
 from fellspan.screening.pairs import HEIGHT_REFERENCES, Candidates, SiteColumns
-from fellspan.screening.profiles import FINE_PER_OCTAVE, Profiles, closer, regular, steps_of, width_of
+from fellspan.screening.profiles import FINE_PER_OCTAVE, PER_OCTAVE, Profiles, closer, regular, steps_of, width_of
 from fellspan.screening.rays import CLEAR, JUDGED, MARGINAL, Judged, Rules, closer_look, judged
 from fellspan.screening.signal import SignalColumns, best_sector, signal_columns
 from fellspan.screening.stand import Antennas, Standings, antennas_at, standings
@@ -72,6 +73,9 @@ class Block:
 class Batch:
     """Some rows of the columns, laid on the rasters; `blocks` are to be run in any order and on any thread."""
 
+    per_octave = PER_OCTAVE
+    """Of widths, as `profiles.width_of` has it."""
+
     def __init__(self, setting: Setting, columns: Columns, rows: Index) -> None:
         self._setting, self._columns, self._rows = setting, columns, rows
         candidates = setting.candidates
@@ -93,23 +97,28 @@ class Batch:
         self._fine_m = length / steps_of(length, cell / REFINE_PARTS)
         fit = self._laid.usable & (self._steps >= FEWEST_STEPS) & (self._steps <= LONGEST_STEPS)
         fit &= ~(setting.wrong_hubs[hub] | setting.wrong_places[place])
-        near = self._near_others()
+        self._nearby = self._near_others()
         self.others: Index = rows[~fit]
         """Rows of the columns that must be taken one by one."""
-        self.near: Index = rows[fit & near]
-        """Rows that `NearBatch` takes."""
-        self._fit = fit & ~near
+        near = self._nearby.paths()
+        self._near, self._fit = np.flatnonzero(fit & near), fit & ~near
+
+    def near(self, most: int) -> Iterator[tuple[Index, Nearby]]:
+        """Rows that `NearBatch` takes, and what they are near, so many at a time."""
+        for start in range(0, self._near.size, most):
+            some = self._near[start : start + most]
+            yield self._rows[some], self._nearby.of(some)
 
     def blocks(self) -> list[list[Index]]:
         """The pairs that fit, in parts of one width each, and these in blocks, each for a thread to take."""
         fit = np.flatnonzero(self._fit)
-        width = width_of(self._steps[fit] + 1)
+        width = width_of(self._steps[fit] + 1, per_octave=self.per_octave)
         order = np.argsort(width, kind="stable")
         fit, width = fit[order], width[order]
         blocks: list[list[Index]] = [[]]
         held = 0
         for some in np.split(fit, np.flatnonzero(np.diff(width)) + 1):
-            one = int(width_of(self._steps[some[:1]] + 1)[0]) if some.size else 1
+            one = int(width_of(self._steps[some[:1]] + 1, per_octave=self.per_octave)[0]) if some.size else 1
             for start in range(0, some.size, max(1, NEAR_SAMPLES // one)):
                 part = some[start : start + max(1, NEAR_SAMPLES // one)]
                 if held and held + part.size * one > BLOCK_SAMPLES:
@@ -119,10 +128,10 @@ class Batch:
                 held += part.size * one
         return [block for block in blocks if block]
 
-    def _near_others(self) -> NDArray[np.bool_]:
-        """Pairs whose paths come near an obstacle or a surveyed point."""
+    def _near_others(self) -> Nearby:
+        """The obstacles and surveyed points that paths come near."""
         setting = self._setting
-        return nearby(setting.candidates, setting.many.layers, self._ways, self._hub, self._place).paths()
+        return nearby(setting.candidates, setting.many.layers, self._ways, self._hub, self._place)
 
     def run(self, parts: list[Index]) -> Block:
         """Fill the rows of a block; give those that it could not decide on."""
@@ -130,7 +139,8 @@ class Batch:
         laid: list[LaidBucket] = []
         for which in parts:
             with self._setting.many.in_use():
-                laid += self._geometry(which, int(width_of(self._steps[which] + 1).max()), block)
+                width = width_of(self._steps[which] + 1, per_octave=self.per_octave)
+                laid += self._geometry(which, int(width.max()), block)
         if laid:
             # What is worked out for pairs as a whole is worked out for many at once.
             self._signal(laid, block)

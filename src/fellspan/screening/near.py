@@ -18,7 +18,7 @@ from fellspan.screening.columns import Columns
 from fellspan.screening.laid import LaidBucket
 from fellspan.screening.near_answers import SURVEYED, Beside, Laid, over_beside_m, surveyed_rows
 from fellspan.screening.near_ends import Outlines, near_antennas, near_roof_doubts, near_standings
-from fellspan.screening.near_index import greatest_share, nearby
+from fellspan.screening.near_index import Nearby, greatest_share
 from fellspan.screening.near_overlay import OnPath, Overlaid, ground_at, overlaid
 from fellspan.screening.profiles import Profiles, closer, regular, width_of
 from fellspan.screening.rays import CLEAR, JUDGED, MARGINAL, Judged, Rules, closer_look, judged
@@ -43,7 +43,9 @@ NEAR_PER_OCTAVE: Final = 2
 class NearBatch(Batch):
     """Some rows of the columns, all of them near something."""
 
-    def __init__(self, setting: Setting, columns: Columns, rows: Index) -> None:
+    per_octave = NEAR_PER_OCTAVE
+
+    def __init__(self, setting: Setting, columns: Columns, rows: Index, near: Nearby) -> None:
         super().__init__(setting, columns, rows)
         candidates, layers = setting.candidates, setting.many.layers
         self._supports = SupportGround(layers.ground)
@@ -53,7 +55,6 @@ class NearBatch(Batch):
             bearing_deg=columns.bearing_deg[rows],
             length_m=columns.distance_m[rows],
         )
-        near = nearby(candidates, layers, self._ways, self._hub, self._place)
         self._surveyed = near.surveyed
         obstacles = layers.obstacles
         touched = obstacles.laid(self._starts, near.path, near.obstacle, near.shift_deg, path_of=self._geodesic)
@@ -75,8 +76,8 @@ class NearBatch(Batch):
         for one, top in zip(passed, tops, strict=True):
             self._beside.setdefault(one.path, []).append((one, top))
 
-    def _near_others(self) -> NDArray[np.bool_]:
-        return np.zeros(self._rows.size, dtype=np.bool_)
+    def _near_others(self) -> Nearby:
+        return Nearby.nothing(self._rows.size)
 
     def _geodesic(self, path: int) -> GeodesicPath:
         hubs, places = self._setting.candidates.hubs, self._setting.candidates.places
@@ -97,8 +98,9 @@ class NearBatch(Batch):
         if kept.size == 0:
             return []
         coarse, hits = coarse.rows(kept), [hits[row] for row in kept.tolist()]
-        on = self._stand(coarse, hits)
-        own = [self._distances(coarse, row, one) for row, one in enumerate(on)]
+        places = self._places(coarse)
+        on = self._stand(coarse, hits, places)
+        own = [self._distances(coarse, row, one, places[row]) for row, one in enumerate(on)]
         widths = width_of(np.array([one.size for one in own]), per_octave=NEAR_PER_OCTAVE)
         found: list[LaidBucket] = []
         for one in np.unique(widths).tolist():
@@ -230,13 +232,17 @@ class NearBatch(Batch):
             left |= open_ & (surveyed | ~at_shores)
         return np.asarray(left)
 
-    def _stand(self, coarse: Profiles, hits: Sequence[SurveyHits | None]) -> list[OnPath]:
-        """What stands on each path, with tops settled; ground is asked for once, for all of them."""
-        crossings = [self._crossed.get(path, []) for path in coarse.which.tolist()]
-        places = [
-            [nodes(crossing, max(0.5 * cell, 0.05)) for crossing in some]
-            for some, cell in zip(crossings, coarse.cell_m.tolist(), strict=True)
+    def _places(self, coarse: Profiles) -> list[list[Floats]]:
+        """The nodes of the crossings of each path."""
+        return [
+            [nodes(crossing, max(0.5 * cell, 0.05)) for crossing in self._crossed.get(path, ())]
+            for path, cell in zip(coarse.which.tolist(), coarse.cell_m.tolist(), strict=True)
         ]
+
+    def _stand(
+        self, coarse: Profiles, hits: Sequence[SurveyHits | None], places: Sequence[Sequence[Floats]]
+    ) -> list[OnPath]:
+        """What stands on each path, with tops settled; ground is asked for once, for all of them."""
         flat = [(row, place) for row, some in enumerate(places) for place in some]
         if not flat:
             return [OnPath(hits=one) for one in hits]
@@ -246,9 +252,9 @@ class NearBatch(Batch):
         growth = self._setting.many.layers.growth_years
         on: list[OnPath] = []
         begin = 0
-        for row, some in enumerate(crossings):
+        for row, path in enumerate(coarse.which.tolist()):
             standing: list[Standing] = []
-            for crossing, place in zip(some, places[row], strict=True):
+            for crossing, place in zip(self._crossed.get(path, ()), places[row], strict=True):
                 under = ground[begin : begin + place.size]
                 begin += place.size
                 laid = hits[row]
@@ -266,10 +272,9 @@ class NearBatch(Batch):
             wet = coarse.wet[row_of, _interval(coarse, row_of, at_m)][:, np.newaxis]
         return self._laid.sample(t[:, np.newaxis], coarse.which[row_of], wet=wet).ground_m[:, 0]
 
-    def _distances(self, coarse: Profiles, row: int, on: OnPath) -> Floats:
+    def _distances(self, coarse: Profiles, row: int, on: OnPath, places: Sequence[Floats]) -> Floats:
         """Regular distances of one path with the nodes of obstacles and survey among them, as `PathWork.distances`."""
-        step = max(0.5 * float(coarse.cell_m[row]), 0.05)
-        exact = [nodes(one.crossing, step) for one in on.standing]
+        exact = list(places)
         outside = [(one.crossing.from_m - EDGE_M, one.crossing.to_m + EDGE_M) for one in on.standing]
         beside = [np.array(outside, dtype=np.float64).ravel()]
         if on.hits is not None:

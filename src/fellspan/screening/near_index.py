@@ -32,6 +32,12 @@ class Nearby:
     shift_deg: Floats
     surveyed: NDArray[np.bool_]
 
+    @classmethod
+    def nothing(cls, count: int) -> "Nearby":
+        """So many paths that come near nothing."""
+        none = np.zeros(0, dtype=np.int64)
+        return cls(path=none, obstacle=none, shift_deg=np.zeros(0), surveyed=np.zeros(count, dtype=np.bool_))
+
     def of(self, paths: Index) -> "Nearby":
         """What some of the paths, rising, come near."""
         new = np.full(self.surveyed.size, -1, dtype=np.int64)

@@ -3,8 +3,9 @@
 Splits the pairs by what their paths need and puts the answers together; holds no formula.
 """
 
+from collections.abc import Callable, Iterable
 from concurrent.futures import ThreadPoolExecutor
-from typing import Final
+from typing import Final, TypeVar
 
 import numpy as np
 from numpy.typing import NDArray
@@ -23,6 +24,31 @@ BATCH: Final = 131_072
 """Pairs that are laid out at once."""
 
 
+Item = TypeVar("Item")
+Answer = TypeVar("Answer")
+
+
+class Stopped(Exception):
+    """Screening was told to stop."""
+
+
+class _Pool:
+    """Threads that ask before each part of the work whether to go on."""
+
+    def __init__(self, threads: ThreadPoolExecutor, stopped: Callable[[], bool] | None) -> None:
+        self._threads, self._stopped = threads, stopped
+
+    def map(self, do: Callable[[Item], Answer], items: Iterable[Item]) -> list[Answer]:
+        """The answers, in the order of the items."""
+
+        def one(item: Item) -> Answer:
+            if self._stopped is not None and self._stopped():
+                raise Stopped
+            return do(item)
+
+        return list(self._threads.map(one, items))
+
+
 def screen_pairs(
     candidates: Candidates,
     *,
@@ -30,6 +56,7 @@ def screen_pairs(
     place: NDArray[np.int64],
     terrain: Terrain,
     threads: int = 2,
+    stopped: Callable[[], bool] | None = None,
 ) -> PairResults:
     """Assess pairs of hubs and places, of shape (n,), as planning would assess each of them alone.
 
@@ -43,9 +70,13 @@ def screen_pairs(
         Opened; its trees grown already.
     threads
         How many work at once; the answers do not depend on it.
+    stopped
+        Asked before each part of the work whether to end here.
 
     Raises
     ------
+    Stopped
+        It said so.
     RasterError
         A raster cannot be read; gaps, places that coincide and sites that cannot be are the status of their pairs.
     """
@@ -60,20 +91,21 @@ def screen_pairs(
     )
     _ways(setting, columns)
     rows = np.flatnonzero(columns.status == DONE)
-    with ThreadPoolExecutor(max_workers=threads) as pool:
+    with ThreadPoolExecutor(max_workers=threads) as several:
+        pool = _Pool(several, stopped)
         for start in range(0, rows.size, BATCH):
             batch = Batch(setting, columns, rows[start : start + BATCH])
-            done = list(pool.map(batch.run, batch.blocks()))
+            done = pool.map(batch.run, batch.blocks())
             others = [batch.others]
-            for part in np.split(batch.near, range(NEAR_BATCH, batch.near.size, NEAR_BATCH)):
-                near = NearBatch(setting, columns, part)
+            for part, nearby in batch.near(NEAR_BATCH):
+                near = NearBatch(setting, columns, part, nearby)
                 others.append(near.others)
                 done += pool.map(near.run, near.blocks())
             alone = _sorted([*others, *(rows for block in done for rows in block.one_by_one)])
-            list(pool.map(lambda row: screen_single(candidates, columns, row, terrain=terrain), alone))
+            pool.map(lambda row: screen_single(candidates, columns, row, terrain=terrain), alone)
             unsure = _sorted([rows for block in done for rows in block.unsure])
             unsure = [row for row in unsure if columns.status[row] == DONE]
-            list(pool.map(lambda row: draw_single(candidates, columns, row, terrain=terrain), unsure))
+            pool.map(lambda row: draw_single(candidates, columns, row, terrain=terrain), unsure)
     return columns.results()
 
 
