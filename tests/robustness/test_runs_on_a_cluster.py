@@ -13,6 +13,7 @@ from pathlib import Path
 import fake_engine
 import made_runs
 import pytest
+from made_server import served
 
 pytest.importorskip("distributed")
 
@@ -155,6 +156,41 @@ def test_the_real_engine_on_a_worker_gives_the_bytes_of_a_local_run(tmp_path: Pa
     _, said = real.communicate(timeout=120)
     assert real.returncode == 0, said
     assert made_runs.outputs(tmp_path / "out") == made_runs.outputs(tmp_path / "local")
+
+
+@pytest.mark.slow
+@pytest.mark.timeout(600)
+def test_workers_read_a_raster_behind_a_url_and_refuse_another_one(tmp_path: Path) -> None:
+    made_runs.write_inputs(tmp_path, places=20)
+    (tmp_path / "bucket").mkdir()
+    (tmp_path / "bucket" / "ground.tif").write_bytes((tmp_path / "ground.tif").read_bytes())
+    (tmp_path / "other" / "bucket").mkdir(parents=True)
+    data = (tmp_path / "ground.tif").read_bytes()
+    (tmp_path / "other" / "bucket" / "ground.tif").write_bytes(data[:-4] + bytes(4))
+    study = (tmp_path / "study.toml").read_text(encoding="utf-8")
+    local = made_runs.run_here(tmp_path, *made_runs.arguments("local"), fake=False)
+    assert local.returncode == 0, local.stderr
+    with served(tmp_path) as server:
+        store = {**server.s3_settings(), "no_proxy": "127.0.0.1"}
+        for name, address in (("http", server.url("ground.tif")), ("s3", "s3://bucket/ground.tif")):
+            (tmp_path / f"{name}.toml").write_text(study.replace('"ground.tif"', f'"{address}"'), encoding="utf-8")
+        with cluster(tmp_path, fake=False, workers=2, **store) as (address, _):
+            for name in ("http", "s3"):
+                words = made_runs.arguments(name, "--scheduler", address)
+                words[1] = f"{name}.toml"
+                ran = made_runs.run_here(tmp_path, *words, fake=False, PYTHONWARNINGS="default", **store)
+                assert ran.returncode == 0, ran.stderr
+                assert made_runs.outputs(tmp_path / name) == made_runs.outputs(tmp_path / "local")
+        # workers that read another bucket under the same name
+        with (
+            served(tmp_path / "other") as other,
+            cluster(tmp_path, fake=False, workers=1, **other.s3_settings()) as (address, _),
+        ):
+            words = made_runs.arguments("elsewhere", "--scheduler", address)
+            words[1] = "s3.toml"
+            ran = made_runs.run_here(tmp_path, *words, fake=False, PYTHONWARNINGS="default", **store)
+            assert ran.returncode == 2
+            assert "this worker finds another raster at s3://bucket/ground.tif" in " ".join(ran.stderr.split())
 
 
 @pytest.mark.slow

@@ -368,12 +368,12 @@ def test_a_worker_that_finds_other_files_or_is_another_version_refuses(inputs: P
     from dataclasses import replace
 
     from fellspan.errors import RunError
-    from fellspan.runs.inputs import local_files
+    from fellspan.runs.inputs import files_alike
     from fellspan.study.screening_study import load_screening
 
     found = load_screening(inputs / "study.toml", hubs=inputs / "hubs.csv", places=inputs / "places.csv")
     pairs = PairList(hubs=found.candidates.hubs, places=found.candidates.places)
-    files = local_files(found.study)
+    files = files_alike(found.study)
     assert [Path(name).name for name, _ in files] == ["ground.tif"]
     job = work.job_of(next(pairs.chunks()), found.candidates, study=found.study, run="one", files=files)
     try:

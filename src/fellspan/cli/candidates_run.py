@@ -16,7 +16,7 @@ from fellspan.exports.candidates import JUDGED_ALONE, summary_json
 from fellspan.exports.candidates_folder import CHOSEN, NAMES, write_run
 from fellspan.planning.planner import open_terrain
 from fellspan.quantities import AntennaHeight
-from fellspan.runs.inputs import local_files, run_facts
+from fellspan.runs.inputs import files_alike, run_facts
 from fellspan.runs.listing import PairList
 from fellspan.runs.run import RunPlan, finish_run, locked, open_store
 from fellspan.study.far_places import refuse_far_places
@@ -107,7 +107,7 @@ def _plan(screening: Screening, asked: Asked) -> RunPlan:
         candidates=candidates,
         pairs=pairs,
         facts=facts,
-        files=local_files(screening.study),
+        files=files_alike(screening.study),
         scheduler=asked.scheduler,
         threads=asked.threads,
     )

@@ -70,7 +70,8 @@ class InputFile:
     modified: str
     size: int
     sha256: str
-    """Hex digest; starts with 'partial:' for files over 256 MB, hashed at their start, middle and end only."""
+    """Hex digest; starts with 'partial:' for files over 256 MB, hashed at their start, middle and end only, and with 'server:'
+    or 'sampled:' for what is read over a network (`terrain.remote.RemoteMark`)."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)

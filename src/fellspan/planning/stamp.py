@@ -8,8 +8,11 @@ import hashlib
 from collections.abc import Iterator
 from pathlib import Path
 
+from fellspan.errors import RasterError
 from fellspan.planning.inputs import Study
 from fellspan.planning.plan import InputFile
+from fellspan.terrain.remote import is_remote, shown_address
+from fellspan.terrain.remote_marks import remote_mark
 
 WHOLE_UP_TO_BYTES = 256 * 1024 * 1024
 """Files above this size are hashed at their start, middle and end only."""
@@ -48,7 +51,9 @@ def _named_files(study: Study) -> Iterator[tuple[str, str | Path]]:
 
 
 def _input_file(role: str, named: str | Path) -> InputFile:
-    path = Path(named)
+    if isinstance(named, str):
+        return _address(role, named)
+    path = named
     if not path.exists():
         return InputFile(role=role, name=str(named), modified="", size=0, sha256="not hashed: not a local file")
     try:
@@ -71,6 +76,21 @@ def _file(role: str, path: Path) -> InputFile:
         modified=_moment(stat.st_mtime),
         size=stat.st_size,
         sha256=("partial:" if partly else "") + digest.hexdigest(),
+    )
+
+
+def _address(role: str, address: str) -> InputFile:
+    """What is read over a network: what the server states of it, or a sample, stands for the hash of all bytes."""
+    if not is_remote(address):
+        return _input_file(role, Path(address))
+    try:
+        mark = remote_mark(address)
+    except RasterError as error:
+        return InputFile(
+            role=role, name=shown_address(address), modified="", size=0, sha256=f"not hashed: {error.what[:120]}"
+        )
+    return InputFile(
+        role=role, name=shown_address(address), modified=mark.modified, size=mark.size or 0, sha256=mark.digest
     )
 
 

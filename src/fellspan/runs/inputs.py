@@ -18,6 +18,8 @@ from fellspan.planning.inputs import Study
 from fellspan.planning.plan import InputFile
 from fellspan.planning.stamp import input_files
 from fellspan.runs.listing import PairCount
+from fellspan.terrain.remote import is_remote
+from fellspan.terrain.remote_marks import remote_mark
 from fellspan.terrain.sources import CoverSource, ObstacleSource, RasterSource, SurveySource
 
 _MOST_NAMED: Final = 3
@@ -107,8 +109,14 @@ def _given(role: str, path: Path) -> InputFile:
     return InputFile(role=role, name=path.name, modified="", size=len(data), sha256=hashlib.sha256(data).hexdigest())
 
 
-def local_files(study: Study) -> tuple[tuple[str, int], ...]:
-    """Absolute names and sizes of the study's local terrain files, for workers to compare."""
+def files_alike(study: Study) -> tuple[tuple[str, int | str], ...]:
+    """What workers must find alike: absolute names and sizes of the study's local terrain files, marks of those behind URLs.
+
+    Raises
+    ------
+    RasterError
+        A raster behind a URL cannot be read.
+    """
     terrain = study.terrain
     groups: tuple[Iterable[RasterSource | CoverSource | ObstacleSource | SurveySource], ...] = (
         terrain.ground,
@@ -117,5 +125,11 @@ def local_files(study: Study) -> tuple[tuple[str, int], ...]:
         terrain.obstacles,
         terrain.survey,
     )
-    paths = (Path(source.path) for group in groups for source in group if isinstance(source.path, Path))
-    return tuple((str(path.absolute()), path.stat().st_size) for path in paths if path.is_file())
+    alike: list[tuple[str, int | str]] = []
+    for path in (source.path for group in groups for source in group):
+        if isinstance(path, Path):
+            if path.is_file():
+                alike.append((str(path.absolute()), path.stat().st_size))
+        elif is_remote(path):
+            alike.append((path, remote_mark(path).digest))
+    return tuple(alike)

@@ -41,7 +41,7 @@ class RunPlan:
     candidates: Candidates
     pairs: PairList
     facts: dict[str, str]
-    files: tuple[tuple[str, int], ...] = ()
+    files: tuple[tuple[str, int | str], ...] = ()
     scheduler: str | None = None
     threads: int | None = None
 

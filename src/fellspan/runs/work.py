@@ -20,6 +20,8 @@ from fellspan.planning.planner import open_terrain
 from fellspan.runs.listing import Chunk
 from fellspan.screening.pairs import Candidates, PairResults, Sector, SiteColumns
 from fellspan.screening.screen import screen_pairs
+from fellspan.terrain.remote import shown_address
+from fellspan.terrain.remote_marks import remote_mark
 from fellspan.terrain.terrain import Terrain
 
 BATCH_PAIRS: Final = 4096
@@ -36,8 +38,8 @@ class Stopped(Exception):
 class Job:
     """One chunk with the hubs, sectors and places that its pairs need, and what they are numbered in the whole run.
 
-    `run` names the run, so that a worker knows its terrain again; `files` are the sizes of local files that every worker must
-    find alike.
+    `run` names the run, so that a worker knows its terrain again; `files` are sizes of local files and marks of remote ones,
+    which every worker must find alike.
     """
 
     run: str
@@ -49,11 +51,11 @@ class Job:
     place: Index
     sector: Index
     """What hub, place and sector of `candidates` are in the whole run."""
-    files: tuple[tuple[str, int], ...] = ()
+    files: tuple[tuple[str, int | str], ...] = ()
 
 
 def job_of(
-    chunk: Chunk, candidates: Candidates, *, study: Study, run: str, files: tuple[tuple[str, int], ...] = ()
+    chunk: Chunk, candidates: Candidates, *, study: Study, run: str, files: tuple[tuple[str, int | str], ...] = ()
 ) -> Job:
     """The job of a chunk, with the part of the candidates that it needs."""
     hub, of_hub = np.unique(chunk.hub, return_inverse=True)
@@ -179,8 +181,15 @@ class _Terrains:
 _TERRAINS: Final = _Terrains()
 
 
-def _see_to_files(files: Sequence[tuple[str, int]]) -> None:
+def _see_to_files(files: Sequence[tuple[str, int | str]]) -> None:
     for path, size in files:
+        if isinstance(size, str):
+            if remote_mark(path).digest != size:
+                raise RunError(
+                    f"this worker finds another raster at {shown_address(path)} than the run rests on",
+                    "was it replaced, or do GDAL's variables (such as AWS_S3_ENDPOINT) differ on this machine?",
+                )
+            continue
         try:
             found = os.path.getsize(path)
         except OSError as error:

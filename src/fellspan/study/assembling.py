@@ -33,10 +33,12 @@ from fellspan.study.schema import (
     StudyFile,
     TerrainTable,
 )
+from fellspan.terrain.remote import unknown_scheme
 from fellspan.terrain.sources import CoverSource, ObstacleSource, RasterSource, SurveySource
 
 _Row = TypeVar("_Row", SiteTable, RadioTable, AntennaTable, LinkTable)
 _DEFAULT_MEDIAN_K = 4.0 / 3.0
+_RASTERS = ("ground", "surface", "cover")
 _ELSEWHERE = re.compile(r"[a-z][a-z0-9+.-]+:|/vsi", re.IGNORECASE)
 """A name that the raster library resolves by itself: a URL, a virtual file, a container with a part of it."""
 
@@ -92,6 +94,13 @@ def _median_k(criteria: CriteriaTable) -> float:
     if criteria.gradient is not None:
         return float(k_from_gradient(criteria.gradient))
     return _DEFAULT_MEDIAN_K if criteria.median_k is None else criteria.median_k
+
+
+def address_trouble(text: str, *, raster: bool = True) -> tuple[str, str] | None:
+    """Why a URL cannot serve, known without a network: an unknown scheme, or a file that is no raster; None where it may."""
+    if not raster and ("://" in text or text.startswith("/vsi")):
+        return f"'{text}' is a URL, and of these only rasters are read", "download the file, and give its path"
+    return unknown_scheme(text)
 
 
 def raster_path(text: str, folder: Path) -> str | Path:
@@ -342,6 +351,9 @@ class _Assembler:
 
     def _path(self, key: str, text: str) -> str | Path:
         resolved = raster_path(text, self.folder)
+        wrong = address_trouble(text, raster=key in _RASTERS) if isinstance(resolved, str) else None
+        if wrong is not None:
+            self.problems.append(Problem(key if "." in key else f"terrain.{key}", wrong[0], wrong[1:]))
         if isinstance(resolved, Path) and not resolved.exists():
             self.problems.append(
                 Problem(

@@ -17,10 +17,15 @@ from rasterio.errors import NotGeoreferencedWarning, RasterioError
 from rasterio.io import DatasetReader
 
 from fellspan.errors import RasterError
+from fellspan.terrain import remote
+from fellspan.terrain.remote import is_remote
 
 GDAL_CACHE_MB = 64
 _KEPT_OPEN = 24
 """Handles a thread keeps; a folder may hold thousands of tiles, and systems allow some hundred open files."""
+
+_MOST_PARTS = 100
+_FAULTS = (RasterioError, CPLE_BaseError, OSError)
 
 _warning_filters = threading.Lock()
 _inside = threading.local()
@@ -42,7 +47,7 @@ def gdal() -> Iterator[None]:
 
 def _settings() -> rasterio.Env:
     # without its list of the folder GDAL asks for the few side files by name: in a folder of many tiles far faster
-    return rasterio.Env(GDAL_CACHEMAX=GDAL_CACHE_MB, GDAL_DISABLE_READDIR_ON_OPEN="TRUE")
+    return rasterio.Env(GDAL_CACHEMAX=GDAL_CACHE_MB, GDAL_DISABLE_READDIR_ON_OPEN="TRUE", **remote.settings())
 
 
 @contextmanager
@@ -61,11 +66,6 @@ def gdal_errors(name: str, doing: str) -> Iterator[None]:
         ) from error
 
 
-def is_remote(path: str) -> bool:
-    """True for what is no plain local path: GDAL's virtual systems, URLs, names of subdatasets."""
-    return path.startswith("/vsi") or "://" in path or (":" in path[2:] and not os.path.exists(path))
-
-
 def open_dataset(path: str, name: str) -> DatasetReader:
     """Open a file that may be anything.
 
@@ -74,6 +74,7 @@ def open_dataset(path: str, name: str) -> DatasetReader:
     RasterError
         There is no such file, it is empty, or GDAL does not take it for a raster.
     """
+    remote.see_to_scheme(path)
     if not is_remote(path):
         if not os.path.exists(path):
             raise RasterError(
@@ -82,17 +83,50 @@ def open_dataset(path: str, name: str) -> DatasetReader:
         if os.path.isfile(path) and os.path.getsize(path) == 0:
             raise RasterError(f"{name} is empty (0 bytes)", "copy or download the raster again")
     try:
-        # the filters are the interpreter's, not the thread's: hence the lock
-        with _warning_filters, warnings.catch_warnings():
-            warnings.simplefilter("ignore", NotGeoreferencedWarning)
-            return rasterio.open(path)
-    except (RasterioError, CPLE_BaseError, OSError) as error:
+        return _opened(path)
+    except _FAULTS as error:
+        if remote.is_address(path):
+            return _opened_anew(path, error)
         reason = str(error).split("\n")[0].replace(path, name)
         raise RasterError(
             f"{name} is not a raster that can be opened",
             f"GDAL says: {reason[:160]}",
             "bring a GeoTIFF or another raster that GDAL reads, and check that the file is complete",
         ) from error
+
+
+def forget(path: str) -> None:
+    """Leave nothing in GDAL's memory of what is behind an address, nor of the rasters that a .vrt there names."""
+    try:
+        for part in _opened_and_forgotten(path):
+            _opened_and_forgotten(part)
+    except _FAULTS:
+        return  # whoever opens it next says so
+
+
+def _opened(path: str) -> DatasetReader:
+    # the filters are the interpreter's, not the thread's: hence the lock
+    with _warning_filters, warnings.catch_warnings():
+        warnings.simplefilter("ignore", NotGeoreferencedWarning)
+        return rasterio.open(path)
+
+
+def _opened_anew(path: str, first: Exception) -> DatasetReader:
+    """Ask again: GDAL remembers a server that was not there as a file that is not there."""
+    error = first
+    try:
+        _opened_and_forgotten(path)
+        return _opened(path)
+    except _FAULTS as again:
+        error = again
+    raise remote.refusal(path, str(error).split("\n")[0]) from error
+
+
+def _opened_and_forgotten(path: str) -> list[str]:
+    """The rasters that a .vrt names; empty for others."""
+    with rasterio.Env(**remote.UNCACHED, **remote.settings()), _opened(path) as dataset:
+        named = dataset.files if dataset.driver == "VRT" else []
+        return [part for part in named if part != dataset.name][:_MOST_PARTS]
 
 
 class HandlePool:

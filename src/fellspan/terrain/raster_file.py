@@ -18,6 +18,7 @@ from fellspan.geodesy.geodesic import inverse_many
 from fellspan.geodesy.transforms import WGS84, transformer
 from fellspan.terrain.error_model import default_error_m
 from fellspan.terrain.handles import gdal, gdal_errors, open_dataset
+from fellspan.terrain.remote import shown_address
 from fellspan.terrain.sources import CoverSource, RasterSource
 from fellspan.terrain.units import METRES_PER, metres_per_unit, reference_system
 from fellspan.vocabulary import RasterRole
@@ -250,4 +251,5 @@ def chained(outer: Affine, inner: Affine) -> Affine:
 
 def base_name(path: str) -> str:
     """What to call a raster before people."""
+    path = shown_address(path)
     return os.path.basename(path.rstrip("/\\")) or path

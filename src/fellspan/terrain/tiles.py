@@ -9,8 +9,10 @@ from collections.abc import Sequence
 from typing import Final
 
 from fellspan.errors import RasterError
-from fellspan.terrain.handles import gdal, is_remote
+from fellspan.terrain.handles import gdal
 from fellspan.terrain.raster_file import RasterFile, base_name, read_header
+from fellspan.terrain.remote import is_remote
+from fellspan.terrain.remote_marks import refresh
 from fellspan.terrain.sources import CoverSource, RasterSource
 from fellspan.vocabulary import RasterRole
 
@@ -38,7 +40,10 @@ def open_source(source: RasterSource | CoverSource, *, role: RasterRole) -> list
     path = os.fspath(source.path)
     if not path.strip():
         raise RasterError("the path of a raster is empty", "give a file or a folder of tiles")
-    if is_remote(path) or not os.path.isdir(path) or _is_grid_folder(path):
+    if is_remote(path):
+        refresh(path)
+        return [read_header(source, path=path, name=base_name(path), role=role)]
+    if not os.path.isdir(path) or _is_grid_folder(path):
         return [read_header(source, path=path, name=base_name(path), role=role)]
     found: list[RasterFile] = []
     with gdal():
