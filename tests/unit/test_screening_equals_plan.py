@@ -197,7 +197,7 @@ def test_rasters_that_disagree_are_refused_as_planning_refuses_them(tmp_path: Pa
     assert {STATUSES[code] for code in found.status} == {"done", "refused"}
 
 
-def test_an_obstacle_and_a_surveyed_point_among_paths_that_meet_neither(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+def test_an_obstacle_and_a_surveyed_point_on_few_of_the_paths(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     made = candidates(sites("H", 2, seed=31, height_m=30.0), sites("P", 10, seed=32))
     obstacles, survey = tmp_path / "obstacles.csv", tmp_path / "survey.csv"
     mast = made.places.latitude_deg[3], made.places.longitude_deg[3]
