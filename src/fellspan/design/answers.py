@@ -4,6 +4,7 @@ Shared by the design of heights and by those who ask how sure a link is as plann
 """
 
 import math
+from collections.abc import Sequence
 from typing import Final
 
 from fellspan.design.boundary import Boundary
@@ -31,7 +32,8 @@ def answers_of(case: Case, ground: Ground, heights: HeightSettings) -> Answers:
     kinds: tuple[HeightKind, ...] = ("a alone", "b alone", "equal", "alike", "least total")
     if heights.counts_cost:
         kinds = (*kinds, "least cost")
-    return {kind: exact_answer(case, kind, ground, heights) for kind in kinds}
+    boundaries = [Boundary.over(case.share, rules.most_m) for rules in case.rules]
+    return {kind: exact_answer(case, kind, ground, heights, boundaries=boundaries) for kind in kinds}
 
 
 def draws_near(case: Case, answers: Answers, model: ErrorModel) -> Draws:
@@ -79,11 +81,15 @@ def ground_of(case: Case, heights: HeightSettings) -> Ground:
     )
 
 
-def exact_answer(case: Case, kind: HeightKind, ground: Ground, heights: HeightSettings) -> Levels | None:
-    """The exact answer under the rules that apply at it; lowered further where lower heights bring milder rules."""
+def exact_answer(
+    case: Case, kind: HeightKind, ground: Ground, heights: HeightSettings, *, boundaries: Sequence[Boundary]
+) -> Levels | None:
+    """The exact answer under the rules that apply at it; lowered further where lower heights bring milder rules.
+
+    `boundaries` are those of `case.rules`.
+    """
     levels: Levels | None = None
-    for rules in case.rules:
-        boundary = Boundary.over(case.share, rules.most_m)
+    for rules, boundary in zip(case.rules, boundaries, strict=True):
         levels = exact(kind, boundary, case.share, rules.most_m, ground, heights)
         if levels is None or case.rules_at(*levels) is rules:
             return levels

@@ -28,6 +28,8 @@ MOST_POINTS: Final = 240
 """Samples drawn at most: more would not fit into the time, and thinner ones are made up for (`_overshoot_m`)."""
 NEAR: Final = 3.6
 """Samples with this many standard errors to spare at the lowest workable heights are left out."""
+OVERSHOOT: Final = 0.5826
+"""Of Siegmund's continuity correction (from memory)."""
 LEAST_M: Final = 1e-3
 """Errors of cover or by a shift that are smaller anywhere are left out there, m."""
 
@@ -293,4 +295,4 @@ def _overshoot_m(case: Case, sigma_m: Floats, points: NDArray[np.intp], spacing_
     """
     own = np.gradient(case.profile.distance_m)[points]
     missed = np.sqrt(2.0 * spacing_m / model.ground_reach_m) - np.sqrt(2.0 * own / model.ground_reach_m)
-    return np.asarray(np.where(spacing_m > 1.01 * own, 0.5826 * sigma_m * np.maximum(missed, 0.0), 0.0))
+    return np.asarray(np.where(spacing_m > 1.01 * own, OVERSHOOT * sigma_m * np.maximum(missed, 0.0), 0.0))

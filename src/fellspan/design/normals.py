@@ -42,4 +42,7 @@ _OF: dict[int, Normals] = {}
 
 def normals(seed: int, count: int) -> NDArray[np.float32]:
     """The first `count` unit normals of a seed, (count,), read only; those of a seed used before are kept."""
-    return _OF.setdefault(seed, Normals(seed)).first(count)
+    kept = _OF.get(seed)
+    if kept is None:
+        kept = _OF.setdefault(seed, Normals(seed))
+    return kept.first(count)

@@ -1,7 +1,7 @@
-"""Bounds of what drawn errors do to clear pairs, and draws of them, path by path and compiled.
+"""Draws of the errors along many paths, until their share tells on which side of what is asked planning's own share lies.
 
-The errors are those of `design.draws`, taken apart at every sample; the draws themselves are `design.draws_kernel`'s. A path's
-numbers depend on nothing but the path. A path's own samples are columns 0 to `last` - 1 and the very last column.
+The samples are chosen as `design.draws` chooses them, near the heights as planned alone; the draws are `design.draws_kernel`'s.
+A path's numbers depend on nothing but the path.
 
 This module imports numba; import it where it is called. Knows no rasters, no rules and no columns of answers.
 """
@@ -13,194 +13,99 @@ import numpy as np
 from numpy.typing import NDArray
 
 from fellspan.design import draws_kernel as drawing
-from fellspan.design.draws import LEAST_M, NEAR
-from fellspan.propagation.constants import EARTH_RADIUS_M
+from fellspan.design.draws import LEAST_M, MOST_POINTS, NEAR, OVERSHOOT
+from fellspan.screening.errors_kernel import (
+    AT,
+    COVER,
+    COVER_REACH,
+    CURVE,
+    FROM_A,
+    FROM_B,
+    GRADIENT,
+    GROUND,
+    PARTS,
+    POSITION,
+    REACH,
+    SIGMA,
+    SLOPE,
+    SPARE,
+    Codes,
+    Flags,
+    Floats,
+    Index,
+    taken_apart,
+    to_spare,
+)
 from fellspan.terrain.compiling import compiled
 
-Floats = NDArray[np.float64]
-Index = NDArray[np.int64]
-Flags = NDArray[np.bool_]
-Codes = NDArray[np.int16]
-
-(AT, HEIGHT, SPARE, GROUND, COVER, SLOPE, CURVE, FROM_A, FROM_B, SIGMA) = range(10)
-PARTS: Final = 10
-"""Rows of what is worked out of a path: distance, height of the ground and height to spare, m; errors of ground and cover, m;
-slope; bulge at k = 1, m; what the errors at A and at B do here, m; standard error of the clearance, m."""
-(REACH, COVER_REACH, POSITION, GRADIENT) = range(4)
-"""Columns of an error model: reaches of ground and cover, m, position error, m, error of 1/k."""
-BEYOND: Final = 7.0
-"""Samples with so many standard errors to spare do not fail: one draw in 10^12."""
-WORTH: Final = 6.0
-"""Samples with so many to spare are not drawn: one draw in 10^9."""
 FIRST: Final = 256
 """Draws, and as many mirrored ones, that are made at a time."""
 (UNSURE, HOLDS, FALLS) = range(3)
 
 
 @compiled
-def _height_at(parts: Floats, count: int, at: float, near: int) -> float:
-    """Height of the ground between samples; `near` is one close by."""
-    j = near
-    while j > 0 and parts[AT, j] > at:
-        j -= 1
-    while j < count - 2 and parts[AT, j + 1] < at:
-        j += 1
-    before, after = parts[AT, j], parts[AT, j + 1]
-    return float(parts[HEIGHT, j] + (parts[HEIGHT, j + 1] - parts[HEIGHT, j]) * (at - before) / (after - before))
+def _gap(parts: Floats, points: Index, count: int, i: int) -> float:
+    """How far point `i` stands for: half of what lies between its neighbours."""
+    low, high = max(i - 1, 0), min(i + 1, count - 1)
+    return float((parts[AT, points[high]] - parts[AT, points[low]]) / max(high - low, 1))
 
 
 @compiled
-def _ground_errors(parts: Floats, count: int, sigma: Floats, bare: Flags, source: Codes, seen: Index) -> None:
-    """Error of the ground as `design.draws` has it: of the nearest bare sample of the same source, the stated one at most."""
-    for i in range(count):  # the last bare one at or before each
-        seen[i] = i if bare[i] else -1
-        j = i - 1
-        while seen[i] < 0 <= j:
-            if source[j] == source[i]:
-                seen[i] = seen[j]
-                break
-            j -= 1
-    after = np.empty(count, np.int64)
-    for i in range(count - 1, -1, -1):
-        after[i] = i if bare[i] else -1
-        j = i + 1
-        while after[i] < 0 and j < count:
-            if source[j] == source[i]:
-                after[i] = after[j]
-                break
-            j += 1
-        best = seen[i] if seen[i] >= 0 else after[i]
-        if seen[i] >= 0 and after[i] >= 0 and parts[AT, after[i]] - parts[AT, i] < parts[AT, i] - parts[AT, seen[i]]:
-            best = after[i]
-        parts[GROUND, i] = min(sigma[best], sigma[i]) if best >= 0 else sigma[i]
+def _thinned(parts: Floats, kept: Index, nearness: Floats, width: float, chosen: Index) -> int:
+    """Write the nearest of the `kept` samples in each bin, wider where farther from governing, rising; give how many."""
+    best = np.full(int(parts[AT, kept[-1]] / width) + 2, -1)
+    for k in range(kept.size):
+        i = kept[k]
+        wide = 1.0 if nearness[i] < 1.0 else 2.0 if nearness[i] < 2.0 else 4.0
+        own = math.floor(parts[AT, i] / (width * wide))
+        if best[own] < 0 or nearness[i] < nearness[best[own]]:
+            best[own] = i
+    found = np.sort(best[best >= 0])
+    chosen[: found.size] = found
+    return int(found.size)
 
 
 @compiled
-def _taken_apart(
-    row: int,
-    count: int,
-    distance: Floats,
-    ground: Floats,
-    spare: Floats,
-    cover: Floats,
-    bared: Flags,
-    sigma: Floats,
-    source: Codes,
-    cell: float,
-    a: float,
-    b: float,
-    model: Floats,
-    parts: Floats,
-) -> None:
-    """Write the parts of one path, (PARTS, n). Where much is to spare the standard error may come out too great."""
-    width = distance.shape[1]
-    error, bare, codes = np.empty(count), np.ones(count, np.bool_), np.zeros(count, np.int16)
-    for i in range(count):
-        column = width - 1 if i == count - 1 else i
-        parts[AT, i], parts[HEIGHT, i] = distance[row, column], ground[row, column]
-        parts[SPARE, i] = spare[row, column]
-        error[i] = sigma[row, column if sigma.shape[1] > 1 else 0]
-        codes[i] = source[row, column if source.shape[1] > 1 else 0]
-        if cover.shape[1] > 0:
-            bare[i] = cover[row, column] == 0.0
-        parts[GROUND, i] = error[i]
-    if cover.shape[1] > 0:
-        _ground_errors(parts, count, error, bare, codes, np.empty(count, np.int64))
-    length, half = parts[AT, count - 1], max(0.5 * cell, 1e-6)
-    reach, position, gradient = model[REACH], model[POSITION], model[GRADIENT]
-    ends = math.exp(-length / reach)
-    for i in range(count):
-        at, own = parts[AT, i], parts[GROUND, i]
-        total = error[i]
-        if bared.shape[1] > 0 and bared[row, width - 1 if i == count - 1 else i]:
-            total = own
-        parts[COVER, i] = math.sqrt(max(total * total - own * own, 0.0))
-        low, high = max(at - half, 0.0), min(at + half, length)
-        rise = _height_at(parts, count, high, i) - _height_at(parts, count, low, i)
-        # What is known exactly does not move with a shift along the path.
-        slope = rise / (high - low) if total > 0.0 else 0.0
-        curve = at * (length - at) / (2.0 * EARTH_RADIUS_M)
-        from_a, from_b = (1.0 - at / length) * a, at / length * b
-        rest = parts[COVER, i] ** 2 + 2.0 * (slope * position) ** 2 + (curve * gradient) ** 2
-        variance = (own + from_a + from_b) ** 2 + rest
-        if parts[SPARE, i] < BEYOND * math.sqrt(variance):
-            shared = from_a * math.exp(-at / reach) + from_b * math.exp(-(length - at) / reach)
-            variance = own * own + from_a * from_a + from_b * from_b - 2.0 * own * shared
-            variance += 2.0 * from_a * from_b * ends + rest
-        parts[SLOPE, i], parts[CURVE, i] = slope, curve
-        parts[FROM_A, i], parts[FROM_B, i] = from_a, from_b
-        parts[SIGMA, i] = math.sqrt(max(variance, 0.0))
+def _chosen(parts: Floats, count: int, tolerance: float, points: Index, spare: Floats, reach: float) -> int:
+    """Write the samples to draw, both ends among them, and what they have to spare; give how many.
 
-
-@compiled
-def _to_spare(parts: Floats, i: int, tolerance: float) -> float:
-    """Standard errors to spare at a sample."""
-    if parts[SIGMA, i] > 0.0:
-        return float(parts[SPARE, i] / parts[SIGMA, i])
-    return math.inf if parts[SPARE, i] >= -tolerance else -math.inf
-
-
-@compiled
-def bound(
-    which: Index,
-    last: Index,
-    distance: Floats,
-    ground: Floats,
-    spare: Floats,
-    cover: Floats,
-    bared: Flags,
-    sigma: Floats,
-    source: Codes,
-    cell: Floats,
-    a: Floats,
-    b: Floats,
-    models: Floats,
-    tolerance: float,
-    worst: Floats,
-    together: Floats,
-) -> None:
-    """Write the probability that the worst sample fails, and the sum of those of all samples, (m,), of the paths `which`.
-
-    Parameters
-    ----------
-    last, cell, a, b, models
-        (q,) and (q, 4): index of the last sample, finest cell, m, errors of the antennas' levels, m, and error models.
-    distance, ground, spare, cover, bared, sigma, source
-        (q, n); `sigma` and `source` (q, 1) where they are one all along, `cover` and `bared` (q, 0) where there is none.
+    As `design.draws` chooses them, and makes up for those that it leaves out.
     """
-    parts = np.empty((PARTS, distance.shape[1]))
-    for m in range(which.size):
-        row = which[m]
-        count = last[row] + 1
-        _taken_apart(
-            row, count, distance, ground, spare, cover, bared, sigma, source, cell[row], a[row], b[row], models[row], parts
-        )  # fmt: skip
-        worst[m] = together[m] = 0.0
-        for i in range(count):
-            z = _to_spare(parts, i, tolerance)
-            if z < BEYOND:
-                fails = 0.5 * math.erfc(z / math.sqrt(2.0))
-                worst[m] = max(worst[m], fails)
-                together[m] += fails
+    nearness = np.empty(count)
+    for i in range(count):
+        nearness[i] = to_spare(parts, i, tolerance)
+    nearness = np.round(nearness - nearness.min(), 6)
+    kept = np.flatnonzero(nearness < NEAR)
+    everyone = np.arange(count)
+    gaps = np.empty(count)
+    for i in range(count):
+        gaps[i] = _gap(parts, everyone, count, i)
+    chosen, found, width = kept.copy(), kept.size, float(np.median(gaps))
+    while kept.size > MOST_POINTS:
+        found = _thinned(parts, kept, nearness, width, chosen)
+        if found <= MOST_POINTS:
+            break
+        width *= 1.5
+    total = 0
+    for k in range(found + 2):
+        i = 0 if k == 0 else count - 1 if k == found + 1 else chosen[k - 1]
+        if total == 0 or i > points[total - 1]:
+            points[total] = i
+            total += 1
+    for k in range(total):
+        own = gaps[points[k]]
+        spacing = max(min(_gap(parts, points, total, k), 4.0 * width), own) if found < kept.size else own
+        spare[k] = parts[SPARE, points[k]]
+        if spacing > 1.01 * own:
+            missed = math.sqrt(2.0 * spacing / reach) - math.sqrt(2.0 * own / reach)
+            spare[k] -= OVERSHOOT * parts[SIGMA, points[k]] * max(missed, 0.0)
+    return total
 
 
 @compiled
-def _chosen(parts: Floats, count: int, tolerance: float, points: Index) -> int:
-    """Write the samples that can fail, both ends among them, and give how many."""
-    least = math.inf
-    for i in range(count):
-        least = min(least, _to_spare(parts, i, tolerance))
-    found = 0
-    for i in range(count):
-        z = _to_spare(parts, i, tolerance)
-        if i in (0, count - 1) or (z - least < NEAR and z < WORTH):
-            points[found] = i
-            found += 1
-    return found
-
-
-@compiled
-def _sized(parts: Floats, points: Index, count: int, model: Floats, sizes: NDArray[np.float32], rows: Index) -> int:
+def _sized(
+    parts: Floats, points: Index, spare: Floats, count: int, model: Floats, sizes: NDArray[np.float32], rows: Index
+) -> int:
     """Write what `drawing.failing` takes of the samples, and give how many rows of numbers come before the common ones."""
     row = count
     for i in range(count):
@@ -212,7 +117,7 @@ def _sized(parts: Floats, points: Index, count: int, model: Floats, sizes: NDArr
         sizes[i, drawing.AT_A], sizes[i, drawing.AT_B] = -parts[FROM_A, at], -parts[FROM_B, at]
         sizes[i, drawing.ALONG] = parts[SLOPE, at] * model[POSITION]
         sizes[i, drawing.CURVE] = parts[CURVE, at] * model[GRADIENT]
-        sizes[i, drawing.SPARE] = parts[SPARE, at]
+        sizes[i, drawing.SPARE] = spare[i]
     for field in range(2):
         kind, of, scale = (COVER, COVER_REACH, 1.0) if field == 0 else (SLOPE, REACH, model[POSITION])
         first = drawing.KEEP_COVER if field == 0 else drawing.KEEP_SHIFT
@@ -290,16 +195,16 @@ def draw(
         (m,), written: UNSURE, HOLDS or FALLS; the share that holds; draws made, and mirrored ones; samples drawn.
     """
     width = distance.shape[1]
-    parts, points = np.empty((PARTS, width)), np.empty(width, np.int64)
+    parts, points, left = np.empty((PARTS, width)), np.empty(width, np.int64), np.empty(width)
     sizes, rows = np.zeros((width, drawing.COLUMNS), np.float32), np.empty((width, 2), np.int64)
     for m in range(which.size):
         row = which[m]
-        _taken_apart(
+        taken_apart(
             row, last[row] + 1, distance, ground, spare, cover, bared, sigma, source, cell[row], a[row], b[row],
             models[row], parts,
         )  # fmt: skip
-        count = _chosen(parts, last[row] + 1, tolerance, points)
-        common = _sized(parts, points, count, models[row], sizes, rows)
+        count = _chosen(parts, last[row] + 1, tolerance, points, left, models[row, REACH])
+        common = _sized(parts, points, left, count, models[row], sizes, rows)
         block = (common + 2) * FIRST
         fails = twice = done = 0
         found = UNSURE

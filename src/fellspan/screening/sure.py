@@ -27,6 +27,8 @@ ALLOWANCE: Final = 6.0
 """Standard errors of the share of the draws by which a bound must keep off the confidence asked: one pair in 10^9 passes."""
 THINNED: Final = 0.02
 """And so much more where a path has more samples than are drawn: an estimate makes up for the others (our own rule)."""
+THINNED_ALIKE: Final = 0.006
+"""The same for draws at samples thinned as planning thins them, but for the heights that it looks for (our own rule)."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -66,8 +68,9 @@ class _Paths:
     """What the errors of paths are made of, as the kernels take it."""
 
     arrays: tuple[NDArray[np.generic], ...]
-    """In the order in which `draws_kernel.bound` and `draw` take them."""
-    thinned: Floats
+    """In the order in which `errors_kernel.bound` and `draw` take them."""
+    thinned: NDArray[np.bool_]
+    """Whether planning may leave samples out."""
 
     @classmethod
     def of(cls, spare_m: Floats, profiles: Profiles, stands: Standings, errors: HeightErrors) -> "_Paths":
@@ -93,18 +96,18 @@ class _Paths:
                 errors.b_m,
                 np.array(numbers)[kind],
             ),
-            thinned=np.where(profiles.last >= MOST_POINTS, THINNED, 0.0),
+            thinned=profiles.last >= MOST_POINTS,
         )
 
     def bounds(self, which: Index, confidence: float) -> tuple[Floats, Floats]:
         """The least and the most that drawn errors leave of the probability that all rules hold, and room for their scatter."""
-        from fellspan.screening import draws_kernel
+        from fellspan.screening import errors_kernel
 
         worst, together = np.empty(which.size), np.empty(which.size)
-        self._over(draws_kernel.bound, which, worst, together)
+        self._over(errors_kernel.bound, which, worst, together)
         # Half of the draws mirror the other half, so that their share may scatter by up to the root of two more.
         scatter = ALLOWANCE * math.sqrt(2.0 * confidence * (1.0 - confidence) / DRAWS)
-        off = scatter + self.thinned[which]
+        off = scatter + THINNED * self.thinned[which]
         return 1.0 - together - off, 1.0 - worst + off
 
     def drawn(self, which: Index, confidence: float) -> tuple[NDArray[np.int8], Floats, Index]:
@@ -120,7 +123,7 @@ class _Paths:
             1.0 - confidence,
             ALLOWANCE,
             DRAWS,
-            self.thinned[which],
+            THINNED_ALIKE * self.thinned[which],
             verdict,
             share,
             made,
