@@ -5,6 +5,7 @@
 
 import os
 import time
+from collections.abc import Callable
 
 import numpy as np
 from numpy.typing import NDArray
@@ -16,7 +17,13 @@ SLOW = "FELLSPAN_TEST_SECONDS_A_BATCH"
 
 
 def screen_pairs(
-    candidates: Candidates, *, hub: NDArray[np.int64], place: NDArray[np.int64], terrain: object, threads: int = 2
+    candidates: Candidates,
+    *,
+    hub: NDArray[np.int64],
+    place: NDArray[np.int64],
+    terrain: object,
+    threads: int = 2,
+    stopped: Callable[[], bool] | None = None,
 ) -> PairResults:
     """Every kind of answer: verdicts, gaps, refusals, numbers that are none and infinite ones."""
     assert terrain is not None

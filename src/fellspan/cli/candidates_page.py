@@ -33,8 +33,13 @@ def page_lines(
     return lines
 
 
+def counted(count: int) -> str:
+    """A number with its thousands apart."""
+    return f"{count:,}".replace(",", " ")
+
+
 def _many(count: int, what: str) -> str:
-    return f"{count:,} {what}{'' if count == 1 else 's'}".replace(",", " ")
+    return f"{counted(count)} {what}{'' if count == 1 else 's'}"
 
 
 def _places(summary: RunSummary, ink: Ink) -> list[str]:

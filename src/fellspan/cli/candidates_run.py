@@ -9,11 +9,13 @@ from typing import Final
 
 import typer
 
-from fellspan.cli.candidates_page import page_lines
+from fellspan.cli.candidates_page import counted, page_lines
 from fellspan.cli.layout import WIDTH, Ink, colours_wanted, cut, printable
+from fellspan.cli.stopping import stopping_at_signals
+from fellspan.cli.telling import tell
 from fellspan.errors import UsageError
 from fellspan.exports.candidates import JUDGED_ALONE, summary_json
-from fellspan.exports.candidates_folder import CHOSEN, NAMES, write_run
+from fellspan.exports.candidates_folder import CHOSEN, NAMES, drop_parts, write_run
 from fellspan.planning.planner import open_terrain
 from fellspan.quantities import AntennaHeight
 from fellspan.runs.inputs import files_alike, run_facts
@@ -46,6 +48,19 @@ class Asked:
 
 def run_candidates(asked: Asked) -> None:
     """Run, or go on with, a run over pairs; then write its files and print its summary."""
+    progress = _Progress()
+
+    def stopped() -> None:
+        if progress.at_work:
+            drop_parts(asked.out)
+        progress.clear()
+        tell(f"fellspan: {progress.stopped_text(fresh=asked.fresh)}")
+
+    with stopping_at_signals(stopped):
+        _run(asked, progress)
+
+
+def _run(asked: Asked, progress: "_Progress") -> None:
     screening = load_screening(
         asked.study, hubs=asked.hubs, places=asked.places, pairs=asked.pairs, wishes=asked.wishes
     )
@@ -56,9 +71,9 @@ def run_candidates(asked: Asked) -> None:
     with (
         locked(asked.out),
         open_store(asked.out, plan, fresh=asked.fresh, outputs=NAMES) as store,
-        _Progress() as progress,
+        progress,
     ):
-        finish_run(store, plan, watcher=progress, note=_tell)
+        finish_run(store, plan, watcher=progress, note=lambda note: tell(f"fellspan: {note}"))
         summary = write_run(asked.out, store, screening, keep=asked.best, notes=notes, tell=progress.writing)
     if asked.as_json:
         typer.echo(summary_json(summary, title=screening.study.title, notes=notes), nl=False)
@@ -72,10 +87,6 @@ def run_candidates(asked: Asked) -> None:
         ink=Ink(colours=colours_wanted()),
     )
     typer.echo("\n".join(lines))
-
-
-def _tell(note: str) -> None:
-    typer.echo(f"fellspan: {note}", err=True)
 
 
 def _plan(screening: Screening, asked: Asked) -> RunPlan:
@@ -140,18 +151,21 @@ class _Progress:
     def __init__(self) -> None:
         self._watched = sys.stderr.isatty()
         self._lock = threading.Lock()
-        self._all = self._before = self._now = 0
+        self._all = self._before = self._now = self._kept = 0
         self._started = self._told = 0.0
+        self.at_work = False
+        """Whether the folder is ours."""
 
     def __enter__(self) -> "_Progress":
+        self.at_work = True
         return self
 
     def __exit__(self, *_: object) -> None:
-        self._clear()
+        self.clear()
 
     def begin(self, pairs: int, done: int) -> None:
         """So many pairs in all, and so many of them from earlier."""
-        self._all, self._before, self._started = pairs, done, time.monotonic()
+        self._all, self._before, self._kept, self._started = pairs, done, done, time.monotonic()
         self._show(self._started)
 
     def done(self, pairs: int) -> None:
@@ -162,9 +176,22 @@ class _Progress:
             if now - self._told >= _EVERY_S:
                 self._show(now)
 
+    def kept(self, pairs: int) -> None:
+        """So many pairs more are in the store."""
+        self._kept += pairs
+
     def writing(self, name: str) -> None:
         """A file is being written."""
         self._put(f"writing {name}")
+
+    def stopped_text(self, *, fresh: bool) -> str:
+        """What is kept of a run that is stopped now, and how to go on."""
+        if not self.at_work:
+            return "stopped before any pair was judged"
+        again = "without --fresh it" if fresh else "the same command"
+        if self._all and self._kept == self._all:
+            return f"stopped; all {counted(self._all)} pairs kept; {again} writes the files"
+        return f"stopped; {counted(self._kept)} of {counted(self._all)} pairs kept; {again} goes on"
 
     def _show(self, now: float) -> None:
         self._told = now
@@ -175,7 +202,8 @@ class _Progress:
             sys.stderr.write(f"\r\x1b[K{cut(printable(text), WIDTH - 1)}")
             sys.stderr.flush()
 
-    def _clear(self) -> None:
+    def clear(self) -> None:
+        """Take the line away."""
         if self._watched:
             sys.stderr.write("\r\x1b[K")
             sys.stderr.flush()

@@ -97,6 +97,17 @@ def _chosen(screening: Screening, summary: RunSummary, folder: Path) -> str:
         return ""
 
 
+def drop_parts(folder: Path) -> None:
+    """Remove what a writer that is stopped has begun; for the run that works in the folder."""
+    for name in NAMES:
+        with suppress(OSError):
+            _part_of(folder, name).unlink(missing_ok=True)
+
+
+def _part_of(folder: Path, name: str) -> Path:
+    return folder / f".{name}{_PART}"
+
+
 def write_files_of_run(folder: Path, writers: Mapping[str, Write], *, tell: Callable[[str], None]) -> None:
     """Write files by their writers, in order; an old file of `NAMES` that has no writer, or nothing to say, is removed."""
     parts: dict[str, Path] = {}
@@ -104,7 +115,7 @@ def write_files_of_run(folder: Path, writers: Mapping[str, Write], *, tell: Call
     try:
         for name, write in writers.items():
             tell(name)
-            parts[name] = folder / f".{name}{_PART}"
+            parts[name] = _part_of(folder, name)
             with parts[name].open("w", encoding="utf-8", newline="\n") as stream:
                 if write(stream) is False:
                     left_out.add(name)

@@ -24,13 +24,16 @@ LOCK_NAME: Final = ".fellspan-run.lock"
 
 
 class Watcher(Protocol):
-    """Told of a run's progress: `begin` once, `done` from any thread, with a number of pairs."""
+    """Told of a run's progress: `begin` once, `done` from any thread, with a number of pairs; `kept` as they are committed."""
 
     def begin(self, pairs: int, done: int) -> None:
         """So many pairs in all, and so many of them from earlier."""
 
     def done(self, pairs: int) -> None:
         """So many pairs more are worked out."""
+
+    def kept(self, pairs: int) -> None:
+        """So many pairs more are in the store."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -153,6 +156,7 @@ def finish_run(store: Store, run: RunPlan, *, watcher: Watcher, note: Callable[[
     with closing(done):
         for chunk, results in done:
             store.commit(chunk, results)
+            watcher.kept(results.hub.size)
 
 
 def _jobs(run: RunPlan, finished: set[int]) -> Iterator[tuple[Chunk, Job]]:

@@ -19,7 +19,7 @@ from fellspan.planning.inputs import Study
 from fellspan.planning.planner import open_terrain
 from fellspan.runs.listing import Chunk
 from fellspan.screening.pairs import Candidates, PairResults, Sector, SiteColumns
-from fellspan.screening.screen import screen_pairs
+from fellspan.screening.screen import Stopped, screen_pairs
 from fellspan.terrain.remote import shown_address
 from fellspan.terrain.remote_marks import remote_mark
 from fellspan.terrain.terrain import Terrain
@@ -28,10 +28,6 @@ BATCH_PAIRS: Final = 4096
 """Pairs given to the engine at a time, the same everywhere; between two of them a run can be stopped."""
 
 Index = NDArray[np.int64]
-
-
-class Stopped(Exception):
-    """The run was told to stop in the middle of a chunk."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -102,7 +98,7 @@ def work(
 ) -> PairResults:
     """The results of a chunk, numbered as in the whole run.
 
-    `stopped` is asked between batches, `tell` is called with the number of pairs of each batch that is done.
+    `stopped` is asked between parts of the work, `tell` is called with the number of pairs of each batch that is done.
 
     Raises
     ------
@@ -126,7 +122,7 @@ def work(
         part = slice(start, start + BATCH_PAIRS)
         hub, place = job.chunk.hub[part], job.chunk.place[part]
         # one thread: chunks already keep all cores busy
-        done.append(screen_pairs(job.candidates, hub=hub, place=place, terrain=terrain, threads=1))
+        done.append(screen_pairs(job.candidates, hub=hub, place=place, terrain=terrain, threads=1, stopped=stopped))
         if tell is not None:
             tell(done[-1].hub.size)
     together = joined(done)
