@@ -146,6 +146,27 @@ def test_one_worker_is_killed_midway_and_the_bytes_are_those_of_a_local_run(tmp_
 
 @pytest.mark.slow
 @pytest.mark.timeout(600)
+def test_an_interrupted_run_leaves_the_cluster_at_once_and_goes_on_here(tmp_path: Path) -> None:
+    made_runs.write_inputs(tmp_path, places=PLACES)
+    with cluster(tmp_path, fake=True, **{fake_engine.SLOW: "0.3"}) as (address, _):
+        process = run_on(address, tmp_path, "out", fake=True)
+        wait_for_chunks(tmp_path / "out" / "candidates.sqlite", 3, process)
+        process.send_signal(signal.SIGINT)
+        began = time.monotonic()
+        _, said = process.communicate(timeout=60)
+        # a busy machine gets some seconds more than the two that it takes
+        assert time.monotonic() - began < 6.0
+        assert process.returncode == 130, said
+        kept = chunks_in(tmp_path / "out" / "candidates.sqlite") * CHUNK
+        assert said == f"fellspan: stopped; {kept} of {2 * PLACES} pairs kept; the same command goes on\n"
+    for out in ("out", "local"):
+        done = made_runs.run_here(tmp_path, *made_runs.arguments(out, "--chunk", str(CHUNK)))
+        assert done.returncode == 0, done.stderr
+    assert made_runs.outputs(tmp_path / "out") == made_runs.outputs(tmp_path / "local")
+
+
+@pytest.mark.slow
+@pytest.mark.timeout(600)
 def test_the_real_engine_on_a_worker_gives_the_bytes_of_a_local_run(tmp_path: Path) -> None:
     made_runs.write_inputs(tmp_path, places=20)
     with cluster(tmp_path, fake=False, workers=1) as (address, _):
