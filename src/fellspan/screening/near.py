@@ -57,7 +57,7 @@ class NearBatch(Batch):
         )
         self._surveyed = near.surveyed
         obstacles = layers.obstacles
-        touched = obstacles.laid(self._starts, near.path, near.obstacle, near.shift_deg, path_of=self._geodesic)
+        touched = obstacles.laid(self._starts, near.path, near.obstacle, near.shift_deg)
         self._crossed = obstacles.crossed(touched, self._starts)
         self._beside: dict[int, list[Beside]] = {}
         passed = passed_by(

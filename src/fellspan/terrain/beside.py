@@ -117,14 +117,22 @@ def passed_by(
     """
     length = length_m[touched.path]
     reach = np.array([obstacles[one].reach_m for one in touched.obstacle.tolist()])
+    widest = np.minimum(BESIDE_M, 0.5 * most_share * np.sqrt(length))
+    bounds = shapely.bounds(touched.plane).reshape(-1, 4)
+    with np.errstate(invalid="ignore"):  # NaN: nothing is left of a shape that was cut
+        may = np.flatnonzero((bounds[:, 1] - reach <= widest) & (bounds[:, 3] + reach >= -widest))
+    if may.size < length.size:
+        touched = touched.rows(may)
+        length, reach, widest = length[may], reach[may], widest[may]
     points, of = shapely.get_coordinates(_divided(touched.plane, length), return_index=True)
-    along, across = points[:, 0], points[:, 1]
-    offset = np.maximum(np.abs(across) - reach[of], 0.0)
-    inside = (along > 0.0) & (along < length[of]) & (offset <= BESIDE_M)
+    few = np.flatnonzero(np.abs(points[:, 1]) <= (reach + widest)[of])
+    of, along, across = of[few], points[few, 0], points[few, 1]
+    inside = (along > 0.0) & (along < length[of])
     for start, stop in _crossed(touched, obstacles, crossings):
         inside &= (along < start[of]) | (along > stop[of])
     kept = np.flatnonzero(inside)
-    of, along, across, offset = of[kept], along[kept], across[kept], offset[kept]
+    of, along, across = of[kept], along[kept], across[kept]
+    offset = np.maximum(np.abs(across) - reach[of], 0.0)
     share = offset / np.sqrt(along * (length[of] - along) / length[of])
     if math.isfinite(most_share):
         deep = np.flatnonzero(share < most_share)

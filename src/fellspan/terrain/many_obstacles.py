@@ -4,7 +4,6 @@ What a path gets does not depend on what other paths are asked beside it. Opens 
 """
 
 import threading
-from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Final
 
@@ -12,7 +11,7 @@ import numpy as np
 import shapely
 from numpy.typing import NDArray
 
-from fellspan.geodesy.geodesic import GeodesicPath
+from fellspan.geodesy.geodesic import WGS84_GEOD
 from fellspan.terrain.alongpath import METRES_PER_DEGREE, Floats, along_across_many, reach_boxes
 from fellspan.terrain.obstacles import (
     JOIN_M,
@@ -26,8 +25,6 @@ from fellspan.terrain.obstacles import (
 )
 
 Index = NDArray[np.int64]
-PathOf = Callable[[int], GeodesicPath]
-"""The geodesic of one of the paths, for what is worked out path by path."""
 
 _ROUND: Final = 1.03
 """Buffers are polygons inside the round ones, by 2 %, and degrees of latitude differ by 1 %."""
@@ -44,6 +41,37 @@ class Starts:
     bearing_deg: Floats
     length_m: Floats
 
+    def line(self, path: int) -> "_Line":
+        """One of them."""
+        return _Line(
+            latitude_deg=float(self.latitude_deg[path]),
+            longitude_deg=float(self.longitude_deg[path]),
+            bearing_deg=float(self.bearing_deg[path]),
+            length_m=float(self.length_m[path]),
+        )
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class _Line:
+    """A geodesic of which a few positions are asked."""
+
+    latitude_deg: float
+    longitude_deg: float
+    bearing_deg: float
+    length_m: float
+
+    def positions(self, distance_m: Floats) -> tuple[Floats, Floats]:
+        """Latitudes and longitudes, degrees, at distances from A, the longitudes running on from that of A."""
+        count = distance_m.size
+        longitude, latitude, _ = WGS84_GEOD.fwd(
+            np.full(count, self.longitude_deg),
+            np.full(count, self.latitude_deg),
+            np.full(count, self.bearing_deg),
+            distance_m,
+        )
+        turn = np.mod(np.asarray(longitude) - self.longitude_deg + 180.0, 360.0) - 180.0
+        return np.asarray(latitude), self.longitude_deg + turn
+
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Touched:
@@ -53,6 +81,15 @@ class Touched:
     obstacle: Index
     shift_deg: Floats
     plane: NDArray[np.object_]
+
+    def rows(self, rows: Index) -> "Touched":
+        """Some of them."""
+        return Touched(
+            path=self.path[rows],
+            obstacle=self.obstacle[rows],
+            shift_deg=self.shift_deg[rows],
+            plane=self.plane[rows],
+        )
 
 
 class ManyObstacles(ObstacleIndex):
@@ -96,14 +133,14 @@ class ManyObstacles(ObstacleIndex):
         first[1:] = (np.diff(path) != 0) | (np.diff(obstacle) != 0)
         return path[first], obstacle[first], shift[first]
 
-    def laid(self, starts: Starts, path: Index, obstacle: Index, shift_deg: Floats, *, path_of: PathOf) -> Touched:
+    def laid(self, starts: Starts, path: Index, obstacle: Index, shift_deg: Floats) -> Touched:
         """Obstacles (k,) in (along, across) of their paths, as `near` lays those of one path, projected in one go."""
         whole = self._divided
         shapes = whole.shapes[obstacle]
         for k in np.flatnonzero(whole.large[obstacle]).tolist():
             which = obstacle[k : k + 1]
-            on = path_of(int(path[k]))
-            shapes[k] = self.cut(self._shapes[which], shift_deg[k : k + 1], self._reach[which], on)[0]
+            line = starts.line(int(path[k]))
+            shapes[k] = self.cut(self._shapes[which], shift_deg[k : k + 1], self._reach[which], line)[0]
         points, of = shapely.get_coordinates(shapes, return_index=True)
         moved = points[:, 0] + np.where(whole.large[obstacle], 0.0, shift_deg)[of]
         owner = path[of]
@@ -132,19 +169,34 @@ class ManyObstacles(ObstacleIndex):
         of_point, from_point, to_point = self._discs(points, plane, touched.obstacle[may])
         part = np.concatenate((whole[part], of_point))
         start, stop = np.concatenate((start, from_point)), np.concatenate((stop, to_point))
+        supports = self._supports(touched, starts, np.unique(may[part[is_line[part]]]))
         found: dict[int, list[Crossing]] = {}
-        supports: dict[int, Floats] = {}
         for i, begin, end in zip(part.tolist(), start.tolist(), stop.tolist(), strict=True):
             k = int(may[i])
             obstacle, path = self.obstacles[int(touched.obstacle[k])], int(touched.path[k])
-            if is_line[i] and obstacle.rule == "span" and k not in supports:
-                supports[k] = _supports(obstacle, starts, path, float(touched.shift_deg[k]))
             crossing = Crossing.between(obstacle, begin, end, length_m=float(length[i]), supports=supports.get(k))
             if crossing is not None:
                 found.setdefault(path, []).append(crossing)
         for crossings in found.values():
             crossings.sort(key=lambda one: (one.from_m, one.to_m, one.obstacle.name))
         return found
+
+    def _supports(self, touched: Touched, starts: Starts, lines: Index) -> dict[int, Floats]:
+        """Vertices of those of some lines that hang between supports, as (along, across) of their paths."""
+        spans = np.array(
+            [k for k in lines.tolist() if self.obstacles[int(touched.obstacle[k])].rule == "span"], dtype=int
+        )
+        points, of = shapely.get_coordinates(self._shapes[touched.obstacle[spans]], return_index=True)
+        path = touched.path[spans][of]
+        along, across = along_across_many(
+            starts.latitude_deg[path],
+            starts.longitude_deg[path],
+            starts.bearing_deg[path],
+            points[:, 1],
+            points[:, 0] + touched.shift_deg[spans][of],
+        )
+        plane, ends = np.column_stack((along, across)), np.cumsum(np.bincount(of, minlength=spans.size))
+        return dict(zip(spans.tolist(), np.split(plane, ends[:-1]), strict=True)) if spans.size else {}
 
     def _discs(self, points: Index, plane: NDArray[np.object_], obstacle: Index) -> tuple[Index, Floats, Floats]:
         """Which discs of some lie on the axis of their path, from where and to where."""
@@ -237,12 +289,3 @@ def _parts(common: NDArray[np.object_]) -> tuple[Index, Floats, Floats]:
         np.concatenate((start[alone], more[:, 1])),
         np.concatenate((stop[alone], more[:, 2])),
     )
-
-
-def _supports(obstacle: Obstacle, starts: Starts, path: int, shift_deg: float) -> Floats:
-    points = shapely.get_coordinates(obstacle.shape)
-    count = len(points)
-    latitude, longitude, bearing = (
-        np.full(count, float(one[path])) for one in (starts.latitude_deg, starts.longitude_deg, starts.bearing_deg)
-    )
-    return np.column_stack(along_across_many(latitude, longitude, bearing, points[:, 1], points[:, 0] + shift_deg))

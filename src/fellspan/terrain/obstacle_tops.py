@@ -111,8 +111,12 @@ def settled_on(
         if not np.isfinite(tops).all():
             # No ground at a support: hang the line level from the highest ground under the crossing.
             span_tops = None
-    if span_tops is None:
-        tops = ground_m + base if follows else np.full(place_m.shape, base)
+    if span_tops is not None:
+        top, most = _highest(tops, math.nan), _highest(tops - ground_m, height)
+    elif follows:
+        top, most = highest + base, base
+    else:
+        top, most = base, height if math.isnan(base) else base + _highest(-ground_m, height - base)
     return Standing(
         crossing=crossing,
         shown=PathObstacle(
@@ -120,8 +124,8 @@ def settled_on(
             kind=obstacle.kind,
             from_m=crossing.from_m,
             to_m=crossing.to_m,
-            top_amsl_m=_highest(tops, math.nan),
-            height_m=_highest(tops - ground_m, height),
+            top_amsl_m=top,
+            height_m=most,
             source=obstacle.source,
             growth_m_per_year=obstacle.growth_m_per_year,
             sigma_m=obstacle.error_m if obstacle.error_m is not None else DEFAULT_ERROR_M[obstacle.kind],

@@ -5,7 +5,7 @@ Knows nothing of files and rasters: `obstacle_files` reads them, `obstacle_tops`
 
 from collections.abc import Sequence
 from dataclasses import dataclass
-from typing import Literal
+from typing import Literal, Protocol
 
 import numpy as np
 import shapely
@@ -101,6 +101,19 @@ class NearShape:
     """False where its bounds already keep off the path."""
 
 
+class Line(Protocol):
+    """A path that can say where it runs."""
+
+    @property
+    def length_m(self) -> float:
+        """How long it is, m."""
+        ...
+
+    def positions(self, distance_m: Floats, /) -> tuple[Floats, Floats]:
+        """Latitudes and longitudes, degrees, at distances from A, (n,), the longitudes running on beyond 180."""
+        ...
+
+
 class ObstacleIndex:
     """Finds the obstacles that a path crosses, among many."""
 
@@ -139,9 +152,7 @@ class ObstacleIndex:
         """Every crossing of the path, sorted by where it begins; exact to 0.1 m on paths of 50 km."""
         return crossings_of(self.near(path), path)
 
-    def cut(
-        self, shapes: NDArray[np.object_], shifts: Floats, reach_m: Floats, path: GeodesicPath
-    ) -> NDArray[np.object_]:
+    def cut(self, shapes: NDArray[np.object_], shifts: Floats, reach_m: Floats, path: Line) -> NDArray[np.object_]:
         """The shapes moved to the path's longitudes, large ones cut to its surroundings, long edges divided."""
         moved = np.array(shapes, dtype=object)
         for i in np.flatnonzero(shifts):
