@@ -140,16 +140,12 @@ def _decided(fails: int, twice: int, made: int, allowed: float, allowance: float
     UNSURE while it does not; -1 where so many draws more would not tell either.
     """
     share = fails / (2.0 * made)
-    # Of a draw and its mirror image; where few fail both, the mean of the two scatters less than two draws would.
+    # Of a draw and its mirror image; where few fail both, the mean of the two scatters less than that of two draws alone.
     spread = max((fails + 2.0 * twice) / (4.0 * made) - share * share, 0.5 * allowed * (1.0 - allowed))
     theirs = spread / (0.5 * draws)
     off = abs(share - allowed) - room
     if off > allowance * math.sqrt(theirs + spread / made):
-        # Few failing draws scatter more widely above their mean than a normal law has it: Chernoff's bound.
-        information = (1.0 - share) * math.log((1.0 - share) / (1.0 - allowed)) if share < 1.0 else 0.0
-        information += share * math.log(share / allowed) if share > 0.0 else 0.0
-        if made * allowed * (1.0 - allowed) / spread * information > 0.5 * allowance**2:
-            return HOLDS if share < allowed else FALLS
+        return HOLDS if share < allowed else FALLS
     if made >= 8 * FIRST and off + 3.0 * math.sqrt(spread / made) < allowance * math.sqrt(theirs):
         return -1
     return UNSURE

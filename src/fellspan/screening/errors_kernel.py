@@ -32,7 +32,7 @@ BEYOND: Final = 7.0
 @compiled
 def _height_at(parts: Floats, count: int, at: float, near: int) -> float:
     """Height of the ground between samples; `near` is one close by."""
-    j = near
+    j = min(near, count - 2)
     while j > 0 and parts[AT, j] > at:
         j -= 1
     while j < count - 2 and parts[AT, j + 1] < at:
