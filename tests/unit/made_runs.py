@@ -10,7 +10,7 @@ import rasterio
 from rasterio.transform import Affine
 
 HERE = Path(__file__).resolve().parent
-OUTPUTS = ("candidates.csv", "candidates.geojson", "best.csv", "summary.json", "index.html")
+OUTPUTS = ("candidates.csv", "candidates.geojson", "best.csv", "best.geojson", "summary.json", "index.html")
 
 STUDY = """
 [study]

@@ -108,6 +108,14 @@ def test_the_files_hold_every_pair_once_in_order(inputs: Path, capsys: pytest.Ca
     lines = json.loads((out / "candidates.geojson").read_text(encoding="utf-8"))["features"]
     assert [(line["properties"]["hub"], line["properties"]["place"]) for line in lines] == pairs
     assert all(line["geometry"]["type"] == "LineString" for line in lines)
+    for line, row in zip(lines, rows, strict=True):
+        said = line["properties"]
+        assert said.get("status", "done") == row["status"]
+        for name in ("state", "basis", "signal_verdict", "sector"):
+            assert said.get(name, "") == row[name]
+        for name in ("distance_m", "worst_fraction", "extra_at_place_m", "extra_for_confidence_m"):
+            assert said.get(name) == (float(row[name]) if row[name] else None)
+        assert None not in said.values()
     page = capsys.readouterr().out
     assert max(map(len, page.splitlines())) <= 80
     assert "80 pairs judged" in page
@@ -143,6 +151,13 @@ def test_best_hubs_are_ranked_by_path_then_signal_then_margin(inputs: Path) -> N
         ranked = sorted((row for row in rows if row["place"] == place), key=key)
         expected += [(place, str(rank), row["hub"]) for rank, row in enumerate(ranked[:2], start=1)]
     assert [(row["place"], row["rank"], row["hub"]) for row in best] == expected
+    drawn = json.loads((inputs / "out" / "best.geojson").read_text(encoding="utf-8"))["features"]
+    shown = [[line["properties"][key] for key in ("place", "rank", "hub")] for line in drawn]
+    assert [[place, str(rank), hub] for place, rank, hub in shown] == [list(row) for row in expected]
+    before = (inputs / "out" / "best.geojson").read_bytes()
+    assert go("--best", "2", "--lines", "best") == 0
+    assert not (inputs / "out" / "candidates.geojson").exists()
+    assert (inputs / "out" / "best.geojson").read_bytes() == before
     said = json.loads((inputs / "out" / "summary.json").read_text(encoding="utf-8"))
     first = [row for row in best if row["rank"] == "1"]
     assert said["places_by_best_state"]["clear"] == sum(row["state"] == "clear" for row in first)

@@ -1,9 +1,17 @@
 """`fellspan candidates`: many possible links at once, from hubs to places, in a run that can be stopped and goes on."""
 
+from enum import StrEnum
 from pathlib import Path
 from typing import Annotated
 
 import typer
+
+
+class Lines(StrEnum):
+    """Which pairs are written as lines on a map."""
+
+    all = "all"
+    best = "best"
 
 
 def candidates_command(
@@ -40,6 +48,9 @@ def candidates_command(
         str | None, typer.Option("--place-antenna", metavar="NAME", help="Antenna of the study at every place.")
     ] = None,
     best: Annotated[int, typer.Option("--best", min=1, max=100, help="Hubs to list for each place.")] = 3,
+    lines: Annotated[
+        Lines, typer.Option("--lines", help="Pairs to write as lines for a GIS: all, or only the best hubs.")
+    ] = Lines.all,
     fresh: Annotated[bool, typer.Option("--fresh", help="Start anew; drop an earlier run in the folder.")] = False,
     scheduler: Annotated[
         str | None,
@@ -69,6 +80,7 @@ def candidates_command(
             pairs=pairs,
             out=out,
             best=best,
+            lines=lines.value,
             fresh=fresh,
             scheduler=scheduler,
             chunk=chunk,

@@ -15,7 +15,7 @@ from fellspan.cli.stopping import stopping_at_signals
 from fellspan.cli.telling import tell
 from fellspan.errors import UsageError
 from fellspan.exports.candidates import JUDGED_ALONE, summary_json
-from fellspan.exports.candidates_folder import CHOSEN, NAMES, drop_parts, write_run
+from fellspan.exports.candidates_folder import CHOSEN, NAMES, Lines, drop_parts, write_run
 from fellspan.planning.planner import open_terrain
 from fellspan.quantities import AntennaHeight
 from fellspan.runs.inputs import files_alike, run_facts
@@ -38,6 +38,7 @@ class Asked:
     pairs: Path | None
     out: Path
     best: int
+    lines: Lines
     fresh: bool
     scheduler: str | None
     chunk: int
@@ -74,7 +75,9 @@ def _run(asked: Asked, progress: "_Progress") -> None:
         progress,
     ):
         finish_run(store, plan, watcher=progress, note=lambda note: tell(f"fellspan: {note}"))
-        summary = write_run(asked.out, store, screening, keep=asked.best, notes=notes, tell=progress.writing)
+        summary = write_run(
+            asked.out, store, screening, keep=asked.best, lines=asked.lines, notes=notes, tell=progress.writing
+        )
     if asked.as_json:
         typer.echo(summary_json(summary, title=screening.study.title, notes=notes), nl=False)
         return

@@ -10,12 +10,12 @@ from math import isfinite, isinf
 from typing import Any, Final, TextIO
 
 from fellspan import __version__
-from fellspan.exports.places import Place, split_at_antimeridian
+from fellspan.exports.candidates_geojson import PairLines, write_lines
 from fellspan.exports.text import csv_cell, utf8
 from fellspan.links.words import STATE_WORDS
 from fellspan.runs.store import STATES, Store
 from fellspan.runs.summary import HubCount, PairRow, RunSummary, rows_in_order
-from fellspan.screening.pairs import BASES, PATH_VERDICTS, SIGNAL_VERDICTS, STATUSES, Candidates, SiteColumns
+from fellspan.screening.pairs import BASES, PATH_VERDICTS, SIGNAL_VERDICTS, STATUSES, Candidates
 
 NUMBERS: Final = (
     ("distance_m", "%.1f"),
@@ -142,54 +142,8 @@ def write_candidates_csv(stream: TextIO, store: Store, candidates: Candidates) -
 
 
 def write_candidates_geojson(stream: TextIO, store: Store, candidates: Candidates) -> None:
-    """candidates.geojson: a line from hub to place for every pair, longitude first (RFC 7946)."""
-    hubs, places = _spots(candidates.hubs), _spots(candidates.places)
-    names = [json.dumps(utf8(name), ensure_ascii=False) for name in candidates.hubs.name]
-    to = [json.dumps(utf8(name), ensure_ascii=False) for name in candidates.places.name]
-    sectors = [json.dumps(utf8(sector.name), ensure_ascii=False) for sector in candidates.sectors]
-    stream.write('{"type": "FeatureCollection", "features": [')
-    mark = "\n"
-    for row in rows_in_order(store):
-        properties = ", ".join(
-            (
-                f'"hub": {names[row.hub]}',
-                f'"place": {to[row.place]}',
-                f'"sector": {"null" if row.sector is None else sectors[row.sector]}',
-                f'"status": "{STATUSES[row.status]}"',
-                f'"state": {_worded(STATE_OF[row.state])}',
-                f'"verdict": {_worded("" if row.verdict is None else PATH_VERDICTS[row.verdict])}',
-                f'"basis": {_worded("" if row.basis is None else BASES[row.basis])}',
-                f'"signal_verdict": {_worded("" if row.signal_verdict is None else SIGNAL_VERDICTS[row.signal_verdict])}',
-                f'"distance_m": {_number(row.distance_m, "%.1f") or "null"}',
-                f'"margin_db": {_number(row.margin_db, "%.2f") or "null"}',
-                f'"worst_fraction": {_number(row.worst_fraction, "%.3f") or "null"}',
-                f'"extra_at_place_m": {_number(row.extra_at_place_m, "%.2f") or "null"}',
-                f'"extra_for_confidence_m": {_number(row.extra_for_confidence_m, "%.2f") or "null"}',
-            )
-        )
-        geometry = _geometry(hubs[row.hub], places[row.place])
-        stream.write(f'{mark}{{"type": "Feature", "geometry": {geometry}, "properties": {{{properties}}}}}')
-        mark = ",\n"
-    stream.write("\n]}\n")
-
-
-def _worded(word: str) -> str:
-    return f'"{word}"' if word else "null"
-
-
-def _spots(sites: SiteColumns) -> list[tuple[float, float]]:
-    return [
-        (round(x, 7) + 0.0, round(y, 7) + 0.0)
-        for x, y in zip(sites.longitude_deg.tolist(), sites.latitude_deg.tolist(), strict=True)
-    ]
-
-
-def _geometry(a: tuple[float, float], b: tuple[float, float]) -> str:
-    if abs(a[0] - b[0]) <= 180.0:
-        return f'{{"type": "LineString", "coordinates": [[{a[0]!r}, {a[1]!r}], [{b[0]!r}, {b[1]!r}]]}}'
-    ends = tuple(Place(distance_m=0.0, latitude_deg=y, longitude_deg=x, ray_amsl_m=0.0) for x, y in (a, b))
-    parts = [[list(place.lonlat) for place in part] for part in split_at_antimeridian(ends)]
-    return json.dumps({"type": "MultiLineString", "coordinates": parts})
+    """candidates.geojson: a line from hub to place for every pair."""
+    write_lines(stream, map(PairLines(candidates).feature, rows_in_order(store)))
 
 
 def summary_json(summary: RunSummary, *, title: str, notes: Sequence[str]) -> str:

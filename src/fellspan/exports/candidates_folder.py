@@ -5,10 +5,11 @@ Each is written beside its place first and moved there when all are whole. What 
 
 import csv
 import os
-from collections.abc import Callable, Mapping, Sequence
-from contextlib import suppress
+from collections.abc import Callable, Iterator, Mapping, Sequence
+from contextlib import contextmanager, suppress
 from pathlib import Path
-from typing import Final, TextIO
+from tempfile import TemporaryFile
+from typing import Final, Literal, TextIO
 
 from fellspan.errors import OutputError, StudyError
 from fellspan.exports.candidates import (
@@ -18,16 +19,20 @@ from fellspan.exports.candidates import (
     write_candidates_csv,
     write_candidates_geojson,
 )
+from fellspan.exports.candidates_geojson import PairLines, write_lines
 from fellspan.exports.text import utf8
 from fellspan.report.candidates_page import render_candidates_page
 from fellspan.runs.store import STATES, Store
-from fellspan.runs.summary import RunSummary, summarise
+from fellspan.runs.summary import PairRow, RunSummary, summarise
 from fellspan.study.chosen import MOST_CHOSEN, chosen_text
 from fellspan.study.screening_study import Screening
 
 SUMMARY: Final = "summary.json"
 CHOSEN: Final = "chosen.toml"
-NAMES: Final = ("candidates.csv", "candidates.geojson", "best.csv", CHOSEN, "index.html", SUMMARY)
+ALL_LINES, BEST_LINES = "candidates.geojson", "best.geojson"
+NAMES: Final = ("candidates.csv", ALL_LINES, "best.csv", BEST_LINES, CHOSEN, "index.html", SUMMARY)
+Lines = Literal["all", "best"]
+"""Which pairs are written as lines on a map: those of `best.csv` alone, or all of them too."""
 _PART: Final = ".part"
 
 Write = Callable[[TextIO], object]
@@ -40,10 +45,13 @@ def write_run(
     screening: Screening,
     *,
     keep: int,
+    lines: Lines,
     notes: Sequence[str],
     tell: Callable[[str], None],
 ) -> RunSummary:
     """Write the files of a run whose chunks are all there; `keep` hubs are listed for each place, `tell` hears each file.
+
+    `lines` says whether all pairs are written as lines too.
 
     Raises
     ------
@@ -51,15 +59,29 @@ def write_run(
         A file cannot be written; those that stood there are unchanged.
     """
     candidates, study = screening.candidates, screening.study
-    table = CandidateTable(candidates)
+    table, drawn = CandidateTable(candidates), PairLines(candidates)
     found: list[RunSummary] = []
 
+    def all_lines(stream: TextIO) -> bool:
+        if lines == "all":
+            write_candidates_geojson(stream, store, candidates)
+        return lines == "all"
+
     def best(stream: TextIO) -> None:
+        """The table; its lines are kept aside, so that the pairs are ranked once."""
         writer = csv.writer(stream, lineterminator="\n")
         writer.writerow(BEST_COLUMNS)
-        found.append(
-            summarise(store, candidates, keep=keep, take=lambda rank, row: writer.writerow(table.best_cells(rank, row)))
-        )
+
+        def take(rank: int, row: PairRow | int) -> None:
+            writer.writerow(table.best_cells(rank, row))
+            if not isinstance(row, int):
+                aside.write(drawn.feature(row, rank) + "\n")
+
+        found.append(summarise(store, candidates, keep=keep, take=take))
+
+    def best_lines(stream: TextIO) -> None:
+        aside.seek(0)
+        write_lines(stream, (line.rstrip("\n") for line in aside))
 
     def chosen(stream: TextIO) -> bool:
         text = _chosen(screening, found[0], folder)
@@ -68,16 +90,30 @@ def write_run(
 
     writers: dict[str, Write] = {
         "candidates.csv": lambda stream: write_candidates_csv(stream, store, candidates),
-        "candidates.geojson": lambda stream: write_candidates_geojson(stream, store, candidates),
+        ALL_LINES: all_lines,
         "best.csv": best,
+        BEST_LINES: best_lines,
         CHOSEN: chosen,
         "index.html": lambda stream: stream.write(
             utf8(render_candidates_page(found[0], study, candidates, notes=notes))
         ),
         SUMMARY: lambda stream: stream.write(summary_json(found[0], title=study.title, notes=notes)),
     }
-    write_files_of_run(folder, writers, tell=tell)
+    with _aside(folder) as aside:
+        write_files_of_run(folder, writers, tell=tell)
     return found[0]
+
+
+@contextmanager
+def _aside(folder: Path) -> Iterator[TextIO]:
+    """A file without a name beside those that are written."""
+    try:
+        with TemporaryFile("w+", dir=folder, encoding="utf-8", newline="\n") as stream:
+            yield stream
+    except OSError as error:
+        if isinstance(error, OutputError):
+            raise
+        raise OutputError(f"'{folder}' cannot be written: {error.strerror or error}", "make room") from error
 
 
 def _chosen(screening: Screening, summary: RunSummary, folder: Path) -> str:
