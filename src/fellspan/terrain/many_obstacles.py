@@ -276,16 +276,14 @@ def _common(areas: NDArray[np.object_], axes: NDArray[np.object_]) -> NDArray[np
 
 def _parts(common: NDArray[np.object_]) -> tuple[Index, Floats, Floats]:
     """The parts of axes as intervals, touching ones joined: of which each is, its start and its stop, (i,)."""
-    parts, of = shapely.get_parts(common, return_index=True)
-    bounds = shapely.bounds(parts).reshape(-1, 4)
-    of, start, stop = of[bounds[:, 0] <= bounds[:, 2]], bounds[:, 0], bounds[:, 2]
-    start, stop = start[start <= stop], stop[start <= stop]
-    several = np.flatnonzero(np.bincount(of, minlength=common.size) > 1)
-    alone = ~np.isin(of, several)
+    bounds = shapely.bounds(common).reshape(-1, 4)
+    known = np.isfinite(bounds[:, 0])
+    whole = np.isin(shapely.get_type_id(common), (shapely.GeometryType.POINT, shapely.GeometryType.LINESTRING))
+    alone, several = np.flatnonzero(known & whole), np.flatnonzero(known & ~whole)
     joined = [(int(one), *span) for one in several for span in intervals_of(common[one])]
     more = np.array(joined, dtype=np.float64).reshape(-1, 3)
     return (
-        np.concatenate((of[alone], more[:, 0].astype(np.int64))),
-        np.concatenate((start[alone], more[:, 1])),
-        np.concatenate((stop[alone], more[:, 2])),
+        np.concatenate((alone, more[:, 0].astype(np.int64))),
+        np.concatenate((bounds[alone, 0], more[:, 1])),
+        np.concatenate((bounds[alone, 2], more[:, 2])),
     )
