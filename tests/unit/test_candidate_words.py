@@ -52,7 +52,7 @@ def test_terminal_page_and_summary_say_that_neighbours_are_not_counted(
     monkeypatch.chdir(tmp_path)
     monkeypatch.setattr(candidates_page, "shaded_relief", lambda *_, **__: None)
     assert run(made_runs.arguments()) == 0
-    said = "each pair is judged alone: radios that share a channel, sectors of one hub among them, are not counted here"
+    said = "Each pair is judged alone: radios that share a channel, sectors of one hub among them, are not counted here"
     assert said in " ".join(capsys.readouterr().out.split()).replace("! ", "")
     assert any(note.startswith(said) for note in json.loads((tmp_path / "out" / "summary.json").read_text())["notes"])
     assert said in (tmp_path / "out" / "index.html").read_text(encoding="utf-8")

@@ -53,8 +53,8 @@ CANDIDATE_COLUMNS: Final = (
 )
 BEST_COLUMNS: Final = ("place", "rank", *(name for name in CANDIDATE_COLUMNS if name != "place"))
 JUDGED_ALONE: Final = (
-    "each pair is judged alone: radios that share a channel, sectors of one hub among them, are not counted here; "
-    "fellspan plan chosen.toml counts them"
+    "Each pair is judged alone: radios that share a channel, sectors of one hub among them, are not counted here; "
+    "fellspan plan chosen.toml counts them."
 )
 """What every run must say of its signals."""
 UNSURE_WORDS: Final = "not sure enough"

@@ -248,6 +248,14 @@
   ["(prefers-color-scheme: dark)", "print"].forEach(function (query) {
     window.matchMedia(query).addEventListener("change", repaint);
   });
+  function onPaper(is) {
+    if (document.documentElement.classList.contains("printing") === is) return;
+    document.documentElement.classList.toggle("printing", is);
+    fit(); repaint();
+  }
+  window.addEventListener("beforeprint", function () { onPaper(true); });
+  window.addEventListener("afterprint", function () { onPaper(false); });
+  window.matchMedia("print").addEventListener("change", function (event) { onPaper(event.matches); });
   new ResizeObserver(fit).observe(document.getElementById("map"));
   fit(); draw(); sorted(); fill();
   window.fellspanPage = {map: map, data: data, choosePlace: choosePlace, chooseHub: chooseHub};
