@@ -122,6 +122,25 @@ def test_a_page_is_for_everyone(pages, browser, axe, kind, width, scheme):
     page.context.close()
 
 
+def test_the_chart_of_heights_can_be_read_on_paper(sample, browser):
+    """Letters of 6 points at least, which is what the small print of the page has, on a chart that stands on the sheet."""
+    for path in sample.link_pages:
+        page = _open(browser, path)
+        page.set_viewport_size({"width": PAPER_PX, "height": 1040})
+        page.emulate_media(media="print")
+        found = page.evaluate("""() => {
+          const chart = document.querySelector("#heights svg"), box = chart.getBoundingClientRect();
+          const scale = box.width / chart.viewBox.baseVal.width;
+          const sizes = [...chart.querySelectorAll("text")].map(one => parseFloat(getComputedStyle(one).fontSize) * scale);
+          const table = document.querySelector("#heights table").getBoundingClientRect();
+          return {least: Math.min(...sizes), width: box.width, right: box.right, table: table.width}; }""")
+        assert found["least"] * 0.75 >= 6.0, path.name
+        assert found["width"] > 0.4 * PAPER_PX
+        assert found["right"] < PAPER_PX
+        assert found["table"] > 0.9 * PAPER_PX
+        page.context.close()
+
+
 def test_the_decision_stands_above_the_fold_and_a_link_takes_few_sheets(sample, browser):
     sheets = []
     for path in sample.link_pages:

@@ -9,7 +9,7 @@ from fellspan.design.heights_result import HEIGHT_WORDS, HeightOption, HeightsRe
 from fellspan.report import svg, wording
 from fellspan.report.scales import Scale, nice_ticks
 
-WIDTH, HEIGHT = 520.0, 420.0
+WIDTH, HEIGHT = 450.0, 350.0
 _LEFT, _RIGHT, _TOP, _BOTTOM = 54.0, WIDTH - 16.0, 34.0, HEIGHT - 46.0
 _LEAST_SPAN_M: Final = 8.0
 _MOST_M: Final = 120.0
@@ -147,6 +147,9 @@ def _marks(heights: HeightsResult, across: Scale, up: Scale) -> list[str]:
         shown = f"{', '.join(named)}: {a:.4g}, {b:.4g}"
         box, anchor = _free(x, y, _LETTER_PX * len(shown), taken)
         taken.append(box)
+        # On paper letters have no halo; a plate keeps the lines off them.
+        plate = svg.el("rect", x=box[0] - 2.0, y=box[1], width=box[2] - box[0] + 4.0, height=15.0, class_="plate")
+        parts.append(plate)
         parts.append(
             svg.label(box[0] if anchor == "start" else box[2], box[3] - 3.0, shown, class_="note", anchor=anchor)
         )

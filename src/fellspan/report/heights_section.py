@@ -18,7 +18,10 @@ class HeightsSection:
 
     decision: str
     chart: Markup
-    caption: str
+    key: str
+    """How to read the chart."""
+    pairs: str
+    """The chart in words; on paper the table beside it says them."""
     rows: tuple[tuple[str, str, str, str, str, str], ...]
     notes: tuple[str, ...]
     governs: str
@@ -45,7 +48,8 @@ def heights_section(link: LinkPlan) -> HeightsSection | None:
     return HeightsSection(
         decision=heights.decision,
         chart=Markup(draw_heights(heights, uid="heights", names=(ends.a.site, ends.b.site))),
-        caption=f"{_SHADED if shows_what_works(heights) else _BEYOND} {heights_words(heights)}",
+        key=_SHADED if shows_what_works(heights) else _BEYOND,
+        pairs=heights_words(heights),
         rows=told,
         notes=(
             _legend(heights),
