@@ -9,6 +9,7 @@ import pytest
 from fellspan.design.as_built import AsBuilt, Reading, level_read
 from fellspan.errors import MeasuredFileError
 from fellspan.links.site import Link
+from fellspan.quantities import format_height
 from fellspan.report.crew_work import BLANKS
 from fellspan.study.measured_blank import blank_text
 from fellspan.study.measured_reading import load_measured, read_measured
@@ -166,16 +167,45 @@ def test_the_starter_has_every_key_and_reads_back_once_filled_in() -> None:
     text = blank_text(LINK)
     for table in (MeasuredTable, EndTable, ReadingTable):
         for key in table.model_fields:
-            assert re.search(rf"^#? ?{key} = ", text, re.MULTILINE), key
-    filled = "\n".join(
-        line.removeprefix("# ") if re.match(r"# (\w+ = |\[\[reading\]\])", line) else line for line in text.splitlines()
-    )
-    built = read(filled)
+            assert re.search(rf"^#? ?{key} =", text, re.MULTILINE), key
+    built = read("\n".join(map(_filled_in, text.splitlines())))
     assert built.a.height_m == LINK.a.height_m
     assert built.modulation == LINK.radio.wanted
     assert len(built.readings) == 7
     with pytest.raises(MeasuredFileError, match="no level was read"):
         read(text)
+
+
+def _filled_in(line: str) -> str:
+    """A line of the starter with what is planned, or how a value is written, in the place of the blank."""
+    found = re.match(r"# (\w+) = *(?:\"\"|\[\])? *# (.*)", line)
+    if found is None:
+        return line.removeprefix("# ") if line.startswith("# [[") else line
+    key, words = found.groups()
+    value = r"(\[.*\]|\"[^\"]*\"|-?\d[\d.-]*)"
+    told = re.search(rf"(?:planned:|such as|left out:) {value}", words) or re.search(value, words)
+    return f"{key} = {told[1] if told else chr(34) * 2}"
+
+
+def test_no_figure_of_the_starter_can_pass_for_a_measured_one() -> None:
+    text = blank_text(LINK)
+    for line in text.splitlines():
+        if found := re.match(r"#? ?(\w+) = *([^#]*)#", line):
+            assert found[2].strip() in ("", '""', "[]"), line
+            continue
+        assert line.startswith(("#", "[", "link = ")) or not line
+    with_figures = [
+        line.partition(" # ")[2] for line in text.splitlines()[5:] if re.search(r"\d", line.partition(" # ")[2])
+    ]
+    for words in with_figures:
+        assert re.search(r"planned:|such as|left out:|transmits|has \d chains", words), words
+    height = format_height(LINK.a.height_m, LINK.a.height_reference)
+    assert f'planned: "{height}"' in text
+    for key in ("level", "height", "bearing", "date", "level_chains"):
+        begun = re.sub(rf"(?m)^# ({key} =)", r"\1", text, count=1)
+        with pytest.raises(MeasuredFileError) as caught:
+            read(begun)
+        assert len(str(caught.value).splitlines()) <= 4
 
 
 def test_every_blank_of_the_crew_sheet_has_a_key() -> None:

@@ -1,76 +1,100 @@
-"""The starter of a measured file: every blank of the crew sheet as a key, with what the study plans beside it. Gives text."""
+"""The starter of a measured file: every blank of the crew sheet as a key, with what the study plans beside it. Gives text.
+
+No key holds a figure: one that nobody measured must never be taken for one that was. Beside each stands what is planned, and is
+called so, or how such a value is written.
+"""
+
+from typing import Final
 
 from fellspan.geodesy.coordinates import format_position
 from fellspan.links.site import Antenna, Link, Site
 from fellspan.quantities import format_frequency, format_height
 from fellspan.study.toml_text import quoted
 
+_HEAD: Final = """\
+# What was measured of a link as built. Nothing here is filled in: take away the # before a key and write what was measured;
+# what nobody measured stays as it is. Behind each key stands what the study plans, "planned: ...", or, where it plans none,
+# how a value is written, "such as ..."; these are no figures of this link.
+# Then: fellspan accept STUDY --link NAME --measured THIS_FILE
+"""
+_COLUMN: Final = 30
+"""Where the words behind a key begin."""
+_EMPTY: Final = '""'
+
 
 def blank_text(link: Link) -> str:
     """TOML to fill in: what is not known stays behind its hash sign."""
     radio = link.radio
-    wanted = radio.wanted or (radio.modulations[0].name if radio.modulations else "64-QAM")
-    chains = (
-        f"{radio.chains} chains: say whether a level is of all together or of each" if radio.chains > 1 else "one chain"
-    )
-    return f"""\
-# What was measured of a link as built. Take away the # before a key and fill it in; what nobody measured stays as it is.
-# Levels, bearings, tilts, roofs and ground levels here are examples of how to write them, not this link's; what is planned
-# is called so.
-# Then: fellspan accept STUDY --link NAME --measured THIS_FILE
-
-[measured]
-link = {quoted(_line(link.name))}
-# date = 2026-05-20
-# by = "names"
-# weather = "clear, light wind"
-# modulation = {quoted(_line(wanted))}             # as fixed while the levels were read
-# power_control = "off"                # "on" or "off"; with it on, a low level says nothing
-# adaptive_modulation = "off"
-# levels_are = "all chains"            # or "each chain": {chains}
-# level_error = "1.5 dB"               # standard error of a level that the radio shows
-# band = "3 dB"                        # accepted either way
-# note = ""
-
-{_end("a", link.a, link.antenna_a, link)}
-{_end("b", link.b, link.antenna_b, link)}
-# Levels over time, where a link changes with the hour or the tide; one [[reading]] for each.
-# [[reading]]
-# at = "A"                             # the end that receives
-# level = "-61.5 dBm"
-# chain = "1"                          # left out: all chains together
-# date = 2026-05-21                    # left out: the day of [measured]
-# time = "14:20"
-# water = "0.4 m"                      # level of tide or water then
-# note = ""
-"""
+    wanted = radio.wanted or (radio.modulations[0].name if radio.modulations else None)
+    chains = f"{radio.chains} chains" if radio.chains > 1 else "one chain"
+    lines = [
+        _HEAD,
+        "[measured]",
+        f"link = {quoted(_line(link.name))}",
+        _blank("date", "day of the measurement, such as 2026-05-20", value=""),
+        _blank("by", "names"),
+        _blank("weather", 'such as "clear, light wind"'),
+        _blank("modulation", f"as fixed while the levels were read; {_planned(wanted, such_as='64-QAM 5/6')}"),
+        _blank("power_control", '"on" or "off"; with it on, a low level says nothing'),
+        _blank("adaptive_modulation", '"on" or "off"'),
+        _blank("levels_are", f'"all chains" or "each chain"; the radio has {chains}'),
+        _blank("level_error", 'standard error of a level that the radio shows; left out: "1.5 dB"'),
+        _blank("band", 'accepted either way; left out: "3 dB"'),
+        _blank("note", "anything else"),
+        "",
+        *_end("a", link.a, link.antenna_a, link),
+        "",
+        *_end("b", link.b, link.antenna_b, link),
+        "",
+        "# Levels over time, where a link changes with the hour or the tide; one [[reading]] for each.",
+        "# [[reading]]",
+        _blank("at", 'the end that receives, "A" or "B"'),
+        _blank("level", 'such as "-61.5 dBm"'),
+        _blank("chain", 'such as "1"; left out: all chains together'),
+        _blank("date", "such as 2026-05-21; left out: the day of [measured]", value=""),
+        _blank("time", 'such as "14:20"'),
+        _blank("water", 'level of tide or water then, such as "0.4 m"'),
+        _blank("note", "anything else"),
+        "",
+    ]
+    return "\n".join(lines)
 
 
-def _end(letter: str, site: Site, antenna: Antenna, link: Link) -> str:
-    planned = format_height(site.height_m, site.height_reference)
+def _end(letter: str, site: Site, antenna: Antenna, link: Link) -> list[str]:
     power = link.radio.power_dbm
-    sent = "not stated" if power is None else f"{power:g} dBm, all chains"
+    sent = 'such as "23 dBm"' if power is None else f'planned: "{power:g} dBm" of all chains'
     hz = link.radio.transmit_hz[0 if letter == "a" else 1]
-    return f"""\
-[{letter}]                                    # {_line(site.name)}, transmits {format_frequency(hz)}
-# level = "-61.5 dBm"                  # received here
-# level_chains = ["-64.5 dBm", "-64.4 dBm"]
-# height = "{planned}"    # centre of the antenna; this is the planned one
-# roof = "8.2 m"                       # roof above ground, where height is above roof
-# ground = "23.4 m"                    # ground level measured, above the datum of the study
-# at = "{format_position(site.position)}"  # position by receiver; this is the planned one
-# bearing = 231.5                      # degrees
-# bearing_is = "magnetic"              # "magnetic" where a compass was read, else "true"
-# tilt = -0.4                          # degrees, up is positive
-# polarization = "{link.radio.polarization}"            # by the marks on the antenna
-# power = "23 dBm"                     # that the radio shows; planned: {sent}
-# power_is = "all chains"              # or "each chain"
-# feeder_loss = "0 dB"                 # line and connectors as measured
-# antenna = {quoted(_line(antenna.name))}               # by its label
-# radio = ""
-# serial = ""
-# note = ""
-"""
+    return [
+        f"[{letter}]".ljust(_COLUMN) + f"# {_line(site.name)}, transmits {format_frequency(hz)}",
+        _blank("level", 'received here, such as "-61.5 dBm"'),
+        _blank("level_chains", 'received here by each chain, such as ["-64.5 dBm", "-64.4 dBm"]', value="[]"),
+        _blank(
+            "height",
+            f"centre of the antenna; {_planned(format_height(site.height_m, site.height_reference), such_as='')}",
+        ),
+        _blank("roof", 'roof above ground, where height is above roof; such as "8.2 m"'),
+        _blank("ground", 'ground level measured, above the datum of the study; such as "23.4 m"'),
+        _blank("at", f"position by receiver; {_planned(format_position(site.position), such_as='')}"),
+        _blank("bearing", "degrees, such as 231.5; the planned one stands on the crew sheet", value=""),
+        _blank("bearing_is", '"magnetic" where a compass was read, else "true"'),
+        _blank("tilt", "degrees, up is positive, such as -0.4; the planned one stands on the crew sheet", value=""),
+        _blank("polarization", f"by the marks on the antenna; {_planned(link.radio.polarization, such_as='')}"),
+        _blank("power", f"that the radio shows; {sent}"),
+        _blank("power_is", '"all chains" or "each chain"'),
+        _blank("feeder_loss", 'line and connectors as measured, such as "1.5 dB"'),
+        _blank("antenna", f"by its label; {_planned(_line(antenna.name) or None, such_as='dish 0.6 m')}"),
+        _blank("radio", "by its label"),
+        _blank("serial", "serial numbers"),
+        _blank("note", "anything else of this end"),
+    ]
+
+
+def _blank(key: str, words: str, *, value: str = _EMPTY) -> str:
+    return f"# {key} = {value}".rstrip().ljust(_COLUMN) + f"# {words}"
+
+
+def _planned(value: str | None, *, such_as: str) -> str:
+    return f"planned: {quoted(_line(value))}" if value is not None else f"such as {quoted(such_as)}"
 
 
 def _line(text: str) -> str:
