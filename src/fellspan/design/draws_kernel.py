@@ -13,7 +13,7 @@ from fellspan.terrain.compiling import compiled
 
 Singles = NDArray[np.float32]
 
-BLOCK: Final = 128
+BLOCK: Final = 256
 """Draws, and as many mirrored ones, that are worked on at once."""
 (
     KEEP,
