@@ -91,7 +91,7 @@ def test_the_starter_is_written_once_and_never_over_a_file(tmp_path: Path, capsy
     assert main.run(["accept", SAMPLE, "--link", LINK, "--blank", str(path)]) == 2
     assert path.read_text(encoding="utf-8") == "mine"
     capsys.readouterr()
-    path.write_text(text.replace('# level = ""', 'level = "-42.5 dBm"'), encoding="utf-8")
+    path.write_text(text.replace('# level = ""', 'level = "-42.5 dBm"', 2), encoding="utf-8")
     assert accept(path) == 0
 
 
