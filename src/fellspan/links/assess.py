@@ -4,83 +4,53 @@ Puts the pieces of this room together and holds no formula itself; knows nothing
 """
 
 import datetime as dt
-import math
 from dataclasses import dataclass, replace
-from typing import TYPE_CHECKING, Final, Literal
+from typing import TYPE_CHECKING, Final
 
 import numpy as np
-from numpy.typing import NDArray
 
-from fellspan.climate.given import GivenClimate
-from fellspan.errors import LinkError, MagneticModelError, TerrainGapError
+from fellspan.errors import LinkError, MagneticModelError
 from fellspan.geodesy import geodesic, magnetic
-from fellspan.links import clearance, verdicts
+from fellspan.links import verdicts
 from fellspan.links.antenna_gains import antenna_cautions, antennas_of, polarization_loss_db
+from fellspan.links.assess_settings import AssessSettings
 from fellspan.links.budget import tilt_deg
 from fellspan.links.cautions import cautions
-from fellspan.links.criteria import Criterion, criteria_for, is_extended, worst_month_k
 from fellspan.links.doubts import with_doubts
-from fellspan.links.ends import EndLevel, end_level
+from fellspan.links.ends import EndLevel
 from fellspan.links.evaluate import extra_for_confidence, governing_row
+from fellspan.links.laid import Laid, stood
 from fellspan.links.levels import PathLevels
 from fellspan.links.minima import worst_windows
-from fellspan.links.own_building import Standing, standing, with_ground_at_end, with_nodes, with_roof_edge
-from fellspan.links.path_judging import PathJudgement, judge_path
+from fellspan.links.own_building import Standing
 from fellspan.links.radiated import exposure_pair, power_cautions, power_checks
 from fellspan.links.result import EndResult, Ends, ExtraHeight, LinkResult
 from fellspan.links.signal import signal_of
-from fellspan.links.signal_path import Weather
 from fellspan.links.signal_verdict import judged
 from fellspan.links.signal_words import signal_sentences
 from fellspan.links.site import Link
-from fellspan.links.uncertainty import clearance_errors_m
-from fellspan.propagation.exposure import ExposureRule
-from fellspan.propagation.rain import RainEdition, RainReading
 from fellspan.terrain.profile import PathProfile
-from fellspan.vocabulary import COVER_KINDS, CriteriaPreset, PathVerdict
+from fellspan.vocabulary import COVER_KINDS, PathVerdict
 
 if TYPE_CHECKING:
     from fellspan.terrain.terrain import Terrain
 
+__all__ = (
+    "REFINE_PARTS",
+    "SAME_PLACE_M",
+    "AssessSettings",
+    "Assessment",
+    "assess",
+    "assess_in_full",
+    "assess_profile",
+    "path_verdict_of",
+    "stood",
+    "trees_in_zone",
+)
 SAME_PLACE_M: Final = 0.5
 _TREE: Final = COVER_KINDS.index("tree")
 REFINE_PARTS: Final = 16
 """The worst minima are looked at again at this part of the finest cell."""
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class AssessSettings:
-    """How links are judged.
-
-    `criteria` replaces `preset` where it is not empty. `confidence` is the probability asked of every criterion, above 0 and
-    below 1. `date` is for magnetic bearings; None leaves them out. `step_m` is the regular step along paths, None for half
-    the finest cell. `climate` is what is known of it; None leaves all to the maps, where they are installed. `rain_edition` is
-    that of Rec. ITU-R P.530, `rain_reading` that of its equation (36). `exposure_rule` says whose limits distances are for.
-    """
-
-    preset: CriteriaPreset = "p530-temperate"
-    criteria: tuple[Criterion, ...] = ()
-    median_k: float = 4.0 / 3.0
-    confidence: float = 0.9
-    date: dt.date | None = None
-    step_m: float | None = None
-    climate: GivenClimate | None = None
-    rain_edition: RainEdition = "19"
-    rain_reading: RainReading = "A"
-    exposure_rule: ExposureRule | Literal["stricter"] = "stricter"
-
-    def __post_init__(self) -> None:
-        if math.isnan(self.median_k) or self.median_k == 0.0:
-            raise LinkError(f"median k {self.median_k:g} must be a number other than 0", "4/3 if nothing is known")
-        if not 0.0 < self.confidence < 1.0:
-            raise LinkError(f"confidence {self.confidence:g} is outside 0 to 1", "0.9 asks for 90 %")
-
-    @property
-    def weather(self) -> Weather:
-        """The part that the signal asks for."""
-        return Weather(
-            given=self.climate or GivenClimate(), rain_edition=self.rain_edition, rain_reading=self.rain_reading
-        )
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -121,14 +91,14 @@ def assess_in_full(link: Link, *, terrain: "Terrain", settings: AssessSettings =
             "give the two ends different coordinates",
         )
     coarse = terrain.profile(a=link.a.position, b=link.b.position, step_m=settings.step_m, name=link.name)
-    windows = worst_windows(_Laid.out(link, coarse, settings).levels)
+    windows = worst_windows(Laid.out(link, coarse, settings).levels)
     fine = terrain.refine(coarse, windows, step_m=coarse.cell_m / REFINE_PARTS) if windows else coarse
     return assess_profile(link, fine, settings)
 
 
 def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = _DEFAULTS) -> Assessment:
     """Decide on one link over a profile as it is, without looking closer anywhere."""
-    laid = _Laid.out(link, profile, settings)
+    laid = Laid.out(link, profile, settings)
     profile, stands, levels = laid.profile, laid.stands, laid.levels
     judged_path = laid.judged(link, settings)
     results, confidence, doubts = judged_path.results, judged_path.confidence, judged_path.doubts
@@ -239,119 +209,12 @@ def assess_profile(link: Link, profile: PathProfile, settings: AssessSettings = 
 
 def path_verdict_of(link: Link, profile: PathProfile, settings: AssessSettings = _DEFAULTS) -> PathVerdict:
     """The verdict on the path alone, the one that `assess_profile` gives with all the rest."""
-    return _Laid.out(link, profile, settings).judged(link, settings).verdict
+    return Laid.out(link, profile, settings).judged(link, settings).verdict
 
 
 def trees_in_zone(stands: Standing, levels: PathLevels) -> bool:
     """Whether trees reach into what any criterion requires to be free: the signal verdict is then marginal at most."""
     return bool(np.any((stands.cover_kind == _TREE) & np.any(levels.available_m < levels.need_m, axis=0)))
-
-
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
-class _Laid:
-    """A link laid on a profile: ends levelled, own buildings out, roof edges in, criteria chosen, levels and errors known."""
-
-    profile: PathProfile
-    stands: Standing
-    a: EndLevel
-    b: EndLevel
-    criteria: tuple[Criterion, ...]
-    levels: PathLevels
-    errors_m: NDArray[np.float64]
-
-    @classmethod
-    def out(cls, link: Link, profile: PathProfile, settings: AssessSettings) -> "_Laid":
-        profile, stands, a, b = stood(link, profile)
-        criteria = settings.criteria or _preset_criteria(link, profile, stands, settings, a=a, b=b)
-        levels = clearance.path_levels(
-            profile.distance_m,
-            stands.surface_m,
-            a_amsl_m=a.antenna_amsl_m,
-            b_amsl_m=b.antenna_amsl_m,
-            k=[criterion.k for criterion in criteria],
-            fraction=[criterion.fraction for criterion in criteria],
-            frequency_hz=link.radio.frequency_hz,
-        )
-        errors_m = clearance_errors_m(profile, stands, a_error_m=a.error_m, b_error_m=b.error_m)
-        return cls(profile=profile, stands=stands, a=a, b=b, criteria=criteria, levels=levels, errors_m=errors_m)
-
-    def judged(self, link: Link, settings: AssessSettings) -> PathJudgement:
-        return judge_path(
-            self.profile, self.stands, self.levels, self.criteria, ends=(self.a, self.b), errors_m=self.errors_m,
-            median_k=settings.median_k, frequency_hz=link.radio.frequency_hz, confidence_asked=settings.confidence,
-        )  # fmt: skip
-
-
-def stood(link: Link, profile: PathProfile) -> tuple[PathProfile, Standing, EndLevel, EndLevel]:
-    """A profile as the ends of a link state it, what a ray must clear along it, and the levels of both ends.
-
-    Raises
-    ------
-    LinkError
-        As `assess_in_full`.
-    TerrainGapError
-        The profile has no data somewhere.
-    """
-    _refuse_gaps(link, profile)
-    a, b = end_level(link.a, profile, end="A"), end_level(link.b, profile, end="B")
-    if profile.distance_m.size < 3:
-        profile = with_nodes(profile, (0.5 * profile.length_m,))
-    for level in (a, b):
-        profile = _with_end(profile, level)
-    return profile, standing(profile), a, b
-
-
-def _refuse_gaps(link: Link, profile: PathProfile) -> None:
-    missing = ~np.isfinite(profile.surface_m)
-    if profile.gaps:
-        gap = profile.gaps[0]
-        from_m, to_m, raster = gap.from_m, gap.to_m, gap.raster
-    elif missing.any():
-        from_m, to_m = (float(at) for at in profile.distance_m[missing][[0, -1]])
-        raster = "the profile"
-    else:
-        return
-    raise TerrainGapError(
-        f"terrain has no data from {from_m / 1000.0:.2f} km to {to_m / 1000.0:.2f} km of '{link.name}'",
-        f"raster: {raster}",
-        'add a raster that covers the stretch, or set terrain.gaps = "sea" if it is open water',
-    )
-
-
-def _with_end(profile: PathProfile, level: EndLevel) -> PathProfile:
-    """What the user measured at one end, put into the profile: its ground level, its roof edge and parapet."""
-    site = level.site
-    if site.ground_amsl_m is not None:
-        profile = with_ground_at_end(profile, end=level.end, ground_amsl_m=site.ground_amsl_m)
-    if site.roof_edge_m is None or level.roof_m is None:
-        return profile
-    if site.roof_edge_m >= profile.length_m:
-        raise LinkError(
-            f"site '{site.name}': roof edge at {site.roof_edge_m:g} m lies beyond the other end, {profile.length_m:.1f} m away",
-            "give the distance from the antenna to the edge in the direction of the link",
-        )
-    parapet = site.parapet_m or 0.0
-    top = level.ground_m + level.roof_m + parapet
-    return with_roof_edge(profile, end=level.end, edge_m=site.roof_edge_m, top_amsl_m=top, parapet_m=parapet)
-
-
-def _preset_criteria(
-    link: Link, profile: PathProfile, stands: Standing, settings: AssessSettings, *, a: EndLevel, b: EndLevel
-) -> tuple[Criterion, ...]:
-    extended = True
-    if settings.preset == "p530-temperate":
-        levels = clearance.path_levels(
-            profile.distance_m,
-            stands.surface_m,
-            a_amsl_m=a.antenna_amsl_m,
-            b_amsl_m=b.antenna_amsl_m,
-            k=[worst_month_k(profile.length_m)],
-            fraction=[0.0],
-            frequency_hz=link.radio.frequency_hz,
-        )
-        clear = levels.available_m - levels.need_m[0]
-        extended = is_extended(profile.distance_m, clearance.normalised_clearance(clear, levels.fresnel_radius_m))
-    return criteria_for(settings.preset, distance_m=profile.length_m, median_k=settings.median_k, extended=extended)
 
 
 def _end_result(level: EndLevel, bearing_deg: float, date: dt.date | None) -> tuple[EndResult, str | None, str | None]:
