@@ -1,12 +1,13 @@
 """Pairs on which neither bounds nor the quick confidence can decide: the verdict is planning's, whoever draws."""
 
 from collections.abc import Callable
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
 import pytest
 from made_screening import candidates, every_pair, ground_file, hills, same_bytes, sites
-from made_terrain import raster
+from made_terrain import at, raster
 from numpy.typing import NDArray
 
 import fellspan.screening.batch as batch
@@ -180,3 +181,37 @@ def test_where_a_few_draws_would_decide_planning_itself_is_asked(
         assert len(rows) == len(none_own.own)
         wanted = planned(made, hub, place, rows, terrain)
     np.testing.assert_array_equal(found.confidence[rows], wanted.confidence[rows])
+
+
+def test_what_a_path_passes_in_its_zone_counts_in_draws(tmp_path: Path) -> None:
+    """A tank 5 m beside the path, its top from well below the zone to just below it: clear on the heights in the data."""
+    flat = raster(tmp_path / "flat.tif", 10.0)
+    verdicts = []
+    for top_m in (15.0, 20.0, 22.0, 23.5):
+        tank = at(2500.0, 1495.0)
+        obstacles = tmp_path / "tank.csv"
+        obstacles.write_text(
+            "name,kind,latitude_deg,longitude_deg,height_m,radius_m\n"
+            f"tank,building,{tank.latitude_deg},{tank.longitude_deg},{top_m},1\n"
+        )
+        hub, place = (
+            replace(sites(letter, 1, seed=1), **spot)
+            for letter, spot in (("H", spot_of(500.0)), ("P", spot_of(4500.0)))
+        )
+        made = candidates(hub, place)
+        with Terrain.open(ground=flat, obstacles=obstacles) as terrain:
+            found = screen_pairs(made, hub=np.zeros(1, int), place=np.zeros(1, int), terrain=terrain)
+            wanted = planned(made, np.zeros(1, int), np.zeros(1, int), [0], terrain)
+        assert found.verdict[0] == wanted.verdict[0]
+        assert found.confidence[0] == pytest.approx(wanted.confidence[0], abs=0.07)
+        verdicts.append(int(found.verdict[0]))
+    assert verdicts == [0, 0, 1, 1]
+
+
+def spot_of(east_m: float) -> dict[str, NDArray[np.float64]]:
+    place = at(east_m, 1500.0)
+    return {
+        "latitude_deg": np.array([place.latitude_deg]),
+        "longitude_deg": np.array([place.longitude_deg]),
+        "height_m": np.array([30.0]),
+    }

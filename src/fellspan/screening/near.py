@@ -16,7 +16,7 @@ from fellspan.geodesy.position import Position
 from fellspan.screening.batch import SHORE_STEPS, Batch, Block, Setting
 from fellspan.screening.columns import Columns
 from fellspan.screening.laid import LaidBucket
-from fellspan.screening.near_answers import SURVEYED, Beside, Laid, over_beside_m, surveyed_rows
+from fellspan.screening.near_answers import SURVEYED, Beside, Laid, count_beside, over_beside_m, surveyed_rows
 from fellspan.screening.near_ends import Outlines, near_antennas, near_roof_doubts, near_standings
 from fellspan.screening.near_index import Nearby, greatest_share
 from fellspan.screening.near_overlay import OnPath, Overlaid, ground_at, overlaid
@@ -185,6 +185,8 @@ class NearBatch(Batch):
         rows = self._rows[profiles.which]
         for name in JUDGED:
             getattr(columns, name)[rows] = getattr(found, name)
+        clear = np.flatnonzero(found.verdict == CLEAR).tolist()
+        count_beside(laid, clear, lambda row: self._beside.get(int(profiles.which[row]), ()), found.spare_m)
         block.unsure.append(self._after_draws_near(profiles, stands, found, on))
         return self._bucket(profiles, stands.surface_m, stands.cover_kind, a, b, found)
 

@@ -96,6 +96,17 @@ def over_beside_m(laid: Laid, beside: Callable[[int], Sequence[Beside]]) -> dict
     return found
 
 
+def count_beside(laid: Laid, rows: Sequence[int], beside: Callable[[int], Sequence[Beside]], spare_m: Floats) -> None:
+    """Let what some paths pass in their zones count in `spare_m`, (q, n), at the nearest sample: draws of `design` count it."""
+    for row in rows:
+        distance = laid.over.profiles.distance_m[row]
+        for one, top in beside(row):
+            edge = _lower_edge_m(laid, row, one)
+            if math.isfinite(edge) and math.isfinite(top):
+                nearest = int(np.argmin(np.abs(distance - one.along_m)))
+                spare_m[row, nearest] = min(float(spare_m[row, nearest]), edge - top)
+
+
 def _lower_edge_m(laid: Laid, row: int, one: Passed) -> float:
     """Lowest edge of the zones asked for at an obstacle's offset, m above sea level; infinite where it stands outside them."""
     length = float(laid.over.profiles.length_m[row])
