@@ -5,6 +5,7 @@ from pathlib import Path
 import made_runs
 import numpy as np
 import pytest
+from made_studies import unwrapped
 
 from fellspan.cli.main import run
 from fellspan.planning.planner import open_terrain
@@ -39,7 +40,7 @@ def test_a_row_far_from_the_terrain_is_told_before_the_run(
 ) -> None:
     add(inputs / "places.csv", row)
     assert run(made_runs.arguments("out", "--max-distance", "5 km")) == 2
-    told = capsys.readouterr().err
+    told = unwrapped(capsys.readouterr().err)
     assert "places.csv, row 5, 'House 3': " in told
     assert "km from the terrain: " in told
     assert said in told
@@ -49,7 +50,7 @@ def test_a_row_far_from_the_terrain_is_told_before_the_run(
 def test_hubs_are_looked_at_too_and_all_are_counted(inputs: Path, capsys: pytest.CaptureFixture[str]) -> None:
     add(inputs / "hubs.csv", *(f"Hub {n},-45.26000,36.0{n}640,25 m agl,,14 dBi,90,7,25 dB,0" for n in range(5)))
     assert run(made_runs.arguments()) == 2
-    lines = capsys.readouterr().err.splitlines()
+    lines = unwrapped(capsys.readouterr().err).splitlines()
     assert len(lines) == 4
     assert "hubs.csv, row 5, 'Hub 0'" in lines[0]
     assert "latitude and longitude swapped?" in lines[0]

@@ -139,6 +139,9 @@ WRONG = [
     ("p.csv", (HEAD + ROW.replace("A,", "Caf\u00e9,")).encode("cp1252"), "not UTF-8 text, at", "Caf\u00e9"),
     ("p.csv", (HEAD + ROW).encode("utf-16"), "UTF-16", ""),
     ("p.csv", b"name\0latitude\n", "not a text file", ""),
+    ("p.csv", b"\x00\x10\xff\xfe raster", "not a text file", ""),
+    ("p.csv", HEAD + ROW.replace("36.04217", "36,04217"), "a decimal comma? Write numbers with a point", "5 values"),
+    ("p.csv", HEAD.replace("height", "height,bearing") + ROW, "--hubs and --places the wrong way round", "bearing"),
     ("p.xlsx", b"PK\x03\x04 and so on", "ZIP", ""),
     ("p.kmz", b"PK\x03\x04 and so on", "zipped KML", ""),
     ("p.json", "{", "not JSON", ""),
@@ -174,8 +177,16 @@ def test_what_is_wrong_is_told_in_four_lines_with_its_place(
 
 def test_all_wrong_rows_are_told_at_once(tmp_path: Path) -> None:
     rows = "".join(f"P{n},36.0{n:03d}x,-45.2,6 m above ground\n" for n in range(40))
-    with pytest.raises(SitesFileError, match=r"wrong too: row 5, .* and \d+ more"):
+    with pytest.raises(
+        SitesFileError, match=r"(?s)row 2: .*write latitude first.*row 3: .*wrong too: row 4, .* and \d+ more"
+    ):
         read_places(made(tmp_path, HEAD + rows))
+    different = f"A,36.1x,-45.2,6 m above ground\nB,36.1000,-45.2000,\n{rows}"
+    with pytest.raises(
+        SitesFileError, match=r"(?s)row 2: .*row 3: .*row 4: .*wrong too: row 5, .* and \d+ more"
+    ) as caught:
+        read_places(made(tmp_path, HEAD + different))
+    assert len(str(caught.value).splitlines()) == 4
 
 
 def test_missing_files_and_folders_are_told(tmp_path: Path) -> None:

@@ -72,7 +72,10 @@ class Rows:
             raise SitesFileError(first.what, *first.details[:1], *told, *others[0].details[:1])
         if len(others) < _TOLD:
             raise SitesFileError(first.what, *first.details[:1], *told)
-        left = list(of_row)[_TOLD:]
+        alike = {error.details[:1] for error in (first, *others[: _TOLD - 1])}
+        # What mends them all is worth more than a third row that says the same.
+        told = [*first.details[:1], *told[:1]] if len(alike) == 1 and first.details else told
+        left = list(of_row)[_TOLD - (len(alike) == 1 and bool(first.details)) :]
         few = left[:1]
         for where in left[1:]:
             if len(", ".join((*few, where))) > _WIDEST_LIST:
@@ -145,6 +148,8 @@ def _text_of(data: bytes, path: Path) -> str:
     for mark, name in _OTHER_ENCODINGS:
         if data.startswith(mark):
             raise SitesFileError(f"{path.name} is text in {name}", "save it as UTF-8")
+    if b"\0" in data:
+        raise SitesFileError(f"{path.name} is not a text file", "give CSV in UTF-8, GeoJSON or KML")
     try:
         text = data.decode("utf-8-sig")
     except UnicodeDecodeError as problem:
@@ -154,8 +159,6 @@ def _text_of(data: bytes, path: Path) -> str:
             f"{path.name}, row {line}: not UTF-8 text, at '{shown(around)}'",
             "spreadsheets often write Windows-1252: save it as 'CSV UTF-8' instead",
         ) from None
-    if "\0" in text:
-        raise SitesFileError(f"{path.name} is not a text file", "give CSV, GeoJSON or KML")
     return text
 
 
@@ -188,6 +191,8 @@ class _Columns:
         if key and key not in self.unused:
             near = closest(key, (*self.columns, *self.aliases))
             if near.startswith("did you mean") and abs(len(key) - len(near[14:-2])) <= 2 and len(key) > 3:
+                if key == "bearing":
+                    near = "only hubs have one: are --hubs and --places the wrong way round?"
                 raise SitesFileError(f"{self.rows.file}: unknown column '{shown(spelled)}'", near)
             self.unused[key] = None
         return None
@@ -232,10 +237,12 @@ def _read_csv(reader: _Columns, text: str, file: str) -> None:
             row = Row(where, {})
             if len(cells) > len(header) and any(cell.strip() for cell in cells[len(header) :]):
                 extra = shown(cells[len(header)])
+                remedy = "put a text that holds the separator in double quotes; or does the first row lack a name?"
+                if mark == "," and any(map(_is_cut_number, cells, cells[1:])):
+                    remedy = "a decimal comma? Write numbers with a point, or part the columns by semicolons"
                 reader.rows.add_problem(
-                    row, f"{len(cells)} values for {len(header)} columns, first too many: '{extra}'",
-                    "put a text that holds the separator in double quotes",
-                )  # fmt: skip
+                    row, f"{len(cells)} values for {len(header)} columns, first too many: '{extra}'", remedy
+                )
                 continue
             pairs = ((name, plain(cell)) for name, cell in zip(header, cells, strict=False) if name is not None)
             values = {name: cell for name, cell in pairs if cell}
@@ -247,6 +254,11 @@ def _read_csv(reader: _Columns, text: str, file: str) -> None:
         raise SitesFileError(f"{file}, row {table.line_num}: {problem}", "is a double quote left open?") from None
     finally:
         csv.field_size_limit(previous_limit)
+
+
+def _is_cut_number(whole: str, decimals: str) -> bool:
+    """Whether two cells look like degrees or metres that a decimal comma has cut in two."""
+    return bool(re.fullmatch(r"[+-]?\d{1,3}", whole.strip()) and re.fullmatch(r"\d{3,}", decimals.strip()))
 
 
 def _header(reader: _Columns, cells: Sequence[str], file: str) -> list[str | None]:

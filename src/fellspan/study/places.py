@@ -254,7 +254,9 @@ class _Reader:
             raise _Wrong(said, "give latitude and longitude, or position, or x and y with --crs")
         if ways[1]:
             if not (latitude and longitude):
-                raise _Wrong(f"{'longitude' if latitude else 'latitude'} is missing beside the other")
+                raise _Wrong(
+                    f"{'longitude' if latitude else 'latitude'} is missing", "give latitude and longitude in every row"
+                )
             if _PLAIN_DEGREES.fullmatch(latitude) and _PLAIN_DEGREES.fullmatch(longitude):
                 numbers = float(latitude), float(longitude)
                 if abs(numbers[0]) <= 90.0 and abs(numbers[1]) <= 180.0:
@@ -262,7 +264,7 @@ class _Reader:
             text, crs = f"{_with_point(latitude)}; {_with_point(longitude)}", None
         elif ways[2]:
             if not (easting and northing):
-                raise _Wrong(f"{'y' if easting else 'x'} is missing beside the other")
+                raise _Wrong(f"{'y' if easting else 'x'} is missing", "give x and y in every row")
             if crs is None:
                 raise _Wrong("x and y are given, and no system that they are in", "add --crs EPSG:32623 or the like")
             text = f"{_with_point(easting)}; {_with_point(northing)}"
