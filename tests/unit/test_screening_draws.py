@@ -6,6 +6,7 @@ from pathlib import Path
 
 import numpy as np
 import pytest
+from made_near import survey_file, town_file
 from made_screening import candidates, every_pair, ground_file, hills, same_bytes, sites
 from made_terrain import at, raster
 from numpy.typing import NDArray
@@ -181,6 +182,27 @@ def test_where_a_few_draws_would_decide_planning_itself_is_asked(
         assert len(rows) == len(none_own.own)
         wanted = planned(made, hub, place, rows, terrain)
     np.testing.assert_array_equal(found.confidence[rows], wanted.confidence[rows])
+
+
+def test_among_obstacles_and_surveyed_points_too(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    made, hub, place = many(60, 90)
+    survey, town = survey_file(tmp_path, seed=19), town_file(tmp_path, seed=24)
+    drawn: list[int] = []
+    said = batch.likely
+
+    def likely(*args: object, **options: object) -> Likely:
+        found = said(*args, **options)  # type: ignore[arg-type]
+        drawn.append(int((found.made > 0).sum()))
+        return found
+
+    monkeypatch.setattr(batch, "likely", likely)
+    with Terrain.open(ground=ground_file(tmp_path), survey=survey, obstacles=town) as terrain:
+        found = screen_pairs(made, hub=hub, place=place, terrain=terrain)
+        rows = np.flatnonzero((found.verdict < 2) & (found.confidence > 0.7) & (found.confidence < 0.97)).tolist()[:60]
+        wanted = planned(made, hub, place, rows, terrain)
+    assert sum(drawn) > 5
+    np.testing.assert_array_equal(found.verdict[rows], wanted.verdict[rows])
+    assert set(found.verdict[rows].tolist()) == {0, 1}
 
 
 def test_what_a_path_passes_in_its_zone_counts_in_draws(tmp_path: Path) -> None:

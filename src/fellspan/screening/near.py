@@ -21,9 +21,9 @@ from fellspan.screening.near_ends import Outlines, near_antennas, near_roof_doub
 from fellspan.screening.near_index import Nearby, greatest_share
 from fellspan.screening.near_overlay import OnPath, Overlaid, ground_at, overlaid
 from fellspan.screening.profiles import Profiles, closer, regular, width_of
-from fellspan.screening.rays import CLEAR, JUDGED, MARGINAL, Judged, Rules, closer_look, judged
+from fellspan.screening.rays import CLEAR, JUDGED, MARGINAL, Rules, closer_look, judged
 from fellspan.screening.single import name_of
-from fellspan.screening.stand import Antennas, Standings
+from fellspan.screening.stand import Antennas
 from fellspan.terrain.alongpath import Floats
 from fellspan.terrain.beside import passed_by, tops_m
 from fellspan.terrain.many_obstacles import Starts
@@ -187,15 +187,8 @@ class NearBatch(Batch):
             getattr(columns, name)[rows] = getattr(found, name)
         clear = np.flatnonzero(found.verdict == CLEAR).tolist()
         count_beside(laid, clear, lambda row: self._beside.get(int(profiles.which[row]), ()), found.spare_m)
-        block.unsure.append(self._after_draws_near(profiles, stands, found, on))
+        block.unsure.append(self._after_draws(profiles, stands, found))
         return self._bucket(profiles, stands.surface_m, stands.cover_kind, a, b, found)
-
-    def _after_draws_near(self, profiles: Profiles, stands: Standings, found: Judged, on: Sequence[OnPath]) -> Index:
-        """As `_after_draws`; where survey counts, errors differ from sample to sample, and only draws themselves decide."""
-        surveyed = np.array([one.hits is not None for one in on])
-        plain = replace(found, verdict=np.where(surveyed, MARGINAL, found.verdict).astype(np.int8))
-        rest = self._rows[profiles.which[surveyed & (found.verdict == CLEAR)]]
-        return np.concatenate((self._after_draws(profiles, stands, plain), rest))
 
     def _on_outlines(self, over: Overlaid, outlines: Outlines) -> tuple[Antennas, Antennas]:
         candidates, bare = self._setting.candidates, self._setting.many.layers.is_bare
