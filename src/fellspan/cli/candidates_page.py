@@ -45,14 +45,14 @@ def _many(count: int, what: str) -> str:
 def _places(summary: RunSummary, ink: Ink) -> list[str]:
     counts = summary.by_best_state
     clear = counts["clear"] + counts["clear-bare"]
-    lines = wrapped(f"{_many(clear, 'place')} of {summary.places} with at least one clear hub:")
+    lines = wrapped(f"{_many(clear, 'place')} of {counted(summary.places)} with at least one clear hub:")
     for state, words in STATE_WORDS.items():
         share = 100.0 * counts[state] / max(summary.places, 1)
         named = ink.emphasise(words, _TONES[state])
-        lines.append(f"  {counts[state]:>8} {share:>5.1f} %  {named}")
+        lines.append(f"  {counted(counts[state]):>9} {share:>5.1f} %  {named}")
     for word, said in (("no answer", "no answer: gaps or refused, see below"), ("no hub in reach", "no hub in reach")):
         if counts[word]:
-            lines.append(f"  {counts[word]:>8} {100.0 * counts[word] / summary.places:>5.1f} %  {said}")
+            lines.append(f"  {counted(counts[word]):>9} {100.0 * counts[word] / summary.places:>5.1f} %  {said}")
     if any(summary.by_signal.values()):
         lines += wrapped(
             f"{_many(summary.places_served, 'place')} with a clear hub whose signal meets margin and target too."
@@ -63,13 +63,13 @@ def _places(summary: RunSummary, ink: Ink) -> list[str]:
 
 
 def _pairs(summary: RunSummary) -> list[str]:
-    states = ", ".join(f"{summary.by_state[state]} {words}" for state, words in STATE_WORDS.items())
+    states = ", ".join(f"{counted(summary.by_state[state])} {words}" for state, words in STATE_WORDS.items())
     lines = wrapped(f"Pairs: {states}.")
     status = summary.by_status
     other = [
-        f"{status['gap']} over a gap in the terrain" if status["gap"] else "",
-        f"{status['same place']} at one and the same place" if status["same place"] else "",
-        f"{status['refused']} refused" if status["refused"] else "",
+        f"{counted(status['gap'])} over a gap in the terrain" if status["gap"] else "",
+        f"{counted(status['same place'])} at one and the same place" if status["same place"] else "",
+        f"{counted(status['refused'])} refused" if status["refused"] else "",
     ]
     if any(other):
         lines += wrapped(f"Without an answer: {', '.join(part for part in other if part)}.")
@@ -82,9 +82,9 @@ def _hubs(summary: RunSummary, ink: Ink) -> list[str]:
     rows = [
         (
             hub.name,
-            str(hub.best_for),
-            str(hub.pairs),
-            *(str(hub.by_state[state]) for state in ("clear", "clear-bare", "marginal", "obstructed")),
+            counted(hub.best_for),
+            counted(hub.pairs),
+            *(counted(hub.by_state[state]) for state in ("clear", "clear-bare", "marginal", "obstructed")),
         )
         for hub in listed[:_MOST_HUBS]
     ]
