@@ -10,7 +10,9 @@ import pytest
 HERE = Path(__file__).parent
 
 
-@pytest.mark.parametrize("file", ["test_screening_kernels.py", "test_errors_kernel.py", "test_sweep_kernel.py", "test_sheet_kernel.py"])
+@pytest.mark.parametrize(
+    "file", ["test_screening_kernels.py", "test_errors_kernel.py", "test_sweep_kernel.py", "test_sheet_kernel.py"]
+)
 def test_the_loops_pass_their_tests_uncompiled(file: str) -> None:
     ran = subprocess.run(
         [sys.executable, "-m", "pytest", "-n", "0", "-q", "-p", "no:cacheprovider", "-m", "not slow", str(HERE / file)],
