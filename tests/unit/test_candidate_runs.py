@@ -377,37 +377,3 @@ def test_threads_take_only_a_few_chunks_ahead() -> None:
     with pytest.raises(AttributeError):
         next(done)  # the jobs are none; only how many were taken counts
     assert len(taken) == 4
-
-
-def test_a_worker_that_finds_other_files_or_is_another_version_refuses(inputs: Path) -> None:
-    from dataclasses import replace
-
-    from fellspan.errors import RunError
-    from fellspan.runs.inputs import files_alike
-    from fellspan.study.screening_study import load_screening
-
-    found = load_screening(inputs / "study.toml", hubs=inputs / "hubs.csv", places=inputs / "places.csv")
-    pairs = PairList(hubs=found.candidates.hubs, places=found.candidates.places)
-    files = files_alike(found.study)
-    assert [Path(name).name for name, _ in files] == ["ground.tif"]
-    job = work.job_of(next(pairs.chunks()), found.candidates, study=found.study, run="one", files=files)
-    try:
-        assert work.work(job).hub.size == 80
-        with pytest.raises(RunError, match=r"bytes, and the run rests on one with"):
-            work.work(replace(job, run="two", files=((files[0][0], files[0][1] + 1),)))
-        with pytest.raises(RunError, match="cannot read"):
-            work.work(replace(job, run="three", files=(("/nowhere/ground.tif", 1),)))
-        with pytest.raises(RunError, match=r"this worker runs Fellspan 0\.1\.0, and the run was started by 7\.0"):
-            work.work(replace(job, version="7.0"))
-    finally:
-        work.close_terrain()
-
-
-def test_dask_that_is_not_installed_is_told(
-    inputs: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
-) -> None:
-    import sys
-
-    monkeypatch.setitem(sys.modules, "distributed", None)
-    assert go("--scheduler", "tcp://127.0.0.1:1") == 2
-    assert "pip install 'fellspan[cluster]'" in capsys.readouterr().err
