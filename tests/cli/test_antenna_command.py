@@ -168,3 +168,27 @@ def test_a_folder_that_cannot_be_made_is_exit_code_4(tmp_path: Path) -> None:
     run = run_command(*DISH, "--out", "file/inside", folder=tmp_path)
     assert run.returncode == 4
     assert "cannot write" in run.stderr
+
+
+def test_antennas_are_compared_at_a_frequency_that_all_of_them_cover(tmp_path: Path) -> None:
+    names = ("dish 0.6 m", "--compare", "grid dish 0.6 m")
+    told = json.loads(run_command("antenna", *names, "--json", folder=tmp_path).stdout)
+    listed = json.loads(run_command("antenna", "--list", "--json", folder=tmp_path).stdout)["antennas"]
+    bands = {one["name"]: (one["lowest_hz"], one["highest_hz"]) for one in listed}
+    frequencies = {one["frequency_hz"] for one in told["antennas"]}
+    assert len(frequencies) == 1
+    assert all(bands[one["name"]][0] <= one["frequency_hz"] <= bands[one["name"]][1] for one in told["antennas"])
+    alone = json.loads(run_command("antenna", "dish 0.6 m", "--json", folder=tmp_path).stdout)["antennas"][0]
+    assert alone["frequency_hz"] not in frequencies
+
+
+def test_antennas_without_a_common_frequency_are_told_not_to_compare(tmp_path: Path) -> None:
+    listed = json.loads(run_command("antenna", "--list", "--json", folder=tmp_path).stdout)["antennas"]
+    low = min(listed, key=lambda one: one["highest_hz"])["name"]
+    high = max(listed, key=lambda one: one["lowest_hz"])["name"]
+    run = run_command("antenna", low, "--compare", high, "--out", "page.html", folder=tmp_path)
+    assert run.returncode == 0, run.stderr
+    words = "gains and beams do not compare"
+    assert words in " ".join(run.stdout.split())
+    assert words in (tmp_path / "page.html").read_text(encoding="utf-8")
+    assert words not in run_command("antenna", high, folder=tmp_path).stdout

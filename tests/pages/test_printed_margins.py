@@ -164,7 +164,7 @@ def test_the_overview_and_a_notebook_show_the_margin_that_decides(plan: StudyPla
     notebook = as_text(study_plan_html(plan))
     for link in plan.links:
         alone, left = least(link)
-        told = f" {left} with neighbours; {alone} without" if alone != left else f" {left} "
+        told = f" {left} {alone} without neighbours" if alone != left else f" {left} "
         assert told in table, link.result.name
         level = f"{down(link.result.received_dbm.at_a or 0.0)} / {down(link.result.received_dbm.at_b or 0.0)}"
         assert level in table

@@ -7,6 +7,7 @@ from exports_made_plan import LENGTH_M, made_criterion, made_plan
 
 from fellspan.links import words
 from fellspan.links.verdicts import SightLine, reasons
+from fellspan.report.wording import true_minus
 
 MISSED = made_criterion(0, "ridge", (36.0, -45.0))
 
@@ -65,3 +66,10 @@ def test_clear_on_bare_ground_is_a_state_of_its_own() -> None:
     ):
         assert words.state_of(replace(result, verdict=verdict, basis=basis)) == state
     assert "bare ground only" in words.STATE_WORDS["clear-bare"]
+
+
+def test_only_quantities_get_a_true_minus() -> None:
+    line = "Signal: -42.8 dBm at 'Pier -3' (-1.5 dB, tilt -0.4°), Beacon - West Point, link A-2, 3-4 m"
+    assert (
+        true_minus(line) == "Signal: −42.8 dBm at 'Pier -3' (−1.5 dB, tilt −0.4°), Beacon - West Point, link A-2, 3-4 m"
+    )

@@ -23,7 +23,8 @@ def antenna_command(
         str | None, typer.Argument(help="Name in the catalogue, or a pattern file (.csv).", show_default=False)
     ] = None,
     frequency: Annotated[
-        str | None, typer.Option("--frequency", help="Such as '5.8 GHz'; the middle of its band if not given.")
+        str | None,
+        typer.Option("--frequency", help="Such as '5.8 GHz'; else the middle of its band, or of what bands share."),
     ] = None,
     file: Annotated[Path | None, typer.Option("--file", help="Pattern file, instead of a name.")] = None,
     compare: Annotated[
@@ -50,6 +51,7 @@ def antenna_command(
     if not asked:
         raise UsageError("no antenna is named", "fellspan antenna NAME, or --file FILE.csv", "fellspan antenna --list")
     _check_count(len(asked))
+    frequency = frequency or _shared(asked, known)
     sheets = [
         _sheet(one, known, is_file=is_file, frequency=frequency, height=height, tilt_deg=tilt) for one, is_file in asked
     ]
@@ -71,6 +73,20 @@ def _check_count(asked: int) -> None:
         raise UsageError(
             f"{asked} antennas on one diagram cannot be told apart", f"compare {MOST_CURVES} at most at a time"
         )
+
+
+def _shared(asked: "list[tuple[str, bool]]", known: "Catalogue") -> str | None:
+    """The frequency that antennas of the catalogue are compared at: the middle of what their bands share; None for one alone.
+
+    Gains and beams at different frequencies say nothing of which antenna is better.
+    """
+    named = [known.find(one, None) for one, is_file in asked if not is_file]
+    if len(named) < 2 or len(named) < len(asked):
+        return None
+    lowest, highest = max(one.lowest_hz for one in named), min(one.highest_hz for one in named)
+    if lowest > highest:
+        return None
+    return f"{_middle_of(lowest, highest) / 1e9:.12g} GHz"
 
 
 def _sheet(
@@ -105,10 +121,13 @@ def _sheet(
 
 
 def _pages(sheets: "list[AntennaSheet]") -> list[str]:
+    from fellspan.report.antenna_sheet import apart_words
+
     lines: list[str] = []
     for sheet in sheets:
         lines += [*_page(sheet), ""]
-    return lines[:-1]
+    apart = apart_words(sheets)
+    return [*lines, *wrapped(apart, first="! ")] if apart else lines[:-1]
 
 
 def _page(sheet: "AntennaSheet") -> list[str]:
@@ -197,5 +216,9 @@ def _size(antenna: "CatalogueAntenna") -> str:
 
 def _middle_hz(antenna: "CatalogueAntenna") -> float:
     """A round frequency in the middle of the band, on a scale of ratios."""
-    middle = float(f"{(antenna.lowest_hz * antenna.highest_hz) ** 0.5:.2g}")
-    return min(max(middle, antenna.lowest_hz), antenna.highest_hz)
+    return _middle_of(antenna.lowest_hz, antenna.highest_hz)
+
+
+def _middle_of(lowest_hz: float, highest_hz: float) -> float:
+    middle = float(f"{(lowest_hz * highest_hz) ** 0.5:.2g}")
+    return min(max(middle, lowest_hz), highest_hz)

@@ -8,7 +8,7 @@ from markupsafe import Markup
 from fellspan import __version__
 from fellspan.links.safety import ANTENNA_TOPICS, safety_lines
 from fellspan.report import assets, wording
-from fellspan.report.antenna_sheet import PLANE_OF_FIELD, AntennaSheet, sheet_rows
+from fellspan.report.antenna_sheet import PLANE_OF_FIELD, AntennaSheet, apart_words, sheet_rows
 from fellspan.report.footprint_drawing import NARROW_WIDTH, contour_words, draw_footprint
 from fellspan.report.plane_views import PLANES, PlaneView, plane_views
 from fellspan.report.polar_drawing import LETTERS, MOST_CURVES, PLANE_WORD, curve_of
@@ -73,6 +73,7 @@ def render_antenna_page(sheets: Sequence[AntennaSheet]) -> str:
     return made.get_template("antenna.html.j2").render(
         sheets=list(zip(LETTERS, sheets, strict=False)),
         compared=len(sheets) > 1,
+        apart=apart_words(sheets),
         title=", ".join(sheet.pattern.name for sheet in sheets),
         facts=[(label, [dict(listed).get(label, "–") for listed in rows]) for label in labels],
         key=[(letter, sheet.pattern.name) for letter, sheet in zip(LETTERS, sheets, strict=False)],

@@ -1,5 +1,6 @@
 """What a person asks of an antenna, as rows of words: shared by the terminal and the antenna page. Works nothing out itself."""
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Any
 
@@ -46,6 +47,15 @@ def sheet_of(
         frontal_area_m2=frontal_area_m2,
         note=note,
         footprint=footprint,
+    )
+
+
+def apart_words(sheets: Sequence[AntennaSheet]) -> str:
+    """What a reader must know of antennas that are shown at different frequencies; empty where they are not."""
+    if len({round(sheet.pattern.frequency_hz) for sheet in sheets}) < 2:
+        return ""
+    return (
+        "Each antenna is shown at a frequency of its own: gains and beams do not compare. --frequency sets one for all."
     )
 
 

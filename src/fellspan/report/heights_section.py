@@ -58,11 +58,18 @@ def heights_section(link: LinkPlan) -> HeightsSection | None:
             heights.checked,
         ),
         governs=told[0][4] if len({row[4] for row in told}) == 1 else "",
-        sure=f"As planned every criterion holds with {wording.probability(confidence.all_hold)} probability.",
+        sure=f"As planned every criterion holds with {wording.probability(confidence.all_hold)} probability."
+        f"{_lower(confidence)}",
         steps=_steps(confidence),
         assumptions=confidence.assumptions,
         cautions=heights.cautions,
     )
+
+
+def _lower(confidence: ConfidenceResult) -> str:
+    """What a minus means where the masts are higher than need be."""
+    added = [value for one in confidence.heights for value in (one.a_m, one.b_m, one.both_m) if value is not None]
+    return " A minus: by so much it could be lower." if any(value < 0.0 for value in added) else ""
 
 
 def _legend(heights: HeightsResult) -> str:

@@ -334,6 +334,7 @@ def _environment() -> Environment:
         left_by_neighbours=left_by_neighbours,
         km=lambda value, length: wording.kilometres(value, length_m=length),
         metres=wording.metres,
+        minus=wording.true_minus,
         missing=wording.missing,
         number=wording.number,
         percent=wording.percent,

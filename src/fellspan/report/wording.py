@@ -20,12 +20,18 @@ BASIS_SHORT: dict[Basis, str] = {
     "surface raster": "surface raster",
     "bare ground only": "on bare ground only",
 }
+_MINUS = re.compile(r"(?<=[\s(])-(?=\d+(?:\.\d+)? ?(?:dB|m\b|%|°))")
 _CONTROL = re.compile("[\x00-\x08\x0b\x0c\x0e-\x1f\x7f\ud800-\udfff]")
 
 
 def clean(text: str) -> str:
     """`text` without control characters, which neither HTML nor SVG can hold."""
     return _CONTROL.sub("", text)
+
+
+def true_minus(text: str) -> str:
+    """A sentence as the terminal has it with the minus signs of its quantities as pages write them."""
+    return _MINUS.sub("−", text)
 
 
 def shorten(text: str, length: int) -> str:
