@@ -60,9 +60,22 @@ def _thinned(parts: Floats, kept: Index, nearness: Floats, width: float, chosen:
         own = math.floor(parts[AT, i] / (width * wide))
         if best[own] < 0 or nearness[i] < nearness[best[own]]:
             best[own] = i
-    found = np.sort(best[best >= 0])
-    chosen[: found.size] = found
-    return int(found.size)
+    found = 0
+    for k in range(kept.size):
+        i = kept[k]
+        wide = 1.0 if nearness[i] < 1.0 else 2.0 if nearness[i] < 2.0 else 4.0
+        if best[math.floor(parts[AT, i] / (width * wide))] == i:
+            chosen[found] = i
+            found += 1
+    return found
+
+
+@compiled
+def _median(values: Floats) -> float:
+    """The middle one; of an even number the mean of the two."""
+    ordered = np.sort(values)
+    half = ordered.size // 2
+    return float(ordered[half] if ordered.size % 2 else 0.5 * (ordered[half - 1] + ordered[half]))
 
 
 @compiled
@@ -74,13 +87,16 @@ def _chosen(parts: Floats, count: int, tolerance: float, points: Index, spare: F
     nearness = np.empty(count)
     for i in range(count):
         nearness[i] = to_spare(parts, i, tolerance)
-    nearness = np.round(nearness - nearness.min(), 6)
-    kept = np.flatnonzero(nearness < NEAR)
-    everyone = np.arange(count)
-    gaps = np.empty(count)
+    least, near = nearness.min(), 0
+    kept, everyone, gaps = np.empty(count, np.int64), np.arange(count), np.empty(count)
     for i in range(count):
         gaps[i] = _gap(parts, everyone, count, i)
-    chosen, found, width = kept.copy(), kept.size, float(np.median(gaps))
+        nearness[i] = math.floor(1e6 * min(nearness[i] - least, 2.0 * NEAR) + 0.5) / 1e6
+        if nearness[i] < NEAR:
+            kept[near] = i
+            near += 1
+    kept = kept[:near]
+    chosen, found, width = kept.copy(), near, _median(gaps)
     while kept.size > MOST_POINTS:
         found = _thinned(parts, kept, nearness, width, chosen)
         if found <= MOST_POINTS:
