@@ -55,4 +55,6 @@ def test_terminal_page_and_summary_say_that_neighbours_are_not_counted(
     said = "Each pair is judged alone: radios that share a channel, sectors of one hub among them, are not counted here"
     assert said in " ".join(capsys.readouterr().out.split()).replace("! ", "")
     assert any(note.startswith(said) for note in json.loads((tmp_path / "out" / "summary.json").read_text())["notes"])
-    assert said in (tmp_path / "out" / "index.html").read_text(encoding="utf-8")
+    page = (tmp_path / "out" / "index.html").read_text(encoding="utf-8")
+    assert said in page
+    assert "0 of 2 places have at least one clear hub." in page

@@ -63,6 +63,7 @@ def render_candidates_page(summary: RunSummary, study: Study, candidates: Candid
             version=__version__,
             summary=summary,
             clear=summary.by_best_state["clear"] + summary.by_best_state["clear-bare"],
+            bare_places=summary.by_best_state["clear-bare"],
             bare_pairs=summary.by_state["clear-bare"],
             unanswered=summary.pairs - sum(summary.by_state.values()),
             bare=summary.by_basis["bare ground only"],
