@@ -5,7 +5,7 @@ from pathlib import Path
 
 import numpy as np
 import pytest
-from made_near import survey_file, town_file
+from made_near import outline, survey_file, town_file
 from made_screening import (
     assert_as_planned,
     candidates,
@@ -16,10 +16,12 @@ from made_screening import (
     same_bytes,
     sites,
 )
-from made_terrain import raster
+from made_terrain import NORTH, TO_GRID, WEST, lonlat, raster
 
 import fellspan.screening.near as near
 import fellspan.screening.screen as screen
+from fellspan.geodesy.geodesic import GeodesicPath
+from fellspan.geodesy.position import Position
 from fellspan.links.assess import AssessSettings
 from fellspan.links.criteria import Criterion
 from fellspan.screening.pairs import BASES, PATH_VERDICTS, Candidates, PairResults
@@ -75,6 +77,144 @@ def test_antennas_on_the_roofs_of_outlines(tmp_path: Path, monkeypatch: pytest.M
     assert (found.status == 0).sum() > 4
     if np.isnan(typed):
         assert (found.status == 3).any()
+
+
+@pytest.mark.parametrize("typed", [np.nan, 11.0])
+def test_roofs_under_trees_and_beside_masts(tmp_path: Path, monkeypatch: pytest.MonkeyPatch, typed: float) -> None:
+    """What stands highest at an antenna's spot is not always the roof that it stands on."""
+    spots = sites("P", 24, seed=51, height_m=2.0, reference="roof", roof_m=typed, extent_m=(1800.0, 900.0))
+    rows = ["name,kind,wkt,height_m,radius_m"]
+    for number, (latitude, longitude) in enumerate(zip(spots.latitude_deg, spots.longitude_deg, strict=True)):
+        east, south = TO_GRID.transform(longitude, latitude)
+        ring = outline(east - WEST, NORTH - south, (30.0, 20.0), 0.1 * number)
+        rows.append(f'house {number},building,"POLYGON (({ring}))",{6 + number % 7},')
+        if number % 3 == 0:
+            rows.append(f"lime {number},tree,POINT ({longitude} {latitude}),{15 + number % 4},6")
+        if number % 4 == 0:
+            rows.append(f"crane {number},other,POINT ({longitude} {latitude}),{30 + number % 4},4")
+    town = tmp_path / "roofs.csv"
+    town.write_text("\n".join(rows) + "\n")
+    made = candidates(sites("H", 1, seed=52, height_m=90.0, extent_m=(1800.0, 900.0)), spots)
+    flat = raster(tmp_path / "ground.tif", hills(height_m=1.0))
+    with Terrain.open(ground=flat, cover=trees(tmp_path) if np.isnan(typed) else None, obstacles=town) as terrain:
+        found = compared(made, terrain, monkeypatch)
+    assert (found.status == 0).all()
+
+
+def test_a_typed_roof_is_held_against_the_outline_not_against_the_raster_in_it(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    spots = sites("P", 24, seed=57, height_m=2.0, reference="roof", extent_m=(1800.0, 900.0))
+    spots.roof_m[:] = np.linspace(6.5, 13.0, 24)
+    rows = ["name,kind,wkt,height_m"]
+    for number, (latitude, longitude) in enumerate(zip(spots.latitude_deg, spots.longitude_deg, strict=True)):
+        east, south = TO_GRID.transform(longitude, latitude)
+        rows.append(f'house {number},building,"POLYGON (({outline(east - WEST, NORTH - south, (30.0, 20.0), 0.0)}))",6')
+    town = tmp_path / "roofs.csv"
+    town.write_text("\n".join(rows) + "\n")
+    houses = CoverSource(path=raster(tmp_path / "houses.tif", 7.5), kind="building", error_m=1.0)
+    made = candidates(sites("H", 1, seed=58, height_m=90.0, extent_m=(1800.0, 900.0)), spots)
+    with Terrain.open(ground=raster(tmp_path / "ground.tif", 50.0), cover=houses, obstacles=town) as terrain:
+        found = compared(made, terrain, monkeypatch)
+    assert {PATH_VERDICTS[code] for code in found.verdict} >= {"clear", "marginal"}
+
+
+def test_a_top_measured_at_an_antennas_own_spot_stays(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    extent = (1800.0, 900.0)
+    places, hubs = sites("P", 12, seed=59, height_m=1.0, extent_m=extent), sites("H", 1, seed=60, extent_m=extent)
+    rows = ["latitude_deg,longitude_deg,ground_m,top_m,kind,radius_m"]
+    for number, (latitude, longitude) in enumerate(zip(places.latitude_deg, places.longitude_deg, strict=True)):
+        rows.append(f"{latitude},{longitude},100,{101 + number % 6},tree,8")
+    walked = tmp_path / "walked.csv"
+    walked.write_text("\n".join(rows) + "\n")
+    with Terrain.open(ground=raster(tmp_path / "ground.tif", 99.0), survey=walked) as terrain:
+        compared(candidates(hubs, places), terrain, monkeypatch)
+
+
+def test_what_an_isolated_obstruction_spares_does_not_count_beside_the_path(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """50 km at 18 GHz: beside the path only 0.3 of the zone at the worst month's k would reach down to the mast."""
+    ground = np.zeros((60, 600))
+    ground[:, 300] = 10.0
+    file = RasterSource(path=raster(tmp_path / "ground.tif", ground, cell_m=100.0), error_m=0.1)
+    hubs, places = sites("H", 1, seed=1), sites("P", 1, seed=2)
+    for columns, east in ((hubs, 5000.0), (places, 55_000.0)):
+        columns.longitude_deg[0], columns.latitude_deg[0] = lonlat(east, 3000.0)
+        columns.height_m[0] = 80.0
+    middle = GeodesicPath.between(
+        Position(latitude_deg=hubs.latitude_deg[0], longitude_deg=hubs.longitude_deg[0]),
+        Position(latitude_deg=places.latitude_deg[0], longitude_deg=places.longitude_deg[0]),
+    ).positions(np.array([15_000.0]))
+    mast = tmp_path / "mast.csv"
+    spot = f"{middle[0][0] + 2.5 / 111_000.0},{middle[1][0]}"
+    mast.write_text(f"name,kind,latitude_deg,longitude_deg,height_m,radius_m\nmast,other,{spot},30,1\n")
+    made = candidates(hubs, places, settings=AssessSettings(confidence=0.5))
+    made = replace(made, radio=replace(made.radio, frequency_hz=18e9))
+    with Terrain.open(ground=file, obstacles=mast) as terrain:
+        found = compared(made, terrain, monkeypatch)
+    assert PATH_VERDICTS[int(found.verdict[0])] == "clear"
+
+
+def test_what_stands_in_the_sea_and_a_shore_that_was_surveyed(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    ground = np.full((300, 600), 0.3)
+    ground[:, 300:360] = -9999.0
+    file, town = raster(tmp_path / "ground.tif", ground), town_file(tmp_path, seed=61)
+    made = in_town(1, 20, seed=62)
+    made.hubs.longitude_deg[0], made.hubs.latitude_deg[0] = lonlat(1200.0, 1400.0)
+    with Terrain.open(ground=file, obstacles=town, gaps="sea") as terrain:
+        found = compared(made, terrain, monkeypatch)
+    assert (found.status == 0).sum() > 10
+    walked = tmp_path / "walked.csv"
+    rows = ["latitude_deg,longitude_deg,ground_m,radius_m"]
+    for east, south, level in ((3300.0, 1000.0, 30.0), (3300.0, 2000.0, 0.5), (3200.0, 1500.0, 12.0)):
+        longitude, latitude = lonlat(east, south)
+        rows.append(f"{latitude},{longitude},{level},200")
+    walked.write_text("\n".join(rows) + "\n")
+    with Terrain.open(ground=file, survey=walked, gaps="sea") as terrain:
+        found = compared(made, terrain, monkeypatch, alone=20)
+    assert set(found.status.tolist()) == {0, 1}
+
+
+def test_a_survey_of_the_spot_removes_what_an_outline_says_stands_there(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    places = sites("P", 20, seed=53, height_m=12.0, extent_m=(1800.0, 900.0))
+    hubs = sites("H", 1, seed=54, height_m=12.0, extent_m=(1800.0, 900.0))
+    rows = ["name,kind,wkt,height_m,envelope"]
+    survey = ["latitude_deg,longitude_deg,ground_m,top_m,kind,radius_m"]
+    for number, (latitude, longitude) in enumerate(zip(places.latitude_deg, places.longitude_deg, strict=True)):
+        middle = 0.5 * (longitude + hubs.longitude_deg[0]), 0.5 * (latitude + hubs.latitude_deg[0])
+        east, south = TO_GRID.transform(*middle)
+        ring = outline(east - WEST, NORTH - south, (60.0, 40.0), 0.3 * number)
+        kind, envelope = (("building", ""), ("tree", ""), ("other", "crane"))[number % 3]
+        rows.append(f'thing {number},{kind},"POLYGON (({ring}))",30,{envelope}')
+        survey.append(f"{middle[1]},{middle[0]},100,{103 + number % 3},,{15 + 10 * (number % 2)}")
+    town, walked = tmp_path / "town.csv", tmp_path / "walked.csv"
+    town.write_text("\n".join(rows) + "\n")
+    walked.write_text("\n".join(survey) + "\n")
+    flat = raster(tmp_path / "ground.tif", hills(height_m=1.0))
+    with Terrain.open(ground=flat, obstacles=town, survey=walked) as terrain:
+        compared(candidates(hubs, places), terrain, monkeypatch)
+
+
+def test_tops_above_ground_all_the_way_tell_as_a_raster_does(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    extent = (600.0, 500.0)
+    made = candidates(
+        sites("H", 1, seed=55, height_m=25.0, extent_m=extent), sites("P", 4, seed=56, height_m=15.0, extent_m=extent)
+    )
+    rows = ["link,distance_m,top_above_ground_m,radius_m"]
+    rows += [f"H0 - P{place},{distance},{distance % 7},45" for place in (1, 2) for distance in range(0, 900, 40)]
+    walked = tmp_path / "walked.csv"
+    walked.write_text("\n".join(rows) + "\n")
+    with Terrain.open(ground=raster(tmp_path / "ground.tif", hills(height_m=1.0)), survey=walked) as terrain:
+        found = compared(made, terrain, monkeypatch)
+    assert [BASES[code] for code in found.basis] == [
+        "bare ground only",
+        "surface raster",
+        "surface raster",
+        "bare ground only",
+    ]
 
 
 def test_trees_that_grow_in_rasters_and_outlines(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
