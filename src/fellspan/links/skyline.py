@@ -8,7 +8,6 @@ from typing import Final, Literal
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.signal import find_peaks
 
 from fellspan.propagation.constants import EARTH_RADIUS_M
 from fellspan.terrain.fan import Fan, FanObstacle
@@ -230,6 +229,9 @@ def _landmarks(
     if not finite.any():
         return ()
     line = np.where(finite, angle, angle[finite].min())
+    # Half of the time that the commands take to load went into this import; few of them draw a horizon.
+    from scipy.signal import find_peaks
+
     peaks, facts = find_peaks(line, prominence=_PROMINENCE_DEG)
     chosen: list[int] = []
     for at in peaks[np.argsort(-facts["prominences"], kind="stable")].tolist():
