@@ -100,3 +100,24 @@ def test_it_prints_on_paper_in_light_colours(around, watch, tmp_path):
     watched.page.emulate_media(media="print", color_scheme="dark")
     assert watched.page.evaluate("getComputedStyle(document.body).backgroundColor") == "rgb(255, 255, 255)"
     assert watched.page.locator(".told").is_hidden()
+
+
+def test_on_paper_the_map_shows_all_of_the_circle(around, watch, tmp_path):
+    page = tmp_path / "index.html"
+    page.write_text(render_around_page(around), encoding="utf-8")
+    watched = watch(1280, 900)
+    watched.page.goto(page.as_uri())
+    # What a browser does: the event at the width of the screen, then the layout of the sheet, and no script after it.
+    frame, rim, site = watched.page.evaluate("""() => {
+      window.dispatchEvent(new Event("beforeprint"));
+      return ["#map, .folium-map", ".map-rim", ".site-mark i"].map(name => {
+        const box = document.querySelector(name).getBoundingClientRect();
+        return [box.left, box.top, box.right, box.bottom]; }); }""")
+    for inner in (rim, site):
+        assert frame[0] <= inner[0] <= inner[2] <= frame[2]
+        assert frame[1] <= inner[1] <= inner[3] <= frame[3]
+    assert rim[2] - rim[0] > 0.6 * (frame[2] - frame[0])
+    watched.page.set_viewport_size({"width": 703, "height": 1040})
+    watched.page.emulate_media(media="print")
+    sheet = watched.page.evaluate("() => document.querySelector('.map-frame').getBoundingClientRect().width")
+    assert frame[2] - frame[0] <= sheet < 703

@@ -76,5 +76,12 @@
   });
   fit();
   new ResizeObserver(fit).observe(document.getElementById("map"));
-  window.addEventListener("beforeprint", fit);
+  function onPaper(is) {
+    if (document.documentElement.classList.contains("printing") === is) return;
+    document.documentElement.classList.toggle("printing", is);
+    fit();
+  }
+  window.addEventListener("beforeprint", function () { onPaper(true); });
+  window.addEventListener("afterprint", function () { onPaper(false); });
+  window.matchMedia("print").addEventListener("change", function (event) { onPaper(event.matches); });
 }());
