@@ -15,7 +15,7 @@ import numpy as np
 import shapely
 from affine import Affine
 from numpy.typing import NDArray
-from scipy.ndimage import maximum_filter
+from scipy.ndimage import binary_dilation, maximum_filter
 from shapely.geometry.base import BaseGeometry
 
 from fellspan.design.relay_picks import thinned
@@ -38,10 +38,12 @@ COARSE_SLACK_M: Final = 5.0
 FINE_CELLS: Final = 16_000_000
 """Most cells of one fine sweep; ground with more is swept coarsely first."""
 _COARSE_CELLS: Final = 4_000_000
-_TILE: Final = 64
-"""Side of a part that is swept finely, in coarse cells."""
+_PART: Final = 2048
+"""Side of a part that is swept finely, in fine cells: large, since every part is swept from the ends on."""
 _KEPT: Final = 200_000
 """Cells kept of all parts of a big raster, the best of each block."""
+_LEAST: Final = 200
+"""Cells kept of a part at least."""
 _GROUND: Final = HEIGHT_REFERENCES.index("ground")
 
 
@@ -66,6 +68,10 @@ class Cells:
     looked_at: int
     whole: bool = True
     """Whether these are all that the sweeps let through."""
+    seen: NDArray[np.bool_] | None = None
+    """Where not `whole`: cells of the grid in which something passes the sweeps, kept or not."""
+    seen_cells: int = 0
+    """How many fine cells that is."""
 
     def chosen(self, which: NDArray[np.int64] | NDArray[np.bool_]) -> "Cells":
         """Some of them."""
@@ -139,25 +145,53 @@ def _coarse_to_fine(ground: Ground, window: Bounds, *, cell_m: float) -> Cells:
     needed = _most_needed(fields)
     heights = np.nan_to_num(np.asarray(first.ground_m, dtype=np.float64), nan=-1e9)
     rise = maximum_filter(heights, size=3) - heights
-    worth = needed - rise <= ground.mast_m + SLACK_M + COARSE_SLACK_M
+    # and their neighbours: the rays of a coarse sweep pass between narrow gaps, and a cell's middle may lie out of reach
+    worth = binary_dilation(needed - rise <= ground.mast_m + SLACK_M + COARSE_SLACK_M, np.ones((3, 3)))
     parts: list[Cells] = []
-    for top in range(0, worth.shape[0], _TILE):
-        for left in range(0, worth.shape[1], _TILE):
-            tile = worth[top : top + _TILE, left : left + _TILE]
+    wide = max(1, round(first.cell_m / min(stack.cell_m for stack in ground.terrain.layers.stacks)))
+    side = max(1, _PART // wide)
+    tops, lefts = range(0, worth.shape[0], side), range(0, worth.shape[1], side)
+    keep = max(_LEAST, _KEPT // (len(tops) * len(lefts)))
+    seen, seen_cells = np.zeros(worth.shape, dtype=np.bool_), 0
+    for top in tops:
+        for left in lefts:
+            tile = worth[top : top + side, left : left + side]
             rows, columns = np.nonzero(tile)
             if not rows.size:
                 continue
             corners_c = left + np.array([columns.min(), columns.max() + 1.0])
             corners_r = top + np.array([rows.min(), rows.max() + 1.0])
-            part = _box(first, corners_c, corners_r)
-            try:
-                swept = [ground.sweep(site, part) for site in ground.ends]
-            except TerrainGapError:
+            swept = _swept_in_turn(ground, _box(first, corners_c, corners_r))
+            if not swept:
                 continue
             found = _through(ground, swept)
-            keep = max(200, _KEPT // max(1, worth.size // _TILE**2))
+            row, column = _in_grid(first, found.latitude_deg, found.longitude_deg)
+            # bounds in degrees reach over into other parts
+            inside = (row >= top) & (row < top + side) & (column >= left) & (column < left + side)
+            found, row, column = found.chosen(inside), row[inside], column[inside]
+            passing = found.spare_m >= 0.0
+            seen[row[passing], column[passing]] = True
+            seen_cells += int(passing.sum())
             parts.append(found.chosen(thinned(found.spare_m, found.row, found.column, most=keep)))
-    return _joined(parts, _through(ground, fields), looked_at=sum(part.looked_at for part in parts))
+    joined = _joined(parts, _through(ground, fields), looked_at=int(np.isfinite(needed).sum()) * wide**2)
+    area = joined.cell_area_m2 / wide**2
+    return dataclasses.replace(joined, seen=seen, seen_cells=seen_cells, cell_area_m2=area)
+
+
+def _swept_in_turn(ground: Ground, part: Bounds) -> list[HeightField]:
+    """The sweeps of all ends over a part, each over what the one before let through; empty where nothing is left."""
+    swept: list[HeightField] = []
+    try:
+        for site in ground.ends:
+            swept.append(ground.sweep(site, part))
+            row, column = np.nonzero(_most_needed(swept) <= ground.mast_m + SLACK_M)
+            if not row.size:
+                return []
+            corners = [np.array([at.min(), at.max() + 1.0]) for at in (column, row)]
+            part = _box(swept[0], *corners)
+    except TerrainGapError:
+        return []
+    return swept
 
 
 def _through(ground: Ground, fields: Sequence[HeightField]) -> Cells:
@@ -267,8 +301,7 @@ def _joined(parts: Sequence[Cells], coarse: Cells, *, looked_at: int) -> Cells:
         return dataclasses.replace(coarse.chosen(np.zeros(0, dtype=np.int64)), whole=False)
     latitude = np.concatenate([part.latitude_deg for part in parts])
     longitude = np.concatenate([part.longitude_deg for part in parts])
-    x, y = transformer(WGS84, coarse.crs).transform(longitude, latitude)
-    column, row = on_plane(~coarse.transform, np.asarray(x), np.asarray(y))
+    row, column = _in_grid(coarse, latitude, longitude)
     return dataclasses.replace(
         coarse,
         latitude_deg=latitude,
@@ -277,10 +310,22 @@ def _joined(parts: Sequence[Cells], coarse: Cells, *, looked_at: int) -> Cells:
         y_m=np.concatenate([part.y_m for part in parts]),
         ground_m=np.concatenate([part.ground_m for part in parts]),
         spare_m=np.concatenate([part.spare_m for part in parts]),
-        row=np.clip(np.floor(row), 0, coarse.shape[0] - 1).astype(np.int64),
-        column=np.clip(np.floor(column), 0, coarse.shape[1] - 1).astype(np.int64),
+        row=row,
+        column=column,
         looked_at=looked_at,
         whole=False,
+    )
+
+
+def _in_grid(
+    grid: "HeightField | Cells", latitude: Floats, longitude: Floats
+) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
+    """Row and column of places in a grid that holds them."""
+    x, y = transformer(WGS84, grid.crs).transform(longitude, latitude)
+    column, row = on_plane(~grid.transform, np.asarray(x), np.asarray(y))
+    return (
+        np.clip(np.floor(row), 0, grid.shape[0] - 1).astype(np.int64),
+        np.clip(np.floor(column), 0, grid.shape[1] - 1).astype(np.int64),
     )
 
 

@@ -42,6 +42,8 @@ Progress = Callable[[int, int, str], None]
 
 JUDGE_AT_MOST: Final = 60_000
 """Cells that are judged one by one; of more, the best of each block of cells stands for it."""
+JUDGE_SAMPLES: Final = 250_000_000
+"""Samples of all hops from one end that are judged; over fine rasters and long hops that is fewer cells."""
 LONGEST_NAME: Final = 400
 """Letters of a link's name that a study file takes."""
 _TRIES: Final = 8
@@ -181,9 +183,10 @@ class _Search:
             )
         )
         if cells.row.size:
-            most = affordable(
-                (self.link.a, self.link.b), cells.latitude_deg, cells.longitude_deg, terrain, most=JUDGE_AT_MOST
-            )
+            samples = max(1.0, self.hop_m / (0.5 * min(stack.cell_m for stack in terrain.layers.stacks)))
+            most = min(JUDGE_AT_MOST, max(1000, int(JUDGE_SAMPLES / samples)))
+            ends = (self.link.a, self.link.b)
+            most = affordable(ends, cells.latitude_deg, cells.longitude_deg, terrain, most=most)
             if cells.row.size > most:
                 cells = cells.chosen(thinned(cells.spare_m, cells.row, cells.column, most=most))
         hops = self._both_hops(cells.columns(self.request.mast_m), terrain)
@@ -192,10 +195,12 @@ class _Search:
         if exact:
             seen = hops[0].clear & hops[1].clear
             clear[cells.row[seen], cells.column[seen]] = True
+        elif all_cells.seen is not None:
+            clear = all_cells.seen
         else:
             seen = all_cells.spare_m >= 0.0
             clear[all_cells.row[seen], all_cells.column[seen]] = True
-        count = int(clear.sum())
+        count = int(clear.sum()) if all_cells.seen is None else all_cells.seen_cells
         area = RelayArea(
             clear=clear,
             transform=cells.transform,
