@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 
 from fellspan.design.case import Case
 from fellspan.design.draws import DRAWS, MOST_POINTS, draw, errors_of, marginal_m, parts_of
-from fellspan.design.error_model import GRADIENT_UNIT, ErrorModel, default_error_model
+from fellspan.design.error_model import GRADIENT_UNIT, ErrorModel, default_error_model, error_model, error_models
 from fellspan.links import clearance
 from fellspan.links.assess import AssessSettings
 from fellspan.screening import draws_kernel, errors_kernel
@@ -103,6 +103,12 @@ def taken_apart(case: Case) -> tuple[Floats, int]:
         parts,
     )  # fmt: skip
     return parts, count
+
+
+def test_models_of_many_cells_are_those_of_each() -> None:
+    cells = np.array([0.25, 2.0, 2.0000001, 11.9, 12.0, 30.0, 60.0, 100.0, 101.0, 3000.0])
+    each = [columns_of(error_model(cell))[0] for cell in cells.tolist()]
+    np.testing.assert_allclose(error_models(cells), each, rtol=1e-15)
 
 
 @pytest.mark.parametrize("name", list(paths()))

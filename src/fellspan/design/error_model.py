@@ -6,6 +6,9 @@ How large the errors of a raster are is stated by the study or in terrain/error_
 from dataclasses import dataclass
 from typing import Final
 
+import numpy as np
+from numpy.typing import NDArray
+
 from fellspan.terrain.profile import PathProfile
 
 GROUND_REACH_M: Final = (
@@ -63,6 +66,20 @@ def error_model(cell_m: float) -> ErrorModel:
         ground_reach_m=max(reach, cell_m),
         cover_reach_m=max(COVER_REACH_M, cell_m),
         position_error_m=POSITION_CELLS * cell_m,
+    )
+
+
+def error_models(cell_m: NDArray[np.float64]) -> NDArray[np.float64]:
+    """The same for rasters of many cells (q,), (q, 4): reaches of ground and cover, m, position error, m, error of 1/k."""
+    up_to, reach = (np.array(column) for column in list(zip(*GROUND_REACH_M, strict=True))[:2])
+    return np.stack(
+        (
+            np.maximum(reach[np.searchsorted(up_to, cell_m)], cell_m),
+            np.maximum(COVER_REACH_M, cell_m),
+            POSITION_CELLS * cell_m,
+            np.full(cell_m.shape, GRADIENT_ERROR * GRADIENT_UNIT),
+        ),
+        axis=1,
     )
 
 

@@ -36,11 +36,11 @@ from fellspan.screening.errors_kernel import (
     taken_apart,
     to_spare,
 )
+from fellspan.screening.sure import FALLS, HOLDS, UNSURE
 from fellspan.terrain.compiling import compiled
 
 FIRST: Final = 256
 """Draws, and as many mirrored ones, that are made at a time."""
-(UNSURE, HOLDS, FALLS) = range(3)
 
 
 @compiled

@@ -14,7 +14,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from fellspan.design.draws import DRAWS, MOST_POINTS, SEED
-from fellspan.design.error_model import GRADIENT_UNIT, error_model
+from fellspan.design.error_model import error_models
 from fellspan.design.normals import KEPT, normals
 from fellspan.links import clearance
 from fellspan.screening.profiles import Profiles
@@ -30,6 +30,9 @@ THINNED: Final = 0.02
 THINNED_ALIKE: Final = 0.006
 """The same for draws at samples thinned as planning thins them, but for the heights that it looks for (our own rule)."""
 
+UNSURE, HOLDS, FALLS = range(3)
+"""What draws say of a clear verdict."""
+
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Likely:
@@ -41,9 +44,6 @@ class Likely:
     """The share of the draws made that holds; where bounds decide, the upper one."""
     made: Index
     """How many draws were made: 0 where bounds decide."""
-
-
-UNSURE, HOLDS, FALLS = range(3)
 
 
 def likely(
@@ -75,12 +75,6 @@ class _Paths:
     @classmethod
     def of(cls, spare_m: Floats, profiles: Profiles, stands: Standings, errors: HeightErrors) -> "_Paths":
         nothing = np.empty((profiles.last.size, 0))
-        kinds, kind = np.unique(profiles.cell_m, return_inverse=True)
-        models = [error_model(cell) for cell in kinds.tolist()]
-        numbers = [
-            (one.ground_reach_m, one.cover_reach_m, one.position_error_m, one.gradient_error * GRADIENT_UNIT)
-            for one in models
-        ]
         return cls(
             arrays=(
                 profiles.last,
@@ -94,7 +88,7 @@ class _Paths:
                 profiles.cell_m,
                 errors.a_m,
                 errors.b_m,
-                np.array(numbers)[kind],
+                error_models(profiles.cell_m),
             ),
             thinned=profiles.last >= MOST_POINTS,
         )
