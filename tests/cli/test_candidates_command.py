@@ -82,7 +82,9 @@ WRONG = [
     (("--place-antenna", "horn"), "there is no antenna named 'horn'"),
     (("--place-height", "6 m"), "does not say above what"),
     (("--min-distance", "5 km", "--max-distance", "2 km"), "5000 m, is not below the greatest, 2000 m"),
-    (("--max-distance", "far"), "far"),
+    (("--max-distance", "far"), "--max-distance: 'far'"),
+    (("--place-height", "6"), "--place-height: length '6' has no unit"),
+    (("--lines", "some"), "--lines 'some' is not allowed"),
     (("--best", "0"), "'--best'"),
     (("--scheduler", "nowhere"), "nowhere"),
 ]  # fmt: skip

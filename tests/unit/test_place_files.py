@@ -251,6 +251,7 @@ def test_listed_pairs_are_looked_up_and_sorted(tmp_path: Path) -> None:
     assert list(zip(hub.tolist(), place.tolist(), strict=True)) == [(0, 0), (0, 1), (1, 0)]
     for wrong, said in (
         ("North,Elsewhere\n", "Elsewhere"),
+        ("Nord,Alder\n", r"(?s)'Nord'.*did you mean 'North'\?"),
         ("South,Alder\n", "stands in row 2 too"),
         (",Alder\n", "hub is missing"),
     ):

@@ -1,17 +1,14 @@
 """`fellspan candidates`: many possible links at once, from hubs to places, in a run that can be stopped and goes on."""
 
-from enum import StrEnum
+from collections.abc import Callable
 from pathlib import Path
-from typing import Annotated
+from typing import Annotated, TypeVar, get_args
 
 import typer
 
+from fellspan.errors import FellspanError, UsageError
 
-class Lines(StrEnum):
-    """Which pairs are written as lines on a map."""
-
-    all = "all"
-    best = "best"
+_Value = TypeVar("_Value")
 
 
 def candidates_command(
@@ -49,8 +46,8 @@ def candidates_command(
     ] = None,
     best: Annotated[int, typer.Option("--best", min=1, max=100, help="Hubs to list for each place.")] = 3,
     lines: Annotated[
-        Lines, typer.Option("--lines", help="Pairs to write as lines for a GIS: all, or only the best hubs.")
-    ] = Lines.all,
+        str, typer.Option("--lines", metavar="WHICH", help="Pairs to write as lines for a GIS: all, or best hubs only.")
+    ] = "all",
     fresh: Annotated[bool, typer.Option("--fresh", help="Start anew; drop an earlier run in the folder.")] = False,
     scheduler: Annotated[
         str | None,
@@ -69,6 +66,8 @@ def candidates_command(
     A run that was stopped goes on with the same command.
     """
     from fellspan.cli.candidates_run import Asked, run_candidates
+    from fellspan.cli.choices import one_of
+    from fellspan.exports.candidates_folder import Lines
     from fellspan.quantities import parse_antenna_height, parse_length_m
     from fellspan.study.screening_study import Wishes
 
@@ -80,7 +79,7 @@ def candidates_command(
             pairs=pairs,
             out=out,
             best=best,
-            lines=lines.value,
+            lines=one_of(lines, get_args(Lines), "--lines"),
             fresh=fresh,
             scheduler=scheduler,
             chunk=chunk,
@@ -90,11 +89,19 @@ def candidates_command(
                 radio=radio,
                 antenna_hub=hub_antenna,
                 antenna_place=place_antenna,
-                height_hub=None if hub_height is None else parse_antenna_height(hub_height),
-                height_place=None if place_height is None else parse_antenna_height(place_height),
-                min_distance_m=None if min_distance is None else parse_length_m(min_distance),
-                max_distance_m=None if max_distance is None else parse_length_m(max_distance),
+                height_hub=_read("--hub-height", hub_height, parse_antenna_height),
+                height_place=_read("--place-height", place_height, parse_antenna_height),
+                min_distance_m=_read("--min-distance", min_distance, parse_length_m),
+                max_distance_m=_read("--max-distance", max_distance, parse_length_m),
                 crs=crs,
             ),
         )
     )
+
+
+def _read(option: str, text: str | None, parse: Callable[[str], _Value]) -> _Value | None:
+    """What an option says; None where it is not given."""
+    try:
+        return None if text is None else parse(text)
+    except FellspanError as error:
+        raise UsageError(f"{option}: {error.what}", *error.details) from None

@@ -17,6 +17,7 @@ from fellspan.geodesy.coordinates import parse_position
 from fellspan.geodesy.position import Position
 from fellspan.quantities import AntennaHeight, parse_antenna_height, parse_length_m
 from fellspan.screening.pairs import HEIGHT_REFERENCES, SiteColumns
+from fellspan.study.messages import did_you_mean
 from fellspan.study.place_rows import POSITION, Row, Rows, read_place_rows
 from fellspan.terrain.tables import shown
 from fellspan.vocabulary import HeightReference
@@ -70,6 +71,8 @@ _ABOVE: Final[dict[str, HeightReference]] = {
 _PLAIN_DEGREES: Final = re.compile(r"[+-]?[0-9]{1,3}\.[0-9]{3,}")
 _DECIMAL_COMMA: Final = re.compile(r"[+-]?[0-9]+,[0-9]+")
 _FEW: Final = 3
+_MOST_COMPARED: Final = 5_000
+"""Names among which the nearest is looked for; more would take seconds."""
 
 _T = TypeVar("_T")
 Indices = NDArray[np.int64]
@@ -195,7 +198,9 @@ def read_pairs(path: Path, *, hubs: SiteColumns, places: SiteColumns) -> tuple[I
             elif not name:
                 rows.add_problem(row, f"{column} is missing", "each row names a hub and a place")
             else:
-                rows.add_problem(row, f"there is no {column} named '{shown(name)}' in the file of {column}s")
+                few = len(known) <= _MOST_COMPARED and len(rows.wrong) < _FEW
+                near = did_you_mean(name, known) if few else ()
+                rows.add_problem(row, f"there is no {column} named '{shown(name)}' in the file of {column}s", *near)
         if len(found) == 2:
             pair = (found[0], found[1])
             if pair in seen:
