@@ -136,6 +136,22 @@ def test_an_outline_across_the_antimeridian_is_found_from_both_sides(first_longi
         assert 0.5 * (start + stop) == pytest.approx(0.5 * GEOD.inv(179.99, 10.0, -179.99, 10.0)[2], abs=0.05)
 
 
+def test_outlines_of_any_numbers_across_the_antimeridian_stay_closed() -> None:
+    random = np.random.default_rng(12)
+    fields = Fields(where="test", values={}, error=ObstacleFileError)
+    for _ in range(50):
+        angle = np.sort(random.uniform(0.0, 2.0 * np.pi, 5))
+        longitude = (180.0 + 1e-3 * np.cos(angle) + 180.0) % 360.0 - 180.0
+        (shape,) = simple_parts(shapely.Polygon(np.column_stack((longitude, 50.0 + 1e-3 * np.sin(angle)))), fields, [])
+        assert np.ptp(shapely.get_coordinates(shape)[:, 0]) < 0.003
+
+
+def test_an_outline_round_a_pole_is_refused() -> None:
+    fields = Fields(where="test", values={}, error=ObstacleFileError)
+    with pytest.raises(ObstacleFileError, match="goes round a pole"):
+        simple_parts(shapely.Polygon([(-120.0, 89.0), (0.0, 89.0), (120.0, 89.0)]), fields, [])
+
+
 def test_beside_the_pole() -> None:
     a, b = Position(latitude_deg=89.9, longitude_deg=10.0), Position(latitude_deg=89.9, longitude_deg=170.0)
     path = GeodesicPath.between(a, b)

@@ -107,7 +107,10 @@ def simple_parts(shape: BaseGeometry, fields: Fields, notes: list[str]) -> list[
                 f"coordinate {worst[0]:.9g}, {worst[1]:.9g} is not longitude, latitude in degrees",
                 "longitude comes first, within -180 to 180; are they swapped, or in metres?",
             )
-        flat = _unwrapped(part)
+        try:
+            flat = _unwrapped(part)
+        except shapely.errors.GEOSException:
+            raise fields.fail("the outline goes round a pole", "cut it into parts, none of which does") from None
         if flat.geom_type == "Polygon" and not flat.is_valid:
             notes.append(f"{fields.where}: the outline crosses itself and was mended")
             mended = shapely.get_parts(np.array([shapely.make_valid(flat)], dtype=object))
@@ -125,8 +128,10 @@ def _unwrapped(shape: BaseGeometry) -> BaseGeometry:
     west, east = points[:, 0].min(), points[:, 0].max()
     if west >= -180.0 and east < 180.0 and east - west <= 180.0:
         return shape
-    longitude = np.unwrap(points[:, 0], period=360.0)
-    longitude -= 360.0 * np.floor((longitude[0] + 180.0) / 360.0)
+    # Whole turns, so that a ring still ends where it begins: unwrapping rounds.
+    turns = np.round((np.unwrap(points[:, 0], period=360.0) - points[:, 0]) / 360.0)
+    turns -= np.floor((points[0, 0] + 180.0) / 360.0)
+    longitude = points[:, 0] + 360.0 * turns
     if np.array_equal(longitude, points[:, 0]):
         return shape
     moved: BaseGeometry = shapely.set_coordinates(shapely.force_2d(shape), np.column_stack((longitude, points[:, 1])))
