@@ -46,6 +46,20 @@ def test_a_side_lobe_is_named_with_1_and_the_checks_climb_last(
     assert "\x1b" not in out
 
 
+def test_the_difference_is_that_of_the_levels_shown(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    """And the edge of the band that the crew sheet prints is the edge that a crew is held to."""
+    assert accept(written(tmp_path, LOW)) == 1
+    rows = re.findall(r"(-?\d+\.\d) dBm +(-?\d+\.\d) dBm +([+-]\d+\.\d)", capsys.readouterr().out)
+    assert len(rows) == 2
+    for measured, expected, off in rows:
+        assert float(measured) - float(expected) == pytest.approx(float(off), abs=1e-9)
+    least = float(rows[0][1]) - 3.0
+    for level, code in ((least, 0), (least - 0.1, 1)):
+        text = re.sub(r'level = "[^"]*"', f'level = "{level:.1f} dBm"', GOOD)
+        assert accept(written(tmp_path, text)) == code
+    capsys.readouterr()
+
+
 def test_a_table_says_the_same_as_json(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
     table = "end,what,value\nA,level,-63.5 dBm\nB,level,-64 dBm\n"
     assert accept(written(tmp_path, table, "m.csv"), "--json") == 1

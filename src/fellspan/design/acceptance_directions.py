@@ -12,6 +12,7 @@ from fellspan.design.as_built import AsBuilt, EndLetter, LevelRead, level_read
 from fellspan.links.result import LinkResult
 from fellspan.links.signal_result import DirectionResult, ModulationResult
 from fellspan.links.site import Link
+from fellspan.links.words import down_db
 
 STATE_DB: Final = 1.0
 """What the band grows by for each thing of the state that differs from the plan: the plan is corrected for what the crew says
@@ -83,7 +84,8 @@ def _one(link: Link, result: LinkResult, built: AsBuilt, *, at: EndLetter, refus
                 "and so is the margin until the power is set as planned"
             )
     read = level_read(built.at(at), chains=link.radio.chains, each=built.levels_are == "each chain")
-    expected = None if planned is None else planned + change
+    # As the crew sheet told it: the band that a crew reads there is the band that it is held to.
+    expected = None if planned is None else down_db(planned + change)
     off = None if expected is None or read is None else read.level_dbm - expected
     verdict, why = _verdict(off, expected=expected, read=read, band=band, built=built, refuse=refuse, at=at)
     if read is not None and read.swing_db >= SWING_DB:
