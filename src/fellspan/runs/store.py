@@ -203,7 +203,9 @@ class Store:
     def query(self, sql: str, parameters: Sequence[object] = ()) -> Iterator[tuple[Any, ...]]:
         """Rows of a question, one after the other; sorting that does not fit into memory goes to disk."""
         with errors(self.path):
-            yield from self._connection.execute(sql, parameters)
+            # Not `yield from`: it would close the cursor of a question that is dropped, whose store may be closed by then.
+            for row in self._connection.execute(sql, parameters):  # noqa: UP028
+                yield row
 
 
 def _connected(path: Path) -> sqlite3.Connection:
