@@ -159,18 +159,24 @@ def test_what_an_isolated_obstruction_spares_does_not_count_beside_the_path(
 def test_what_stands_in_the_sea_and_a_shore_that_was_surveyed(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     ground = np.full((300, 600), 0.3)
     ground[:, 300:360] = -9999.0
-    file, town = raster(tmp_path / "ground.tif", ground), town_file(tmp_path, seed=61)
-    made = in_town(1, 20, seed=62)
+    file = raster(tmp_path / "ground.tif", ground)
+    made = in_town(1, 20, seed=62, hub_m=15.0, place_m=8.0)
     made.hubs.longitude_deg[0], made.hubs.latitude_deg[0] = lonlat(1200.0, 1400.0)
+    longitude, _ = lonlat(3300.0, 1500.0)
+    share = (longitude - made.hubs.longitude_deg[0]) / (made.places.longitude_deg - made.hubs.longitude_deg[0])
+    latitude = made.hubs.latitude_deg[0] + share * (made.places.latitude_deg - made.hubs.latitude_deg[0])
+    rows, walk = ["name,kind,wkt,height_m"], ["latitude_deg,longitude_deg,ground_m,radius_m"]
+    for number, north in enumerate(latitude.tolist()):
+        east, south = TO_GRID.transform(longitude, north)
+        ring = outline(east - WEST, NORTH - south, (30.0, 20.0), 0.2 * number)
+        rows.append(f'rig {number},building,"POLYGON (({ring}))",{12 + number % 8}')
+        walk.append(f"{north},{longitude},{(0.5, 12.0)[number % 2]},30")
+    town, walked = tmp_path / "rigs.csv", tmp_path / "walked.csv"
+    town.write_text("\n".join(rows) + "\n")
+    walked.write_text("\n".join(walk) + "\n")
     with Terrain.open(ground=file, obstacles=town, gaps="sea") as terrain:
         found = compared(made, terrain, monkeypatch)
     assert (found.status == 0).sum() > 10
-    walked = tmp_path / "walked.csv"
-    rows = ["latitude_deg,longitude_deg,ground_m,radius_m"]
-    for east, south, level in ((3300.0, 1000.0, 30.0), (3300.0, 2000.0, 0.5), (3200.0, 1500.0, 12.0)):
-        longitude, latitude = lonlat(east, south)
-        rows.append(f"{latitude},{longitude},{level},200")
-    walked.write_text("\n".join(rows) + "\n")
     with Terrain.open(ground=file, survey=walked, gaps="sea") as terrain:
         found = compared(made, terrain, monkeypatch, alone=20)
     assert set(found.status.tolist()) == {0, 1}
