@@ -7,7 +7,7 @@ from typing import Final
 
 from fellspan.cli import figures
 from fellspan.cli.layout import WIDTH, Ink, cut, labelled, printable, table, wrapped
-from fellspan.links.words import STATE_WORDS, state_of
+from fellspan.links.words import STATE_WORDS, decisive_margin_db, least_db, state_of
 from fellspan.planning.plan import LinkPlan
 from fellspan.planning.relay_result import RelayResult, RelayRoute
 from fellspan.report.relay_words import decision, direct_words, searched
@@ -56,11 +56,10 @@ def _route(route: RelayRoute, number: int, ink: Ink) -> list[str]:
 
 def _hop(hop: LinkPlan) -> tuple[str, ...]:
     result = hop.result
-    margins = [margin for margin in (result.margin_db.at_a, result.margin_db.at_b) if margin is not None]
     return (
         printable(f"to {result.ends.b.site}"),
         figures.distance(result.distance_m),
         STATE_WORDS[state_of(result)],
         figures.by_how_much(result.clearance[result.governing]).removesuffix(" to spare"),
-        figures.decibels(min(margins)) if margins else "-",
+        figures.decibels(least_db(decisive_margin_db(result))),
     )

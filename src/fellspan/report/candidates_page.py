@@ -152,7 +152,7 @@ def _data(summary: RunSummary, candidates: Candidates, turned: _Turned) -> dict[
             "state": best.state[shown].tolist(),
             "hub": best.hub[shown].tolist(),
             "signal": best.signal[shown].tolist(),
-            "margin": _rounded(best.margin_db[shown], 1),
+            "margin": _rounded(np.floor(best.margin_db[shown] * 10.0 + 1e-6) / 10.0, 1),  # down, as everywhere
             "km": _rounded(best.distance_m[shown] / 1000.0, 2),
             "extra": _heights(best.extra_m[shown]),
             "sure": _sure_heights(best.extra_m[shown], best.extra_sure_m[shown], best.state[shown]),

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 from typing import Any, Final
 
 from fellspan.geodesy.coordinates import format_position
-from fellspan.links.words import State, state_of
+from fellspan.links.words import State, decisive_margin_db, least_db, state_of
 from fellspan.planning.plan import LinkPlan
 from fellspan.planning.relay_result import RelayResult, RelayRoute
 from fellspan.report import map_geometry as geometry
@@ -121,7 +121,7 @@ _ABOVE: Final = {"ground": "ground", "roof": "roof", "sea": "sea level"}
 
 def _hop(index: int, hop: LinkPlan) -> RelayHop:
     result = hop.result
-    margins = [margin for margin in (result.margin_db.at_a, result.margin_db.at_b) if margin is not None]
+    margin = least_db(decisive_margin_db(result))
     return RelayHop(
         name=result.name,
         page=page_name(index, result.name),
@@ -129,7 +129,7 @@ def _hop(index: int, hop: LinkPlan) -> RelayHop:
         distance=wording.distance(result.distance_m),
         spare=wording.decisive_words(result.clearance[result.governing]),
         signal=result.signal_verdict or "",
-        margin=f"{wording.number(min(margins))} dB" if margins else "",
+        margin="" if margin is None else wording.decibels(margin),
     )
 
 

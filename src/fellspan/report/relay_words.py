@@ -1,6 +1,6 @@
 """What a search for a relay says in sentences, on the terminal and on the page alike. Computes nothing."""
 
-from fellspan.links.words import STATE_WORDS, state_of
+from fellspan.links.words import STATE_WORDS, down_db, state_of
 from fellspan.planning.relay_result import RelayResult
 from fellspan.report.wording import distance, signal_short
 
@@ -17,7 +17,7 @@ def decision(result: RelayResult) -> str:
     best = result.routes[0]
     bare = any(state_of(hop.result) == "clear-bare" for hop in best.hops)
     names = " and ".join(site.name for site in best.relays)
-    margin = "" if best.worst_margin_db is None else f", least margin {best.worst_margin_db:.1f} dB"
+    margin = "" if best.worst_margin_db is None else f", least margin {down_db(best.worst_margin_db):.1f} dB"
     how = "One relay serves" if len(best.relays) == 1 else "It takes a chain of two relays"
     return f"{how}{mast}: best is {names}, every hop clear{' on bare ground only' if bare else ''}{margin}.{_needless(result)}"
 
