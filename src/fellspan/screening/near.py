@@ -107,6 +107,8 @@ class NearBatch(Batch):
             rows = np.flatnonzero(widths == one)
             profiles, doubtful = self._sampled(coarse, rows, [own[row] for row in rows.tolist()], one)
             gap = ~np.isfinite(profiles.ground_m).all(axis=1)
+            # A survey may fill it, or stand on a shore.
+            doubtful = doubtful | (self._surveyed[profiles.which] & (gap | self._at_sea(profiles)))
             self._note_gaps(profiles.rows(gap & ~doubtful))
             self._leave(profiles.which[doubtful], block)
             fit = np.flatnonzero(~gap & ~doubtful)
@@ -138,6 +140,7 @@ class NearBatch(Batch):
             rows = np.flatnonzero(widths == one)
             fine, doubtful = closer(self._laid, raw, rows, more=more, total=total, width=one, step_m=step)
             doubtful = doubtful | ~np.isfinite(fine.ground_m).all(axis=1)
+            doubtful |= self._surveyed[fine.which] & self._at_sea(fine)
             if doubtful.any():
                 self._leave(fine.which[doubtful], block)
                 fine, rows = fine.rows(~doubtful), rows[~doubtful]
@@ -222,10 +225,14 @@ class NearBatch(Batch):
         surveyed = np.array([one is not None for one in hits])
         left = surveyed & (layers.surface is not None)
         if layers.gaps == "sea":
-            open_ = ~np.isfinite(coarse.ground_m).all(axis=1) | (coarse.source == layers.sea).any(axis=1)
+            open_ = ~np.isfinite(coarse.ground_m).all(axis=1) | self._at_sea(coarse)
             at_shores = (coarse.last >= SHORE_STEPS) & (self._setting.candidates.settings.step_m is None)
             left |= open_ & (surveyed | ~at_shores)
         return np.asarray(left)
+
+    def _at_sea(self, profiles: Profiles) -> NDArray[np.bool_]:
+        """Paths with samples that were taken as sea."""
+        return np.asarray((profiles.source == self._setting.many.layers.sea).any(axis=1))
 
     def _places(self, coarse: Profiles) -> list[list[Floats]]:
         """The nodes of the crossings of each path."""

@@ -155,8 +155,9 @@ class LaidPaths:
         if layers.gaps == "sea" and (gap := ~np.isfinite(value)).any():
             if last is not None:
                 before, after = near_shores(value, ground_sigma, _own(last, t.shape[1]), sea_level_m=layers.sea_level_m)
+                # What a path is told must not hang on whether another beside it has a gap.
+                along = before & np.concatenate((after[:, 1:], after[:, -1:]), axis=1) & gap.any(axis=1, keepdims=True)
                 gap &= before & after
-                along = before & np.concatenate((after[:, 1:], after[:, -1:]), axis=1)
             else:
                 gap &= False if wet is None else wet
             value = np.where(gap, layers.sea_level_m, value)
