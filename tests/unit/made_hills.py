@@ -13,7 +13,7 @@ from fellspan.links.radio import Radio
 from fellspan.links.site import Link, Site
 from fellspan.planning.inputs import Study, TerrainInputs
 from fellspan.planning.planner import settings_of
-from fellspan.planning.relay_hops import screen_hop
+from fellspan.planning.relay_hops import End, screen_hop
 from fellspan.screening.pairs import HEIGHT_REFERENCES, SiteColumns
 from fellspan.terrain.sources import RasterSource
 from fellspan.terrain.terrain import Terrain
@@ -68,10 +68,14 @@ def columns_at(rows: NDArray[np.int64], columns: NDArray[np.int64], *, cell_m: f
     )
 
 
+def clear_of_one(study: Study, terrain: Terrain, places: SiteColumns, end: End) -> NDArray[np.bool_]:
+    """Whether the hop from an end to each place is clear, judged by itself: no sweep has a say."""
+    hop = screen_hop(
+        study.links[0], end=end, places=places, terrain=terrain, settings=settings_of(study), margin_db=0.0
+    )
+    return hop.clear
+
+
 def clear_of_both(study: Study, terrain: Terrain, places: SiteColumns) -> NDArray[np.bool_]:
-    """Whether both hops from each place are clear, each judged by itself: no sweep has a say."""
-    link, clear = study.links[0], np.ones(len(places.name), dtype=np.bool_)
-    for end in ("a", "b"):
-        hop = screen_hop(link, end=end, places=places, terrain=terrain, settings=settings_of(study), margin_db=0.0)  # type: ignore[arg-type]
-        clear &= hop.clear
-    return clear
+    """The same for both ends."""
+    return clear_of_one(study, terrain, places, "a") & clear_of_one(study, terrain, places, "b")

@@ -1,4 +1,4 @@
-"""Relays on rasters too large for one sweep: what the coarse sweep and the fine ones let through holds every cell that serves."""
+"""Relays on rasters too large for one sweep: what coarse and fine sweeps let through holds every cell that serves."""
 
 from pathlib import Path
 

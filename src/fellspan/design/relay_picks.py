@@ -43,15 +43,20 @@ def spread_picks(score: ArrayLike, x_m: ArrayLike, y_m: ArrayLike, *, apart_m: f
 
 
 def thinned(score: ArrayLike, row: ArrayLike, column: ArrayLike, *, most: int) -> Indices:
-    """Indices of at most `most` cells that stand for all of them: the best of each square block of the raster.
+    """Indices of at most `most` cells that stand for all of them, as `thinned_by`."""
+    return thinned_by(score, row, column, most=most)[0]
+
+
+def thinned_by(score: ArrayLike, row: ArrayLike, column: ArrayLike, *, most: int) -> tuple[Indices, int]:
+    """Indices of at most `most` cells, the best of each square block of the raster, and the side of a block in cells.
 
     The block is the smallest (side a power of two, in cells) that leaves so few; indices rise. Where nothing has to go, all
-    stay. `score`, `row` and `column` have shape (n,); `most` is at least 1.
+    stay, and the side is 1. `score`, `row` and `column` have shape (n,); `most` is at least 1.
     """
     value = np.asarray(score, dtype=np.float64)
     rows, columns = np.asarray(row, dtype=np.int64), np.asarray(column, dtype=np.int64)
     if value.size <= most:
-        return np.arange(value.size, dtype=np.int64)
+        return np.arange(value.size, dtype=np.int64), 1
     order = np.argsort(-value, kind="stable")
     width = int(columns.max()) + 1
     side = 2
@@ -59,5 +64,5 @@ def thinned(score: ArrayLike, row: ArrayLike, column: ArrayLike, *, most: int) -
         block = (rows[order] // side) * (width // side + 1) + columns[order] // side
         kept = order[np.unique(block, return_index=True)[1]]
         if kept.size <= most or side > max(width, int(rows.max()) + 1):
-            return np.sort(kept)[:most]
+            return np.sort(kept)[:most], side
         side *= 2

@@ -21,7 +21,7 @@ from shapely.geometry.base import BaseGeometry
 from fellspan.design.relay_picks import thinned
 from fellspan.design.sweep import Bounds, HeightField, height_field
 from fellspan.errors import TerrainGapError
-from fellspan.geodesy.geodesic import destination
+from fellspan.geodesy.geodesic import destination, inverse_many
 from fellspan.geodesy.transforms import WGS84, crs_of, transformer
 from fellspan.links.criteria import Criterion, criteria_for
 from fellspan.links.site import Link, Site
@@ -146,7 +146,7 @@ def _coarse_to_fine(ground: Ground, window: Bounds, *, cell_m: float) -> Cells:
     heights = np.nan_to_num(np.asarray(first.ground_m, dtype=np.float64), nan=-1e9)
     rise = maximum_filter(heights, size=3) - heights
     # and their neighbours: the rays of a coarse sweep pass between narrow gaps, and a cell's middle may lie out of reach
-    worth = binary_dilation(needed - rise <= ground.mast_m + SLACK_M + COARSE_SLACK_M, np.ones((3, 3)))
+    worth = binary_dilation(needed - rise <= ground.mast_m + SLACK_M + COARSE_SLACK_M, np.ones((3, 3), dtype=np.bool_))
     parts: list[Cells] = []
     wide = max(1, round(first.cell_m / min(stack.cell_m for stack in ground.terrain.layers.stacks)))
     side = max(1, _PART // wide)
@@ -219,7 +219,22 @@ def _through(ground: Ground, fields: Sequence[HeightField]) -> Cells:
         cell_area_m2=_cell_area_m2(first.transform, first.crs, middle_deg),
         looked_at=int(np.isfinite(needed).sum()),
     )
-    return cells.chosen(_stands_on_land(ground, heights, latitude, longitude))
+    cells = cells.chosen(_stands_on_land(ground, heights, latitude, longitude))
+    return cells.chosen(_within_hops(ground, cells.latitude_deg, cells.longitude_deg))
+
+
+def _within_hops(ground: Ground, latitude: Floats, longitude: Floats) -> NDArray[np.bool_]:
+    """Rays reach a cell whose middle lies a little beyond the longest hop; such a cell is taken out."""
+    within = np.ones(latitude.shape, dtype=np.bool_)
+    for site in ground.ends:
+        at = site.position
+        east = np.remainder(longitude - at.longitude_deg + 180.0, 360.0) - 180.0
+        rough = np.hypot(east * np.cos(np.radians(latitude)), latitude - at.latitude_deg) * 111_000.0
+        rim = np.flatnonzero(rough > 0.97 * ground.hop_m)
+        if rim.size:
+            way = inverse_many(at.latitude_deg, at.longitude_deg, latitude[rim], longitude[rim])
+            within[rim] &= way.distance_m <= ground.hop_m
+    return within
 
 
 def _most_needed(fields: Sequence[HeightField]) -> Floats:

@@ -1,129 +1,177 @@
 """Chains of two relays: a place that A sees, a place that B sees, and a hop between them.
 
-Each end's sweep is thinned to its best places, spread over the whole area; every pair of them within reach is judged by the
-batch engine, then the outer hops. Not every cell is tried: a chain that is reported is certain, one that is missing is not.
+Of what each end's sweep lets through every cell is judged, or the highest of each block of cells; of those that serve, the
+highest of each coarser block stands for it; then every pair of such places within reach is judged, none left out. A chain that
+is reported is certain; one that is missing may hide between cells of one block.
 """
 
 from collections.abc import Callable, Iterator
+from dataclasses import dataclass
 from typing import Final
 
 import numpy as np
+from numpy.typing import NDArray
 from shapely.geometry.base import BaseGeometry
 
-from fellspan.design.relay_picks import thinned
+from fellspan.design.relay_picks import thinned, thinned_by
+from fellspan.geodesy.geodesic import inverse_many
 from fellspan.geodesy.position import Position
 from fellspan.links.site import Link, Site
 from fellspan.planning.inputs import Study
 from fellspan.planning.planner import settings_of
 from fellspan.planning.relay_cells import Cells, Ground, cells_between
-from fellspan.planning.relay_hops import HopColumns, affordable, screen_hop
+from fellspan.planning.relay_hops import End, HopColumns, affordable, screen_between, screen_hop
+from fellspan.planning.relay_result import ChainsTried
 from fellspan.terrain.terrain import Terrain
 
-OUTER: Final = 1500
-"""Places of each end that are judged, spread over all that its sweep let through."""
-INNER: Final = 150
-"""Of those that serve, how many are tried against the other end's."""
+OUTER: Final = 20_000
+"""Cells of each end that are judged at most."""
+PAIRS: Final = 400_000
+"""Hops between relays that are judged at most; it sets how many places stand for the cells of an end."""
+SAMPLES: Final = 150_000_000
+"""Samples of all hops in one of these steps; over fine rasters and long hops that is fewer cells and pairs."""
 _CHAINS: Final = 40
 
 Tell = Callable[[int, int, str], None]
 
 
-def chains_of_two(
-    study: Study,
-    link: Link,
-    terrain: Terrain,
-    *,
-    mast_m: float,
-    hop_m: float,
-    area: BaseGeometry | None,
-    margin_db: float,
-    apart_m: float,
-    tell: Tell,
-) -> Iterator[list[Site]]:
-    """Pairs of relay sites, best first, no two chains nearer to each other than `apart_m` at both relays."""
-    settings = settings_of(study)
-    sides: list[tuple[Cells, HopColumns]] = []
-    for end, site in (("a", link.a), ("b", link.b)):
-        tell(0, 1, "places that one end sees")
-        ground = Ground(study=study, link=link, ends=(site,), hop_m=hop_m, mast_m=mast_m, area=area, terrain=terrain)
-        cells = cells_between(ground)
-        # High ground sees far: of each block the highest cell stands for it.
-        if cells.row.size:
-            most = affordable((site,), cells.latitude_deg, cells.longitude_deg, terrain, most=OUTER)
-            cells = cells.chosen(thinned(cells.ground_m, cells.row, cells.column, most=most))
-        hop = screen_hop(
-            link,
-            end="a" if end == "a" else "b",
-            places=cells.columns(mast_m),
-            terrain=terrain,
-            settings=settings,
-            margin_db=margin_db,
-            growth_years=study.growth_years,
-        )
-        cells, hop = _serving(cells, hop)
-        sides.append((cells, hop))
-    (near, hop_a), (far, hop_b) = sides
-    found: list[tuple[float, int, int]] = []
-    for one in range(near.row.size):
-        tell(one, near.row.size, "hops between relays")
-        position = _position(near, one)
-        reach = np.hypot(far.x_m - near.x_m[one], far.y_m - near.y_m[one])
-        within = np.flatnonzero((reach <= hop_m) & (reach > 1.0))
-        if not within.size:
-            continue
-        middle = screen_hop(
-            link,
-            end=Site(name="relay", position=position, height_m=mast_m),
-            places=far.chosen(within).columns(mast_m),
-            terrain=terrain,
-            settings=settings,
-            margin_db=margin_db,
-            growth_years=study.growth_years,
-        )
-        for place in np.flatnonzero(middle.serves).tolist():
-            two = int(within[place])
-            worth = min(_worth(hop_a, one), _worth(middle, place), _worth(hop_b, two))
-            found.append((worth, one, two))
-    yield from _apart(found, near, far, apart_m=apart_m, mast_m=mast_m)
+@dataclass(frozen=True, slots=True, kw_only=True)
+class ChainSearch:
+    """What is asked: the link, how far and with how much mast, where, and with how much margin."""
+
+    study: Study
+    link: Link
+    terrain: Terrain
+    mast_m: float
+    hop_m: float
+    area: BaseGeometry | None
+    margin_db: float
+    apart_m: float
+    tell: Tell
+
+    @property
+    def steps(self) -> float:
+        """Samples of the longest hop."""
+        return max(1.0, self.hop_m / (0.5 * min(stack.cell_m for stack in self.terrain.layers.stacks)))
 
 
-def _serving(cells: Cells, hop: HopColumns) -> tuple[Cells, HopColumns]:
-    """The places that the end reaches, the best of each block."""
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class _Side:
+    """The places that stand for what one end sees, the hop to each, and how they were come by."""
+
+    cells: Cells
+    hop: HopColumns
+    counts: tuple[int, int, int]
+    block: int
+
+
+def chains_of_two(search: ChainSearch) -> tuple[ChainsTried, Iterator[list[Site]]]:
+    """What was tried, and pairs of relay sites, best first, no two chains nearer than `apart_m` at both relays."""
+    near, far = _side(search, "a"), _side(search, "b")
+    one, two = _within_reach(near.cells, far.cells, hop_m=search.hop_m)
+    middle = screen_between(
+        search.link,
+        near=near.cells.columns(search.mast_m),
+        far=far.cells.columns(search.mast_m),
+        pairs=(one, two),
+        terrain=search.terrain,
+        settings=settings_of(search.study),
+        margin_db=search.margin_db,
+        growth_years=search.study.growth_years,
+        progress=lambda done: search.tell(done, one.size, "hops between relays"),
+    )
+    serves = np.flatnonzero(middle.serves)
+    one, two = one[serves], two[serves]
+    worth = np.minimum(middle.worth[serves], np.minimum(near.hop.worth[one], far.hop.worth[two]))
+    tried = ChainsTried(
+        cells=(near.counts[0], far.counts[0]),
+        judged=(near.counts[1], far.counts[1]),
+        serve=(near.counts[2], far.counts[2]),
+        places=(near.cells.row.size, far.cells.row.size),
+        block=(near.block, far.block),
+        cell_m=float(np.sqrt(near.cells.cell_area_m2)),
+        pairs=middle.serves.size,
+        chains=serves.size,
+    )
+    return tried, _apart(worth, one, two, near.cells, far.cells, search)
+
+
+def _side(search: ChainSearch, end: End) -> _Side:
+    search.tell(0, 1, "places that one end sees")
+    site = search.link.a if end == "a" else search.link.b
+    cells = cells_between(
+        Ground(
+            study=search.study,
+            link=search.link,
+            ends=(site,),
+            hop_m=search.hop_m,
+            mast_m=search.mast_m,
+            area=search.area,
+            terrain=search.terrain,
+        )
+    )
+    let_through = max(cells.row.size, cells.seen_cells)
+    # High ground sees far: of each block the highest cell stands for it.
+    if cells.row.size:
+        most = min(OUTER, max(1000, int(SAMPLES / search.steps)))
+        most = affordable((site,), cells.latitude_deg, cells.longitude_deg, search.terrain, most=most)
+        cells = cells.chosen(thinned(cells.ground_m, cells.row, cells.column, most=most))
+    judged = cells.row.size
+    hop = screen_hop(
+        search.link,
+        end=end,
+        places=cells.columns(search.mast_m),
+        terrain=search.terrain,
+        settings=settings_of(search.study),
+        margin_db=search.margin_db,
+        growth_years=search.study.growth_years,
+        progress=lambda done: search.tell(done, judged, "places that one end sees"),
+    )
     serving = np.flatnonzero(hop.serves)
-    if serving.size:
-        kept = cells.chosen(serving)
-        serving = serving[thinned(kept.ground_m, kept.row, kept.column, most=INNER)]
-    return cells.chosen(serving), HopColumns(
-        clear=hop.clear[serving],
-        serves=hop.serves[serving],
-        margin_db=hop.margin_db[serving],
-        free_share=hop.free_share[serving],
+    cells, hop = cells.chosen(serving), hop.chosen(serving)
+    most = int(min(PAIRS, max(10_000.0, SAMPLES / search.steps)) ** 0.5)
+    kept, block = thinned_by(cells.ground_m, cells.row, cells.column, most=most)
+    return _Side(
+        cells=cells.chosen(kept), hop=hop.chosen(kept), counts=(let_through, judged, serving.size), block=block
     )
 
 
-def _worth(hop: HopColumns, index: int) -> float:
-    margin = float(hop.margin_db[index])
-    return float(hop.free_share[index]) if np.isnan(margin) else margin
+def _within_reach(near: Cells, far: Cells, *, hop_m: float) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
+    """All pairs that a hop may join; a place is no hop from itself."""
+    away = np.hypot(near.x_m[:, None] - far.x_m[None, :], near.y_m[:, None] - far.y_m[None, :])
+    one, two = (index.astype(np.int64) for index in np.nonzero((away <= 1.01 * hop_m) & (away > 1.0)))
+    if not one.size:
+        return one, two
+    exact_m = inverse_many(
+        near.latitude_deg[one], near.longitude_deg[one], far.latitude_deg[two], far.longitude_deg[two]
+    ).distance_m
+    return one[exact_m <= hop_m], two[exact_m <= hop_m]
 
 
 def _apart(
-    found: list[tuple[float, int, int]], near: Cells, far: Cells, *, apart_m: float, mast_m: float
+    worth: NDArray[np.float64],
+    one: NDArray[np.int64],
+    two: NDArray[np.int64],
+    near: Cells,
+    far: Cells,
+    search: ChainSearch,
 ) -> Iterator[list[Site]]:
-    given: list[tuple[int, int]] = []
-    for _, one, two in sorted(found, key=lambda chain: (-chain[0], chain[1], chain[2])):
-        if len(given) == _CHAINS:
+    order = np.lexsort((two, one, -worth))
+    for _ in range(_CHAINS):
+        if not order.size:
             return
-        if any(
-            np.hypot(near.x_m[one] - near.x_m[other], near.y_m[one] - near.y_m[other]) < apart_m
-            and np.hypot(far.x_m[two] - far.x_m[another], far.y_m[two] - far.y_m[another]) < apart_m
-            for other, another in given
-        ):
-            continue
-        given.append((one, two))
+        first, second = int(one[order[0]]), int(two[order[0]])
         yield [
-            Site(name="relay", position=_position(cells, index), height_m=mast_m)
-            for cells, index in ((near, one), (far, two))
+            Site(name="relay", position=_position(cells, index), height_m=search.mast_m)
+            for cells, index in ((near, first), (far, second))
         ]
+        away = [
+            np.hypot(cells.x_m[which[order]] - cells.x_m[index], cells.y_m[which[order]] - cells.y_m[index])
+            for cells, which, index in ((near, one, first), (far, two, second))
+        ]
+        apart = (away[0] >= search.apart_m) | (away[1] >= search.apart_m)
+        apart[0] = False  # also where apart_m is 0
+        order = order[apart]
 
 
 def _position(cells: Cells, index: int) -> Position:

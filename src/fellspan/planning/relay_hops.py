@@ -63,6 +63,20 @@ class HopColumns:
             free_share=pairs.worst_fraction,
         )
 
+    @property
+    def worth(self) -> Floats:
+        """The margin, or where levels are not known the free share of the zone."""
+        return np.where(np.isnan(self.margin_db), self.free_share, self.margin_db)
+
+    def chosen(self, which: NDArray[np.int64]) -> "HopColumns":
+        """Some of them."""
+        return HopColumns(
+            clear=self.clear[which],
+            serves=self.serves[which],
+            margin_db=self.margin_db[which],
+            free_share=self.free_share[which],
+        )
+
     def of_some(self, which: NDArray[np.int64], count: int) -> "HopColumns":
         """These as the answers for places `which` of `count`; the others were not asked and serve nobody."""
         whole = HopColumns(
@@ -153,12 +167,38 @@ def screen_hop(
 ) -> HopColumns:
     """The hop from end 'a' or 'b' of the link (or from another site, with A's antenna) to each place."""
     site = link.a if end == "a" else link.b if end == "b" else end
-    here, there = (link.antenna_b, link.antenna_a) if end == "b" else (link.antenna_a, link.antenna_b)
+    turned = link if end != "b" else replace(link, antenna_a=link.antenna_b, antenna_b=link.antenna_a)
+    return screen_between(
+        turned,
+        near=columns_of((site,)),
+        far=places,
+        pairs=(np.zeros(len(places.name), dtype=np.int64), np.arange(len(places.name), dtype=np.int64)),
+        terrain=terrain,
+        settings=settings,
+        margin_db=margin_db,
+        growth_years=growth_years,
+        progress=progress,
+    )
+
+
+def screen_between(
+    link: Link,
+    *,
+    near: SiteColumns,
+    far: SiteColumns,
+    pairs: tuple[NDArray[np.int64], NDArray[np.int64]],
+    terrain: Terrain,
+    settings: AssessSettings,
+    margin_db: float,
+    growth_years: float = 0.0,
+    progress: Callable[[int], None] | None = None,
+) -> HopColumns:
+    """The hops of pairs, as numbers in `near` (which gets the antenna of end A) and in `far` (B's)."""
     candidates = Candidates(
-        hubs=columns_of((site,)),
-        places=places,
-        sectors=(Sector(hub=0, name="", antenna=aimed_anew(here)),),
-        place_antenna=aimed_anew(there),
+        hubs=near,
+        places=far,
+        sectors=tuple(Sector(hub=hub, name="", antenna=aimed_anew(link.antenna_a)) for hub in range(len(near.name))),
+        place_antenna=aimed_anew(link.antenna_b),
         radio=link.radio,
         settings=settings,
         wanted_margin_db=link.wanted_margin_db,
@@ -166,14 +206,14 @@ def screen_hop(
         power_rule=link.power_rule,
         growth_years=growth_years,
     )
-    count = len(places.name)
+    one, two = pairs
     parts = []
-    for first in range(0, count, CHUNK):
-        chosen = np.arange(first, min(first + CHUNK, count), dtype=np.int64)
-        found = screen_pairs(candidates, hub=np.zeros(chosen.size, dtype=np.int64), place=chosen, terrain=terrain)
+    for first in range(0, one.size, CHUNK):
+        part = slice(first, min(first + CHUNK, one.size))
+        found = screen_pairs(candidates, hub=one[part], place=two[part], terrain=terrain)
         parts.append(HopColumns.of(found, margin_db=margin_db))
         if progress is not None:
-            progress(int(chosen[-1]) + 1)
+            progress(part.stop)
     if not parts:
         nothing = np.zeros(0)
         return HopColumns(clear=nothing > 0, serves=nothing > 0, margin_db=nothing, free_share=nothing)

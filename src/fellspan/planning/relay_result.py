@@ -75,6 +75,30 @@ class RelayArea:
     """How many cells were asked."""
 
 
+@dataclass(frozen=True, slots=True, kw_only=True)
+class ChainsTried:
+    """What a search for chains of two relays looked at, and so what it did not.
+
+    Per end: `cells` that its sweep let through, those that were `judged`, those that `serve` it, and `places` that stand for
+    them: the highest of each block of `block` by `block` cells. `pairs` of places within reach of each other were judged, all
+    there are, and `chains` of them serve.
+    """
+
+    cells: tuple[int, int]
+    judged: tuple[int, int]
+    serve: tuple[int, int]
+    places: tuple[int, int]
+    block: tuple[int, int]
+    cell_m: float
+    pairs: int
+    chains: int
+
+    @property
+    def every_cell(self) -> bool:
+        """Whether no cell was stood for by another."""
+        return self.cells == self.judged and self.serve == self.places
+
+
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class RelayRoute:
     """One way round: the relays in order from A, and a plan for each hop."""
@@ -108,6 +132,8 @@ class RelayResult:
     """None where candidate sites were given."""
     tried: int
     """Places that were planned in full."""
+    chains: ChainsTried | None = None
+    """None where chains of two were not looked for."""
     refused: tuple[str, ...] = ()
     """Why places that looked clear were not reported."""
     cautions: tuple[str, ...] = field(default=())

@@ -23,9 +23,9 @@ from fellspan.planning.inputs import Study
 from fellspan.planning.plan import LinkPlan
 from fellspan.planning.planner import open_terrain, plan_study, settings_of
 from fellspan.planning.relay_cells import Cells, Ground, cells_between
-from fellspan.planning.relay_chains import chains_of_two
+from fellspan.planning.relay_chains import ChainSearch, chains_of_two
 from fellspan.planning.relay_hops import End, HopColumns, affordable, chosen_places, columns_of, hop_link, screen_hop
-from fellspan.planning.relay_result import RelayArea, RelayRequest, RelayResult, RelayRoute
+from fellspan.planning.relay_result import ChainsTried, RelayArea, RelayRequest, RelayResult, RelayRoute
 from fellspan.screening.pairs import Floats, SiteColumns
 from fellspan.terrain.alongpath import along_across
 from fellspan.terrain.terrain import Terrain
@@ -131,19 +131,22 @@ class _Search:
             else:
                 area, ranked = self._ranked_cells(terrain, refused)
             routes, tried = self._planned(([site] for site in ranked), refused)
+            chains: ChainsTried | None = None
             if not routes and self.request.two_relays and not self.request.sites:
-                chains = chains_of_two(
-                    self.study,
-                    self.link,
-                    terrain,
-                    mast_m=self.request.mast_m,
-                    hop_m=self.hop_m,
-                    area=self.request.area,
-                    margin_db=self.margin_db,
-                    apart_m=self.apart_m,
-                    tell=self.tell,
+                chains, pairs = chains_of_two(
+                    ChainSearch(
+                        study=self.study,
+                        link=self.link,
+                        terrain=terrain,
+                        mast_m=self.request.mast_m,
+                        hop_m=self.hop_m,
+                        area=self.request.area,
+                        margin_db=self.margin_db,
+                        apart_m=self.apart_m,
+                        tell=self.tell,
+                    )
                 )
-                routes, more = self._planned(chains, refused)
+                routes, more = self._planned(pairs, refused)
                 tried += more
         self.tell(1, 1, "")
         return RelayResult(
@@ -155,6 +158,7 @@ class _Search:
             routes=tuple(routes),
             area=area,
             tried=tried,
+            chains=chains,
             refused=tuple(dict.fromkeys(refused)),
             cautions=self._cautions(routes, area),
         )
