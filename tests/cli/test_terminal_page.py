@@ -57,3 +57,10 @@ def test_a_hub_carries_no_better_signal_than_its_worst_link(plan: StudyPlan) -> 
     signals = {hub.site: hub.signal for hub in overview_view(plan).hubs}
     assert signals["Harbour Office"] == "through an obstruction"
     assert signals["Beacon"] == "meets"
+
+
+def test_a_short_page_tells_no_throughput_without_its_level(plan: StudyPlan) -> None:
+    short = page_lines(plan, ink=Ink(colours=False), brief=True)
+    blocks = "\n".join(short).split("\n\n")
+    assert all("Signal at" in block for block in blocks if "Mean throughput" in block)
+    assert any("Mean throughput" in reason for link in plan.links for reason in link.result.reasons)

@@ -69,6 +69,9 @@ def decision_lines(result: LinkResult, ink: Ink, *, most: int | None = None) -> 
     return lines + [line for told in _told(result.reasons, room) for line in told]
 
 
+_LEAST_WEIGHT: Final = 2
+
+
 def _told(reasons: Sequence[str], room: int | None) -> list[list[str]]:
     """The sentences as lines; where room is short whole ones are left out, and what the verdict line says too."""
     lines = [wrapped(reason, first="  ") for reason in reasons]
@@ -79,12 +82,14 @@ def _told(reasons: Sequence[str], room: int | None) -> list[list[str]]:
     for index in sorted(worth, key=lambda index: (_weight(reasons[index], index), index)):
         if sum(len(lines[i]) for i in kept) + len(lines[index]) <= room:
             kept.add(index)
+        elif _weight(reasons[index], index) == _LEAST_WEIGHT:
+            break  # what follows, as a throughput without its level, says too little alone
     return [lines[index] for index in sorted(kept)]
 
 
 def _weight(reason: str, index: int) -> int:
     """How far down a sentence stands when room is short: what to build and what is not known come right after the first."""
-    return 0 if index == 0 else 1 if reason.startswith(("Rais", "No height")) or _is_bare(reason) else 2
+    return 0 if index == 0 else 1 if reason.startswith(("Rais", "No height")) or _is_bare(reason) else _LEAST_WEIGHT
 
 
 def _is_bare(reason: str) -> bool:
