@@ -5,9 +5,9 @@ worst sample, and at most the sum over all. Where the confidence asked lies betw
 arrays at hand, until their share tells on which side planning's 10,000 lie. The few pairs that are left are `own_draws`'.
 """
 
-import math
 from collections.abc import Callable
 from dataclasses import dataclass
+from statistics import NormalDist
 from typing import Final
 
 import numpy as np
@@ -25,10 +25,12 @@ Index = NDArray[np.int64]
 
 ALLOWANCE: Final = 6.0
 """Standard errors of the share of the draws by which a bound must keep off the confidence asked: one pair in 10^9 passes."""
-THINNED: Final = 0.02
-"""And so much more where a path has more samples than are drawn: an estimate makes up for the others (our own rule)."""
-THINNED_ALIKE: Final = 0.006
-"""The same for draws at samples thinned as planning thins them, but for the heights that it looks for (our own rule)."""
+THINNED: Final = 0.2
+"""Of what fails, so much more or less where a path has more samples than planning draws: an estimate makes up for the others
+(our own rule; a twentieth was met)."""
+THINNED_ALIKE: Final = 0.034
+"""How far the heights that planning looks for shift what it draws otherwise thinned alike, standard errors (our own rule: half
+of it was met)."""
 
 UNSURE, HOLDS, FALLS = range(3)
 """What draws say of a clear verdict."""
@@ -54,7 +56,7 @@ def likely(
     `spare_m`, (q, n), is the height that rays have to spare over what they must clear, the least over the rules.
     """
     paths = _Paths.of(spare_m, profiles, stands, errors)
-    least, most = paths.bounds(which, confidence)
+    least, most = paths.bounds(which)
     verdict = np.where(most < confidence, FALLS, np.where(least < confidence, UNSURE, HOLDS)).astype(np.int8)
     share, made = np.minimum(most, 1.0), np.zeros(which.size, dtype=np.int64)
     between = np.flatnonzero(verdict == UNSURE)
@@ -93,16 +95,15 @@ class _Paths:
             thinned=profiles.last >= MOST_POINTS,
         )
 
-    def bounds(self, which: Index, confidence: float) -> tuple[Floats, Floats]:
+    def bounds(self, which: Index) -> tuple[Floats, Floats]:
         """The least and the most that drawn errors leave of the probability that all rules hold, and room for their scatter."""
         from fellspan.screening import errors_kernel
 
         worst, together = np.empty(which.size), np.empty(which.size)
         self._over(errors_kernel.bound, which, worst, together)
-        # Half of the draws mirror the other half, so that their share may scatter by up to the root of two more.
-        scatter = ALLOWANCE * math.sqrt(2.0 * confidence * (1.0 - confidence) / DRAWS)
-        off = scatter + THINNED * self.thinned[which]
-        return 1.0 - together - off, 1.0 - worst + off
+        scale = THINNED * self.thinned[which]
+        least, most = np.minimum(together * (1.0 + scale), 1.0), worst * (1.0 - scale)
+        return 1.0 - least - _scatter(least), 1.0 - most + _scatter(most)
 
     def drawn(self, which: Index, confidence: float) -> tuple[NDArray[np.int8], Floats, Index]:
         """Verdicts, shares that hold, and how many draws were made."""
@@ -117,7 +118,7 @@ class _Paths:
             1.0 - confidence,
             ALLOWANCE,
             DRAWS,
-            THINNED_ALIKE * self.thinned[which],
+            THINNED_ALIKE * NormalDist().pdf(NormalDist().inv_cdf(confidence)) * self.thinned[which],
             verdict,
             share,
             made,
@@ -127,3 +128,12 @@ class _Paths:
 
     def _over(self, kernel: Callable[..., None], which: Index, *more: object) -> None:
         kernel(which, *self.arrays, clearance.TOLERANCE_M, *more)
+
+
+def _scatter(fails: Floats) -> Floats:
+    """How far the share of failing draws may be off its mean, (m,): Bernstein's bound.
+
+    Half of the draws mirror the other half, so that it may scatter as that of half as many.
+    """
+    few = ALLOWANCE**2 / 3.0 / (0.5 * DRAWS)
+    return np.asarray(ALLOWANCE * np.sqrt(fails * (1.0 - fails) / (0.5 * DRAWS)) + few)
