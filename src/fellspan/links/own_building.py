@@ -80,35 +80,41 @@ def standing(profile: PathProfile) -> Standing:
     own = np.zeros(cover.shape, dtype=np.bool_)
     left_out = np.full(cover.shape, -np.inf)
     ignored: list[Ignored] = []
-    tolerance = np.clip(ERRORS * profile.sigma_m, LEAST_TOLERANCE_M, MOST_TOLERANCE_M)
     near_m = min(NEAR_M, NEAR_SHARE * profile.length_m)
     ends: tuple[EndName, EndName] = ("A", "B")
     for end in ends:
         outlines = own_outlines(profile, end)
+        from_end = profile.distance_m if end == "A" else profile.length_m - profile.distance_m
+        if outlines:
+            own_top, _ = _top_m(profile, outlines)
+            inside = np.isfinite(own_top)
+            own |= inside & (from_end <= SPOT_M)
+            tolerance = np.minimum(np.maximum(ERRORS * profile.sigma_m, LEAST_TOLERANCE_M), MOST_TOLERANCE_M)
+            house = (obstacle == -1) & ((kind == _BUILDING) | (kind == _OTHER))
+            house &= profile.ground_m + cover <= own_top + tolerance
+            for index in outlines:
+                house |= obstacle == index
+            out = inside & (cover > 0.0) & house
+        else:
+            inside = from_end <= near_m + SAME_SPOT_M
+            own |= inside
+            out = inside & (cover > 0.0) & (obstacle == -1) & (profile.measured != MEASURED_TOP)
+        if not out.any():
+            continue
         others = tuple(
             index
             for index, item in enumerate(profile.obstacles)
             if index not in outlines and item.source != ROOF_SOURCE
         )
         other_top, which = _top_m(profile, others)
-        from_end = profile.distance_m if end == "A" else profile.length_m - profile.distance_m
-        if outlines:
-            own_top, _ = _top_m(profile, outlines)
-            inside = np.isfinite(own_top)
-            house = (obstacle == -1) & ((kind == _BUILDING) | (kind == _OTHER))
-            house &= profile.ground_m + cover <= own_top + tolerance
-            out = inside & (cover > 0.0) & (np.isin(obstacle, outlines) | house)
-            own |= inside & (from_end <= SPOT_M)
-        else:
-            inside = from_end <= near_m + SAME_SPOT_M
-            kept = (profile.measured == MEASURED_TOP) | np.isfinite(other_top)
-            out = inside & (cover > 0.0) & (obstacle == -1) & ~kept
-            own |= inside
-        if out.any():
-            ignored.append(_ignored(profile, end, out, outlines))
-            left_out[out] = np.maximum(left_out, profile.ground_m + cover)[out]
+        if not outlines:
+            out &= ~np.isfinite(other_top)
+            if not out.any():
+                continue
+        ignored.append(_ignored(profile, end, out, outlines))
+        left_out[out] = np.maximum(left_out, profile.ground_m + cover)[out]
         # What the own building hid comes to light: another obstacle in its outline stays one.
-        hidden = np.where(out, np.clip(np.minimum(other_top - profile.ground_m, cover), 0.0, None), 0.0)
+        hidden = np.where(out, np.maximum(np.minimum(other_top - profile.ground_m, cover), 0.0), 0.0)
         shown = hidden > 0.0
         cover[out] = hidden[out]
         kind[out], obstacle[out] = 0, -1

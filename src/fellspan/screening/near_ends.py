@@ -110,28 +110,38 @@ def near_standings(over: Overlaid, on: Sequence[OnPath], outlines: Outlines) -> 
     kind[out] = 0
     for row in np.flatnonzero(outlines.holds_a | outlines.holds_b).tolist():
         count = int(profiles.last[row])
-        taken = np.append(np.arange(count), distance.shape[1] - 1)
-        stands = standing(_profile(over, row, taken, tuple(one.shown for one in on[row].standing)))
-        fill = np.minimum(np.arange(distance.shape[1]), count - 1)
-        fill[-1] = count
-        surface[row], kind[row] = stands.surface_m[fill], stands.cover_kind[fill]
-        left_out[row], own[row] = stands.left_out_m[fill], stands.own[fill]
-        out[row] = np.isfinite(left_out[row]) & (stands.cover_m[fill] == 0.0)
+        columns = _columns_at_ends(profiles, row, [one.shown for one in on[row].standing])
+        stands = standing(_profile(over, row, columns, on[row]))
+        surface[row, columns], kind[row, columns] = stands.surface_m, stands.cover_kind
+        left_out[row, columns], own[row, columns] = stands.left_out_m, stands.own
+        out[row, columns] = np.isfinite(stands.left_out_m) & (stands.cover_m == 0.0)
+        # What fills the row up repeats the last sample but one.
+        for values in (surface, kind, left_out, own, out):
+            values[row, count:-1] = values[row, count - 1]
     if not np.isfinite(left_out).any():
         return Standings(surface_m=surface, cover_kind=kind, left_out_m=None, bared=None), own
     return Standings(surface_m=surface, cover_kind=kind, left_out_m=left_out, bared=out), own
 
 
-def _profile(over: Overlaid, row: int, taken: Index, obstacles: tuple[PathObstacle, ...]) -> PathProfile:
+def _columns_at_ends(profiles: Profiles, row: int, shown: Sequence[PathObstacle]) -> Index:
+    """The samples of one path in outlines that hold its ends, and those so near to them that cover there may be left out."""
+    count, length = int(profiles.last[row]), float(profiles.length_m[row])
+    houses = [one for one in shown if one.kind == "building"]
+    near = min(NEAR_M, NEAR_SHARE * length)
+    to_m = max([near, *(one.to_m for one in houses if one.from_m <= TOUCH_M)])
+    from_m = min([length - near, *(one.from_m for one in houses if one.to_m >= length - TOUCH_M)])
+    distance = profiles.distance_m[row, :count]
+    first = int(distance.searchsorted(to_m + 2.0 * JOIN_M, side="right"))
+    second = max(int(distance.searchsorted(from_m - 2.0 * JOIN_M)), first)
+    return np.concatenate((np.arange(first), np.arange(second, count), [profiles.distance_m.shape[1] - 1]))
+
+
+def _profile(over: Overlaid, row: int, taken: Index, on: OnPath) -> PathProfile:
     """Samples of one path as `own_building.standing` takes them; where on Earth they are does not matter to it."""
     profiles = over.profiles
-    distance, ground, cover = (
-        profiles.distance_m[row][taken],
-        profiles.ground_m[row][taken],
-        over.cover_m[row][taken],
-    )
+    distance, ground, cover = profiles.distance_m[row, taken], profiles.ground_m[row, taken], over.cover_m[row, taken]
     nowhere = np.zeros(taken.size)
-    measured = np.zeros(taken.size, dtype=np.int8) if over.measured is None else over.measured[row][taken]
+    measured = np.zeros(taken.size, dtype=np.int8) if over.measured is None else over.measured[row, taken]
     return PathProfile(
         a=_SOMEWHERE,
         b=_SOMEWHERE,
@@ -140,14 +150,14 @@ def _profile(over: Overlaid, row: int, taken: Index, obstacles: tuple[PathObstac
         longitude_deg=nowhere,
         ground_m=ground,
         cover_m=cover,
-        cover_kind=over.cover_kind[row][taken],
-        obstacle_index=over.obstacle[row][taken],
+        cover_kind=over.cover_kind[row, taken],
+        obstacle_index=over.obstacle[row, taken],
         surface_m=ground + cover,
-        source=profiles.source[row][taken],
+        source=profiles.source[row, taken],
         measured=measured,
-        sigma_m=profiles.sigma_m[row][taken],
+        sigma_m=profiles.sigma_m[row, taken],
         sources=(),
-        obstacles=obstacles,
+        obstacles=tuple(one.shown for one in on.standing),
         gaps=(),
         step_m=float(profiles.cell_m[row]),
         cell_m=float(profiles.cell_m[row]),
