@@ -27,7 +27,9 @@ ALLOWANCE: Final = 6.0
 """Standard errors of the share of the draws by which a bound must keep off the confidence asked: one pair in 10^9 passes."""
 THINNED: Final = 0.2
 """Of what fails, so much more or less where a path has more samples than planning draws: an estimate makes up for the others
-(our own rule; a twentieth was met)."""
+(our own rule; a twentieth was met),"""
+MOST_THINNED: Final = 0.02
+"""and never more than this."""
 THINNED_ALIKE: Final = 0.034
 """How far the heights that planning looks for shift what it draws otherwise thinned alike, standard errors (our own rule: half
 of it was met)."""
@@ -101,8 +103,10 @@ class _Paths:
 
         worst, together = np.empty(which.size), np.empty(which.size)
         self._over(errors_kernel.bound, which, worst, together)
-        scale = THINNED * self.thinned[which]
-        least, most = np.minimum(together * (1.0 + scale), 1.0), worst * (1.0 - scale)
+        least, most = (
+            np.clip(fails + way * self.thinned[which] * np.minimum(THINNED * fails, MOST_THINNED), 0.0, 1.0)
+            for way, fails in ((1.0, together), (-1.0, worst))
+        )
         return 1.0 - least - _scatter(least), 1.0 - most + _scatter(most)
 
     def drawn(self, which: Index, confidence: float) -> tuple[NDArray[np.int8], Floats, Index]:
