@@ -10,10 +10,12 @@ from made_near import survey_file, town_file
 from made_screening import candidates, every_pair, ground_file, hills, same_bytes, sites
 from made_terrain import at, raster
 from numpy.typing import NDArray
+from scipy.stats import binom
 
 import fellspan.screening.batch as batch
 import fellspan.screening.own_draws as own_draws
 import fellspan.screening.screen as screen
+import fellspan.screening.sure as sure
 from fellspan.links.assess import AssessSettings
 from fellspan.screening.columns import Columns
 from fellspan.screening.pairs import Candidates, PairResults
@@ -228,6 +230,15 @@ def test_what_a_path_passes_in_its_zone_counts_in_draws(tmp_path: Path) -> None:
         assert found.confidence[0] == pytest.approx(wanted.confidence[0], abs=0.07)
         verdicts.append(int(found.verdict[0]))
     assert verdicts == [0, 0, 1, 1]
+
+
+def test_shares_scatter_by_less_than_bounds_keep_off() -> None:
+    """Pairs of draws that fail both or neither are the widest: 5,000 of them by the binomial law."""
+    for fails in (0.0, 1e-5, 1e-4, 1e-3, 0.01, 0.1, 0.5, 0.9):
+        off = float(sure._scatter(np.array([fails]))[0])
+        assert binom.sf(5000.0 * (fails + off) - 1e-9, 5000, fails) < 1e-8
+        assert binom.cdf(5000.0 * (fails - off), 5000, fails) < 1e-8
+        assert off < 0.0025 + 6.01 * np.sqrt(fails * (1.0 - fails) / 5000.0)
 
 
 def spot_of(east_m: float) -> dict[str, NDArray[np.float64]]:
