@@ -122,6 +122,45 @@ def test_every_study_written_loads_and_plans_to_the_same_verdicts(report) -> Non
             assert link.result.margin_db.at_b == pytest.approx(hop["margin_db"]["at_b"], abs=1e-9)
 
 
+def test_one_channel_for_both_hops_leaves_what_a_plan_of_the_study_written_says(tmp_path: Path) -> None:
+    write(tmp_path)
+    study = (tmp_path / "pass.toml").read_text(encoding="utf-8")
+    text = study.replace('power = "20 dBm"', 'power = "20 dBm"\nchannel_width = "20 MHz"')
+    beside = text[text.index("[[link]]") :].replace("West - East", "Beside", 1)
+    (tmp_path / "pass.toml").write_text(text + beside, encoding="utf-8")
+    ran = run_command(*RELAY, "--link", "West - East", "--count", "1", "--out", "found", folder=tmp_path)
+    assert (ran.returncode, ran.stderr) == (0, ""), ran.stderr
+    (told,) = json.loads((tmp_path / "found" / "relay.json").read_text(encoding="utf-8"))["relays"]
+    use = told["channels"]
+    found = plan_study(load_study(tmp_path / "found" / "relay.toml")).interference
+    assert found is not None
+    worst = min(found.receivers, key=lambda one: one.effective_margin_db or 0.0)
+    assert worst.effective_margin_db is not None
+    assert use["shared_db"] == pytest.approx(worst.effective_margin_db, abs=1e-6)
+    assert use["shared_at"] == worst.site
+    assert use["shared_db"] < told["worst_margin_db"] - 10.0
+    # the twin of the link is on the air on the same channel, and stands at its ends
+    assert use["others_counted"] is True
+    assert use["beside_study_db"] < told["worst_margin_db"] - 10.0
+    words = " ".join(ran.stdout.split())
+    assert "all hops on the link's one channel: " in words
+    assert "beside the study's other links: " in words
+    page = (tmp_path / "found" / "index.html").read_text(encoding="utf-8")
+    assert "of margin left, at " in page
+
+
+def test_a_chain_of_two_tells_what_was_tried(folder: Path) -> None:
+    ran = run_command(*RELAY[:-1], "0.6 km", "--count", "1", "--json", folder=folder)
+    told = json.loads(ran.stdout)
+    tried = told["chains"]
+    assert tried["pairs"] >= tried["chains"]
+    assert tried["block"] == [1, 1]
+    page = run_command(*RELAY[:-1], "0.6 km", "--count", "1", folder=folder)
+    assert page.returncode == ran.returncode
+    assert f"Chains of two all {tried['places'][0]} cells" in " ".join(page.stdout.split())
+    assert max(map(len, page.stdout.splitlines())) <= 80
+
+
 def test_the_geojson_holds_closed_areas_in_lon_lat_order_around_the_relays(report) -> None:  # type: ignore[no-untyped-def]
     _, out = report
     features = json.loads((out / "relay.geojson").read_text(encoding="utf-8"))["features"]

@@ -81,14 +81,17 @@ def test_chains_are_those_of_all_pairs_of_cells(tmp_path: Path, seed: int) -> No
 def test_on_blocks_of_cells_no_pair_of_blocks_is_left_out(
     tmp_path: Path, seed: int, monkeypatch: pytest.MonkeyPatch
 ) -> None:
-    monkeypatch.setattr(relay_chains, "PAIRS", 900)
+    monkeypatch.setattr(relay_chains, "PAIRS", 100)
+    monkeypatch.setattr(relay_chains, "_PLACES", (3000, 100, 40, 20))
     study = study_over(tmp_path, hills(SIDE, seed=seed, height_m=120.0), A, B, cell_m=CELL_M)
     with open_terrain(study) as terrain:
         tried, _ = chains_of_two(search_over(study, terrain))
-        assert max(tried.places) <= 30
+        assert 0 < tried.pairs <= 100
         assert not tried.every_cell
         assert min(tried.block) > 1
-        near, far = (relay_chains._side(search_over(study, terrain), end).cells for end in ("a", "b"))  # type: ignore[arg-type]
+        sides = [relay_chains._side(search_over(study, terrain), end) for end in ("a", "b")]  # type: ignore[arg-type]
+        thinned = [[side.thinned(most).cells for side in sides] for most in relay_chains._PLACES]
+        near, far = next(two for two in thinned if (two[0].row.size, two[1].row.size) == tried.places)
         assert tried.chains == serving_pairs(study, terrain, near.columns(MAST_M), far.columns(MAST_M))
         # one of each block
         for cells, block in ((near, tried.block[0]), (far, tried.block[1])):

@@ -10,7 +10,7 @@ from fellspan.cli.layout import WIDTH, Ink, cut, labelled, printable, table, wra
 from fellspan.links.words import STATE_WORDS, decisive_margin_db, least_db, state_of
 from fellspan.planning.plan import LinkPlan
 from fellspan.planning.relay_result import RelayResult, RelayRoute
-from fellspan.report.relay_words import decision, direct_words, searched
+from fellspan.report.relay_words import chains_tried, channel_words, decision, direct_words, searched
 
 _WIDTHS: Final = (21, 9, 25, 8, 9)
 _RIGHT: Final = (1, 3, 4)
@@ -26,6 +26,8 @@ def relay_lines(result: RelayResult, *, ink: Ink) -> list[str]:
     for number, route in enumerate(result.routes, start=1):
         lines += ["", *_route(route, number, ink)]
     lines += ["", *labelled("Searched", searched(result))]
+    if result.chains is not None:
+        lines += labelled("Chains of two", chains_tried(result))
     for why in result.refused[:_MOST_REFUSED]:
         lines += labelled("Left out", why)
     if len(result.refused) > _MOST_REFUSED:
@@ -51,7 +53,9 @@ def _route(route: RelayRoute, number: int, ink: Ink) -> list[str]:
     )
     heads = ("Hop", "distance", "path", "to spare", "margin")
     rows = [_hop(hop) for hop in route.hops]
-    return lines + ["   " + line for line in table(heads, rows, widths=_WIDTHS, right=_RIGHT)]
+    lines += ["   " + line for line in table(heads, rows, widths=_WIDTHS, right=_RIGHT)]
+    use = printable(channel_words(route))
+    return lines + (wrapped(use, first="   ", rest="   ") if use else [])
 
 
 def _hop(hop: LinkPlan) -> tuple[str, ...]:

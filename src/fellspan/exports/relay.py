@@ -54,6 +54,7 @@ def relay_json(result: RelayResult) -> str:
             "looked_at": area.looked_at,
             "each_cell_judged_as_planned": area.exact,
         },
+        "chains": None if result.chains is None else dataclasses.asdict(result.chains),
         "planned_in_full": result.tried,
         "left_out": list(result.refused),
         "cautions": list(result.cautions),
@@ -201,6 +202,7 @@ def _route(route: RelayRoute) -> dict[str, Any]:
         "length_m": finite(route.length_m),
         "off_path_m": finite(route.off_path_m),
         "worst_margin_db": finite(route.worst_margin_db),
+        "channels": None if route.channels is None else dataclasses.asdict(route.channels),
         "hops": [link_result_dict(hop.result) for hop in route.hops],
     }
 

@@ -6,7 +6,7 @@ is reported is certain; one that is missing may hide between cells of one block.
 """
 
 from collections.abc import Callable, Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Final
 
 import numpy as np
@@ -28,6 +28,10 @@ OUTER: Final = 20_000
 """Cells of each end that are judged at most."""
 PAIRS: Final = 400_000
 """Hops between relays that are judged at most; it sets how many places stand for the cells of an end."""
+PAIRS_NEARBY: Final = 40_000
+"""The same where the study has obstacles or surveyed points: hops near them take longer."""
+_PLACES: Final = (3000, 2000, 1400, 1000, 700, 500, 350, 250, 150, 100)
+"""How many places may stand for an end: the most that keep within the hops above."""
 SAMPLES: Final = 150_000_000
 """Samples of all hops in one of these steps; over fine rasters and long hops that is fewer cells and pairs."""
 _CHAINS: Final = 40
@@ -50,6 +54,13 @@ class ChainSearch:
     tell: Tell
 
     @property
+    def pairs(self) -> int:
+        """How many hops between relays may be judged."""
+        layers = self.terrain.layers
+        nearby = bool(layers.obstacles.obstacles) or bool(layers.survey.rows)
+        return int(min(PAIRS_NEARBY if nearby else PAIRS, max(10_000.0, SAMPLES / self.steps)))
+
+    @property
     def steps(self) -> float:
         """Samples of the longest hop."""
         return max(1.0, self.hop_m / (0.5 * min(stack.cell_m for stack in self.terrain.layers.stacks)))
@@ -62,13 +73,23 @@ class _Side:
     cells: Cells
     hop: HopColumns
     counts: tuple[int, int, int]
-    block: int
+    block: int = 1
+
+    def thinned(self, most: int) -> "_Side":
+        """The highest of each block."""
+        cells = self.cells
+        kept, block = thinned_by(cells.ground_m, cells.row, cells.column, most=most)
+        return replace(self, cells=cells.chosen(kept), hop=self.hop.chosen(kept), block=block)
 
 
 def chains_of_two(search: ChainSearch) -> tuple[ChainsTried, Iterator[list[Site]]]:
     """What was tried, and pairs of relay sites, best first, no two chains nearer than `apart_m` at both relays."""
-    near, far = _side(search, "a"), _side(search, "b")
-    one, two = _within_reach(near.cells, far.cells, hop_m=search.hop_m)
+    sides = _side(search, "a"), _side(search, "b")
+    for most in _PLACES:
+        near, far = (side.thinned(most) for side in sides)
+        one, two = _within_reach(near.cells, far.cells, hop_m=search.hop_m)
+        if one.size <= search.pairs:
+            break
     middle = screen_between(
         search.link,
         near=near.cells.columns(search.mast_m),
@@ -129,11 +150,7 @@ def _side(search: ChainSearch, end: End) -> _Side:
     )
     serving = np.flatnonzero(hop.serves)
     cells, hop = cells.chosen(serving), hop.chosen(serving)
-    most = int(min(PAIRS, max(10_000.0, SAMPLES / search.steps)) ** 0.5)
-    kept, block = thinned_by(cells.ground_m, cells.row, cells.column, most=most)
-    return _Side(
-        cells=cells.chosen(kept), hop=hop.chosen(kept), counts=(let_through, judged, serving.size), block=block
-    )
+    return _Side(cells=cells, hop=hop, counts=(let_through, judged, serving.size))
 
 
 def _within_reach(near: Cells, far: Cells, *, hop_m: float) -> tuple[NDArray[np.int64], NDArray[np.int64]]:

@@ -99,6 +99,21 @@ class ChainsTried:
         return self.cells == self.judged and self.serve == self.places
 
 
+@dataclass(frozen=True, slots=True, kw_only=True)
+class ChannelUse:
+    """What is left of the margin of a way round where its hops are not alone on the air, dB; each is judged as if it were.
+
+    `shared_db` is the least margin at any end, at `shared_at`, where all hops use the link's own channel; `beside_study_db`
+    that of each hop by itself on that channel beside the other links of the study, None where there are none or they were not
+    counted.
+    """
+
+    shared_db: float
+    shared_at: str
+    beside_study_db: float | None
+    others_counted: bool
+
+
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class RelayRoute:
     """One way round: the relays in order from A, and a plan for each hop."""
@@ -107,9 +122,11 @@ class RelayRoute:
     ground_amsl_m: tuple[float, ...]
     hops: tuple[LinkPlan, ...]
     worst_margin_db: float | None
-    """Least margin of any hop at either end, with what neighbours leave; None where levels are not known."""
+    """Least margin of any hop at either end, each hop alone on a channel; None where levels are not known."""
     off_path_m: float
     """How far the farthest relay stands from the straight path."""
+    channels: ChannelUse | None = None
+    """None where levels are not known."""
 
     @property
     def length_m(self) -> float:

@@ -24,6 +24,7 @@ from fellspan.planning.plan import LinkPlan
 from fellspan.planning.planner import open_terrain, plan_study, settings_of
 from fellspan.planning.relay_cells import Cells, Ground, cells_between
 from fellspan.planning.relay_chains import ChainSearch, chains_of_two
+from fellspan.planning.relay_channels import channel_use, other_links
 from fellspan.planning.relay_hops import End, HopColumns, affordable, chosen_places, columns_of, hop_link, screen_hop
 from fellspan.planning.relay_result import ChainsTried, RelayArea, RelayRequest, RelayResult, RelayRoute
 from fellspan.screening.pairs import Floats, SiteColumns
@@ -32,8 +33,8 @@ from fellspan.terrain.terrain import Terrain
 
 _ALWAYS: Final = (
     "a relay needs ground that may be built on, power, access and a right to stand there: none of it is in the data",
-    "each hop is judged alone: give the two a channel each, for a relay that uses one channel twice hears itself",
-    "antennas are aimed anew; radios, powers and rules are the link's; other links near by are not counted as neighbours",
+    "each hop is judged on a channel of its own, with no other link on the air: on one channel a relay hears itself",
+    "antennas are aimed anew; radios, powers and rules are the link's",
     "every hop adds delay and its own outage: the chain is available less than its worst hop",
 )
 
@@ -148,6 +149,7 @@ class _Search:
                 )
                 routes, more = self._planned(pairs, refused)
                 tried += more
+            routes = self._with_channels(routes, terrain)
         self.tell(1, 1, "")
         return RelayResult(
             request=self.request,
@@ -160,7 +162,7 @@ class _Search:
             tried=tried,
             chains=chains,
             refused=tuple(dict.fromkeys(refused)),
-            cautions=self._cautions(routes, area),
+            cautions=self._cautions(routes, area, chains),
         )
 
     def _direct(self) -> LinkPlan | None:
@@ -362,12 +364,28 @@ class _Search:
             "",
         )
 
-    def _cautions(self, routes: list[RelayRoute], area: RelayArea | None) -> tuple[str, ...]:
+    def _with_channels(self, routes: list[RelayRoute], terrain: Terrain) -> list[RelayRoute]:
+        if all(route.worst_margin_db is None for route in routes):
+            return routes
+        self.tell(0, 1, "hops on one channel")
+        others = other_links(self.study, self.link.name)
+        return [
+            dataclasses.replace(route, channels=channel_use(route.hops, others, terrain, median_k=self.study.median_k))
+            for route in routes
+        ]
+
+    def _cautions(
+        self, routes: list[RelayRoute], area: RelayArea | None, chains: ChainsTried | None
+    ) -> tuple[str, ...]:
         said = []
         if area is not None and not area.exact:
             said.append(
                 "more cells could serve than can be judged one by one: the area is that of the sweep, and of each block of "
                 "cells the best one was judged"
+            )
+        if chains is not None and not chains.every_cell:
+            said.append(
+                "chains of two were tried from the highest cell of each block only: another may hide between cells of a block"
             )
         if routes:
             said += _ALWAYS

@@ -48,6 +48,8 @@ class RelayWay:
     hops: tuple[RelayHop, ...]
     length: str
     off_path: str
+    channels: str
+    """What is left of the margin on one channel; empty where levels are not known."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -89,13 +91,20 @@ def relays_view(result: RelayResult) -> RelaysView:
         link=result.link_name,
         decision=relay_words.decision(result),
         direct=relay_words.direct_words(result),
-        searched=relay_words.searched(result).replace("km2", "km²"),
+        searched="; ".join(
+            part for part in (relay_words.searched(result).replace("km2", "km²"), _chains(result)) if part
+        ),
         ways=tuple(ways),
         left_out=result.refused,
         cautions=result.cautions,
         legend=relay_words.legend_words(result) if result.area is not None and result.area.cells else "",
         files=tuple(relay_study_name(way.rank) for way in ways),
     )
+
+
+def _chains(result: RelayResult) -> str:
+    tried = relay_words.chains_tried(result)
+    return f"chains of two: {tried}" if tried else ""
 
 
 def _way(rank: int, route: RelayRoute, *, first: int) -> RelayWay:
@@ -113,6 +122,7 @@ def _way(rank: int, route: RelayRoute, *, first: int) -> RelayWay:
         hops=tuple(_hop(index, hop) for index, hop in enumerate(route.hops, start=first)),
         length=wording.distance(route.length_m),
         off_path=wording.distance(route.off_path_m),
+        channels=relay_words.channel_words(route),
     )
 
 

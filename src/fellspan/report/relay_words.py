@@ -1,7 +1,7 @@
 """What a search for a relay says in sentences, on the terminal and on the page alike. Computes nothing."""
 
 from fellspan.links.words import STATE_WORDS, down_db, state_of
-from fellspan.planning.relay_result import RelayResult
+from fellspan.planning.relay_result import RelayResult, RelayRoute
 from fellspan.report.wording import distance, signal_short
 
 
@@ -51,6 +51,42 @@ def searched(result: RelayResult) -> str:
         f"{area.looked_at} cells, {hop}; both ends clear from {area.cells} of them "
         f"({area.area_m2 / 1e6:.3g} km2), {part}; {result.tried} planned in full"
     )
+
+
+def chains_tried(result: RelayResult) -> str:
+    """What was tried of chains of two, and what was not; empty where they were not looked for."""
+    tried = result.chains
+    if tried is None:
+        return ""
+    found = f"{tried.pairs} hops between them judged, all within reach; {tried.chains} chains serve"
+    if tried.every_cell:
+        return f"all {tried.places[0]} cells that serve the one end with all {tried.places[1]} that serve the other: {found}"
+    ends = [
+        f"{places} places for the {serve} of {judged} judged cells that serve {end}, the sweep let {cells} through{block}"
+        for end, places, serve, judged, cells, block in zip(
+            ("the one end", "the other"),
+            tried.places,
+            tried.serve,
+            tried.judged,
+            tried.cells,
+            (f" (blocks of {distance(side * tried.cell_m)})" if side > 1 else "" for side in tried.block),
+            strict=True,
+        )
+    ]
+    return f"{ends[0]}; {ends[1]}: {found}; other cells and chains of three were not tried"
+
+
+def channel_words(route: RelayRoute) -> str:
+    """What is left of the margin where the hops are not alone on the air; empty where levels are not known."""
+    use = route.channels
+    if use is None:
+        return ""
+    words = f"all hops on the link's one channel: {down_db(use.shared_db):.1f} dB of margin left, at {use.shared_at}"
+    if use.beside_study_db is not None:
+        words += f"; each hop alone on it beside the study's other links: {down_db(use.beside_study_db):.1f} dB"
+    elif not use.others_counted:
+        words += "; the study's other links are too many to be counted here: plan the hops with them"
+    return words
 
 
 def legend_words(result: RelayResult) -> str:
