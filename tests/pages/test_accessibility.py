@@ -141,6 +141,19 @@ def test_the_chart_of_heights_can_be_read_on_paper(sample, browser):
         page.context.close()
 
 
+def test_notes_of_charts_have_a_plate_on_paper_alone(sample, browser):
+    """Letters have no halo there, for it would be a second copy of them in the text of a PDF."""
+    shown = """() => [...document.querySelectorAll(".plate")].map(one => getComputedStyle(one).display)"""
+    page = _open(browser, sample.link_pages[2])
+    assert set(page.evaluate(shown)) == {"none"}
+    page.emulate_media(media="print")
+    assert set(page.evaluate(shown)) == {"inline"}
+    assert page.evaluate("""() => [...document.querySelectorAll("#heights .note")].every(note => {
+      const text = note.getBoundingClientRect(), plate = note.previousElementSibling.getBoundingClientRect();
+      return plate.left < text.left + 1 && plate.right > text.right - 0.2 * text.width; })""")
+    page.context.close()
+
+
 def test_the_decision_stands_above_the_fold_and_a_link_takes_few_sheets(sample, browser):
     sheets = []
     for path in sample.link_pages:

@@ -7,7 +7,7 @@ from typing import Final
 
 from fellspan.design.heights_result import HEIGHT_WORDS, HeightOption, HeightsResult, Pair
 from fellspan.report import svg, wording
-from fellspan.report.scales import Scale, nice_ticks
+from fellspan.report.scales import Scale, nice_ticks, text_width
 
 WIDTH, HEIGHT = 450.0, 350.0
 _LEFT, _RIGHT, _TOP, _BOTTOM = 54.0, WIDTH - 16.0, 34.0, HEIGHT - 46.0
@@ -16,6 +16,7 @@ _MOST_M: Final = 120.0
 """Pairs beyond this are told in the table alone: they would flatten the part that people can build."""
 _MOST_STEPS: Final = 45
 
+_NOTE_PX: Final = 12.5
 _LETTER_PX: Final = 6.4
 """Width that a letter of the words beside a mark takes at most, on average."""
 
@@ -147,12 +148,9 @@ def _marks(heights: HeightsResult, across: Scale, up: Scale) -> list[str]:
         shown = f"{', '.join(named)}: {a:.4g}, {b:.4g}"
         box, anchor = _free(x, y, _LETTER_PX * len(shown), taken)
         taken.append(box)
-        # On paper letters have no halo; a plate keeps the lines off them.
-        plate = svg.el("rect", x=box[0] - 2.0, y=box[1], width=box[2] - box[0] + 4.0, height=15.0, class_="plate")
-        parts.append(plate)
-        parts.append(
-            svg.label(box[0] if anchor == "start" else box[2], box[3] - 3.0, shown, class_="note", anchor=anchor)
-        )
+        start = box[0] if anchor == "start" else box[2]
+        parts.append(svg.plate(start, box[3] - 3.0, text_width(shown, _NOTE_PX), anchor=anchor))
+        parts.append(svg.label(start, box[3] - 3.0, shown, class_="note", anchor=anchor))
     return parts
 
 

@@ -10,7 +10,7 @@ import numpy as np
 
 from fellspan.design.reflection_result import KName, Lobing, LobingCurve, NullFreeHeights
 from fellspan.report import svg, wording
-from fellspan.report.scales import Scale, nice_step, nice_ticks
+from fellspan.report.scales import Scale, nice_step, nice_ticks, text_width
 
 WIDTH, HEIGHT = 520.0, 380.0
 _LEFT, _RIGHT, _TOP, _BOTTOM = 54.0, WIDTH - 16.0, 34.0, HEIGHT - 42.0
@@ -68,7 +68,9 @@ def draw_lobing(lobing: Lobing, *, uid: str, heights: NullFreeHeights | None = N
         parts += _curve(curve, lobing, across, up, clip=f"url(#{uid}-c)")
     y = up.at(lobing.planned_m)
     parts.append(svg.line(_LEFT, y, _RIGHT, y, class_="planned"))
-    parts.append(svg.label(_LEFT + 6.0, y - 5.0, f"planned, {wording.metres(lobing.planned_m)}", class_="note"))
+    planned = f"planned, {wording.metres(lobing.planned_m)}"
+    parts.append(svg.plate(_LEFT + 6.0, y - 5.0, text_width(planned, 12.5)))
+    parts.append(svg.label(_LEFT + 6.0, y - 5.0, planned, class_="note"))
     letter = lobing.end.upper()
     parts.append(svg.label(4.0, 18.0, wording.shorten(f"{letter} · {name}" if name else letter, 44), class_="plane"))
     parts.append(svg.label(_RIGHT, 18.0, "m above ground", class_="axis", anchor="end"))

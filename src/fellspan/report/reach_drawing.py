@@ -128,13 +128,14 @@ def _marks(result: EquipResult, across: Scale, up: Scale, *, right: float, botto
     zero, here = up.at(0.0), across.at(math.log10(result.distance_m))
     words = f"this link, {wording.distance(result.distance_m)}"
     inside = here + 6.0 + text_width(words, _LABEL_PX) < right
+    beside, anchor = (here + 6.0, "start") if inside else (here - 6.0, "end")
     return [
         svg.line(_LEFT, zero, right, zero, class_="target"),
+        svg.plate(_LEFT + 6.0, zero + 16.0, text_width("what is asked", _LABEL_PX)),
         svg.label(_LEFT + 6.0, zero + 16.0, "what is asked", class_="note"),
         svg.line(here, _TOP, here, bottom, class_="planned"),
-        svg.label(
-            here + (6.0 if inside else -6.0), bottom - 8.0, words, class_="note", anchor="start" if inside else "end"
-        ),
+        svg.plate(beside, bottom - 8.0, text_width(words, _LABEL_PX), anchor=anchor),
+        svg.label(beside, bottom - 8.0, words, class_="note", anchor=anchor),
     ]
 
 
@@ -153,16 +154,10 @@ def _names(rows: tuple[EquipRow, ...], result: EquipResult, across: Scale, up: S
         to_right = x + room < right and (place <= len(rows) // 2 or x - room < _LEFT)
         shift = 9.0 if to_right else -9.0
         parts.append(svg.el("circle", cx=x, cy=y, r=3.2, class_=f"half-power mark-{index}"))
-        parts.append(
-            svg.label(
-                x + shift,
-                y + (-3.0 if to_right else 14.0),
-                name,
-                class_="note",
-                anchor="start" if to_right else "end",
-                hint=pair_words(rows[index], result.rows),
-            )
-        )
+        anchor, baseline = ("start", y - 3.0) if to_right else ("end", y + 14.0)
+        parts.append(svg.plate(x + shift, baseline, room - 12.0, anchor=anchor))
+        hint = pair_words(rows[index], result.rows)
+        parts.append(svg.label(x + shift, baseline, name, class_="note", anchor=anchor, hint=hint))
     return parts
 
 

@@ -47,6 +47,16 @@ def label(
     )  # fmt: skip
 
 
+def plate(x: float, y: float, width: float, *, anchor: str = "start") -> str:
+    """What stands behind a label on paper, where letters have no halo, and keeps the lines off it.
+
+    `x`, `y` and `anchor` are those of the label, `width` its careful estimate, of which most labels take nine tenths.
+    """
+    width *= 0.9
+    left = x if anchor == "start" else x - width
+    return el("rect", x=left - 2.0, y=y - 11.0, width=width + 4.0, height=15.0, class_="plate")
+
+
 def line(x1: float, y1: float, x2: float, y2: float, *, class_: str = "", **more: str) -> str:
     """A straight line."""
     return el("line", x1=x1, y1=y1, x2=x2, y2=y2, class_=class_ or None, **more)
