@@ -115,12 +115,15 @@ class Batch:
         width = width_of(self._steps[fit] + 1, per_octave=self.per_octave)
         order = np.argsort(width, kind="stable")
         fit, width = fit[order], width[order]
+        cells = 2.0 * self._ways.length_m / self._laid.cell_m
         blocks: list[list[Index]] = [[]]
         held = 0
         for some in np.split(fit, np.flatnonzero(np.diff(width)) + 1):
             one = int(width_of(self._steps[some[:1]] + 1, per_octave=self.per_octave)[0]) if some.size else 1
-            for start in range(0, some.size, max(1, NEAR_SAMPLES // one)):
-                part = some[start : start + max(1, NEAR_SAMPLES // one)]
+            # Where a study states its step, samples stand far apart; what is read of the rasters goes by cells.
+            most = max(1, NEAR_SAMPLES // max(one, int(cells[some].max(initial=0.0))))
+            for start in range(0, some.size, most):
+                part = some[start : start + most]
                 if held and held + part.size * one > BLOCK_SAMPLES:
                     blocks.append([])
                     held = 0

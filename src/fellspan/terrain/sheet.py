@@ -4,6 +4,7 @@ Reads only the tiles that paths come near, and reads them as `blocks` does. Know
 """
 
 import mmap
+import sys
 import threading
 from collections.abc import Callable
 from typing import Final, Protocol
@@ -20,6 +21,9 @@ TILE: Final = 256
 """Side of the tiles in which cells are read."""
 MOST_CELLS: Final = 4_000_000_000
 """Rasters with more cells are not kept as a sheet: even addresses have an end."""
+
+_NORESERVE: Final = getattr(mmap, "MAP_NORESERVE", 0x4000 if sys.platform == "linux" else 0)
+"""Before 3.13, Python has no name for it."""
 
 Floats = NDArray[np.float64]
 Index = NDArray[np.int64]
@@ -180,9 +184,12 @@ class _Memory:
 
     def __init__(self, size: int) -> None:
         self._mapped: mmap.mmap | None = None
-        if hasattr(mmap, "MAP_NORESERVE") and hasattr(mmap, "MADV_DONTNEED"):
-            flags = mmap.MAP_PRIVATE | mmap.MAP_ANONYMOUS | mmap.MAP_NORESERVE
+        if hasattr(mmap, "MADV_DONTNEED"):
+            flags = mmap.MAP_PRIVATE | mmap.MAP_ANONYMOUS | _NORESERVE
             self._mapped = mmap.mmap(-1, size, flags=flags)
+            if hasattr(mmap, "MADV_NOHUGEPAGE"):
+                # A tile touches a little of many large pages: each would be taken whole.
+                self._mapped.madvise(mmap.MADV_NOHUGEPAGE)
         self.buffer: mmap.mmap | bytearray | memoryview = (
             np.empty(size, dtype=np.uint8).data if self._mapped is None else self._mapped
         )

@@ -20,7 +20,7 @@ from fellspan.terrain.stack import EDGE_CELLS, RasterStack
 
 ALONG: Final = 4 * 256
 """Places along a path at which `RasterStack.cell_along` looks for cells."""
-_APART = 64
+_APART = 32
 _ROWS = 256
 
 Floats = NDArray[np.float64]
@@ -161,13 +161,17 @@ class PathsOnStack:
 
     def read_for(self, t: Floats, which: Index) -> None:
         """Read what `sample` needs at these places, t rising along each path, and anywhere between them."""
-        few = np.unique(np.append(np.arange(0, t.shape[1], _APART), t.shape[1] - 1))
         for place, number in enumerate(self.numbers):
             rows = np.flatnonzero(self._touches[place][which])
             sheet = self.sheets.sheet(number)
             if rows.size == 0 or sheet is None or sheet.is_complete:
                 continue
-            column, row = self.curves[place].at(t[rows][:, few], which[rows])
+            ends = self.curves[place].at(t[rows][:, [0, -1]], which[rows])
+            # By cells and not by samples: these may stand far apart where a study states its step.
+            longest = max(float(np.abs(np.diff(one, axis=1)).max(initial=0.0)) for one in ends)
+            share = np.linspace(0.0, 1.0, 2 + int(longest / _APART))
+            along = t[rows][:, :1] * (1.0 - share) + t[rows][:, -1:] * share
+            column, row = self.curves[place].at(along, which[rows])
             reach = max(float(np.abs(np.diff(one, axis=1)).max(initial=0.0)) for one in (column, row))
             sheet.read_near(column, row, reach=reach + 1.0)
 
