@@ -7,12 +7,15 @@ import numpy as np
 import pytest
 from made_screening import assert_as_planned, every_pair, one_by_one
 
+import fellspan.screening.screen as screen
 from fellspan import load_study
 from fellspan.planning.inputs import Study
 from fellspan.planning.planner import open_terrain, plan_study, settings_of
-from fellspan.screening.pairs import PATH_VERDICTS, SIGNAL_VERDICTS, Candidates, Sector, SiteColumns
+from fellspan.screening.columns import Columns
+from fellspan.screening.pairs import HEIGHT_REFERENCES, PATH_VERDICTS, SIGNAL_VERDICTS, Candidates, Sector, SiteColumns
 from fellspan.screening.screen import screen_pairs
 from fellspan.screening.single import link_of
+from fellspan.terrain.terrain import Terrain
 
 pytestmark = pytest.mark.slow
 
@@ -71,6 +74,33 @@ def test_everything_that_the_sample_holds(study: Study) -> None:
     with open_terrain(study) as terrain:
         found = screen_pairs(pairs, hub=hub, place=place, terrain=terrain)
         assert_as_planned(found, one_by_one(pairs, hub, place, terrain))
+
+
+def test_places_all_over_the_town(study: Study, monkeypatch: pytest.MonkeyPatch) -> None:
+    """Outlines, streets with traffic, cranes, ships and a power line: two hundred pairs, a third of the places on roofs."""
+    pairs = made(study, 2, 100)
+    random = np.random.default_rng(3)
+    pairs.places.latitude_deg[:] = random.uniform(36.030, 36.042, 100)
+    pairs.places.longitude_deg[:] = random.uniform(-45.175, -45.150, 100)
+    pairs.places.height_reference[::3] = HEIGHT_REFERENCES.index("roof")
+    pairs.places.roof_m[::3] = random.uniform(4.0, 16.0, 34)
+    pairs.hubs.latitude_deg[:], pairs.hubs.longitude_deg[:] = (36.035368, 36.026), (-45.163227, -45.19)
+    pairs.hubs.height_m[:] = 20.0, 30.0
+    pairs.hubs.height_reference[0] = HEIGHT_REFERENCES.index("roof")
+    alone: list[int] = []
+    single = screen.screen_single
+
+    def counted(candidates: Candidates, columns: Columns, row: int, *, terrain: Terrain) -> None:
+        alone.append(row)
+        single(candidates, columns, row, terrain=terrain)
+
+    monkeypatch.setattr(screen, "screen_single", counted)
+    hub, place = every_pair(pairs)
+    with open_terrain(study) as terrain:
+        found = screen_pairs(pairs, hub=hub, place=place, terrain=terrain)
+        assert not alone
+        assert_as_planned(found, one_by_one(pairs, hub, place, terrain))
+    assert set(found.verdict.tolist()) == {0, 1, 2}
 
 
 def test_against_the_plan_of_a_study_of_the_pairs(study: Study) -> None:
