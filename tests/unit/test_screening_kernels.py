@@ -207,18 +207,21 @@ def test_what_is_said_of_a_path_is_what_links_says(seed: int, wide: bool) -> Non
         probability = clearance.probability_met(margin, sigma).min()
         extra = clearance.extra_heights_m(-least, distance)[1]
         for_confidence = clearance.extra_heights_m(z * sigma - least, distance)[1]
+        bulge = clearance.bulge_m(distance, k=K[0])
+        if wide:
+            room = above + paths.own(row, paths.surface) - paths.own(row, paths.left_out) - bulge
+            # as `links.doubts.with_doubts`: over own cover too
+            for_confidence = max(for_confidence, clearance.extra_heights_m(-room, distance)[1])
         expected = [normalised[governing, worst[governing]], distance[worst[governing]], extra, for_confidence]
         np.testing.assert_allclose(numbers[row, :4], expected, rtol=1e-9, atol=1e-9)
         assert 0.5 * (1.0 + _erf(numbers[row, 4])) == pytest.approx(probability, abs=1e-12)
         middle = distance[np.argmin(np.abs(distance - 0.5 * paths.length[row]))]
         assert numbers[row, 5] == pytest.approx(middle / paths.length[row], rel=1e-12)
-        bulge = clearance.bulge_m(distance, k=K[0])
         cut = bool(-(above - bulge).min() > clearance.TOLERANCE_M)
         in_trees = over = False
         expected_spare = least
         if wide:
             in_trees = bool((paths.own(row, paths.trees) & (least < 0.0)).any())
-            room = above + paths.own(row, paths.surface) - paths.own(row, paths.left_out) - bulge
             over = bool((-room).max() > clearance.TOLERANCE_M)
             expected_spare = np.minimum(least, room)
         assert answers[row].tolist() == [governing, (missing == 0.0).all(), cut, in_trees + 2 * over]
