@@ -16,7 +16,6 @@ import fellspan.screening.screen as screen
 import fellspan.screening.single as single
 from fellspan.screening.batch import Batch
 from fellspan.screening.columns import Columns
-from fellspan.screening.near import NearBatch
 from fellspan.screening.screen import screen_pairs
 from fellspan.screening.single import screen_single
 from fellspan.terrain.terrain import Terrain
@@ -24,7 +23,7 @@ from fellspan.terrain.terrain import Terrain
 pytestmark = [pytest.mark.bench, pytest.mark.slow]
 
 PLANNED = 40
-LEAST_SINGLES, MOST_BARE = 15.0, 12.0
+LEAST_SINGLES, MOST_BARE = 12.0, 25.0
 
 
 @pytest.fixture(autouse=True)
@@ -33,7 +32,6 @@ def no_draws(monkeypatch: pytest.MonkeyPatch) -> None:
         return np.zeros(0, dtype=np.int64)
 
     monkeypatch.setattr(Batch, "_after_draws", none)
-    monkeypatch.setattr(NearBatch, "_after_draws_near", none)
     monkeypatch.setattr(single, "with_draws", none)
 
 
