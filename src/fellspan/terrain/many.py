@@ -4,6 +4,7 @@ For paths on which rasters alone count; those near an obstacle or a surveyed poi
 Opens nothing itself; knows nothing of radio.
 """
 
+import os
 import threading
 from collections.abc import Iterator
 from contextlib import contextmanager
@@ -23,8 +24,19 @@ from fellspan.terrain.stack_sheets import PathsOnStack, StackSheets, sigmas_of
 Floats = NDArray[np.float64]
 Index = NDArray[np.int64]
 
-MOST_BYTES: Final = 300_000_000
-"""Tiles of all rasters together that stay in memory from one part of a batch to the next."""
+
+def _most_bytes() -> int:
+    """An eighth of the machine's memory, 300 MB at least: other processes may do the same work beside this one."""
+    try:
+        memory = os.sysconf("SC_PAGE_SIZE") * os.sysconf("SC_PHYS_PAGES")
+    except (AttributeError, OSError, ValueError):
+        memory = 0
+    return max(memory // 8, 300_000_000)
+
+
+MOST_BYTES: Final = _most_bytes()
+"""Tiles of all rasters together that stay in memory from one part of a batch to the next. Pairs spread over more than that are
+read again and again: ten times slower."""
 
 
 class Paths(Protocol):
