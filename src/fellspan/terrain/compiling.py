@@ -29,9 +29,8 @@ def compiled_for_numbers(function: Callable[P, R]) -> Callable[P, R]:
 
 
 def _made(function: Callable[P, R], fastmath: set[str]) -> Callable[P, R]:
-    options = {"nogil": True, "error_model": "numpy", "fastmath": fastmath}
     try:
-        made = numba.njit(cache=True, **options)(function)
+        made = numba.njit(cache=True, nogil=True, error_model="numpy", fastmath=fastmath)(function)
     except RuntimeError:  # no folder for the cache may be written: compile anew in each run
-        made = numba.njit(**options)(function)
+        made = numba.njit(nogil=True, error_model="numpy", fastmath=fastmath)(function)
     return cast("Callable[P, R]", made)

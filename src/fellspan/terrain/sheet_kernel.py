@@ -30,8 +30,10 @@ def _height(cells: Floats, u: float, v: float) -> float:
 
 
 @compiled
-def along(cells: Floats, column: Floats, row: Floats, which: Index, t: Floats, heights: Floats) -> int:
-    """Bilinear heights at places along paths, as `Sheet.heights` has them where all four cells hold something; else NaN.
+def along(  # noqa: PLR0912  # one loop: terms are loaded once for all that follow of a path
+    cells: Floats, column: Floats, row: Floats, which: Index, t: Floats, heights: Floats
+) -> int:
+    """Heights at places along paths, as `Sheet.heights` has them where all four cells hold something; else NaN.
 
     Parameters
     ----------
