@@ -65,3 +65,17 @@ def test_what_the_closer_look_meets_in_a_hole_does_not_depend_on_company(tmp_pat
 def row_of(found: PairResults, row: int) -> PairResults:
     values = {name: getattr(found, name)[row : row + 1] for name in PairResults.__slots__}
     return replace(found, **values)
+
+
+def test_paths_along_an_edge_of_a_raster_by_the_sea(tmp_path: Path) -> None:
+    """Rounding puts what lies on the edge on the raster or off it, where the sea is then: planning itself must look."""
+    file = raster(tmp_path / "ground.tif", np.full((100, 150), 3.0), cell_m=2.0)
+    hubs, places = sites("H", 1, seed=10, height_m=6.0), sites("P", 8, seed=11, height_m=6.0)
+    for made, east in ((hubs, [20.0]), (places, np.linspace(150.0, 290.0, 8))):
+        spots = np.array([lonlat(float(one), 200.0) for one in east])
+        made.longitude_deg[:], made.latitude_deg[:] = spots[:, 0], spots[:, 1]
+    made = candidates(hubs, places)
+    hub, place = every_pair(made)
+    with Terrain.open(ground=file, gaps="sea") as terrain:
+        found = screen_pairs(made, hub=hub, place=place, terrain=terrain)
+        assert_as_planned(found, one_by_one(made, hub, place, terrain))

@@ -22,6 +22,8 @@ ALONG: Final = 4 * 256
 """Places along a path at which `RasterStack.cell_along` looks for cells."""
 _APART = 32
 _ROWS = 256
+_EDGE_NEAR_CELLS = 1e-3
+"""How near an edge the polynomials of paths do not tell on which side of it a place lies."""
 
 Floats = NDArray[np.float64]
 Index = NDArray[np.int64]
@@ -110,6 +112,8 @@ class PathsOnStack:
                 inside = (left >= 0.0) & (right <= file.width) & (top >= 0.0) & (bottom <= file.height)
             meets &= curves.is_close
             self.usable &= curves.is_close
+            some = np.flatnonzero(meets)
+            self.usable[some] &= ~_end_on_edge(file, curves, some)
             if not meets.any():
                 continue
             if sheets.sheet(number) is None:
@@ -240,6 +244,13 @@ class PathsOnStack:
         errors = np.array([file.sigma_m for file in files])
         beyond = np.abs(step) > allowed_m(errors[number], errors)[source]
         return np.asarray((beyond & shared).any(axis=1))
+
+
+def _end_on_edge(file: RasterFile, curves: Curves, which: Index) -> NDArray[np.bool_]:
+    """Paths (q,) that end on an edge of a file, so all that run along one: rounding puts what lies there on it or off it."""
+    column, row = curves.at(np.broadcast_to(np.array([-1.0, 1.0]), (which.size, 2)), which)
+    away = [np.abs(at - edge) for at, size in ((column, file.width), (row, file.height)) for edge in (0, size)]
+    return np.asarray((np.minimum.reduce(away) < _EDGE_NEAR_CELLS).any(axis=1))
 
 
 def _on(file: RasterFile, column: Floats, row: Floats) -> NDArray[np.bool_]:
