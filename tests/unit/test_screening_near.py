@@ -72,7 +72,7 @@ def test_antennas_on_the_roofs_of_outlines(tmp_path: Path, monkeypatch: pytest.M
     )
     town = town_file(tmp_path, seed=7, houses=350, extent_m=(1800.0, 900.0))
     with Terrain.open(ground=ground_file(tmp_path), obstacles=town) as terrain:
-        found = compared(made, terrain, monkeypatch, alone=40 if np.isnan(typed) else 0)
+        found = compared(made, terrain, monkeypatch)
     # Some stand in an outline, some where none is.
     assert (found.status == 0).sum() > 4
     if np.isnan(typed):

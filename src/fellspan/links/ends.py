@@ -154,8 +154,13 @@ def _roof(site: Site, profile: PathProfile, *, end: EndName, ground: float) -> t
             cover,
             [f"What stands at '{site.name}', {cover:.1f} m above ground, was taken as its roof: check it."],
         )
-    raise LinkError(
-        f"site '{site.name}': the antenna is measured from the roof, but the data hold no building at that spot",
+    raise no_roof(site.name)
+
+
+def no_roof(site_name: str) -> LinkError:
+    """The error of an antenna above a roof that neither its site nor the data give."""
+    return LinkError(
+        f"site '{site_name}': the antenna is measured from the roof, but the data hold no building at that spot",
         "state the roof height above ground, or measure the antenna height from the ground",
     )
 

@@ -13,6 +13,7 @@ from numpy.typing import NDArray
 from fellspan.errors import FellspanError
 from fellspan.links.assess import REFINE_PARTS
 from fellspan.links.budget import tilts_deg
+from fellspan.links.ends import no_roof
 from fellspan.screening.columns import Columns
 from fellspan.screening.laid import LaidBucket, pair_columns
 from fellspan.screening.near_index import Nearby, nearby
@@ -166,7 +167,7 @@ class Batch:
         a, b = self._antennas(coarse)
         refused = a.refused | b.refused
         if refused.any():
-            block.one_by_one.append(self._rows[coarse.which[refused]])
+            self._refuse(coarse.which[refused], a.rows(refused), b.rows(refused), block)
             coarse, a, b = coarse.rows(~refused), a.rows(~refused), b.rows(~refused)
         if coarse.which.size == 0:
             return []
@@ -185,6 +186,15 @@ class Batch:
             if rows.size:
                 found.append(self._judge(fine, a.rows(rows), b.rows(rows), rules.rows(rows), block))
         return found
+
+    def _refuse(self, which: Index, a: Antennas, b: Antennas, block: Block) -> None:
+        """Refuse pairs without a roof, as planning does; why others are refused, planning says of each."""
+        candidates, rows = self._setting.candidates, self._rows[which]
+        unroofed = a.unroofed | (b.unroofed & ~a.refused)
+        for row, path, at_a in zip(rows[unroofed], which[unroofed], a.unroofed[unroofed], strict=True):
+            sites, index = (candidates.hubs, self._hub[path]) if at_a else (candidates.places, self._place[path])
+            self._columns.refuse(int(row), no_roof(sites.name[int(index)]).what)
+        block.one_by_one.append(rows[~unroofed])
 
     def _antennas(self, profiles: Profiles) -> tuple[Antennas, Antennas]:
         candidates, bare = self._setting.candidates, self._setting.many.layers.is_bare

@@ -124,7 +124,7 @@ class NearBatch(Batch):
         a, b = self._on_outlines(over, outlines)
         refused = a.refused | b.refused
         if refused.any():
-            self._leave(raw.which[refused], block)
+            self._refuse(raw.which[refused], a.rows(refused), b.rows(refused), block)
             some = np.flatnonzero(~refused)
             raw, over, outlines, a, b = raw.rows(some), over.rows(some), outlines.rows(some), a.rows(some), b.rows(some)
             on = [on[row] for row in some.tolist()]

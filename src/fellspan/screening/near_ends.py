@@ -82,7 +82,9 @@ def near_antennas(
     kind = np.where(holds, _BUILDING, over.cover_kind[:, end]).astype(np.int8)[:, np.newaxis]
     ground = profiles.ground_m[:, end][:, np.newaxis]
     there = replace(profiles, ground_m=ground, cover_m=cover, cover_kind=kind)
-    return antennas_at(sites, index, there, at_a=at_a, ground_is_bare=ground_is_bare)
+    antennas = antennas_at(sites, index, there, at_a=at_a, ground_is_bare=ground_is_bare)
+    # An outline without height is a roof to planning.
+    return replace(antennas, unroofed=antennas.unroofed & ~holds)
 
 
 def near_roof_doubts(antennas: Antennas, over: Overlaid, outlines: Outlines, *, at_a: bool) -> Flags:

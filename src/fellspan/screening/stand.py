@@ -29,7 +29,9 @@ class Antennas:
 
     amsl_m: Floats
     refused: NDArray[np.bool_]
-    """Below ground, or measured from a roof that neither the site nor the data give."""
+    """Below ground, or measured from a roof that neither the site nor the data give,"""
+    unroofed: NDArray[np.bool_]
+    """the latter."""
     of_roof: NDArray[np.bool_]
     """Whether its error is that of the surface there: the roof was read from the data."""
     of_sea: NDArray[np.bool_]
@@ -41,6 +43,7 @@ class Antennas:
         return Antennas(
             amsl_m=self.amsl_m[rows],
             refused=self.refused[rows],
+            unroofed=self.unroofed[rows],
             of_roof=self.of_roof[rows],
             of_sea=self.of_sea[rows],
             roof_m=self.roof_m[rows],
@@ -70,6 +73,7 @@ def antennas_at(sites: SiteColumns, index: Index, profiles: Profiles, *, at_a: b
     return Antennas(
         amsl_m=amsl,
         refused=refused,
+        unroofed=above_roof & ~known,
         of_roof=read,
         of_sea=reference == _SEA,
         roof_m=np.where(above_roof, typed, np.nan),
