@@ -75,6 +75,13 @@ def test_plan_on_a_url_gives_the_numbers_of_the_file_and_stamps_the_address(
     assert ground["name"] == server.url("ground.tif")
     assert ground["sha256"].startswith("server:")
     assert ground["size"] == (server.folder / "ground.tif").stat().st_size
+    (server.folder / "bucket").mkdir()
+    (server.folder / "bucket" / "ground.tif").write_bytes((server.folder / "ground.tif").read_bytes())
+    study_with(server.folder, "s3://bucket/ground.tif", "s3.toml")
+    assert spoken("plan", "s3.toml", "--out", "s3", capsys=capsys)[2] == ""
+    page = (server.folder / "s3" / "index.html").read_text(encoding="utf-8")
+    assert "s3://bucket/ground.tif" in page
+    assert "size not stated" in page
     assert server.url("ground.tif") in (server.folder / "remote" / "index.html").read_text(encoding="utf-8")
 
 

@@ -306,6 +306,8 @@ def _unit(value: float | None, unit: str, *, sign: bool = False) -> str:
 
 
 def _bytes(size: int) -> str:
+    if not size:
+        return "size not stated"
     return f"{size} B" if size < 1000 else f"{size / 1e3:.0f} kB" if size < 1e6 else f"{size / 1e6:.1f} MB"
 
 

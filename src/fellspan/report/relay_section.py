@@ -6,6 +6,7 @@ Shows what the search found and computes nothing.
 from dataclasses import dataclass
 from typing import Any, Final
 
+from fellspan.design.equip_words import capital
 from fellspan.geodesy.coordinates import format_position
 from fellspan.links.words import State, decisive_margin_db, least_db, state_of
 from fellspan.planning.plan import LinkPlan
@@ -122,7 +123,7 @@ def _way(rank: int, route: RelayRoute, *, first: int) -> RelayWay:
         hops=tuple(_hop(index, hop) for index, hop in enumerate(route.hops, start=first)),
         length=wording.distance(route.length_m),
         off_path=wording.distance(route.off_path_m),
-        channels=relay_words.channel_words(route),
+        channels=capital(relay_words.channel_words(route)),
     )
 
 
