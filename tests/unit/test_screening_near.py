@@ -87,7 +87,7 @@ def test_roofs_under_trees_and_beside_masts(tmp_path: Path, monkeypatch: pytest.
     for number, (latitude, longitude) in enumerate(zip(spots.latitude_deg, spots.longitude_deg, strict=True)):
         east, south = TO_GRID.transform(longitude, latitude)
         ring = outline(east - WEST, NORTH - south, (30.0, 20.0), 0.1 * number)
-        rows.append(f'house {number},building,"POLYGON (({ring}))",{6 + number % 7},')
+        rows.append(f'house {number},building,"POLYGON (({ring}))",{number % 7},')
         if number % 3 == 0:
             rows.append(f"lime {number},tree,POINT ({longitude} {latitude}),{15 + number % 4},6")
         if number % 4 == 0:

@@ -25,6 +25,7 @@ Flags = NDArray[np.bool_]
 Index = NDArray[np.int64]
 
 _BUILDING = COVER_KINDS.index("building")
+_LEAST_ROOF_M = 1e-9
 _SOMEWHERE = Position(latitude_deg=0.0, longitude_deg=0.0)
 
 
@@ -78,13 +79,12 @@ def near_antennas(
     """As `antennas_at`; the roof is that of the outline the antenna stands in."""
     profiles, end = over.profiles, 0 if at_a else -1
     holds, roof = outlines.at(profiles, at_a=at_a)
-    cover = np.where(holds, roof, over.cover_m[:, end])[:, np.newaxis]
+    # An outline without height is a roof, too.
+    cover = np.where(holds, np.maximum(roof, _LEAST_ROOF_M), over.cover_m[:, end])[:, np.newaxis]
     kind = np.where(holds, _BUILDING, over.cover_kind[:, end]).astype(np.int8)[:, np.newaxis]
     ground = profiles.ground_m[:, end][:, np.newaxis]
     there = replace(profiles, ground_m=ground, cover_m=cover, cover_kind=kind)
-    antennas = antennas_at(sites, index, there, at_a=at_a, ground_is_bare=ground_is_bare)
-    # An outline without height is a roof to planning.
-    return replace(antennas, unroofed=antennas.unroofed & ~holds)
+    return antennas_at(sites, index, there, at_a=at_a, ground_is_bare=ground_is_bare)
 
 
 def near_roof_doubts(antennas: Antennas, over: Overlaid, outlines: Outlines, *, at_a: bool) -> Flags:
