@@ -55,6 +55,10 @@ def test_no_cell_that_serves_is_lost_between_coarse_and_fine(tmp_path: Path, see
     assert len(passed) == cells.row.size
     # the area counts fine cells, kept or not, and is not far from those that serve
     assert cells.seen is not None
+    passing = cells.chosen(cells.spare_m >= 0.0)
+    marked = np.zeros_like(cells.seen)
+    marked[passing.row, passing.column] = True
+    assert np.array_equal(cells.seen, marked)
     assert cells.seen_cells == int((cells.spare_m >= 0.0).sum())
     assert cells.seen_cells == pytest.approx(int(clear.sum()), rel=0.2)
     assert cells.cell_area_m2 == pytest.approx(CELL_M**2, rel=0.01)
@@ -73,6 +77,8 @@ def test_thinned_parts_leave_the_area_whole_and_every_relay_passes_plan(
     assert whole.area is not None
     assert thinned.area is not None
     assert (thinned.area.cells, thinned.area.exact) == (whole.area.cells, False)
+    assert thinned.area.clear.any()
+    assert np.array_equal(thinned.area.clear, whole.area.clear)
     assert whole.routes
     assert thinned.routes
     for route in thinned.routes:
