@@ -8,6 +8,7 @@ from made_neighbours import (
     free_space,
     lobe,
     planned,
+    radio,
     receiver,
     replace_radio,
     study,
@@ -15,6 +16,7 @@ from made_neighbours import (
 )
 
 from fellspan.antennas.mounting import Mounting
+from fellspan.errors import LinkError
 from fellspan.links.site import Aim, Antenna
 
 
@@ -96,3 +98,37 @@ def test_an_antenna_of_which_only_the_gain_is_known() -> None:
     beside = receiver(study(*at_one_mast(low_first=True, antennas=(bare, bare))), "West", "A").interferers[0]
     assert (beside.transmit_gain_dbi, beside.receive_gain_dbi) == (0.0, 0.0)
     assert beside.level_dbm == pytest.approx(20.0 - free_space(4.0, 6.1e9), abs=1e-6)
+
+
+def test_synchronised_links_hear_only_what_the_other_ends_send() -> None:
+    houses = {"Quay": east_north(4_000.0, 300.0), "Mill": east_north(3_000.0, -2_500.0)}
+
+    def heard(*, synchronised: bool) -> set[tuple[str, str, str]]:
+        links = [
+            replace_radio(hub(("Hub", name), at, mounting=None), synchronised=synchronised)
+            for name, at in houses.items()
+        ]
+        found = study(*links, replace_radio(planned("Off", *houses.values()), synchronised=synchronised))
+        return {
+            (one.link.removeprefix("Hub - "), one.site, interferer.site)
+            for one in found.receivers
+            for interferer in one.interferers
+            if "Off" not in (one.link, interferer.link)
+        }
+
+    asked = {("Quay", "Hub", "Mill"), ("Quay", "Quay", "Hub"), ("Mill", "Hub", "Quay"), ("Mill", "Mill", "Hub")}
+    out_of_step = {("Quay", "Hub", "Hub"), ("Mill", "Hub", "Hub"), ("Quay", "Quay", "Mill"), ("Mill", "Mill", "Quay")}
+    assert heard(synchronised=False) == asked | out_of_step
+    assert heard(synchronised=True) == asked
+
+
+def test_one_synchronised_link_keeps_no_step_with_one_that_is_not() -> None:
+    one = hub(("Hub", "Quay"), east_north(4_000.0, 300.0), mounting=None)
+    other = hub(("Hub", "Mill"), east_north(3_000.0, -2_500.0), mounting=None)
+    found = study(replace_radio(one, synchronised=True), other)
+    assert any(interferer.site == "Hub" for interferer in receiver(found, "Hub - Quay", "A").interferers)
+
+
+def test_pairs_of_frequencies_keep_no_step() -> None:
+    with pytest.raises(LinkError, match="synchronised"):
+        radio(duplex="frequency", frequency_a_hz=6.1e9, frequency_b_hz=5.9e9, synchronised=True)

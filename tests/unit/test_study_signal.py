@@ -137,6 +137,13 @@ def test_the_radio_side_comes_back_the_same(folder: Path) -> None:
     assert back.links[1].radio.high_end == "A"
 
 
+def test_a_radio_that_keeps_step_comes_back_the_same(folder: Path) -> None:
+    study = full_study(folder)
+    step = dataclasses.replace(RADIO, duplex="time", frequency_a_hz=None, frequency_b_hz=None, synchronised=True)
+    study = dataclasses.replace(study, links=(dataclasses.replace(study.links[0], radio=step),))
+    assert read_study(study_text(study, folder=folder), path=folder / "study.toml") == study
+
+
 def test_every_field_of_the_radio_side_is_tried() -> None:
     """So that a field without a key shows: none of these keeps its default above."""
     for made in (RADIO, RADIO.co_channel, RADIO.modulations[1].signature, CLIMATE):
@@ -144,7 +151,8 @@ def test_every_field_of_the_radio_side_is_tried() -> None:
         kept = {
             field.name
             for field in dataclasses.fields(made)
-            if getattr(made, field.name) == field.default and field.name not in ("threshold_dbm", "delay_s")
+            if getattr(made, field.name) == field.default
+            and field.name not in ("threshold_dbm", "delay_s", "synchronised")
         }
         assert not kept
 

@@ -51,7 +51,7 @@ class Pairs:
 def pairs_of(stations: list[Station], *, median_k: float) -> Pairs | None:
     """All pairs of different links that could hear each other; None where there are none.
 
-    Ends of one link are no pair, nor are links that share a sector (`share_a_sector`).
+    Ends of one link are no pair, nor links that share a sector (`share_a_sector`), nor stations that keep step (`_in_step`).
     """
     transmitter, receiver, overlap = _overlapping(stations)
     if not transmitter.size:
@@ -150,6 +150,7 @@ def _overlapping(stations: list[Station]) -> tuple[Indices, Indices, Floats]:
     channels: dict[tuple[float, float | None, float, float | None], float | None] = {}
     found: list[tuple[int, int, float]] = []
     apart, silent = _sharing(stations)
+    ends = [one.site.name for one in stations]
     usable = [one for one in stations if one.has_gain]
     for sender in usable:
         if sender.power_dbm is None or sender.number in silent:
@@ -160,10 +161,21 @@ def _overlapping(stations: list[Station]) -> tuple[Indices, Indices, Floats]:
                 channels[key] = overlap_db(*key)
             share = channels[key]
             links = sender.number // 2, hearer.number // 2
-            if share is not None and links[0] != links[1] and links not in apart:
+            if share is not None and links[0] != links[1] and links not in apart and not _in_step(sender, hearer, ends):
                 found.append((sender.number, hearer.number, share))
     numbers = np.array([pair[:2] for pair in found], dtype=np.intp).reshape(-1, 2)
     return numbers[:, 0], numbers[:, 1], np.array([pair[2] for pair in found], dtype=np.float64)
+
+
+def _in_step(sender: Station, hearer: Station, ends: list[str]) -> bool:
+    """Whether both send at the same moments: both at the site where their links meet, or both at the far ends from it.
+
+    `ends` is the site of each station, by number: those of one link stand side by side.
+    """
+    if not (sender.radio.synchronised and hearer.radio.synchronised):
+        return False
+    other_sender, other_hearer = ends[sender.number ^ 1], ends[hearer.number ^ 1]
+    return sender.site.name == hearer.site.name or other_sender == other_hearer
 
 
 def _sharing(stations: list[Station]) -> tuple[set[tuple[int, int]], set[int]]:

@@ -84,7 +84,7 @@ def rule_notes(
 ) -> tuple[str, ...]:
     """What the figures rest on and leave out."""
     notes = [
-        "Every transmitter at its greatest power, all at once; radios that keep step in time division hear less.",
+        "Every transmitter at its greatest power, all at once; radios of time division out of step, unless synchronised.",
         "At the median k: for small parts of the time distant transmitters come in stronger.",
     ]
     unknown = _of([one for one in stations if one.radio.bandwidth_hz is None])

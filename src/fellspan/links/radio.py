@@ -124,6 +124,8 @@ class Radio:
         How far the radio can lower its power by itself, dB; 0 where it cannot. Levels are at full power.
     duplex
         'time': both directions on one frequency; 'frequency': on two.
+    synchronised
+        With 'time': links that meet at a site, all of them so, send from there at the same moments, and listen alike.
     frequency_a_hz, frequency_b_hz
         Transmitted by A and by B, Hz; both, for 'frequency'. The end with the higher one is the high end.
     usable_share
@@ -156,6 +158,7 @@ class Radio:
     co_channel: CoChannel | None = None
     power_control_db: float = 0.0
     duplex: Duplex = "time"
+    synchronised: bool = False
     frequency_a_hz: float | None = None
     frequency_b_hz: float | None = None
     usable_share: float = 1.0
@@ -209,6 +212,10 @@ class Radio:
         if self.duplex == "time" and (one is not None or other is not None):
             raise self._refuse("a transmit frequency of one end is given, but duplex is 'time'", "say 'frequency'")
         if self.duplex == "frequency":
+            if self.synchronised:
+                raise self._refuse(
+                    "it is synchronised, but duplex is 'frequency'", "radios keep step in time division only"
+                )
             if one is None or other is None:
                 raise self._refuse("duplex is 'frequency' without a pair", "give the frequency that each end transmits")
             if not min(one, other) <= self.frequency_hz <= max(one, other):

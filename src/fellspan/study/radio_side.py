@@ -53,6 +53,7 @@ def radio_of(table: RadioTable, *, high_end: Literal["a", "b"] | None = None) ->
         co_channel=None if table.co_channel is None else _co_channel(table.co_channel),
         power_control_db=table.power_control,
         duplex=table.duplex,
+        synchronised=table.synchronised,
         frequency_a_hz=pair[0],
         frequency_b_hz=pair[1],
         usable_share=table.usable_share,

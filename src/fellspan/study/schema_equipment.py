@@ -93,6 +93,9 @@ class RadioTable(Table):
         default=0.0, description="How far the radio can lower its power by itself.", examples=["10 dB"]
     )
     duplex: Duplex = Field(default="time", description="Both directions on one frequency (time) or on two.")
+    synchronised: bool = Field(
+        default=False, description="In time division: links that meet at a site send from there at the same moments."
+    )
     transmit_a: Frequency | None = Field(
         default=None, description="Frequency that A transmits on, with duplex by frequency.", examples=["11.2 GHz"]
     )

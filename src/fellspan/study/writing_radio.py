@@ -37,6 +37,7 @@ def radio_text(radio: Radio) -> str:
             ("emission", worded(radio.emission_class)),
             ("power_control", decibels(radio.power_control_db)),
             ("duplex", worded(radio.duplex) if radio.duplex != "time" else None),
+            ("synchronised", "true" if radio.synchronised else None),
             ("transmit_a", hertz(radio.frequency_a_hz)),
             ("transmit_b", hertz(radio.frequency_b_hz)),
             ("usable_share", number(radio.usable_share) if radio.usable_share != 1.0 else None),
