@@ -168,18 +168,24 @@ def share_a_sector(one: Station, other: Station) -> bool:
     """Whether two links hang on one antenna with one radio, which serves them in turn.
 
     One site and height, one kind of antenna mounted alike, one transmit frequency; and an antenna that is not aimed at the far
-    end of its link: it has a bearing of its own, or is an omni.
+    end of its link: it has a bearing of its own, or is an omni. Heights are one if they were typed alike or come to one level:
+    a roof read from an outline stands on the highest ground under each link's own path, so its level is not one on all.
     """
     return (
         one.link != other.link
         and one.site.name == other.site.name
         and one.site.position == other.site.position
-        and abs(one.amsl_m - other.amsl_m) <= SAME_HEIGHT_M
+        and (_typed(one.site) == _typed(other.site) or abs(one.amsl_m - other.amsl_m) <= SAME_HEIGHT_M)
         and one.transmit_hz == other.transmit_hz
         and (one.antenna.name, one.antenna.gain_dbi, one.antenna.origin, one.antenna.mounting)
         == (other.antenna.name, other.antenna.gain_dbi, other.antenna.origin, other.antenna.mounting)
         and _hangs_for_good(one.antenna)
     )
+
+
+def _typed(site: Site) -> tuple[float, str, float | None, float | None]:
+    """The height as it was given, before any path was looked at."""
+    return site.height_m, site.height_reference, site.roof_m, site.ground_amsl_m
 
 
 def _hangs_for_good(antenna: Antenna) -> bool:
