@@ -1,5 +1,7 @@
 """What files and page of a run over pairs say beside their numbers: a 0 that mends nothing, neighbours that are not counted."""
 
+import csv
+import html
 import json
 import math
 from pathlib import Path
@@ -9,6 +11,7 @@ import numpy as np
 import pytest
 
 from fellspan.cli.main import run
+from fellspan.exports import candidates_folder
 from fellspan.exports.candidates import CANDIDATE_COLUMNS, CandidateTable
 from fellspan.report import candidates_page
 from fellspan.report.candidates_page import _heights, _sure_heights
@@ -58,3 +61,104 @@ def test_terminal_page_and_summary_say_that_neighbours_are_not_counted(
     page = (tmp_path / "out" / "index.html").read_text(encoding="utf-8")
     assert said in page
     assert "0 of 2 places have at least one clear hub." in page
+
+
+WEATHER = '\n[climate]\nrain_rate = "30 mm/h"\n'
+
+
+def trial(
+    folder: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str], *, climate: str = ""
+) -> tuple[str, str, list[dict[str, str]]]:
+    """Terminal, page and rows of a run with a target where no maps are installed."""
+    made_runs.write_inputs(folder, places=12)
+    text = made_runs.STUDY.replace("[candidates]\n", '[candidates]\ntarget_availability = "99.9 %"\n')
+    (folder / "study.toml").write_text(text + climate, encoding="utf-8")
+    monkeypatch.chdir(folder)
+    monkeypatch.setattr("fellspan.climate.maps.MAP_PACKAGE", "a_package_that_is_not_there")
+    monkeypatch.setattr(candidates_page, "shaded_relief", lambda *_, **__: None)
+    assert run(made_runs.arguments()) == 0
+    with (folder / "out" / "candidates.csv").open(encoding="utf-8", newline="") as stream:
+        rows = list(csv.DictReader(stream))
+    page = html.unescape((folder / "out" / "index.html").read_text(encoding="utf-8"))
+    return " ".join(capsys.readouterr().out.split()), page, rows
+
+
+def test_a_target_that_cannot_be_judged_is_told_with_what_to_set(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
+) -> None:
+    terminal, page, rows = trial(tmp_path, monkeypatch, capsys)
+    held = [row for row in rows if row["signal_verdict"] == "marginal"]
+    assert held
+    said = (
+        f"The target cannot be judged for {len(held)} pairs, marginal at best: no rain rate is known, so no availability; "
+        "set climate.rain_rate in the study, above 5 km climate.dn1 too, or install the maps: "
+        '.venv/bin/pip install -e ".[climate]".'
+    )
+    assert said in terminal
+    assert said in page
+    assert {row["reason"] != "" for row in held} == {True}
+    assert all("set climate.rain_rate" in row["reason"] for row in held)
+    assert not any(row["reason"] for row in rows if row["signal_verdict"] == "below")
+    summary = json.loads((tmp_path / "out" / "summary.json").read_text(encoding="utf-8"))
+    assert summary["target_not_judged"]["pairs"] == len(held)
+
+
+def test_a_target_that_can_be_judged_is_not_complained_of(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
+) -> None:
+    terminal, page, rows = trial(tmp_path, monkeypatch, capsys, climate=WEATHER)
+    assert "cannot be judged" not in terminal + page
+    assert not any(row["reason"] for row in rows)
+    assert any(row["signal_verdict"] == "meets" for row in rows)
+
+
+def test_it_is_told_why_there_is_no_chosen_study(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
+) -> None:
+    monkeypatch.setattr(candidates_folder, "MOST_CHOSEN", 3)
+    terminal, page, _ = trial(tmp_path, monkeypatch, capsys)
+    assert not (tmp_path / "out" / "chosen.toml").exists()
+    said = (
+        "chosen.toml was not written: it would hold 11 links, and 3 are the most; run a part of the places (--places)"
+    )
+    assert said in terminal
+    assert said in page.replace("<code>", "").replace("</code>", "").replace("<bdi>", "")
+    assert "plan chosen.toml" not in terminal + page
+    written = json.loads((tmp_path / "out" / "summary.json").read_text(encoding="utf-8"))
+    assert written["chosen_not_written"].startswith("it would hold 11 links")
+
+
+def test_a_note_that_begins_with_a_file_keeps_its_name(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
+) -> None:
+    made_runs.write_inputs(tmp_path, places=2)
+    text = (tmp_path / "places.csv").read_text(encoding="utf-8").replace("height\n", "height,owner\n", 1)
+    (tmp_path / "places.csv").write_text(text, encoding="utf-8")
+    monkeypatch.chdir(tmp_path)
+    monkeypatch.setattr(candidates_page, "shaded_relief", lambda *_, **__: None)
+    assert run(made_runs.arguments()) == 0
+    page = (tmp_path / "out" / "index.html").read_text(encoding="utf-8")
+    assert '<li class="as-it-is"><bdi>places.csv: columns not used: owner</bdi>' in page
+    assert "<li><bdi>Each pair is judged alone" in page
+    assert ".candidates .cautions li.as-it-is::first-letter{text-transform:none}" in page
+    assert "places.csv: columns not used: owner" in capsys.readouterr().out
+
+
+def test_the_sentence_of_a_target_is_one() -> None:
+    from types import SimpleNamespace
+
+    from fellspan.links.signal_words import availability_sentence
+
+    def said(met: bool | None) -> str:
+        result = SimpleNamespace(
+            availability_percent=SimpleNamespace(year=None, worst_month=None),
+            minutes_per_year=None,
+            target_availability_percent=99.9,
+            target_met=met,
+            notes=("no rain rate",),
+        )
+        return availability_sentence(result)  # type: ignore[arg-type]
+
+    assert said(None).endswith("The target of 99.9 % of the year in each direction cannot be judged.")
+    assert said(True).endswith("in each direction is met.")
+    assert said(False).endswith("in each direction is not met.")

@@ -29,7 +29,7 @@ def page_lines(
         for reason, count in summary.refusals:
             lines += wrapped(f"{_many(count, 'pair')}: {reason}", first="  ")
     lines += ["", rule(), *_cautions(summary, notes)]
-    lines += ["", *_next(out, chosen)]
+    lines += ["", *_next(out, chosen, summary.no_chosen)]
     return lines
 
 
@@ -57,6 +57,10 @@ def _places(summary: RunSummary, ink: Ink) -> list[str]:
         lines += wrapped(
             f"{_many(summary.places_served, 'place')} with a clear hub whose signal meets margin and target too."
         )
+        if summary.unjudged:
+            lines += wrapped(
+                f"The target cannot be judged for {_many(summary.unjudged, 'pair')}, marginal at best: {summary.unjudged_why}."
+            )
     else:
         lines += wrapped("No signal was worked out: the radio states no power or no threshold.")
     return lines
@@ -114,10 +118,12 @@ def _cautions(summary: RunSummary, notes: Sequence[str]) -> list[str]:
     return lines
 
 
-def _next(out: Path, chosen: bool) -> list[str]:
+def _next(out: Path, chosen: bool, no_chosen: str) -> list[str]:
     lines = wrapped(f"map and lists: {printable(str(out / 'index.html'))}")
     if chosen:
         lines += wrapped(f"next: fellspan plan {printable(str(out / 'chosen.toml'))} --out REPORT")
     else:
+        if no_chosen:
+            lines += wrapped(f"chosen.toml was not written: {no_chosen}")
         lines += wrapped("next: put the pairs that matter into a study, and plan them with fellspan plan")
     return lines

@@ -15,6 +15,7 @@ from fellspan.exports.text import csv_cell, utf8
 from fellspan.links.words import STATE_WORDS
 from fellspan.runs.store import STATES, Store
 from fellspan.runs.summary import HubCount, PairRow, RunSummary, rows_in_order
+from fellspan.runs.unjudged import is_unjudged, unjudged_words
 from fellspan.screening.pairs import BASES, PATH_VERDICTS, SIGNAL_VERDICTS, STATUSES, Candidates
 
 NUMBERS: Final = (
@@ -54,7 +55,7 @@ CANDIDATE_COLUMNS: Final = (
 BEST_COLUMNS: Final = ("place", "rank", *(name for name in CANDIDATE_COLUMNS if name != "place"))
 JUDGED_ALONE: Final = (
     "Each pair is judged alone: radios that share a channel, sectors of one hub among them, are not counted here; "
-    "fellspan plan chosen.toml counts them."
+    "fellspan plan counts them."
 )
 """What every run must say of its signals."""
 UNSURE_WORDS: Final = "not sure enough"
@@ -73,6 +74,8 @@ class CandidateTable:
         self.places = [csv_cell(name) for name in candidates.places.name]
         self.sectors = [csv_cell(sector.name) for sector in candidates.sectors]
         self.criteria = criterion_words(candidates)
+        self._candidates = candidates
+        self._unjudged = f"target not judged: {unjudged_words(candidates)}"
 
     def cells(self, row: PairRow) -> list[str]:
         """The cells of `CANDIDATE_COLUMNS`."""
@@ -89,8 +92,16 @@ class CandidateTable:
         ]
         cells += [_number(row[index], form) for index, form in _NUMBER_AT]
         cells.append(raising_words(row))
-        cells.append(csv_cell(row.reason) if row.reason else "")
+        cells.append(self._reason(row))
         return cells
+
+    def _reason(self, row: PairRow) -> str:
+        if row.reason:
+            return csv_cell(row.reason)
+        unjudged = is_unjudged(
+            self._candidates, signal_verdict=row.signal_verdict, availability_percent=row.availability_percent
+        )
+        return self._unjudged if unjudged else ""
 
     def best_cells(self, rank: int, row: PairRow | int) -> list[str]:
         """The cells of `BEST_COLUMNS`; for a place without a hub its name and that word."""
@@ -162,6 +173,11 @@ def summary_json(summary: RunSummary, *, title: str, notes: Sequence[str]) -> st
                 "places": summary.places,
                 "places_by_best_state": summary.by_best_state,
                 "places_clear_and_signal_meets": summary.places_served,
+                "target_not_judged": {
+                    "pairs": summary.unjudged,
+                    "why": summary.unjudged_why if summary.unjudged else "",
+                },
+                "chosen_not_written": utf8(summary.no_chosen),
                 "hubs": [_hub(hub) for hub in summary.hubs],
                 "refusals": [{"reason": utf8(reason), "pairs": count} for reason, count in summary.refusals],
                 "notes": [utf8(note) for note in notes],

@@ -4,6 +4,7 @@ Each is written beside its place first and moved there when all are whole. What 
 """
 
 import csv
+import dataclasses
 import os
 from collections.abc import Callable, Iterator, Mapping, Sequence
 from contextlib import contextmanager, suppress
@@ -84,7 +85,8 @@ def write_run(
         write_lines(stream, (line.rstrip("\n") for line in aside))
 
     def chosen(stream: TextIO) -> bool:
-        text = _chosen(screening, found[0], folder)
+        text, why = _chosen(screening, found[0], folder)
+        found[0] = dataclasses.replace(found[0], no_chosen=why)
         stream.write(utf8(text))
         return bool(text)
 
@@ -116,21 +118,26 @@ def _aside(folder: Path) -> Iterator[TextIO]:
         raise OutputError(f"'{folder}' cannot be written: {error.strerror or error}", "make room") from error
 
 
-def _chosen(screening: Screening, summary: RunSummary, folder: Path) -> str:
-    """The study of the best hubs; empty where there are none, too many, or names that a study cannot say."""
+def _chosen(screening: Screening, summary: RunSummary, folder: Path) -> tuple[str, str]:
+    """The study of the best hubs, and ''; or '' and why there is none: no hubs, too many, or names it cannot say."""
     best = summary.best
     places = [
         place
         for place, state in enumerate(best.state.tolist())
         if state <= STATES.index("marginal") and best.hub[place] >= 0
     ]
-    if not 0 < len(places) <= MOST_CHOSEN:
-        return ""
+    if not places:
+        return "", "no place has a hub whose path is not obstructed"
+    if len(places) > MOST_CHOSEN:
+        return "", (
+            f"it would hold {len(places)} links, and {MOST_CHOSEN} are the most; run a part of the places (--places), or list "
+            "the pairs that matter (--pairs), with an --out of its own"
+        )
     pairs = ((int(best.hub[place]), int(best.sector[place]), place) for place in places)
     try:
-        return chosen_text(screening.study, screening.candidates, pairs, folder=folder)
-    except StudyError:
-        return ""
+        return chosen_text(screening.study, screening.candidates, pairs, folder=folder), ""
+    except StudyError as error:
+        return "", error.what
 
 
 def drop_parts(folder: Path) -> None:

@@ -79,8 +79,8 @@ def availability_sentence(result: SignalResult, *, neighbours: bool = False) -> 
     target = result.target_availability_percent
     asked = ""
     if target is not None:
-        said = {True: "met", False: "not met", None: "cannot be judged"}[result.target_met]
-        asked = f" The target of {target:g} % of the year in each direction is {said}."
+        said = {True: "is met", False: "is not met", None: "cannot be judged"}[result.target_met]
+        asked = f" The target of {target:g} % of the year in each direction {said}."
     if year is None or worst is None or minutes is None:
         why = next((note for note in result.notes if note.startswith("no ")), "see the notes")
         return f"Availability is not computed: {why}.{asked}"

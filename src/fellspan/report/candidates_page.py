@@ -75,7 +75,7 @@ def render_candidates_page(summary: RunSummary, study: Study, candidates: Candid
             hubs_left=max(0, len(summary.hubs) - MOST_HUBS),
             listed=listed,
             squares=data["squares"] is not None,
-            notes=[clean(note) for note in notes],
+            notes=[(clean(note), _begins_with_a_file(note)) for note in notes],
             data=_json(data),
             relief=_json(_relief(study, turned)),
             css={name: assets.asset(f"{name}.css") for name in ("drawing", "page", "map", "candidates")},
@@ -84,6 +84,12 @@ def render_candidates_page(summary: RunSummary, study: Study, candidates: Candid
             script=assets.asset("candidates.js"),
         )
     )
+
+
+def _begins_with_a_file(note: str) -> bool:
+    """Whether a note starts with the name of a file, whose first letter is to stay as it is."""
+    first = note.split(" ", 1)[0].rstrip(":,")
+    return "." in first[:-1]
 
 
 def _json(value: object) -> Markup:

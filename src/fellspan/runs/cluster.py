@@ -70,7 +70,7 @@ def _client(address: str) -> Any:
     except ImportError:
         raise RunError(
             "--scheduler needs dask.distributed, which is not installed",
-            "install it with: pip install 'fellspan[cluster]'",
+            'install it from the folder of the clone: .venv/bin/pip install -e ".[cluster]"',
         ) from None
     connect: Any = distributed.Client
     try:

@@ -11,6 +11,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from fellspan.runs.store import RESULT_COLUMNS, STATES, Store, state_sql
+from fellspan.runs.unjudged import UNJUDGED_SQL, unjudged_words
 from fellspan.screening.pairs import BASES, SIGNAL_VERDICTS, STATUSES, Candidates
 
 NOT_REACHED: Final = len(STATES)
@@ -116,6 +117,11 @@ class RunSummary:
     refusals: tuple[tuple[str, int], ...]
     """The most frequent reasons of refusals, and how many pairs each holds."""
     best: BestHubs
+    unjudged: int = 0
+    """Pairs with a margin whose availability target cannot be judged."""
+    unjudged_why: str = ""
+    no_chosen: str = ""
+    """Why `chosen.toml` was not written; empty where it was."""
 
 
 def rows_in_order(store: Store) -> Iterator[PairRow]:
@@ -158,7 +164,15 @@ def summarise(
         hubs=hubs,
         refusals=tuple((str(reason), int(count)) for reason, count in reasons),
         best=best,
+        unjudged=_unjudged(store, candidates),
+        unjudged_why=unjudged_words(candidates),
     )
+
+
+def _unjudged(store: Store, candidates: Candidates) -> int:
+    if candidates.target_availability_percent is None:
+        return 0
+    return sum(int(count) for (count,) in store.query(f"SELECT COUNT(*) FROM result WHERE {UNJUDGED_SQL}"))
 
 
 def _by_word(store: Store, column: str, words: tuple[str, ...]) -> dict[str, int]:
