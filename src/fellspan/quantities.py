@@ -70,6 +70,13 @@ def _split(text: str, *, name: str, example: str) -> tuple[float, str]:
     """Number and lower-case unit of a text; a missing unit and a decimal comma are refused."""
     match = _QUANTITY.fullmatch(_clean(text))
     if match is None:
+        thousands = re.search(r"(?<![0-9.,])([0-9]{1,3}),([0-9]{3})(?![0-9.,])", text)
+        if thousands is not None:
+            whole, rest = thousands.groups()
+            raise QuantityError(
+                f"{_shown(text)} has a comma in its number",
+                f"before three digits it may part thousands: write {whole}{rest}, or {whole}.{rest} if it is a decimal",
+            )
         if re.search(r"[0-9],[0-9]", text):
             raise QuantityError(
                 f"{_shown(text)} has a comma in its number", f"write decimals with a point, for instance {example}"

@@ -162,3 +162,51 @@ def test_the_sentence_of_a_target_is_one() -> None:
     assert said(None).endswith("The target of 99.9 % of the year in each direction cannot be judged.")
     assert said(True).endswith("in each direction is met.")
     assert said(False).endswith("in each direction is not met.")
+
+
+def told(
+    folder: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str], file: str, text: str
+) -> str:
+    """What a run says of a wrong file of hubs or places."""
+    made_runs.write_inputs(folder, places=2)
+    (folder / file).write_text(text, encoding="utf-8")
+    monkeypatch.chdir(folder)
+    assert run(made_runs.arguments()) == 2
+    return " ".join(capsys.readouterr().err.split())
+
+
+def test_an_antenna_of_a_row_is_told_with_its_file_and_row_once(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
+) -> None:
+    two = made_runs.HUBS.replace("west,14 dBi", "west,24 dBi").replace("east,14 dBi", "east,25 dBi")
+    said = told(tmp_path, monkeypatch, capsys, "hubs.csv", two)
+    assert said.startswith(
+        "fellspan: hubs.csv, row 3: the antenna would radiate more than it gets: 25.00 dBi, but beams"
+    )
+    assert said.endswith("wrong too: hubs.csv, row 4")
+    assert "study.toml" not in said
+    assert "antenna '" not in said
+
+
+@pytest.mark.parametrize(
+    ("header", "said"),
+    [
+        ("Ort;Breite;Länge;Höhe", "names no column that is known: 'Ort, Breite, Länge, Höhe' columns: name, latitude"),
+        ("name;latitude;longitud;height", "unknown column 'longitud' did you mean 'longitude'?"),
+        ("name;latitude;longitude;heigth", "unknown column 'heigth' did you mean 'height'?"),
+    ],
+)
+def test_a_column_is_guessed_only_where_it_is_a_slip(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str], header: str, said: str
+) -> None:
+    text = f"{header}\nA;36.08;-45.26;6 m above ground\n"
+    assert said in told(tmp_path, monkeypatch, capsys, "places.csv", text)
+
+
+def test_a_comma_that_may_part_thousands_is_told_as_such(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
+) -> None:
+    rows = "A;36.08;-45.26;1,500 m above ground\nB;36.08;-45.25;6,5 m above ground\n"
+    said = told(tmp_path, monkeypatch, capsys, "places.csv", f"name;latitude;longitude;height\n{rows}")
+    assert "it may part thousands: write 1500, or 1.500 if it is a decimal" in said
+    assert "row 3" not in said

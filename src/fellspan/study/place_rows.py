@@ -4,6 +4,7 @@ Knows how columns are spelled, and nothing of what they mean.
 """
 
 import csv
+import difflib
 import io
 import json
 import re
@@ -13,7 +14,7 @@ from pathlib import Path
 from typing import Final, NoReturn
 
 from fellspan.errors import SitesFileError
-from fellspan.terrain.tables import closest, shown
+from fellspan.terrain.tables import shown
 
 MAX_FILE_BYTES: Final = 200_000_000
 MAX_FIELD: Final = 1_000_000
@@ -26,6 +27,8 @@ _NUMBERS: Final = (
 )  # fmt: skip
 _COMMA: Final = re.compile(r"(?<![\d.,])(\d+),(\d{1,2}|\d{4,})(?![\d.,])")
 """A decimal comma; with three digits behind it, it may part thousands, and stays for the reader of quantities to refuse."""
+_SHORT, _ALIKE = 3, 0.7
+"""Names no longer than this are not guessed at; so alike is a slip (our own choice, no source)."""
 OF_GEOMETRY: Final = ("latitude", "longitude")
 POSITION: Final = (*OF_GEOMETRY, "position", "easting", "northing", "crs")
 _OTHER_ENCODINGS: Final = ((b"\xff\xfe", "UTF-16"), (b"\xfe\xff", "UTF-16"))
@@ -189,11 +192,12 @@ class _Columns:
         if key in self.columns:
             return key
         if key and key not in self.unused:
-            near = closest(key, (*self.columns, *self.aliases))
-            if near.startswith("did you mean") and abs(len(key) - len(near[14:-2])) <= 2 and len(key) > 3:
-                if key == "bearing":
-                    near = "only hubs have one: are --hubs and --places the wrong way round?"
-                raise SitesFileError(f"{self.rows.file}: unknown column '{shown(spelled)}'", near)
+            near = _mistyped(key, (*self.columns, *self.aliases))
+            if near and key == "bearing":
+                remedy = "only hubs have one: are --hubs and --places the wrong way round?"
+                raise SitesFileError(f"{self.rows.file}: unknown column '{shown(spelled)}'", remedy)
+            if near:
+                raise SitesFileError(f"{self.rows.file}: unknown column '{shown(spelled)}'", f"did you mean '{near}'?")
             self.unused[key] = None
         return None
 
@@ -203,6 +207,14 @@ class _Columns:
             names = [shown(name, 30) for name in self.unused]
             listed = ", ".join(names[:5]) + (f" and {len(names) - 5} more" if names[5:] else "")
             self.rows.notes.append(f"{self.rows.file}: columns not used: {listed}")
+
+
+def _mistyped(key: str, known: Sequence[str]) -> str:
+    """The name that a key is a slip of; '' where it is more likely a word of its own, or of another language."""
+    if len(key) <= _SHORT:
+        return ""
+    near = difflib.get_close_matches(key, [name for name in known if len(name) > _SHORT], n=1, cutoff=_ALIKE)
+    return near[0] if near and abs(len(key) - len(near[0])) <= 2 else ""
 
 
 def _take(reader: _Columns, records: Iterable[tuple[str, Mapping[str, str]]]) -> None:

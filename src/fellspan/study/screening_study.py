@@ -258,17 +258,29 @@ class _Kinds:
             )
             for number, name in enumerate(self.names)
         )
-        study = assemble(
-            self.file.model_copy(
-                update={
-                    "site": tuple(SiteTable.model_validate({"name": name, **site}) for name in (_HUB, _PLACE)),
-                    "antenna": (*self.file.antenna, *self.made.values()),
-                    "link": links,
-                }
-            ),
-            path=self.path,
-        )
+        tables = {
+            "site": tuple(SiteTable.model_validate({"name": name, **site}) for name in (_HUB, _PLACE)),
+            "antenna": (*self.file.antenna, *self.made.values()),
+            "link": links,
+        }
+        try:
+            study = assemble(self.file.model_copy(update=tables), path=self.path)
+        except StudyError as error:
+            raise self._of_its_row(error) from None
         return study, study.links
+
+    def _of_its_row(self, error: StudyError) -> FellspanError:
+        """An error of an antenna that a row describes as one of that row: the study file does not hold it."""
+        rows = {f"antenna '{made.name}'": made.name.removeprefix("of ") for made in self.made.values()}
+        for quoted, row in rows.items():
+            begins = f"{self.path.name}, {quoted}: "
+            if error.what.startswith(begins):
+                what = error.what.removeprefix(begins).replace(quoted, "the antenna")
+                details = error.details
+                for other, its_row in rows.items():
+                    details = tuple(detail.replace(other, its_row) for detail in details)
+                return SitesFileError(f"{row}: {what}", *details)
+        return error
 
     def sectors(self, templates: Sequence[Link]) -> tuple[Sector, ...]:
         """The sectors of all hubs, in their order."""
