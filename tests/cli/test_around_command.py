@@ -4,7 +4,7 @@ import json
 from pathlib import Path
 
 import pytest
-from made_studies import A, run_command, unwrapped, write_study
+from made_studies import STUDY, A, run_command, unwrapped, write_study
 
 ALONE = ("around", A, "--ground", "ground.tif", "--height", "12 m above ground", "--frequency", "5.8 GHz")
 NEAR = ("--radius", "1500 m")
@@ -48,6 +48,44 @@ def test_the_files_are_written_and_said(folder: Path) -> None:
     assert run.stdout.splitlines()[-1] == "map: seen/index.html (4 files)"
     names = {path.name for path in (folder / "seen").iterdir()}
     assert names == {"index.html", "heights.tif", "contours.geojson", "around.json"}
+
+
+def own_height(text: str, *links: str) -> str:
+    """The study with a height of the site (or none), and more links with heights of their own at West."""
+    first, rest = STUDY.split('height = "30 m above ground"\n', 1)
+    more = "".join(
+        f'[[link]]\nname = "More {n}"\na = "West"\nb = "East"\nheight_a = "{height}"\nradio = "radio"\nantenna = "dish"\n'
+        for n, height in enumerate(links)
+    )
+    linked = 'name = "West - East"\n'
+    at = f'{linked}height_a = "5 m above ground"\n'
+    return first + (f'height = "{text}"\n' if text else "") + rest.replace(linked, at) + more
+
+
+@pytest.mark.parametrize(
+    ("own", "links", "height", "words"),
+    [
+        ("12 m above ground", (), "12.0 m above ground", "site 'West' in own.toml; link 'West - East' has 5.0 m above ground"),
+        ("12 m above ground", ("7 m above ground",), "12.0 m above ground", "(1 more differ too)"),
+        ("", ("8 m above ground", "8 m above ground"), "8.0 m above ground", "2 of its 3 links in own.toml, such as 'More 0'"),
+        ("", (), "5.0 m above ground", "its link in own.toml"),
+    ],
+)  # fmt: skip
+def test_a_site_stands_at_its_own_height_and_it_is_said_whose_it_is(
+    folder: Path, tmp_path: Path, own: str, links: tuple[str, ...], height: str, words: str
+) -> None:
+    write_study(tmp_path, hill_m=60.0)
+    (tmp_path / "own.toml").write_text(own_height(own, *links), encoding="utf-8")
+    ask = ("around", "West", "--study", "own.toml", *NEAR, "--cell", "60 m")
+    run = run_command(*ask, "--out", "seen", folder=tmp_path)
+    assert run.returncode == 0, run.stderr
+    said = " ".join(run.stdout.split())
+    assert f"antenna {height}," in said
+    assert words in said
+    page = (tmp_path / "seen" / "index.html").read_text(encoding="utf-8")
+    assert "Antenna height from <bdi>" in page
+    typed = json.loads(run_command(*ask, "--height", "9 m above ground", "--json", folder=tmp_path).stdout)["around"]
+    assert (typed["antenna_m"], typed["above"], typed["height_from"]) == (9.0, "ground", "--height")
 
 
 @pytest.mark.parametrize(

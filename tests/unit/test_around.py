@@ -23,7 +23,7 @@ from fellspan.links.site import Site
 from fellspan.planning.around import MASTS_M, SECTORS, Around, area_criteria, look_around
 from fellspan.planning.inputs import Study, TerrainInputs
 from fellspan.report.around_map import classes_of, luminance
-from fellspan.report.around_page import decision, share_words
+from fellspan.report.around_page import decision, render_around_page, share_words
 from fellspan.terrain.sources import CoverSource, ObstacleSource, RasterSource
 
 CELL_M, SIDE = 40.0, 120
@@ -223,3 +223,16 @@ def test_classes_are_told_apart_in_grey(around: Around) -> None:
 )
 def test_shares_are_rounded_down(share: float, words: str) -> None:
     assert share_words(share) == words
+
+
+def test_nobody_takes_the_heights_for_safe_ones(around: Around, relief: Path) -> None:
+    assert decision(around).endswith("on the heights in the data without their errors.")
+    said = " ".join(around.cautions)
+    assert "standard error of 2 m is not added" in said
+    assert "Build no mast" in said
+    page = render_around_page(around)
+    assert (
+        "On the heights in the data, without their errors" in page.split('class="height-key"')[1].split("</section>")[0]
+    )
+    silent = TerrainInputs(ground=(RasterSource(path=relief),))
+    assert "their error, which is not stated" in " ".join(seen_from(made_study(relief, terrain=silent)).cautions)

@@ -9,14 +9,15 @@ from fellspan.cli.sight_points import read_points
 from fellspan.cli.sight_terrain import TerrainOptions, terrain_inputs
 from fellspan.errors import CoordinateError, UsageError
 from fellspan.geodesy.coordinates import ParsedPosition
-from fellspan.links.site import Site
+from fellspan.links.site import Link, Site
 from fellspan.planning.inputs import Study
-from fellspan.quantities import parse_antenna_height, parse_frequency_hz, parse_length_m
+from fellspan.quantities import format_height, parse_antenna_height, parse_frequency_hz, parse_length_m
 from fellspan.study.notes import position_note
-from fellspan.study.reading import load_study
-from fellspan.vocabulary import GapPolicy, LengthUnit
+from fellspan.study.reading import load_study, stated_site
+from fellspan.vocabulary import GapPolicy, HeightReference, LengthUnit
 
 _EXAMPLE = "fellspan around '36.0174 N, 45.2153 W' --height '12 m above ground' --frequency '5.8 GHz' --ground dtm.tif"
+_TYPED = "--height"
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -39,8 +40,8 @@ class Asked:
     gaps: GapPolicy | None
 
 
-def site_and_study(asked: Asked) -> tuple[Site, float, Study]:
-    """The site, the frequency in Hz, and a study that holds the terrain and the criteria.
+def site_and_study(asked: Asked) -> tuple[Site, float, Study, str]:
+    """The site, the frequency in Hz, a study that holds terrain and criteria, and who says how high the antenna is.
 
     Raises
     ------
@@ -50,7 +51,7 @@ def site_and_study(asked: Asked) -> tuple[Site, float, Study]:
     return _of_study(asked, asked.study) if asked.study is not None else _alone(asked)
 
 
-def _of_study(asked: Asked, file: Path) -> tuple[Site, float, Study]:
+def _of_study(asked: Asked, file: Path) -> tuple[Site, float, Study, str]:
     lost = {
         "--ground": asked.ground,
         "--surface": asked.surface,
@@ -67,10 +68,12 @@ def _of_study(asked: Asked, file: Path) -> tuple[Site, float, Study]:
     name = " ".join(asked.words).strip()
     known = [(site, link) for link in study.links for site in (link.a, link.b)]
     frequency_hz = None if asked.frequency is None else parse_frequency_hz(asked.frequency)
-    for site, link in known:
-        if site.name == name:
-            found = _with_height(site, asked) if asked.height is not None or asked.roof is not None else site
-            return found, frequency_hz or link.radio.frequency_hz, study
+    if uses := [(site, link) for site, link in known if site.name == name]:
+        site, link, origin = _at_its_height(uses, file)
+        if asked.height is not None or asked.roof is not None:
+            site = _with_height(site, asked)
+            origin = _TYPED if asked.height is not None else origin
+        return site, frequency_hz or link.radio.frequency_hz, study, origin
     try:
         point = _point(asked)
     except (CoordinateError, UsageError):
@@ -81,10 +84,45 @@ def _of_study(asked: Asked, file: Path) -> tuple[Site, float, Study]:
         ) from None
     if frequency_hz is None:
         frequency_hz = study.links[0].radio.frequency_hz
-    return _site_at(point, asked), frequency_hz, _noted(study, point)
+    return _site_at(point, asked), frequency_hz, _noted(study, point), _TYPED
 
 
-def _alone(asked: Asked) -> tuple[Site, float, Study]:
+def _at_its_height(uses: list[tuple[Site, Link]], file: Path) -> tuple[Site, Link, str]:
+    """The site with its own height, else the one that most of its links give; a link that has it; and where it comes from."""
+    name = uses[0][0].name
+    stated = stated_site(file, name)
+    heights: list[tuple[HeightReference | None, float]] = [(site.height_reference, site.height_m) for site, _ in uses]
+    own = None if stated is None or stated.height is None else stated.height
+    wanted = max(heights, key=heights.count) if own is None else (own.reference, own.height_m)
+    if wanted in heights:
+        site, link = uses[heights.index(wanted)]
+    else:
+        assert own is not None
+        assert own.reference is not None
+        assert stated is not None
+        site, link = uses[0]
+        site = replace(
+            site,
+            height_m=own.height_m,
+            height_reference=own.reference,
+            roof_edge_m=stated.roof_edge,
+            parapet_m=stated.parapet,
+        )
+    if own is None:
+        count = heights.count(wanted)
+        of = "its link" if len(uses) == 1 else f"{count} of its {len(uses)} links"
+        origin = f"{of} in {file.name}" + (f", such as '{link.name}'" if count < len(uses) else "")
+    else:
+        origin = f"site '{name}' in {file.name}"
+    others = [(link.name, at) for at, (_, link) in zip(heights, uses, strict=True) if at != wanted]
+    if others:
+        first, (reference, height_m) = others[0]
+        more = f" ({len(others) - 1} more differ too)" if others[1:] else ""
+        origin += f"; link '{first}' has {format_height(height_m, reference)}{more}"
+    return site, link, origin
+
+
+def _alone(asked: Asked) -> tuple[Site, float, Study, str]:
     missing = [
         name
         for name, given in (
@@ -106,7 +144,7 @@ def _alone(asked: Asked) -> tuple[Site, float, Study]:
     )  # fmt: skip
     study = Study(title="Around a site", links=(), terrain=terrain, date=dt.date.today())
     assert asked.frequency is not None
-    return _site_at(point, asked), parse_frequency_hz(asked.frequency), _noted(study, point)
+    return _site_at(point, asked), parse_frequency_hz(asked.frequency), _noted(study, point), _TYPED
 
 
 def _noted(study: Study, point: ParsedPosition) -> Study:

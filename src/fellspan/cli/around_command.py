@@ -91,7 +91,7 @@ def around_command(
         from fellspan.exports.folder import check_target
 
         check_target(out)
-    found, frequency_hz, planned = site_and_study(
+    found, frequency_hz, planned, height_from = site_and_study(
         Asked(
             words=site,
             study=study,
@@ -128,6 +128,7 @@ def around_command(
         other_m=others[0],
         masts_m=MASTS_M if len(others) == 1 else others,
         cell_m=cell_m,
+        height_from=height_from,
     )
     if as_json:
         from fellspan.exports.around import around_json

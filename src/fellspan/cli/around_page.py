@@ -22,6 +22,8 @@ def around_lines(around: Around, *, ink: Ink) -> list[str]:
         f"{format_height(site.height_m, site.height_reference)}, {field.antenna_amsl_m:.1f} m above sea level, "
         f"{format_frequency(field.frequency_hz)}",
     )
+    if around.height_from:
+        lines += labelled("height from", printable(around.height_from))
     lines += labelled("asked", "; ".join(rules_words(around)))
     lines += labelled("basis", around.basis)
     lines += labelled("cells", f"{field.shape[0]} x {field.shape[1]} of {field.cell_m:.3g} m; {_known(around)}")
@@ -29,7 +31,7 @@ def around_lines(around: Around, *, ink: Ink) -> list[str]:
         lines += labelled(
             "farthest",
             f"{_far(around.farthest)}, {format_position(around.farthest.position)}, "
-            f"{around.farthest.needed_m:.1f} m needed",
+            f"{around.farthest.needed_m:.1f} m needed without the errors of the heights",
         )
     heads = ["mast of", *(f"{mast:g} m" for mast in around.masts_m)]
     widths = [_FIRST, *([6] * len(around.masts_m))]

@@ -75,6 +75,8 @@ class Around:
     cautions: tuple[str, ...]
     sea_level_m: float | None = None
     """Level of the open water that gaps are, m above sea level; None where they are not."""
+    height_from: str = ""
+    """Who says how high the antenna at the site is; empty where nobody told."""
     version: str = __version__
 
     @property
@@ -104,6 +106,7 @@ def look_around(
     other_m: float = 10.0,
     masts_m: Sequence[float] = MASTS_M,
     cell_m: float | None = None,
+    height_from: str = "",
 ) -> Around:
     """Sweep the terrain of a study around a site and count what masts of some heights reach.
 
@@ -149,6 +152,7 @@ def look_around(
         farthest=tally.farthest(),
         cautions=cautions,
         sea_level_m=sea_level_m,
+        height_from=height_from,
     )
 
 
@@ -189,8 +193,12 @@ def _cautions(study: Study, field: HeightField, basis: Basis, terrain: Terrain) 
         "counts the errors of the heights, what was surveyed and the signal."
     )
     sigma_m = max(source.error_m or 0.0 for source in (*study.terrain.ground, *study.terrain.surface))
-    if sigma_m > 0.0:
-        found.append(f"Heights are for the raster as it is; its stated standard error of {sigma_m:g} m is not added.")
+    stated = f"their stated standard error of {sigma_m:g} m" if sigma_m > 0.0 else "their error, which is not stated,"
+    found.append(
+        f"What is free here is free on the heights in the data; {stated} is not added. The plan asks for more height to be "
+        "clear with the confidence wanted, and far more at the other end where the obstacle stands near the site: one metre "
+        "at a tenth of the way takes ten there. Build no mast on these heights."
+    )
     if not terrain.ground_is_bare:
         found.append("Heights are above the surface raster, which takes roofs and treetops for ground.")
     if any(item.rule == "span" or item.moves for item in terrain.layers.obstacles.obstacles):

@@ -30,7 +30,7 @@ def decision(around: Around) -> str:
     what = "area" if around.sea_level_m is None else "land"
     return (
         f"With a mast of {around.other_m:g} m at the other end, {share_words(around.share)} of the {what} within "
-        f"{wording.distance(field.radius_m)} can be reached{where}."
+        f"{wording.distance(field.radius_m)} can be reached{where}, on the heights in the data without their errors."
     )
 
 

@@ -14,6 +14,7 @@ from fellspan.planning.inputs import Study
 from fellspan.study.assembling import assemble
 from fellspan.study.messages import problems_of, raise_problems
 from fellspan.study.schema import StudyFile
+from fellspan.study.schema_links import SiteTable
 
 
 def load_study(path: str | Path) -> Study:
@@ -36,6 +37,12 @@ def read_study(text: str, *, path: Path) -> Study:
     except ValidationError as error:
         raise_problems(path.name, problems_of(error.errors(include_url=False), data))
     return assemble(study_file, path=path)
+
+
+def stated_site(path: Path, name: str) -> SiteTable | None:
+    """The table of a site of a valid study file, as it stands, without what links state for themselves; None without one."""
+    tables = StudyFile.model_validate(_table_of(_text_of(path), path))
+    return next((site for site in tables.site if site.name == name), None)
 
 
 def study_table(path: Path) -> dict[str, Any]:

@@ -65,7 +65,7 @@
     if (!pixels) return;
     var at = event.latlng, away = map.distance(at, data.site.at), found = away <= data.radius_m ? classAt(at) : null;
     var words = found === null ? "Outside the circle." : found === "unknown" ? "No answer here: a gap in the terrain, or behind one."
-      : found === "none" ? "Open water, or more than the highest mast asked about." : "Antenna needed here: " + found + " above ground.";
+      : found === "none" ? "Open water, or more than the highest mast asked about." : "Antenna needed here: " + found + " above ground, without the errors of the heights.";
     told.replaceChildren();
     told.appendChild(document.createElement("p")).textContent = words;
     told.appendChild(document.createElement("p")).textContent = (away / 1000).toFixed(1) + " km from the site, at about "
