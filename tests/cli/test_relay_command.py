@@ -103,8 +103,12 @@ def test_the_page_says_first_what_was_found_and_fits_80_columns(report) -> None:
     assert lines[1].startswith("One relay serves with 12 m of mast: best is Relay 1, every hop clear on bare")
     for words in ("obstructed", "to Relay 1", "to East", "above sea level", "cells", "may be built on"):
         assert words in ran.stdout, words
-    assert lines[-2].startswith("report: found/index.html (")
+    assert lines[-4].startswith("report: found/index.html (")
+    assert lines[-3].startswith("channels: give each hop a channel of its own in the study (frequency = ...)")
     assert lines[-1] == "next: fellspan plan found/relay.toml"
+    head = (report[1] / "relay.toml").read_text(encoding="utf-8").partition("[study]")[0]
+    assert "Give each hop a channel of its own" in head
+    assert "Give each hop a channel of its own" in (report[1] / "index.html").read_text(encoding="utf-8")
 
 
 def test_every_study_written_loads_and_plans_to_the_same_verdicts(report) -> None:  # type: ignore[no-untyped-def]
@@ -147,6 +151,34 @@ def test_one_channel_for_both_hops_leaves_what_a_plan_of_the_study_written_says(
     assert "beside the study's other links: " in words
     page = (tmp_path / "found" / "index.html").read_text(encoding="utf-8")
     assert "of margin left, at " in page
+
+
+def test_hops_get_channels_of_their_own_within_the_band_of_the_rule_and_keep_what_was_promised(tmp_path: Path) -> None:
+    """20 MHz at 5775 MHz in 5725 to 5850 MHz (47 CFR 15.247): one and a half widths above is 5805 MHz."""
+    write(tmp_path)
+    text = (tmp_path / "pass.toml").read_text(encoding="utf-8").replace("5.8 GHz", "5.775 GHz")
+    text = text.replace('power = "20 dBm"', 'power = "20 dBm"\nchannel_width = "20 MHz"\nnoise_figure = "6 dB"')
+    text = text.replace('antenna = "dish"', 'antenna = "dish"\nrule = "fcc-15.247-5g8-ptp"')
+    (tmp_path / "pass.toml").write_text(text, encoding="utf-8")
+    ran = run_command(*RELAY, "--count", "1", "--out", "found", folder=tmp_path)
+    assert (ran.returncode, ran.stderr) == (0, ""), ran.stderr
+    assert max(map(len, ran.stdout.splitlines())) <= 80
+    words = "first hop keeps 5.775 GHz, the hop after it got 5.805 GHz, within 5725 to 5850 MHz"
+    assert words in " ".join(ran.stdout.split())
+    written = (tmp_path / "found" / "relay.toml").read_text(encoding="utf-8")
+    assert words in " ".join(written.replace("# ", "").split())
+    assert words in (tmp_path / "found" / "index.html").read_text(encoding="utf-8")
+    (told,) = json.loads((tmp_path / "found" / "relay.json").read_text(encoding="utf-8"))["relays"]
+    assert told["channels"]["shared_db"] < told["worst_margin_db"] - 10.0
+    plan = plan_study(load_study(tmp_path / "found" / "relay.toml"))
+    assert [link.link.radio.frequency_hz for link in plan.links] == [5.775e9, 5.805e9]
+    assert plan.interference is not None
+    for link, hop in zip(plan.links, told["hops"], strict=True):
+        assert link.result.signal_verdict == "meets"
+        for end, promised in zip("AB", (hop["margin_db"]["at_a"], hop["margin_db"]["at_b"]), strict=True):
+            (one,) = (r for r in plan.interference.receivers if (r.link, r.end) == (link.result.name, end))
+            # 20 log10(5805 / 5775) = 0.045 dB of free space
+            assert one.effective_margin_db == pytest.approx(promised, abs=0.06)
 
 
 def test_a_chain_of_two_tells_what_was_tried(folder: Path) -> None:

@@ -83,8 +83,10 @@ def relay_command(
 
 
 def _write(result: "RelayResult", study: "Study", out: Path, *, quiet: bool) -> None:
+    from fellspan.cli.layout import wrapped
     from fellspan.cli.running import clear_progress, progress_line
     from fellspan.exports.relay import write_relay_folder
+    from fellspan.report.relay_words import study_words
 
     progress = progress_line("writing")
     try:
@@ -92,7 +94,9 @@ def _write(result: "RelayResult", study: "Study", out: Path, *, quiet: bool) -> 
     finally:
         clear_progress(progress)
     if not quiet:
-        typer.echo(f"\nreport: {out / 'index.html'} ({len(names)} files)\nnext: fellspan plan {out / 'relay.toml'}")
+        typer.echo(f"\nreport: {out / 'index.html'} ({len(names)} files)")
+        typer.echo("\n".join(wrapped(study_words(result.routes[0]), first="channels: ", rest="  ")))
+        typer.echo(f"next: fellspan plan {out / 'relay.toml'}")
 
 
 def _link_name(given: str | None, known: list[str]) -> str:

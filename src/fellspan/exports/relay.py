@@ -5,12 +5,14 @@ Shows what was found and computes nothing.
 
 import dataclasses
 import json
+import textwrap
 from pathlib import Path
 from typing import Any, Final
 
 import shapely
 
 from fellspan import __version__
+from fellspan.design.equip_words import capital
 from fellspan.errors import OutputError
 from fellspan.exports.folder import RESULTS, Progress, check_files, links_in, report_files, write_files
 from fellspan.exports.results_json import link_result_dict
@@ -18,21 +20,20 @@ from fellspan.exports.text import finite, utf8
 from fellspan.planning.inputs import Study
 from fellspan.planning.plan import StudyPlan
 from fellspan.planning.planner import open_terrain
+from fellspan.planning.relay_channels import on_own_channels
 from fellspan.planning.relay_result import RelayResult, RelayRoute
 from fellspan.planning.stamp import input_files
 from fellspan.planning.what_if import ages_of, what_if_of
 from fellspan.report.relay_area import area_outline
 from fellspan.report.relay_section import relay_study_name
+from fellspan.report.relay_words import study_words
 from fellspan.report.wording import shorten
 from fellspan.study.writing import study_text
 
 JSON: Final = "relay.json"
 GEOJSON: Final = "relay.geojson"
 _SCHEMA: Final = 1
-_STUDY_HEAD: Final = (
-    "# One way round, found by `fellspan relay`, each hop judged alone.\n"
-    "# Give each hop a channel of its own (frequency = ...): a relay that uses one channel twice hears itself.\n\n"
-)
+_STUDY_HEAD: Final = "# One way round, found by `fellspan relay`, each hop judged alone.\n{channels}\n\n"
 
 
 def relay_json(result: RelayResult) -> str:
@@ -144,18 +145,23 @@ def write_relay_folder(
     texts[JSON] = relay_json(result)
     texts[GEOJSON] = relay_geojson(result)
     for rank, route in enumerate(result.routes, start=1):
-        texts[relay_study_name(rank)] = _STUDY_HEAD + study_text(relay_study(result, route, study), folder=out)
+        texts[relay_study_name(rank)] = _study_text(result, route, study, out)
     texts[RESULTS] = last
     write_files(texts, out)
     return tuple(texts)
 
 
+def _study_text(result: RelayResult, route: RelayRoute, study: Study, out: Path) -> str:
+    head = _STUDY_HEAD.format(channels="# " + "\n# ".join(textwrap.wrap(f"{capital(study_words(route))}.", 100)))
+    return head + study_text(relay_study(result, route, study), folder=out)
+
+
 def relay_study(result: RelayResult, route: RelayRoute, study: Study) -> Study:
-    """A study of the hops of one way round alone, to plan on with."""
+    """A study of the hops of one way round alone, each on a channel of its own where one is known, to plan on with."""
     return dataclasses.replace(
         study,
         title=shorten(f"{study.title}: relay for {result.link_name}", 400),
-        links=tuple(hop.link for hop in route.hops),
+        links=on_own_channels([hop.link for hop in route.hops]),
         links_left_out=(),
     )
 

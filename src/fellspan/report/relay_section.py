@@ -68,6 +68,8 @@ class RelaysView:
     """What the area on the map is; empty where there is none."""
     files: tuple[str, ...]
     """Studies of the ways round, best first."""
+    studies: tuple[str, ...]
+    """Sentences on the channels of these studies."""
 
 
 def hop_ranks(result: RelayResult) -> tuple[int, ...]:
@@ -100,6 +102,7 @@ def relays_view(result: RelayResult) -> RelaysView:
         cautions=result.cautions,
         legend=relay_words.legend_words(result) if result.area is not None and result.area.cells else "",
         files=tuple(relay_study_name(way.rank) for way in ways),
+        studies=tuple(dict.fromkeys(capital(relay_words.study_words(route)) for route in result.routes)),
     )
 
 

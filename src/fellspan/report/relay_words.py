@@ -1,6 +1,7 @@
 """What a search for a relay says in sentences, on the terminal and on the page alike. Computes nothing."""
 
 from fellspan.links.words import STATE_WORDS, down_db, state_of
+from fellspan.planning.relay_channels import own_channels_hz
 from fellspan.planning.relay_result import RelayResult, RelayRoute
 from fellspan.report.wording import distance, signal_short
 
@@ -87,6 +88,22 @@ def channel_words(route: RelayRoute) -> str:
     elif not use.others_counted:
         words += "; the study's other links are too many to be counted here: plan the hops with them"
     return words
+
+
+def study_words(route: RelayRoute) -> str:
+    """What channels the study of one way round is written with, or that it needs them before it is planned."""
+    links = [hop.link for hop in route.hops]
+    channels, rule = own_channels_hz(links), links[0].power_rule
+    if channels is None or rule is None:
+        return (
+            "give each hop a channel of its own in the study (frequency = ...): as written all use one, on which a relay "
+            "hears itself"
+        )
+    others = " and ".join(f"{at / 1e9:.9g} GHz" for at in channels[1:])
+    return (
+        f"in the study the first hop keeps {channels[0] / 1e9:.9g} GHz, {'hops' if len(channels) > 2 else 'the hop'} after it "
+        f"got {others}, within {rule.band_words}: see that it is free there and that the radio can use it"
+    )
 
 
 def legend_words(result: RelayResult) -> str:
