@@ -103,7 +103,8 @@ def chains_of_two(search: ChainSearch) -> tuple[ChainsTried, Iterator[list[Site]
     )
     serves = np.flatnonzero(middle.serves)
     one, two = one[serves], two[serves]
-    worth = np.minimum(middle.worth[serves], np.minimum(near.hop.worth[one], far.hop.worth[two]))
+    outer = np.minimum(near.hop.worth(search.margin_db)[one], far.hop.worth(search.margin_db)[two])
+    worth = np.minimum(middle.worth(search.margin_db)[serves], outer)
     tried = ChainsTried(
         cells=(near.counts[0], far.counts[0]),
         judged=(near.counts[1], far.counts[1]),

@@ -12,7 +12,9 @@ import numpy as np
 from numpy.typing import NDArray
 
 from fellspan.links.assess import AssessSettings
+from fellspan.links.criteria import rule_numbers
 from fellspan.links.site import Aim, Antenna, Link, Site
+from fellspan.propagation.fresnel import fresnel_radius_m
 from fellspan.screening.pairs import (
     HEIGHT_REFERENCES,
     PATH_VERDICTS,
@@ -34,6 +36,10 @@ CHUNK: Final = 4096
 """Pairs in one call of the engine; keeps memory level and the progress moving."""
 NEARBY: Final = 25_000
 """Most hops of one end that come near an obstacle or a surveyed point: some 20 s."""
+AMPLE_DB: Final = 10.0
+"""What a hop must have beyond the margin wanted before places are told apart by clearance (our own rule)."""
+AMPLE_M: Final = 10.0
+"""Height to spare from which the margin tells them apart again: else the highest hill would win, however far off."""
 _CLEAR: Final = PATH_VERDICTS.index("clear")
 _MEETS: Final = SIGNAL_VERDICTS.index("meets")
 _DONE: Final = STATUSES.index("done")
@@ -50,9 +56,12 @@ class HopColumns:
     """The lesser of both ends, NaN where levels are not known."""
     free_share: Floats
     """Least free share of the first zone under the criterion that governs."""
+    spare_m: Floats
+    """Height to spare there, m; an obstruction is taken for extended where the preset tells the two apart."""
 
     @classmethod
-    def of(cls, pairs: PairResults, *, margin_db: float) -> "HopColumns":
+    def of(cls, pairs: PairResults, *, margin_db: float, settings: AssessSettings, frequency_hz: float) -> "HopColumns":
+        """What the engine found, for a hop that must keep `margin_db`."""
         margin = np.minimum(pairs.margin_at_hub_db, pairs.margin_at_place_db)
         clear = (pairs.status == _DONE) & (pairs.verdict == _CLEAR)
         meets = (pairs.signal_verdict == UNKNOWN) | (pairs.signal_verdict == _MEETS)
@@ -61,12 +70,19 @@ class HopColumns:
             serves=clear & meets & (np.isnan(margin) | (margin >= margin_db)),
             margin_db=margin,
             free_share=pairs.worst_fraction,
+            spare_m=spare_height_m(pairs, settings=settings, frequency_hz=frequency_hz),
         )
 
-    @property
-    def worth(self) -> Floats:
-        """The margin, or where levels are not known the free share of the zone."""
-        return np.where(np.isnan(self.margin_db), self.free_share, self.margin_db)
+    def worth(self, wanted_db: float) -> Floats:
+        """What places are ranked by, higher is better: a scarce margin, then the height to spare, then the margin again.
+
+        A margin of `wanted_db` and `AMPLE_DB` more is ample: up to `AMPLE_M`, clearance is worth more than more of it. The
+        worth of a chain is the least of its hops. Where levels are not known, the height to spare alone counts.
+        """
+        beyond_db = self.margin_db - (wanted_db + AMPLE_DB)
+        spare_m = np.fmax(self.spare_m, 0.0)
+        ample = np.where(spare_m < AMPLE_M, spare_m, AMPLE_M + beyond_db)
+        return np.where(np.isnan(beyond_db), spare_m, np.where(beyond_db < 0.0, beyond_db, ample))
 
     def chosen(self, which: NDArray[np.int64]) -> "HopColumns":
         """Some of them."""
@@ -75,6 +91,7 @@ class HopColumns:
             serves=self.serves[which],
             margin_db=self.margin_db[which],
             free_share=self.free_share[which],
+            spare_m=self.spare_m[which],
         )
 
     def of_some(self, which: NDArray[np.int64], count: int) -> "HopColumns":
@@ -84,10 +101,25 @@ class HopColumns:
             serves=np.zeros(count, dtype=np.bool_),
             margin_db=np.full(count, np.nan),
             free_share=np.full(count, np.nan),
+            spare_m=np.full(count, np.nan),
         )
-        for name in ("clear", "serves", "margin_db", "free_share"):
+        for name in ("clear", "serves", "margin_db", "free_share", "spare_m"):
             getattr(whole, name)[which] = getattr(self, name)
         return whole
+
+
+def spare_height_m(pairs: PairResults, *, settings: AssessSettings, frequency_hz: float) -> Floats:
+    """Height to spare at the point that governs, m, shape (n,); NaN where the path was not judged."""
+    length_m = pairs.distance_m
+    if settings.criteria:
+        asked = np.array([rule.fraction for rule in settings.criteria])[np.maximum(pairs.governing, 0)]
+    else:
+        fractions = rule_numbers(settings.preset, distance_m=length_m, median_k=settings.median_k)[1]
+        asked = fractions[np.maximum(pairs.governing, 0), np.arange(length_m.size)]
+    radius_m = np.asarray(
+        fresnel_radius_m(pairs.worst_at_m, np.maximum(length_m - pairs.worst_at_m, 0.0), frequency_hz=frequency_hz)
+    )
+    return np.asarray((pairs.worst_fraction - asked) * radius_m, dtype=np.float64)
 
 
 def chosen_places(places: SiteColumns, which: NDArray[np.int64]) -> SiteColumns:
@@ -211,15 +243,16 @@ def screen_between(
     for first in range(0, one.size, CHUNK):
         part = slice(first, min(first + CHUNK, one.size))
         found = screen_pairs(candidates, hub=one[part], place=two[part], terrain=terrain)
-        parts.append(HopColumns.of(found, margin_db=margin_db))
+        parts.append(HopColumns.of(found, margin_db=margin_db, settings=settings, frequency_hz=link.radio.frequency_hz))
         if progress is not None:
             progress(part.stop)
     if not parts:
         nothing = np.zeros(0)
-        return HopColumns(clear=nothing > 0, serves=nothing > 0, margin_db=nothing, free_share=nothing)
+        return HopColumns(clear=nothing > 0, serves=nothing > 0, margin_db=nothing, free_share=nothing, spare_m=nothing)
     return HopColumns(
         clear=np.concatenate([part.clear for part in parts]),
         serves=np.concatenate([part.serves for part in parts]),
         margin_db=np.concatenate([part.margin_db for part in parts]),
         free_share=np.concatenate([part.free_share for part in parts]),
+        spare_m=np.concatenate([part.spare_m for part in parts]),
     )

@@ -275,7 +275,7 @@ class _Search:
         return iter([sites[index] for index in order.tolist() if np.isfinite(score[index])])
 
     def _score(self, hops: tuple[HopColumns, HopColumns], refused: list[str]) -> Floats:
-        """The margin of the weaker hop, or its free share of the zone where levels are not known; -inf where one fails."""
+        """What the weaker hop is worth (`HopColumns.worth`); -inf where one fails."""
         there, back = hops
         serves = there.serves & back.serves
         seen = there.clear & back.clear
@@ -286,10 +286,7 @@ class _Search:
                 f"{short} places see both ends, but the signal falls short there (best margin {best:.1f} dB of "
                 f"{self.margin_db:g} dB wanted)"
             )
-        known = np.isfinite(there.margin_db) & np.isfinite(back.margin_db)
-        value = np.where(
-            known, np.minimum(there.margin_db, back.margin_db), np.minimum(there.free_share, back.free_share)
-        )
+        value = np.fmin(there.worth(self.margin_db), back.worth(self.margin_db))
         return np.where(serves, value, -np.inf)
 
     # plans ----------------------------------------------------------------------------------------------------------
