@@ -59,7 +59,9 @@ def made_page(folder: Path, count: int, *, hubs: int = 3) -> str:
         distance_m=np.where(state < 5, np.linspace(300.0, 9000.0, count), np.nan),
         extra_m=np.where(state == 3, np.inf, np.where(state == 2, 4.21, np.where(reached, 0.0, np.nan))),
         extra_sure_m=np.where(state == 3, np.inf, np.where(state == 2, 5.13, np.where(reached, 0.0, np.nan))),
-        clear_hubs=np.where(state < 2, 1, 0),
+        clear_hubs=np.where(state < 2, 9, 0),
+        bearing_deg=np.where(reached, 154.84, np.nan),
+        others=np.where((state < 2)[:, None], np.array([1, 2, -1, -1, -1]), -1),
     )
     counts = np.bincount(state, minlength=len(STATE_CODES)).tolist()
     summary = RunSummary(
@@ -167,6 +169,55 @@ def test_lists_sort_find_and_tell(small: Path, watch: Any) -> None:
         assert "place 000007" in page.locator("#told").inner_text()
         page.locator("[data-hub]").nth(0).click()
         assert "joined by lines" in page.locator("#told").inner_text()
+
+
+SEEN = """() => {
+  const map = document.querySelector('.map-frame').getBoundingClientRect();
+  const box = document.querySelector('#told').getBoundingClientRect();
+  return map.top >= -1 && map.top + 200 < innerHeight && box.top >= -1 && box.bottom <= innerHeight;
+}"""
+
+
+@pytest.mark.browser
+@pytest.mark.parametrize("width", [1280, 390])
+def test_a_row_far_down_brings_map_and_box_into_view_and_leads_back(small: Path, watch: Any, width: int) -> None:
+    with shown(watch, small, width=width) as page:
+        row = page.locator("#place-list tbody tr").nth(150)
+        row.scroll_into_view_if_needed()
+        was = page.evaluate("scrollY")
+        assert was > 1_000
+        row.locator("button").click()
+        page.wait_for_function(SEEN)
+        assert page.locator("#place-list tr.is-chosen").count() == 1
+        page.locator("#told button").click()
+        page.wait_for_function("was => Math.abs(scrollY - was) < innerHeight", arg=was)
+        assert row.locator("button").evaluate("button => button === document.activeElement")
+
+
+@pytest.mark.browser
+def test_a_map_in_view_stays_where_it_is_and_the_box_tells_all(small: Path, watch: Any) -> None:
+    with shown(watch, small) as page:
+        page.evaluate("scrollTo(0, 60)")
+        page.locator("[data-hub]").nth(0).click()
+        assert page.evaluate("scrollY") == 60
+        page.evaluate("fellspanPage.choosePlace(6)")  # clear, by the first hub
+        told = page.locator("#told").inner_text()
+        assert "bearing 154.8° from the hub" in told
+        assert "Heights: 6 m above ground at the hub, 6 m above ground here" in told
+        assert "Clear from these hubs too: hub 0, hub 1 and 6 more" in told
+
+
+@pytest.mark.browser
+def test_a_table_that_is_cut_says_so(small: Path, watch: Any) -> None:
+    with shown(watch, small, width=390) as page:
+        box = page.locator(".places .scroll")
+        assert "is-cut" in box.get_attribute("class")
+        words = box.evaluate("box => getComputedStyle(box, '::before').content")
+        assert "Push sideways to see the rest" in words
+        box.evaluate("box => { box.scrollLeft = 9999; }")
+        page.wait_for_function("!document.querySelector('.places .scroll').classList.contains('is-cut')")
+    with shown(watch, small, width=1600) as page:
+        assert "goes-on" not in page.locator(".places .scroll").get_attribute("class")
 
 
 @pytest.mark.browser

@@ -21,7 +21,7 @@ from fellspan.report.map_geometry import nearest_turn, window_of
 from fellspan.report.relief import open_rasters, shaded_relief
 from fellspan.report.wording import clean, shorten
 from fellspan.runs.summary import STATE_CODES, RunSummary
-from fellspan.screening.pairs import SIGNAL_VERDICTS, Candidates
+from fellspan.screening.pairs import HEIGHT_REFERENCES, SIGNAL_VERDICTS, Candidates, SiteColumns
 
 MOST_DOTS: Final = 20_000
 MOST_LISTED: Final = 2_000
@@ -150,7 +150,9 @@ def _data(summary: RunSummary, candidates: Candidates, turned: _Turned) -> dict[
             "name": hubs_shown,
             "lat": _rounded(turned.hub_latitude, 6),
             "lon": _rounded(turned.hub_longitude, 6),
+            "high": _height_words(candidates.hubs, len(hubs_shown)),
         },
+        "sectors": [shorten(sector.name, _LONGEST_NAME) for sector in candidates.sectors],
         "places": {
             "name": [shorten(name, _LONGEST_NAME) for name in candidates.places.name[shown]],
             "lat": _rounded(turned.latitude[shown], 6),
@@ -163,6 +165,10 @@ def _data(summary: RunSummary, candidates: Candidates, turned: _Turned) -> dict[
             "extra": _heights(best.extra_m[shown]),
             "sure": _sure_heights(best.extra_m[shown], best.extra_sure_m[shown], best.state[shown]),
             "clear": best.clear_hubs[shown].tolist(),
+            "sector": best.sector[shown].tolist(),
+            "bearing": _rounded(best.bearing_deg[shown], 1),
+            "others": [[hub for hub in hubs if hub >= 0] for hubs in best.others[shown].tolist()],
+            "high": _height_words(candidates.places, MOST_DOTS if dots else MOST_LISTED),
         },
         "listed": min(count, MOST_LISTED),
         "confidence": f"{100.0 * candidates.settings.confidence:g} %",
@@ -172,6 +178,15 @@ def _data(summary: RunSummary, candidates: Candidates, turned: _Turned) -> dict[
 
 def _rounded(values: NDArray[np.float64], decimals: int) -> list[float | None]:
     return [round(value, decimals) + 0.0 if math.isfinite(value) else None for value in values.tolist()]
+
+
+def _height_words(sites: SiteColumns, most: int) -> list[str]:
+    """Antenna heights as the files state them."""
+    references = sites.height_reference[:most].tolist()
+    return [
+        f"{height:g} m above {'sea level' if HEIGHT_REFERENCES[code] == 'sea' else HEIGHT_REFERENCES[code]}"
+        for height, code in zip(np.round(sites.height_m[:most], 2).tolist(), references, strict=True)
+    ]
 
 
 def _heights(values: NDArray[np.float64]) -> list[float | str | None]:

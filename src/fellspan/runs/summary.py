@@ -29,6 +29,8 @@ _RANKED: Final = (
 )
 _IN_ORDER: Final = f"SELECT {state_sql()} AS state, {_COLUMNS} FROM result ORDER BY hub, place"
 MOST_REASONS: Final = 5
+MOST_OTHERS: Final = 5
+"""Further hubs that reach a place clear and are kept by number."""
 
 
 class PairRow(NamedTuple):
@@ -97,6 +99,10 @@ class BestHubs:
     """The same for the confidence asked."""
     clear_hubs: NDArray[np.int64]
     """How many hubs reach the place clear, on whatever basis."""
+    bearing_deg: NDArray[np.float64]
+    """From the hub to the place."""
+    others: NDArray[np.int64]
+    """Further hubs that reach the place clear, in their rank, shape (places, `MOST_OTHERS`); -1 where there is none."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -195,6 +201,8 @@ def _best(store: Store, candidates: Candidates, *, keep: int, take: Callable[[in
         extra_m=np.full(count, np.nan),
         extra_sure_m=np.full(count, np.nan),
         clear_hubs=np.zeros(count, dtype=np.int64),
+        bearing_deg=np.full(count, np.nan),
+        others=np.full((count, MOST_OTHERS), -1, dtype=np.int64),
     )
     following, rank = 0, 0
     for row in map(_row, store.query(_RANKED)):
@@ -204,7 +212,10 @@ def _best(store: Store, candidates: Candidates, *, keep: int, take: Callable[[in
             following, rank = row.place + 1, 0
             _first(best, row)
         rank += 1
-        best.clear_hubs[row.place] += row.state <= STATES.index("clear-bare")
+        if row.state <= STATES.index("clear-bare"):
+            best.clear_hubs[row.place] += 1
+            if 2 <= rank <= MOST_OTHERS + 1:
+                best.others[row.place, rank - 2] = row.hub
         if rank <= keep:
             take(rank, row)
     for alone in range(following, count):
@@ -223,6 +234,7 @@ def _first(best: BestHubs, row: PairRow) -> None:
     best.signal[at] = -1 if row.signal_verdict is None else row.signal_verdict
     for column, value in (
         (best.margin_db, row.margin_db),
+        (best.bearing_deg, row.bearing_deg),
         (best.extra_m, row.extra_at_place_m),
         (best.extra_sure_m, row.extra_for_confidence_m),
     ):

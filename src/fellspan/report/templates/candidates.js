@@ -68,20 +68,29 @@
     canvas.width = Math.round(size.x * ratio); canvas.height = Math.round(size.y * ratio);
     canvas.style.width = size.x + "px"; canvas.style.height = size.y + "px";
     pen.scale(ratio, ratio);
-    if (data.squares) drawSquares(pen);
+    if (data.squares) { drawSquares(pen); if (shownPlace >= 0) { drawLines(pen); drawChosen(pen); } }
     else { drawLines(pen); drawPlaces(pen, size); }
     drawHubs(pen, size);
   }
   function carries(hub, index) { return places.hub[index] === hub && places.state[index] <= 2; }
   function drawLines(pen) {
     if (shownHub < 0 && shownPlace < 0) return;
-    pen.strokeStyle = ink; pen.lineWidth = 1; pen.globalAlpha = 0.55;
+    // A light casing under a dark core: seen on any relief.
+    pen.lineCap = "round";
+    strokeLines(pen, sheet, shownPlace >= 0 ? 7 : 4.5);
+    strokeLines(pen, ink, shownPlace >= 0 ? 3 : 1.5);
+  }
+  function strokeLines(pen, colour, width) {
+    pen.strokeStyle = colour; pen.lineWidth = width;
     places.hub.forEach(function (hub, index) {
       if (hub < 0 || (shownPlace >= 0 ? index !== shownPlace : !carries(shownHub, index))) return;
       var from = at(hubs.lat[hub], hubs.lon[hub]), to = at(places.lat[index], places.lon[index]);
       pen.beginPath(); pen.moveTo(from.x, from.y); pen.lineTo(to.x, to.y); pen.stroke();
     });
-    pen.globalAlpha = 1;
+  }
+  function drawChosen(pen) {
+    var spot = at(places.lat[shownPlace], places.lon[shownPlace]);
+    mark(pen, places.state[shownPlace], spot.x, spot.y, 8);
   }
   function drawPlaces(pen, size) {
     var count = places.lat.length, radius = count > 4000 ? 3 : count > 600 ? 4 : 5;
@@ -161,12 +170,41 @@
     if (sure === "some") return first + ", but not with " + asked + "; fellspan heights works out what would.";
     return first + "; with " + asked + " it takes at least +" + sure.toFixed(1) + " m.";
   }
+  // From a list far down: the map and the box come into view, and a button leads back; what is in view stays where it is.
+  function show(back) {
+    var frame = document.querySelector(".map-frame"), box = frame.getBoundingClientRect();
+    var away = box.top < -8 || Math.min(box.bottom, box.top + 300) > window.innerHeight;
+    if (away) {
+      frame.scrollIntoView({block: "start"});
+      var button = told.appendChild(document.createElement("button"));
+      button.type = "button"; button.className = "tool"; button.textContent = "Back to the list";
+      button.addEventListener("click", function () {
+        back.scrollIntoView({block: "center"});
+        (back.querySelector("button") || back).focus({preventScroll: true});
+      });
+    }
+    var side = told.parentElement, inside = told.getBoundingClientRect(), around = side.getBoundingClientRect();
+    if (inside.top < around.top || inside.bottom > around.bottom) side.scrollTop += inside.top - around.top;
+  }
+  function intoMap(index) {
+    if (!map.getBounds().contains([places.lat[index], places.lon[index]])) {
+      map.panTo([places.lat[index], places.lon[index]], {animate: false});
+    }
+  }
   function choosePlace(index) {
     shownPlace = index; shownHub = -1;
     var hub = places.hub[index], lines = [data.states[places.state[index]].label];
-    if (hub >= 0) lines.push("Best hub: " + hubs.name[hub] + ", " + number(places.km[index], 2) + " km");
+    if (hub >= 0) {
+      var sector = places.sector[index] < 0 ? "" : data.sectors[places.sector[index]];
+      lines.push("Best hub: " + hubs.name[hub] + (sector ? ", sector " + sector : "") + ", " + number(places.km[index], 2) + " km" +
+        (places.bearing[index] === null ? "" : ", bearing " + number(places.bearing[index], 1) + "\u00b0 from the hub"));
+      lines.push("Heights: " + hubs.high[hub] + " at the hub, " + places.high[index] + " here");
+    }
     if (places.signal[index] >= 0) lines.push("Signal: " + data.signals[places.signal[index]] + ", margin " + number(places.margin[index], 1) + " dB");
     if (heightLine(index)) lines.push(heightLine(index));
+    var others = places.others[index].map(function (one) { return hubs.name[one]; });
+    var left = places.clear[index] - others.length - (places.state[index] <= 1 ? 1 : 0);
+    if (others.length) lines.push("Clear from these hubs too: " + others.join(", ") + (left > 0 ? " and " + left + " more" : ""));
     tell(places.name[index], lines);
     draw();
   }
@@ -178,7 +216,7 @@
   }
   document.querySelectorAll("[data-hub]").forEach(function (button) {
     var index = hubs.name.indexOf(button.dataset.hub);
-    button.addEventListener("click", function () { if (index >= 0) chooseHub(index); });
+    button.addEventListener("click", function () { if (index >= 0) { chooseHub(index); show(button.closest("tr")); } });
   });
   document.getElementById("all").addEventListener("click", fit);
 
@@ -227,8 +265,14 @@
         made.textContent = text;
         if (column !== 0 && column !== 2) made.className = "num";
       });
-      row.addEventListener("click", function () { choosePlace(index); });
+      if (index === shownPlace) row.className = "is-chosen";
+      row.addEventListener("click", function () {
+        body.querySelectorAll(".is-chosen").forEach(function (one) { one.className = ""; });
+        row.className = "is-chosen";
+        choosePlace(index); intoMap(index); show(row);
+      });
     });
+    hintAtMore();
     more.hidden = matching.length <= visible;
     more.textContent = "Show more (" + Math.max(0, matching.length - visible) + " left)";
   }
@@ -248,6 +292,15 @@
   ["(prefers-color-scheme: dark)", "print"].forEach(function (query) {
     window.matchMedia(query).addEventListener("change", repaint);
   });
+  // A table wider than its box says that it goes on.
+  function hintAtMore() {
+    document.querySelectorAll(".scroll").forEach(function (box) {
+      box.classList.toggle("goes-on", box.scrollWidth > box.clientWidth + 2);
+      box.classList.toggle("is-cut", box.scrollWidth > box.clientWidth + box.scrollLeft + 2);
+    });
+  }
+  document.querySelectorAll(".scroll").forEach(function (box) { box.addEventListener("scroll", hintAtMore, {passive: true}); });
+  window.addEventListener("resize", hintAtMore);
   function onPaper(is) {
     if (document.documentElement.classList.contains("printing") === is) return;
     document.documentElement.classList.toggle("printing", is);
