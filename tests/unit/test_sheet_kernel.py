@@ -7,6 +7,7 @@ import pytest
 from made_terrain import raster
 
 from fellspan.screening.ways import NODES, Curves
+from fellspan.terrain import sheet_kernel
 from fellspan.terrain.sheet import Sheet
 from fellspan.terrain.terrain import Terrain
 
@@ -58,3 +59,17 @@ def test_places_that_are_no_numbers_stay_on_the_sheet(tmp_path: Path) -> None:
     along.column[1, 0], along.row[0, 1] = np.nan, np.inf
     found, _ = sheet.heights_along(along, np.array([[-1.0, 0.0, 1.0]] * 2), np.array([0, 1]))
     assert found.shape == (2, 3)
+
+
+def test_the_first_the_middle_and_the_last_place_on_a_raster() -> None:
+    along = curves(200, bent=True)
+    along.column[0, :20] = 5_000.0  # these lie off it
+    which, t = np.arange(200)[::-1].copy(), np.linspace(-1.0, 1.0, 61)
+    found = np.empty((200, 3), dtype=np.int64)
+    sheet_kernel.spread_inside(along.column, along.row, which, t, WIDTH, HEIGHT, 1e-6, found)
+    column, row = along.at(np.tile(t, (200, 1)), which)
+    inside = (column >= -1e-6) & (column <= WIDTH + 1e-6) & (row >= -1e-6) & (row <= HEIGHT + 1e-6)
+    for at, on in zip(found.tolist(), inside, strict=True):
+        places = np.flatnonzero(on).tolist()
+        assert at == ([places[0], places[(len(places) - 1) // 2], places[-1]] if places else [-1, -1, -1])
+    assert 20 <= (found[:, 0] < 0).sum() < 150

@@ -82,3 +82,39 @@ def along(  # noqa: PLR0912  # one loop: terms are loaded once for all that foll
         for place in range(count):
             hollow += math.isnan(heights[row_of, place])
     return hollow
+
+
+@compiled
+def spread_inside(
+    column: Floats, row: Floats, which: Index, t: Floats, width: float, height: float, edge: float, found: Index
+) -> None:
+    """The first, the middle and the last of places along paths that lie on a raster.
+
+    Parameters
+    ----------
+    column, row
+        (d, p), as for `along`.
+    which, t
+        (q,) and (n,): the paths, and the places, rising.
+    width, height, edge
+        Of the raster, in cells, and how far off it still counts as on it.
+    found
+        (q, 3), written: indices into `t`; -1 where a path has no place on the raster.
+    """
+    degrees = column.shape[0]
+    on = np.empty(t.size, dtype=np.int64)
+    for number in range(which.size):
+        path, count = which[number], 0
+        for place in range(t.size):
+            across, down = column[degrees - 1, path] * t[place], row[degrees - 1, path] * t[place]
+            for degree in range(degrees - 2, 0, -1):
+                across = (across + column[degree, path]) * t[place]
+                down = (down + row[degree, path]) * t[place]
+            across += column[0, path]
+            down += row[0, path]
+            if -edge <= across <= width + edge and -edge <= down <= height + edge:
+                on[count] = place
+                count += 1
+        found[number, 0] = on[0] if count else -1
+        found[number, 1] = on[(count - 1) // 2] if count else -1
+        found[number, 2] = on[count - 1] if count else -1

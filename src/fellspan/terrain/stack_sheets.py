@@ -21,7 +21,6 @@ from fellspan.terrain.stack import EDGE_CELLS, RasterStack
 ALONG: Final = 4 * 256
 """Places along a path at which `RasterStack.cell_along` looks for cells."""
 _APART = 32
-_ROWS = 256
 _EDGE_NEAR_CELLS = 1e-3
 """How near an edge the polynomials of paths do not tell on which side of it a place lies."""
 
@@ -143,24 +142,23 @@ class PathsOnStack:
                 column, row = curves.at(t, whole)
                 finest[whole] = np.minimum(finest[whole], sizes.at(column[:, 0], row[:, 0]))
             rest = np.flatnonzero(self._touches[place] & ~self._single)
-            for start in range(0, rest.size, _ROWS):
-                some = rest[start : start + _ROWS]
-                finest[some] = np.minimum(finest[some], self._finest_inside(place, some))
+            if rest.size:
+                finest[rest] = np.minimum(finest[rest], self._finest_inside(place, rest))
         return np.where(np.isfinite(finest), finest, self.sheets.stack.cell_m)
 
     def _finest_inside(self, place: int, which: Index) -> Floats:
         """The finest of three cells of one file, spread over what of a path lies on it; infinite where nothing does."""
         file, sizes = self.sheets.stack.files[self.numbers[place]], self.sheets.sizes(self.numbers[place])
-        t = np.broadcast_to(np.linspace(-1.0, 1.0, ALONG), (which.size, ALONG))
-        column, row = self.curves[place].at(t, which)
-        inside = _on(file, column, row)
-        order = np.cumsum(inside, axis=1)
-        count = order[:, -1]
+        from fellspan.terrain import sheet_kernel
+
+        curves, t = self.curves[place], np.linspace(-1.0, 1.0, ALONG)
+        found = np.empty((which.size, 3), dtype=np.int64)
+        sheet_kernel.spread_inside(curves.column, curves.row, which, t, file.width, file.height, EDGE_CELLS, found)
         finest = np.full(which.size, np.inf)
-        hit = np.flatnonzero(count > 0)
-        for rank in (np.zeros(hit.size, dtype=np.int64), (count[hit] - 1) // 2, count[hit] - 1):
-            at = np.argmax(order[hit] > rank[:, np.newaxis], axis=1)
-            finest[hit] = np.minimum(finest[hit], sizes.at(column[hit, at], row[hit, at]))
+        hit = np.flatnonzero(found[:, 0] >= 0)
+        column, row = curves.at(t[found[hit]], which[hit])
+        for rank in range(3):
+            finest[hit] = np.minimum(finest[hit], sizes.at(column[:, rank], row[:, rank]))
         return finest
 
     def read_for(self, t: Floats, which: Index) -> None:
