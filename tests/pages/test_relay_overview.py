@@ -13,6 +13,7 @@ from fellspan.planning.relays import find_relay
 from fellspan.report.network import clear_air_rate_bps, hubs_of
 from fellspan.report.overview import overview_view
 from fellspan.report.pages import render_pages
+from fellspan.report.relay_area import area_corners, area_rings
 from fellspan.report.relay_section import hop_ranks, map_overlay, relays_view
 
 browser_only = pytest.mark.browser
@@ -68,6 +69,30 @@ def test_the_map_tells_relays_by_shape_and_number(searched, tmp_path, watch, wid
     assert page.locator("#chosen h2").inner_text() == searched.plan.links[1].result.name
     assert watched.messages == []
     assert watched.requests == []
+
+
+@browser_only
+@pytest.mark.parametrize(("width", "height"), [(1280, 900), (390, 844)])
+def test_the_relief_fills_the_map_of_relays_and_holds_the_area(searched, tmp_path, watch, width, height):
+    (tmp_path / "index.html").write_text(searched.page, encoding="utf-8")
+    page = watch(width, height).page
+    page.goto((tmp_path / "index.html").as_uri())
+    relief = page.locator("#map_overview img.leaflet-image-layer").bounding_box()
+    for inner in (page.locator("#map_overview"), page.locator(".leaflet-pane path.relay-area")):
+        box = inner.bounding_box()
+        for at, size in (("x", "width"), ("y", "height")):
+            assert relief[at] <= box[at] + 1.0
+            assert relief[at] + relief[size] >= box[at] + box[size] - 1.0
+
+
+def test_the_corners_of_the_area_hold_its_rings(searched):
+    area = searched.result.area
+    corners = area_corners(area, 314.72)
+    for at in (0, 1):
+        drawn = [point[at] for part in area_rings(area, 314.72) for ring in part for point in ring]
+        assert min(corner[at] for corner in corners) <= min(drawn) + 1e-5
+        assert max(corner[at] for corner in corners) >= max(drawn) - 1e-5
+    assert area_corners(dataclasses.replace(area, clear=area.clear & False, cells=0), 0.0) == []
 
 
 def test_a_search_for_relays_has_no_table_of_hubs_and_a_study_has(searched, sample):

@@ -37,6 +37,7 @@ from fellspan.report.neighbours import left_by_neighbours, neighbours_view
 from fellspan.report.overview import overview_view
 from fellspan.report.profile_drawing import draw_profile, exaggeration_words
 from fellspan.report.reflection_section import reflection_section
+from fellspan.report.relay_area import area_corners
 from fellspan.report.relay_section import relays_view
 from fellspan.report.relief import Relief, open_rasters, shaded_relief
 from fellspan.report.section import FULL, NARROW
@@ -131,9 +132,18 @@ def _overview(
 ) -> str:
     chart = None
     if plan.links:
-        window = geometry.window_of(_places(plan.links), margin=0.25)
+        places, size = _places(plan.links), 1
+        window = geometry.window_of(places, margin=0.25)
+        if relays is not None:
+            # The area may reach far beyond the links; and room for names shows more around them, most on a phone.
+            held = [] if relays.area is None else area_corners(relays.area, places[0][1])
+            window, size = geometry.window_of([*places, *held], margin=0.8), 2
         relief = shaded_relief(
-            rasters, window, pixels=OVERVIEW_PIXELS, most_bytes=OVERVIEW_BYTES, gaps_are_sea=_gaps_are_sea(plan)
+            rasters,
+            window,
+            pixels=size * OVERVIEW_PIXELS,
+            most_bytes=size * OVERVIEW_BYTES,
+            gaps_are_sea=_gaps_are_sea(plan),
         )
         chart = link_map(plan.links, name="overview", relief=relief, overview=True, relays=relays)
     return templates.get_template("index.html.j2").render(

@@ -48,6 +48,18 @@ def area_rings(area: RelayArea, reference_deg: float) -> list[Rings]:
     ]
 
 
+def area_corners(area: RelayArea, reference_deg: float) -> list[tuple[float, float]]:
+    """Corners (latitude, longitude) of the rectangle that holds its cells, on a map as for `area_rings`; none of no cells."""
+    if not area.cells:
+        return []
+    rows, columns = (np.flatnonzero(area.clear.any(axis=axis)) for axis in (1, 0))
+    corners = [(column, row) for row in (rows[0], rows[-1] + 1) for column in (columns[0], columns[-1] + 1)]
+    x, y = zip(*(area.transform @ (float(column), float(row)) for column, row in corners), strict=True)
+    longitude, latitude = transformer(area.crs, WGS84).transform(np.array(x), np.array(y))
+    turned = np.asarray(longitude) + 360.0 * np.round((reference_deg - np.asarray(longitude)) / 360.0)
+    return list(zip(np.asarray(latitude).tolist(), turned.tolist(), strict=True))
+
+
 def _joined(area: RelayArea) -> BaseGeometry:
     """All cells as one shape, its longitudes running on across the antimeridian."""
     to_degrees = transformer(area.crs, WGS84)
