@@ -100,6 +100,8 @@ def test_a_site_stands_at_its_own_height_and_it_is_said_whose_it_is(
         ((*ALONE, "--radius", "0 m"), "radius 0 m"),
         ((*ALONE, "--criteria", "all"), "--criteria 'all'"),
         ((*ALONE, "--other-height", "2 km"), "2000"),
+        ((*ALONE, "--radius", "900 km"), "radius 900 km"),
+        ((*ALONE, "--other-height", "0 m"), "--other-height '0 m'"),
         ((*ALONE, "--cell", "0 m"), "--cell '0 m'"),
         (("around", "10 N, 10 E", *ALONE[2:]), "no data"),
         ((*ALONE, "--out", "trial.toml"), "is a file"),

@@ -225,6 +225,11 @@ def test_shares_are_rounded_down(share: float, words: str) -> None:
     assert share_words(share) == words
 
 
+def test_a_mast_that_hardly_anybody_means_is_asked_back(around: Around, relief: Path) -> None:
+    assert "see that 600 m was meant" in " ".join(seen_from(made_study(relief), other_m=600.0).cautions)
+    assert "was meant" not in " ".join(around.cautions)
+
+
 def test_nobody_takes_the_heights_for_safe_ones(around: Around, relief: Path) -> None:
     assert decision(around).endswith("on the heights in the data without their errors.")
     said = " ".join(around.cautions)

@@ -112,6 +112,8 @@ def around_command(
     if preset is not None:
         planned = replace(planned, preset=preset, criteria=())
     others = [parse_length_m(text) for text in other_height or [_OTHER]]
+    if not all(mast_m > 0.0 for mast_m in others):
+        raise UsageError(f"--other-height '{min(others):g} m' is no mast", "a height above 0, as in 10 m")
     radius_m = parse_length_m(radius)
     cell_m = None if cell is None else parse_length_m(cell)
     if cell_m is not None and not cell_m > 0.0:

@@ -3,6 +3,7 @@
 The height at a cell is for the rasters as they are: their errors, surveyed points and what moves belong to the plan of a link.
 """
 
+import math
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
 from typing import Final
@@ -19,7 +20,7 @@ from fellspan.links.criteria import COMMON_PRACTICE, TROPICAL_FROM_M, Criterion,
 from fellspan.links.site import Site
 from fellspan.planning.inputs import Study
 from fellspan.planning.planner import open_terrain
-from fellspan.propagation.constants import K_FORMULA_LOW_M
+from fellspan.propagation.constants import EARTH_RADIUS_M, K_FORMULA_LOW_M
 from fellspan.terrain.cover import missing_kinds
 from fellspan.terrain.terrain import Terrain
 from fellspan.vocabulary import Basis
@@ -29,6 +30,9 @@ MASTS_M: Final = (5.0, 10.0, 15.0, 20.0, 30.0)
 MOST_MASTS: Final = 6
 SECTORS: Final = ("N", "NE", "E", "SE", "S", "SW", "W", "NW")
 """Eighths of the compass, each 45 degrees wide around its name."""
+TALL_M: Final = 500.0
+"""Masts above it are looked for, but hardly meant (common practice, no source)."""
+_HIGHEST_GROUND_M: Final = 9_000.0
 _ROWS: Final = 256
 
 
@@ -123,6 +127,11 @@ def look_around(
             f"mast heights of {', '.join(f'{mast:g}' for mast in masts)} m",
             f"from 0 to 1000 m, and at most {MOST_MASTS} of them",
         )
+    if study.median_k > 0.0 and radius_m > (most_m := _farthest_sight_m(study.median_k)):
+        raise LinkError(
+            f"radius {radius_m / 1000.0:.0f} km: no two masts on Earth see each other so far",
+            f"at most {most_m / 1000.0:.0f} km at k = {study.median_k:.3g}, as in 15 km",
+        )
     criteria = area_criteria(study, radius_m)
     with open_terrain(study) as terrain:
         field = height_field(
@@ -135,7 +144,11 @@ def look_around(
             sight_k=study.median_k,
         )
         basis = _basis(terrain)
-        cautions = tuple(dict.fromkeys((*_cautions(study, field, basis, terrain), *study.notes, *terrain.notes)))
+        tall = [mast for mast in masts if mast > TALL_M]
+        said = (
+            [] if not tall else [f"Few masts on Earth are higher than {TALL_M:g} m: see that {tall[-1]:g} m was meant."]
+        )
+        cautions = tuple(dict.fromkeys((*said, *_cautions(study, field, basis, terrain), *study.notes, *terrain.notes)))
     sea_level_m = study.terrain.sea_level_m if study.terrain.gaps == "sea" else None
     tally = _Tally(field, masts, other_m, sea_level_m)
     return Around(
@@ -154,6 +167,11 @@ def look_around(
         sea_level_m=sea_level_m,
         height_from=height_from,
     )
+
+
+def _farthest_sight_m(k: float) -> float:
+    """How far two antennas on the highest ground and masts of all see each other over a smooth Earth, m."""
+    return 2.0 * math.sqrt(2.0 * k * EARTH_RADIUS_M * (_HIGHEST_GROUND_M + 1_000.0))
 
 
 def area_criteria(study: Study, radius_m: float) -> tuple[Criterion, ...]:
