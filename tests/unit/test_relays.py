@@ -16,6 +16,7 @@ from fellspan.planning.planner import plan_study
 from fellspan.planning.relay_hops import hop_link
 from fellspan.planning.relay_result import RelayRequest
 from fellspan.planning.relays import find_relay
+from fellspan.report.relay_words import decision
 from fellspan.terrain.raster_file import on_plane
 
 
@@ -83,8 +84,12 @@ def test_a_ridge_without_its_pass_and_a_low_mast_has_no_relay_below_the_crest(tm
     heights[:, 13:19] = 200.0
     study = study_with_pass(tmp_path, heights=heights)
     area = shapely.Polygon([lonlat(x * CELL_M, y * CELL_M) for x, y in ((0, 0), (12, 0), (12, 24), (0, 24))])
+    tower = find_relay(study, "West - East", RelayRequest(mast_m=700.0, area=area, two_relays=False, count=1))
+    assert "see that 700 m was meant" in tower.cautions[0]
     result = find_relay(study, "West - East", RelayRequest(mast_m=5.0, area=area, two_relays=False))
     assert not result.routes
+    assert decision(result).endswith("A taller mast (--mast) or longer hops (--hop) may find one.")
+    assert not any("was meant" in caution for caution in result.cautions)
     assert result.area is not None
     assert result.area.cells == 0
 

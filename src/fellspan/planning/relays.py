@@ -19,6 +19,7 @@ from fellspan.geodesy.coordinates import format_position
 from fellspan.geodesy.geodesic import GeodesicPath, inverse
 from fellspan.geodesy.position import Position
 from fellspan.links.site import Link, Site
+from fellspan.planning.around import TALL_M
 from fellspan.planning.inputs import Study
 from fellspan.planning.plan import LinkPlan
 from fellspan.planning.planner import open_terrain, plan_study, settings_of
@@ -375,6 +376,10 @@ class _Search:
         self, routes: list[RelayRoute], area: RelayArea | None, chains: ChainsTried | None
     ) -> tuple[str, ...]:
         said = []
+        if self.request.mast_m > TALL_M and not self.request.sites:
+            said.append(
+                f"few masts on Earth are higher than {TALL_M:g} m: see that {self.request.mast_m:g} m was meant"
+            )
         if area is not None and not area.exact:
             said.append(
                 "more cells could serve than can be judged one by one: the area is that of the sweep, and of each block of "

@@ -13,7 +13,7 @@ def decision(result: RelayResult) -> str:
         chain = "neither one relay nor two" if result.request.two_relays and not result.request.sites else "no relay"
         return (
             f"No way round found: {chain}{mast} joins the ends with hops that are clear and have the margin, each of at "
-            f"most {distance(result.hop_m)}.{_needless(result)}"
+            f"most {distance(result.hop_m)}.{_needless(result) or _else(result)}"
         )
     best = result.routes[0]
     bare = any(state_of(hop.result) == "clear-bare" for hop in best.hops)
@@ -21,6 +21,13 @@ def decision(result: RelayResult) -> str:
     margin = "" if best.worst_margin_db is None else f", least margin {down_db(best.worst_margin_db):.1f} dB"
     how = "One relay serves" if len(best.relays) == 1 else "It takes a chain of two relays"
     return f"{how}{mast}: best is {names}, every hop clear{' on bare ground only' if bare else ''}{margin}.{_needless(result)}"
+
+
+def _else(result: RelayResult) -> str:
+    """What may find a way where none was found."""
+    if result.request.sites:
+        return " Longer hops (--hop), or a search without --sites, may find one."
+    return " A taller mast (--mast) or longer hops (--hop) may find one."
 
 
 def _needless(result: RelayResult) -> str:
