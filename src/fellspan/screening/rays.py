@@ -40,7 +40,7 @@ class Rules:
     fraction: Floats
     """Of the first zone, (q, c)."""
     isolated: Floats
-    """What the second asks for instead where the obstruction is isolated, (q,); infinite where it does not tell the two apart."""
+    """What the second asks for instead where the obstruction is isolated, (q,); infinite where it asks alike of both."""
     median_curve: float
     wavelength_m: float
 
