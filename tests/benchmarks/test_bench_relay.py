@@ -49,7 +49,7 @@ def test_coarse_to_fine_finds_what_judging_every_cell_finds(tmp_path: Path, monk
                 study.links[0], end=end, places=places, terrain=terrain, settings=settings_of(study), margin_db=0.0
             )
             clear &= hop.clear
-            share = np.minimum(share, hop.worth(0.0))
+            share = np.minimum(share, hop.worth(study.links[0].wanted_margin_db))
     picks = spread_picks(np.where(clear, share, -np.inf), x, y, apart_m=APART_M, count=3)
     all_s = time.process_time() - begun
 
