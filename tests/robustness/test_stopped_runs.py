@@ -26,7 +26,7 @@ def start(folder: Path, *more: str, seconds: float, fake: bool = True) -> subpro
     return subprocess.Popen(
         made_runs.command(*made_runs.arguments("out", "--chunk", str(CHUNK), "--threads", "2", *more), fake=fake),
         cwd=folder,
-        env=made_runs.environment(**{fake_engine.SLOW: str(seconds)}),
+        env=made_runs.environment(**{fake_engine.SLOW: str(seconds), fake_engine.BEGUN: str(folder / "begun")}),
         stdin=subprocess.DEVNULL,
         stdout=subprocess.PIPE,
         stderr=subprocess.PIPE,
@@ -74,7 +74,7 @@ def store_of(folder: Path) -> Path:
 def test_it_ends_soon_keeps_what_is_whole_and_goes_on(tmp_path: Path, number: int, seconds: float) -> None:
     made_runs.write_inputs(tmp_path, places=PAIRS // 2)
     first = start(tmp_path, seconds=seconds)
-    once(lambda: store_of(tmp_path).exists() and (seconds > 1.0 or pairs_kept(tmp_path) > 0), first)
+    once(lambda: (tmp_path / "begun").exists() and (seconds > 1.0 or pairs_kept(tmp_path) > 0), first)
     said, took_s = stopped(first, number)
     assert took_s < PATIENCE_S + AT_ONCE_S + BUSY_S
     kept = pairs_kept(tmp_path)
@@ -89,7 +89,7 @@ def test_it_ends_soon_keeps_what_is_whole_and_goes_on(tmp_path: Path, number: in
 def test_a_second_signal_ends_it_at_once(tmp_path: Path) -> None:
     made_runs.write_inputs(tmp_path, places=PAIRS // 2)
     process = start(tmp_path, "--fresh", seconds=60.0)
-    once(store_of(tmp_path).exists, process)
+    once((tmp_path / "begun").exists, process)
     process.send_signal(signal.SIGINT)
     # Two that come together are one: send until it is heard twice.
     began = time.monotonic()
@@ -97,7 +97,8 @@ def test_a_second_signal_ends_it_at_once(tmp_path: Path) -> None:
         process.send_signal(signal.SIGINT)
         os.sched_yield()
     _, said = process.communicate()
-    assert process.returncode == 130
+    # One that comes when the command has ended in order, and Python winds up, ends Python itself.
+    assert process.returncode in (130, -signal.SIGINT)
     assert said == f"fellspan: stopped; 0 of {PAIRS} pairs kept; without --fresh it goes on\n"
     assert time.monotonic() - began < PATIENCE_S
 

@@ -10,15 +10,16 @@ import socket
 import sys
 import threading
 import time
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterator, Mapping
 from contextlib import contextmanager
 from types import FrameType
-from typing import Final
+from typing import Any, Final
 
 INTERRUPTED: Final = 130
 PATIENCE_S: Final = 1.0
 """So long may an ending in order take."""
 _SIGNALS: Final = (signal.SIGINT, signal.SIGTERM)
+_Handler = Callable[[int, FrameType | None], Any] | int | signal.Handlers | None
 _OVER: Final = b"\0"
 
 
@@ -32,11 +33,14 @@ def stopping_at_signals(say: Callable[[], None]) -> Iterator[None]:
     if threading.current_thread() is not threading.main_thread():
         yield
         return
-    said = threading.Lock()
+    said, spoken = threading.Lock(), threading.Event()
 
     def say_once() -> None:
         if said.acquire(blocking=False):
             say()
+            spoken.set()
+        else:
+            spoken.wait(PATIENCE_S)
 
     def leave() -> None:
         say_once()
@@ -66,12 +70,20 @@ def stopping_at_signals(say: Callable[[], None]) -> Iterator[None]:
         sys.exit(INTERRUPTED)
     finally:
         signal.set_wakeup_fd(wakeup)
-        for number, handler in before.items():
-            signal.signal(number, handler)
+        if not first.is_set():
+            _restore(before)
         write.send(_OVER)
         watch.join()
         read.close()
         write.close()
+        if first.is_set():
+            # What is left is Python winding up: a signal in it ends the process as the first one does.
+            _restore(dict.fromkeys(before, lambda *_: os._exit(INTERRUPTED)))
+
+
+def _restore(handlers: Mapping[signal.Signals, _Handler]) -> None:
+    for number, handler in handlers.items():
+        signal.signal(number, handler)
 
 
 def _watch(read: socket.socket, leave: Callable[[], None]) -> None:
