@@ -1,6 +1,7 @@
 """A run that is told to stop does so at once, in order or not: what is committed stays, and the same command goes on."""
 
 import os
+import re
 import signal
 import sqlite3
 import subprocess
@@ -78,7 +79,10 @@ def test_it_ends_soon_keeps_what_is_whole_and_goes_on(tmp_path: Path, number: in
     said, took_s = stopped(first, number)
     assert took_s < PATIENCE_S + AT_ONCE_S + BUSY_S
     kept = pairs_kept(tmp_path)
-    assert said == f"fellspan: stopped; {kept} of {PAIRS} pairs kept; the same command goes on\n"
+    # A chunk kept at the very moment may not be counted yet; never is more told than is kept.
+    told = re.fullmatch(rf"fellspan: stopped; (\d+) of {PAIRS} pairs kept; the same command goes on\n", said)
+    assert told is not None, said
+    assert kept - CHUNK <= int(told[1]) <= kept
     assert (kept == 0) == (seconds > 1.0)
     assert not [path for path in (tmp_path / "out").iterdir() if path.name.endswith((".part", "-journal"))]
     done = made_runs.run_here(tmp_path, *made_runs.arguments("out", "--chunk", str(CHUNK)))
