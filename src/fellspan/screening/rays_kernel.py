@@ -69,6 +69,16 @@ def _is_extended(at: Floats, normalised: Floats, end: int, band: float, share: f
 
 
 @compiled_for_numbers
+def _asked(
+    at: Floats, normalised: Floats, end: int, band: float, share: float, extended: float, isolated: float
+) -> float:
+    """The fraction that the second criterion asks for; an infinite `isolated` says that it asks alike of all obstructions."""
+    if math.isinf(isolated) or _is_extended(at, normalised, end, band, share):
+        return extended
+    return isolated
+
+
+@compiled_for_numbers
 def _mark_lowest(values: Floats, end: int, most: int, lowest: Floats, where: Index, wanted: Flags) -> None:
     """As `links.minima.lowest_minima`: the lowest `most` interior minima, of equals the first."""
     held = 0
@@ -154,8 +164,8 @@ def look(
         wanted[: end + 1] = False
         for rule in range(rules):
             asked = fraction[path, rule]
-            if rule == 1 and not math.isinf(isolated[path]):
-                asked = asked if _is_extended(at, normalised[rule], end, band, share) else isolated[path]
+            if rule == 1:
+                asked = _asked(at, normalised[rule], end, band, share, asked, isolated[path])
             _mark_lowest(normalised[rule], end, most, lowest, where, wanted)
             for i in range(end + 1):
                 clear[rule, i] -= asked * radius[i]
@@ -280,8 +290,8 @@ def judge(  # noqa: PLR0912, PLR0915  # one pass: a call for each part of it wou
         met = True
         for rule in range(rules):
             asked = fraction[path, rule]
-            if rule == 1 and not math.isinf(isolated[path]):
-                asked = asked if _is_extended(at, normalised[rule], end, band, share) else isolated[path]
+            if rule == 1:
+                asked = _asked(at, normalised[rule], end, band, share, asked, isolated[path])
             lowest = math.inf
             for i in range(end + 1):
                 clear[rule, i] -= asked * radius[i]
